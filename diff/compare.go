@@ -1,0 +1,118 @@
+package diff
+
+import (
+	"cmp"
+	"context"
+	"runtime"
+	"slices"
+	"strings"
+	"sync"
+
+	"golang.org/x/sync/errgroup"
+
+	"speedtrail/schema"
+)
+
+// Options of a comparison. The zero Options are those of a plain one.
+type Options struct {
+	// Progress, if given, is called after each route; calls do not overlap.
+	Progress func(done, total int)
+}
+
+// Compare works out what differs between two revisions of a data set. Routes
+// that were left unread on both sides, because their files are the same, are
+// counted only. The error is that of the context.
+func Compare(ctx context.Context, base, target *schema.Dataset, o Options) (*Account, error) {
+	a := &Account{
+		Trains:   pairTrains(base.Trains, target.Trains),
+		Routes:   pairRoutes(base.Routes, target.Routes),
+		Equal:    len(target.Unread),
+		Requests: RequestsInPlay(base, target),
+	}
+	if err := a.compareRoutes(ctx, o.Progress); err != nil {
+		return nil, err
+	}
+	a.describeStretches()
+	return a, ctx.Err()
+}
+
+// compareRoutes compares the routes side by side, one a processor at a time.
+// Each fills in its own place, so that the result does not depend on which is
+// done first.
+func (a *Account) compareRoutes(ctx context.Context, progress func(done, total int)) error {
+	work, ctx := errgroup.WithContext(ctx)
+	work.SetLimit(runtime.GOMAXPROCS(0))
+	var lock sync.Mutex
+	done := 0
+	for i := range a.Routes {
+		work.Go(func() error {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
+			compareRoute(&a.Routes[i], a.Trains)
+			if progress != nil {
+				lock.Lock()
+				defer lock.Unlock()
+				done++
+				progress(done, len(a.Routes))
+			}
+			return nil
+		})
+	}
+	return work.Wait()
+}
+
+// pairTrains joins the trains of both revisions: the target's definition, and
+// for a train that only the base has, the base's.
+func pairTrains(base, target []schema.Train) []Train {
+	before := make(map[string]schema.Train, len(base))
+	for _, t := range base {
+		before[t.ID] = t
+	}
+	var trains []Train
+	for _, t := range target {
+		joined := Train{Train: t, Fate: Added}
+		if old, ok := before[t.ID]; ok {
+			joined.Fate = Kept
+			if !old.Same(t) {
+				joined.Fate, joined.Before = Altered, old
+			}
+			delete(before, t.ID)
+		}
+		trains = append(trains, joined)
+	}
+	for _, t := range base {
+		if _, left := before[t.ID]; left {
+			trains = append(trains, Train{Train: t, Fate: Removed})
+		}
+	}
+	slices.SortFunc(trains, func(a, b Train) int { return strings.Compare(a.ID, b.ID) })
+	return trains
+}
+
+// pairRoutes matches routes by id.
+func pairRoutes(base, target []*schema.Route) []Route {
+	byID := make(map[string]*Route)
+	var routes []*Route
+	get := func(id string) *Route {
+		r := byID[id]
+		if r == nil {
+			r = &Route{ID: id}
+			byID[id] = r
+			routes = append(routes, r)
+		}
+		return r
+	}
+	for _, r := range base {
+		get(r.ID).Base = r
+	}
+	for _, r := range target {
+		get(r.ID).Target = r
+	}
+	slices.SortFunc(routes, func(a, b *Route) int { return cmp.Compare(a.ID, b.ID) })
+	list := make([]Route, len(routes))
+	for i, r := range routes {
+		list[i] = *r
+	}
+	return list
+}

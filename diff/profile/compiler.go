@@ -1,0 +1,210 @@
+package profile
+
+import (
+	"cmp"
+	"math/bits"
+	"slices"
+
+	"speedtrail/diff/step"
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// Filter tells whether a temporary restriction counts. A nil Filter counts all
+// of them, whatever their validity.
+type Filter func(*schema.TemporaryRow) bool
+
+// The filters that comparisons use.
+var (
+	All         Filter
+	NoTemporary Filter = func(*schema.TemporaryRow) bool { return false }
+)
+
+// Compiler compiles profiles on one route in one direction of travel. It does
+// not change after New and is safe for concurrent use.
+type Compiler struct {
+	route     *schema.Route
+	direction codes.Direction
+	rows      []restriction
+	// The order in which the sweep meets the ends of the rows: by start and by
+	// end, with and without train length delay. Within each of the four lists
+	// the order is the same for every length of train, so that no train needs
+	// a sort.
+	starts, ends [2][]int32
+}
+
+// New prepares a route and a direction of travel for compiling.
+func New(route *schema.Route, direction codes.Direction, filter Filter) *Compiler {
+	c := &Compiler{route: route, direction: direction}
+	add := func(layer Layer, i int, row *schema.Row) {
+		if row.Directions.Has(direction) {
+			c.rows = append(c.rows, restriction{row.Start, row.End, row.Delay, layer, i, row.Pos})
+		}
+	}
+	for i := range route.Speed {
+		add(StaticSpeed, i, &route.Speed[i].Row)
+	}
+	for i := range route.AxleLoad {
+		add(AxleLoad, i, &route.AxleLoad[i].Row)
+	}
+	for i := range route.Temporary {
+		if filter == nil || filter(&route.Temporary[i]) {
+			add(Temporary, i, &route.Temporary[i].Row)
+		}
+	}
+	// Sources are listed in the order of the track.
+	slices.SortStableFunc(c.rows, func(a, b restriction) int {
+		return cmp.Or(cmp.Compare(a.start, b.start), cmp.Compare(a.end, b.end),
+			cmp.Compare(a.layer, b.layer), cmp.Compare(a.pos.Line, b.pos.Line))
+	})
+	for i, r := range c.rows {
+		k := delayIndex(r.delay)
+		c.starts[k] = append(c.starts[k], int32(i))
+		c.ends[k] = append(c.ends[k], int32(i))
+	}
+	for k := range c.ends {
+		slices.SortStableFunc(c.ends[k], func(a, b int32) int { return cmp.Compare(c.rows[a].end, c.rows[b].end) })
+	}
+	return c
+}
+
+func delayIndex(delay bool) int {
+	if delay {
+		return 1
+	}
+	return 0
+}
+
+// Delayed tells whether the length of a train matters on this route at all.
+func (c *Compiler) Delayed() bool { return len(c.starts[1]) > 0 }
+
+// Selection is the speed that each row of the route gives to a class of
+// trains; 0 where a row does not bind it. Trains of equal selection, length and
+// maximum speed have the same profile.
+type Selection []unit.Speed
+
+// Select picks the speeds of a class of trains.
+func (c *Compiler) Select(class Class) Selection {
+	sel := make(Selection, len(c.rows))
+	for i, r := range c.rows {
+		switch r.layer {
+		case StaticSpeed:
+			sel[i] = StaticSpeedOf(&c.route.Speed[r.row], class)
+		case AxleLoad:
+			// 3.11.4.3: only the entry for exactly the train's category binds.
+			sel[i] = c.route.AxleLoad[r.row].Limit[class.AxleLoad]
+		case Temporary:
+			// 3.11.5: a temporary restriction binds every train.
+			sel[i] = c.route.Temporary[r.row].Speed
+		}
+	}
+	return sel
+}
+
+// Compile gives the effective profile of a reference train.
+func (c *Compiler) Compile(t schema.Train) step.Func {
+	return c.Sweep(c.Select(ClassOf(t)), t.Length, t.Max)
+}
+
+// NoMaximum is a maximum speed above every restriction: the profile is then
+// the one of the track alone.
+const NoMaximum = unit.MaxSpeed
+
+// Sweep gives the effective profile for a selection, a train length and a
+// maximum speed: at each point the lowest of all that hold there (SUBSET-026
+// 3.13.7), the maximum speed everywhere (3.11.8).
+func (c *Compiler) Sweep(sel Selection, length unit.Distance, maximum unit.Speed) step.Func {
+	w := sweep{end: c.route.Track.Length()}
+	// 3.11.3.1.3, 3.11.4.6, 3.11.5.3: with train length delay the restriction
+	// holds until the rear has left it, one train length further in the
+	// direction of travel.
+	before, after := unit.Distance(0), length
+	if c.direction == codes.Reverse {
+		before, after = length, 0
+	}
+	lists := [4]list{
+		{order: c.starts[0]},
+		{order: c.starts[1], shift: -before},
+		{order: c.ends[0], ends: true},
+		{order: c.ends[1], ends: true, shift: after},
+	}
+	f := make(step.Func, 0, len(c.rows)/2+1)
+	at := unit.Distance(0)
+	for at < w.end {
+		next := w.end
+		for i := range lists {
+			l := &lists[i]
+			for {
+				s, ok := l.peek(c.rows)
+				if !ok {
+					break
+				}
+				if s > at {
+					next = min(next, s)
+					break
+				}
+				w.count(sel[l.order[l.next]], l.ends)
+				l.next++
+			}
+		}
+		f = f.Append(step.Piece{From: at, To: next, Speed: min(maximum, w.lowest())})
+		at = next
+	}
+	return f
+}
+
+// list is the row ends of one kind that a sweep has still to meet.
+type list struct {
+	order []int32
+	next  int
+	ends  bool
+	shift unit.Distance
+}
+
+// peek gives the running distance of the next row end.
+func (l *list) peek(rows []restriction) (unit.Distance, bool) {
+	if l.next == len(l.order) {
+		return 0, false
+	}
+	r := &rows[l.order[l.next]]
+	if l.ends {
+		return r.end + l.shift, true
+	}
+	return r.start + l.shift, true
+}
+
+// sweep counts the restrictions that hold at a point, by speed. Speeds are
+// multiples of 5 km/h up to 600, so that a counter each and a bit each suffice.
+type sweep struct {
+	end    unit.Distance
+	counts [unit.MaxSpeed/unit.SpeedStep + 1]int32
+	held   [2]uint64 // bit i: counts[i] > 0
+}
+
+func (w *sweep) count(v unit.Speed, ends bool) {
+	if v == 0 {
+		return
+	}
+	i := v / unit.SpeedStep
+	if ends {
+		w.counts[i]--
+		if w.counts[i] == 0 {
+			w.held[i/64] &^= 1 << (i % 64)
+		}
+		return
+	}
+	w.counts[i]++
+	w.held[i/64] |= 1 << (i % 64)
+}
+
+// lowest gives the lowest speed that holds. There is always one: the rows of
+// the static speed profile cover the route (SUBSET-026 3.11.3.2.2).
+func (w *sweep) lowest() unit.Speed {
+	for k, word := range w.held {
+		if word != 0 {
+			return unit.Speed(k*64+bits.TrailingZeros64(word)) * unit.SpeedStep
+		}
+	}
+	return NoMaximum
+}

@@ -1,0 +1,94 @@
+package profile
+
+import (
+	"strconv"
+
+	"speedtrail/diff/step"
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// TrainRow stands, in a list of governing rows, for the maximum speed of the
+// train itself.
+const TrainRow int32 = -1
+
+// Governing lists the rows that give the speed v anywhere on from <= s < to to
+// a train of the given length, train length delay included, in the order of the
+// track; TrainRow last. Every row that attains the speed is listed. Give it the
+// selection and the stretch of a compiled profile.
+func (c *Compiler) Governing(sel Selection, length unit.Distance, maximum unit.Speed, from, to unit.Distance, v unit.Speed) []int32 {
+	before, after := unit.Distance(0), length
+	if c.direction == codes.Reverse {
+		before, after = length, 0
+	}
+	var rows []int32
+	for i := range c.rows {
+		if sel[i] != v {
+			continue
+		}
+		r := &c.rows[i]
+		start, end := r.start, r.end
+		if r.delay {
+			start, end = start-before, end+after
+		}
+		if start < to && end > from {
+			rows = append(rows, int32(i))
+		}
+	}
+	if maximum == v {
+		rows = append(rows, TrainRow)
+	}
+	return rows
+}
+
+// Source describes a governing row for a train.
+func (c *Compiler) Source(row int32, t schema.Train) Source {
+	if row == TrainRow {
+		return Source{t.MaxPos, TrainSpeed, "train", t.Max}
+	}
+	r := &c.rows[row]
+	s := Source{Pos: r.pos, Layer: r.layer}
+	switch r.layer {
+	case StaticSpeed:
+		speed := &c.route.Speed[r.row]
+		s.Kind, s.Value = staticKind(speed, ClassOf(t)), StaticSpeedOf(speed, ClassOf(t))
+	case AxleLoad:
+		s.Kind, s.Value = "axle load "+t.AxleLoad.String(), c.route.AxleLoad[r.row].Limit[t.AxleLoad]
+	case Temporary:
+		temporary := &c.route.Temporary[r.row]
+		s.Kind, s.Value = "temporary "+temporary.ID, temporary.Speed
+	}
+	return s
+}
+
+// Governed is a piece of a profile with the rows behind it.
+type Governed struct {
+	step.Piece
+	Sources []Source
+}
+
+// Profile gives the effective profile of a reference train with the sources of
+// each piece.
+func (c *Compiler) Profile(t schema.Train) []Governed {
+	sel := c.Select(ClassOf(t))
+	f := c.Sweep(sel, t.Length, t.Max)
+	pieces := make([]Governed, len(f))
+	for i, p := range f {
+		pieces[i].Piece = p
+		for _, row := range c.Governing(sel, t.Length, t.Max, p.From, p.To, p.Speed) {
+			pieces[i].Sources = append(pieces[i].Sources, c.Source(row, t))
+		}
+	}
+	return pieces
+}
+
+// AppendSourceKey appends to key what tells one source of this compiler from
+// another in text: equal keys have equal Sources.
+func (c *Compiler) AppendSourceKey(key []byte, row int32, t schema.Train) []byte {
+	s := c.Source(row, t)
+	key = append(key, s.Pos.File...)
+	key = strconv.AppendInt(append(key, ':'), int64(s.Pos.Line), 10)
+	key = append(append(key, ' '), s.Kind...)
+	return strconv.AppendInt(append(key, ' '), int64(s.Value), 10)
+}
