@@ -7,6 +7,7 @@ import (
 	"strconv"
 
 	"speedtrail/diff/align"
+	"speedtrail/diff/delta"
 	"speedtrail/diff/profile"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -65,7 +66,7 @@ func compareDirection(r *Route, d codes.Direction, cells []align.Cell, trains []
 	base := profile.New(r.Base, d, profile.All)
 	target := profile.New(r.Target, d, profile.All)
 	delayed := base.Delayed() || target.Delayed()
-	known := make(map[string][]bareChange)
+	known := make(map[string][]delta.Delta)
 	var key []byte
 	for i, t := range trains {
 		class := profile.ClassOf(t.Train)
@@ -83,10 +84,10 @@ func compareDirection(r *Route, d codes.Direction, cells []align.Cell, trains []
 		}
 		for _, c := range changes {
 			r.Changes = append(r.Changes, Change{
-				Direction: d, From: c.target, To: c.target + c.length, Train: i,
-				Before: c.before, After: c.after, RunOut: c.runOut,
-				BeforeSources: r.sources.index(base, before, t, c.base, c.length, c.before),
-				AfterSources:  r.sources.index(target, after, t, c.target, c.length, c.after),
+				Direction: d, From: c.Target, To: c.Target + c.Length, Train: i,
+				Before: c.Before, After: c.After, RunOut: c.RunOut,
+				BeforeSources: r.sources.index(base, before, t, c.Base, c.Length, c.Before),
+				AfterSources:  r.sources.index(target, after, t, c.Target, c.Length, c.After),
 			})
 		}
 	}

@@ -92,3 +92,21 @@ func (c *Compiler) AppendSourceKey(key []byte, row int32, t schema.Train) []byte
 	key = append(append(key, ' '), s.Kind...)
 	return strconv.AppendInt(append(key, ' '), int64(s.Value), 10)
 }
+
+// Bound is a row as it binds a class of trains.
+type Bound struct {
+	Start, End unit.Distance // running distance, without train length delay
+	Delay      bool
+	Speed      unit.Speed
+}
+
+// Bounds lists the rows that bind a selection, in the order of the track.
+func (c *Compiler) Bounds(sel Selection) []Bound {
+	list := make([]Bound, 0, len(c.rows))
+	for i, r := range c.rows {
+		if sel[i] != 0 {
+			list = append(list, Bound{r.start, r.end, r.delay, sel[i]})
+		}
+	}
+	return list
+}

@@ -65,3 +65,6 @@ func (c *Cursor) Advance(s unit.Distance) {
 		c.i++
 	}
 }
+
+// Index gives the number of the piece under the cursor.
+func (c *Cursor) Index() int { return c.i }

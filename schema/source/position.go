@@ -24,15 +24,17 @@ type Position struct {
 	Line, Column int    // from 1; 0 = the whole file, the whole line
 }
 
-// String gives file:line:column, without the parts that are not known.
+// String gives file:line:column, without the parts that are not known. A path
+// with control codes in it comes out escaped.
 func (p Position) String() string {
+	file := Visible(p.File)
 	switch {
 	case p.Line == 0:
-		return p.File
+		return file
 	case p.Column == 0:
-		return p.File + ":" + strconv.Itoa(p.Line)
+		return file + ":" + strconv.Itoa(p.Line)
 	}
-	return fmt.Sprintf("%s:%d:%d", p.File, p.Line, p.Column)
+	return fmt.Sprintf("%s:%d:%d", file, p.Line, p.Column)
 }
 
 // Compare orders positions by file (bytes), line and column.

@@ -1,0 +1,171 @@
+// Package fleet compares two revisions of a route for every train that the
+// standard can describe, not only for the reference trains: 11 cant deficiency
+// categories, 8 sets of other categories and 13 axle load categories
+// (SUBSET-026 7.5.1), without a maximum speed.
+//
+// Reference trains are samples, and a sample can miss. Result lists each
+// change with the trains that see it, as few products of category sets, and
+// the stretches outside which no train of any length up to the longest sees a
+// change at all.
+package fleet
+
+import (
+	"cmp"
+	"slices"
+
+	"speedtrail/diff/align"
+	"speedtrail/diff/delta"
+	"speedtrail/diff/profile"
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// Change is a change that some trains of a length see. Positions are running
+// distances on the target's track and, in Base, on the base's.
+type Change struct {
+	delta.Delta
+	TrainLength unit.Distance
+	Products    []Product
+}
+
+// Result is the account of one route and direction of travel, with or without
+// temporary restrictions.
+type Result struct {
+	Changes []Change // by train length as asked for, then position, then speeds
+	// Reach covers every point at which a train of some length, up to the
+	// longest asked for, sees a change; on the target's track, in its order.
+	Reach []align.Interval
+}
+
+// Compare compiles both sides for every class of trains. The lengths are those
+// for which changes are listed.
+func Compare(base, target *schema.Route, d codes.Direction, cells []align.Cell, filter profile.Filter, lengths []unit.Distance) Result {
+	p := pair{base: profile.New(base, d, filter), target: profile.New(target, d, filter), cells: cells, direction: d}
+	p.distinguish()
+	var r Result
+	for _, length := range lengths {
+		r.Changes = append(r.Changes, p.changes(length)...)
+	}
+	r.Reach = p.reach(slices.Max(lengths))
+	return r
+}
+
+// pair is both sides of a route, and the classes of trains that their rows
+// cannot tell apart.
+type pair struct {
+	base, target *profile.Compiler
+	cells        []align.Cell
+	direction    codes.Direction
+	kinds        []kind
+}
+
+// kind is a set of classes that every row of both sides treats alike.
+type kind struct {
+	before, after profile.Selection
+	set           classSet
+}
+
+// distinguish sorts the classes into kinds. What a row gives depends on the
+// cant deficiency and other categories alone, or on the axle load alone; so
+// the kinds are those of the one times those of the other.
+func (p *pair) distinguish() {
+	type group struct {
+		class profile.Class
+		list  []profile.Class
+	}
+	sort := func(classes []profile.Class) []group {
+		var groups []group
+		seen := map[string]int{}
+		var key []byte
+		for _, c := range classes {
+			key = key[:0]
+			for _, v := range append(p.base.Select(c), p.target.Select(c)...) {
+				key = append(key, byte(v/unit.SpeedStep))
+			}
+			i, ok := seen[string(key)]
+			if !ok {
+				i = len(groups)
+				seen[string(key)] = i
+				groups = append(groups, group{class: c})
+			}
+			groups[i].list = append(groups[i].list, c)
+		}
+		return groups
+	}
+	var static, axle []profile.Class
+	for c := range codes.CantDeficiency(codes.CantDeficiencies) {
+		for s := range codes.CategorySet(codes.CategorySets) {
+			static = append(static, profile.Class{Cant: c, Categories: s})
+		}
+	}
+	for a := range codes.AxleLoad(codes.AxleLoads) {
+		axle = append(axle, profile.Class{AxleLoad: a})
+	}
+	axles := sort(axle)
+	for _, s := range sort(static) {
+		for _, a := range axles {
+			class := s.class
+			class.AxleLoad = a.class.AxleLoad
+			k := kind{before: p.base.Select(class), after: p.target.Select(class)}
+			mask := uint16(0)
+			for _, c := range a.list {
+				mask |= 1 << c.AxleLoad
+			}
+			for _, c := range s.list {
+				k.set[c.Cant][c.Categories] = mask
+			}
+			p.kinds = append(p.kinds, k)
+		}
+	}
+}
+
+// changes lists the changes that trains of a length see.
+func (p *pair) changes(length unit.Distance) []Change {
+	sets := map[delta.Delta]*classSet{}
+	var order []delta.Delta
+	for i := range p.kinds {
+		k := &p.kinds[i]
+		found := delta.Between(p.base.Sweep(k.before, length, profile.NoMaximum), p.target.Sweep(k.after, length, profile.NoMaximum), p.cells)
+		if len(found) == 0 {
+			continue
+		}
+		found = delta.MarkRunOut(found, p.base.Sweep(k.before, 0, profile.NoMaximum), p.target.Sweep(k.after, 0, profile.NoMaximum))
+		for _, d := range found {
+			set := sets[d]
+			if set == nil {
+				set = new(classSet)
+				sets[d] = set
+				order = append(order, d)
+			}
+			set.join(&k.set)
+		}
+	}
+	slices.SortFunc(order, func(a, b delta.Delta) int {
+		return cmp.Or(cmp.Compare(a.Target, b.Target), cmp.Compare(a.Length, b.Length),
+			cmp.Compare(a.Before, b.Before), cmp.Compare(a.After, b.After), compareBool(a.RunOut, b.RunOut))
+	})
+	list := make([]Change, len(order))
+	for i, d := range order {
+		list[i] = Change{Delta: d, TrainLength: length, Products: products(sets[d])}
+	}
+	return list
+}
+
+func compareBool(a, b bool) int {
+	switch {
+	case a == b:
+		return 0
+	case b:
+		return -1
+	}
+	return 1
+}
+
+func (s *classSet) join(t *classSet) {
+	for c := range s {
+		for k := range s[c] {
+			s[c][k] |= t[c][k]
+		}
+	}
+}

@@ -1,0 +1,200 @@
+package fleet
+
+import (
+	"cmp"
+	"slices"
+
+	"speedtrail/diff/align"
+	"speedtrail/diff/profile"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// reach finds where a train of any class and of some length, above 0 and up to
+// the longest, sees a change.
+//
+// A train whose front is at x and whose rear is at y is bound by the rows
+// without train length delay at x, and by every row with it that begins
+// before x and ends after y (nominal direction). At a fixed x the speed thus
+// falls in steps as the train grows: at the ends of the delayed rows behind x.
+// Between two such ends all lengths see the same, so that trying one length in
+// each part tries them all.
+func (p *pair) reach(longest unit.Distance) []align.Interval {
+	var found []align.Interval
+	for i := range p.kinds {
+		k := &p.kinds[i]
+		before, after := p.base.Bounds(k.before), p.target.Bounds(k.after)
+		for _, cell := range p.cells {
+			found = append(found, cellReach(p.view(before, cell, cell.Base), p.view(after, cell, cell.Target), cell.Length, longest, p.place(cell))...)
+		}
+	}
+	return union(found)
+}
+
+// view shifts rows so that the cell begins at 0, and turns them round for the
+// reverse direction, so that the train always runs towards higher numbers.
+func (p *pair) view(rows []profile.Bound, cell align.Cell, start unit.Distance) []profile.Bound {
+	out := make([]profile.Bound, len(rows))
+	for i, r := range rows {
+		r.Start, r.End = r.Start-start, r.End-start
+		if p.direction == codes.Reverse {
+			r.Start, r.End = cell.Length-r.End, cell.Length-r.Start
+		}
+		out[i] = r
+	}
+	return out
+}
+
+// place gives the way back from a view to the target's track.
+func (p *pair) place(cell align.Cell) func(from, to unit.Distance) align.Interval {
+	return func(from, to unit.Distance) align.Interval {
+		if p.direction == codes.Reverse {
+			from, to = cell.Length-to, cell.Length-from
+		}
+		return align.Interval{From: cell.Target + from, To: cell.Target + to}
+	}
+}
+
+// cellReach finds the reach within one cell, 0 to length.
+func cellReach(before, after []profile.Bound, length, longest unit.Distance, place func(from, to unit.Distance) align.Interval) []align.Interval {
+	zone := differing(before, after, longest)
+	if len(zone) == 0 {
+		return nil
+	}
+	cuts := []unit.Distance{0, length}
+	for _, rows := range [...][]profile.Bound{before, after} {
+		for _, r := range rows {
+			for _, s := range [...]unit.Distance{r.Start, r.End} {
+				if s > 0 && s < length {
+					cuts = append(cuts, s)
+				}
+			}
+		}
+	}
+	slices.Sort(cuts)
+	cuts = slices.Compact(cuts)
+	behindBefore, behindAfter := byEnd(before), byEnd(after)
+	var found []align.Interval
+	for i := range len(cuts) - 1 {
+		from, to := cuts[i], cuts[i+1]
+		if !touches(zone, from, to) {
+			continue
+		}
+		if end := seenUntil(before, after, behindBefore, behindAfter, from, to, longest); end > from {
+			found = append(found, place(from, end))
+		}
+	}
+	return found
+}
+
+// seenUntil gives the end of the part of from <= x < to in which some train
+// sees a difference; from itself where none does. No row begins or ends inside.
+func seenUntil(before, after, behindBefore, behindAfter []profile.Bound, from, to, longest unit.Distance) unit.Distance {
+	b, a := holding(before, from, to), holding(after, from, to)
+	if b != a {
+		return to
+	}
+	i, k := 0, 0
+	for {
+		// Rows that end ahead of from hold already or not at all.
+		for i < len(behindBefore) && behindBefore[i].End > from {
+			i++
+		}
+		for k < len(behindAfter) && behindAfter[k].End > from {
+			k++
+		}
+		if i == len(behindBefore) && k == len(behindAfter) {
+			return from
+		}
+		end := from - longest // any lower end cannot be reached
+		if i < len(behindBefore) {
+			end = max(end, behindBefore[i].End)
+		}
+		if k < len(behindAfter) {
+			end = max(end, behindAfter[k].End)
+		}
+		if end <= from-longest {
+			return from
+		}
+		for i < len(behindBefore) && behindBefore[i].End == end {
+			b = min(b, behindBefore[i].Speed)
+			i++
+		}
+		for k < len(behindAfter) && behindAfter[k].End == end {
+			a = min(a, behindAfter[k].Speed)
+			k++
+		}
+		if b != a {
+			return min(to, end+longest)
+		}
+	}
+}
+
+// holding gives the lowest speed of the rows that cover from to to.
+func holding(rows []profile.Bound, from, to unit.Distance) unit.Speed {
+	v := profile.NoMaximum
+	for _, r := range rows {
+		if r.Start <= from && r.End >= to {
+			v = min(v, r.Speed)
+		}
+	}
+	return v
+}
+
+// byEnd lists the delayed rows, the one that ends last first.
+func byEnd(rows []profile.Bound) []profile.Bound {
+	var list []profile.Bound
+	for _, r := range rows {
+		if r.Delay {
+			list = append(list, r)
+		}
+	}
+	slices.SortFunc(list, func(a, b profile.Bound) int { return cmp.Compare(b.End, a.End) })
+	return list
+}
+
+// differing lists where rows that only one side has can hold for a train up to
+// the longest. Elsewhere both sides have the same rows, and the same speeds.
+func differing(before, after []profile.Bound, longest unit.Distance) []align.Interval {
+	count := map[profile.Bound]int{}
+	for _, r := range before {
+		count[r]++
+	}
+	for _, r := range after {
+		count[r]--
+	}
+	var zone []align.Interval
+	for r, n := range count {
+		if n == 0 {
+			continue
+		}
+		if r.Delay {
+			r.End += longest
+		}
+		zone = append(zone, align.Interval{From: r.Start, To: r.End})
+	}
+	return union(zone)
+}
+
+func touches(zone []align.Interval, from, to unit.Distance) bool {
+	for _, z := range zone {
+		if z.From < to && from < z.To {
+			return true
+		}
+	}
+	return false
+}
+
+// union joins intervals that overlap or touch, in order.
+func union(list []align.Interval) []align.Interval {
+	slices.SortFunc(list, func(a, b align.Interval) int { return cmp.Or(cmp.Compare(a.From, b.From), cmp.Compare(a.To, b.To)) })
+	var out []align.Interval
+	for _, i := range list {
+		if n := len(out); n > 0 && i.From <= out[n-1].To {
+			out[n-1].To = max(out[n-1].To, i.To)
+			continue
+		}
+		out = append(out, i)
+	}
+	return out
+}

@@ -1,0 +1,162 @@
+// Package impact gives the figures that go with a change of speeds: running
+// times, approach times at level crossings, cant deficiency on curves.
+//
+// They are aids for the reader of a change, never limits: the infrastructure
+// manager's rules decide. Every figure is held as a whole number (tenths of a
+// second, hundredths of a millimetre) that is rounded once, where it is made.
+package impact
+
+import (
+	"math"
+
+	"speedtrail/diff/step"
+	"speedtrail/schema/unit"
+)
+
+// Motion is how a train moves: constant acceleration and braking, in
+// thousandths of m/s² (that is mm/s²), both above 0.
+type Motion struct {
+	Acceleration, Braking int
+	// Rolling: the run begins and ends at the speed of the profile, else at
+	// rest.
+	Rolling bool
+}
+
+// Given tells whether the train's data allow a running time.
+func (m Motion) Given() bool { return m.Acceleration > 0 && m.Braking > 0 }
+
+// Run is the fastest run along a profile: the train accelerates when its
+// profile rises, and brakes to be at the lower speed where its front meets it.
+// With constant rates v²/2 is a straight line over distance, so that each piece
+// of the profile has a closed form: accelerate, hold, brake.
+type Run struct {
+	profile step.Func
+	motion  Motion
+	// edges[i] is the speed in mm/s at the beginning of piece i, and the last
+	// one that at the end of the profile.
+	edges []float64
+	// reached[i] is the time in seconds at the beginning of piece i.
+	reached []float64
+}
+
+// mmps gives a speed in mm/s: 1 km/h = 2500/9 mm/s.
+func mmps(v unit.Speed) float64 { return float64(v) * 2500 / 9 }
+
+// Products that are added stand in float64(...): Go then rounds each on its own
+// and fuses none, so that every processor computes the same.
+
+// NewRun computes the run. The profile must be in the order of travel: for the
+// reverse direction, give it Mirrored.
+func NewRun(f step.Func, m Motion) *Run {
+	r := &Run{profile: f, motion: m, edges: make([]float64, len(f)+1), reached: make([]float64, len(f)+1)}
+	a, b := float64(m.Acceleration), float64(m.Braking)
+	n := len(f)
+	if m.Rolling {
+		r.edges[0], r.edges[n] = mmps(f[0].Speed), mmps(f[n-1].Speed)
+	}
+	for i := 1; i < n; i++ {
+		r.edges[i] = mmps(min(f[i-1].Speed, f[i].Speed))
+	}
+	for i, p := range f {
+		r.edges[i+1] = min(r.edges[i+1], after(r.edges[i], a, float64(p.To-p.From)))
+	}
+	for i := n - 1; i >= 0; i-- {
+		r.edges[i] = min(r.edges[i], after(r.edges[i+1], b, float64(f[i].To-f[i].From)))
+	}
+	for i := range f {
+		t, _ := r.piece(i).time()
+		r.reached[i+1] = r.reached[i] + t
+	}
+	return r
+}
+
+// after is the speed that a train of speed v reaches with a constant rate over
+// a distance.
+func after(v, rate, distance float64) float64 {
+	return math.Sqrt(float64(v*v) + float64(2*rate*distance))
+}
+
+// phase is the run over one piece: from speed in to speed out, never above top,
+// over a length; in mm/s and mm.
+type phase struct{ in, out, top, a, b, length float64 }
+
+func (r *Run) piece(i int) phase {
+	p := r.profile[i]
+	return phase{r.edges[i], r.edges[i+1], mmps(p.Speed), float64(r.motion.Acceleration), float64(r.motion.Braking), float64(p.To - p.From)}
+}
+
+// peak is the highest speed in the piece.
+func (p phase) peak() float64 {
+	square := (float64(2*p.a*p.b*p.length) + float64(p.b*p.in*p.in) + float64(p.a*p.out*p.out)) / (p.a + p.b)
+	return min(p.top, math.Sqrt(square))
+}
+
+// time gives the time over the piece and the highest speed in it.
+func (p phase) time() (seconds, peak float64) {
+	peak = max(p.peak(), p.in, p.out)
+	up, down := p.distances(peak)
+	hold := max(0, p.length-up-down)
+	return (peak-p.in)/p.a + (peak-p.out)/p.b + hold/peak, peak
+}
+
+// distances gives the lengths on which the train accelerates and brakes.
+func (p phase) distances(peak float64) (up, down float64) {
+	return (float64(peak*peak) - float64(p.in*p.in)) / (2 * p.a), (float64(peak*peak) - float64(p.out*p.out)) / (2 * p.b)
+}
+
+// At gives the time in seconds at which the front reaches a running distance
+// of the profile.
+func (r *Run) At(s unit.Distance) float64 {
+	c := r.profile.CursorAt(s)
+	i := c.Index()
+	p := r.piece(i)
+	_, peak := p.time()
+	up, down := p.distances(peak)
+	x := min(max(0, float64(s-r.profile[i].From)), p.length)
+	t := r.reached[i]
+	switch {
+	case x <= up:
+		return t + (after(p.in, p.a, x)-p.in)/p.a
+	case x <= p.length-down:
+		return t + (peak-p.in)/p.a + (x-up)/peak
+	}
+	return r.reached[i+1] - (after(p.out, p.b, p.length-x)-p.out)/p.b
+}
+
+// Tenths gives the running time in tenths of a second, correctly rounded.
+func (r *Run) Tenths() int64 {
+	t := r.reached[len(r.profile)] * 10
+	n := math.Floor(t + 0.5)
+	// The float's error is far below this; where it could decide the rounding,
+	// the same sum is made with more digits.
+	const doubt = 1e-4
+	if math.Abs(t+0.5-n) > doubt && math.Abs(t+0.5-n-1) > doubt {
+		return int64(n)
+	}
+	return r.exactTenths()
+}
+
+// Peak gives the highest speed, in whole mm/s rounded down, that the train
+// reaches in the piece of the profile at s, and the length that the piece
+// would need for its full speed to be reached at all.
+func (r *Run) Peak(s unit.Distance) (mmPerSecond int64, needed unit.Distance) {
+	c := r.profile.CursorAt(s)
+	p := r.piece(c.Index())
+	_, peak := p.time()
+	up, down := p.distances(p.top)
+	return int64(math.Floor(peak + 1e-6)), unit.Distance(math.Ceil(up + down - 1e-6))
+}
+
+// Mirrored turns a profile round, for a run against the running distance. The
+// piece that ends at the length of the track then begins at 0.
+func Mirrored(f step.Func) step.Func {
+	if len(f) == 0 {
+		return nil
+	}
+	length := f[len(f)-1].To
+	out := make(step.Func, len(f))
+	for i, p := range f {
+		out[len(f)-1-i] = step.Piece{From: length - p.To, To: length - p.From, Speed: p.Speed}
+	}
+	return out
+}

@@ -1,0 +1,134 @@
+// Package scope holds what change requests declare against what is observed.
+//
+// Changes are cut at the limits of the declarations. A piece is inside where a
+// declaration covers its direction, range, sense and train; the run-out of a
+// train length may lie past the far end of the declaration that holds the row
+// behind it. Everything else is outside.
+//
+//	scope.Cut(observed, declared) // one list for each observed change
+package scope
+
+import (
+	"slices"
+
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// Observed is a change on one route that one train sees. Distances are running
+// distances on the target's track.
+type Observed struct {
+	Direction   codes.Direction
+	From, To    unit.Distance
+	Train       int
+	TrainLength unit.Distance
+	Raised      bool
+	RunOut      bool
+	// RowEnds are the far ends, in the direction of travel, of the altered rows
+	// that govern the change.
+	RowEnds []unit.Distance
+}
+
+// Declared is what a change request declares on one route.
+type Declared struct {
+	Directions codes.Directions
+	From, To   unit.Distance
+	Effect     schema.Effect
+	Trains     []int // nil: every train
+}
+
+// Outside stands in Piece.By for no declaration.
+const Outside = -1
+
+// Piece is a part of an observed change that one declaration holds, or none.
+type Piece struct {
+	From, To unit.Distance
+	By       int // index of the declaration, the first that holds it; or Outside
+	// RunOut: it is inside only as the run-out of a train length past the far
+	// end of the declaration.
+	RunOut bool
+}
+
+// allows tells whether the declaration is for this direction, sense and train.
+func (d *Declared) allows(o *Observed) bool {
+	switch {
+	case !d.Directions.Has(o.Direction),
+		d.Effect == schema.Raise && !o.Raised,
+		d.Effect == schema.Lower && o.Raised,
+		d.Trains != nil && !slices.Contains(d.Trains, o.Train):
+		return false
+	}
+	return true
+}
+
+// runOut gives the stretch past the far end within which the run-out of a train
+// is inside, and whether a row behind the change ends in the declaration.
+func (d *Declared) runOut(o *Observed) (from, to unit.Distance, ok bool) {
+	if !o.RunOut {
+		return 0, 0, false
+	}
+	for _, end := range o.RowEnds {
+		ok = ok || d.From <= end && end <= d.To
+	}
+	if o.Direction == codes.Reverse {
+		return d.From - o.TrainLength, d.From, ok
+	}
+	return d.To, d.To + o.TrainLength, ok
+}
+
+// Cut cuts each observed change at the limits of the declarations that matter
+// to it. Neighbouring pieces of a change differ in By or RunOut.
+func Cut(observed []Observed, declared []Declared) [][]Piece {
+	out := make([][]Piece, len(observed))
+	for i := range observed {
+		out[i] = cut(&observed[i], declared)
+	}
+	return out
+}
+
+func cut(o *Observed, declared []Declared) []Piece {
+	type claim struct {
+		from, to unit.Distance
+		by       int
+		runOut   bool
+	}
+	var plain, runOuts []claim
+	limits := []unit.Distance{o.From, o.To}
+	for i := range declared {
+		d := &declared[i]
+		if !d.allows(o) {
+			continue
+		}
+		plain = append(plain, claim{d.From, d.To, i, false})
+		limits = append(limits, d.From, d.To)
+		if from, to, ok := d.runOut(o); ok {
+			runOuts = append(runOuts, claim{from, to, i, true})
+			limits = append(limits, from, to)
+		}
+	}
+	// A plain claim counts before one by run-out.
+	claims := append(plain, runOuts...)
+	slices.Sort(limits)
+	limits = slices.Compact(limits)
+	var pieces []Piece
+	for k := range len(limits) - 1 {
+		from, to := limits[k], limits[k+1]
+		if from < o.From || to > o.To {
+			continue
+		}
+		p := Piece{From: from, To: to, By: Outside}
+		for _, c := range claims {
+			if c.from <= from && to <= c.to {
+				p.By, p.RunOut = c.by, c.runOut
+				break
+			}
+		}
+		if n := len(pieces); n > 0 && pieces[n-1].By == p.By && pieces[n-1].RunOut == p.RunOut {
+			pieces[n-1].To = to
+			continue
+		}
+		pieces = append(pieces, p)
+	}
+	return pieces
+}

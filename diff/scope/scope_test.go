@@ -1,0 +1,117 @@
+package scope
+
+import (
+	"reflect"
+	"slices"
+	"testing"
+
+	"pgregory.net/rapid"
+
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+const m = unit.Metre
+
+func TestCut(t *testing.T) {
+	raise := Observed{From: 100 * m, To: 200 * m, Train: 1, TrainLength: 30 * m, Raised: true}
+	runOut := Observed{From: 200 * m, To: 230 * m, Train: 1, TrainLength: 30 * m, RunOut: true, RowEnds: []unit.Distance{200 * m}}
+	back := runOut
+	back.Direction, back.From, back.To, back.RowEnds = codes.Reverse, 70*m, 100*m, []unit.Distance{100 * m}
+	all := Declared{Directions: codes.Both, From: 100 * m, To: 200 * m}
+	with := func(change func(*Declared)) Declared { d := all; change(&d); return d }
+	tests := []struct {
+		name     string
+		observed Observed
+		declared []Declared
+		want     []Piece
+	}{
+		{"nothing declared", raise, nil, []Piece{{100 * m, 200 * m, Outside, false}}},
+		{"covered", raise, []Declared{all}, []Piece{{100 * m, 200 * m, 0, false}}},
+		{"sense", raise, []Declared{with(func(d *Declared) { d.Effect = schema.Lower })}, []Piece{{100 * m, 200 * m, Outside, false}}},
+		{"direction", raise, []Declared{with(func(d *Declared) { d.Directions = codes.OnlyReverse })}, []Piece{{100 * m, 200 * m, Outside, false}}},
+		{"other train", raise, []Declared{with(func(d *Declared) { d.Trains = []int{0} })}, []Piece{{100 * m, 200 * m, Outside, false}}},
+		{"no train", raise, []Declared{with(func(d *Declared) { d.Trains = []int{} })}, []Piece{{100 * m, 200 * m, Outside, false}}},
+		{"a part", raise, []Declared{with(func(d *Declared) { d.From, d.To = 120*m, 150*m })},
+			[]Piece{{100 * m, 120 * m, Outside, false}, {120 * m, 150 * m, 0, false}, {150 * m, 200 * m, Outside, false}}},
+		{"two that meet", raise, []Declared{with(func(d *Declared) { d.To = 150 * m }), with(func(d *Declared) { d.From = 150 * m })},
+			[]Piece{{100 * m, 150 * m, 0, false}, {150 * m, 200 * m, 1, false}}},
+		{"overlapping: the first counts", raise, []Declared{with(func(d *Declared) { d.To = 150 * m }), all},
+			[]Piece{{100 * m, 150 * m, 0, false}, {150 * m, 200 * m, 1, false}}},
+		{"run-out past the far end", runOut, []Declared{all}, []Piece{{200 * m, 230 * m, 0, true}}},
+		{"run-out against the distance", back, []Declared{all}, []Piece{{70 * m, 100 * m, 0, true}}},
+		{"run-out of a row that ends elsewhere", runOut, []Declared{with(func(d *Declared) { d.To = 190 * m })}, []Piece{{200 * m, 230 * m, Outside, false}}},
+		{"run-out longer than the train", with2(runOut, func(o *Observed) { o.To = 240 * m }), []Declared{all},
+			[]Piece{{200 * m, 230 * m, 0, true}, {230 * m, 240 * m, Outside, false}}},
+		{"not run-out", with2(runOut, func(o *Observed) { o.RunOut = false }), []Declared{all}, []Piece{{200 * m, 230 * m, Outside, false}}},
+	}
+	for _, test := range tests {
+		t.Run(test.name, func(t *testing.T) {
+			if got := Cut([]Observed{test.observed}, test.declared)[0]; !reflect.DeepEqual(got, test.want) {
+				t.Errorf("got %v, want %v", got, test.want)
+			}
+		})
+	}
+}
+
+func with2(o Observed, change func(*Observed)) Observed { change(&o); return o }
+
+// Point by point: a piece is inside exactly where some declaration says so.
+func TestCutPointByPoint(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		number := func(name string) unit.Distance { return unit.Distance(rapid.IntRange(0, 60).Draw(t, name)) }
+		from := number("from")
+		o := Observed{
+			Direction: codes.Direction(rapid.IntRange(0, 1).Draw(t, "direction")), From: from, To: from + 1 + number("length"),
+			Train: rapid.IntRange(0, 2).Draw(t, "train"), TrainLength: 1 + number("train length"),
+			Raised: rapid.Bool().Draw(t, "raised"), RunOut: rapid.Bool().Draw(t, "run-out"), RowEnds: []unit.Distance{number("end")},
+		}
+		var declared []Declared
+		for range rapid.IntRange(0, 4).Draw(t, "declarations") {
+			from := number("d from")
+			d := Declared{
+				Directions: codes.Directions(rapid.IntRange(1, 3).Draw(t, "d directions")), From: from, To: from + 1 + number("d length"),
+				Effect: schema.Effect(rapid.IntRange(0, 2).Draw(t, "effect")),
+			}
+			if rapid.Bool().Draw(t, "named") {
+				d.Trains = rapid.SliceOfN(rapid.IntRange(0, 2), 0, 2).Draw(t, "trains")
+			}
+			declared = append(declared, d)
+		}
+		pieces := Cut([]Observed{o}, declared)[0]
+		at := o.From
+		for _, p := range pieces {
+			if p.From != at || p.To <= p.From {
+				t.Fatalf("pieces do not touch: %v", pieces)
+			}
+			at = p.To
+		}
+		if at != o.To {
+			t.Fatalf("pieces end at %d: %v", at, pieces)
+		}
+		for s := o.From; s < o.To; s++ {
+			inside := slices.ContainsFunc(declared, func(d Declared) bool {
+				right := d.Directions.Has(o.Direction) && (d.Trains == nil || slices.Contains(d.Trains, o.Train)) &&
+					(d.Effect == schema.AnyEffect || (d.Effect == schema.Raise) == o.Raised)
+				if !right {
+					return false
+				}
+				if d.From <= s && s < d.To {
+					return true
+				}
+				if !o.RunOut || o.RowEnds[0] < d.From || o.RowEnds[0] > d.To {
+					return false
+				}
+				if o.Direction == codes.Nominal {
+					return s >= d.To && s < d.To+o.TrainLength
+				}
+				return s < d.From && s >= d.From-o.TrainLength
+			})
+			i := slices.IndexFunc(pieces, func(p Piece) bool { return p.From <= s && s < p.To })
+			if (pieces[i].By != Outside) != inside {
+				t.Fatalf("at %d: inside is %v, pieces %v", s, inside, pieces)
+			}
+		}
+	})
+}
