@@ -21,6 +21,8 @@ type Dataset struct {
 	Routes   []*Route        // in the byte order of their ids
 	Requests []ChangeRequest // in the byte order of their ids
 	Accepted []Acceptance    // in the order of accepted.toml
+	// Policy is nil where the data set has none.
+	Policy *Policy
 	// Unread lists the folders of routes that LoadPair left out because both
 	// revisions hold the same files there, in byte order. Load leaves out none.
 	Unread []Folder

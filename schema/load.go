@@ -1,0 +1,392 @@
+package schema
+
+import (
+	"bytes"
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"io/fs"
+	"path"
+	"runtime"
+	"slices"
+	"strings"
+	"time"
+
+	"golang.org/x/sync/errgroup"
+
+	"speedtrail/schema/source"
+	"speedtrail/schema/table"
+)
+
+// Bounds of a data set.
+const (
+	MaxRoutes   = 20_000
+	MaxRequests = 10_000
+	MaxTrains   = 1_000
+	MaxJumps    = 1_000
+)
+
+// The files of a data set.
+const (
+	datasetFile  = "dataset.toml"
+	trainsFile   = "trains.toml"
+	acceptedFile = "accepted.toml"
+	signoffFile  = "signoff.toml"
+	signersFile  = "allowed_signers"
+	routesDir    = "routes"
+	requestsDir  = "requests"
+	routeFile    = "route.toml"
+)
+
+var routeFiles = []string{routeFile, "speed.csv", "axle-load.csv", "temporary.csv", "curves.csv", "gradients.csv", "places.csv"}
+
+// Identified is what a directory entry can offer beside fs.DirEntry: equal
+// identities that are not empty mean equal content.
+type Identified interface{ Identity() string }
+
+// PairError is what is wrong with either side of LoadPair.
+type PairError struct{ Base, Target error }
+
+// Error gives both sides' errors.
+func (e *PairError) Error() string {
+	switch {
+	case e.Base == nil:
+		return "target: " + e.Target.Error()
+	case e.Target == nil:
+		return "base: " + e.Base.Error()
+	}
+	return "base: " + e.Base.Error() + "\ntarget: " + e.Target.Error()
+}
+
+// Unwrap gives the errors of both sides.
+func (e *PairError) Unwrap() []error {
+	var list []error
+	for _, err := range []error{e.Base, e.Target} {
+		if err != nil {
+			list = append(list, err)
+		}
+	}
+	return list
+}
+
+// Load reads and checks the data set in fsys. Where the data is faulty, the
+// error is a *source.Faults with every fault; else it is an error of fsys or of
+// the context.
+func Load(ctx context.Context, fsys fs.FS) (*Dataset, error) {
+	l := &loading{fsys: fsys}
+	if err := l.list(); err != nil {
+		return nil, err
+	}
+	if err := l.read(ctx, l.folders); err != nil {
+		return nil, err
+	}
+	return l.finish()
+}
+
+// LoadPair reads two revisions of one data set. It leaves out, on both sides,
+// the folders of routes that hold the same files on both: they are listed in
+// Dataset.Unread. The error is a *PairError.
+func LoadPair(ctx context.Context, base, target fs.FS) (b, t *Dataset, err error) {
+	sides := [2]*loading{{fsys: base}, {fsys: target}}
+	errs := [2]error{sides[0].list(), sides[1].list()}
+	if errs[0] == nil && errs[1] == nil {
+		readDiffering(ctx, sides, &errs)
+	}
+	var data [2]*Dataset
+	for i, l := range sides {
+		if errs[i] == nil {
+			data[i], errs[i] = l.finish()
+		}
+	}
+	if err := ctx.Err(); err != nil {
+		return nil, nil, err
+	}
+	if errs[0] != nil || errs[1] != nil {
+		return nil, nil, &PairError{errs[0], errs[1]}
+	}
+	return data[0], data[1], nil
+}
+
+// readDiffering reads the folders that differ. Where that brings a route id to
+// the target that the base's differing folders do not have, the ids of the
+// equal folders are looked at, too: it must not be one of theirs.
+func readDiffering(ctx context.Context, sides [2]*loading, errs *[2]error) {
+	inBase, same := map[Folder]bool{}, map[Folder]bool{}
+	for _, f := range sides[0].folders {
+		inBase[f] = f.Identity != ""
+	}
+	for _, f := range sides[1].folders {
+		same[f] = inBase[f]
+	}
+	for i, l := range sides {
+		var read []Folder
+		for _, f := range l.folders {
+			if same[f] {
+				l.data.Unread = append(l.data.Unread, f)
+			} else {
+				read = append(read, f)
+			}
+		}
+		errs[i] = l.read(ctx, read)
+	}
+	known := map[string]bool{}
+	for _, r := range sides[0].data.Routes {
+		known[r.ID] = true
+	}
+	for _, r := range sides[1].data.Routes {
+		if !known[r.ID] {
+			for i, l := range sides {
+				if errs[i] == nil {
+					errs[i] = l.readUnreadIDs(ctx)
+				}
+			}
+			return
+		}
+	}
+}
+
+// UnreadID gives the id and name of a route whose folder was left unread. It
+// reads the folder's route.toml.
+func UnreadID(fsys fs.FS, f Folder) (id, name string, err error) {
+	r := reader{fsys: fsys}
+	route := r.routeTOML(f.Path)
+	if r.err != nil {
+		return "", "", r.err
+	}
+	if route == nil {
+		return "", "", r.faults.Err()
+	}
+	return route.ID, route.Name, nil
+}
+
+// loading is one data set while it is read.
+type loading struct {
+	fsys    fs.FS
+	folders []Folder
+	faults  source.Collector
+	data    Dataset
+	unread  map[string]string // id -> folder, of unread routes, where they were looked at
+}
+
+// list finds the route folders.
+func (l *loading) list() error {
+	root, err := fs.ReadDir(l.fsys, ".")
+	if err != nil {
+		return err
+	}
+	for _, e := range root {
+		dir := e.Name() == routesDir || e.Name() == requestsDir
+		file := slices.Contains([]string{datasetFile, trainsFile, acceptedFile, signoffFile, signersFile}, e.Name())
+		if dir || file {
+			l.checkType(e, e.Name(), dir)
+		}
+	}
+	if i := slices.IndexFunc(root, func(e fs.DirEntry) bool { return e.Name() == routesDir && e.IsDir() }); i < 0 {
+		return nil
+	}
+	entries, err := fs.ReadDir(l.fsys, routesDir)
+	if err != nil {
+		return err
+	}
+	folded := map[string]string{}
+	for _, e := range entries {
+		p := routesDir + "/" + e.Name()
+		if !e.IsDir() {
+			if l.checkType(e, p, false) && isData(e.Name()) {
+				l.faults.Add(source.Position{File: p}, "a table or TOML file directly in routes/, each route has a folder of its own there")
+			}
+			continue
+		}
+		if problem := table.TextProblem(e.Name()); problem != "" {
+			l.faults.Add(source.Position{File: p}, "the folder's name is %s", problem)
+			continue
+		}
+		fold := strings.ToLower(e.Name())
+		if other, ok := folded[fold]; ok {
+			l.faults.Add(source.Position{File: p}, "the folder's name differs from %s in letter case only, which some file systems cannot hold", source.Quote(other))
+		}
+		folded[fold] = e.Name()
+		f := Folder{Path: p}
+		if id, ok := e.(Identified); ok {
+			f.Identity = id.Identity()
+		}
+		l.folders = append(l.folders, f)
+	}
+	if len(l.folders) > MaxRoutes {
+		l.faults.Add(source.Position{File: routesDir}, "%d route folders, at most %d are allowed", len(l.folders), MaxRoutes)
+		l.folders = l.folders[:MaxRoutes]
+	}
+	return nil
+}
+
+// checkType refuses what is neither a file nor a folder.
+func (l *loading) checkType(e fs.DirEntry, p string, dir bool) bool {
+	return checkType(&l.faults, e, p, dir)
+}
+
+func checkType(faults *source.Collector, e fs.DirEntry, p string, dir bool) bool {
+	at := source.Position{File: p}
+	switch mode := e.Type(); {
+	case mode&fs.ModeSymlink != 0:
+		faults.Add(at, "is a symbolic link, a data set holds plain files and folders only")
+	case mode&fs.ModeIrregular != 0:
+		faults.Add(at, "is a submodule or another repository, a data set holds plain files and folders only")
+	case e.IsDir() && !dir:
+		faults.Add(at, "is a folder, a file is needed")
+	case !e.IsDir() && !mode.IsRegular():
+		faults.Add(at, "is a special file, a data set holds plain files and folders only")
+	case !e.IsDir() && dir:
+		faults.Add(at, "is a file, a folder is needed")
+	default:
+		return true
+	}
+	return false
+}
+
+// isData tells whether a name looks like one of a data set's files.
+func isData(name string) bool {
+	ending := strings.ToLower(path.Ext(name))
+	return ending == ".csv" || ending == ".toml"
+}
+
+// read reads the frame of the data set and the given route folders, as many at
+// a time as there are processors.
+func (l *loading) read(ctx context.Context, folders []Folder) error {
+	frame := &reader{fsys: l.fsys}
+	frame.frame(&l.data)
+	if len(l.folders) == 0 && frame.err == nil {
+		frame.faults.Add(source.Position{File: routesDir}, "no route: a data set has at least one folder in routes/, with a route.toml")
+	}
+	readers := make([]reader, len(folders))
+	routes := make([]*Route, len(folders))
+	work, ctx := errgroup.WithContext(ctx)
+	work.SetLimit(runtime.GOMAXPROCS(0))
+	for i, f := range folders {
+		work.Go(func() error {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
+			readers[i].fsys, readers[i].zone = l.fsys, l.data.TimeZone
+			routes[i] = readers[i].route(f.Path)
+			return readers[i].err
+		})
+	}
+	if err := errors.Join(frame.err, work.Wait()); err != nil {
+		return err
+	}
+	l.take(frame)
+	for i := range readers {
+		l.take(&readers[i])
+	}
+	for _, r := range routes {
+		if r != nil {
+			l.data.Routes = append(l.data.Routes, r)
+		}
+	}
+	return nil
+}
+
+func (l *loading) take(r *reader) {
+	l.faults.Merge(&r.faults)
+	l.data.Files = append(l.data.Files, r.files...)
+}
+
+// readUnreadIDs looks at the ids of the unread routes.
+func (l *loading) readUnreadIDs(ctx context.Context) error {
+	l.unread = map[string]string{}
+	for _, f := range l.data.Unread {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
+		id, _, err := UnreadID(l.fsys, f)
+		if err != nil {
+			return err
+		}
+		l.unread[id] = f.Path
+	}
+	return nil
+}
+
+// finish checks what concerns the data set as a whole and sorts it.
+func (l *loading) finish() (*Dataset, error) {
+	d := &l.data
+	slices.SortStableFunc(d.Routes, func(a, b *Route) int { return strings.Compare(a.ID, b.ID) })
+	for i, r := range d.Routes {
+		if folder, ok := l.unread[r.ID]; ok {
+			l.faults.Add(r.Pos, "route id %s is that of %s, too; ids are unique", source.Quote(r.ID), folder)
+		}
+		if i > 0 && d.Routes[i-1].ID == r.ID {
+			l.faults.Add(r.Pos, "route id %s is that of %s, too; ids are unique", source.Quote(r.ID), d.Routes[i-1].Folder)
+		}
+	}
+	if err := l.faults.Err(); err != nil {
+		return nil, err
+	}
+	slices.SortFunc(d.Files, func(a, b File) int { return strings.Compare(a.Path, b.Path) })
+	slices.SortFunc(d.Unread, func(a, b Folder) int { return strings.Compare(a.Path, b.Path) })
+	return d, nil
+}
+
+// reader reads some files of a data set. It stops at the first error of the
+// file system and goes on after faults.
+type reader struct {
+	fsys   fs.FS
+	zone   *time.Location // of bare dates
+	faults source.Collector
+	files  []File
+	err    error
+}
+
+// file reads a file that may be missing.
+func (r *reader) file(name string, most int64) (content []byte, ok bool) {
+	if r.err != nil {
+		return nil, false
+	}
+	f, err := r.fsys.Open(name)
+	if errors.Is(err, fs.ErrNotExist) {
+		return nil, false
+	}
+	if err != nil {
+		r.err = err
+		return nil, false
+	}
+	defer f.Close()
+	info, err := f.Stat()
+	if err == nil && info.Size() > most {
+		r.faults.Add(source.Position{File: name}, "%d bytes, at most %d are allowed", info.Size(), most)
+		return nil, false
+	}
+	var b bytes.Buffer
+	if err == nil {
+		b.Grow(int(info.Size()) + bytes.MinRead)
+		_, err = b.ReadFrom(io.LimitReader(f, most+1))
+	}
+	if err != nil {
+		r.err = fmt.Errorf("%s: %w", name, err)
+		return nil, false
+	}
+	if int64(b.Len()) > most {
+		r.faults.Add(source.Position{File: name}, "more than %d bytes, which is the most that is allowed", most)
+		return nil, false
+	}
+	r.files = append(r.files, File{Path: name, Content: b.Bytes()})
+	return b.Bytes(), true
+}
+
+// toml reads a TOML file; false where it is missing or faulty in form.
+func (r *reader) toml(name string, required bool) (table.Reader, bool) {
+	count := r.faults.Count()
+	content, ok := r.file(name, table.MaxTOMLSize)
+	if !ok {
+		if required && r.err == nil && r.faults.Count() == count {
+			r.faults.Add(source.Position{File: name}, "the file is missing")
+		}
+		return table.Reader{}, false
+	}
+	m := table.ReadTOML(name, content, &r.faults)
+	if m == nil {
+		return table.Reader{}, false
+	}
+	return table.Reader{Map: m, Faults: &r.faults}, true
+}

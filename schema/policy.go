@@ -1,0 +1,246 @@
+package schema
+
+import (
+	"bytes"
+	"regexp"
+	"slices"
+	"strconv"
+	"strings"
+	"time"
+
+	"golang.org/x/crypto/ssh"
+
+	"speedtrail/schema/source"
+	"speedtrail/schema/table"
+)
+
+// Preparer is the built-in role of those who wrote a change.
+const Preparer = "preparer"
+
+// Policy says who may sign what off: signoff.toml and allowed_signers.
+type Policy struct {
+	Persons []Person
+	Roles   []Role
+	Keys    []Key // of allowed_signers, in its order
+}
+
+// Person is somebody with the addresses that stand in commits.
+type Person struct {
+	Pos       source.Position
+	Principal string   // as in allowed_signers, lower case
+	Emails    []string // lower case
+}
+
+// Role is a part that people take in an approval.
+type Role struct {
+	Pos           source.Position
+	Name          string
+	Needed        int      // how many different people, at least 1
+	IndependentOf []string // names of roles, Preparer among them
+	Signers       []string // principals; empty: every person
+}
+
+// Key is a public key that a principal may sign with.
+type Key struct {
+	Pos         source.Position
+	Principal   string
+	Public      ssh.PublicKey
+	Fingerprint string   // SHA256:...
+	Namespaces  []string // empty: every namespace
+	// Bounds of validity, both inclusive; zero: none.
+	ValidAfter, ValidBefore time.Time
+}
+
+// policy reads both policy files; nil where there is none.
+func (r *reader) policy() *Policy {
+	m, haveRoles := r.toml(signoffFile, false)
+	content, haveKeys := r.file(signersFile, table.MaxTOMLSize)
+	present := func(name string) bool {
+		return slices.ContainsFunc(r.files, func(f File) bool { return f.Path == name })
+	}
+	switch {
+	case !present(signoffFile) && !present(signersFile):
+		return nil
+	case !present(signersFile):
+		r.faults.Add(source.Position{File: signersFile}, "the file is missing, signoff.toml needs it")
+	case !present(signoffFile):
+		r.faults.Add(source.Position{File: signoffFile}, "the file is missing, allowed_signers needs it")
+	}
+	before := r.faults.Count()
+	p := &Policy{}
+	if haveKeys {
+		r.allowedSigners(p, content)
+	}
+	if haveRoles {
+		r.signoff(p, m)
+		if r.faults.Count() == before {
+			r.checkRoles(p)
+		}
+	}
+	return p
+}
+
+func (r *reader) signoff(p *Policy, m table.Reader) {
+	if v := m.Number("format", true); v != nil && v.Text != "1" {
+		r.faults.Add(v.Pos, "format %s is not known, this program reads format 1", source.Quote(v.Text))
+	}
+	emails, principals, names := map[string]source.Position{}, map[string]source.Position{}, map[string]source.Position{}
+	for _, t := range m.Tables("person") {
+		person := Person{Pos: t.Pos, Principal: t.Text("principal", true)}
+		r.unique(principals, "person", person.Principal, t.Place("principal"))
+		for _, v := range t.Texts("emails") {
+			email := asciiLower(v.Text)
+			r.unique(emails, "e-mail address", email, v.Pos)
+			person.Emails = append(person.Emails, email)
+		}
+		t.Finish()
+		p.Persons = append(p.Persons, person)
+	}
+	for _, t := range m.Tables("role") {
+		role := Role{Pos: t.Pos, Name: t.Text("name", true), Needed: whole(t, "needed", 1, 100)}
+		if t.Get("needed") == nil {
+			r.faults.Add(t.Pos, "needed is missing")
+		}
+		if role.Name != "" && !roleName.MatchString(role.Name) || role.Name == Preparer {
+			r.faults.Add(t.Place("name"), "role name %s is not made of letters, digits and '-', or is the built-in %s", source.Quote(role.Name), Preparer)
+		}
+		r.unique(names, "role", role.Name, t.Place("name"))
+		for _, v := range t.Texts("independent_of") {
+			role.IndependentOf = append(role.IndependentOf, v.Text)
+		}
+		for _, v := range t.Texts("signers") {
+			role.Signers = append(role.Signers, v.Text)
+		}
+		t.Finish()
+		p.Roles = append(p.Roles, role)
+	}
+	m.Finish()
+}
+
+var roleName = regexp.MustCompile(`^[A-Za-z0-9-]{1,50}$`)
+
+// checkRoles checks what makes a policy one that can be met.
+func (r *reader) checkRoles(p *Policy) {
+	if len(p.Roles) == 0 {
+		r.faults.Add(source.Position{File: signoffFile}, "no role, at least one [[role]] is needed")
+		return
+	}
+	independent := false
+	for _, role := range p.Roles {
+		for _, other := range role.IndependentOf {
+			independent = independent || other == Preparer
+			if other != Preparer && !slices.ContainsFunc(p.Roles, func(r Role) bool { return r.Name == other }) {
+				r.faults.Add(role.Pos, "role %s is independent of %s, which is no role", source.Quote(role.Name), source.Quote(other))
+			}
+		}
+		people := len(p.Persons)
+		if len(role.Signers) > 0 {
+			people = len(slices.Compact(slices.Sorted(slices.Values(role.Signers))))
+			for _, s := range role.Signers {
+				if !slices.ContainsFunc(p.Persons, func(person Person) bool { return person.Principal == s }) {
+					r.faults.Add(role.Pos, "role %s names the signer %s, who is no person of this file", source.Quote(role.Name), source.Quote(s))
+				}
+			}
+		}
+		if people < role.Needed {
+			r.faults.Add(role.Pos, "role %s needs %d people and has %d", source.Quote(role.Name), role.Needed, people)
+		}
+	}
+	if !independent {
+		r.faults.Add(p.Roles[0].Pos, "no role is independent of preparer, at least one has to be")
+	}
+	for _, k := range p.Keys {
+		if !slices.ContainsFunc(p.Persons, func(person Person) bool { return person.Principal == k.Principal }) {
+			r.faults.Add(k.Pos, "principal %s is no person of %s", source.Quote(k.Principal), signoffFile)
+		}
+	}
+}
+
+// allowedSigners reads the OpenSSH file of that name (ssh-keygen(1), ALLOWED
+// SIGNERS) in a strict form: one literal lower-case principal a line, plain
+// keys, times in UTC.
+func (r *reader) allowedSigners(p *Policy, content []byte) {
+	owners := map[string]string{}
+	line := 0
+	for text := range bytes.Lines(content) {
+		line++
+		at := source.Position{File: signersFile, Line: line, Column: 1}
+		row := strings.TrimSpace(string(text))
+		if row == "" || strings.HasPrefix(row, "#") {
+			continue
+		}
+		k, problem := signerLine(row)
+		if problem != "" {
+			r.faults.Add(at, "%s", problem)
+			continue
+		}
+		k.Pos = at
+		if owner, ok := owners[k.Fingerprint]; ok && owner != k.Principal {
+			r.faults.Add(at, "the key %s is that of %s, too; a key belongs to one principal", k.Fingerprint, source.Quote(owner))
+			continue
+		}
+		owners[k.Fingerprint] = k.Principal
+		p.Keys = append(p.Keys, k)
+	}
+}
+
+var principalForm = regexp.MustCompile(`^[a-z0-9._%+@-]{1,200}$`)
+
+// signerLine reads one line; problem says what is wrong with it.
+func signerLine(row string) (k Key, problem string) {
+	principal, rest, _ := strings.Cut(row, " ")
+	if !principalForm.MatchString(principal) {
+		return k, "principal " + source.Quote(principal) + " is not one literal name in lower case; lists and wildcards are refused"
+	}
+	k.Principal = principal
+	public, _, options, extra, err := ssh.ParseAuthorizedKey([]byte(strings.TrimSpace(rest)))
+	if err != nil || len(extra) > 0 {
+		return k, "no public key can be read: a line is PRINCIPAL [OPTIONS] KEYTYPE KEY"
+	}
+	switch public.Type() {
+	case ssh.KeyAlgoED25519, ssh.KeyAlgoECDSA256, ssh.KeyAlgoECDSA384, ssh.KeyAlgoECDSA521, ssh.KeyAlgoSKED25519, ssh.KeyAlgoSKECDSA256, ssh.KeyAlgoRSA:
+	default:
+		return k, "key type " + source.Quote(public.Type()) + " is refused; allowed are Ed25519, ECDSA, RSA and their security key forms, certificates are not"
+	}
+	for _, option := range options {
+		name, value, _ := strings.Cut(option, "=")
+		value = strings.Trim(value, `"`)
+		switch strings.ToLower(name) {
+		case "namespaces":
+			k.Namespaces = strings.Split(value, ",")
+		case "valid-after":
+			k.ValidAfter, err = signerTime(value)
+		case "valid-before":
+			k.ValidBefore, err = signerTime(value)
+		case "cert-authority":
+			return k, "cert-authority is refused: who holds such a key could make any signer"
+		default:
+			return k, "option " + source.Quote(name) + " is not known"
+		}
+		if err != nil {
+			return k, name + " " + strconv.Quote(value) + " is no time in UTC such as 20260301Z or 202603010600Z"
+		}
+	}
+	k.Public, k.Fingerprint = public, ssh.FingerprintSHA256(public)
+	return k, ""
+}
+
+// signerTime reads YYYYMMDDZ, YYYYMMDDHHMMZ or YYYYMMDDHHMMSSZ.
+func signerTime(s string) (time.Time, error) {
+	for _, layout := range []string{"20060102Z", "200601021504Z", "20060102150405Z"} {
+		if t, err := time.Parse(layout, s); err == nil {
+			return t, nil
+		}
+	}
+	return time.Time{}, strconv.ErrSyntax
+}
+
+// asciiLower lowers ASCII letters only: other letters have no one lower form.
+func asciiLower(s string) string {
+	return strings.Map(func(r rune) rune {
+		if 'A' <= r && r <= 'Z' {
+			return r + 'a' - 'A'
+		}
+		return r
+	}, s)
+}

@@ -1,0 +1,215 @@
+package schema
+
+import (
+	"errors"
+	"fmt"
+	"io/fs"
+	"regexp"
+	"slices"
+	"strings"
+
+	"speedtrail/schema/chainage"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/source"
+	"speedtrail/schema/table"
+)
+
+// maxDepth bounds how deep folders below a route's are searched for data that
+// stands in the wrong place.
+const maxDepth = 8
+
+// route reads the folder of a route; nil where the route cannot be told.
+func (r *reader) route(folder string) *Route {
+	entries, err := fs.ReadDir(r.fsys, folder)
+	if err != nil {
+		r.err = err
+		return nil
+	}
+	present := map[string]bool{}
+	for _, e := range entries {
+		p := folder + "/" + e.Name()
+		switch {
+		case e.IsDir():
+			if slices.Contains(routeFiles, e.Name()) {
+				checkType(&r.faults, e, p, false)
+			}
+			r.noDataBelow(p, 0)
+		case !checkType(&r.faults, e, p, false):
+		case slices.Contains(routeFiles, e.Name()):
+			present[e.Name()] = true
+		case isData(e.Name()):
+			r.faults.Add(source.Position{File: p}, "unknown file, a route has %s; another name would hide data", strings.Join(routeFiles, ", "))
+		}
+	}
+	if !present[routeFile] {
+		r.faults.Add(source.Position{File: folder + "/" + routeFile}, "the file is missing, every folder in routes/ is a route")
+		return nil
+	}
+	route := r.routeTOML(folder)
+	known := route != nil
+	if !known {
+		// The tables are read all the same, for their faults.
+		route = &Route{Folder: folder, Directions: codes.Both}
+	}
+	if !present["speed.csv"] {
+		r.faults.Add(source.Position{File: folder + "/speed.csv"}, "the file is missing, the basic speed is always given (SUBSET-026 3.11.3.2.2)")
+	}
+	r.tables(route, present)
+	if !known {
+		return nil
+	}
+	return route
+}
+
+// noDataBelow records tables and TOML files, and links, in folders where the
+// data set has none.
+func (r *reader) noDataBelow(dir string, depth int) {
+	entries, err := fs.ReadDir(r.fsys, dir)
+	if err != nil {
+		r.err = err
+		return
+	}
+	for _, e := range entries {
+		p := dir + "/" + e.Name()
+		switch {
+		case e.IsDir() && depth < maxDepth:
+			r.noDataBelow(p, depth+1)
+		case e.IsDir():
+			r.faults.Add(source.Position{File: p}, "folders are nested more than %d deep", maxDepth)
+		case checkType(&r.faults, e, p, false) && isData(e.Name()):
+			r.faults.Add(source.Position{File: p}, "a table or TOML file in a folder where none is read, it would hide data")
+		}
+	}
+}
+
+var routeID = regexp.MustCompile(`^[A-Za-z0-9._-]{1,100}$`)
+
+// routeTOML reads route.toml; nil where the track cannot be told.
+func (r *reader) routeTOML(folder string) *Route {
+	m, ok := r.toml(folder+"/"+routeFile, true)
+	if !ok {
+		return nil
+	}
+	route := &Route{Folder: folder, Pos: m.Place("id"), ID: m.Text("id", true), Name: m.Text("name", true), Directions: codes.Both}
+	if route.ID != "" && !routeID.MatchString(route.ID) {
+		r.faults.Add(route.Pos, "route id %s is not made of up to 100 letters, digits, '-', '_' and '.'", source.Quote(route.ID))
+	}
+	before := r.faults.Count()
+	start, end := r.chainageOf(m, "start_km"), r.chainageOf(m, "end_km")
+	route.StartPos, route.EndPos = m.Place("start_km"), m.Place("end_km")
+	jumps := m.Tables("jump")
+	if len(jumps) > MaxJumps {
+		r.faults.Add(m.Place("jump"), "%d chainage jumps, at most %d are allowed", len(jumps), MaxJumps)
+		jumps = nil
+	}
+	list := make([]chainage.Jump, len(jumps))
+	for i, j := range jumps {
+		list[i] = chainage.Jump{Arriving: r.chainageOf(j, "arriving_km").Chainage, Leaving: r.chainageOf(j, "leaving_km").Chainage}
+		route.Jumps = append(route.Jumps, JumpRow{j.Pos, list[i]})
+		j.Finish()
+	}
+	r.directions(m, route)
+	m.Finish()
+	if r.faults.Count() > before {
+		return nil
+	}
+	track, err := chainage.NewTrack(start.Chainage, end.Chainage, list)
+	var jump *chainage.JumpError
+	if errors.As(err, &jump) {
+		at := route.EndPos
+		if jump.Index >= 0 {
+			at = route.Jumps[jump.Index].Pos
+		}
+		r.faults.Add(at, "%s", jump.Problem)
+		return nil
+	}
+	route.Track = track
+	return route
+}
+
+// directions reads the directions of travel that a route is used in.
+func (r *reader) directions(m table.Reader, route *Route) {
+	if m.Get("directions") == nil {
+		return
+	}
+	route.Directions = 0
+	for _, v := range m.Texts("directions") {
+		d, ok := codes.ParseDirections(v.Text)
+		if !ok || d == codes.Both {
+			r.faults.Add(v.Pos, "direction %s is none of nominal, reverse", source.Quote(v.Text))
+			continue
+		}
+		route.Directions |= d
+	}
+	if route.Directions == 0 {
+		r.faults.Add(m.Place("directions"), `directions names none, write ["nominal"] or ["reverse"], or leave it out for both`)
+	}
+}
+
+// chainageOf reads a chainage that carries no occurrence.
+func (r *reader) chainageOf(m table.Reader, key string) chainage.Point {
+	p := r.pointOf(m, key)
+	if p.Occurrence != 0 {
+		r.faults.Add(m.Place(key), "%s is a chainage without an occurrence", key)
+	}
+	return p
+}
+
+// pointOf reads a position: a number, or a text where it needs an occurrence.
+func (r *reader) pointOf(m table.Reader, key string) chainage.Point {
+	v := m.Get(key)
+	if v == nil {
+		r.faults.Add(m.Pos, "%s is missing", key)
+		return chainage.Point{}
+	}
+	if v.Kind != table.NumberKind && v.Kind != table.StringKind {
+		r.faults.Add(v.Pos, "%s is %s, a position in kilometres is needed", key, v.Kind)
+		return chainage.Point{}
+	}
+	p, err := chainage.ParsePoint(strings.TrimSpace(v.Text))
+	if err != nil {
+		r.faults.Add(v.Pos, "%s %s is %s", key, source.Quote(v.Text), pointProblem(err))
+	}
+	return p
+}
+
+// pointProblem words why a text is no position.
+func pointProblem(err error) string {
+	if errors.Is(err, chainage.ErrOccurrence) {
+		return "no position, " + err.Error()
+	}
+	return err.Error()
+}
+
+// locate gives the running distance of a position on a route's track, and
+// records why there is none.
+func (r *reader) locate(route *Route, p chainage.Point, c table.Cell, column string) (at chainage.Point, ok bool) {
+	if route.Track == nil {
+		return p, false
+	}
+	_, err := route.Track.Locate(p)
+	if err == nil {
+		return p, true
+	}
+	segments := route.Track.Segments()
+	detail := ""
+	switch {
+	case errors.Is(err, chainage.ErrOutside):
+		detail = fmt.Sprintf(", which runs from %s to %s", segments[0].From.KM(), segments[len(segments)-1].To.KM())
+	case errors.Is(err, chainage.ErrAmbiguous):
+		detail = ": write " + readings(p, route.Track)
+	case errors.Is(err, chainage.ErrNoOccurrence):
+		detail = ": there are " + readings(p, route.Track)
+	}
+	r.faults.Add(c.Pos, "%s %s is %v%s", column, source.Quote(c.Text), err, detail)
+	return p, false
+}
+
+// readings lists the ways in which a repeated chainage is written.
+func readings(p chainage.Point, t *chainage.Track) string {
+	list := make([]string, min(t.Occurrences(p.Chainage), 9))
+	for i := range list {
+		list[i] = chainage.Point{Chainage: p.Chainage, Occurrence: i + 1}.String()
+	}
+	return strings.Join(list, " or ")
+}
