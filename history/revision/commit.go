@@ -1,0 +1,282 @@
+package revision
+
+import (
+	"bytes"
+	"errors"
+	"fmt"
+	"strconv"
+	"strings"
+	"time"
+	"unicode/utf8"
+
+	"github.com/go-git/go-git/v5/plumbing"
+)
+
+const (
+	maxCommit  = 16 << 20 // bytes of one commit or tag object
+	maxParents = 4096     // parents of one commit
+)
+
+// Person is who wrote or committed, and when. Name and address are as recorded;
+// a mailmap is not applied.
+type Person struct {
+	Name  string
+	Email string
+	When  time.Time // in the recorded offset from UTC; zero where none can be read
+}
+
+// Commit is one commit of a repository. Texts are valid UTF-8: bytes that are
+// not are read as ISO 8859-1 where the commit says so, and otherwise replaced
+// with U+FFFD.
+type Commit struct {
+	Hash      string   // 40 hexadecimal digits
+	Tree      string   // 40 hexadecimal digits
+	Parents   []string // as recorded, also where a shallow clone lacks them
+	Author    Person
+	Committer Person
+	Subject   string // first paragraph of the message on one line
+	Message   string // whole message, the subject included
+
+	// Boundary says that a shallow clone ends here: the commit may record
+	// parents, but they are not part of this clone's history.
+	Boundary bool
+}
+
+// links is what a walk needs of a commit.
+type links struct {
+	parents  []plumbing.Hash
+	when     int64 // seconds since 1970 of the committer
+	boundary bool  // history was cut here
+}
+
+// parseCommit reads the bytes of a commit object. Tree and parents must be
+// there and well formed, as everything rests on them; persons and the message
+// are read leniently.
+func parseCommit(data []byte) (Commit, error) {
+	var c Commit
+	line, rest := cutLine(data)
+	hash, err := headerHash(line, "tree ")
+	if err != nil {
+		return Commit{}, err
+	}
+	c.Tree = hash.String()
+	for {
+		line, next := cutLine(rest)
+		if !bytes.HasPrefix(line, []byte("parent ")) {
+			break
+		}
+		hash, err := headerHash(line, "parent ")
+		if err != nil {
+			return Commit{}, err
+		}
+		if len(c.Parents) == maxParents {
+			return Commit{}, fmt.Errorf("more than %d parents", maxParents)
+		}
+		c.Parents = append(c.Parents, hash.String())
+		rest = next
+	}
+	author, rest, err := headerText(rest, "author ")
+	if err != nil {
+		return Commit{}, err
+	}
+	committer, rest, err := headerText(rest, "committer ")
+	if err != nil {
+		return Commit{}, err
+	}
+	latin := false
+	for len(rest) > 0 && rest[0] != '\n' {
+		line, rest = cutLine(rest)
+		if name, ok := strings.CutPrefix(string(line), "encoding "); ok {
+			latin = isLatin1(name)
+		}
+	}
+	c.Author, c.Committer = parsePerson(author, latin), parsePerson(committer, latin)
+	if len(rest) > 0 {
+		c.Message = decodeText(rest[1:], latin)
+	}
+	c.Subject = subject(c.Message)
+	return c, nil
+}
+
+// parseLinks reads of a commit object only what a walk needs.
+func parseLinks(data []byte) (links, error) {
+	var l links
+	line, rest := cutLine(data)
+	if _, err := headerHash(line, "tree "); err != nil {
+		return links{}, err
+	}
+	for {
+		line, next := cutLine(rest)
+		if !bytes.HasPrefix(line, []byte("parent ")) {
+			break
+		}
+		hash, err := headerHash(line, "parent ")
+		if err != nil {
+			return links{}, err
+		}
+		if len(l.parents) == maxParents {
+			return links{}, fmt.Errorf("more than %d parents", maxParents)
+		}
+		l.parents = append(l.parents, hash)
+		rest = next
+	}
+	_, rest, err := headerText(rest, "author ")
+	if err != nil {
+		return links{}, err
+	}
+	committer, _, err := headerText(rest, "committer ")
+	if err != nil {
+		return links{}, err
+	}
+	if when := parsePerson(committer, false).When; !when.IsZero() {
+		l.when = when.Unix()
+	}
+	return l, nil
+}
+
+// parseTag reads of a tag object what it points to.
+func parseTag(data []byte) (plumbing.Hash, error) {
+	line, rest := cutLine(data)
+	hash, err := headerHash(line, "object ")
+	if err != nil {
+		return hash, err
+	}
+	if line, _ := cutLine(rest); !bytes.HasPrefix(line, []byte("type ")) {
+		return hash, errors.New(`the second line does not begin with "type "`)
+	}
+	return hash, nil
+}
+
+func cutLine(data []byte) (line, rest []byte) {
+	line, rest, _ = bytes.Cut(data, []byte("\n"))
+	return line, rest
+}
+
+func headerHash(line []byte, key string) (plumbing.Hash, error) {
+	text, ok := bytes.CutPrefix(line, []byte(key))
+	if !ok {
+		return plumbing.ZeroHash, fmt.Errorf("a line that begins with %q is missing", key)
+	}
+	hash, ok := parseHash(string(text))
+	if !ok {
+		return plumbing.ZeroHash, fmt.Errorf("%q is not followed by a hash", key)
+	}
+	return hash, nil
+}
+
+func headerText(data []byte, key string) (text, rest []byte, err error) {
+	line, rest := cutLine(data)
+	text, ok := bytes.CutPrefix(line, []byte(key))
+	if !ok {
+		return nil, nil, fmt.Errorf("a line that begins with %q is missing", key)
+	}
+	return text, rest, nil
+}
+
+// parseHash reads 40 hexadecimal digits.
+func parseHash(s string) (plumbing.Hash, bool) {
+	if len(s) != 40 || !isHex(s) {
+		return plumbing.ZeroHash, false
+	}
+	return plumbing.NewHash(s), true
+}
+
+func isHex(s string) bool {
+	for i := range len(s) {
+		switch c := s[i]; {
+		case '0' <= c && c <= '9', 'a' <= c && c <= 'f', 'A' <= c && c <= 'F':
+		default:
+			return false
+		}
+	}
+	return true
+}
+
+// parsePerson reads "Name <address> seconds +hhmm". What cannot be read is left
+// empty: old repositories hold every kind of damage here.
+func parsePerson(data []byte, latin bool) Person {
+	text := decodeText(data, latin)
+	open := strings.IndexByte(text, '<')
+	if open < 0 {
+		return Person{Name: strings.TrimSpace(text)}
+	}
+	p := Person{Name: strings.TrimSpace(text[:open])}
+	// The last '>' ends the address: damaged ones contain more than one.
+	end := strings.LastIndexByte(text, '>')
+	if end < open {
+		p.Email = strings.TrimSpace(text[open+1:])
+		return p
+	}
+	p.Email = strings.TrimSpace(text[open+1 : end])
+	fields := strings.Fields(text[end+1:])
+	if len(fields) == 0 {
+		return p
+	}
+	seconds, err := strconv.ParseInt(fields[0], 10, 64)
+	if err != nil || seconds < 0 || seconds > maxSeconds {
+		return p
+	}
+	offset := 0
+	if len(fields) > 1 {
+		offset = parseOffset(fields[1])
+	}
+	p.When = time.Unix(seconds, 0).In(time.FixedZone("", offset))
+	return p
+}
+
+// maxSeconds is the end of the year 9999: later instants have no RFC 3339 form.
+const maxSeconds = 253402300799
+
+// parseOffset reads "+hhmm" in seconds, 0 where it is anything else.
+func parseOffset(s string) int {
+	if len(s) != 5 || (s[0] != '+' && s[0] != '-') {
+		return 0
+	}
+	n, err := strconv.ParseUint(s[1:], 10, 16)
+	if err != nil || n/100 > 14 || n%100 > 59 {
+		return 0
+	}
+	seconds := int(n/100*3600 + n%100*60)
+	if s[0] == '-' {
+		return -seconds
+	}
+	return seconds
+}
+
+func isLatin1(name string) bool {
+	switch strings.ToUpper(strings.TrimSpace(name)) {
+	case "ISO-8859-1", "ISO8859-1", "ISO_8859-1", "LATIN1", "LATIN-1":
+		return true
+	}
+	return false
+}
+
+func decodeText(data []byte, latin bool) string {
+	if utf8.Valid(data) {
+		return string(data)
+	}
+	if !latin {
+		return strings.ToValidUTF8(string(data), "\uFFFD")
+	}
+	runes := make([]rune, len(data))
+	for i, c := range data {
+		runes[i] = rune(c)
+	}
+	return string(runes)
+}
+
+// subject is the first paragraph on one line, as git prints it.
+func subject(message string) string {
+	var words []string
+	for line := range strings.Lines(message) {
+		line = strings.TrimSpace(line)
+		if line == "" {
+			if len(words) > 0 {
+				break
+			}
+			continue
+		}
+		words = append(words, line)
+	}
+	return strings.Join(words, " ")
+}

@@ -1,0 +1,179 @@
+package revision
+
+import (
+	"bytes"
+	"encoding/binary"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+
+	"github.com/go-git/go-git/v5/plumbing"
+)
+
+// packIndex finds objects in a pack by its index file, version 2
+// (gitformat-pack(5)): 8 bytes of magic and version, 256 counts of the hashes
+// whose first byte is at most the position, the hashes in order, their CRCs,
+// their offsets in 4 bytes, and the offsets that need 8.
+//
+// Nothing of the index is trusted: an object is checked against its hash when it
+// is read, so a wrong offset is found out.
+type packIndex struct {
+	r      io.ReaderAt
+	closer io.Closer
+	size   int64
+	fanout [256]uint32
+}
+
+const (
+	idxHashes = 8 + 256*4 // where the hashes begin
+	hashSize  = 20
+
+	// An index of up to this size is read at once; of a larger one only the
+	// parts that are asked for.
+	maxIdxInMemory = 4 << 20
+)
+
+func openIndex(name string) (*packIndex, error) {
+	f, err := os.Open(name)
+	if err != nil {
+		return nil, err
+	}
+	info, err := f.Stat()
+	if err != nil {
+		f.Close()
+		return nil, err
+	}
+	idx := &packIndex{r: f, closer: f, size: info.Size()}
+	if idx.size <= maxIdxInMemory {
+		data := make([]byte, idx.size)
+		_, err := io.ReadFull(f, data)
+		f.Close()
+		if err != nil {
+			return nil, err
+		}
+		idx.r, idx.closer = bytes.NewReader(data), nil
+	}
+	if err := idx.readHeader(); err != nil {
+		idx.close()
+		return nil, fmt.Errorf("pack index %q: %w", name, err)
+	}
+	return idx, nil
+}
+
+func (x *packIndex) close() {
+	if x.closer != nil {
+		x.closer.Close()
+	}
+}
+
+func (x *packIndex) readHeader() error {
+	var head [idxHashes]byte
+	if _, err := x.r.ReadAt(head[:], 0); err != nil {
+		return errors.New("cut short")
+	}
+	if !bytes.Equal(head[:8], []byte("\xfftOc\x00\x00\x00\x02")) {
+		return errors.New("not of version 2; `git repack -ad` writes it anew")
+	}
+	last := uint32(0)
+	for i := range x.fanout {
+		x.fanout[i] = binary.BigEndian.Uint32(head[8+4*i:])
+		if x.fanout[i] < last {
+			return errors.New("counts do not ascend")
+		}
+		last = x.fanout[i]
+	}
+	// For each object a hash, a CRC and an offset, then two checksums.
+	if x.size < idxHashes+int64(last)*(hashSize+8)+2*hashSize {
+		return errors.New("cut short")
+	}
+	return nil
+}
+
+func (x *packIndex) count() int64 { return int64(x.fanout[255]) }
+
+// bucket gives the positions [low, high) of the hashes with a first byte.
+func (x *packIndex) bucket(first byte) (low, high int64) {
+	if first > 0 {
+		low = int64(x.fanout[first-1])
+	}
+	return low, int64(x.fanout[first])
+}
+
+func (x *packIndex) hashAt(i int64) (plumbing.Hash, error) {
+	var h plumbing.Hash
+	_, err := x.r.ReadAt(h[:], idxHashes+i*hashSize)
+	return h, err
+}
+
+// search gives the position of the first hash that is not below h.
+func (x *packIndex) search(h plumbing.Hash) (int64, error) {
+	low, high := x.bucket(h[0])
+	for low < high {
+		mid := (low + high) / 2
+		at, err := x.hashAt(mid)
+		if err != nil {
+			return 0, err
+		}
+		if bytes.Compare(at[:], h[:]) < 0 {
+			low = mid + 1
+		} else {
+			high = mid
+		}
+	}
+	return low, nil
+}
+
+// offset gives where in the pack an object begins.
+func (x *packIndex) offset(h plumbing.Hash) (offset int64, ok bool, err error) {
+	i, err := x.search(h)
+	if err != nil || i >= x.count() {
+		return 0, false, err
+	}
+	at, err := x.hashAt(i)
+	if err != nil || at != h {
+		return 0, false, err
+	}
+	offsets := idxHashes + x.count()*(hashSize+4)
+	var b [8]byte
+	if _, err := x.r.ReadAt(b[:4], offsets+i*4); err != nil {
+		return 0, false, err
+	}
+	short := binary.BigEndian.Uint32(b[:4])
+	if short>>31 == 0 {
+		return int64(short), true, nil
+	}
+	long := offsets + x.count()*4 + int64(short&^(1<<31))*8
+	if _, err := x.r.ReadAt(b[:], long); err != nil {
+		return 0, false, err
+	}
+	return int64(binary.BigEndian.Uint64(b[:]) &^ (1 << 63)), true, nil
+}
+
+// withPrefix calls fn for each hash that begins with the first digits half bytes
+// of prefix.
+func (x *packIndex) withPrefix(prefix plumbing.Hash, digits int, fn func(plumbing.Hash)) error {
+	i, err := x.search(prefix)
+	if err != nil {
+		return err
+	}
+	for ; i < x.count(); i++ {
+		h, err := x.hashAt(i)
+		if err != nil {
+			return err
+		}
+		if !hasPrefix(h, prefix, digits) {
+			return nil
+		}
+		fn(h)
+	}
+	return nil
+}
+
+func hasPrefix(h, prefix plumbing.Hash, digits int) bool {
+	n := digits / 2
+	if !bytes.Equal(h[:n], prefix[:n]) {
+		return false
+	}
+	return digits%2 == 0 || h[n]>>4 == prefix[n]>>4
+}
