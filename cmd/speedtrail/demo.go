@@ -1,0 +1,77 @@
+package main
+
+import (
+	"context"
+	"fmt"
+	"path/filepath"
+
+	"github.com/spf13/cobra"
+
+	"speedtrail/cmd/speedtrail/internal/demo"
+	"speedtrail/cmd/speedtrail/internal/render"
+)
+
+func (a *app) demoCommand() *cobra.Command {
+	return &cobra.Command{
+		Use:   "demo [DIR]",
+		Short: "the main job on an invented network",
+		Long: `demo writes an invented railway network as a Git repository with a history of a
+year into a new folder (speedtrail-demo unless given), assesses its last
+release, records the result in the ledger there, writes the change report and
+says what to look at. A folder that is not empty is left alone. Exit status 0
+when that is done, whatever the findings.`,
+		Args: arguments(0, 1),
+		RunE: func(c *cobra.Command, args []string) error {
+			dir := "speedtrail-demo"
+			if len(args) == 1 {
+				dir = args[0]
+			}
+			return a.demo(c.Context(), dir)
+		},
+	}
+}
+
+func (a *app) demo(ctx context.Context, dir string) error {
+	network, err := demo.Write(ctx, dir)
+	if err != nil {
+		return err
+	}
+	fmt.Fprintf(a.out, "Wrote an invented network with its history to %s\n\n", dir)
+	a.repo, a.format = dir, "text"
+	repo, err := a.openRepo()
+	if err != nil {
+		return err
+	}
+	defer repo.Close()
+	doc, err := a.compute(ctx, repo, network.Base, network.Target)
+	if err != nil {
+		return err
+	}
+	rec, err := a.record(ctx, doc)
+	if err != nil {
+		return err
+	}
+	if err := a.render(doc, rec); err != nil {
+		return err
+	}
+	file := filepath.Join(dir, "change-report.html")
+	a.outTo, a.format = file, "html"
+	if err := a.render(doc, rec); err != nil {
+		return err
+	}
+	fmt.Fprintf(a.out, "\nThe change report: %s (open it in a browser)\n", file)
+	a.printHints(network)
+	return nil
+}
+
+// printHints says what to look at and what to try next.
+func (a *app) printHints(network demo.Repository) {
+	fmt.Fprintf(a.out, "\nWhat to look at\n")
+	for _, h := range network.Look {
+		fmt.Fprintf(a.out, "\n%s\n", wrap("- "+h.Text, 78))
+		if h.Command != "" {
+			fmt.Fprintf(a.out, "      %s\n", h.Command)
+		}
+	}
+	fmt.Fprintf(a.out, "\n%s\n", wrap("Caution: "+render.Caution, 78))
+}

@@ -1,0 +1,343 @@
+package render
+
+import (
+	"fmt"
+	"html"
+	"strings"
+
+	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
+)
+
+// figure is a speed-chainage chart. Distances are running distances in
+// millimetres; the picture runs from left to right in the nominal direction,
+// whatever the direction of travel.
+type figure struct {
+	Title, Text   string // for those who do not see it
+	Direction     string
+	From, To      int64 // the window
+	RouteLength   int64
+	Start, End    string // chainages of the route's ends, for the small line above
+	Segments      []assessment.Segment
+	Before, After []level
+	Marks         []mark
+	Places        []assessment.Place
+	Governs       []string // legend of level.Note, from 1
+}
+
+// level is a piece of a profile; Note is the number of its legend, 0 for none.
+type level struct {
+	From, To int64
+	Speed    int
+	Note     int
+}
+
+// mark is a change in a chart.
+type mark struct {
+	From, To      int64
+	Before, After int
+	RunOut        bool
+}
+
+// Measures of a chart in its own units; it scales to the width of the page.
+const (
+	chartWidth   = 960
+	plotLeft     = 52
+	plotRight    = 944
+	plotTop      = 62
+	plotHeight   = 190
+	plotBottom   = plotTop + plotHeight
+	letterWidth  = 6.1 // of the small text, about
+	legendLength = 140 // characters of a legend line
+)
+
+type drawing struct {
+	strings.Builder
+	f   *figure
+	top int // speed at the upper edge
+	id  string
+}
+
+func (d *drawing) add(format string, args ...any) { fmt.Fprintf(&d.Builder, format, args...) }
+
+// esc writes a text for SVG.
+func esc(s string) string { return html.EscapeString(source.Visible(s)) }
+
+// x places a running distance; tenths of a unit are enough.
+func (d *drawing) x(s int64) float64 {
+	return plotLeft + float64(plotRight-plotLeft)*float64(s-d.f.From)/float64(d.f.To-d.f.From)
+}
+
+func (d *drawing) y(speed int) float64 {
+	return plotBottom - plotHeight*float64(speed)/float64(d.top)
+}
+
+// svg draws the figure. id tells its patterns from those of other figures of
+// the page.
+func (f *figure) svg(id string) string {
+	d := &drawing{f: f, id: id}
+	for _, list := range [][]level{f.Before, f.After} {
+		for _, l := range list {
+			d.top = max(d.top, l.Speed)
+		}
+	}
+	d.top = (d.top + 9 + 20) / 20 * 20
+	places := f.placeLegend()
+	governs := f.governLegend()
+	height := plotBottom + 92 + 15*(len(places)+len(governs))
+	d.add(`<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %d %d" role="img" aria-labelledby="%s-t %s-d" class="chart" font-family="system-ui, sans-serif" font-size="11" data-from="%d" data-to="%d" data-left="%d" data-right="%d" data-width="%d" data-before="%s" data-after="%s" data-km="%s">`,
+		chartWidth, height, id, id, f.From, f.To, plotLeft, plotRight, chartWidth, levelData(f.Before), levelData(f.After), segmentData(f.Segments))
+	d.add("\n<title id=\"%s-t\">%s</title><desc id=\"%s-d\">%s</desc>\n", id, esc(f.Title), id, esc(f.Text))
+	d.add(`<defs><pattern id="%s-u" width="6" height="6" patternUnits="userSpaceOnUse"><path d="M0 6L6 0M-1 1L1 -1M5 7L7 5" stroke="#a33b00" stroke-width="1.1"/></pattern>`, id)
+	d.add(`<pattern id="%s-l" width="6" height="6" patternUnits="userSpaceOnUse"><path d="M0 0L6 6M-1 5L1 7M5 -1L7 1" stroke="#00508f" stroke-width="1.1"/></pattern></defs>`+"\n", id)
+	d.overview()
+	d.grid()
+	d.axis()
+	d.marks()
+	d.line(f.Before, `stroke="#8a8a8a" stroke-width="1.4"`)
+	d.line(f.After, `stroke="#111" stroke-width="2.6"`)
+	d.labels()
+	d.strips(places, governs)
+	d.add("</svg>\n")
+	return d.String()
+}
+
+func levelData(list []level) string {
+	parts := make([]string, len(list))
+	for i, l := range list {
+		parts[i] = fmt.Sprintf("%d,%d,%d", l.From, l.To, l.Speed)
+	}
+	return strings.Join(parts, ";")
+}
+
+func segmentData(list []assessment.Segment) string {
+	parts := make([]string, len(list))
+	for i, s := range list {
+		parts[i] = fmt.Sprintf("%d,%d,%d", s.From, s.To, s.Chainage)
+	}
+	return strings.Join(parts, ";")
+}
+
+// overview draws the small line above: the whole route and the window on it.
+func (d *drawing) overview() {
+	f := d.f
+	left, right := 300.0, 780.0
+	at := func(s int64) float64 { return left + (right-left)*float64(s)/float64(f.RouteLength) }
+	d.add(`<text x="%.1f" y="17" text-anchor="end" fill="#555">km %s</text><text x="%.1f" y="17" fill="#555">km %s</text>`, left-8, esc(minus(f.Start)), right+8, esc(minus(f.End)))
+	d.add(`<path d="M%.1f 13H%.1f" stroke="#999" stroke-width="2"/>`, left, right)
+	from, to := at(f.From), at(f.To)
+	if to-from < 4 {
+		from, to = (from+to)/2-2, (from+to)/2+2
+	}
+	d.add(`<path d="M%.1f 13H%.1f" stroke="#111" stroke-width="7"/>`+"\n", from, to)
+	arrow := "nominal direction \u2192"
+	if f.Direction == "reverse" {
+		arrow = "\u2190 reverse direction"
+	}
+	d.add(`<text x="%d" y="17" font-weight="600">%s</text>`+"\n", plotLeft, arrow)
+}
+
+func (d *drawing) grid() {
+	step := 20
+	if d.top > 160 {
+		step = 40
+	}
+	for v := 0; v <= d.top; v += step {
+		d.add(`<path d="M%d %.1fH%d" stroke="%s" stroke-width="1"/><text x="%d" y="%.1f" text-anchor="end" fill="#333">%d</text>`,
+			plotLeft, d.y(v), plotRight, map[bool]string{true: "#111", false: "#e2e2e2"}[v == 0], plotLeft-7, d.y(v)+4, v)
+	}
+	d.add(`<text x="%d" y="%d" fill="#333">km/h</text>`+"\n", plotLeft-44, plotTop-10)
+}
+
+// steps are the distances between ticks, in millimetres.
+var tickSteps = []int64{10e3, 20e3, 50e3, 100e3, 200e3, 500e3, 1e6, 2e6, 5e6, 10e6, 20e6, 50e6, 100e6, 200e6, 500e6}
+
+// axis writes round kilometres, and both readings at a chainage jump.
+func (d *drawing) axis() {
+	f := d.f
+	step := tickSteps[len(tickSteps)-1]
+	for _, s := range tickSteps {
+		if float64(plotRight-plotLeft)*float64(s)/float64(f.To-f.From) >= 64 {
+			step = s
+			break
+		}
+	}
+	free := float64(plotLeft - 20) // the right end of the last label
+	for i, s := range f.Segments {
+		first := (s.Chainage + step - 1) / step * step
+		if s.Chainage < 0 {
+			first = s.Chainage / step * step
+		}
+		for c := first; c <= s.Chainage+s.To-s.From; c += step {
+			x := d.x(s.From + c - s.Chainage)
+			d.add(`<path d="M%.1f %dv5" stroke="#111"/>`, x, plotBottom)
+			label := minus(km(c))
+			if half := float64(len(label)) * letterWidth / 2; x-half > free+6 && x+half < chartWidth {
+				d.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, x, plotBottom+18, label)
+				free = x + half
+			}
+		}
+		if i > 0 {
+			before := f.Segments[i-1]
+			x := d.x(s.From)
+			d.add(`<path d="M%.1f %dV%d" stroke="#fff" stroke-width="5"/><path d="M%.1f %dV%dM%.1f %dV%d" stroke="#111" stroke-dasharray="3 3"/>`,
+				x, plotTop, plotBottom+6, x-2.5, plotTop, plotBottom+6, x+2.5, plotTop, plotBottom+6)
+			d.add(`<text x="%.1f" y="%d" text-anchor="end" font-style="italic">%s</text><text x="%.1f" y="%d" font-style="italic">%s</text>`,
+				x-5, plotBottom+32, minus(km(before.Chainage+before.To-before.From)), x+5, plotBottom+32, minus(km(s.Chainage)))
+		}
+	}
+	d.add(`<text x="%d" y="%d" fill="#333">km</text>`+"\n", 8, plotBottom+18)
+}
+
+// marks hatches what lies between before and after: one slant for raised, the
+// other for lowered, lighter for run-out.
+func (d *drawing) marks() {
+	for _, m := range d.f.Marks {
+		pattern := "u"
+		if m.After < m.Before {
+			pattern = "l"
+		}
+		opacity := ""
+		if m.RunOut {
+			opacity = ` opacity="0.45"`
+		}
+		high, low := max(m.Before, m.After), min(m.Before, m.After)
+		x, y := d.x(m.From), d.y(high)
+		d.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="%.1f" fill="url(#%s-%s)"%s/>`, x, y, d.x(m.To)-x, d.y(low)-y, d.id, pattern, opacity)
+	}
+	d.add("\n")
+}
+
+// line draws a profile as a step line; where the track has a gap, so has it.
+func (d *drawing) line(list []level, style string) {
+	var path strings.Builder
+	for i, l := range list {
+		if i == 0 || list[i-1].To != l.From {
+			fmt.Fprintf(&path, "M%.1f %.1f", d.x(l.From), d.y(l.Speed))
+		} else {
+			fmt.Fprintf(&path, "V%.1f", d.y(l.Speed))
+		}
+		fmt.Fprintf(&path, "H%.1f", d.x(l.To))
+	}
+	if path.Len() > 0 {
+		d.add(`<path d="%s" fill="none" %s/>`+"\n", path.String(), style)
+	}
+}
+
+// labels writes the signed steps above the changes, in up to three rows so that
+// none covers another. What finds no room stands in the table.
+func (d *drawing) labels() {
+	rows := [3]float64{}
+	for _, m := range d.f.Marks {
+		label := signed(m.After - m.Before)
+		if m.RunOut {
+			label += " run-out"
+		}
+		half := float64(len([]rune(label))) * 6.6 / 2
+		x := min(max((d.x(m.From)+d.x(m.To))/2, plotLeft+half), plotRight-half)
+		for r := range rows {
+			if x-half < rows[r]+4 {
+				continue
+			}
+			rows[r] = x + half
+			weight := "600"
+			if m.RunOut {
+				weight = "400"
+			}
+			y := float64(plotTop - 4 - 13*r)
+			d.add(`<path d="M%.1f %.1fV%.1f" stroke="#bbb" stroke-width="0.8"/>`, x, y+2, d.y(max(m.Before, m.After)))
+			d.add(`<text x="%.1f" y="%.1f" text-anchor="middle" font-weight="%s" font-size="12">%s</text>`, x, y, weight, label)
+			break
+		}
+	}
+	d.add("\n")
+}
+
+// letter numbers places: A to Z, then A1, B1, ...
+func letter(i int) string {
+	s := string(rune('A' + i%26))
+	if i >= 26 {
+		s += fmt.Sprint(i / 26)
+	}
+	return s
+}
+
+func (f *figure) placeLegend() []string {
+	var items []string
+	for i, p := range f.Places {
+		items = append(items, fmt.Sprintf("%s\u00a0%s (%s)", letter(i), p.Name, p.Kind))
+	}
+	return fill(items)
+}
+
+func (f *figure) governLegend() []string {
+	var items []string
+	for i, g := range f.Governs {
+		items = append(items, fmt.Sprintf("%d\u00a0%s", i+1, g))
+	}
+	return fill(items)
+}
+
+// fill puts items into lines of about legendLength characters.
+func fill(items []string) []string {
+	var lines []string
+	line := ""
+	for _, s := range items {
+		s = clip(s, legendLength)
+		if line != "" && len([]rune(line))+len([]rune(s))+3 > legendLength {
+			lines = append(lines, line)
+			line = ""
+		}
+		if line != "" {
+			line += "   "
+		}
+		line += s
+	}
+	if line != "" {
+		lines = append(lines, line)
+	}
+	return lines
+}
+
+// clip cuts a long text.
+func clip(s string, most int) string {
+	if r := []rune(s); len(r) > most {
+		return string(r[:most-1]) + "\u2026"
+	}
+	return s
+}
+
+// strips draws what lies below the axis: the places, and what governs each step.
+func (d *drawing) strips(places, governs []string) {
+	y := float64(plotBottom + 42)
+	d.add(`<text x="8" y="%.1f" fill="#333">places</text>`, y+11)
+	free := 0.0
+	for i, p := range d.f.Places {
+		from, to := max(d.x(max(p.From, d.f.From)), plotLeft), min(d.x(min(p.To, d.f.To)), plotRight)
+		d.add(`<path d="M%.1f %.1fv-5" stroke="#111" stroke-width="1.5"/>`, from, y)
+		if p.To > p.From {
+			d.add(`<path d="M%.1f %.1fH%.1f" stroke="#111" stroke-width="3"/>`, from, y-2, max(to, from+1))
+		}
+		if x := (from + to) / 2; x > free {
+			d.add(`<text x="%.1f" y="%.1f" text-anchor="middle">%s</text>`, x, y+11, letter(i))
+			free = x + 9
+		}
+	}
+	y += 18
+	d.add("\n"+`<text x="8" y="%.1f" fill="#333">by</text>`, y+12)
+	for _, l := range d.f.After {
+		x, w := d.x(l.From), d.x(l.To)-d.x(l.From)
+		d.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="16" fill="#fff" stroke="#777" stroke-width="0.8"/>`, x, y, w)
+		if label := fmt.Sprint(l.Note); l.Note > 0 && w > float64(len(label))*letterWidth+2 {
+			d.add(`<text x="%.1f" y="%.1f" text-anchor="middle">%s</text>`, x+w/2, y+12, label)
+		}
+	}
+	y += 32
+	for _, lines := range [][]string{places, governs} {
+		for _, line := range lines {
+			d.add("\n"+`<text x="%d" y="%.1f" fill="#222" xml:space="preserve">%s</text>`, plotLeft, y, esc(line))
+			y += 15
+		}
+	}
+	d.add("\n")
+}

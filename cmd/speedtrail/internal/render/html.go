@@ -1,0 +1,219 @@
+package render
+
+import (
+	"crypto/sha256"
+	_ "embed" // the page's parts
+	"encoding/base64"
+	"fmt"
+	"html/template"
+	"io"
+	"strings"
+
+	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
+)
+
+// Bounds of what a page holds in full; what is left out is counted and the
+// command that lists it is named.
+const (
+	mostHTMLRows  = 2000
+	mostHTMLLines = 4000
+)
+
+//go:embed page.html
+var pageText string
+
+//go:embed page.css
+var pageCSS string
+
+//go:embed page.js
+var pageJS string
+
+var pageTemplate = template.Must(template.New("page").Funcs(template.FuncMap{
+	"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
+	"lengthCell": lengthCell, "stepCell": stepCell,
+}).Parse(pageText))
+
+// page is what the template shows.
+type page struct {
+	D         *assessment.Document
+	C         *assessment.Computed
+	R         Record
+	Title     string
+	State     string
+	Verdict   string
+	Base      string
+	Target    string
+	Stretches []pageStretch
+	ShownRows int
+	AllRows   int
+	Lines     []pageFile
+	LinesLeft int
+	Caution   string
+	CSS       template.CSS
+	JS        template.JS
+	Policy    string
+	Routes    []string
+	Trains    []string
+	Track     []pageTrack
+	Altered   []pageTrain
+}
+
+type pageStretch struct {
+	ID, Title, Route, Names, Direction, RouteName string
+	TrainIDs                                      string // joined by a line feed, for the filter
+	Chart                                         template.HTML
+	Rows                                          []pageRow
+}
+
+type pageRow struct {
+	From, To, Length string
+	Before, After    int
+	Step             string
+	Raised, RunOut   bool
+	BeforeBy         []string
+	AfterBy          []string
+}
+
+type pageFile struct {
+	Name, Note string
+	Lines      []pageLine
+}
+
+type pageLine struct {
+	Number, Op, Text, Class string
+}
+
+type pageTrack struct{ Route, Name, Direction, From, To, Length, Fate string }
+
+type pageTrain struct{ ID, Fate, Before, After string }
+
+// HTML writes the change report as one file that needs no network.
+func HTML(w io.Writer, d *assessment.Document, r Record) error {
+	c := &d.Computed
+	p := page{
+		D: d, C: c, R: r, Verdict: Verdict(d), Caution: Caution, State: "not recorded",
+		Title: source.Visible("Change of route speed data: " + c.Dataset),
+		Base:  revisionName(d.Named.Base, d.Named.BaseName, c.Base), Target: revisionName(d.Named.Target, d.Named.TargetName, c.Target),
+		JS: template.JS(pageJS),
+	}
+	header := "not recorded"
+	if r.Number != 0 {
+		p.State = r.State
+		header = fmt.Sprintf("assessment %d, digest %s", r.Number, short(r.Digest))
+	}
+	p.CSS = template.CSS(strings.Replace(pageCSS, "HEADER", header, 1))
+	p.Policy = "default-src 'none'; style-src '" + inlineHash(string(p.CSS)) + "'; script-src '" + inlineHash(pageJS) + "'"
+	p.fillStretches()
+	p.fillSource()
+	for _, t := range c.Trains {
+		p.Trains = append(p.Trains, t.ID)
+		if t.Fate != "kept" {
+			p.Altered = append(p.Altered, pageTrain{t.ID, t.Fate, definitionWords(t.Before), definitionWords(t.After)})
+		}
+	}
+	for _, route := range c.Routes {
+		if len(route.Changes) > 0 {
+			p.Routes = append(p.Routes, route.ID)
+		}
+		for _, t := range route.Track {
+			p.Track = append(p.Track, pageTrack{route.ID, route.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate})
+		}
+	}
+	return pageTemplate.Execute(w, p)
+}
+
+// inlineHash names an inline part in a content security policy.
+func inlineHash(s string) string {
+	sum := sha256.Sum256([]byte(s))
+	return "sha256-" + base64.StdEncoding.EncodeToString(sum[:])
+}
+
+func (p *page) fillStretches() {
+	for range p.C.Rows() {
+		p.AllRows++
+	}
+	for i := range p.C.Stretches.List {
+		s := &p.C.Stretches.List[i]
+		if p.ShownRows >= mostHTMLRows {
+			return
+		}
+		r := &p.C.Routes[s.Route]
+		id := fmt.Sprintf("s%d", i+1)
+		out := pageStretch{
+			ID: id, Title: stretchTitle(p.C, s), Route: r.ID, RouteName: r.Name, Direction: s.Direction, Names: trainNames(p.C, s.Trains, 0),
+			TrainIDs: strings.ReplaceAll(trainNames(p.C, s.Trains, 0), ", ", "\n"),
+			// The chart is built from escaped texts and numbers only.
+			Chart: template.HTML(stretchFigure(p.C, s).svg(id)),
+		}
+		for _, k := range s.Changes {
+			x := &r.Changes[k]
+			row := pageRow{
+				From: minus(x.From), To: minus(x.To), Length: metres(x.Length), Before: x.Before, After: x.After,
+				Step: signed(x.After - x.Before), Raised: x.After > x.Before, RunOut: x.RunOut,
+			}
+			for _, src := range r.Sources[x.BeforeSource] {
+				row.BeforeBy = append(row.BeforeBy, source.Visible(src.Text()))
+			}
+			for _, src := range r.Sources[x.AfterSource] {
+				row.AfterBy = append(row.AfterBy, source.Visible(src.Text()))
+			}
+			out.Rows = append(out.Rows, row)
+			p.ShownRows += len(s.Trains)
+		}
+		p.Stretches = append(p.Stretches, out)
+	}
+}
+
+func (p *page) fillSource() {
+	lines := 0
+	for _, f := range p.C.Source {
+		out := pageFile{Name: source.Visible(fileName(f)), Note: f.Note}
+		for _, h := range f.Hunks {
+			old, now := h.BaseLine, h.TargetLine
+			for _, l := range h.Lines {
+				if lines++; lines > mostHTMLLines {
+					p.LinesLeft++
+					continue
+				}
+				number, class := now, map[string]string{"=": "same", "-": "gone", "+": "new"}[l.Op]
+				if l.Op == "-" {
+					number = old
+				}
+				out.Lines = append(out.Lines, pageLine{fmt.Sprint(number), map[string]string{"=": " ", "-": "\u2212", "+": "+"}[l.Op], source.Visible(l.Text), class})
+				if l.Op != "+" {
+					old++
+				}
+				if l.Op != "-" {
+					now++
+				}
+			}
+		}
+		p.Lines = append(p.Lines, out)
+	}
+}
+
+func fileName(f assessment.SourceFile) string {
+	switch {
+	case f.Target == "":
+		return f.Base
+	case f.Base != "" && f.Base != f.Target:
+		return f.Base + " \u2192 " + f.Target
+	}
+	return f.Target
+}
+
+// definitionWords words a train.
+func definitionWords(d *assessment.Definition) string {
+	if d == nil {
+		return ""
+	}
+	s := fmt.Sprintf("%s; cant deficiency %d mm; axle load %s; %s m; %d km/h", d.Name, d.CantDeficiency, d.AxleLoad, metres(d.Length), d.MaxSpeed)
+	if len(d.Categories) > 0 {
+		s += "; " + strings.Join(d.Categories, ", ")
+	}
+	if d.Acceleration != "" || d.Braking != "" {
+		s += fmt.Sprintf("; accelerates %s, brakes %s m/s²", d.Acceleration, d.Braking)
+	}
+	return s
+}

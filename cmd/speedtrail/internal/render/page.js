@@ -1,0 +1,33 @@
+(function () {
+  "use strict";
+  var form = document.querySelector(".filter");
+  if (form) {
+    form.hidden = false;
+    var train = document.getElementById("train"), route = document.getElementById("route"), count = document.getElementById("count");
+    var articles = Array.prototype.slice.call(document.querySelectorAll("article.stretch"));
+    var show = function () {
+      var n = 0;
+      articles.forEach(function (a) {
+        var hit = (!route.value || a.dataset.route === route.value) && (!train.value || a.dataset.trains.split("\n").indexOf(train.value) >= 0);
+        a.hidden = !hit;
+        if (hit) n++;
+      });
+      count.textContent = n === articles.length ? "" : n + " of " + articles.length + " stretches shown";
+    };
+    train.addEventListener("change", show);
+    route.addEventListener("change", show);
+  }
+  var read = function (s) { return s ? s.split(";").map(function (p) { return p.split(",").map(Number); }) : []; };
+  var at = function (list, s) { for (var i = 0; i < list.length; i++) if (s >= list[i][0] && s < list[i][1]) return list[i]; return null; };
+  Array.prototype.forEach.call(document.querySelectorAll("svg.chart"), function (svg) {
+    var d = svg.dataset, before = read(d.before), after = read(d.after), km = read(d.km);
+    var out = svg.closest("article").querySelector(".pointer");
+    svg.addEventListener("pointermove", function (e) {
+      var box = svg.getBoundingClientRect(), x = (e.clientX - box.left) * d.width / box.width;
+      var s = Number(d.from) + (x - d.left) / (d.right - d.left) * (d.to - d.from);
+      var segment = at(km, s), b = at(before, s), a = at(after, s);
+      out.textContent = segment && a ? "km " + ((segment[2] + s - segment[0]) / 1e6).toFixed(3).replace("-", "\u2212") + ":  before " + (b ? b[2] + " km/h" : "no track") + ", after " + a[2] + " km/h" : "";
+    });
+    svg.addEventListener("pointerleave", function () { out.textContent = ""; });
+  });
+})();

@@ -1,0 +1,176 @@
+package render
+
+import (
+	"fmt"
+	"io"
+	"strings"
+
+	"github.com/jedib0t/go-pretty/v6/table"
+	"github.com/jedib0t/go-pretty/v6/text"
+
+	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
+)
+
+// Profile is the effective profile of one train on one route and direction.
+type Profile struct {
+	Direction string               `json:"direction"`
+	On        string               `json:"on"` // date for temporary restrictions, empty: all count
+	Pieces    []Piece              `json:"pieces"`
+	Places    []assessment.Place   `json:"places"`
+	Revision  string               `json:"revision"`
+	Route     string               `json:"route"`
+	RouteName string               `json:"route_name"`
+	Segments  []assessment.Segment `json:"segments"`
+	Train     string               `json:"train"`
+	TrainName string               `json:"train_name"`
+}
+
+// Piece is a stretch of constant speed.
+type Piece struct {
+	End     int64               `json:"end_mm"` // running distance
+	From    string              `json:"from_km"`
+	Sources []assessment.Source `json:"governed_by"`
+	Speed   int                 `json:"speed_kmh"`
+	Start   int64               `json:"start_mm"` // running distance
+	To      string              `json:"to_km"`
+}
+
+func (p Profile) length() int64 { return p.Pieces[len(p.Pieces)-1].End }
+
+func (p Profile) title() string {
+	t := fmt.Sprintf("%s %s, %s, train %s (%s), at %s", p.Route, p.RouteName, p.Direction, p.Train, p.TrainName, p.Revision)
+	if p.On != "" {
+		t += ", temporary restrictions of " + p.On
+	}
+	return source.Visible(t)
+}
+
+// ProfileText writes each profile as a chart and a table.
+func ProfileText(w io.Writer, s Style, list ...Profile) error {
+	for i, p := range list {
+		if i > 0 {
+			fmt.Fprintln(w)
+		}
+		if err := ProfileChart(w, s, p); err != nil {
+			return err
+		}
+		t := plainTable()
+		t.AppendHeader(table.Row{"from km", "to km", "length m", "km/h", "governed by"})
+		t.SetColumnConfigs([]table.ColumnConfig{
+			{Number: 1, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 2, Align: text.AlignRight, AlignHeader: text.AlignRight},
+			{Number: 3, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 4, Align: text.AlignRight, AlignHeader: text.AlignRight},
+			{Number: 5, WidthMax: max(30, s.Width-46), WidthMaxEnforcer: text.WrapText},
+		})
+		for _, piece := range p.Pieces {
+			lines := make([]string, len(piece.Sources))
+			for k, src := range piece.Sources {
+				lines[k] = source.Visible(src.Text())
+			}
+			t.AppendRow(table.Row{minus(piece.From), minus(piece.To), metres(piece.End - piece.Start), piece.Speed, strings.Join(lines, "\n")})
+		}
+		if _, err := fmt.Fprintf(w, "\n%s\n", t.Render()); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// chartRows is the height of a chart in the terminal; a row holds eight steps of
+// a block character.
+const chartRows = 12
+
+var blocks = []rune(" ▁▂▃▄▅▆▇█")
+
+// ProfileChart draws profiles with block characters, as wide as the terminal.
+// A column shows the lowest speed of the track that it stands for, so that no
+// short restriction is lost.
+func ProfileChart(w io.Writer, s Style, list ...Profile) error {
+	for i, p := range list {
+		if i > 0 {
+			fmt.Fprintln(w)
+		}
+		if err := chart(w, s, p); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func chart(w io.Writer, s Style, p Profile) error {
+	columns := max(20, min(s.Width, 160)-8)
+	top := 0
+	for _, piece := range p.Pieces {
+		top = max(top, piece.Speed)
+	}
+	top = (top + 19) / 20 * 20
+	lowest := make([]int, columns)
+	k := 0
+	for c := range columns {
+		from, to := p.length()*int64(c)/int64(columns), p.length()*int64(c+1)/int64(columns)
+		for k < len(p.Pieces)-1 && p.Pieces[k].End <= from {
+			k++
+		}
+		lowest[c] = p.Pieces[k].Speed
+		for n := k; n < len(p.Pieces) && p.Pieces[n].Start < to; n++ {
+			lowest[c] = min(lowest[c], p.Pieces[n].Speed)
+		}
+	}
+	for _, line := range wrap(p.title(), s.Width) {
+		fmt.Fprintln(w, line)
+	}
+	fmt.Fprintln(w, "km/h")
+	for row := chartRows - 1; row >= 0; row-- {
+		label := "    "
+		if row%3 == 2 {
+			label = fmt.Sprintf("%4d", top*(row+1)/chartRows)
+		}
+		var b strings.Builder
+		for _, v := range lowest {
+			eighths := v*chartRows*8/top - row*8
+			b.WriteRune(blocks[max(0, min(8, eighths))])
+		}
+		fmt.Fprintf(w, "%s \u2502%s\n", label, strings.TrimRight(b.String(), " "))
+	}
+	fmt.Fprintf(w, "   0 \u2514%s\n", strings.Repeat("\u2500", columns))
+	_, err := fmt.Fprintln(w, axis(p, columns))
+	return err
+}
+
+// axis writes chainages below a chart, at about every twelfth column, and both
+// readings of a chainage jump.
+func axis(p Profile, columns int) string {
+	line := []rune(strings.Repeat(" ", columns+12))
+	end := -2
+	put := func(column int, label string) {
+		if column < end+2 || column+len([]rune(label)) > len(line) {
+			return
+		}
+		copy(line[column:], []rune(label))
+		end = column + len([]rune(label)) - 1
+	}
+	first, last := p.Pieces[0], p.Pieces[len(p.Pieces)-1]
+	put(0, minus(first.From))
+	lastLabel := minus(last.To)
+	limit := columns - len([]rune(lastLabel)) - 2
+	for i, s := range p.Segments {
+		if c := int(s.From * int64(columns) / p.length()); i > 0 && c < limit-8 {
+			before := p.Segments[i-1]
+			put(c, minus(km(before.Chainage+before.To-before.From))+"|"+minus(km(s.Chainage)))
+		}
+	}
+	put(columns-len([]rune(lastLabel)), lastLabel)
+	return "  km  " + strings.TrimRight(string(line), " ")
+}
+
+// plainTable makes a table with a rule below its head and nothing else.
+func plainTable() table.Writer {
+	t := table.NewWriter()
+	style := table.StyleLight
+	style.Options.DrawBorder = false
+	style.Options.SeparateColumns = false
+	style.Format.Header = text.FormatDefault
+	style.Box.PaddingLeft, style.Box.PaddingRight = "", "  "
+	t.SetStyle(style)
+	return t
+}

@@ -1,0 +1,291 @@
+package render
+
+import (
+	"fmt"
+	"io"
+	"strings"
+
+	"github.com/jedib0t/go-pretty/v6/table"
+	"github.com/jedib0t/go-pretty/v6/text"
+
+	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
+)
+
+// mostTextChanges is how many changes the terminal shows; CSV has all of them.
+const mostTextChanges = 200
+
+// Text writes an assessment for the terminal.
+func Text(w io.Writer, d *assessment.Document, r Record, s Style) error {
+	p := &textWriter{w: w, d: d, c: &d.Computed, r: r, s: s}
+	p.title()
+	p.verdict()
+	p.findings()
+	p.trains()
+	p.track()
+	p.changes()
+	p.sources()
+	p.end()
+	return p.err
+}
+
+type textWriter struct {
+	w   io.Writer
+	d   *assessment.Document
+	c   *assessment.Computed
+	r   Record
+	s   Style
+	err error
+}
+
+func (p *textWriter) printf(format string, args ...any) {
+	if p.err == nil {
+		_, p.err = fmt.Fprintf(p.w, format, args...)
+	}
+}
+
+// paragraph writes a text wrapped to the width, with what hides made visible.
+func (p *textWriter) paragraph(indent, s string) {
+	for i, line := range wrap(source.Visible(s), p.s.Width-len(indent)) {
+		if i == 1 {
+			indent = strings.Repeat(" ", len(indent))
+		}
+		p.printf("%s%s\n", indent, line)
+	}
+}
+
+func (p *textWriter) heading(s string) {
+	if p.s.Color {
+		p.printf("\n\x1b[1m%s\x1b[0m\n", s)
+		return
+	}
+	p.printf("\n%s\n", strings.ToUpper(s))
+}
+
+func (p *textWriter) title() {
+	state := "not recorded"
+	if p.r.Number != 0 {
+		state = fmt.Sprintf("assessment %d, %s", p.r.Number, p.r.State)
+	}
+	p.paragraph("", fmt.Sprintf("Change of route speed data: %s (%s)", p.c.Dataset, state))
+	side := func(word, typed, name string, r assessment.Revision) {
+		p.paragraph(fmt.Sprintf("%-10s", word), revisionName(typed, name, r)+details(r))
+	}
+	side("base", p.d.Named.Base, p.d.Named.BaseName, p.c.Base)
+	side("target", p.d.Named.Target, p.d.Named.TargetName, p.c.Target)
+	for i, q := range p.c.Requests {
+		word := "requests"
+		if i > 0 {
+			word = ""
+		}
+		p.paragraph(fmt.Sprintf("%-10s", word), q.ID+"  "+q.Title)
+	}
+	if len(p.c.Preparers) > 0 {
+		p.paragraph("prepared  ", people(p.c.Preparers))
+	}
+	if p.r.Digest != "" {
+		p.printf("%-10s%s\n", "digest", p.r.Digest)
+	}
+}
+
+// details gives date and subject of a commit.
+func details(r assessment.Revision) string {
+	if r.Commit == "" {
+		return ""
+	}
+	return ", " + r.Committed[:min(10, len(r.Committed))] + ", " + r.Subject
+}
+
+func people(list []assessment.Person) string {
+	names := make([]string, len(list))
+	for i, p := range list {
+		names[i] = p.Name + " <" + p.Email + ">"
+	}
+	return strings.Join(names, ", ")
+}
+
+func (p *textWriter) verdict() {
+	p.heading("Verdict")
+	p.paragraph("", Verdict(p.d))
+}
+
+func (p *textWriter) findings() {
+	if len(p.c.Findings) == 0 {
+		return
+	}
+	p.heading("Findings")
+	for _, f := range p.c.Findings {
+		mark := "! "
+		if f.Accepted != "" {
+			mark = "  "
+		}
+		p.paragraph(mark, f.ID+": "+f.Text)
+		p.paragraph("    ", f.Why)
+		if f.Accepted != "" {
+			p.paragraph("    ", "accepted: "+f.Accepted)
+		} else {
+			p.paragraph("    ", "to do: "+f.Do)
+		}
+	}
+}
+
+var right = []table.ColumnConfig{
+	{Number: 2, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 3, Align: text.AlignRight, AlignHeader: text.AlignRight},
+	{Number: 4, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 5, Align: text.AlignRight, AlignHeader: text.AlignRight},
+}
+
+func (p *textWriter) trains() {
+	p.heading("Trains")
+	t := plainTable()
+	t.AppendHeader(table.Row{"train", "raised km", "lowered km", "largest +km/h", "largest \u2212km/h", "routes"})
+	t.SetColumnConfigs(append([]table.ColumnConfig{{Number: 6, WidthMax: max(12, p.s.Width-66), WidthMaxEnforcer: text.WrapSoft}}, right...))
+	for _, x := range p.c.Trains {
+		name := source.Visible(x.ID)
+		if x.Fate != "kept" {
+			name += " (" + x.Fate + ")"
+		}
+		if len(x.Routes) == 0 {
+			t.AppendRow(table.Row{name, "no change", "", "", "", ""})
+			continue
+		}
+		t.AppendRow(table.Row{name, lengthCell(x.Raised), lengthCell(x.Lowered), stepCell(x.LargestRaise), stepCell(-x.LargestReduction), strings.Join(x.Routes, ", ")})
+	}
+	p.printf("%s\n", t.Render())
+	p.printf("Lengths are added up over both directions of travel.\n")
+}
+
+func lengthCell(mm int64) string {
+	if mm == 0 {
+		return ""
+	}
+	return km(mm)
+}
+
+func stepCell(n int) string {
+	if n == 0 {
+		return ""
+	}
+	return signed(n)
+}
+
+func (p *textWriter) track() {
+	heading := false
+	for _, r := range p.c.Routes {
+		for _, t := range r.Track {
+			if !heading {
+				p.heading("Track that only one revision has")
+				heading = true
+			}
+			p.paragraph("", fmt.Sprintf("%s %s, %s: %s to %s km %s (%s m)", r.ID, r.Name, t.Direction, minus(t.From), minus(t.To), t.Fate, metres(t.Length)))
+		}
+	}
+}
+
+func (p *textWriter) changes() {
+	shown, all := 0, 0
+	for i := range p.c.Routes {
+		r := &p.c.Routes[i]
+		for k := range r.Changes {
+			x := &r.Changes[k]
+			all++
+			if shown == mostTextChanges {
+				continue
+			}
+			shown++
+			if k == 0 || x.Direction != r.Changes[k-1].Direction {
+				p.heading(source.Visible(fmt.Sprintf("Changes on %s %s, %s", r.ID, r.Name, x.Direction)))
+			}
+			p.change(r, x)
+		}
+	}
+	if all > shown {
+		p.printf("\n%d more changes are not shown here; --format csv lists all of them.\n", all-shown)
+	}
+}
+
+func (p *textWriter) change(r *assessment.Route, x *assessment.Change) {
+	runOut := ""
+	if x.RunOut {
+		runOut = "  run-out of the train length"
+	}
+	step := signed(x.After - x.Before)
+	if p.s.Color {
+		color := "31" // raised: look first
+		if x.After < x.Before {
+			color = "34"
+		}
+		step = "\x1b[" + color + "m" + step + "\x1b[0m"
+	}
+	p.printf("\nkm %s to %s (%s m): %d to %d km/h (%s)%s\n", minus(x.From), minus(x.To), metres(x.Length), x.Before, x.After, step, runOut)
+	p.paragraph("  trains  ", trainNames(p.c, x.Trains, 0))
+	for _, side := range []struct {
+		word string
+		list []assessment.Source
+	}{{"  before  ", r.Sources[x.BeforeSource]}, {"  after   ", r.Sources[x.AfterSource]}} {
+		for i, s := range side.list {
+			indent := side.word
+			if i > 0 {
+				indent = strings.Repeat(" ", len(indent))
+			}
+			p.paragraph(indent, s.Text())
+		}
+	}
+}
+
+// mostTextLines bounds the source lines in the terminal.
+const mostTextLines = 60
+
+func (p *textWriter) sources() {
+	if len(p.c.Source) == 0 {
+		return
+	}
+	p.heading("Source rows")
+	lines := 0
+	for i, f := range p.c.Source {
+		if lines > mostTextLines {
+			p.printf("%s more; the HTML report shows them all\n", plural(len(p.c.Source)-i, "file", "files"))
+			return
+		}
+		name := f.Target
+		switch {
+		case f.Target == "":
+			name = f.Base
+		case f.Base != "" && f.Base != f.Target:
+			name = f.Base + " to " + f.Target
+		}
+		if f.Note != "" {
+			name += ": " + f.Note
+		}
+		p.printf("%s\n", source.Visible(name))
+		if f.Base == "" || f.Target == "" {
+			continue
+		}
+		for _, h := range f.Hunks {
+			old, now := h.BaseLine, h.TargetLine
+			for _, l := range h.Lines {
+				number := now
+				if l.Op == "-" {
+					number = old
+				}
+				if l.Op != "=" {
+					p.printf("  %5d %s %s\n", number, l.Op, source.Visible(l.Text))
+					lines++
+				}
+				if l.Op != "+" {
+					old++
+				}
+				if l.Op != "-" {
+					now++
+				}
+			}
+		}
+	}
+}
+
+func (p *textWriter) end() {
+	p.printf("\n")
+	p.paragraph("", "Caution: "+Caution)
+	if p.r.Number != 0 {
+		p.printf("\nnext: speedtrail report %d --out report.html\n", p.r.Number)
+	}
+}

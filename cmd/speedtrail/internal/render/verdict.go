@@ -1,0 +1,154 @@
+package render
+
+import (
+	"fmt"
+	"strings"
+
+	"speedtrail/history/assessment"
+)
+
+// Verdict says in one or two sentences what decides, with its numbers.
+func Verdict(d *assessment.Document) string {
+	c := &d.Computed
+	var parts []string
+	changed := 0
+	for _, t := range c.Trains {
+		if len(t.Routes) > 0 {
+			changed++
+		}
+	}
+	if changed == 0 {
+		parts = append(parts, fmt.Sprintf("None of the %s is faster or slower anywhere on the %s of the target.",
+			plural(len(c.Trains), "reference train", "reference trains"), plural(targetRoutes(c), "route", "routes")))
+	} else {
+		routes := 0
+		for _, r := range c.Routes {
+			if len(r.Changes) > 0 {
+				routes++
+			}
+		}
+		s := fmt.Sprintf("%d of %s %s on %d of %s", changed, plural(len(c.Trains), "train", "trains"),
+			map[bool]string{true: "changes", false: "change"}[changed == 1], routes, plural(targetRoutes(c), "route", "routes"))
+		var extremes []string
+		for _, up := range []bool{true, false} {
+			if e := extreme(c, up); e != "" {
+				extremes = append(extremes, e)
+			}
+		}
+		parts = append(parts, s+": "+strings.Join(extremes, ", ")+".")
+	}
+	if s := trackSentence(c); s != "" {
+		parts = append(parts, s)
+	}
+	if s := trainSentence(c); s != "" {
+		parts = append(parts, s)
+	}
+	if s := findingSentence(c); s != "" {
+		parts = append(parts, s)
+	}
+	return strings.Join(parts, " ")
+}
+
+// targetRoutes counts the routes of the target.
+func targetRoutes(c *assessment.Computed) int {
+	n := c.EqualRoutes
+	for _, r := range c.Routes {
+		if r.Fate != "removed" {
+			n++
+		}
+	}
+	return n
+}
+
+// extreme words the largest raise or reduction.
+func extreme(c *assessment.Computed, up bool) string {
+	var best *assessment.Change
+	size := func(x *assessment.Change) int {
+		if up {
+			return x.After - x.Before
+		}
+		return x.Before - x.After
+	}
+	for i := range c.Routes {
+		for k := range c.Routes[i].Changes {
+			x := &c.Routes[i].Changes[k]
+			if size(x) <= 0 {
+				continue
+			}
+			if best == nil || size(x) > size(best) || size(x) == size(best) && x.Length > best.Length {
+				best = x
+			}
+		}
+	}
+	if best == nil {
+		return ""
+	}
+	word := "up to"
+	if !up {
+		word = "down to"
+	}
+	return fmt.Sprintf("%s %s km/h over %s km (%s)", word, signed(best.After-best.Before), km(best.Length), trainNames(c, best.Trains, 3))
+}
+
+func trackSentence(c *assessment.Computed) string {
+	var added, removed int64
+	for _, r := range c.Routes {
+		for _, t := range r.Track {
+			if t.Fate == "added" {
+				added += t.Length
+			} else {
+				removed += t.Length
+			}
+		}
+	}
+	var words []string
+	if added > 0 {
+		words = append(words, km(added)+" km added")
+	}
+	if removed > 0 {
+		words = append(words, km(removed)+" km removed")
+	}
+	if words == nil {
+		return ""
+	}
+	return "Track, counted for each direction of travel: " + strings.Join(words, ", ") + "."
+}
+
+func trainSentence(c *assessment.Computed) string {
+	var words []string
+	for _, fate := range []string{"added", "removed", "altered"} {
+		var ids []string
+		for _, t := range c.Trains {
+			if t.Fate == fate {
+				ids = append(ids, t.ID)
+			}
+		}
+		if len(ids) > 0 {
+			words = append(words, fate+" "+strings.Join(ids, ", "))
+		}
+	}
+	if words == nil {
+		return ""
+	}
+	return "Reference trains: " + strings.Join(words, "; ") + "."
+}
+
+func findingSentence(c *assessment.Computed) string {
+	open, accepted := 0, 0
+	for _, f := range c.Findings {
+		if f.Accepted == "" {
+			open++
+		} else {
+			accepted++
+		}
+	}
+	switch {
+	case open > 0 && accepted > 0:
+		return fmt.Sprintf("%s not accepted, %d accepted.", plural(open, "finding", "findings"), accepted)
+	case open > 0:
+		return plural(open, "finding", "findings") + " not accepted."
+	case accepted > 0:
+		return plural(accepted, "finding", "findings") + ", all accepted."
+	}
+	return ""
+}

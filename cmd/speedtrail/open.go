@@ -1,0 +1,121 @@
+package main
+
+import (
+	"context"
+	"fmt"
+	"io/fs"
+	"path"
+	"path/filepath"
+	"strings"
+	"time"
+
+	"speedtrail/history/assessment"
+	"speedtrail/history/ledger"
+	"speedtrail/history/revision"
+)
+
+// workingTree is the name that stands for the files on disk.
+const workingTree = "."
+
+// openRepo opens the repository of --repo.
+func (a *app) openRepo() (*revision.Repo, error) { return revision.Open(a.repo) }
+
+// folder gives --data as a clean slash-separated path, "." for the root.
+func (a *app) folder() (string, error) {
+	f := path.Clean(strings.ReplaceAll(a.data, `\`, "/"))
+	if path.IsAbs(f) || filepath.VolumeName(a.data) != "" || f == ".." || strings.HasPrefix(f, "../") {
+		return "", badCall("--data is a path from the repository's root, for example --data network", "the data set's folder %q is not inside the repository", a.data)
+	}
+	return f, nil
+}
+
+// side is one revision of the data set.
+type side struct {
+	typed  string          // as it was named
+	name   string          // a tag or branch that points at it
+	commit revision.Commit // zero for the working tree
+	files  fs.FS
+}
+
+// isWorkingTree tells whether the side is the files on disk.
+func (s side) isWorkingTree() bool { return s.commit.Hash == "" }
+
+// label names the side for a reader.
+func (s side) label() string {
+	if s.isWorkingTree() {
+		return "the working tree"
+	}
+	return s.typed
+}
+
+// openSide resolves a revision and finds the data set's folder in it.
+func (a *app) openSide(repo *revision.Repo, rev string) (side, error) {
+	folder, err := a.folder()
+	if err != nil {
+		return side{}, err
+	}
+	s := side{typed: rev}
+	if rev == workingTree {
+		s.files, err = repo.Working(folder)
+		return s, err
+	}
+	if s.commit, err = repo.Resolve(rev); err != nil {
+		return side{}, err
+	}
+	s.name = repo.Describe(s.commit)
+	s.files, err = repo.Snapshot(s.commit.Hash, folder)
+	return s, err
+}
+
+// revisionOf writes the side for a document.
+func (s side) revisionOf() assessment.Revision {
+	if s.isWorkingTree() {
+		return assessment.Revision{}
+	}
+	return assessment.Revision{
+		Commit:    s.commit.Hash,
+		Committed: s.commit.Committer.When.UTC().Format(time.RFC3339),
+		Subject:   validText(s.commit.Subject),
+		Author:    person(s.commit.Author),
+	}
+}
+
+func person(p revision.Person) assessment.Person {
+	return assessment.Person{Name: validText(p.Name), Email: validText(p.Email)}
+}
+
+// validText replaces what is not UTF-8, which commits may hold and JSON cannot.
+func validText(s string) string { return strings.ToValidUTF8(s, "\uFFFD") }
+
+// ledgerPath gives --ledger, or the ledger's place in the repository.
+func (a *app) ledgerPath(repo *revision.Repo) string {
+	if a.ledger != "" {
+		return a.ledger
+	}
+	return filepath.Join(repo.CommonDir(), "speedtrail", "ledger.db")
+}
+
+// openLedger opens the ledger for writing, made if need be, or for reading.
+func (a *app) openLedger(ctx context.Context, write bool) (*ledger.Ledger, error) {
+	file := a.ledger
+	repo, err := a.openRepo()
+	if err == nil {
+		defer repo.Close()
+		file = a.ledgerPath(repo)
+		tracked, err := repo.Tracked(file)
+		if err != nil {
+			return nil, err
+		}
+		if tracked {
+			return nil, badCall("choose another place with --ledger", "the ledger %s is a file that Git tracks; a checkout would replace it", file)
+		}
+	} else if file == "" {
+		// With --ledger, a ledger can be read where there is no repository.
+		return nil, err
+	}
+	l, err := ledger.Open(ctx, file, ledger.Options{Create: write, ReadOnly: !write, Now: time.Now})
+	if err != nil {
+		return nil, fmt.Errorf("ledger %s: %w", file, err)
+	}
+	return l, nil
+}

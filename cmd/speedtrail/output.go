@@ -1,0 +1,138 @@
+package main
+
+import (
+	"bufio"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"path/filepath"
+	"slices"
+	"strings"
+
+	"github.com/spf13/cobra"
+	"golang.org/x/term"
+
+	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/schema/source"
+)
+
+// outputFlags adds --format and --out to a command. The first format is the
+// default.
+func (a *app) outputFlags(c *cobra.Command, formats ...string) {
+	c.Flags().StringVar(&a.format, "format", formats[0], strings.Join(formats, ", "))
+	c.Flags().StringVarP(&a.outTo, "out", "o", "", "write the result to a `file`, whole or not at all; its ending can choose the format")
+	c.PreRunE = func(c *cobra.Command, _ []string) error {
+		if !c.Flags().Changed("format") && a.outTo != "" {
+			if f := formatOf(a.outTo); slices.Contains(formats, f) {
+				a.format = f
+			}
+		}
+		if !slices.Contains(formats, a.format) {
+			return badCall("--format is one of "+strings.Join(formats, ", "), "unknown value %q for --format", a.format)
+		}
+		return nil
+	}
+}
+
+// formatOf guesses a format from a file's name.
+func formatOf(name string) string {
+	switch ending := strings.ToLower(strings.TrimPrefix(filepath.Ext(name), ".")); ending {
+	case "htm":
+		return "html"
+	case "md":
+		return "markdown"
+	case "txt":
+		return "text"
+	default:
+		return ending
+	}
+}
+
+// write gives the result to standard output, or to the file of --out: into a
+// new file beside it that takes its place only when all of it is on the disk.
+func (a *app) write(result func(io.Writer) error) error {
+	a.endProgress()
+	if a.outTo == "" {
+		b := bufio.NewWriterSize(a.out, 1<<16)
+		if err := result(b); err != nil {
+			return err
+		}
+		return wrote("standard output", b.Flush())
+	}
+	return wrote(a.outTo, writeFile(a.outTo, result))
+}
+
+func wrote(name string, err error) error {
+	if err == nil {
+		return nil
+	}
+	return fmt.Errorf("%s was not written: %w", name, err)
+}
+
+// writeFile replaces a file by what result writes, or leaves it as it was.
+func writeFile(name string, result func(io.Writer) error) (err error) {
+	if info, err := os.Stat(name); err == nil && !info.Mode().IsRegular() {
+		if info.IsDir() {
+			return errors.New("it is a folder")
+		}
+		// A device or a pipe cannot be replaced, only written to.
+		f, err := os.OpenFile(name, os.O_WRONLY, 0)
+		if err != nil {
+			return err
+		}
+		return errors.Join(result(f), f.Close())
+	}
+	f, err := os.CreateTemp(filepath.Dir(name), "."+filepath.Base(name)+".*")
+	if err != nil {
+		return err
+	}
+	defer func() {
+		if err != nil {
+			f.Close()
+			os.Remove(f.Name())
+		}
+	}()
+	b := bufio.NewWriterSize(f, 1<<16)
+	if err = result(b); err != nil {
+		return err
+	}
+	if err = b.Flush(); err != nil {
+		return err
+	}
+	if err = f.Chmod(0o644); err != nil {
+		return err
+	}
+	if err = f.Sync(); err != nil {
+		return err
+	}
+	if err = f.Close(); err != nil {
+		return err
+	}
+	return os.Rename(f.Name(), name)
+}
+
+// style is how text looks where it goes to.
+func (a *app) style() render.Style {
+	s := render.Style{Width: 80, Color: a.color == "always"}
+	f, ok := a.out.(*os.File)
+	if !ok || a.outTo != "" || !term.IsTerminal(int(f.Fd())) {
+		return s
+	}
+	if width, _, err := term.GetSize(int(f.Fd())); err == nil && width > 0 {
+		s.Width = width
+	}
+	if a.color == "auto" {
+		s.Color = os.Getenv("NO_COLOR") == "" && os.Getenv("TERM") != "dumb"
+	}
+	return s
+}
+
+// remark tells the user something beside the result.
+func (a *app) remark(format string, args ...any) {
+	if a.quiet {
+		return
+	}
+	a.endProgress()
+	fmt.Fprintln(a.err, source.VisibleLines(fmt.Sprintf(format, args...)))
+}

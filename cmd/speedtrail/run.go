@@ -1,0 +1,146 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/schema/source"
+)
+
+// run carries out one call and gives its exit status. Only here and in main is
+// there a process; everything below takes its streams as arguments.
+func run(ctx context.Context, args []string, stdin io.Reader, stdout, stderr io.Writer) int {
+	app := &app{in: stdin, out: stdout, err: stderr}
+	root := app.command()
+	root.SetArgs(args)
+	root.SetIn(stdin)
+	root.SetOut(stdout)
+	root.SetErr(stderr)
+	err := root.ExecuteContext(ctx)
+	app.endProgress()
+	if err == nil || errors.Is(err, errFindings) {
+		return statusOf(err)
+	}
+	if ctx.Err() != nil {
+		fmt.Fprintln(stderr, "speedtrail: interrupted, nothing more was done")
+		return statusFailed
+	}
+	app.printError(err)
+	return statusOf(err)
+}
+
+// printError writes an error and what to do about it. Faults of a data set
+// stand a line each.
+func (a *app) printError(err error) {
+	fmt.Fprintf(a.err, "speedtrail: %s\n", source.VisibleLines(err.Error()))
+	if hint := hintOf(err); hint != "" {
+		fmt.Fprintf(a.err, "hint: %s\n", source.VisibleLines(hint))
+	}
+}
+
+// app is one call: its streams and the options that all commands share.
+type app struct {
+	in       io.Reader
+	out, err io.Writer
+
+	repo   string
+	data   string
+	ledger string
+	format string
+	outTo  string
+	color  string
+	quiet  bool
+
+	bar *bar
+}
+
+// command builds the tree of commands.
+func (a *app) command() *cobra.Command {
+	root := &cobra.Command{
+		Use:   "speedtrail",
+		Short: "what a change of route speed data means for the trains",
+		Long: `speedtrail compares two revisions of route speed data that is kept in Git. It
+compiles the most restrictive speed profile of every reference train on both
+sides, states who is faster or slower where and because of which source row,
+and keeps the result in an append-only ledger.
+
+Start with "speedtrail demo".
+
+Exit status: 0 done, nothing against it; 1 done, and there is an unaccepted
+finding; 2 the call or the data is wrong; 3 the work could not be done (disk,
+ledger, repository).
+
+NO_COLOR and --color are respected. Results go to standard output, progress and
+remarks to standard error.`,
+		SilenceUsage:  true,
+		SilenceErrors: true,
+		Args:          cobra.NoArgs,
+		RunE:          func(c *cobra.Command, _ []string) error { return c.Help() },
+	}
+	flags := root.PersistentFlags()
+	flags.StringVar(&a.repo, "repo", ".", "the Git `repository`, or a folder in it; bare ones too")
+	flags.StringVar(&a.data, "data", ".", "the data set's `folder` inside the repository")
+	flags.StringVar(&a.ledger, "ledger", "", "the ledger `file` (default speedtrail/ledger.db in the common Git folder)")
+	flags.StringVar(&a.color, "color", "auto", "auto, always or never")
+	flags.BoolVarP(&a.quiet, "quiet", "q", false, "no progress and no remarks")
+	root.SetFlagErrorFunc(func(c *cobra.Command, err error) error {
+		return badCall(c.CommandPath()+" --help lists the options", "%v", err)
+	})
+	root.AddCommand(a.demoCommand(), a.validateCommand(), a.profileCommand(), a.assessCommand(), a.reportCommand(), a.registerCommand())
+	root.CompletionOptions.HiddenDefaultCmd = true
+	root.PersistentPreRunE = func(*cobra.Command, []string) error {
+		switch a.color {
+		case "auto", "always", "never":
+			return nil
+		}
+		return badCall("--color is auto, always or never", "unknown value %q for --color", a.color)
+	}
+	withCaution(root)
+	return root
+}
+
+// withCaution ends every help text with the caution.
+func withCaution(root *cobra.Command) {
+	help := root.HelpFunc()
+	root.SetHelpFunc(func(c *cobra.Command, args []string) {
+		help(c, args)
+		fmt.Fprintf(c.OutOrStdout(), "\n%s\n", wrap("Caution: "+render.Caution, 80))
+	})
+}
+
+// wrap breaks a text into lines of at most width bytes.
+func wrap(text string, width int) string {
+	var b strings.Builder
+	column := 0
+	for _, word := range strings.Fields(text) {
+		switch {
+		case column == 0:
+		case column+1+len(word) > width:
+			b.WriteByte('\n')
+			column = 0
+		default:
+			b.WriteByte(' ')
+			column++
+		}
+		b.WriteString(word)
+		column += len(word)
+	}
+	return b.String()
+}
+
+// arguments checks how many there are, with a message in the same form as all
+// others.
+func arguments(least, most int) cobra.PositionalArgs {
+	return func(c *cobra.Command, args []string) error {
+		if len(args) < least || len(args) > most {
+			return badCall("usage: "+c.UseLine(), "%d arguments given", len(args))
+		}
+		return nil
+	}
+}

@@ -1,0 +1,55 @@
+package main
+
+import (
+	"errors"
+	"strings"
+
+	"speedtrail/schema"
+	"speedtrail/schema/source"
+)
+
+// sideError is what is wrong with the data set at one revision.
+type sideError struct {
+	label string
+	err   error
+}
+
+func (e *sideError) Error() string {
+	var faults *source.Faults
+	if !errors.As(e.err, &faults) {
+		return e.label + ": " + e.err.Error()
+	}
+	return "the data set of " + e.label + " is faulty\n" + faults.Error()
+}
+
+func (e *sideError) Unwrap() error { return e.err }
+
+// inSides says of which revision an error of LoadPair is.
+func inSides(err error, base, target side) error {
+	var pair *schema.PairError
+	if !errors.As(err, &pair) {
+		return err
+	}
+	var list []error
+	if pair.Base != nil {
+		list = append(list, &sideError{base.label(), pair.Base})
+	}
+	if pair.Target != nil {
+		list = append(list, &sideError{target.label(), pair.Target})
+	}
+	return &bothError{list}
+}
+
+// bothError joins the errors of both revisions; the exit status is that of the
+// first.
+type bothError struct{ list []error }
+
+func (e *bothError) Error() string {
+	texts := make([]string, len(e.list))
+	for i, err := range e.list {
+		texts[i] = err.Error()
+	}
+	return strings.Join(texts, "\n")
+}
+
+func (e *bothError) Unwrap() []error { return e.list }

@@ -1,0 +1,112 @@
+package main
+
+import (
+	"context"
+	"encoding/json"
+	"errors"
+	"fmt"
+	"io"
+
+	"github.com/spf13/cobra"
+
+	"speedtrail/schema"
+	"speedtrail/schema/source"
+)
+
+func (a *app) validateCommand() *cobra.Command {
+	c := &cobra.Command{
+		Use:   "validate [REV]",
+		Short: "list every fault of the data set at a revision",
+		Long: `validate reads the whole data set at a revision (the working tree unless given)
+and lists every fault with file, line and column. Exit status 0: none, 2: some.`,
+		Example: `  speedtrail validate
+  speedtrail validate release-2`,
+		Args: arguments(0, 1),
+		RunE: func(c *cobra.Command, args []string) error {
+			rev := workingTree
+			if len(args) == 1 {
+				rev = args[0]
+			}
+			return a.validate(c.Context(), rev)
+		},
+	}
+	a.outputFlags(c, "text", "json")
+	return c
+}
+
+// validation is the JSON form of a validation.
+type validation struct {
+	Format   string            `json:"format"`
+	Revision string            `json:"revision"` // full hash, empty for the working tree
+	Dataset  string            `json:"dataset"`
+	Routes   int               `json:"routes"`
+	Trains   int               `json:"trains"`
+	Faults   []validationFault `json:"faults"`
+	Unlisted int               `json:"faults_not_listed"`
+}
+
+type validationFault struct {
+	File    string `json:"file"`
+	Line    int    `json:"line"`
+	Column  int    `json:"column"`
+	Problem string `json:"problem"`
+}
+
+// errFaulty ends validate with the status of faulty data, its result printed.
+var errFaulty = &callError{problem: "the data set is faulty"}
+
+func (a *app) validate(ctx context.Context, rev string) error {
+	repo, err := a.openRepo()
+	if err != nil {
+		return err
+	}
+	defer repo.Close()
+	s, err := a.openSide(repo, rev)
+	if err != nil {
+		return err
+	}
+	data, err := schema.Load(ctx, s.files)
+	faults := &source.Faults{}
+	if err != nil && !errors.As(err, &faults) {
+		return err
+	}
+	if err := a.write(func(w io.Writer) error { return a.printValidation(w, s, data, faults) }); err != nil {
+		return err
+	}
+	if faults.Count > 0 {
+		return fmt.Errorf("%w at %s: %d %s", errFaulty, s.label(), faults.Count, plural(faults.Count, "fault", "faults"))
+	}
+	return nil
+}
+
+func (a *app) printValidation(w io.Writer, s side, data *schema.Dataset, faults *source.Faults) error {
+	if a.format == "json" {
+		v := validation{Format: "speedtrail-validation 1", Revision: s.commit.Hash, Faults: []validationFault{}, Unlisted: faults.Count - len(faults.List)}
+		if data != nil {
+			v.Dataset, v.Routes, v.Trains = data.Name, len(data.Routes), len(data.Trains)
+		}
+		for _, f := range faults.List {
+			v.Faults = append(v.Faults, validationFault{f.File, f.Line, f.Column, f.Problem})
+		}
+		e := json.NewEncoder(w)
+		e.SetIndent("", "  ")
+		return e.Encode(v)
+	}
+	if faults.Count > 0 {
+		_, err := fmt.Fprintln(w, faults.Error())
+		return err
+	}
+	_, err := fmt.Fprintf(w, "%s: no fault in %q (%d %s, %d reference %s, %d change %s)\n", s.label(), data.Name,
+		len(data.Routes), plural(len(data.Routes), "route", "routes"),
+		len(data.Trains), plural(len(data.Trains), "train", "trains"),
+		len(data.Requests), plural(len(data.Requests), "request", "requests"))
+	return err
+}
+
+// plural picks a word for a number.
+func plural(n int, one, many string) string {
+	if n == 1 {
+		return one
+	}
+	return many
+}

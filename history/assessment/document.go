@@ -1,0 +1,259 @@
+// Package assessment makes the document of an assessment: everything that was
+// computed about two revisions of a data set, and from what, in a form that is
+// stored in the ledger and from which every report is written.
+//
+// The stored bytes are RFC 8785 JSON. The part "computed" has a digest, which
+// is the same wherever and whenever the same two revisions are assessed by the
+// same rules:
+//
+//	digest = SHA-256("speedtrail-assessment 1\n" computed)
+//
+// in lower-case hex, "computed" being the canonical JSON of that member. The
+// names that were typed stand beside it and are not in the digest.
+//
+// Lengths in members whose names end in _mm are whole millimetres; from_km and
+// to_km are positions as they are written in a data set, with # where posts
+// repeat. Running distances count from the start of the target's track.
+package assessment
+
+// Format names the form of a Document.
+const Format = "speedtrail-assessment 1"
+
+// Document is an assessment. The fields of every type in this file stand in
+// the order of their JSON names, which is the canonical one.
+type Document struct {
+	Computed Computed `json:"computed"`
+	Format   string   `json:"format"`
+	Named    Named    `json:"named"`
+}
+
+// Named is how the revisions were called; it is not in the digest.
+type Named struct {
+	Base       string `json:"base"`        // as typed
+	BaseName   string `json:"base_name"`   // a tag or branch that points to it, or empty
+	Target     string `json:"target"`      // as typed
+	TargetName string `json:"target_name"` // a tag or branch that points to it, or empty
+}
+
+// Computed is all that the digest covers.
+type Computed struct {
+	Base         Revision     `json:"base"`
+	Dataset      string       `json:"dataset"`      // the target's name of the data set
+	EqualRoutes  int          `json:"equal_routes"` // routes whose files are the same
+	Files        []File       `json:"files"`
+	Findings     []Finding    `json:"findings"`
+	Folder       string       `json:"folder"` // the data set's folder in the repository, "." for its root
+	Options      Options      `json:"options"`
+	Preparers    []Person     `json:"preparers"`
+	Requests     []Request    `json:"requests"` // in play
+	Routes       []Route      `json:"routes"`   // that differ
+	RulesVersion int          `json:"rules_version"`
+	Source       []SourceFile `json:"source"`
+	Stretches    Stretches    `json:"stretches"`
+	Target       Revision     `json:"target"`
+	Trains       []Train      `json:"trains"`
+}
+
+// Revision is one side of an assessment. For the working tree, Commit is empty.
+type Revision struct {
+	Author    Person `json:"author"`
+	Commit    string `json:"commit"` // full hash
+	Committed string `json:"committed"`
+	Subject   string `json:"subject"`
+}
+
+// Person is a name and an e-mail address as commits carry them: a claim.
+type Person struct {
+	Email string `json:"email"`
+	Name  string `json:"name"`
+}
+
+// Options are the options that can change a result.
+type Options struct {
+	Requests []string `json:"requests"` // ids given with --request; empty: those added or altered
+}
+
+// File is a file that was read on at least one side, with the SHA-256 of its
+// bytes in lower-case hex, empty where it does not exist.
+type File struct {
+	Base   string `json:"base_sha256"`
+	Path   string `json:"path"`
+	Target string `json:"target_sha256"`
+}
+
+// Finding is something that needs eyes.
+type Finding struct {
+	Accepted  string `json:"accepted"` // reason, where accepted.toml of the base accepts it
+	Direction string `json:"direction"`
+	Do        string `json:"do"` // what to do
+	From      string `json:"from_km"`
+	ID        string `json:"id"`
+	Row       string `json:"row"` // path:line, where one row is meant
+	Route     string `json:"route"`
+	Text      string `json:"text"` // what, with its place
+	To        string `json:"to_km"`
+	Why       string `json:"why"` // why it matters
+}
+
+// Request is a change request in play.
+type Request struct {
+	Declares []Declaration `json:"declares"`
+	File     string        `json:"file"`
+	ID       string        `json:"id"`
+	Reason   string        `json:"reason"`
+	Title    string        `json:"title"`
+}
+
+// Declaration is one stretch that a request declares.
+type Declaration struct {
+	Direction string   `json:"direction"`
+	Effect    string   `json:"effect"`
+	From      string   `json:"from_km"`
+	Line      int      `json:"line"`
+	Route     string   `json:"route"`
+	To        string   `json:"to_km"`
+	Trains    []string `json:"trains"` // empty: every train
+}
+
+// Route is what differs on one route.
+type Route struct {
+	Changes      []Change     `json:"changes"`
+	End          string       `json:"end_km"`
+	Fate         string       `json:"fate"` // kept, added, removed
+	Folder       string       `json:"folder"`
+	FolderBefore string       `json:"folder_before"` // where it differs, else empty
+	ID           string       `json:"id"`
+	Name         string       `json:"name"`
+	NameBefore   string       `json:"name_before"` // where it differs, else empty
+	Sources      [][]Source   `json:"sources"`
+	Start        string       `json:"start_km"`
+	Track        []TrackPiece `json:"track"`
+}
+
+// Change is a stretch on which some trains see the same change.
+type Change struct {
+	After        int    `json:"after_kmh"`
+	AfterSource  int    `json:"after_source"` // index in Route.Sources
+	Before       int    `json:"before_kmh"`
+	BeforeSource int    `json:"before_source"`
+	Direction    string `json:"direction"`
+	From         string `json:"from_km"`
+	Length       int64  `json:"length_mm"`
+	RunOut       bool   `json:"run_out"`
+	Start        int64  `json:"start_mm"` // running distance of From
+	To           string `json:"to_km"`
+	Trains       []int  `json:"trains"` // indices in Computed.Trains, ascending
+}
+
+// Source is a row that governs a speed.
+type Source struct {
+	File  string `json:"file"`
+	Kind  string `json:"kind"`
+	Line  int    `json:"line"`
+	Value int    `json:"value_kmh"`
+}
+
+// TrackPiece is track or a direction of travel that only one side has.
+type TrackPiece struct {
+	Direction string `json:"direction"`
+	Fate      string `json:"fate"` // added or removed
+	From      string `json:"from_km"`
+	Length    int64  `json:"length_mm"`
+	To        string `json:"to_km"`
+}
+
+// Train is a reference train with what the change does to it over all routes.
+// Lengths are added up over both directions of travel.
+type Train struct {
+	After            *Definition `json:"after"`  // null where the target has no such train
+	Before           *Definition `json:"before"` // null where the base has no such train
+	Fate             string      `json:"fate"`   // kept, added, removed, altered
+	ID               string      `json:"id"`
+	LargestRaise     int         `json:"largest_raise_kmh"`
+	LargestReduction int         `json:"largest_reduction_kmh"`
+	Lowered          int64       `json:"lowered_mm"`
+	Raised           int64       `json:"raised_mm"`
+	Routes           []string    `json:"routes"` // ids of the routes on which it sees a change
+}
+
+// Definition is a train as trains.toml defines it.
+type Definition struct {
+	Acceleration   string   `json:"acceleration_ms2"` // decimal, empty: not given
+	AxleLoad       string   `json:"axle_load"`
+	Braking        string   `json:"braking_ms2"`
+	CantDeficiency int      `json:"cant_deficiency_mm"`
+	Categories     []string `json:"categories"`
+	Length         int64    `json:"length_mm"`
+	MaxSpeed       int      `json:"max_speed_kmh"`
+	Name           string   `json:"name"`
+}
+
+// Stretches are the pictures of the changes: changes of one direction of a
+// route that lie close together, and the trains that see the same there.
+type Stretches struct {
+	LeftOut int       `json:"left_out"` // pictures beyond the limit; their changes stand in Routes
+	List    []Stretch `json:"list"`
+}
+
+// Stretch is what one chart shows. All distances are running distances on the
+// target's track.
+type Stretch struct {
+	After       []Step    `json:"after"`
+	Before      []Step    `json:"before"` // with gaps where the base has no track
+	Changes     []int     `json:"changes"`
+	Direction   string    `json:"direction"`
+	From        int64     `json:"from_mm"` // of the changes
+	Places      []Place   `json:"places"`
+	Route       int       `json:"route"` // index in Computed.Routes
+	RouteLength int64     `json:"route_length_mm"`
+	Segments    []Segment `json:"segments"` // the chainage within the window
+	To          int64     `json:"to_mm"`
+	Trains      []int     `json:"trains"`
+	WindowFrom  int64     `json:"window_from_mm"`
+	WindowTo    int64     `json:"window_to_mm"`
+}
+
+// Step is a piece of a profile in a chart.
+type Step struct {
+	From   int64 `json:"from_mm"`
+	Source int   `json:"source"` // index in Route.Sources
+	Speed  int   `json:"speed_kmh"`
+	To     int64 `json:"to_mm"`
+}
+
+// Place is a named place in a chart.
+type Place struct {
+	From int64  `json:"from_mm"`
+	Kind string `json:"kind"`
+	Name string `json:"name"`
+	To   int64  `json:"to_mm"` // equal to From for one without an extent
+}
+
+// Segment is a piece of track with steady chainage in a chart.
+type Segment struct {
+	Chainage int64 `json:"chainage_mm"` // at From
+	From     int64 `json:"from_mm"`
+	To       int64 `json:"to_mm"`
+}
+
+// SourceFile is a file that differs, line by line.
+type SourceFile struct {
+	Base   string `json:"base"`  // path, empty: the file is new
+	Hunks  []Hunk `json:"hunks"` // empty where only Note says what differs
+	Note   string `json:"note"`  // for example that only line ends differ
+	Target string `json:"target"`
+}
+
+// Hunk is a run of lines around differences.
+type Hunk struct {
+	BaseLine   int    `json:"base_line"` // number of its first line, from 1
+	Lines      []Line `json:"lines"`
+	TargetLine int    `json:"target_line"`
+}
+
+// Line is a line of a hunk: Op is "=" for one that both have, "-" and "+" for
+// one that only the base or the target has.
+type Line struct {
+	Op   string `json:"op"`
+	Text string `json:"text"`
+}

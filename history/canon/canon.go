@@ -1,0 +1,51 @@
+// Package canon writes and checks canonical JSON (RFC 8785), the form of every
+// body in the ledger: members in the order of their names, no blanks, one way
+// to write each text and number. Bodies hold no fractions: numbers are whole
+// and below 2^53, so that every reader in every language sees the same.
+//
+//	canon.Marshal(map[string]any{"b": 1, "a": "x"}) // {"a":"x","b":1}
+package canon
+
+import (
+	"bytes"
+	"errors"
+	"fmt"
+
+	"github.com/go-json-experiment/json"
+	"github.com/go-json-experiment/json/jsontext"
+)
+
+// ErrNotCanonical is the error of Check.
+var ErrNotCanonical = errors.New("not canonical JSON (RFC 8785)")
+
+// Marshal writes a value as canonical JSON. Texts that are not valid UTF-8 are
+// refused; nil slices are empty arrays.
+func Marshal(v any) ([]byte, error) {
+	b, err := json.Marshal(v)
+	if err != nil {
+		return nil, err
+	}
+	value := jsontext.Value(b)
+	if err := value.Canonicalize(); err != nil {
+		return nil, err
+	}
+	return value, nil
+}
+
+// Unmarshal reads canonical JSON into a value and refuses members that the value
+// does not have.
+func Unmarshal(body []byte, v any) error {
+	return json.Unmarshal(body, v, json.RejectUnknownMembers(true))
+}
+
+// Check proves that bytes are canonical JSON. The error is ErrNotCanonical.
+func Check(body []byte) error {
+	value := jsontext.Value(bytes.Clone(body))
+	if err := value.Canonicalize(); err != nil {
+		return fmt.Errorf("%w: %w", ErrNotCanonical, err)
+	}
+	if !bytes.Equal(value, body) {
+		return ErrNotCanonical
+	}
+	return nil
+}

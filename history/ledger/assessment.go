@@ -1,0 +1,241 @@
+package ledger
+
+import (
+	"context"
+	"database/sql"
+	"database/sql/driver"
+	"errors"
+	"fmt"
+	"iter"
+	"strings"
+	"time"
+
+	"github.com/mattn/go-sqlite3"
+
+	"speedtrail/history/chain"
+)
+
+// Record is an assessment as it is written to the ledger.
+type Record struct {
+	Digest       string // SHA-256 in hex, the same for the same result
+	Body         []byte // canonical JSON, holds everything
+	Base, Target string // full commit hashes
+	Folder       string
+	Dataset      string
+	RulesVersion int
+	Requests     []Request
+	Preparers    []Person
+	Findings     []Finding
+	Changes      iter.Seq[Change]
+}
+
+// Request is a change request in play.
+type Request struct{ ID, Title string }
+
+// Person is somebody who prepared the change.
+type Person struct{ Name, Email string }
+
+// Finding is a finding as a row.
+type Finding struct{ ID, Route, Direction, From, To, Text, Accepted string }
+
+// Change is a speed change of one train as a row.
+type Change struct {
+	Route, Direction, Train string
+	From, To                string // positions as printed
+	LengthMM                int64
+	Before, After           int // km/h
+	RunOut                  bool
+	BeforeSource            string
+	AfterSource             string
+}
+
+// RecordAssessment appends an assessment. One whose digest is there already
+// adds nothing: added is false and number is that of the one that is there.
+func (l *Ledger) RecordAssessment(ctx context.Context, now time.Time, r Record) (number int64, added bool, head chain.Head, err error) {
+	err = l.transaction(ctx, func() error {
+		if head, err = l.Head(ctx); err != nil {
+			return err
+		}
+		err := l.conn.QueryRowContext(ctx, "SELECT number FROM assessment WHERE digest = ?", r.Digest).Scan(&number)
+		if err == nil || !errors.Is(err, sql.ErrNoRows) {
+			return err
+		}
+		if err := l.conn.QueryRowContext(ctx, "SELECT coalesce(max(number), 0) + 1 FROM assessment").Scan(&number); err != nil {
+			return err
+		}
+		e := chain.Next(head, now, chain.Assessment, r.Body)
+		if err := l.insertEntry(ctx, e); err != nil {
+			return err
+		}
+		if err := l.insertRows(ctx, number, e.Seq, r); err != nil {
+			return err
+		}
+		head, added = e.Head(), true
+		return nil
+	})
+	if err != nil {
+		return 0, false, chain.Head{}, err
+	}
+	return number, added, head, nil
+}
+
+// insertRows writes the tables that repeat an assessment.
+func (l *Ledger) insertRows(ctx context.Context, number, entry int64, r Record) error {
+	// The number of rows is known only when they have been written, and a row of
+	// the ledger is never altered: they are counted first.
+	changes := int64(0)
+	for range r.Changes {
+		changes++
+	}
+	if _, err := l.conn.ExecContext(ctx, "INSERT INTO assessment VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?)",
+		number, entry, r.Digest, r.Base, r.Target, r.Folder, r.Dataset, r.RulesVersion, changes, len(r.Findings)); err != nil {
+		return err
+	}
+	for i, q := range r.Requests {
+		if _, err := l.conn.ExecContext(ctx, "INSERT INTO request VALUES (?, ?, ?, ?)", number, i+1, q.ID, q.Title); err != nil {
+			return err
+		}
+	}
+	for i, p := range r.Preparers {
+		if _, err := l.conn.ExecContext(ctx, "INSERT INTO preparer VALUES (?, ?, ?, ?)", number, i+1, p.Name, p.Email); err != nil {
+			return err
+		}
+	}
+	for i, f := range r.Findings {
+		if _, err := l.conn.ExecContext(ctx, "INSERT INTO finding VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?)",
+			number, i+1, f.ID, f.Route, f.Direction, f.From, f.To, f.Text, f.Accepted); err != nil {
+			return err
+		}
+	}
+	return l.conn.Raw(func(c any) error { return insertChanges(ctx, c.(*sqlite3.SQLiteConn), number, r.Changes) })
+}
+
+const (
+	changeColumns = 13
+	// batch is how many rows one INSERT holds: more does not make it quicker.
+	batch = 20
+)
+
+// insertChanges writes the speed changes in batches through the driver itself,
+// which spares a conversion for each of the many values.
+func insertChanges(ctx context.Context, conn *sqlite3.SQLiteConn, number int64, changes iter.Seq[Change]) error {
+	insert := func(rows int) (driver.Stmt, error) {
+		row := ", (?" + strings.Repeat(", ?", changeColumns-1) + ")"
+		return conn.Prepare("INSERT INTO speed_change VALUES " + strings.Repeat(row, rows)[2:])
+	}
+	whole, err := insert(batch)
+	if err != nil {
+		return err
+	}
+	defer whole.Close()
+	values := make([]driver.Value, 0, batch*changeColumns)
+	place := int64(0)
+	flush := func(s driver.Stmt) error {
+		_, err := s.Exec(values)
+		values = values[:0]
+		return err
+	}
+	for c := range changes {
+		place++
+		runOut := int64(0)
+		if c.RunOut {
+			runOut = 1
+		}
+		values = append(values, number, place, c.Route, c.Direction, c.Train, c.From, c.To, c.LengthMM,
+			int64(c.Before), int64(c.After), runOut, c.BeforeSource, c.AfterSource)
+		if len(values) == cap(values) {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
+			if err := flush(whole); err != nil {
+				return err
+			}
+		}
+	}
+	if len(values) == 0 {
+		return nil
+	}
+	rest, err := insert(len(values) / changeColumns)
+	if err != nil {
+		return err
+	}
+	defer rest.Close()
+	return flush(rest)
+}
+
+// AssessmentRow is an assessment as the register shows it.
+type AssessmentRow struct {
+	Number            int64
+	Entry             chain.Head
+	Time              string // of recording
+	Digest            string
+	Base, Target      string
+	Folder, Dataset   string
+	Requests          []string // ids
+	Changes, Findings int64
+}
+
+const selectAssessment = `SELECT a.number, e.seq, e.hash, e.time, a.digest, a.base, a.target, a.folder, a.dataset, a.speed_changes, a.findings
+FROM assessment a JOIN entry e ON e.seq = a.entry `
+
+func (l *Ledger) scan(row interface{ Scan(...any) error }) (AssessmentRow, error) {
+	var a AssessmentRow
+	err := row.Scan(&a.Number, &a.Entry.Seq, &a.Entry.Hash, &a.Time, &a.Digest, &a.Base, &a.Target, &a.Folder, &a.Dataset, &a.Changes, &a.Findings)
+	return a, err
+}
+
+// Assessment gives an assessment and its body.
+func (l *Ledger) Assessment(ctx context.Context, number int64) (AssessmentRow, []byte, error) {
+	a, err := l.scan(l.conn.QueryRowContext(ctx, selectAssessment+"WHERE a.number = ?", number))
+	if errors.Is(err, sql.ErrNoRows) {
+		return a, nil, fail(ErrNoAssessment, fmt.Errorf("number %d", number))
+	}
+	if err != nil {
+		return a, nil, classify(err)
+	}
+	e, err := l.Entry(ctx, a.Entry.Seq)
+	return a, e.Body, err
+}
+
+// Assessments lists all assessments, newest first.
+func (l *Ledger) Assessments(ctx context.Context) ([]AssessmentRow, error) {
+	rows, err := l.conn.QueryContext(ctx, selectAssessment+"ORDER BY a.number DESC")
+	if err != nil {
+		return nil, classify(err)
+	}
+	defer rows.Close()
+	var list []AssessmentRow
+	for rows.Next() {
+		a, err := l.scan(rows)
+		if err != nil {
+			return nil, classify(err)
+		}
+		list = append(list, a)
+	}
+	if err := rows.Err(); err != nil {
+		return nil, classify(err)
+	}
+	for i := range list {
+		if list[i].Requests, err = l.requests(ctx, list[i].Number); err != nil {
+			return nil, classify(err)
+		}
+	}
+	return list, nil
+}
+
+func (l *Ledger) requests(ctx context.Context, number int64) ([]string, error) {
+	rows, err := l.conn.QueryContext(ctx, "SELECT id FROM request WHERE assessment = ? ORDER BY place", number)
+	if err != nil {
+		return nil, err
+	}
+	defer rows.Close()
+	ids := []string{}
+	for rows.Next() {
+		var id string
+		if err := rows.Scan(&id); err != nil {
+			return nil, err
+		}
+		ids = append(ids, id)
+	}
+	return ids, rows.Err()
+}
