@@ -265,7 +265,7 @@ func letter(i int) string {
 func (f *figure) placeLegend() []string {
 	var items []string
 	for i, p := range f.Places {
-		items = append(items, fmt.Sprintf("%s\u00a0%s (%s)", letter(i), p.Name, p.Kind))
+		items = append(items, fmt.Sprintf("%s %s (%s)", letter(i), p.Name, p.Kind))
 	}
 	return fill(items)
 }
@@ -273,7 +273,7 @@ func (f *figure) placeLegend() []string {
 func (f *figure) governLegend() []string {
 	var items []string
 	for i, g := range f.Governs {
-		items = append(items, fmt.Sprintf("%d\u00a0%s", i+1, g))
+		items = append(items, fmt.Sprintf("%d %s", i+1, g))
 	}
 	return fill(items)
 }

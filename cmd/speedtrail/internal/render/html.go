@@ -47,6 +47,7 @@ type page struct {
 	Stretches []pageStretch
 	ShownRows int
 	AllRows   int
+	LeftOut   int // stretches that are not drawn
 	Lines     []pageFile
 	LinesLeft int
 	Caution   string
@@ -60,19 +61,20 @@ type page struct {
 }
 
 type pageStretch struct {
-	ID, Title, Route, Names, Direction, RouteName string
-	TrainIDs                                      string // joined by a line feed, for the filter
-	Chart                                         template.HTML
-	Rows                                          []pageRow
+	ID, Route, Names, Direction, RouteName string
+	Drawn                                  string // trains of the chart, where it stands for more
+	TrainIDs                               string // joined by a line feed, for the filter
+	Chart                                  template.HTML
+	Rows                                   []pageRow
 }
 
 type pageRow struct {
 	From, To, Length string
+	Trains           string
 	Before, After    int
 	Step             string
 	Raised, RunOut   bool
-	BeforeBy         []string
-	AfterBy          []string
+	Because          []string
 }
 
 type pageFile struct {
@@ -133,36 +135,39 @@ func (p *page) fillStretches() {
 	for range p.C.Rows() {
 		p.AllRows++
 	}
-	for i := range p.C.Stretches.List {
-		s := &p.C.Stretches.List[i]
+	for i, g := range groups(p.C) {
 		if p.ShownRows >= mostHTMLRows {
-			return
+			p.LeftOut++
+			continue
 		}
+		s := g.drawn
 		r := &p.C.Routes[s.Route]
 		id := fmt.Sprintf("s%d", i+1)
+		names := trainNames(p.C, g.trains, 0)
 		out := pageStretch{
-			ID: id, Title: stretchTitle(p.C, s), Route: r.ID, RouteName: r.Name, Direction: s.Direction, Names: trainNames(p.C, s.Trains, 0),
-			TrainIDs: strings.ReplaceAll(trainNames(p.C, s.Trains, 0), ", ", "\n"),
+			ID: id, Route: r.ID, RouteName: r.Name, Direction: s.Direction, Names: names,
+			TrainIDs: strings.ReplaceAll(names, ", ", "\n"),
 			// The chart is built from escaped texts and numbers only.
 			Chart: template.HTML(stretchFigure(p.C, s).svg(id)),
 		}
-		for _, k := range s.Changes {
+		if len(s.Trains) < len(g.trains) {
+			out.Drawn = trainNames(p.C, s.Trains, 0)
+		}
+		for _, k := range g.changes {
 			x := &r.Changes[k]
 			row := pageRow{
 				From: minus(x.From), To: minus(x.To), Length: metres(x.Length), Before: x.Before, After: x.After,
-				Step: signed(x.After - x.Before), Raised: x.After > x.Before, RunOut: x.RunOut,
+				Step: signed(x.After - x.Before), Raised: x.After > x.Before, RunOut: x.RunOut, Trains: trainNames(p.C, g.trainsOf(x), 0),
 			}
-			for _, src := range r.Sources[x.BeforeSource] {
-				row.BeforeBy = append(row.BeforeBy, source.Visible(src.Text()))
-			}
-			for _, src := range r.Sources[x.AfterSource] {
-				row.AfterBy = append(row.AfterBy, source.Visible(src.Text()))
+			for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
+				row.Because = append(row.Because, source.Visible(line))
 			}
 			out.Rows = append(out.Rows, row)
-			p.ShownRows += len(s.Trains)
+			p.ShownRows++
 		}
 		p.Stretches = append(p.Stretches, out)
 	}
+	p.LeftOut += p.C.Stretches.LeftOut
 }
 
 func (p *page) fillSource() {

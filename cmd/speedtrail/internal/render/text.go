@@ -185,29 +185,32 @@ func (p *textWriter) changes() {
 	shown, all := 0, 0
 	for i := range p.c.Routes {
 		r := &p.c.Routes[i]
-		for k := range r.Changes {
-			x := &r.Changes[k]
-			all++
-			if shown == mostTextChanges {
-				continue
+		for list := r.Changes; len(list) > 0; {
+			n := 1
+			for n < len(list) && list[n].Direction == list[0].Direction {
+				n++
 			}
-			shown++
-			if k == 0 || x.Direction != r.Changes[k-1].Direction {
-				p.heading(source.Visible(fmt.Sprintf("Changes on %s %s, %s", r.ID, r.Name, x.Direction)))
+			fs := families(list[:n])
+			all += len(fs)
+			if room := mostTextChanges - shown; room > 0 {
+				p.heading(source.Visible(fmt.Sprintf("Changes on %s %s, %s", r.ID, r.Name, list[0].Direction)))
+				fs = fs[:min(len(fs), room)]
+				shown += len(fs)
+				for _, f := range fs {
+					p.family(r, f)
+				}
 			}
-			p.change(r, x)
+			list = list[n:]
 		}
 	}
 	if all > shown {
-		p.printf("\n%d more changes are not shown here; --format csv lists all of them.\n", all-shown)
+		p.printf("\n%d more are not shown here; --format csv lists every change.\n", all-shown)
 	}
 }
 
-func (p *textWriter) change(r *assessment.Route, x *assessment.Change) {
-	runOut := ""
-	if x.RunOut {
-		runOut = "  run-out of the train length"
-	}
+// family writes changes that differ only by the length of the train.
+func (p *textWriter) family(r *assessment.Route, f family) {
+	x := f.last
 	step := signed(x.After - x.Before)
 	if p.s.Color {
 		color := "31" // raised: look first
@@ -216,19 +219,18 @@ func (p *textWriter) change(r *assessment.Route, x *assessment.Change) {
 		}
 		step = "\x1b[" + color + "m" + step + "\x1b[0m"
 	}
-	p.printf("\nkm %s to %s (%s m): %d to %d km/h (%s)%s\n", minus(x.From), minus(x.To), metres(x.Length), x.Before, x.After, step, runOut)
-	p.paragraph("  trains  ", trainNames(p.c, x.Trains, 0))
-	for _, side := range []struct {
-		word string
-		list []assessment.Source
-	}{{"  before  ", r.Sources[x.BeforeSource]}, {"  after   ", r.Sources[x.AfterSource]}} {
-		for i, s := range side.list {
-			indent := side.word
-			if i > 0 {
-				indent = strings.Repeat(" ", len(indent))
-			}
-			p.paragraph(indent, s.Text())
-		}
+	line := fmt.Sprintf("km %s to %s", between(f.first.From, x.From), between(f.first.To, x.To))
+	remark := ""
+	switch {
+	case x.RunOut:
+		remark = "  run-out of the train length"
+	case f.first != x:
+		remark = "  by train length"
+	}
+	p.printf("%-34s %3d to %3d km/h  %s%s\n", line, x.Before, x.After, step, remark)
+	p.paragraph("    ", trainNames(p.c, f.trains, 0))
+	for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
+		p.paragraph("    ", line)
 	}
 }
 
