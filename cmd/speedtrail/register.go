@@ -8,6 +8,7 @@ import (
 	"strings"
 
 	"github.com/jedib0t/go-pretty/v6/table"
+	"github.com/jedib0t/go-pretty/v6/text"
 	"github.com/spf13/cobra"
 
 	"speedtrail/history/ledger"
@@ -87,6 +88,7 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, rows []ledger.Assessm
 	t.SetStyle(table.StyleLight)
 	t.Style().Options.DrawBorder = false
 	t.Style().Options.SeparateColumns = false
+	t.Style().Format.Header = text.FormatDefault
 	t.AppendHeader(table.Row{"no.", "recorded (UTC)", "state", "base", "target", "requests", "changes", "findings"})
 	for _, r := range rows {
 		requests := strings.Join(r.Requests, ", ")
@@ -98,7 +100,7 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, rows []ledger.Assessm
 			source.Visible(requests), r.Changes, r.Findings,
 		})
 	}
-	t.SetColumnConfigs([]table.ColumnConfig{{Number: 6, WidthMax: 24}})
+	t.SetColumnConfigs([]table.ColumnConfig{{Number: 6, WidthMax: 24, WidthMaxEnforcer: text.WrapSoft}})
 	_, err := fmt.Fprintf(w, "%s\n\nledger %s, head %s\nnext: speedtrail report %d --out report.html\n", t.Render(), l.ID(), head, rows[0].Number)
 	return err
 }

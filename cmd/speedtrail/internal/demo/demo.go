@@ -82,6 +82,7 @@ func History() ([]compose.Commit, error) {
 	if err != nil {
 		return nil, err
 	}
+	first[".gitignore"] = "/change-report.html\n"
 	b := builder{branches: map[string]*branch{"main": {files: first, tip: -1}}}
 	for _, s := range steps {
 		if err := b.add(s); err != nil {

@@ -60,7 +60,7 @@ func ProfileText(w io.Writer, s Style, list ...Profile) error {
 		t.SetColumnConfigs([]table.ColumnConfig{
 			{Number: 1, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 2, Align: text.AlignRight, AlignHeader: text.AlignRight},
 			{Number: 3, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 4, Align: text.AlignRight, AlignHeader: text.AlignRight},
-			{Number: 5, WidthMax: max(30, s.Width-46), WidthMaxEnforcer: text.WrapText},
+			{Number: 5, WidthMax: max(30, s.Width-46), WidthMaxEnforcer: text.WrapSoft},
 		})
 		for _, piece := range p.Pieces {
 			lines := make([]string, len(piece.Sources))
@@ -69,7 +69,7 @@ func ProfileText(w io.Writer, s Style, list ...Profile) error {
 			}
 			t.AppendRow(table.Row{minus(piece.From), minus(piece.To), metres(piece.End - piece.Start), piece.Speed, strings.Join(lines, "\n")})
 		}
-		if _, err := fmt.Fprintf(w, "\n%s\n", t.Render()); err != nil {
+		if _, err := fmt.Fprintf(w, "\n%s\n", tidy(t.Render())); err != nil {
 			return err
 		}
 	}
@@ -173,4 +173,13 @@ func plainTable() table.Writer {
 	style.Box.PaddingLeft, style.Box.PaddingRight = "", "  "
 	t.SetStyle(style)
 	return t
+}
+
+// tidy takes the blanks from the ends of lines.
+func tidy(s string) string {
+	lines := strings.Split(s, "\n")
+	for i, line := range lines {
+		lines[i] = strings.TrimRight(line, " ")
+	}
+	return strings.Join(lines, "\n")
 }

@@ -150,7 +150,7 @@ func (p *textWriter) trains() {
 		}
 		t.AppendRow(table.Row{name, lengthCell(x.Raised), lengthCell(x.Lowered), stepCell(x.LargestRaise), stepCell(-x.LargestReduction), strings.Join(x.Routes, ", ")})
 	}
-	p.printf("%s\n", t.Render())
+	p.printf("%s\n", tidy(t.Render()))
 	p.printf("Lengths are added up over both directions of travel.\n")
 }
 
