@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"path/filepath"
 
@@ -9,6 +10,7 @@ import (
 
 	"speedtrail/cmd/speedtrail/internal/demo"
 	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/history/compose"
 )
 
 func (a *app) demoCommand() *cobra.Command {
@@ -33,8 +35,11 @@ when that is done, whatever the findings.`,
 
 func (a *app) demo(ctx context.Context, dir string) error {
 	network, err := demo.Write(ctx, dir)
+	if errors.Is(err, compose.ErrNotEmpty) {
+		return badCall("name a folder that is not there yet: speedtrail demo DIR", "%s is not empty and was left alone", dir)
+	}
 	if err != nil {
-		return err
+		return fmt.Errorf("the demonstration was not written: %w", err)
 	}
 	fmt.Fprintf(a.out, "Wrote an invented network with its history to %s\n\n", dir)
 	a.repo, a.format = dir, "text"

@@ -80,8 +80,13 @@ NO_COLOR and --color are respected. Results go to standard output, progress and
 remarks to standard error.`,
 		SilenceUsage:  true,
 		SilenceErrors: true,
-		Args:          cobra.NoArgs,
-		RunE:          func(c *cobra.Command, _ []string) error { return c.Help() },
+		Args: func(c *cobra.Command, args []string) error {
+			if len(args) > 0 {
+				return badCall("speedtrail --help lists the commands", "unknown command %q", args[0])
+			}
+			return nil
+		},
+		RunE: func(c *cobra.Command, _ []string) error { return c.Help() },
 	}
 	flags := root.PersistentFlags()
 	flags.StringVar(&a.repo, "repo", ".", "the Git `repository`, or a folder in it; bare ones too")
