@@ -101,7 +101,9 @@ func (a *app) openLedger(ctx context.Context, write bool) (*ledger.Ledger, error
 	repo, err := a.openRepo()
 	if err == nil {
 		defer repo.Close()
-		file = a.ledgerPath(repo)
+		if file, err = filepath.Abs(a.ledgerPath(repo)); err != nil {
+			return nil, err
+		}
 		tracked, err := repo.Tracked(file)
 		if err != nil {
 			return nil, err
