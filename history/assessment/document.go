@@ -106,8 +106,8 @@ type Request struct {
 
 // Declaration is one stretch that a request declares.
 type Declaration struct {
-	Direction string   `json:"direction"`
-	Effect    string   `json:"effect"`
+	Direction string   `json:"direction" jsonschema:"enum=nominal,enum=reverse,enum=both"`
+	Effect    string   `json:"effect" jsonschema:"enum=raise,enum=lower,enum=any"`
 	From      string   `json:"from_km"`
 	Line      int      `json:"line"`
 	Route     string   `json:"route"`
@@ -119,7 +119,7 @@ type Declaration struct {
 type Route struct {
 	Changes      []Change     `json:"changes"`
 	End          string       `json:"end_km"`
-	Fate         string       `json:"fate"` // kept, added, removed
+	Fate         string       `json:"fate" jsonschema:"enum=kept,enum=added,enum=removed"` // kept, added, removed
 	Folder       string       `json:"folder"`
 	FolderBefore string       `json:"folder_before"` // where it differs, else empty
 	ID           string       `json:"id"`
@@ -136,7 +136,7 @@ type Change struct {
 	AfterSource  int    `json:"after_source"` // index in Route.Sources
 	Before       int    `json:"before_kmh"`
 	BeforeSource int    `json:"before_source"`
-	Direction    string `json:"direction"`
+	Direction    string `json:"direction" jsonschema:"enum=nominal,enum=reverse"`
 	From         string `json:"from_km"`
 	Length       int64  `json:"length_mm"`
 	RunOut       bool   `json:"run_out"`
@@ -155,8 +155,8 @@ type Source struct {
 
 // TrackPiece is track or a direction of travel that only one side has.
 type TrackPiece struct {
-	Direction string `json:"direction"`
-	Fate      string `json:"fate"` // added or removed
+	Direction string `json:"direction" jsonschema:"enum=nominal,enum=reverse"`
+	Fate      string `json:"fate" jsonschema:"enum=added,enum=removed"` // added or removed
 	From      string `json:"from_km"`
 	Length    int64  `json:"length_mm"`
 	To        string `json:"to_km"`
@@ -165,9 +165,9 @@ type TrackPiece struct {
 // Train is a reference train with what the change does to it over all routes.
 // Lengths are added up over both directions of travel.
 type Train struct {
-	After            *Definition `json:"after"`  // null where the target has no such train
-	Before           *Definition `json:"before"` // null where the base has no such train
-	Fate             string      `json:"fate"`   // kept, added, removed, altered
+	After            *Definition `json:"after" jsonschema:"nullable"`                                      // null where the target has no such train
+	Before           *Definition `json:"before" jsonschema:"nullable"`                                     // null where the base has no such train
+	Fate             string      `json:"fate" jsonschema:"enum=kept,enum=added,enum=removed,enum=altered"` // kept, added, removed, altered
 	ID               string      `json:"id"`
 	LargestRaise     int         `json:"largest_raise_kmh"`
 	LargestReduction int         `json:"largest_reduction_kmh"`
@@ -201,7 +201,7 @@ type Stretch struct {
 	After       []Step    `json:"after"`
 	Before      []Step    `json:"before"` // with gaps where the base has no track
 	Changes     []int     `json:"changes"`
-	Direction   string    `json:"direction"`
+	Direction   string    `json:"direction" jsonschema:"enum=nominal,enum=reverse"`
 	From        int64     `json:"from_mm"` // of the changes
 	Places      []Place   `json:"places"`
 	Route       int       `json:"route"` // index in Computed.Routes
@@ -254,6 +254,6 @@ type Hunk struct {
 // Line is a line of a hunk: Op is "=" for one that both have, "-" and "+" for
 // one that only the base or the target has.
 type Line struct {
-	Op   string `json:"op"`
+	Op   string `json:"op" jsonschema:"enum==,enum=-,enum=+"`
 	Text string `json:"text"`
 }

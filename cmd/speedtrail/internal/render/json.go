@@ -13,29 +13,36 @@ const (
 	profileJSONFormat = "speedtrail-profile 1"
 )
 
-// JSON writes the document as it is in the ledger, with what the ledger knows
-// about it, or null.
+// report is the JSON form of an assessment: the document as it is in the ledger,
+// with what the ledger knows about it.
+type report struct {
+	Assessment *assessment.Document `json:"assessment"`
+	Caution    string               `json:"caution"`
+	Format     string               `json:"format"`
+	// Record is null for an assessment that is not recorded.
+	Record  *Record `json:"record" jsonschema:"nullable"`
+	Verdict string  `json:"verdict"`
+}
+
+// JSON writes a report.
 func JSON(w io.Writer, d *assessment.Document, r Record) error {
-	out := struct {
-		Assessment *assessment.Document `json:"assessment"`
-		Caution    string               `json:"caution"`
-		Format     string               `json:"format"`
-		Record     *Record              `json:"record"`
-		Verdict    string               `json:"verdict"`
-	}{d, Caution, jsonFormat, nil, Verdict(d)}
+	out := report{d, Caution, jsonFormat, nil, Verdict(d)}
 	if r.Number != 0 {
 		out.Record = &r
 	}
 	return indented(w, out)
 }
 
+// profiles is the JSON form of profiles.
+type profiles struct {
+	Caution  string    `json:"caution"`
+	Format   string    `json:"format"`
+	Profiles []Profile `json:"profiles"`
+}
+
 // ProfileJSON writes profiles.
 func ProfileJSON(w io.Writer, list ...Profile) error {
-	return indented(w, struct {
-		Caution  string    `json:"caution"`
-		Format   string    `json:"format"`
-		Profiles []Profile `json:"profiles"`
-	}{Caution, profileJSONFormat, list})
+	return indented(w, profiles{Caution, profileJSONFormat, list})
 }
 
 func indented(w io.Writer, v any) error {

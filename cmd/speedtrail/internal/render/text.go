@@ -219,7 +219,7 @@ func (p *textWriter) family(r *assessment.Route, f family) {
 		}
 		step = "\x1b[" + color + "m" + step + "\x1b[0m"
 	}
-	line := fmt.Sprintf("km %s to %s", between(f.first.From, x.From), between(f.first.To, x.To))
+	line := fmt.Sprintf("km %s to %s", between(x.From, f.first.From), between(f.first.To, x.To))
 	remark := ""
 	switch {
 	case x.RunOut:
