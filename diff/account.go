@@ -1,12 +1,13 @@
 // Package diff compares two revisions of a data set by what they mean: which
-// reference trains are faster or slower, where, and because of which source
-// rows.
+// trains are faster or slower, where, because of which source rows, and whether
+// change requests declare it.
 //
-// It refuses nothing that schema has read; it states what it does not look at.
+// It refuses requests that name what does not exist; of everything else that
+// schema has read it gives an account, and states what it does not look at.
 // Results are in one order everywhere: route (by id), direction (nominal
 // first), position along the nominal direction, train (by id).
 //
-//	account, err := diff.Compare(ctx, base, target)
+//	account, err := diff.Compare(ctx, base, target, diff.Options{})
 //	for _, route := range account.Routes {
 //		for _, change := range route.Changes { ... }
 //	}
@@ -14,21 +15,27 @@ package diff
 
 import (
 	"speedtrail/diff/profile"
+	"speedtrail/diff/scope"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
 
 // RulesVersion is raised whenever the same data can give another result.
-const RulesVersion = 1
+const RulesVersion = 2
 
 // Account is all that differs between two revisions of a data set.
 type Account struct {
 	Trains []Train // those of either revision, by id
 	Routes []Route // those whose files differ, by id
 	Equal  int     // how many route folders hold the same files in both
-	// Requests are the change requests in play, by id.
-	Requests []schema.ChangeRequest
+	// Frame are the differences of the files that belong to no route.
+	Frame []File
+	// Requests are the change requests in play, by id, and Declared what they
+	// declare, in their order. Reconciled is false where that was left out.
+	Requests   []schema.ChangeRequest
+	Declared   []Declared
+	Reconciled bool
 	// Stretches are pictures of the changes, at most about StretchLimit, in
 	// the usual order; StretchesLeftOut counts those beyond.
 	Stretches        []Stretch
@@ -56,6 +63,9 @@ type Train struct {
 	schema.Train // as in the target, or as in the base for one that only it has
 	Fate         Fate
 	Before       schema.Train // the base's definition, where Fate is Altered
+	// Declared tells, for a train that is not Kept, whether a declaration of
+	// any effect names it.
+	Declared bool
 }
 
 // Route is what differs on one route.
@@ -64,11 +74,23 @@ type Route struct {
 	Base, Target *schema.Route // nil for a route that was added or removed
 	Track        []TrackChange // in order of direction and position
 	Changes      []Change
-	// Sources are the distinct lists of governing rows that the changes refer
-	// to.
+	// Masked are changes that would appear if no temporary restriction were in
+	// force on either side, and are not among Changes.
+	Masked []Change
+	// Sources are the distinct lists of governing rows, Causes the distinct
+	// lists of differences (file and row) and Pieces the distinct ways in which
+	// declarations hold a change, that the changes refer to.
 	Sources [][]profile.Source
+	Causes  [][]Cause
+	Pieces  [][]scope.Piece
+	Files   []File // that differ, by path
+	Leaving []Leaving
+	Fleet   []Fleet
+	Figures Figures
 
 	sources sourceTable
+	causes  causeTable
+	pieces  map[string]int
 }
 
 // TrackChange is a chainage or a direction of travel that only one revision
@@ -77,6 +99,7 @@ type TrackChange struct {
 	Direction codes.Direction
 	Fate      Fate          // Added or Removed
 	From, To  unit.Distance // running distance: on the target's track if added, on the base's if removed
+	Pieces    int           // index in Route.Pieces
 }
 
 // Change is a maximal stretch over which the speed before, the speed after and
@@ -90,6 +113,8 @@ type Change struct {
 	RunOut bool
 	// Indices in Route.Sources of the rows that govern before and after.
 	BeforeSources, AfterSources int
+	Causes                      int // index in Route.Causes
+	Pieces                      int // index in Route.Pieces
 }
 
 // Length is the running distance of the change.

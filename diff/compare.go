@@ -11,25 +11,61 @@ import (
 	"golang.org/x/sync/errgroup"
 
 	"speedtrail/schema"
+	"speedtrail/schema/source"
 )
 
 // Options of a comparison. The zero Options are those of a plain one.
 type Options struct {
+	// Requests names the change requests in play; none: those that were added or
+	// altered. NoRequests leaves the reconciliation out.
+	Requests   []string
+	NoRequests bool
+	// Unread gives a route of the target that LoadPair left unread, with its
+	// track, or nil where there is none of that id. It is asked for routes that
+	// a request in play declares.
+	Unread func(id string) (*schema.Route, error)
+	// Rolling: running times begin and end at the speed of the profile.
+	Rolling bool
+	// NoFleet and NoFigures leave out what they name, to measure its cost.
+	NoFleet, NoFigures bool
 	// Progress, if given, is called after each route; calls do not overlap.
 	Progress func(done, total int)
 }
 
+// An UnknownRequestError names a request that the target does not have.
+type UnknownRequestError struct{ ID string }
+
+// Error names the request.
+func (e *UnknownRequestError) Error() string {
+	return "the target has no change request " + source.Quote(e.ID)
+}
+
 // Compare works out what differs between two revisions of a data set. Routes
 // that were left unread on both sides, because their files are the same, are
-// counted only. The error is that of the context.
+// counted only. The error is an *UnknownRequestError, a *source.Faults for
+// requests that name what does not exist, or that of the context.
 func Compare(ctx context.Context, base, target *schema.Dataset, o Options) (*Account, error) {
 	a := &Account{
-		Trains:   pairTrains(base.Trains, target.Trains),
-		Routes:   pairRoutes(base.Routes, target.Routes),
-		Equal:    len(target.Unread),
-		Requests: RequestsInPlay(base, target),
+		Trains: pairTrains(base.Trains, target.Trains),
+		Routes: pairRoutes(base.Routes, target.Routes),
+		Equal:  len(target.Unread),
 	}
-	if err := a.compareRoutes(ctx, o.Progress); err != nil {
+	if !o.NoRequests {
+		requests, err := requestsInPlay(base, target, o.Requests)
+		if err != nil {
+			return nil, err
+		}
+		a.Requests = requests
+	}
+	a.Frame = pairFiles(a.Routes, base.Files, target.Files)
+	for i := range a.Frame {
+		a.Frame[i].account(nil, nil)
+	}
+	explainFrame(a.Frame)
+	if err := a.compareRoutes(ctx, &o); err != nil {
+		return nil, err
+	}
+	if err := a.reconcile(&o); err != nil {
 		return nil, err
 	}
 	a.describeStretches()
@@ -39,7 +75,7 @@ func Compare(ctx context.Context, base, target *schema.Dataset, o Options) (*Acc
 // compareRoutes compares the routes side by side, one a processor at a time.
 // Each fills in its own place, so that the result does not depend on which is
 // done first.
-func (a *Account) compareRoutes(ctx context.Context, progress func(done, total int)) error {
+func (a *Account) compareRoutes(ctx context.Context, o *Options) error {
 	work, ctx := errgroup.WithContext(ctx)
 	work.SetLimit(runtime.GOMAXPROCS(0))
 	var lock sync.Mutex
@@ -49,12 +85,12 @@ func (a *Account) compareRoutes(ctx context.Context, progress func(done, total i
 			if err := ctx.Err(); err != nil {
 				return err
 			}
-			compareRoute(&a.Routes[i], a.Trains)
-			if progress != nil {
+			compareRoute(&a.Routes[i], a.Trains, o)
+			if o.Progress != nil {
 				lock.Lock()
 				defer lock.Unlock()
 				done++
-				progress(done, len(a.Routes))
+				o.Progress(done, len(a.Routes))
 			}
 			return nil
 		})

@@ -2,6 +2,7 @@ package diff
 
 import (
 	"reflect"
+	"slices"
 
 	"speedtrail/schema"
 	"speedtrail/schema/source"
@@ -22,6 +23,23 @@ func RequestsInPlay(base, target *schema.Dataset) []schema.ChangeRequest {
 		}
 	}
 	return list
+}
+
+// requestsInPlay gives the requests that were named, by id, or those that were
+// added or altered.
+func requestsInPlay(base, target *schema.Dataset, names []string) ([]schema.ChangeRequest, error) {
+	if len(names) == 0 {
+		return RequestsInPlay(base, target), nil
+	}
+	var list []schema.ChangeRequest
+	for _, id := range slices.Compact(slices.Sorted(slices.Values(names))) {
+		i := slices.IndexFunc(target.Requests, func(q schema.ChangeRequest) bool { return q.ID == id })
+		if i < 0 {
+			return nil, &UnknownRequestError{id}
+		}
+		list = append(list, target.Requests[i])
+	}
+	return list, nil
 }
 
 // unplaced gives a request without the places of its parts.

@@ -4,48 +4,76 @@ import (
 	"cmp"
 	"encoding/binary"
 	"slices"
-	"strconv"
 
 	"speedtrail/diff/align"
 	"speedtrail/diff/delta"
 	"speedtrail/diff/profile"
+	"speedtrail/diff/step"
+	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
 
 // compareRoute fills in what differs on one route.
-func compareRoute(r *Route, trains []Train) {
+func compareRoute(r *Route, trains []Train, o *Options) {
+	var base, target *chainage.Track
+	if r.Base != nil {
+		base = r.Base.Track
+	}
+	if r.Target != nil {
+		target = r.Target.Track
+	}
+	for i := range r.Files {
+		r.Files[i].account(base, target)
+	}
+	r.sources = sourceTable{route: r, seen: map[string]int{}}
+	r.causes = newCauseTable(r)
+	r.pieces = map[string]int{}
 	switch {
 	case r.Base == nil:
 		r.wholeTrack(Added)
-		return
 	case r.Target == nil:
 		r.wholeTrack(Removed)
-		return
+	default:
+		compareTracks(r, trains, o)
+		r.Leaving = r.leaving(trains)
 	}
+	r.explain(trains)
+}
+
+// compareTracks compares a route that both revisions have.
+func compareTracks(r *Route, trains []Train, o *Options) {
 	tracks := align.Tracks(r.Base.Track, r.Target.Track)
-	r.sources = sourceTable{route: r, seen: map[string]int{}}
 	for _, d := range codes.AllDirections {
 		inBase, inTarget := r.Base.Directions.Has(d), r.Target.Directions.Has(d)
 		switch {
 		case inBase && inTarget:
 			for _, i := range tracks.Removed {
-				r.Track = append(r.Track, TrackChange{d, Removed, i.From, i.To})
+				r.Track = append(r.Track, TrackChange{d, Removed, i.From, i.To, 0})
 			}
 			for _, i := range tracks.Added {
-				r.Track = append(r.Track, TrackChange{d, Added, i.From, i.To})
+				r.Track = append(r.Track, TrackChange{d, Added, i.From, i.To, 0})
 			}
-			compareDirection(r, d, tracks.Common, trains)
+			p := newPair(r, d, tracks.Common)
+			p.compare(trains)
+			if !o.NoFleet {
+				r.Fleet = append(r.Fleet, p.fleet(trains)...)
+			}
+			if !o.NoFigures {
+				p.figures(trains, o.Rolling)
+			}
 		case inBase:
-			r.Track = append(r.Track, TrackChange{d, Removed, 0, r.Base.Track.Length()})
+			r.Track = append(r.Track, TrackChange{d, Removed, 0, r.Base.Track.Length(), 0})
 		case inTarget:
-			r.Track = append(r.Track, TrackChange{d, Added, 0, r.Target.Track.Length()})
+			r.Track = append(r.Track, TrackChange{d, Added, 0, r.Target.Track.Length(), 0})
 		}
 	}
 	// Trains are sorted by id, so that their index is their order.
-	slices.SortFunc(r.Changes, func(a, b Change) int {
-		return cmp.Or(cmp.Compare(a.Direction, b.Direction), cmp.Compare(a.From, b.From), cmp.Compare(a.Train, b.Train))
-	})
+	for _, list := range [...][]Change{r.Changes, r.Masked} {
+		slices.SortFunc(list, func(a, b Change) int {
+			return cmp.Or(cmp.Compare(a.Direction, b.Direction), cmp.Compare(a.From, b.From), cmp.Compare(a.Train, b.Train))
+		})
+	}
 }
 
 // wholeTrack states a route that only one revision has.
@@ -56,41 +84,109 @@ func (r *Route) wholeTrack(f Fate) {
 	}
 	for _, d := range codes.AllDirections {
 		if route.Directions.Has(d) {
-			r.Track = append(r.Track, TrackChange{d, f, 0, route.Track.Length()})
+			r.Track = append(r.Track, TrackChange{d, f, 0, route.Track.Length(), 0})
 		}
 	}
 }
 
-// compareDirection compiles both sides for every train and appends the changes.
-func compareDirection(r *Route, d codes.Direction, cells []align.Cell, trains []Train) {
-	base := profile.New(r.Base, d, profile.All)
-	target := profile.New(r.Target, d, profile.All)
-	delayed := base.Delayed() || target.Delayed()
-	known := make(map[string][]delta.Delta)
+// pair is both sides of a route in one direction of travel.
+type pair struct {
+	route     *Route
+	direction codes.Direction
+	cells     []align.Cell
+	all       sides
+	permanent sides // without temporary restrictions; the same as all where there are none
+	temporary bool  // whether a side has temporary restrictions in this direction
+	seen      map[string]*sight
+	sights    []*sight // by train
+}
+
+// sides are the compilers of both sides.
+type sides struct{ base, target *profile.Compiler }
+
+// sight is what a train sees. Trains that no row tells apart share one.
+type sight struct {
+	before, after   step.Func
+	changes, masked []delta.Delta
+}
+
+func newPair(r *Route, d codes.Direction, cells []align.Cell) *pair {
+	p := &pair{route: r, direction: d, cells: cells, seen: map[string]*sight{}}
+	p.all = sides{profile.New(r.Base, d, profile.All), profile.New(r.Target, d, profile.All)}
+	p.permanent = p.all
+	for _, temporary := range [...]int{len(r.Base.Temporary), len(r.Target.Temporary)} {
+		p.temporary = p.temporary || temporary > 0
+	}
+	if p.temporary {
+		p.permanent = sides{profile.New(r.Base, d, profile.NoTemporary), profile.New(r.Target, d, profile.NoTemporary)}
+	}
+	return p
+}
+
+// compare compiles both sides for every train and appends the changes.
+func (p *pair) compare(trains []Train) {
+	r := p.route
+	p.sights = make([]*sight, len(trains))
+	delayed := p.all.base.Delayed() || p.all.target.Delayed()
 	var key []byte
 	for i, t := range trains {
 		class := profile.ClassOf(t.Train)
-		before, after := base.Select(class), target.Select(class)
+		before, after := p.all.base.Select(class), p.all.target.Select(class)
 		length := t.Length
 		if !delayed {
 			length = 0
 		}
 		// Trains that no row tells apart are compared once.
 		key = appendKey(key[:0], before, after, length, t.Max)
-		changes, ok := known[string(key)]
+		s, ok := p.seen[string(key)]
 		if !ok {
-			changes = compareTrain(base, target, before, after, t.Length, t.Max, cells)
-			known[string(key)] = changes
+			s = p.look(before, after, class, t.Length, t.Max)
+			p.seen[string(key)] = s
 		}
-		for _, c := range changes {
-			r.Changes = append(r.Changes, Change{
-				Direction: d, From: c.Target, To: c.Target + c.Length, Train: i,
-				Before: c.Before, After: c.After, RunOut: c.RunOut,
-				BeforeSources: r.sources.index(base, before, t, c.Base, c.Length, c.Before),
-				AfterSources:  r.sources.index(target, after, t, c.Target, c.Length, c.After),
-			})
+		p.sights[i] = s
+		for _, c := range s.changes {
+			r.Changes = append(r.Changes, p.change(p.all, before, after, i, t, c))
+		}
+		if len(s.masked) > 0 {
+			before, after := p.permanent.base.Select(class), p.permanent.target.Select(class)
+			for _, c := range s.masked {
+				r.Masked = append(r.Masked, p.change(p.permanent, before, after, i, t, c))
+			}
 		}
 	}
+}
+
+// look finds what a train sees.
+func (p *pair) look(before, after profile.Selection, class profile.Class, length unit.Distance, maximum unit.Speed) *sight {
+	s := &sight{}
+	s.before, s.after, s.changes = p.all.compare(before, after, length, maximum, p.cells)
+	if p.temporary {
+		_, _, permanent := p.permanent.compare(p.permanent.base.Select(class), p.permanent.target.Select(class), length, maximum, p.cells)
+		s.masked = hidden(permanent, s.changes)
+	}
+	return s
+}
+
+// compare finds the differences that one train sees.
+func (s sides) compare(before, after profile.Selection, length unit.Distance, maximum unit.Speed, cells []align.Cell) (b, a step.Func, found []delta.Delta) {
+	b, a = s.base.Sweep(before, length, maximum), s.target.Sweep(after, length, maximum)
+	if found = delta.Between(b, a, cells); len(found) > 0 {
+		found = delta.MarkRunOut(found, s.base.Sweep(before, 0, maximum), s.target.Sweep(after, 0, maximum))
+	}
+	return b, a, found
+}
+
+// change describes a difference.
+func (p *pair) change(s sides, before, after profile.Selection, train int, t Train, d delta.Delta) Change {
+	r := p.route
+	c := Change{
+		Direction: p.direction, From: d.Target, To: d.Target + d.Length, Train: train,
+		Before: d.Before, After: d.After, RunOut: d.RunOut,
+		BeforeSources: r.sources.index(s.base, before, t, d.Base, d.Length, d.Before),
+		AfterSources:  r.sources.index(s.target, after, t, d.Target, d.Length, d.After),
+	}
+	c.Causes = r.causes.of(&c, profile.ClassOf(t.Train))
+	return c
 }
 
 // appendKey writes what a profile depends on.
@@ -131,22 +227,4 @@ func (s *sourceTable) index(c *profile.Compiler, sel profile.Selection, t Train,
 	s.seen[string(key)] = i
 	s.route.Sources = append(s.route.Sources, list)
 	return i
-}
-
-// SourceText joins sources in the form that they have in results.
-func SourceText(sources []profile.Source) string {
-	var b []byte
-	for i, s := range sources {
-		if i > 0 {
-			b = append(b, "; "...)
-		}
-		b = append(b, s.Pos.File...)
-		b = append(b, ':')
-		b = strconv.AppendInt(b, int64(s.Pos.Line), 10)
-		b = append(b, ' ')
-		b = append(b, s.Kind...)
-		b = append(b, ' ')
-		b = strconv.AppendInt(b, int64(s.Value), 10)
-	}
-	return string(b)
 }

@@ -146,18 +146,18 @@ func readDiffering(ctx context.Context, sides [2]*loading, errs *[2]error) {
 	}
 }
 
-// UnreadID gives the id and name of a route whose folder was left unread. It
-// reads the folder's route.toml.
-func UnreadID(fsys fs.FS, f Folder) (id, name string, err error) {
+// UnreadRoute gives a route whose folder was left unread, with what its
+// route.toml says and without its tables.
+func UnreadRoute(fsys fs.FS, f Folder) (*Route, error) {
 	r := reader{fsys: fsys}
 	route := r.routeTOML(f.Path)
 	if r.err != nil {
-		return "", "", r.err
+		return nil, r.err
 	}
 	if route == nil {
-		return "", "", r.faults.Err()
+		return nil, r.faults.Err()
 	}
-	return route.ID, route.Name, nil
+	return route, nil
 }
 
 // loading is one data set while it is read.
@@ -299,11 +299,11 @@ func (l *loading) readUnreadIDs(ctx context.Context) error {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
-		id, _, err := UnreadID(l.fsys, f)
+		r, err := UnreadRoute(l.fsys, f)
 		if err != nil {
 			return err
 		}
-		l.unread[id] = f.Path
+		l.unread[r.ID] = f.Path
 	}
 	return nil
 }

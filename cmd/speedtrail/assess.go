@@ -2,8 +2,11 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"io"
+	"io/fs"
+	"slices"
 	"time"
 
 	"github.com/spf13/cobra"
@@ -13,10 +16,12 @@ import (
 	"speedtrail/history/assessment"
 	"speedtrail/history/revision"
 	"speedtrail/schema"
+	"speedtrail/schema/source"
 )
 
 func (a *app) assessCommand() *cobra.Command {
-	var noRecord bool
+	var noRecord, rolling bool
+	var requests []string
 	c := &cobra.Command{
 		Use:   "assess BASE [TARGET]",
 		Short: "compare two revisions: who is faster or slower, where, because of which row",
@@ -26,7 +31,11 @@ in the ledger and prints it.
 
 A revision is anything that Git resolves to a commit: a branch, a tag, a hash,
 HEAD~2. TARGET is the working tree (".") unless given: the files on disk, those
-that Git ignores left out. The working tree is never recorded.`,
+that Git ignores left out. The working tree is never recorded.
+
+Every change has to be declared by a change request (requests/*.toml): those
+that were added or altered between the revisions count, or those named with
+--request. "--request none" leaves that comparison out.`,
 		Example: `  speedtrail assess release-1 release-2
   speedtrail assess HEAD
   speedtrail assess --no-record --format csv main HEAD`,
@@ -36,21 +45,36 @@ that Git ignores left out. The working tree is never recorded.`,
 			if len(args) == 2 {
 				target = args[1]
 			}
-			return a.assess(c.Context(), args[0], target, !noRecord)
+			options := assessment.Options{Requests: []string{}, Rolling: rolling}
+			for _, id := range requests {
+				if id == "none" {
+					options.NoRequests = true
+					continue
+				}
+				options.Requests = append(options.Requests, id)
+			}
+			if options.NoRequests && len(options.Requests) > 0 {
+				return badCall("--request none stands alone", "--request none and another request are both given")
+			}
+			slices.Sort(options.Requests)
+			options.Requests = slices.Compact(options.Requests)
+			return a.assess(c.Context(), args[0], target, options, !noRecord)
 		},
 	}
 	a.outputFlags(c, "text", "html", "markdown", "csv", "json")
 	c.Flags().BoolVar(&noRecord, "no-record", false, "do not write to the ledger, for pipelines")
+	c.Flags().StringArrayVar(&requests, "request", nil, "the change request `ID` that declares the change (repeatable), or none")
+	c.Flags().BoolVar(&rolling, "rolling", false, "running times begin and end at speed, not at rest")
 	return c
 }
 
-func (a *app) assess(ctx context.Context, base, target string, record bool) error {
+func (a *app) assess(ctx context.Context, base, target string, options assessment.Options, record bool) error {
 	repo, err := a.openRepo()
 	if err != nil {
 		return err
 	}
 	defer repo.Close()
-	doc, err := a.compute(ctx, repo, base, target)
+	doc, err := a.compute(ctx, repo, base, target, options)
 	if err != nil {
 		return err
 	}
@@ -68,7 +92,7 @@ func (a *app) assess(ctx context.Context, base, target string, record bool) erro
 }
 
 // compute makes the document of two revisions.
-func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target string) (*assessment.Document, error) {
+func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target string, options assessment.Options) (*assessment.Document, error) {
 	folder, err := a.folder()
 	if err != nil {
 		return nil, err
@@ -85,27 +109,78 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 	if err != nil {
 		return nil, inSides(err, from, to)
 	}
-	account, err := diff.Compare(ctx, before, after, diff.Options{Progress: a.progress("comparing routes")})
-	if err != nil {
+	account, err := diff.Compare(ctx, before, after, diff.Options{
+		Requests: options.Requests, NoRequests: options.NoRequests, Rolling: options.Rolling,
+		Unread: unread(to.files, after.Unread), Progress: a.progress("comparing routes"),
+	})
+	var unknown *diff.UnknownRequestError
+	var faults *source.Faults
+	switch {
+	case errors.As(err, &unknown):
+		return nil, badCall("the requests of a revision stand in its folder requests/", "%v", err)
+	case errors.As(err, &faults):
+		return nil, &sideError{to.label(), err}
+	case err != nil:
 		return nil, err
 	}
 	in := assessment.Input{
 		Base: before, Target: after, Account: account, Folder: folder,
 		BaseRev: from.revisionOf(), TargetRev: to.revisionOf(),
 		Named:     assessment.Named{Base: validText(from.typed), BaseName: validText(from.name), Target: validText(to.typed), TargetName: validText(to.name)},
-		Preparers: []assessment.Person{}, Findings: []assessment.Finding{},
-		Options: assessment.Options{Requests: []string{}},
+		Preparers: []assessment.Person{}, Options: options, At: time.Now(), BaseIsAncestor: true,
 	}
-	if !from.isWorkingTree() && !to.isWorkingTree() {
-		commits, _, err := repo.Between(ctx, from.commit.Hash, to.commit.Hash)
-		if err != nil {
-			return nil, err
-		}
-		for _, p := range repo.Preparers(commits) {
-			in.Preparers = append(in.Preparers, assessment.Person{Name: validText(p.Name), Email: validText(p.Email)})
-		}
+	if !to.isWorkingTree() {
+		in.At = to.commit.Committer.When
+	}
+	if err := a.descent(ctx, repo, from, to, &in); err != nil {
+		return nil, err
 	}
 	return assessment.Build(in), nil
+}
+
+// descent fills in what the history between the revisions says.
+func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, in *assessment.Input) (err error) {
+	if from.isWorkingTree() {
+		return nil
+	}
+	if to.isWorkingTree() {
+		head, err := repo.Resolve("HEAD")
+		if err != nil {
+			return err
+		}
+		in.BaseIsAncestor, err = repo.IsAncestor(ctx, from.commit.Hash, head.Hash)
+		return err
+	}
+	if in.BaseIsAncestor, err = repo.IsAncestor(ctx, from.commit.Hash, to.commit.Hash); err != nil {
+		return err
+	}
+	commits, _, err := repo.Between(ctx, from.commit.Hash, to.commit.Hash)
+	if err != nil {
+		return err
+	}
+	for _, p := range repo.Preparers(commits) {
+		in.Preparers = append(in.Preparers, assessment.Person{Name: validText(p.Name), Email: validText(p.Email)})
+	}
+	return nil
+}
+
+// unread finds routes among the folders that were left unread, all of which are
+// looked at when the first is asked for.
+func unread(files fs.FS, folders []schema.Folder) func(string) (*schema.Route, error) {
+	var byID map[string]*schema.Route
+	return func(id string) (*schema.Route, error) {
+		if byID == nil {
+			byID = map[string]*schema.Route{}
+			for _, f := range folders {
+				r, err := schema.UnreadRoute(files, f)
+				if err != nil {
+					return nil, err
+				}
+				byID[r.ID] = r
+			}
+		}
+		return byID[id], nil
+	}
 }
 
 // record writes a document to the ledger.

@@ -10,6 +10,7 @@ import (
 
 	"speedtrail/cmd/speedtrail/internal/demo"
 	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/history/assessment"
 	"speedtrail/history/compose"
 )
 
@@ -48,7 +49,7 @@ func (a *app) demo(ctx context.Context, dir string) error {
 		return err
 	}
 	defer repo.Close()
-	doc, err := a.compute(ctx, repo, network.Base, network.Target)
+	doc, err := a.compute(ctx, repo, network.Base, network.Target, assessment.Options{Requests: []string{}})
 	if err != nil {
 		return err
 	}

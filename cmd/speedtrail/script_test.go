@@ -29,13 +29,11 @@ func TestScripts(t *testing.T) {
 	testscript.Run(t, testscript.Params{
 		Dir: "../../testdata/scripts",
 		Setup: func(e *testscript.Env) error {
-			for _, v := range []string{
+			e.Vars = append(e.Vars,
 				"GIT_AUTHOR_NAME=Ada Lund", "GIT_AUTHOR_EMAIL=ada@example.example", "GIT_AUTHOR_DATE=2026-03-01T12:00:00Z",
 				"GIT_COMMITTER_NAME=Ada Lund", "GIT_COMMITTER_EMAIL=ada@example.example", "GIT_COMMITTER_DATE=2026-03-01T12:00:00Z",
-				"GIT_CONFIG_GLOBAL=" + os.DevNull, "GIT_CONFIG_NOSYSTEM=1", "HOME=" + e.WorkDir,
-			} {
-				e.Vars = append(e.Vars, v)
-			}
+				"GIT_CONFIG_GLOBAL="+os.DevNull, "GIT_CONFIG_NOSYSTEM=1", "HOME="+e.WorkDir,
+			)
 			return nil
 		},
 		Cmds: map[string]func(*testscript.TestScript, bool, []string){"status": status},

@@ -93,15 +93,7 @@ func (p *pair) distinguish() {
 		}
 		return groups
 	}
-	var static, axle []profile.Class
-	for c := range codes.CantDeficiency(codes.CantDeficiencies) {
-		for s := range codes.CategorySet(codes.CategorySets) {
-			static = append(static, profile.Class{Cant: c, Categories: s})
-		}
-	}
-	for a := range codes.AxleLoad(codes.AxleLoads) {
-		axle = append(axle, profile.Class{AxleLoad: a})
-	}
+	static, axle := classes()
 	axles := sort(axle)
 	for _, s := range sort(static) {
 		for _, a := range axles {

@@ -132,3 +132,20 @@ func cut(o *Observed, declared []Declared) []Piece {
 	}
 	return pieces
 }
+
+// Seen gives how much of an observed change a declaration holds: by its own
+// range, and as run-out past its far end.
+func Seen(o *Observed, d *Declared) (inside, runOut unit.Distance) {
+	if !d.allows(o) {
+		return 0, 0
+	}
+	inside = overlap(o, d.From, d.To)
+	if from, to, ok := d.runOut(o); ok {
+		runOut = overlap(o, from, to)
+	}
+	return inside, runOut
+}
+
+func overlap(o *Observed, from, to unit.Distance) unit.Distance {
+	return max(0, min(o.To, to)-max(o.From, from))
+}

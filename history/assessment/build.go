@@ -6,6 +6,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"time"
 
 	"speedtrail/diff"
 	"speedtrail/diff/profile"
@@ -24,37 +25,42 @@ type Input struct {
 	Folder       string // "." for the repository's root
 	Preparers    []Person
 	Options      Options
-	Findings     []Finding
+	// At is what validities are compared with: the target's committer date, for
+	// the working tree the present.
+	At time.Time
+	// BaseIsAncestor tells whether the target's history holds the base.
+	BaseIsAncestor bool
 }
 
 // Build makes the document. The same input gives the same document.
 func Build(in Input) *Document {
 	c := Computed{
+		At:           in.At.UTC().Format(time.RFC3339),
 		Base:         in.BaseRev,
 		Dataset:      in.Target.Name,
 		EqualRoutes:  in.Account.Equal,
 		Files:        files(in.Base.Files, in.Target.Files),
-		Findings:     in.Findings,
 		Folder:       in.Folder,
 		Options:      in.Options,
 		Preparers:    in.Preparers,
-		Requests:     []Request{},
+		Requests:     requests(in.Account),
 		Routes:       make([]Route, 0, len(in.Account.Routes)),
 		RulesVersion: diff.RulesVersion,
-		Source:       sourceFiles(in.Account, in.Base.Files, in.Target.Files),
 		Target:       in.TargetRev,
 		Trains:       trains(in.Account),
 	}
-	for _, q := range in.Account.Requests {
-		c.Requests = append(c.Requests, request(q))
-	}
+	var places [][]int
+	c.Source, places = sourceFiles(in.Account)
 	groups := make([][]int, len(in.Account.Routes))
 	for i := range in.Account.Routes {
 		var r Route
-		r, groups[i] = route(&in.Account.Routes[i])
+		r, groups[i] = route(&in.Account.Routes[i], places[i])
 		c.Routes = append(c.Routes, r)
 	}
 	c.Stretches = stretches(in.Account, groups)
+	c.Fleet = fleets(in.Account)
+	c.Figures = figures(in.Account)
+	c.Findings, c.Accepted = findings(&in, &c)
 	return &Document{Computed: c, Format: Format, Named: in.Named}
 }
 
@@ -91,9 +97,10 @@ func hash(content []byte) string {
 }
 
 // route writes what differs on a route; groups gives, for each change of the
-// account, the index of the document's change that it became part of.
-func route(r *diff.Route) (doc Route, groups []int) {
-	doc = Route{ID: r.ID, Fate: "kept", Changes: []Change{}, Sources: [][]Source{}, Track: []TrackPiece{}}
+// account, the index of the document's change that it became part of. places are
+// the indices in Computed.Source of the route's files.
+func route(r *diff.Route, places []int) (doc Route, groups []int) {
+	doc = Route{ID: r.ID, Fate: "kept", Changes: []Change{}, Masked: []Change{}, Sources: [][]Source{}, Track: []TrackPiece{}, Causes: [][]Cause{}}
 	switch {
 	case r.Base == nil:
 		doc.Fate, doc.Name, doc.Folder = "added", r.Target.Name, r.Target.Folder
@@ -113,38 +120,80 @@ func route(r *diff.Route) (doc Route, groups []int) {
 		shown = r.Base
 	}
 	doc.Start, doc.End = shown.Track.Begins(0).String(), shown.Track.Ends(shown.Track.Length()).String()
+	for _, list := range r.Sources {
+		doc.Sources = append(doc.Sources, Sources(list))
+	}
+	for _, list := range r.Causes {
+		causes := []Cause{}
+		for _, c := range list {
+			causes = append(causes, Cause{File: places[c.File], Row: c.Row})
+		}
+		doc.Causes = append(doc.Causes, causes)
+	}
+	doc.Pieces = pieces(r)
 	for _, t := range r.Track {
 		track := r.Target
 		if t.Fate == diff.Removed {
 			track = r.Base
 		}
 		doc.Track = append(doc.Track, TrackPiece{
-			Direction: t.Direction.String(), Fate: t.Fate.String(), Length: int64(t.To - t.From),
+			Direction: t.Direction.String(), Fate: t.Fate.String(), Length: int64(t.To - t.From), Pieces: t.Pieces,
 			From: track.Track.Begins(t.From).String(), To: track.Track.Ends(t.To).String(),
 		})
 	}
-	for _, list := range r.Sources {
-		doc.Sources = append(doc.Sources, Sources(list))
-	}
-	groups = make([]int, len(r.Changes))
+	doc.Changes, groups = changes(r, r.Changes)
+	doc.Masked, _ = changes(r, r.Masked)
+	return doc, groups
+}
+
+// changes joins the changes that differ only in the train.
+func changes(r *diff.Route, list []diff.Change) (out []Change, groups []int) {
+	out, groups = []Change{}, make([]int, len(list))
 	seen := map[diff.Change]int{}
-	for i, c := range r.Changes {
+	for i, c := range list {
 		key := c
 		key.Train = 0
 		at, ok := seen[key]
 		if !ok {
-			at = len(doc.Changes)
+			at = len(out)
 			seen[key] = at
-			doc.Changes = append(doc.Changes, Change{
+			out = append(out, Change{
 				Direction: c.Direction.String(), Start: int64(c.From), Length: int64(c.Length()), RunOut: c.RunOut,
 				From: r.Target.Track.Begins(c.From).String(), To: r.Target.Track.Ends(c.To).String(),
 				Before: int(c.Before), After: int(c.After), BeforeSource: c.BeforeSources, AfterSource: c.AfterSources,
+				Cause: c.Causes, Pieces: c.Pieces,
 			})
 		}
-		doc.Changes[at].Trains = append(doc.Changes[at].Trains, c.Train)
+		out[at].Trains = append(out[at].Trains, c.Train)
 		groups[i] = at
 	}
-	return doc, groups
+	return out, groups
+}
+
+// pieces writes how declarations hold the changes of a route. Pieces of removed
+// track stand on the base's track.
+func pieces(r *diff.Route) [][]Piece {
+	removed := map[int]bool{}
+	for _, t := range r.Track {
+		if t.Fate == diff.Removed && t.Pieces != 0 {
+			removed[t.Pieces] = true
+		}
+	}
+	out := make([][]Piece, len(r.Pieces))
+	for i, list := range r.Pieces {
+		side := r.Target
+		if side == nil || removed[i] {
+			side = r.Base
+		}
+		out[i] = []Piece{}
+		for _, p := range list {
+			out[i] = append(out[i], Piece{
+				By: p.By, RunOut: p.RunOut, Start: int64(p.From), Length: int64(p.To - p.From),
+				From: side.Track.Begins(p.From).String(), To: side.Track.Ends(p.To).String(),
+			})
+		}
+	}
+	return out
 }
 
 // Sources writes governing rows.
@@ -160,7 +209,7 @@ func Sources(list []profile.Source) []Source {
 func trains(a *diff.Account) []Train {
 	list := make([]Train, len(a.Trains))
 	for i, t := range a.Trains {
-		list[i] = Train{ID: t.ID, Fate: t.Fate.String(), Routes: []string{}}
+		list[i] = Train{ID: t.ID, Fate: t.Fate.String(), Declared: t.Declared, Routes: []string{}}
 		now := definition(t.Train)
 		switch t.Fate {
 		case diff.Added:
@@ -210,21 +259,6 @@ func thousandths(n int) string {
 		return ""
 	}
 	return unit.Distance(n).M()
-}
-
-func request(q schema.ChangeRequest) Request {
-	out := Request{ID: q.ID, Title: q.Title, Reason: q.Reason, File: q.Pos.File, Declares: []Declaration{}}
-	for _, d := range q.Declare {
-		trains := slices.Clone(d.Trains)
-		if trains == nil {
-			trains = []string{}
-		}
-		out.Declares = append(out.Declares, Declaration{
-			Line: d.Pos.Line, Route: d.Route, Direction: d.Span.Directions.String(), Effect: d.Effect.String(),
-			From: d.Span.From.String(), To: d.Span.To.String(), Trains: trains,
-		})
-	}
-	return out
 }
 
 // Text writes a source as "path:line kind value".

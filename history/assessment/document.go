@@ -37,11 +37,15 @@ type Named struct {
 
 // Computed is all that the digest covers.
 type Computed struct {
+	Accepted     []Acceptance `json:"accepted"` // the entries of the target's accepted.toml
+	At           string       `json:"at"`       // the time that validities are compared with, RFC 3339
 	Base         Revision     `json:"base"`
 	Dataset      string       `json:"dataset"`      // the target's name of the data set
 	EqualRoutes  int          `json:"equal_routes"` // routes whose files are the same
+	Figures      Figures      `json:"figures"`
 	Files        []File       `json:"files"`
-	Findings     []Finding    `json:"findings"`
+	Findings     []Finding    `json:"findings"` // in the order in which to look at them
+	Fleet        []Fleet      `json:"fleet"`
 	Folder       string       `json:"folder"` // the data set's folder in the repository, "." for its root
 	Options      Options      `json:"options"`
 	Preparers    []Person     `json:"preparers"`
@@ -70,7 +74,9 @@ type Person struct {
 
 // Options are the options that can change a result.
 type Options struct {
-	Requests []string `json:"requests"` // ids given with --request; empty: those added or altered
+	NoRequests bool     `json:"no_requests"` // the reconciliation was left out
+	Requests   []string `json:"requests"`    // ids given with --request; empty: those added or altered
+	Rolling    bool     `json:"rolling"`     // running times begin and end at speed
 }
 
 // File is a file that was read on at least one side, with the SHA-256 of its
@@ -85,14 +91,31 @@ type File struct {
 type Finding struct {
 	Accepted  string `json:"accepted"` // reason, where accepted.toml of the base accepts it
 	Direction string `json:"direction"`
-	Do        string `json:"do"` // what to do
+	Do        string `json:"do"`      // what to do
+	Example   string `json:"example"` // lines for a file of the data set, where they help
 	From      string `json:"from_km"`
 	ID        string `json:"id"`
-	Row       string `json:"row"` // path:line, where one row is meant
 	Route     string `json:"route"`
-	Text      string `json:"text"` // what, with its place
+	Row       string `json:"row"`  // path:line of the row or rows behind it
+	Text      string `json:"text"` // what, without the place
 	To        string `json:"to_km"`
 	Why       string `json:"why"` // why it matters
+}
+
+// Acceptance is an entry of accepted.toml.
+type Acceptance struct {
+	Covers  int    `json:"covers"` // how many findings
+	Finding string `json:"finding"`
+	From    string `json:"from_km"`
+	Line    int    `json:"line"`
+	Reason  string `json:"reason"`
+	Route   string `json:"route"`
+	// State tells whether it counts: used; unused; new (it does not stand
+	// unaltered in the base); over (past its last day); never (such a finding
+	// cannot be accepted); unread (its route is the same in both revisions).
+	State string `json:"state" jsonschema:"enum=used,enum=unused,enum=new,enum=over,enum=never,enum=unread"`
+	To    string `json:"to_km"`
+	Until string `json:"until"`
 }
 
 // Request is a change request in play.
@@ -104,27 +127,41 @@ type Request struct {
 	Title    string        `json:"title"`
 }
 
-// Declaration is one stretch that a request declares.
+// Declaration is one stretch that a request declares, and what of it was seen.
 type Declaration struct {
 	Direction string   `json:"direction" jsonschema:"enum=nominal,enum=reverse,enum=both"`
 	Effect    string   `json:"effect" jsonschema:"enum=raise,enum=lower,enum=any"`
 	From      string   `json:"from_km"`
 	Line      int      `json:"line"`
 	Route     string   `json:"route"`
+	Seen      []Seen   `json:"seen"`
 	To        string   `json:"to_km"`
-	Trains    []string `json:"trains"` // empty: every train
+	Track     int64    `json:"track_mm"` // added and removed track that it holds
+	Trains    []string `json:"trains"`   // empty: every train
+	Unseen    bool     `json:"unseen"`   // nothing of it was observed
+}
+
+// Seen is how much a train was seen to change inside a declaration, over both
+// directions of travel.
+type Seen struct {
+	Inside int64  `json:"inside_mm"`
+	RunOut int64  `json:"run_out_mm"` // past the far end, inside as run-out
+	Train  string `json:"train"`
 }
 
 // Route is what differs on one route.
 type Route struct {
+	Causes       [][]Cause    `json:"causes"`
 	Changes      []Change     `json:"changes"`
 	End          string       `json:"end_km"`
 	Fate         string       `json:"fate" jsonschema:"enum=kept,enum=added,enum=removed"` // kept, added, removed
 	Folder       string       `json:"folder"`
 	FolderBefore string       `json:"folder_before"` // where it differs, else empty
 	ID           string       `json:"id"`
+	Masked       []Change     `json:"masked"` // hidden today by temporary restrictions
 	Name         string       `json:"name"`
 	NameBefore   string       `json:"name_before"` // where it differs, else empty
+	Pieces       [][]Piece    `json:"pieces"`
 	Sources      [][]Source   `json:"sources"`
 	Start        string       `json:"start_km"`
 	Track        []TrackPiece `json:"track"`
@@ -136,13 +173,33 @@ type Change struct {
 	AfterSource  int    `json:"after_source"` // index in Route.Sources
 	Before       int    `json:"before_kmh"`
 	BeforeSource int    `json:"before_source"`
+	Cause        int    `json:"cause"` // index in Route.Causes
 	Direction    string `json:"direction" jsonschema:"enum=nominal,enum=reverse"`
 	From         string `json:"from_km"`
 	Length       int64  `json:"length_mm"`
+	Pieces       int    `json:"pieces"` // index in Route.Pieces
 	RunOut       bool   `json:"run_out"`
 	Start        int64  `json:"start_mm"` // running distance of From
 	To           string `json:"to_km"`
 	Trains       []int  `json:"trains"` // indices in Computed.Trains, ascending
+}
+
+// Cause is a difference of the source that a change comes of.
+type Cause struct {
+	File int `json:"file"` // index in Computed.Source
+	Row  int `json:"row"`  // index in SourceFile.Rows
+}
+
+// Piece is a part of a change, or of track that only one side has, and the
+// declaration that holds it. A change with an empty list of pieces is outside
+// all declarations.
+type Piece struct {
+	By     int    `json:"by"` // declaration, counted over all requests from 0; -1: none
+	From   string `json:"from_km"`
+	Length int64  `json:"length_mm"`
+	RunOut bool   `json:"run_out"` // inside only as run-out past the far end
+	Start  int64  `json:"start_mm"`
+	To     string `json:"to_km"`
 }
 
 // Source is a row that governs a speed.
@@ -159,6 +216,7 @@ type TrackPiece struct {
 	Fate      string `json:"fate" jsonschema:"enum=added,enum=removed"` // added or removed
 	From      string `json:"from_km"`
 	Length    int64  `json:"length_mm"`
+	Pieces    int    `json:"pieces"` // index in Route.Pieces
 	To        string `json:"to_km"`
 }
 
@@ -167,6 +225,7 @@ type TrackPiece struct {
 type Train struct {
 	After            *Definition `json:"after" jsonschema:"nullable"`                                      // null where the target has no such train
 	Before           *Definition `json:"before" jsonschema:"nullable"`                                     // null where the base has no such train
+	Declared         bool        `json:"declared"`                                                         // of one that is not kept: a request in play declares it
 	Fate             string      `json:"fate" jsonschema:"enum=kept,enum=added,enum=removed,enum=altered"` // kept, added, removed, altered
 	ID               string      `json:"id"`
 	LargestRaise     int         `json:"largest_raise_kmh"`
@@ -234,26 +293,4 @@ type Segment struct {
 	Chainage int64 `json:"chainage_mm"` // at From
 	From     int64 `json:"from_mm"`
 	To       int64 `json:"to_mm"`
-}
-
-// SourceFile is a file that differs, line by line.
-type SourceFile struct {
-	Base   string `json:"base"`  // path, empty: the file is new
-	Hunks  []Hunk `json:"hunks"` // empty where only Note says what differs
-	Note   string `json:"note"`  // for example that only line ends differ
-	Target string `json:"target"`
-}
-
-// Hunk is a run of lines around differences.
-type Hunk struct {
-	BaseLine   int    `json:"base_line"` // number of its first line, from 1
-	Lines      []Line `json:"lines"`
-	TargetLine int    `json:"target_line"`
-}
-
-// Line is a line of a hunk: Op is "=" for one that both have, "-" and "+" for
-// one that only the base or the target has.
-type Line struct {
-	Op   string `json:"op" jsonschema:"enum==,enum=-,enum=+"`
-	Text string `json:"text"`
 }

@@ -128,10 +128,13 @@ func insertChanges(ctx context.Context, conn *sqlite3.SQLiteConn, number int64, 
 		return err
 	}
 	defer whole.Close()
-	values := make([]driver.Value, 0, batch*changeColumns)
+	values := make([]driver.NamedValue, 0, batch*changeColumns)
 	place := int64(0)
+	// Each batch is short, and ctx is looked at between them: the driver need not
+	// watch it, which would cost a goroutine a batch.
+	unwatched := context.WithoutCancel(ctx)
 	flush := func(s driver.Stmt) error {
-		_, err := s.Exec(values)
+		_, err := s.(driver.StmtExecContext).ExecContext(unwatched, values)
 		values = values[:0]
 		return err
 	}
@@ -141,8 +144,10 @@ func insertChanges(ctx context.Context, conn *sqlite3.SQLiteConn, number int64, 
 		if c.RunOut {
 			runOut = 1
 		}
-		values = append(values, number, place, c.Route, c.Direction, c.Train, c.From, c.To, c.LengthMM,
-			int64(c.Before), int64(c.After), runOut, c.BeforeSource, c.AfterSource)
+		for _, v := range [...]driver.Value{number, place, c.Route, c.Direction, c.Train, c.From, c.To, c.LengthMM,
+			int64(c.Before), int64(c.After), runOut, c.BeforeSource, c.AfterSource} {
+			values = append(values, driver.NamedValue{Ordinal: len(values) + 1, Value: v})
+		}
 		if len(values) == cap(values) {
 			if err := ctx.Err(); err != nil {
 				return err

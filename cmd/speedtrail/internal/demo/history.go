@@ -59,7 +59,7 @@ var steps = []step{
 	{branch: "main", who: marsh, when: "2025-05-19T07:50", text: "BW1: points at Doubledean renewed, TSR-12 lifted",
 		edits: []edit{{file: "routes/bw1/temporary.csv", old: "TSR-12,41.050#2,41.200#2,40,2025-03-24,2025-05-16,points renewal\n", now: ""}}},
 	{branch: "main", who: okello, when: "2025-06-02T12:00", text: "Limits for doubtful data", tag: "release-2025.2",
-		edits: []edit{{file: "dataset.toml", old: "time_zone = \"UTC\"\n", now: "time_zone = \"UTC\"\n\n[limits]\ncant_excess_mm = 110\nlargest_step_kmh = 140\nshortest_stretch_m = 100\n"}}},
+		edits: []edit{{file: "dataset.toml", old: "time_zone = \"UTC\"\n", now: "time_zone = \"UTC\"\n\n[limits]\ncant_excess_mm = 110\nlargest_step_kmh = 130\nshortest_stretch_m = 120\n"}}},
 	{branch: "railcar", who: quist, when: "2025-06-16T09:15", text: "Add the light railcar to the reference trains\n\nCo-authored-by: Ana Deverel <a.deverel@brackwater.example>",
 		edits: []edit{{file: "trains.toml", old: "[[train]]\nid = \"MAIL\"", now: "[[train]]\nid = \"CAR\"\nname = \"Light railcar\"\ncant_deficiency_mm = 130\ncategories = [\"passenger\"]\naxle_load = \"A\"\nlength_m = 25\nmax_speed_kmh = 120\nacceleration_ms2 = 0.70\nbraking_ms2 = 0.90\n\n[[train]]\nid = \"MAIL\""}}},
 	{branch: "saddle", who: deverel, when: "2025-06-24T16:30", text: "BW1: realignment at Saddle Junction\n\nThe new alignment is 450 m shorter: the posts from 18.200 to 18.650 are gone.",
@@ -86,15 +86,15 @@ var steps = []step{
 	{branch: "main", merge: "larch", who: okello, when: "2025-10-07T10:40", text: "Merge the recanting of Larch Hill"},
 	{branch: "main", who: marsh, when: "2025-10-13T08:00", text: "BW1: formation at 14.2 rebuilt, TSR-11 lifted",
 		edits: []edit{{file: "routes/bw1/temporary.csv", old: "TSR-11,14.200,14.600,60,2025-03-10,2025-09-30,formation wet bed\n", now: ""}}},
-	{branch: "main", who: okello, when: "2025-11-10T13:00", text: "Accept the step at the Fennhythe terminus", tag: "release-2025.4",
-		edits: []edit{{file: "accepted.toml", now: "# Findings that were looked at.\n\n[[accepted]]\nfinding = \"step-size\"\nroute = \"BW2\"\nfrom_km = 44.0\nto_km = 44.2\nreason = \"Terminus throat behind a long straight, design note BN-090\"\n"}}},
+	{branch: "main", who: okello, when: "2025-11-10T13:00", text: "Accept the steps at the two termini", tag: "release-2025.4",
+		edits: []edit{{file: "accepted.toml", now: "# Findings that were looked at.\n\n[[accepted]]\nfinding = \"step-size\"\nroute = \"BW2\"\nfrom_km = 44.0\nto_km = 44.2\nreason = \"Terminus throat behind a long straight, design note BN-090\"\n\n[[accepted]]\nfinding = \"step-size\"\nroute = \"BW1\"\nfrom_km = 58.8\nto_km = 59.0\nreason = \"Terminus throat, design note BN-091\"\n"}}},
 
 	// From here on: the last release.
 	{branch: "priors", who: deverel, when: "2025-12-01T09:30", text: "BW1: recanting of Priors Wood curve, 100 to 140 mm",
 		edits: []edit{
 			{file: "routes/bw1/curves.csv", old: "33.000,34.500,450,100,left", now: "33.000,34.500,450,140,left"},
 			{file: "routes/bw1/speed.csv", old: "33.000,34.500,80,90,95,100,115,70,\"Priors Wood curve, R 450 m, cant 100 mm\"", now: "33.000,34.500,90,100,105,105,125,70,\"Priors Wood curve, R 450 m, cant 140 mm\""},
-			{file: "requests/CR-2601.toml", now: request("CR-2601", "Raise speeds through Priors Wood curve", "Recanted to 140 mm, design note BN-144", declare("BW1", 33.0, 34.5, "raise", ""))},
+			{file: "requests/CR-2601.toml", now: request("CR-2601", "Raise speeds through Priors Wood curve", "Recanted to 140 mm, design note BN-144", declare("BW1", 33.0, 34.5, "raise", ""), declare("BW1", 22.4, 25.1, "raise", ""))},
 		}},
 	{branch: "sallow", who: quist, when: "2025-12-09T15:10", text: "BW2: Sallow sidings and the embankment\n\nCo-authored-by: Tobin Marsh <t.marsh@brackwater.example>",
 		edits: []edit{

@@ -31,7 +31,7 @@ var pageJS string
 
 var pageTemplate = template.Must(template.New("page").Funcs(template.FuncMap{
 	"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
-	"lengthCell": lengthCell, "stepCell": stepCell,
+	"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords,
 }).Parse(pageText))
 
 // page is what the template shows.
@@ -58,6 +58,22 @@ type page struct {
 	Trains    []string
 	Track     []pageTrack
 	Altered   []pageTrain
+	Times     map[string]string
+
+	Findings       []pageFindings
+	Acceptances    []string
+	Reconciliation string
+	Declared       []pageDeclaration
+	Fleet          []pageFleet
+	Runs           []pageRun
+	Crossings      []pageLineItem
+	Curves         []pageLineItem
+	Short          []pageLineItem
+
+	Motion, CrossingWords, CurveWords string
+
+	Rows, Quiet         []pageSourceRow
+	RowsLeft, QuietLeft int
 }
 
 type pageStretch struct {
@@ -74,6 +90,8 @@ type pageRow struct {
 	Before, After    int
 	Step             string
 	Raised, RunOut   bool
+	Declared         string
+	Outside          bool
 	Because          []string
 }
 
@@ -106,7 +124,13 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	}
 	p.CSS = template.CSS(strings.Replace(pageCSS, "HEADER", header, 1))
 	p.Policy = "default-src 'none'; style-src '" + inlineHash(string(p.CSS)) + "'; script-src '" + inlineHash(pageJS) + "'"
+	p.Times = runningTimes(c)
+	p.fillFindings()
 	p.fillStretches()
+	p.fillDeclared()
+	p.fillFleet()
+	p.fillFigures()
+	p.fillRows()
 	p.fillSource()
 	for _, t := range c.Trains {
 		p.Trains = append(p.Trains, t.ID)
@@ -135,7 +159,9 @@ func (p *page) fillStretches() {
 	for range p.C.Rows() {
 		p.AllRows++
 	}
-	for i, g := range groups(p.C) {
+	list := groups(p.C)
+	inReviewOrder(p.C, list)
+	for i, g := range list {
 		if p.ShownRows >= mostHTMLRows {
 			p.LeftOut++
 			continue
@@ -158,6 +184,7 @@ func (p *page) fillStretches() {
 			row := pageRow{
 				From: minus(x.From), To: minus(x.To), Length: metres(x.Length), Before: x.Before, After: x.After,
 				Step: signed(x.After - x.Before), Raised: x.After > x.Before, RunOut: x.RunOut, Trains: trainNames(p.C, g.trainsOf(x), 0),
+				Declared: declaredWords(p.C, r, x.Pieces), Outside: isOutside(p.C, r, x.Pieces),
 			}
 			for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
 				row.Because = append(row.Because, source.Visible(line))

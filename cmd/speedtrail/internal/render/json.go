@@ -1,8 +1,10 @@
 package render
 
 import (
-	"encoding/json"
 	"io"
+
+	"github.com/go-json-experiment/json"
+	"github.com/go-json-experiment/json/jsontext"
 
 	"speedtrail/history/assessment"
 )
@@ -45,9 +47,11 @@ func ProfileJSON(w io.Writer, list ...Profile) error {
 	return indented(w, profiles{Caution, profileJSONFormat, list})
 }
 
+// indented writes a value for people; a list without elements is an empty array.
 func indented(w io.Writer, v any) error {
-	e := json.NewEncoder(w)
-	e.SetEscapeHTML(false)
-	e.SetIndent("", "  ")
-	return e.Encode(v)
+	if err := json.MarshalWrite(w, v, json.Deterministic(true), jsontext.WithIndent("  ")); err != nil {
+		return err
+	}
+	_, err := io.WriteString(w, "\n")
+	return err
 }

@@ -46,23 +46,34 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 		add("| digest | %s |\n", r.Digest)
 	}
 	add("\n## Verdict\n\n%s\n", md(Verdict(d)))
-	if len(c.Findings) > 0 {
-		add("\n## Findings\n\n")
-		for _, f := range c.Findings {
-			then := "To do: " + f.Do
-			if f.Accepted != "" {
-				then = "Accepted: " + f.Accepted
+	if groups := findingGroups(c); len(groups) > 0 {
+		add("\n## Findings\n")
+		for _, g := range groups {
+			add("\n**%s**: %s %s\n\n", md(g.title()), md(g.Why), md(g.Do))
+			for i, f := range g.List {
+				if i == mostHTMLFindings {
+					add("- and %d more\n", len(g.List)-i)
+					break
+				}
+				add("- %s", md(joinPlace(findingPlace(f), f.Text)))
+				if f.Row != "" {
+					add(" (%s)", md(f.Row))
+				}
+				if f.Accepted != "" {
+					add(" Accepted: %s", md(f.Accepted))
+				}
+				add("\n")
 			}
-			add("- **%s** %s %s %s\n", md(f.ID), md(f.Text), md(f.Why), md(then))
 		}
 	}
-	add("\n## Trains\n\n| train | raised, km | lowered, km | largest raise, km/h | largest reduction, km/h | routes |\n|---|--:|--:|--:|--:|---|\n")
+	add("\n## Trains\n\n| train | raised, km | lowered, km | largest raise, km/h | largest reduction, km/h | running time, s | routes |\n|---|--:|--:|--:|--:|--:|---|\n")
+	times := runningTimes(c)
 	for _, t := range c.Trains {
 		if len(t.Routes) == 0 {
-			add("| %s | | | | | no change |\n", md(t.ID))
+			add("| %s | | | | | | no change |\n", md(t.ID))
 			continue
 		}
-		add("| %s | %s | %s | %s | %s | %s |\n", md(t.ID), lengthCell(t.Raised), lengthCell(t.Lowered), stepCell(t.LargestRaise), stepCell(-t.LargestReduction), md(strings.Join(t.Routes, ", ")))
+		add("| %s | %s | %s | %s | %s | %s | %s |\n", md(t.ID), lengthCell(t.Raised), lengthCell(t.Lowered), stepCell(t.LargestRaise), stepCell(-t.LargestReduction), times[t.ID], md(strings.Join(t.Routes, ", ")))
 	}
 	shown, all := 0, 0
 	for i := range c.Routes {
@@ -83,14 +94,91 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 			if x.RunOut {
 				step += " run-out"
 			}
-			add("| %s | %s | %s | %d | %d | %s | %s | %s | %s |\n", minus(x.From), minus(x.To), metres(x.Length), x.Before, x.After, step,
-				md(trainNames(c, x.Trains, 0)), md(assessment.SourceText(route.Sources[x.BeforeSource])), md(assessment.SourceText(route.Sources[x.AfterSource])))
+			add("| %s | %s | %s | %d | %d | %s | %s | %s | %s | %s |\n", minus(x.From), minus(x.To), metres(x.Length), x.Before, x.After, step,
+				md(trainNames(c, x.Trains, 0)), md(assessment.SourceText(route.Sources[x.BeforeSource])), md(assessment.SourceText(route.Sources[x.AfterSource])), md(declaredWords(c, route, x.Pieces)))
 		}
 	}
 	if all > shown {
 		add("\n%d more changes are not shown here.\n", all-shown)
 	}
+	markdownAccount(&b, c)
 	add("\n## Caution\n\n%s\n", Caution)
 	_, err := io.WriteString(w, b.String())
 	return err
+}
+
+// markdownAccount writes what requests declare, the whole fleet, the figures and
+// the source rows.
+func markdownAccount(b *strings.Builder, c *assessment.Computed) {
+	add := func(format string, args ...any) { fmt.Fprintf(b, format, args...) }
+	add("\n## Declared against observed\n\n%s\n", md(reconciliation(c)))
+	if len(c.Requests) > 0 {
+		add("\n| request | route | direction | from, km | to, km | effect | trains | seen |\n|---|---|---|--:|--:|---|---|---|\n")
+		for _, q := range c.Requests {
+			for _, d := range q.Declares {
+				seen := seenWords(d)
+				if c.Options.NoRequests {
+					seen = "not looked at"
+				}
+				add("| %s | %s | %s | %s | %s | %s | %s | %s |\n", md(q.ID), md(d.Route), d.Direction, minus(d.From), minus(d.To), d.Effect, md(declaredTrains(d)), md(seen))
+			}
+		}
+	}
+	if len(c.Fleet) > 0 {
+		add("\n## Whole fleet\n")
+	}
+	for i := range c.Fleet {
+		f := &c.Fleet[i]
+		add("\n%s: **%s**\n\n", md(fleetTitle(f)), md(fleetStatement(f)))
+		for _, l := range fleetLines(f) {
+			mark := ""
+			if !l.Represented {
+				mark = " **(no reference train)**"
+			}
+			add("- %s: %s, %s%s\n", md(l.Who), md(l.Step), md(l.Where), mark)
+		}
+	}
+	f := &c.Figures
+	if len(f.Crossings)+len(f.Curves)+len(f.Short)+len(f.Runs) > 0 {
+		add("\n## Figures\n")
+	}
+	list := func(title string, lines []string) {
+		if len(lines) > 0 {
+			add("\n%s\n\n", md(title))
+		}
+		for _, line := range lines {
+			add("- %s\n", md(line))
+		}
+	}
+	var crossings, curves, short []string
+	for _, x := range f.Crossings {
+		crossings = append(crossings, x.Route+" "+x.Direction+", km "+minus(x.Km)+" "+x.Name+": "+crossingLine(x))
+	}
+	for _, x := range curvesOfInterest(f.Curves) {
+		curves = append(curves, x.Route+" "+directionWords(x.Direction)+", km "+minus(x.From)+" to "+minus(x.To)+" ("+trainNames(c, x.Trains, 0)+"): "+curveLine(x))
+	}
+	for _, x := range f.Short {
+		short = append(short, x.Route+" "+x.Direction+", km "+minus(x.From)+" to "+minus(x.To)+", "+x.Train+": "+shortLine(x))
+	}
+	list(crossingWords, crossings)
+	list(curveWords, curves)
+	list("Raises too short to be used.", short)
+	if len(f.Runs) > 0 {
+		add("\n%s\n\n| route | direction | train | before | after | difference, s |\n|---|---|---|--:|--:|--:|\n", md(motionWords(c)))
+		for _, r := range f.Runs {
+			add("| %s | %s | %s | %s | %s | %s |\n", md(r.Route), r.Direction, md(r.Train), clock(r.Before), clock(r.After), seconds(r.After-r.Before))
+		}
+	}
+	add("\n## Source rows\n\n")
+	results := consequences(c)
+	for i := range c.Source {
+		s := &c.Source[i]
+		if len(s.Rows) == 0 {
+			add("- %s: %s\n", md(fileName(*s)), md(s.Note))
+		}
+		for k := range s.Rows {
+			d := &s.Rows[k]
+			add("- %s:%s %s: %s\n", md(fileName(*s)), rowLines(d), md(rowWords(s, d)), md(effectWords(c, d, results[assessment.Cause{File: i, Row: k}])))
+		}
+	}
 }

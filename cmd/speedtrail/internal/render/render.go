@@ -56,6 +56,8 @@ func signed(n int) string {
 // minus writes a position with a minus sign for a reader.
 func minus(s string) string { return strings.Replace(s, "-", "\u2212", 1) }
 
+func itoa(n int) string { return strconv.Itoa(n) }
+
 func plural(n int, one, many string) string {
 	if n == 1 {
 		return "1 " + one

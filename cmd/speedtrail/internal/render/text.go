@@ -24,6 +24,9 @@ func Text(w io.Writer, d *assessment.Document, r Record, s Style) error {
 	p.trains()
 	p.track()
 	p.changes()
+	p.declared()
+	p.fleet()
+	p.figures()
 	p.sources()
 	p.end()
 	return p.err
@@ -109,22 +112,41 @@ func (p *textWriter) verdict() {
 	p.paragraph("", Verdict(p.d))
 }
 
+// mostTextFindings is how many findings of a kind the terminal shows.
+const mostTextFindings = 12
+
 func (p *textWriter) findings() {
-	if len(p.c.Findings) == 0 {
+	groups := findingGroups(p.c)
+	if len(groups) == 0 {
 		return
 	}
 	p.heading("Findings")
-	for _, f := range p.c.Findings {
-		mark := "! "
-		if f.Accepted != "" {
-			mark = "  "
+	for i, g := range groups {
+		if i > 0 {
+			p.printf("\n")
 		}
-		p.paragraph(mark, f.ID+": "+f.Text)
-		p.paragraph("    ", f.Why)
-		if f.Accepted != "" {
-			p.paragraph("    ", "accepted: "+f.Accepted)
-		} else {
-			p.paragraph("    ", "to do: "+f.Do)
+		p.paragraph("", g.title()+". "+g.Why+" "+g.Do)
+		for k, f := range g.List {
+			if k == mostTextFindings {
+				p.printf("  and %d more, in the other formats\n", len(g.List)-k)
+				break
+			}
+			mark := "! "
+			if f.Accepted != "" {
+				mark = "  "
+			}
+			p.paragraph(mark, joinPlace(findingPlace(f), f.Text))
+			if f.Row != "" {
+				p.paragraph("    ", f.Row)
+			}
+			if f.Accepted != "" {
+				p.paragraph("    ", "accepted: "+f.Accepted)
+			}
+		}
+	}
+	for _, a := range p.c.Accepted {
+		if a.State != "used" && a.State != "unread" {
+			p.paragraph("  ", acceptanceWords(a))
 		}
 	}
 }
@@ -132,26 +154,28 @@ func (p *textWriter) findings() {
 var right = []table.ColumnConfig{
 	{Number: 2, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 3, Align: text.AlignRight, AlignHeader: text.AlignRight},
 	{Number: 4, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 5, Align: text.AlignRight, AlignHeader: text.AlignRight},
+	{Number: 6, Align: text.AlignRight, AlignHeader: text.AlignRight},
 }
 
 func (p *textWriter) trains() {
 	p.heading("Trains")
 	t := plainTable()
-	t.AppendHeader(table.Row{"train", "raised km", "lowered km", "largest +km/h", "largest \u2212km/h", "routes"})
-	t.SetColumnConfigs(append([]table.ColumnConfig{{Number: 6, WidthMax: max(12, p.s.Width-66), WidthMaxEnforcer: text.WrapSoft}}, right...))
+	t.AppendHeader(table.Row{"train", "raised km", "lowered km", "most up", "most down", "time", "routes"})
+	t.SetColumnConfigs(append([]table.ColumnConfig{{Number: 7, WidthMax: max(12, p.s.Width-68), WidthMaxEnforcer: text.WrapSoft}}, right...))
+	times := runningTimes(p.c)
 	for _, x := range p.c.Trains {
 		name := source.Visible(x.ID)
 		if x.Fate != "kept" {
 			name += " (" + x.Fate + ")"
 		}
 		if len(x.Routes) == 0 {
-			t.AppendRow(table.Row{name, "no change", "", "", "", ""})
+			t.AppendRow(table.Row{name, "no change", "", "", "", "", ""})
 			continue
 		}
-		t.AppendRow(table.Row{name, lengthCell(x.Raised), lengthCell(x.Lowered), stepCell(x.LargestRaise), stepCell(-x.LargestReduction), strings.Join(x.Routes, ", ")})
+		t.AppendRow(table.Row{name, lengthCell(x.Raised), lengthCell(x.Lowered), stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(strings.Join(x.Routes, ", "))})
 	}
 	p.printf("%s\n", tidy(t.Render()))
-	p.printf("Lengths are added up over both directions of travel.\n")
+	p.paragraph("", "Lengths, and running times in seconds (minus: faster), are added up over routes and both directions of travel.")
 }
 
 func lengthCell(mm int64) string {
@@ -231,56 +255,6 @@ func (p *textWriter) family(r *assessment.Route, f family) {
 	p.paragraph("    ", trainNames(p.c, f.trains, 0))
 	for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
 		p.paragraph("    ", line)
-	}
-}
-
-// mostTextLines bounds the source lines in the terminal.
-const mostTextLines = 60
-
-func (p *textWriter) sources() {
-	if len(p.c.Source) == 0 {
-		return
-	}
-	p.heading("Source rows")
-	lines := 0
-	for i, f := range p.c.Source {
-		if lines > mostTextLines {
-			p.printf("%s more; the HTML report shows them all\n", plural(len(p.c.Source)-i, "file", "files"))
-			return
-		}
-		name := f.Target
-		switch {
-		case f.Target == "":
-			name = f.Base
-		case f.Base != "" && f.Base != f.Target:
-			name = f.Base + " to " + f.Target
-		}
-		if f.Note != "" {
-			name += ": " + f.Note
-		}
-		p.printf("%s\n", source.Visible(name))
-		if f.Base == "" || f.Target == "" {
-			continue
-		}
-		for _, h := range f.Hunks {
-			old, now := h.BaseLine, h.TargetLine
-			for _, l := range h.Lines {
-				number := now
-				if l.Op == "-" {
-					number = old
-				}
-				if l.Op != "=" {
-					p.printf("  %5d %s %s\n", number, l.Op, source.Visible(l.Text))
-					lines++
-				}
-				if l.Op != "+" {
-					old++
-				}
-				if l.Op != "-" {
-					now++
-				}
-			}
-		}
 	}
 }
 

@@ -43,6 +43,9 @@ func Verdict(d *assessment.Document) string {
 	if s := trainSentence(c); s != "" {
 		parts = append(parts, s)
 	}
+	if s := outsideSentence(c); s != "" {
+		parts = append(parts, s)
+	}
 	if s := findingSentence(c); s != "" {
 		parts = append(parts, s)
 	}
@@ -131,6 +134,42 @@ func trainSentence(c *assessment.Computed) string {
 		return ""
 	}
 	return "Reference trains: " + strings.Join(words, "; ") + "."
+}
+
+// outsideSentence says how much lies outside what the requests declare.
+func outsideSentence(c *assessment.Computed) string {
+	outside, unseen := 0, 0
+	for _, f := range c.Findings {
+		switch f.ID {
+		case assessment.Outside:
+			outside++
+		case assessment.Unseen:
+			unseen++
+		}
+	}
+	var ids []string
+	for _, q := range c.Requests {
+		ids = append(ids, q.ID)
+	}
+	declared := "what " + strings.Join(ids, ", ") + " " + map[bool]string{true: "declares", false: "declare"}[len(ids) == 1]
+	if len(ids) > 4 {
+		declared = fmt.Sprintf("what the %d requests declare", len(ids))
+	}
+	var words []string
+	switch {
+	case c.Options.NoRequests:
+		return "What requests declare was not looked at."
+	case outside > 0 && len(ids) == 0:
+		words = append(words, "No change request declares any of it.")
+	case outside > 0:
+		words = append(words, plural(outside, "change lies", "changes lie")+" outside "+declared+".")
+	case len(ids) > 0 && unseen == 0:
+		words = append(words, "Everything is inside "+declared+".")
+	}
+	if unseen > 0 {
+		words = append(words, plural(unseen, "declaration is", "declarations are")+" not seen.")
+	}
+	return strings.Join(words, " ")
 }
 
 func findingSentence(c *assessment.Computed) string {

@@ -1,0 +1,105 @@
+package render
+
+import (
+	"slices"
+	"strings"
+
+	"speedtrail/history/assessment"
+)
+
+// declarationIDs lists the request of each declaration, as pieces count them.
+func declarationIDs(c *assessment.Computed) []string {
+	var ids []string
+	for _, q := range c.Requests {
+		for range q.Declares {
+			ids = append(ids, q.ID)
+		}
+	}
+	return ids
+}
+
+// declaredWords says which requests hold a change; empty where that was not
+// looked at.
+func declaredWords(c *assessment.Computed, r *assessment.Route, pieces int) string {
+	if c.Options.NoRequests {
+		return ""
+	}
+	list := r.Pieces[pieces]
+	if len(list) == 0 {
+		return "outside"
+	}
+	ids := declarationIDs(c)
+	var parts []string
+	for _, p := range list {
+		text := "outside"
+		if p.By >= 0 {
+			text = ids[p.By]
+		}
+		if p.RunOut {
+			text += " (run-out)"
+		}
+		if len(list) > 1 {
+			text = minus(p.From) + " to " + minus(p.To) + " " + text
+		}
+		parts = append(parts, text)
+	}
+	return strings.Join(parts, "; ")
+}
+
+// isOutside tells whether some of a change is outside all declarations.
+func isOutside(c *assessment.Computed, r *assessment.Route, pieces int) bool {
+	list := r.Pieces[pieces]
+	return !c.Options.NoRequests && (len(list) == 0 || slices.ContainsFunc(list, func(p assessment.Piece) bool { return p.By < 0 }))
+}
+
+// weight is what a stretch is sorted by for a reviewer.
+type weight struct {
+	outside, raised, structure bool
+	step                       int
+}
+
+// weigh looks at the changes of a group.
+func weigh(c *assessment.Computed, g *group) weight {
+	r := &c.Routes[g.drawn.Route]
+	var w weight
+	for _, k := range g.changes {
+		x := &r.Changes[k]
+		step := max(x.After-x.Before, x.Before-x.After)
+		w.outside = w.outside || isOutside(c, r, x.Pieces)
+		w.raised = w.raised || x.After > x.Before
+		w.step = max(w.step, step)
+		for _, list := range [...]int{x.BeforeSource, x.AfterSource} {
+			for _, s := range r.Sources[list] {
+				w.structure = w.structure || strings.HasPrefix(s.Kind, "axle load")
+			}
+		}
+	}
+	return w
+}
+
+// inReviewOrder sorts what needs eyes first to the front: outside all
+// declarations, raised, on structures, by large steps.
+func inReviewOrder(c *assessment.Computed, list []*group) {
+	first := func(a, b bool) int {
+		switch {
+		case a == b:
+			return 0
+		case a:
+			return -1
+		}
+		return 1
+	}
+	weights := map[*group]weight{}
+	for _, g := range list {
+		weights[g] = weigh(c, g)
+	}
+	slices.SortStableFunc(list, func(a, b *group) int {
+		v, w := weights[a], weights[b]
+		for _, order := range [...]int{first(v.outside, w.outside), first(v.raised, w.raised), first(v.structure, w.structure), w.step - v.step} {
+			if order != 0 {
+				return order
+			}
+		}
+		return 0
+	})
+}

@@ -1,0 +1,178 @@
+package render
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"speedtrail/history/assessment"
+)
+
+// findingGroup is the findings of one kind: why they matter is said once.
+type findingGroup struct {
+	ID, Why, Do string
+	List        []assessment.Finding
+	Open        int // of them not accepted
+}
+
+// findingGroups gathers the findings of a document, in their order.
+func findingGroups(c *assessment.Computed) []findingGroup {
+	var list []findingGroup
+	for _, f := range c.Findings {
+		i := slices.IndexFunc(list, func(g findingGroup) bool { return g.ID == f.ID && (g.Open > 0) == (f.Accepted == "") })
+		if i < 0 {
+			i = len(list)
+			list = append(list, findingGroup{ID: f.ID, Why: f.Why, Do: f.Do})
+		}
+		list[i].List = append(list[i].List, f)
+		if f.Accepted == "" {
+			list[i].Open++
+		}
+	}
+	return list
+}
+
+func (g findingGroup) title() string {
+	s := g.ID
+	if n := len(g.List); n > 1 {
+		s += fmt.Sprintf(" (%d)", n)
+	}
+	if g.Open == 0 {
+		s += ", accepted"
+	}
+	return s
+}
+
+// findingPlace words where a finding is.
+func findingPlace(f assessment.Finding) string {
+	var s string
+	if f.Route != "" {
+		s = f.Route
+		if f.Direction == "both" {
+			s += " both directions"
+		} else if f.Direction != "" {
+			s += " " + f.Direction
+		}
+	}
+	switch {
+	case f.From == "":
+	case f.From == f.To:
+		s += ", km " + minus(f.From)
+	default:
+		s += ", km " + minus(f.From) + " to " + minus(f.To)
+	}
+	return s
+}
+
+func joinPlace(place, text string) string {
+	if place == "" {
+		return text
+	}
+	return place + ": " + text
+}
+
+// acceptanceWords says what became of an entry of accepted.toml.
+func acceptanceWords(a assessment.Acceptance) string {
+	state := map[string]string{
+		"used":   fmt.Sprintf("covers %s", plural(a.Covers, "finding", "findings")),
+		"unused": "covers nothing and can be removed",
+		"new":    "does not count yet: it does not stand unaltered in the base",
+		"over":   "does not count any more: it was for the time until " + a.Until,
+		"never":  "does not count: a finding of this kind cannot be accepted",
+		"unread": "is for a route that is the same in both revisions",
+	}[a.State]
+	return fmt.Sprintf("accepted.toml:%d, %s on %s km %s to %s, %s", a.Line, a.Finding, a.Route, minus(a.From), minus(a.To), state)
+}
+
+// seconds writes tenths of a second with a sign; minus is a gain.
+func seconds(tenths int64) string {
+	if tenths == 0 {
+		return "0.0"
+	}
+	sign := "+"
+	if tenths < 0 {
+		sign, tenths = "\u2212", -tenths
+	}
+	return fmt.Sprintf("%s%d.%d", sign, tenths/10, tenths%10)
+}
+
+// clock writes tenths of a second as minutes and seconds.
+func clock(tenths int64) string {
+	return fmt.Sprintf("%d:%02d.%d", tenths/600, tenths/10%60, tenths%10)
+}
+
+// runningTimes adds up, for each train, how its running times change; it has no
+// entry for a train without any.
+func runningTimes(c *assessment.Computed) map[string]string {
+	sums := map[string]int64{}
+	for _, r := range c.Figures.Runs {
+		sums[r.Train] += r.After - r.Before
+	}
+	out := map[string]string{}
+	for train, sum := range sums {
+		out[train] = seconds(sum)
+	}
+	return out
+}
+
+// seenWords says what was seen inside a declaration, for trains that share the
+// same lengths at once.
+func seenWords(d assessment.Declaration) string {
+	if d.Unseen {
+		return "unseen"
+	}
+	type group struct {
+		inside, least, most int64
+		trains              []string
+	}
+	var groups []*group
+	for _, s := range d.Seen {
+		i := slices.IndexFunc(groups, func(g *group) bool { return g.inside == s.Inside })
+		if i < 0 {
+			i = len(groups)
+			groups = append(groups, &group{inside: s.Inside, least: s.RunOut, most: s.RunOut})
+		}
+		g := groups[i]
+		g.trains = append(g.trains, s.Train)
+		g.least, g.most = min(g.least, s.RunOut), max(g.most, s.RunOut)
+	}
+	var parts []string
+	for _, g := range groups {
+		text := km(g.inside) + " km"
+		switch {
+		case g.most > g.least:
+			text += " and " + km(g.least) + " to " + km(g.most) + " km of run-out"
+		case g.most > 0:
+			text += " and " + km(g.most) + " km of run-out"
+		}
+		parts = append(parts, strings.Join(g.trains, ", ")+" "+text)
+	}
+	if d.Track > 0 {
+		parts = append(parts, km(d.Track)+" km of added or removed track")
+	}
+	if parts == nil {
+		return "a reference train that differs"
+	}
+	return strings.Join(parts, "; ")
+}
+
+// declaredTrains words whom a declaration is for.
+func declaredTrains(d assessment.Declaration) string {
+	if len(d.Trains) == 0 {
+		return "every train"
+	}
+	return strings.Join(d.Trains, ", ")
+}
+
+// reconciliation says with what the changes were compared.
+func reconciliation(c *assessment.Computed) string {
+	switch {
+	case c.Options.NoRequests:
+		return "The comparison with change requests was left out (--request none)."
+	case len(c.Requests) == 0:
+		return "No change request was added or altered, so that every change is outside."
+	case len(c.Options.Requests) > 0:
+		return "The requests named with --request count."
+	}
+	return "The requests that were added or altered between the revisions count."
+}

@@ -1,0 +1,221 @@
+package render
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"speedtrail/history/assessment"
+)
+
+// fleetTitle names an account of the whole fleet.
+func fleetTitle(f *assessment.Fleet) string {
+	s := f.Route + " " + f.Direction
+	if f.Permanent {
+		s += ", when no temporary restriction is in force"
+	}
+	return s
+}
+
+// fleetStatement is the sentence that holds for every train.
+func fleetStatement(f *assessment.Fleet) string {
+	end := ""
+	if f.Permanent {
+		end = " then"
+	}
+	if len(f.Reach) == 0 {
+		return fmt.Sprintf("No train up to %s m long sees a change%s.", metres(f.Longest), end)
+	}
+	var parts []string
+	for _, r := range f.Reach {
+		parts = append(parts, minus(r.From)+" to "+minus(r.To))
+	}
+	return fmt.Sprintf("No train of any kind up to %s m long sees a change outside km %s%s.", metres(f.Longest), strings.Join(parts, ", "), end)
+}
+
+// fleetLine is what one kind of train sees: all pieces with the same speeds.
+type fleetLine struct {
+	Who, Step, Where string
+	Represented      bool
+}
+
+// fleetLines gathers the changes of an account by the trains that see them,
+// those that no reference train stands for first.
+func fleetLines(f *assessment.Fleet) []fleetLine {
+	var list []fleetLine
+	for k := range f.Changes {
+		x := &f.Changes[k]
+		step := fmt.Sprintf("%d to %d km/h", x.Before, x.After)
+		for _, m := range x.Members {
+			i := slices.IndexFunc(list, func(l fleetLine) bool { return l.Who == m.Who && l.Step == step && l.Represented == m.Represented })
+			if i < 0 {
+				i = len(list)
+				list = append(list, fleetLine{Who: m.Who, Step: step, Represented: m.Represented})
+			}
+			list[i].Where = appendPiece(list[i].Where, f, x)
+		}
+	}
+	slices.SortStableFunc(list, func(a, b fleetLine) int {
+		switch {
+		case a.Represented == b.Represented:
+			return 0
+		case b.Represented:
+			return -1
+		}
+		return 1
+	})
+	return list
+}
+
+func appendPiece(where string, f *assessment.Fleet, x *assessment.FleetChange) string {
+	piece := "km " + minus(x.From) + " to " + minus(x.To)
+	if x.RunOut {
+		piece = "run-out to " + minus(x.To)
+		if f.Direction == "reverse" {
+			piece = "run-out to " + minus(x.From)
+		}
+	}
+	if len(x.Lengths) == 1 && f.Shortest != f.Longest {
+		piece += " (" + metres(x.Lengths[0]) + " m long)"
+	}
+	if where == "" {
+		return piece
+	}
+	return where + "; " + piece
+}
+
+// rowWords says in short how a row differs.
+func rowWords(f *assessment.SourceFile, d *assessment.RowDiff) string {
+	var b strings.Builder
+	b.WriteString(d.Kind)
+	if d.Table != "" {
+		b.WriteString(" [[" + d.Table + "]]")
+	}
+	switch d.Kind {
+	case "added", "removed":
+		var cells []string
+		for _, c := range d.Cells {
+			cells = append(cells, c.Column+" "+c.After+c.Before)
+		}
+		b.WriteString(": " + strings.Join(cells, ", "))
+	default:
+		// What matters first, notes last; of a split or merged row, the limits of
+		// the parts say nothing new.
+		var cells, notes []string
+		for _, c := range d.Cells {
+			limit := c.Column == "from_km" || c.Column == "to_km"
+			if limit && (len(d.TargetLines) > 1 || len(d.BaseLines) > 1) {
+				continue
+			}
+			text := fmt.Sprintf("%s %s now %s", c.Column, blank(c.Before), blank(c.After))
+			if len(d.TargetLines) > 1 {
+				text = fmt.Sprintf("line %d ", c.TargetLine) + text
+			} else if len(d.BaseLines) > 1 {
+				text = fmt.Sprintf("line %d ", c.BaseLine) + text
+			}
+			if c.Column == "note" {
+				notes = append(notes, text)
+			} else {
+				cells = append(cells, text)
+			}
+		}
+		if cells = append(cells, notes...); len(cells) > 0 {
+			b.WriteString(": " + strings.Join(cells, ", "))
+		}
+	}
+	return b.String()
+}
+
+func blank(cell string) string {
+	if cell == "" {
+		return "blank"
+	}
+	return cell
+}
+
+// rowLines names the lines of a difference.
+func rowLines(d *assessment.RowDiff) string {
+	list := func(lines []int) string {
+		var s []string
+		for _, n := range lines {
+			s = append(s, fmt.Sprint(n))
+		}
+		return strings.Join(s, ", ")
+	}
+	switch {
+	case len(d.BaseLines) == 0:
+		return list(d.TargetLines)
+	case len(d.TargetLines) == 0:
+		return list(d.BaseLines) + " of the base"
+	case len(d.BaseLines) == 1 && len(d.TargetLines) == 1 && d.BaseLines[0] == d.TargetLines[0]:
+		return list(d.TargetLines)
+	}
+	return list(d.BaseLines) + " now " + list(d.TargetLines)
+}
+
+// consequence sums up the changes that a row causes.
+type consequence struct {
+	changes          int // one a train and stretch
+	raise, reduction int
+	trains           []int
+}
+
+// consequences gives, for each file and row of Computed.Source, what comes of
+// it.
+func consequences(c *assessment.Computed) map[assessment.Cause]*consequence {
+	out := map[assessment.Cause]*consequence{}
+	for i := range c.Routes {
+		r := &c.Routes[i]
+		for k := range r.Changes {
+			x := &r.Changes[k]
+			for _, cause := range r.Causes[x.Cause] {
+				q := out[cause]
+				if q == nil {
+					q = &consequence{}
+					out[cause] = q
+				}
+				q.changes += len(x.Trains)
+				q.raise = max(q.raise, x.After-x.Before)
+				q.reduction = max(q.reduction, x.Before-x.After)
+				for _, t := range x.Trains {
+					q.add(t)
+				}
+			}
+		}
+	}
+	return out
+}
+
+func (q *consequence) add(train int) {
+	at := 0
+	for at < len(q.trains) && q.trains[at] < train {
+		at++
+	}
+	if at < len(q.trains) && q.trains[at] == train {
+		return
+	}
+	q.trains = append(q.trains[:at], append([]int{train}, q.trains[at:]...)...)
+}
+
+// effectWords says what comes of a row.
+func effectWords(c *assessment.Computed, d *assessment.RowDiff, q *consequence) string {
+	switch d.Effect {
+	case "changes":
+		if q == nil {
+			return "changes"
+		}
+		var steps []string
+		if q.raise > 0 {
+			steps = append(steps, "up to "+signed(q.raise))
+		}
+		if q.reduction > 0 {
+			steps = append(steps, "down to "+signed(-q.reduction))
+		}
+		return fmt.Sprintf("%s, %s km/h (%s)", plural(q.changes, "change", "changes"), strings.Join(steps, ", "), trainNames(c, q.trains, 6))
+	case "track":
+		return "track added or removed"
+	case "hidden":
+		return "hidden today by temporary restrictions (finding masked)"
+	}
+	return "no change: " + d.Reason
+}

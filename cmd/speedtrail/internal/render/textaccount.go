@@ -1,0 +1,160 @@
+package render
+
+import (
+	"fmt"
+
+	"github.com/jedib0t/go-pretty/v6/table"
+
+	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
+)
+
+// declared sets what the requests declare against what was observed.
+func (p *textWriter) declared() {
+	p.heading("Declared against observed")
+	p.paragraph("", reconciliation(p.c))
+	for _, q := range p.c.Requests {
+		for _, d := range q.Declares {
+			p.paragraph("  ", fmt.Sprintf("%s %s %s, km %s to %s, %s, %s", q.ID, d.Route, d.Direction, minus(d.From), minus(d.To), d.Effect, declaredTrains(d)))
+			if !p.c.Options.NoRequests {
+				p.paragraph("      ", "seen: "+seenWords(d))
+			}
+		}
+	}
+}
+
+// mostTextFleet is how many changes of the whole fleet the terminal shows.
+const mostTextFleet = 40
+
+func (p *textWriter) fleet() {
+	if len(p.c.Fleet) == 0 {
+		return
+	}
+	p.heading("Whole fleet")
+	p.paragraph("", "Every train that the standard can describe, by category, without a maximum speed. ! stands for trains that no reference train represents.")
+	shown := 0
+	for i := range p.c.Fleet {
+		f := &p.c.Fleet[i]
+		p.paragraph("", fleetTitle(f)+": "+fleetStatement(f))
+		for _, line := range fleetLines(f) {
+			if shown++; shown > mostTextFleet {
+				continue
+			}
+			mark := "    "
+			if !line.Represented {
+				mark = "  ! "
+			}
+			p.paragraph(mark, line.Who+": "+line.Step+", "+line.Where)
+		}
+	}
+	if shown > mostTextFleet {
+		p.printf("and %d more, in the other formats\n", shown-mostTextFleet)
+	}
+}
+
+// mostTextFigures is how many lines of each kind of figure the terminal shows.
+const mostTextFigures = 40
+
+func (p *textWriter) figures() {
+	f := &p.c.Figures
+	if len(f.Runs) > 0 {
+		p.heading("Running times")
+		p.paragraph("", motionWords(p.c))
+		t := plainTable()
+		t.AppendHeader(table.Row{"route", "direction", "train", "before", "after", "difference"})
+		t.SetColumnConfigs(right[2:])
+		for i, r := range f.Runs {
+			if i == mostTextFigures {
+				break
+			}
+			t.AppendRow(table.Row{source.Visible(r.Route), r.Direction, source.Visible(r.Train), clock(r.Before), clock(r.After), seconds(r.After - r.Before)})
+		}
+		p.printf("%s\n", tidy(t.Render()))
+		p.more(len(f.Runs))
+	}
+	if len(f.Crossings) > 0 {
+		p.heading("Level crossings")
+		p.paragraph("", crossingWords)
+		for _, x := range f.Crossings {
+			p.paragraph("  ", fmt.Sprintf("%s %s, km %s %s: %s", x.Route, x.Direction, minus(x.Km), x.Name, crossingLine(x)))
+		}
+	}
+	if len(f.Curves) > 0 {
+		p.heading("Curves")
+		p.paragraph("", curveWords)
+		list := curvesOfInterest(f.Curves)
+		for i, x := range list {
+			if i == mostTextFigures {
+				break
+			}
+			p.paragraph("  ", fmt.Sprintf("%s %s, km %s to %s (%s): %s", x.Route, directionWords(x.Direction), minus(x.From), minus(x.To), trainNames(p.c, x.Trains, 6), curveLine(x)))
+		}
+		p.more(len(list))
+	}
+	if len(f.Short) > 0 {
+		p.heading("Raises too short to be used")
+		for i, x := range f.Short {
+			if i == mostTextFigures {
+				break
+			}
+			p.paragraph("  ", fmt.Sprintf("%s %s, km %s to %s, %s: %s", x.Route, x.Direction, minus(x.From), minus(x.To), x.Train, shortLine(x)))
+		}
+		p.more(len(f.Short))
+	}
+}
+
+func (p *textWriter) more(n int) {
+	if n > mostTextFigures {
+		p.printf("and %d more, in the other formats\n", n-mostTextFigures)
+	}
+}
+
+// mostTextRows bounds the source rows in the terminal.
+const mostTextRows = 60
+
+// sources lists the rows that differ, with what comes of each; those without an
+// effect are counted.
+func (p *textWriter) sources() {
+	if len(p.c.Source) == 0 {
+		return
+	}
+	p.heading("Source rows")
+	results := consequences(p.c)
+	shown, quiet := 0, 0
+	for i := range p.c.Source {
+		f := &p.c.Source[i]
+		name := false
+		title := func() {
+			if !name {
+				name = true
+				line := fileName(*f)
+				if f.Note != "" {
+					line += ": " + f.Note
+				}
+				p.paragraph("", line)
+			}
+		}
+		if len(f.Rows) == 0 {
+			title()
+		}
+		for k := range f.Rows {
+			d := &f.Rows[k]
+			if d.Effect == "none" {
+				quiet++
+				continue
+			}
+			if shown++; shown > mostTextRows {
+				continue
+			}
+			title()
+			p.paragraph(fmt.Sprintf("  %5s ", rowLines(d)), rowWords(f, d))
+			p.paragraph("        ", effectWords(p.c, d, results[assessment.Cause{File: i, Row: k}]))
+		}
+	}
+	if shown > mostTextRows {
+		p.printf("and %d more rows, in the other formats\n", shown-mostTextRows)
+	}
+	if quiet > 0 {
+		p.paragraph("", fmt.Sprintf("%s without an effect on any reference train; the HTML report lists them with the reason.", plural(quiet, "row", "rows")))
+	}
+}

@@ -1,0 +1,252 @@
+package diff
+
+import (
+	"encoding/binary"
+	"path"
+	"slices"
+
+	"speedtrail/diff/profile"
+	"speedtrail/diff/rows"
+	"speedtrail/schema"
+	"speedtrail/schema/chainage"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// Cause is a difference of the source that a change comes of.
+type Cause struct {
+	File, Row int // indices in Route.Files and File.Rows
+}
+
+// causeTable finds the differences behind the changes of a route.
+type causeTable struct {
+	route *Route
+	// byLine finds the differences of the tables that hold speeds: side (0 the
+	// base), layer and line of a row.
+	byLine map[rowPlace][]Cause
+	// track are the differences of route.toml that alter the track.
+	track   []Cause
+	effects map[effectKey]bool
+	known   map[changeKey]int
+	lists   map[string]int
+}
+
+type rowPlace struct {
+	side, line int
+	layer      profile.Layer
+}
+
+type effectKey struct {
+	Cause
+	direction codes.Direction
+	class     profile.Class
+}
+
+type changeKey struct {
+	before, after int
+	direction     codes.Direction
+	class         profile.Class
+}
+
+// layerOf gives the layer that a table of a route holds.
+func layerOf(file string) (profile.Layer, bool) {
+	switch path.Base(file) {
+	case "speed.csv":
+		return profile.StaticSpeed, true
+	case "axle-load.csv":
+		return profile.AxleLoad, true
+	case "temporary.csv":
+		return profile.Temporary, true
+	}
+	return 0, false
+}
+
+func newCauseTable(r *Route) causeTable {
+	t := causeTable{route: r, byLine: map[rowPlace][]Cause{}, effects: map[effectKey]bool{}, known: map[changeKey]int{}, lists: map[string]int{}}
+	for i := range r.Files {
+		f := &r.Files[i]
+		layer, ok := layerOf(f.Path())
+		for k := range f.Rows {
+			d, cause := &f.Rows[k], Cause{i, k}
+			if !ok {
+				if path.Base(f.Path()) == "route.toml" && altersTrack(f, d) {
+					t.track = append(t.track, cause)
+				}
+				continue
+			}
+			for _, n := range d.Old {
+				place := rowPlace{0, f.Tables[d.Table].Old.Rows[n].Line, layer}
+				t.byLine[place] = append(t.byLine[place], cause)
+			}
+			for _, n := range d.New {
+				place := rowPlace{1, f.Tables[d.Table].New.Rows[n].Line, layer}
+				t.byLine[place] = append(t.byLine[place], cause)
+			}
+		}
+	}
+	return t
+}
+
+// altersTrack tells whether a difference of route.toml is one of the track.
+func altersTrack(f *File, d *RowDifference) bool {
+	if f.Tables[d.Table].Name == "jump" {
+		return true
+	}
+	return d.Kind != rows.Altered || slices.ContainsFunc(f.Columns(d), func(c string) bool {
+		return c == "start_km" || c == "end_km" || c == "directions"
+	})
+}
+
+// of gives the index in Route.Causes of the differences behind a change: those
+// whose old row governs before, or whose new row governs after, as far as they
+// give this class of trains another restriction. A change that none of the rows
+// explains comes of a chainage jump or an end of the route.
+func (t *causeTable) of(c *Change, class profile.Class) int {
+	key := changeKey{c.BeforeSources, c.AfterSources, c.Direction, class}
+	if i, ok := t.known[key]; ok {
+		return i
+	}
+	var list []Cause
+	for side, sources := range [...][]profile.Source{t.route.Sources[c.BeforeSources], t.route.Sources[c.AfterSources]} {
+		for _, s := range sources {
+			for _, cause := range t.byLine[rowPlace{side, s.Pos.Line, s.Layer}] {
+				if s.Layer != profile.TrainSpeed && !slices.Contains(list, cause) && t.hasEffect(cause, c.Direction, class) {
+					list = append(list, cause)
+				}
+			}
+		}
+	}
+	if len(list) == 0 {
+		list = slices.Clone(t.track)
+	}
+	slices.SortFunc(list, func(a, b Cause) int {
+		if a.File != b.File {
+			return a.File - b.File
+		}
+		return a.Row - b.Row
+	})
+	i := t.index(list)
+	t.known[key] = i
+	return i
+}
+
+// index gives the place of a list in Route.Causes.
+func (t *causeTable) index(list []Cause) int {
+	var key []byte
+	for _, c := range list {
+		key = binary.AppendVarint(binary.AppendVarint(key, int64(c.File)), int64(c.Row))
+	}
+	i, ok := t.lists[string(key)]
+	if !ok {
+		i = len(t.route.Causes)
+		t.lists[string(key)] = i
+		t.route.Causes = append(t.route.Causes, list)
+	}
+	return i
+}
+
+// hasEffect tells whether the old rows of a difference restrict a class of
+// trains otherwise than the new ones.
+func (t *causeTable) hasEffect(c Cause, d codes.Direction, class profile.Class) bool {
+	f := &t.route.Files[c.File]
+	layer, ok := layerOf(f.Path())
+	if !ok {
+		return false
+	}
+	// Of the class, a row sees only what its layer looks at.
+	switch layer {
+	case profile.StaticSpeed:
+		class.AxleLoad = 0
+	case profile.AxleLoad:
+		class.Cant, class.Categories = 0, 0
+	case profile.Temporary:
+		class = profile.Class{}
+	}
+	key := effectKey{c, d, class}
+	if effect, ok := t.effects[key]; ok {
+		return effect
+	}
+	row := &f.Rows[c.Row]
+	old := bindings(t.route.Base, layer, linesOf(f.Tables[row.Table].Old.Rows, row.Old), d, class)
+	now := bindings(t.route.Target, layer, linesOf(f.Tables[row.Table].New.Rows, row.New), d, class)
+	effect := !slices.Equal(old, now)
+	t.effects[key] = effect
+	return effect
+}
+
+func linesOf(list []rows.Row, indices []int) []int {
+	lines := make([]int, len(indices))
+	for i, n := range indices {
+		lines[i] = list[n].Line
+	}
+	return lines
+}
+
+// binding is how a row restricts a class of trains.
+type binding struct {
+	from, to chainage.Point
+	delay    bool
+	speed    unit.Speed
+}
+
+// bindings lists how rows restrict a class in a direction of travel, in the
+// order of the track; rows that continue each other count as one.
+func bindings(r *schema.Route, layer profile.Layer, lines []int, d codes.Direction, class profile.Class) []binding {
+	if r == nil {
+		return nil
+	}
+	var list []binding
+	for _, line := range lines {
+		row, v := rowOf(r, layer, line, class)
+		if row == nil || v == 0 || !row.Directions.Has(d) {
+			continue
+		}
+		b := binding{first(row.From), first(row.To), row.Delay, v}
+		if n := len(list); n > 0 && list[n-1].to == b.from && list[n-1].delay == b.delay && list[n-1].speed == b.speed {
+			list[n-1].to = b.to
+			continue
+		}
+		list = append(list, b)
+	}
+	return list
+}
+
+// first writes a position without the mark of a first occurrence.
+func first(p chainage.Point) chainage.Point {
+	if p.Occurrence == 1 {
+		p.Occurrence = 0
+	}
+	return p
+}
+
+// rowOf finds the row of a layer that stands in a line, and the speed that it
+// gives to a class.
+func rowOf(r *schema.Route, layer profile.Layer, line int, class profile.Class) (*schema.Row, unit.Speed) {
+	switch layer {
+	case profile.StaticSpeed:
+		for i := range r.Speed {
+			if r.Speed[i].Pos.Line == line {
+				return &r.Speed[i].Row, profile.StaticSpeedOf(&r.Speed[i], class)
+			}
+		}
+	case profile.AxleLoad:
+		for i := range r.AxleLoad {
+			if r.AxleLoad[i].Pos.Line == line {
+				return &r.AxleLoad[i].Row, r.AxleLoad[i].Limit[class.AxleLoad]
+			}
+		}
+	case profile.Temporary:
+		for i := range r.Temporary {
+			if r.Temporary[i].Pos.Line == line {
+				return &r.Temporary[i].Row, r.Temporary[i].Speed
+			}
+		}
+	}
+	return nil, 0
+}
+
+// anyRow finds the row of a layer that stands in a line.
+func anyRow(r *schema.Route, layer profile.Layer, line int) *schema.Row {
+	row, _ := rowOf(r, layer, line, profile.Class{})
+	return row
+}

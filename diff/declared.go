@@ -1,0 +1,299 @@
+package diff
+
+import (
+	"encoding/binary"
+	"errors"
+	"slices"
+
+	"speedtrail/diff/align"
+	"speedtrail/diff/profile"
+	"speedtrail/diff/scope"
+	"speedtrail/schema"
+	"speedtrail/schema/chainage"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/source"
+	"speedtrail/schema/unit"
+)
+
+// Declared is a declaration of a request in play and what of it was seen.
+type Declared struct {
+	Request, Declaration int // indices in Account.Requests and its Declare
+	Route                int // index in Account.Routes; -1 for a route whose files are the same in both
+	Seen                 []Seen
+	Track                unit.Distance // length of added and removed track that it holds, over both directions
+
+	trains       []int           // indices in Account.Trains; nil: every train
+	base, target *align.Interval // in running distances; nil where the side has not the positions
+}
+
+// Seen is how much a train was seen to change inside a declaration.
+type Seen struct {
+	Train          int // index in Account.Trains
+	Inside, RunOut unit.Distance
+}
+
+// Unseen tells whether nothing of the declaration was observed.
+func (d *Declared) Unseen() bool { return len(d.Seen) == 0 && d.Track == 0 }
+
+// Names tells whether a declaration of any effect names a train.
+func (d *Declared) Names(train string, a *Account) bool {
+	x := &a.Requests[d.Request].Declare[d.Declaration]
+	return x.Effect == schema.AnyEffect && slices.Contains(x.Trains, train)
+}
+
+// reconcile locates what the requests in play declare and sets it against what
+// was observed. The error is a *source.Faults for requests that name what is not
+// there, else one of Options.Unread.
+func (a *Account) reconcile(o *Options) error {
+	a.Reconciled = !o.NoRequests
+	if o.NoRequests {
+		return nil
+	}
+	var faults source.Collector
+	for i := range a.Requests {
+		for k := range a.Requests[i].Declare {
+			d, err := a.locate(o, &a.Requests[i].Declare[k], &faults)
+			if err != nil {
+				return err
+			}
+			d.Request, d.Declaration = i, k
+			a.Declared = append(a.Declared, d)
+		}
+	}
+	if err := faults.Err(); err != nil {
+		return err
+	}
+	for i := range a.Routes {
+		a.reconcileRoute(i)
+	}
+	for i := range a.Trains {
+		t := &a.Trains[i]
+		for _, d := range a.Declared {
+			x := &a.Requests[d.Request].Declare[d.Declaration]
+			t.Declared = t.Declared || t.Fate != Kept && x.Effect == schema.AnyEffect && slices.Contains(d.trains, i)
+		}
+	}
+	return nil
+}
+
+// locate finds the route, the trains and the positions of a declaration.
+func (a *Account) locate(o *Options, x *schema.Declaration, faults *source.Collector) (Declared, error) {
+	d := Declared{Route: slices.IndexFunc(a.Routes, func(r Route) bool { return r.ID == x.Route })}
+	for _, id := range x.Trains {
+		i := slices.IndexFunc(a.Trains, func(t Train) bool { return t.ID == id })
+		if i < 0 {
+			faults.Add(x.Pos, "the declaration names train %s, which neither revision has", source.Quote(id))
+			continue
+		}
+		d.trains = append(d.trains, i)
+	}
+	var sides [2]*schema.Route
+	if d.Route >= 0 {
+		sides = [2]*schema.Route{a.Routes[d.Route].Base, a.Routes[d.Route].Target}
+	} else if o.Unread != nil {
+		r, err := o.Unread(x.Route)
+		if err != nil {
+			return d, err
+		}
+		sides[1] = r
+	}
+	if sides[0] == nil && sides[1] == nil {
+		faults.Add(x.Pos, "the declaration names route %s, which neither revision has", source.Quote(x.Route))
+		return d, nil
+	}
+	problem := ""
+	for i, r := range sides {
+		if r == nil {
+			continue
+		}
+		interval, why := span(r.Track, x.Span)
+		if why != "" {
+			problem = why
+			continue
+		}
+		if i == 0 {
+			d.base = interval
+		} else {
+			d.target = interval
+		}
+	}
+	if d.base == nil && d.target == nil {
+		faults.Add(x.Pos, "the declaration on route %s: %s", source.Quote(x.Route), problem)
+	}
+	return d, nil
+}
+
+// span finds a stretch on a track, or says why it is not there.
+func span(t *chainage.Track, s schema.Span) (*align.Interval, string) {
+	var at [2]unit.Distance
+	for i, p := range [...]chainage.Point{s.From, s.To} {
+		d, err := find(t, p)
+		if err != nil {
+			return nil, [...]string{"from_km ", "to_km "}[i] + p.String() + " is " + err.Error()
+		}
+		at[i] = d
+	}
+	if at[0] >= at[1] {
+		return nil, "to_km " + s.To.String() + " does not lie after from_km " + s.From.String() + " along the track"
+	}
+	return &align.Interval{From: at[0], To: at[1]}, ""
+}
+
+// find gives the running distance of a position that was written for this or
+// another revision of the track: the first occurrence may be marked or not.
+func find(t *chainage.Track, p chainage.Point) (unit.Distance, error) {
+	d, err := t.Locate(p)
+	switch {
+	case errors.Is(err, chainage.ErrNotRepeated) && p.Occurrence == 1:
+		return t.Locate(chainage.Point{Chainage: p.Chainage})
+	case errors.Is(err, chainage.ErrAmbiguous):
+		return 0, errors.New(err.Error() + "; write " + p.Chainage.KM() + "#1 or another occurrence")
+	}
+	return d, err
+}
+
+// reconcileRoute cuts the changes of a route at the limits of the declarations.
+func (a *Account) reconcileRoute(index int) {
+	r := &a.Routes[index]
+	r.Pieces = [][]scope.Piece{nil} // the first: no declaration holds any of it
+	var target, track [2][]scope.Declared
+	var owners, trackOwners [2][]int
+	for i := range a.Declared {
+		d := &a.Declared[i]
+		if d.Route != index {
+			continue
+		}
+		x := &a.Requests[d.Request].Declare[d.Declaration]
+		for side, interval := range [...]*align.Interval{d.base, d.target} {
+			if interval == nil {
+				continue
+			}
+			s := scope.Declared{Directions: x.Span.Directions, From: interval.From, To: interval.To, Effect: x.Effect, Trains: d.trains}
+			target[side], owners[side] = append(target[side], s), append(owners[side], i)
+			if x.Effect == schema.AnyEffect && d.trains == nil {
+				track[side], trackOwners[side] = append(track[side], s), append(trackOwners[side], i)
+			}
+		}
+	}
+	for i := range r.Track {
+		t := &r.Track[i]
+		side := 1
+		if t.Fate == Removed {
+			side = 0
+		}
+		o := scope.Observed{Direction: t.Direction, From: t.From, To: t.To, Train: -1}
+		t.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, track[side])[0], trackOwners[side])
+		for k := range track[side] {
+			inside, _ := scope.Seen(&o, &track[side][k])
+			a.Declared[trackOwners[side][k]].Track += inside
+		}
+	}
+	if len(target[1]) == 0 {
+		return
+	}
+	for _, list := range [...][]Change{r.Changes, r.Masked} {
+		for i := range list {
+			c := &list[i]
+			o := scope.Observed{
+				Direction: c.Direction, From: c.From, To: c.To, Train: c.Train, TrainLength: a.Trains[c.Train].Length,
+				Raised: c.Raised(), RunOut: c.RunOut, RowEnds: r.rowEnds(c),
+			}
+			c.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, target[1])[0], owners[1])
+			for k := range target[1] {
+				if inside, runOut := scope.Seen(&o, &target[1][k]); inside+runOut > 0 {
+					a.Declared[owners[1][k]].see(c.Train, inside, runOut)
+				}
+			}
+		}
+	}
+	for i := range a.Declared {
+		if d := &a.Declared[i]; d.Route == index {
+			slices.SortFunc(d.Seen, func(x, y Seen) int { return x.Train - y.Train })
+		}
+	}
+}
+
+func (d *Declared) see(train int, inside, runOut unit.Distance) {
+	for i := range d.Seen {
+		if d.Seen[i].Train == train {
+			d.Seen[i].Inside += inside
+			d.Seen[i].RunOut += runOut
+			return
+		}
+	}
+	d.Seen = append(d.Seen, Seen{train, inside, runOut})
+}
+
+// pieceIndex gives the place of a list in Route.Pieces; 0 for a list of one
+// piece that no declaration holds. owners are the declarations by their index in
+// the list that was cut with.
+func (r *Route) pieceIndex(pieces []scope.Piece, owners []int) int {
+	if len(pieces) == 1 && pieces[0].By == scope.Outside {
+		return 0
+	}
+	var key []byte
+	for i := range pieces {
+		p := &pieces[i]
+		if p.By != scope.Outside {
+			p.By = owners[p.By]
+		}
+		for _, v := range [...]int64{int64(p.From), int64(p.To), int64(p.By)} {
+			key = binary.AppendVarint(key, v)
+		}
+		if p.RunOut {
+			key = append(key, 1)
+		} else {
+			key = append(key, 0)
+		}
+	}
+	i, ok := r.pieces[string(key)]
+	if !ok {
+		i = len(r.Pieces)
+		r.pieces[string(key)] = i
+		r.Pieces = append(r.Pieces, pieces)
+	}
+	return i
+}
+
+// rowEnds gives the far ends, in the direction of travel and on the target's
+// track, of the rows that differ and govern a change: for a raise, rows of the
+// base; for a reduction, rows of the target.
+func (r *Route) rowEnds(c *Change) []unit.Distance {
+	if !c.RunOut {
+		return nil
+	}
+	route, sources := r.Base, r.Sources[c.BeforeSources]
+	if !c.Raised() {
+		route, sources = r.Target, r.Sources[c.AfterSources]
+	}
+	var ends []unit.Distance
+	for _, cause := range r.Causes[c.Causes] {
+		f := &r.Files[cause.File]
+		d := &f.Rows[cause.Row]
+		layer, ok := layerOf(f.Path())
+		if !ok {
+			continue
+		}
+		lines := linesOf(f.Tables[d.Table].Old.Rows, d.Old)
+		if !c.Raised() {
+			lines = linesOf(f.Tables[d.Table].New.Rows, d.New)
+		}
+		for _, line := range lines {
+			if !slices.ContainsFunc(sources, func(s profile.Source) bool { return s.Layer == layer && s.Pos.Line == line }) {
+				continue
+			}
+			row := anyRow(route, layer, line)
+			if row == nil {
+				continue
+			}
+			p := row.To
+			if c.Direction == codes.Reverse {
+				p = row.From
+			}
+			if end, err := find(r.Target.Track, p); err == nil {
+				ends = append(ends, end)
+			}
+		}
+	}
+	return ends
+}

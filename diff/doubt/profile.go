@@ -1,0 +1,179 @@
+package doubt
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strings"
+
+	"speedtrail/diff/fleet"
+	"speedtrail/diff/impact"
+	"speedtrail/diff/profile"
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/source"
+	"speedtrail/schema/unit"
+)
+
+// delays looks at missing train length delays.
+func (c *check) delays() {
+	longest := c.longest()
+	for i := range c.route.Places {
+		bridge := &c.route.Places[i]
+		if bridge.Kind != schema.Bridge {
+			continue
+		}
+		over := func(row *schema.Row) bool {
+			return !row.Delay && row.Start < max(bridge.End, bridge.Start+1) && bridge.Start < row.End
+		}
+		for k := range c.route.AxleLoad {
+			if row := &c.route.AxleLoad[k].Row; over(row) {
+				c.add(DelayOverBridge, row, fmt.Sprintf("the axle load restriction over %s ends for the front of a train, whose rear is still on the bridge", bridge.Name))
+			}
+		}
+		for k := range c.route.Temporary {
+			if row := &c.route.Temporary[k].Row; over(row) {
+				c.add(DelayOverBridge, row, fmt.Sprintf("%s over %s ends for the front of a train, whose rear is still on the bridge", c.route.Temporary[k].ID, bridge.Name))
+			}
+		}
+		for k := range c.route.Speed {
+			row := &c.route.Speed[k]
+			if !over(&row.Row) {
+				continue
+			}
+			for _, d := range codes.AllDirections {
+				end, rear := row.End-bridge.End, bridge.End
+				if d == codes.Reverse {
+					end, rear = bridge.Start-row.Start, bridge.Start
+				}
+				if row.Directions.Has(d) && end < longest && c.risesAfter(row, d) > 0 {
+					c.list = append(c.list, Doubt{DelayOverBridge, 1 << d, min(rear, row.Start), max(rear, row.End), row.Pos, fmt.Sprintf(
+						"the speed rises for the front of a train whose rear can still be on %s", bridge.Name)})
+				}
+			}
+		}
+	}
+	for i := range c.route.Speed {
+		for k := range c.route.Speed {
+			a, b := &c.route.Speed[i], &c.route.Speed[k]
+			if a.Delay || !b.Delay || a.Start != b.Start || a.End != b.End || a.Directions&b.Directions != 0 {
+				continue
+			}
+			for _, d := range codes.AllDirections {
+				if a.Directions == 1<<d && c.risesAfter(a, d) > 0 && c.risesAfter(b, 1-d) > 0 {
+					c.add(DelayOneSided, &a.Row, fmt.Sprintf("the speed rises at the end of this stretch without train length delay in direction %s; in direction %s (line %d) it waits for the rear", d, 1-d, b.Pos.Line))
+				}
+			}
+		}
+	}
+}
+
+// risesAfter gives by how much the basic speed, or that of any category, rises
+// where a train leaves a row in a direction of travel.
+func (c *check) risesAfter(row *schema.SpeedRow, d codes.Direction) (rise unit.Speed) {
+	for i := range c.route.Speed {
+		next := &c.route.Speed[i]
+		if !next.Directions.Has(d) || d == codes.Nominal && next.Start != row.End || d == codes.Reverse && next.End != row.Start {
+			continue
+		}
+		for _, t := range c.trains {
+			class := profile.ClassOf(t)
+			rise = max(rise, profile.StaticSpeedOf(next, class)-profile.StaticSpeedOf(row, class))
+		}
+		rise = max(rise, next.Basic-row.Basic)
+	}
+	return rise
+}
+
+// seenBy is a doubtful piece of a profile and who meets it.
+type seenBy struct {
+	from, to   unit.Distance
+	text       string
+	row        source.Position
+	directions codes.Directions
+	trains     []string
+}
+
+// steps looks at the permanent line speeds of the reference trains, without
+// their length: at large steps, and at short stretches between others.
+func (c *check) steps() {
+	if c.limits.LargestStep == 0 && c.limits.ShortestStretch == 0 {
+		return
+	}
+	var steps, short []*seenBy
+	note := func(list *[]*seenBy, s seenBy, d codes.Direction, train string) {
+		i := slices.IndexFunc(*list, func(x *seenBy) bool { return x.from == s.from && x.to == s.to && x.text == s.text })
+		if i < 0 {
+			*list = append(*list, &s)
+			i = len(*list) - 1
+		}
+		x := (*list)[i]
+		x.directions |= 1 << d
+		if !slices.Contains(x.trains, train) {
+			x.trains = append(x.trains, train)
+		}
+	}
+	for _, d := range codes.AllDirections {
+		if !c.route.Directions.Has(d) {
+			continue
+		}
+		compiler := profile.New(c.route, d, profile.NoTemporary)
+		for _, t := range c.trains {
+			t.Length = 0
+			pieces := compiler.Profile(t)
+			for i, p := range pieces {
+				if i > 0 {
+					low, high := pieces[i-1], p
+					if low.Speed > high.Speed {
+						low, high = high, low
+					}
+					if limit := c.limits.LargestStep; limit > 0 && high.Speed-low.Speed > limit {
+						note(&steps, seenBy{from: p.From, to: p.From, row: low.Sources[0].Pos, text: fmt.Sprintf("%d and %d km/h meet, a step of more than %d", pieces[i-1].Speed, p.Speed, limit)}, d, t.ID)
+					}
+				}
+				if limit := c.limits.ShortestStretch; i > 0 && i < len(pieces)-1 && p.To-p.From < limit {
+					note(&short, seenBy{from: p.From, to: p.To, row: p.Sources[0].Pos, text: fmt.Sprintf("%d km/h holds for %s m only, below the %s m of dataset.toml", p.Speed, (p.To - p.From).M(), limit.M())}, d, t.ID)
+				}
+			}
+		}
+	}
+	for id, list := range map[string][]*seenBy{StepSize: steps, ShortStretch: short} {
+		for _, s := range list {
+			c.list = append(c.list, Doubt{id, s.directions, s.from, s.to, s.row, s.text + " (" + strings.Join(s.trains, ", ") + ")"})
+		}
+	}
+}
+
+// crossings looks for approaches that are shorter than their warning time for
+// the fastest train that the standard can describe.
+func (c *check) crossings() {
+	for _, d := range codes.AllDirections {
+		if !c.route.Directions.Has(d) {
+			continue
+		}
+		var compiler *profile.Compiler
+		var kinds []profile.Selection
+		for i := range c.route.Places {
+			p := &c.route.Places[i]
+			from, to, ok := impact.Approach(p, d, c.route.Track.Length())
+			if !ok || p.WarningDS == 0 {
+				continue
+			}
+			if compiler == nil {
+				compiler = profile.New(c.route, d, profile.NoTemporary)
+				kinds = fleet.Selections(compiler)
+			}
+			least := int64(math.MaxInt64)
+			for _, sel := range kinds {
+				least = min(least, impact.ApproachTenths(compiler.Sweep(sel, 0, profile.NoMaximum), from, to))
+			}
+			if least < int64(p.WarningDS) {
+				c.list = append(c.list, Doubt{CrossingWarning, 1 << d, p.Start, p.End, p.Pos, fmt.Sprintf(
+					"the fastest train that the rows admit, without temporary restrictions, is at %s %s s after its strike-in point; the crossing needs %s s",
+					p.Name, tenths(least), tenths(int64(p.WarningDS)))})
+			}
+		}
+	}
+}
+
+func tenths(n int64) string { return fmt.Sprintf("%d.%d", n/10, n%10) }

@@ -1,0 +1,184 @@
+package doubt
+
+import (
+	"fmt"
+	"strings"
+
+	"speedtrail/diff/impact"
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// speedRows looks at the categories of each element of the static speed
+// profile.
+func (c *check) speedRows() {
+	for i := range c.route.Speed {
+		row := &c.route.Speed[i]
+		// A train of a higher category gets the speed of the highest category
+		// at or below its own (SUBSET-026 3.11.3.2.3): a lower speed for a
+		// higher category slows the better train.
+		last, name := row.Basic, "basic"
+		for k := range codes.CantDeficiency(codes.CantDeficiencies) {
+			v := row.Cant[k]
+			if v == 0 {
+				continue
+			}
+			if v < last {
+				c.add(CategoryOrder, &row.Row, fmt.Sprintf("%s is %d km/h, below the %d km/h of %s", k.Column(), v, last, name))
+			}
+			last, name = v, k.Column()
+		}
+	}
+}
+
+// mass is what a category admits: axle load in tenths of a tonne and mass per
+// length in tenths of a tonne per metre. The categories of EN 15528 are from
+// memory of its edition of 2021, table 1; D4XL is taken as D4 and HS17 as 17 t
+// with little mass per length (common practice, no source). The figures only
+// decide whether a question is asked.
+var mass = map[string][2]int{
+	"A": {160, 50}, "HS17": {170, 50}, "B1": {180, 50}, "B2": {180, 64}, "C2": {200, 64}, "C3": {200, 72}, "C4": {200, 80},
+	"D2": {225, 64}, "D3": {225, 72}, "D4": {225, 80}, "D4XL": {225, 80}, "E4": {250, 80}, "E5": {250, 88},
+}
+
+// lighter tells whether a category is lighter than another in the one or the
+// other respect and heavier in none. The categories are not strictly ordered.
+func lighter(a, b codes.AxleLoad) bool {
+	x, y := mass[a.String()], mass[b.String()]
+	return x != y && x[0] <= y[0] && x[1] <= y[1]
+}
+
+// axleLoadRows looks at the order and the completeness of axle load rows.
+func (c *check) axleLoadRows() {
+	for i := range c.route.AxleLoad {
+		row := &c.route.AxleLoad[i]
+		for heavy := range codes.AxleLoad(codes.AxleLoads) {
+			for light := range codes.AxleLoad(codes.AxleLoads) {
+				h, l := row.Limit[heavy], row.Limit[light]
+				if h != 0 && l != 0 && lighter(light, heavy) && h > l {
+					c.add(AxleLoadOrder, &row.Row, fmt.Sprintf("%s may run at %d km/h, the lighter %s at %d", heavy, h, light, l))
+				}
+			}
+		}
+		c.missing(row)
+	}
+}
+
+// missing finds categories of reference trains that a row leaves out, although
+// it restricts a category that is not heavier: they get no restriction at all
+// (SUBSET-026 3.11.4.3, .3.1). A category that is lighter than all that the row
+// restricts is left out for good reason.
+func (c *check) missing(row *schema.AxleLoadRow) {
+	var names []string
+	for a := range codes.AxleLoad(codes.AxleLoads) {
+		if row.Limit[a] != 0 {
+			continue
+		}
+		lightest := true
+		given := false
+		for b := range codes.AxleLoad(codes.AxleLoads) {
+			if row.Limit[b] != 0 {
+				given = true
+				lightest = lightest && lighter(a, b)
+			}
+		}
+		if !given || lightest {
+			continue
+		}
+		for _, t := range c.trains {
+			if t.AxleLoad == a {
+				names = append(names, a.String()+" ("+t.ID+")")
+				break
+			}
+		}
+	}
+	if len(names) > 0 {
+		c.add(AxleLoadMissing, &row.Row, "no speed for "+strings.Join(names, ", ")+", which the row then does not restrict")
+	}
+}
+
+// temporaryRows looks for temporary restrictions that do nothing.
+func (c *check) temporaryRows() {
+	for i := range c.route.Temporary {
+		row := &c.route.Temporary[i]
+		if !row.Valid.Until.IsZero() && !row.Valid.Until.After(c.at) {
+			c.add(TemporaryExpired, &row.Row, fmt.Sprintf("%s, %d km/h, was valid to %s", row.ID, row.Speed, row.Valid.WrittenTo))
+		}
+		if highest := c.highest(&row.Row); row.Speed >= highest && highest > 0 {
+			c.add(TemporaryNoEffect, &row.Row, fmt.Sprintf("%s, %d km/h, is nowhere below the line speed, at most %d km/h here for any train", row.ID, row.Speed, highest))
+		}
+	}
+}
+
+// highest is the highest speed that speed.csv gives to any train anywhere on a
+// row's stretch and in its directions.
+func (c *check) highest(row *schema.Row) (highest unit.Speed) {
+	for i := range c.route.Speed {
+		s := &c.route.Speed[i]
+		if s.Start >= row.End || row.Start >= s.End || s.Directions&row.Directions == 0 {
+			continue
+		}
+		highest = max(highest, s.Basic)
+		for _, v := range s.Cant {
+			highest = max(highest, v)
+		}
+		for _, v := range s.Other {
+			highest = max(highest, v)
+		}
+	}
+	return highest
+}
+
+// curves looks at the speeds on curves.
+func (c *check) curves() {
+	for i := range c.route.Curves {
+		curve := &c.route.Curves[i]
+		var slowest unit.Speed
+		for k := range c.route.Speed {
+			row := &c.route.Speed[k]
+			from, to := max(row.Start, curve.Start), min(row.End, curve.End)
+			if from >= to {
+				continue
+			}
+			for cat := range codes.CantDeficiency(codes.CantDeficiencies) {
+				v := row.Cant[cat]
+				if v > row.Basic && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM()) {
+					c.list = append(c.list, Doubt{CurveSpeed, row.Directions & c.route.Directions, from, to, row.Pos, fmt.Sprintf(
+						"%s is %d km/h; on the curve of %d m with %d mm of cant (%s) that is a cant deficiency of %s mm, and %d mm carry %d km/h",
+						cat.Column(), v, curve.RadiusM, curve.CantMM, place(curve.Pos.File, curve.Pos.Line),
+						hundredths(impact.CantDeficiency(v, curve.RadiusM, curve.CantMM)), cat.MM(),
+						impact.SpeedForCantDeficiency(curve.RadiusM, curve.CantMM, cat.MM()))})
+				}
+			}
+			if slowest == 0 || row.Basic < slowest {
+				slowest = row.Basic
+			}
+			for _, v := range row.Other {
+				if v != 0 {
+					slowest = min(slowest, v)
+				}
+			}
+		}
+		for _, t := range c.trains {
+			slowest = min(slowest, t.Max)
+		}
+		if limit := c.limits.CantExcessMM; limit > 0 && slowest > 0 && impact.CantExcessAbove(slowest, curve.RadiusM, curve.CantMM, limit) {
+			c.add(CantExcess, &curve.Row, fmt.Sprintf("at %d km/h, the lowest line speed of a reference train, the cant of %d mm on %d m is an excess of %s mm; the limit of dataset.toml is %d",
+				slowest, curve.CantMM, curve.RadiusM, hundredths(-impact.CantDeficiency(slowest, curve.RadiusM, curve.CantMM)), limit))
+		}
+	}
+}
+
+func place(file string, line int) string {
+	return fmt.Sprintf("%s:%d", file[strings.LastIndexByte(file, '/')+1:], line)
+}
+
+// hundredths writes hundredths of a millimetre as millimetres.
+func hundredths(n int64) string {
+	sign := ""
+	if n < 0 {
+		sign, n = "-", -n
+	}
+	return fmt.Sprintf("%s%d.%02d", sign, n/100, n%100)
+}

@@ -1,0 +1,263 @@
+package diff
+
+import (
+	"cmp"
+	"math"
+	"slices"
+
+	"speedtrail/diff/align"
+	"speedtrail/diff/delta"
+	"speedtrail/diff/fleet"
+	"speedtrail/diff/impact"
+	"speedtrail/diff/profile"
+	"speedtrail/diff/step"
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// Figures are what goes with the changes of a route: aids for the reader, by
+// the formulas of package impact.
+type Figures struct {
+	Runs      []RunTime  // of the trains that change and whose data allow it
+	Crossings []Crossing // whose approach time changes
+	Curves    []Curve    // on which the highest speed of a train, or the curve itself, changes
+	Short     []ShortRaise
+}
+
+// RunTime is the running time of a train over the whole route.
+type RunTime struct {
+	Direction     codes.Direction
+	Train         int
+	Before, After int64 // tenths of a second
+	// Parts say where the difference comes from; their gains add up to Before -
+	// After exactly. None where the tracks of the revisions differ.
+	Parts []Part
+}
+
+// Part is a stretch of the target's track and the time gained on it, in tenths
+// of a second, below zero for time lost.
+type Part struct {
+	From, To unit.Distance
+	Gain     int64
+}
+
+// Crossing is the approach to a level crossing by the fastest train that the
+// standard can describe, without length and maximum speed.
+type Crossing struct {
+	Direction codes.Direction
+	Place     *schema.PlaceRow // of the target
+	// Permanent: without temporary restrictions. Given where it is another time.
+	Permanent     bool
+	Before, After int64 // tenths of a second, rounded down; Before -1 where the base's track differs here
+}
+
+// Curve is the cant deficiency on a curve for the trains of equal speeds and
+// category.
+type Curve struct {
+	Direction     codes.Direction
+	Row           *schema.CurveRow // of the target
+	Old           *schema.CurveRow // of the base at the same place; nil where it has none
+	Trains        []int
+	Category      codes.CantDeficiency
+	Before, After unit.Speed // the highest in the curve; Before 0 where the base's track differs here
+	// Lowest is the lowest speed after the change in the curve of any reference
+	// train, for the cant excess, and Slowest that train.
+	Lowest  unit.Speed
+	Slowest int
+}
+
+// ShortRaise is a raise that a train cannot use in full: it must brake again
+// before it has reached the new speed.
+type ShortRaise struct {
+	Direction codes.Direction
+	Train     int
+	From, To  unit.Distance // of the piece of the profile after the change
+	Speed     unit.Speed    // after the change
+	Reached   unit.Speed    // whole km/h, rounded down
+	Needed    unit.Distance // the length of piece at which it would just be reached
+}
+
+// figures computes the figures of one direction of travel.
+func (p *pair) figures(trains []Train, rolling bool) {
+	f := &p.route.Figures
+	for i, t := range trains {
+		m := impact.Motion{Acceleration: t.Acceleration, Braking: t.Braking, Rolling: rolling}
+		if s := p.sights[i]; m.Given() && len(s.changes) > 0 {
+			p.running(f, i, s, m)
+		}
+	}
+	p.crossings(f)
+	p.curves(f, trains)
+}
+
+// inTravel turns a profile into the order of travel.
+func (p *pair) inTravel(f step.Func) step.Func {
+	if p.direction == codes.Reverse {
+		return impact.Mirrored(f)
+	}
+	return f
+}
+
+func (p *pair) running(f *Figures, train int, s *sight, m impact.Motion) {
+	before, after := impact.NewRun(p.inTravel(s.before), m), impact.NewRun(p.inTravel(s.after), m)
+	run := RunTime{Direction: p.direction, Train: train, Before: before.Tenths(), After: after.Tenths()}
+	length := p.route.Target.Track.Length()
+	same := len(p.cells) == 1 && p.cells[0] == align.Cell{Length: length} && p.route.Base.Track.Length() == length
+	// travelled gives how far along the way a place of the target's track lies.
+	travelled := func(at unit.Distance) unit.Distance {
+		if p.direction == codes.Reverse {
+			return length - at
+		}
+		return at
+	}
+	if same {
+		limits := middles(s.changes, length)
+		if p.direction == codes.Reverse {
+			slices.Reverse(limits)
+		}
+		sofar := int64(0)
+		for k := range len(limits) - 1 {
+			gained := run.Before - run.After
+			if k < len(limits)-2 {
+				at := travelled(limits[k+1])
+				gained = tenths(before.At(at)) - tenths(after.At(at))
+			}
+			run.Parts = append(run.Parts, Part{min(limits[k], limits[k+1]), max(limits[k], limits[k+1]), gained - sofar})
+			sofar = gained
+		}
+		slices.SortFunc(run.Parts, func(a, b Part) int { return cmp.Compare(a.From, b.From) })
+	}
+	f.Runs = append(f.Runs, run)
+	for _, c := range s.changes {
+		if c.After < c.Before {
+			continue
+		}
+		cur := s.after.CursorAt(c.Target)
+		piece := cur.Piece()
+		middle := travelled(piece.From + (piece.To-piece.From)/2)
+		reached, needed := after.Peak(middle)
+		if reached < int64(piece.Speed)*2500/9 {
+			short := ShortRaise{p.direction, train, piece.From, piece.To, piece.Speed, unit.Speed(reached * 9 / 2500), needed}
+			if n := len(f.Short); n == 0 || f.Short[n-1] != short {
+				f.Short = append(f.Short, short)
+			}
+		}
+	}
+}
+
+// middles cuts a track half way between changes that lie apart.
+func middles(changes []delta.Delta, length unit.Distance) []unit.Distance {
+	limits := []unit.Distance{0}
+	for i := 1; i < len(changes); i++ {
+		end, start := changes[i-1].Target+changes[i-1].Length, changes[i].Target
+		if start-end >= joinGap {
+			limits = append(limits, end+(start-end)/2)
+		}
+	}
+	return append(limits, length)
+}
+
+func tenths(seconds float64) int64 { return int64(math.Floor(float64(seconds*10) + 0.5)) }
+
+// onBase gives where a stretch of the target's track lies on the base's; false
+// where that is not in one piece there.
+func (p *pair) onBase(from, to unit.Distance) (unit.Distance, bool) {
+	for _, c := range p.cells {
+		if c.Target <= from && to <= c.Target+c.Length {
+			return c.Base + from - c.Target, true
+		}
+	}
+	return 0, false
+}
+
+func (p *pair) crossings(f *Figures) {
+	route := p.route.Target
+	var kinds map[*profile.Compiler][]step.Func // fastest profiles, made when first needed
+	fastest := func(c *profile.Compiler, from, to unit.Distance) int64 {
+		if kinds == nil {
+			kinds = map[*profile.Compiler][]step.Func{}
+		}
+		if kinds[c] == nil {
+			for _, sel := range fleet.Selections(c) {
+				kinds[c] = append(kinds[c], c.Sweep(sel, 0, profile.NoMaximum))
+			}
+		}
+		least := int64(math.MaxInt64)
+		for _, k := range kinds[c] {
+			least = min(least, impact.ApproachTenths(k, from, to))
+		}
+		return least
+	}
+	for i := range route.Places {
+		place := &route.Places[i]
+		from, to, ok := impact.Approach(place, p.direction, route.Track.Length())
+		if !ok {
+			continue
+		}
+		base, onBase := p.onBase(from, to)
+		compute := func(s sides) Crossing {
+			c := Crossing{Direction: p.direction, Place: place, Before: -1, After: fastest(s.target, from, to)}
+			if onBase {
+				c.Before = fastest(s.base, base, base+to-from)
+			}
+			return c
+		}
+		now := compute(p.all)
+		if now.Before != now.After {
+			f.Crossings = append(f.Crossings, now)
+		}
+		if p.temporary {
+			later := compute(p.permanent)
+			later.Permanent = true
+			if later.Before != later.After && (later.Before != now.Before || later.After != now.After) {
+				f.Crossings = append(f.Crossings, later)
+			}
+		}
+	}
+}
+
+func (p *pair) curves(f *Figures, trains []Train) {
+	for i := range p.route.Target.Curves {
+		row := &p.route.Target.Curves[i]
+		base, onBase := p.onBase(row.Start, row.End)
+		var old *schema.CurveRow
+		if onBase {
+			for k := range p.route.Base.Curves {
+				if c := &p.route.Base.Curves[k]; samePlace(&c.Row, &row.Row) {
+					old = c
+				}
+			}
+		}
+		altered := old == nil || old.RadiusM != row.RadiusM || old.CantMM != row.CantMM
+		first, lowest, slowest := len(f.Curves), unit.Speed(0), 0
+		for t := range trains {
+			c := Curve{Direction: p.direction, Row: row, Old: old, Trains: []int{t}, Category: trains[t].Cant}
+			var low unit.Speed
+			c.After, low = impact.Extremes(p.sights[t].after, row.Start, row.End)
+			if onBase {
+				c.Before, _ = impact.Extremes(p.sights[t].before, base, base+row.End-row.Start)
+			}
+			if lowest == 0 || low < lowest {
+				lowest, slowest = low, t
+			}
+			if c.Before == c.After && !altered {
+				continue
+			}
+			same := func(x Curve) bool { return x.Category == c.Category && x.Before == c.Before && x.After == c.After }
+			if k := slices.IndexFunc(f.Curves[first:], same); k >= 0 {
+				f.Curves[first+k].Trains = append(f.Curves[first+k].Trains, t)
+				continue
+			}
+			f.Curves = append(f.Curves, c)
+		}
+		for k := first; k < len(f.Curves); k++ {
+			f.Curves[k].Lowest, f.Curves[k].Slowest = lowest, slowest
+		}
+	}
+}
+
+// samePlace tells whether two rows are for the same stretch.
+func samePlace(a, b *schema.Row) bool {
+	return first(a.From) == first(b.From) && first(a.To) == first(b.To)
+}

@@ -1,0 +1,155 @@
+package diff
+
+import (
+	"cmp"
+	"slices"
+
+	"speedtrail/diff/align"
+	"speedtrail/diff/delta"
+	"speedtrail/diff/fleet"
+	"speedtrail/diff/profile"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// Fleet is the account of a route and direction of travel for every train that
+// the standard can describe.
+type Fleet struct {
+	Direction codes.Direction
+	// Permanent: without temporary restrictions. Then Changes holds those only
+	// that are not the same with them.
+	Permanent bool
+	Shortest  unit.Distance // the lengths for which changes are given: those of
+	Longest   unit.Distance // the shortest and of the longest reference train
+	Changes   []FleetChange
+	// Reach covers every point at which a train of any kind and any length up
+	// to the longest sees a change; on the target's track.
+	Reach []align.Interval
+}
+
+// FleetChange is a change that products of category sets see.
+type FleetChange struct {
+	delta.Delta
+	Lengths  []unit.Distance // of trains for which it was found, ascending
+	Products []fleet.Product
+	// Represented tells of each product whether a reference train of its
+	// categories sees the change.
+	Represented []bool
+}
+
+// fleet compares the sides for every train, with and without temporary
+// restrictions.
+func (p *pair) fleet(trains []Train) []Fleet {
+	if len(trains) == 0 {
+		return nil
+	}
+	lengths := make([]unit.Distance, len(trains))
+	for i, t := range trains {
+		lengths[i] = t.Length
+	}
+	shortest, longest := slices.Min(lengths), slices.Max(lengths)
+	asked := slices.Compact([]unit.Distance{shortest, longest})
+	var list []Fleet
+	for _, permanent := range []bool{false, true} {
+		filter := profile.All
+		if permanent {
+			if !p.temporary {
+				break
+			}
+			filter = profile.NoTemporary
+		}
+		found := fleet.Compare(p.route.Base, p.route.Target, p.direction, p.cells, filter, asked)
+		f := Fleet{Direction: p.direction, Permanent: permanent, Shortest: shortest, Longest: longest, Reach: found.Reach, Changes: joinLengths(found.Changes)}
+		if permanent {
+			f.Changes = slices.DeleteFunc(f.Changes, func(c FleetChange) bool { return slices.ContainsFunc(list[0].Changes, c.same) })
+			if len(f.Changes) == 0 && slices.Equal(f.Reach, list[0].Reach) {
+				break
+			}
+		}
+		p.represent(&f, trains)
+		list = append(list, f)
+	}
+	return list
+}
+
+func (c FleetChange) same(d FleetChange) bool {
+	return c.Delta == d.Delta && slices.Equal(c.Lengths, d.Lengths) && slices.Equal(c.Products, d.Products)
+}
+
+// joinLengths joins changes that trains of several lengths see alike.
+func joinLengths(changes []fleet.Change) []FleetChange {
+	var list []FleetChange
+	for _, c := range changes {
+		i := slices.IndexFunc(list, func(f FleetChange) bool { return f.Delta == c.Delta && slices.Equal(f.Products, c.Products) })
+		if i < 0 {
+			list = append(list, FleetChange{Delta: c.Delta, Lengths: []unit.Distance{c.TrainLength}, Products: c.Products})
+			continue
+		}
+		list[i].Lengths = append(list[i].Lengths, c.TrainLength)
+	}
+	slices.SortStableFunc(list, func(a, b FleetChange) int {
+		return cmp.Or(cmp.Compare(a.Target, b.Target), cmp.Compare(a.Length, b.Length), cmp.Compare(a.Before, b.Before), cmp.Compare(a.After, b.After))
+	})
+	return list
+}
+
+// shown is a change that a reference train shows: of its own, and as it would
+// be without its maximum speed.
+type shown struct {
+	class    profile.Class
+	from, to unit.Distance
+	raised   bool
+	// without a maximum speed, in the stretch of the reach:
+	part          int
+	before, after unit.Speed
+}
+
+// represent finds the products of which a reference train sees the change: it
+// changes in the same sense on a part of the same place; or it sees, as far as
+// its maximum speed lets it, the same speeds change elsewhere on the same
+// connected stretch, where its length carries the change.
+func (p *pair) represent(f *Fleet, trains []Train) {
+	s := p.all
+	if f.Permanent {
+		s = p.permanent
+	}
+	partOf := func(at unit.Distance) int {
+		return slices.IndexFunc(f.Reach, func(i align.Interval) bool { return i.From <= at && at < i.To })
+	}
+	var list []shown
+	for i, t := range trains {
+		seen := p.sights[i].changes
+		if f.Permanent {
+			seen = append(slices.Clone(seen), p.sights[i].masked...)
+		}
+		if len(seen) == 0 {
+			continue
+		}
+		class := profile.ClassOf(t.Train)
+		_, _, free := s.compare(s.base.Select(class), s.target.Select(class), t.Length, profile.NoMaximum, p.cells)
+		for _, c := range seen {
+			list = append(list, shown{class: class, from: c.Target, to: c.Target + c.Length, raised: c.After > c.Before, part: -1})
+			for _, u := range free {
+				if u.Target < c.Target+c.Length && c.Target < u.Target+u.Length && (u.After > u.Before) == (c.After > c.Before) {
+					list = append(list, shown{class: class, raised: c.After > c.Before, part: partOf(u.Target), before: u.Before, after: u.After})
+				}
+			}
+		}
+	}
+	for i := range f.Changes {
+		c := &f.Changes[i]
+		raised := c.After > c.Before
+		c.Represented = make([]bool, len(c.Products))
+		for k, product := range c.Products {
+			c.Represented[k] = slices.ContainsFunc(list, func(x shown) bool {
+				if x.raised != raised || !product.Has(x.class) {
+					return false
+				}
+				if x.part >= 0 {
+					return x.before == c.Before && x.after == c.After && x.part == partOf(c.Target)
+				}
+				return x.from < c.Target+c.Length && c.Target < x.to
+			})
+		}
+	}
+}

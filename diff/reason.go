@@ -1,0 +1,172 @@
+package diff
+
+import (
+	"path"
+	"slices"
+
+	"speedtrail/diff/profile"
+	"speedtrail/diff/rows"
+	"speedtrail/diff/written"
+	"speedtrail/schema/codes"
+)
+
+// Reason says why no change comes of a difference.
+type Reason uint8
+
+// The reasons.
+const (
+	NoReason        Reason = iota // a change comes of it
+	SameValue                     // the same values, written otherwise
+	OnlyText                      // a note, a name or a reason
+	OnlyValidity                  // the dates of a temporary restriction, and perhaps texts
+	SameForAll                    // the rows say the same for every train
+	NoSuchTrain                   // no reference train is of a category that it concerns
+	LowerElsewhere                // another restriction is lower for every reference train that it concerns
+	HiddenToday                   // temporary restrictions hide it
+	NoSpeed                       // a curve, a gradient, a place
+	NotTheTrack                   // reference trains, requests, policy, settings
+	TrackUnaffected               // the track is the same for trains
+)
+
+// String words the reason.
+func (r Reason) String() string {
+	return [...]string{
+		"", "the same values, written otherwise", "only a text differs",
+		"only the validity differs; all temporary restrictions count, whatever their dates",
+		"the rows say the same for every train", "no reference train is of a category that it concerns",
+		"another restriction is lower for every reference train that it concerns",
+		"hidden today by temporary restrictions on every place that it concerns", "it holds no speed",
+		"it is not part of the track", "no speed depends on it",
+	}[r]
+}
+
+// texts are the columns and keys that only people read.
+var texts = []string{"note", "reason", "name", "id"}
+
+// explain gives every difference of the route that no change comes of its
+// reason.
+func (r *Route) explain(trains []Train) {
+	for _, list := range [...]struct {
+		changes []Change
+		mark    func(*RowDifference)
+	}{
+		{r.Changes, func(d *RowDifference) { d.Causes = true }},
+		{r.Masked, func(d *RowDifference) { d.Masks = true }},
+	} {
+		seen := make([]bool, len(r.Causes))
+		for i := range list.changes {
+			seen[list.changes[i].Causes] = true
+		}
+		for i, causes := range r.Causes {
+			if !seen[i] {
+				continue
+			}
+			for _, c := range causes {
+				list.mark(&r.Files[c.File].Rows[c.Row])
+			}
+		}
+	}
+	if len(r.Track) > 0 {
+		for _, c := range r.causes.track {
+			r.Files[c.File].Rows[c.Row].Track = true
+		}
+		if r.Base == nil || r.Target == nil {
+			for i := range r.Files {
+				for k := range r.Files[i].Rows {
+					r.Files[i].Rows[k].Track = true
+				}
+			}
+		}
+	}
+	for i := range r.Files {
+		f := &r.Files[i]
+		for k := range f.Rows {
+			if d := &f.Rows[k]; !d.Causes && !d.Track {
+				d.Reason = r.reason(Cause{i, k}, trains)
+			}
+		}
+	}
+}
+
+func (r *Route) reason(c Cause, trains []Train) Reason {
+	f := &r.Files[c.File]
+	d := &f.Rows[c.Row]
+	layer, speeds := layerOf(f.Path())
+	within := func(known ...string) bool {
+		columns := f.Columns(d)
+		return (d.Kind != rows.Added && d.Kind != rows.Removed) && !slices.ContainsFunc(columns, func(c string) bool { return !slices.Contains(known, c) })
+	}
+	switch {
+	case d.Kind == rows.Altered && f.sameValues(d):
+		return SameValue
+	case within(texts...) && d.Kind == rows.Altered:
+		return OnlyText
+	case path.Base(f.Path()) == "route.toml":
+		return TrackUnaffected
+	case !speeds:
+		return NoSpeed
+	case layer == profile.Temporary && within(append(slices.Clone(texts), "valid_from", "valid_to")...):
+		return OnlyValidity
+	case d.Masks:
+		return HiddenToday
+	}
+	for _, t := range trains {
+		for _, direction := range codes.AllDirections {
+			if r.causes.hasEffect(c, direction, profile.ClassOf(t.Train)) {
+				return LowerElsewhere
+			}
+		}
+	}
+	if r.concernsSome(c) {
+		return NoSuchTrain
+	}
+	return SameForAll
+}
+
+// concernsSome tells whether a difference restricts any train that the standard
+// can describe otherwise than before.
+func (r *Route) concernsSome(c Cause) bool {
+	return r.concerns(c, codes.Nominal) || r.concerns(c, codes.Reverse)
+}
+
+// concerns tells the same of one direction of travel.
+func (r *Route) concerns(c Cause, direction codes.Direction) bool {
+	for cant := range codes.CantDeficiency(codes.CantDeficiencies) {
+		for set := range codes.CategorySet(codes.CategorySets) {
+			if r.causes.hasEffect(c, direction, profile.Class{Cant: cant, Categories: set}) {
+				return true
+			}
+		}
+	}
+	for axle := range codes.AxleLoad(codes.AxleLoads) {
+		if r.causes.hasEffect(c, direction, profile.Class{AxleLoad: axle}) {
+			return true
+		}
+	}
+	return false
+}
+
+// sameValues tells whether all cells of a difference mean what they meant.
+func (f *File) sameValues(d *RowDifference) bool {
+	t := &f.Tables[d.Table]
+	for _, c := range d.Cells {
+		if !written.SameValue(t.Old.Rows[c.Old].Cells[c.Column], t.New.Rows[c.New].Cells[c.Column]) {
+			return false
+		}
+	}
+	return true
+}
+
+// explainFrame gives the differences outside the routes their reason.
+func explainFrame(files []File) {
+	for i := range files {
+		f := &files[i]
+		for k := range f.Rows {
+			d := &f.Rows[k]
+			d.Reason = NotTheTrack
+			if d.Kind == rows.Altered && f.sameValues(d) {
+				d.Reason = SameValue
+			}
+		}
+	}
+}

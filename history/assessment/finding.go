@@ -1,0 +1,275 @@
+package assessment
+
+import (
+	"cmp"
+	"fmt"
+	"slices"
+	"strings"
+
+	"speedtrail/diff"
+	"speedtrail/diff/doubt"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// The ids of the findings that nobody can accept.
+const (
+	Outside           = "outside"
+	Unseen            = "unseen"
+	NotRepresented    = "not-represented"
+	Masked            = "masked"
+	PolicyChanged     = "policy-changed"
+	AcceptedChanged   = "accepted-changed"
+	BaseNotAncestor   = "base-not-ancestor"
+	TrainsChanged     = "trains-changed"
+	RunOutLeavesRoute = "run-out-leaves-route"
+)
+
+// order is the one in which findings are looked at: what is wrong with the
+// comparison as a whole, what moves a speed unannounced, what nobody sees, what
+// is announced and did not happen, the rest.
+var order = append([]string{
+	BaseNotAncestor, PolicyChanged, AcceptedChanged, Outside, Masked, NotRepresented, TrainsChanged, Unseen, RunOutLeavesRoute,
+}, doubt.IDs...)
+
+// explained says of each kind why it matters and what to do.
+var explained = map[string][2]string{
+	Outside: {"Nobody has asked for this change, and nobody may have looked at it.",
+		"Find out whether it is meant; declare it in a change request, or take it back."},
+	Unseen: {"What was asked for has not happened, or somewhere else.",
+		"Look whether the row, the route, the sense or the trains of the declaration are the ones that were meant."},
+	NotRepresented: {"A train of this kind that runs, or will run, is faster or slower, and no reference train shows it.",
+		"Add the train below to trains.toml, or see that no such train runs here."},
+	Masked: {"The change is hidden by temporary restrictions today and appears when they end.",
+		"Have it declared and checked like any other change."},
+	PolicyChanged: {"Who may approve changes is itself changed here.",
+		"Have the people checked who may sign; the policy of the base decides about this change."},
+	AcceptedChanged: {"A change cannot accept its own findings.",
+		"Have the entry looked at by itself; it counts from the next change on."},
+	BaseNotAncestor: {"The target does not hold everything that the base holds: changes of the base can silently be undone.",
+		"Compare with the last common release, or merge the base into the target first."},
+	TrainsChanged: {"The trains that everything is looked at with are not those of the base.",
+		"Have the change of the train declared by name with effect \"any\", and look at what the former train would have shown."},
+	RunOutLeavesRoute: {"The row holds for the length of a train beyond the end of the route; the neighbouring route is not looked at.",
+		"Look at the neighbouring route by hand."},
+	doubt.CurveSpeed: {"A train of the category would run with more cant deficiency than it admits.",
+		"Check radius, cant and speed against the design."},
+	doubt.CantExcess: {"Slow trains load the inner rail of the curve beyond the limit of the network.",
+		"Check cant and speed against the design."},
+	doubt.CategoryOrder: {"A train that admits more cant deficiency would be slower than one that admits less.",
+		"Check whether the two cells are exchanged or one is outdated."},
+	doubt.AxleLoadOrder: {"A heavier train may run faster than a lighter one; the categories are not strictly ordered, so this is a question.",
+		"Check the row against the assessment of the structure."},
+	doubt.AxleLoadMissing: {"A category without a speed is not restricted at all (SUBSET-026 3.11.4.3): the row binds other trains, not this one.",
+		"Give the category its speed, or accept the gap."},
+	doubt.ShortStretch: {"A speed that holds for so short a stretch is often the remainder of another change.",
+		"Check whether the row is still meant."},
+	doubt.StepSize: {"A step of this size is often a mistyped speed.",
+		"Check both speeds."},
+	doubt.TemporaryExpired: {"The restriction still slows the computed profiles, or it is still needed and its dates are not.",
+		"Remove the row or correct its dates."},
+	doubt.TemporaryNoEffect: {"The restriction protects nothing.",
+		"Check its speed and place."},
+	doubt.DelayOverBridge: {"A train can accelerate while its rear still loads the bridge.",
+		"Check train_length_delay."},
+	doubt.DelayOneSided: {"The same stretch lets go of trains earlier in one direction than in the other.",
+		"Check train_length_delay of both rows."},
+	doubt.CrossingWarning: {"Road users would be warned too late.",
+		"Check speed, strike-in and warning time; permanent speeds decide, temporary restrictions end."},
+}
+
+// collector gathers findings.
+type collector struct {
+	in   *Input
+	doc  *Computed
+	list []ranked
+}
+
+// ranked is a finding with what it is sorted by.
+type ranked struct {
+	Finding
+	raised, structure bool
+	step              int
+}
+
+// findings lists what needs eyes, in the order in which to look, and the entries
+// of accepted.toml.
+func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
+	c := &collector{in: in, doc: doc}
+	if !in.BaseIsAncestor {
+		c.add(ranked{Finding: Finding{ID: BaseNotAncestor, Text: "the base is not part of the target's history"}})
+	}
+	c.policy()
+	c.trains()
+	for i := range in.Account.Routes {
+		c.route(i)
+	}
+	c.requests()
+	c.joinDirections()
+	acceptances := c.accept()
+	slices.SortStableFunc(c.list, func(a, b ranked) int {
+		return cmp.Or(
+			before(a.Accepted == "", b.Accepted == ""),
+			cmp.Compare(slices.Index(order, a.ID), slices.Index(order, b.ID)),
+			before(a.raised, b.raised), before(a.structure, b.structure), cmp.Compare(b.step, a.step),
+		)
+	})
+	list := make([]Finding, len(c.list))
+	for i, f := range c.list {
+		list[i] = f.Finding
+	}
+	return list, acceptances
+}
+
+// joinDirections makes one finding of two that say the same of both directions
+// of travel.
+func (c *collector) joinDirections() {
+	var list []ranked
+	for _, f := range c.list {
+		if i := slices.IndexFunc(list, func(g ranked) bool { return f.otherDirection(g.Finding) }); i >= 0 {
+			list[i].Direction = codes.Both.String()
+			continue
+		}
+		list = append(list, f)
+	}
+	c.list = list
+}
+
+// otherDirection tells whether a finding says the same of the other direction of
+// travel.
+func (f ranked) otherDirection(g Finding) bool {
+	one, other := codes.Nominal.String(), codes.Reverse.String()
+	if !(f.Direction == one && g.Direction == other || f.Direction == other && g.Direction == one) {
+		return false
+	}
+	g.Direction = f.Direction
+	return f.Finding == g
+}
+
+// before sorts what is true first.
+func before(a, b bool) int {
+	switch {
+	case a == b:
+		return 0
+	case a:
+		return -1
+	}
+	return 1
+}
+
+func (c *collector) add(f ranked) {
+	f.Why, f.Do = explained[f.ID][0], explained[f.ID][1]
+	c.list = append(c.list, f)
+}
+
+// policy finds changes of the files that decide about changes.
+func (c *collector) policy() {
+	for _, f := range c.doc.Source {
+		switch name := cmp.Or(f.Target, f.Base); name {
+		case "signoff.toml", "allowed_signers":
+			c.add(ranked{Finding: Finding{ID: PolicyChanged, Row: name, Text: name + " differs" + noteWords(f.Note)}})
+		}
+	}
+	for _, a := range c.in.Target.Accepted {
+		if !c.inBase(a) {
+			c.add(ranked{Finding: Finding{
+				ID: AcceptedChanged, Route: a.Route, From: a.Span.From.String(), To: a.Span.To.String(), Row: fmt.Sprintf("%s:%d", a.Pos.File, a.Pos.Line),
+				Text: "an entry of accepted.toml for " + a.Finding + " is new or altered: " + a.Reason,
+			}})
+		}
+	}
+}
+
+func noteWords(note string) string {
+	if note == "" {
+		return ""
+	}
+	return " (" + note + ")"
+}
+
+// trains finds reference trains that differ and that nobody declares.
+func (c *collector) trains() {
+	for _, t := range c.in.Account.Trains {
+		if t.Fate == diff.Kept || t.Declared {
+			continue
+		}
+		text := fmt.Sprintf("reference train %s is %s", t.ID, t.Fate)
+		if t.Fate == diff.Altered {
+			text += ": " + strings.Join(definitionChanges(definition(t.Before), definition(t.Train)), ", ")
+		}
+		c.add(ranked{Finding: Finding{ID: TrainsChanged, Row: fmt.Sprintf("%s:%d", t.Pos.File, t.Pos.Line), Text: text}})
+	}
+}
+
+// definitionChanges words how a train differs.
+func definitionChanges(a, b *Definition) []string {
+	var list []string
+	add := func(name, x, y string) {
+		if x != y {
+			list = append(list, fmt.Sprintf("%s %s now %s", name, cmp.Or(x, "none"), cmp.Or(y, "none")))
+		}
+	}
+	add("name", a.Name, b.Name)
+	add("cant deficiency", fmt.Sprint(a.CantDeficiency), fmt.Sprint(b.CantDeficiency))
+	add("categories", strings.Join(a.Categories, "+"), strings.Join(b.Categories, "+"))
+	add("axle load", a.AxleLoad, b.AxleLoad)
+	add("length", unit.Distance(a.Length).M()+" m", unit.Distance(b.Length).M()+" m")
+	add("maximum speed", fmt.Sprint(a.MaxSpeed), fmt.Sprint(b.MaxSpeed))
+	add("acceleration", a.Acceleration, b.Acceleration)
+	add("braking", a.Braking, b.Braking)
+	return list
+}
+
+// requests finds declarations of which nothing is seen.
+func (c *collector) requests() {
+	for _, q := range c.doc.Requests {
+		for _, d := range q.Declares {
+			if !d.Unseen {
+				continue
+			}
+			who := "any train"
+			if len(d.Trains) > 0 {
+				who = strings.Join(d.Trains, ", ")
+			}
+			c.add(ranked{Finding: Finding{
+				ID: Unseen, Route: d.Route, Direction: d.Direction, From: d.From, To: d.To, Row: fmt.Sprintf("%s:%d", q.File, d.Line),
+				Text: fmt.Sprintf("%s declares %s for %s, and no such change is seen there", q.ID, map[string]string{"raise": "a raise", "lower": "a reduction", "any": "a change"}[d.Effect], who),
+			}})
+		}
+	}
+}
+
+// route finds what needs eyes on a route.
+func (c *collector) route(index int) {
+	r := &c.in.Account.Routes[index]
+	if c.in.Account.Reconciled {
+		c.outside(index)
+		c.outsideTrack(index)
+	}
+	c.masked(index)
+	c.unrepresented(r)
+	for _, l := range r.Leaving {
+		what := "differs"
+		if l.Removed {
+			what = "is removed"
+		}
+		track := r.Target.Track
+		if l.Removed {
+			track = r.Base.Track
+		}
+		c.add(ranked{Finding: Finding{
+			ID: RunOutLeavesRoute, Route: r.ID, Direction: l.Direction.String(), Row: rowText(l.Row),
+			From: track.Begins(l.Row.Start).String(), To: track.Ends(l.Row.End).String(),
+			Text: fmt.Sprintf("the row %s and reaches beyond the end of the route with a train of %s m", what, l.Longest.M()),
+		}})
+	}
+	if r.Target == nil {
+		return
+	}
+	for _, d := range doubt.Check(r.Target, c.in.Target, c.in.At) {
+		c.add(ranked{Finding: Finding{
+			ID: d.ID, Route: r.ID, Direction: d.Directions.String(), From: r.Target.Track.Begins(d.From).String(), To: r.Target.Track.Ends(d.To).String(),
+			Row: fmt.Sprintf("%s:%d", d.Row.File, d.Row.Line), Text: d.Text,
+		}})
+	}
+}

@@ -1,0 +1,113 @@
+package assessment
+
+import (
+	"cmp"
+	"fmt"
+	"slices"
+	"strings"
+
+	"speedtrail/diff"
+	"speedtrail/diff/fleet"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// unseenBy is the trains of a product that change where no reference train of
+// theirs does.
+type unseenBy struct {
+	product    fleet.Product
+	raised     bool
+	directions codes.Directions
+	hidden     bool // only without temporary restrictions
+	changes    []diff.FleetChange
+	largest    diff.FleetChange
+	shortest   unit.Distance // the least length at which a change was found
+}
+
+// unrepresented finds changes that only trains see which no reference train
+// stands for: one finding for each kind of train and sense.
+func (c *collector) unrepresented(r *diff.Route) {
+	var list []unseenBy
+	for _, f := range r.Fleet {
+		for _, x := range f.Changes {
+			for k, p := range x.Products {
+				if !x.Represented[k] {
+					list = note(list, x, p, f)
+				}
+			}
+		}
+	}
+	for _, u := range list {
+		c.add(c.unrepresentedFinding(r, u))
+	}
+}
+
+// note adds a change to the entry of its trains and sense.
+func note(list []unseenBy, x diff.FleetChange, p fleet.Product, f diff.Fleet) []unseenBy {
+	raised := x.After > x.Before
+	i := slices.IndexFunc(list, func(u unseenBy) bool { return u.product == p && u.raised == raised && u.hidden == f.Permanent })
+	if i < 0 {
+		list = append(list, unseenBy{product: p, raised: raised, hidden: f.Permanent, largest: x, shortest: x.Lengths[0]})
+		i = len(list) - 1
+	}
+	u := &list[i]
+	u.changes = append(u.changes, x)
+	u.directions |= 1 << f.Direction
+	u.shortest = min(u.shortest, x.Lengths[0])
+	if abs(x.After-x.Before) > abs(u.largest.After-u.largest.Before) {
+		u.largest = x
+	}
+	return list
+}
+
+func (c *collector) unrepresentedFinding(r *diff.Route, u unseenBy) ranked {
+	track := r.Target.Track
+	first, last := u.changes[0].Target, u.changes[0].Target+u.changes[0].Length
+	top := unit.Speed(0)
+	for _, x := range u.changes {
+		first, last = min(first, x.Target), max(last, x.Target+x.Length)
+		top = max(top, x.Before, x.After)
+	}
+	word := "raised"
+	if !u.raised {
+		word = "lowered"
+	}
+	text := fmt.Sprintf("%s: %s by up to %d km/h, %d to %d", u.product, word, abs(u.largest.After-u.largest.Before), u.largest.Before, u.largest.After)
+	if n := len(u.changes); n > 1 {
+		text += fmt.Sprintf(", in %d pieces", n)
+	}
+	if u.hidden {
+		text += ", hidden today by temporary restrictions"
+	}
+	return ranked{
+		Finding: Finding{
+			ID: NotRepresented, Route: r.ID, Direction: u.directions.String(), From: track.Begins(first).String(), To: track.Ends(last).String(),
+			Text: text, Example: c.example(r.ID, u, top),
+		},
+		raised: u.raised, step: int(abs(u.largest.After - u.largest.Before)),
+		structure: u.product.Axle != 1<<codes.AxleLoads-1,
+	}
+}
+
+// example writes a reference train that shows the change, for trains.toml.
+func (c *collector) example(route string, u unseenBy, top unit.Speed) string {
+	class := u.product.Example()
+	var categories []string
+	for k := range codes.Category(codes.Categories) {
+		if class.Categories.Has(k) {
+			categories = append(categories, fmt.Sprintf("%q", k))
+		}
+	}
+	id := fmt.Sprintf("X-%d-%s", class.Cant.MM(), class.AxleLoad)
+	for n := 2; slices.ContainsFunc(c.in.Account.Trains, func(t diff.Train) bool { return t.ID == id }); n++ {
+		id = fmt.Sprintf("X-%d-%s-%d", class.Cant.MM(), class.AxleLoad, n)
+	}
+	var b strings.Builder
+	fmt.Fprintf(&b, "[[train]]\nid = %q\nname = \"Shows a change on %s\"\ncant_deficiency_mm = %d\n", id, route, class.Cant.MM())
+	if len(categories) > 0 {
+		fmt.Fprintf(&b, "categories = [%s]\n", strings.Join(categories, ", "))
+	}
+	length := cmp.Or(u.shortest/unit.Metre, 1)
+	fmt.Fprintf(&b, "axle_load = %q\nlength_m = %d\nmax_speed_kmh = %d\n", class.AxleLoad, length, top)
+	return b.String()
+}
