@@ -72,7 +72,7 @@ type Train struct {
 type Route struct {
 	ID           string
 	Base, Target *schema.Route // nil for a route that was added or removed
-	Track        []TrackChange // in order of direction and position
+	Track        []TrackChange // in order of direction, removed before added, and position
 	Changes      []Change
 	// Masked are changes that would appear if no temporary restriction were in
 	// force on either side, and are not among Changes.

@@ -10,7 +10,7 @@
 //	c := profile.New(route, codes.Nominal, profile.All)
 //	p := c.Compile(train)
 //	p.At(1500 * unit.Metre)                     // the speed 1.5 km along the track
-//	c.Sources(train, p[0].From, p[0].To, p[0].Speed) // the rows behind it
+//	c.Profile(train)[0].Sources                 // the rows behind its first piece
 package profile
 
 import (
