@@ -84,7 +84,7 @@ func (p *pair) figures(trains []Train, rolling bool) {
 	for i, t := range trains {
 		m := impact.Motion{Acceleration: t.Acceleration, Braking: t.Braking, Rolling: rolling}
 		if s := p.sights[i]; m.Given() && len(s.changes) > 0 {
-			p.running(f, i, s, m)
+			p.running(f, i, t, s.changes, m)
 		}
 	}
 	p.crossings(f)
@@ -99,11 +99,11 @@ func (p *pair) inTravel(f step.Func) step.Func {
 	return f
 }
 
-func (p *pair) running(f *Figures, train int, s *sight, m impact.Motion) {
-	before, after := impact.NewRun(p.inTravel(s.before), m), impact.NewRun(p.inTravel(s.after), m)
+func (p *pair) running(f *Figures, train int, t Train, changes []delta.Delta, m impact.Motion) {
+	base, target := p.whole[0].Compile(t.Train), p.whole[1].Compile(t.Train)
+	before, after := impact.NewRun(p.inTravel(base), m), impact.NewRun(p.inTravel(target), m)
 	run := RunTime{Direction: p.direction, Train: train, Before: before.Tenths(), After: after.Tenths()}
 	length := p.route.Target.Track.Length()
-	same := len(p.cells) == 1 && p.cells[0] == align.Cell{Length: length} && p.route.Base.Track.Length() == length
 	// travelled gives how far along the way a place of the target's track lies.
 	travelled := func(at unit.Distance) unit.Distance {
 		if p.direction == codes.Reverse {
@@ -111,8 +111,8 @@ func (p *pair) running(f *Figures, train int, s *sight, m impact.Motion) {
 		}
 		return at
 	}
-	if same {
-		limits := middles(s.changes, length)
+	if p.same {
+		limits := middles(changes, length)
 		if p.direction == codes.Reverse {
 			slices.Reverse(limits)
 		}
@@ -129,11 +129,11 @@ func (p *pair) running(f *Figures, train int, s *sight, m impact.Motion) {
 		slices.SortFunc(run.Parts, func(a, b Part) int { return cmp.Compare(a.From, b.From) })
 	}
 	f.Runs = append(f.Runs, run)
-	for _, c := range s.changes {
+	for _, c := range changes {
 		if c.After < c.Before {
 			continue
 		}
-		cur := s.after.CursorAt(c.Target)
+		cur := target.CursorAt(c.Target)
 		piece := cur.Piece()
 		middle := travelled(piece.From + (piece.To-piece.From)/2)
 		reached, needed := after.Peak(middle)
@@ -171,44 +171,45 @@ func (p *pair) onBase(from, to unit.Distance) (unit.Distance, bool) {
 	return 0, false
 }
 
+// seen tells whether the sides can differ on a stretch of the target's track.
+func (p *pair) seen(from, to unit.Distance) bool {
+	return !p.same || slices.ContainsFunc(p.all.cells, func(c align.Cell) bool { return c.Target < to && from < c.Target+c.Length })
+}
+
+// fastest gives the time of approach of the fastest train that a side admits.
+func fastest(c *profile.Compiler, from, to unit.Distance) int64 {
+	near := c.Window(from, to, 0)
+	least := int64(math.MaxInt64)
+	var f step.Func
+	for _, sel := range fleet.Selections(near) {
+		f = near.AppendSweep(f[:0], sel, 0, profile.NoMaximum)
+		least = min(least, impact.ApproachTenths(f, from, to))
+	}
+	return least
+}
+
 func (p *pair) crossings(f *Figures) {
 	route := p.route.Target
-	var kinds map[*profile.Compiler][]step.Func // fastest profiles, made when first needed
-	fastest := func(c *profile.Compiler, from, to unit.Distance) int64 {
-		if kinds == nil {
-			kinds = map[*profile.Compiler][]step.Func{}
-		}
-		if kinds[c] == nil {
-			for _, sel := range fleet.Selections(c) {
-				kinds[c] = append(kinds[c], c.Sweep(sel, 0, profile.NoMaximum))
-			}
-		}
-		least := int64(math.MaxInt64)
-		for _, k := range kinds[c] {
-			least = min(least, impact.ApproachTenths(k, from, to))
-		}
-		return least
-	}
 	for i := range route.Places {
 		place := &route.Places[i]
 		from, to, ok := impact.Approach(place, p.direction, route.Track.Length())
-		if !ok {
+		if !ok || !p.seen(from, to) {
 			continue
 		}
 		base, onBase := p.onBase(from, to)
-		compute := func(s sides) Crossing {
-			c := Crossing{Direction: p.direction, Place: place, Before: -1, After: fastest(s.target, from, to)}
+		compute := func(sides [2]*profile.Compiler) Crossing {
+			c := Crossing{Direction: p.direction, Place: place, Before: -1, After: fastest(sides[1], from, to)}
 			if onBase {
-				c.Before = fastest(s.base, base, base+to-from)
+				c.Before = fastest(sides[0], base, base+to-from)
 			}
 			return c
 		}
-		now := compute(p.all)
+		now := compute(p.whole)
 		if now.Before != now.After {
 			f.Crossings = append(f.Crossings, now)
 		}
 		if p.temporary {
-			later := compute(p.permanent)
+			later := compute(p.withoutTemporary())
 			later.Permanent = true
 			if later.Before != later.After && (later.Before != now.Before || later.After != now.After) {
 				f.Crossings = append(f.Crossings, later)
@@ -218,6 +219,7 @@ func (p *pair) crossings(f *Figures) {
 }
 
 func (p *pair) curves(f *Figures, trains []Train) {
+	longest := longestOf(trains)
 	for i := range p.route.Target.Curves {
 		row := &p.route.Target.Curves[i]
 		base, onBase := p.onBase(row.Start, row.End)
@@ -230,13 +232,21 @@ func (p *pair) curves(f *Figures, trains []Train) {
 			}
 		}
 		altered := old == nil || old.RadiusM != row.RadiusM || old.CantMM != row.CantMM
+		if !altered && !p.seen(row.Start, row.End) {
+			continue
+		}
 		first, lowest, slowest := len(f.Curves), unit.Speed(0), 0
+		after := p.whole[1].Window(row.Start, row.End, longest)
+		var before *profile.Compiler
+		if onBase {
+			before = p.whole[0].Window(base, base+row.End-row.Start, longest)
+		}
 		for t := range trains {
 			c := Curve{Direction: p.direction, Row: row, Old: old, Trains: []int{t}, Category: trains[t].Cant}
 			var low unit.Speed
-			c.After, low = impact.Extremes(p.sights[t].after, row.Start, row.End)
+			c.After, low = impact.Extremes(after.Compile(trains[t].Train), row.Start, row.End)
 			if onBase {
-				c.Before, _ = impact.Extremes(p.sights[t].before, base, base+row.End-row.Start)
+				c.Before, _ = impact.Extremes(before.Compile(trains[t].Train), base, base+row.End-row.Start)
 			}
 			if lowest == 0 || low < lowest {
 				lowest, slowest = low, t

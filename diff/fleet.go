@@ -51,14 +51,14 @@ func (p *pair) fleet(trains []Train) []Fleet {
 	asked := slices.Compact([]unit.Distance{shortest, longest})
 	var list []Fleet
 	for _, permanent := range []bool{false, true} {
-		filter := profile.All
+		s := p.all
 		if permanent {
-			if !p.temporary {
+			if !p.hides {
 				break
 			}
-			filter = profile.NoTemporary
+			s = p.permanent
 		}
-		found := fleet.Compare(p.route.Base, p.route.Target, p.direction, p.cells, filter, asked)
+		found := fleet.CompareSides(s.base, s.target, p.direction, s.cells, asked)
 		f := Fleet{Direction: p.direction, Permanent: permanent, Shortest: shortest, Longest: longest, Reach: found.Reach, Changes: joinLengths(found.Changes)}
 		if permanent {
 			f.Changes = slices.DeleteFunc(f.Changes, func(c FleetChange) bool { return slices.ContainsFunc(list[0].Changes, c.same) })
@@ -66,7 +66,7 @@ func (p *pair) fleet(trains []Train) []Fleet {
 				break
 			}
 		}
-		p.represent(&f, trains)
+		p.represent(&f, s, trains)
 		list = append(list, f)
 	}
 	return list
@@ -108,11 +108,7 @@ type shown struct {
 // changes in the same sense on a part of the same place; or it sees, as far as
 // its maximum speed lets it, the same speeds change elsewhere on the same
 // connected stretch, where its length carries the change.
-func (p *pair) represent(f *Fleet, trains []Train) {
-	s := p.all
-	if f.Permanent {
-		s = p.permanent
-	}
+func (p *pair) represent(f *Fleet, s sides, trains []Train) {
 	partOf := func(at unit.Distance) int {
 		return slices.IndexFunc(f.Reach, func(i align.Interval) bool { return i.From <= at && at < i.To })
 	}
@@ -126,7 +122,7 @@ func (p *pair) represent(f *Fleet, trains []Train) {
 			continue
 		}
 		class := profile.ClassOf(t.Train)
-		_, _, free := s.compare(s.base.Select(class), s.target.Select(class), t.Length, profile.NoMaximum, p.cells)
+		free := s.compare(s.base.Select(class), s.target.Select(class), t.Length, profile.NoMaximum)
 		for _, c := range seen {
 			list = append(list, shown{class: class, from: c.Target, to: c.Target + c.Length, raised: c.After > c.Before, part: -1})
 			for _, u := range free {

@@ -8,7 +8,6 @@ import (
 	"speedtrail/diff/align"
 	"speedtrail/diff/delta"
 	"speedtrail/diff/profile"
-	"speedtrail/diff/step"
 	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -44,6 +43,7 @@ func compareRoute(r *Route, trains []Train, o *Options) {
 // compareTracks compares a route that both revisions have.
 func compareTracks(r *Route, trains []Train, o *Options) {
 	tracks := align.Tracks(r.Base.Track, r.Target.Track)
+	longest := longestOf(trains)
 	for _, d := range codes.AllDirections {
 		inBase, inTarget := r.Base.Directions.Has(d), r.Target.Directions.Has(d)
 		switch {
@@ -54,7 +54,7 @@ func compareTracks(r *Route, trains []Train, o *Options) {
 			for _, i := range tracks.Added {
 				r.Track = append(r.Track, TrackChange{d, Added, i.From, i.To, 0})
 			}
-			p := newPair(r, d, tracks.Common)
+			p := newPair(r, d, &tracks, longest)
 			p.compare(trains)
 			if !o.NoFleet {
 				r.Fleet = append(r.Fleet, p.fleet(trains)...)
@@ -94,39 +94,73 @@ type pair struct {
 	route     *Route
 	direction codes.Direction
 	cells     []align.Cell
+	whole     [2]*profile.Compiler // of all rows: base, target
+	lasting   [2]*profile.Compiler // of those that are not temporary; see withoutTemporary
 	all       sides
-	permanent sides // without temporary restrictions; the same as all where there are none
-	temporary bool  // whether a side has temporary restrictions in this direction
-	seen      map[string]*sight
+	permanent sides    // without temporary restrictions; the same as all where none lies there
+	same      bool     // whether the tracks are
+	temporary bool     // whether a side has temporary restrictions
+	hides     bool     // whether one lies where the sides can differ
 	sights    []*sight // by train
 }
 
-// sides are the compilers of both sides.
-type sides struct{ base, target *profile.Compiler }
-
-// sight is what a train sees. Trains that no row tells apart share one.
-type sight struct {
-	before, after   step.Func
-	changes, masked []delta.Delta
+// sides are the compilers of both sides, and where they can differ. Where the
+// tracks are the same they hold the rows only that can matter there.
+type sides struct {
+	base, target *profile.Compiler
+	cells        []align.Cell
 }
 
-func newPair(r *Route, d codes.Direction, cells []align.Cell) *pair {
-	p := &pair{route: r, direction: d, cells: cells, seen: map[string]*sight{}}
-	p.all = sides{profile.New(r.Base, d, profile.All), profile.New(r.Target, d, profile.All)}
-	p.permanent = p.all
-	for _, temporary := range [...]int{len(r.Base.Temporary), len(r.Target.Temporary)} {
-		p.temporary = p.temporary || temporary > 0
+// sight is what a train sees. Trains that no row tells apart share one.
+type sight struct{ changes, masked []delta.Delta }
+
+func newPair(r *Route, d codes.Direction, tracks *align.Alignment, longest unit.Distance) *pair {
+	p := &pair{route: r, direction: d, cells: tracks.Common, same: tracks.Whole()}
+	p.whole = [2]*profile.Compiler{profile.New(r.Base, d, profile.All), profile.New(r.Target, d, profile.All)}
+	narrow := func(base, target *profile.Compiler) sides {
+		if !p.same {
+			return sides{base, target, tracks.Common}
+		}
+		s := sides{}
+		var near []align.Interval
+		s.base, s.target, near = profile.Narrow(base, target, longest)
+		for _, i := range near {
+			s.cells = append(s.cells, align.Cell{Base: i.From, Target: i.From, Length: i.To - i.From})
+		}
+		return s
 	}
-	if p.temporary {
-		p.permanent = sides{profile.New(r.Base, d, profile.NoTemporary), profile.New(r.Target, d, profile.NoTemporary)}
+	p.all = narrow(p.whole[0], p.whole[1])
+	p.permanent = p.all
+	p.temporary = len(r.Base.Temporary)+len(r.Target.Temporary) > 0
+	p.hides = p.all.base.HasTemporary() || p.all.target.HasTemporary()
+	if p.hides {
+		lasting := p.withoutTemporary()
+		p.permanent = narrow(lasting[0], lasting[1])
 	}
 	return p
+}
+
+// withoutTemporary gives the compilers of all rows that are not temporary
+// restrictions.
+func (p *pair) withoutTemporary() [2]*profile.Compiler {
+	if p.lasting[0] == nil {
+		p.lasting = [2]*profile.Compiler{p.whole[0].Permanent(), p.whole[1].Permanent()}
+	}
+	return p.lasting
+}
+
+func longestOf(trains []Train) (longest unit.Distance) {
+	for _, t := range trains {
+		longest = max(longest, t.Length)
+	}
+	return longest
 }
 
 // compare compiles both sides for every train and appends the changes.
 func (p *pair) compare(trains []Train) {
 	r := p.route
 	p.sights = make([]*sight, len(trains))
+	known := map[string]*sight{}
 	delayed := p.all.base.Delayed() || p.all.target.Delayed()
 	var key []byte
 	for i, t := range trains {
@@ -138,10 +172,10 @@ func (p *pair) compare(trains []Train) {
 		}
 		// Trains that no row tells apart are compared once.
 		key = appendKey(key[:0], before, after, length, t.Max)
-		s, ok := p.seen[string(key)]
+		s, ok := known[string(key)]
 		if !ok {
 			s = p.look(before, after, class, t.Length, t.Max)
-			p.seen[string(key)] = s
+			known[string(key)] = s
 		}
 		p.sights[i] = s
 		for _, c := range s.changes {
@@ -158,22 +192,24 @@ func (p *pair) compare(trains []Train) {
 
 // look finds what a train sees.
 func (p *pair) look(before, after profile.Selection, class profile.Class, length unit.Distance, maximum unit.Speed) *sight {
-	s := &sight{}
-	s.before, s.after, s.changes = p.all.compare(before, after, length, maximum, p.cells)
-	if p.temporary {
-		_, _, permanent := p.permanent.compare(p.permanent.base.Select(class), p.permanent.target.Select(class), length, maximum, p.cells)
+	s := &sight{changes: p.all.compare(before, after, length, maximum)}
+	if p.hides {
+		permanent := p.permanent.compare(p.permanent.base.Select(class), p.permanent.target.Select(class), length, maximum)
 		s.masked = hidden(permanent, s.changes)
 	}
 	return s
 }
 
 // compare finds the differences that one train sees.
-func (s sides) compare(before, after profile.Selection, length unit.Distance, maximum unit.Speed, cells []align.Cell) (b, a step.Func, found []delta.Delta) {
-	b, a = s.base.Sweep(before, length, maximum), s.target.Sweep(after, length, maximum)
-	if found = delta.Between(b, a, cells); len(found) > 0 {
+func (s sides) compare(before, after profile.Selection, length unit.Distance, maximum unit.Speed) []delta.Delta {
+	if len(s.cells) == 0 {
+		return nil
+	}
+	found := delta.Between(s.base.Sweep(before, length, maximum), s.target.Sweep(after, length, maximum), s.cells)
+	if len(found) > 0 {
 		found = delta.MarkRunOut(found, s.base.Sweep(before, 0, maximum), s.target.Sweep(after, 0, maximum))
 	}
-	return b, a, found
+	return found
 }
 
 // change describes a difference.

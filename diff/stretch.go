@@ -46,25 +46,38 @@ type Step struct {
 // describeStretches finds the stretches of all routes and describes the first
 // StretchLimit of them by size of the largest step.
 func (a *Account) describeStretches() {
-	var all []Stretch
-	for i := range a.Routes {
-		all = append(all, a.Routes[i].clusters(i)...)
-	}
+	perRoute := make([][]Stretch, len(a.Routes))
+	sideBySide(len(a.Routes), func(i int) { perRoute[i] = a.Routes[i].clusters(i) })
+	all := slices.Concat(perRoute...)
 	if len(all) > StretchLimit {
-		order := slices.Clone(all)
-		slices.SortStableFunc(order, func(x, y Stretch) int {
-			return cmp.Compare(a.largestStep(&y), a.largestStep(&x))
-		})
 		a.StretchesLeftOut = len(all) - StretchLimit
-		all = order[:StretchLimit]
-		slices.SortStableFunc(all, func(x, y Stretch) int {
-			return cmp.Or(cmp.Compare(x.Route, y.Route), cmp.Compare(x.Direction, y.Direction),
-				cmp.Compare(x.From, y.From), cmp.Compare(x.Trains[0], y.Trains[0]))
-		})
+		all = a.largest(all)
 	}
-	for _, s := range all {
-		a.Stretches = append(a.Stretches, a.pictures(s)...)
+	var starts []int // of each route's stretches
+	for i := range all {
+		if i == 0 || all[i].Route != all[i-1].Route {
+			starts = append(starts, i)
+		}
 	}
+	starts = append(starts, len(all))
+	lists := make([][]Stretch, len(starts)-1)
+	sideBySide(len(lists), func(i int) { lists[i] = a.pictures(all[starts[i]:starts[i+1]]) })
+	a.Stretches = slices.Concat(lists...)
+}
+
+// largest gives the StretchLimit stretches with the largest steps, in the order
+// in which they stand.
+func (a *Account) largest(all []Stretch) []Stretch {
+	steps, order := make([]unit.Speed, len(all)), make([]int, len(all))
+	for i := range all {
+		steps[i], order[i] = a.largestStep(&all[i]), i
+	}
+	slices.SortFunc(order, func(x, y int) int { return cmp.Or(cmp.Compare(steps[y], steps[x]), x-y) })
+	chosen := make([]Stretch, StretchLimit)
+	for i, at := range slices.Sorted(slices.Values(order[:StretchLimit])) {
+		chosen[i] = all[at]
+	}
+	return chosen
 }
 
 // largestStep gives the size of the largest change of a stretch; a raise counts
@@ -147,19 +160,47 @@ func (r *Route) clusterKey(cluster []int) []byte {
 	return key
 }
 
-// pictures compiles the profiles around a cluster and splits its trains where
-// they see different ones.
-func (a *Account) pictures(s Stretch) []Stretch {
-	r := &a.Routes[s.Route]
-	base := profile.New(r.Base, s.Direction, profile.All)
-	target := profile.New(r.Target, s.Direction, profile.All)
+// pictures describes stretches of one route.
+func (a *Account) pictures(stretches []Stretch) []Stretch {
+	r := &a.Routes[stretches[0].Route]
 	cells := align.Tracks(r.Base.Track, r.Target.Track).Common
+	var whole [2][2]*profile.Compiler // by direction: base, target
+	var list []Stretch
+	for _, s := range stretches {
+		w := &whole[s.Direction]
+		if w[0] == nil {
+			*w = [2]*profile.Compiler{profile.New(r.Base, s.Direction, profile.All), profile.New(r.Target, s.Direction, profile.All)}
+		}
+		list = append(list, a.split(s, w, cells)...)
+	}
+	return list
+}
+
+// split compiles the profiles around a cluster and splits its trains where they
+// see different ones.
+func (a *Account) split(s Stretch, whole *[2]*profile.Compiler, cells []align.Cell) []Stretch {
+	r := &a.Routes[s.Route]
+	longest := unit.Distance(0)
+	for _, i := range s.Trains {
+		longest = max(longest, a.Trains[i].Length)
+	}
+	var near [2][]align.Cell // what of the cells lies in the window, for either side
+	near[1] = []align.Cell{{Base: s.WindowFrom, Target: s.WindowFrom, Length: s.WindowTo - s.WindowFrom}}
+	first, last := r.Base.Track.Length(), unit.Distance(0)
+	for _, c := range cells {
+		from, to := max(s.WindowFrom, c.Target), min(s.WindowTo, c.Target+c.Length)
+		if from < to {
+			c = align.Cell{Base: c.Base + from - c.Target, Target: from, Length: to - from}
+			near[0] = append(near[0], c)
+			first, last = min(first, c.Base), max(last, c.Base+c.Length)
+		}
+	}
+	base, target := whole[0].Window(first, last, longest), whole[1].Window(s.WindowFrom, s.WindowTo, longest)
 	var list []Stretch
 	seen := map[string]int{}
 	for _, i := range s.Trains {
 		t := a.Trains[i]
-		before := r.steps(base, t, cells, s, true)
-		after := r.steps(target, t, cells, s, false)
+		before, after := r.steps(base, t, near[0]), r.steps(target, t, near[1])
 		var key []byte
 		for _, steps := range [...][]Step{before, after} {
 			for _, p := range steps {
@@ -193,31 +234,20 @@ func (r *Route) changesOf(s Stretch, train int) []int {
 	return list
 }
 
-// steps gives the pieces of a train's profile within the window, the base's
-// laid on the target's track cell by cell.
-func (r *Route) steps(c *profile.Compiler, t Train, cells []align.Cell, s Stretch, base bool) []Step {
+// steps cuts the profile of one side to cells, and lays it on the target's
+// track.
+func (r *Route) steps(c *profile.Compiler, t Train, cells []align.Cell) []Step {
 	sel := c.Select(profile.ClassOf(t.Train))
 	f := c.Sweep(sel, t.Length, t.Max)
-	if !base {
-		cells = []align.Cell{{Length: r.Target.Track.Length()}}
-	}
 	var steps []Step
 	for _, cell := range cells {
-		own := cell.Target // where the cell begins on the side that is drawn
-		if base {
-			own = cell.Base
-		}
-		from := max(s.WindowFrom, cell.Target) - cell.Target
-		to := min(s.WindowTo, cell.Target+cell.Length) - cell.Target
-		if from >= to {
-			continue
-		}
-		for cur := f.CursorAt(own + from); from < to; {
-			cur.Advance(own + from)
+		from := unit.Distance(0)
+		for cur := f.CursorAt(cell.Base); from < cell.Length; {
+			cur.Advance(cell.Base + from)
 			p := cur.Piece()
-			end := min(to, p.To-own)
+			end := min(cell.Length, p.To-cell.Base)
 			piece := step.Piece{From: cell.Target + from, To: cell.Target + end, Speed: p.Speed}
-			steps = append(steps, Step{piece, r.sources.index(c, sel, t, own+from, end-from, p.Speed)})
+			steps = append(steps, Step{piece, r.sources.index(c, sel, t, cell.Base+from, end-from, p.Speed)})
 			from = end
 		}
 	}

@@ -11,6 +11,7 @@ import (
 	"strings"
 	"testing"
 	"testing/fstest"
+	"unicode/utf8"
 
 	"golang.org/x/crypto/ssh"
 	"golang.org/x/tools/txtar"
@@ -42,6 +43,9 @@ func FuzzAllowedSigners(f *testing.F) {
 		told := map[int]bool{}
 		if faults, ok := r.faults.Err().(*source.Faults); ok {
 			for _, fault := range faults.List {
+				if fault.Line == 0 && !utf8.Valid(content) {
+					return // the file as a whole
+				}
 				if fault.File != signersFile || fault.Line < 1 || fault.Line > len(lines) || told[fault.Line] {
 					t.Fatalf("%v of %d lines", fault, len(lines))
 				}

@@ -7,6 +7,7 @@ import (
 	"strconv"
 	"strings"
 	"time"
+	"unicode/utf8"
 
 	"golang.org/x/crypto/ssh"
 
@@ -78,6 +79,85 @@ func (r *reader) policy() *Policy {
 		}
 	}
 	return p
+}
+
+// ParsePolicy reads a policy from the content of its two files. The error is a
+// *source.Faults.
+func ParsePolicy(signoff, allowedSigners []byte) (*Policy, error) {
+	r := &reader{}
+	p := &Policy{}
+	r.allowedSigners(p, allowedSigners)
+	if m := table.ReadTOML(signoffFile, signoff, &r.faults); m != nil {
+		r.signoff(p, table.Reader{Map: m, Faults: &r.faults})
+		if r.faults.Count() == 0 {
+			r.checkRoles(p)
+		}
+	}
+	if err := r.faults.Err(); err != nil {
+		return nil, err
+	}
+	return p, nil
+}
+
+// PolicyFiles gives the content of signoff.toml and allowed_signers as they were
+// read; empty where the data set has no policy.
+func (d *Dataset) PolicyFiles() (signoff, allowedSigners []byte) {
+	for _, f := range d.Files {
+		switch f.Path {
+		case signoffFile:
+			signoff = f.Content
+		case signersFile:
+			allowedSigners = f.Content
+		}
+	}
+	return signoff, allowedSigners
+}
+
+// Person gives the person of an e-mail address, compared without ASCII letter
+// case; nil where it is nobody's.
+func (p *Policy) Person(email string) *Person {
+	email = asciiLower(email)
+	for i := range p.Persons {
+		if slices.Contains(p.Persons[i].Emails, email) {
+			return &p.Persons[i]
+		}
+	}
+	return nil
+}
+
+// Role gives the role of a name; nil where there is none.
+func (p *Policy) Role(name string) *Role {
+	for i := range p.Roles {
+		if p.Roles[i].Name == name {
+			return &p.Roles[i]
+		}
+	}
+	return nil
+}
+
+// Key gives the key of a fingerprint; nil where it is not allowed.
+func (p *Policy) Key(fingerprint string) *Key {
+	for i := range p.Keys {
+		if p.Keys[i].Fingerprint == fingerprint {
+			return &p.Keys[i]
+		}
+	}
+	return nil
+}
+
+// Independent tells whether two roles must be taken by different people.
+func (p *Policy) Independent(a, b string) bool {
+	for _, pair := range [...][2]string{{a, b}, {b, a}} {
+		if r := p.Role(pair[0]); r != nil && slices.Contains(r.IndependentOf, pair[1]) {
+			return true
+		}
+	}
+	return false
+}
+
+// May tells whether a principal may sign in the role.
+func (r *Role) May(principal string) bool {
+	return len(r.Signers) == 0 || slices.Contains(r.Signers, principal)
 }
 
 func (r *reader) signoff(p *Policy, m table.Reader) {
@@ -160,6 +240,10 @@ func (r *reader) checkRoles(p *Policy) {
 // SIGNERS) in a strict form: one literal lower-case principal a line, plain
 // keys, times in UTC.
 func (r *reader) allowedSigners(p *Policy, content []byte) {
+	if !utf8.Valid(content) {
+		r.faults.Add(source.Position{File: signersFile}, "the file is not valid UTF-8")
+		return
+	}
 	owners := map[string]string{}
 	line := 0
 	for text := range bytes.Lines(content) {

@@ -13,6 +13,8 @@ import (
 
 	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/diff"
+	"speedtrail/history"
+	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
 	"speedtrail/history/revision"
 	"speedtrail/schema"
@@ -190,6 +192,13 @@ func (a *app) record(ctx context.Context, doc *assessment.Document) (render.Reco
 		return render.Record{}, err
 	}
 	defer l.Close()
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return render.Record{}, err
+	}
+	if err := needPolicies(line, &doc.Computed); err != nil {
+		return render.Record{}, err
+	}
 	body, digest, err := doc.Encode()
 	if err != nil {
 		return render.Record{}, err
@@ -203,11 +212,28 @@ func (a *app) record(ctx context.Context, doc *assessment.Document) (render.Reco
 	} else {
 		a.remark("assessment %d holds this result already, nothing was added; head of the ledger %s", number, head)
 	}
-	return render.Record{Ledger: l.ID(), Number: number, Digest: digest, State: stateOpen}, nil
+	if line, _, err = history.ReadLine(ctx, l); err != nil {
+		return render.Record{}, err
+	}
+	return recordOf(line, l.ID(), number, digest), nil
 }
 
-// stateOpen is the state of an assessment that nobody has signed.
-const stateOpen = "open"
+// needPolicies refuses, once a policy is anchored for the folder, a revision
+// without one: from then on a change must be one that can be signed.
+func needPolicies(line *approval.Line, c *assessment.Computed) error {
+	if line.Anchor(c.Folder) == nil {
+		return nil
+	}
+	for _, side := range []struct {
+		name   string
+		policy assessment.Policy
+	}{{"base", c.Policy.Base}, {"target", c.Policy.Target}} {
+		if side.policy == (assessment.Policy{}) {
+			return badCall("restore signoff.toml and allowed_signers; --no-record assesses without recording", "the %s has no policy, and one is anchored in the ledger for the folder %s", side.name, c.Folder)
+		}
+	}
+	return nil
+}
 
 // render writes a document in the chosen format.
 func (a *app) render(doc *assessment.Document, rec render.Record) error {

@@ -12,6 +12,7 @@ import (
 	"speedtrail/history/assessment"
 	"speedtrail/history/ledger"
 	"speedtrail/history/revision"
+	"speedtrail/schema"
 )
 
 // workingTree is the name that stands for the files on disk.
@@ -77,7 +78,20 @@ func (s side) revisionOf() assessment.Revision {
 		Committed: s.commit.Committer.When.UTC().Format(time.RFC3339),
 		Subject:   validText(s.commit.Subject),
 		Author:    person(s.commit.Author),
+		Tree:      content(s.files),
 	}
+}
+
+// content gives the hash of a folder's Git tree.
+func content(files fs.FS) string {
+	info, err := fs.Stat(files, ".")
+	if err != nil {
+		return ""
+	}
+	if id, ok := info.(schema.Identified); ok {
+		return id.Identity()
+	}
+	return ""
 }
 
 func person(p revision.Person) assessment.Person {

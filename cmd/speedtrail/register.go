@@ -11,6 +11,8 @@ import (
 	"github.com/jedib0t/go-pretty/v6/text"
 	"github.com/spf13/cobra"
 
+	"speedtrail/history"
+	"speedtrail/history/approval"
 	"speedtrail/history/ledger"
 	"speedtrail/schema/source"
 )
@@ -31,6 +33,7 @@ type registered struct {
 	Number   int64    `json:"number"`
 	Recorded string   `json:"recorded"`
 	State    string   `json:"state"`
+	SignOffs []string `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"
 	Base     string   `json:"base"`
 	Target   string   `json:"target"`
 	Folder   string   `json:"folder"`
@@ -52,16 +55,17 @@ func (a *app) register(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	head, err := l.Head(ctx)
+	line, _, err := history.ReadLine(ctx, l)
 	if err != nil {
 		return err
 	}
+	head := line.Head()
 	return a.write(func(w io.Writer) error {
 		if a.format == "json" {
 			list := make([]registered, len(rows))
 			for i, r := range rows {
 				list[i] = registered{
-					Number: r.Number, Recorded: r.Time, State: stateOpen, Base: r.Base, Target: r.Target, Folder: r.Folder,
+					Number: r.Number, Recorded: r.Time, State: line.State(r.Number).Word, SignOffs: signedBy(line, r.Number), Base: r.Base, Target: r.Target, Folder: r.Folder,
 					Dataset: r.Dataset, Requests: r.Requests, Changes: r.Changes, Findings: r.Findings, Digest: r.Digest,
 					Entry: r.Entry.String(),
 				}
@@ -75,11 +79,11 @@ func (a *app) register(ctx context.Context) error {
 				Assessments []registered `json:"assessments"`
 			}{"speedtrail-register 1", l.ID(), head.String(), list})
 		}
-		return a.printRegister(w, l, rows, head.String())
+		return a.printRegister(w, l, line, rows, head.String())
 	})
 }
 
-func (a *app) printRegister(w io.Writer, l *ledger.Ledger, rows []ledger.AssessmentRow, head string) error {
+func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, rows []ledger.AssessmentRow, head string) error {
 	if len(rows) == 0 {
 		_, err := fmt.Fprintf(w, "No assessment is recorded yet. Record one with: speedtrail assess BASE TARGET\nhead of the ledger %s\n", head)
 		return err
@@ -89,20 +93,29 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, rows []ledger.Assessm
 	t.Style().Options.DrawBorder = false
 	t.Style().Options.SeparateColumns = false
 	t.Style().Format.Header = text.FormatDefault
-	t.AppendHeader(table.Row{"no.", "recorded (UTC)", "state", "base", "target", "requests", "changes", "findings"})
+	t.AppendHeader(table.Row{"no.", "recorded (UTC)", "state", "base", "target", "requests", "changes", "findings", "signed"})
 	for _, r := range rows {
 		requests := strings.Join(r.Requests, ", ")
 		if requests == "" {
 			requests = "none"
 		}
 		t.AppendRow(table.Row{
-			r.Number, strings.Replace(strings.TrimSuffix(r.Time, "Z"), "T", " ", 1), stateOpen, short(r.Base), short(r.Target),
-			source.Visible(requests), r.Changes, r.Findings,
+			r.Number, strings.Replace(strings.TrimSuffix(r.Time, "Z"), "T", " ", 1), line.State(r.Number).Word, short(r.Base), short(r.Target),
+			source.Visible(requests), r.Changes, r.Findings, source.VisibleLines(strings.Join(signedBy(line, r.Number), "\n")),
 		})
 	}
 	t.SetColumnConfigs([]table.ColumnConfig{{Number: 6, WidthMax: 24, WidthMaxEnforcer: text.WrapSoft}})
 	_, err := fmt.Fprintf(w, "%s\n\nledger %s, head %s\nnext: speedtrail report %d --out report.html\n", t.Render(), l.ID(), head, rows[0].Number)
 	return err
+}
+
+// signedBy lists the decisions on an assessment.
+func signedBy(line *approval.Line, number int64) []string {
+	list := []string{}
+	for _, r := range line.State(number).Signed {
+		list = append(list, r.Decision+" "+r.Role+" "+r.Signer)
+	}
+	return list
 }
 
 // short gives the part of a hash that people compare.

@@ -2,13 +2,15 @@ package main
 
 import (
 	"context"
-	"strconv"
 
 	"github.com/spf13/cobra"
 
 	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/history"
+	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
 	"speedtrail/history/ledger"
+	"speedtrail/history/signoff"
 )
 
 func (a *app) reportCommand() *cobra.Command {
@@ -21,9 +23,9 @@ same assessment gives the same bytes.`,
   speedtrail report 3 --format csv`,
 		Args: arguments(1, 1),
 		RunE: func(c *cobra.Command, args []string) error {
-			n, err := strconv.ParseInt(args[0], 10, 64)
-			if err != nil || n < 1 {
-				return badCall("speedtrail register lists the assessments", "%q is not the number of an assessment", args[0])
+			n, err := assessmentNumber(args[0])
+			if err != nil {
+				return err
 			}
 			return a.report(c.Context(), n)
 		},
@@ -55,5 +57,31 @@ func recorded(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.
 	if err != nil {
 		return nil, render.Record{}, err
 	}
-	return doc, render.Record{Ledger: l.ID(), Number: number, Digest: row.Digest, State: stateOpen}, nil
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return nil, render.Record{}, err
+	}
+	return doc, recordOf(line, l.ID(), number, row.Digest), nil
+}
+
+// recordOf says what the ledger knows about an assessment.
+func recordOf(line *approval.Line, ledger string, number int64, digest string) render.Record {
+	s := line.State(number)
+	rec := render.Record{
+		Ledger: ledger, Number: number, Digest: digest, State: s.Word, Missing: append([]string{}, s.Missing...), Blocks: append([]string{}, s.Blocks...),
+		Superseded: s.Superseded, SignOffs: []render.SignOff{},
+	}
+	records := s.Signed
+	for _, r := range s.RejectedBy {
+		if r.Assessment != number {
+			records = append(records, r)
+		}
+	}
+	for _, r := range records {
+		rec.SignOffs = append(rec.SignOffs, render.SignOff{
+			Assessment: r.Assessment, Entry: r.Entry.Seq, Role: r.Role, Decision: r.Decision, Signer: r.Signer, Fingerprint: r.Fingerprint, Reason: r.Reason,
+			Time: r.Time.UTC().Format(signoff.TimeLayout), Statement: string(r.Text), Signature: string(r.Signature), Command: render.VerifyCommand(r.Signer, r.Time),
+		})
+	}
+	return rec
 }

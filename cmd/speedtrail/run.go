@@ -73,7 +73,7 @@ and keeps the result in an append-only ledger.
 Start with "speedtrail demo".
 
 Exit status: 0 done, nothing against it; 1 done, and there is an unaccepted
-finding; 2 the call or the data is wrong; 3 the work could not be done (disk,
+finding, or verify found something wrong; 2 the call or the data is wrong; 3 the work could not be done (disk,
 ledger, repository).
 
 NO_COLOR and --color are respected. Results go to standard output, progress and
@@ -97,7 +97,8 @@ remarks to standard error.`,
 	root.SetFlagErrorFunc(func(c *cobra.Command, err error) error {
 		return badCall(c.CommandPath()+" --help lists the options", "%v", err)
 	})
-	root.AddCommand(a.demoCommand(), a.validateCommand(), a.profileCommand(), a.assessCommand(), a.reportCommand(), a.registerCommand())
+	root.AddCommand(a.demoCommand(), a.validateCommand(), a.profileCommand(), a.assessCommand(), a.reportCommand(), a.registerCommand(),
+		a.signCommand(), a.anchorCommand(), a.revokeCommand(), a.inforceCommand(), a.verifyCommand(), a.exportCommand(), a.importCommand())
 	root.CompletionOptions.HiddenDefaultCmd = true
 	root.PersistentPreRunE = func(*cobra.Command, []string) error {
 		switch a.color {

@@ -10,6 +10,7 @@
 package align
 
 import (
+	"cmp"
 	"slices"
 
 	"speedtrail/schema/chainage"
@@ -106,6 +107,26 @@ func appendCell(cells []Cell, c Cell) []Cell {
 		return cells
 	}
 	return append(cells, c)
+}
+
+// Union joins intervals that overlap or touch, in order. It alters the list.
+func Union(list []Interval) []Interval {
+	slices.SortFunc(list, func(a, b Interval) int { return cmp.Or(cmp.Compare(a.From, b.From), cmp.Compare(a.To, b.To)) })
+	var out []Interval
+	for _, i := range list {
+		if n := len(out); n > 0 && i.From <= out[n-1].To {
+			out[n-1].To = max(out[n-1].To, i.To)
+			continue
+		}
+		out = append(out, i)
+	}
+	return out
+}
+
+// Whole tells whether two tracks have everything in common, laid side by side
+// as they are.
+func (a *Alignment) Whole() bool {
+	return len(a.Common) == 1 && a.Common[0].Base == 0 && a.Common[0].Target == 0 && len(a.Added) == 0 && len(a.Removed) == 0
 }
 
 func appendInterval(list []Interval, i Interval) []Interval {

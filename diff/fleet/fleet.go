@@ -41,9 +41,18 @@ type Result struct {
 // Compare compiles both sides for every class of trains. The lengths are those
 // for which changes are listed.
 func Compare(base, target *schema.Route, d codes.Direction, cells []align.Cell, filter profile.Filter, lengths []unit.Distance) Result {
-	p := pair{base: profile.New(base, d, filter), target: profile.New(target, d, filter), cells: cells, direction: d}
-	p.distinguish()
+	return CompareSides(profile.New(base, d, filter), profile.New(target, d, filter), d, cells, lengths)
+}
+
+// CompareSides is Compare for sides that are prepared. Their rows and the cells
+// may be those only that can matter for trains up to the longest.
+func CompareSides(base, target *profile.Compiler, d codes.Direction, cells []align.Cell, lengths []unit.Distance) Result {
+	p := pair{base: base, target: target, cells: cells, direction: d}
 	var r Result
+	if len(cells) == 0 {
+		return r
+	}
+	p.distinguish()
 	for _, length := range lengths {
 		r.Changes = append(r.Changes, p.changes(length)...)
 	}

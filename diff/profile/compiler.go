@@ -55,8 +55,7 @@ func New(route *schema.Route, direction codes.Direction, filter Filter) *Compile
 	}
 	// Sources are listed in the order of the track.
 	slices.SortStableFunc(c.rows, func(a, b restriction) int {
-		return cmp.Or(cmp.Compare(a.start, b.start), cmp.Compare(a.end, b.end),
-			cmp.Compare(a.layer, b.layer), cmp.Compare(a.pos.Line, b.pos.Line))
+		return cmp.Or(comparePlace(&a, &b), cmp.Compare(a.pos.Line, b.pos.Line))
 	})
 	for i, r := range c.rows {
 		k := delayIndex(r.delay)
@@ -115,21 +114,20 @@ const NoMaximum = unit.MaxSpeed
 // maximum speed: at each point the lowest of all that hold there (SUBSET-026
 // 3.13.7), the maximum speed everywhere (3.11.8).
 func (c *Compiler) Sweep(sel Selection, length unit.Distance, maximum unit.Speed) step.Func {
+	return c.AppendSweep(make(step.Func, 0, len(c.rows)/2+1), sel, length, maximum)
+}
+
+// AppendSweep appends the profile to f, which must be empty: memory that is
+// used again.
+func (c *Compiler) AppendSweep(f step.Func, sel Selection, length unit.Distance, maximum unit.Speed) step.Func {
 	w := sweep{end: c.route.Track.Length()}
-	// 3.11.3.1.3, 3.11.4.6, 3.11.5.3: with train length delay the restriction
-	// holds until the rear has left it, one train length further in the
-	// direction of travel.
-	before, after := unit.Distance(0), length
-	if c.direction == codes.Reverse {
-		before, after = length, 0
-	}
+	before, after := c.shifts(length)
 	lists := [4]list{
 		{order: c.starts[0]},
 		{order: c.starts[1], shift: -before},
 		{order: c.ends[0], ends: true},
 		{order: c.ends[1], ends: true, shift: after},
 	}
-	f := make(step.Func, 0, len(c.rows)/2+1)
 	at := unit.Distance(0)
 	for at < w.end {
 		next := w.end
@@ -152,6 +150,17 @@ func (c *Compiler) Sweep(sel Selection, length unit.Distance, maximum unit.Speed
 		at = next
 	}
 	return f
+}
+
+// shifts gives how far train length delay moves the beginning and the end of a
+// row. With it the restriction holds until the rear has left it, one train
+// length further in the direction of travel (SUBSET-026 3.11.3.1.3, 3.11.4.6,
+// 3.11.5.3).
+func (c *Compiler) shifts(length unit.Distance) (before, after unit.Distance) {
+	if c.direction == codes.Reverse {
+		return length, 0
+	}
+	return 0, length
 }
 
 // list is the row ends of one kind that a sweep has still to meet.

@@ -5,7 +5,6 @@ import (
 
 	"speedtrail/diff/step"
 	"speedtrail/schema"
-	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
 
@@ -18,10 +17,7 @@ const TrainRow int32 = -1
 // track; TrainRow last. Every row that attains the speed is listed. Give it the
 // selection and the stretch of a compiled profile.
 func (c *Compiler) Governing(sel Selection, length unit.Distance, maximum unit.Speed, from, to unit.Distance, v unit.Speed) []int32 {
-	before, after := unit.Distance(0), length
-	if c.direction == codes.Reverse {
-		before, after = length, 0
-	}
+	before, after := c.shifts(length)
 	var rows []int32
 	for i := range c.rows {
 		if sel[i] != v {

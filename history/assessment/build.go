@@ -3,10 +3,13 @@ package assessment
 import (
 	"crypto/sha256"
 	"encoding/hex"
+	"runtime"
 	"slices"
 	"strconv"
 	"strings"
 	"time"
+
+	"golang.org/x/sync/errgroup"
 
 	"speedtrail/diff"
 	"speedtrail/diff/profile"
@@ -42,9 +45,10 @@ func Build(in Input) *Document {
 		Files:        files(in.Base.Files, in.Target.Files),
 		Folder:       in.Folder,
 		Options:      in.Options,
+		Policy:       Policies{Base: policy(in.Base), Target: policy(in.Target)},
 		Preparers:    in.Preparers,
 		Requests:     requests(in.Account),
-		Routes:       make([]Route, 0, len(in.Account.Routes)),
+		Routes:       make([]Route, len(in.Account.Routes)),
 		RulesVersion: diff.RulesVersion,
 		Target:       in.TargetRev,
 		Trains:       trains(in.Account),
@@ -52,16 +56,31 @@ func Build(in Input) *Document {
 	var places [][]int
 	c.Source, places = sourceFiles(in.Account)
 	groups := make([][]int, len(in.Account.Routes))
-	for i := range in.Account.Routes {
-		var r Route
-		r, groups[i] = route(&in.Account.Routes[i], places[i])
-		c.Routes = append(c.Routes, r)
-	}
+	sideBySide(len(groups), func(i int) { c.Routes[i], groups[i] = route(&in.Account.Routes[i], places[i]) })
 	c.Stretches = stretches(in.Account, groups)
 	c.Fleet = fleets(in.Account)
 	c.Figures = figures(in.Account)
 	c.Findings, c.Accepted = findings(&in, &c)
 	return &Document{Computed: c, Format: Format, Named: in.Named}
+}
+
+func policy(d *schema.Dataset) Policy {
+	signoff, signers := d.PolicyFiles()
+	return Policy{SignOff: string(signoff), AllowedSigners: string(signers)}
+}
+
+// sideBySide does n pieces of work, one a processor at a time. Each fills in its
+// own place, so that the result does not depend on which is done first.
+func sideBySide(n int, work func(i int)) {
+	var g errgroup.Group
+	g.SetLimit(runtime.GOMAXPROCS(0))
+	for i := range n {
+		g.Go(func() error {
+			work(i)
+			return nil
+		})
+	}
+	_ = g.Wait()
 }
 
 // files lists the files of both sides with their hashes.

@@ -48,6 +48,7 @@ type Computed struct {
 	Fleet        []Fleet      `json:"fleet"`
 	Folder       string       `json:"folder"` // the data set's folder in the repository, "." for its root
 	Options      Options      `json:"options"`
+	Policy       Policies     `json:"policy"`
 	Preparers    []Person     `json:"preparers"`
 	Requests     []Request    `json:"requests"` // in play
 	Routes       []Route      `json:"routes"`   // that differ
@@ -64,6 +65,19 @@ type Revision struct {
 	Commit    string `json:"commit"` // full hash
 	Committed string `json:"committed"`
 	Subject   string `json:"subject"`
+	Tree      string `json:"tree"` // hash of the data set folder's Git tree: its content
+}
+
+// Policies are the policies of both sides.
+type Policies struct {
+	Base   Policy `json:"base"`   // decides about this change
+	Target Policy `json:"target"` // decides about later ones, once this one is approved
+}
+
+// Policy is the content of the two policy files, empty where there is none.
+type Policy struct {
+	AllowedSigners string `json:"allowed_signers"`
+	SignOff        string `json:"signoff"`
 }
 
 // Person is a name and an e-mail address as commits carry them: a claim.

@@ -26,10 +26,10 @@ type FleetChange struct {
 	Before  int         `json:"before_kmh"`
 	From    string      `json:"from_km"`
 	Length  int64       `json:"length_mm"`
-	Lengths []int64     `json:"train_lengths_mm"`
-	Members []FleetPart `json:"trains"`
 	RunOut  bool        `json:"run_out"`
 	To      string      `json:"to_km"`
+	Lengths []int64     `json:"train_lengths_mm"`
+	Members []FleetPart `json:"trains"`
 }
 
 // FleetPart is a product of category sets.
@@ -79,20 +79,20 @@ type CrossingFigure struct {
 // CurveFigure is the cant deficiency on a curve for trains of equal speeds and
 // category.
 type CurveFigure struct {
-	After       int    `json:"after_kmh"`  // highest effective speed in the curve
-	Before      int    `json:"before_kmh"` // 0 where the base's track differs here
-	Cant        int    `json:"cant_mm"`
+	After       int    `json:"after_kmh"`      // highest effective speed in the curve
+	Before      int    `json:"before_kmh"`     // 0 where the base's track differs here
 	CantBefore  int    `json:"cant_before_mm"` // -1 where the base has no such curve
+	Cant        int    `json:"cant_mm"`
 	Category    int    `json:"category_mm"`
-	Deficiency  int64  `json:"deficiency_hundredths_mm"`        // after, hundredths of a millimetre
 	DeficiencyB int64  `json:"deficiency_before_hundredths_mm"` // before, with the radius and cant of then; 0 where not known
+	Deficiency  int64  `json:"deficiency_hundredths_mm"`        // after, hundredths of a millimetre
 	Direction   string `json:"direction" jsonschema:"enum=nominal,enum=reverse,enum=both"`
 	Excess      int64  `json:"excess_hundredths_mm"` // of the slowest train, below zero for a deficiency
 	From        string `json:"from_km"`
 	Lowest      int    `json:"lowest_kmh"` // of the slowest reference train
 	Over        bool   `json:"over"`       // the deficiency is above the category
-	Radius      int    `json:"radius_m"`
 	RadiusB     int    `json:"radius_before_m"`
+	Radius      int    `json:"radius_m"`
 	Route       string `json:"route"`
 	Row         string `json:"row"`
 	Slowest     string `json:"slowest"`

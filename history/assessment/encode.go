@@ -1,6 +1,7 @@
 package assessment
 
 import (
+	"bytes"
 	"crypto/sha256"
 	"encoding/hex"
 	"iter"
@@ -9,25 +10,24 @@ import (
 	"speedtrail/history/ledger"
 )
 
-// Encode writes the document as canonical JSON and gives its digest.
+// Encode writes the document as canonical JSON and gives its digest. The members
+// of every type stand in the canonical order already.
 func (d *Document) Encode() (body []byte, digest string, err error) {
-	computed, err := canon.Marshal(&d.Computed)
-	if err != nil {
-		return nil, "", err
-	}
-	named, err := canon.Marshal(d.Named)
-	if err != nil {
+	var b bytes.Buffer
+	b.WriteString(`{"computed":`)
+	start := b.Len()
+	if err := canon.AppendOrdered(&b, &d.Computed); err != nil {
 		return nil, "", err
 	}
 	sum := sha256.New()
 	sum.Write([]byte(Format + "\n"))
-	sum.Write(computed)
-	// The members in their canonical order, so that "computed" is made once.
-	body = make([]byte, 0, len(computed)+len(named)+100)
-	body = append(append(body, `{"computed":`...), computed...)
-	body = append(append(body, `,"format":"`...), Format...)
-	body = append(append(append(body, `","named":`...), named...), '}')
-	return body, hex.EncodeToString(sum.Sum(nil)), nil
+	sum.Write(b.Bytes()[start:])
+	b.WriteString(`,"format":"` + Format + `","named":`)
+	if err := canon.AppendOrdered(&b, &d.Named); err != nil {
+		return nil, "", err
+	}
+	b.WriteByte('}')
+	return b.Bytes(), hex.EncodeToString(sum.Sum(nil)), nil
 }
 
 // Decode reads a stored document.

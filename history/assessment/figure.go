@@ -13,34 +13,36 @@ import (
 
 // fleets writes the accounts for every train.
 func fleets(a *diff.Account) []Fleet {
-	out := []Fleet{}
-	for i := range a.Routes {
-		r := &a.Routes[i]
-		for _, f := range r.Fleet {
-			if len(f.Changes) == 0 && len(f.Reach) == 0 {
-				continue
+	perRoute := make([][]Fleet, len(a.Routes))
+	sideBySide(len(perRoute), func(i int) {
+		for k := range a.Routes[i].Fleet {
+			if f := &a.Routes[i].Fleet[k]; len(f.Changes) > 0 || len(f.Reach) > 0 {
+				perRoute[i] = append(perRoute[i], fleetOf(&a.Routes[i], f))
 			}
-			doc := Fleet{Route: r.ID, Direction: f.Direction.String(), Permanent: f.Permanent, Shortest: int64(f.Shortest), Longest: int64(f.Longest), Changes: []FleetChange{}, Reach: []Reach{}}
-			for _, x := range f.Reach {
-				doc.Reach = append(doc.Reach, Reach{From: r.Target.Track.Begins(x.From).String(), To: r.Target.Track.Ends(x.To).String()})
-			}
-			for _, c := range f.Changes {
-				change := FleetChange{
-					From: r.Target.Track.Begins(c.Target).String(), To: r.Target.Track.Ends(c.Target + c.Length).String(), Length: int64(c.Length),
-					Before: int(c.Before), After: int(c.After), RunOut: c.RunOut, Lengths: []int64{}, Members: []FleetPart{},
-				}
-				for _, l := range c.Lengths {
-					change.Lengths = append(change.Lengths, int64(l))
-				}
-				for k, p := range c.Products {
-					change.Members = append(change.Members, FleetPart{Who: p.String(), Represented: c.Represented[k]})
-				}
-				doc.Changes = append(doc.Changes, change)
-			}
-			out = append(out, doc)
 		}
+	})
+	return append([]Fleet{}, slices.Concat(perRoute...)...)
+}
+
+func fleetOf(r *diff.Route, f *diff.Fleet) Fleet {
+	doc := Fleet{Route: r.ID, Direction: f.Direction.String(), Permanent: f.Permanent, Shortest: int64(f.Shortest), Longest: int64(f.Longest), Changes: []FleetChange{}, Reach: []Reach{}}
+	for _, x := range f.Reach {
+		doc.Reach = append(doc.Reach, Reach{From: r.Target.Track.Begins(x.From).String(), To: r.Target.Track.Ends(x.To).String()})
 	}
-	return out
+	for _, c := range f.Changes {
+		change := FleetChange{
+			From: r.Target.Track.Begins(c.Target).String(), To: r.Target.Track.Ends(c.Target + c.Length).String(), Length: int64(c.Length),
+			Before: int(c.Before), After: int(c.After), RunOut: c.RunOut, Lengths: []int64{}, Members: []FleetPart{},
+		}
+		for _, l := range c.Lengths {
+			change.Lengths = append(change.Lengths, int64(l))
+		}
+		for k, p := range c.Products {
+			change.Members = append(change.Members, FleetPart{Who: p.String(), Represented: c.Represented[k]})
+		}
+		doc.Changes = append(doc.Changes, change)
+	}
+	return doc
 }
 
 // figures writes the figures of all routes.
@@ -61,6 +63,7 @@ func figures(a *diff.Account) Figures {
 				Before: x.Before, After: x.After, StrikeIn: int64(x.Place.StrikeIn), Warning: int64(x.Place.WarningDS),
 			})
 		}
+		first := len(out.Curves)
 		for _, x := range r.Figures.Curves {
 			f := curveFigure(a, r, &x)
 			same := func(g CurveFigure) bool {
@@ -70,8 +73,8 @@ func figures(a *diff.Account) Figures {
 				h.Trains = nil
 				return trains && reflect.DeepEqual(g, h)
 			}
-			if k := slices.IndexFunc(out.Curves, same); k >= 0 {
-				out.Curves[k].Direction = codes.Both.String()
+			if k := slices.IndexFunc(out.Curves[first:], same); k >= 0 {
+				out.Curves[first+k].Direction = codes.Both.String()
 				continue
 			}
 			out.Curves = append(out.Curves, f)

@@ -101,8 +101,13 @@ func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 	}
 	c.policy()
 	c.trains()
-	for i := range in.Account.Routes {
-		c.route(i)
+	perRoute := make([]collector, len(in.Account.Routes))
+	sideBySide(len(perRoute), func(i int) {
+		perRoute[i] = collector{in: in, doc: doc}
+		perRoute[i].route(i)
+	})
+	for i := range perRoute {
+		c.list = append(c.list, perRoute[i].list...)
 	}
 	c.requests()
 	c.joinDirections()
@@ -124,26 +129,25 @@ func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 // joinDirections makes one finding of two that say the same of both directions
 // of travel.
 func (c *collector) joinDirections() {
-	var list []ranked
+	opposite := map[string]string{
+		codes.Nominal.String(): codes.Reverse.String(), codes.Reverse.String(): codes.Nominal.String(),
+	}
+	list := c.list[:0]
+	alone := map[Finding][]int{} // places in list of findings of one direction
 	for _, f := range c.list {
-		if i := slices.IndexFunc(list, func(g ranked) bool { return f.otherDirection(g.Finding) }); i >= 0 {
-			list[i].Direction = codes.Both.String()
-			continue
+		other := f.Finding
+		other.Direction = opposite[f.Direction]
+		if other.Direction != "" {
+			if at := alone[other]; len(at) > 0 {
+				list[at[0]].Direction = codes.Both.String()
+				alone[other] = at[1:]
+				continue
+			}
+			alone[f.Finding] = append(alone[f.Finding], len(list))
 		}
 		list = append(list, f)
 	}
 	c.list = list
-}
-
-// otherDirection tells whether a finding says the same of the other direction of
-// travel.
-func (f ranked) otherDirection(g Finding) bool {
-	one, other := codes.Nominal.String(), codes.Reverse.String()
-	if !(f.Direction == one && g.Direction == other || f.Direction == other && g.Direction == one) {
-		return false
-	}
-	g.Direction = f.Direction
-	return f.Finding == g
 }
 
 // before sorts what is true first.

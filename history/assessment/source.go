@@ -37,11 +37,11 @@ func sourceFiles(a *diff.Account) (list []SourceFile, places [][]int) {
 	})
 	list = make([]SourceFile, len(refs))
 	for i, r := range refs {
-		list[i] = sourceFile(r.file)
 		if r.route >= 0 {
 			places[r.route][r.place] = i
 		}
 	}
+	sideBySide(len(refs), func(i int) { list[i] = sourceFile(refs[i].file) })
 	return list, places
 }
 

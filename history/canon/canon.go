@@ -32,6 +32,12 @@ func Marshal(v any) ([]byte, error) {
 	return value, nil
 }
 
+// AppendOrdered writes a value to b as Marshal does, in one pass. The types in it
+// must be structs with their members in the order of their names, slices, texts,
+// booleans and whole numbers below 2^53: then the encoder's bytes are canonical
+// as they come.
+func AppendOrdered(b *bytes.Buffer, v any) error { return json.MarshalWrite(b, v) }
+
 // Unmarshal reads canonical JSON into a value and refuses members that the value
 // does not have.
 func Unmarshal(body []byte, v any) error {

@@ -34,6 +34,10 @@ type Kind string
 const (
 	Ledger     Kind = "ledger" // the first: a random 128-bit id
 	Assessment Kind = "assessment"
+	Anchor     Kind = "anchor"   // puts a policy in force as the root of the line of approval
+	SignOff    Kind = "sign-off" // a decision on an assessment
+	InForce    Kind = "in-force" // a revision went into service
+	Revocation Kind = "revocation"
 )
 
 // TimeLayout is the form of an entry's time, always UTC.

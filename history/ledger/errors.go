@@ -30,6 +30,7 @@ var hints = map[error]string{
 	ErrDamaged:      "keep the file as it is and restore a backup; compare its head with one noted elsewhere",
 	ErrSymlink:      "name the file itself with --ledger",
 	ErrNoAssessment: "speedtrail register lists the assessments",
+	ErrExists:       "name a file that is not there yet with --ledger",
 }
 
 // Error is a failure of a class, with what was underneath.

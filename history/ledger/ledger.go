@@ -36,7 +36,7 @@ import (
 const applicationID = 0x73707472
 
 // Format is the number of the ledger's format: how many migrations it has had.
-const Format = 1
+const Format = 2
 
 //go:embed migrations/*.sql
 var migrations embed.FS
@@ -55,7 +55,14 @@ type Ledger struct {
 	db   *sql.DB
 	conn *sql.Conn
 	id   string
+	// format is that of the file: older than Format where it was opened for
+	// reading only.
+	format int
 }
+
+// firstFormat is the number in the first entry: of the form of the entries, not
+// of the tables beside them.
+const firstFormat = 1
 
 // firstBody is the body of the first entry.
 type firstBody struct {
@@ -132,6 +139,7 @@ func (l *Ledger) prepare(ctx context.Context, o Options) error {
 		return err
 	}
 	if empty {
+		l.format = Format
 		if !o.Create || o.ReadOnly {
 			return fail(ErrNoLedger, nil)
 		}
@@ -148,6 +156,11 @@ func (l *Ledger) prepare(ctx context.Context, o Options) error {
 	}
 	if empty {
 		if err := l.create(ctx, o.Now()); err != nil {
+			return err
+		}
+	}
+	if l.format < Format && !o.ReadOnly {
+		if err := l.upgrade(ctx); err != nil {
 			return err
 		}
 	}
@@ -193,7 +206,11 @@ func (l *Ledger) check(ctx context.Context) (empty bool, err error) {
 	case format > Format:
 		return false, fail(ErrNewer, fmt.Errorf("format %d, this version knows %d", format, Format))
 	}
-	want, err := expected(ctx)
+	if format < 1 {
+		return false, fail(ErrForeign, fmt.Errorf("format %d", format))
+	}
+	l.format = int(format)
+	want, err := expected(ctx, l.format)
 	if err != nil {
 		return false, err
 	}
@@ -222,8 +239,8 @@ func objects(ctx context.Context, conn *sql.Conn) ([]string, error) {
 	return list, rows.Err()
 }
 
-// expected lists the objects of a ledger, by making one in memory.
-func expected(ctx context.Context) ([]string, error) {
+// expected lists the objects of a ledger of a format, by making one in memory.
+func expected(ctx context.Context, format int) ([]string, error) {
 	db, err := sql.Open("sqlite3", ":memory:")
 	if err != nil {
 		return nil, err
@@ -234,7 +251,7 @@ func expected(ctx context.Context) ([]string, error) {
 		return nil, err
 	}
 	defer conn.Close()
-	if err := migrate(ctx, conn, 0); err != nil {
+	if err := migrate(ctx, conn, 0, format); err != nil {
 		return nil, err
 	}
 	return objects(ctx, conn)
@@ -256,13 +273,13 @@ func firstDifference(have, want []string) string {
 	return "its objects differ"
 }
 
-// migrate brings a database from a format to the newest.
-func migrate(ctx context.Context, conn *sql.Conn, from int) error {
+// migrate brings a database from a format to another.
+func migrate(ctx context.Context, conn *sql.Conn, from, to int) error {
 	files, err := fs.Glob(migrations, "migrations/*.sql")
 	if err != nil {
 		return err
 	}
-	for _, file := range files[from:] {
+	for _, file := range files[from:to] {
 		text, err := fs.ReadFile(migrations, file)
 		if err != nil {
 			return err
@@ -283,7 +300,7 @@ func (l *Ledger) create(ctx context.Context, now time.Time) error {
 		if err != nil || !empty {
 			return err
 		}
-		if err := migrate(ctx, l.conn, 0); err != nil {
+		if err := migrate(ctx, l.conn, 0, Format); err != nil {
 			return err
 		}
 		if err := l.exec(ctx, fmt.Sprintf("PRAGMA application_id = %d", applicationID), fmt.Sprintf("PRAGMA user_version = %d", Format)); err != nil {
@@ -293,11 +310,29 @@ func (l *Ledger) create(ctx context.Context, now time.Time) error {
 		if _, err := rand.Read(id); err != nil {
 			return err
 		}
-		body, err := canon.Marshal(firstBody{Format: Format, ID: hex.EncodeToString(id)})
+		body, err := canon.Marshal(firstBody{Format: firstFormat, ID: hex.EncodeToString(id)})
 		if err != nil {
 			return err
 		}
 		return l.insertEntry(ctx, chain.Next(chain.Head{}, now, chain.Ledger, body))
+	})
+}
+
+// upgrade brings an older ledger to this format, in one transaction.
+func (l *Ledger) upgrade(ctx context.Context) error {
+	return l.transaction(ctx, func() error {
+		// Another process may have done it meanwhile.
+		if _, err := l.check(ctx); err != nil || l.format == Format {
+			return err
+		}
+		if err := migrate(ctx, l.conn, l.format, Format); err != nil {
+			return err
+		}
+		if err := l.exec(ctx, fmt.Sprintf("PRAGMA user_version = %d", Format)); err != nil {
+			return err
+		}
+		l.format = Format
+		return nil
 	})
 }
 

@@ -31,7 +31,15 @@ func TestRepack(t *testing.T) {
 				t.Fatal(err)
 			}
 			defer open.Close()
+			hash, _ := parseHash(g.git("rev-parse", "main:network/routes/r1.csv"))
+			found, err := r.find(hash, "the test")
+			if err != nil {
+				t.Fatal(err)
+			}
 			g.git("repack", "-adf", "--quiet")
+			if data, err := r.content(found, "the test"); string(data) != "before the folder in Git's order\n" || err != nil {
+				t.Errorf("an object that was found before: %q, %v", data, err)
+			}
 			want := g.git("cat-file", "blob", "main:network/speed.csv") + "\n"
 			if data, err := io.ReadAll(open); string(data) != want || err != nil {
 				t.Errorf("a file that was opened before: %d bytes, %v", len(data), err)

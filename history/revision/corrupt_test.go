@@ -11,7 +11,8 @@ import (
 	"testing"
 )
 
-// readAll reads every file of a commit and gives the first error.
+// readAll reads every file of a commit, at once and in pieces, and gives the
+// first error. Both ways must find it.
 func readAll(r *Repo, commit string) error {
 	fsys, err := r.Snapshot(commit, ".")
 	if err != nil {
@@ -21,16 +22,16 @@ func readAll(r *Repo, commit string) error {
 		if err != nil || !e.Type().IsRegular() {
 			return err
 		}
-		if _, err := fs.ReadFile(fsys, name); err != nil {
-			return err
+		_, whole := fs.ReadFile(fsys, name)
+		f, pieces := fsys.Open(name)
+		if pieces == nil {
+			defer f.Close()
+			_, pieces = io.Copy(io.Discard, f)
 		}
-		f, err := fsys.Open(name)
-		if err != nil {
-			return err
+		if (whole == nil) != (pieces == nil) {
+			return fmt.Errorf("%q: read at once %v, in pieces %v", name, whole, pieces)
 		}
-		defer f.Close()
-		_, err = io.Copy(io.Discard, f)
-		return err
+		return whole
 	})
 }
 
@@ -59,6 +60,11 @@ func TestCorruptLoose(t *testing.T) {
 		g := sample(t)
 		hash, tip := g.git("rev-parse", what), g.git("rev-parse", "main")
 		whole := readFile(t, g.loose(hash))
+		other := g.git("rev-parse", map[string]string{
+			"main": "main~1", "main^{tree}": "main~1^{tree}", "main:network/routes": "main:network/tools",
+			"main:network/speed.csv": "main:elsewhere.txt",
+		}[what])
+		damages["another object of its kind"] = func(string) string { return readFile(t, g.loose(other)) }
 		for name, damage := range damages {
 			writeFile(t, g.loose(hash), damage(whole))
 			err := readAll(g.open(), tip)

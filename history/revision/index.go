@@ -7,6 +7,7 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 
 	"github.com/go-git/go-git/v5/plumbing/format/index"
@@ -50,20 +51,31 @@ func (r *Repo) Tracked(name string) (bool, error) {
 	if r.at.workTree == "" {
 		return false, nil
 	}
+	var inside []string // as the index would name it
+	for _, path := range []string{name, realPath(name)} {
+		rel, err := filepath.Rel(r.at.workTree, realParent(path))
+		if err != nil || !filepath.IsLocal(rel) {
+			continue // on another volume, or outside
+		}
+		inside = append(inside, filepath.ToSlash(rel))
+	}
+	// Most ledgers lie outside or in .git, where Git tracks nothing: that needs no
+	// look at the index, which is large.
+	inside = slices.DeleteFunc(inside, func(rel string) bool {
+		first, _, _ := strings.Cut(rel, "/")
+		return strings.EqualFold(first, ".git")
+	})
+	if len(inside) == 0 {
+		return false, nil
+	}
 	entries, err := r.readIndex()
 	if err != nil {
 		return false, err
 	}
 	fold := r.config.flag("core.ignorecase", false)
-	same := func(a, b string) bool { return a == b || fold && strings.EqualFold(a, b) }
-	for _, path := range []string{name, realPath(name)} {
-		rel, err := filepath.Rel(r.at.workTree, realParent(path))
-		if err != nil {
-			continue // on another volume
-		}
-		rel = filepath.ToSlash(rel)
+	for _, rel := range inside {
 		for _, e := range entries {
-			if same(e.Name, rel) {
+			if e.Name == rel || fold && strings.EqualFold(e.Name, rel) {
 				return true, nil
 			}
 		}

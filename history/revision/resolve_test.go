@@ -207,6 +207,14 @@ func TestResolveReflog(t *testing.T) {
 	if a.Hash != b.Hash || errA != nil || errB != nil {
 		t.Errorf("v1@{0} is %q (%v), v1 %q (%v)", a.Hash, errA, b.Hash, errB)
 	}
+	// A reflog whose beginning was cut off still knows what came before.
+	log := readFile(t, g.path(".git/logs/refs/heads/work"))
+	_, cut, _ := strings.Cut(log, "\n")
+	g.write(".git/logs/refs/heads/work", cut)
+	checkResolve(t, g, g.open(), []string{"work@{0}", "work@{1}", "work@{2}", "work@{3}"})
+	g.write(".git/logs/refs/heads/work", "rubbish\n")
+	_, err := g.open().Resolve("work@{1}")
+	wantClass(t, err, ErrCorrupt, "reflog", "refs/heads/work")
 	g.git("checkout", "--quiet", "--detach")
 	checkResolve(t, g, g.open(), []string{"@{0}", "@{1}", "@{u}", "HEAD@{u}", "@{-1}"})
 }

@@ -93,6 +93,7 @@ func TestReadCSVFaults(t *testing.T) {
 		{"cells too many", "from_km,to_km\n0,1" + wide + "\n", "t.csv:2:1: 66 cells in a row, at most 64 are allowed"},
 		{"semicolons", "from_km;to_km\n0;1\n", "t.csv:1:1: columns are separated by semicolons, commas are needed"},
 		{"not UTF-8", "from_km,to_km,note\n0,1,\xe9\n1,2,ok\n2,3,\xff\n", "t.csv:2:5: byte 0xe9 is not valid UTF-8, save the file as UTF-8\nt.csv:4:5: byte 0xff is not valid UTF-8, save the file as UTF-8"},
+		{"not UTF-8 behind letters that are", "from_km,to_km,note\n0,1,ö日\xe9\n", "t.csv:2:10: byte 0xe9 is not valid UTF-8, save the file as UTF-8"},
 		{"half a letter", "from_km,to_km,note\n0,1,\xe2\x82", "t.csv:2:5: byte 0xe2 is not valid UTF-8, save the file as UTF-8"},
 		{"NUL", "from_km,to_km\n0,1\n\x00", "t.csv:3:1: the file holds a NUL byte, it is not text"},
 		{"NUL and CRLF", "from_km,to_km\r\n0,\x001\r\n", "t.csv:2:3: the file holds a NUL byte, it is not text"},

@@ -98,7 +98,7 @@ func ReadTOML(file string, content []byte, faults *source.Collector) *Map {
 		faults.Add(at, "not valid TOML: %s", source.Visible(strings.TrimPrefix(problem, "toml: ")))
 		return nil
 	}
-	r := tomlReader{file: file}
+	r := tomlReader{file: file, lines: lineStarts(content)}
 	r.p.Reset(content)
 	top := newMap(source.Position{File: file, Line: 1})
 	here := top
@@ -121,16 +121,33 @@ func ReadTOML(file string, content []byte, faults *source.Collector) *Map {
 }
 
 type tomlReader struct {
-	file string
-	p    unstable.Parser
+	file  string
+	p     unstable.Parser
+	lines []int // offsets at which lines begin
+}
+
+func lineStarts(content []byte) []int {
+	lines := []int{0}
+	for i, c := range content {
+		if c == '\n' {
+			lines = append(lines, i+1)
+		}
+	}
+	return lines
 }
 
 func (r *tomlReader) pos(n *unstable.Node) source.Position {
 	if n.Raw.Length == 0 {
 		return source.Position{}
 	}
-	start := r.p.Shape(n.Raw).Start
-	return source.Position{File: r.file, Line: start.Line, Column: start.Column}
+	// The parser can tell the place, too, but counts the lines from the top
+	// each time.
+	at := int(n.Raw.Offset)
+	line, begins := slices.BinarySearch(r.lines, at)
+	if !begins {
+		line--
+	}
+	return source.Position{File: r.file, Line: line + 1, Column: at - r.lines[line] + 1}
 }
 
 type tomlKey struct {

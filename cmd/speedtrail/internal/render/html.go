@@ -72,6 +72,9 @@ type page struct {
 
 	Motion, CrossingWords, CurveWords string
 
+	Standing string
+	Signed   []pageSigned
+
 	Rows, Quiet         []pageSourceRow
 	RowsLeft, QuietLeft int
 }
@@ -126,6 +129,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	p.Policy = "default-src 'none'; style-src '" + inlineHash(string(p.CSS)) + "'; script-src '" + inlineHash(pageJS) + "'"
 	p.Times = runningTimes(c)
 	p.fillFindings()
+	p.fillSigned()
 	p.fillStretches()
 	p.fillDeclared()
 	p.fillFleet()

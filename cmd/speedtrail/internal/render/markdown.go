@@ -102,6 +102,7 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 		add("\n%d more changes are not shown here.\n", all-shown)
 	}
 	markdownAccount(&b, c)
+	markdownSigned(&b, r)
 	add("\n## Caution\n\n%s\n", Caution)
 	_, err := io.WriteString(w, b.String())
 	return err

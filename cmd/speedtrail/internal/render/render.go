@@ -24,10 +24,29 @@ const Caution = "speedtrail is an aid to review. It is not a safety-approved too
 // Record is what the ledger knows about an assessment; zero for one that is not
 // recorded.
 type Record struct {
-	Ledger string `json:"ledger"` // id
-	Number int64  `json:"number"`
-	Digest string `json:"digest"`
-	State  string `json:"state"` // a word: open, ...
+	Blocks     []string  `json:"blocks"` // what keeps it from being approved
+	Digest     string    `json:"digest"`
+	Ledger     string    `json:"ledger"`  // id
+	Missing    []string  `json:"missing"` // roles that lack people
+	Number     int64     `json:"number"`
+	SignOffs   []SignOff `json:"sign_offs"`
+	State      string    `json:"state"`      // open, partly signed, approved, rejected
+	Superseded int64     `json:"superseded"` // by another approved assessment from the same base; 0: no
+}
+
+// SignOff is a decision that somebody signed.
+type SignOff struct {
+	Assessment  int64  `json:"assessment"` // of the same content; a rejection of another assessment counts as well
+	Command     string `json:"command"`    // that checks it with no other tool
+	Decision    string `json:"decision"`
+	Entry       int64  `json:"entry"`
+	Fingerprint string `json:"key"`
+	Reason      string `json:"reason"`
+	Role        string `json:"role"`
+	Signature   string `json:"signature"`
+	Signer      string `json:"signer"`
+	Statement   string `json:"statement"`
+	Time        string `json:"time"` // as the signer states it
 }
 
 // Style is how text looks where it goes to.

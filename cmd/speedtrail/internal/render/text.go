@@ -28,6 +28,7 @@ func Text(w io.Writer, d *assessment.Document, r Record, s Style) error {
 	p.fleet()
 	p.figures()
 	p.sources()
+	p.signOffs()
 	p.end()
 	return p.err
 }

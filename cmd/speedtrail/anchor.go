@@ -1,0 +1,228 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"strings"
+	"time"
+
+	"github.com/spf13/cobra"
+
+	"speedtrail/history"
+	"speedtrail/history/approval"
+	"speedtrail/history/chain"
+	"speedtrail/history/signoff"
+	"speedtrail/schema/source"
+)
+
+func (a *app) anchorCommand() *cobra.Command {
+	var signs, brings []string
+	var write, role, signer, reason string
+	var yes bool
+	c := &cobra.Command{
+		Use:   "anchor REV --sign ROLE=KEYFILE ... --reason TEXT",
+		Short: "put the policy of a revision in force as the root of the line of approval",
+		Long: `anchor records the policy (signoff.toml and allowed_signers) and the data of a
+revision as the root from which approvals start. There is one for each ledger
+and data set folder. It is signed by people who satisfy every role of the policy:
+with their keys at hand (--sign ROLE=KEYFILE, repeated), or each elsewhere: --write
+FILE --role ROLE --signer PRINCIPAL writes a statement, ssh-keygen -Y sign -n
+speedtrail-signoff FILE signs it, --bring FILE takes it and FILE.sig up.
+
+Its hash is printed. Note it elsewhere: verify --anchor HASH proves by it that the
+root is still this one.`,
+		Args: arguments(1, 1),
+		RunE: func(c *cobra.Command, args []string) error {
+			switch {
+			case write == "" && len(signs)+len(brings) == 0:
+				return badCall("--sign ROLE=KEYFILE for each role, or in two steps --write FILE and --bring FILE", "nobody signs the anchor")
+			case write != "" && (role == "" || signer == ""):
+				return badCall("--write FILE --role ROLE --signer PRINCIPAL", "for whom the statement is written is not said")
+			case (write != "" || len(signs) > 0) && reason == "":
+				return badCall("--reason says why, for everyone who reads it later", "--reason is missing")
+			}
+			return a.anchor(c.Context(), args[0], anchoring{signs, brings, write, role, signer, reason, yes})
+		},
+	}
+	f := c.Flags()
+	f.StringArrayVar(&signs, "sign", nil, "sign in a role with a private key: `ROLE=KEYFILE` (repeatable)")
+	f.StringArrayVar(&brings, "bring", nil, "take up the statement in a `file` and its signature in FILE.sig (repeatable)")
+	f.StringVar(&write, "write", "", "write a statement to a `file` to be signed elsewhere, and record nothing")
+	f.StringVar(&role, "role", "", "the role of --write")
+	f.StringVar(&signer, "signer", "", "the `principal` of --write")
+	f.StringVar(&reason, "reason", "", "why, one line of at most 500 bytes")
+	f.BoolVarP(&yes, "yes", "y", false, "do not ask")
+	return c
+}
+
+type anchoring struct {
+	signs, brings               []string
+	write, role, signer, reason string
+	yes                         bool
+}
+
+func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
+	if rev == workingTree {
+		return badCall("commit the policy first", "the working tree cannot be anchored")
+	}
+	repo, err := a.openRepo()
+	if err != nil {
+		return err
+	}
+	defer repo.Close()
+	folder, err := a.folder()
+	if err != nil {
+		return err
+	}
+	s, err := a.openSide(repo, rev)
+	if err != nil {
+		return err
+	}
+	tree, signOff, signers, err := (&checker{a: a}).content(ctx, repo, s.commit.Hash, folder)
+	if err != nil {
+		return err
+	}
+	l, err := a.openLedger(ctx, true)
+	if err != nil {
+		return err
+	}
+	defer l.Close()
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return err
+	}
+	p := line.Policy(signOff, signers)
+	switch {
+	case p.Hash == "":
+		return refused(fmt.Errorf("%s has no policy (signoff.toml and allowed_signers) in the folder %s", rev, folder))
+	case p.Problem != nil:
+		return &sideError{s.label(), p.Problem}
+	}
+	statement := signoff.Statement{
+		Kind: signoff.Anchor, Ledger: l.ID(), Revision: s.commit.Hash, Folder: folder, Content: tree, Policy: p.Hash,
+		Reason: o.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
+	}
+	if o.write != "" {
+		statement.Role, statement.Signer = o.role, o.signer
+		_, err := (&signing{write: o.write}).finish(a, statement, nil)
+		return err
+	}
+	body := approval.AnchorBody{AllowedSigners: signers, Format: approval.AnchorFormat, SignOff: signOff}
+	for _, sign := range o.signs {
+		role, file, ok := strings.Cut(sign, "=")
+		if !ok {
+			return badCall("--sign ROLE=KEYFILE, for example --sign checker=key", "unknown value %q for --sign", sign)
+		}
+		key, err := readKey(a, file)
+		if err != nil {
+			return err
+		}
+		one := statement
+		one.Role = role
+		flags := &signing{yes: o.yes}
+		if err := flags.complete(&one, key, p.Parsed); err != nil {
+			return err
+		}
+		result, err := flags.finish(a, one, key)
+		if err != nil {
+			return err
+		}
+		body.Statements = append(body.Statements, approval.Signed{Format: approval.AnchorFormat, Signature: string(result.signature), Statement: string(result.statement)})
+	}
+	for _, file := range o.brings {
+		result, err := (&signing{statement: file, signature: file + ".sig"}).brought()
+		if err != nil {
+			return err
+		}
+		body.Statements = append(body.Statements, approval.Signed{Format: approval.AnchorFormat, Signature: string(result.signature), Statement: string(result.statement)})
+	}
+	head, err := history.RecordAnchor(ctx, l, body, time.Now())
+	switch {
+	case errors.Is(err, approval.ErrRefused), errors.Is(err, signoff.ErrMalformed), errors.Is(err, signoff.ErrSignature):
+		return refused(err)
+	case err != nil:
+		return fmt.Errorf("the anchor was not recorded: %w", err)
+	}
+	a.remark("the policy of %s is in force; anchor %s (note it elsewhere: verify --anchor proves by it that the root is still this one); head of the ledger %s", source.Visible(rev), head.Hash, head)
+	return nil
+}
+
+func (a *app) revokeCommand() *cobra.Command {
+	var s signing
+	c := &cobra.Command{
+		Use:   "revoke FINGERPRINT --role ROLE --reason TEXT --key FILE",
+		Short: "take a key out of use",
+		Long: `revoke records that nothing that a key signs from now on counts. It is signed by
+the key's owner (--role owner), or by somebody who may sign in a role that is
+independent of preparer. Assessments that the key has signed before are listed for
+review.`,
+		Args: arguments(1, 1),
+		RunE: func(c *cobra.Command, args []string) error {
+			if err := s.check(); err != nil {
+				return err
+			}
+			if s.statement == "" && s.role == "" {
+				return badCall("--role owner, or a role of the policy", "--role is missing")
+			}
+			return a.revoke(c.Context(), args[0], &s)
+		},
+	}
+	s.flags(c)
+	c.Flags().StringVar(&s.role, "role", "", "owner, or a role of the policy")
+	return c
+}
+
+func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error {
+	folder, err := a.folder()
+	if err != nil {
+		return err
+	}
+	l, err := a.openLedger(ctx, s.write == "")
+	if err != nil {
+		return err
+	}
+	defer l.Close()
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return err
+	}
+	if s.statement != "" {
+		brought, err := s.brought()
+		if err != nil {
+			return err
+		}
+		return a.recordSigned(ctx, l, chain.Revocation, brought)
+	}
+	p := line.Newest(folder)
+	if p.Parsed == nil {
+		return refused(fmt.Errorf("no policy is anchored for the folder %s", folder))
+	}
+	key, done, err := s.signerKey(a, p.Parsed)
+	if err != nil {
+		return err
+	}
+	defer done()
+	statement := signoff.Statement{
+		Kind: signoff.Revocation, Ledger: l.ID(), Folder: folder, Policy: p.Hash, Key: fingerprint, Role: s.role, Reason: s.reason,
+		Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
+	}
+	if err := s.complete(&statement, key, p.Parsed); err != nil {
+		return err
+	}
+	result, err := s.finish(a, statement, key)
+	if err != nil || result == nil {
+		return err
+	}
+	if err := a.recordSigned(ctx, l, chain.Revocation, result); err != nil {
+		return err
+	}
+	for _, r := range line.SignOffs() {
+		if r.Fingerprint == fingerprint {
+			fmt.Fprintf(a.out, "review assessment %d: %s signed it as %s (%s) with this key, entry %d\n", r.Assessment, source.Visible(r.Signer), r.Role, r.Decision, r.Entry.Seq)
+		}
+	}
+	return nil
+}
+
+func joined(list []string) string { return strings.Join(list, ", ") }

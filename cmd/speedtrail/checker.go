@@ -1,0 +1,73 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"io/fs"
+	"slices"
+
+	"speedtrail/diff"
+	"speedtrail/history"
+	"speedtrail/history/assessment"
+	"speedtrail/history/revision"
+)
+
+// checker re-derives from Git what the ledger says. It opens the repository anew
+// for each call, so that calls can run side by side.
+type checker struct{ a *app }
+
+// Recompute computes an assessment anew and gives its digest.
+func (c *checker) Recompute(ctx context.Context, doc *assessment.Document) (string, error) {
+	repo, err := c.a.openRepo()
+	if err != nil {
+		return "", err
+	}
+	defer repo.Close()
+	return c.recompute(ctx, repo, doc)
+}
+
+func (c *checker) recompute(ctx context.Context, repo *revision.Repo, doc *assessment.Document) (string, error) {
+	d := &doc.Computed
+	if d.RulesVersion != diff.RulesVersion {
+		return "", history.ErrOtherRules
+	}
+	// A call of its own: its folder is that of the assessment, and it shows no
+	// progress.
+	one := &app{in: c.a.in, out: c.a.out, err: c.a.err, repo: c.a.repo, data: d.Folder, quiet: true}
+	options := d.Options
+	options.Requests = slices.Clone(options.Requests)
+	again, err := one.compute(ctx, repo, d.Base.Commit, d.Target.Commit, options)
+	if err != nil {
+		return "", err
+	}
+	_, digest, err := again.Encode()
+	return digest, err
+}
+
+// Content gives the tree of a folder at a commit, and the policy files there.
+func (c *checker) Content(ctx context.Context, commit, folder string) (tree, signoff, allowedSigners string, err error) {
+	repo, err := c.a.openRepo()
+	if err != nil {
+		return "", "", "", err
+	}
+	defer repo.Close()
+	return c.content(ctx, repo, commit, folder)
+}
+
+func (c *checker) content(_ context.Context, repo *revision.Repo, commit, folder string) (tree, signoff, allowedSigners string, err error) {
+	files, err := repo.Snapshot(commit, folder)
+	if err != nil {
+		return "", "", "", err
+	}
+	read := func(name string) string {
+		content, readErr := fs.ReadFile(files, name)
+		if readErr != nil && !isNotExist(readErr) {
+			err = readErr
+		}
+		return string(content)
+	}
+	signoff, allowedSigners = read("signoff.toml"), read("allowed_signers")
+	return content(files), signoff, allowedSigners, err
+}
+
+func isNotExist(err error) bool { return errors.Is(err, fs.ErrNotExist) }

@@ -1,0 +1,297 @@
+package main
+
+import (
+	"context"
+	"fmt"
+	"io"
+	"strings"
+	"time"
+
+	"github.com/spf13/cobra"
+
+	"speedtrail/history"
+	"speedtrail/history/approval"
+	"speedtrail/history/chain"
+	"speedtrail/history/signoff"
+	"speedtrail/schema"
+	"speedtrail/schema/source"
+)
+
+func (a *app) inforceCommand() *cobra.Command {
+	var when, route, at string
+	c := &cobra.Command{
+		Use:   "inforce [--when T [--route R --at KM]]",
+		Short: "what was in force when",
+		Long: `inforce lists which revisions went into service when, by whose record, and what
+about it needs eyes: revisions in service without approval, approved ones that never
+went into service. Exit status 1 if there is any.
+
+With --when it answers which revision was in force at an instant, with the whole
+chain of evidence; with --route and --at also the effective speed at a point for
+every reference train of that revision, temporary restrictions by their validity.`,
+		Example: `  speedtrail inforce
+  speedtrail inforce --when 2026-03-14T05:12:00Z --route SM1 --at 12.4
+  speedtrail inforce record release-2026.1 --since 2026-03-08T03:00:00Z --reason "timetable change" --key ~/.ssh/id_ed25519`,
+		Args: arguments(0, 0),
+		RunE: func(c *cobra.Command, _ []string) error {
+			if (route == "") != (at == "") {
+				return badCall("--route R --at KM", "--route and --at belong together")
+			}
+			if when == "" {
+				if route != "" {
+					return badCall("for example --when 2026-03-14T05:12:00Z", "--when is missing")
+				}
+				return a.inforceLog(c.Context())
+			}
+			t, err := parseInstant(when, "--when")
+			if err != nil {
+				return err
+			}
+			return a.inforceWhen(c.Context(), t, route, at)
+		},
+	}
+	a.outputFlags(c, "text", "json")
+	c.Flags().StringVar(&when, "when", "", "an `instant`, RFC 3339 with a time zone")
+	c.Flags().StringVar(&route, "route", "", "the `id` of a route")
+	c.Flags().StringVar(&at, "at", "", "a position in `km`")
+	c.AddCommand(a.inforceRecordCommand())
+	return c
+}
+
+// parseInstant reads a date-time with its time zone.
+func parseInstant(text, option string) (time.Time, error) {
+	t, err := time.Parse(time.RFC3339, text)
+	if err != nil {
+		return t, badCall("write it as 2026-03-14T05:12:00Z or 2026-03-14T06:12:00+01:00", "%s %q is no date-time with a time zone", option, text)
+	}
+	return t.UTC(), nil
+}
+
+func (a *app) inforceRecordCommand() *cobra.Command {
+	var s signing
+	var since string
+	var routes []string
+	var replaces, voids int64
+	c := &cobra.Command{
+		Use:   "record REV --since T --reason TEXT --key FILE",
+		Short: "record that a revision went into service",
+		Long: `record states that a revision is in force from an instant on, on the whole network or
+on some routes. It is signed by somebody who may take the role in-service by the
+newest approved policy. An earlier record is corrected by a new one that replaces or
+voids it.`,
+		Args: arguments(1, 1),
+		RunE: func(c *cobra.Command, args []string) error {
+			if err := s.check(); err != nil {
+				return err
+			}
+			var t time.Time
+			if s.statement == "" {
+				var err error
+				if t, err = parseInstant(since, "--since"); err != nil {
+					return err
+				}
+			}
+			corrects := approval.CorrectsNothing
+			switch {
+			case replaces > 0 && voids > 0:
+				return badCall("choose one", "--replaces and --voids are both given")
+			case replaces > 0:
+				corrects = fmt.Sprintf("%s %d", approval.Replaces, replaces)
+			case voids > 0:
+				corrects = fmt.Sprintf("%s %d", approval.Voids, voids)
+			}
+			return a.inforceRecord(c.Context(), args[0], t, routes, corrects, &s)
+		},
+	}
+	s.flags(c)
+	c.Flags().StringVar(&since, "since", "", "the `instant` from which on, RFC 3339 with a time zone")
+	c.Flags().StringSliceVar(&routes, "routes", nil, "the `ids` of routes; the whole network unless given")
+	c.Flags().Int64Var(&replaces, "replaces", 0, "the `entry` of a record that this one replaces")
+	c.Flags().Int64Var(&voids, "voids", 0, "the `entry` of a record that was wrong and that nothing takes the place of")
+	return c
+}
+
+func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, routes []string, corrects string, s *signing) error {
+	l, err := a.openLedger(ctx, s.write == "")
+	if err != nil {
+		return err
+	}
+	defer l.Close()
+	if s.statement != "" {
+		brought, err := s.brought()
+		if err != nil {
+			return err
+		}
+		return a.recordSigned(ctx, l, chain.InForce, brought)
+	}
+	repo, err := a.openRepo()
+	if err != nil {
+		return err
+	}
+	defer repo.Close()
+	if rev == workingTree {
+		return badCall("name a commit", "the working tree cannot be in force")
+	}
+	at, err := a.openSide(repo, rev)
+	if err != nil {
+		return err
+	}
+	data, err := schema.Load(ctx, at.files)
+	if err != nil {
+		return &sideError{at.label(), err}
+	}
+	for _, id := range routes {
+		if routeByID(data, id) == nil {
+			return badCall("routes of that revision: "+strings.Join(routeIDs(data), ", "), "%s has no route %q", rev, id)
+		}
+	}
+	folder, err := a.folder()
+	if err != nil {
+		return err
+	}
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return err
+	}
+	p := line.Newest(folder)
+	if p.Parsed == nil {
+		return refused(fmt.Errorf("no policy is anchored for the folder %s", folder))
+	}
+	key, done, err := s.signerKey(a, p.Parsed)
+	if err != nil {
+		return err
+	}
+	defer done()
+	statement := signoff.Statement{
+		Kind: signoff.InForce, Ledger: l.ID(), Revision: at.commit.Hash, Folder: folder, Content: content(at.files), Policy: p.Hash, Routes: routes,
+		Since: since, Corrects: corrects, Role: approval.InServiceRole, Reason: s.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
+	}
+	if err := s.complete(&statement, key, p.Parsed); err != nil {
+		return err
+	}
+	result, err := s.finish(a, statement, key)
+	if err != nil || result == nil {
+		return err
+	}
+	if err := a.recordSigned(ctx, l, chain.InForce, result); err != nil {
+		return err
+	}
+	if !line.ApprovedContent(folder, statement.Content) && !strings.HasPrefix(corrects, approval.Voids) {
+		a.remark("! the revision is not approved: finding %s", history.ServiceUnapproved)
+	}
+	return nil
+}
+
+func routeByID(d *schema.Dataset, id string) *schema.Route {
+	for _, r := range d.Routes {
+		if r.ID == id {
+			return r
+		}
+	}
+	return nil
+}
+
+func routeIDs(d *schema.Dataset) []string {
+	var ids []string
+	for _, r := range d.Routes {
+		ids = append(ids, r.ID)
+	}
+	return ids
+}
+
+// serviceRecord is the JSON form of an in-force record.
+type serviceRecord struct {
+	Entry    int64    `json:"entry"`
+	Revision string   `json:"revision"`
+	Folder   string   `json:"folder"`
+	Routes   []string `json:"routes"` // empty: all
+	Since    string   `json:"since"`
+	Signer   string   `json:"signer"`
+	Key      string   `json:"key"`
+	Stated   string   `json:"stated"`
+	Recorded string   `json:"recorded"`
+	Reason   string   `json:"reason"`
+	Approved bool     `json:"approved"`
+	Undoes   bool     `json:"undoes"`
+	Through  []int64  `json:"assessments"`
+}
+
+func serviceRecordOf(s history.Service) serviceRecord {
+	return serviceRecord{
+		Entry: s.Entry.Seq, Revision: s.Revision, Folder: s.Folder, Routes: append([]string{}, s.Routes...), Since: s.Since.Format(signoff.TimeLayout),
+		Signer: s.Signer, Key: s.Fingerprint, Stated: s.Time.Format(signoff.TimeLayout), Recorded: s.Recorded.Format(signoff.TimeLayout), Reason: s.Reason,
+		Approved: s.Approved, Undoes: s.Undoes, Through: append([]int64{}, s.Through...),
+	}
+}
+
+func (r serviceRecord) words() string {
+	where := "the whole network"
+	if len(r.Routes) > 0 {
+		where = strings.Join(r.Routes, ", ")
+	}
+	state := "NOT APPROVED"
+	switch {
+	case r.Undoes:
+		state = "approved, but UNDOES what was in service before"
+	case r.Approved && len(r.Through) > 0:
+		state = fmt.Sprintf("approved by assessment %d", r.Through[0])
+	case r.Approved:
+		state = "approved, the anchor"
+	}
+	return source.Visible(fmt.Sprintf("%s  commit %s on %s; %s; entry %d, signed by %s (%s)", r.Since, short(r.Revision), where, state, r.Entry, r.Signer, r.Reason))
+}
+
+func (a *app) inforceLog(ctx context.Context) error {
+	folder, err := a.folder()
+	if err != nil {
+		return err
+	}
+	l, err := a.openLedger(ctx, false)
+	if err != nil {
+		return err
+	}
+	defer l.Close()
+	line, problems, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return err
+	}
+	records := []serviceRecord{}
+	for _, r := range line.Standing(folder) {
+		records = append(records, serviceRecordOf(history.ServiceOf(line, r)))
+	}
+	findings := history.ServiceFindings(line, folder)
+	err = a.write(func(w io.Writer) error {
+		if a.format == "json" {
+			type finding struct {
+				ID   string `json:"id"`
+				Text string `json:"text"`
+			}
+			list := []finding{}
+			for _, f := range findings {
+				list = append(list, finding(f))
+			}
+			return indentedJSON(w, struct {
+				Format   string          `json:"format"`
+				Records  []serviceRecord `json:"records"`
+				Findings []finding       `json:"findings"`
+			}{"speedtrail-inforce 1", records, list})
+		}
+		for _, r := range records {
+			fmt.Fprintf(w, "%s\n", wrap(r.words(), 80))
+		}
+		if len(records) == 0 {
+			fmt.Fprintf(w, "No revision is recorded as in service. Record one with: speedtrail inforce record REV --since T\n")
+		}
+		for _, f := range findings {
+			fmt.Fprintf(w, "%s\n", wrap("! "+f.ID+": "+source.Visible(f.Text), 80))
+		}
+		for _, p := range problems {
+			fmt.Fprintf(w, "%s\n", wrap("! does not count: "+source.Visible(p.Error()), 80))
+		}
+		return nil
+	})
+	if err == nil && len(findings) > 0 {
+		return errFindings
+	}
+	return err
+}

@@ -1,0 +1,173 @@
+package main
+
+import (
+	"context"
+	"fmt"
+	"io"
+	"time"
+
+	"speedtrail/diff/profile"
+	"speedtrail/history"
+	"speedtrail/history/approval"
+	"speedtrail/history/signoff"
+	"speedtrail/schema"
+	"speedtrail/schema/chainage"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/source"
+	"speedtrail/schema/unit"
+)
+
+// inForceAnswer is the JSON form of what was in force at an instant.
+type inForceAnswer struct {
+	Format  string         `json:"format"`
+	When    string         `json:"when"`
+	Route   string         `json:"route"`
+	At      string         `json:"at_km"`
+	Record  *serviceRecord `json:"record"` // null: nothing is recorded
+	Commit  string         `json:"commit"`
+	Subject string         `json:"subject"`
+	// Signed are the decisions on the assessments that led to the revision.
+	Signed []evidence   `json:"signed"`
+	Speeds []pointSpeed `json:"speeds"`
+	Head   string       `json:"head"`
+}
+
+// evidence is a decision that somebody signed.
+type evidence struct {
+	Assessment  int64  `json:"assessment"`
+	Entry       int64  `json:"entry"`
+	Role        string `json:"role"`
+	Decision    string `json:"decision"`
+	Signer      string `json:"signer"`
+	Fingerprint string `json:"key"`
+	Time        string `json:"time"`
+}
+
+// pointSpeed is the effective speed of a train at a point.
+type pointSpeed struct {
+	Train     string   `json:"train"`
+	Direction string   `json:"direction"`
+	Speed     int      `json:"speed_kmh"`
+	Governed  []string `json:"governed_by"`
+}
+
+func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string) error {
+	folder, err := a.folder()
+	if err != nil {
+		return err
+	}
+	l, err := a.openLedger(ctx, false)
+	if err != nil {
+		return err
+	}
+	defer l.Close()
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return err
+	}
+	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Route: route, At: at, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
+	now, _ := line.InForceAt(folder, route, when)
+	if now != nil {
+		if err := a.fillInForce(ctx, &answer, line, *now, when, route, at); err != nil {
+			return err
+		}
+	}
+	return a.write(func(w io.Writer) error {
+		if a.format == "json" {
+			return indentedJSON(w, answer)
+		}
+		return printInForce(w, &answer)
+	})
+}
+
+// fillInForce adds the evidence, and the speeds at the point.
+func (a *app) fillInForce(ctx context.Context, answer *inForceAnswer, line *approval.Line, now approval.Record, when time.Time, route, at string) error {
+	s := history.ServiceOf(line, now)
+	r := serviceRecordOf(s)
+	answer.Record = &r
+	for _, number := range s.Through {
+		for _, d := range line.State(number).Signed {
+			answer.Signed = append(answer.Signed, evidence{number, d.Entry.Seq, d.Role, d.Decision, d.Signer, d.Fingerprint, d.Time.Format(signoff.TimeLayout)})
+		}
+	}
+	repo, err := a.openRepo()
+	if err != nil {
+		return err
+	}
+	defer repo.Close()
+	commit, err := repo.Resolve(now.Revision)
+	if err != nil {
+		return err
+	}
+	answer.Commit, answer.Subject = commit.Hash, validText(commit.Subject)
+	if route == "" {
+		return nil
+	}
+	files, err := repo.Snapshot(commit.Hash, now.Folder)
+	if err != nil {
+		return err
+	}
+	data, err := schema.Load(ctx, files)
+	if err != nil {
+		return &sideError{"the revision in force", err}
+	}
+	answer.Speeds, err = speedsAt(data, route, at, when)
+	return err
+}
+
+// speedsAt gives the effective speeds at a point at an instant for every
+// reference train and direction of travel.
+func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed, error) {
+	route := routeByID(data, id)
+	if route == nil {
+		return nil, badCall("routes in force then: "+joined(routeIDs(data)), "there is no route %q", id)
+	}
+	p, err := chainage.ParsePoint(at)
+	var s unit.Distance
+	if err == nil {
+		s, err = route.Track.Locate(p)
+	}
+	if err != nil {
+		return nil, badCall("a position of the route, such as "+route.Track.Begins(0).String(), "--at %s is %v", source.Quote(at), err)
+	}
+	inForce := func(t *schema.TemporaryRow) bool { return t.Valid.Overlaps(when, when) }
+	var list []pointSpeed
+	for _, d := range codes.AllDirections {
+		if !route.Directions.Has(d) {
+			continue
+		}
+		c := profile.New(route, d, inForce)
+		for _, t := range data.Trains {
+			pieces := c.Profile(t)
+			for i, piece := range pieces {
+				if piece.From <= s && s < piece.To || i == len(pieces)-1 && s >= piece.From {
+					x := pointSpeed{Train: t.ID, Direction: d.String(), Speed: int(piece.Speed), Governed: []string{}}
+					// Of the piece's sources, those that hold at the point itself.
+					for _, row := range c.Governing(c.Select(profile.ClassOf(t)), t.Length, t.Max, min(s, route.Track.Length()-1), min(s, route.Track.Length()-1)+1, piece.Speed) {
+						x.Governed = append(x.Governed, c.Source(row, t).String())
+					}
+					list = append(list, x)
+					break
+				}
+			}
+		}
+	}
+	return list, nil
+}
+
+func printInForce(w io.Writer, x *inForceAnswer) error {
+	if x.Record == nil {
+		_, err := fmt.Fprintf(w, "Nothing is recorded as in force at %s.\nhead of the ledger %s\n", x.When, x.Head)
+		return err
+	}
+	fmt.Fprintf(w, "In force at %s:\n%s\n%s\n", x.When, wrap(x.Record.words(), 80), wrap(source.Visible("commit "+x.Commit+", "+x.Subject), 80))
+	for _, s := range x.Speeds {
+		fmt.Fprintf(w, "%s\n", wrap(source.Visible(fmt.Sprintf("km %s %s, %s: %d km/h, %s", x.At, s.Direction, s.Train, s.Speed, joined(s.Governed))), 80))
+	}
+	fmt.Fprintf(w, "\nEvidence: recorded %s as entry %d, stated %s, key %s\n", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)
+	for _, e := range x.Signed {
+		fmt.Fprintf(w, "%s\n", wrap(source.Visible(fmt.Sprintf("assessment %d: %s as %s by %s at %s, entry %d, key %s", e.Assessment, e.Decision, e.Role, e.Signer, e.Time, e.Entry, e.Fingerprint)), 80))
+	}
+	_, err := fmt.Fprintf(w, "head of the ledger %s; speedtrail verify proves the chain and the signatures\n", x.Head)
+	return err
+}

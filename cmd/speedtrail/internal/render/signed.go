@@ -1,0 +1,78 @@
+package render
+
+import (
+	"fmt"
+	"strings"
+	"time"
+
+	"speedtrail/schema/source"
+)
+
+// VerifyCommand writes the command that checks a signature with ssh-keygen alone,
+// at the time that the signer states.
+func VerifyCommand(signer string, at time.Time) string {
+	return fmt.Sprintf("ssh-keygen -Y verify -f allowed_signers -I '%s' -n speedtrail-signoff -O verify-time=%s -s statement.sig < statement", signer, at.UTC().Format("20060102150405Z"))
+}
+
+// stateWords says where an assessment stands, with what is missing.
+func stateWords(r Record) string {
+	s := r.State
+	if len(r.Missing) > 0 && (r.State == "open" || r.State == "partly signed") {
+		s += "; still to sign: " + strings.Join(r.Missing, ", ")
+	}
+	if len(r.Blocks) > 0 {
+		s += "; kept from approval by " + strings.Join(r.Blocks, "; ")
+	}
+	if r.Superseded != 0 {
+		s += fmt.Sprintf("; superseded by assessment %d", r.Superseded)
+	}
+	return s
+}
+
+// signedWords words a decision.
+func signedWords(r Record, s SignOff) string {
+	text := fmt.Sprintf("%s as %s by %s at %s: %s", s.Decision, s.Role, s.Signer, s.Time, s.Reason)
+	if s.Assessment != r.Number {
+		text += fmt.Sprintf(" (on assessment %d, which has the same content)", s.Assessment)
+	}
+	return text
+}
+
+// signOffs lists the decisions in the terminal.
+func (p *textWriter) signOffs() {
+	if p.r.Number == 0 {
+		return
+	}
+	p.heading("Sign-off")
+	p.paragraph("", stateWords(p.r))
+	for _, s := range p.r.SignOffs {
+		p.paragraph("  ", signedWords(p.r, s))
+		p.paragraph("    ", fmt.Sprintf("entry %d, key %s", s.Entry, s.Fingerprint))
+	}
+}
+
+// markdownSigned lists the decisions.
+func markdownSigned(b *strings.Builder, r Record) {
+	if r.Number == 0 {
+		return
+	}
+	fmt.Fprintf(b, "\n## Sign-off\n\n%s\n", md(stateWords(r)))
+	for _, s := range r.SignOffs {
+		fmt.Fprintf(b, "\n- %s; entry %d, key %s\n", md(signedWords(r, s)), s.Entry, md(s.Fingerprint))
+	}
+}
+
+type pageSigned struct{ Words, Key, Statement, Signature, Command string }
+
+func (p *page) fillSigned() {
+	if p.R.Number == 0 {
+		return
+	}
+	p.Standing = source.Visible(stateWords(p.R))
+	for _, s := range p.R.SignOffs {
+		p.Signed = append(p.Signed, pageSigned{
+			Words: source.Visible(signedWords(p.R, s)), Key: fmt.Sprintf("entry %d, key %s", s.Entry, s.Fingerprint),
+			Statement: source.VisibleLines(s.Statement), Signature: source.VisibleLines(s.Signature), Command: source.Visible(s.Command),
+		})
+	}
+}

@@ -1,0 +1,180 @@
+package main
+
+import (
+	"context"
+	"fmt"
+	"strconv"
+	"time"
+
+	"github.com/spf13/cobra"
+
+	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/history"
+	"speedtrail/history/approval"
+	"speedtrail/history/assessment"
+	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
+	"speedtrail/history/signoff"
+	"speedtrail/schema/source"
+)
+
+func (a *app) signCommand() *cobra.Command {
+	var s signing
+	var decision string
+	c := &cobra.Command{
+		Use:   "sign ID --role R --decision approve|reject --reason TEXT --key FILE",
+		Short: "sign an assessment off",
+		Long: `sign computes an assessment anew from Git, refuses it if anything differs, shows
+what will be signed, asks, and records an OpenSSH signature over a statement in
+plain text. Who may sign in which role is read from the policy of the base
+revision, whose data has to be approved itself (speedtrail anchor is the root).
+
+A statement can be signed elsewhere: --write FILE writes it, ssh-keygen -Y sign
+-n speedtrail-signoff FILE signs it, --statement FILE --signature FILE.sig
+brings both back.`,
+		Example: `  speedtrail sign 3 --role checker --decision approve --reason "checked against BN-144" --key ~/.ssh/id_ed25519
+  speedtrail sign 3 --role approver --decision reject --reason "km 12.4 is wrong" --agent --signer m.okoro@harbourline.example`,
+		Args: arguments(1, 1),
+		RunE: func(c *cobra.Command, args []string) error {
+			number, err := assessmentNumber(args[0])
+			if err != nil {
+				return err
+			}
+			if err := s.check(); err != nil {
+				return err
+			}
+			if s.statement == "" && (s.role == "" || decision == "") {
+				return badCall("for example --role checker --decision approve", "--role and --decision are needed")
+			}
+			if decision != "" && decision != signoff.Approve && decision != signoff.Reject {
+				return badCall("--decision is approve or reject", "unknown value %q for --decision", decision)
+			}
+			return a.sign(c.Context(), number, decision, &s)
+		},
+	}
+	s.flags(c)
+	c.Flags().StringVar(&s.role, "role", "", "the role of the policy in which you sign")
+	c.Flags().StringVar(&decision, "decision", "", "approve or reject")
+	return c
+}
+
+// assessmentNumber reads the number of an assessment.
+func assessmentNumber(text string) (int64, error) {
+	n, err := strconv.ParseInt(text, 10, 64)
+	if err != nil || n < 1 {
+		return 0, badCall("speedtrail register lists the assessments", "%q is not the number of an assessment", text)
+	}
+	return n, nil
+}
+
+func (a *app) sign(ctx context.Context, number int64, decision string, s *signing) error {
+	l, err := a.openLedger(ctx, s.write == "")
+	if err != nil {
+		return err
+	}
+	defer l.Close()
+	row, body, err := l.Assessment(ctx, number)
+	if err != nil {
+		return err
+	}
+	doc, err := assessment.Decode(body)
+	if err != nil {
+		return err
+	}
+	if err := a.recompute(ctx, doc, row.Digest); err != nil {
+		return err
+	}
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return err
+	}
+	if s.statement != "" {
+		brought, err := s.brought()
+		if err != nil {
+			return err
+		}
+		if st, err := signoff.Parse(brought.statement); err == nil && st.Assessment != number {
+			return refused(fmt.Errorf("the statement is about assessment %d, not %d", st.Assessment, number))
+		}
+		if err := a.recordSigned(ctx, l, chain.SignOff, brought); err != nil {
+			return err
+		}
+		return a.remarkState(ctx, l, number)
+	}
+	x := line.Assessment(number)
+	if x == nil || x.Policy.Parsed == nil {
+		return refused(fmt.Errorf("the base of assessment %d has no valid policy (signoff.toml and allowed_signers)", number))
+	}
+	key, done, err := s.signerKey(a, x.Policy.Parsed)
+	if err != nil {
+		return err
+	}
+	defer done()
+	statement := signoff.Statement{
+		Kind: signoff.SignOff, Ledger: l.ID(), Assessment: number, Digest: x.Digest, Base: x.Base, Target: x.Target, Folder: x.Folder, Rules: x.Rules,
+		Policy: x.Policy.Hash, Findings: x.Findings, Role: s.role, Decision: decision, Reason: s.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
+	}
+	if err := s.complete(&statement, key, x.Policy.Parsed); err != nil {
+		return err
+	}
+	a.showForSigning(doc, x)
+	result, err := s.finish(a, statement, key)
+	if err != nil || result == nil {
+		return err
+	}
+	if err := a.recordSigned(ctx, l, chain.SignOff, result); err != nil {
+		return err
+	}
+	return a.remarkState(ctx, l, number)
+}
+
+// showForSigning says what decides, before somebody signs.
+func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment) {
+	fmt.Fprintf(a.err, "%s\n", wrap(source.Visible(render.Verdict(doc)), 80))
+	for _, f := range doc.Computed.Findings {
+		if f.Accepted == "" {
+			fmt.Fprintf(a.err, "! %s\n", wrap(source.Visible(f.ID+" "+f.Route+" "+f.Direction+" "+f.From+" "+f.To+": "+f.Text), 78))
+		}
+	}
+	for _, p := range doc.Computed.Preparers {
+		fmt.Fprintf(a.err, "prepared by %s\n", source.Visible(p.Name+" <"+p.Email+">"))
+	}
+	for _, email := range x.UnknownPreparers() {
+		fmt.Fprintf(a.err, "! unknown-preparer %s is no person of the policy: the assessment cannot be approved\n", source.Visible(email))
+	}
+}
+
+// recompute computes an assessment anew and refuses any difference.
+func (a *app) recompute(ctx context.Context, doc *assessment.Document, recorded string) error {
+	repo, err := a.openRepo()
+	if err != nil {
+		return err
+	}
+	defer repo.Close()
+	digest, err := (&checker{a: a}).recompute(ctx, repo, doc)
+	if err != nil {
+		return fmt.Errorf("the assessment cannot be computed anew, and what cannot be is not signed: %w", err)
+	}
+	if digest != recorded {
+		return refused(fmt.Errorf("computed anew the assessment has another digest, %s, than the recorded one, %s", digest, recorded))
+	}
+	return nil
+}
+
+// remarkState says where an assessment stands.
+func (a *app) remarkState(ctx context.Context, l *ledger.Ledger, number int64) error {
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		return err
+	}
+	s := line.State(number)
+	text := fmt.Sprintf("assessment %d is %s", number, s.Word)
+	if len(s.Missing) > 0 && s.Word != approval.Rejected {
+		text += fmt.Sprintf("; still to sign: %s", joined(s.Missing))
+	}
+	if len(s.Blocks) > 0 {
+		text += fmt.Sprintf("; kept from approval by %s", joined(s.Blocks))
+	}
+	a.remark("%s", text)
+	return nil
+}

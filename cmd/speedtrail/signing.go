@@ -1,0 +1,255 @@
+package main
+
+import (
+	"bufio"
+	"context"
+	"errors"
+	"fmt"
+	"net"
+	"os"
+	"strings"
+	"time"
+
+	"github.com/spf13/cobra"
+	"golang.org/x/crypto/ssh"
+	"golang.org/x/crypto/ssh/agent"
+	"golang.org/x/term"
+
+	"speedtrail/history"
+	"speedtrail/history/approval"
+	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
+	"speedtrail/history/signoff"
+	"speedtrail/schema"
+	"speedtrail/schema/source"
+)
+
+// signing is the options that all commands share with which people sign.
+type signing struct {
+	role, reason         string
+	key, signer          string
+	agent, yes           bool
+	write                string
+	statement, signature string
+}
+
+// flags adds the options. Commands differ in whether the role can be chosen.
+func (s *signing) flags(c *cobra.Command) {
+	f := c.Flags()
+	f.StringVar(&s.reason, "reason", "", "why, one line of at most 500 bytes")
+	f.StringVar(&s.key, "key", "", "the private key `file` to sign with")
+	f.BoolVar(&s.agent, "agent", false, "sign with a key of ssh-agent, that of --signer")
+	f.StringVar(&s.signer, "signer", "", "the `principal` who signs; by default the one that the key belongs to")
+	f.StringVar(&s.write, "write", "", "write the statement to a `file`, and its signature beside it if a key is given, and record nothing")
+	f.StringVar(&s.statement, "statement", "", "record the statement in this `file`, which --write made")
+	f.StringVar(&s.signature, "signature", "", "its signature, made with ssh-keygen -Y sign -n "+signoff.Namespace)
+	f.BoolVarP(&s.yes, "yes", "y", false, "do not ask")
+}
+
+// check refuses combinations that make no sense.
+func (s *signing) check() error {
+	brought := s.statement != "" || s.signature != ""
+	switch {
+	case brought && (s.statement == "" || s.signature == ""):
+		return badCall("give both files: --statement FILE --signature FILE.sig", "--statement and --signature belong together")
+	case brought && (s.key != "" || s.agent || s.write != ""):
+		return badCall("what is brought back is signed already", "--statement goes without --key, --agent and --write")
+	case s.key != "" && s.agent:
+		return badCall("choose one", "--key and --agent are both given")
+	case !brought && s.key == "" && !s.agent && s.write == "":
+		return badCall("--key FILE, --agent, or in two steps: --write FILE, then --statement FILE --signature FILE.sig", "nothing to sign with")
+	case !brought && s.reason == "":
+		return badCall("--reason says why, for everyone who reads it later", "--reason is missing")
+	}
+	return nil
+}
+
+// signerKey opens the key to sign with; nil where there is none to be used. done
+// releases it.
+func (s *signing) signerKey(a *app, p *schema.Policy) (key ssh.Signer, done func(), err error) {
+	done = func() {}
+	switch {
+	case s.key != "":
+		key, err = readKey(a, s.key)
+	case s.agent:
+		key, done, err = agentKey(p, s.signer)
+	}
+	return key, done, err
+}
+
+// readKey reads a private key, asking for its passphrase on the terminal.
+func readKey(a *app, file string) (ssh.Signer, error) {
+	content, err := os.ReadFile(file)
+	if err != nil {
+		return nil, badCall("name the file of a private key with --key", "the key cannot be read: %v", err)
+	}
+	key, err := ssh.ParsePrivateKey(content)
+	var locked *ssh.PassphraseMissingError
+	if errors.As(err, &locked) {
+		in, ok := a.in.(*os.File)
+		if !ok || !term.IsTerminal(int(in.Fd())) {
+			return nil, badCall("use ssh-agent (--agent), or sign in two steps (--write)", "the key %s has a passphrase, and there is no terminal to ask for it", file)
+		}
+		fmt.Fprintf(a.err, "passphrase of %s: ", source.Visible(file))
+		passphrase, readErr := term.ReadPassword(int(in.Fd()))
+		fmt.Fprintln(a.err)
+		if readErr != nil {
+			return nil, readErr
+		}
+		key, err = ssh.ParsePrivateKeyWithPassphrase(content, passphrase)
+	}
+	if err != nil {
+		return nil, badCall("--key is a private key of OpenSSH", "the key %s cannot be used: %v", file, err)
+	}
+	return key, nil
+}
+
+// agentKey finds the key of a principal in ssh-agent.
+func agentKey(p *schema.Policy, signer string) (ssh.Signer, func(), error) {
+	socket := os.Getenv("SSH_AUTH_SOCK")
+	if socket == "" {
+		return nil, nil, badCall("start ssh-agent and add the key, or use --key", "no ssh-agent is there (SSH_AUTH_SOCK is not set)")
+	}
+	conn, err := net.Dial("unix", socket)
+	if err != nil {
+		return nil, nil, badCall("start ssh-agent and add the key, or use --key", "ssh-agent does not answer: %v", err)
+	}
+	signers, err := agent.NewClient(conn).Signers()
+	if err != nil {
+		conn.Close()
+		return nil, nil, fmt.Errorf("ssh-agent: %w", err)
+	}
+	for _, key := range signers {
+		k := p.Key(ssh.FingerprintSHA256(key.PublicKey()))
+		if k != nil && (signer == "" || k.Principal == signer) {
+			return key, func() { conn.Close() }, nil
+		}
+	}
+	conn.Close()
+	return nil, nil, badCall("add the key with ssh-add", "ssh-agent holds no key that the policy allows to %s", orAnyone(signer))
+}
+
+func orAnyone(signer string) string {
+	if signer == "" {
+		return "anyone"
+	}
+	return signer
+}
+
+// complete fills in who signs.
+func (s *signing) complete(statement *signoff.Statement, key ssh.Signer, p *schema.Policy) error {
+	statement.Signer = s.signer
+	if key == nil {
+		if s.signer == "" {
+			return badCall("--signer PRINCIPAL, as in allowed_signers", "who will sign the statement is not said")
+		}
+		return nil
+	}
+	fingerprint := ssh.FingerprintSHA256(key.PublicKey())
+	k := p.Key(fingerprint)
+	if k == nil {
+		return refused(fmt.Errorf("the key %s is not allowed to anyone by the policy", fingerprint))
+	}
+	if s.signer != "" && s.signer != k.Principal {
+		return refused(fmt.Errorf("the key %s belongs to %s, not to %s", fingerprint, k.Principal, s.signer))
+	}
+	statement.Signer = k.Principal
+	return nil
+}
+
+// signed is a statement with its signature.
+type signed struct{ statement, signature []byte }
+
+// finish shows the statement, asks, and signs it; with --write it writes the
+// files and gives nothing.
+func (s *signing) finish(a *app, statement signoff.Statement, key ssh.Signer) (*signed, error) {
+	text, err := statement.Text()
+	if err != nil {
+		return nil, badCall("values are one line of visible text; the reason has at most 500 bytes", "%v", err)
+	}
+	fmt.Fprintf(a.err, "The statement:\n\n%s\n", text)
+	var signature []byte
+	if key != nil {
+		if err := s.ask(a); err != nil {
+			return nil, err
+		}
+		if signature, err = signoff.Sign(text, key); err != nil {
+			return nil, fmt.Errorf("signing: %w", err)
+		}
+	}
+	if s.write == "" {
+		return &signed{text, signature}, nil
+	}
+	if err := os.WriteFile(s.write, text, 0o644); err != nil {
+		return nil, fmt.Errorf("the statement was not written: %w", err)
+	}
+	if signature != nil {
+		if err := os.WriteFile(s.write+".sig", signature, 0o644); err != nil {
+			return nil, fmt.Errorf("the signature was not written: %w", err)
+		}
+		a.remark("written to %s and %s.sig; nothing was recorded", s.write, s.write)
+		return nil, nil
+	}
+	a.remark("written to %s; nothing was recorded. Sign it with\n  ssh-keygen -Y sign -f KEY -n %s %s\nand bring both files back with --statement %s --signature %s.sig", s.write, signoff.Namespace, s.write, s.write, s.write)
+	return nil, nil
+}
+
+// ask asks for a yes.
+func (s *signing) ask(a *app) error {
+	if s.yes {
+		return nil
+	}
+	in, ok := a.in.(*os.File)
+	if !ok || !term.IsTerminal(int(in.Fd())) {
+		return badCall("--yes signs without asking", "there is no terminal to ask on")
+	}
+	fmt.Fprint(a.err, "Sign this statement? Type yes: ")
+	answer, _ := bufio.NewReader(in).ReadString('\n')
+	if strings.TrimSpace(answer) != "yes" {
+		return badCall("nothing was signed", "not signed")
+	}
+	return nil
+}
+
+// brought reads the files of --statement and --signature.
+func (s *signing) brought() (*signed, error) {
+	out := &signed{}
+	for _, f := range []struct {
+		name string
+		to   *[]byte
+		most int64
+	}{{s.statement, &out.statement, signoff.MaxStatement}, {s.signature, &out.signature, signoff.MaxSignature}} {
+		info, err := os.Stat(f.name)
+		if err == nil && info.Size() > f.most {
+			err = fmt.Errorf("it has %d bytes, at most %d are allowed", info.Size(), f.most)
+		}
+		if err == nil {
+			*f.to, err = os.ReadFile(f.name)
+		}
+		if err != nil {
+			return nil, badCall("--statement and --signature are files that --write and ssh-keygen made", "%s cannot be read: %v", f.name, err)
+		}
+	}
+	return out, nil
+}
+
+// refused gives an error of the call for what a policy does not allow.
+func refused(err error) error {
+	return &callError{err.Error(), "nothing was recorded"}
+}
+
+// recordSigned checks and appends a signed statement.
+func (a *app) recordSigned(ctx context.Context, l *ledger.Ledger, kind chain.Kind, s *signed) error {
+	head, err := history.RecordSigned(ctx, l, kind, s.statement, s.signature, time.Now())
+	switch {
+	case errors.Is(err, approval.ErrRefused), errors.Is(err, signoff.ErrMalformed), errors.Is(err, signoff.ErrSignature):
+		return refused(err)
+	case err != nil:
+		return fmt.Errorf("it was not recorded: %w", err)
+	}
+	a.remark("recorded as entry %d; head of the ledger %s (note it elsewhere: it proves later that nothing was removed)", head.Seq, head)
+	return nil
+}
+
+// seen is the head that a signer has seen: the newest.
+func seen(line *approval.Line) chain.Head { return line.Head() }

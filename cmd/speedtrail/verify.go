@@ -1,0 +1,116 @@
+package main
+
+import (
+	"context"
+	"fmt"
+	"io"
+
+	"github.com/spf13/cobra"
+
+	"speedtrail/history"
+	"speedtrail/history/chain"
+	"speedtrail/schema/source"
+)
+
+func (a *app) verifyCommand() *cobra.Command {
+	var against, anchors []string
+	var ledgerOnly bool
+	c := &cobra.Command{
+		Use:   "verify",
+		Short: "prove that nothing in the ledger was altered",
+		Long: `verify re-derives everything: the chain of the entries, the tables against the
+entries, every signature against the policy of its time, and every assessment
+against Git. It says what was proved, what was not, and why. Exit status 1 if
+anything is wrong.
+
+The chain cannot show that its end was removed, or that the whole was made anew:
+--against SEQ:HASH, a head that was noted elsewhere, does. Commit authors and times
+are claims.`,
+		Example: `  speedtrail verify
+  speedtrail verify --against 17:4be1...`,
+		Args: arguments(0, 0),
+		RunE: func(c *cobra.Command, _ []string) error {
+			o := history.VerifyOptions{Anchors: anchors}
+			for _, s := range against {
+				h, err := chain.ParseHead(s)
+				if err != nil {
+					return badCall("a head is printed after every write, and by register", "%v", err)
+				}
+				o.Against = append(o.Against, h)
+			}
+			if !ledgerOnly {
+				o.Checker = &checker{a}
+			}
+			return a.verify(c.Context(), o)
+		},
+	}
+	a.outputFlags(c, "text", "json")
+	c.Flags().StringArrayVar(&against, "against", nil, "a head `SEQ:HASH` that was noted elsewhere (repeatable)")
+	c.Flags().StringArrayVar(&anchors, "anchor", nil, "the `hash` of an anchor that was noted elsewhere (repeatable)")
+	c.Flags().BoolVar(&ledgerOnly, "ledger-only", false, "hold nothing against Git")
+	return c
+}
+
+// verified is the JSON form of a verification.
+type verified struct {
+	Format   string            `json:"format"`
+	Ledger   string            `json:"ledger"`
+	Head     string            `json:"head"`
+	Good     bool              `json:"good"`
+	Problems []verifiedProblem `json:"problems"`
+	Proved   []string          `json:"proved"`
+	Unproved []string          `json:"not_proved"`
+}
+
+type verifiedProblem struct {
+	Entry int64  `json:"entry"` // 0: the ledger as a whole
+	Kind  string `json:"kind"`
+	Text  string `json:"text"`
+}
+
+func (a *app) verify(ctx context.Context, o history.VerifyOptions) error {
+	l, err := a.openLedger(ctx, false)
+	if err != nil {
+		return err
+	}
+	defer l.Close()
+	o.Progress = a.progress("computing assessments anew")
+	r, err := history.Verify(ctx, l, o)
+	if err != nil {
+		return err
+	}
+	out := verified{Format: "speedtrail-verification 1", Ledger: l.ID(), Head: r.Head.String(), Good: r.Good(), Problems: []verifiedProblem{}, Proved: append([]string{}, r.Proved...), Unproved: append([]string{}, r.Unproved...)}
+	for _, p := range r.Problems {
+		out.Problems = append(out.Problems, verifiedProblem{p.Entry, p.Kind, p.Text})
+	}
+	err = a.write(func(w io.Writer) error {
+		if a.format == "json" {
+			return indentedJSON(w, out)
+		}
+		return printVerification(w, r, l.ID())
+	})
+	if err == nil && !r.Good() {
+		return errFindings
+	}
+	return err
+}
+
+func printVerification(w io.Writer, r *history.Result, ledger string) error {
+	for _, p := range r.Problems {
+		fmt.Fprintf(w, "%s\n", wrap("! "+source.Visible(p.String()), 80))
+	}
+	for _, s := range r.Proved {
+		fmt.Fprintf(w, "%s\n", wrap("proved: "+source.Visible(s), 80))
+	}
+	for _, s := range r.Unproved {
+		fmt.Fprintf(w, "%s\n", wrap("left open: "+source.Visible(s), 80))
+	}
+	verdict := "nothing is wrong"
+	if n := len(r.Problems); n == 1 {
+		verdict = "1 thing is wrong"
+	} else if n > 1 {
+		verdict = fmt.Sprintf("%d things are wrong", n)
+	}
+	_, err := fmt.Fprintf(w, "\nledger %s, head %s: %s\n", ledger, r.Head, verdict)
+	return err
+}

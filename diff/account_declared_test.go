@@ -1,0 +1,228 @@
+package diff_test
+
+import (
+	"errors"
+	"fmt"
+	"strings"
+	"testing"
+
+	"speedtrail/diff"
+	"speedtrail/diff/scope"
+	"speedtrail/schema"
+	"speedtrail/schema/source"
+)
+
+// declaredOf writes how declarations hold each change, and what is seen of each
+// declaration.
+func declaredOf(a *diff.Account) string {
+	var lines []string
+	name := func(by int) string {
+		d := a.Declared[by]
+		return fmt.Sprintf("%s/%d", a.Requests[d.Request].ID, d.Declaration)
+	}
+	for i := range a.Routes {
+		r := &a.Routes[i]
+		held := func(index int, side *schema.Route) string {
+			var list []string
+			for _, p := range r.Pieces[index] {
+				text := fmt.Sprintf("%s-%s ", side.Track.Begins(p.From), side.Track.Ends(p.To))
+				if p.By == scope.Outside {
+					text += "outside"
+				} else {
+					text += name(p.By)
+				}
+				if p.RunOut {
+					text += " run-out"
+				}
+				list = append(list, text)
+			}
+			if list == nil {
+				return "outside"
+			}
+			return strings.Join(list, ", ")
+		}
+		for k := range r.Track {
+			x := &r.Track[k]
+			side := r.Target
+			if x.Fate == diff.Removed {
+				side = r.Base
+			}
+			lines = append(lines, fmt.Sprintf("%s %s: %s", x.Fate, x.Direction, held(x.Pieces, side)))
+		}
+		for k, list := range [][]diff.Change{r.Changes, r.Masked} {
+			for n := range list {
+				text, _, _ := strings.Cut(changeText(a, r, &list[n]), " by ")
+				lines = append(lines, []string{"", "masked "}[k]+text+": "+held(list[n].Pieces, r.Target))
+			}
+		}
+	}
+	for i := range a.Declared {
+		d := &a.Declared[i]
+		text := name(i) + " sees"
+		for _, s := range d.Seen {
+			text += fmt.Sprintf(" %s %s", a.Trains[s.Train].ID, s.Inside.M())
+			if s.RunOut > 0 {
+				text += "+" + s.RunOut.M()
+			}
+		}
+		if d.Track > 0 {
+			text += " track " + d.Track.M()
+		}
+		if d.Unseen() {
+			text += " nothing"
+		}
+		lines = append(lines, text)
+	}
+	for _, t := range a.Trains {
+		if t.Fate != diff.Kept {
+			lines = append(lines, fmt.Sprintf("%s %s, declared %t", t.ID, t.Fate, t.Declared))
+		}
+	}
+	return strings.Join(lines, "\n")
+}
+
+// asked is a target with a request CR-1 of these declarations.
+func asked(target texts, declarations ...string) texts {
+	return over(target, texts{"requests/cr-1.toml": "id = \"CR-1\"\ntitle = \"A\"\nreason = \"B\"\n" + strings.Join(declarations, "")})
+}
+
+// Changes are cut at the limits of the declarations in play.
+func TestDeclared(t *testing.T) {
+	raise := texts{"speed.csv": flatSpeed(90)}
+	delayed := texts{"speed.csv": strings.Replace(ground["speed.csv"], "80", "90", 1)}
+	two := trainText("T", 150, "", "C2", 200, 200) + trainText("U", 80, "", "D4", 700, 90)
+	runAccounts(t, []accountTest{
+		{"no request in play", flat, raise, []string{"nominal 4.000-6.000 T 80>90: outside"}},
+		{"inside", flat, asked(raise, declares("R1", "both", 4, 6, "raise", "")), []string{"nominal 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "CR-1/0 sees T 2000"}},
+		{"wider than the change", flat, asked(raise, declares("R1", "nominal", 0, 10, "any", `"T"`)), []string{"nominal 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "CR-1/0 sees T 2000"}},
+		{"a part", flat, asked(raise, declares("R1", "both", 4.5, 5, "raise", "")), []string{
+			"nominal 4.000-6.000 T 80>90: 4.000-4.500 outside, 4.500-5.000 CR-1/0, 5.000-6.000 outside", "CR-1/0 sees T 500"}},
+		{"two that overlap: the first counts, both see", flat, asked(raise, declares("R1", "both", 4, 5.2, "raise", ""), declares("R1", "both", 4.8, 6, "any", "")), []string{
+			"nominal 4.000-6.000 T 80>90: 4.000-5.200 CR-1/0, 5.200-6.000 CR-1/1", "CR-1/0 sees T 1200", "CR-1/1 sees T 1200"}},
+		{"the wrong sense", flat, asked(raise, declares("R1", "both", 4, 6, "lower", "")), []string{"nominal 4.000-6.000 T 80>90: outside", "CR-1/0 sees nothing"}},
+		{"a reduction", flat, asked(texts{"speed.csv": flatSpeed(70)}, declares("R1", "both", 4, 6, "raise", ""), declares("R1", "both", 4, 6, "lower", "")), []string{
+			"nominal 4.000-6.000 T 80>70: 4.000-6.000 CR-1/1", "CR-1/0 sees nothing", "CR-1/1 sees T 2000"}},
+		{"another direction", flat, asked(raise, declares("R1", "reverse", 4, 6, "raise", "")), []string{"nominal 4.000-6.000 T 80>90: outside", "CR-1/0 sees nothing"}},
+		{"another stretch, which only touches", flat, asked(raise, declares("R1", "both", 6, 8, "raise", "")), []string{"nominal 4.000-6.000 T 80>90: outside", "CR-1/0 sees nothing"}},
+		{"one train of two", over(flat, texts{"trains.toml": two}), asked(raise, declares("R1", "both", 4, 6, "raise", `"U"`)), []string{
+			"nominal 4.000-6.000 T 80>90: outside", "nominal 4.000-6.000 U 80>90: 4.000-6.000 CR-1/0", "CR-1/0 sees U 2000"}},
+		{"run-out past the far end, in both directions", nil, asked(delayed, declares("R1", "both", 4, 6, "raise", "")), []string{
+			"nominal 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "nominal 6.000-6.200 T 80>90 run-out: 6.000-6.200 CR-1/0 run-out",
+			"reverse 3.800-4.000 T 80>90 run-out: 3.800-4.000 CR-1/0 run-out", "reverse 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "CR-1/0 sees T 4000+400"}},
+		{"run-out of a reduction", nil, asked(texts{"speed.csv": strings.Replace(ground["speed.csv"], "80", "70", 1)}, declares("R1", "reverse", 4, 6, "lower", "")), []string{
+			"nominal 4.000-6.000 T 80>70: outside", "nominal 6.000-6.200 T 80>70 run-out: outside",
+			"reverse 3.800-4.000 T 80>70 run-out: 3.800-4.000 CR-1/0 run-out", "reverse 4.000-6.000 T 80>70: 4.000-6.000 CR-1/0", "CR-1/0 sees T 2000+200"}},
+		{"the row ends beyond the declaration", texts{"route.toml": oneWay}, asked(delayed, declares("R1", "both", 4, 5.9, "raise", "")), []string{
+			"nominal 4.000-6.000 T 80>90: 4.000-5.900 CR-1/0, 5.900-6.000 outside", "nominal 6.000-6.200 T 80>90 run-out: outside", "CR-1/0 sees T 1900"}},
+		{"run-out inside the declaration itself", texts{"route.toml": oneWay}, asked(delayed, declares("R1", "both", 4, 6.05, "raise", "")), []string{
+			"nominal 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "nominal 6.000-6.200 T 80>90 run-out: 6.000-6.050 CR-1/0, 6.050-6.200 CR-1/0 run-out", "CR-1/0 sees T 2050+150"}},
+		{"a change that is hidden today", over(flat, texts{"temporary.csv": temporary("4,5,60")}), asked(raise, declares("R1", "both", 4, 4.5, "raise", "")), []string{
+			"nominal 5.000-6.000 T 80>90: outside", "masked nominal 4.000-5.000 T 80>90: 4.000-4.500 CR-1/0, 4.500-5.000 outside", "CR-1/0 sees T 500"}},
+		{"added track needs any effect", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "both", 0, 10, "raise", ""), declares("R1", "reverse", 2, 6, "any", "")), []string{
+			"added reverse: 0.000-2.000 outside, 2.000-6.000 CR-1/1, 6.000-10.000 outside", "CR-1/0 sees nothing", "CR-1/1 sees track 4000"}},
+		{"any effect for one train is not for the track", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "reverse", 2, 6, "any", `"T"`)), []string{
+			"added reverse: outside", "CR-1/0 sees nothing"}},
+		{"removed track, by the posts of the base", texts{"route.toml": oneWay}, asked(texts{"route.toml": oneWay + "[[jump]]\narriving_km = 8\nleaving_km = 8.5\n"}, declares("R1", "both", 8, 8.5, "any", "")), []string{
+			"removed nominal: 8.000-8.500 CR-1/0", "CR-1/0 sees track 500"}},
+	}, declaredOf)
+}
+
+// A change of the reference trains is declared by a declaration of any effect
+// that names the train.
+func TestDeclaredTrains(t *testing.T) {
+	longer := texts{"trains.toml": trainText("T", 150, "", "C2", 250, 200)}
+	added := texts{"trains.toml": ground["trains.toml"] + trainText("U", 80, "", "D4", 700, 90)}
+	runAccounts(t, []accountTest{
+		{"altered", nil, longer, []string{"T altered, declared false"}},
+		{"any effect that names it", nil, asked(longer, declares("R1", "both", 0, 10, "any", `"T"`)), []string{"CR-1/0 sees nothing", "T altered, declared true"}},
+		{"any effect for all trains", nil, asked(longer, declares("R1", "both", 0, 10, "any", "")), []string{"CR-1/0 sees nothing", "T altered, declared false"}},
+		{"another effect", nil, asked(longer, declares("R1", "both", 0, 10, "raise", `"T"`)), []string{"CR-1/0 sees nothing", "T altered, declared false"}},
+		{"another train", added, asked(texts{"trains.toml": longer["trains.toml"] + trainText("U", 80, "", "D4", 700, 90)}, declares("R1", "both", 0, 10, "any", `"U"`)), []string{"CR-1/0 sees nothing", "T altered, declared false"}},
+		{"added", nil, asked(added, declares("R1", "both", 0, 10, "any", `"T", "U"`)), []string{"CR-1/0 sees nothing", "U added, declared true"}},
+		{"removed", added, asked(texts{"trains.toml": ground["trains.toml"]}, declares("R1", "both", 0, 10, "any", `"U"`)), []string{"CR-1/0 sees nothing", "U removed, declared true"}},
+	}, func(a *diff.Account) string {
+		for i := range a.Routes {
+			a.Routes[i].Changes = nil // not what is looked at here
+		}
+		return declaredOf(a)
+	})
+}
+
+// In play are the requests that were named, else those added or altered; where
+// one stands in its file does not matter.
+func TestRequestsInPlay(t *testing.T) {
+	base := texts{
+		"requests/a.toml": requestText("CR-1", "R1", 4, 6, "raise", ""),
+		"requests/b.toml": requestText("CR-2", "R1", 4, 6, "raise", ""),
+		"requests/c.toml": requestText("CR-9", "OLD", 4, 6, "raise", `"GONE"`), // old requests outlive routes and trains
+	}
+	raise := over(flat, base)
+	for _, x := range []struct {
+		name   string
+		target texts
+		o      diff.Options
+		want   string
+	}{
+		{"none", nil, diff.Options{}, ""},
+		{"an altered one", texts{"requests/b.toml": requestText("CR-2", "R1", 4, 6, "any", "")}, diff.Options{}, "CR-2"},
+		{"a new one", texts{"requests/d.toml": requestText("CR-0", "R1", 4, 6, "any", "")}, diff.Options{}, "CR-0"},
+		{"one that moved to another file and other lines", texts{"requests/b.toml": gone, "requests/e.toml": "# moved\n\n" + base["requests/b.toml"]}, diff.Options{}, ""},
+		{"one that goes", texts{"requests/b.toml": gone}, diff.Options{}, ""},
+		{"named, in the order of the ids", nil, diff.Options{Requests: []string{"CR-2", "CR-1", "CR-2"}}, "CR-1 CR-2"},
+		{"named, not the altered one", texts{"requests/b.toml": requestText("CR-2", "R1", 4, 6, "any", "")}, diff.Options{Requests: []string{"CR-1"}}, "CR-1"},
+		{"left out", texts{"requests/d.toml": requestText("CR-0", "NOWHERE", 4, 6, "any", "")}, diff.Options{NoRequests: true}, ""},
+	} {
+		t.Run(x.name, func(t *testing.T) {
+			a := compare(t, raise, x.target, x.o)
+			var ids []string
+			for _, q := range a.Requests {
+				ids = append(ids, q.ID)
+			}
+			if got := strings.Join(ids, " "); got != x.want || a.Reconciled == x.o.NoRequests {
+				t.Errorf("got %q, reconciled %t, want %q", got, a.Reconciled, x.want)
+			}
+		})
+	}
+	var unknown *diff.UnknownRequestError
+	d := read(t, over(ground, raise))
+	if _, err := diff.Compare(t.Context(), d, d, diff.Options{Requests: []string{"CR-1", "CR-7"}}); !errors.As(err, &unknown) || unknown.ID != "CR-7" {
+		t.Errorf("got %v for a request that is not there", err)
+	}
+}
+
+// Requests in play that name what does not exist are faults, all of them at
+// once, with their places.
+func TestDeclaredFaults(t *testing.T) {
+	repeated := texts{"route.toml": ground["route.toml"] + "[[jump]]\narriving_km = 5\nleaving_km = 4.5\n", "speed.csv": "from_km,to_km,basic\n0,10,100\n"}
+	for _, x := range []struct {
+		name         string
+		base, target texts
+		want         []string
+	}{
+		{"a route", nil, asked(nil, declares("R9", "both", 1, 2, "any", "")), []string{`requests/cr-1.toml:4:3: the declaration names route "R9", which neither revision has`}},
+		{"a train", nil, asked(nil, declares("R1", "both", 1, 2, "any", `"T", "X"`)), []string{`requests/cr-1.toml:4:3: the declaration names train "X", which neither revision has`}},
+		{"a position outside", nil, asked(nil, declares("R1", "both", 1, 12, "any", "")), []string{`requests/cr-1.toml:4:3: the declaration on route "R1": to_km 12.000 is outside the route`}},
+		{"the wrong way round", nil, asked(nil, declares("R1", "both", 2, 1, "any", "")), []string{`requests/cr-1.toml:4:3: the declaration on route "R1": to_km 1.000 does not lie after from_km 2.000 along the track`}},
+		{"an ambiguous position", repeated, asked(nil, declares("R1", "both", 1, 4.75, "any", "")), []string{`requests/cr-1.toml:4:3: the declaration on route "R1": to_km 4.750 is ambiguous, posts repeat here; write 4.750#1 or another occurrence`}},
+		{"several", nil, asked(nil, declares("R9", "both", 1, 2, "any", `"X"`), declares("R1", "both", 11, 12, "any", "")), []string{
+			`requests/cr-1.toml:4:3: the declaration names train "X", which neither revision has`, `requests/cr-1.toml:4:3: the declaration names route "R9", which neither revision has`,
+			`requests/cr-1.toml:11:3: the declaration on route "R1": from_km 11.000 is outside the route`}},
+		{"a position that only the base has", repeated, asked(texts{"route.toml": ground["route.toml"], "speed.csv": ground["speed.csv"]}, strings.Replace(declares("R1", "both", 1, 2, "any", ""), "to_km = 2", `to_km = "4.75#2"`, 1)), nil},
+		{"a first occurrence that is marked", nil, asked(nil, strings.Replace(declares("R1", "both", 1, 2, "any", ""), "to_km = 2", `to_km = "4.75#1"`, 1)), nil},
+	} {
+		t.Run(x.name, func(t *testing.T) {
+			before := over(ground, x.base)
+			_, err := diff.Compare(t.Context(), read(t, before), read(t, over(before, x.target)), diff.Options{})
+			var got []string
+			var faults *source.Faults
+			if errors.As(err, &faults) {
+				got = strings.Split(faults.Error(), "\n")
+			} else if err != nil {
+				t.Fatal(err)
+			}
+			if strings.Join(got, "\n") != strings.Join(x.want, "\n") {
+				t.Errorf("got\n%s\nwant\n%s", strings.Join(got, "\n"), strings.Join(x.want, "\n"))
+			}
+		})
+	}
+}

@@ -1,0 +1,143 @@
+package profile
+
+import (
+	"cmp"
+	"slices"
+
+	"speedtrail/diff/align"
+	"speedtrail/schema/unit"
+)
+
+// extent gives where a row can hold for a train up to the longest: with train
+// length delay, one length further in the direction of travel.
+func (c *Compiler) extent(r *restriction, longest unit.Distance) align.Interval {
+	i := align.Interval{From: r.start, To: r.end}
+	if r.delay {
+		before, after := c.shifts(longest)
+		i.From, i.To = i.From-before, i.To+after
+	}
+	return i
+}
+
+// Narrow takes two sides of the same track and gives compilers of the rows that
+// can matter to a difference between them, with the stretches outside which no
+// train up to the longest sees one: there both sides have the same rows. Inside,
+// the compilers give what the whole ones give; outside, they must not be asked.
+func Narrow(base, target *Compiler, longest unit.Distance) (b, t *Compiler, near []align.Interval) {
+	near = differing(base, target, longest)
+	inside := func(i align.Interval) bool {
+		k, _ := slices.BinarySearchFunc(near, i.From, func(n align.Interval, from unit.Distance) int {
+			if n.To > from {
+				return 1
+			}
+			return -1
+		})
+		return k < len(near) && near[k].From < i.To
+	}
+	return base.part(longest, inside), target.part(longest, inside), near
+}
+
+// differing lists where rows that only one side has can hold, in order and
+// without overlap. Rows that differ in what people read alone are the same.
+func differing(base, target *Compiler, longest unit.Distance) []align.Interval {
+	var list []align.Interval
+	length := base.route.Track.Length()
+	add := func(c *Compiler, r *restriction) {
+		i := c.extent(r, longest)
+		list = append(list, align.Interval{From: max(0, i.From), To: min(length, i.To)})
+	}
+	i, k := 0, 0
+	for i < len(base.rows) || k < len(target.rows) {
+		order := 0
+		switch {
+		case i == len(base.rows):
+			order = 1
+		case k == len(target.rows):
+			order = -1
+		default:
+			order = comparePlace(&base.rows[i], &target.rows[k])
+		}
+		// Rows of one place that stand in another order count as differing,
+		// which is only more than is needed.
+		if order == 0 && base.sameCells(&base.rows[i], target, &target.rows[k]) {
+			i, k = i+1, k+1
+			continue
+		}
+		if order <= 0 {
+			add(base, &base.rows[i])
+			i++
+		}
+		if order >= 0 {
+			add(target, &target.rows[k])
+			k++
+		}
+	}
+	return align.Union(list)
+}
+
+// comparePlace compares by what rows are sorted by, their lines aside.
+func comparePlace(a, b *restriction) int {
+	return cmp.Or(cmp.Compare(a.start, b.start), cmp.Compare(a.end, b.end), cmp.Compare(a.layer, b.layer))
+}
+
+// sameCells tells whether two rows of one place restrict every train alike.
+func (c *Compiler) sameCells(r *restriction, d *Compiler, s *restriction) bool {
+	if r.delay != s.delay {
+		return false
+	}
+	switch r.layer {
+	case StaticSpeed:
+		a, b := &c.route.Speed[r.row], &d.route.Speed[s.row]
+		return a.Basic == b.Basic && a.Cant == b.Cant && a.Other == b.Other && a.Replaces == b.Replaces
+	case AxleLoad:
+		return c.route.AxleLoad[r.row].Limit == d.route.AxleLoad[s.row].Limit
+	}
+	return c.route.Temporary[r.row].Speed == d.route.Temporary[s.row].Speed
+}
+
+// Window gives a compiler of the rows that can hold between two distances for a
+// train up to the longest. There it gives what the whole one gives.
+func (c *Compiler) Window(from, to, longest unit.Distance) *Compiler {
+	return c.part(longest, func(i align.Interval) bool { return i.From < to && from < i.To })
+}
+
+// Permanent gives a compiler of the rows that are not temporary restrictions.
+func (c *Compiler) Permanent() *Compiler {
+	return c.only(func(r *restriction) bool { return r.layer != Temporary })
+}
+
+// HasTemporary tells whether there are temporary restrictions among the rows.
+func (c *Compiler) HasTemporary() bool {
+	return slices.ContainsFunc(c.rows, func(r restriction) bool { return r.layer == Temporary })
+}
+
+func (c *Compiler) part(longest unit.Distance, keep func(align.Interval) bool) *Compiler {
+	return c.only(func(r *restriction) bool { return keep(c.extent(r, longest)) })
+}
+
+// only gives a compiler of some of the rows. Their order is the same, so that
+// nothing has to be sorted again.
+func (c *Compiler) only(keep func(*restriction) bool) *Compiler {
+	p := &Compiler{route: c.route, direction: c.direction}
+	number := make([]int32, len(c.rows)) // of the row in the part; -1: left out
+	for i := range c.rows {
+		number[i] = -1
+		if keep(&c.rows[i]) {
+			number[i] = int32(len(p.rows))
+			p.rows = append(p.rows, c.rows[i])
+		}
+	}
+	renumber := func(order []int32) []int32 {
+		var list []int32
+		for _, i := range order {
+			if number[i] >= 0 {
+				list = append(list, number[i])
+			}
+		}
+		return list
+	}
+	for k := range c.starts {
+		p.starts[k], p.ends[k] = renumber(c.starts[k]), renumber(c.ends[k])
+	}
+	return p
+}

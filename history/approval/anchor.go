@@ -1,0 +1,122 @@
+package approval
+
+import (
+	"fmt"
+	"time"
+
+	"speedtrail/history/canon"
+	"speedtrail/history/chain"
+	"speedtrail/history/signoff"
+	"speedtrail/schema"
+)
+
+// addAnchor takes up an anchor.
+func (l *Line) addAnchor(e chain.Entry, recorded time.Time) error {
+	var body AnchorBody
+	if err := canon.Unmarshal(e.Body, &body); err != nil {
+		return fmt.Errorf("its body cannot be read: %w", err)
+	}
+	a, err := l.CheckAnchor(body, recorded)
+	if err != nil {
+		return err
+	}
+	a.Entry = e.Head()
+	for i := range a.Records {
+		a.Records[i].Entry = e.Head()
+		l.statements[signoff.Hash(a.Records[i].Text)] = e.Seq
+	}
+	l.anchors[a.Records[0].Folder] = a
+	return nil
+}
+
+// CheckAnchor decides whether an anchor may be recorded: there is one for each
+// ledger and folder, and its statements are those of people who satisfy every
+// role of the policy that it puts in force. What a role asks about preparers
+// cannot be asked of the first revision, and is not.
+func (l *Line) CheckAnchor(body AnchorBody, recorded time.Time) (*AnchorRecord, error) {
+	if body.Format != AnchorFormat {
+		return nil, refuse("the format is %q, %q is needed", body.Format, AnchorFormat)
+	}
+	p := l.policy(body.SignOff, body.AllowedSigners)
+	policy, err := usable(p, "the anchor")
+	if err != nil {
+		return nil, err
+	}
+	if len(body.Statements) == 0 {
+		return nil, refuse("nobody signs the anchor")
+	}
+	a := &AnchorRecord{Policy: p}
+	people := map[string]map[string]bool{} // role -> signers
+	roles := map[string][]string{}         // signer -> roles
+	seen := map[string]bool{}
+	for _, signed := range body.Statements {
+		r, err := l.checkAnchorStatement(signed, recorded, p)
+		if err != nil {
+			return nil, err
+		}
+		if seen[signoff.Hash(r.Text)] {
+			return nil, refuse("a statement stands twice in the anchor")
+		}
+		seen[signoff.Hash(r.Text)] = true
+		if first := a.Records; len(first) > 0 && (first[0].Revision != r.Revision || first[0].Folder != r.Folder || first[0].Content != r.Content) {
+			return nil, refuse("the statements name different revisions, folders or contents")
+		}
+		for _, role := range roles[r.Signer] {
+			if role != r.Role && policy.Independent(role, r.Role) {
+				return nil, refuse("%s signs as %s and as %s, which must be different people", r.Signer, role, r.Role)
+			}
+		}
+		roles[r.Signer] = append(roles[r.Signer], r.Role)
+		if people[r.Role] == nil {
+			people[r.Role] = map[string]bool{}
+		}
+		people[r.Role][r.Signer] = true
+		a.Records = append(a.Records, r)
+	}
+	first := a.Records[0]
+	if l.anchors[first.Folder] != nil {
+		return nil, refuse("the folder %s has an anchor already, entry %d", first.Folder, l.anchors[first.Folder].Entry.Seq)
+	}
+	for _, role := range policy.Roles {
+		if n := len(people[role.Name]); n < role.Needed {
+			return nil, refuse("the role %s is signed by %d of %d people", role.Name, n, role.Needed)
+		}
+	}
+	a.Revision, a.Content = first.Revision, first.Content
+	return a, nil
+}
+
+func (l *Line) checkAnchorStatement(signed Signed, recorded time.Time, p Policy) (Record, error) {
+	if signed.Format != AnchorFormat {
+		return Record{}, refuse("the format is %q, %q is needed", signed.Format, AnchorFormat)
+	}
+	s, err := signoff.Parse([]byte(signed.Statement))
+	if err != nil {
+		return Record{}, err
+	}
+	if s.Kind != signoff.Anchor {
+		return Record{}, refuse("a statement of kind %s cannot serve as %s", s.Kind, signoff.Anchor)
+	}
+	r := Record{Statement: s, Recorded: recorded, Signature: []byte(signed.Signature), Text: []byte(signed.Statement)}
+	if err := l.checkForm(&r); err != nil {
+		return r, err
+	}
+	if r.Policy != p.Hash {
+		return r, refuse("the statement names the policy %s, the anchor holds %s", r.Policy, p.Hash)
+	}
+	if err := checkRole(p.Parsed, r.Role, r.Signer); err != nil {
+		return r, err
+	}
+	return r, l.checkSignature(&r, p.Parsed)
+}
+
+// RolesOf lists the roles in which a principal may sign by a policy.
+func RolesOf(p *schema.Policy, principal string) []string {
+	var list []string
+	for i := range p.Roles {
+		if p.Roles[i].May(principal) {
+			list = append(list, p.Roles[i].Name)
+		}
+	}
+	return list
+}

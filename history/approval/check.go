@@ -1,0 +1,334 @@
+package approval
+
+import (
+	"slices"
+	"strings"
+	"time"
+
+	"speedtrail/history/chain"
+	"speedtrail/history/signoff"
+	"speedtrail/schema"
+)
+
+// Tolerance is by how much the clock of a signer may be ahead.
+const Tolerance = 5 * time.Minute
+
+// InServiceRole is the role of those who may record that a revision went into
+// service. It takes no part in approvals.
+const InServiceRole = "in-service"
+
+// kinds says which statement belongs to which entry.
+var kinds = map[chain.Kind]struct {
+	statement signoff.Kind
+	format    string
+}{
+	chain.SignOff:    {signoff.SignOff, SignOffFormat},
+	chain.InForce:    {signoff.InForce, InForceFormat},
+	chain.Revocation: {signoff.Revocation, RevocationFormat},
+	chain.Anchor:     {signoff.Anchor, AnchorFormat},
+}
+
+// Read reads a signed statement without asking whether it counts.
+func Read(body Signed) (Record, error) {
+	s, err := signoff.Parse([]byte(body.Statement))
+	if err != nil {
+		return Record{}, err
+	}
+	_, fingerprint, err := signoff.Key([]byte(body.Signature))
+	return Record{Statement: s, Fingerprint: fingerprint, Signature: []byte(body.Signature), Text: []byte(body.Statement)}, err
+}
+
+// Check decides whether a signed statement may be recorded at a time, after the
+// entries that the line has taken up.
+func (l *Line) Check(kind chain.Kind, body Signed, recorded time.Time) (Record, error) {
+	k := kinds[kind]
+	if body.Format != k.format {
+		return Record{}, refuse("the format is %q, %q is needed", body.Format, k.format)
+	}
+	s, err := signoff.Parse([]byte(body.Statement))
+	if err != nil {
+		return Record{}, err
+	}
+	if s.Kind != k.statement {
+		return Record{}, refuse("a statement of kind %s cannot serve as %s", s.Kind, k.statement)
+	}
+	r := Record{Statement: s, Recorded: recorded, Signature: []byte(body.Signature), Text: []byte(body.Statement)}
+	switch kind {
+	case chain.SignOff:
+		err = l.checkSignOff(&r)
+	case chain.InForce:
+		err = l.checkInForce(&r)
+	case chain.Revocation:
+		err = l.checkRevocation(&r)
+	}
+	if err == nil {
+		r.Entry = chain.Head{Seq: int64(len(l.heads)) + 1}
+	}
+	return r, err
+}
+
+// checkForm checks what all statements have in common but the signature: the
+// ledger, the head, the time, that the statement is new.
+func (l *Line) checkForm(r *Record) error {
+	switch {
+	case r.Ledger != l.ledger:
+		return refuse("the statement is for the ledger %s, this is %s", r.Ledger, l.ledger)
+	case r.Head.Seq < 1 || r.Head.Seq > int64(len(l.heads)) || l.heads[r.Head.Seq-1] != r.Head:
+		return refuse("the head %s that the statement names is no entry of this ledger", r.Head)
+	}
+	if at, ok := l.statements[signoff.Hash(r.Text)]; ok {
+		return refuse("the statement is recorded already, as entry %d", at)
+	}
+	if seen := l.times[r.Head.Seq-1]; r.Time.Before(seen) {
+		return refuse("the statement is of %s, before the entry %d that it names, of %s", r.Time.Format(signoff.TimeLayout), r.Head.Seq, seen.Format(signoff.TimeLayout))
+	}
+	if r.Time.After(r.Recorded.Add(Tolerance)) {
+		return refuse("the statement is of %s, after the time of recording, %s", r.Time.Format(signoff.TimeLayout), r.Recorded.Format(signoff.TimeLayout))
+	}
+	return nil
+}
+
+// checkSignature checks the signer and the signature by a policy.
+func (l *Line) checkSignature(r *Record, p *schema.Policy) error {
+	_, fingerprint, err := signoff.Key(r.Signature)
+	if err != nil {
+		return err
+	}
+	r.Fingerprint = fingerprint
+	if revocation, ok := l.revoked[fingerprint]; ok {
+		return refuse("the key %s was revoked by entry %d: %s", fingerprint, revocation.Entry.Seq, revocation.Reason)
+	}
+	key, err := allowedKey(p, fingerprint, r.Signer, r.Time, r.Recorded)
+	if err != nil {
+		return err
+	}
+	return signoff.Verify(r.Text, r.Signature, key.Public)
+}
+
+// allowedKey finds the line of allowed_signers that lets a principal sign with a
+// key at two times.
+func allowedKey(p *schema.Policy, fingerprint, signer string, times ...time.Time) (*schema.Key, error) {
+	var found *schema.Key
+	problem := refuse("the key %s is not allowed to anyone by this policy", fingerprint)
+	for i := range p.Keys {
+		k := &p.Keys[i]
+		if k.Fingerprint != fingerprint {
+			continue
+		}
+		if k.Principal != signer {
+			return nil, refuse("the key %s belongs to %s, not to the signer %s", fingerprint, k.Principal, signer)
+		}
+		if len(k.Namespaces) > 0 && !slices.Contains(k.Namespaces, signoff.Namespace) {
+			problem = refuse("the key %s is not for the namespace %s", fingerprint, signoff.Namespace)
+			continue
+		}
+		valid := true
+		for _, t := range times {
+			switch {
+			case !k.ValidAfter.IsZero() && t.Before(k.ValidAfter):
+				valid, problem = false, refuse("the key %s is valid from %s only", fingerprint, k.ValidAfter.UTC().Format(signoff.TimeLayout))
+			case !k.ValidBefore.IsZero() && t.After(k.ValidBefore):
+				valid, problem = false, refuse("the key %s was valid until %s", fingerprint, k.ValidBefore.UTC().Format(signoff.TimeLayout))
+			}
+		}
+		if valid {
+			found = k
+		}
+	}
+	if found == nil {
+		return nil, problem
+	}
+	return found, nil
+}
+
+// checkRole checks that a policy lets the signer take a role.
+func checkRole(p *schema.Policy, role, signer string) error {
+	r := p.Role(role)
+	if r == nil {
+		return refuse("the policy has no role %q", role)
+	}
+	if !r.May(signer) {
+		return refuse("%s is no signer of the role %s", signer, role)
+	}
+	if !slices.ContainsFunc(p.Persons, func(x schema.Person) bool { return x.Principal == signer }) {
+		return refuse("%s is no person of the policy", signer)
+	}
+	return nil
+}
+
+// usable gives a policy that can be used, or says why not.
+func usable(p Policy, whose string) (*schema.Policy, error) {
+	switch {
+	case p.Hash == "":
+		return nil, refuse("%s has no policy (signoff.toml and allowed_signers)", whose)
+	case p.Problem != nil:
+		return nil, refuse("the policy of %s is not valid: %v", whose, p.Problem)
+	}
+	return p.Parsed, nil
+}
+
+// checkSignOff checks a sign-off of an assessment.
+func (l *Line) checkSignOff(r *Record) error {
+	if err := l.checkForm(r); err != nil {
+		return err
+	}
+	a := l.byNumber[r.Assessment]
+	if a == nil {
+		return refuse("there is no assessment %d", r.Assessment)
+	}
+	for _, same := range []struct {
+		name      string
+		have, got any
+	}{
+		{"digest", a.Digest, r.Digest}, {"base", a.Base, r.Base}, {"target", a.Target, r.Target}, {"folder", a.Folder, r.Folder},
+		{"rules version", a.Rules, r.Rules}, {"list of findings", a.Findings, r.Findings}, {"policy", a.Policy.Hash, r.Policy},
+	} {
+		if same.have != same.got {
+			return refuse("the %s of the statement is %v, that of assessment %d is %v", same.name, same.got, a.Number, same.have)
+		}
+	}
+	if r.Decision != signoff.Approve && r.Decision != signoff.Reject {
+		return refuse("the decision is %q, approve and reject are known", r.Decision)
+	}
+	if r.Head.Seq < a.Entry.Seq {
+		return refuse("the head that the statement names, %d, is older than the assessment, entry %d", r.Head.Seq, a.Entry.Seq)
+	}
+	for _, i := range l.ofAssessment[a.Number] {
+		earlier := &l.signOffs[i]
+		if earlier.Signer == r.Signer && r.Head.Seq < earlier.Entry.Seq {
+			return refuse("the head that the statement names, %d, is older than the last decision of %s on it, entry %d", r.Head.Seq, r.Signer, earlier.Entry.Seq)
+		}
+	}
+	policy, err := usable(a.Policy, "the base")
+	if err != nil {
+		return err
+	}
+	if _, err := usable(a.Next, "the target"); err != nil {
+		return err
+	}
+	if problem := l.blocked(a); problem != "" {
+		return refuse("assessment %d cannot be signed: %s", a.Number, problem)
+	}
+	if err := checkRole(policy, r.Role, r.Signer); err != nil {
+		return err
+	}
+	if r.Role == InServiceRole {
+		return refuse("the role %s records what is in force and approves nothing", InServiceRole)
+	}
+	if err := l.checkIndependence(r, a, policy); err != nil {
+		return err
+	}
+	if err := l.checkSignature(r, policy); err != nil {
+		return err
+	}
+	newest, err := usable(l.Newest(a.Folder), "the newest approved revision")
+	if err != nil {
+		return err
+	}
+	if _, err := allowedKey(newest, r.Fingerprint, r.Signer, r.Time, r.Recorded); err != nil {
+		return refuse("by the newest approved policy: %v", strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))
+	}
+	return nil
+}
+
+// blocked says why nobody may sign an assessment; empty where somebody may.
+func (l *Line) blocked(a *Assessment) string {
+	switch {
+	case l.anchors[a.Folder] == nil:
+		return "no policy is anchored for this folder; speedtrail anchor puts one in force"
+	case a.BaseNotAncestor:
+		return "its base is no ancestor of its target"
+	case a.Base == a.Target:
+		return "its base is its target"
+	case len(a.Preparers) == 0:
+		return "nobody is known to have prepared it"
+	case !l.approvedContents(a.Folder)[a.BaseTree]:
+		return "its base is neither the anchor nor an approved target (base-not-approved)"
+	}
+	return ""
+}
+
+// checkIndependence keeps a person from taking two parts that must be taken by
+// different people. The earlier part counts.
+func (l *Line) checkIndependence(r *Record, a *Assessment, p *schema.Policy) error {
+	if p.Independent(r.Role, schema.Preparer) {
+		for _, email := range a.Preparers {
+			if person := p.Person(email); person != nil && person.Principal == r.Signer {
+				return refuse("%s prepared the change (%s), and the role %s is independent of preparer", r.Signer, email, r.Role)
+			}
+		}
+	}
+	for _, i := range l.ofAssessment[a.Number] {
+		earlier := &l.signOffs[i]
+		if earlier.Signer == r.Signer && earlier.Role != r.Role && p.Independent(r.Role, earlier.Role) {
+			return refuse("%s signed as %s (entry %d), and the role %s is independent of that", r.Signer, earlier.Role, earlier.Entry.Seq, r.Role)
+		}
+	}
+	return nil
+}
+
+// checkInForce checks a record that a revision went into service.
+func (l *Line) checkInForce(r *Record) error {
+	if err := l.checkForm(r); err != nil {
+		return err
+	}
+	policy, err := l.checkNewest(r)
+	if err != nil {
+		return err
+	}
+	if r.Role != InServiceRole {
+		return refuse("the role is %q, %q is needed", r.Role, InServiceRole)
+	}
+	if err := checkRole(policy, r.Role, r.Signer); err != nil {
+		return err
+	}
+	if err := l.checkCorrection(r); err != nil {
+		return err
+	}
+	return l.checkSignature(r, policy)
+}
+
+// checkNewest gives the newest approved policy of the folder of a statement,
+// which has to name it.
+func (l *Line) checkNewest(r *Record) (*schema.Policy, error) {
+	newest := l.Newest(r.Folder)
+	if newest.Hash == "" {
+		return nil, refuse("no policy is anchored for the folder %s", r.Folder)
+	}
+	policy, err := usable(newest, "the newest approved revision")
+	if err != nil {
+		return nil, err
+	}
+	if newest.Hash != r.Policy {
+		return nil, refuse("the statement names the policy %s, in force is %s", r.Policy, newest.Hash)
+	}
+	return policy, nil
+}
+
+// checkRevocation checks that a key is taken out of use by its owner or by
+// somebody who satisfies a role independent of preparer.
+func (l *Line) checkRevocation(r *Record) error {
+	if err := l.checkForm(r); err != nil {
+		return err
+	}
+	policy, err := l.checkNewest(r)
+	if err != nil {
+		return err
+	}
+	if earlier, ok := l.revoked[r.Key]; ok {
+		return refuse("the key is revoked already, by entry %d", earlier.Entry.Seq)
+	}
+	if r.Role == signoff.Owner {
+		if k := policy.Key(r.Key); k == nil || k.Principal != r.Signer {
+			return refuse("%s is not the owner of the key %s", r.Signer, r.Key)
+		}
+	} else {
+		if err := checkRole(policy, r.Role, r.Signer); err != nil {
+			return err
+		}
+		if !policy.Independent(r.Role, schema.Preparer) {
+			return refuse("the role %s is not independent of preparer", r.Role)
+		}
+	}
+	return l.checkSignature(r, policy)
+}

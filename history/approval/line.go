@@ -1,0 +1,253 @@
+// Package approval follows the line of approval through the entries of a ledger:
+// from the anchor, through policies and the people who may sign, to the state of
+// every assessment.
+//
+// It knows no SQL and no Git: everything that it decides by stands in the bodies
+// of the entries. The same code decides whether a new statement may be recorded
+// and, later, whether the recorded one was allowed to be: an entry is checked
+// against the entries before it and nothing else.
+//
+//	line := approval.New(ledgerID)
+//	for _, e := range entries {
+//		if err := line.Add(e); err != nil { ... } // recorded, but it does not count
+//	}
+//	line.State(3) // open, partly signed, approved, rejected
+//
+// The rules are those of the sign-off design; package signoff has the form of
+// statements.
+package approval
+
+import (
+	"errors"
+	"fmt"
+	"time"
+
+	"speedtrail/history/canon"
+	"speedtrail/history/chain"
+	"speedtrail/history/signoff"
+	"speedtrail/schema"
+)
+
+// Signed is a statement with its signature, as the body of an entry holds it.
+type Signed struct {
+	Format    string `json:"format"`
+	Signature string `json:"signature"`
+	Statement string `json:"statement"`
+}
+
+// Formats of the bodies.
+const (
+	SignOffFormat    = "speedtrail-sign-off 1"
+	AnchorFormat     = "speedtrail-anchor 1"
+	InForceFormat    = "speedtrail-in-force 1"
+	RevocationFormat = "speedtrail-revocation 1"
+)
+
+// AnchorBody is the body of an anchor: the policy that it puts in force and the
+// statements of people who satisfy every role in it.
+type AnchorBody struct {
+	AllowedSigners string   `json:"allowed_signers"` // content of the file
+	Format         string   `json:"format"`
+	SignOff        string   `json:"signoff"` // content of signoff.toml
+	Statements     []Signed `json:"statements"`
+}
+
+// Assessment is what the line needs of an assessment.
+type Assessment struct {
+	Number               int64
+	Entry                chain.Head
+	Digest               string
+	Base, Target         string // full commit hashes
+	BaseTree, TargetTree string // content of the data set folder
+	Folder               string
+	Rules                int
+	Policy, Next         Policy // of the base, of the target
+	Preparers            []string
+	Findings             string // as statements write them
+	BaseNotAncestor      bool
+}
+
+// Policy is a policy with the bytes that it was read from.
+type Policy struct {
+	SignOff, AllowedSigners string
+	Hash                    string // empty where there is none
+	Parsed                  *schema.Policy
+	Problem                 error // why it cannot be read
+}
+
+// Record is a statement that was checked and counts.
+type Record struct {
+	signoff.Statement
+	Entry       chain.Head
+	Recorded    time.Time
+	Fingerprint string
+	Signature   []byte
+	Text        []byte
+}
+
+// AnchorRecord is the root of a line of approval.
+type AnchorRecord struct {
+	Entry    chain.Head
+	Revision string
+	Content  string
+	Policy   Policy
+	Records  []Record
+}
+
+// Line is the state after some entries.
+type Line struct {
+	ledger      string
+	heads       []chain.Head
+	times       []time.Time
+	assessments []*Assessment
+	byNumber    map[int64]*Assessment
+	anchors     map[string]*AnchorRecord // by folder
+	signOffs    []Record
+	inForce     []Record
+	revoked     map[string]Record // by fingerprint
+	statements  map[string]int64  // hash -> entry
+	policies    map[string]Policy
+
+	ofAssessment map[int64][]int            // indices in signOffs
+	ofContent    map[content][]int          // the same, by what was decided on
+	contents     map[string]map[string]bool // approved contents by folder; emptied by every new entry
+}
+
+// New begins a line for the ledger of an id.
+func New(ledger string) *Line {
+	return &Line{ledger: ledger, byNumber: map[int64]*Assessment{}, anchors: map[string]*AnchorRecord{}, revoked: map[string]Record{}, statements: map[string]int64{}, policies: map[string]Policy{},
+		ofAssessment: map[int64][]int{}, ofContent: map[content][]int{}, contents: map[string]map[string]bool{}}
+}
+
+// ErrRefused is the class of everything that a policy or the rules of signing
+// do not allow.
+var ErrRefused = errors.New("refused")
+
+func refuse(format string, args ...any) error {
+	return fmt.Errorf("%w: "+format, append([]any{ErrRefused}, args...)...)
+}
+
+// Add takes up the next entry of the ledger. An error says why the entry, which
+// is recorded all the same, does not count.
+func (l *Line) Add(e chain.Entry, assessment *Assessment) error {
+	recorded, err := time.Parse(chain.TimeLayout, e.Time)
+	if err == nil {
+		err = l.add(e, recorded, assessment)
+	}
+	clear(l.contents)
+	l.heads = append(l.heads, e.Head())
+	l.times = append(l.times, recorded)
+	if err != nil {
+		return fmt.Errorf("entry %d (%s): %w", e.Seq, e.Kind, err)
+	}
+	return nil
+}
+
+func (l *Line) add(e chain.Entry, recorded time.Time, assessment *Assessment) error {
+	switch e.Kind {
+	case chain.Ledger:
+		return nil
+	case chain.Assessment:
+		if assessment == nil {
+			return errors.New("its body cannot be read")
+		}
+		assessment.Entry = e.Head()
+		l.assessments = append(l.assessments, assessment)
+		l.byNumber[assessment.Number] = assessment
+		return nil
+	case chain.Anchor:
+		return l.addAnchor(e, recorded)
+	case chain.SignOff, chain.InForce, chain.Revocation:
+		var body Signed
+		if err := canon.Unmarshal(e.Body, &body); err != nil {
+			return fmt.Errorf("its body cannot be read: %w", err)
+		}
+		r, err := l.Check(e.Kind, body, recorded)
+		if err != nil {
+			return err
+		}
+		r.Entry = e.Head()
+		l.statements[signoff.Hash(r.Text)] = e.Seq
+		switch e.Kind {
+		case chain.SignOff:
+			l.ofAssessment[r.Assessment] = append(l.ofAssessment[r.Assessment], len(l.signOffs))
+			decided := l.byNumber[r.Assessment].content()
+			l.ofContent[decided] = append(l.ofContent[decided], len(l.signOffs))
+			l.signOffs = append(l.signOffs, r)
+		case chain.InForce:
+			l.inForce = append(l.inForce, r)
+		default:
+			if _, ok := l.revoked[r.Key]; !ok {
+				l.revoked[r.Key] = r
+			}
+		}
+		return nil
+	}
+	return fmt.Errorf("kind %q is not known", string(e.Kind))
+}
+
+// Head is that of the newest entry.
+func (l *Line) Head() chain.Head {
+	if len(l.heads) == 0 {
+		return chain.Head{}
+	}
+	return l.heads[len(l.heads)-1]
+}
+
+// Assessments lists the assessments in the order of the ledger.
+func (l *Line) Assessments() []*Assessment { return l.assessments }
+
+// Assessment gives the assessment of a number; nil where there is none.
+func (l *Line) Assessment(number int64) *Assessment { return l.byNumber[number] }
+
+// Anchor gives the root of a folder's line; nil where there is none.
+func (l *Line) Anchor(folder string) *AnchorRecord { return l.anchors[folder] }
+
+// Anchors lists the folders that have an anchor, in no order.
+func (l *Line) Anchors() map[string]*AnchorRecord { return l.anchors }
+
+// SignOffs lists the sign-offs that count, in the order of the ledger.
+func (l *Line) SignOffs() []Record { return l.signOffs }
+
+// InForce lists the in-force records that count, in the order of the ledger.
+func (l *Line) InForce() []Record { return l.inForce }
+
+// Revocations gives the revocations that count, by the key's fingerprint.
+func (l *Line) Revocations() map[string]Record { return l.revoked }
+
+// policy reads a policy, each one once.
+func (l *Line) policy(signOff, allowedSigners string) Policy {
+	if signOff == "" && allowedSigners == "" {
+		return Policy{}
+	}
+	hash := signoff.PolicyHash([]byte(signOff), []byte(allowedSigners))
+	p, ok := l.policies[hash]
+	if !ok {
+		p = Policy{SignOff: signOff, AllowedSigners: allowedSigners, Hash: hash}
+		p.Parsed, p.Problem = schema.ParsePolicy([]byte(signOff), []byte(allowedSigners))
+		l.policies[hash] = p
+	}
+	return p
+}
+
+// Policy reads the policy of two files' content.
+func (l *Line) Policy(signOff, allowedSigners string) Policy {
+	return l.policy(signOff, allowedSigners)
+}
+
+// Newest gives the policy that is in force for a folder: the target's of the
+// approved assessment that was recorded last, else the anchor's.
+func (l *Line) Newest(folder string) Policy {
+	anchor := l.anchors[folder]
+	if anchor == nil {
+		return Policy{}
+	}
+	newest := anchor.Policy
+	approved := l.approvedContents(folder)
+	for _, a := range l.assessments {
+		if a.Folder == folder && l.approved(a, approved) {
+			newest = a.Next
+		}
+	}
+	return newest
+}

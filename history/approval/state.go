@@ -1,0 +1,186 @@
+package approval
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"speedtrail/history/signoff"
+	"speedtrail/schema"
+)
+
+// States of an assessment.
+const (
+	Open     = "open"
+	Partly   = "partly signed"
+	Approved = "approved"
+	Rejected = "rejected"
+)
+
+// State is what the ledger says about an assessment.
+type State struct {
+	Word    string
+	Missing []string // roles that lack people, "checker (1 of 2)"
+	Blocks  []string // findings that keep it from being approved
+	Signed  []Record // the decisions on it, in the order of the ledger
+	// RejectedBy are rejections of the same content that stand, also those of
+	// other assessments.
+	RejectedBy []Record
+	// Superseded is the number of another assessment from the same base that is
+	// approved; 0 for none. It is a remark and hides nothing.
+	Superseded int64
+}
+
+// content is what a rejection follows: the data, not the assessment's number.
+type content struct{ folder, tree string }
+
+func (a *Assessment) content() content { return content{a.Folder, a.TargetTree} }
+
+// State gives the state of an assessment; the zero State where there is none.
+func (l *Line) State(number int64) State {
+	a := l.byNumber[number]
+	if a == nil {
+		return State{}
+	}
+	s := State{Word: Open}
+	for _, i := range l.ofAssessment[number] {
+		s.Signed = append(s.Signed, l.signOffs[i])
+	}
+	approvals := l.approvals(a)
+	if a.Policy.Parsed != nil {
+		for _, role := range a.Policy.Parsed.Roles {
+			if n := len(approvals[role.Name]); role.Name != InServiceRole && n < role.Needed {
+				s.Missing = append(s.Missing, fmt.Sprintf("%s (%d of %d)", role.Name, n, role.Needed))
+			}
+		}
+	}
+	s.Blocks = l.blocks(a)
+	s.RejectedBy = l.rejections(a.content())
+	contents := l.approvedContents(a.Folder)
+	switch {
+	case len(s.RejectedBy) > 0:
+		s.Word = Rejected
+	case l.approved(a, contents):
+		s.Word = Approved
+	case len(approvals) > 0:
+		s.Word = Partly
+	}
+	for _, other := range l.assessments {
+		if other != a && other.Folder == a.Folder && other.Base == a.Base && other.TargetTree != a.TargetTree && l.approved(other, contents) {
+			s.Superseded = other.Number
+		}
+	}
+	return s
+}
+
+// approvals gives, for each role, the people whose last decision on the
+// assessment in it is to approve.
+func (l *Line) approvals(a *Assessment) map[string][]string {
+	type part struct{ role, signer string }
+	last := map[part]string{}
+	for _, i := range l.ofAssessment[a.Number] {
+		r := &l.signOffs[i]
+		last[part{r.Role, r.Signer}] = r.Decision
+	}
+	out := map[string][]string{}
+	for p, decision := range last {
+		if decision == signoff.Approve {
+			out[p.role] = append(out[p.role], p.signer)
+		}
+	}
+	return out
+}
+
+// rejections lists the rejections of a content that stand: of people whose last
+// decision on it, on whatever assessment, is to reject.
+func (l *Line) rejections(c content) []Record {
+	last := map[string]Record{}
+	for _, i := range l.ofContent[c] {
+		last[l.signOffs[i].Signer] = l.signOffs[i]
+	}
+	var list []Record
+	for _, r := range last {
+		if r.Decision == signoff.Reject {
+			list = append(list, r)
+		}
+	}
+	slices.SortFunc(list, func(a, b Record) int { return int(a.Entry.Seq - b.Entry.Seq) })
+	return list
+}
+
+// UnknownPreparers lists the addresses of preparers who are no person of the
+// base's policy.
+func (a *Assessment) UnknownPreparers() []string {
+	if a.Policy.Parsed == nil {
+		return nil
+	}
+	var list []string
+	for _, email := range a.Preparers {
+		if a.Policy.Parsed.Person(email) == nil {
+			list = append(list, email)
+		}
+	}
+	return list
+}
+
+// blocks lists what keeps an assessment from being approved.
+func (l *Line) blocks(a *Assessment) []string {
+	var list []string
+	if a.BaseNotAncestor {
+		list = append(list, "base-not-ancestor")
+	}
+	if l.anchors[a.Folder] == nil {
+		return append(list, "no policy is anchored")
+	}
+	if !l.approvedContents(a.Folder)[a.BaseTree] {
+		list = append(list, "base-not-approved")
+	}
+	if unknown := a.UnknownPreparers(); len(unknown) > 0 {
+		list = append(list, "unknown-preparer: "+strings.Join(unknown, ", "))
+	}
+	return list
+}
+
+// signedOff tells whether all roles have signed an assessment and nothing but
+// the line of approval is left to ask.
+func (l *Line) signedOff(a *Assessment) bool {
+	p := a.Policy.Parsed
+	if p == nil || a.Next.Parsed == nil || a.BaseNotAncestor || len(a.Preparers) == 0 || len(a.UnknownPreparers()) > 0 || len(l.rejections(a.content())) > 0 {
+		return false
+	}
+	approvals := l.approvals(a)
+	return !slices.ContainsFunc(p.Roles, func(r schema.Role) bool {
+		return r.Name != InServiceRole && len(approvals[r.Name]) < r.Needed
+	})
+}
+
+// approvedContents gives the contents of a folder that are approved: the
+// anchor's, and those that approved assessments lead to from it.
+func (l *Line) approvedContents(folder string) map[string]bool {
+	if known := l.contents[folder]; known != nil {
+		return known
+	}
+	approved := map[string]bool{}
+	l.contents[folder] = approved
+	anchor := l.anchors[folder]
+	if anchor == nil {
+		return approved
+	}
+	approved[anchor.Content] = true
+	for grown := true; grown; {
+		grown = false
+		for _, a := range l.assessments {
+			if a.Folder == folder && approved[a.BaseTree] && !approved[a.TargetTree] && l.signedOff(a) {
+				approved[a.TargetTree], grown = true, true
+			}
+		}
+	}
+	return approved
+}
+
+func (l *Line) approved(a *Assessment, contents map[string]bool) bool {
+	return contents[a.BaseTree] && l.signedOff(a)
+}
+
+// ApprovedContent tells whether a content of a folder is approved.
+func (l *Line) ApprovedContent(folder, tree string) bool { return l.approvedContents(folder)[tree] }

@@ -1,0 +1,162 @@
+package history
+
+import (
+	"bufio"
+	"bytes"
+	"context"
+	"fmt"
+	"io"
+	"iter"
+
+	"github.com/go-json-experiment/json"
+	"github.com/go-json-experiment/json/jsontext"
+
+	"speedtrail/history/approval"
+	"speedtrail/history/assessment"
+	"speedtrail/history/canon"
+	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
+)
+
+// Bounds of what is imported.
+const (
+	maxLine = 512 << 20 // bytes of an entry's line
+)
+
+// exported is an entry as a line of JSON. The body is a text: its bytes are
+// hashed as they stand there.
+type exported struct {
+	Body     string `json:"body"`
+	Hash     string `json:"hash"`
+	Kind     string `json:"kind"`
+	Previous string `json:"previous"`
+	Seq      int64  `json:"seq"`
+	Time     string `json:"time"`
+}
+
+// Export writes the entries of a ledger as JSON Lines, the oldest first. With
+// them anyone can check the chain (package chain has the algorithm), and Import
+// makes a ledger with the same head.
+func Export(ctx context.Context, l *ledger.Ledger, w io.Writer) error {
+	b := bufio.NewWriterSize(w, 1<<16)
+	for e, err := range l.Entries(ctx, 1) {
+		if err != nil {
+			return err
+		}
+		line, err := json.Marshal(exported{string(e.Body), e.Hash, string(e.Kind), e.Previous, e.Seq, e.Time}, json.Deterministic(true))
+		if err != nil {
+			return err
+		}
+		b.Write(line)
+		if err := b.WriteByte('\n'); err != nil {
+			return err
+		}
+	}
+	return b.Flush()
+}
+
+// ImportError is what is wrong with a line of an import.
+type ImportError struct {
+	Line int
+	Err  error
+}
+
+// Error gives the line and what is wrong with it.
+func (e *ImportError) Error() string { return fmt.Sprintf("line %d: %v", e.Line, e.Err) }
+
+// Unwrap gives what is wrong.
+func (e *ImportError) Unwrap() error { return e.Err }
+
+// Import makes a ledger from an export. A file that exists is refused; where the
+// import is faulty nothing is left of it. The error is an *ImportError or one of
+// the ledger.
+func Import(ctx context.Context, file string, r io.Reader) (chain.Head, error) {
+	return ledger.Restore(ctx, file, readExport(ctx, r))
+}
+
+func readExport(ctx context.Context, r io.Reader) iter.Seq2[ledger.Restored, error] {
+	return func(yield func(ledger.Restored, error) bool) {
+		s := bufio.NewScanner(r)
+		s.Buffer(make([]byte, 0, 1<<16), maxLine)
+		var head chain.Head
+		line := 0
+		for s.Scan() {
+			line++
+			e, err := readLine(s.Bytes())
+			if err == nil {
+				err = chain.Check(head, e.Entry)
+			}
+			if err == nil {
+				err = ctx.Err()
+			}
+			if err != nil {
+				yield(e, &ImportError{line, err})
+				return
+			}
+			head = e.Head()
+			if !yield(e, nil) {
+				return
+			}
+		}
+		if err := s.Err(); err != nil {
+			yield(ledger.Restored{}, &ImportError{line + 1, err})
+		}
+	}
+}
+
+// readLine reads an entry and makes the rows that repeat it.
+func readLine(text []byte) (e ledger.Restored, err error) {
+	var x exported
+	if err := json.Unmarshal(bytes.TrimSpace(text), &x, json.RejectUnknownMembers(true), jsontext.AllowDuplicateNames(false)); err != nil {
+		return e, err
+	}
+	e.Entry = chain.Entry{Seq: x.Seq, Time: x.Time, Kind: chain.Kind(x.Kind), Body: []byte(x.Body), Previous: x.Previous, Hash: x.Hash}
+	if e.Kind == chain.Assessment {
+		doc, err := assessment.Decode(e.Body)
+		if err != nil {
+			return e, err
+		}
+		digest, err := assessment.DigestOf(e.Body)
+		if err != nil {
+			return e, err
+		}
+		record := assessment.LedgerRecord(doc, e.Body, digest)
+		e.Assessment = &record
+		return e, nil
+	}
+	e.Rows, err = SignedRows(e.Entry)
+	return e, err
+}
+
+// SignedRows gives the rows that repeat an entry of signed statements, from its
+// body alone: whether the statements count is not asked. It gives none for other
+// kinds of entry.
+func SignedRows(e chain.Entry) ([]ledger.Row, error) {
+	switch e.Kind {
+	case chain.Anchor:
+		var body approval.AnchorBody
+		if err := canon.Unmarshal(e.Body, &body); err != nil {
+			return nil, err
+		}
+		a := &approval.AnchorRecord{}
+		for _, s := range body.Statements {
+			r, err := approval.Read(s)
+			if err != nil {
+				return nil, err
+			}
+			a.Records = append(a.Records, r)
+		}
+		return anchorRows(a), nil
+	case chain.SignOff, chain.InForce, chain.Revocation:
+		var body approval.Signed
+		if err := canon.Unmarshal(e.Body, &body); err != nil {
+			return nil, err
+		}
+		r, err := approval.Read(body)
+		if err != nil {
+			return nil, err
+		}
+		return rowsOf(e.Kind, &r), nil
+	}
+	return nil, nil
+}

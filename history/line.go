@@ -1,0 +1,119 @@
+// Package history joins what the ledger records, what people signed and what Git
+// holds: the state of every assessment, what was in force when, and the proof
+// that nothing was altered.
+//
+//	line, problems, err := history.ReadLine(ctx, ledger)
+//	line.State(3).Word // "approved"
+package history
+
+import (
+	"context"
+	"fmt"
+	"strings"
+
+	"speedtrail/history/approval"
+	"speedtrail/history/assessment"
+	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
+	"speedtrail/history/signoff"
+)
+
+// ReadLine follows the line of approval through a ledger. problems are the
+// entries that do not count, with the reason; they do not stop the reading.
+func ReadLine(ctx context.Context, l *ledger.Ledger) (line *approval.Line, problems []error, err error) {
+	line = approval.New(l.ID())
+	for e, err := range l.Entries(ctx, 1) {
+		if err != nil {
+			return nil, nil, err
+		}
+		var a *approval.Assessment
+		if e.Kind == chain.Assessment {
+			number, err := l.NumberOf(ctx, e.Seq)
+			if err != nil {
+				return nil, nil, err
+			}
+			doc, err := assessment.Decode(e.Body)
+			if err == nil {
+				digest, err := assessment.DigestOf(e.Body)
+				if err == nil {
+					a = AssessmentOf(line, number, digest, doc)
+				}
+			}
+		}
+		if err := line.Add(e, a); err != nil {
+			problems = append(problems, err)
+		}
+	}
+	return line, problems, nil
+}
+
+// AssessmentOf gives what the line of approval needs of an assessment.
+func AssessmentOf(line *approval.Line, number int64, digest string, doc *assessment.Document) *approval.Assessment {
+	c := &doc.Computed
+	a := &approval.Assessment{
+		Number: number, Digest: digest, Base: c.Base.Commit, Target: c.Target.Commit, BaseTree: c.Base.Tree, TargetTree: c.Target.Tree,
+		Folder: c.Folder, Rules: c.RulesVersion, Findings: Findings(c),
+		Policy: line.Policy(c.Policy.Base.SignOff, c.Policy.Base.AllowedSigners),
+		Next:   line.Policy(c.Policy.Target.SignOff, c.Policy.Target.AllowedSigners),
+	}
+	for _, p := range c.Preparers {
+		a.Preparers = append(a.Preparers, p.Email)
+	}
+	for _, f := range c.Findings {
+		a.BaseNotAncestor = a.BaseNotAncestor || f.ID == assessment.BaseNotAncestor
+	}
+	return a
+}
+
+// Findings lists the findings that nobody has accepted as statements write them:
+// each id with its number, in the order of the assessment; "none" for none.
+func Findings(c *assessment.Computed) string {
+	var ids []string
+	count := map[string]int{}
+	for _, f := range c.Findings {
+		if f.Accepted != "" {
+			continue
+		}
+		if count[f.ID] == 0 {
+			ids = append(ids, f.ID)
+		}
+		count[f.ID]++
+	}
+	if ids == nil {
+		return "none"
+	}
+	for i, id := range ids {
+		ids[i] = fmt.Sprintf("%s %d", id, count[id])
+	}
+	return strings.Join(ids, ", ")
+}
+
+// rowsOf gives the rows that repeat a checked statement.
+func rowsOf(kind chain.Kind, r *approval.Record) []ledger.Row {
+	at := r.Time.UTC().Format(signoff.TimeLayout)
+	hash := signoff.Hash(r.Text)
+	switch kind {
+	case chain.SignOff:
+		return []ledger.Row{{Table: ledger.SignOffTable, Values: []any{r.Assessment, r.Digest, r.Role, r.Decision, r.Reason, r.Signer, r.Fingerprint, at, hash}}}
+	case chain.InForce:
+		routes := signoff.AllRoutes
+		if len(r.Routes) > 0 {
+			routes = strings.Join(r.Routes, ",")
+		}
+		return []ledger.Row{{Table: ledger.InForceTable, Values: []any{r.Folder, r.Revision, r.Content, routes, r.Since.UTC().Format(signoff.TimeLayout), r.Corrects, r.Reason, r.Signer, r.Fingerprint, at, hash}}}
+	case chain.Revocation:
+		return []ledger.Row{{Table: ledger.RevocationTable, Values: []any{r.Key, r.Role, r.Reason, r.Signer, r.Fingerprint, at, hash}}}
+	}
+	return nil
+}
+
+// anchorRows gives the rows that repeat an anchor.
+func anchorRows(a *approval.AnchorRecord) []ledger.Row {
+	var rows []ledger.Row
+	for i, r := range a.Records {
+		rows = append(rows, ledger.Row{Table: ledger.AnchorTable, Values: []any{
+			int64(i + 1), r.Folder, r.Revision, r.Content, r.Policy, r.Role, r.Signer, r.Fingerprint, r.Time.UTC().Format(signoff.TimeLayout), signoff.Hash(r.Text),
+		}})
+	}
+	return rows
+}

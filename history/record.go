@@ -1,0 +1,56 @@
+package history
+
+import (
+	"context"
+	"time"
+
+	"speedtrail/history/approval"
+	"speedtrail/history/canon"
+	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
+)
+
+// formats of the bodies by kind.
+var formats = map[chain.Kind]string{
+	chain.SignOff: approval.SignOffFormat, chain.InForce: approval.InForceFormat, chain.Revocation: approval.RevocationFormat,
+}
+
+// RecordSigned checks a signed statement of kind sign-off, in-force or revocation
+// as verify does, and appends it. Both happen with the ledger locked, so that
+// nothing can come between. The error is of class approval.ErrRefused,
+// signoff.ErrSignature or signoff.ErrMalformed, or one of the ledger; then
+// nothing was recorded.
+func RecordSigned(ctx context.Context, l *ledger.Ledger, kind chain.Kind, statement, signature []byte, now time.Time) (chain.Head, error) {
+	e, err := l.Append(ctx, now, kind, func() ([]byte, []ledger.Row, error) {
+		line, _, err := ReadLine(ctx, l)
+		if err != nil {
+			return nil, nil, err
+		}
+		signed := approval.Signed{Format: formats[kind], Signature: string(signature), Statement: string(statement)}
+		// The recorded time has whole seconds, as the entry has.
+		r, err := line.Check(kind, signed, now.UTC().Truncate(time.Second))
+		if err != nil {
+			return nil, nil, err
+		}
+		body, err := canon.Marshal(signed)
+		return body, rowsOf(kind, &r), err
+	})
+	return e.Head(), err
+}
+
+// RecordAnchor checks an anchor and appends it, in the same way.
+func RecordAnchor(ctx context.Context, l *ledger.Ledger, body approval.AnchorBody, now time.Time) (chain.Head, error) {
+	e, err := l.Append(ctx, now, chain.Anchor, func() ([]byte, []ledger.Row, error) {
+		line, _, err := ReadLine(ctx, l)
+		if err != nil {
+			return nil, nil, err
+		}
+		a, err := line.CheckAnchor(body, now.UTC().Truncate(time.Second))
+		if err != nil {
+			return nil, nil, err
+		}
+		b, err := canon.Marshal(body)
+		return b, anchorRows(a), err
+	})
+	return e.Head(), err
+}

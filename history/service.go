@@ -1,0 +1,114 @@
+package history
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+	"time"
+
+	"speedtrail/history/approval"
+)
+
+// Service is a record that a revision went into service, and how it got there.
+type Service struct {
+	approval.Record
+	Before *approval.Record // what was in service before; nil for the first
+	// Approved: approved assessments lead to the revision from the anchor, and
+	// from what was in service before, on every route that the record names.
+	Approved bool
+	// Undoes: the revision is approved, but not by a way from what was in service
+	// before: of two approved siblings the second undoes the first.
+	Undoes bool
+	// Through are the approved assessments whose target it is.
+	Through []int64
+}
+
+// ServiceOf describes an in-force record.
+func ServiceOf(line *approval.Line, r approval.Record) Service {
+	s := Service{Record: r, Approved: line.ApprovedContent(r.Folder, r.Content)}
+	routes := r.Routes
+	if len(routes) == 0 {
+		routes = []string{""} // records for the whole network; those for routes are looked at below
+	}
+	for _, route := range routes {
+		_, before := beforeRecord(line, r, route)
+		if before == nil {
+			continue
+		}
+		if s.Before == nil {
+			s.Before = before
+		}
+		if s.Approved && !line.Led(r.Folder, before.Content, r.Content) {
+			s.Undoes = true
+		}
+	}
+	if s.Undoes {
+		s.Approved = false
+	}
+	for _, a := range line.Assessments() {
+		if a.Folder == r.Folder && a.TargetTree == r.Content && line.State(a.Number).Word == approval.Approved {
+			s.Through = append(s.Through, a.Number)
+		}
+	}
+	return s
+}
+
+// beforeRecord finds the record that was in force on a route just before another.
+// For the whole network every record before it counts, the last one first.
+func beforeRecord(line *approval.Line, r approval.Record, route string) (found bool, before *approval.Record) {
+	standing := line.Standing(r.Folder)
+	for i := range standing {
+		x := &standing[i]
+		if x.Entry.Seq == r.Entry.Seq || !x.Since.Before(r.Since) {
+			continue
+		}
+		if route == "" || len(x.Routes) == 0 || slices.Contains(x.Routes, route) {
+			before = x
+		}
+	}
+	return before != nil, before
+}
+
+// ServiceFinding is something about the in-force log that needs eyes.
+type ServiceFinding struct {
+	ID, Text string
+}
+
+// The ids of these findings.
+const (
+	ServiceUnapproved = "in-service-unapproved"
+	ServiceUndoes     = "in-service-undoes"
+	NeverInService    = "approved-never-in-service"
+)
+
+// ServiceFindings looks at the in-force log of a folder: revisions in service
+// without approval, and approved ones that never went into service.
+func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
+	var list []ServiceFinding
+	served := map[string]bool{}
+	if a := line.Anchor(folder); a != nil {
+		served[a.Content] = true
+	}
+	for _, r := range line.Standing(folder) {
+		served[r.Content] = true
+		s := ServiceOf(line, r)
+		where := "the whole network"
+		if len(r.Routes) > 0 {
+			where = strings.Join(r.Routes, ", ")
+		}
+		at := r.Since.UTC().Format(time.RFC3339)
+		switch {
+		case s.Undoes:
+			list = append(list, ServiceFinding{ServiceUndoes, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and is approved, but no approved assessment leads to it from commit %s, which was in service before: what that one changed is undone", r.Entry.Seq, r.Revision, where, at, s.Before.Revision)})
+		case !s.Approved:
+			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s without approval", r.Entry.Seq, r.Revision, where, at)})
+		}
+	}
+	for _, a := range line.Assessments() {
+		if a.Folder == folder && !served[a.TargetTree] && line.State(a.Number).Word == approval.Approved {
+			served[a.TargetTree] = true
+			list = append(list, ServiceFinding{NeverInService, fmt.Sprintf("assessment %d: its target %s is approved and never went into service", a.Number, a.Target)})
+		}
+	}
+	return list
+}

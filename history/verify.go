@@ -1,0 +1,343 @@
+package history
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"runtime"
+	"slices"
+	"sync"
+
+	"golang.org/x/sync/errgroup"
+
+	"speedtrail/history/approval"
+	"speedtrail/history/assessment"
+	"speedtrail/history/canon"
+	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
+)
+
+// Problem is something that verify has found wrong.
+type Problem struct {
+	Entry int64  // 0: the ledger as a whole
+	Kind  string // chain, body, rows, file, head, anchor, statement, recompute, git
+	Text  string
+}
+
+// String gives the problem with its entry.
+func (p Problem) String() string {
+	if p.Entry == 0 {
+		return p.Kind + ": " + p.Text
+	}
+	return fmt.Sprintf("%s: entry %d: %s", p.Kind, p.Entry, p.Text)
+}
+
+// Result is what a verification has proved, what not, and why.
+type Result struct {
+	Problems []Problem // by entry
+	Proved   []string
+	Unproved []string // with the reason
+	Head     chain.Head
+	Line     *approval.Line
+}
+
+// Good tells whether nothing is wrong and nothing was left unproved that would
+// have to be proved.
+func (r *Result) Good() bool { return len(r.Problems) == 0 }
+
+// ErrOtherRules is given by a Checker for an assessment that was made by another
+// version of the rules.
+var ErrOtherRules = errors.New("made by another version of the rules")
+
+// Checker re-derives from Git what the ledger says. It may be called from several
+// goroutines at once.
+type Checker interface {
+	// Recompute gives the digest of the assessment that the document describes,
+	// computed anew.
+	Recompute(ctx context.Context, doc *assessment.Document) (digest string, err error)
+	// Content gives the tree of a folder at a commit and the policy files there.
+	Content(ctx context.Context, commit, folder string) (tree, signoff, allowedSigners string, err error)
+}
+
+// VerifyOptions are what a verification is asked for.
+type VerifyOptions struct {
+	Against  []chain.Head // heads that somebody noted elsewhere
+	Anchors  []string     // hashes of anchors that somebody got elsewhere
+	Checker  Checker      // nil: nothing is held against Git
+	Progress func(done, total int)
+}
+
+// Verify re-derives everything that a ledger says. Problems do not stop it; the
+// error is one of the ledger's file or of the context.
+func Verify(ctx context.Context, l *ledger.Ledger, o VerifyOptions) (*Result, error) {
+	v := &verifier{ctx: ctx, l: l, o: o, r: &Result{}}
+	if err := v.file(); err != nil {
+		return nil, err
+	}
+	if err := v.entries(); err != nil {
+		return nil, err
+	}
+	if err := v.heads(); err != nil {
+		return nil, err
+	}
+	if err := v.git(); err != nil {
+		return nil, err
+	}
+	v.summary()
+	slices.SortStableFunc(v.r.Problems, func(a, b Problem) int { return int(a.Entry - b.Entry) })
+	return v.r, nil
+}
+
+type verifier struct {
+	ctx    context.Context
+	l      *ledger.Ledger
+	o      VerifyOptions
+	r      *Result
+	counts map[string]int64
+	docs   []recorded
+	lock   sync.Mutex
+}
+
+// recorded is an assessment to be computed anew.
+type recorded struct {
+	entry  int64
+	digest string
+	doc    *assessment.Document
+}
+
+func (v *verifier) problem(entry int64, kind, format string, args ...any) {
+	v.lock.Lock()
+	defer v.lock.Unlock()
+	v.r.Problems = append(v.r.Problems, Problem{entry, kind, fmt.Sprintf(format, args...)})
+}
+
+func (v *verifier) file() error {
+	err := v.l.CheckFile(v.ctx)
+	if errors.Is(err, ledger.ErrDamaged) {
+		v.problem(0, "file", "%v", err)
+		return nil
+	}
+	return err
+}
+
+// entries checks the chain, the bodies, the rows and the statements.
+func (v *verifier) entries() error {
+	v.counts = map[string]int64{}
+	v.r.Line = approval.New(v.l.ID())
+	var head chain.Head
+	seen := int64(0)
+	for e, err := range v.l.Entries(v.ctx, 1) {
+		if err != nil {
+			return err
+		}
+		seen++
+		if err := chain.Check(head, e); err != nil {
+			v.problem(e.Seq, "chain", "%v", err)
+		}
+		head = e.Head()
+		if err := canon.Check(e.Body); err != nil {
+			v.problem(e.Seq, "body", "%v", err)
+		}
+		if (e.Seq == 1) != (e.Kind == chain.Ledger) {
+			v.problem(e.Seq, "chain", "an entry of kind %s stands here", e.Kind)
+		}
+		a, err := v.rows(e)
+		if err != nil {
+			return err
+		}
+		if err := v.r.Line.Add(e, a); err != nil {
+			v.problem(e.Seq, "statement", "%v", err)
+		}
+	}
+	v.r.Head = head
+	for _, table := range ledger.Tables {
+		n, err := v.l.RowCount(v.ctx, table)
+		if err != nil {
+			return err
+		}
+		if n != v.counts[table] {
+			v.problem(0, "rows", "table %s has %d rows, the entries ask for %d", table, n, v.counts[table])
+		}
+	}
+	return nil
+}
+
+// rows compares the rows that repeat an entry with its body.
+func (v *verifier) rows(e chain.Entry) (*approval.Assessment, error) {
+	switch e.Kind {
+	case chain.Assessment:
+		return v.assessmentRows(e)
+	case chain.Anchor, chain.SignOff, chain.InForce, chain.Revocation:
+		want, err := SignedRows(e)
+		if err != nil {
+			v.problem(e.Seq, "body", "it cannot be read: %v", err)
+			return nil, nil
+		}
+		for _, table := range []ledger.Table{ledger.AnchorTable, ledger.SignOffTable, ledger.InForceTable, ledger.RevocationTable} {
+			have, err := v.l.Rows(v.ctx, table, e.Seq)
+			if err != nil {
+				return nil, err
+			}
+			var ask []ledger.Row
+			for _, r := range want {
+				if r.Table == table {
+					ask = append(ask, r)
+				}
+			}
+			v.counts[string(table)] += int64(len(have))
+			if !slices.EqualFunc(have, ask, func(a, b ledger.Row) bool { return slices.Equal(a.Values, b.Values) }) {
+				v.problem(e.Seq, "rows", "the rows of table %s are not those of the entry", table)
+			}
+		}
+	}
+	return nil, nil
+}
+
+func (v *verifier) assessmentRows(e chain.Entry) (*approval.Assessment, error) {
+	number, err := v.l.NumberOf(v.ctx, e.Seq)
+	if errors.Is(err, ledger.ErrDamaged) {
+		v.problem(e.Seq, "rows", "%v", err)
+		return nil, nil
+	}
+	if err != nil {
+		return nil, err
+	}
+	doc, err := assessment.Decode(e.Body)
+	var digest string
+	if err == nil {
+		digest, err = assessment.DigestOf(e.Body)
+	}
+	if err != nil {
+		v.problem(e.Seq, "body", "it cannot be read: %v", err)
+		return nil, nil
+	}
+	counts, err := v.l.CompareRows(v.ctx, number, e.Seq, assessment.LedgerRecord(doc, e.Body, digest))
+	for table, n := range counts {
+		v.counts[table] += n
+	}
+	if errors.Is(err, ledger.ErrDamaged) {
+		v.problem(e.Seq, "rows", "%v", err)
+	} else if err != nil {
+		return nil, err
+	}
+	v.docs = append(v.docs, recorded{e.Seq, digest, doc})
+	return AssessmentOf(v.r.Line, number, digest, doc), nil
+}
+
+// heads holds the ledger against what was noted elsewhere.
+func (v *verifier) heads() error {
+	for _, h := range v.o.Against {
+		hash, err := v.l.EntryHash(v.ctx, h.Seq)
+		switch {
+		case err != nil:
+			return err
+		case hash == "":
+			v.problem(0, "head", "entry %d is not there, and the noted head says that it was: the end was removed, or this is an older copy", h.Seq)
+		case hash != h.Hash:
+			v.problem(0, "head", "entry %d is another one than the noted head says: the ledger was made anew, or forked", h.Seq)
+		default:
+			v.r.Proved = append(v.r.Proved, fmt.Sprintf("the ledger still contains the noted head %s", h))
+		}
+	}
+	if len(v.o.Against) == 0 {
+		v.r.Unproved = append(v.r.Unproved, "that no entry was removed from the end: no head that was noted elsewhere is given (--against SEQ:HASH)")
+	}
+	anchors := v.r.Line.Anchors()
+	for _, hash := range v.o.Anchors {
+		found := false
+		for folder, a := range anchors {
+			if a.Entry.Hash == hash {
+				found = true
+				v.r.Proved = append(v.r.Proved, fmt.Sprintf("the policy root of the folder %s is the one that was noted", folder))
+			}
+		}
+		if !found {
+			v.problem(0, "anchor", "no anchor of this ledger has the noted hash %s", hash)
+		}
+	}
+	if len(v.o.Anchors) == 0 {
+		v.r.Unproved = append(v.r.Unproved, "policy root not proved: no hash of an anchor that was noted elsewhere is given (--anchor HASH)")
+	}
+	return nil
+}
+
+// git computes the assessments anew and looks at what statements say about
+// commits, several at a time.
+func (v *verifier) git() error {
+	if v.o.Checker == nil {
+		v.r.Unproved = append(v.r.Unproved, "that the assessments are what Git holds: they were not computed anew")
+		return nil
+	}
+	work, ctx := errgroup.WithContext(v.ctx)
+	work.SetLimit(runtime.GOMAXPROCS(0))
+	done, other := 0, 0
+	for _, d := range v.docs {
+		work.Go(func() error {
+			digest, err := v.o.Checker.Recompute(ctx, d.doc)
+			if ctx.Err() != nil {
+				return ctx.Err()
+			}
+			switch {
+			case errors.Is(err, ErrOtherRules):
+				v.problem(d.entry, "recompute", "not proved: the assessment was made by version %d of the rules; assess again", d.doc.Computed.RulesVersion)
+				v.lock.Lock()
+				other++
+				v.lock.Unlock()
+			case err != nil:
+				v.problem(d.entry, "git", "the assessment cannot be computed anew: %v", err)
+			case digest != d.digest:
+				v.problem(d.entry, "recompute", "computed anew the assessment has the digest %s, recorded is %s", digest, d.digest)
+			}
+			v.lock.Lock()
+			defer v.lock.Unlock()
+			done++
+			if v.o.Progress != nil {
+				v.o.Progress(done, len(v.docs))
+			}
+			return nil
+		})
+	}
+	if err := work.Wait(); err != nil {
+		return err
+	}
+	v.r.Proved = append(v.r.Proved, fmt.Sprintf("%d of %d assessments were computed anew from Git", len(v.docs)-other, len(v.docs)))
+	return v.statements()
+}
+
+// statements looks at the commits that anchors and in-force records name.
+func (v *verifier) statements() error {
+	check := func(entry int64, revision, folder, content string, policy *approval.Policy) {
+		tree, signoff, signers, err := v.o.Checker.Content(v.ctx, revision, folder)
+		switch {
+		case err != nil:
+			v.problem(entry, "git", "the commit %s that it names cannot be read: %v", revision, err)
+		case tree != content:
+			v.problem(entry, "git", "the folder %s of commit %s has the content %s, the statement says %s", folder, revision, tree, content)
+		case policy != nil && (policy.SignOff != signoff || policy.AllowedSigners != signers):
+			v.problem(entry, "git", "the policy of commit %s is not the one that the anchor holds", revision)
+		}
+	}
+	for folder, a := range v.r.Line.Anchors() {
+		check(a.Entry.Seq, a.Revision, folder, a.Content, &a.Policy)
+	}
+	for _, r := range v.r.Line.InForce() {
+		check(r.Entry.Seq, r.Revision, r.Folder, r.Content, nil)
+	}
+	return v.ctx.Err()
+}
+
+// summary says what was proved of the ledger itself.
+func (v *verifier) summary() {
+	if len(v.r.Problems) > 0 {
+		return
+	}
+	signed := len(v.r.Line.SignOffs()) + len(v.r.Line.InForce()) + len(v.r.Line.Revocations())
+	for _, a := range v.r.Line.Anchors() {
+		signed += len(a.Records)
+	}
+	v.r.Proved = append([]string{
+		fmt.Sprintf("%d entries form one chain, and every table repeats them exactly", v.r.Head.Seq),
+		fmt.Sprintf("%d signed statements obey the policies of their time", signed),
+	}, v.r.Proved...)
+	v.r.Unproved = append(v.r.Unproved, "who wrote a commit, and when an entry was recorded: names and times are claims")
+}
