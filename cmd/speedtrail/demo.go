@@ -19,8 +19,9 @@ func (a *app) demoCommand() *cobra.Command {
 		Use:   "demo [DIR]",
 		Short: "the main job on an invented network",
 		Long: `demo writes an invented railway network as a Git repository with a history of a
-year into a new folder (speedtrail-demo unless given), assesses its last
-release, records the result in the ledger there, writes the change report and
+year into a new folder (speedtrail-demo unless given), with a ledger of the year's
+assessments, sign-offs by invented people with test keys and a log of what went into
+service; assesses the last release, records the result, writes the change report and
 says what to look at. A folder that is not empty is left alone. Exit status 0
 when that is done, whatever the findings.`,
 		Args: arguments(0, 1),
@@ -49,6 +50,9 @@ func (a *app) demo(ctx context.Context, dir string) error {
 		return err
 	}
 	defer repo.Close()
+	if err := a.demoAudit(ctx, repo, dir); err != nil {
+		return fmt.Errorf("the demonstration's audit trail was not written: %w", err)
+	}
 	doc, err := a.compute(ctx, repo, network.Base, network.Target, assessment.Options{Requests: []string{}})
 	if err != nil {
 		return err

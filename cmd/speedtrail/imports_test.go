@@ -16,7 +16,7 @@ import (
 func TestImports(t *testing.T) {
 	floors := []string{"schema", "diff", "history", "cmd"}
 	owners := map[string]string{
-		"github.com/sergi/go-diff": "diff/lines", "github.com/mattn/go-sqlite3": "history/ledger", "github.com/spf13/cobra": "cmd/speedtrail",
+		"github.com/sergi/go-diff": "diff/lines", "github.com/mattn/go-sqlite3": "history/ledger history/index", "github.com/spf13/cobra": "cmd/speedtrail",
 		"github.com/go-git/": "history/revision history/compose",
 	}
 	files := 0

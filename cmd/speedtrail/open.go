@@ -111,6 +111,15 @@ func (a *app) ledgerPath(repo *revision.Repo) string {
 
 // openLedger opens the ledger for writing, made if need be, or for reading.
 func (a *app) openLedger(ctx context.Context, write bool) (*ledger.Ledger, error) {
+	return a.openLedgerWith(ctx, ledger.Options{Create: write, ReadOnly: !write, Now: time.Now})
+}
+
+// openLedgerAt opens the ledger for writing, made at a given time if need be.
+func (a *app) openLedgerAt(ctx context.Context, at time.Time) (*ledger.Ledger, error) {
+	return a.openLedgerWith(ctx, ledger.Options{Create: true, Now: func() time.Time { return at }})
+}
+
+func (a *app) openLedgerWith(ctx context.Context, o ledger.Options) (*ledger.Ledger, error) {
 	file := a.ledger
 	repo, err := a.openRepo()
 	if err == nil {
@@ -129,7 +138,7 @@ func (a *app) openLedger(ctx context.Context, write bool) (*ledger.Ledger, error
 		// With --ledger, a ledger can be read where there is no repository.
 		return nil, err
 	}
-	l, err := ledger.Open(ctx, file, ledger.Options{Create: write, ReadOnly: !write, Now: time.Now})
+	l, err := ledger.Open(ctx, file, o)
 	if err != nil {
 		return nil, fmt.Errorf("ledger %s: %w", file, err)
 	}

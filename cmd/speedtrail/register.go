@@ -6,9 +6,8 @@ import (
 	"fmt"
 	"io"
 	"strings"
+	"time"
 
-	"github.com/jedib0t/go-pretty/v6/table"
-	"github.com/jedib0t/go-pretty/v6/text"
 	"github.com/spf13/cobra"
 
 	"speedtrail/history"
@@ -88,24 +87,38 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 		_, err := fmt.Fprintf(w, "No assessment is recorded yet. Record one with: speedtrail assess BASE TARGET\nhead of the ledger %s\n", head)
 		return err
 	}
-	t := table.NewWriter()
-	t.SetStyle(table.StyleLight)
-	t.Style().Options.DrawBorder = false
-	t.Style().Options.SeparateColumns = false
-	t.Style().Format.Header = text.FormatDefault
-	t.AppendHeader(table.Row{"no.", "recorded (UTC)", "state", "base", "target", "requests", "changes", "findings", "signed"})
-	for _, r := range rows {
-		requests := strings.Join(r.Requests, ", ")
-		if requests == "" {
-			requests = "none"
+	for i, r := range rows {
+		if i > 0 {
+			fmt.Fprintln(w)
 		}
-		t.AppendRow(table.Row{
-			r.Number, strings.Replace(strings.TrimSuffix(r.Time, "Z"), "T", " ", 1), line.State(r.Number).Word, short(r.Base), short(r.Target),
-			source.Visible(requests), r.Changes, r.Findings, source.VisibleLines(strings.Join(signedBy(line, r.Number), "\n")),
-		})
+		state := line.State(r.Number)
+		fmt.Fprintf(w, "%4d  %s  %s\n", r.Number, strings.Replace(strings.TrimSuffix(r.Time, "Z"), "T", " ", 1), state.Word)
+		requests := "no change request"
+		if len(r.Requests) > 0 {
+			requests = strings.Join(r.Requests, ", ")
+		}
+		lines := []string{
+			fmt.Sprintf("%s to %s, %s, folder %s", short(r.Base), short(r.Target), source.Visible(r.Dataset), source.Visible(r.Folder)),
+			source.Visible(requests),
+			fmt.Sprintf("speed changes %d, findings %d", r.Changes, r.Findings),
+		}
+		for _, x := range state.Signed {
+			lines = append(lines, source.Visible(fmt.Sprintf("%s %s by %s, %s", x.Decision, x.Role, x.Signer, x.Time.UTC().Format(time.DateOnly))))
+		}
+		if len(state.Missing) > 0 && state.Word != approval.Rejected {
+			lines = append(lines, "still to sign: "+joined(state.Missing))
+		}
+		if len(state.Blocks) > 0 {
+			lines = append(lines, "kept from approval by "+source.Visible(joined(state.Blocks)))
+		}
+		if state.Superseded != 0 {
+			lines = append(lines, fmt.Sprintf("superseded by assessment %d", state.Superseded))
+		}
+		for _, text := range lines {
+			fmt.Fprintf(w, "      %s\n", strings.ReplaceAll(wrap(text, 74), "\n", "\n      "))
+		}
 	}
-	t.SetColumnConfigs([]table.ColumnConfig{{Number: 6, WidthMax: 24, WidthMaxEnforcer: text.WrapSoft}})
-	_, err := fmt.Fprintf(w, "%s\n\nledger %s, head %s\nnext: speedtrail report %d --out report.html\n", t.Render(), l.ID(), head, rows[0].Number)
+	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\nnext: speedtrail report %d --out report.html\n", l.ID(), head, rows[0].Number)
 	return err
 }
 

@@ -97,7 +97,7 @@ remarks to standard error.`,
 	root.SetFlagErrorFunc(func(c *cobra.Command, err error) error {
 		return badCall(c.CommandPath()+" --help lists the options", "%v", err)
 	})
-	root.AddCommand(a.demoCommand(), a.validateCommand(), a.profileCommand(), a.assessCommand(), a.reportCommand(), a.registerCommand(),
+	root.AddCommand(a.demoCommand(), a.validateCommand(), a.profileCommand(), a.assessCommand(), a.reportCommand(), a.registerCommand(), a.traceCommand(),
 		a.signCommand(), a.anchorCommand(), a.revokeCommand(), a.inforceCommand(), a.verifyCommand(), a.exportCommand(), a.importCommand())
 	root.CompletionOptions.HiddenDefaultCmd = true
 	root.PersistentPreRunE = func(*cobra.Command, []string) error {

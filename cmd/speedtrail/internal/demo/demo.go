@@ -62,8 +62,14 @@ var look = []Hint{
 		"speedtrail profile release-2026.1 --route BW3 --train ORE --direction reverse"},
 	{"BW1: the recanted curve lets trains go faster, and one train length past it as well (run-out).",
 		"speedtrail profile release-2026.1 --route BW1 --train IC --format chart"},
-	{"Every change, one row a train and stretch, for a spreadsheet.", "speedtrail report 1 --format csv"},
-	{"The same assessment again adds nothing to the ledger.", "speedtrail assess release-2025.4 release-2026.1"},
+	{"Every change, one row a train and stretch, for a spreadsheet.", "speedtrail report 4 --format csv"},
+	{"The register: two releases approved, one half signed, and this one, which cannot be signed because its base is not approved.", "speedtrail register"},
+	{"What was in force on a day, and the speed at a point then; without options, the log and what is wrong with it.",
+		"speedtrail inforce --when 2025-09-01T12:00:00Z --route BW1 --at 34"},
+	{"When the speed at a point changed, by which commit and row, and who signed that.", "speedtrail trace --route BW1 --at 34 --train IC"},
+	{"Everything computed anew and every signature checked.", "speedtrail verify"},
+	{"Sign the missing approval yourself, with a test key that stands beside the ledger.",
+		"speedtrail sign 3 --role approver --decision approve --reason \"looked at it\" --key .git/speedtrail/demo-keys/brand"},
 	{"Alter a cell in a table, then ask what it does before you commit it.", "speedtrail assess HEAD"},
 }
 
@@ -82,6 +88,7 @@ func History() ([]compose.Commit, error) {
 	if err != nil {
 		return nil, err
 	}
+	first["allowed_signers"] = allowedSigners(false)
 	first[".gitignore"] = "/change-report.html\n"
 	b := builder{branches: map[string]*branch{"main": {files: first, tip: -1}}}
 	for _, s := range steps {

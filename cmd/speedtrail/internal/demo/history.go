@@ -70,6 +70,8 @@ var steps = []step{
 	{branch: "main", merge: "railcar", who: okello, when: "2025-07-01T10:00", text: "Merge the light railcar"},
 	{branch: "main", who: marsh, when: "2025-07-14T08:10", text: "BW2: embankment at Reedham cut shows movement, 60 km/h",
 		edits: []edit{{file: "routes/bw2/temporary.csv", old: "reason\n", now: "reason\nTSR-31,19.800,24.200,60,2025-07-14,,embankment movement\n"}}},
+	{branch: "main", who: okello, when: "2025-07-28T09:00", text: "A new key for R. Holm from August on",
+		edits: []edit{{file: "allowed_signers", now: allowedSigners(true)}}},
 	{branch: "main", merge: "saddle", who: okello, when: "2025-08-04T09:00", text: "Merge the realignment", tag: "release-2025.3"},
 	{branch: "main", who: quist, when: "2025-08-20T15:45", text: "Rename the folder of the flyover\n\nIt was the only one with a name of its own.",
 		edits: []edit{{file: "routes/bw5-flyover", rename: "routes/bw5"}}},

@@ -1,0 +1,283 @@
+package render
+
+import (
+	"encoding/csv"
+	"io"
+	"strconv"
+	"strings"
+
+	"speedtrail/history/assessment"
+)
+
+const traceJSONFormat = "speedtrail-trace 1"
+
+// Trace is what a trace found: the trails of a point, or the stretches with the
+// revision that each piece dates from. Commits are listed once and referred to
+// by their index.
+type Trace struct {
+	At          string               `json:"at_km"` // of a point
+	Caution     string               `json:"caution"`
+	Commits     []TraceCommit        `json:"commits"` // the newest first
+	Cut         []int                `json:"cut"`     // commits at which a shallow clone ends
+	FirstParent bool                 `json:"first_parent"`
+	Folder      string               `json:"folder"`
+	Format      string               `json:"format"`
+	From        string               `json:"from_km"` // of a stretch
+	Gaps        []TraceGap           `json:"gaps"`    // revisions whose data set does not load, the newest first
+	Places      []assessment.Place   `json:"places"`
+	Revision    TraceRevision        `json:"revision"` // the newest one
+	Route       string               `json:"route"`
+	RouteName   string               `json:"route_name"`
+	Segments    []assessment.Segment `json:"segments"`
+	Stretches   []TraceStretch       `json:"stretches"`
+	To          string               `json:"to_km"`
+	Trails      []TraceTrail         `json:"trails"`
+}
+
+// TraceRevision is the revision that positions and trains are read from.
+type TraceRevision struct {
+	Commit string `json:"commit"`
+	Typed  string `json:"typed"`
+}
+
+// TraceCommit is a commit that a trace names.
+type TraceCommit struct {
+	Assessments []TraceAssessment `json:"assessments"` // whose range holds the commit; none: it is not assessed
+	Author      assessment.Person `json:"author"`
+	Authored    string            `json:"authored"`
+	Committed   string            `json:"committed"`
+	Hash        string            `json:"hash"`
+	Requests    []TraceRequest    `json:"requests"` // in play between the commit and its first parent
+	Subject     string            `json:"subject"`
+}
+
+// TraceAssessment is a recorded assessment.
+type TraceAssessment struct {
+	Number   int64    `json:"number"`
+	SignOffs []string `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"
+	State    string   `json:"state"`
+}
+
+// TraceRequest is a change request.
+type TraceRequest struct {
+	ID    string `json:"id"`
+	Title string `json:"title"`
+}
+
+// TraceGap is a revision whose data set does not load.
+type TraceGap struct {
+	Commit int    `json:"commit"` // index in commits
+	Fault  string `json:"fault"`  // the first one
+}
+
+// TraceTrail is the past of a point for trains that see the same.
+type TraceTrail struct {
+	Direction string       `json:"direction"`
+	Line      []TraceReign `json:"line"` // along first parents, the oldest first
+	Now       TraceValue   `json:"now"`
+	Steps     []TraceStep  `json:"steps"` // the newest first
+	Trains    []string     `json:"trains"`
+}
+
+// TraceReign is a run of revisions on the line of first parents of one speed.
+type TraceReign struct {
+	Committed string `json:"committed"` // of the first of them
+	Gap       bool   `json:"gap"`       // they do not load
+	Speed     int    `json:"speed_kmh"` // 0: no such track
+}
+
+// TraceStep is a revision at which the speed changed.
+type TraceStep struct {
+	Across int          `json:"across"` // revisions that do not load between it and what was before
+	After  TraceValue   `json:"after"`
+	Aside  bool         `json:"aside"`  // a later merge did not take it
+	Before []TraceValue `json:"before"` // of the parents, each speed once; empty where the history begins
+}
+
+// TraceValue is the speed at a revision with the rows that govern it there.
+type TraceValue struct {
+	Commit  int                 `json:"commit"` // index in commits
+	Sources []assessment.Source `json:"governed_by"`
+	Speed   int                 `json:"speed_kmh"` // 0: no such track
+}
+
+// TraceStretch is a stretch of today's profile for trains that see the same.
+type TraceStretch struct {
+	Bands     []TraceBand  `json:"bands"` // along first parents, the oldest first
+	Direction string       `json:"direction"`
+	LeftOut   int          `json:"bands_left_out"` // older ones that are not listed
+	Pieces    []TracePiece `json:"pieces"`
+	Trains    []string     `json:"trains"`
+}
+
+// TracePiece is a piece of one speed that dates from one revision.
+type TracePiece struct {
+	Across  int                 `json:"across"` // revisions that do not load between its revision and what was before
+	Before  []TraceLevel        `json:"before"` // in the first parent of its revision
+	End     int64               `json:"end_mm"` // running distance
+	From    string              `json:"from_km"`
+	Origin  int                 `json:"origin"` // index in commits
+	Sources []assessment.Source `json:"governed_by"`
+	Speed   int                 `json:"speed_kmh"`
+	Start   int64               `json:"start_mm"` // running distance
+	To      string              `json:"to_km"`
+}
+
+// TraceLevel is a piece of an older profile, on the newest track.
+type TraceLevel struct {
+	End   int64 `json:"end_mm"`
+	Speed int   `json:"speed_kmh"` // 0: no such track
+	Start int64 `json:"start_mm"`
+}
+
+// TraceBand is the profile over a run of revisions.
+type TraceBand struct {
+	Committed string       `json:"committed"` // of the first of them
+	Gap       bool         `json:"gap"`       // they do not load
+	Pieces    []TraceLevel `json:"pieces"`
+}
+
+// TraceJSON writes a trace.
+func TraceJSON(w io.Writer, t *Trace) error {
+	out := *t
+	out.Format, out.Caution = traceJSONFormat, Caution
+	return indented(w, out)
+}
+
+// TraceCSV writes a row for each train and revision at which the speed changed;
+// of a stretch, for each train and piece.
+func TraceCSV(w io.Writer, t *Trace) error {
+	out := csv.NewWriter(w)
+	commit := func(i int) []string {
+		c := &t.Commits[i]
+		return []string{c.Hash, harmless(c.Author.Name), c.Authored, c.Committed, harmless(c.Subject)}
+	}
+	tail := func(i int) []string {
+		c := &t.Commits[i]
+		return []string{harmless(requestIDs(c)), assessmentNumbers(c)}
+	}
+	if t.At != "" {
+		out.Write([]string{"route", "direction", "train", "at_km", "before_kmh", "after_kmh", "commit", "author", "authored", "committed", "subject",
+			"before_source", "after_source", "requests", "assessments", "remark"})
+	} else {
+		out.Write([]string{"route", "direction", "train", "from_km", "to_km", "length_m", "speed_kmh", "commit", "author", "authored", "committed", "subject",
+			"governed_by", "requests", "assessments", "remark"})
+	}
+	for _, trail := range t.Trails {
+		for _, train := range trail.Trains {
+			for i := range trail.Steps {
+				s := &trail.Steps[i]
+				before, source := "", ""
+				if len(s.Before) > 0 {
+					before, source = csvSpeed(s.Before[0].Speed), assessment.SourceText(s.Before[0].Sources)
+				}
+				row := []string{harmless(t.Route), trail.Direction, harmless(train), t.At, before, csvSpeed(s.After.Speed)}
+				row = append(row, commit(s.After.Commit)...)
+				row = append(row, harmless(source), harmless(assessment.SourceText(s.After.Sources)))
+				row = append(row, tail(s.After.Commit)...)
+				out.Write(append(row, strings.Join(stepRemarks(t, s), "; ")))
+			}
+		}
+	}
+	for _, stretch := range t.Stretches {
+		for _, train := range stretch.Trains {
+			for _, p := range stretch.Pieces {
+				row := []string{harmless(t.Route), stretch.Direction, harmless(train), p.From, p.To, metres(p.End - p.Start), csvSpeed(p.Speed)}
+				row = append(row, commit(p.Origin)...)
+				row = append(row, harmless(assessment.SourceText(p.Sources)))
+				row = append(row, tail(p.Origin)...)
+				out.Write(append(row, strings.Join(pieceRemarks(t, &p), "; ")))
+			}
+		}
+	}
+	out.Flush()
+	return out.Error()
+}
+
+// csvSpeed writes a speed; where there is no such track, nothing.
+func csvSpeed(v int) string {
+	if v == 0 {
+		return ""
+	}
+	return strconv.Itoa(v)
+}
+
+func requestIDs(c *TraceCommit) string {
+	var ids []string
+	for _, q := range c.Requests {
+		ids = append(ids, q.ID)
+	}
+	return strings.Join(ids, "; ")
+}
+
+func assessmentNumbers(c *TraceCommit) string {
+	var list []string
+	for _, a := range c.Assessments {
+		list = append(list, strings.Join(append([]string{strconv.FormatInt(a.Number, 10) + " " + a.State}, a.SignOffs...), ", "))
+	}
+	if len(list) == 0 {
+		return "not assessed"
+	}
+	return strings.Join(list, "; ")
+}
+
+// speedWords writes a speed for a reader.
+func speedWords(v int) string {
+	if v == 0 {
+		return "no such track"
+	}
+	return strconv.Itoa(v)
+}
+
+// stepRemarks says what a step does not show by itself.
+func stepRemarks(t *Trace, s *TraceStep) []string {
+	var list []string
+	switch {
+	case len(s.Before) == 0 && t.isCut(s.After.Commit):
+		list = append(list, "the clone is shallow and ends here: what was before is not known")
+	case len(s.Before) == 0 && s.Across > 0:
+		list = append(list, "the history begins with revisions that do not load")
+	case len(s.Before) == 0:
+		list = append(list, "the history begins here")
+	case len(s.Before) > 1:
+		words := make([]string, len(s.Before))
+		for i, b := range s.Before {
+			words[i] = speedWords(b.Speed)
+		}
+		list = append(list, "a merge, it differs from all its parents: "+strings.Join(words, ", "))
+	}
+	if s.Across > 0 {
+		list = append(list, acrossWords(s.Across))
+	}
+	if s.Aside {
+		list = append(list, "a later merge did not take it")
+	}
+	return list
+}
+
+func pieceRemarks(t *Trace, p *TracePiece) []string {
+	var list []string
+	switch {
+	case len(p.Before) == 0 && t.isCut(p.Origin):
+		list = append(list, "the clone is shallow and ends here: it may be older")
+	case len(p.Before) == 0:
+		list = append(list, "the history begins here")
+	}
+	if p.Across > 0 {
+		list = append(list, acrossWords(p.Across))
+	}
+	return list
+}
+
+func acrossWords(n int) string {
+	return "compared across " + plural(n, "revision", "revisions") + " that " + map[bool]string{true: "does", false: "do"}[n == 1] + " not load"
+}
+
+func (t *Trace) isCut(commit int) bool {
+	for _, c := range t.Cut {
+		if c == commit {
+			return true
+		}
+	}
+	return false
+}

@@ -1,0 +1,207 @@
+package render
+
+import (
+	"fmt"
+	"io"
+	"strconv"
+	"strings"
+
+	"github.com/jedib0t/go-pretty/v6/table"
+	"github.com/jedib0t/go-pretty/v6/text"
+
+	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
+)
+
+// title names what was traced.
+func (t *Trace) title() string {
+	where := "km " + minus(t.At)
+	if t.At == "" {
+		where = "km " + minus(t.From) + " to " + minus(t.To)
+	}
+	line := "all commits"
+	if t.FirstParent {
+		line = "the line of first parents"
+	}
+	return fmt.Sprintf("%s %s, %s: the history up to %s (%s), %s", t.Route, t.RouteName, where, t.Revision.Typed, short(t.Revision.Commit), line)
+}
+
+// TraceText writes a trace for the terminal.
+func TraceText(w io.Writer, t *Trace, s Style) error {
+	b := &strings.Builder{}
+	for _, line := range wrap(source.Visible(t.title()), s.Width) {
+		fmt.Fprintln(b, line)
+	}
+	for i := range t.Trails {
+		t.trailText(b, &t.Trails[i], s)
+	}
+	for i := range t.Stretches {
+		t.stretchText(b, &t.Stretches[i], s)
+	}
+	if len(t.Stretches) > 0 {
+		t.gapsText(b, s, t.Gaps)
+	}
+	for _, c := range t.Cut {
+		fmt.Fprintf(b, "\nThe clone is shallow: its history ends at %s. Fetch the rest with: git fetch --unshallow\n", short(t.Commits[c].Hash))
+	}
+	_, err := io.WriteString(w, b.String())
+	return err
+}
+
+func (t *Trace) trailText(b *strings.Builder, trail *TraceTrail, s Style) {
+	fmt.Fprintln(b)
+	head := fmt.Sprintf("%s, %s: now %s", trail.Direction, strings.Join(trail.Trains, ", "), speedWords(trail.Now.Speed))
+	if trail.Now.Speed > 0 {
+		head += " km/h"
+	}
+	for _, line := range wrap(source.Visible(head), s.Width) {
+		fmt.Fprintln(b, line)
+	}
+	gaps := t.Gaps
+	for i := range trail.Steps {
+		step := &trail.Steps[i]
+		n := 0
+		for n < len(gaps) && gaps[n].Commit < step.After.Commit {
+			n++
+		}
+		t.gapsText(b, s, gaps[:n])
+		gaps = gaps[n:]
+		t.stepText(b, step, s)
+	}
+	t.gapsText(b, s, gaps)
+	if len(trail.Steps) == 0 {
+		fmt.Fprintln(b, "\n  no revision has this track")
+	}
+}
+
+// gapsText names revisions that do not load, in one line for those that follow
+// each other.
+func (t *Trace) gapsText(b *strings.Builder, s Style, gaps []TraceGap) {
+	if len(gaps) == 0 {
+		return
+	}
+	newest, oldest := &t.Commits[gaps[0].Commit], &t.Commits[gaps[len(gaps)-1].Commit]
+	head := fmt.Sprintf("  gap         %s does not load", short(newest.Hash))
+	if len(gaps) > 1 {
+		head = fmt.Sprintf("  gap         %d revisions do not load, %s (%s) to %s (%s)", len(gaps), short(oldest.Hash), day(oldest), short(newest.Hash), day(newest))
+	}
+	fmt.Fprintf(b, "\n%s\n", head)
+	const most = 3
+	for i, g := range gaps {
+		if i == most && len(gaps) > most+1 {
+			fmt.Fprintf(b, "              and %d more\n", len(gaps)-most)
+			break
+		}
+		fault := source.Visible(g.Fault)
+		if len(gaps) > 1 {
+			fault = short(t.Commits[g.Commit].Hash) + " " + fault
+		}
+		indent(b, "              ", fault, s)
+	}
+}
+
+func day(c *TraceCommit) string {
+	d, _, _ := strings.Cut(c.Committed, "T")
+	return d
+}
+
+// indent writes a text over several lines, each behind a margin.
+func indent(b *strings.Builder, margin, s string, style Style) {
+	for _, line := range wrap(s, max(40, style.Width-len(margin))) {
+		fmt.Fprintln(b, margin+line)
+	}
+}
+
+func (t *Trace) stepText(b *strings.Builder, step *TraceStep, s Style) {
+	c := &t.Commits[step.After.Commit]
+	before := "-"
+	if len(step.Before) > 0 {
+		before = speedWords(step.Before[0].Speed)
+	}
+	change := before + " -> " + speedWords(step.After.Speed)
+	if step.After.Speed > 0 {
+		change += " km/h"
+	}
+	if s.Color {
+		change = text.Bold.Sprint(change)
+	}
+	fmt.Fprintf(b, "\n  %s  %s  %s  %s\n", day(c), change, short(c.Hash), source.Visible(c.Author.Name))
+	const margin = "              "
+	indent(b, margin, source.Visible(c.Subject), s)
+	fmt.Fprintln(b)
+	lines := [][2]string{}
+	for _, v := range step.Before {
+		if v.Speed > 0 {
+			lines = append(lines, [2]string{"before", strconv.Itoa(v.Speed) + " by " + assessment.SourceText(v.Sources)})
+		}
+	}
+	if step.After.Speed > 0 {
+		lines = append(lines, [2]string{"after", strconv.Itoa(step.After.Speed) + " by " + assessment.SourceText(step.After.Sources)})
+	}
+	lines = append(lines, [2]string{"request", requestWords(c)}, [2]string{"assessed", assessmentWords(c)})
+	for _, remark := range stepRemarks(t, step) {
+		lines = append(lines, [2]string{"remark", remark})
+	}
+	for _, l := range lines {
+		for i, line := range wrap(source.Visible(l[1]), max(40, s.Width-len(margin)-10)) {
+			label := l[0]
+			if i > 0 {
+				label = ""
+			}
+			fmt.Fprintf(b, "%s%-9s %s\n", margin, label, line)
+		}
+	}
+}
+
+func requestWords(c *TraceCommit) string {
+	var list []string
+	for _, q := range c.Requests {
+		list = append(list, q.ID+" ("+q.Title+")")
+	}
+	if len(list) == 0 {
+		return "none in play"
+	}
+	return strings.Join(list, "; ")
+}
+
+func assessmentWords(c *TraceCommit) string {
+	if len(c.Assessments) == 0 {
+		return "not assessed"
+	}
+	var list []string
+	for _, a := range c.Assessments {
+		list = append(list, fmt.Sprintf("in assessment %d (%s)", a.Number, strings.Join(append([]string{a.State}, a.SignOffs...), "; ")))
+	}
+	return strings.Join(list, ", ")
+}
+
+func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) {
+	fmt.Fprintln(b)
+	for _, line := range wrap(source.Visible(stretch.Direction+", "+strings.Join(stretch.Trains, ", ")), s.Width) {
+		fmt.Fprintln(b, line)
+	}
+	w := plainTable()
+	w.AppendHeader(table.Row{"from km", "to km", "km/h", "dates from", "commit", "author, subject, request, assessment, rows of today"})
+	right := table.ColumnConfig{Align: text.AlignRight, AlignHeader: text.AlignRight}
+	var columns []table.ColumnConfig
+	for n := 1; n <= 3; n++ {
+		right.Number = n
+		columns = append(columns, right)
+	}
+	w.SetColumnConfigs(append(columns, table.ColumnConfig{Number: 6, WidthMax: max(30, s.Width-55), WidthMaxEnforcer: text.WrapSoft}))
+	for i := range stretch.Pieces {
+		p := &stretch.Pieces[i]
+		c := &t.Commits[p.Origin]
+		lines := []string{c.Author.Name + ": " + c.Subject}
+		if len(c.Requests) > 0 {
+			lines = append(lines, requestWords(c))
+		}
+		lines = append(lines, assessmentWords(c), "by "+assessment.SourceText(p.Sources))
+		lines = append(lines, pieceRemarks(t, p)...)
+		for k := range lines {
+			lines[k] = source.Visible(lines[k])
+		}
+		w.AppendRow(table.Row{minus(p.From), minus(p.To), p.Speed, day(c), short(c.Hash), strings.Join(lines, "\n")})
+	}
+	fmt.Fprintf(b, "\n%s\n", tidy(w.Render()))
+}

@@ -1,0 +1,232 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"io"
+	"path/filepath"
+
+	"github.com/spf13/cobra"
+
+	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/history/index"
+	"speedtrail/history/revision"
+	"speedtrail/history/trace"
+	"speedtrail/schema"
+	"speedtrail/schema/chainage"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+// traceCall is what trace is asked.
+type traceCall struct {
+	rev, route, at, from, to string
+	trains                   []string
+	directions               codes.Directions
+	firstParent, noIndex     bool
+}
+
+func (a *app) traceCommand() *cobra.Command {
+	var call traceCall
+	var direction string
+	c := &cobra.Command{
+		Use:   "trace --route R (--at KM | --from KM --to KM) [REV]",
+		Short: "since when, by whom and why: the past of the speed at a point or on a stretch",
+		Long: `trace lists every revision at which the effective speed at a point changed, the
+newest first: before, after, the commit with its author and dates, the rows that
+governed as they stood, the change requests in play and the recorded assessments
+whose range holds the commit. For a stretch it says which revision each piece of
+today's profile dates from.
+
+Positions and trains are read as in the newest revision, HEAD unless REV is
+given; a position is found in older revisions by its chainage, whatever the
+folder of the route was called. A revision that has no such track says so; one
+whose data set does not load is named as a gap, and the revisions around it are
+compared with each other.
+
+With merges, a change is listed at the commit at which the speed differs from
+that of all parents. With --first-parent only the line of first parents counts:
+the releases, where work is merged into one branch.
+
+What is read is kept in an index beside the ledger. It can be deleted at any
+time; --no-index does without and gives the same answer.`,
+		Example: `  speedtrail trace --route SM1 --at 12.4 --train EXP-3
+  speedtrail trace --route SM1 --from 10 --to 20 --train EXP-3 --direction nominal
+  speedtrail trace --route SM1 --at 31.180#2 --first-parent --out trail.html release-4`,
+		Args: arguments(0, 1),
+		RunE: func(c *cobra.Command, args []string) error {
+			call.rev = "HEAD"
+			if len(args) == 1 {
+				call.rev = args[0]
+			}
+			var ok bool
+			if call.directions, ok = codes.ParseDirections(direction); !ok {
+				return badCall("--direction is nominal, reverse or both", "unknown value %q for --direction", direction)
+			}
+			point, stretch := call.at != "", call.from != "" || call.to != ""
+			switch {
+			case call.rev == workingTree:
+				return badCall("commit first, or ask for HEAD", "a trace goes from commit to commit, the working tree is none")
+			case call.route == "" || point == stretch || stretch && (call.from == "" || call.to == ""):
+				return badCall("usage: "+c.UseLine(), "--route is needed, and --at for a point or --from and --to for a stretch")
+			}
+			return a.trace(c.Context(), call)
+		},
+	}
+	a.outputFlags(c, "text", "csv", "json", "html")
+	c.Flags().StringVar(&call.route, "route", "", "the `id` of the route")
+	c.Flags().StringVar(&call.at, "at", "", "the point, as a `km` of the newest revision")
+	c.Flags().StringVar(&call.from, "from", "", "where the stretch begins, as a `km` of the newest revision")
+	c.Flags().StringVar(&call.to, "to", "", "where the stretch ends, as a `km` of the newest revision")
+	c.Flags().StringArrayVar(&call.trains, "train", nil, "the `id` of a reference train (repeatable); all unless given")
+	c.Flags().StringVar(&direction, "direction", "both", "nominal, reverse or both")
+	c.Flags().BoolVar(&call.firstParent, "first-parent", false, "only the line of first parents, each compared with its first parent")
+	c.Flags().BoolVar(&call.noIndex, "no-index", false, "read the repository instead of the index")
+	return c
+}
+
+func (a *app) trace(ctx context.Context, call traceCall) error {
+	repo, err := a.openRepo()
+	if err != nil {
+		return err
+	}
+	defer repo.Close()
+	folder, err := a.folder()
+	if err != nil {
+		return err
+	}
+	newest, err := repo.Resolve(call.rev)
+	if err != nil {
+		return err
+	}
+	tip, err := trace.ParseHash(newest.Hash)
+	if err != nil {
+		return err
+	}
+	h, err := a.pastOf(ctx, repo, folder, tip, call)
+	if err != nil {
+		return err
+	}
+	data, route, err := a.newestOf(ctx, repo, folder, h, call)
+	if err != nil {
+		return err
+	}
+	t := &tracing{app: a, repo: repo, folder: folder, h: h, call: call, route: route}
+	if err := t.choose(data); err != nil {
+		return err
+	}
+	if t.doc.Revision = (render.TraceRevision{Commit: newest.Hash, Typed: validText(call.rev)}); call.at != "" {
+		err = t.point()
+	} else {
+		err = t.stretch()
+	}
+	if err != nil {
+		return err
+	}
+	if err := t.describe(ctx); err != nil {
+		return err
+	}
+	return a.write(func(w io.Writer) error {
+		switch a.format {
+		case "csv":
+			return render.TraceCSV(w, &t.doc)
+		case "json":
+			return render.TraceJSON(w, &t.doc)
+		case "html":
+			return render.TraceHTML(w, &t.doc)
+		}
+		return render.TraceText(w, &t.doc, a.style())
+	})
+}
+
+// pastOf gives the past of the route, from the index where that is possible.
+func (a *app) pastOf(ctx context.Context, repo *revision.Repo, folder string, tip trace.Hash, call traceCall) (*trace.History, error) {
+	reader := trace.NewReader(repo, folder)
+	if !call.noIndex {
+		h, err := a.indexed(ctx, repo, reader, folder, tip, call.route)
+		if err == nil || !errors.Is(err, index.ErrForeign) && !errors.Is(err, index.ErrFailed) {
+			return h, err
+		}
+		a.remark("read without an index: %v", err)
+	}
+	h, err := reader.History(ctx, tip, call.route, trace.Options{FirstParent: call.firstParent, Progress: a.progress("reading the history")})
+	return h, err
+}
+
+// indexed brings the index up to date and asks it.
+func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Reader, folder string, tip trace.Hash, route string) (*trace.History, error) {
+	file, err := filepath.Abs(filepath.Join(filepath.Dir(a.ledgerPath(repo)), "index.db"))
+	if err != nil {
+		return nil, err
+	}
+	if a.ledger != "" {
+		// Inside the working tree it could be a file of the user.
+		if tracked, err := repo.Tracked(file); err != nil {
+			return nil, err
+		} else if tracked {
+			return nil, index.ErrForeign
+		}
+	}
+	x, err := index.Open(ctx, file)
+	if err != nil {
+		return nil, err
+	}
+	defer x.Close()
+	h, found, err := x.History(ctx, folder, tip, route)
+	if err != nil || found {
+		return h, err
+	}
+	if err := x.Update(ctx, reader, folder, tip, a.progress("indexing the history")); err != nil {
+		return nil, err
+	}
+	h, found, err = x.History(ctx, folder, tip, route)
+	if err == nil && !found {
+		err = index.ErrFailed
+	}
+	return h, err
+}
+
+// newestOf gives the trains and the route of the newest revision.
+func (a *app) newestOf(ctx context.Context, repo *revision.Repo, folder string, h *trace.History, call traceCall) (*schema.Dataset, *schema.Route, error) {
+	hash := h.Commits[h.Tip].Hash
+	if h.Newest() == nil {
+		// The faults, or the ids that there are, come from the whole data set.
+		files, err := repo.Snapshot(hash.String(), folder)
+		if err != nil {
+			return nil, nil, err
+		}
+		data, err := schema.Load(ctx, files)
+		if err != nil {
+			return nil, nil, &sideError{call.rev, err}
+		}
+		route, err := routeOf(data, call.route)
+		return data, route, err
+	}
+	data, err := trace.Newest(ctx, repo, folder, hash, h.Newest().Folder)
+	if err != nil {
+		return nil, nil, &sideError{call.rev, err}
+	}
+	route, err := routeOf(data, call.route)
+	if err == nil && call.directions != codes.Both && route.Directions&call.directions == 0 {
+		err = badCall("leave --direction out", "route %s is not used in direction %s", route.ID, call.directions)
+	}
+	return data, route, err
+}
+
+// located finds a position on a route's track.
+func located(route *schema.Route, option, text string) (unit.Distance, error) {
+	p, err := chainage.ParsePoint(text)
+	if err != nil {
+		return 0, badCall("write a position as in the data set, for example 12.4 or 31.180#2", "%s %q: %v", option, text, err)
+	}
+	at, err := route.Track.Locate(p)
+	if err != nil {
+		segments := route.Track.Segments()
+		hint := "route " + route.ID + " runs from " + segments[0].From.KM() + " to " + segments[len(segments)-1].To.KM()
+		if errors.Is(err, chainage.ErrAmbiguous) {
+			hint = "write the occurrence along the track: " + text + "#1, " + text + "#2"
+		}
+		return 0, badCall(hint, "%s %s is %v", option, text, err)
+	}
+	return at, nil
+}

@@ -1,0 +1,282 @@
+package main
+
+import (
+	"cmp"
+	"context"
+	"fmt"
+	"slices"
+	"time"
+
+	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/diff/step"
+	"speedtrail/history/assessment"
+	"speedtrail/history/revision"
+	"speedtrail/history/trace"
+	"speedtrail/schema"
+	"speedtrail/schema/codes"
+)
+
+// tracing makes the document of a trace.
+type tracing struct {
+	app    *app
+	repo   *revision.Repo
+	folder string
+	h      *trace.History
+	call   traceCall
+	route  *schema.Route
+	trains []schema.Train
+	view   *trace.View // in the first direction
+	doc    render.Trace
+
+	rank  map[int32]int // of a commit: its index in doc.Commits
+	named []int32       // those
+}
+
+// choose takes the trains that were asked for, and begins the document.
+func (t *tracing) choose(data *schema.Dataset) error {
+	t.trains = data.Trains
+	if len(t.call.trains) > 0 {
+		t.trains = nil
+		for _, id := range t.call.trains {
+			train, err := trainOf(data, id)
+			if err != nil {
+				return err
+			}
+			t.trains = append(t.trains, train)
+		}
+	}
+	t.doc = render.Trace{
+		Folder: t.folder, Route: t.route.ID, RouteName: t.route.Name, FirstParent: t.call.firstParent,
+		Trails: []render.TraceTrail{}, Stretches: []render.TraceStretch{}, Gaps: []render.TraceGap{}, Cut: []int{}, Commits: []render.TraceCommit{},
+		Places: []assessment.Place{}, Segments: []assessment.Segment{},
+	}
+	return nil
+}
+
+// views gives a view for each direction that was asked for.
+func (t *tracing) views() map[codes.Direction]*trace.View {
+	views := map[codes.Direction]*trace.View{}
+	for _, d := range codes.AllDirections {
+		if !(t.call.directions & t.route.Directions).Has(d) {
+			continue
+		}
+		if t.view == nil {
+			t.view = t.h.View(d, t.call.firstParent)
+			views[d] = t.view
+		} else {
+			views[d] = t.view.With(d)
+		}
+	}
+	return views
+}
+
+func (t *tracing) point() error {
+	at, err := located(t.route, "--at", t.call.at)
+	if err != nil {
+		return err
+	}
+	t.doc.At = t.route.Track.Begins(at).String()
+	if typed := t.route.Track.Ends(at).String(); typed != t.doc.At {
+		t.app.remark("km %s and km %s are one point, a chainage jump; it belongs to the track that begins there", typed, t.doc.At)
+	}
+	trails := map[codes.Direction][]trace.Trail{}
+	views := t.views()
+	for d, v := range views {
+		for _, train := range t.trains {
+			trail := v.Point(train, at)
+			trails[d] = append(trails[d], trail)
+			t.name(trail.Now.Commit)
+			for _, s := range trail.Steps {
+				t.name(s.After.Commit)
+				for _, b := range s.Before {
+					t.name(b.Commit)
+				}
+			}
+		}
+	}
+	t.number()
+	for _, d := range codes.AllDirections {
+		seen := map[string]int{}
+		for i, trail := range trails[d] {
+			out := t.trail(d, &trail)
+			key := fmt.Sprint(out)
+			if n, ok := seen[key]; ok {
+				t.doc.Trails[n].Trains = append(t.doc.Trails[n].Trains, t.trains[i].ID)
+				continue
+			}
+			seen[key] = len(t.doc.Trails)
+			out.Trains = []string{t.trains[i].ID}
+			t.doc.Trails = append(t.doc.Trails, out)
+		}
+	}
+	return nil
+}
+
+// trail writes a trail without its trains.
+func (t *tracing) trail(d codes.Direction, trail *trace.Trail) render.TraceTrail {
+	out := render.TraceTrail{Direction: d.String(), Now: t.value(trail.Now), Steps: []render.TraceStep{}, Line: []render.TraceReign{}}
+	for _, s := range trail.Steps {
+		step := render.TraceStep{After: t.value(s.After), Before: []render.TraceValue{}, Across: s.Across, Aside: s.Aside}
+		for _, b := range s.Before {
+			step.Before = append(step.Before, t.value(b))
+		}
+		out.Steps = append(out.Steps, step)
+	}
+	for _, r := range trail.Line {
+		out.Line = append(out.Line, render.TraceReign{Committed: t.committed(r.From), Gap: r.Gap, Speed: int(r.Speed)})
+	}
+	return out
+}
+
+func (t *tracing) value(v trace.Value) render.TraceValue {
+	return render.TraceValue{Commit: t.rank[v.Commit], Speed: int(v.Speed), Sources: assessment.Sources(v.Sources)}
+}
+
+// committed writes when a commit was made.
+func (t *tracing) committed(c int32) string {
+	return time.Unix(t.h.Commits[c].When, 0).UTC().Format(time.RFC3339)
+}
+
+// mostBands is how many revisions a picture of a stretch shows.
+const mostBands = 60
+
+func (t *tracing) stretch() error {
+	from, err := located(t.route, "--from", t.call.from)
+	if err != nil {
+		return err
+	}
+	to, err := located(t.route, "--to", t.call.to)
+	if err != nil {
+		return err
+	}
+	if from >= to {
+		return badCall("positions follow the nominal direction", "--to %s does not lie after --from %s", t.call.to, t.call.from)
+	}
+	track := t.route.Track
+	t.doc.From, t.doc.To = track.Begins(from).String(), track.Ends(to).String()
+	t.doc.Segments = assessment.Segments(track, from, to)
+	views := t.views()
+	found := map[codes.Direction][][]trace.Piece{}
+	for d, v := range views {
+		for _, train := range t.trains {
+			pieces := v.Stretch(train, from, to)
+			found[d] = append(found[d], pieces)
+			for _, p := range pieces {
+				t.name(p.Origin)
+			}
+		}
+	}
+	t.number()
+	for _, d := range codes.AllDirections {
+		if views[d] != nil && len(t.doc.Places) == 0 {
+			t.doc.Places = assessment.Places(t.route, d, from, to)
+		}
+		seen := map[string]int{}
+		for i, pieces := range found[d] {
+			out := render.TraceStretch{Direction: d.String(), Pieces: []render.TracePiece{}, Bands: []render.TraceBand{}}
+			for _, p := range pieces {
+				out.Pieces = append(out.Pieces, render.TracePiece{
+					From: track.Begins(p.From).String(), To: track.Ends(p.To).String(), Start: int64(p.From), End: int64(p.To), Speed: int(p.Speed),
+					Origin: t.rank[p.Origin], Sources: assessment.Sources(p.Sources), Before: levels(p.Before), Across: p.Across,
+				})
+			}
+			bands := views[d].Bands(t.trains[i], from, to)
+			out.LeftOut = max(0, len(bands)-mostBands)
+			for _, b := range bands[out.LeftOut:] {
+				out.Bands = append(out.Bands, render.TraceBand{Committed: t.committed(b.From), Gap: b.Gap, Pieces: levels(b.Profile)})
+			}
+			key := fmt.Sprint(out)
+			if n, ok := seen[key]; ok {
+				t.doc.Stretches[n].Trains = append(t.doc.Stretches[n].Trains, t.trains[i].ID)
+				continue
+			}
+			seen[key] = len(t.doc.Stretches)
+			out.Trains = []string{t.trains[i].ID}
+			t.doc.Stretches = append(t.doc.Stretches, out)
+		}
+	}
+	return nil
+}
+
+func levels(list []step.Piece) []render.TraceLevel {
+	out := make([]render.TraceLevel, len(list))
+	for i, p := range list {
+		out[i] = render.TraceLevel{Start: int64(p.From), End: int64(p.To), Speed: int(p.Speed)}
+	}
+	return out
+}
+
+// name notes that the document refers to a commit.
+func (t *tracing) name(c int32) { t.named = append(t.named, c) }
+
+// number gives the commits that are named, and the gaps, their places: the
+// newest first.
+func (t *tracing) number() {
+	gaps, cut := t.view.Gaps(), t.view.Cut()
+	t.named = append(append(t.named, gaps...), cut...)
+	places := make([]int32, len(t.h.Commits))
+	for i, c := range t.view.Order() {
+		places[c] = int32(i)
+	}
+	slices.SortFunc(t.named, func(a, b int32) int { return cmp.Compare(places[a], places[b]) })
+	t.named = slices.Compact(t.named)
+	t.rank = make(map[int32]int, len(t.named))
+	for i, c := range t.named {
+		t.rank[c] = i
+	}
+	for _, c := range gaps {
+		t.doc.Gaps = append(t.doc.Gaps, render.TraceGap{Commit: t.rank[c], Fault: validText(t.h.Commits[c].Gap)})
+	}
+	for _, c := range cut {
+		t.doc.Cut = append(t.doc.Cut, t.rank[c])
+	}
+}
+
+// describe fills in what is said of each commit.
+func (t *tracing) describe(ctx context.Context) error {
+	assessed, err := t.assessments(ctx)
+	if err != nil {
+		return err
+	}
+	changed := t.changedAt()
+	for i, c := range t.named {
+		hash := t.h.Commits[c].Hash
+		commit, err := t.repo.Resolve(hash.String())
+		if err != nil {
+			return err
+		}
+		out := render.TraceCommit{
+			Hash: commit.Hash, Author: person(commit.Author), Authored: commit.Author.When.UTC().Format(time.RFC3339),
+			Committed: commit.Committer.When.UTC().Format(time.RFC3339), Subject: validText(commit.Subject),
+			Requests: []render.TraceRequest{}, Assessments: assessed(c),
+		}
+		if base, ok := t.h.Base(c); ok && changed[i] {
+			requests, err := trace.Requests(ctx, t.repo, t.folder, t.h.Commits[base].Hash, hash)
+			if err != nil {
+				return err
+			}
+			for _, q := range requests {
+				out.Requests = append(out.Requests, render.TraceRequest{ID: q.ID, Title: q.Title})
+			}
+		}
+		t.doc.Commits = append(t.doc.Commits, out)
+	}
+	return nil
+}
+
+// changedAt tells of the commits of the document at which of them something
+// changed; the others are only referred to.
+func (t *tracing) changedAt() map[int]bool {
+	list := map[int]bool{}
+	for _, trail := range t.doc.Trails {
+		for _, s := range trail.Steps {
+			list[s.After.Commit] = true
+		}
+	}
+	for _, s := range t.doc.Stretches {
+		for _, p := range s.Pieces {
+			list[p.Origin] = true
+		}
+	}
+	return list
+}
