@@ -1,0 +1,61 @@
+package main
+
+import (
+	"bytes"
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+)
+
+// The commands that the README gives to its three readers work in the folder of
+// the demonstration, as it says.
+func TestReadmeCommands(t *testing.T) {
+	text, err := os.ReadFile("../../README.md")
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, rest, ok := strings.Cut(string(text), "\n## For whom\n")
+	section, _, _ := strings.Cut(rest, "\n## ")
+	if !ok {
+		t.Fatal("the README has no section For whom")
+	}
+	dir := filepath.Join(t.TempDir(), "demo")
+	var out, remarks bytes.Buffer
+	if status := run(t.Context(), []string{"demo", dir}, nil, &out, &remarks); status != statusDone {
+		t.Fatalf("status %d: %s", status, &remarks)
+	}
+	t.Chdir(dir)
+	commands := 0
+	for _, line := range strings.Split(section, "\n") {
+		command, ok := strings.CutPrefix(line, "    speedtrail ")
+		if !ok {
+			continue
+		}
+		commands++
+		var out, remarks bytes.Buffer
+		status := run(t.Context(), words(command), nil, &out, &remarks)
+		if status != statusDone && status != statusFinding {
+			t.Errorf("speedtrail %s: status %d\n%s", command, status, &remarks)
+		}
+		if out.Len()+remarks.Len() == 0 {
+			t.Errorf("speedtrail %s says nothing", command)
+		}
+	}
+	if commands < 12 {
+		t.Errorf("only %d commands were found", commands)
+	}
+}
+
+// words splits a command as a shell does, with double quotes and nothing else.
+func words(command string) []string {
+	var list []string
+	for i, part := range strings.Split(command, `"`) {
+		if i%2 == 1 {
+			list = append(list, part)
+			continue
+		}
+		list = append(list, strings.Fields(part)...)
+	}
+	return list
+}
