@@ -83,9 +83,13 @@ func coverageOf(route *Route, d codes.Direction) []gap {
 // disjoint checks that rows of which one place has only one do not overlap.
 func (r *reader) disjoint(route *Route, rows []*Row, what string) {
 	slices.SortStableFunc(rows, func(a, b *Row) int { return cmp.Compare(a.Start, b.Start) })
-	for i := 1; i < len(rows); i++ {
-		if rows[i].Start < rows[i-1].End {
-			r.faults.Add(rows[i].Pos, "the %s overlaps that of line %d from %s", what, rows[i-1].Pos.Line, route.Track.Begins(rows[i].Start))
+	var furthest *Row
+	for _, row := range rows {
+		if furthest != nil && row.Start < furthest.End {
+			r.faults.Add(row.Pos, "the %s overlaps that of line %d from %s", what, furthest.Pos.Line, route.Track.Begins(row.Start))
+		}
+		if furthest == nil || row.End > furthest.End {
+			furthest = row
 		}
 	}
 }

@@ -1,17 +1,13 @@
 package schema
 
 import (
-	"bytes"
 	"context"
 	"errors"
-	"fmt"
-	"io"
 	"io/fs"
-	"path"
+	"maps"
 	"runtime"
 	"slices"
 	"strings"
-	"time"
 
 	"golang.org/x/sync/errgroup"
 
@@ -109,7 +105,7 @@ func LoadPair(ctx context.Context, base, target fs.FS) (b, t *Dataset, err error
 }
 
 // readDiffering reads the folders that differ. Where that brings a route id to
-// the target that the base's differing folders do not have, the ids of the
+// one side that the other side's differing folders do not have, the ids of the
 // equal folders are looked at, too: it must not be one of theirs.
 func readDiffering(ctx context.Context, sides [2]*loading, errs *[2]error) {
 	inBase, same := map[Folder]bool{}, map[Folder]bool{}
@@ -130,18 +126,19 @@ func readDiffering(ctx context.Context, sides [2]*loading, errs *[2]error) {
 		}
 		errs[i] = l.read(ctx, read)
 	}
-	known := map[string]bool{}
-	for _, r := range sides[0].data.Routes {
-		known[r.ID] = true
+	var ids [2]map[string]bool
+	for i, l := range sides {
+		ids[i] = map[string]bool{}
+		for _, r := range l.data.Routes {
+			ids[i][r.ID] = true
+		}
 	}
-	for _, r := range sides[1].data.Routes {
-		if !known[r.ID] {
-			for i, l := range sides {
-				if errs[i] == nil {
-					errs[i] = l.readUnreadIDs(ctx)
-				}
-			}
-			return
+	if maps.Equal(ids[0], ids[1]) {
+		return
+	}
+	for i, l := range sides {
+		if errs[i] == nil {
+			errs[i] = l.readUnreadIDs(ctx)
 		}
 	}
 }
@@ -164,13 +161,16 @@ func UnreadRoute(fsys fs.FS, f Folder) (*Route, error) {
 type loading struct {
 	fsys    fs.FS
 	folders []Folder
+	refused map[string]bool // files and folders that are not what they have to be
 	faults  source.Collector
 	data    Dataset
-	unread  map[string]string // id -> folder, of unread routes, where they were looked at
+	ids     map[*Route]source.Position // where the ids of routes are written
+	unread  map[string]string          // id -> folder, of unread routes, where they were looked at
 }
 
 // list finds the route folders.
 func (l *loading) list() error {
+	l.refused = map[string]bool{}
 	root, err := fs.ReadDir(l.fsys, ".")
 	if err != nil {
 		return err
@@ -178,8 +178,8 @@ func (l *loading) list() error {
 	for _, e := range root {
 		dir := e.Name() == routesDir || e.Name() == requestsDir
 		file := slices.Contains([]string{datasetFile, trainsFile, acceptedFile, signoffFile, signersFile}, e.Name())
-		if dir || file {
-			l.checkType(e, e.Name(), dir)
+		if (dir || file) && !checkType(&l.faults, e, e.Name(), dir) {
+			l.refused[e.Name()] = true
 		}
 	}
 	if i := slices.IndexFunc(root, func(e fs.DirEntry) bool { return e.Name() == routesDir && e.IsDir() }); i < 0 {
@@ -193,7 +193,7 @@ func (l *loading) list() error {
 	for _, e := range entries {
 		p := routesDir + "/" + e.Name()
 		if !e.IsDir() {
-			if l.checkType(e, p, false) && isData(e.Name()) {
+			if checkType(&l.faults, e, p, false) && isData(e.Name()) {
 				l.faults.Add(source.Position{File: p}, "a table or TOML file directly in routes/, each route has a folder of its own there")
 			}
 			continue
@@ -220,40 +220,10 @@ func (l *loading) list() error {
 	return nil
 }
 
-// checkType refuses what is neither a file nor a folder.
-func (l *loading) checkType(e fs.DirEntry, p string, dir bool) bool {
-	return checkType(&l.faults, e, p, dir)
-}
-
-func checkType(faults *source.Collector, e fs.DirEntry, p string, dir bool) bool {
-	at := source.Position{File: p}
-	switch mode := e.Type(); {
-	case mode&fs.ModeSymlink != 0:
-		faults.Add(at, "is a symbolic link, a data set holds plain files and folders only")
-	case mode&fs.ModeIrregular != 0:
-		faults.Add(at, "is a submodule or another repository, a data set holds plain files and folders only")
-	case e.IsDir() && !dir:
-		faults.Add(at, "is a folder, a file is needed")
-	case !e.IsDir() && !mode.IsRegular():
-		faults.Add(at, "is a special file, a data set holds plain files and folders only")
-	case !e.IsDir() && dir:
-		faults.Add(at, "is a file, a folder is needed")
-	default:
-		return true
-	}
-	return false
-}
-
-// isData tells whether a name looks like one of a data set's files.
-func isData(name string) bool {
-	ending := strings.ToLower(path.Ext(name))
-	return ending == ".csv" || ending == ".toml"
-}
-
 // read reads the frame of the data set and the given route folders, as many at
 // a time as there are processors.
 func (l *loading) read(ctx context.Context, folders []Folder) error {
-	frame := &reader{fsys: l.fsys}
+	frame := &reader{fsys: l.fsys, refused: l.refused}
 	frame.frame(&l.data)
 	if len(l.folders) == 0 && frame.err == nil {
 		frame.faults.Add(source.Position{File: routesDir}, "no route: a data set has at least one folder in routes/, with a route.toml")
@@ -279,9 +249,10 @@ func (l *loading) read(ctx context.Context, folders []Folder) error {
 	for i := range readers {
 		l.take(&readers[i])
 	}
-	for _, r := range routes {
+	l.ids = map[*Route]source.Position{}
+	for i, r := range routes {
 		if r != nil {
-			l.data.Routes = append(l.data.Routes, r)
+			l.data.Routes, l.ids[r] = append(l.data.Routes, r), readers[i].id
 		}
 	}
 	return nil
@@ -314,10 +285,10 @@ func (l *loading) finish() (*Dataset, error) {
 	slices.SortStableFunc(d.Routes, func(a, b *Route) int { return strings.Compare(a.ID, b.ID) })
 	for i, r := range d.Routes {
 		if folder, ok := l.unread[r.ID]; ok {
-			l.faults.Add(r.Pos, "route id %s is that of %s, too; ids are unique", source.Quote(r.ID), folder)
+			l.faults.Add(l.ids[r], "route id %s is that of %s, too; ids are unique", source.Quote(r.ID), folder)
 		}
 		if i > 0 && d.Routes[i-1].ID == r.ID {
-			l.faults.Add(r.Pos, "route id %s is that of %s, too; ids are unique", source.Quote(r.ID), d.Routes[i-1].Folder)
+			l.faults.Add(l.ids[r], "route id %s is that of %s, too; ids are unique", source.Quote(r.ID), d.Routes[i-1].Folder)
 		}
 	}
 	if err := l.faults.Err(); err != nil {
@@ -326,67 +297,4 @@ func (l *loading) finish() (*Dataset, error) {
 	slices.SortFunc(d.Files, func(a, b File) int { return strings.Compare(a.Path, b.Path) })
 	slices.SortFunc(d.Unread, func(a, b Folder) int { return strings.Compare(a.Path, b.Path) })
 	return d, nil
-}
-
-// reader reads some files of a data set. It stops at the first error of the
-// file system and goes on after faults.
-type reader struct {
-	fsys   fs.FS
-	zone   *time.Location // of bare dates
-	faults source.Collector
-	files  []File
-	err    error
-}
-
-// file reads a file that may be missing.
-func (r *reader) file(name string, most int64) (content []byte, ok bool) {
-	if r.err != nil {
-		return nil, false
-	}
-	f, err := r.fsys.Open(name)
-	if errors.Is(err, fs.ErrNotExist) {
-		return nil, false
-	}
-	if err != nil {
-		r.err = err
-		return nil, false
-	}
-	defer f.Close()
-	info, err := f.Stat()
-	if err == nil && info.Size() > most {
-		r.faults.Add(source.Position{File: name}, "%d bytes, at most %d are allowed", info.Size(), most)
-		return nil, false
-	}
-	var b bytes.Buffer
-	if err == nil {
-		b.Grow(int(info.Size()) + bytes.MinRead)
-		_, err = b.ReadFrom(io.LimitReader(f, most+1))
-	}
-	if err != nil {
-		r.err = fmt.Errorf("%s: %w", name, err)
-		return nil, false
-	}
-	if int64(b.Len()) > most {
-		r.faults.Add(source.Position{File: name}, "more than %d bytes, which is the most that is allowed", most)
-		return nil, false
-	}
-	r.files = append(r.files, File{Path: name, Content: b.Bytes()})
-	return b.Bytes(), true
-}
-
-// toml reads a TOML file; false where it is missing or faulty in form.
-func (r *reader) toml(name string, required bool) (table.Reader, bool) {
-	count := r.faults.Count()
-	content, ok := r.file(name, table.MaxTOMLSize)
-	if !ok {
-		if required && r.err == nil && r.faults.Count() == count {
-			r.faults.Add(source.Position{File: name}, "the file is missing")
-		}
-		return table.Reader{}, false
-	}
-	m := table.ReadTOML(name, content, &r.faults)
-	if m == nil {
-		return table.Reader{}, false
-	}
-	return table.Reader{Map: m, Faults: &r.faults}, true
 }

@@ -201,8 +201,10 @@ func TestLoadPairFaults(t *testing.T) {
 target: routes/r2/speed.csv:2:6: basic "0" is not a multiple of 5 from 5 to 600 (km/h)`},
 		{"frame", with(good, "dataset.toml", ""), with(good, "trains.toml", ""), "base: dataset.toml: the file is missing\ntarget: trains.toml: the file is missing"},
 		{"folder without route", good, with(good, "routes/r2/route.toml", ""), "target: routes/r2/route.toml: the file is missing, every folder in routes/ is a route"},
-		{"id of an unread route", good, taken, `target: routes/r2/route.toml:1:1: route id "R3" is that of routes/r3, too; ids are unique`},
-		{"new folder with the id of an unread one", good, added, `target: routes/a/route.toml:1:1: route id "R3" is that of routes/r3, too; ids are unique`},
+		{"id of an unread route", good, taken, `target: routes/r2/route.toml:1:6: route id "R3" is that of routes/r3, too; ids are unique`},
+		{"new folder with the id of an unread one", good, added, `target: routes/a/route.toml:1:6: route id "R3" is that of routes/r3, too; ids are unique`},
+		{"id of an unread route in the base", taken, good, `base: routes/r2/route.toml:1:6: route id "R3" is that of routes/r3, too; ids are unique`},
+		{"old folder with the id of an unread one", added, good, `base: routes/a/route.toml:1:6: route id "R3" is that of routes/r3, too; ids are unique`},
 	}
 	for _, c := range tests {
 		t.Run(c.name, func(t *testing.T) {
@@ -226,6 +228,42 @@ target: routes/r2/speed.csv:2:6: basic "0" is not a multiple of 5 from 5 to 600 
 			}
 		})
 	}
+}
+
+// TestLoadPairLeavesUnread: route.toml of an equal folder is not even opened
+// where the folders that differ have the same ids on both sides.
+func TestLoadPairLeavesUnread(t *testing.T) {
+	base := several()
+	edited := with(base, "routes/r2/speed.csv", "from_km,to_km,basic\n0,10,95\n")
+	renamed := with(base, "routes/r2/route.toml", "id = \"R9\"\nname = \"Nine\"\nstart_km = 0\nend_km = 10\n")
+	for _, c := range []struct {
+		name         string
+		base, target fstest.MapFS
+		opened       bool
+	}{
+		{"a table", base, edited, false},
+		{"another id", base, renamed, true},
+		{"another id in the base", renamed, base, true},
+	} {
+		guard := func(m fstest.MapFS) fs.FS { return unopened{identified{m}, "routes/r3/route.toml"} }
+		if _, _, err := LoadPair(t.Context(), guard(c.base), guard(c.target)); errors.Is(err, errDisk) != c.opened || (err != nil) != c.opened {
+			t.Errorf("%s: %v", c.name, err)
+		}
+	}
+}
+
+// unopened is a file system with identities in which one file must not be
+// opened.
+type unopened struct {
+	identified
+	path string
+}
+
+func (u unopened) Open(name string) (fs.File, error) {
+	if name == u.path {
+		return nil, errDisk
+	}
+	return u.identified.Open(name)
 }
 
 // TestLoadPairFailing wants the error of the file system on its side.

@@ -1,13 +1,10 @@
 package schema
 
 import (
-	"bytes"
 	"regexp"
 	"slices"
-	"strconv"
 	"strings"
 	"time"
-	"unicode/utf8"
 
 	"golang.org/x/crypto/ssh"
 
@@ -54,17 +51,19 @@ type Key struct {
 
 // policy reads both policy files; nil where there is none.
 func (r *reader) policy() *Policy {
+	// A file that was refused is there all the same.
+	count := r.faults.Count()
 	m, haveRoles := r.toml(signoffFile, false)
+	rolesThere := haveRoles || r.refused[signoffFile] || r.faults.Count() > count
+	count = r.faults.Count()
 	content, haveKeys := r.file(signersFile, table.MaxTOMLSize)
-	present := func(name string) bool {
-		return slices.ContainsFunc(r.files, func(f File) bool { return f.Path == name })
-	}
+	keysThere := haveKeys || r.refused[signersFile] || r.faults.Count() > count
 	switch {
-	case !present(signoffFile) && !present(signersFile):
+	case !rolesThere && !keysThere:
 		return nil
-	case !present(signersFile):
+	case !keysThere:
 		r.faults.Add(source.Position{File: signersFile}, "the file is missing, signoff.toml needs it")
-	case !present(signoffFile):
+	case !rolesThere:
 		r.faults.Add(source.Position{File: signoffFile}, "the file is missing, allowed_signers needs it")
 	}
 	before := r.faults.Count()
@@ -167,10 +166,10 @@ func (r *reader) signoff(p *Policy, m table.Reader) {
 	emails, principals, names := map[string]source.Position{}, map[string]source.Position{}, map[string]source.Position{}
 	for _, t := range m.Tables("person") {
 		person := Person{Pos: t.Pos, Principal: t.Text("principal", true)}
-		r.unique(principals, "person", person.Principal, t.Place("principal"))
+		r.once(principals, "person", person.Principal, valuePlace(t, "principal"))
 		for _, v := range t.Texts("emails") {
 			email := asciiLower(v.Text)
-			r.unique(emails, "e-mail address", email, v.Pos)
+			r.once(emails, "e-mail address", email, v.Pos)
 			person.Emails = append(person.Emails, email)
 		}
 		t.Finish()
@@ -182,9 +181,9 @@ func (r *reader) signoff(p *Policy, m table.Reader) {
 			r.faults.Add(t.Pos, "needed is missing")
 		}
 		if role.Name != "" && !roleName.MatchString(role.Name) || role.Name == Preparer {
-			r.faults.Add(t.Place("name"), "role name %s is not made of letters, digits and '-', or is the built-in %s", source.Quote(role.Name), Preparer)
+			r.faults.Add(valuePlace(t, "name"), "role name %s is not made of up to 50 letters, digits and '-', or is the built-in %s", source.Quote(role.Name), Preparer)
 		}
-		r.unique(names, "role", role.Name, t.Place("name"))
+		r.once(names, "role", role.Name, valuePlace(t, "name"))
 		for _, v := range t.Texts("independent_of") {
 			role.IndependentOf = append(role.IndependentOf, v.Text)
 		}
@@ -234,89 +233,6 @@ func (r *reader) checkRoles(p *Policy) {
 			r.faults.Add(k.Pos, "principal %s is no person of %s", source.Quote(k.Principal), signoffFile)
 		}
 	}
-}
-
-// allowedSigners reads the OpenSSH file of that name (ssh-keygen(1), ALLOWED
-// SIGNERS) in a strict form: one literal lower-case principal a line, plain
-// keys, times in UTC.
-func (r *reader) allowedSigners(p *Policy, content []byte) {
-	if !utf8.Valid(content) {
-		r.faults.Add(source.Position{File: signersFile}, "the file is not valid UTF-8")
-		return
-	}
-	owners := map[string]string{}
-	line := 0
-	for text := range bytes.Lines(content) {
-		line++
-		at := source.Position{File: signersFile, Line: line, Column: 1}
-		row := strings.TrimSpace(string(text))
-		if row == "" || strings.HasPrefix(row, "#") {
-			continue
-		}
-		k, problem := signerLine(row)
-		if problem != "" {
-			r.faults.Add(at, "%s", problem)
-			continue
-		}
-		k.Pos = at
-		if owner, ok := owners[k.Fingerprint]; ok && owner != k.Principal {
-			r.faults.Add(at, "the key %s is that of %s, too; a key belongs to one principal", k.Fingerprint, source.Quote(owner))
-			continue
-		}
-		owners[k.Fingerprint] = k.Principal
-		p.Keys = append(p.Keys, k)
-	}
-}
-
-var principalForm = regexp.MustCompile(`^[a-z0-9._%+@-]{1,200}$`)
-
-// signerLine reads one line; problem says what is wrong with it.
-func signerLine(row string) (k Key, problem string) {
-	principal, rest, _ := strings.Cut(row, " ")
-	if !principalForm.MatchString(principal) {
-		return k, "principal " + source.Quote(principal) + " is not one literal name in lower case; lists and wildcards are refused"
-	}
-	k.Principal = principal
-	public, _, options, extra, err := ssh.ParseAuthorizedKey([]byte(strings.TrimSpace(rest)))
-	if err != nil || len(extra) > 0 {
-		return k, "no public key can be read: a line is PRINCIPAL [OPTIONS] KEYTYPE KEY"
-	}
-	switch public.Type() {
-	case ssh.KeyAlgoED25519, ssh.KeyAlgoECDSA256, ssh.KeyAlgoECDSA384, ssh.KeyAlgoECDSA521, ssh.KeyAlgoSKED25519, ssh.KeyAlgoSKECDSA256, ssh.KeyAlgoRSA:
-	default:
-		return k, "key type " + source.Quote(public.Type()) + " is refused; allowed are Ed25519, ECDSA, RSA and their security key forms, certificates are not"
-	}
-	for _, option := range options {
-		name, value, _ := strings.Cut(option, "=")
-		value = strings.Trim(value, `"`)
-		switch strings.ToLower(name) {
-		case "namespaces":
-			k.Namespaces = strings.Split(value, ",")
-		case "valid-after":
-			k.ValidAfter, err = signerTime(value)
-		case "valid-before":
-			k.ValidBefore, err = signerTime(value)
-		case "cert-authority":
-			return k, "cert-authority is refused: who holds such a key could make any signer"
-		default:
-			return k, "option " + source.Quote(name) + " is not known"
-		}
-		if err != nil {
-			return k, name + " " + strconv.Quote(value) + " is no time in UTC such as 20260301Z or 202603010600Z"
-		}
-	}
-	k.Public, k.Fingerprint = public, ssh.FingerprintSHA256(public)
-	return k, ""
-}
-
-// signerTime reads YYYYMMDDZ, YYYYMMDDHHMMZ or YYYYMMDDHHMMSSZ.
-func signerTime(s string) (time.Time, error) {
-	for _, layout := range []string{"20060102Z", "200601021504Z", "20060102150405Z"} {
-		if t, err := time.Parse(layout, s); err == nil {
-			return t, nil
-		}
-	}
-	return time.Time{}, strconv.ErrSyntax
 }
 
 // asciiLower lowers ASCII letters only: other letters have no one lower form.

@@ -1,6 +1,7 @@
 package schema
 
 import (
+	"errors"
 	"io/fs"
 	"slices"
 	"strconv"
@@ -36,7 +37,7 @@ func (r *reader) dataset(d *Dataset) {
 	if zone := m.Text("time_zone", false); zone != "" {
 		location, err := time.LoadLocation(zone)
 		if err != nil || zone == "Local" {
-			r.faults.Add(m.Place("time_zone"), "time_zone %s is no IANA time zone name", source.Quote(zone))
+			r.faults.Add(valuePlace(m, "time_zone"), "time_zone %s is no IANA time zone name", source.Quote(zone))
 		} else {
 			d.TimeZone = location
 		}
@@ -81,6 +82,7 @@ func (r *reader) trains(d *Dataset) {
 	if !ok {
 		return
 	}
+	before := r.faults.Count()
 	seen := map[string]source.Position{}
 	list := m.Tables("train")
 	if len(list) > MaxTrains {
@@ -89,10 +91,10 @@ func (r *reader) trains(d *Dataset) {
 	}
 	for _, t := range list {
 		train := r.train(t)
-		r.unique(seen, "train", train.ID, t.Place("id"))
+		r.unique(seen, "train", train.ID, valuePlace(t, "id"))
 		d.Trains = append(d.Trains, train)
 	}
-	if len(list) == 0 && r.faults.Count() == 0 {
+	if len(list) == 0 && r.faults.Count() == before {
 		r.faults.Add(source.Position{File: trainsFile}, "no reference train, at least one [[train]] is needed")
 	}
 	m.Finish()
@@ -103,7 +105,7 @@ func (r *reader) train(t table.Reader) Train {
 	if v := t.Number("cant_deficiency_mm", true); v != nil {
 		mm, err := strconv.Atoi(v.Text)
 		c, ok := codes.CantDeficiencyOf(mm)
-		if err != nil || !ok {
+		if err != nil || !ok || strings.HasPrefix(v.Text, "+") {
 			r.faults.Add(v.Pos, "cant_deficiency_mm %s is none of 80, 100, 130, 150, 165, 180, 210, 225, 245, 275, 300", source.Quote(v.Text))
 		}
 		train.Cant = c
@@ -122,13 +124,13 @@ func (r *reader) train(t table.Reader) Train {
 	if text := t.Text("axle_load", true); text != "" {
 		a, ok := codes.ParseAxleLoad(text)
 		if !ok {
-			r.faults.Add(t.Place("axle_load"), "axle_load %s is none of %s", source.Quote(text), strings.Join(axleLoadNames(), ", "))
+			r.faults.Add(valuePlace(t, "axle_load"), "axle_load %s is none of %s", source.Quote(text), strings.Join(axleLoadNames(), ", "))
 		}
 		train.AxleLoad = a
 	}
 	if v := t.Number("length_m", true); v != nil {
 		n, err := strconv.Atoi(v.Text)
-		if err != nil || n < 1 || n > 4095 {
+		if err != nil || n < 1 || n > 4095 || strings.HasPrefix(v.Text, "+") {
 			r.faults.Add(v.Pos, "length_m %s is not a whole number from 1 to 4095", source.Quote(v.Text))
 		}
 		train.Length = unit.Distance(n) * unit.Metre
@@ -179,7 +181,7 @@ func decimal(text string, places int) (int64, bool) {
 func (r *reader) identifier(m table.Reader, key string) string {
 	id := m.Text(key, true)
 	if len(id) > 100 {
-		r.faults.Add(m.Place(key), "%s %s is longer than 100 bytes", key, source.Quote(id))
+		r.faults.Add(valuePlace(m, key), "%s %s is longer than 100 bytes", key, source.Quote(id))
 	}
 	return id
 }
@@ -196,6 +198,18 @@ func (r *reader) unique(seen map[string]source.Position, what, id string, at sou
 	seen[id] = at
 }
 
+// once records a name that stands twice.
+func (r *reader) once(seen map[string]source.Position, what, name string, at source.Position) {
+	if name == "" {
+		return
+	}
+	if first, ok := seen[name]; ok {
+		r.faults.Add(at, "%s %s stands twice, first at %s", what, source.Quote(name), first)
+		return
+	}
+	seen[name] = at
+}
+
 func axleLoadNames() []string {
 	names := make([]string, codes.AxleLoads)
 	for a := range names {
@@ -205,12 +219,16 @@ func axleLoadNames() []string {
 }
 
 func (r *reader) requests(d *Dataset) {
-	if r.err != nil {
+	if r.err != nil || r.refused[requestsDir] {
 		return
 	}
 	entries, err := fs.ReadDir(r.fsys, requestsDir)
+	if errors.Is(err, fs.ErrNotExist) {
+		return
+	}
 	if err != nil {
-		return // there is none, or list has said what it is instead
+		r.err = err
+		return
 	}
 	seen := map[string]source.Position{}
 	count := 0
@@ -218,7 +236,7 @@ func (r *reader) requests(d *Dataset) {
 		p := requestsDir + "/" + e.Name()
 		switch {
 		case e.IsDir():
-			r.noDataBelow(p, 0)
+			r.noDataBelow(p, 1)
 			continue
 		case !checkType(&r.faults, e, p, false):
 			continue
@@ -241,7 +259,7 @@ func (r *reader) requests(d *Dataset) {
 			q.Declare = append(q.Declare, r.declaration(t))
 		}
 		m.Finish()
-		r.unique(seen, "request", q.ID, q.Pos)
+		r.unique(seen, "request", q.ID, valuePlace(m, "id"))
 		d.Requests = append(d.Requests, q)
 	}
 	slices.SortStableFunc(d.Requests, func(a, b ChangeRequest) int { return strings.Compare(a.ID, b.ID) })
@@ -254,7 +272,7 @@ func (r *reader) declaration(t table.Reader) Declaration {
 	if text := t.Text("direction", false); text != "" {
 		s, ok := codes.ParseDirections(text)
 		if !ok {
-			r.faults.Add(t.Place("direction"), "direction %s is none of nominal, reverse, both", source.Quote(text))
+			r.faults.Add(valuePlace(t, "direction"), "direction %s is none of nominal, reverse, both", source.Quote(text))
 		}
 		d.Span.Directions = s
 	}
@@ -265,7 +283,7 @@ func (r *reader) declaration(t table.Reader) Declaration {
 		d.Effect = Lower
 	case "any", "":
 	default:
-		r.faults.Add(t.Place("effect"), "effect %s is none of raise, lower, any", source.Quote(text))
+		r.faults.Add(valuePlace(t, "effect"), "effect %s is none of raise, lower, any", source.Quote(text))
 	}
 	for _, v := range t.Texts("trains") {
 		d.Trains = append(d.Trains, v.Text)
@@ -287,8 +305,14 @@ func (r *reader) accepted(d *Dataset) {
 		a.Span = r.span(t)
 		a.Span.Directions = codes.Both
 		if v := t.Get("until"); v != nil {
-			if _, err := time.Parse(time.DateOnly, v.Text); v.Kind != table.DateKind || err != nil {
+			day, err := time.Parse(time.DateOnly, v.Text)
+			switch {
+			case v.Kind == table.StringKind || v.Kind == table.ArrayKind || v.Kind == table.TableKind:
+				r.faults.Add(v.Pos, "until is %s, a date such as 2027-06-30, without quotes, is needed", v.Kind)
+			case v.Kind != table.DateKind || err != nil:
 				r.faults.Add(v.Pos, "until %s is no date such as 2027-06-30", source.Quote(v.Text))
+			case !plausible(day):
+				r.faults.Add(v.Pos, "until %s "+implausible, source.Quote(v.Text))
 			}
 			a.Until = v.Text
 		}

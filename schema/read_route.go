@@ -33,7 +33,7 @@ func (r *reader) route(folder string) *Route {
 			if slices.Contains(routeFiles, e.Name()) {
 				checkType(&r.faults, e, p, false)
 			}
-			r.noDataBelow(p, 0)
+			r.noDataBelow(p, 1)
 		case !checkType(&r.faults, e, p, false):
 		case slices.Contains(routeFiles, e.Name()):
 			present[e.Name()] = true
@@ -62,7 +62,7 @@ func (r *reader) route(folder string) *Route {
 }
 
 // noDataBelow records tables and TOML files, and links, in folders where the
-// data set has none.
+// data set has none; depth is that of dir, 1 for the first.
 func (r *reader) noDataBelow(dir string, depth int) {
 	entries, err := fs.ReadDir(r.fsys, dir)
 	if err != nil {
@@ -91,8 +91,9 @@ func (r *reader) routeTOML(folder string) *Route {
 		return nil
 	}
 	route := &Route{Folder: folder, Pos: m.Place("id"), ID: m.Text("id", true), Name: m.Text("name", true), Directions: codes.Both}
+	r.id = valuePlace(m, "id")
 	if route.ID != "" && !routeID.MatchString(route.ID) {
-		r.faults.Add(route.Pos, "route id %s is not made of up to 100 letters, digits, '-', '_' and '.'", source.Quote(route.ID))
+		r.faults.Add(r.id, "route id %s is not made of up to 100 letters, digits, '-', '_' and '.'", source.Quote(route.ID))
 	}
 	before := r.faults.Count()
 	start, end := r.chainageOf(m, "start_km"), r.chainageOf(m, "end_km")
@@ -117,8 +118,11 @@ func (r *reader) routeTOML(folder string) *Route {
 	var jump *chainage.JumpError
 	if errors.As(err, &jump) {
 		at := route.EndPos
-		if jump.Index >= 0 {
+		switch {
+		case jump.Index >= 0:
 			at = route.Jumps[jump.Index].Pos
+		case jump.Start:
+			at = route.StartPos
 		}
 		r.faults.Add(at, "%s", jump.Problem)
 		return nil
@@ -132,6 +136,7 @@ func (r *reader) directions(m table.Reader, route *Route) {
 	if m.Get("directions") == nil {
 		return
 	}
+	before := r.faults.Count()
 	route.Directions = 0
 	for _, v := range m.Texts("directions") {
 		d, ok := codes.ParseDirections(v.Text)
@@ -141,8 +146,8 @@ func (r *reader) directions(m table.Reader, route *Route) {
 		}
 		route.Directions |= d
 	}
-	if route.Directions == 0 {
-		r.faults.Add(m.Place("directions"), `directions names none, write ["nominal"] or ["reverse"], or leave it out for both`)
+	if route.Directions == 0 && r.faults.Count() == before {
+		r.faults.Add(valuePlace(m, "directions"), `directions names none, write ["nominal"] or ["reverse"], or leave it out for both`)
 	}
 }
 
@@ -150,7 +155,7 @@ func (r *reader) directions(m table.Reader, route *Route) {
 func (r *reader) chainageOf(m table.Reader, key string) chainage.Point {
 	p := r.pointOf(m, key)
 	if p.Occurrence != 0 {
-		r.faults.Add(m.Place(key), "%s is a chainage without an occurrence", key)
+		r.faults.Add(valuePlace(m, key), "%s is a chainage without an occurrence", key)
 	}
 	return p
 }

@@ -3,7 +3,6 @@ package schema
 import (
 	"strconv"
 	"strings"
-	"time"
 
 	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
@@ -246,13 +245,14 @@ func (r *reader) placeRow(line table.Row, base Row) PlaceRow {
 		r.faults.Add(kind.Pos, "kind %s is none of station, crossing, bridge, tunnel, junction, signal, other", source.Quote(kind.Text))
 	}
 	for _, f := range []struct {
-		column string
-		places int
-		most   int64
-		set    func(int64)
+		column  string
+		places  int
+		most    int64
+		allowed string
+		set     func(int64)
 	}{
-		{"strike_in_m", 3, 50_000_000, func(n int64) { row.StrikeIn = unit.Distance(n) }},
-		{"warning_s", 1, 6_000, func(n int64) { row.WarningDS = int(n) }},
+		{"strike_in_m", 3, 50_000_000, "up to 50000 with at most 3 decimals", func(n int64) { row.StrikeIn = unit.Distance(n) }},
+		{"warning_s", 1, 6_000, "up to 600 with at most 1 decimal", func(n int64) { row.WarningDS = int(n) }},
 	} {
 		c := line.Cell(f.column)
 		if c.Text == "" {
@@ -261,7 +261,7 @@ func (r *reader) placeRow(line table.Row, base Row) PlaceRow {
 		n, ok := decimal(c.Text, f.places)
 		switch {
 		case !ok || n <= 0 || n > f.most:
-			r.faults.Add(c.Pos, "%s %s is not a number above 0 with at most %d decimals", f.column, source.Quote(c.Text), f.places)
+			r.faults.Add(c.Pos, "%s %s is not a number above 0 and %s", f.column, source.Quote(c.Text), f.allowed)
 		case kind.Text != string(Crossing):
 			r.faults.Add(c.Pos, "%s is for crossings only", f.column)
 		default:
@@ -288,23 +288,4 @@ func (r *reader) validity(line table.Row) Validity {
 		r.faults.Add(line.Cell("valid_to").Pos, "valid_to %s does not lie after valid_from %s", source.Quote(v.WrittenTo), source.Quote(v.WrittenFrom))
 	}
 	return v
-}
-
-// instant reads a date, whole days as the time zone has them, or a date-time.
-func (r *reader) instant(c table.Cell, column string, until bool) time.Time {
-	if c.Text == "" {
-		return time.Time{}
-	}
-	t, err := time.Parse(time.RFC3339, c.Text)
-	if len(c.Text) == len(time.DateOnly) {
-		t, err = time.ParseInLocation(time.DateOnly, c.Text, r.zone)
-		if until {
-			t = t.AddDate(0, 0, 1)
-		}
-	}
-	if err != nil {
-		r.faults.Add(c.Pos, "%s %s is no date (2026-03-01) or date-time (2026-03-01T06:00:00Z)", column, source.Quote(c.Text))
-		return time.Time{}
-	}
-	return t
 }

@@ -11,6 +11,7 @@ import (
 	"speedtrail/history/assessment"
 	"speedtrail/history/ledger"
 	"speedtrail/history/signoff"
+	"speedtrail/schema/source"
 )
 
 func (a *app) reportCommand() *cobra.Command {
@@ -44,7 +45,18 @@ func (a *app) report(ctx context.Context, number int64) error {
 	if err != nil {
 		return err
 	}
-	return a.render(doc, rec)
+	if err := a.render(doc, rec); err != nil {
+		return err
+	}
+	a.remarkFile()
+	return nil
+}
+
+// remarkFile says where a result went that is not on the screen.
+func (a *app) remarkFile() {
+	if a.outTo != "" {
+		a.remark("written to %s", source.Visible(a.outTo))
+	}
 }
 
 // recorded reads an assessment back from the ledger.

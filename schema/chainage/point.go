@@ -31,7 +31,7 @@ type Point struct {
 const MaxOccurrence = 99
 
 // ErrOccurrence says what may follow the "#" of a position.
-var ErrOccurrence = errors.New("after # stands the occurrence, a whole number from 1")
+var ErrOccurrence = errors.New("after # stands the occurrence, a whole number from 1 to " + strconv.Itoa(MaxOccurrence))
 
 // ParsePoint reads a position such as "12.4", "-0.350" or "31.180#2".
 func ParsePoint(s string) (Point, error) {

@@ -34,10 +34,11 @@ type Track struct {
 	segments []Segment
 }
 
-// A JumpError says which jump of a route cannot be, or with Index -1 that the
-// ends of the route cannot.
+// A JumpError says which jump of a route cannot be, or with Index -1 which end
+// of the route: its start or, without Start, its end.
 type JumpError struct {
 	Index   int
+	Start   bool
 	Problem string
 }
 
@@ -53,14 +54,14 @@ func NewTrack(start, end unit.Distance, jumps []Jump) (*Track, error) {
 	from, at := start, unit.Distance(0)
 	for i, j := range jumps {
 		if j.Arriving == j.Leaving {
-			return nil, &JumpError{i, "arriving_km and leaving_km are equal, a jump needs two different readings"}
+			return nil, &JumpError{Index: i, Problem: "arriving_km and leaving_km are equal, a jump needs two different readings"}
 		}
 		if j.Arriving <= from {
 			where := "start_km " + start.KM()
 			if i > 0 {
 				where = "leaving_km " + from.KM() + " of the jump before it"
 			}
-			return nil, &JumpError{i, fmt.Sprintf("arriving_km %s does not lie after %s, jumps stand in the order of the track", j.Arriving.KM(), where)}
+			return nil, &JumpError{Index: i, Problem: fmt.Sprintf("arriving_km %s does not lie after %s, jumps stand in the order of the track", j.Arriving.KM(), where)}
 		}
 		t.segments = append(t.segments, Segment{from, j.Arriving, at})
 		at += j.Arriving - from
@@ -68,15 +69,15 @@ func NewTrack(start, end unit.Distance, jumps []Jump) (*Track, error) {
 	}
 	if end <= from {
 		if len(jumps) == 0 {
-			return nil, &JumpError{-1, fmt.Sprintf("end_km %s does not lie after start_km %s", end.KM(), start.KM())}
+			return nil, &JumpError{Index: -1, Problem: fmt.Sprintf("end_km %s does not lie after start_km %s", end.KM(), start.KM())}
 		}
-		return nil, &JumpError{len(jumps) - 1, fmt.Sprintf("leaving_km %s does not lie before end_km %s", from.KM(), end.KM())}
+		return nil, &JumpError{Index: len(jumps) - 1, Problem: fmt.Sprintf("leaving_km %s does not lie before end_km %s", from.KM(), end.KM())}
 	}
 	t.segments = append(t.segments, Segment{from, end, at})
 	for i, km := range [...]unit.Distance{start, end} {
 		if t.Occurrences(km) > 1 {
 			name := [...]string{"start_km", "end_km"}[i]
-			return nil, &JumpError{-1, fmt.Sprintf("%s %s occurs more than once on the route, both ends must be unique", name, km.KM())}
+			return nil, &JumpError{Index: -1, Start: i == 0, Problem: fmt.Sprintf("%s %s occurs more than once on the route, both ends must be unique", name, km.KM())}
 		}
 	}
 	return t, nil

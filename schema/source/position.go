@@ -15,6 +15,7 @@ import (
 	"fmt"
 	"strconv"
 	"strings"
+	"unicode/utf8"
 )
 
 // Position is a place in the input. The zero Position is "nowhere"; Line 0
@@ -56,5 +57,15 @@ func Quote(s string) string {
 	if len(s) <= quoteLimit {
 		return strconv.Quote(s)
 	}
-	return strconv.Quote(strings.ToValidUTF8(s[:quoteLimit], "")) + "..."
+	n := quoteLimit
+	// No half letter; a byte that belongs to none stays, to be escaped.
+	for back := 1; back < utf8.UTFMax; back++ {
+		if start := n - back; utf8.RuneStart(s[start]) {
+			if _, size := utf8.DecodeRuneInString(s[start:]); size > back {
+				n = start
+			}
+			break
+		}
+	}
+	return strconv.Quote(s[:n]) + "..."
 }

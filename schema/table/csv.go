@@ -8,6 +8,7 @@ import (
 	"iter"
 	"slices"
 	"strings"
+	"unicode"
 
 	"speedtrail/schema/source"
 )
@@ -62,7 +63,7 @@ func ReadCSV(file string, content []byte, known, required []string, faults *sour
 	t := &CSV{index: map[string]int{}}
 	at := func(line, column int) source.Position { return source.Position{File: file, Line: line, Column: column} }
 	content = bytes.TrimPrefix(content, byteOrderMark)
-	if !checkUTF8(file, content, faults) {
+	if !CheckUTF8(file, content, faults) {
 		t.Broken = true
 		return t
 	}
@@ -85,12 +86,12 @@ func ReadCSV(file string, content []byte, known, required []string, faults *sour
 		}
 		if err != nil {
 			t.Broken = true
-			recordCSVError(file, err, faults)
+			recordCSVError(file, content, err, faults)
 			var syntax *csv.ParseError
-			if errors.As(err, &syntax) {
+			if header && errors.As(err, &syntax) {
 				continue
 			}
-			return t
+			return t // what follows a header that cannot be read is no header
 		}
 		if !slices.ContainsFunc(record, func(s string) bool { return strings.TrimSpace(s) != "" }) {
 			continue
@@ -221,7 +222,7 @@ func (t *CSV) readRow(record []string, r *csv.Reader, file string, places []int,
 	return row, good
 }
 
-func recordCSVError(file string, err error, faults *source.Collector) {
+func recordCSVError(file string, content []byte, err error, faults *source.Collector) {
 	var e *csv.ParseError
 	if !errors.As(err, &e) {
 		faults.Add(source.Position{File: file}, "the table cannot be read: %v", err)
@@ -233,13 +234,41 @@ func recordCSVError(file string, err error, faults *source.Collector) {
 		faults.Add(at, `a quote (") inside a cell without quotes; quote the whole cell and write "" for a quote in it`)
 	case errors.Is(err, csv.ErrQuote):
 		at.Line = e.StartLine
-		if e.StartLine == e.Line {
-			at.Line = e.Line
-		} else {
+		if e.StartLine != e.Line {
 			at.Column = 0
+		} else if open := openQuote(content, e.Line); open > 0 {
+			at.Column = open
 		}
 		faults.Add(at, `a quoted cell does not end, or text follows its closing quote (")`)
 	default:
 		faults.Add(at, "the row cannot be read: %v", e.Err)
+	}
+}
+
+// openQuote gives the column of a line at which a quoted cell begins that the
+// line does not end; 0 where there is none.
+func openQuote(content []byte, line int) int {
+	for range line - 1 {
+		_, content, _ = bytes.Cut(content, []byte("\n"))
+	}
+	text, _, _ := bytes.Cut(content, []byte("\n"))
+	rest := text
+	for {
+		rest = bytes.TrimLeftFunc(rest, unicode.IsSpace)
+		begin := len(text) - len(rest) + 1
+		quoted := bytes.HasPrefix(rest, []byte(`"`))
+		for open := quoted; open; {
+			end := bytes.IndexByte(rest[1:], '"')
+			if end < 0 {
+				return begin
+			}
+			rest = rest[end+2:]
+			open = bytes.HasPrefix(rest, []byte(`"`)) // two quotes stand for one
+		}
+		comma := bytes.IndexByte(rest, ',')
+		if comma < 0 || quoted && comma > 0 {
+			return 0
+		}
+		rest = rest[comma+1:]
 	}
 }

@@ -32,9 +32,9 @@ const (
 
 var byteOrderMark = []byte("\xEF\xBB\xBF")
 
-// checkUTF8 records the first invalid byte of each of the first lines that have
+// CheckUTF8 records the first invalid byte of each of the first lines that have
 // one, and tells whether the content can be read.
-func checkUTF8(file string, content []byte, faults *source.Collector) bool {
+func CheckUTF8(file string, content []byte, faults *source.Collector) bool {
 	if utf8.Valid(content) {
 		return true
 	}
@@ -57,6 +57,10 @@ func checkUTF8(file string, content []byte, faults *source.Collector) bool {
 	return false
 }
 
+func checkUTF8(file string, content []byte, faults *source.Collector) bool {
+	return CheckUTF8(file, content, faults)
+}
+
 // TextProblem says why a text may not stand in a data set: it holds a code that
 // a reader does not see, or it is too long. It is empty for a good text.
 func TextProblem(s string) string {
@@ -67,7 +71,9 @@ func TextProblem(s string) string {
 		switch {
 		case unicode.IsControl(r):
 			return "holding a control code, only visible characters are allowed"
-		case unicode.Is(unicode.Bidi_Control, r), r == '\u2028', r == '\u2029', r == '\uFEFF':
+		case unicode.Is(unicode.Cf, r), r == '\u2028', r == '\u2029', r >= '\U000E0000' && r <= '\U000E007F':
+			// Format characters: marks of direction, blanks and joiners of no
+			// width, soft hyphens, byte order marks; and the block of tags.
 			return "holding an invisible mark that can deceive a reader, only visible characters are allowed"
 		}
 	}

@@ -82,7 +82,7 @@ func (m *Map) set(key string, pos source.Position, v *Value) {
 // the fault recorded.
 func ReadTOML(file string, content []byte, faults *source.Collector) *Map {
 	content = bytes.TrimPrefix(content, byteOrderMark)
-	if !checkUTF8(file, content, faults) {
+	if !CheckUTF8(file, content, faults) {
 		return nil
 	}
 	// The library's decoder checks what the parser alone does not: keys that
@@ -301,6 +301,10 @@ func (r Reader) Texts(key string) []Value {
 
 // Tables gives an array of tables.
 func (r Reader) Tables(key string) []Reader {
+	if v := r.Get(key); v != nil && v.Kind == TableKind {
+		r.Faults.Add(v.Pos, "%s is a table, an array is needed: write [[%s]]", key, key)
+		return nil
+	}
 	v := r.want(key, ArrayKind, false)
 	if v == nil {
 		return nil

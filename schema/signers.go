@@ -1,0 +1,127 @@
+package schema
+
+import (
+	"bytes"
+	"crypto/rsa"
+	"fmt"
+	"regexp"
+	"strings"
+	"time"
+
+	"golang.org/x/crypto/ssh"
+
+	"speedtrail/schema/source"
+	"speedtrail/schema/table"
+)
+
+// allowedSigners reads the OpenSSH file of that name (ssh-keygen(1), ALLOWED
+// SIGNERS) in a strict form: one literal lower-case principal a line, plain
+// keys, times in UTC.
+func (r *reader) allowedSigners(p *Policy, content []byte) {
+	if !table.CheckUTF8(signersFile, content, &r.faults) {
+		return
+	}
+	owners := map[string]string{}
+	line := 0
+	for text := range bytes.Lines(content) {
+		line++
+		at := source.Position{File: signersFile, Line: line, Column: 1}
+		row := strings.TrimSpace(string(text))
+		if row == "" || strings.HasPrefix(row, "#") {
+			continue
+		}
+		k, problem := signerLine(row)
+		if problem != "" {
+			r.faults.Add(at, "%s", problem)
+			continue
+		}
+		k.Pos = at
+		if owner, ok := owners[k.Fingerprint]; ok && owner != k.Principal {
+			r.faults.Add(at, "the key %s is that of %s, too; a key belongs to one principal", k.Fingerprint, source.Quote(owner))
+			continue
+		}
+		owners[k.Fingerprint] = k.Principal
+		p.Keys = append(p.Keys, k)
+	}
+}
+
+var principalForm = regexp.MustCompile(`^[a-z0-9._%+@-]{1,200}$`)
+
+// signerLine reads one line; problem says what is wrong with it.
+func signerLine(row string) (k Key, problem string) {
+	principal, rest, _ := strings.Cut(row, " ")
+	if !principalForm.MatchString(principal) {
+		return k, "principal " + source.Quote(principal) + " is not one literal name in lower case; lists and wildcards are refused"
+	}
+	k.Principal = principal
+	public, _, options, extra, err := ssh.ParseAuthorizedKey([]byte(strings.TrimSpace(rest)))
+	if err != nil || len(extra) > 0 {
+		return k, "no public key can be read: a line is PRINCIPAL [OPTIONS] KEYTYPE KEY"
+	}
+	switch public.Type() {
+	case ssh.KeyAlgoED25519, ssh.KeyAlgoECDSA256, ssh.KeyAlgoECDSA384, ssh.KeyAlgoECDSA521, ssh.KeyAlgoSKED25519, ssh.KeyAlgoSKECDSA256, ssh.KeyAlgoRSA:
+	default:
+		return k, "key type " + source.Quote(public.Type()) + " is refused; allowed are Ed25519, ECDSA, RSA and their security key forms, certificates are not"
+	}
+	if bits := rsaBits(public); bits > 0 && bits < leastRSABits {
+		return k, fmt.Sprintf("an RSA key of %d bits is refused, at least %d are needed", bits, leastRSABits)
+	}
+	values := map[string]string{}
+	for _, option := range options {
+		name, value, _ := strings.Cut(option, "=")
+		value = strings.Trim(value, `"`)
+		lower := strings.ToLower(name)
+		if _, ok := values[lower]; ok {
+			return k, "option " + source.Quote(name) + " stands twice"
+		}
+		values[lower] = value
+		switch lower {
+		case "namespaces":
+			k.Namespaces = strings.Split(value, ",")
+		case "valid-after":
+			k.ValidAfter, problem = signerTime(value)
+		case "valid-before":
+			k.ValidBefore, problem = signerTime(value)
+		case "cert-authority":
+			return k, "cert-authority is refused: who holds such a key could make any signer"
+		default:
+			return k, "option " + source.Quote(name) + " is not known"
+		}
+		if problem != "" {
+			return k, name + " " + source.Quote(value) + " " + problem
+		}
+	}
+	if !k.ValidAfter.IsZero() && !k.ValidBefore.IsZero() && k.ValidAfter.After(k.ValidBefore) {
+		return k, "valid-after " + source.Quote(values["valid-after"]) + " is later than valid-before " + source.Quote(values["valid-before"])
+	}
+	k.Public, k.Fingerprint = public, ssh.FingerprintSHA256(public)
+	return k, ""
+}
+
+// leastRSABits is what an RSA key has at least: shorter ones can be broken.
+const leastRSABits = 2048
+
+// rsaBits gives the length of an RSA key; 0 for a key of another type.
+func rsaBits(public ssh.PublicKey) int {
+	if c, ok := public.(ssh.CryptoPublicKey); ok {
+		if k, ok := c.CryptoPublicKey().(*rsa.PublicKey); ok {
+			return k.N.BitLen()
+		}
+	}
+	return 0
+}
+
+// signerTime reads YYYYMMDDZ, YYYYMMDDHHMMZ or YYYYMMDDHHMMSSZ.
+func signerTime(s string) (t time.Time, problem string) {
+	for _, layout := range []string{"20060102Z", "200601021504Z", "20060102150405Z"} {
+		t, err := time.Parse(layout, s)
+		switch {
+		case err != nil:
+			continue
+		case !plausible(t):
+			return time.Time{}, implausible
+		}
+		return t, ""
+	}
+	return time.Time{}, "is no time in UTC such as 20260301Z or 202603010600Z"
+}
