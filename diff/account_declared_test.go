@@ -114,6 +114,15 @@ func TestDeclared(t *testing.T) {
 			"reverse 3.800-4.000 T 80>70 run-out: 3.800-4.000 CR-1/0 run-out", "reverse 4.000-6.000 T 80>70: 4.000-6.000 CR-1/0", "CR-1/0 sees T 2000+200"}},
 		{"the row ends beyond the declaration", texts{"route.toml": oneWay}, asked(delayed, declares("R1", "both", 4, 5.9, "raise", "")), []string{
 			"nominal 4.000-6.000 T 80>90: 4.000-5.900 CR-1/0, 5.900-6.000 outside", "nominal 6.000-6.200 T 80>90 run-out: outside", "CR-1/0 sees T 1900"}},
+		{"the far end against the running distance is the beginning of the row", texts{"route.toml": strings.Replace(oneWay, "nominal", "reverse", 1)},
+			asked(delayed, declares("R1", "both", 4, 5, "raise", ""), declares("R1", "both", 5, 6, "raise", "")), []string{
+				"reverse 3.800-4.000 T 80>90 run-out: 3.800-4.000 CR-1/0 run-out", "reverse 4.000-6.000 T 80>90: 4.000-5.000 CR-1/0, 5.000-6.000 CR-1/1", "CR-1/0 sees T 1000+200", "CR-1/1 sees T 1000"}},
+		{"run-out of a reduction by the new end of the row", texts{"route.toml": oneWay, "speed.csv": "from_km,to_km,basic\n0,10,100\n", "axle-load.csv": "from_km,to_km,C2\n4,5,60\n"},
+			asked(texts{"axle-load.csv": "from_km,to_km,C2\n4,6,60\n"}, declares("R1", "both", 5.5, 6, "lower", "")), []string{
+				"nominal 5.200-6.000 T 100>60: 5.200-5.500 outside, 5.500-6.000 CR-1/0", "nominal 6.000-6.200 T 100>60 run-out: 6.000-6.200 CR-1/0 run-out", "CR-1/0 sees T 500+200"}},
+		{"run-out of a raise by the old end of the row", texts{"route.toml": oneWay, "speed.csv": "from_km,to_km,basic\n0,10,100\n", "axle-load.csv": "from_km,to_km,C2\n4,6,60\n"},
+			asked(texts{"axle-load.csv": "from_km,to_km,C2\n4,5,60\n"}, declares("R1", "both", 5.5, 6, "raise", "")), []string{
+				"nominal 5.200-6.000 T 60>100: 5.200-5.500 outside, 5.500-6.000 CR-1/0", "nominal 6.000-6.200 T 60>100 run-out: 6.000-6.200 CR-1/0 run-out", "CR-1/0 sees T 500+200"}},
 		{"run-out inside the declaration itself", texts{"route.toml": oneWay}, asked(delayed, declares("R1", "both", 4, 6.05, "raise", "")), []string{
 			"nominal 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "nominal 6.000-6.200 T 80>90 run-out: 6.000-6.050 CR-1/0, 6.050-6.200 CR-1/0 run-out", "CR-1/0 sees T 2050+150"}},
 		{"a change that is hidden today", over(flat, texts{"temporary.csv": temporary("4,5,60")}), asked(raise, declares("R1", "both", 4, 4.5, "raise", "")), []string{
@@ -222,6 +231,35 @@ func TestDeclaredFaults(t *testing.T) {
 			}
 			if strings.Join(got, "\n") != strings.Join(x.want, "\n") {
 				t.Errorf("got\n%s\nwant\n%s", strings.Join(got, "\n"), strings.Join(x.want, "\n"))
+			}
+		})
+	}
+}
+
+// A declaration on a route whose files are the same on both sides is unseen; the
+// route is asked for, to tell it from one that does not exist.
+func TestDeclaredOnUnreadRoute(t *testing.T) {
+	other := read(t, over(ground, texts{"route.toml": strings.Replace(ground["route.toml"], "R1", "R2", 1)})).Routes[0]
+	refused := errors.New("the route cannot be read")
+	for _, x := range []struct {
+		name, want string
+		to         float64
+		unread     func(string) (*schema.Route, error)
+	}{
+		{"there", "", 2, func(string) (*schema.Route, error) { return other, nil }},
+		{"there, but not so long", `requests/cr-1.toml:4:3: the declaration on route "R2": to_km 12.000 is outside the route`, 12, func(string) (*schema.Route, error) { return other, nil }},
+		{"not there", `requests/cr-1.toml:4:3: the declaration names route "R2", which neither revision has`, 2, func(string) (*schema.Route, error) { return nil, nil }},
+		{"nobody to ask", `requests/cr-1.toml:4:3: the declaration names route "R2", which neither revision has`, 2, nil},
+		{"not to be read", refused.Error(), 2, func(string) (*schema.Route, error) { return nil, refused }},
+	} {
+		t.Run(x.name, func(t *testing.T) {
+			target := asked(nil, declares("R2", "both", 1, x.to, "any", ""))
+			a, err := diff.Compare(t.Context(), read(t, ground), read(t, over(ground, target)), diff.Options{Unread: x.unread})
+			switch {
+			case err != nil && err.Error() != x.want, err == nil && x.want != "":
+				t.Errorf("got %v, want %q", err, x.want)
+			case err == nil && declaredOf(a) != "CR-1/0 sees nothing":
+				t.Errorf("got %s", declaredOf(a))
 			}
 		})
 	}

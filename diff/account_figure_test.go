@@ -54,7 +54,7 @@ func TestRunningTimes(t *testing.T) {
 // exactly.
 func TestPartsOfRunningTimes(t *testing.T) {
 	parts, several, reverse := 0, 0, 0
-	check(t, 400, func(t *rapid.T) {
+	check(t, 200, func(t *rapid.T) {
 		base, target := drawTexts(t, 400*unit.Metre)
 		a, err := diff.Compare(t.Context(), readRapid(t, base), readRapid(t, target), diff.Options{NoFleet: true, Rolling: rapid.Bool().Draw(t, "rolling")})
 		if err != nil {
@@ -85,7 +85,7 @@ func TestPartsOfRunningTimes(t *testing.T) {
 			}
 		}
 	})
-	if parts < 200 || several < 20 || reverse < 50 {
+	if parts < 100 || several < 5 || reverse < 20 {
 		t.Errorf("only %d running times with parts, %d with several, %d in reverse", parts, several, reverse)
 	}
 }

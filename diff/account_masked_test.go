@@ -67,7 +67,7 @@ func leavingOf(a *diff.Account) string {
 		r := &a.Routes[i]
 		for _, l := range r.Leaving {
 			text := fmt.Sprintf("%s %s line %d, %s m", causeText(r, l.Cause), l.Direction, l.Row.Pos.Line, l.Longest.M())
-			if l.Removed {
+			if l.OfBase {
 				text += ", removed"
 			}
 			lines = append(lines, text)
@@ -106,12 +106,11 @@ func TestLeaving(t *testing.T) {
 // A row that held beyond the end and does not any more frees the neighbouring
 // route of it.
 func TestLeavingNoMore(t *testing.T) {
-	t.Skip("BUG: of an altered row only the new form is looked at")
 	axle := func(rows string) texts {
 		return texts{"axle-load.csv": "from_km,to_km,C2,train_length_delay\n" + rows}
 	}
 	runAccounts(t, []accountTest{
-		{"the delay goes", axle("9.5,9.9,60,yes\n"), axle("9.5,9.9,60,no\n"), []string{"axle-load.csv -2 +2 nominal line 2, 200 m"}},
-		{"the row ends earlier", axle("9.5,9.9,60,yes\n"), axle("9.5,9.7,60,yes\n"), []string{"axle-load.csv -2 +2 nominal line 2, 200 m"}},
+		{"the delay goes", axle("9.5,9.9,60,yes\n"), axle("9.5,9.9,60,no\n"), []string{"axle-load.csv -2 +2 nominal line 2, 200 m, removed"}},
+		{"the row ends earlier", axle("9.5,9.9,60,yes\n"), axle("9.5,9.7,60,yes\n"), []string{"axle-load.csv -2 +2 nominal line 2, 200 m, removed"}},
 	}, leavingOf)
 }

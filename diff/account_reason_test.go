@@ -94,7 +94,6 @@ func TestReasons(t *testing.T) {
 // What is not lower elsewhere must not be called so: the rows of several
 // differences together say the same.
 func TestReasonsOfSeveralRows(t *testing.T) {
-	t.Skip("BUG: differences that make up for each other are explained as \"another restriction is lower\", which is false")
 	same := trainText("T", 80, "", "C2", 200, 200)
 	runAccounts(t, []accountTest{
 		{"a boundary between rows that say the same for every reference train", texts{"trains.toml": same, "speed.csv": "from_km,to_km,basic,cd300\n0,4,100,\n4,10,100,120\n"},
@@ -108,7 +107,6 @@ func TestReasonsOfSeveralRows(t *testing.T) {
 
 // Rows that only reach into added or removed track are tied to it.
 func TestRowsOfAddedTrack(t *testing.T) {
-	t.Skip("BUG: the row of speed.csv that follows the end of a route is explained as \"another restriction is lower\", which is false")
 	one := texts{"route.toml": oneWay}
 	longer := texts{"route.toml": strings.Replace(oneWay, "10", "11", 1), "speed.csv": strings.Replace(ground["speed.csv"], "6,10,", "6,11,", 1)}
 	new := over(longer, texts{"speed.csv": ground["speed.csv"] + "10,11,90\n", "axle-load.csv": "from_km,to_km,C2\n10.5,10.8,60\n"})

@@ -229,15 +229,22 @@ func TestCausesOfTheTrack(t *testing.T) {
 		{"a jump elsewhere", texts{"route.toml": oneWay}, texts{"route.toml": oneWay + "[[jump]]\narriving_km = 8\nleaving_km = 8.1\n"}, []string{
 			"removed nominal 8.000-8.100",
 		}},
+		{"a direction", texts{"route.toml": oneWay}, texts{"route.toml": ground["route.toml"]}, []string{"added reverse 0.000-10.000"}},
+		{"the end", texts{"route.toml": oneWay}, texts{"route.toml": strings.Replace(oneWay, "10", "11", 1), "speed.csv": strings.Replace(ground["speed.csv"], "6,10,", "6,11,", 1)}, []string{"added nominal 10.000-11.000"}},
+	}, changesOf)
+}
+
+// A jump is a cause beside the rows, too: here the row is raised, and what is
+// lowered behind the jump comes of the jump.
+func TestCausesOfJumpAndRow(t *testing.T) {
+	runAccounts(t, []accountTest{
 		{"a jump and a row", texts{"route.toml": oneWay}, texts{"route.toml": oneWay + "[[jump]]\narriving_km = 6.1\nleaving_km = 6.3\n",
 			"speed.csv": "from_km,to_km,basic\n0,4,100\n4,6,90\n6,10,100\n"}, []string{
 			"removed nominal 6.100-6.300",
 			"nominal 4.000-6.000 T 80>90 by speed.csv -3 +3",
 			"nominal 6.000-6.100 T 80>90 run-out by speed.csv -3 +3",
-			"nominal 6.300-6.400 T 100>90 run-out by speed.csv -3 +3",
+			"nominal 6.300-6.400 T 100>90 run-out by route.toml +7, speed.csv -3 +3",
 		}},
-		{"a direction", texts{"route.toml": oneWay}, texts{"route.toml": ground["route.toml"]}, []string{"added reverse 0.000-10.000"}},
-		{"the end", texts{"route.toml": oneWay}, texts{"route.toml": strings.Replace(oneWay, "10", "11", 1), "speed.csv": strings.Replace(ground["speed.csv"], "6,10,", "6,11,", 1)}, []string{"added nominal 10.000-11.000"}},
 	}, changesOf)
 }
 

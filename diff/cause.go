@@ -1,6 +1,7 @@
 package diff
 
 import (
+	"cmp"
 	"encoding/binary"
 	"path"
 	"slices"
@@ -24,8 +25,10 @@ type causeTable struct {
 	// byLine finds the differences of the tables that hold speeds: side (0 the
 	// base), layer and line of a row.
 	byLine map[rowPlace][]Cause
-	// track are the differences of route.toml that alter the track.
+	// track are the differences of route.toml that alter the track, joints the
+	// places on the target's track where it is not that of the base.
 	track   []Cause
+	joints  []unit.Distance
 	effects map[effectKey]bool
 	known   map[changeKey]int
 	lists   map[string]int
@@ -46,6 +49,7 @@ type changeKey struct {
 	before, after int
 	direction     codes.Direction
 	class         profile.Class
+	near          bool
 }
 
 // layerOf gives the layer that a table of a route holds.
@@ -99,10 +103,11 @@ func altersTrack(f *File, d *RowDifference) bool {
 
 // of gives the index in Route.Causes of the differences behind a change: those
 // whose old row governs before, or whose new row governs after, as far as they
-// give this class of trains another restriction. A change that none of the rows
-// explains comes of a chainage jump or an end of the route.
-func (t *causeTable) of(c *Change, class profile.Class) int {
-	key := changeKey{c.BeforeSources, c.AfterSources, c.Direction, class}
+// give this class of trains another restriction. A run-out across a place where
+// the track differs comes of that as well, and so does a change that none of the
+// rows explains.
+func (t *causeTable) of(c *Change, class profile.Class, length unit.Distance) int {
+	key := changeKey{c.BeforeSources, c.AfterSources, c.Direction, class, c.RunOut && t.jointBehind(c, length)}
 	if i, ok := t.known[key]; ok {
 		return i
 	}
@@ -116,8 +121,8 @@ func (t *causeTable) of(c *Change, class profile.Class) int {
 			}
 		}
 	}
-	if len(list) == 0 {
-		list = slices.Clone(t.track)
+	if len(list) == 0 || key.near {
+		list = append(list, t.track...)
 	}
 	slices.SortFunc(list, func(a, b Cause) int {
 		if a.File != b.File {
@@ -128,6 +133,16 @@ func (t *causeTable) of(c *Change, class profile.Class) int {
 	i := t.index(list)
 	t.known[key] = i
 	return i
+}
+
+// jointBehind tells whether the track differs behind a change, no further than
+// the rear of a train can be.
+func (t *causeTable) jointBehind(c *Change, length unit.Distance) bool {
+	from, to := c.From-length, c.From
+	if c.Direction == codes.Reverse {
+		from, to = c.To, c.To+length
+	}
+	return slices.ContainsFunc(t.joints, func(j unit.Distance) bool { return from <= j && j <= to })
 }
 
 // index gives the place of a list in Route.Causes.
@@ -174,6 +189,26 @@ func (t *causeTable) hasEffect(c Cause, d codes.Direction, class profile.Class) 
 	return effect
 }
 
+// haveEffect tells whether the old rows of several differences of one table
+// together restrict a class of trains otherwise than the new ones.
+func (t *causeTable) haveEffect(list []Cause, d codes.Direction, class profile.Class) bool {
+	if len(list) == 1 {
+		return t.hasEffect(list[0], d, class)
+	}
+	f := &t.route.Files[list[0].File]
+	layer, ok := layerOf(f.Path())
+	if !ok {
+		return false
+	}
+	var lines [2][]int
+	for _, c := range list {
+		row := &f.Rows[c.Row]
+		lines[0] = append(lines[0], linesOf(f.Tables[row.Table].Old.Rows, row.Old)...)
+		lines[1] = append(lines[1], linesOf(f.Tables[row.Table].New.Rows, row.New)...)
+	}
+	return !slices.Equal(bindings(t.route.Base, layer, lines[0], d, class), bindings(t.route.Target, layer, lines[1], d, class))
+}
+
 func linesOf(list []rows.Row, indices []int) []int {
 	lines := make([]int, len(indices))
 	for i, n := range indices {
@@ -195,13 +230,23 @@ func bindings(r *schema.Route, layer profile.Layer, lines []int, d codes.Directi
 	if r == nil {
 		return nil
 	}
-	var list []binding
+	type placed struct {
+		binding
+		start, end unit.Distance
+	}
+	var all []placed
 	for _, line := range lines {
 		row, v := rowOf(r, layer, line, class)
-		if row == nil || v == 0 || !row.Directions.Has(d) {
-			continue
+		if row != nil && v != 0 && row.Directions.Has(d) {
+			all = append(all, placed{binding{first(row.From), first(row.To), row.Delay, v}, row.Start, row.End})
 		}
-		b := binding{first(row.From), first(row.To), row.Delay, v}
+	}
+	slices.SortFunc(all, func(a, b placed) int {
+		return cmp.Or(cmp.Compare(a.start, b.start), cmp.Compare(a.end, b.end), cmp.Compare(a.speed, b.speed), cmp.Compare(delayed(a.delay), delayed(b.delay)))
+	})
+	var list []binding
+	for _, p := range all {
+		b := p.binding
 		if n := len(list); n > 0 && list[n-1].to == b.from && list[n-1].delay == b.delay && list[n-1].speed == b.speed {
 			list[n-1].to = b.to
 			continue
@@ -209,6 +254,13 @@ func bindings(r *schema.Route, layer profile.Layer, lines []int, d codes.Directi
 		list = append(list, b)
 	}
 	return list
+}
+
+func delayed(delay bool) int {
+	if delay {
+		return 1
+	}
+	return 0
 }
 
 // first writes a position without the mark of a first occurrence.

@@ -81,27 +81,54 @@ type ShortRaise struct {
 // figures computes the figures of one direction of travel.
 func (p *pair) figures(trains []Train, rolling bool) {
 	f := &p.route.Figures
+	var w runs
 	for i, t := range trains {
 		m := impact.Motion{Acceleration: t.Acceleration, Braking: t.Braking, Rolling: rolling}
 		if s := p.sights[i]; m.Given() && len(s.changes) > 0 {
-			p.running(f, i, t, s.changes, m)
+			p.running(f, i, t, s.changes, m, &w)
 		}
 	}
 	p.crossings(f)
 	p.curves(f, trains)
 }
 
-// inTravel turns a profile into the order of travel.
-func (p *pair) inTravel(f step.Func) step.Func {
-	if p.direction == codes.Reverse {
-		return impact.Mirrored(f)
-	}
-	return f
+// runs is memory for two runs, used again for each train.
+type runs struct {
+	base, target, near step.Func
+	turned             [2]step.Func // base and target in the order of travel
+	before, after      impact.Run
 }
 
-func (p *pair) running(f *Figures, train int, t Train, changes []delta.Delta, m impact.Motion) {
-	base, target := p.whole[0].Compile(t.Train), p.whole[1].Compile(t.Train)
-	before, after := impact.NewRun(p.inTravel(base), m), impact.NewRun(p.inTravel(target), m)
+// compute compiles both sides for a train and computes the runs along them.
+func (w *runs) compute(p *pair, t Train, m impact.Motion) {
+	class := profile.ClassOf(t.Train)
+	w.base = p.whole[0].AppendSweep(w.base[:0], p.whole[0].Select(class), t.Length, t.Max)
+	if p.same {
+		// Outside the cells both sides are the same.
+		w.near = p.all.target.AppendSweep(w.near[:0], p.all.target.Select(class), t.Length, t.Max)
+		w.target = w.target[:0]
+		at := unit.Distance(0)
+		for _, c := range p.all.cells {
+			w.target = w.target.AppendPart(w.base, at, c.Target).AppendPart(w.near, c.Target, c.Target+c.Length)
+			at = c.Target + c.Length
+		}
+		w.target = w.target.AppendPart(w.base, at, p.route.Target.Track.Length())
+	} else {
+		w.target = p.whole[1].AppendSweep(w.target[:0], p.whole[1].Select(class), t.Length, t.Max)
+	}
+	for i, f := range [...]step.Func{w.base, w.target} {
+		w.turned[i] = append(w.turned[i][:0], f...)
+		if p.direction == codes.Reverse {
+			impact.Mirror(w.turned[i])
+		}
+	}
+	w.before.Compute(w.turned[0], m, nil)
+	w.after.Compute(w.turned[1], m, &w.before)
+}
+
+func (p *pair) running(f *Figures, train int, t Train, changes []delta.Delta, m impact.Motion, w *runs) {
+	w.compute(p, t, m)
+	before, after := &w.before, &w.after
 	run := RunTime{Direction: p.direction, Train: train, Before: before.Tenths(), After: after.Tenths()}
 	length := p.route.Target.Track.Length()
 	// travelled gives how far along the way a place of the target's track lies.
@@ -133,7 +160,7 @@ func (p *pair) running(f *Figures, train int, t Train, changes []delta.Delta, m 
 		if c.After < c.Before {
 			continue
 		}
-		cur := target.CursorAt(c.Target)
+		cur := w.target.CursorAt(c.Target)
 		piece := cur.Piece()
 		middle := travelled(piece.From + (piece.To-piece.From)/2)
 		reached, needed := after.Peak(middle)

@@ -114,14 +114,16 @@ func (p *pair) represent(f *Fleet, s sides, trains []Train) {
 	}
 	var list []shown
 	for i, t := range trains {
+		class := profile.ClassOf(t.Train)
 		seen := p.sights[i].changes
 		if f.Permanent {
-			seen = append(slices.Clone(seen), p.sights[i].masked...)
+			// Not what it sees today: a change that a temporary restriction makes
+			// stands for no permanent one.
+			seen = s.compare(s.base.Select(class), s.target.Select(class), t.Length, t.Max)
 		}
 		if len(seen) == 0 {
 			continue
 		}
-		class := profile.ClassOf(t.Train)
 		free := s.compare(s.base.Select(class), s.target.Select(class), t.Length, profile.NoMaximum)
 		for _, c := range seen {
 			list = append(list, shown{class: class, from: c.Target, to: c.Target + c.Length, raised: c.After > c.Before, part: -1})

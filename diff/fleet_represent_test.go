@@ -264,7 +264,6 @@ func TestRepresentedPermanently(t *testing.T) {
 				"nominal 0-1000 m 100>40 10 +" + fleetAll,
 				"permanent nominal 0-1000 m 100>90 10 -" + fleetAll,
 			},
-			bug: "a change of today that the temporary restriction makes represents the permanent one",
 		},
 		{
 			name: "the end of a temporary restriction stands for no permanent raise", base: nominal(100, fleetRow{from: 0, to: 1000, basic: 40, temporary: true, directions: codes.OnlyNominal}), target: nominal(110),
@@ -273,7 +272,6 @@ func TestRepresentedPermanently(t *testing.T) {
 				"nominal 0-1000 m 40>110 10 +" + fleetAll,
 				"permanent nominal 0-1000 m 100>110 10 -" + fleetAll,
 			},
-			bug: "a change of today that the temporary restriction makes represents the permanent one",
 		},
 	}
 	for _, test := range tests {
@@ -283,5 +281,32 @@ func TestRepresentedPermanently(t *testing.T) {
 			}
 			checkFleetText(t, test.base, test.target, test.trains, test.want)
 		})
+	}
+}
+
+// A temporary restriction may hide what trains in between the two lengths see:
+// then the account without it has no changes of its own, but its own reach.
+func TestFleetReachPermanently(t *testing.T) {
+	rows := func(delayed int) *schema.Route {
+		return fleetRoute(t,
+			fleetRow{from: 0, to: delayed, basic: 60, delay: true, directions: codes.OnlyNominal},
+			fleetRow{from: delayed, to: 400, basic: 60, directions: codes.OnlyNominal},
+			fleetRow{from: 400, to: 1000, basic: 80, directions: codes.OnlyNominal},
+			fleetRow{from: 0, to: 1000, basic: 60, directions: codes.OnlyReverse},
+			fleetRow{from: 500, to: 600, basic: 40, temporary: true, directions: codes.OnlyNominal})
+	}
+	got := ""
+	for _, f := range fleetOf(t, rows(390), rows(380), fleetTrain("a", 30, 160), fleetTrain("b", 300, 160)).Fleet {
+		got += fmt.Sprintf("%s permanent %t: %d changes, reach", f.Direction, f.Permanent, len(f.Changes))
+		for _, r := range f.Reach {
+			got += " " + r.From.M() + "-" + r.To.M()
+		}
+		got += "\n"
+	}
+	want := "nominal permanent false: 2 changes, reach 400-500 600-690\n" +
+		"nominal permanent true: 0 changes, reach 400-690\n" +
+		"reverse permanent false: 0 changes, reach\n"
+	if got != want {
+		t.Errorf("got\n%swant\n%s", got, want)
 	}
 }

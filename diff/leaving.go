@@ -1,7 +1,7 @@
 package diff
 
 import (
-	"speedtrail/diff/rows"
+	"speedtrail/diff/profile"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -13,8 +13,8 @@ import (
 type Leaving struct {
 	Cause
 	Direction codes.Direction
-	Row       *schema.Row // of the target; of the base for a removed row
-	Removed   bool
+	Row       *schema.Row // of the target; of the base where the target has none that reaches beyond
+	OfBase    bool
 	Longest   unit.Distance // length of the longest reference train
 }
 
@@ -34,28 +34,43 @@ func (r *Route) leaving(trains []Train) []Leaving {
 		}
 		for k := range f.Rows {
 			c, d := Cause{i, k}, &f.Rows[k]
-			route, lines := r.Target, linesOf(f.Tables[d.Table].New.Rows, d.New)
-			if d.Kind == rows.Removed {
-				route, lines = r.Base, linesOf(f.Tables[d.Table].Old.Rows, d.Old)
-			}
 			for _, direction := range codes.AllDirections {
-				if !route.Directions.Has(direction) || !r.concerns(c, direction) {
+				if !r.concerns(c, direction) {
 					continue
 				}
-				for _, line := range lines {
-					row := anyRow(route, layer, line)
-					if row == nil || !row.Delay || !row.Directions.Has(direction) {
-						continue
-					}
-					beyond := row.End + longest - route.Track.Length()
-					if direction == codes.Reverse {
-						beyond = longest - row.Start
-					}
-					if beyond > 0 {
-						list = append(list, Leaving{c, direction, row, d.Kind == rows.Removed, longest})
-					}
+				now := beyond(r.Target, layer, linesOf(f.Tables[d.Table].New.Rows, d.New), direction, longest)
+				for _, row := range now {
+					list = append(list, Leaving{c, direction, row, false, longest})
+				}
+				if len(now) > 0 {
+					continue
+				}
+				// A row that reached beyond and does so no more lets go of trains
+				// there.
+				for _, row := range beyond(r.Base, layer, linesOf(f.Tables[d.Table].Old.Rows, d.Old), direction, longest) {
+					list = append(list, Leaving{c, direction, row, true, longest})
 				}
 			}
+		}
+	}
+	return list
+}
+
+// beyond gives the rows with train length delay that a train of a length carries
+// beyond the end of the route.
+func beyond(route *schema.Route, layer profile.Layer, lines []int, d codes.Direction, length unit.Distance) []*schema.Row {
+	var list []*schema.Row
+	for _, line := range lines {
+		row := anyRow(route, layer, line)
+		if row == nil || !row.Delay || !row.Directions.Has(d) || !route.Directions.Has(d) {
+			continue
+		}
+		over := row.End + length - route.Track.Length()
+		if d == codes.Reverse {
+			over = length - row.Start
+		}
+		if over > 0 {
+			list = append(list, row)
 		}
 	}
 	return list

@@ -7,7 +7,9 @@ import (
 	"speedtrail/diff/profile"
 	"speedtrail/diff/rows"
 	"speedtrail/diff/written"
+	"speedtrail/schema"
 	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
 )
 
 // Reason says why no change comes of a difference.
@@ -34,7 +36,7 @@ func (r Reason) String() string {
 		"", "the same values, written otherwise", "only a text differs",
 		"only the validity differs; all temporary restrictions count, whatever their dates",
 		"the rows say the same for every train", "no reference train is of a category that it concerns",
-		"another restriction is lower for every reference train that it concerns",
+		"another restriction is as low or lower for every reference train that it concerns",
 		"hidden today by temporary restrictions on every place that it concerns", "it holds no speed",
 		"it is not part of the track", "no speed depends on it",
 	}[r]
@@ -80,12 +82,31 @@ func (r *Route) explain(trains []Train) {
 	}
 	for i := range r.Files {
 		f := &r.Files[i]
+		layer, speeds := layerOf(f.Path())
 		for k := range f.Rows {
-			if d := &f.Rows[k]; !d.Causes && !d.Track {
+			d := &f.Rows[k]
+			if speeds && !d.Causes && !d.Track && !d.Masks {
+				d.Track = r.onTrack(Added, r.Target, layer, linesOf(f.Tables[d.Table].New.Rows, d.New)) ||
+					r.onTrack(Removed, r.Base, layer, linesOf(f.Tables[d.Table].Old.Rows, d.Old))
+			}
+			if !d.Causes && !d.Track {
 				d.Reason = r.reason(Cause{i, k}, trains)
 			}
 		}
 	}
+}
+
+// onTrack tells whether one of the rows lies on track that only one side has.
+func (r *Route) onTrack(fate Fate, route *schema.Route, layer profile.Layer, lines []int) bool {
+	for _, line := range lines {
+		row := anyRow(route, layer, line)
+		if row != nil && slices.ContainsFunc(r.Track, func(t TrackChange) bool {
+			return t.Fate == fate && t.From < row.End && row.Start < t.To && row.Directions.Has(t.Direction)
+		}) {
+			return true
+		}
+	}
+	return false
 }
 
 func (r *Route) reason(c Cause, trains []Train) Reason {
@@ -110,40 +131,90 @@ func (r *Route) reason(c Cause, trains []Train) Reason {
 	case d.Masks:
 		return HiddenToday
 	}
+	// Differences beside each other can make up for one another, as where a limit
+	// moves between rows of equal speed.
+	cluster := r.cluster(c)
 	for _, t := range trains {
 		for _, direction := range codes.AllDirections {
-			if r.causes.hasEffect(c, direction, profile.ClassOf(t.Train)) {
+			if r.causes.haveEffect(cluster, direction, profile.ClassOf(t.Train)) {
 				return LowerElsewhere
 			}
 		}
 	}
-	if r.concernsSome(c) {
+	if concernsSome(func(d codes.Direction, class profile.Class) bool { return r.causes.haveEffect(cluster, d, class) }) {
 		return NoSuchTrain
 	}
 	return SameForAll
 }
 
-// concernsSome tells whether a difference restricts any train that the standard
-// can describe otherwise than before.
-func (r *Route) concernsSome(c Cause) bool {
-	return r.concerns(c, codes.Nominal) || r.concerns(c, codes.Reverse)
+// cluster gives the differences of a file that overlap or touch, one by one, a
+// given one; that one among them.
+func (r *Route) cluster(c Cause) []Cause {
+	f := &r.Files[c.File]
+	spans := make([][2]unit.Distance, len(f.Rows))
+	for k := range f.Rows {
+		spans[k] = f.chainages(&f.Rows[k])
+	}
+	list := []Cause{c}
+	in := map[int]bool{c.Row: true}
+	for i := 0; i < len(list); i++ {
+		span := spans[list[i].Row]
+		for k := range spans {
+			if !in[k] && spans[k][0] <= span[1] && span[0] <= spans[k][1] {
+				in[k] = true
+				list = append(list, Cause{c.File, k})
+			}
+		}
+	}
+	return list
 }
 
-// concerns tells the same of one direction of travel.
-func (r *Route) concerns(c Cause, direction codes.Direction) bool {
+// chainages gives the lowest and the highest chainage of the rows of a
+// difference.
+func (f *File) chainages(d *RowDifference) (span [2]unit.Distance) {
+	first := true
+	for side, indices := range [...][]int{d.Old, d.New} {
+		for _, i := range indices {
+			row := &[...]*rows.Table{&f.Tables[d.Table].Old, &f.Tables[d.Table].New}[side].Rows[i]
+			low, high := min(row.From.Chainage, row.To.Chainage), max(row.From.Chainage, row.To.Chainage)
+			if first || low < span[0] {
+				span[0] = low
+			}
+			if first || high > span[1] {
+				span[1] = high
+			}
+			first = false
+		}
+	}
+	return span
+}
+
+// concernsSome tells whether something holds for any direction and any class of
+// trains that the standard can describe.
+func concernsSome(holds func(codes.Direction, profile.Class) bool) bool {
+	return concernsIn(codes.Nominal, holds) || concernsIn(codes.Reverse, holds)
+}
+
+func concernsIn(direction codes.Direction, holds func(codes.Direction, profile.Class) bool) bool {
 	for cant := range codes.CantDeficiency(codes.CantDeficiencies) {
 		for set := range codes.CategorySet(codes.CategorySets) {
-			if r.causes.hasEffect(c, direction, profile.Class{Cant: cant, Categories: set}) {
+			if holds(direction, profile.Class{Cant: cant, Categories: set}) {
 				return true
 			}
 		}
 	}
 	for axle := range codes.AxleLoad(codes.AxleLoads) {
-		if r.causes.hasEffect(c, direction, profile.Class{AxleLoad: axle}) {
+		if holds(direction, profile.Class{AxleLoad: axle}) {
 			return true
 		}
 	}
 	return false
+}
+
+// concerns tells whether a difference restricts any train otherwise than before
+// in a direction of travel.
+func (r *Route) concerns(c Cause, direction codes.Direction) bool {
+	return concernsIn(direction, func(d codes.Direction, class profile.Class) bool { return r.causes.hasEffect(c, d, class) })
 }
 
 // sameValues tells whether all cells of a difference mean what they meant.

@@ -8,6 +8,8 @@ import (
 	"speedtrail/diff/align"
 	"speedtrail/diff/delta"
 	"speedtrail/diff/profile"
+	"speedtrail/diff/step"
+	"speedtrail/schema"
 	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -25,7 +27,7 @@ func compareRoute(r *Route, trains []Train, o *Options) {
 	for i := range r.Files {
 		r.Files[i].account(base, target)
 	}
-	r.sources = sourceTable{route: r, seen: map[string]int{}}
+	r.sources = sourceTable{route: r, seen: map[string]int{}, known: map[string]int{}}
 	r.causes = newCauseTable(r)
 	r.pieces = map[string]int{}
 	switch {
@@ -38,11 +40,19 @@ func compareRoute(r *Route, trains []Train, o *Options) {
 		r.Leaving = r.leaving(trains)
 	}
 	r.explain(trains)
+	r.causes = causeTable{} // no longer needed
 }
 
 // compareTracks compares a route that both revisions have.
 func compareTracks(r *Route, trains []Train, o *Options) {
 	tracks := align.Tracks(r.Base.Track, r.Target.Track)
+	for _, c := range tracks.Common {
+		for _, at := range [...]unit.Distance{c.Target, c.Target + c.Length} {
+			if at > 0 && at < r.Target.Track.Length() {
+				r.causes.joints = append(r.causes.joints, at)
+			}
+		}
+	}
 	longest := longestOf(trains)
 	for _, d := range codes.AllDirections {
 		inBase, inTarget := r.Base.Directions.Has(d), r.Target.Directions.Has(d)
@@ -109,6 +119,7 @@ type pair struct {
 type sides struct {
 	base, target *profile.Compiler
 	cells        []align.Cell
+	memory       *[2]step.Func // for profiles, used again
 }
 
 // sight is what a train sees. Trains that no row tells apart share one.
@@ -117,13 +128,15 @@ type sight struct{ changes, masked []delta.Delta }
 func newPair(r *Route, d codes.Direction, tracks *align.Alignment, longest unit.Distance) *pair {
 	p := &pair{route: r, direction: d, cells: tracks.Common, same: tracks.Whole()}
 	p.whole = [2]*profile.Compiler{profile.New(r.Base, d, profile.All), profile.New(r.Target, d, profile.All)}
+	memory := new([2]step.Func)
 	narrow := func(base, target *profile.Compiler) sides {
+		s := sides{base, target, tracks.Common, memory}
 		if !p.same {
-			return sides{base, target, tracks.Common}
+			return s
 		}
-		s := sides{}
 		var near []align.Interval
 		s.base, s.target, near = profile.Narrow(base, target, longest)
+		s.cells = nil
 		for _, i := range near {
 			s.cells = append(s.cells, align.Cell{Base: i.From, Target: i.From, Length: i.To - i.From})
 		}
@@ -205,9 +218,17 @@ func (s sides) compare(before, after profile.Selection, length unit.Distance, ma
 	if len(s.cells) == 0 {
 		return nil
 	}
-	found := delta.Between(s.base.Sweep(before, length, maximum), s.target.Sweep(after, length, maximum), s.cells)
+	sweep := func(length unit.Distance) (b, t step.Func) {
+		m := s.memory
+		m[0] = s.base.AppendSweep(m[0][:0], before, length, maximum)
+		m[1] = s.target.AppendSweep(m[1][:0], after, length, maximum)
+		return m[0], m[1]
+	}
+	b, t := sweep(length)
+	found := delta.Between(b, t, s.cells)
 	if len(found) > 0 {
-		found = delta.MarkRunOut(found, s.base.Sweep(before, 0, maximum), s.target.Sweep(after, 0, maximum))
+		b, t = sweep(0)
+		found = delta.MarkRunOut(found, b, t)
 	}
 	return found
 }
@@ -218,10 +239,10 @@ func (p *pair) change(s sides, before, after profile.Selection, train int, t Tra
 	c := Change{
 		Direction: p.direction, From: d.Target, To: d.Target + d.Length, Train: train,
 		Before: d.Before, After: d.After, RunOut: d.RunOut,
-		BeforeSources: r.sources.index(s.base, before, t, d.Base, d.Length, d.Before),
-		AfterSources:  r.sources.index(s.target, after, t, d.Target, d.Length, d.After),
+		BeforeSources: r.sources.index(r.Base, s.base, before, t, d.Base, d.Length, d.Before),
+		AfterSources:  r.sources.index(r.Target, s.target, after, t, d.Target, d.Length, d.After),
 	}
-	c.Causes = r.causes.of(&c, profile.ClassOf(t.Train))
+	c.Causes = r.causes.of(&c, profile.ClassOf(t.Train), t.Length)
 	return c
 }
 
@@ -239,24 +260,47 @@ func appendKey(key []byte, before, after profile.Selection, length unit.Distance
 // sourceTable keeps each distinct list of governing rows of a route once.
 type sourceTable struct {
 	route *Route
-	seen  map[string]int
+	seen  map[string]int // by the text of the sources
+	known map[string]int // by side, rows and kind of train: quicker to tell
 	key   []byte
+	rows  []int32
 }
 
 // index gives the place in Route.Sources of the rows that give the speed v to
-// the train on a stretch of the compiler's side.
-func (s *sourceTable) index(c *profile.Compiler, sel profile.Selection, t Train, from, length unit.Distance, v unit.Speed) int {
-	rows := c.Governing(sel, t.Length, t.Max, from, from+length, v)
-	key := s.key[:0]
-	for _, row := range rows {
+// the train on a stretch of the side of a compiler.
+func (s *sourceTable) index(side *schema.Route, c *profile.Compiler, sel profile.Selection, t Train, from, length unit.Distance, v unit.Speed) int {
+	s.rows = c.AppendGoverning(s.rows[:0], sel, t.Length, t.Max, from, from+length, v)
+	class := profile.ClassOf(t.Train)
+	quick := append(s.key[:0], byte(class.Cant), byte(class.Categories), byte(class.AxleLoad), 0)
+	if side == s.route.Base {
+		quick[3] = 1
+	}
+	for _, row := range s.rows {
+		quick = c.AppendRowKey(quick, row)
+		if row == profile.TrainRow {
+			quick = append(quick, t.ID...)
+		}
+	}
+	s.key = quick
+	if i, ok := s.known[string(quick)]; ok {
+		return i
+	}
+	i := s.find(c, t)
+	s.known[string(quick)] = i
+	return i
+}
+
+// find gives the place of the list by what it says.
+func (s *sourceTable) find(c *profile.Compiler, t Train) int {
+	var key []byte
+	for _, row := range s.rows {
 		key = c.AppendSourceKey(key, row, t.Train)
 	}
-	s.key = key
 	if i, ok := s.seen[string(key)]; ok {
 		return i
 	}
-	list := make([]profile.Source, len(rows))
-	for i, row := range rows {
+	list := make([]profile.Source, len(s.rows))
+	for i, row := range s.rows {
 		list[i] = c.Source(row, t.Train)
 	}
 	i := len(s.route.Sources)

@@ -19,7 +19,7 @@ import (
 type File struct {
 	Base, Target string // paths, empty for a file that one side does not have
 	Old, Now     []byte
-	Tables       []written.Table
+	Tables       []written.Table // with the rows only that Rows names
 	Rows         []RowDifference
 	Note         Note
 }
@@ -159,6 +159,49 @@ func (f *File) account(base, target *chainage.Track) {
 		f.Note = OnlyForm
 		if bytes.Equal(plainBytes(f.Old), plainBytes(f.Now)) {
 			f.Note = OnlyBytes
+		}
+	}
+	f.forget()
+}
+
+// forget drops the rows of the tables that are in no difference, which are most
+// of them and which nobody asks for.
+func (f *File) forget() {
+	kept := make([][2][]int, len(f.Tables)) // of each table and side, where a row now stands
+	for i := range f.Tables {
+		kept[i] = [2][]int{make([]int, len(f.Tables[i].Old.Rows)), make([]int, len(f.Tables[i].New.Rows))}
+	}
+	for i := range f.Rows {
+		d := &f.Rows[i]
+		for side, list := range [...][]int{d.Old, d.New} {
+			for _, n := range list {
+				kept[d.Table][side][n] = 1
+			}
+		}
+	}
+	for i := range f.Tables {
+		for side, t := range [...]*rows.Table{&f.Tables[i].Old, &f.Tables[i].New} {
+			var list []rows.Row
+			for n, wanted := range kept[i][side] {
+				if wanted == 1 {
+					kept[i][side][n] = len(list)
+					list = append(list, t.Rows[n])
+				}
+			}
+			t.Rows = list
+		}
+	}
+	for i := range f.Rows {
+		d := &f.Rows[i]
+		old, now := kept[d.Table][0], kept[d.Table][1]
+		for k, n := range d.Old {
+			d.Old[k] = old[n]
+		}
+		for k, n := range d.New {
+			d.New[k] = now[n]
+		}
+		for k, c := range d.Cells {
+			d.Cells[k].Old, d.Cells[k].New = old[c.Old], now[c.New]
 		}
 	}
 }

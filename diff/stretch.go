@@ -8,6 +8,7 @@ import (
 	"speedtrail/diff/align"
 	"speedtrail/diff/profile"
 	"speedtrail/diff/step"
+	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
@@ -47,7 +48,7 @@ type Step struct {
 // StretchLimit of them by size of the largest step.
 func (a *Account) describeStretches() {
 	perRoute := make([][]Stretch, len(a.Routes))
-	sideBySide(len(a.Routes), func(i int) { perRoute[i] = a.Routes[i].clusters(i) })
+	sideBySide(len(a.Routes), func(i int) { perRoute[i] = a.Routes[i].clusters(i, len(a.Trains)) })
 	all := slices.Concat(perRoute...)
 	if len(all) > StretchLimit {
 		a.StretchesLeftOut = len(all) - StretchLimit
@@ -63,6 +64,9 @@ func (a *Account) describeStretches() {
 	lists := make([][]Stretch, len(starts)-1)
 	sideBySide(len(lists), func(i int) { lists[i] = a.pictures(all[starts[i]:starts[i+1]]) })
 	a.Stretches = slices.Concat(lists...)
+	for i := range a.Routes {
+		a.Routes[i].sources, a.Routes[i].pieces = sourceTable{}, nil // no longer needed
+	}
 }
 
 // largest gives the StretchLimit stretches with the largest steps, in the order
@@ -93,27 +97,27 @@ func (a *Account) largestStep(s *Stretch) unit.Speed {
 
 // clusters groups the changes of a route by nearness, and the trains whose
 // changes there are equal.
-func (r *Route) clusters(route int) []Stretch {
-	type place struct {
-		direction codes.Direction
-		train     int
+func (r *Route) clusters(route, trains int) []Stretch {
+	// The changes of each direction and train, in one list cut into pieces.
+	perTrain := make([][]int, 2*trains)
+	counts := make([]int, len(perTrain))
+	at := func(c *Change) int { return int(c.Direction)*trains + c.Train }
+	for i := range r.Changes {
+		counts[at(&r.Changes[i])]++
 	}
-	perTrain := map[place][]int{}
-	var order []place
-	for i, c := range r.Changes {
-		p := place{c.Direction, c.Train}
-		if perTrain[p] == nil {
-			order = append(order, p)
-		}
-		perTrain[p] = append(perTrain[p], i)
+	rest := make([]int, len(r.Changes))
+	for i, n := range counts {
+		perTrain[i], rest = rest[:0:n], rest[n:]
 	}
-	slices.SortFunc(order, func(a, b place) int {
-		return cmp.Or(cmp.Compare(a.direction, b.direction), cmp.Compare(a.train, b.train))
-	})
+	for i := range r.Changes {
+		k := at(&r.Changes[i])
+		perTrain[k] = append(perTrain[k], i)
+	}
 	var found []Stretch
 	seen := map[string]int{}
-	for _, p := range order {
-		changes := perTrain[p]
+	var key []byte
+	for place, changes := range perTrain {
+		direction, train := codes.Direction(place/trains), place%trains
 		for len(changes) > 0 {
 			n := 1
 			for n < len(changes) && r.Changes[changes[n]].From-r.Changes[changes[n-1]].To < joinGap {
@@ -121,14 +125,14 @@ func (r *Route) clusters(route int) []Stretch {
 			}
 			cluster := changes[:n:n]
 			changes = changes[n:]
-			key := string(r.clusterKey(cluster))
-			if i, ok := seen[key]; ok {
-				found[i].Trains = append(found[i].Trains, p.train)
+			key = r.appendClusterKey(key[:0], cluster)
+			if i, ok := seen[string(key)]; ok {
+				found[i].Trains = append(found[i].Trains, train)
 				continue
 			}
-			seen[key] = len(found)
+			seen[string(key)] = len(found)
 			s := Stretch{
-				Route: route, Direction: p.direction, Trains: []int{p.train}, Changes: cluster,
+				Route: route, Direction: direction, Trains: []int{train}, Changes: cluster,
 				From: r.Changes[cluster[0]].From, To: r.Changes[cluster[n-1]].To,
 			}
 			margin := max((s.To-s.From)/2, leastMargin)
@@ -143,9 +147,8 @@ func (r *Route) clusters(route int) []Stretch {
 	return found
 }
 
-// clusterKey writes the changes of a cluster without their train.
-func (r *Route) clusterKey(cluster []int) []byte {
-	var key []byte
+// appendClusterKey writes the changes of a cluster without their train.
+func (r *Route) appendClusterKey(key []byte, cluster []int) []byte {
 	for _, i := range cluster {
 		c := &r.Changes[i]
 		runOut := int64(0)
@@ -200,7 +203,7 @@ func (a *Account) split(s Stretch, whole *[2]*profile.Compiler, cells []align.Ce
 	seen := map[string]int{}
 	for _, i := range s.Trains {
 		t := a.Trains[i]
-		before, after := r.steps(base, t, near[0]), r.steps(target, t, near[1])
+		before, after := r.steps(r.Base, base, t, near[0]), r.steps(r.Target, target, t, near[1])
 		var key []byte
 		for _, steps := range [...][]Step{before, after} {
 			for _, p := range steps {
@@ -236,7 +239,7 @@ func (r *Route) changesOf(s Stretch, train int) []int {
 
 // steps cuts the profile of one side to cells, and lays it on the target's
 // track.
-func (r *Route) steps(c *profile.Compiler, t Train, cells []align.Cell) []Step {
+func (r *Route) steps(side *schema.Route, c *profile.Compiler, t Train, cells []align.Cell) []Step {
 	sel := c.Select(profile.ClassOf(t.Train))
 	f := c.Sweep(sel, t.Length, t.Max)
 	var steps []Step
@@ -247,7 +250,7 @@ func (r *Route) steps(c *profile.Compiler, t Train, cells []align.Cell) []Step {
 			p := cur.Piece()
 			end := min(cell.Length, p.To-cell.Base)
 			piece := step.Piece{From: cell.Target + from, To: cell.Target + end, Speed: p.Speed}
-			steps = append(steps, Step{piece, r.sources.index(c, sel, t, cell.Base+from, end-from, p.Speed)})
+			steps = append(steps, Step{piece, r.sources.index(side, c, sel, t, cell.Base+from, end-from, p.Speed)})
 			from = end
 		}
 	}

@@ -235,6 +235,7 @@ func (r *reader) requests(d *Dataset) {
 	for _, e := range entries {
 		p := requestsDir + "/" + e.Name()
 		switch {
+		case r.badName(e, p):
 		case e.IsDir():
 			r.noDataBelow(p, 1)
 			continue

@@ -29,6 +29,7 @@ func (r *reader) route(folder string) *Route {
 	for _, e := range entries {
 		p := folder + "/" + e.Name()
 		switch {
+		case r.badName(e, p):
 		case e.IsDir():
 			if slices.Contains(routeFiles, e.Name()) {
 				checkType(&r.faults, e, p, false)
@@ -72,6 +73,7 @@ func (r *reader) noDataBelow(dir string, depth int) {
 	for _, e := range entries {
 		p := dir + "/" + e.Name()
 		switch {
+		case r.badName(e, p):
 		case e.IsDir() && depth < maxDepth:
 			r.noDataBelow(p, depth+1)
 		case e.IsDir():
@@ -80,6 +82,17 @@ func (r *reader) noDataBelow(dir string, depth int) {
 			r.faults.Add(source.Position{File: p}, "a table or TOML file in a folder where none is read, it would hide data")
 		}
 	}
+}
+
+// badName records a folder, table or TOML file whose name cannot be written in a
+// report. Other files are left alone.
+func (r *reader) badName(e fs.DirEntry, p string) bool {
+	problem := table.TextProblem(e.Name())
+	if problem == "" || !e.IsDir() && !isData(e.Name()) {
+		return false
+	}
+	r.faults.Add(source.Position{File: p}, "the name is %s", problem)
+	return true
 }
 
 var routeID = regexp.MustCompile(`^[A-Za-z0-9._-]{1,100}$`)

@@ -5,6 +5,8 @@ import (
 	"errors"
 	"io"
 	"path/filepath"
+	"runtime/debug"
+	"time"
 
 	"github.com/spf13/cobra"
 
@@ -115,7 +117,10 @@ func (a *app) trace(ctx context.Context, call traceCall) error {
 	if err := t.choose(data); err != nil {
 		return err
 	}
-	if t.doc.Revision = (render.TraceRevision{Commit: newest.Hash, Typed: validText(call.rev)}); call.at != "" {
+	t.doc.Revision = render.TraceRevision{
+		Commit: newest.Hash, Committed: newest.Committer.When.UTC().Format(time.RFC3339), Typed: validText(call.rev),
+	}
+	if call.at != "" {
 		err = t.point()
 	} else {
 		err = t.stretch()
@@ -167,8 +172,12 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 			return nil, index.ErrForeign
 		}
 	}
+	// A question takes some milliseconds and little memory, of which collecting
+	// garbage would be a third.
+	normal := debug.SetGCPercent(400)
 	x, err := index.Open(ctx, file)
 	if err != nil {
+		debug.SetGCPercent(normal)
 		return nil, err
 	}
 	defer x.Close()
@@ -176,6 +185,7 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 	if err != nil || found {
 		return h, err
 	}
+	debug.SetGCPercent(normal)
 	if err := x.Update(ctx, reader, folder, tip, a.progress("indexing the history")); err != nil {
 		return nil, err
 	}
@@ -202,7 +212,7 @@ func (a *app) newestOf(ctx context.Context, repo *revision.Repo, folder string, 
 		route, err := routeOf(data, call.route)
 		return data, route, err
 	}
-	data, err := trace.Newest(ctx, repo, folder, hash, h.Newest().Folder)
+	data, err := trace.Newest(ctx, repo, folder, hash, h.Newest().Folder, call.at == "")
 	if err != nil {
 		return nil, nil, &sideError{call.rev, err}
 	}

@@ -26,15 +26,28 @@ func (c *check) delays() {
 		over := func(row *schema.Row) bool {
 			return !row.Delay && row.Start < max(bridge.End, bridge.Start+1) && bridge.Start < row.End
 		}
-		for k := range c.route.AxleLoad {
-			if row := &c.route.AxleLoad[k].Row; over(row) {
-				c.add(DelayOverBridge, row, fmt.Sprintf("the axle load restriction over %s ends for the front of a train, whose rear is still on the bridge", bridge.Name))
+		// near gives the directions in which the rear of the longest train can
+		// still be on the bridge when its front leaves the row.
+		near := func(row *schema.Row) (set codes.Directions) {
+			if row.Directions.Has(codes.Nominal) && row.End-bridge.End < longest {
+				set |= codes.OnlyNominal
+			}
+			if row.Directions.Has(codes.Reverse) && bridge.Start-row.Start < longest {
+				set |= codes.OnlyReverse
+			}
+			return set & c.route.Directions
+		}
+		structure := func(row *schema.Row, what string) {
+			if set := near(row); over(row) && set != 0 {
+				c.list = append(c.list, Doubt{DelayOverBridge, set, row.Start, row.End, row.Pos, fmt.Sprintf(
+					"%s over %s ends for the front of a train whose rear can still be on the bridge", what, bridge.Name)})
 			}
 		}
+		for k := range c.route.AxleLoad {
+			structure(&c.route.AxleLoad[k].Row, "the axle load restriction")
+		}
 		for k := range c.route.Temporary {
-			if row := &c.route.Temporary[k].Row; over(row) {
-				c.add(DelayOverBridge, row, fmt.Sprintf("%s over %s ends for the front of a train, whose rear is still on the bridge", c.route.Temporary[k].ID, bridge.Name))
-			}
+			structure(&c.route.Temporary[k].Row, c.route.Temporary[k].ID)
 		}
 		for k := range c.route.Speed {
 			row := &c.route.Speed[k]
@@ -42,12 +55,8 @@ func (c *check) delays() {
 				continue
 			}
 			for _, d := range codes.AllDirections {
-				end, rear := row.End-bridge.End, bridge.End
-				if d == codes.Reverse {
-					end, rear = bridge.Start-row.Start, bridge.Start
-				}
-				if row.Directions.Has(d) && end < longest && c.risesAfter(row, d) > 0 {
-					c.list = append(c.list, Doubt{DelayOverBridge, 1 << d, min(rear, row.Start), max(rear, row.End), row.Pos, fmt.Sprintf(
+				if near(&row.Row).Has(d) && c.risesAfter(row, d) > 0 {
+					c.list = append(c.list, Doubt{DelayOverBridge, 1 << d, row.Start, row.End, row.Pos, fmt.Sprintf(
 						"the speed rises for the front of a train whose rear can still be on %s", bridge.Name)})
 				}
 			}
@@ -128,11 +137,11 @@ func (c *check) steps() {
 						low, high = high, low
 					}
 					if limit := c.limits.LargestStep; limit > 0 && high.Speed-low.Speed > limit {
-						note(&steps, seenBy{from: p.From, to: p.From, row: low.Sources[0].Pos, text: fmt.Sprintf("%d and %d km/h meet, a step of more than %d", pieces[i-1].Speed, p.Speed, limit)}, d, t.ID)
+						note(&steps, seenBy{from: p.From, to: p.From, row: c.rowAt(low, d), text: fmt.Sprintf("%d and %d km/h meet, a step of more than %d", pieces[i-1].Speed, p.Speed, limit)}, d, t.ID)
 					}
 				}
 				if limit := c.limits.ShortestStretch; i > 0 && i < len(pieces)-1 && p.To-p.From < limit {
-					note(&short, seenBy{from: p.From, to: p.To, row: p.Sources[0].Pos, text: fmt.Sprintf("%d km/h holds for %s m only, below the %s m of dataset.toml", p.Speed, (p.To - p.From).M(), limit.M())}, d, t.ID)
+					note(&short, seenBy{from: p.From, to: p.To, row: c.rowAt(p, d), text: fmt.Sprintf("%d km/h holds for %s m only, below the %s m of dataset.toml", p.Speed, (p.To - p.From).M(), limit.M())}, d, t.ID)
 				}
 			}
 		}
@@ -142,6 +151,20 @@ func (c *check) steps() {
 			c.list = append(c.list, Doubt{id, s.directions, s.from, s.to, s.row, s.text + " (" + strings.Join(s.trains, ", ") + ")"})
 		}
 	}
+}
+
+// rowAt gives the row that a piece of a profile is known by: the first that
+// governs, or where the train's own maximum speed does, the row of speed.csv.
+func (c *check) rowAt(p profile.Governed, d codes.Direction) source.Position {
+	if p.Sources[0].Layer != profile.TrainSpeed {
+		return p.Sources[0].Pos
+	}
+	for i := range c.route.Speed {
+		if row := &c.route.Speed[i]; row.Directions.Has(d) && row.Start <= p.From && p.From < row.End {
+			return row.Pos
+		}
+	}
+	return p.Sources[0].Pos
 }
 
 // crossings looks for approaches that are shorter than their warning time for

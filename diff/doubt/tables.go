@@ -5,6 +5,7 @@ import (
 	"strings"
 
 	"speedtrail/diff/impact"
+	"speedtrail/diff/profile"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -27,7 +28,9 @@ func (c *check) speedRows() {
 			if v < last {
 				c.add(CategoryOrder, &row.Row, fmt.Sprintf("%s is %d km/h, below the %d km/h of %s", k.Column(), v, last, name))
 			}
-			last, name = v, k.Column()
+			if v > last {
+				last, name = v, k.Column()
+			}
 		}
 	}
 }
@@ -119,12 +122,10 @@ func (c *check) highest(row *schema.Row) (highest unit.Speed) {
 		if s.Start >= row.End || row.Start >= s.End || s.Directions&row.Directions == 0 {
 			continue
 		}
-		highest = max(highest, s.Basic)
-		for _, v := range s.Cant {
-			highest = max(highest, v)
-		}
-		for _, v := range s.Other {
-			highest = max(highest, v)
+		for cant := range codes.CantDeficiency(codes.CantDeficiencies) {
+			for set := range codes.CategorySet(codes.CategorySets) {
+				highest = max(highest, profile.StaticSpeedOf(s, profile.Class{Cant: cant, Categories: set}))
+			}
 		}
 	}
 	return highest
@@ -151,17 +152,12 @@ func (c *check) curves() {
 						impact.SpeedForCantDeficiency(curve.RadiusM, curve.CantMM, cat.MM()))})
 				}
 			}
-			if slowest == 0 || row.Basic < slowest {
-				slowest = row.Basic
-			}
-			for _, v := range row.Other {
-				if v != 0 {
-					slowest = min(slowest, v)
+			for _, t := range c.trains {
+				v := min(profile.StaticSpeedOf(row, profile.ClassOf(t)), t.Max)
+				if slowest == 0 || v < slowest {
+					slowest = v
 				}
 			}
-		}
-		for _, t := range c.trains {
-			slowest = min(slowest, t.Max)
 		}
 		if limit := c.limits.CantExcessMM; limit > 0 && slowest > 0 && impact.CantExcessAbove(slowest, curve.RadiusM, curve.CantMM, limit) {
 			c.add(CantExcess, &curve.Row, fmt.Sprintf("at %d km/h, the lowest line speed of a reference train, the cant of %d mm on %d m is an excess of %s mm; the limit of dataset.toml is %d",

@@ -16,6 +16,7 @@ import (
 	"speedtrail/diff/align"
 	"speedtrail/diff/delta"
 	"speedtrail/diff/profile"
+	"speedtrail/diff/step"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -67,6 +68,7 @@ type pair struct {
 	cells        []align.Cell
 	direction    codes.Direction
 	kinds        []kind
+	memory       [2]step.Func // for profiles, used again
 }
 
 // kind is a set of classes that every row of both sides treats alike.
@@ -125,13 +127,21 @@ func (p *pair) distinguish() {
 func (p *pair) changes(length unit.Distance) []Change {
 	sets := map[delta.Delta]*classSet{}
 	var order []delta.Delta
+	sweep := func(k *kind, length unit.Distance) (b, t step.Func) {
+		m := &p.memory
+		m[0] = p.base.AppendSweep(m[0][:0], k.before, length, profile.NoMaximum)
+		m[1] = p.target.AppendSweep(m[1][:0], k.after, length, profile.NoMaximum)
+		return m[0], m[1]
+	}
 	for i := range p.kinds {
 		k := &p.kinds[i]
-		found := delta.Between(p.base.Sweep(k.before, length, profile.NoMaximum), p.target.Sweep(k.after, length, profile.NoMaximum), p.cells)
+		b, t := sweep(k, length)
+		found := delta.Between(b, t, p.cells)
 		if len(found) == 0 {
 			continue
 		}
-		found = delta.MarkRunOut(found, p.base.Sweep(k.before, 0, profile.NoMaximum), p.target.Sweep(k.after, 0, profile.NoMaximum))
+		b, t = sweep(k, 0)
+		found = delta.MarkRunOut(found, b, t)
 		for _, d := range found {
 			set := sets[d]
 			if set == nil {

@@ -128,7 +128,7 @@ func seenBy(r Result, c profile.Class, length unit.Distance) []delta.Delta {
 // sees that is compiled by itself, with and without temporary restrictions.
 func TestChangesAreThoseOfEveryClass(t *testing.T) {
 	several, overlapping, shared := 0, 0, 0
-	check(t, 250, func(t *rapid.T) {
+	check(t, 100, func(t *rapid.T) {
 		w := draw(t, 0)
 		short, long := unit.Distance(w.dice(1, 8))*w.grid, unit.Distance(w.dice(9, 25))*w.grid
 		filter := [...]profile.Filter{profile.All, profile.NoTemporary}[w.dice(0, 1)]

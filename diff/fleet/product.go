@@ -3,6 +3,7 @@ package fleet
 import (
 	"fmt"
 	"math/bits"
+	"slices"
 	"strings"
 
 	"speedtrail/diff/profile"
@@ -106,6 +107,10 @@ func setWords(mask uint8) string {
 	var words []string
 	for _, c := range conditions(mask) {
 		words = append(words, c.String())
+	}
+	// A condition with a comma in it would run into the next one.
+	if slices.ContainsFunc(words, func(w string) bool { return strings.Contains(w, ", ") }) {
+		return strings.Join(words, "; or ")
 	}
 	return strings.Join(words, " or ")
 }

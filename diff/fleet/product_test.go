@@ -140,7 +140,11 @@ func readSets(text string) (mask uint8) {
 	if text == "any other category" {
 		return 255
 	}
-	for _, alternative := range strings.Split(text, " or ") {
+	between := " or "
+	if strings.Contains(text, "; or ") {
+		between = "; or "
+	}
+	for _, alternative := range strings.Split(text, between) {
 		for set := range 8 {
 			if meets(set, alternative) {
 				mask |= 1 << set

@@ -20,15 +20,19 @@ import (
 // Between two such ends all lengths see the same, so that trying one length in
 // each part tries them all.
 func (p *pair) reach(longest unit.Distance) []align.Interval {
+	straight := !slices.ContainsFunc(p.cells, func(c align.Cell) bool { return c.Base != c.Target })
 	var found []align.Interval
 	for i := range p.kinds {
 		k := &p.kinds[i]
 		before, after := p.base.Bounds(k.before), p.target.Bounds(k.after)
+		if straight && slices.Equal(before, after) {
+			continue
+		}
 		for _, cell := range p.cells {
-			found = append(found, cellReach(p.view(before, cell, cell.Base), p.view(after, cell, cell.Target), cell.Length, longest, p.place(cell))...)
+			found = append(found, p.cellReach(p.view(before, cell, cell.Base), p.view(after, cell, cell.Target), cell, longest)...)
 		}
 	}
-	return union(found)
+	return align.Union(found)
 }
 
 // view shifts rows so that the cell begins at 0, and turns them round for the
@@ -46,26 +50,24 @@ func (p *pair) view(rows []profile.Bound, cell align.Cell, start unit.Distance) 
 }
 
 // place gives the way back from a view to the target's track.
-func (p *pair) place(cell align.Cell) func(from, to unit.Distance) align.Interval {
-	return func(from, to unit.Distance) align.Interval {
-		if p.direction == codes.Reverse {
-			from, to = cell.Length-to, cell.Length-from
-		}
-		return align.Interval{From: cell.Target + from, To: cell.Target + to}
+func (p *pair) place(cell align.Cell, from, to unit.Distance) align.Interval {
+	if p.direction == codes.Reverse {
+		from, to = cell.Length-to, cell.Length-from
 	}
+	return align.Interval{From: cell.Target + from, To: cell.Target + to}
 }
 
-// cellReach finds the reach within one cell, 0 to length.
-func cellReach(before, after []profile.Bound, length, longest unit.Distance, place func(from, to unit.Distance) align.Interval) []align.Interval {
-	zone := differing(before, after, longest)
+// cellReach finds the reach within one cell, of which the rows are views.
+func (p *pair) cellReach(before, after []profile.Bound, cell align.Cell, longest unit.Distance) []align.Interval {
+	zone := differing(before, after, p.direction, longest)
 	if len(zone) == 0 {
 		return nil
 	}
-	cuts := []unit.Distance{0, length}
+	cuts := []unit.Distance{0, cell.Length}
 	for _, rows := range [...][]profile.Bound{before, after} {
 		for _, r := range rows {
 			for _, s := range [...]unit.Distance{r.Start, r.End} {
-				if s > 0 && s < length {
+				if s > 0 && s < cell.Length {
 					cuts = append(cuts, s)
 				}
 			}
@@ -81,7 +83,7 @@ func cellReach(before, after []profile.Bound, length, longest unit.Distance, pla
 			continue
 		}
 		if end := seenUntil(before, after, behindBefore, behindAfter, from, to, longest); end > from {
-			found = append(found, place(from, end))
+			found = append(found, p.place(cell, from, end))
 		}
 	}
 	return found
@@ -154,26 +156,49 @@ func byEnd(rows []profile.Bound) []profile.Bound {
 }
 
 // differing lists where rows that only one side has can hold for a train up to
-// the longest. Elsewhere both sides have the same rows, and the same speeds.
-func differing(before, after []profile.Bound, longest unit.Distance) []align.Interval {
-	count := map[profile.Bound]int{}
-	for _, r := range before {
-		count[r]++
-	}
-	for _, r := range after {
-		count[r]--
+// the longest. Elsewhere both sides have the same rows, and the same speeds. Rows
+// of one place that stand in another order count as differing, which is only
+// more than is needed.
+func differing(before, after []profile.Bound, d codes.Direction, longest unit.Distance) []align.Interval {
+	// The order of the compilers, which view has turned round.
+	compare := func(a, b profile.Bound) int {
+		if d == codes.Reverse {
+			return cmp.Or(cmp.Compare(b.End, a.End), cmp.Compare(b.Start, a.Start))
+		}
+		return cmp.Or(cmp.Compare(a.Start, b.Start), cmp.Compare(a.End, b.End))
 	}
 	var zone []align.Interval
-	for r, n := range count {
-		if n == 0 {
-			continue
-		}
+	add := func(r profile.Bound) {
 		if r.Delay {
 			r.End += longest
 		}
 		zone = append(zone, align.Interval{From: r.Start, To: r.End})
 	}
-	return union(zone)
+	for len(before)+len(after) > 0 {
+		order := 0
+		switch {
+		case len(before) == 0:
+			order = 1
+		case len(after) == 0:
+			order = -1
+		default:
+			order = compare(before[0], after[0])
+		}
+		equal := order == 0 && before[0] == after[0]
+		if order <= 0 {
+			if !equal {
+				add(before[0])
+			}
+			before = before[1:]
+		}
+		if order >= 0 {
+			if !equal {
+				add(after[0])
+			}
+			after = after[1:]
+		}
+	}
+	return align.Union(zone)
 }
 
 func touches(zone []align.Interval, from, to unit.Distance) bool {
@@ -183,18 +208,4 @@ func touches(zone []align.Interval, from, to unit.Distance) bool {
 		}
 	}
 	return false
-}
-
-// union joins intervals that overlap or touch, in order.
-func union(list []align.Interval) []align.Interval {
-	slices.SortFunc(list, func(a, b align.Interval) int { return cmp.Or(cmp.Compare(a.From, b.From), cmp.Compare(a.To, b.To)) })
-	var out []align.Interval
-	for _, i := range list {
-		if n := len(out); n > 0 && i.From <= out[n-1].To {
-			out[n-1].To = max(out[n-1].To, i.To)
-			continue
-		}
-		out = append(out, i)
-	}
-	return out
 }

@@ -261,8 +261,8 @@ func TestReachIsThatOfEveryLength(t *testing.T) {
 		most   int // half metres of the longest train
 		least  int // draws in which only lengths in between see a point
 	}{
-		{"ladders", 500, ladder, 24, 30},
-		{"sketches", 60, func(t *rapid.T) drawn { return draw(t, unit.Metre) }, 16, 0},
+		{"ladders", 150, ladder, 24, 10},
+		{"sketches", 25, func(t *rapid.T) drawn { return draw(t, unit.Metre) }, 16, 0},
 	} {
 		t.Run(test.name, func(t *testing.T) {
 			between, some := 0, 0

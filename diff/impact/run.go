@@ -8,6 +8,7 @@ package impact
 
 import (
 	"math"
+	"slices"
 
 	"speedtrail/diff/step"
 	"speedtrail/schema/unit"
@@ -35,12 +36,20 @@ type Run struct {
 	// edges[i] is the speed in mm/s at the beginning of piece i, and the last
 	// one that at the end of the profile.
 	edges []float64
-	// reached[i] is the time in seconds at the beginning of piece i.
-	reached []float64
+	// reached[i] is the time in seconds at the beginning of piece i, and
+	// times[i] that over it.
+	reached, times []float64
 }
 
 // mmps gives a speed in mm/s: 1 km/h = 2500/9 mm/s.
-func mmps(v unit.Speed) float64 { return float64(v) * 2500 / 9 }
+func mmps(v unit.Speed) float64 { return inMMPS[v] }
+
+var inMMPS = func() (table [unit.MaxSpeed + 1]float64) {
+	for v := range table {
+		table[v] = float64(v) * 2500 / 9
+	}
+	return table
+}()
 
 // Products that are added stand in float64(...): Go then rounds each on its own
 // and fuses none, so that every processor computes the same.
@@ -48,9 +57,20 @@ func mmps(v unit.Speed) float64 { return float64(v) * 2500 / 9 }
 // NewRun computes the run. The profile must be in the order of travel: for the
 // reverse direction, give it Mirrored.
 func NewRun(f step.Func, m Motion) *Run {
-	r := &Run{profile: f, motion: m, edges: make([]float64, len(f)+1), reached: make([]float64, len(f)+1)}
-	a, b := float64(m.Acceleration), float64(m.Braking)
+	r := &Run{}
+	r.Compute(f, m, nil)
+	return r
+}
+
+// Compute makes r the run of NewRun and uses its memory again. like, if given,
+// is a run by the same motion whose times are taken over for the pieces at the
+// beginning and at the end that are run in the same way. r holds on to f.
+func (r *Run) Compute(f step.Func, m Motion, like *Run) {
 	n := len(f)
+	r.profile, r.motion = f, m
+	r.edges, r.reached, r.times = again(r.edges, n+1), again(r.reached, n+1), again(r.times, n)
+	a, b := float64(m.Acceleration), float64(m.Braking)
+	r.edges[0], r.edges[n], r.reached[0] = 0, 0, 0
 	if m.Rolling {
 		r.edges[0], r.edges[n] = mmps(f[0].Speed), mmps(f[n-1].Speed)
 	}
@@ -58,22 +78,59 @@ func NewRun(f step.Func, m Motion) *Run {
 		r.edges[i] = mmps(min(f[i-1].Speed, f[i].Speed))
 	}
 	for i, p := range f {
-		r.edges[i+1] = min(r.edges[i+1], after(r.edges[i], a, float64(p.To-p.From)))
+		r.edges[i+1] = lesser(r.edges[i+1], squareAfter(r.edges[i], a, float64(p.To-p.From)))
 	}
 	for i := n - 1; i >= 0; i-- {
-		r.edges[i] = min(r.edges[i], after(r.edges[i+1], b, float64(f[i].To-f[i].From)))
+		r.edges[i] = lesser(r.edges[i], squareAfter(r.edges[i+1], b, float64(f[i].To-f[i].From)))
 	}
-	for i := range f {
-		t, _ := r.piece(i).time()
+	from, to := r.takeOver(like)
+	for i := from; i < to; i++ {
+		r.times[i], _ = r.piece(i).time()
+	}
+	for i, t := range r.times {
 		r.reached[i+1] = r.reached[i] + t
 	}
-	return r
 }
+
+// takeOver takes times from another run and gives the pieces that are left.
+func (r *Run) takeOver(like *Run) (from, to int) {
+	to = len(r.profile)
+	if like == nil || like.motion != r.motion {
+		return from, to
+	}
+	same := func(i, k int) bool {
+		return r.profile[i] == like.profile[k] && r.edges[i] == like.edges[k] && r.edges[i+1] == like.edges[k+1]
+	}
+	for from < min(to, len(like.profile)) && same(from, from) {
+		r.times[from] = like.times[from]
+		from++
+	}
+	for k := len(like.profile); to > from && k > 0 && same(to-1, k-1); k-- {
+		to--
+		r.times[to] = like.times[k-1]
+	}
+	return from, to
+}
+
+// again gives a list of n numbers in memory that may be used again.
+func again(list []float64, n int) []float64 { return slices.Grow(list[:0], n)[:n] }
 
 // after is the speed that a train of speed v reaches with a constant rate over
 // a distance.
-func after(v, rate, distance float64) float64 {
-	return math.Sqrt(float64(v*v) + float64(2*rate*distance))
+func after(v, rate, distance float64) float64 { return math.Sqrt(squareAfter(v, rate, distance)) }
+
+func squareAfter(v, rate, distance float64) float64 {
+	return float64(v*v) + float64(2*rate*distance)
+}
+
+// lesser is min(limit, math.Sqrt(square)), and spares most of the roots: the root
+// of a number's rounded square is that number, and roots keep the order. (That
+// holds for all but numbers next to nothing, which no speed of a run is.)
+func lesser(limit, square float64) float64 {
+	if square >= float64(limit*limit) {
+		return limit
+	}
+	return math.Sqrt(square)
 }
 
 // phase is the run over one piece: from speed in to speed out, never above top,
@@ -88,7 +145,7 @@ func (r *Run) piece(i int) phase {
 // peak is the highest speed in the piece.
 func (p phase) peak() float64 {
 	square := (float64(2*p.a*p.b*p.length) + float64(p.b*p.in*p.in) + float64(p.a*p.out*p.out)) / (p.a + p.b)
-	return min(p.top, math.Sqrt(square))
+	return lesser(p.top, square)
 }
 
 // time gives the time over the piece and the highest speed in it.
@@ -150,13 +207,19 @@ func (r *Run) Peak(s unit.Distance) (mmPerSecond int64, needed unit.Distance) {
 // Mirrored turns a profile round, for a run against the running distance. The
 // piece that ends at the length of the track then begins at 0.
 func Mirrored(f step.Func) step.Func {
+	out := slices.Clone(f)
+	Mirror(out)
+	return out
+}
+
+// Mirror turns a profile round in place.
+func Mirror(f step.Func) {
 	if len(f) == 0 {
-		return nil
+		return
 	}
 	length := f[len(f)-1].To
-	out := make(step.Func, len(f))
+	slices.Reverse(f)
 	for i, p := range f {
-		out[len(f)-1-i] = step.Piece{From: length - p.To, To: length - p.From, Speed: p.Speed}
+		f[i].From, f[i].To = length-p.To, length-p.From
 	}
-	return out
 }

@@ -27,11 +27,18 @@ type Compiler struct {
 	route     *schema.Route
 	direction codes.Direction
 	rows      []restriction
-	// The order in which the sweep meets the ends of the rows: by start and by
-	// end, with and without train length delay. Within each of the four lists
-	// the order is the same for every length of train, so that no train needs
+	// The ends of the rows in the order in which the sweep meets them. Train
+	// length delay moves those of the second list, all by the length of the
+	// train, so that each list has one order for all trains and no train needs
 	// a sort.
-	starts, ends [2][]int32
+	fixed, moved []rowEnd
+}
+
+// rowEnd is a place at which a row begins or ceases to hold.
+type rowEnd struct {
+	at   unit.Distance // without train length delay
+	row  int32
+	ends bool
 }
 
 // New prepares a route and a direction of travel for compiling.
@@ -58,25 +65,24 @@ func New(route *schema.Route, direction codes.Direction, filter Filter) *Compile
 		return cmp.Or(comparePlace(&a, &b), cmp.Compare(a.pos.Line, b.pos.Line))
 	})
 	for i, r := range c.rows {
-		k := delayIndex(r.delay)
-		c.starts[k] = append(c.starts[k], int32(i))
-		c.ends[k] = append(c.ends[k], int32(i))
+		start, end := rowEnd{r.start, int32(i), false}, rowEnd{r.end, int32(i), true}
+		switch {
+		case !r.delay:
+			c.fixed = append(c.fixed, start, end)
+		case direction == codes.Reverse:
+			c.fixed, c.moved = append(c.fixed, end), append(c.moved, start)
+		default:
+			c.fixed, c.moved = append(c.fixed, start), append(c.moved, end)
+		}
 	}
-	for k := range c.ends {
-		slices.SortStableFunc(c.ends[k], func(a, b int32) int { return cmp.Compare(c.rows[a].end, c.rows[b].end) })
+	for _, list := range [...][]rowEnd{c.fixed, c.moved} {
+		slices.SortFunc(list, func(a, b rowEnd) int { return cmp.Compare(a.at, b.at) })
 	}
 	return c
 }
 
-func delayIndex(delay bool) int {
-	if delay {
-		return 1
-	}
-	return 0
-}
-
 // Delayed tells whether the length of a train matters on this route at all.
-func (c *Compiler) Delayed() bool { return len(c.starts[1]) > 0 }
+func (c *Compiler) Delayed() bool { return len(c.moved) > 0 }
 
 // Selection is the speed that each row of the route gives to a class of
 // trains; 0 where a row does not bind it. Trains of equal selection, length and
@@ -120,31 +126,25 @@ func (c *Compiler) Sweep(sel Selection, length unit.Distance, maximum unit.Speed
 // AppendSweep appends the profile to f, which must be empty: memory that is
 // used again.
 func (c *Compiler) AppendSweep(f step.Func, sel Selection, length unit.Distance, maximum unit.Speed) step.Func {
-	w := sweep{end: c.route.Track.Length()}
+	var w sweep
 	before, after := c.shifts(length)
-	lists := [4]list{
-		{order: c.starts[0]},
-		{order: c.starts[1], shift: -before},
-		{order: c.ends[0], ends: true},
-		{order: c.ends[1], ends: true, shift: after},
-	}
-	at := unit.Distance(0)
-	for at < w.end {
-		next := w.end
-		for i := range lists {
-			l := &lists[i]
-			for {
-				s, ok := l.peek(c.rows)
-				if !ok {
-					break
-				}
-				if s > at {
-					next = min(next, s)
-					break
-				}
-				w.count(sel[l.order[l.next]], l.ends)
-				l.next++
-			}
+	fixed, moved, shift := c.fixed, c.moved, after-before
+	length = c.route.Track.Length()
+	for at := unit.Distance(0); at < length; {
+		next := length
+		for len(fixed) > 0 && fixed[0].at <= at {
+			w.count(sel[fixed[0].row], fixed[0].ends)
+			fixed = fixed[1:]
+		}
+		if len(fixed) > 0 {
+			next = min(next, fixed[0].at)
+		}
+		for len(moved) > 0 && moved[0].at+shift <= at {
+			w.count(sel[moved[0].row], moved[0].ends)
+			moved = moved[1:]
+		}
+		if len(moved) > 0 {
+			next = min(next, moved[0].at+shift)
 		}
 		f = f.Append(step.Piece{From: at, To: next, Speed: min(maximum, w.lowest())})
 		at = next
@@ -163,30 +163,9 @@ func (c *Compiler) shifts(length unit.Distance) (before, after unit.Distance) {
 	return 0, length
 }
 
-// list is the row ends of one kind that a sweep has still to meet.
-type list struct {
-	order []int32
-	next  int
-	ends  bool
-	shift unit.Distance
-}
-
-// peek gives the running distance of the next row end.
-func (l *list) peek(rows []restriction) (unit.Distance, bool) {
-	if l.next == len(l.order) {
-		return 0, false
-	}
-	r := &rows[l.order[l.next]]
-	if l.ends {
-		return r.end + l.shift, true
-	}
-	return r.start + l.shift, true
-}
-
 // sweep counts the restrictions that hold at a point, by speed. Speeds are
 // multiples of 5 km/h up to 600, so that a counter each and a bit each suffice.
 type sweep struct {
-	end    unit.Distance
 	counts [unit.MaxSpeed/unit.SpeedStep + 1]int32
 	held   [2]uint64 // bit i: counts[i] > 0
 }

@@ -127,17 +127,15 @@ func (c *Compiler) only(keep func(*restriction) bool) *Compiler {
 			p.rows = append(p.rows, c.rows[i])
 		}
 	}
-	renumber := func(order []int32) []int32 {
-		var list []int32
-		for _, i := range order {
-			if number[i] >= 0 {
-				list = append(list, number[i])
+	renumber := func(ends []rowEnd) []rowEnd {
+		var list []rowEnd
+		for _, e := range ends {
+			if e.row = number[e.row]; e.row >= 0 {
+				list = append(list, e)
 			}
 		}
 		return list
 	}
-	for k := range c.starts {
-		p.starts[k], p.ends[k] = renumber(c.starts[k]), renumber(c.ends[k])
-	}
+	p.fixed, p.moved = renumber(c.fixed), renumber(c.moved)
 	return p
 }

@@ -1,6 +1,7 @@
 package profile
 
 import (
+	"encoding/binary"
 	"strconv"
 
 	"speedtrail/diff/step"
@@ -17,8 +18,12 @@ const TrainRow int32 = -1
 // track; TrainRow last. Every row that attains the speed is listed. Give it the
 // selection and the stretch of a compiled profile.
 func (c *Compiler) Governing(sel Selection, length unit.Distance, maximum unit.Speed, from, to unit.Distance, v unit.Speed) []int32 {
+	return c.AppendGoverning(nil, sel, length, maximum, from, to, v)
+}
+
+// AppendGoverning appends the rows of Governing to a list.
+func (c *Compiler) AppendGoverning(rows []int32, sel Selection, length unit.Distance, maximum unit.Speed, from, to unit.Distance, v unit.Speed) []int32 {
 	before, after := c.shifts(length)
-	var rows []int32
 	for i := range c.rows {
 		if sel[i] != v {
 			continue
@@ -36,6 +41,15 @@ func (c *Compiler) Governing(sel Selection, length unit.Distance, maximum unit.S
 		rows = append(rows, TrainRow)
 	}
 	return rows
+}
+
+// AppendRowKey appends to key what tells one row of a route from another, in any
+// compiler of the route.
+func (c *Compiler) AppendRowKey(key []byte, row int32) []byte {
+	if row == TrainRow {
+		return append(key, byte(TrainSpeed))
+	}
+	return binary.AppendUvarint(append(key, byte(c.rows[row].layer)), uint64(c.rows[row].row))
 }
 
 // Source describes a governing row for a train.

@@ -47,6 +47,19 @@ func (f Func) Append(p Piece) Func {
 	return append(f, p)
 }
 
+// AppendPart adds the part of another Func from one place to another at the end
+// of f and keeps the law. The part must begin where f ends.
+func (f Func) AppendPart(g Func, from, to unit.Distance) Func {
+	for cur := g.CursorAt(from); from < to; {
+		cur.Advance(from)
+		p := cur.Piece()
+		p.From, p.To = from, min(to, p.To)
+		f = f.Append(p)
+		from = p.To
+	}
+	return f
+}
+
 // A Cursor reads a Func from left to right in constant time a step.
 type Cursor struct {
 	f Func

@@ -167,7 +167,9 @@ func tomlPair(name string, old, now []byte) []Table {
 		for i, side := range sides {
 			r := rows.Table{Columns: columns, FromColumn: slices.Index(columns, "from_km"), ToColumn: slices.Index(columns, "to_km")}
 			for _, element := range side.tables[t] {
-				r.Rows = append(r.Rows, tomlRow(t, columns, element))
+				if len(element) > 0 {
+					r.Rows = append(r.Rows, tomlRow(t, columns, element))
+				}
 			}
 			if i == 0 {
 				out.Old = r

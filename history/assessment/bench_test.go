@@ -140,6 +140,9 @@ func assess(tb testing.TB, j job) phases {
 	p.end("load")
 	account, err := diff.Compare(ctx, before, after, diff.Options{NoFleet: j.plain, NoFigures: j.plain})
 	must(err)
+	for _, r := range account.Routes {
+		p.changes += len(r.Changes)
+	}
 	p.end("compare")
 	in := assessment.Input{
 		Base: before, Target: after, Account: account, Folder: ".",
@@ -174,9 +177,6 @@ func assess(tb testing.TB, j job) phases {
 	p.end("record")
 	if !added {
 		tb.Fatal("nothing was recorded")
-	}
-	for _, r := range account.Routes {
-		p.changes += len(r.Changes)
 	}
 	return p
 }

@@ -165,26 +165,40 @@ func route(r *diff.Route, places []int) (doc Route, groups []int) {
 	return doc, groups
 }
 
-// changes joins the changes that differ only in the train.
+// changes joins the changes that differ only in the train. Those begin at one
+// place and so stand together.
 func changes(r *diff.Route, list []diff.Change) (out []Change, groups []int) {
-	out, groups = []Change{}, make([]int, len(list))
+	groups = make([]int, len(list))
+	var first, trains []int // of each group, a change and the number of trains
 	seen := map[diff.Change]int{}
 	for i, c := range list {
-		key := c
-		key.Train = 0
-		at, ok := seen[key]
-		if !ok {
-			at = len(out)
-			seen[key] = at
-			out = append(out, Change{
-				Direction: c.Direction.String(), Start: int64(c.From), Length: int64(c.Length()), RunOut: c.RunOut,
-				From: r.Target.Track.Begins(c.From).String(), To: r.Target.Track.Ends(c.To).String(),
-				Before: int(c.Before), After: int(c.After), BeforeSource: c.BeforeSources, AfterSource: c.AfterSources,
-				Cause: c.Causes, Pieces: c.Pieces,
-			})
+		if i > 0 && (c.Direction != list[i-1].Direction || c.From != list[i-1].From) {
+			clear(seen)
 		}
-		out[at].Trains = append(out[at].Trains, c.Train)
+		c.Train = 0
+		at, ok := seen[c]
+		if !ok {
+			at = len(first)
+			seen[c] = at
+			first, trains = append(first, i), append(trains, 0)
+		}
 		groups[i] = at
+		trains[at]++
+	}
+	out = make([]Change, len(first))
+	all := make([]int, 0, len(list))
+	for at, i := range first {
+		c := &list[i]
+		out[at] = Change{
+			Direction: c.Direction.String(), Start: int64(c.From), Length: int64(c.Length()), RunOut: c.RunOut,
+			From: r.Target.Track.Begins(c.From).String(), To: r.Target.Track.Ends(c.To).String(),
+			Before: int(c.Before), After: int(c.After), BeforeSource: c.BeforeSources, AfterSource: c.AfterSources,
+			Cause: c.Causes, Pieces: c.Pieces, Trains: all[len(all) : len(all) : len(all)+trains[at]],
+		}
+		all = all[:len(all)+trains[at]]
+	}
+	for i, at := range groups {
+		out[at].Trains = append(out[at].Trains, list[i].Train)
 	}
 	return out, groups
 }

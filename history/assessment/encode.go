@@ -1,34 +1,11 @@
 package assessment
 
 import (
-	"bytes"
-	"crypto/sha256"
-	"encoding/hex"
 	"iter"
 
 	"speedtrail/history/canon"
 	"speedtrail/history/ledger"
 )
-
-// Encode writes the document as canonical JSON and gives its digest. The members
-// of every type stand in the canonical order already.
-func (d *Document) Encode() (body []byte, digest string, err error) {
-	var b bytes.Buffer
-	b.WriteString(`{"computed":`)
-	start := b.Len()
-	if err := canon.AppendOrdered(&b, &d.Computed); err != nil {
-		return nil, "", err
-	}
-	sum := sha256.New()
-	sum.Write([]byte(Format + "\n"))
-	sum.Write(b.Bytes()[start:])
-	b.WriteString(`,"format":"` + Format + `","named":`)
-	if err := canon.AppendOrdered(&b, &d.Named); err != nil {
-		return nil, "", err
-	}
-	b.WriteByte('}')
-	return b.Bytes(), hex.EncodeToString(sum.Sum(nil)), nil
-}
 
 // Decode reads a stored document.
 func Decode(body []byte) (*Document, error) {
@@ -50,6 +27,7 @@ type Row struct {
 // route, direction, position, train.
 func (c *Computed) Rows() iter.Seq[Row] {
 	return func(yield func(Row) bool) {
+		var next []int
 		for i := range c.Routes {
 			route := &c.Routes[i]
 			changes := route.Changes
@@ -59,11 +37,13 @@ func (c *Computed) Rows() iter.Seq[Row] {
 				for n < len(changes) && changes[n].Direction == changes[0].Direction && changes[n].Start == changes[0].Start {
 					n++
 				}
-				for _, row := range byTrain(route, changes[:n]) {
-					row.Train = c.Trains[row.train].ID
-					if !yield(row.Row) {
+				next = append(next[:0], make([]int, n)...)
+				for k := least(changes[:n], next); k >= 0; k = least(changes[:n], next) {
+					train := changes[k].Trains[next[k]]
+					if !yield(Row{Route: route, Change: &changes[k], Train: c.Trains[train].ID}) {
 						return
 					}
+					next[k]++
 				}
 				changes = changes[n:]
 			}
@@ -71,28 +51,16 @@ func (c *Computed) Rows() iter.Seq[Row] {
 	}
 }
 
-type trainRow struct {
-	Row
-	train int
-}
-
-// byTrain lists changes of one place by train.
-func byTrain(route *Route, changes []Change) []trainRow {
-	var rows []trainRow
-	next := make([]int, len(changes))
-	for {
-		least := -1
-		for k := range changes {
-			if next[k] < len(changes[k].Trains) && (least < 0 || changes[k].Trains[next[k]] < changes[least].Trains[next[least]]) {
-				least = k
-			}
+// least finds the change whose next train has the least number; -1 where none
+// has a train left.
+func least(changes []Change, next []int) int {
+	found := -1
+	for k := range changes {
+		if next[k] < len(changes[k].Trains) && (found < 0 || changes[k].Trains[next[k]] < changes[found].Trains[next[found]]) {
+			found = k
 		}
-		if least < 0 {
-			return rows
-		}
-		rows = append(rows, trainRow{Row{Route: route, Change: &changes[least]}, changes[least].Trains[next[least]]})
-		next[least]++
 	}
+	return found
 }
 
 // LedgerRecord gives the document as the ledger writes it.

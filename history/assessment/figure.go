@@ -47,45 +47,59 @@ func fleetOf(r *diff.Route, f *diff.Fleet) Fleet {
 
 // figures writes the figures of all routes.
 func figures(a *diff.Account) Figures {
-	out := Figures{Crossings: []CrossingFigure{}, Curves: []CurveFigure{}, Runs: []RunFigure{}, Short: []ShortFigure{}}
-	for i := range a.Routes {
-		r := &a.Routes[i]
-		for _, x := range r.Figures.Runs {
-			run := RunFigure{Route: r.ID, Direction: x.Direction.String(), Train: a.Trains[x.Train].ID, Before: x.Before, After: x.After, Parts: []RunPart{}}
-			for _, p := range x.Parts {
-				run.Parts = append(run.Parts, RunPart{From: r.Target.Track.Begins(p.From).String(), To: r.Target.Track.Ends(p.To).String(), Gain: p.Gain})
-			}
-			out.Runs = append(out.Runs, run)
+	perRoute := make([]Figures, len(a.Routes))
+	sideBySide(len(perRoute), func(i int) { perRoute[i] = figuresOf(a, &a.Routes[i]) })
+	out := Figures{Crossings: []CrossingFigure{}, Curves: []CurveFigure{}, Short: []ShortFigure{}}
+	runs := 0
+	for _, f := range perRoute {
+		runs += len(f.Runs)
+	}
+	out.Runs = make([]RunFigure, 0, runs)
+	for _, f := range perRoute {
+		out.Crossings = append(out.Crossings, f.Crossings...)
+		out.Curves = append(out.Curves, f.Curves...)
+		out.Runs = append(out.Runs, f.Runs...)
+		out.Short = append(out.Short, f.Short...)
+	}
+	return out
+}
+
+func figuresOf(a *diff.Account, r *diff.Route) (out Figures) {
+	out.Runs = make([]RunFigure, 0, len(r.Figures.Runs))
+	for _, x := range r.Figures.Runs {
+		run := RunFigure{Route: r.ID, Direction: x.Direction.String(), Train: a.Trains[x.Train].ID, Before: x.Before, After: x.After, Parts: []RunPart{}}
+		for _, p := range x.Parts {
+			run.Parts = append(run.Parts, RunPart{From: r.Target.Track.Begins(p.From).String(), To: r.Target.Track.Ends(p.To).String(), Gain: p.Gain})
 		}
-		for _, x := range r.Figures.Crossings {
-			out.Crossings = append(out.Crossings, CrossingFigure{
-				Route: r.ID, Direction: x.Direction.String(), Name: x.Place.Name, Km: x.Place.From.String(), Permanent: x.Permanent,
-				Before: x.Before, After: x.After, StrikeIn: int64(x.Place.StrikeIn), Warning: int64(x.Place.WarningDS),
-			})
+		out.Runs = append(out.Runs, run)
+	}
+	for _, x := range r.Figures.Crossings {
+		out.Crossings = append(out.Crossings, CrossingFigure{
+			Route: r.ID, Direction: x.Direction.String(), Name: x.Place.Name, Km: x.Place.From.String(), Permanent: x.Permanent,
+			Before: x.Before, After: x.After, StrikeIn: int64(x.Place.StrikeIn), Warning: int64(x.Place.WarningDS),
+		})
+	}
+	for _, x := range r.Figures.Curves {
+		f := curveFigure(a, r, &x)
+		same := func(g CurveFigure) bool {
+			trains := slices.Equal(f.Trains, g.Trains)
+			g.Direction, g.Trains = f.Direction, nil
+			h := f
+			h.Trains = nil
+			return trains && reflect.DeepEqual(g, h)
 		}
-		first := len(out.Curves)
-		for _, x := range r.Figures.Curves {
-			f := curveFigure(a, r, &x)
-			same := func(g CurveFigure) bool {
-				trains := slices.Equal(f.Trains, g.Trains)
-				g.Direction, g.Trains = f.Direction, nil
-				h := f
-				h.Trains = nil
-				return trains && reflect.DeepEqual(g, h)
-			}
-			if k := slices.IndexFunc(out.Curves[first:], same); k >= 0 {
-				out.Curves[first+k].Direction = codes.Both.String()
-				continue
-			}
-			out.Curves = append(out.Curves, f)
+		if k := slices.IndexFunc(out.Curves, same); k >= 0 {
+			out.Curves[k].Direction = codes.Both.String()
+			continue
 		}
-		for _, x := range r.Figures.Short {
-			out.Short = append(out.Short, ShortFigure{
-				Route: r.ID, Direction: x.Direction.String(), Train: a.Trains[x.Train].ID,
-				From: r.Target.Track.Begins(x.From).String(), To: r.Target.Track.Ends(x.To).String(), Length: int64(x.To - x.From),
-				Speed: int(x.Speed), Reached: int(x.Reached), Needed: int64(x.Needed),
-			})
-		}
+		out.Curves = append(out.Curves, f)
+	}
+	for _, x := range r.Figures.Short {
+		out.Short = append(out.Short, ShortFigure{
+			Route: r.ID, Direction: x.Direction.String(), Train: a.Trains[x.Train].ID,
+			From: r.Target.Track.Begins(x.From).String(), To: r.Target.Track.Ends(x.To).String(), Length: int64(x.To - x.From),
+			Speed: int(x.Speed), Reached: int(x.Reached), Needed: int64(x.Needed),
+		})
 	}
 	return out
 }

@@ -253,18 +253,14 @@ func (c *collector) route(index int) {
 	c.masked(index)
 	c.unrepresented(r)
 	for _, l := range r.Leaving {
-		what := "differs"
-		if l.Removed {
-			what = "is removed"
-		}
-		track := r.Target.Track
-		if l.Removed {
-			track = r.Base.Track
+		what, track := "the row differs and reaches", r.Target.Track
+		if l.OfBase {
+			what, track = "the row of the base reached, and does no more,", r.Base.Track
 		}
 		c.add(ranked{Finding: Finding{
 			ID: RunOutLeavesRoute, Route: r.ID, Direction: l.Direction.String(), Row: rowText(l.Row),
 			From: track.Begins(l.Row.Start).String(), To: track.Ends(l.Row.End).String(),
-			Text: fmt.Sprintf("the row %s and reaches beyond the end of the route with a train of %s m", what, l.Longest.M()),
+			Text: fmt.Sprintf("%s beyond the end of the route with a train of %s m", what, l.Longest.M()),
 		}})
 	}
 	if r.Target == nil {

@@ -107,7 +107,7 @@ func (c *collector) rowsOf(r *diff.Route, changes []*diff.Change) string {
 			d := &f.Rows[cause.Row]
 			name := ""
 			if t := &f.Tables[d.Table]; len(d.New) > 0 {
-				name = fmt.Sprintf("%s:%d", f.Target, t.New.Rows[d.New[0]].Line)
+				name = fmt.Sprintf("%s:%d", f.Target, t.New.Rows[telling(f, d)].Line)
 			} else {
 				name = fmt.Sprintf("%s:%d of the base", f.Base, t.Old.Rows[d.Old[0]].Line)
 			}
@@ -191,4 +191,17 @@ func (c *collector) masked(index int) {
 	for _, s := range c.gather(r, parts) {
 		c.add(c.finding(Masked, r, s, ", not seen today"))
 	}
+}
+
+// telling gives the new row that a difference is known by: of a split row, the
+// first part in which a cell differs that is not a limit.
+func telling(f *diff.File, d *diff.RowDifference) int {
+	for _, c := range d.Cells {
+		switch f.Tables[d.Table].New.Columns[c.Column] {
+		case "from_km", "to_km", "km", "note":
+		default:
+			return c.New
+		}
+	}
+	return d.New[0]
 }

@@ -73,7 +73,11 @@ func (c *collector) unrepresentedFinding(r *diff.Route, u unseenBy) ranked {
 		word = "lowered"
 	}
 	text := fmt.Sprintf("%s: %s by up to %d km/h, %d to %d", u.product, word, abs(u.largest.After-u.largest.Before), u.largest.Before, u.largest.After)
-	if n := len(u.changes); n > 1 {
+	places := map[[2]unit.Distance]bool{}
+	for _, x := range u.changes {
+		places[[2]unit.Distance{x.Target, x.Length}] = true
+	}
+	if n := len(places); n > 1 {
 		text += fmt.Sprintf(", in %d pieces", n)
 	}
 	if u.hidden {

@@ -10,6 +10,7 @@ import (
 	"bytes"
 	"errors"
 	"fmt"
+	"reflect"
 
 	"github.com/go-json-experiment/json"
 	"github.com/go-json-experiment/json/jsontext"
@@ -32,11 +33,16 @@ func Marshal(v any) ([]byte, error) {
 	return value, nil
 }
 
-// AppendOrdered writes a value to b as Marshal does, in one pass. The types in it
-// must be structs with their members in the order of their names, slices, texts,
-// booleans and whole numbers below 2^53: then the encoder's bytes are canonical
-// as they come.
-func AppendOrdered(b *bytes.Buffer, v any) error { return json.MarshalWrite(b, v) }
+// Append writes a value to b as Marshal does, but in one pass if its type allows
+// that: see InOrder.
+func Append(b *bytes.Buffer, v any) error {
+	if InOrder(reflect.TypeOf(v)) {
+		return json.MarshalWrite(b, v)
+	}
+	text, err := Marshal(v)
+	b.Write(text)
+	return err
+}
 
 // Unmarshal reads canonical JSON into a value and refuses members that the value
 // does not have.

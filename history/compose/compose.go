@@ -25,8 +25,12 @@ import (
 	"github.com/go-git/go-git/v5/storage"
 )
 
-// ErrNotEmpty is the error of Write for a folder that holds something.
-var ErrNotEmpty = errors.New("the folder is not empty")
+// The errors of Write for a folder that holds something, and for a history that
+// no repository can have; the latter says which commit and what is wrong.
+var (
+	ErrNotEmpty = errors.New("the folder is not empty")
+	ErrHistory  = errors.New("not a history")
+)
 
 // Branch is the name of the branch that a written repository has.
 const Branch = "main"
@@ -49,6 +53,9 @@ type Commit struct {
 // Write writes the repository into dir, made if need be, and checks out the last
 // commit.
 func Write(ctx context.Context, dir string, history []Commit) (err error) {
+	if err := check(history); err != nil {
+		return err
+	}
 	entries, err := os.ReadDir(dir)
 	existed := err == nil
 	switch {
@@ -57,14 +64,15 @@ func Write(ctx context.Context, dir string, history []Commit) (err error) {
 	case err != nil && !errors.Is(err, os.ErrNotExist):
 		return err
 	}
+	made := missing(dir)
+	defer func() {
+		if err != nil {
+			remove(dir, existed, made)
+		}
+	}()
 	if err := os.MkdirAll(dir, 0o755); err != nil {
 		return err
 	}
-	defer func() {
-		if err != nil {
-			remove(dir, existed)
-		}
-	}()
 	repo, err := git.PlainInit(dir, false)
 	if err != nil {
 		return err
@@ -102,11 +110,25 @@ func Write(ctx context.Context, dir string, history []Commit) (err error) {
 	return work.Reset(&git.ResetOptions{Commit: w.commits[len(w.commits)-1], Mode: git.HardReset})
 }
 
+// missing gives the folders above dir that are not there, the lowest first.
+func missing(dir string) []string {
+	var out []string
+	for at := filepath.Dir(filepath.Clean(dir)); ; at = filepath.Dir(at) {
+		if _, err := os.Lstat(at); !errors.Is(err, os.ErrNotExist) || at == filepath.Dir(at) {
+			return out
+		}
+		out = append(out, at)
+	}
+}
+
 // remove takes away what was written. An empty folder that was there before
-// stays.
-func remove(dir string, existed bool) {
+// stays; of those above that were made, the ones that are empty go.
+func remove(dir string, existed bool, made []string) {
 	if !existed {
 		os.RemoveAll(dir)
+		for _, name := range made {
+			os.Remove(name)
+		}
 		return
 	}
 	entries, _ := os.ReadDir(dir)

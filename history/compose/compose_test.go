@@ -4,7 +4,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"io/fs"
 	"os"
 	"os/exec"
 	"path/filepath"
@@ -248,14 +247,15 @@ func (s *stopAfter) Err() error {
 // folder that was there stays.
 func TestRemoved(t *testing.T) {
 	for n := range len(sample()) {
-		dir := filepath.Join(t.TempDir(), "new")
+		top := t.TempDir()
+		dir := filepath.Join(top, "above", "new")
 		if err := Write(&stopAfter{t.Context(), n}, dir, sample()); !errors.Is(err, context.Canceled) {
 			t.Errorf("stopped at commit %d: %v", n, err)
 		}
-		if _, err := os.Stat(dir); !errors.Is(err, fs.ErrNotExist) {
-			t.Errorf("stopped at commit %d: the folder is there (%v)", n, err)
+		if entries, err := os.ReadDir(top); len(entries) != 0 || err != nil {
+			t.Errorf("stopped at commit %d: left behind %v (%v)", n, entries, err)
 		}
-		if err := os.Mkdir(dir, 0o755); err != nil {
+		if err := os.MkdirAll(dir, 0o755); err != nil {
 			t.Fatal(err)
 		}
 		if err := Write(&stopAfter{t.Context(), n}, dir, sample()); !errors.Is(err, context.Canceled) {
@@ -288,14 +288,47 @@ func TestOctopus(t *testing.T) {
 	checkFiles(t, dir)
 }
 
-// TestEmptyHistory: no commit is no repository.
-func TestEmptyHistory(t *testing.T) {
-	t.Skip("BUG: a history without a commit panics (index out of range)")
-	dir := filepath.Join(t.TempDir(), "new")
-	if err := Write(t.Context(), dir, nil); err == nil {
-		t.Error("an empty history was written")
+// TestRefused has the histories that no repository can hold. Each is refused
+// with what is wrong, and nothing of it is left, nor of the folders above.
+func TestRefused(t *testing.T) {
+	commit := func(files map[string]string, parents ...int) Commit {
+		return Commit{Parents: parents, Files: files, Author: ada, When: noon, Message: "x\n"}
 	}
-	if _, err := os.Stat(dir); !errors.Is(err, fs.ErrNotExist) {
-		t.Errorf("the folder is there (%v)", err)
+	for name, c := range map[string]struct {
+		history []Commit
+		part    string
+	}{
+		"no commit":                 {nil, "no commit"},
+		"its own parent":            {[]Commit{commit(nil, 0)}, "commit 0: parent 0"},
+		"a later parent":            {[]Commit{commit(nil), commit(nil, 2), commit(nil)}, "commit 1: parent 2"},
+		"a parent beyond the end":   {[]Commit{commit(nil), commit(nil, 0, 7)}, "commit 1: parent 7"},
+		"a negative parent":         {[]Commit{commit(nil), commit(nil, -1)}, "commit 1: parent -1"},
+		"a file and a folder":       {[]Commit{commit(nil), commit(map[string]string{"a": "", "a/b": ""})}, `commit 1: "a" is to be a file`},
+		"the same further down":     {[]Commit{commit(map[string]string{"x/a": "", "x/a/b/c": "", "x/a.csv": ""})}, `"x/a" is to be a file`},
+		"no name":                   {[]Commit{commit(map[string]string{"": ""})}, `""`},
+		"a path out of the folder":  {[]Commit{commit(map[string]string{"../x": ""})}, `"../x"`},
+		"an absolute path":          {[]Commit{commit(map[string]string{"/x": ""})}, `"/x"`},
+		"a path with an empty part": {[]Commit{commit(map[string]string{"x//y": ""})}, `"x//y"`},
+		"the folder itself":         {[]Commit{commit(map[string]string{".": ""})}, `"."`},
+		"a zero byte":               {[]Commit{commit(map[string]string{"a\x00b": ""})}, `"a\x00b"`},
+		"a file of the git folder":  {[]Commit{commit(map[string]string{"x/.Git/config": ""})}, `"x/.Git/config"`},
+		"a path that is not UTF-8":  {[]Commit{commit(map[string]string{"v\xe4g": ""})}, `"v\xe4g"`},
+	} {
+		t.Run(name, func(t *testing.T) {
+			top := t.TempDir()
+			err := Write(t.Context(), filepath.Join(top, "new", "repository"), c.history)
+			if !errors.Is(err, ErrHistory) || !strings.Contains(err.Error(), c.part) {
+				t.Errorf("error %v, want one that says %q", err, c.part)
+			}
+			if entries, err := os.ReadDir(top); len(entries) != 0 || err != nil {
+				t.Errorf("left behind: %v (%v)", entries, err)
+			}
+			if err := Write(t.Context(), top, c.history); !errors.Is(err, ErrHistory) {
+				t.Errorf("into an empty folder: %v", err)
+			}
+			if entries, err := os.ReadDir(top); len(entries) != 0 || err != nil {
+				t.Errorf("left behind in an empty folder: %v (%v)", entries, err)
+			}
+		})
 	}
 }

@@ -47,6 +47,10 @@ type Options struct {
 	Create   bool             // make the ledger where there is none
 	Wait     time.Duration    // for other processes; 0: ten seconds
 	Now      func() time.Time // for the first entry of a new ledger
+
+	// vfs names the layer through which SQLite reaches files, empty for its own:
+	// tests put in one that fails calls, or writes them down.
+	vfs string
 }
 
 // Ledger is an open ledger. It holds one connection and is not safe for
@@ -125,6 +129,9 @@ func address(file string, o Options) string {
 		wait = 10 * time.Second
 	}
 	q := url.Values{"mode": {mode}, "_busy_timeout": {fmt.Sprint(wait.Milliseconds())}, "_txlock": {"immediate"}}
+	if o.vfs != "" {
+		q.Set("vfs", o.vfs)
+	}
 	return (&url.URL{Scheme: "file", Path: path, RawQuery: q.Encode()}).String()
 }
 
@@ -134,7 +141,14 @@ func (l *Ledger) prepare(ctx context.Context, o Options) error {
 	if err := l.exec(ctx, "PRAGMA trusted_schema = OFF", "PRAGMA cell_size_check = ON"); err != nil {
 		return err
 	}
+	// Read as of one instant: another process may be making the ledger now.
+	if err := l.exec(ctx, "BEGIN"); err != nil {
+		return err
+	}
 	empty, err := l.check(ctx)
+	if ended := l.exec(ctx, "COMMIT"); err == nil {
+		err = ended
+	}
 	if err != nil {
 		return err
 	}

@@ -386,7 +386,7 @@ func child(file, name string) int {
 
 func startChild(t *testing.T, file, name string) *exec.Cmd {
 	cmd := exec.Command(os.Args[0])
-	cmd.Env = append(os.Environ(), childEnv+"="+file, childEnv+"_NAME="+name)
+	cmd.Env = append(os.Environ(), childEnv+"="+file, childEnv+"_NAME="+name, "GORACE=atexit_sleep_ms=0") // no waiting at the end under the race detector
 	return cmd
 }
 

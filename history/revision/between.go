@@ -63,6 +63,14 @@ func (w *walk) run(ctx context.Context, target plumbing.Hash) error {
 			}
 		}
 	}
+	if w.baseCut {
+		// Base itself may be the end of the clone, dated after its children.
+		settled, err := w.settled()
+		if err != nil {
+			return err
+		}
+		w.baseCut = !settled
+	}
 	return nil
 }
 

@@ -85,7 +85,7 @@ func (b *blobFile) begin() error {
 			}
 		}
 		if err != nil {
-			return err
+			return unreadable(fmt.Sprintf("object %s cannot be read", b.object.hash), err)
 		}
 		if f != nil {
 			b.loose = f

@@ -265,18 +265,20 @@ func decodeText(data []byte, latin bool) string {
 	return string(runes)
 }
 
-// subject is the first paragraph on one line, as git prints it.
+// subject is the first paragraph on one line, as git prints it: empty lines
+// before it are passed over, blanks at the end of a line are dropped and those at
+// its start stay. Like git it takes a zero byte for the end of the message, and
+// no other characters than these four for blanks.
 func subject(message string) string {
-	var words []string
+	message, _, _ = strings.Cut(message, "\x00")
+	var parts []string
 	for line := range strings.Lines(message) {
-		line = strings.TrimSpace(line)
-		if line == "" {
-			if len(words) > 0 {
-				break
-			}
-			continue
+		line = strings.TrimRight(line, " \t\r\n")
+		if line != "" {
+			parts = append(parts, line)
+		} else if len(parts) > 0 {
+			break
 		}
-		words = append(words, line)
 	}
-	return strings.Join(words, " ")
+	return strings.Join(parts, " ")
 }

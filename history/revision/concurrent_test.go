@@ -3,7 +3,6 @@ package revision
 import (
 	"io"
 	"io/fs"
-	"os"
 	"strings"
 	"sync"
 	"testing"
@@ -16,7 +15,7 @@ func TestRepack(t *testing.T) {
 	for name, first := range map[string]string{"loose before": "", "packs before": "repack"} {
 		t.Run(name, func(t *testing.T) {
 			t.Parallel()
-			g := sample(t)
+			g := looseSample(t)
 			if first != "" {
 				severalPacks(t, g)
 			}
@@ -66,7 +65,7 @@ func TestRepack(t *testing.T) {
 // repacks. It is of use under the race detector.
 func TestConcurrent(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := looseSample(t)
 	severalPacks(t, g)
 	r := g.open()
 	var commits []string
@@ -120,8 +119,8 @@ func TestConcurrent(t *testing.T) {
 			}
 		})
 	}
-	for i := range 4 {
-		g.git("repack", "-adf", "--quiet", []string{"--depth=1", "--depth=5", "--depth=50", "--depth=0"}[i])
+	for _, depth := range []string{"--depth=1", "--depth=50", "--depth=0"} {
+		g.git("repack", "-adf", "--quiet", depth)
 	}
 	close(stop)
 	readers.Wait()
@@ -135,24 +134,14 @@ func TestConcurrent(t *testing.T) {
 // TestNothingWritten: reading leaves no trace in the repository.
 func TestNothingWritten(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := looseSample(t)
 	severalPacks(t, g)
 	list := func() string {
-		var b strings.Builder
-		err := fs.WalkDir(os.DirFS(g.dir), ".", func(name string, e fs.DirEntry, err error) error {
-			if err != nil {
-				return err
-			}
-			info, err := e.Info()
-			if err == nil {
-				b.WriteString(name + " " + info.ModTime().String() + " " + info.Mode().String() + "\n")
-			}
-			return err
-		})
+		list, err := state(g.dir)
 		if err != nil {
 			t.Fatal(err)
 		}
-		return b.String()
+		return list
 	}
 	tip, first := g.git("rev-parse", "main"), g.git("rev-parse", "v1^{commit}")
 	before := list()

@@ -56,9 +56,10 @@ func TestCorruptLoose(t *testing.T) {
 		"head without end": func(string) string { return deflate("blob 2" + strings.Repeat("2", 40)) },
 		"nothing in it":    func(string) string { return deflate("") },
 	}
+	g := looseSample(t)
+	tip := g.git("rev-parse", "main")
 	for _, what := range []string{"main:network/speed.csv", "main:network/routes", "main^{tree}", "main"} {
-		g := sample(t)
-		hash, tip := g.git("rev-parse", what), g.git("rev-parse", "main")
+		hash := g.git("rev-parse", what)
 		whole := readFile(t, g.loose(hash))
 		other := g.git("rev-parse", map[string]string{
 			"main": "main~1", "main^{tree}": "main~1^{tree}", "main:network/routes": "main:network/tools",
@@ -86,7 +87,7 @@ func TestCorruptLoose(t *testing.T) {
 // the error stands in the place of io.EOF.
 func TestCorruptPiecemeal(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := looseSample(t)
 	hash := g.git("rev-parse", "main:network/routes/r1/route.toml")
 	writeFile(t, g.loose(hash), deflate("blob 10\x00id = \"R2\"\n"))
 	fsys, err := g.open().Snapshot(g.git("rev-parse", "main"), "network/routes/r1")
@@ -112,10 +113,7 @@ func TestCorruptPiecemeal(t *testing.T) {
 // is read must be right or an error.
 func TestCorruptPack(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
-	// Without the large file, so that each byte has a part in what is read.
-	g.git("rm", "--quiet", "z-large.csv")
-	g.git("commit", "--quiet", "-m", "smaller")
+	g := shared(t, true)
 	tip := g.git("rev-parse", "HEAD")
 	sparse := g.at(tempDir(t))
 	sparse.git("init", "--quiet", "--bare")
@@ -190,9 +188,16 @@ func TestPackIndexVersion(t *testing.T) {
 	g := sample(t)
 	g.git("-c", "pack.indexVersion=1", "repack", "-adf", "--quiet")
 	_, err := g.open().Resolve("main")
-	wantClass(t, err, ErrCorrupt, "not of version 2", "git repack -ad")
-	g.git("repack", "-adf", "--quiet")
+	wantClass(t, err, ErrUnsupported, "version 1", ".idx", "git repack -ad", "pack.indexVersion")
+	g.follow(err)
 	checkResolve(t, g, g.open(), []string{"main"})
+	// What only looks like one is damaged.
+	idx := glob(t, g.path(".git/objects/pack/*.idx"))[0]
+	for _, data := range []string{strings.Repeat("\x00", 1024), strings.Repeat("\x00\x00\x00\x01", 256) + strings.Repeat("x", 63), strings.Repeat("\x01\x00", 600)} {
+		writeFile(t, idx, data)
+		_, err := g.open().Resolve("main")
+		wantClass(t, err, ErrCorrupt, ".idx")
+	}
 }
 
 // TestPackAlone: a pack without an index is not used, an index without its pack

@@ -38,10 +38,16 @@
 // # What is refused
 //
 // SHA-256 repositories, reference storage other than files, extensions that this
-// package does not know, split and sparse index files (see [ErrUnsupported]). A
-// shallow clone is read; a walk that would go past its end says so
-// ([ErrShallow]). An object that a partial clone lacks is told from a path that
-// is not there ([ErrMissingObject]).
+// package does not know, split and sparse index files, pack indexes of version 1
+// (see [ErrUnsupported]). A shallow clone is read; a walk that would go past its
+// end says so ([ErrShallow]). An object that a partial clone lacks is told from a
+// path that is not there ([ErrMissingObject]). What the system refuses to show is
+// neither missing nor damaged ([ErrUnreadable]). An alternate object folder that
+// is not there counts only once an object is missing, whose error then names it.
+//
+// A file or folder whose name is not UTF-8 is listed, as it is there, but fs.FS
+// has no path to it: to ask for it is an error of class [ErrNotFile], which is
+// fs.ErrInvalid, too, and has the name escaped.
 //
 // # What differs from the git program
 //

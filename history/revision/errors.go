@@ -1,6 +1,12 @@
 package revision
 
-import "errors"
+import (
+	"errors"
+	"fmt"
+	"io/fs"
+	"strings"
+	"unicode/utf8"
+)
 
 // The classes of failure. Test for them with errors.Is; the error itself is an
 // *Error, whose text names the repository, revision, object or folder and says
@@ -18,6 +24,7 @@ var (
 	ErrBare          = errors.New("no working tree")
 	ErrNotFile       = errors.New("not a regular file")
 	ErrTooLarge      = errors.New("too large")
+	ErrUnreadable    = errors.New("may not be read") // the system refuses it, mostly for lack of rights
 )
 
 // Error is a failure to read a repository.
@@ -48,9 +55,63 @@ func (e *Error) Unwrap() []error {
 	return []error{e.Kind, e.Err}
 }
 
+// corrupt is the error for what is damaged. What the system refuses to show is
+// not damaged, so that has its own class here, too.
 func corrupt(text string, err error) *Error {
+	if errors.Is(err, fs.ErrPermission) {
+		return unreadable(text, err)
+	}
 	return &Error{
 		Kind: ErrCorrupt, Text: text, Err: err,
 		Hint: "run `git fsck`, then fetch the object again or use another clone",
 	}
+}
+
+// unreadable is the error for what the system refuses to open or to list.
+func unreadable(text string, err error) *Error {
+	e := &Error{Kind: ErrUnreadable, Text: text, Err: err}
+	if errors.Is(err, fs.ErrPermission) {
+		e.Hint = "see to it that this user may read the repository, all of its folders and files"
+	}
+	return e
+}
+
+// orUnreadable gives an error of the system the class of what may not be read
+// where rights are the reason, and leaves any other as it is.
+func orUnreadable(text string, err error) error {
+	var classed *Error
+	if !errors.Is(err, fs.ErrPermission) || errors.As(err, &classed) {
+		return err
+	}
+	return unreadable(text, err)
+}
+
+// nameError refuses a path that is not UTF-8. A file of such a name can stand in
+// a tree and on disk, and is listed there, but fs.FS has no path that leads to
+// it. The text has the name escaped.
+type nameError struct{ op, name string }
+
+func (e *nameError) Error() string {
+	return fmt.Sprintf("%s %q: %v", e.op, e.name, errNotUTF8)
+}
+
+// Unwrap gives what fs.FS asks for, and the class.
+func (e *nameError) Unwrap() []error {
+	return []error{&fs.PathError{Op: e.op, Path: e.name, Err: fs.ErrInvalid}, errNotUTF8}
+}
+
+var errNotUTF8 = &Error{
+	Kind: ErrNotFile, Text: "the name is not UTF-8, so it cannot be part of a data set",
+	Hint: "rename it",
+}
+
+// checkPath applies the rules of fs.FS to a path that comes from a caller.
+func checkPath(op, name string) error {
+	switch {
+	case fs.ValidPath(name):
+		return nil
+	case !utf8.ValidString(name) && fs.ValidPath(strings.ToValidUTF8(name, "\uFFFD")):
+		return &nameError{op, name}
+	}
+	return pathError(op, name, fs.ErrInvalid)
 }

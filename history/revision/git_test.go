@@ -7,10 +7,12 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"io/fs"
 	"os"
 	"os/exec"
 	"path/filepath"
 	"strings"
+	"sync"
 	"testing"
 )
 
@@ -59,11 +61,24 @@ func runClean(m *testing.M) int {
 		"GIT_CONFIG_KEY_1":   "maintenance.auto",
 		"GIT_CONFIG_VALUE_1": "false",
 		"TZ":                 "UTC",
+		// An empty folder: nothing is copied into a new repository.
+		"GIT_TEMPLATE_DIR": filepath.Join(home, "template"),
 	} {
 		os.Setenv(name, value)
 	}
-	defer func() { os.RemoveAll(sampleDir) }()
-	return m.Run()
+	if err := os.Mkdir(filepath.Join(home, "template"), 0o755); err != nil {
+		fmt.Fprintln(os.Stderr, err)
+		return 1
+	}
+	defer func() { os.RemoveAll(samples.dir) }()
+	code := m.Run()
+	if samples.state != "" {
+		if now, err := state(samples.dir); err != nil || now != samples.state {
+			fmt.Fprintln(os.Stderr, "a test wrote to the shared samples", err)
+			return 1
+		}
+	}
+	return code
 }
 
 // needGit skips a test where there is no git program. On the build server that
@@ -140,6 +155,53 @@ func (g *gitRepo) feed(stdin string, args ...string) string {
 	return strings.TrimSuffix(out, "\n")
 }
 
+// said keeps what git says of objects by their whole hashes, which is the same in
+// every repository, for all tests.
+var said sync.Map
+
+type saying struct {
+	once   sync.Once
+	out    string
+	status int
+}
+
+// told is feed for a command whose arguments and input name objects by their
+// whole hashes alone: of several repositories with the same objects one is asked.
+// It also gives the exit status.
+func (g *gitRepo) told(stdin string, args ...string) (string, int) {
+	g.t.Helper()
+	key := strings.Join(args, "\x00") + "\x00\x00" + stdin
+	kept, _ := said.LoadOrStore(key, &saying{status: -1})
+	s := kept.(*saying)
+	s.once.Do(func() {
+		out, err := g.run(stdin, args...)
+		var exit *exec.ExitError
+		switch {
+		case err == nil:
+			s.status = 0
+		case errors.As(err, &exit):
+			s.status = exit.ExitCode()
+		}
+		s.out = strings.TrimSuffix(out, "\n")
+	})
+	if s.status != 0 && s.status != 1 {
+		said.Delete(key)
+		g.t.Fatalf("git %s: status %d", strings.Join(args, " "), s.status)
+	}
+	return s.out, s.status
+}
+
+// tell is told for a command that must succeed.
+func (g *gitRepo) tell(stdin string, args ...string) string {
+	g.t.Helper()
+	out, status := g.told(stdin, args...)
+	if status != 0 {
+		said.Delete(strings.Join(args, "\x00") + "\x00\x00" + stdin)
+		g.t.Fatalf("git %s: status %d", strings.Join(args, " "), status)
+	}
+	return out
+}
+
 // code gives git's exit status.
 func (g *gitRepo) code(args ...string) int {
 	g.t.Helper()
@@ -164,12 +226,19 @@ func (g *gitRepo) write(name, content string) {
 
 func writeFile(t testing.TB, name, content string) {
 	t.Helper()
-	if err := os.MkdirAll(filepath.Dir(name), 0o755); err != nil {
-		t.Fatal(err)
+	err := os.WriteFile(name, []byte(content), 0o644)
+	switch {
+	case errors.Is(err, fs.ErrNotExist):
+		if err = os.MkdirAll(filepath.Dir(name), 0o755); err == nil {
+			err = os.WriteFile(name, []byte(content), 0o644)
+		}
+	case errors.Is(err, fs.ErrPermission):
+		// Git's own files are often read-only.
+		if err = os.Chmod(name, 0o644); err == nil {
+			err = os.WriteFile(name, []byte(content), 0o644)
+		}
 	}
-	// Git's own files are often read-only.
-	os.Chmod(name, 0o644)
-	if err := os.WriteFile(name, []byte(content), 0o644); err != nil {
+	if err != nil {
 		t.Fatal(err)
 	}
 }
@@ -250,7 +319,7 @@ func wantClass(t testing.TB, err, class error, parts ...string) {
 	}
 	for _, other := range []error{
 		ErrNoRepository, ErrUnsupported, ErrUnknown, ErrAmbiguous, ErrNotCommit, ErrMissingObject, ErrShallow, ErrCorrupt,
-		ErrNoFolder, ErrBare, ErrNotFile, ErrTooLarge,
+		ErrNoFolder, ErrBare, ErrNotFile, ErrTooLarge, ErrUnreadable,
 	} {
 		if other != class && errors.Is(err, other) {
 			t.Errorf("error %v is also of class %q", err, other)

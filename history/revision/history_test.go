@@ -2,7 +2,9 @@ package revision
 
 import (
 	"fmt"
+	"io/fs"
 	"os"
+	"path/filepath"
 	"strings"
 	"sync"
 	"testing"
@@ -119,33 +121,93 @@ const someHash = "0123456789abcdef0123456789abcdef01234567"
 //	     \ - 4 - 5 /       /
 //	      \ ----- 8 ------ (7 has 6, 5 and 8's parent 2: an octopus)
 //	11                               a history of its own
+//
+// The objects of a sample lie in one pack. What a test gets is a copy of its own.
 func sample(t testing.TB) *gitRepo {
 	t.Helper()
-	needGit(t)
-	sampleOnce.Do(func() { sampleDir = buildSample(t) })
-	if sampleDir == "" {
-		t.Fatal("the sample was not built")
-	}
-	g := &gitRepo{t, tempDir(t)}
-	if err := os.CopyFS(g.dir, os.DirFS(sampleDir)); err != nil {
+	return copyOf(t, shared(t, true))
+}
+
+// looseSample is a sample whose objects are files of their own.
+func looseSample(t testing.TB) *gitRepo {
+	t.Helper()
+	return copyOf(t, shared(t, false))
+}
+
+func copyOf(t testing.TB, from *gitRepo) *gitRepo {
+	t.Helper()
+	g := from.at(tempDir(t))
+	if err := os.CopyFS(g.dir, os.DirFS(from.dir)); err != nil {
 		t.Fatal(err)
 	}
 	return g
 }
 
-// The sample is built once and copied for each test. TestMain removes it.
-var (
-	sampleOnce sync.Once
-	sampleDir  string
-)
+// shared is the sample itself, for tests that only read. TestMain makes sure
+// that it was not changed.
+func shared(t testing.TB, packed bool) *gitRepo {
+	t.Helper()
+	needGit(t)
+	samples.once.Do(func() { buildSamples(t) })
+	if samples.dir == "" {
+		t.Fatal("the sample was not built")
+	}
+	name := "loose"
+	if packed {
+		name = "packed"
+	}
+	return &gitRepo{t, filepath.Join(samples.dir, name)}
+}
 
-func buildSample(t testing.TB) string {
+// The samples are built once. TestMain removes them.
+var samples struct {
+	once  sync.Once
+	dir   string
+	state string // what state gave when they were built
+}
+
+// state lists all files below a folder with what shows that they were written to.
+func state(dir string) (string, error) {
+	var b strings.Builder
+	err := fs.WalkDir(os.DirFS(dir), ".", func(name string, e fs.DirEntry, err error) error {
+		if err != nil {
+			return err
+		}
+		info, err := e.Info()
+		if err == nil {
+			fmt.Fprintln(&b, name, info.ModTime(), info.Mode(), info.Size())
+		}
+		return err
+	})
+	return b.String(), err
+}
+
+func buildSamples(t testing.TB) {
 	t.Helper()
 	dir, err := os.MkdirTemp("", "revision-sample")
+	if err == nil {
+		dir, err = filepath.EvalSymlinks(dir)
+	}
 	if err != nil {
 		t.Fatal(err)
 	}
-	g := &gitRepo{t, dir}
+	loose, packed := (&gitRepo{t, filepath.Join(dir, "loose")}), (&gitRepo{t, filepath.Join(dir, "packed")})
+	samples.dir = dir // so that it is removed in any case
+	buildSample(loose)
+	if err := os.CopyFS(packed.dir, os.DirFS(loose.dir)); err != nil {
+		t.Fatal(err)
+	}
+	packed.git("repack", "-adf", "--quiet")
+	if samples.state, err = state(dir); err != nil {
+		t.Fatal(err)
+	}
+}
+
+func buildSample(g *gitRepo) {
+	g.t.Helper()
+	if err := os.Mkdir(g.dir, 0o755); err != nil {
+		g.t.Fatal(err)
+	}
 	g.git("init", "--quiet", "--initial-branch=main")
 	var s stream
 	c1 := s.commit("refs/heads/main", 1767000000, "", "Start\n", nil,
@@ -161,7 +223,6 @@ func buildSample(t testing.TB) string {
 		file{"network/Vägar/smal bro.csv", "100644", "ö\n"},
 		file{"network/quote\"d\tand\\back", "100644", "x\n"},
 		file{"elsewhere.txt", "100644", "not in the folder\n"},
-		file{"z-large.csv", "100644", strings.Repeat("0.000,1.000,60\n", 75000)}, // more than 1 MiB
 	)
 	c2 := s.commit("refs/heads/main", 1767001000, "", "Raise the first\n\nBody line one,\nline two.\n", []int{c1}, file{"network/speed.csv", "100644", table(1)})
 	c3 := s.commit("refs/heads/main", 1767002000, "encoding ISO-8859-1", "Sm\xe5l bro\n\n\xd6ver \xe5n.\n", []int{c2}, file{"network/speed.csv", "100644", table(2)})
@@ -186,5 +247,4 @@ func buildSample(t testing.TB) string {
 	g.git("tag", "-a", "-m", "tag of a blob", "a-blob", "main:network/speed.csv")
 	g.git("tag", "light-blob", "main:network/empty.csv")
 	g.git("reset", "--quiet", "--hard", "main")
-	return dir
 }

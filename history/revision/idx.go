@@ -73,7 +73,10 @@ func (x *packIndex) readHeader() error {
 		return errors.New("cut short")
 	}
 	if !bytes.Equal(head[:8], []byte("\xfftOc\x00\x00\x00\x02")) {
-		return errors.New("not of version 2; `git repack -ad` writes it anew")
+		if x.old(head[:256*4]) {
+			return errOldIndex
+		}
+		return errors.New("does not begin as one of version 2")
 	}
 	last := uint32(0)
 	for i := range x.fanout {
@@ -88,6 +91,22 @@ func (x *packIndex) readHeader() error {
 		return errors.New("cut short")
 	}
 	return nil
+}
+
+var errOldIndex = errors.New("is of version 1, only version 2 is supported")
+
+// old tells whether a file is an index of version 1: that begins with the 256
+// counts, then come for each object an offset and a hash, then two checksums.
+func (x *packIndex) old(counts []byte) bool {
+	last := uint32(0)
+	for i := 0; i < len(counts); i += 4 {
+		n := binary.BigEndian.Uint32(counts[i:])
+		if n < last {
+			return false
+		}
+		last = n
+	}
+	return x.size == 256*4+int64(last)*(4+hashSize)+2*hashSize
 }
 
 func (x *packIndex) count() int64 { return int64(x.fanout[255]) }

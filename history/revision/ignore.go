@@ -91,11 +91,30 @@ func (f *ignoreFile) match(name string, isDir, fold bool) (excluded, matched boo
 			if wildmatch(p.text, path.Base(rel), false, fold) {
 				return !p.negated, true
 			}
-		} else if wildmatch(p.text, rel, true, fold) {
+		} else if p.matchPath(rel, fold) {
 			return !p.negated, true
 		}
 	}
 	return false, false
+}
+
+// matchPath matches a path as git does: the text before the first special
+// character is compared by itself, and only what is behind it is matched as a
+// pattern of its own. So the stars of "a**/b" cross folders as those at the start
+// of a pattern do, against what gitignore(5) says of stars beside other text.
+func (p pattern) matchPath(rel string, fold bool) bool {
+	n := strings.IndexAny(p.text, `*?[\`)
+	if n < 0 {
+		n = len(p.text)
+	}
+	if n > len(rel) {
+		return false
+	}
+	text, head := p.text[:n], rel[:n]
+	if fold {
+		text, head = lowerASCII(text), lowerASCII(head)
+	}
+	return text == head && wildmatch(p.text[n:], rel[n:], true, fold)
 }
 
 // ignores are the files that apply, the ones that prevail last.
@@ -119,8 +138,11 @@ func (g ignores) excluded(name string, isDir bool) bool {
 // with gives the rules for a folder that may have a file of its own.
 func (g ignores) with(root, dir string) (ignores, error) {
 	f, err := readIgnore(filepath.Join(root, filepath.FromSlash(dir), ".gitignore"), true)
-	if err != nil || f == nil {
-		return g, err
+	if err != nil {
+		return g, orUnreadable("ignore rules cannot be read", err)
+	}
+	if f == nil {
+		return g, nil
 	}
 	if dir != "." {
 		f.base = dir

@@ -6,7 +6,7 @@ import (
 	"os"
 	"path"
 	"path/filepath"
-	"regexp"
+	"slices"
 	"strings"
 	"testing"
 )
@@ -34,27 +34,29 @@ func TestIgnorePatterns(t *testing.T) {
 	checkPatterns(t, ignoreLines, ignoreNames, false)
 }
 
+// patternPieces are what chance puts together to lines of an ignore file.
+var patternPieces = []string{"a", "b", "a", "/", "/", "*", "**", "**/", "/**", "?", "[ab]", "[!a]", "[", "]", "-", "\\", "!", " ", "[a-b]", "."}
+
+// draw puts together up to n pieces.
+func draw(random *rand.Rand, pieces []string, n int) string {
+	var b strings.Builder
+	for range 1 + random.IntN(n) {
+		b.WriteString(pieces[random.IntN(len(pieces))])
+	}
+	return b.String()
+}
+
 // TestIgnoreRandom does the same with lines that chance put together.
 func TestIgnoreRandom(t *testing.T) {
 	t.Parallel()
 	random := rand.New(rand.NewPCG(7, 7))
-	draw := func(pieces []string, n int) string {
-		var b strings.Builder
-		for range 1 + random.IntN(n) {
-			b.WriteString(pieces[random.IntN(len(pieces))])
-		}
-		return b.String()
-	}
 	var patterns, names []string
-	for len(patterns) < 400 {
-		p := draw([]string{"a", "b", "a", "/", "/", "*", "**", "**/", "/**", "?", "[ab]", "[!a]", "[", "]", "-", "\\", "!", " ", "[a-b]", "."}, 7)
-		if !starsAfterText.MatchString(p) {
-			patterns = append(patterns, p)
-		}
+	for len(patterns) < 300 {
+		patterns = append(patterns, draw(random, patternPieces, 7))
 	}
 	seen := map[string]bool{}
 	for len(names) < 60 {
-		name := path.Clean(draw([]string{"a", "b", "ab", "/", "/", "-", "]", ".", "\\", " "}, 6))
+		name := path.Clean(draw(random, []string{"a", "b", "ab", "/", "/", "-", "]", ".", "\\", " "}, 6))
 		if name = strings.Trim(name, "/"); name == "" || name == "." || strings.HasPrefix(name, "..") || seen[name] {
 			continue
 		}
@@ -64,16 +66,56 @@ func TestIgnoreRandom(t *testing.T) {
 	checkPatterns(t, patterns, names, false)
 }
 
-// starsAfterText are patterns such as "a**/b", see TestIgnoreStarsAfterText.
-var starsAfterText = regexp.MustCompile(`^!?/?[^*?[\\]*[^*?[\\/]\*\*+(/|$)`)
-
 // TestIgnoreStarsAfterText: git compares the text before the first special
 // character by itself and begins to match behind it. So "**/" right after the
 // text crosses folders as at the start of a pattern, against gitignore(5).
 func TestIgnoreStarsAfterText(t *testing.T) {
 	t.Parallel()
-	t.Skip("BUG: the stars of a**/b are taken as one star, git's crosses folders")
-	checkPatterns(t, []string{"a**/b", "a/x**/b", "a/b**"}, ignoreNames, false)
+	checkPatterns(t, []string{
+		"a**/b", "a/x**/b", "a/b**", "]**/*", "x/a**", "/a**", "/**a/b", "a**/**/b", "a***/b", "a\\**/b", "a?**/b", "a/**b", "a**b/", "!a**/b", "/a**/x", "A**/b",
+		`**\/b`, `a\/**/b`, `*\/**/b`, `x/**\/b`, `?\/**`,
+	}, ignoreNames, false)
+	checkPatterns(t, []string{"A**/b", "a/X**/B", "a/B**"}, ignoreNames, true)
+}
+
+// TestIgnoreListed lays out real files beside lines that chance put together, and
+// compares what is listed with git ls-files.
+func TestIgnoreListed(t *testing.T) {
+	t.Parallel()
+	random := rand.New(rand.NewPCG(9, 9))
+	g := newGit(t)
+	for i := range 60 {
+		for _, name := range []string{"a/a", "a/b/a", "a/b/ab", "a/]/b", "ab/b/b.a", "b/a/a", "b/b", "]/a", "c"} {
+			g.write(fmt.Sprintf("d%d/%s", i, name), "")
+		}
+		var rules string
+		for range 1 + random.IntN(3) {
+			rules += draw(random, patternPieces, 6) + "\n"
+		}
+		g.write(fmt.Sprintf("d%d/.gitignore", i), rules)
+	}
+	fsys, err := g.open().Working(".")
+	if err != nil {
+		t.Fatal(err)
+	}
+	want := split(g.git("ls-files", "--others", "--exclude-standard", "-z"))
+	slices.Sort(want)
+	got := walkNames(t, fsys)
+	if len(got) < 100 || len(got) > 500 {
+		t.Errorf("%d files listed are no test", len(got))
+	}
+	for _, name := range got {
+		if _, ok := slices.BinarySearch(want, name); !ok {
+			dir, _, _ := strings.Cut(name, "/")
+			t.Errorf("%q is listed here and not by git: %q", name, readFile(t, g.path(dir+"/.gitignore")))
+		}
+	}
+	for _, name := range want {
+		if _, ok := slices.BinarySearch(got, name); !ok {
+			dir, _, _ := strings.Cut(name, "/")
+			t.Errorf("%q is listed by git and not here: %q", name, readFile(t, g.path(dir+"/.gitignore")))
+		}
+	}
 }
 
 // TestIgnoreCase has core.ignoreCase on.

@@ -3,6 +3,7 @@ package revision
 import (
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 
@@ -13,6 +14,12 @@ import (
 // way that git has (git-repack(1), git-pack-objects(1), git-worktree(1),
 // gitrepository-layout(5)).
 func TestKinds(t *testing.T) {
+	// Those that need objects in files of their own, and those that only read.
+	loose := []string{"several packs", "several packs and one index", "packs and loose", "packed and loose twice"}
+	read := []string{
+		"loose", "bare", "linked worktree of a bare repository", "bare inside a working tree", "git folder itself", "folder below", "reached by a link",
+		"alternates, absolute", "alternates, relative", "alternates, quoted", "alternates of alternates",
+	}
 	for name, build := range map[string]func(t *testing.T, g *gitRepo) *gitRepo{
 		"loose": func(t *testing.T, g *gitRepo) *gitRepo { return g },
 		"packed, offset deltas": func(t *testing.T, g *gitRepo) *gitRepo {
@@ -57,12 +64,9 @@ func TestKinds(t *testing.T) {
 			return g.at(dir)
 		},
 		"bare inside a working tree": func(t *testing.T, g *gitRepo) *gitRepo {
-			g.git("clone", "--quiet", "--mirror", g.dir, g.path("inner/bare"))
 			outer := newGit(t)
 			outer.commit("outer")
-			if err := os.Rename(g.path("inner"), outer.path("inner")); err != nil {
-				t.Fatal(err)
-			}
+			g.git("clone", "--quiet", "--mirror", g.dir, outer.path("inner/bare"))
 			return g.at(outer.path("inner/bare"))
 		},
 		"git folder itself": func(t *testing.T, g *gitRepo) *gitRepo { return g.at(g.path(".git")) },
@@ -116,7 +120,14 @@ func TestKinds(t *testing.T) {
 	} {
 		t.Run(name, func(t *testing.T) {
 			t.Parallel()
-			g := build(t, sample(t))
+			from := sample
+			switch {
+			case slices.Contains(loose, name):
+				from = looseSample
+			case slices.Contains(read, name):
+				from = func(t testing.TB) *gitRepo { return shared(t, name == "bare") }
+			}
+			g := build(t, from(t))
 			checkAll(t, &gitRepo{t, g.dir}, openDir(t, g.dir))
 		})
 	}

@@ -56,6 +56,9 @@ func discover(dir string) (layout, error) {
 }
 
 func noRepository(dir string, err error) *Error {
+	if errors.Is(err, fs.ErrPermission) {
+		return unreadable(fmt.Sprintf("whether there is a git repository at %q cannot be seen", dir), err)
+	}
 	return &Error{
 		Kind: ErrNoRepository, Text: fmt.Sprintf("no git repository at %q", dir), Err: err,
 		Hint: "run inside a repository or name one with --repo",
@@ -68,15 +71,17 @@ func inspect(dir string) (bool, layout, error) {
 	info, err := os.Stat(dotGit)
 	switch {
 	case errors.Is(err, fs.ErrNotExist):
-		if !isGitDir(dir) {
-			return false, layout{}, nil
+		if ok, err := isGitDir(dir); !ok {
+			return false, layout{}, err
 		}
 		l, err := atGitDir(dir, filepath.Base(dir) == ".git")
 		return true, l, err
 	case err != nil:
 		return false, layout{}, err
 	case info.IsDir():
-		if !isGitDir(dotGit) {
+		if ok, err := isGitDir(dotGit); err != nil {
+			return false, layout{}, err
+		} else if !ok {
 			return false, layout{}, fmt.Errorf("%q lacks HEAD, objects or refs", dotGit)
 		}
 		l, err := atGitDir(dotGit, true)
@@ -86,7 +91,9 @@ func inspect(dir string) (bool, layout, error) {
 	if err != nil {
 		return false, layout{}, err
 	}
-	if !isGitDir(target) {
+	if ok, err := isGitDir(target); err != nil {
+		return false, layout{}, err
+	} else if !ok {
 		return false, layout{}, fmt.Errorf("%q points to %q, which is no git folder", dotGit, target)
 	}
 	l, err := atGitDir(target, false)
@@ -122,22 +129,33 @@ func atGitDir(dir string, beside bool) (layout, error) {
 }
 
 // isGitDir applies git's own test: HEAD, and an object and a reference folder
-// there or in the common folder.
-func isGitDir(dir string) bool {
+// there or in the common folder. The error says that these may not be looked at.
+func isGitDir(dir string) (bool, error) {
 	if info, err := os.Lstat(filepath.Join(dir, "HEAD")); err != nil || info.IsDir() {
-		return false
+		return false, refused(err)
 	}
 	common := dir
-	if text, err := readSmall(filepath.Join(dir, "commondir")); err == nil {
+	text, err := readSmall(filepath.Join(dir, "commondir"))
+	if err == nil {
 		common = resolvePath(dir, strings.TrimSpace(text))
+	} else if err = refused(err); err != nil {
+		return false, err
 	}
 	for _, name := range []string{"objects", "refs"} {
 		info, err := os.Stat(filepath.Join(common, name))
 		if err != nil || !info.IsDir() {
-			return false
+			return false, refused(err)
 		}
 	}
-	return true
+	return true, nil
+}
+
+// refused keeps an error that is about rights, and no other.
+func refused(err error) error {
+	if errors.Is(err, fs.ErrPermission) {
+		return err
+	}
+	return nil
 }
 
 // readGitFile gives the folder that a .git file points to.

@@ -52,7 +52,7 @@ func (r *Repo) newLister() (*lister, error) {
 		}
 	}
 	if l.ignores, err = r.userIgnores(); err != nil {
-		return nil, fmt.Errorf("ignore rules cannot be read: %w", err)
+		return nil, orUnreadable("ignore rules cannot be read", err)
 	}
 	return l, nil
 }
@@ -76,7 +76,7 @@ func (l *lister) list(folder string) ([]*node, error) {
 		case errors.Is(err, fs.ErrNotExist) || strings.EqualFold(part, ".git"):
 			return nil, &stop{part, fs.ErrNotExist}
 		case err != nil:
-			return nil, err
+			return nil, orUnreadable(fmt.Sprintf("folder %q cannot be seen", at), err)
 		case l.tracked[at] == modeGitlink || info.IsDir() && !l.folders[at] && l.otherRepository(at):
 			return nil, &stop{part, errIsModule}
 		case info.Mode().IsRegular():
@@ -103,7 +103,7 @@ func (l *lister) walk(dir string, ignored bool, g ignores, depth int) ([]*node, 
 	}
 	files, err := os.ReadDir(filepath.Join(l.root, filepath.FromSlash(dir)))
 	if err != nil {
-		return nil, err
+		return nil, orUnreadable(fmt.Sprintf("folder %q cannot be listed", dir), err)
 	}
 	var out []*node
 	for _, f := range files { // sorted by name
@@ -191,7 +191,7 @@ func (l *lister) file(f fs.DirEntry, tracked uint32) (*node, error) {
 		return nil, nil
 	}
 	if err != nil {
-		return nil, err
+		return nil, orUnreadable("a file cannot be seen", err)
 	}
 	if info.Mode()&0o100 != 0 {
 		return &node{mode: modeExec}, nil
@@ -208,8 +208,13 @@ func (l *lister) otherRepository(name string) bool {
 		return false
 	}
 	if info.IsDir() {
-		return isGitDir(dotGit)
+		ok, _ := isGitDir(dotGit)
+		return ok
 	}
 	target, err := readGitFile(dotGit)
-	return err == nil && isGitDir(target)
+	if err != nil {
+		return false
+	}
+	ok, _ := isGitDir(target)
+	return ok
 }

@@ -117,6 +117,7 @@ func TestFormats(t *testing.T) {
 		_, err := Open(g.dir)
 		wantClass(t, err, ErrUnsupported, g.dir, `"reftable"`, "--ref-format=files")
 	})
+	g := newGit(t)
 	// The same by their configuration alone, for versions of git without them. A
 	// reftable repository has a HEAD that leads nowhere (gitrepository-layout(5)).
 	for name, c := range map[string]struct {
@@ -134,7 +135,6 @@ func TestFormats(t *testing.T) {
 		"sha1 and files":     {"[core]\nrepositoryformatversion = 1\n[extensions]\nobjectFormat = SHA1\nRefStorage = files\npreciousObjects = true\nnoop = 1\n", nil},
 	} {
 		t.Run(name+" by its configuration", func(t *testing.T) {
-			g := newGit(t)
 			g.write(".git/config", c.config)
 			r, err := Open(g.dir)
 			if c.parts == nil {
@@ -149,13 +149,11 @@ func TestFormats(t *testing.T) {
 		})
 	}
 	t.Run("broken configuration", func(t *testing.T) {
-		g := newGit(t)
 		g.write(".git/config", "[core\nx")
 		_, err := Open(g.dir)
 		wantClass(t, err, ErrCorrupt, "configuration", g.dir)
 	})
 	t.Run("configuration in a circle", func(t *testing.T) {
-		g := newGit(t)
 		g.write(".git/config", "[include]\n\tpath = config\n")
 		_, err := Open(g.dir)
 		wantClass(t, err, ErrCorrupt, "include one another")
@@ -249,25 +247,45 @@ func TestSparse(t *testing.T) {
 	}
 }
 
-// TestUnreadable: what may not be read is not taken for absent.
+// TestUnreadable: what may not be read is neither absent nor damaged.
 func TestUnreadable(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
 	if os.Getuid() <= 0 {
 		t.Skip("permissions do not hold back this user")
 	}
-	hash := g.git("rev-parse", "main:network/speed.csv")
-	tip := g.git("rev-parse", "main")
-	for _, c := range []struct {
-		what, path string
-		read       func() error
+	g := looseSample(t)
+	hash, tip := g.git("rev-parse", "main:network/speed.csv"), g.git("rev-parse", "main")
+	g.write(".git/info/exclude", "*.tmp\n")
+	packed := sample(t)
+	packed.git("update-ref", "--create-reflog", "-m", "x", "refs/heads/side", "main")
+	disk := func(name string) error {
+		fsys, err := g.open().Working("network")
+		if err == nil {
+			_, err = fs.ReadFile(fsys, name)
+		}
+		return err
+	}
+	for what, c := range map[string]struct {
+		path string
+		read func() error
 	}{
-		{"an object", g.loose(hash), func() error { return readAll(g.open(), tip) }},
-		{"a folder on disk", g.path("network/routes"), func() error { _, err := g.open().Working("network"); return err }},
-		{"the objects", g.path(".git/objects"), func() error { _, err := Open(g.dir); return err }},
-		{"the references", g.path(".git/refs/heads"), func() error { _, err := g.open().Resolve("main"); return err }},
-		{"the packs", g.path(".git/objects/pack"), func() error { return readAll(g.open(), tip) }},
-		{"the folder", g.dir, func() error { _, err := Open(g.dir); return err }},
+		"an object":                {g.loose(hash), func() error { return readAll(g.open(), tip) }},
+		"a folder of objects":      {filepath.Dir(g.loose(hash)), func() error { _, err := g.open().Resolve(hash[:6]); return err }},
+		"a folder on disk":         {g.path("network/routes"), func() error { return disk("speed.csv") }},
+		"a file on disk":           {g.path("network/speed.csv"), func() error { return disk("speed.csv") }},
+		"the objects":              {g.path(".git/objects"), func() error { _, err := Open(g.dir); return err }},
+		"the references":           {g.path(".git/refs/heads"), func() error { _, err := g.open().Resolve("main"); return err }},
+		"a reference":              {g.path(".git/refs/heads/main"), func() error { _, err := g.open().Resolve("main"); return err }},
+		"the packs":                {g.path(".git/objects/pack"), func() error { return readAll(g.open(), tip) }},
+		"a pack":                   {glob(t, packed.path(".git/objects/pack/*.pack"))[0], func() error { return readAll(packed.open(), tip) }},
+		"a pack index":             {glob(t, packed.path(".git/objects/pack/*.idx"))[0], func() error { return readAll(packed.open(), tip) }},
+		"a reflog":                 {packed.path(".git/logs/refs/heads/side"), func() error { _, err := packed.open().Resolve("side@{0}"); return err }},
+		"the list of files":        {g.path(".git/index"), func() error { return disk("speed.csv") }},
+		"the configuration":        {g.path(".git/config"), func() error { _, err := Open(g.dir); return err }},
+		"the git folder":           {g.path(".git"), func() error { _, err := Open(g.dir); return err }},
+		"the folder":               {g.dir, func() error { _, err := Open(g.dir); return err }},
+		"the folder above":         {g.dir, func() error { _, err := Open(g.path("network")); return err }},
+		"the user's own exclusion": {g.path(".git/info"), func() error { return disk("speed.csv") }},
 	} {
 		info, err := os.Stat(c.path)
 		if err != nil {
@@ -278,9 +296,30 @@ func TestUnreadable(t *testing.T) {
 		}
 		err = c.read()
 		os.Chmod(c.path, info.Mode())
-		t.Logf("%s: %v", c.what, err)
-		if !errors.Is(err, fs.ErrPermission) || errors.Is(err, fs.ErrNotExist) || errors.Is(err, ErrMissingObject) {
-			t.Errorf("%s: %v", c.what, err)
+		t.Run(what, func(t *testing.T) {
+			wantClass(t, err, ErrUnreadable, "permission denied", "hint: see to it")
+			if !errors.Is(err, fs.ErrPermission) || errors.Is(err, fs.ErrNotExist) {
+				t.Errorf("error %v", err)
+			}
+		})
+	}
+	checkAll(t, g, g.open())
+}
+
+// TestUnreadableClass is for users whom no permissions hold back.
+func TestUnreadableClass(t *testing.T) {
+	t.Parallel()
+	refusal := &fs.PathError{Op: "open", Path: "x", Err: fs.ErrPermission}
+	at := &node{path: "in/x.csv"}
+	for name, err := range map[string]error{
+		"corrupt": corrupt("reference", refusal), "no repository": noRepository("x", refusal), "on disk": diskError("open", at, refusal),
+		"other": orUnreadable("folder", refusal), "classed already": orUnreadable("folder", unreadable("file", refusal)),
+	} {
+		t.Run(name, func(t *testing.T) { wantClass(t, err, ErrUnreadable, "permission denied", "hint: see to it") })
+	}
+	for name, err := range map[string]error{"on disk": diskError("open", at, fs.ErrNotExist), "other": orUnreadable("folder", fs.ErrNotExist)} {
+		if err != fs.ErrNotExist {
+			t.Errorf("%s: %v", name, err)
 		}
 	}
 }

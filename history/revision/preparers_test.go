@@ -90,7 +90,7 @@ func TestPreparers(t *testing.T) {
 // TestPreparersOfMerge: everybody on either side of a merge counts, by Between.
 func TestPreparersOfMerge(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := shared(t, true)
 	r := g.open()
 	commits, complete, err := r.Between(t.Context(), g.git("rev-parse", "v1^{commit}"), g.git("rev-parse", "main"))
 	if err != nil || !complete {

@@ -130,7 +130,7 @@ func (r *Repo) reflog(full string) ([]reflogLine, error) {
 		return nil, nil
 	}
 	if err != nil {
-		return nil, err
+		return nil, corrupt(fmt.Sprintf("reflog of %q cannot be read", full), err)
 	}
 	var out []reflogLine
 	for len(data) > 0 {

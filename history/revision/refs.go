@@ -17,7 +17,7 @@ import (
 
 const (
 	maxPackedRefs    = 256 << 20 // bytes
-	maxSymbolicDepth = 5         // references that point to references; git's own limit
+	maxSymbolicDepth = 5         // references that are read in a row; git's own limit
 )
 
 // validRef applies the rules of git-check-ref-format(1) that keep a name inside
@@ -68,7 +68,7 @@ func (r *Repo) refDir(name string) string {
 // such reference. unborn is the branch that does not exist yet, if the name is
 // symbolic and leads to one.
 func (r *Repo) ref(name string) (h plumbing.Hash, ok bool, unborn string, err error) {
-	for range maxSymbolicDepth + 1 {
+	for range maxSymbolicDepth {
 		if !validRef(name) {
 			return h, false, "", nil
 		}

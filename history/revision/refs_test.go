@@ -107,14 +107,10 @@ func TestSymbolicRefs(t *testing.T) {
 	for i := 2; i <= 5; i++ {
 		g.git("symbolic-ref", fmt.Sprintf("refs/heads/s%d", i), fmt.Sprintf("refs/heads/s%d", i-1))
 	}
-	checkResolve(t, g, g.open(), []string{"s1", "s2", "s3", "s4", "s4~1"})
+	checkResolve(t, g, g.open(), []string{"s1", "s2", "s3", "s4", "s4~1", "s5"})
 	g.git("symbolic-ref", "refs/heads/round", "refs/heads/round")
 	_, err := g.open().Resolve("round")
 	wantClass(t, err, ErrCorrupt, "too many references")
-	t.Run("one more", func(t *testing.T) {
-		t.Skip("BUG: a sixth reference in a row is read, git stops at five")
-		checkResolve(t, g, g.open(), []string{"s5"})
-	})
 }
 
 // TestUnborn: a repository without a commit, and a branch without one.

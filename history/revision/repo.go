@@ -33,7 +33,8 @@ type Repo struct {
 // Open opens the repository at or above a folder, for reading. Working trees,
 // linked worktrees, bare repositories and .git folders will do.
 //
-// The errors are of class ErrNoRepository, ErrUnsupported or ErrCorrupt.
+// The errors are of class ErrNoRepository, ErrUnsupported, ErrUnreadable or
+// ErrCorrupt.
 func Open(dir string) (*Repo, error) {
 	at, err := discover(dir)
 	if err != nil {
@@ -161,14 +162,34 @@ func (r *Repo) content(o *object, what string) ([]byte, error) {
 }
 
 func (r *Repo) missing(h plumbing.Hash, what string) *Error {
-	hint := "fetch it: `git fetch --refetch`, or use a complete clone"
-	if r.partial {
-		hint = "this is a partial clone: fetch what it left out with `git backfill` or `git fetch --refetch --no-filter`, or use a complete clone"
+	hint := r.lackingHint()
+	if hint == "" {
+		hint = "fetch it: `git fetch --refetch`, or use a complete clone"
 	}
 	return &Error{
 		Kind: ErrMissingObject, Text: fmt.Sprintf("object %s, needed for %s, is not in the repository", h, what),
 		Hint: hint,
 	}
+}
+
+// lackingHint says how to get what this repository lacks by its nature; "" where
+// it should lack nothing.
+func (r *Repo) lackingHint() string {
+	var hints []string
+	for _, dir := range r.store.lacking {
+		hints = append(hints, fmt.Sprintf("this repository borrows objects from the folder %q, which is not there: bring it back", dir))
+	}
+	if len(r.shallow) > 0 {
+		hints = append(hints, "this is a shallow clone: fetch the rest with `git fetch --unshallow`")
+	}
+	if r.partial {
+		// Only later versions of git have backfill.
+		hints = append(hints, "this is a partial clone: fetch what it left out with `git fetch --refetch --no-filter` or `git backfill`")
+	}
+	if hints == nil {
+		return ""
+	}
+	return strings.Join(append(hints, "or use a complete clone"), "; ")
 }
 
 // tree gives the entries of a tree object, sorted by name.

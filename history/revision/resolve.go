@@ -23,7 +23,7 @@ const (
 // choose by date or by the text of a message are refused.
 //
 // The errors are of class ErrUnknown, ErrAmbiguous, ErrNotCommit, ErrShallow,
-// ErrMissingObject or ErrCorrupt.
+// ErrMissingObject, ErrUnsupported, ErrUnreadable or ErrCorrupt.
 func (r *Repo) Resolve(rev string) (Commit, error) {
 	h, err := r.resolve(rev)
 	if err != nil {
@@ -153,7 +153,7 @@ func (r *Repo) resolveBase(base, rev string) (plumbing.Hash, error) {
 	}
 	if h, ok := parseHash(base); ok {
 		if _, err := r.store.find(h); errors.Is(err, errAbsent) {
-			return h, unknown(rev, "no such object here")
+			return h, r.unknownHash(rev, "no such object here")
 		} else if err != nil {
 			return h, err
 		}
@@ -178,7 +178,20 @@ func (r *Repo) resolveBase(base, rev string) (plumbing.Hash, error) {
 			return h, err
 		}
 	}
+	if len(base) >= minAbbrev && isHex(base) {
+		return h, r.unknownHash(rev, "")
+	}
 	return h, unknown(rev, "")
+}
+
+// unknownHash is unknown for a hash: a repository that lacks objects may lack
+// just that one.
+func (r *Repo) unknownHash(rev, why string) *Error {
+	e := unknown(rev, why)
+	if hint := r.lackingHint(); hint != "" {
+		e.Hint = hint
+	}
+	return e
 }
 
 // resolveName looks a name up under each of the rules. Names that mean different
@@ -212,10 +225,20 @@ func (r *Repo) resolveName(name, rev string) (plumbing.Hash, bool, error) {
 	if differ {
 		return first, false, &Error{
 			Kind: ErrAmbiguous, Text: fmt.Sprintf("revision %q is ambiguous: %s", rev, strings.Join(hits, ", ")),
-			Hint: "write the full name, such as " + hits[0],
+			Hint: ambiguousHint(name, hits),
 		}
 	}
 	return first, len(hits) > 0, nil
+}
+
+// ambiguousHint says how to name one of several references. Where the name is
+// already full, as HEAD is, it can only be made clear again by taking the other
+// one away.
+func ambiguousHint(name string, hits []string) string {
+	if hits[0] != name {
+		return "write the full name, such as " + hits[0]
+	}
+	return fmt.Sprintf("for the second write %s; for the first write the hash of its commit, or rename %s", hits[1], hits[1])
 }
 
 // resolveAbbrev finds the commit, or the tag of one, whose hash begins with

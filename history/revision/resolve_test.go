@@ -1,8 +1,11 @@
 package revision
 
 import (
+	"crypto/sha1"
+	"encoding/hex"
 	"fmt"
 	"slices"
+	"strconv"
 	"strings"
 	"testing"
 )
@@ -54,7 +57,7 @@ func TestResolve(t *testing.T) {
 // and by its parents' numbers.
 func TestResolveFull(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := shared(t, false)
 	var names []string
 	for _, line := range lines(g.git("rev-list", "--all", "--parents")) {
 		f := strings.Fields(line)
@@ -64,14 +67,14 @@ func TestResolveFull(t *testing.T) {
 		}
 	}
 	checkResolve(t, g, g.open(), names)
-	g.git("gc", "--quiet")
-	checkResolve(t, g, g.open(), names)
+	packed := shared(t, true)
+	checkResolve(t, packed, packed.open(), names)
 }
 
 // TestResolveErrors has the class and the text of each refusal.
 func TestResolveErrors(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := shared(t, true)
 	r := g.open()
 	tree := g.git("rev-parse", "main^{tree}")
 	for _, c := range []struct {
@@ -115,14 +118,13 @@ func TestResolveAmbiguous(t *testing.T) {
 	tree := g.git("rev-parse", "main^{tree}")
 
 	// A blob with the digits of a commit: git takes the commit, as only that fits.
-	blob := search(t, first[:4], "blob", func(n int) string { return fmt.Sprintf("blob %d\n", n) })
+	blob := search(t, first[:4], "blob", "blob ")
 	g.object("blob", blob)
 	checkResolve(t, g, g.open(), []string{first[:4], first[:4] + "~1", "x-1-g" + first[:4]})
 
 	// A second commit: ambiguous, until there are more digits.
-	commit := search(t, first[:4], "commit", func(n int) string {
-		return fmt.Sprintf("tree %s\nauthor A <a@fernway.example> 1767000000 +0000\ncommitter A <a@fernway.example> 1767000000 +0000\n\n%d\n", tree, n)
-	})
+	commit := search(t, first[:4], "commit",
+		"tree "+tree+"\nauthor A <a@fernway.example> 1767000000 +0000\ncommitter A <a@fernway.example> 1767000000 +0000\n\n")
 	second := g.object("commit", commit)
 	r := g.open()
 	checkResolve(t, g, r, []string{first[:4], second, first})
@@ -133,26 +135,36 @@ func TestResolveAmbiguous(t *testing.T) {
 	g.git("repack", "-ad", "--quiet") // one of the two is packed now, the other loose
 	_, err = g.open().Resolve(strings.ToUpper(first[:4]))
 	wantClass(t, err, ErrAmbiguous)
+	var longer []string
 	for n := 4; n <= 40; n++ {
 		if both[0][:n] != both[1][:n] {
-			checkResolve(t, g, r, []string{both[0][:n], both[1][:n]})
+			longer = append(longer, both[0][:n], both[1][:n])
 		}
 	}
+	checkResolve(t, g, r, longer)
 
 	// Only a blob and a tree have these digits.
-	data := search(t, tree[:4], "blob", func(n int) string { return fmt.Sprintf("another %d\n", n) })
+	data := search(t, tree[:4], "blob", "another ")
 	g.object("blob", data)
 	_, err = r.Resolve(tree[:4])
 	wantClass(t, err, ErrNotCommit, tree[:4])
 }
 
-// search gives the first content whose hash begins with some digits.
-func search(t *testing.T, digits, kind string, content func(int) string) string {
+// search gives the first content, a text with a number behind it, whose hash
+// begins with four digits.
+func search(t *testing.T, digits, kind, text string) string {
 	t.Helper()
-	for n := range 5_000_000 {
-		s := content(n)
-		if sum := sumOf(kind, s); strings.HasPrefix(sum, digits) {
-			return s
+	want, err := hex.DecodeString(digits)
+	if err != nil {
+		t.Fatal(err)
+	}
+	const least = 10_000_000 // all numbers have eight digits
+	object := fmt.Appendf(nil, "%s %d\x00%s", kind, len(text)+9, text)
+	head := len(object)
+	for n := least; n < 2*least; n++ {
+		object = append(strconv.AppendInt(object[:head], int64(n), 10), '\n')
+		if sum := sha1.Sum(object); sum[0] == want[0] && sum[1] == want[1] {
+			return fmt.Sprintf("%s%d\n", text, n)
 		}
 	}
 	t.Fatal("no object found")
@@ -172,6 +184,15 @@ func TestResolveTagAndBranch(t *testing.T) {
 	_, err := r.Resolve("v1~1")
 	wantClass(t, err, ErrAmbiguous, `"v1~1"`, "refs/tags/v1, refs/heads/v1", "write the full name")
 	checkResolve(t, g, r, []string{"tags/v1", "heads/v1", "refs/tags/v1", "same", "main", "same~1"})
+
+	// HEAD is a full name already, so to write the full name is no way out.
+	g.git("update-ref", "refs/heads/HEAD", "side")
+	g.git("update-ref", "refs/heads/refs/tags/light", "side")
+	for name, other := range map[string]string{"HEAD": "refs/heads/HEAD", "@": "refs/heads/HEAD", "refs/tags/light": "refs/heads/refs/tags/light"} {
+		_, err := r.Resolve(name)
+		wantClass(t, err, ErrAmbiguous, `"`+name+`"`, "write "+other, "the hash of its commit", "rename "+other)
+		checkResolve(t, g, r, []string{other})
+	}
 }
 
 // TestResolveReflog checks NAME@{N}, @{-N} and @{upstream} against git.

@@ -19,8 +19,8 @@ import (
 // followed. A file's Read checks the content against its hash at the end, so who
 // stops early has read unchecked bytes.
 //
-// The errors are of class ErrUnknown, ErrNoFolder, ErrMissingObject or
-// ErrCorrupt.
+// The errors are of class ErrUnknown, ErrNoFolder, ErrMissingObject,
+// ErrUnsupported, ErrUnreadable or ErrCorrupt.
 func (r *Repo) Snapshot(commit string, folder string) (fs.FS, error) {
 	h, ok := parseHash(commit)
 	if !ok {
@@ -115,8 +115,8 @@ func (s *snapshot) walk(name string) (treeEntry, error) {
 // lookup is walk for a path as it comes from a caller, with the error that fs.FS
 // asks for.
 func (s *snapshot) lookup(op, name string) (treeEntry, error) {
-	if !fs.ValidPath(name) {
-		return treeEntry{}, pathError(op, name, fs.ErrInvalid)
+	if err := checkPath(op, name); err != nil {
+		return treeEntry{}, err
 	}
 	at, err := s.walk(name)
 	if err != nil {

@@ -8,6 +8,9 @@ import (
 	"strings"
 	"testing"
 	"testing/fstest"
+	"unicode/utf8"
+
+	"github.com/go-git/go-git/v5/plumbing"
 )
 
 // TestSnapshotFS has the standard library's own test of a file system. Links and
@@ -15,7 +18,7 @@ import (
 // under test have none.
 func TestSnapshotFS(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := shared(t, true)
 	r := g.open()
 	main := g.git("rev-parse", "main")
 	for folder, files := range map[string][]string{
@@ -41,7 +44,7 @@ func TestSnapshotFS(t *testing.T) {
 // TestSnapshotFolder has the ways to write a folder and those that are refused.
 func TestSnapshotFolder(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := shared(t, true)
 	r := g.open()
 	main := g.git("rev-parse", "main")
 	for _, folder := range []string{"network", "network/", "./network", "network/../network", "network//routes/.."} {
@@ -85,7 +88,7 @@ func TestSnapshotFolder(t *testing.T) {
 // does not allow.
 func TestSnapshotPaths(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := shared(t, true)
 	fsys, err := g.open().Snapshot(g.git("rev-parse", "main"), "network")
 	if err != nil {
 		t.Fatal(err)
@@ -232,22 +235,46 @@ func TestTrees(t *testing.T) {
 	wantClass(t, err, ErrCorrupt, "is a tree")
 }
 
-// TestNamesNotUTF8: fs.FS has no path that is not UTF-8. Such a file is listed and
-// cannot be opened; it is not passed over.
+// TestNamesNotUTF8: fs.FS has no path that is not UTF-8. Such a file or folder is
+// listed and cannot be opened, which is an error that has the name escaped; it is
+// not passed over.
 func TestNamesNotUTF8(t *testing.T) {
 	t.Parallel()
 	g := newGit(t)
 	blob := g.object("blob", "x\n")
-	fsys, err := g.open().Snapshot(g.commitTree(g.mktree("100644 "+blob+" v\xe4g.csv")), ".")
+	inner := g.mktree("100644 " + blob + " a")
+	fsys, err := g.open().Snapshot(g.commitTree(g.mktree("40000 "+inner+" b\xffr", "100644 "+blob+" v\xe4g.csv")), ".")
 	if err != nil {
 		t.Fatal(err)
 	}
 	entries, err := fs.ReadDir(fsys, ".")
-	if err != nil || len(entries) != 1 || entries[0].Name() != "v\xe4g.csv" {
+	if err != nil || len(entries) != 2 || entries[0].Name() != "b\xffr" || entries[1].Name() != "v\xe4g.csv" {
 		t.Fatal(entries, err)
 	}
-	if _, err := fs.ReadFile(fsys, "v\xe4g.csv"); !errors.Is(err, fs.ErrInvalid) {
-		t.Errorf("read: %v", err)
+	g.write("v\xe4g.csv", "x\n")
+	disk, err := g.open().Working(".")
+	if err != nil {
+		t.Fatal(err)
+	}
+	for name, call := range map[string]func(fs.FS, string) error{
+		"open":    func(f fs.FS, name string) error { _, err := f.Open(name); return err },
+		"read":    func(f fs.FS, name string) error { _, err := fs.ReadFile(f, name); return err },
+		"stat":    func(f fs.FS, name string) error { _, err := fs.Stat(f, name); return err },
+		"readdir": func(f fs.FS, name string) error { _, err := fs.ReadDir(f, name); return err },
+	} {
+		for _, f := range []fs.FS{fsys, disk} {
+			for path, escaped := range map[string]string{"v\xe4g.csv": `"v\xe4g.csv"`, "b\xffr": `"b\xffr"`, "b\xffr/a": `"b\xffr/a"`} {
+				err := call(f, path)
+				wantClass(t, err, ErrNotFile, name, escaped, "not UTF-8", "hint: rename")
+				var at *fs.PathError
+				if !errors.Is(err, fs.ErrInvalid) || !errors.As(err, &at) || at.Path != path || !utf8.ValidString(err.Error()) {
+					t.Errorf("%s: %v", name, err)
+				}
+			}
+			if err := call(f, "/\xff"); !errors.Is(err, fs.ErrInvalid) || errors.Is(err, ErrNotFile) {
+				t.Errorf("%s of a path that no spelling makes valid: %v", name, err)
+			}
+		}
 	}
 }
 
@@ -255,7 +282,7 @@ func TestNamesNotUTF8(t *testing.T) {
 // and keeps to it.
 func TestReadEnd(t *testing.T) {
 	t.Parallel()
-	g := sample(t)
+	g := shared(t, true)
 	fsys, err := g.open().Snapshot(g.git("rev-parse", "main"), "network")
 	if err != nil {
 		t.Fatal(err)
@@ -281,4 +308,36 @@ func TestReadEnd(t *testing.T) {
 		}
 		f.Close()
 	}
+}
+
+// TestLarge reads a file of more than 1 MiB, whose size is not believed before
+// its bytes have come, from each way in which objects are stored.
+func TestLarge(t *testing.T) {
+	t.Parallel()
+	g := newGit(t)
+	contents := []string{strings.Repeat("0.000,1.000,60\n", 75_000)}
+	contents = append(contents, contents[0]+"1.000,2.000,70\n")
+	for _, content := range contents {
+		g.write("large.csv", content)
+		g.commit("large")
+	}
+	check := func(g *gitRepo) {
+		t.Helper()
+		r := g.open()
+		for i, rev := range []string{"HEAD~1", "HEAD"} {
+			c, err := r.Resolve(rev)
+			if err != nil {
+				t.Fatal(err)
+			}
+			fsys, err := r.Snapshot(c.Hash, ".")
+			if err != nil {
+				t.Fatal(err)
+			}
+			checkContent(t, fsys, "large.csv", contents[i])
+		}
+	}
+	check(g)
+	g.git("repack", "-adf", "--quiet")
+	wantKind(t, g, plumbing.OFSDeltaObject)
+	check(g)
 }

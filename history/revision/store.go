@@ -20,10 +20,10 @@ import (
 )
 
 // maxAlternates bounds how many object folders a repository may borrow from;
-// maxAlternateDepth how deep they may lead to one another (git's own limit).
+// maxAlternateDepth how many may lead to one another in a row (git's own limit).
 const (
 	maxAlternates     = 64
-	maxAlternateDepth = 5
+	maxAlternateDepth = 6
 )
 
 // store reads the objects of a repository: loose ones, those in packs, and those
@@ -31,8 +31,9 @@ const (
 // position and shares no reader between calls, so it is safe for concurrent use
 // and two readers run side by side.
 type store struct {
-	dirs  []string // object folders, the repository's own first
-	bases baseCache
+	dirs    []string // object folders, the repository's own first
+	lacking []string // those that are named and not there, which hold it up only where they are needed
+	bases   baseCache
 
 	mu    sync.RWMutex
 	packs []*pack
@@ -84,8 +85,13 @@ func (s *store) addDir(dir string, depth int) error {
 		if !filepath.IsAbs(path) {
 			path = filepath.Join(dir, path)
 		}
-		if info, err := os.Stat(path); err != nil || !info.IsDir() {
-			return fmt.Errorf("alternate object folder %q, named in %q, is not there", line, dir)
+		info, err := os.Stat(path)
+		if errors.Is(err, fs.ErrPermission) {
+			return fmt.Errorf("alternate object folder %q, named in %q: %w", line, dir, err)
+		}
+		if err != nil || !info.IsDir() {
+			s.lacking = append(s.lacking, path)
+			continue
 		}
 		if err := s.addDir(path, depth+1); err != nil {
 			return err
@@ -125,7 +131,7 @@ func (s *store) current(again bool) ([]*pack, error) {
 	for _, dir := range s.dirs {
 		files, err := os.ReadDir(filepath.Join(dir, "pack"))
 		if err != nil && !errors.Is(err, fs.ErrNotExist) {
-			return nil, err
+			return nil, unreadable("packs cannot be listed", err)
 		}
 		for _, f := range files {
 			base, ok := strings.CutSuffix(f.Name(), ".idx")
@@ -136,6 +142,12 @@ func (s *store) current(again bool) ([]*pack, error) {
 			index, err := openIndex(name + ".idx")
 			if errors.Is(err, fs.ErrNotExist) {
 				continue // repacked a moment ago
+			}
+			if errors.Is(err, errOldIndex) {
+				return nil, &Error{
+					Kind: ErrUnsupported, Text: fmt.Sprintf("pack index %q", name+".idx"), Err: err,
+					Hint: "write it anew with `git repack -ad` in the repository it belongs to, where pack.indexVersion must not be set to 1",
+				}
 			}
 			if err != nil {
 				return nil, corrupt("pack index cannot be read", err)
@@ -216,7 +228,7 @@ func (s *store) find(h plumbing.Hash) (*object, error) {
 				continue
 			}
 			if err != nil {
-				return nil, err
+				return nil, unreadable(fmt.Sprintf("object %s cannot be read", h), err)
 			}
 			o := &object{hash: h, store: s, loose: name}
 			z, err := o.openLoose(f)
@@ -342,7 +354,7 @@ func (s *store) withPrefix(digits string, limit int) ([]plumbing.Hash, error) {
 		folder := digits[:2]
 		files, err := os.ReadDir(filepath.Join(dir, folder))
 		if err != nil && !errors.Is(err, fs.ErrNotExist) {
-			return nil, err
+			return nil, unreadable("objects cannot be listed", err)
 		}
 		for _, f := range files {
 			if h, ok := parseHash(folder + f.Name()); ok && hasPrefix(h, prefix, len(digits)) {

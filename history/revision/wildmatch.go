@@ -54,7 +54,7 @@ func (m *matcher) match(p, s string, start bool) bool {
 			if len(p) < 2 || p[1] != s[0] {
 				return false
 			}
-			p = p[2:]
+			c, p = p[1], p[2:]
 		default:
 			if c != s[0] {
 				return false
@@ -71,10 +71,11 @@ func (m *matcher) match(p, s string, start bool) bool {
 func (m *matcher) star(p, s string, start bool) bool {
 	rest := strings.TrimLeft(p, "*")
 	deep := !m.pathname
-	if stars := len(p) - len(rest); m.pathname && stars >= 2 && start && (rest == "" || rest[0] == '/') {
+	slash := strings.HasPrefix(rest, "/")
+	if stars := len(p) - len(rest); m.pathname && stars >= 2 && start && (rest == "" || slash || strings.HasPrefix(rest, `\/`)) {
 		deep = true
 		// "**/" also stands for no folder at all.
-		if rest != "" && m.match(rest[1:], s, true) {
+		if slash && m.match(rest[1:], s, true) {
 			return true
 		}
 	}

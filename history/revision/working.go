@@ -27,7 +27,7 @@ import (
 // convert differs from the committed one.
 //
 // The folder is written as for Snapshot. The errors are of class ErrBare,
-// ErrNoFolder, ErrUnsupported, ErrTooLarge or ErrCorrupt.
+// ErrNoFolder, ErrUnsupported, ErrTooLarge, ErrUnreadable or ErrCorrupt.
 func (r *Repo) Working(folder string) (fs.FS, error) {
 	if r.at.workTree == "" {
 		return nil, &Error{
@@ -67,8 +67,8 @@ type working struct {
 
 // lookup goes down a path in the list.
 func (w *working) lookup(op, name string) (*node, error) {
-	if !fs.ValidPath(name) {
-		return nil, pathError(op, name, fs.ErrInvalid)
+	if err := checkPath(op, name); err != nil {
+		return nil, err
 	}
 	at := w.root
 	if name == "." {
@@ -111,7 +111,7 @@ func (w *working) open(at *node) (*diskFile, error) {
 	}
 	root, err := os.OpenRoot(w.dir)
 	if err != nil {
-		return nil, err
+		return nil, diskError("open", at, err)
 	}
 	defer root.Close()
 	for i := range len(at.path) {
@@ -120,7 +120,7 @@ func (w *working) open(at *node) (*diskFile, error) {
 		}
 		info, err := root.Lstat(filepath.FromSlash(at.path[:i]))
 		if err != nil {
-			return nil, err
+			return nil, diskError("open", at, err)
 		}
 		if !info.IsDir() {
 			return nil, pathError("open", at.path, &stop{path.Base(at.path[:i]), errIsLink})
@@ -128,14 +128,14 @@ func (w *working) open(at *node) (*diskFile, error) {
 	}
 	before, err := root.Lstat(filepath.FromSlash(at.path))
 	if err != nil {
-		return nil, err
+		return nil, diskError("open", at, err)
 	}
 	if err := refusal(before.Mode()); err != nil {
 		return nil, pathError("open", at.path, err)
 	}
 	f, err := root.Open(filepath.FromSlash(at.path))
 	if err != nil {
-		return nil, err
+		return nil, diskError("open", at, err)
 	}
 	after, err := f.Stat()
 	if err == nil && !os.SameFile(before, after) {
@@ -146,6 +146,18 @@ func (w *working) open(at *node) (*diskFile, error) {
 		return nil, err
 	}
 	return &diskFile{f, w.info(at, after)}, nil
+}
+
+// diskError gives the class to what may not be read on disk.
+func diskError(op string, at *node, err error) error {
+	if !errors.Is(err, fs.ErrPermission) {
+		return err
+	}
+	var inner *fs.PathError
+	if errors.As(err, &inner) {
+		err = inner.Err // the path is named once
+	}
+	return pathError(op, at.path, unreadable("cannot be read", err))
 }
 
 // diskFile is an open file of the working tree.
@@ -211,7 +223,7 @@ func (w *working) Lstat(name string) (fs.FileInfo, error) { return w.Stat(name) 
 func (w *working) stat(at *node) (fs.FileInfo, error) {
 	now, err := os.Lstat(w.at(at))
 	if err != nil {
-		return nil, err
+		return nil, diskError("stat", at, err)
 	}
 	return w.info(at, now), nil
 }

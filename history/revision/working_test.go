@@ -4,6 +4,7 @@ import (
 	"errors"
 	"io/fs"
 	"os"
+	"regexp"
 	"slices"
 	"strings"
 	"testing"
@@ -39,6 +40,8 @@ func (g *gitRepo) onDisk(name string) bool {
 	return true
 }
 
+var staged = regexp.MustCompile(`^[0-7]{6} [0-9a-f]{40} [0-3]\t`)
+
 // checkWorking compares a folder of the working tree with git: the names by
 // git ls-files, the hashes by git hash-object, the tree of all by git write-tree.
 func checkWorking(t *testing.T, g *gitRepo, folder string) fs.FS {
@@ -48,20 +51,20 @@ func checkWorking(t *testing.T, g *gitRepo, folder string) fs.FS {
 		t.Error(err)
 		return nil
 	}
-	args := []string{"ls-files", "--cached", "--others", "--exclude-standard", "-z", "--full-name", "--"}
-	in := g.at(g.git("rev-parse", "--show-toplevel"))
-	modules := map[string]bool{}
-	for _, line := range split(in.git("ls-files", "--stage", "-z")) {
-		head, name, _ := strings.Cut(line, "\t")
-		info, err := os.Lstat(in.path(name))
-		modules[name] = strings.HasPrefix(head, "160000") && err == nil && info.IsDir()
-	}
 	var want []string
-	for _, name := range split(in.git(append(args, folder)...)) {
+	for _, name := range split(g.git("ls-files", "--stage", "--cached", "--others", "--exclude-standard", "-z", "--", folder)) {
+		// A tracked file has its mode, hash and stage before it.
+		isModule := false
+		if staged.MatchString(name) {
+			mode, path := name[:6], name[len(staged.FindString(name)):]
+			info, err := os.Lstat(g.path(path))
+			isModule = mode == "160000" && err == nil && info.IsDir()
+			name = path
+		}
 		rel := strings.TrimPrefix(name, folder+"/")
 		if other, isOther := strings.CutSuffix(rel, "/"); isOther {
 			want = append(want, other) // another repository
-		} else if in.onDisk(name) || modules[name] {
+		} else if isModule || g.onDisk(name) {
 			want = append(want, rel)
 		}
 	}
@@ -71,7 +74,7 @@ func checkWorking(t *testing.T, g *gitRepo, folder string) fs.FS {
 	if !slices.Equal(got, want) {
 		t.Errorf("%q: files\n got %q\nwant %q", folder, got, want)
 	}
-	checkIdentities(t, in, fsys, folder, got)
+	checkIdentities(t, g, fsys, folder, got)
 	return fsys
 }
 

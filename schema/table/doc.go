@@ -64,6 +64,9 @@ func checkUTF8(file string, content []byte, faults *source.Collector) bool {
 // TextProblem says why a text may not stand in a data set: it holds a code that
 // a reader does not see, or it is too long. It is empty for a good text.
 func TextProblem(s string) string {
+	if !utf8.ValidString(s) {
+		return "not valid UTF-8"
+	}
 	if len(s) > MaxCell {
 		return "longer than 4096 bytes"
 	}

@@ -119,8 +119,8 @@ func (b *Brute) before(commit int, firstParent bool) []int {
 // Steps finds the steps, in ascending order of their commits.
 func (b *Brute) Steps(q Case) []Step {
 	var list []Step
-	for c := range b.reached(q.FirstParent) {
-		if b.Data[c] == nil || !b.reached(q.FirstParent)[c] {
+	for c, reached := range b.reached(q.FirstParent) {
+		if b.Data[c] == nil || !reached {
 			continue
 		}
 		before := b.before(c, q.FirstParent)

@@ -34,8 +34,13 @@ func History(rnd *rand.Rand, n int) []compose.Commit {
 					s.routes[k] = o.routes[k].clone()
 				}
 			}
-			if rnd.IntN(4) == 0 {
+			switch rnd.IntN(6) {
+			case 0:
 				d.edit(&s)
+			case 1, 2:
+				for k := range s.routes[0].speeds {
+					s.routes[0].speeds[k] = d.speed()
+				}
 			}
 			p := []int{tips[a], tips[b]}
 			states, parents = append(states, s), append(parents, p)
@@ -73,7 +78,7 @@ func History(rnd *rand.Rand, n int) []compose.Commit {
 // state is a data set.
 type state struct {
 	routes []line
-	broken string // file -> faulty content, as "name\x00content"
+	broken string // files that are put in, as "name\x00content", joined by "\x01"; most are faulty
 	zone   string
 	notes  int
 }
@@ -168,9 +173,6 @@ func (d *drawing) edit(s *state) {
 		}
 	case 8:
 		l.gone = !l.gone
-		if s.routes[0].gone && s.routes[1].gone && s.routes[2].gone {
-			l.gone = false
-		}
 	case 9:
 		l.directions = []string{"", "", `["nominal"]`}[d.rnd.IntN(3)]
 	case 10:
@@ -182,8 +184,9 @@ func (d *drawing) edit(s *state) {
 	case 11:
 		s.broken = []string{
 			"", "", "requests/q.toml\x00id = \"Q\"\n", "dataset.toml\x00format = 2\n", "trains.toml\x00", "routes/stray.csv\x00a\n",
+			"requests/a.toml\x00" + request + "\x01requests/b.toml\x00" + request, "requests/a.toml\x00" + request,
 			"routes/R1/route.toml\x00id = \"R9\"\n", "routes/r9/route.toml\x00id = \"R2\"\nname = \"again\"\nstart_km = 0\nend_km = 1\n",
-		}[d.rnd.IntN(8)]
+		}[d.rnd.IntN(10)]
 	case 12:
 		l.comment = d.count // the tree differs, the speeds do not
 	case 13:
@@ -217,11 +220,15 @@ func (s state) files() map[string]string {
 			maps.Copy(files, l.files())
 		}
 	}
-	if name, content, ok := strings.Cut(s.broken, "\x00"); ok {
-		files[name] = content
+	for part := range strings.SplitSeq(s.broken, "\x01") {
+		if name, content, ok := strings.Cut(part, "\x00"); ok {
+			files[name] = content
+		}
 	}
 	return files
 }
+
+const request = "id = \"Q\"\ntitle = \"T\"\nreason = \"R\"\n[[declares]]\nroute = \"R1\"\nfrom_km = 0\nto_km = 1\neffect = \"any\"\n"
 
 const trains = `[[train]]
 id = "SHORT"

@@ -36,8 +36,9 @@ type Trace struct {
 
 // TraceRevision is the revision that positions and trains are read from.
 type TraceRevision struct {
-	Commit string `json:"commit"`
-	Typed  string `json:"typed"`
+	Commit    string `json:"commit"`
+	Committed string `json:"committed"`
+	Typed     string `json:"typed"`
 }
 
 // TraceCommit is a commit that a trace names.

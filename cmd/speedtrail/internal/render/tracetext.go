@@ -6,7 +6,6 @@ import (
 	"strconv"
 	"strings"
 
-	"github.com/jedib0t/go-pretty/v6/table"
 	"github.com/jedib0t/go-pretty/v6/text"
 
 	"speedtrail/history/assessment"
@@ -96,7 +95,7 @@ func (t *Trace) gapsText(b *strings.Builder, s Style, gaps []TraceGap) {
 		if len(gaps) > 1 {
 			fault = short(t.Commits[g.Commit].Hash) + " " + fault
 		}
-		indent(b, "              ", fault, s)
+		indent(b, margin, fault, s)
 	}
 }
 
@@ -112,6 +111,9 @@ func indent(b *strings.Builder, margin, s string, style Style) {
 	}
 }
 
+// margin is where the lines of a step begin.
+const margin = "              "
+
 func (t *Trace) stepText(b *strings.Builder, step *TraceStep, s Style) {
 	c := &t.Commits[step.After.Commit]
 	before := "-"
@@ -126,9 +128,7 @@ func (t *Trace) stepText(b *strings.Builder, step *TraceStep, s Style) {
 		change = text.Bold.Sprint(change)
 	}
 	fmt.Fprintf(b, "\n  %s  %s  %s  %s\n", day(c), change, short(c.Hash), source.Visible(c.Author.Name))
-	const margin = "              "
 	indent(b, margin, source.Visible(c.Subject), s)
-	fmt.Fprintln(b)
 	lines := [][2]string{}
 	for _, v := range step.Before {
 		if v.Speed > 0 {
@@ -142,15 +142,7 @@ func (t *Trace) stepText(b *strings.Builder, step *TraceStep, s Style) {
 	for _, remark := range stepRemarks(t, step) {
 		lines = append(lines, [2]string{"remark", remark})
 	}
-	for _, l := range lines {
-		for i, line := range wrap(source.Visible(l[1]), max(40, s.Width-len(margin)-10)) {
-			label := l[0]
-			if i > 0 {
-				label = ""
-			}
-			fmt.Fprintf(b, "%s%-9s %s\n", margin, label, line)
-		}
-	}
+	labelled(b, lines, s)
 }
 
 func requestWords(c *TraceCommit) string {
@@ -180,28 +172,32 @@ func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) 
 	for _, line := range wrap(source.Visible(stretch.Direction+", "+strings.Join(stretch.Trains, ", ")), s.Width) {
 		fmt.Fprintln(b, line)
 	}
-	w := plainTable()
-	w.AppendHeader(table.Row{"from km", "to km", "km/h", "dates from", "commit", "author, subject, request, assessment, rows of today"})
-	right := table.ColumnConfig{Align: text.AlignRight, AlignHeader: text.AlignRight}
-	var columns []table.ColumnConfig
-	for n := 1; n <= 3; n++ {
-		right.Number = n
-		columns = append(columns, right)
-	}
-	w.SetColumnConfigs(append(columns, table.ColumnConfig{Number: 6, WidthMax: max(30, s.Width-55), WidthMaxEnforcer: text.WrapSoft}))
 	for i := range stretch.Pieces {
 		p := &stretch.Pieces[i]
 		c := &t.Commits[p.Origin]
-		lines := []string{c.Author.Name + ": " + c.Subject}
-		if len(c.Requests) > 0 {
-			lines = append(lines, requestWords(c))
+		speed := speedWords(p.Speed) + " km/h"
+		if s.Color {
+			speed = text.Bold.Sprint(speed)
 		}
-		lines = append(lines, assessmentWords(c), "by "+assessment.SourceText(p.Sources))
-		lines = append(lines, pieceRemarks(t, p)...)
-		for k := range lines {
-			lines[k] = source.Visible(lines[k])
+		fmt.Fprintf(b, "\n  km %s to %s  %s  since %s  %s  %s\n", minus(p.From), minus(p.To), speed, day(c), short(c.Hash), source.Visible(c.Author.Name))
+		indent(b, margin, source.Visible(c.Subject), s)
+		lines := [][2]string{{"by", assessment.SourceText(p.Sources)}, {"request", requestWords(c)}, {"assessed", assessmentWords(c)}}
+		for _, remark := range pieceRemarks(t, p) {
+			lines = append(lines, [2]string{"remark", remark})
 		}
-		w.AppendRow(table.Row{minus(p.From), minus(p.To), p.Speed, day(c), short(c.Hash), strings.Join(lines, "\n")})
+		labelled(b, lines, s)
 	}
-	fmt.Fprintf(b, "\n%s\n", tidy(w.Render()))
+}
+
+// labelled writes lines behind a label each.
+func labelled(b *strings.Builder, lines [][2]string, s Style) {
+	for _, l := range lines {
+		for i, line := range wrap(source.Visible(l[1]), max(40, s.Width-len(margin)-10)) {
+			label := l[0]
+			if i > 0 {
+				label = ""
+			}
+			fmt.Fprintf(b, "%s%-9s %s\n", margin, label, line)
+		}
+	}
 }

@@ -1,0 +1,271 @@
+package render
+
+import (
+	"fmt"
+	"strings"
+	"time"
+)
+
+// Measures of the pictures of a trace, in their own units.
+const (
+	traceLeft   = 92
+	traceBottom = 250 // of the plot of a point
+	bandHeight  = 18  // the least of a band
+	bandsHeight = 420 // of all bands, where their number leaves it free
+)
+
+// sketch is a picture while it is drawn.
+type sketch struct{ strings.Builder }
+
+func (s *sketch) add(format string, args ...any) { fmt.Fprintf(&s.Builder, format, args...) }
+
+// begin opens a picture with words for those who do not see it, and its
+// patterns.
+func (s *sketch) begin(id string, height float64, title, text string) {
+	s.add(`<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %d %.0f" role="img" aria-labelledby="%s-t %s-d" class="chart" font-family="system-ui, sans-serif" font-size="11">`, chartWidth, height, id, id)
+	s.add("\n<title id=\"%s-t\">%s</title><desc id=\"%s-d\">%s</desc>\n", id, esc(title), id, esc(text))
+	s.add(`<defs><pattern id="%s-n" width="6" height="6" patternUnits="userSpaceOnUse"><path d="M0 6L6 0M-1 1L1 -1M5 7L7 5" stroke="#999" stroke-width="1"/></pattern>`, id)
+	s.add(`<pattern id="%s-g" width="8" height="8" patternUnits="userSpaceOnUse"><path d="M0 0L8 8M8 0L0 8" stroke="#777" stroke-width="0.9"/></pattern></defs>`+"\n", id)
+}
+
+// instant reads a time of a trace.
+func instant(text string) int64 {
+	t, err := time.Parse(time.RFC3339, text)
+	if err != nil {
+		return 0
+	}
+	return t.Unix()
+}
+
+func date(text string) string {
+	d, _, _ := strings.Cut(text, "T")
+	return d
+}
+
+// timeChart draws the speed at a point over time, along the line of first
+// parents.
+func (t *Trace) timeChart(trail *TraceTrail, id string) string {
+	if len(trail.Line) == 0 {
+		return ""
+	}
+	first, last := instant(trail.Line[0].Committed), instant(t.Revision.Committed)
+	for _, r := range trail.Line {
+		first, last = min(first, instant(r.Committed)), max(last, instant(r.Committed))
+	}
+	// The last speed holds on: some room shows it.
+	last += max((last-first)/25, 3600)
+	top := 0
+	for _, r := range trail.Line {
+		top = max(top, r.Speed)
+	}
+	top = (top + 9 + 20) / 20 * 20
+	x := func(at int64) float64 {
+		return traceLeft + float64(plotRight-traceLeft)*float64(at-first)/float64(last-first)
+	}
+	y := func(v int) float64 { return traceBottom - 205*float64(v)/float64(top) }
+	var words []string
+	for _, r := range trail.Line {
+		word := speedWords(r.Speed)
+		if r.Gap {
+			word = "does not load"
+		}
+		words = append(words, date(r.Committed)+" "+word)
+	}
+	s := &sketch{}
+	s.begin(id, traceBottom+42, "Speed over time on the line of first parents", strings.Join(words, "; "))
+	step := 20
+	if top > 160 {
+		step = 40
+	}
+	for v := 0; v <= top; v += step {
+		s.add(`<path d="M%d %.1fH%d" stroke="%s"/><text x="%d" y="%.1f" text-anchor="end" fill="#333">%d</text>`, traceLeft, y(v), plotRight, map[bool]string{true: "#111", false: "#e2e2e2"}[v == 0], traceLeft-7, y(v)+4, v)
+	}
+	s.add(`<text x="%d" y="30" fill="#333">km/h</text>`+"\n", traceLeft-44)
+	at, previous := float64(traceLeft), 0.0
+	labels := [2]float64{}
+	for i, r := range trail.Line {
+		// A commit can be dated before its parent; it follows it all the same.
+		from := max(at, x(instant(r.Committed)))
+		to := float64(plotRight)
+		if i+1 < len(trail.Line) {
+			to = max(from, x(instant(trail.Line[i+1].Committed)))
+		}
+		switch {
+		case r.Gap:
+			s.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="%.1f" fill="url(#%s-g)"/>`, from, y(top), max(to-from, 2), y(0)-y(top), id)
+			previous = 0
+		case r.Speed == 0:
+			s.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="%.1f" fill="url(#%s-n)"/>`, from, y(top), max(to-from, 2), y(0)-y(top), id)
+			previous = 0
+		default:
+			line := fmt.Sprintf("M%.1f %.1f", from, y(r.Speed))
+			if previous != 0 {
+				line = fmt.Sprintf("M%.1f %.1fV%.1f", from, previous, y(r.Speed))
+			}
+			s.add(`<path d="%sH%.1f" fill="none" stroke="#111" stroke-width="2.4"/>`, line, to)
+			s.add(`<text x="%.1f" y="%.1f" font-weight="600">%d</text>`, from+3, y(r.Speed)-5, r.Speed)
+			previous = y(r.Speed)
+		}
+		s.add(`<path d="M%.1f %dv5" stroke="#111"/>`, from, traceBottom)
+		for k := range labels {
+			if half := 10 * letterWidth / 2; from-half > labels[k] {
+				labels[k] = from + half + 4
+				s.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, min(from, plotRight-half), traceBottom+18+13*k, esc(date(r.Committed)))
+				break
+			}
+		}
+		at = from
+	}
+	s.add("\n</svg>\n")
+	return s.String()
+}
+
+// distanceChart draws the profile on a stretch over time: distance to the right,
+// time upwards.
+func (t *Trace) distanceChart(stretch *TraceStretch, id string) string {
+	bands := stretch.Bands
+	if len(bands) == 0 {
+		return ""
+	}
+	from, to := bands[0].Pieces[0].Start, bands[0].Pieces[len(bands[0].Pieces)-1].End
+	x := func(s int64) float64 {
+		return traceLeft + float64(plotRight-traceLeft)*float64(s-from)/float64(to-from)
+	}
+	top := 1
+	for _, b := range bands {
+		for _, p := range b.Pieces {
+			top = max(top, p.Speed)
+		}
+	}
+	heights, height := bandHeights(bands, instant(t.Revision.Committed))
+	s := &sketch{}
+	s.begin(id, height+92, "Profile over time on the line of first parents",
+		fmt.Sprintf("%d profiles from %s to %s; the table below says which revision each piece of today's dates from", len(bands), date(bands[0].Committed), date(t.Revision.Committed)))
+	y := 24 + height
+	for i := range bands {
+		y -= heights[i]
+		t.band(s, id, bands, i, x, y, heights[i], top)
+	}
+	s.add(`<text x="%d" y="16" text-anchor="end" fill="#333">since</text><text x="%d" y="16" fill="#333">km/h</text>`+"\n", traceLeft-8, traceLeft)
+	t.kilometres(s, x, from, to, 24+height)
+	s.add("</svg>\n")
+	return s.String()
+}
+
+// bandHeights shares the height among the bands by the time that they lasted,
+// but for a least height.
+func bandHeights(bands []TraceBand, end int64) (heights []float64, all float64) {
+	total := max(end-instant(bands[0].Committed), 1)
+	free := max(0, bandsHeight-float64(bandHeight*len(bands)))
+	for i := range bands {
+		until := end
+		if i+1 < len(bands) {
+			until = instant(bands[i+1].Committed)
+		}
+		h := bandHeight + free*max(0, float64(until-instant(bands[i].Committed)))/float64(total)
+		heights = append(heights, h)
+		all += h
+	}
+	return heights, all
+}
+
+// band draws one profile as a row of boxes.
+func (t *Trace) band(s *sketch, id string, bands []TraceBand, i int, x func(int64) float64, y, h float64, top int) {
+	b := &bands[i]
+	s.add(`<text x="%d" y="%.1f" text-anchor="end">%s</text>`, traceLeft-8, y+h-5, esc(date(b.Committed)))
+	for _, p := range b.Pieces {
+		left, width := x(p.Start), x(p.End)-x(p.Start)
+		fill, ink := fmt.Sprintf("url(#%s-n)", id), "#111"
+		if b.Gap {
+			fill = fmt.Sprintf("url(#%s-g)", id)
+		} else if p.Speed > 0 {
+			shade := 105 + 145*p.Speed/top
+			fill = fmt.Sprintf("#%02x%02x%02x", shade, shade, shade)
+		}
+		s.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="%.1f" fill="%s" stroke="#fff" stroke-width="0.6"/>`, left, y, width, h, fill)
+		label := ""
+		if b.Gap {
+			label = "does not load"
+		} else if p.Speed > 0 {
+			label = itoa(p.Speed)
+		}
+		if label != "" && width > float64(len(label))*letterWidth+4 {
+			s.add(`<text x="%.1f" y="%.1f" text-anchor="middle" fill="%s">%s</text>`, left+width/2, y+h-5, ink, label)
+		}
+	}
+	if i+1 < len(bands) && !b.Gap && !bands[i+1].Gap {
+		for _, p := range altered(b.Pieces, bands[i+1].Pieces) {
+			s.add(`<path d="M%.1f %.1fH%.1f" stroke="#111" stroke-width="2.6"/>`, x(p.Start), y, max(x(p.End), x(p.Start)+1.5))
+		}
+	}
+	s.add("\n")
+}
+
+// altered lists where two profiles of one stretch differ.
+func altered(old, now []TraceLevel) []TraceLevel {
+	var list []TraceLevel
+	i, k := 0, 0
+	for i < len(old) && k < len(now) {
+		start, end := max(old[i].Start, now[k].Start), min(old[i].End, now[k].End)
+		if old[i].Speed != now[k].Speed {
+			if n := len(list); n > 0 && list[n-1].End == start {
+				list[n-1].End = end
+			} else {
+				list = append(list, TraceLevel{Start: start, End: end})
+			}
+		}
+		if old[i].End == end {
+			i++
+		}
+		if now[k].End == end {
+			k++
+		}
+	}
+	return list
+}
+
+// kilometres draws the axis below, with the places.
+func (t *Trace) kilometres(s *sketch, x func(int64) float64, from, to int64, y float64) {
+	step := tickSteps[len(tickSteps)-1]
+	for _, d := range tickSteps {
+		if float64(plotRight-traceLeft)*float64(d)/float64(to-from) >= 64 {
+			step = d
+			break
+		}
+	}
+	free := float64(traceLeft - 40)
+	label := func(at float64, text string) {
+		if half := float64(len(text)) * letterWidth / 2; at-half > free+6 && at+half < chartWidth {
+			s.add(`<text x="%.1f" y="%.1f" text-anchor="middle">%s</text>`, at, y+18, text)
+			free = at + half
+		}
+	}
+	for i, g := range t.Segments {
+		if i > 0 {
+			before := t.Segments[i-1]
+			s.add(`<path d="M%.1f 24V%.1f" stroke="#111" stroke-dasharray="3 3"/>`, x(g.From), y+6)
+			label(x(g.From), minus(km(before.Chainage+before.To-before.From))+"|"+minus(km(g.Chainage)))
+		}
+		first := (g.Chainage + step - 1) / step * step
+		if g.Chainage < 0 {
+			first = g.Chainage / step * step
+		}
+		for c := first; c <= g.Chainage+g.To-g.From; c += step {
+			at := x(g.From + c - g.Chainage)
+			s.add(`<path d="M%.1f %.1fv5" stroke="#111"/>`, at, y)
+			label(at, minus(km(c)))
+		}
+	}
+	s.add(`<text x="8" y="%.1f" fill="#333">km</text><text x="8" y="%.1f" fill="#333">places</text>`, y+18, y+36)
+	free = traceLeft - 40
+	for _, p := range t.Places {
+		at := (x(max(p.From, from)) + x(min(p.To, to))) / 2
+		name := clip(p.Name, 24)
+		s.add(`<path d="M%.1f %.1fv-5" stroke="#111" stroke-width="1.5"/>`, at, y+26)
+		if half := float64(len([]rune(name))) * letterWidth / 2; at-half > free+4 && at+half < chartWidth {
+			s.add(`<text x="%.1f" y="%.1f" text-anchor="middle">%s</text>`, at, y+38, esc(name))
+			free = at + half
+		}
+	}
+	s.add("\n")
+}

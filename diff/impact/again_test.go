@@ -1,0 +1,71 @@
+package impact
+
+import (
+	"math"
+	"slices"
+	"testing"
+
+	"pgregory.net/rapid"
+
+	"speedtrail/diff/step"
+	"speedtrail/schema/unit"
+)
+
+// A run in used memory that takes times over from another is the same to the
+// last bit as a new one.
+func TestComputeAgain(t *testing.T) {
+	taken := 0
+	rapid.Check(t, func(t *rapid.T) {
+		draw := func(pieces int) (f step.Func) {
+			at := unit.Distance(0)
+			for range pieces {
+				to := at + unit.Distance(rapid.IntRange(1, 2000).Draw(t, "length"))*unit.Metre
+				f = f.Append(step.Piece{From: at, To: to, Speed: unit.Speed(5 * rapid.IntRange(1, 30).Draw(t, "speed"))})
+				at = to
+			}
+			return f
+		}
+		f := draw(rapid.IntRange(1, 12).Draw(t, "pieces"))
+		g := draw(rapid.IntRange(1, 12).Draw(t, "pieces"))
+		if rapid.IntRange(0, 3).Draw(t, "alike") > 0 { // one stretch differs
+			end := f[len(f)-1].To
+			from := unit.Distance(rapid.Int64Range(0, int64(end)).Draw(t, "from"))
+			to := unit.Distance(rapid.Int64Range(int64(from), int64(end)).Draw(t, "to"))
+			g = step.Func(nil).AppendPart(f, 0, from).Append(step.Piece{From: from, To: to, Speed: 45}).AppendPart(f, to, end)
+		}
+		m := Motion{rapid.IntRange(1, 1500).Draw(t, "acceleration"), rapid.IntRange(1, 1500).Draw(t, "braking"), rapid.Bool().Draw(t, "rolling")}
+		like := NewRun(f, m)
+		var r Run
+		r.Compute(draw(5), m, nil)
+		r.Compute(g, m, like)
+		want := NewRun(g, m)
+		if !slices.Equal(r.edges, want.edges) || !slices.Equal(r.times, want.times) || !slices.Equal(r.reached, want.reached) {
+			t.Fatalf("got %v, want %v", r, want)
+		}
+		if from, to := r.takeOver(like); from > 0 || to < len(g) {
+			taken++
+		}
+	})
+	if taken < 20 {
+		t.Errorf("times were taken over %d times", taken)
+	}
+}
+
+func TestLesser(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		limit := mmps(unit.Speed(5 * rapid.IntRange(0, 120).Draw(t, "limit")))
+		if rapid.Bool().Draw(t, "any") {
+			limit = rapid.Float64Range(1e-3, 200_000).Draw(t, "limit")
+		}
+		square := rapid.Float64Range(0, 4e10).Draw(t, "square")
+		for range rapid.IntRange(0, 1).Draw(t, "near") {
+			square = limit * limit
+			for range rapid.IntRange(0, 3).Draw(t, "steps") {
+				square = math.Nextafter(square, float64(rapid.IntRange(0, 1).Draw(t, "up"))*1e12)
+			}
+		}
+		if got, want := lesser(limit, square), min(limit, math.Sqrt(square)); got != want {
+			t.Fatalf("lesser(%v, %v): %v, want %v", limit, square, got, want)
+		}
+	})
+}
