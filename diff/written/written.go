@@ -48,7 +48,7 @@ func Pair(name string, old, now []byte, oldTrack, nowTrack *chainage.Track) []Ta
 		}
 		to := slices.Index(columns, "to_km")
 		side := func(content []byte, track *chainage.Track) rows.Table {
-			return rows.Table{Columns: columns, FromColumn: from, ToColumn: to, Rows: csvRows(name, content, columns, track)}
+			return rows.Table{Columns: columns, FromColumn: from, ToColumn: to, Rows: csvRows(name, content, columns, from, track)}
 		}
 		return []Table{{Old: side(old, oldTrack), New: side(now, nowTrack)}}
 	default:
@@ -60,7 +60,7 @@ func Pair(name string, old, now []byte, oldTrack, nowTrack *chainage.Track) []Ta
 }
 
 // csvRows reads the rows of a table.
-func csvRows(name string, content []byte, columns []string, track *chainage.Track) []rows.Row {
+func csvRows(name string, content []byte, columns []string, from int, track *chainage.Track) []rows.Row {
 	if content == nil {
 		return nil
 	}
@@ -81,9 +81,12 @@ func csvRows(name string, content []byte, columns []string, track *chainage.Trac
 			}
 		}
 		row.Start = row.From.Chainage
-		if track != nil {
-			if s, err := track.Locate(row.From); err == nil {
-				row.Start = s
+		if track != nil && from >= 0 {
+			// As it is written: a first occurrence is marked where posts repeat.
+			if p, err := chainage.ParsePoint(row.Cells[from]); err == nil {
+				if s, err := track.Locate(p); err == nil {
+					row.Start = s
+				}
 			}
 		}
 		list = append(list, row)

@@ -46,7 +46,7 @@ var deeds = []deed{
 		if err := ledger.SmallCache(ctx, l); err != nil {
 			return chain.Head{}, err
 		}
-		return assess(ctx, l, when, "two", 400)
+		return assess(ctx, l, when, "two", 250)
 	}, none},
 	{"sign-off", anchored, func(ctx context.Context, l *ledger.Ledger) (chain.Head, error) {
 		return signOff(ctx, l, when, 1, 2)
