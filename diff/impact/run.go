@@ -194,14 +194,54 @@ func (r *Run) Tenths() int64 {
 }
 
 // Peak gives the highest speed, in whole mm/s rounded down, that the train
-// reaches in the piece of the profile at s, and the length that the piece
-// would need for its full speed to be reached at all.
+// reaches in the piece of the profile at s, and the length that the piece would
+// need for its full speed to be reached at all: from the speed with which the
+// train can come into it to the one with which it has to leave it.
 func (r *Run) Peak(s unit.Distance) (mmPerSecond int64, needed unit.Distance) {
 	c := r.profile.CursorAt(s)
-	p := r.piece(c.Index())
+	i := c.Index()
+	p := r.piece(i)
 	_, peak := p.time()
-	up, down := p.distances(p.top)
+	// A longer piece does not slow the train on the way in for the braking behind
+	// it, nor on the way out for want of speed.
+	p.in, p.out = r.arriving(i), r.leaving(i)
+	up, down := p.distances(max(p.top, p.in, p.out))
 	return int64(math.Floor(peak + 1e-6)), unit.Distance(math.Ceil(up + down - 1e-6))
+}
+
+// limit is the highest speed at the beginning of piece i, or at the end of the
+// profile.
+func (r *Run) limit(i int) float64 {
+	switch n := len(r.profile); {
+	case i > 0 && i < n:
+		return mmps(min(r.profile[i-1].Speed, r.profile[i].Speed))
+	case !r.motion.Rolling:
+		return 0
+	case i == 0:
+		return mmps(r.profile[0].Speed)
+	default:
+		return mmps(r.profile[n-1].Speed)
+	}
+}
+
+// arriving is the speed with which the train can come into piece i, by what lies
+// before it.
+func (r *Run) arriving(i int) float64 {
+	v := r.limit(0)
+	for k := range i {
+		v = lesser(r.limit(k+1), squareAfter(v, float64(r.motion.Acceleration), float64(r.profile[k].To-r.profile[k].From)))
+	}
+	return v
+}
+
+// leaving is the speed with which the train has to leave piece i, by what lies
+// behind it.
+func (r *Run) leaving(i int) float64 {
+	v := r.limit(len(r.profile))
+	for k := len(r.profile) - 1; k > i; k-- {
+		v = lesser(r.limit(k), squareAfter(v, float64(r.motion.Braking), float64(r.profile[k].To-r.profile[k].From)))
+	}
+	return v
 }
 
 // Mirrored turns a profile round, for a run against the running distance. The

@@ -10,14 +10,28 @@ import (
 // Tables lists the tables beside the entries.
 var Tables = []string{"assessment", "request", "preparer", "finding", "speed_change", "anchor", "sign_off", "in_force", "revocation"}
 
-// RowCount gives how many rows a table has; 0 for one that an older format does
-// not have.
-func (l *Ledger) RowCount(ctx context.Context, table string) (n int64, err error) {
-	if l.format < 2 && columns[Table(table)] > 0 {
-		return 0, nil
+// RowCount gives how many rows of a table repeat entries up to a number, and how
+// many repeat no entry at all; none for a table that an older format does not
+// have. Each count is one query, so that entries that others add meanwhile are
+// left out and not miscounted.
+func (l *Ledger) RowCount(ctx context.Context, table string, last int64) (n, orphans int64, err error) {
+	key := "assessment IN (SELECT number FROM assessment WHERE entry <= ?)"
+	orphan := "assessment NOT IN (SELECT number FROM assessment WHERE entry IN (SELECT seq FROM entry))"
+	switch {
+	case columns[Table(table)] > 0:
+		if old, err := l.older(ctx); err != nil || old {
+			return 0, 0, err
+		}
+		fallthrough
+	case table == "assessment":
+		key, orphan = "entry <= ?", "entry NOT IN (SELECT seq FROM entry)"
 	}
-	err = l.conn.QueryRowContext(ctx, "SELECT count(*) FROM "+quoted(table)).Scan(&n)
-	return n, classify(err)
+	// A row of no entry is an orphan and nothing else.
+	err = l.conn.QueryRowContext(ctx, "SELECT count(*) FROM "+quoted(table)+" WHERE ("+key+") AND NOT ("+orphan+")", last).Scan(&n)
+	if err == nil {
+		err = l.conn.QueryRowContext(ctx, "SELECT count(*) FROM "+quoted(table)+" WHERE "+orphan).Scan(&orphans)
+	}
+	return n, orphans, classify(err)
 }
 
 // quoted writes the name of a table; it is one of Tables.

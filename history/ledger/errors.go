@@ -26,7 +26,7 @@ var hints = map[error]string{
 	ErrNewer:        "use the newer version of speedtrail",
 	ErrLocked:       "wait until it is done and try again; nothing was recorded",
 	ErrReadOnly:     "check the rights of the file and its folder, or name another file with --ledger; nothing was recorded",
-	ErrFull:         "free some space and try again; nothing was recorded",
+	ErrFull:         "free some space and do it again; register shows whether it was recorded, and nothing is recorded twice",
 	ErrDamaged:      "keep the file as it is and restore a backup; compare its head with one noted elsewhere",
 	ErrSymlink:      "name the file itself with --ledger",
 	ErrNoAssessment: "speedtrail register lists the assessments",
@@ -55,10 +55,11 @@ func (e *Error) Hint() string { return hints[e.Class] }
 
 func fail(class, err error) error { return &Error{class, err} }
 
-// classify sorts an error of SQLite into a class.
+// classify sorts an error of SQLite into a class. One that has a class keeps it.
 func classify(err error) error {
 	var s sqlite3.Error
-	if err == nil || !errors.As(err, &s) {
+	var classed *Error
+	if err == nil || errors.As(err, &classed) || !errors.As(err, &s) {
 		return err
 	}
 	switch s.Code {
@@ -69,8 +70,12 @@ func classify(err error) error {
 	case sqlite3.ErrFull:
 		return fail(ErrFull, err)
 	case sqlite3.ErrIoErr:
-		if s.SystemErrno == syscall.ENOSPC || s.SystemErrno == syscall.EFBIG || s.ExtendedCode == sqlite3.ErrIoErrWrite {
+		// What the system said tells more than which call it was.
+		switch s.SystemErrno {
+		case syscall.ENOSPC, syscall.EFBIG, noQuota:
 			return fail(ErrFull, err)
+		case syscall.EACCES, syscall.EPERM, syscall.EROFS:
+			return fail(ErrReadOnly, err)
 		}
 		return fail(ErrDamaged, err)
 	case sqlite3.ErrNotADB:
@@ -79,4 +84,11 @@ func classify(err error) error {
 		return fail(ErrDamaged, err)
 	}
 	return err
+}
+
+// leftJournal tells whether a ledger could not be read because a process that
+// ended early has left its journal, which only a writer may play back.
+func leftJournal(err error) bool {
+	var s sqlite3.Error
+	return errors.As(err, &s) && (s.ExtendedCode == sqlite3.ErrReadonlyRollback || s.ExtendedCode == sqlite3.ErrReadonlyRecovery)
 }

@@ -91,9 +91,22 @@ func Open(ctx context.Context, file string, o Options) (*Ledger, error) {
 	case err != nil:
 		return nil, fail(ErrReadOnly, err)
 	}
+	l, err := connect(ctx, file, o)
+	if o.ReadOnly && leftJournal(err) {
+		// A process was stopped while it recorded. What it had begun is taken back
+		// by whoever opens the file for writing.
+		if err := playBack(ctx, file, o); err != nil {
+			return nil, classify(err)
+		}
+		l, err = connect(ctx, file, o)
+	}
+	return l, classify(err)
+}
+
+func connect(ctx context.Context, file string, o Options) (*Ledger, error) {
 	db, err := sql.Open("sqlite3", address(file, o))
 	if err != nil {
-		return nil, classify(err)
+		return nil, err
 	}
 	l := &Ledger{db: db}
 	if l.conn, err = db.Conn(ctx); err == nil {
@@ -101,9 +114,21 @@ func Open(ctx context.Context, file string, o Options) (*Ledger, error) {
 	}
 	if err != nil {
 		l.Close()
-		return nil, classify(err)
+		return nil, err
 	}
 	return l, nil
+}
+
+// playBack lets SQLite take back what a journal says was not finished.
+func playBack(ctx context.Context, file string, o Options) error {
+	o.ReadOnly, o.Create = false, false
+	db, err := sql.Open("sqlite3", address(file, o))
+	if err != nil {
+		return err
+	}
+	defer db.Close()
+	var n int
+	return db.QueryRowContext(ctx, "SELECT count(*) FROM sqlite_schema").Scan(&n)
 }
 
 // address writes the file as a URI, so that no character of its name can be

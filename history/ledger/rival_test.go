@@ -284,7 +284,6 @@ const countedLate = "verify counts the rows of the tables after it has read the 
 // The same with others coming in at every single moment at which they can: after
 // each time that the reader has given up its lock.
 func TestReaderBetweenReads(t *testing.T) {
-	t.Skip("BUG: ", countedLate)
 	disk := useDisk(t)
 	dir := quickDir(t)
 	template := filepath.Join(dir, "template.db")

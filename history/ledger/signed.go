@@ -79,8 +79,8 @@ func (l *Ledger) Rows(ctx context.Context, table Table, entry int64) ([]Row, err
 	if !ok {
 		return nil, fmt.Errorf("no table %q", table)
 	}
-	if l.format < 2 {
-		return nil, nil
+	if old, err := l.older(ctx); err != nil || old {
+		return nil, err
 	}
 	rows, err := l.conn.QueryContext(ctx, "SELECT * FROM "+string(table)+" WHERE entry = ? ORDER BY 1, 2", entry)
 	if err != nil {
@@ -102,16 +102,15 @@ func (l *Ledger) Rows(ctx context.Context, table Table, entry int64) ([]Row, err
 	return list, classify(rows.Err())
 }
 
-// Count gives how many rows a table of signed statements has.
-func (l *Ledger) Count(ctx context.Context, table Table) (n int64, err error) {
-	if _, ok := columns[table]; !ok {
-		return 0, fmt.Errorf("no table %q", table)
-	}
+// older tells whether the file has not the tables of signed statements. Another
+// process may have given it them since it was opened.
+func (l *Ledger) older(ctx context.Context) (bool, error) {
 	if l.format < 2 {
-		return 0, nil
+		if err := l.conn.QueryRowContext(ctx, "PRAGMA user_version").Scan(&l.format); err != nil {
+			return false, classify(err)
+		}
 	}
-	err = l.conn.QueryRowContext(ctx, "SELECT count(*) FROM "+string(table)).Scan(&n)
-	return n, classify(err)
+	return l.format < 2, nil
 }
 
 // Entries runs over the entries from a number on, in their order.

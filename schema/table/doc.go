@@ -57,10 +57,6 @@ func CheckUTF8(file string, content []byte, faults *source.Collector) bool {
 	return false
 }
 
-func checkUTF8(file string, content []byte, faults *source.Collector) bool {
-	return CheckUTF8(file, content, faults)
-}
-
 // TextProblem says why a text may not stand in a data set: it holds a code that
 // a reader does not see, or it is too long. It is empty for a good text.
 func TextProblem(s string) string {
