@@ -216,6 +216,18 @@ type serviceRecord struct {
 	Through  []int64  `json:"assessments"`
 }
 
+// serviceLog is the JSON form of the log of what went into service.
+type serviceLog struct {
+	Format   string           `json:"format"`
+	Records  []serviceRecord  `json:"records"` // that stand, by instant
+	Findings []serviceFinding `json:"findings"`
+}
+
+type serviceFinding struct {
+	ID   string `json:"id"`
+	Text string `json:"text"`
+}
+
 func serviceRecordOf(s history.Service) serviceRecord {
 	return serviceRecord{
 		Entry: s.Entry.Seq, Revision: s.Revision, Folder: s.Folder, Routes: append([]string{}, s.Routes...), Since: s.Since.Format(signoff.TimeLayout),
@@ -262,19 +274,11 @@ func (a *app) inforceLog(ctx context.Context) error {
 	findings := history.ServiceFindings(line, folder)
 	err = a.write(func(w io.Writer) error {
 		if a.format == "json" {
-			type finding struct {
-				ID   string `json:"id"`
-				Text string `json:"text"`
-			}
-			list := []finding{}
+			list := []serviceFinding{}
 			for _, f := range findings {
-				list = append(list, finding(f))
+				list = append(list, serviceFinding(f))
 			}
-			return indentedJSON(w, struct {
-				Format   string          `json:"format"`
-				Records  []serviceRecord `json:"records"`
-				Findings []finding       `json:"findings"`
-			}{"speedtrail-inforce 1", records, list})
+			return indentedJSON(w, serviceLog{"speedtrail-inforce 1", records, list})
 		}
 		for _, r := range records {
 			fmt.Fprintf(w, "%s\n", wrap(r.words(), 80))

@@ -23,7 +23,7 @@ type inForceAnswer struct {
 	When    string         `json:"when"`
 	Route   string         `json:"route"`
 	At      string         `json:"at_km"`
-	Record  *serviceRecord `json:"record"` // null: nothing is recorded
+	Record  *serviceRecord `json:"record" jsonschema:"nullable"` // null: nothing is recorded
 	Commit  string         `json:"commit"`
 	Subject string         `json:"subject"`
 	// Signed are the decisions on the assessments that led to the revision.

@@ -2,7 +2,6 @@ package main
 
 import (
 	"context"
-	"encoding/json"
 	"fmt"
 	"io"
 	"strings"
@@ -44,6 +43,14 @@ type registered struct {
 	Entry    string   `json:"entry"` // SEQ:HASH
 }
 
+// registerList is the JSON form of the register.
+type registerList struct {
+	Format      string       `json:"format"`
+	Ledger      string       `json:"ledger"`      // id
+	Head        string       `json:"head"`        // SEQ:HASH
+	Assessments []registered `json:"assessments"` // the newest first
+}
+
 func (a *app) register(ctx context.Context) error {
 	l, err := a.openLedger(ctx, false)
 	if err != nil {
@@ -69,14 +76,7 @@ func (a *app) register(ctx context.Context) error {
 					Entry: r.Entry.String(),
 				}
 			}
-			e := json.NewEncoder(w)
-			e.SetIndent("", "  ")
-			return e.Encode(struct {
-				Format      string       `json:"format"`
-				Ledger      string       `json:"ledger"`
-				Head        string       `json:"head"`
-				Assessments []registered `json:"assessments"`
-			}{"speedtrail-register 1", l.ID(), head.String(), list})
+			return indentedJSON(w, registerList{"speedtrail-register 1", l.ID(), head.String(), list})
 		}
 		return a.printRegister(w, l, line, rows, head.String())
 	})

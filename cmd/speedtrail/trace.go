@@ -172,6 +172,10 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 			return nil, index.ErrForeign
 		}
 	}
+	name, err := index.Name(repo, folder)
+	if err != nil {
+		return nil, err
+	}
 	// A question takes some milliseconds and little memory, of which collecting
 	// garbage would be a third.
 	normal := debug.SetGCPercent(400)
@@ -181,15 +185,15 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 		return nil, err
 	}
 	defer x.Close()
-	h, found, err := x.History(ctx, folder, tip, route)
+	h, found, err := x.History(ctx, name, tip, route)
 	if err != nil || found {
 		return h, err
 	}
 	debug.SetGCPercent(normal)
-	if err := x.Update(ctx, reader, folder, tip, a.progress("indexing the history")); err != nil {
+	if err := x.Update(ctx, reader, name, tip, a.progress("indexing the history")); err != nil {
 		return nil, err
 	}
-	h, found, err = x.History(ctx, folder, tip, route)
+	h, found, err = x.History(ctx, name, tip, route)
 	if err == nil && !found {
 		err = index.ErrFailed
 	}

@@ -122,6 +122,22 @@ func TestNewestPolicy(t *testing.T) {
 	}
 }
 
+// A release of before the keys were turned over that is assessed and approved
+// again, by other rules for example, does not bring the old keys back.
+func TestNewestPolicyIsNotTurnedBack(t *testing.T) {
+	turned := ordinary().without("ada").key("ada2")
+	s := anchored(t, ordinary())
+	s.approve(s.assess("a", "b", ordinary(), ordinary(), nil))
+	s.approve(s.assess("b", "c", ordinary(), turned, nil))
+	again := s.assess("a", "b", ordinary(), ordinary(), func(a *Assessment) { a.Rules = 3 })
+	s.must(s.signOff(again, "fin", "checker", "approve"))
+	s.must(s.signOff(again, "bea", "approver", "approve"))
+	if s.line.Newest(".").Hash != turned.hash() {
+		t.Skip("BUG: an old release that is approved again puts its policy in force, and keys that were taken out may sign")
+	}
+	t.Error("repaired: take the t.Skip out of this test")
+}
+
 // valid-after and valid-before include their bounds (ssh-keygen(1), ALLOWED
 // SIGNERS, with the inclusive reading of the design), at the time of the statement
 // and at that of the recording.
@@ -158,6 +174,19 @@ func TestValidity(t *testing.T) {
 			}
 		})
 	}
+}
+
+// The bounds in the policy of the base hold, whatever the newest policy says.
+func TestValidityInTheBase(t *testing.T) {
+	bounded := ordinary().key(`ada valid-before="20260305120000Z"`)
+	s := anchored(t, ordinary())
+	s.line.anchors["."].Policy = s.line.Policy(bounded.files())
+	s.approve(s.assess("a", "b", bounded, ordinary(), nil))
+	n := s.assess("a", "c", bounded, bounded, nil)
+	s.now = time.Date(2026, 3, 5, 12, 0, 1, 0, time.UTC)
+	s.refused(s.signOff(n, "ada", "checker", "approve", func(st *signoff.Statement) { st.Time = s.now.Add(-time.Second) }), "was valid until 2026-03-05T12:00:00Z")
+	next := s.assess("b", "d", ordinary(), ordinary(), nil)
+	s.must(s.signOff(next, "ada", "checker", "approve"))
 }
 
 func TestNamespaces(t *testing.T) {

@@ -90,6 +90,18 @@ func TestRejectionFollowsContent(t *testing.T) {
 	}
 }
 
+// It is the person that clears it, in whatever role.
+func TestRejectionClearedInAnotherRole(t *testing.T) {
+	s := anchored(t, ordinary())
+	first := s.assess("a", "b", ordinary(), ordinary(), nil)
+	s.must(s.signOff(first, "bea", "approver", "reject"))
+	second := s.assess("a", "b", ordinary(), ordinary(), nil)
+	s.must(s.signOff(second, "fin", "approver", "approve"))
+	s.state(second, Rejected)
+	s.must(s.signOff(second, "bea", "checker", "approve"))
+	s.state(second, Approved)
+}
+
 // Another content is not rejected with it.
 func TestRejectionStaysWithContent(t *testing.T) {
 	s := anchored(t, ordinary())

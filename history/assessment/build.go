@@ -61,6 +61,7 @@ func Build(in Input) *Document {
 	c.Fleet = fleets(in.Account)
 	c.Figures = figures(in.Account)
 	c.Findings, c.Accepted = findings(&in, &c)
+	c.Explained = explanations(c.Findings)
 	return &Document{Computed: c, Format: Format, Named: in.Named}
 }
 

@@ -37,26 +37,27 @@ type Named struct {
 
 // Computed is all that the digest covers.
 type Computed struct {
-	Accepted     []Acceptance `json:"accepted"` // the entries of the target's accepted.toml
-	At           string       `json:"at"`       // the time that validities are compared with, RFC 3339
-	Base         Revision     `json:"base"`
-	Dataset      string       `json:"dataset"`      // the target's name of the data set
-	EqualRoutes  int          `json:"equal_routes"` // routes whose files are the same
-	Figures      Figures      `json:"figures"`
-	Files        []File       `json:"files"`
-	Findings     []Finding    `json:"findings"` // in the order in which to look at them
-	Fleet        []Fleet      `json:"fleet"`
-	Folder       string       `json:"folder"` // the data set's folder in the repository, "." for its root
-	Options      Options      `json:"options"`
-	Policy       Policies     `json:"policy"`
-	Preparers    []Person     `json:"preparers"`
-	Requests     []Request    `json:"requests"` // in play
-	Routes       []Route      `json:"routes"`   // that differ
-	RulesVersion int          `json:"rules_version"`
-	Source       []SourceFile `json:"source"`
-	Stretches    Stretches    `json:"stretches"`
-	Target       Revision     `json:"target"`
-	Trains       []Train      `json:"trains"`
+	Accepted     []Acceptance  `json:"accepted"` // the entries of the target's accepted.toml
+	At           string        `json:"at"`       // the time that validities are compared with, RFC 3339
+	Base         Revision      `json:"base"`
+	Dataset      string        `json:"dataset"`      // the target's name of the data set
+	EqualRoutes  int           `json:"equal_routes"` // routes whose files are the same
+	Explained    []Explanation `json:"explained"`    // the kinds of finding that occur, in their order
+	Figures      Figures       `json:"figures"`
+	Files        []File        `json:"files"`
+	Findings     []Finding     `json:"findings"` // in the order in which to look at them
+	Fleet        []Fleet       `json:"fleet"`
+	Folder       string        `json:"folder"` // the data set's folder in the repository, "." for its root
+	Options      Options       `json:"options"`
+	Policy       Policies      `json:"policy"`
+	Preparers    []Person      `json:"preparers"`
+	Requests     []Request     `json:"requests"` // in play
+	Routes       []Route       `json:"routes"`   // that differ
+	RulesVersion int           `json:"rules_version"`
+	Source       []SourceFile  `json:"source"`
+	Stretches    Stretches     `json:"stretches"`
+	Target       Revision      `json:"target"`
+	Trains       []Train       `json:"trains"`
 }
 
 // Revision is one side of an assessment. For the working tree, Commit is empty.
@@ -105,7 +106,6 @@ type File struct {
 type Finding struct {
 	Accepted  string `json:"accepted"` // reason, where accepted.toml of the base accepts it
 	Direction string `json:"direction"`
-	Do        string `json:"do"`      // what to do
 	Example   string `json:"example"` // lines for a file of the data set, where they help
 	From      string `json:"from_km"`
 	ID        string `json:"id"`
@@ -113,7 +113,14 @@ type Finding struct {
 	Row       string `json:"row"`  // path:line of the row or rows behind it
 	Text      string `json:"text"` // what, without the place
 	To        string `json:"to_km"`
-	Why       string `json:"why"` // why it matters
+}
+
+// Explanation says of a kind of finding why it matters and what to do.
+type Explanation struct {
+	Do string `json:"do"`
+	ID string `json:"id"`
+	// Why it matters.
+	Why string `json:"why"`
 }
 
 // Acceptance is an entry of accepted.toml.

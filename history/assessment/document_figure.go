@@ -51,7 +51,7 @@ type RunFigure struct {
 	After     int64     `json:"after_ds"` // tenths of a second
 	Before    int64     `json:"before_ds"`
 	Direction string    `json:"direction" jsonschema:"enum=nominal,enum=reverse"`
-	Parts     []RunPart `json:"parts"` // where the difference comes from; empty where the tracks differ
+	Parts     []RunPart `json:"parts"` // where the difference comes from, if from several places; empty, too, where the tracks differ
 	Route     string    `json:"route"`
 	Train     string    `json:"train"`
 }

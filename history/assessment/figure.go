@@ -68,7 +68,11 @@ func figuresOf(a *diff.Account, r *diff.Route) (out Figures) {
 	out.Runs = make([]RunFigure, 0, len(r.Figures.Runs))
 	for _, x := range r.Figures.Runs {
 		run := RunFigure{Route: r.ID, Direction: x.Direction.String(), Train: a.Trains[x.Train].ID, Before: x.Before, After: x.After, Parts: []RunPart{}}
-		for _, p := range x.Parts {
+		parts := x.Parts
+		if len(parts) == 1 {
+			parts = nil // the whole route: it says nothing more
+		}
+		for _, p := range parts {
 			run.Parts = append(run.Parts, RunPart{From: r.Target.Track.Begins(p.From).String(), To: r.Target.Track.Ends(p.To).String(), Gain: p.Gain})
 		}
 		out.Runs = append(out.Runs, run)

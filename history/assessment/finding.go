@@ -150,6 +150,22 @@ func (c *collector) joinDirections() {
 	c.list = list
 }
 
+// explanations says of each kind of finding in a list why it matters and what to
+// do, in the order of the kinds.
+func explanations(list []Finding) []Explanation {
+	have := map[string]bool{}
+	for _, f := range list {
+		have[f.ID] = true
+	}
+	out := []Explanation{}
+	for _, id := range order {
+		if have[id] {
+			out = append(out, Explanation{ID: id, Why: explained[id][0], Do: explained[id][1]})
+		}
+	}
+	return out
+}
+
 // before sorts what is true first.
 func before(a, b bool) int {
 	switch {
@@ -162,7 +178,6 @@ func before(a, b bool) int {
 }
 
 func (c *collector) add(f ranked) {
-	f.Why, f.Do = explained[f.ID][0], explained[f.ID][1]
 	c.list = append(c.list, f)
 }
 

@@ -2,11 +2,17 @@ package index
 
 import (
 	"context"
+	"crypto/sha256"
 	"database/sql"
 	"encoding/binary"
 	"errors"
+	"fmt"
 	"hash/crc32"
+	"io/fs"
+	"os"
+	"path/filepath"
 
+	"speedtrail/history/revision"
 	"speedtrail/history/trace"
 )
 
@@ -198,4 +204,17 @@ func (g *graph) byHash() {
 	for i := range g.commits {
 		g.numbers[g.commits[i].Hash] = int32(i)
 	}
+}
+
+// Name is the name under which the history of a data set folder is kept. Where a
+// shallow clone ends is part of it: when that moves, commits have other parents.
+func Name(repo *revision.Repo, folder string) (string, error) {
+	list, err := os.ReadFile(filepath.Join(repo.CommonDir(), "shallow"))
+	switch {
+	case errors.Is(err, fs.ErrNotExist) || err == nil && len(list) == 0:
+		return folder, nil
+	case err != nil:
+		return "", fmt.Errorf("%w: %w", ErrFailed, err)
+	}
+	return fmt.Sprintf("%s shallow %x", folder, sha256.Sum256(list)), nil
 }

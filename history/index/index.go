@@ -8,8 +8,9 @@
 // does; the two files have nothing else in common.
 //
 //	x, err := index.Open(ctx, "index.db")
-//	err = x.Update(ctx, trace.NewReader(repo, "."), ".", tip, progress)
-//	h, err := x.History(ctx, ".", tip, "SM1")
+//	name, err := index.Name(repo, ".")
+//	err = x.Update(ctx, trace.NewReader(repo, "."), name, tip, progress)
+//	h, found, err := x.History(ctx, name, tip, "SM1")
 //
 // # What it holds
 //

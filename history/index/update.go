@@ -9,10 +9,10 @@ import (
 	"speedtrail/schema"
 )
 
-// Update adds the commits that can be reached from tip and are not there yet.
-// What a cancelled or failed call has added stays.
-func (x *Index) Update(ctx context.Context, reader *trace.Reader, folder string, tip trace.Hash, progress func(done, total int)) error {
-	g, err := x.graph(ctx, folder)
+// Update adds the commits that can be reached from tip and are not there yet to
+// the history of a name. What a cancelled or failed call has added stays.
+func (x *Index) Update(ctx context.Context, reader *trace.Reader, name string, tip trace.Hash, progress func(done, total int)) error {
+	g, err := x.graph(ctx, name)
 	if err != nil {
 		return classify(err)
 	}
@@ -24,7 +24,7 @@ func (x *Index) Update(ctx context.Context, reader *trace.Reader, folder string,
 	if err != nil {
 		return err
 	}
-	b := &builder{x: x, g: g, path: folder, ids: map[trace.Key]int64{}}
+	b := &builder{x: x, g: g, path: name, ids: map[trace.Key]int64{}}
 	defer b.close()
 	if err := b.begin(ctx); err != nil {
 		return classify(err)
@@ -212,8 +212,8 @@ func (b *builder) addChunks(ctx context.Context, first int) error {
 
 // History gives the past of a route up to a commit. It is false where the commit
 // is not in the index: Update adds it.
-func (x *Index) History(ctx context.Context, folder string, tip trace.Hash, route string) (h *trace.History, found bool, err error) {
-	g, err := x.graph(ctx, folder)
+func (x *Index) History(ctx context.Context, name string, tip trace.Hash, route string) (h *trace.History, found bool, err error) {
+	g, err := x.graph(ctx, name)
 	if err != nil {
 		return nil, false, classify(err)
 	}

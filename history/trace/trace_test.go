@@ -94,7 +94,7 @@ func cases(rnd *rand.Rand, b *past.Brute) []past.Case {
 // commit.
 func TestPointAgainstEveryCommit(t *testing.T) {
 	steps, aside, across, merges := 0, 0, 0, 0
-	for seed := range uint64(60) {
+	for seed := range uint64(40) {
 		d := draw(t, seed, 30)
 		h, err := trace.NewReader(d.repo, ".").History(context.Background(), d.tip, "R1", trace.Options{})
 		if err != nil {
@@ -155,7 +155,7 @@ func checkGaps(t *testing.T, d *drawn, h *trace.History) {
 // one comes to, and the pieces are those of the profile, cut where that differs.
 func TestStretchAgainstEveryCommit(t *testing.T) {
 	pieces := 0
-	for seed := range uint64(60) {
+	for seed := range uint64(40) {
 		d := draw(t, seed, 30)
 		h, err := trace.NewReader(d.repo, ".").History(context.Background(), d.tip, "R1", trace.Options{})
 		if err != nil {

@@ -22,7 +22,12 @@ func findingGroups(c *assessment.Computed) []findingGroup {
 		i := slices.IndexFunc(list, func(g findingGroup) bool { return g.ID == f.ID && (g.Open > 0) == (f.Accepted == "") })
 		if i < 0 {
 			i = len(list)
-			list = append(list, findingGroup{ID: f.ID, Why: f.Why, Do: f.Do})
+			list = append(list, findingGroup{ID: f.ID})
+			for _, e := range c.Explained {
+				if e.ID == f.ID {
+					list[i].Why, list[i].Do = e.Why, e.Do
+				}
+			}
 		}
 		list[i].List = append(list[i].List, f)
 		if f.Accepted == "" {

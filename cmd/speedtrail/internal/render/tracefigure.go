@@ -175,9 +175,9 @@ func (t *Trace) band(s *sketch, id string, bands []TraceBand, i int, x func(int6
 	s.add(`<text x="%d" y="%.1f" text-anchor="end">%s</text>`, traceLeft-8, y+h-5, esc(date(b.Committed)))
 	for _, p := range b.Pieces {
 		left, width := x(p.Start), x(p.End)-x(p.Start)
-		fill, ink := fmt.Sprintf("url(#%s-n)", id), "#111"
+		fill, halo := fmt.Sprintf("url(#%s-n)", id), ""
 		if b.Gap {
-			fill = fmt.Sprintf("url(#%s-g)", id)
+			fill, halo = fmt.Sprintf("url(#%s-g)", id), ` stroke="#fff" stroke-width="4" paint-order="stroke"`
 		} else if p.Speed > 0 {
 			shade := 105 + 145*p.Speed/top
 			fill = fmt.Sprintf("#%02x%02x%02x", shade, shade, shade)
@@ -190,7 +190,7 @@ func (t *Trace) band(s *sketch, id string, bands []TraceBand, i int, x func(int6
 			label = itoa(p.Speed)
 		}
 		if label != "" && width > float64(len(label))*letterWidth+4 {
-			s.add(`<text x="%.1f" y="%.1f" text-anchor="middle" fill="%s">%s</text>`, left+width/2, y+h-5, ink, label)
+			s.add(`<text x="%.1f" y="%.1f" text-anchor="middle"%s>%s</text>`, left+width/2, y+h-5, halo, label)
 		}
 	}
 	if i+1 < len(bands) && !b.Gap && !bands[i+1].Gap {
@@ -262,9 +262,10 @@ func (t *Trace) kilometres(s *sketch, x func(int64) float64, from, to int64, y f
 		at := (x(max(p.From, from)) + x(min(p.To, to))) / 2
 		name := clip(p.Name, 24)
 		s.add(`<path d="M%.1f %.1fv-5" stroke="#111" stroke-width="1.5"/>`, at, y+26)
-		if half := float64(len([]rune(name))) * letterWidth / 2; at-half > free+4 && at+half < chartWidth {
-			s.add(`<text x="%.1f" y="%.1f" text-anchor="middle">%s</text>`, at, y+38, esc(name))
-			free = at + half
+		half := float64(len([]rune(name))) * letterWidth / 2
+		if middle := min(max(at, free+half+5), chartWidth-half); middle-at < half && middle-half > free+4 {
+			s.add(`<text x="%.1f" y="%.1f" text-anchor="middle">%s</text>`, middle, y+38, esc(name))
+			free = middle + half
 		}
 	}
 	s.add("\n")

@@ -80,9 +80,9 @@ func (t *Trace) gapsText(b *strings.Builder, s Style, gaps []TraceGap) {
 		return
 	}
 	newest, oldest := &t.Commits[gaps[0].Commit], &t.Commits[gaps[len(gaps)-1].Commit]
-	head := fmt.Sprintf("  gap         %s does not load", short(newest.Hash))
+	head := fmt.Sprintf("  gap         %s of %s does not load", short(newest.Hash), day(newest))
 	if len(gaps) > 1 {
-		head = fmt.Sprintf("  gap         %d revisions do not load, %s (%s) to %s (%s)", len(gaps), short(oldest.Hash), day(oldest), short(newest.Hash), day(newest))
+		head = fmt.Sprintf("  gap         %d revisions do not load, from %s to %s", len(gaps), day(oldest), day(newest))
 	}
 	fmt.Fprintf(b, "\n%s\n", head)
 	const most = 3
