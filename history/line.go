@@ -41,7 +41,7 @@ func ReadLine(ctx context.Context, l *ledger.Ledger) (line *approval.Line, probl
 			}
 		}
 		if err := line.Add(e, a); err != nil {
-			problems = append(problems, err)
+			problems = append(problems, fmt.Errorf("entry %d (%s): %w", e.Seq, e.Kind, err))
 		}
 	}
 	return line, problems, nil

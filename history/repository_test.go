@@ -95,7 +95,7 @@ func (r *repository) document(base, target string) *assessment.Document {
 	}
 	c.Requests = []assessment.Request{{ID: "CR-" + target, Title: "Request " + target, Reason: "renewed", File: "requests/cr.toml"}}
 	c.Trains = []assessment.Train{{ID: "T1", Fate: "kept"}, {ID: "T2", Fate: "kept"}}
-	c.Routes = []assessment.Route{{ID: "R1", Name: "Route", Fate: "kept", Folder: "routes/r1", Start: "0", End: "5",
+	c.Routes = []assessment.Route{{ID: "R1", Name: "Route", Fate: "kept", Folder: "routes/r1", Start: "0", End: "5", Causes: [][]assessment.Cause{{}}, Pieces: [][]assessment.Piece{{}},
 		Sources: [][]assessment.Source{{{File: "routes/r1/speed.csv", Kind: "basic", Line: 3, Value: 60}}, {{File: "routes/r1/speed.csv", Kind: "basic", Line: 3, Value: 80}}},
 		Changes: []assessment.Change{
 			{Direction: "nominal", From: "1", To: "2", Length: 1_000_000, Start: 1_000_000, Before: 60, After: 80, BeforeSource: 0, AfterSource: 1, Trains: []int{0, 1}},

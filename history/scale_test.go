@@ -116,6 +116,6 @@ func TestReadLineScales(t *testing.T) {
 	}
 	few, many := cost(100), cost(400)
 	if times := many / few; times > 6 {
-		t.Skipf("BUG: four times the entries take %.1f times as much: every entry looks at all assessments anew", times)
+		t.Errorf("four times the entries take %.1f times as much: every entry looks at all assessments anew", times)
 	}
 }

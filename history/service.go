@@ -28,19 +28,26 @@ func ServiceOf(line *approval.Line, r approval.Record) Service {
 	s := Service{Record: r, Approved: line.ApprovedContent(r.Folder, r.Content)}
 	routes := r.Routes
 	if len(routes) == 0 {
-		routes = []string{""} // records for the whole network; those for routes are looked at below
+		// The whole network: each route that a record names, and all others.
+		routes = []string{""}
+		for _, x := range line.Standing(r.Folder) {
+			for _, id := range x.Routes {
+				if !slices.Contains(routes, id) {
+					routes = append(routes, id)
+				}
+			}
+		}
 	}
 	for _, route := range routes {
-		_, before := beforeRecord(line, r, route)
+		before := beforeRecord(line, r, route)
 		if before == nil {
 			continue
 		}
-		if s.Before == nil {
+		undone := s.Approved && !line.Led(r.Folder, before.Content, r.Content)
+		if s.Before == nil || undone && !s.Undoes {
 			s.Before = before
 		}
-		if s.Approved && !line.Led(r.Folder, before.Content, r.Content) {
-			s.Undoes = true
-		}
+		s.Undoes = s.Undoes || undone
 	}
 	if s.Undoes {
 		s.Approved = false
@@ -53,20 +60,20 @@ func ServiceOf(line *approval.Line, r approval.Record) Service {
 	return s
 }
 
-// beforeRecord finds the record that was in force on a route just before another.
-// For the whole network every record before it counts, the last one first.
-func beforeRecord(line *approval.Line, r approval.Record, route string) (found bool, before *approval.Record) {
+// beforeRecord finds the record that was in force on a route just before another;
+// nil where there was none. An empty route stands for those that no record names.
+func beforeRecord(line *approval.Line, r approval.Record, route string) (before *approval.Record) {
 	standing := line.Standing(r.Folder)
 	for i := range standing {
 		x := &standing[i]
 		if x.Entry.Seq == r.Entry.Seq || !x.Since.Before(r.Since) {
 			continue
 		}
-		if route == "" || len(x.Routes) == 0 || slices.Contains(x.Routes, route) {
+		if len(x.Routes) == 0 || slices.Contains(x.Routes, route) {
 			before = x
 		}
 	}
-	return before != nil, before
+	return before
 }
 
 // ServiceFinding is something about the in-force log that needs eyes.

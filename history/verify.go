@@ -94,8 +94,10 @@ type verifier struct {
 	o      VerifyOptions
 	r      *Result
 	counts map[string]int64
-	docs   []recorded
-	lock   sync.Mutex
+	// assessments counts them: their numbers are 1, 2, ... in the order of entries.
+	assessments int64
+	docs        []recorded
+	lock        sync.Mutex
 }
 
 // recorded is an assessment to be computed anew.
@@ -132,7 +134,7 @@ func (v *verifier) entries() error {
 		}
 		seen++
 		if err := chain.Check(head, e); err != nil {
-			v.problem(e.Seq, "chain", "%v", err)
+			v.problem(e.Seq, "chain", "it %v", errors.Unwrap(err))
 		}
 		head = e.Head()
 		if err := canon.Check(e.Body); err != nil {
@@ -146,7 +148,7 @@ func (v *verifier) entries() error {
 			return err
 		}
 		if err := v.r.Line.Add(e, a); err != nil {
-			v.problem(e.Seq, "statement", "%v", err)
+			v.problem(e.Seq, "statement", "%s: %v", e.Kind, err)
 		}
 	}
 	v.r.Head = head
@@ -185,15 +187,35 @@ func (v *verifier) rows(e chain.Entry) (*approval.Assessment, error) {
 				}
 			}
 			v.counts[string(table)] += int64(len(have))
-			if !slices.EqualFunc(have, ask, func(a, b ledger.Row) bool { return slices.Equal(a.Values, b.Values) }) {
-				v.problem(e.Seq, "rows", "the rows of table %s are not those of the entry", table)
+			if problem := difference(table, have, ask); problem != "" {
+				v.problem(e.Seq, "rows", "%s", problem)
 			}
 		}
 	}
 	return nil, nil
 }
 
+// difference says how the rows of a table differ from those that an entry asks
+// for; empty where they do not.
+func difference(table ledger.Table, have, want []ledger.Row) string {
+	for i := range min(len(have), len(want)) {
+		for k := range want[i].Values {
+			if have[i].Values[k] != want[i].Values[k] {
+				return fmt.Sprintf("row %d of table %s has %s %v, the entry says %v", i+1, table, ledger.ColumnName(table, k), have[i].Values[k], want[i].Values[k])
+			}
+		}
+	}
+	switch {
+	case len(have) < len(want):
+		return fmt.Sprintf("row %d of table %s is missing", len(have)+1, table)
+	case len(have) > len(want):
+		return fmt.Sprintf("row %d of table %s is not in the entry", len(want)+1, table)
+	}
+	return ""
+}
+
 func (v *verifier) assessmentRows(e chain.Entry) (*approval.Assessment, error) {
+	v.assessments++
 	number, err := v.l.NumberOf(v.ctx, e.Seq)
 	if errors.Is(err, ledger.ErrDamaged) {
 		v.problem(e.Seq, "rows", "%v", err)
@@ -201,6 +223,9 @@ func (v *verifier) assessmentRows(e chain.Entry) (*approval.Assessment, error) {
 	}
 	if err != nil {
 		return nil, err
+	}
+	if number != v.assessments {
+		v.problem(e.Seq, "rows", "the assessment has the number %d, by its place it is %d", number, v.assessments)
 	}
 	doc, err := assessment.Decode(e.Body)
 	var digest string
@@ -270,7 +295,7 @@ func (v *verifier) git() error {
 	}
 	work, ctx := errgroup.WithContext(v.ctx)
 	work.SetLimit(runtime.GOMAXPROCS(0))
-	done, other := 0, 0
+	done, other, failed := 0, 0, 0
 	for _, d := range v.docs {
 		work.Go(func() error {
 			digest, err := v.o.Checker.Recompute(ctx, d.doc)
@@ -285,6 +310,9 @@ func (v *verifier) git() error {
 				v.lock.Unlock()
 			case err != nil:
 				v.problem(d.entry, "git", "the assessment cannot be computed anew: %v", err)
+				v.lock.Lock()
+				failed++
+				v.lock.Unlock()
 			case digest != d.digest:
 				v.problem(d.entry, "recompute", "computed anew the assessment has the digest %s, recorded is %s", digest, d.digest)
 			}
@@ -300,7 +328,7 @@ func (v *verifier) git() error {
 	if err := work.Wait(); err != nil {
 		return err
 	}
-	v.r.Proved = append(v.r.Proved, fmt.Sprintf("%d of %d assessments were computed anew from Git", len(v.docs)-other, len(v.docs)))
+	v.r.Proved = append(v.r.Proved, fmt.Sprintf("%d of %d assessments were computed anew from Git", len(v.docs)-other-failed, len(v.docs)))
 	return v.statements()
 }
 

@@ -26,6 +26,7 @@ func (l *Line) addAnchor(e chain.Entry, recorded time.Time) error {
 		l.statements[signoff.Hash(a.Records[i].Text)] = e.Seq
 	}
 	l.anchors[a.Records[0].Folder] = a
+	delete(l.contents, a.Records[0].Folder)
 	return nil
 }
 

@@ -42,6 +42,9 @@ func Read(body Signed) (Record, error) {
 // entries that the line has taken up.
 func (l *Line) Check(kind chain.Kind, body Signed, recorded time.Time) (Record, error) {
 	k := kinds[kind]
+	if kind == chain.Anchor {
+		return Record{}, refuse("an anchor is several statements")
+	}
 	if body.Format != k.format {
 		return Record{}, refuse("the format is %q, %q is needed", body.Format, k.format)
 	}
@@ -176,6 +179,10 @@ func (l *Line) checkSignOff(r *Record) error {
 	if a == nil {
 		return refuse("there is no assessment %d", r.Assessment)
 	}
+	policy, err := usable(a.Policy, "the base")
+	if err != nil {
+		return err
+	}
 	for _, same := range []struct {
 		name      string
 		have, got any
@@ -198,10 +205,6 @@ func (l *Line) checkSignOff(r *Record) error {
 		if earlier.Signer == r.Signer && r.Head.Seq < earlier.Entry.Seq {
 			return refuse("the head that the statement names, %d, is older than the last decision of %s on it, entry %d", r.Head.Seq, r.Signer, earlier.Entry.Seq)
 		}
-	}
-	policy, err := usable(a.Policy, "the base")
-	if err != nil {
-		return err
 	}
 	if _, err := usable(a.Next, "the target"); err != nil {
 		return err
@@ -242,7 +245,7 @@ func (l *Line) blocked(a *Assessment) string {
 		return "its base is its target"
 	case len(a.Preparers) == 0:
 		return "nobody is known to have prepared it"
-	case !l.approvedContents(a.Folder)[a.BaseTree]:
+	case !l.ApprovedContent(a.Folder, a.BaseTree):
 		return "its base is neither the anchor nor an approved target (base-not-approved)"
 	}
 	return ""

@@ -107,7 +107,8 @@ func (l *Line) Led(folder, from, to string) bool {
 		return l.ApprovedContent(folder, to)
 	}
 	contents := l.approvedContents(folder)
-	reached := map[string]bool{from: contents[from]}
+	_, begins := contents[from]
+	reached := map[string]bool{from: begins}
 	for grown := true; grown; {
 		grown = false
 		for _, a := range l.assessments {

@@ -108,15 +108,16 @@ type Line struct {
 	statements  map[string]int64  // hash -> entry
 	policies    map[string]Policy
 
-	ofAssessment map[int64][]int            // indices in signOffs
-	ofContent    map[content][]int          // the same, by what was decided on
-	contents     map[string]map[string]bool // approved contents by folder; emptied by every new entry
+	ofAssessment map[int64][]int           // indices in signOffs
+	ofContent    map[content][]int         // the same, by what was decided on
+	done         map[int64]int64           // what signedOff gave, by assessment
+	contents     map[string]map[string]way // approved contents by folder
 }
 
 // New begins a line for the ledger of an id.
 func New(ledger string) *Line {
 	return &Line{ledger: ledger, byNumber: map[int64]*Assessment{}, anchors: map[string]*AnchorRecord{}, revoked: map[string]Record{}, statements: map[string]int64{}, policies: map[string]Policy{},
-		ofAssessment: map[int64][]int{}, ofContent: map[content][]int{}, contents: map[string]map[string]bool{}}
+		ofAssessment: map[int64][]int{}, ofContent: map[content][]int{}, done: map[int64]int64{}, contents: map[string]map[string]way{}}
 }
 
 // ErrRefused is the class of everything that a policy or the rules of signing
@@ -134,13 +135,9 @@ func (l *Line) Add(e chain.Entry, assessment *Assessment) error {
 	if err == nil {
 		err = l.add(e, recorded, assessment)
 	}
-	clear(l.contents)
 	l.heads = append(l.heads, e.Head())
 	l.times = append(l.times, recorded)
-	if err != nil {
-		return fmt.Errorf("entry %d (%s): %w", e.Seq, e.Kind, err)
-	}
-	return nil
+	return err
 }
 
 func (l *Line) add(e chain.Entry, recorded time.Time, assessment *Assessment) error {
@@ -174,6 +171,7 @@ func (l *Line) add(e chain.Entry, recorded time.Time, assessment *Assessment) er
 			decided := l.byNumber[r.Assessment].content()
 			l.ofContent[decided] = append(l.ofContent[decided], len(l.signOffs))
 			l.signOffs = append(l.signOffs, r)
+			l.forget(decided)
 		case chain.InForce:
 			l.inForce = append(l.inForce, r)
 		default:
@@ -235,18 +233,27 @@ func (l *Line) Policy(signOff, allowedSigners string) Policy {
 	return l.policy(signOff, allowedSigners)
 }
 
-// Newest gives the policy that is in force for a folder: the target's of the
-// approved assessment that was recorded last, else the anchor's.
+// forget drops what a decision on a content can have changed.
+func (l *Line) forget(decided content) {
+	for _, i := range l.ofContent[decided] {
+		delete(l.done, l.signOffs[i].Assessment)
+	}
+	delete(l.contents, decided.folder)
+}
+
+// Newest gives the policy that is in force for a folder: the one to which an
+// approved assessment turned last, else the anchor's. An assessment whose target
+// was approved before turns nothing, nor does one that leaves the policy as it
+// is: so a key that was taken out does not come back by another way.
 func (l *Line) Newest(folder string) Policy {
 	anchor := l.anchors[folder]
 	if anchor == nil {
 		return Policy{}
 	}
-	newest := anchor.Policy
-	approved := l.approvedContents(folder)
-	for _, a := range l.assessments {
-		if a.Folder == folder && l.approved(a, approved) {
-			newest = a.Next
+	newest, at := anchor.Policy, int64(0)
+	for _, s := range l.approvedContents(folder) {
+		if s.by != nil && s.by.Policy.Hash != s.by.Next.Hash && s.at > at {
+			newest, at = s.by.Next, s.at
 		}
 	}
 	return newest

@@ -6,7 +6,6 @@ import (
 	"strings"
 
 	"speedtrail/history/signoff"
-	"speedtrail/schema"
 )
 
 // States of an assessment.
@@ -132,7 +131,7 @@ func (l *Line) blocks(a *Assessment) []string {
 	if l.anchors[a.Folder] == nil {
 		return append(list, "no policy is anchored")
 	}
-	if !l.approvedContents(a.Folder)[a.BaseTree] {
+	if !l.ApprovedContent(a.Folder, a.BaseTree) {
 		list = append(list, "base-not-approved")
 	}
 	if unknown := a.UnknownPreparers(); len(unknown) > 0 {
@@ -141,46 +140,105 @@ func (l *Line) blocks(a *Assessment) []string {
 	return list
 }
 
-// signedOff tells whether all roles have signed an assessment and nothing but
-// the line of approval is left to ask.
-func (l *Line) signedOff(a *Assessment) bool {
-	p := a.Policy.Parsed
-	if p == nil || a.Next.Parsed == nil || a.BaseNotAncestor || len(a.Preparers) == 0 || len(a.UnknownPreparers()) > 0 || len(l.rejections(a.content())) > 0 {
-		return false
+// way is how a content came to be approved: by an assessment, nil for the
+// anchor, with an entry.
+type way struct {
+	at int64
+	by *Assessment
+}
+
+// signedOff gives the entry with which all roles had signed an assessment, and 0
+// where they have not, or where more than the line of approval keeps it from
+// being approved.
+func (l *Line) signedOff(a *Assessment) int64 {
+	if at, ok := l.done[a.Number]; ok {
+		return at
 	}
-	approvals := l.approvals(a)
-	return !slices.ContainsFunc(p.Roles, func(r schema.Role) bool {
-		return r.Name != InServiceRole && len(approvals[r.Name]) < r.Needed
-	})
+	at := l.lastNeeded(a)
+	if len(l.ofAssessment[a.Number]) > 0 {
+		l.done[a.Number] = at
+	}
+	return at
+}
+
+func (l *Line) lastNeeded(a *Assessment) int64 {
+	p := a.Policy.Parsed
+	if len(l.ofAssessment[a.Number]) == 0 || p == nil || a.Next.Parsed == nil || a.BaseNotAncestor || len(a.Preparers) == 0 || len(a.UnknownPreparers()) > 0 || len(l.rejections(a.content())) > 0 {
+		return 0
+	}
+	// The first approvals that stand, role by role.
+	type part struct{ role, signer string }
+	since := map[part]int64{}
+	for _, i := range l.ofAssessment[a.Number] {
+		r := &l.signOffs[i]
+		x := part{r.Role, r.Signer}
+		switch {
+		case r.Decision != signoff.Approve:
+			delete(since, x)
+		case since[x] == 0:
+			since[x] = r.Entry.Seq
+		}
+	}
+	byRole := map[string][]int64{}
+	for x, at := range since {
+		byRole[x.role] = append(byRole[x.role], at)
+	}
+	last := int64(0)
+	for _, role := range p.Roles {
+		if role.Name == InServiceRole {
+			continue
+		}
+		list := byRole[role.Name]
+		if len(list) < role.Needed {
+			return 0
+		}
+		slices.Sort(list)
+		last = max(last, list[role.Needed-1])
+	}
+	return last
 }
 
 // approvedContents gives the contents of a folder that are approved: the
-// anchor's, and those that approved assessments lead to from it.
-func (l *Line) approvedContents(folder string) map[string]bool {
+// anchor's, and those that approved assessments lead to from it, each by the way
+// that was complete first.
+func (l *Line) approvedContents(folder string) map[string]way {
 	if known := l.contents[folder]; known != nil {
 		return known
 	}
-	approved := map[string]bool{}
+	approved := map[string]way{}
 	l.contents[folder] = approved
 	anchor := l.anchors[folder]
 	if anchor == nil {
 		return approved
 	}
-	approved[anchor.Content] = true
+	approved[anchor.Content] = way{at: anchor.Entry.Seq}
 	for grown := true; grown; {
 		grown = false
 		for _, a := range l.assessments {
-			if a.Folder == folder && approved[a.BaseTree] && !approved[a.TargetTree] && l.signedOff(a) {
-				approved[a.TargetTree], grown = true, true
+			base, ok := approved[a.BaseTree]
+			if !ok || a.Folder != folder {
+				continue
+			}
+			signed := l.signedOff(a)
+			if signed == 0 {
+				continue
+			}
+			at := max(base.at, signed)
+			if have, ok := approved[a.TargetTree]; !ok || at < have.at {
+				approved[a.TargetTree], grown = way{at, a}, true
 			}
 		}
 	}
 	return approved
 }
 
-func (l *Line) approved(a *Assessment, contents map[string]bool) bool {
-	return contents[a.BaseTree] && l.signedOff(a)
+func (l *Line) approved(a *Assessment, contents map[string]way) bool {
+	_, ok := contents[a.BaseTree]
+	return ok && l.signedOff(a) > 0
 }
 
 // ApprovedContent tells whether a content of a folder is approved.
-func (l *Line) ApprovedContent(folder, tree string) bool { return l.approvedContents(folder)[tree] }
+func (l *Line) ApprovedContent(folder, tree string) bool {
+	_, ok := l.approvedContents(folder)[tree]
+	return ok
+}

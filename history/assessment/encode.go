@@ -1,10 +1,13 @@
 package assessment
 
 import (
+	"fmt"
 	"iter"
+	"slices"
 
 	"speedtrail/history/canon"
 	"speedtrail/history/ledger"
+	"speedtrail/schema/source"
 )
 
 // Decode reads a stored document.
@@ -13,7 +16,74 @@ func Decode(body []byte) (*Document, error) {
 	if err := canon.Unmarshal(body, d); err != nil {
 		return nil, err
 	}
+	if err := d.Computed.check(); err != nil {
+		return nil, err
+	}
 	return d, nil
+}
+
+// check proves that every index points to something, so that nothing that is
+// written from a stored document can go wrong.
+func (c *Computed) check() error {
+	within := func(n int, list ...int) bool {
+		return !slices.ContainsFunc(list, func(i int) bool { return i < 0 || i >= n })
+	}
+	for i := range c.Routes {
+		r := &c.Routes[i]
+		for _, list := range [...][]Change{r.Changes, r.Masked} {
+			for k := range list {
+				x := &list[k]
+				if !within(len(r.Sources), x.BeforeSource, x.AfterSource) || !within(len(r.Causes), x.Cause) || !within(len(c.Trains), x.Trains...) || !c.hasPieces(r, x.Pieces) {
+					return fmt.Errorf("change %d of route %s points to what is not there", k, source.Quote(r.ID))
+				}
+			}
+		}
+		for _, t := range r.Track {
+			if !c.hasPieces(r, t.Pieces) {
+				return fmt.Errorf("the track of route %s points to what is not there", source.Quote(r.ID))
+			}
+		}
+		for _, list := range r.Causes {
+			for _, x := range list {
+				if !within(len(c.Source), x.File) || !within(len(c.Source[x.File].Rows), x.Row) {
+					return fmt.Errorf("a cause of route %s points to what is not there", source.Quote(r.ID))
+				}
+			}
+		}
+	}
+	for i := range c.Stretches.List {
+		s := &c.Stretches.List[i]
+		if !within(len(c.Routes), s.Route) || len(s.Changes) == 0 || !within(len(c.Routes[s.Route].Changes), s.Changes...) || !within(len(c.Trains), s.Trains...) {
+			return fmt.Errorf("stretch %d points to what is not there", i)
+		}
+		for _, x := range s.After {
+			if !within(len(c.Routes[s.Route].Sources), x.Source) {
+				return fmt.Errorf("stretch %d points to what is not there", i)
+			}
+		}
+	}
+	for i, x := range c.Figures.Curves {
+		if !within(len(c.Trains), x.Trains...) {
+			return fmt.Errorf("curve %d points to what is not there", i)
+		}
+	}
+	return nil
+}
+
+// hasPieces tells whether a list of pieces is there, and the declarations in it.
+// Where requests were not looked at there is none.
+func (c *Computed) hasPieces(r *Route, i int) bool {
+	if c.Options.NoRequests && i == 0 {
+		return true
+	}
+	if i < 0 || i >= len(r.Pieces) {
+		return false
+	}
+	declarations := 0
+	for _, q := range c.Requests {
+		declarations += len(q.Declares)
+	}
+	return !slices.ContainsFunc(r.Pieces[i], func(p Piece) bool { return p.By < -1 || p.By >= declarations })
 }
 
 // Row is a change as one train sees it.

@@ -45,9 +45,19 @@ func Append(b *bytes.Buffer, v any) error {
 }
 
 // Unmarshal reads canonical JSON into a value and refuses members that the value
-// does not have.
+// does not have. The error names the member, always in the same words (those of
+// the library differ from run to run on purpose).
 func Unmarshal(body []byte, v any) error {
-	return json.Unmarshal(body, v, json.RejectUnknownMembers(true))
+	err := json.Unmarshal(body, v, json.RejectUnknownMembers(true))
+	var form *json.SemanticError
+	var syntax *jsontext.SyntacticError
+	switch {
+	case errors.As(err, &form):
+		return fmt.Errorf("member %q is not of the form that is needed", form.JSONPointer)
+	case errors.As(err, &syntax):
+		return fmt.Errorf("it is not JSON from byte %d on", syntax.ByteOffset)
+	}
+	return err
 }
 
 // Check proves that bytes are canonical JSON. The error is ErrNotCanonical.

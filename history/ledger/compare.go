@@ -18,7 +18,7 @@ func (l *Ledger) RowCount(ctx context.Context, table string, last int64) (n, orp
 	key := "assessment IN (SELECT number FROM assessment WHERE entry <= ?)"
 	orphan := "assessment NOT IN (SELECT number FROM assessment WHERE entry IN (SELECT seq FROM entry))"
 	switch {
-	case columns[Table(table)] > 0:
+	case names[Table(table)] != nil:
 		if old, err := l.older(ctx); err != nil || old {
 			return 0, 0, err
 		}
@@ -46,56 +46,51 @@ func (l *Ledger) CompareRows(ctx context.Context, number, entry int64, r Record)
 		changes++
 	}
 	counts = map[string]int64{}
-	one := func(table string, want func(yield func([]any) bool)) error {
-		n, err := l.compareTable(ctx, table, number, want)
+	// All tables are counted, whatever is found in the first ones.
+	one := func(table string, want func(yield func([]any) bool)) {
+		n, found := l.compareTable(ctx, table, number, want)
 		counts[table] = n
-		return err
+		if err == nil {
+			err = found
+		}
 	}
-	err = one("assessment", func(yield func([]any) bool) {
+	one("assessment", func(yield func([]any) bool) {
 		yield([]any{number, entry, r.Digest, r.Base, r.Target, r.Folder, r.Dataset, int64(r.RulesVersion), changes, int64(len(r.Findings))})
 	})
-	if err == nil {
-		err = one("request", func(yield func([]any) bool) {
-			for i, q := range r.Requests {
-				if !yield([]any{number, int64(i + 1), q.ID, q.Title}) {
-					return
-				}
+	one("request", func(yield func([]any) bool) {
+		for i, q := range r.Requests {
+			if !yield([]any{number, int64(i + 1), q.ID, q.Title}) {
+				return
 			}
-		})
-	}
-	if err == nil {
-		err = one("preparer", func(yield func([]any) bool) {
-			for i, p := range r.Preparers {
-				if !yield([]any{number, int64(i + 1), p.Name, p.Email}) {
-					return
-				}
+		}
+	})
+	one("preparer", func(yield func([]any) bool) {
+		for i, p := range r.Preparers {
+			if !yield([]any{number, int64(i + 1), p.Name, p.Email}) {
+				return
 			}
-		})
-	}
-	if err == nil {
-		err = one("finding", func(yield func([]any) bool) {
-			for i, f := range r.Findings {
-				if !yield([]any{number, int64(i + 1), f.ID, f.Route, f.Direction, f.From, f.To, f.Text, f.Accepted}) {
-					return
-				}
+		}
+	})
+	one("finding", func(yield func([]any) bool) {
+		for i, f := range r.Findings {
+			if !yield([]any{number, int64(i + 1), f.ID, f.Route, f.Direction, f.From, f.To, f.Text, f.Accepted}) {
+				return
 			}
-		})
-	}
-	if err == nil {
-		err = one("speed_change", func(yield func([]any) bool) {
-			place := int64(0)
-			for c := range r.Changes {
-				place++
-				runOut := int64(0)
-				if c.RunOut {
-					runOut = 1
-				}
-				if !yield([]any{number, place, c.Route, c.Direction, c.Train, c.From, c.To, c.LengthMM, int64(c.Before), int64(c.After), runOut, c.BeforeSource, c.AfterSource}) {
-					return
-				}
+		}
+	})
+	one("speed_change", func(yield func([]any) bool) {
+		place := int64(0)
+		for c := range r.Changes {
+			place++
+			runOut := int64(0)
+			if c.RunOut {
+				runOut = 1
 			}
-		})
-	}
+			if !yield([]any{number, place, c.Route, c.Direction, c.Train, c.From, c.To, c.LengthMM, int64(c.Before), int64(c.After), runOut, c.BeforeSource, c.AfterSource}) {
+				return
+			}
+		}
+	})
 	return counts, err
 }
 
@@ -136,13 +131,17 @@ func (l *Ledger) compareTable(ctx context.Context, table string, number int64, w
 		}
 		return true
 	})
-	if err == nil && rows.Next() {
+	rest := int64(0)
+	for rows.Next() {
+		rest++
+	}
+	if err == nil && rest > 0 {
 		err = rowError(table, n+1, "is not in the entry")
 	}
-	if err == nil {
-		err = classify(rows.Err())
+	if failed := rows.Err(); failed != nil {
+		err = classify(failed)
 	}
-	return n, err
+	return n + rest, err
 }
 
 func rowError(table string, n int64, what string) error {

@@ -211,6 +211,12 @@ func (l *Ledger) prepare(ctx context.Context, o Options) error {
 	if err := canon.Unmarshal(first.Body, &body); err != nil || first.Kind != chain.Ledger {
 		return fail(ErrForeign, errors.New("the first entry names no ledger"))
 	}
+	if body.Format != firstFormat {
+		return fail(ErrNewer, fmt.Errorf("entries of form %d, this version knows %d", body.Format, firstFormat))
+	}
+	if id, err := hex.DecodeString(body.ID); err != nil || len(id) != 16 || hex.EncodeToString(id) != body.ID {
+		return fail(ErrForeign, errors.New("the first entry has no id of 32 hexadecimal digits"))
+	}
 	l.id = body.ID
 	return nil
 }

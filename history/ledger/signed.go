@@ -29,8 +29,16 @@ const (
 	RevocationTable Table = "revocation"
 )
 
-// columns is how many columns a table has, the entry's number included.
-var columns = map[Table]int{AnchorTable: 11, SignOffTable: 10, InForceTable: 12, RevocationTable: 8}
+// names are the columns of a table after the entry's number.
+var names = map[Table][]string{
+	AnchorTable:     {"place", "folder", "revision", "content", "policy", "role", "signer", "key", "time", "statement_sha256"},
+	SignOffTable:    {"assessment", "digest", "role", "decision", "reason", "signer", "key", "time", "statement_sha256"},
+	InForceTable:    {"folder", "revision", "content", "routes", "since", "corrects", "reason", "signer", "key", "time", "statement_sha256"},
+	RevocationTable: {"revoked_key", "role", "reason", "signer", "key", "time", "statement_sha256"},
+}
+
+// ColumnName gives the name of a value of a Row.
+func ColumnName(table Table, value int) string { return names[table][value] }
 
 // Append adds an entry. build is called with the ledger locked for writing: it
 // gives the body and the rows, or an error for which nothing is added. Between
@@ -61,8 +69,8 @@ func (l *Ledger) Append(ctx context.Context, now time.Time, kind chain.Kind, bui
 }
 
 func (l *Ledger) insertRow(ctx context.Context, entry int64, r Row) error {
-	n, ok := columns[r.Table]
-	if !ok || len(r.Values)+1 != n {
+	list, ok := names[r.Table]
+	if !ok || len(r.Values) != len(list) {
 		return fmt.Errorf("table %q has no row of %d values", r.Table, len(r.Values))
 	}
 	marks := "?"
@@ -75,10 +83,10 @@ func (l *Ledger) insertRow(ctx context.Context, entry int64, r Row) error {
 
 // Rows gives the rows of a table of signed statements that belong to an entry.
 func (l *Ledger) Rows(ctx context.Context, table Table, entry int64) ([]Row, error) {
-	n, ok := columns[table]
-	if !ok {
+	if names[table] == nil {
 		return nil, fmt.Errorf("no table %q", table)
 	}
+	n := len(names[table]) + 1
 	if old, err := l.older(ctx); err != nil || old {
 		return nil, err
 	}
