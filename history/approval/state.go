@@ -14,6 +14,9 @@ const (
 	Partly   = "partly signed"
 	Approved = "approved"
 	Rejected = "rejected"
+	// Unreadable is that of an assessment whose body cannot be read; it counts for
+	// nothing.
+	Unreadable = "not readable"
 )
 
 // State is what the ledger says about an assessment.
@@ -35,11 +38,11 @@ type content struct{ folder, tree string }
 
 func (a *Assessment) content() content { return content{a.Folder, a.TargetTree} }
 
-// State gives the state of an assessment; the zero State where there is none.
+// State gives the state of an assessment.
 func (l *Line) State(number int64) State {
 	a := l.byNumber[number]
 	if a == nil {
-		return State{}
+		return State{Word: Unreadable}
 	}
 	s := State{Word: Open}
 	for _, i := range l.ofAssessment[number] {

@@ -26,8 +26,8 @@ func TestStates(t *testing.T) {
 	if got := s.state(n, Rejected); len(got.RejectedBy) != 1 || got.RejectedBy[0].Signer != "fin@tarn.example" || s.line.ApprovedContent(".", treeOf("b")) {
 		t.Errorf("%+v", got)
 	}
-	if got := s.line.State(99); got.Word != "" {
-		t.Errorf("an assessment that is not there is %+v", got)
+	if got := s.line.State(99); got.Word != Unreadable {
+		t.Errorf("an assessment that is not there, or cannot be read, is %+v", got)
 	}
 }
 
