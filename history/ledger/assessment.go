@@ -7,6 +7,7 @@ import (
 	"errors"
 	"fmt"
 	"iter"
+	"runtime/debug"
 	"strings"
 	"time"
 
@@ -49,9 +50,16 @@ type Change struct {
 	AfterSource             string
 }
 
+// largeBody is the size of a body from which on memory that is no longer used is
+// given back first: SQLite copies the body twice on its way into the file.
+const largeBody = 8 << 20
+
 // RecordAssessment appends an assessment. One whose digest is there already
 // adds nothing: added is false and number is that of the one that is there.
 func (l *Ledger) RecordAssessment(ctx context.Context, now time.Time, r Record) (number int64, added bool, head chain.Head, err error) {
+	if len(r.Body) > largeBody {
+		debug.FreeOSMemory()
+	}
 	err = l.transaction(ctx, func() error {
 		if head, err = l.Head(ctx); err != nil {
 			return err
