@@ -75,8 +75,9 @@ type page struct {
 	Standing string
 	Signed   []pageSigned
 
-	Rows, Quiet         []pageSourceRow
-	RowsLeft, QuietLeft int
+	Rows, Quiet                                []pageSourceRow
+	RowsLeft, QuietLeft                        int
+	RunsLeft, CurvesLeft, ShortLeft, FleetLeft int
 }
 
 type pageStretch struct {

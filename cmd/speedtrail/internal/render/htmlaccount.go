@@ -77,8 +77,13 @@ func (p *page) fillDeclared() {
 }
 
 func (p *page) fillFleet() {
+	lines := 0
 	for i := range p.C.Fleet {
 		f := &p.C.Fleet[i]
+		if lines += len(f.Changes) + 1; lines > mostHTMLRows {
+			p.FleetLeft = len(p.C.Fleet) - i
+			break
+		}
 		p.Fleet = append(p.Fleet, pageFleet{source.Visible(fleetTitle(f)), fleetStatement(f), fleetLines(f)})
 	}
 }
@@ -86,7 +91,9 @@ func (p *page) fillFleet() {
 func (p *page) fillFigures() {
 	f := &p.C.Figures
 	p.Motion, p.CrossingWords, p.CurveWords = motionWords(p.C), crossingWords, curveWords
-	for _, r := range f.Runs {
+	runs, more := bounded(f.Runs)
+	p.RunsLeft = more
+	for _, r := range runs {
 		run := pageRun{Route: r.Route, Direction: r.Direction, Train: r.Train, Before: clock(r.Before), After: clock(r.After), Difference: seconds(r.After - r.Before)}
 		for _, part := range r.Parts {
 			if len(r.Parts) > 1 && part.Gain != 0 {
@@ -98,12 +105,24 @@ func (p *page) fillFigures() {
 	for _, x := range f.Crossings {
 		p.Crossings = append(p.Crossings, pageLineItem{source.Visible(x.Route + " " + x.Direction + ", km " + minus(x.Km) + " " + x.Name), crossingLine(x), x.Warning > x.After})
 	}
-	for _, x := range curvesOfInterest(f.Curves) {
+	curves, more := bounded(curvesOfInterest(f.Curves))
+	p.CurvesLeft = more
+	for _, x := range curves {
 		p.Curves = append(p.Curves, pageLineItem{source.Visible(x.Route + " " + directionWords(x.Direction) + ", km " + minus(x.From) + " to " + minus(x.To) + " (" + trainNames(p.C, x.Trains, 0) + ")"), source.Visible(curveLine(x)), x.Over})
 	}
-	for _, x := range f.Short {
+	short, more := bounded(f.Short)
+	p.ShortLeft = more
+	for _, x := range short {
 		p.Short = append(p.Short, pageLineItem{source.Visible(x.Route + " " + x.Direction + ", km " + minus(x.From) + " to " + minus(x.To) + ", " + x.Train), shortLine(x), false})
 	}
+}
+
+// bounded cuts a list to what a page holds, and says how many were cut.
+func bounded[T any](list []T) (shown []T, more int) {
+	if len(list) <= mostHTMLRows {
+		return list, 0
+	}
+	return list[:mostHTMLRows], len(list) - mostHTMLRows
 }
 
 // fillRows lists the rows that differ: those with an effect, and the others.
@@ -128,12 +147,6 @@ func (p *page) fillRows() {
 			p.Rows = append(p.Rows, row)
 		}
 	}
-	if len(p.Rows) > mostHTMLRows {
-		p.RowsLeft = len(p.Rows) - mostHTMLRows
-		p.Rows = p.Rows[:mostHTMLRows]
-	}
-	if len(p.Quiet) > mostHTMLRows {
-		p.QuietLeft = len(p.Quiet) - mostHTMLRows
-		p.Quiet = p.Quiet[:mostHTMLRows]
-	}
+	p.Rows, p.RowsLeft = bounded(p.Rows)
+	p.Quiet, p.QuietLeft = bounded(p.Quiet)
 }

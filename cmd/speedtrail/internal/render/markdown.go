@@ -128,8 +128,13 @@ func markdownAccount(b *strings.Builder, c *assessment.Computed) {
 	if len(c.Fleet) > 0 {
 		add("\n## Whole fleet\n")
 	}
+	lines := 0
 	for i := range c.Fleet {
 		f := &c.Fleet[i]
+		if lines += len(f.Changes) + 1; lines > mostHTMLRows {
+			add("\n%d more accounts, one a route and direction, stand in the JSON form.\n", len(c.Fleet)-i)
+			break
+		}
 		add("\n%s: **%s**\n\n", md(fleetTitle(f)), md(fleetStatement(f)))
 		for _, l := range fleetLines(f) {
 			mark := ""
@@ -155,10 +160,12 @@ func markdownAccount(b *strings.Builder, c *assessment.Computed) {
 	for _, x := range f.Crossings {
 		crossings = append(crossings, x.Route+" "+x.Direction+", km "+minus(x.Km)+" "+x.Name+": "+crossingLine(x))
 	}
-	for _, x := range curvesOfInterest(f.Curves) {
+	shownCurves, _ := bounded(curvesOfInterest(f.Curves))
+	for _, x := range shownCurves {
 		curves = append(curves, x.Route+" "+directionWords(x.Direction)+", km "+minus(x.From)+" to "+minus(x.To)+" ("+trainNames(c, x.Trains, 0)+"): "+curveLine(x))
 	}
-	for _, x := range f.Short {
+	shownShort, _ := bounded(f.Short)
+	for _, x := range shownShort {
 		short = append(short, x.Route+" "+x.Direction+", km "+minus(x.From)+" to "+minus(x.To)+", "+x.Train+": "+shortLine(x))
 	}
 	list(crossingWords, crossings)
@@ -166,14 +173,23 @@ func markdownAccount(b *strings.Builder, c *assessment.Computed) {
 	list("Raises too short to be used.", short)
 	if len(f.Runs) > 0 {
 		add("\n%s\n\n| route | direction | train | before | after | difference, s |\n|---|---|---|--:|--:|--:|\n", md(motionWords(c)))
-		for _, r := range f.Runs {
+		runs, more := bounded(f.Runs)
+		for _, r := range runs {
 			add("| %s | %s | %s | %s | %s | %s |\n", md(r.Route), r.Direction, md(r.Train), clock(r.Before), clock(r.After), seconds(r.After-r.Before))
+		}
+		if more > 0 {
+			add("\n%d more running times stand in the JSON form.\n", more)
 		}
 	}
 	add("\n## Source rows\n\n")
 	results := consequences(c)
+	lines = 0
 	for i := range c.Source {
 		s := &c.Source[i]
+		if lines += len(s.Rows) + 1; lines > mostHTMLRows {
+			add("- %d more files; the JSON form has them all\n", len(c.Source)-i)
+			break
+		}
 		if len(s.Rows) == 0 {
 			add("- %s: %s\n", md(fileName(*s)), md(s.Note))
 		}
