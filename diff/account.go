@@ -88,9 +88,10 @@ type Route struct {
 	Fleet   []Fleet
 	Figures Figures
 
-	sources sourceTable
-	causes  causeTable
-	pieces  map[string]int
+	sources    sourceTable
+	causes     causeTable
+	pieces     map[string]int
+	neighbours neighbours
 }
 
 // TrackChange is a chainage or a direction of travel that only one revision

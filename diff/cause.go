@@ -272,26 +272,20 @@ func first(p chainage.Point) chainage.Point {
 }
 
 // rowOf finds the row of a layer that stands in a line, and the speed that it
-// gives to a class.
+// gives to a class. Rows stand in the order of their lines.
 func rowOf(r *schema.Route, layer profile.Layer, line int, class profile.Class) (*schema.Row, unit.Speed) {
 	switch layer {
 	case profile.StaticSpeed:
-		for i := range r.Speed {
-			if r.Speed[i].Pos.Line == line {
-				return &r.Speed[i].Row, profile.StaticSpeedOf(&r.Speed[i], class)
-			}
+		if i, ok := slices.BinarySearchFunc(r.Speed, line, func(row schema.SpeedRow, line int) int { return cmp.Compare(row.Pos.Line, line) }); ok {
+			return &r.Speed[i].Row, profile.StaticSpeedOf(&r.Speed[i], class)
 		}
 	case profile.AxleLoad:
-		for i := range r.AxleLoad {
-			if r.AxleLoad[i].Pos.Line == line {
-				return &r.AxleLoad[i].Row, r.AxleLoad[i].Limit[class.AxleLoad]
-			}
+		if i, ok := slices.BinarySearchFunc(r.AxleLoad, line, func(row schema.AxleLoadRow, line int) int { return cmp.Compare(row.Pos.Line, line) }); ok {
+			return &r.AxleLoad[i].Row, r.AxleLoad[i].Limit[class.AxleLoad]
 		}
 	case profile.Temporary:
-		for i := range r.Temporary {
-			if r.Temporary[i].Pos.Line == line {
-				return &r.Temporary[i].Row, r.Temporary[i].Speed
-			}
+		if i, ok := slices.BinarySearchFunc(r.Temporary, line, func(row schema.TemporaryRow, line int) int { return cmp.Compare(row.Pos.Line, line) }); ok {
+			return &r.Temporary[i].Row, r.Temporary[i].Speed
 		}
 	}
 	return nil, 0

@@ -102,9 +102,9 @@ func fleetTrain(id string, length int, top unit.Speed) schema.Train {
 func tilting(t schema.Train) schema.Train { t.Cant = 3; return t }
 
 const (
-	fleetAll  = "any cant deficiency, any other category, any axle load"
-	fleetSlow = "cant deficiency up to 130 mm, any other category, any axle load"
-	fleetTilt = "cant deficiency 150 mm and above, any other category, any axle load"
+	fleetAll  = "any cant deficiency, any category, any axle load"
+	fleetSlow = "cant deficiency up to 130 mm, any category, any axle load"
+	fleetTilt = "cant deficiency 150 mm and above, any category, any axle load"
 )
 
 // Whether a reference train stands for a kind of trains that changes.

@@ -1,6 +1,9 @@
 package diff
 
 import (
+	"cmp"
+	"slices"
+
 	"speedtrail/diff/profile"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
@@ -35,10 +38,13 @@ func (r *Route) leaving(trains []Train) []Leaving {
 		for k := range f.Rows {
 			c, d := Cause{i, k}, &f.Rows[k]
 			for _, direction := range codes.AllDirections {
-				if !r.concerns(c, direction) {
+				oldLines, newLines := linesOf(f.Tables[d.Table].Old.Rows, d.Old), linesOf(f.Tables[d.Table].New.Rows, d.New)
+				now, before := beyond(r.Target, layer, newLines, direction, longest), beyond(r.Base, layer, oldLines, direction, longest)
+				if len(now) == 0 && len(before) == 0 || !concernsIn(direction, func(direction codes.Direction, class profile.Class) bool {
+					return !slices.Equal(carried(r.Base, layer, oldLines, direction, longest, class), carried(r.Target, layer, newLines, direction, longest, class))
+				}) {
 					continue
 				}
-				now := beyond(r.Target, layer, linesOf(f.Tables[d.Table].New.Rows, d.New), direction, longest)
 				for _, row := range now {
 					list = append(list, Leaving{c, direction, row, false, longest})
 				}
@@ -47,12 +53,39 @@ func (r *Route) leaving(trains []Train) []Leaving {
 				}
 				// A row that reached beyond and does so no more lets go of trains
 				// there.
-				for _, row := range beyond(r.Base, layer, linesOf(f.Tables[d.Table].Old.Rows, d.Old), direction, longest) {
+				for _, row := range before {
 					list = append(list, Leaving{c, direction, row, true, longest})
 				}
 			}
 		}
 	}
+	return list
+}
+
+// load is what a row carries beyond the end of a route: a speed, to a train length
+// less the distance from the row's far end to that of the route.
+type load struct {
+	speed    unit.Speed
+	distance unit.Distance
+}
+
+// carried lists what rows carry beyond the end of the route for a class of
+// trains. A row that was cut elsewhere carries what it did.
+func carried(route *schema.Route, layer profile.Layer, lines []int, d codes.Direction, length unit.Distance, class profile.Class) []load {
+	var list []load
+	for _, line := range lines {
+		for _, row := range beyond(route, layer, []int{line}, d, length) {
+			_, v := rowOf(route, layer, line, class)
+			distance := route.Track.Length() - row.End
+			if d == codes.Reverse {
+				distance = row.Start
+			}
+			if v != 0 {
+				list = append(list, load{v, distance})
+			}
+		}
+	}
+	slices.SortFunc(list, func(a, b load) int { return cmp.Or(cmp.Compare(a.distance, b.distance), cmp.Compare(a.speed, b.speed)) })
 	return list
 }
 

@@ -9,7 +9,6 @@ import (
 	"speedtrail/diff/written"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
-	"speedtrail/schema/unit"
 )
 
 // Reason says why no change comes of a difference.
@@ -131,62 +130,7 @@ func (r *Route) reason(c Cause, trains []Train) Reason {
 	case d.Masks:
 		return HiddenToday
 	}
-	// Differences beside each other can make up for one another, as where a limit
-	// moves between rows of equal speed.
-	cluster := r.cluster(c)
-	for _, t := range trains {
-		for _, direction := range codes.AllDirections {
-			if r.causes.haveEffect(cluster, direction, profile.ClassOf(t.Train)) {
-				return LowerElsewhere
-			}
-		}
-	}
-	if concernsSome(func(d codes.Direction, class profile.Class) bool { return r.causes.haveEffect(cluster, d, class) }) {
-		return NoSuchTrain
-	}
-	return SameForAll
-}
-
-// cluster gives the differences of a file that overlap or touch, one by one, a
-// given one; that one among them.
-func (r *Route) cluster(c Cause) []Cause {
-	f := &r.Files[c.File]
-	spans := make([][2]unit.Distance, len(f.Rows))
-	for k := range f.Rows {
-		spans[k] = f.chainages(&f.Rows[k])
-	}
-	list := []Cause{c}
-	in := map[int]bool{c.Row: true}
-	for i := 0; i < len(list); i++ {
-		span := spans[list[i].Row]
-		for k := range spans {
-			if !in[k] && spans[k][0] <= span[1] && span[0] <= spans[k][1] {
-				in[k] = true
-				list = append(list, Cause{c.File, k})
-			}
-		}
-	}
-	return list
-}
-
-// chainages gives the lowest and the highest chainage of the rows of a
-// difference.
-func (f *File) chainages(d *RowDifference) (span [2]unit.Distance) {
-	first := true
-	for side, indices := range [...][]int{d.Old, d.New} {
-		for _, i := range indices {
-			row := &[...]*rows.Table{&f.Tables[d.Table].Old, &f.Tables[d.Table].New}[side].Rows[i]
-			low, high := min(row.From.Chainage, row.To.Chainage), max(row.From.Chainage, row.To.Chainage)
-			if first || low < span[0] {
-				span[0] = low
-			}
-			if first || high > span[1] {
-				span[1] = high
-			}
-			first = false
-		}
-	}
-	return span
+	return r.together(c, trains)
 }
 
 // concernsSome tells whether something holds for any direction and any class of
@@ -209,12 +153,6 @@ func concernsIn(direction codes.Direction, holds func(codes.Direction, profile.C
 		}
 	}
 	return false
-}
-
-// concerns tells whether a difference restricts any train otherwise than before
-// in a direction of travel.
-func (r *Route) concerns(c Cause, direction codes.Direction) bool {
-	return concernsIn(direction, func(d codes.Direction, class profile.Class) bool { return r.causes.hasEffect(c, d, class) })
 }
 
 // sameValues tells whether all cells of a difference mean what they meant.

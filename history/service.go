@@ -19,6 +19,9 @@ type Service struct {
 	// Undoes: the revision is approved, but not by a way from what was in service
 	// before: of two approved siblings the second undoes the first.
 	Undoes bool
+	// Late: it is approved, but was not when it went into service.
+	Late       bool
+	ApprovedAt time.Time
 	// Through are the approved assessments whose target it is.
 	Through []int64
 }
@@ -51,6 +54,9 @@ func ServiceOf(line *approval.Line, r approval.Record) Service {
 	}
 	if s.Undoes {
 		s.Approved = false
+	}
+	if at, ok := line.ApprovedAt(r.Folder, r.Content); ok && s.Approved {
+		s.ApprovedAt, s.Late = at, at.After(r.Since)
 	}
 	for _, a := range line.Assessments() {
 		if a.Folder == r.Folder && a.TargetTree == r.Content && line.State(a.Number).Word == approval.Approved {
@@ -107,6 +113,8 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 		switch {
 		case s.Undoes:
 			list = append(list, ServiceFinding{ServiceUndoes, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and is approved, but no approved assessment leads to it from commit %s, which was in service before: what that one changed is undone", r.Entry.Seq, r.Revision, where, at, s.Before.Revision)})
+		case s.Late:
+			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and was approved only on %s", r.Entry.Seq, r.Revision, where, at, s.ApprovedAt.UTC().Format(time.RFC3339))})
 		case !s.Approved:
 			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s without approval", r.Entry.Seq, r.Revision, where, at)})
 		}

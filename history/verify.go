@@ -354,18 +354,27 @@ func (v *verifier) statements() error {
 	return v.ctx.Err()
 }
 
-// summary says what was proved of the ledger itself.
+// summary says what was proved of the ledger itself, also where something else is
+// wrong.
 func (v *verifier) summary() {
-	if len(v.r.Problems) > 0 {
-		return
+	wrong := func(kinds ...string) bool {
+		return slices.ContainsFunc(v.r.Problems, func(p Problem) bool { return slices.Contains(kinds, p.Kind) })
 	}
-	signed := len(v.r.Line.SignOffs()) + len(v.r.Line.InForce()) + len(v.r.Line.Revocations())
-	for _, a := range v.r.Line.Anchors() {
-		signed += len(a.Records)
+	var proved []string
+	if !wrong("file", "chain", "body", "rows") {
+		proved = append(proved, fmt.Sprintf("%d entries form one chain, and every table repeats them exactly", v.r.Head.Seq))
 	}
-	v.r.Proved = append([]string{
-		fmt.Sprintf("%d entries form one chain, and every table repeats them exactly", v.r.Head.Seq),
-		fmt.Sprintf("%d signed statements obey the policies of their time", signed),
-	}, v.r.Proved...)
+	if !wrong("statement", "body") {
+		signed := len(v.r.Line.SignOffs()) + len(v.r.Line.InForce()) + len(v.r.Line.Revocations())
+		for _, a := range v.r.Line.Anchors() {
+			signed += len(a.Records)
+		}
+		text := fmt.Sprintf("%d signed statements obey the policies of their time", signed)
+		if n := len(v.r.Line.Revocations()); n > 0 {
+			text += fmt.Sprintf("; keys taken out of use: %d, see register", n)
+		}
+		proved = append(proved, text)
+	}
+	v.r.Proved = append(proved, v.r.Proved...)
 	v.r.Unproved = append(v.r.Unproved, "who wrote a commit, and when an entry was recorded: names and times are claims")
 }

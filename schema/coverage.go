@@ -53,6 +53,9 @@ type gap struct {
 }
 
 func coverageOf(route *Route, d codes.Direction) []gap {
+	if coveredInOrder(route, d) {
+		return nil
+	}
 	var order []int
 	for i := range route.Speed {
 		if route.Speed[i].Directions.Has(d) {
@@ -78,6 +81,23 @@ func coverageOf(route *Route, d codes.Direction) []gap {
 		gaps = append(gaps, gap{from: at, to: route.Track.Length(), row: last})
 	}
 	return gaps
+}
+
+// coveredInOrder tells whether the rows cover the route one after the other in
+// the order of the file, as those of most tables do.
+func coveredInOrder(route *Route, d codes.Direction) bool {
+	at := unit.Distance(0)
+	for i := range route.Speed {
+		row := &route.Speed[i]
+		if !row.Directions.Has(d) {
+			continue
+		}
+		if row.Start != at {
+			return false
+		}
+		at = row.End
+	}
+	return at == route.Track.Length()
 }
 
 // disjoint checks that rows of which one place has only one do not overlap.

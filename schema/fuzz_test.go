@@ -180,7 +180,7 @@ func checkLaws(t *testing.T, d *Dataset) {
 	}
 	ids := map[string]bool{}
 	for _, r := range d.Routes {
-		if ids[r.ID] || !routeID.MatchString(r.ID) {
+		if ids[r.ID] || !isRouteID(r.ID) {
 			t.Fatalf("route id %q", r.ID)
 		}
 		ids[r.ID] = true

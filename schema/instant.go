@@ -2,6 +2,7 @@ package schema
 
 import (
 	"regexp"
+	"sync"
 	"time"
 
 	"speedtrail/schema/source"
@@ -16,7 +17,9 @@ func plausible(t time.Time) bool { return t.Year() >= 1900 && t.Year() <= 9999 }
 
 // dateTimeForm is RFC 3339 where time.Parse is laxer: two digits for the hour,
 // a point before the fraction, an offset below a day.
-var dateTimeForm = regexp.MustCompile(`^[0-9]{4}-[0-9]{2}-[0-9]{2}T[0-9]{2}:[0-9]{2}:[0-9]{2}(\.[0-9]+)?(Z|[+-]([01][0-9]|2[0-3]):[0-5][0-9])$`)
+var dateTimeForm = sync.OnceValue(func() *regexp.Regexp {
+	return regexp.MustCompile(`^[0-9]{4}-[0-9]{2}-[0-9]{2}T[0-9]{2}:[0-9]{2}:[0-9]{2}(\.[0-9]+)?(Z|[+-]([01][0-9]|2[0-3]):[0-5][0-9])$`)
+})
 
 // instant reads a date, whole days as the time zone has them, or a date-time.
 func (r *reader) instant(c table.Cell, column string, until bool) time.Time {
@@ -25,7 +28,7 @@ func (r *reader) instant(c table.Cell, column string, until bool) time.Time {
 	}
 	t, err := time.Parse(time.DateOnly, c.Text)
 	day := err == nil
-	if !day && dateTimeForm.MatchString(c.Text) {
+	if !day && dateTimeForm().MatchString(c.Text) {
 		t, err = time.Parse(time.RFC3339, c.Text)
 	}
 	switch {

@@ -35,7 +35,7 @@ const (
 	routeFile    = "route.toml"
 )
 
-var routeFiles = []string{routeFile, "speed.csv", "axle-load.csv", "temporary.csv", "curves.csv", "gradients.csv", "places.csv"}
+var routeFiles = [...]string{routeFile, "speed.csv", "axle-load.csv", "temporary.csv", "curves.csv", "gradients.csv", "places.csv"}
 
 // Identified is what a directory entry can offer beside fs.DirEntry: equal
 // identities that are not empty mean equal content.
@@ -181,6 +181,13 @@ func (l *loading) list() error {
 		if (dir || file) && !checkType(&l.faults, e, e.Name(), dir) {
 			l.refused[e.Name()] = true
 		}
+		if !dir && !file {
+			known := []string{datasetFile, trainsFile, acceptedFile, signoffFile, signersFile}
+			if e.IsDir() {
+				known = []string{routesDir, requestsDir}
+			}
+			mistyped(&l.faults, e, e.Name(), known)
+		}
 	}
 	if i := slices.IndexFunc(root, func(e fs.DirEntry) bool { return e.Name() == routesDir && e.IsDir() }); i < 0 {
 		return nil
@@ -207,11 +214,7 @@ func (l *loading) list() error {
 			l.faults.Add(source.Position{File: p}, "the folder's name differs from %s in letter case only, which some file systems cannot hold", source.Quote(other))
 		}
 		folded[fold] = e.Name()
-		f := Folder{Path: p}
-		if id, ok := e.(Identified); ok {
-			f.Identity = id.Identity()
-		}
-		l.folders = append(l.folders, f)
+		l.folders = append(l.folders, Folder{Path: p, Identity: identityOf(e)})
 	}
 	if len(l.folders) > MaxRoutes {
 		l.faults.Add(source.Position{File: routesDir}, "%d route folders, at most %d are allowed", len(l.folders), MaxRoutes)

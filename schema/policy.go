@@ -1,7 +1,6 @@
 package schema
 
 import (
-	"regexp"
 	"slices"
 	"strings"
 	"time"
@@ -180,7 +179,7 @@ func (r *reader) signoff(p *Policy, m table.Reader) {
 		if t.Get("needed") == nil {
 			r.faults.Add(t.Pos, "needed is missing")
 		}
-		if role.Name != "" && !roleName.MatchString(role.Name) || role.Name == Preparer {
+		if role.Name != "" && !madeOf(role.Name, 50, "-", true) || role.Name == Preparer {
 			r.faults.Add(valuePlace(t, "name"), "role name %s is not made of up to 50 letters, digits and '-', or is the built-in %s", source.Quote(role.Name), Preparer)
 		}
 		r.once(names, "role", role.Name, valuePlace(t, "name"))
@@ -195,8 +194,6 @@ func (r *reader) signoff(p *Policy, m table.Reader) {
 	}
 	m.Finish()
 }
-
-var roleName = regexp.MustCompile(`^[A-Za-z0-9-]{1,50}$`)
 
 // checkRoles checks what makes a policy one that can be met.
 func (r *reader) checkRoles(p *Policy) {

@@ -3,6 +3,7 @@ package schema
 import (
 	"errors"
 	"io/fs"
+	"path"
 	"slices"
 	"strconv"
 	"strings"
@@ -242,6 +243,9 @@ func (r *reader) requests(d *Dataset) {
 		case !checkType(&r.faults, e, p, false):
 			continue
 		case !isData(e.Name()):
+			if ext := path.Ext(e.Name()); len(ext) > 2 && near(strings.ToLower(ext), ".toml") {
+				r.faults.Add(source.Position{File: p}, "the name nearly ends in .toml and the file is not read, a mistyped name would hide data")
+			}
 			continue
 		case !strings.HasSuffix(e.Name(), ".toml"):
 			r.faults.Add(source.Position{File: p}, "a file that is no request; requests end in .toml")

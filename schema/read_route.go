@@ -4,7 +4,6 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
-	"regexp"
 	"slices"
 	"strings"
 
@@ -12,6 +11,7 @@ import (
 	"speedtrail/schema/codes"
 	"speedtrail/schema/source"
 	"speedtrail/schema/table"
+	"speedtrail/schema/unit"
 )
 
 // maxDepth bounds how deep folders below a route's are searched for data that
@@ -25,41 +25,67 @@ func (r *reader) route(folder string) *Route {
 		r.err = err
 		return nil
 	}
-	present := map[string]bool{}
+	var here present
 	for _, e := range entries {
 		p := folder + "/" + e.Name()
 		switch {
 		case r.badName(e, p):
 		case e.IsDir():
-			if slices.Contains(routeFiles, e.Name()) {
+			if slices.Contains(routeFiles[:], e.Name()) {
 				checkType(&r.faults, e, p, false)
 			}
 			r.noDataBelow(p, 1)
 		case !checkType(&r.faults, e, p, false):
-		case slices.Contains(routeFiles, e.Name()):
-			present[e.Name()] = true
+		case slices.Contains(routeFiles[:], e.Name()):
+			here.add(e)
+		case !isData(e.Name()) && mistyped(&r.faults, e, p, routeFiles[:]):
 		case isData(e.Name()):
-			r.faults.Add(source.Position{File: p}, "unknown file, a route has %s; another name would hide data", strings.Join(routeFiles, ", "))
+			r.faults.Add(source.Position{File: p}, "unknown file, a route has %s; another name would hide data", strings.Join(routeFiles[:], ", "))
 		}
 	}
-	if !present[routeFile] {
+	identity, ok := here.file(routeFile)
+	if !ok {
 		r.faults.Add(source.Position{File: folder + "/" + routeFile}, "the file is missing, every folder in routes/ is a route")
 		return nil
 	}
-	route := r.routeTOML(folder)
+	route := r.keptRoute(folder, identity)
 	known := route != nil
 	if !known {
 		// The tables are read all the same, for their faults.
 		route = &Route{Folder: folder, Directions: codes.Both}
 	}
-	if !present["speed.csv"] {
+	if _, ok := here.file("speed.csv"); !ok {
 		r.faults.Add(source.Position{File: folder + "/speed.csv"}, "the file is missing, the basic speed is always given (SUBSET-026 3.11.3.2.2)")
 	}
-	r.tables(route, present)
+	r.tables(route, &here)
 	if !known {
 		return nil
 	}
 	return route
+}
+
+// present are the files of a route that are there, in the order of routeFiles.
+type present [7]struct {
+	here     bool
+	identity string
+}
+
+func (p *present) add(e fs.DirEntry) {
+	i := slices.Index(routeFiles[:], e.Name())
+	p[i].here, p[i].identity = true, identityOf(e)
+}
+
+// file tells whether a file is there, and its identity.
+func (p *present) file(name string) (identity string, here bool) {
+	f := &p[slices.Index(routeFiles[:], name)]
+	return f.identity, f.here
+}
+
+func identityOf(e fs.DirEntry) string {
+	if id, ok := e.(Identified); ok {
+		return id.Identity()
+	}
+	return ""
 }
 
 // noDataBelow records tables and TOML files, and links, in folders where the
@@ -95,7 +121,23 @@ func (r *reader) badName(e fs.DirEntry, p string) bool {
 	return true
 }
 
-var routeID = regexp.MustCompile(`^[A-Za-z0-9._-]{1,100}$`)
+// isRouteID tells whether a text is made of up to 100 letters, digits, '-', '_'
+// and '.'.
+func isRouteID(s string) bool { return madeOf(s, 100, "-_.", true) }
+
+// madeOf tells whether a text is made of ASCII letters, digits and some other
+// characters, one at least and most at most. (Compiling a regular expression
+// would cost every start of the program more than all names of a data set do.)
+func madeOf(s string, most int, others string, capitals bool) bool {
+	for i := range len(s) {
+		switch c := s[i]; {
+		case 'a' <= c && c <= 'z', '0' <= c && c <= '9', capitals && 'A' <= c && c <= 'Z':
+		case strings.IndexByte(others, c) < 0:
+			return false
+		}
+	}
+	return s != "" && len(s) <= most
+}
 
 // routeTOML reads route.toml; nil where the track cannot be told.
 func (r *reader) routeTOML(folder string) *Route {
@@ -105,7 +147,7 @@ func (r *reader) routeTOML(folder string) *Route {
 	}
 	route := &Route{Folder: folder, Pos: m.Place("id"), ID: m.Text("id", true), Name: m.Text("name", true), Directions: codes.Both}
 	r.id = valuePlace(m, "id")
-	if route.ID != "" && !routeID.MatchString(route.ID) {
+	if route.ID != "" && !isRouteID(route.ID) {
 		r.faults.Add(r.id, "route id %s is not made of up to 100 letters, digits, '-', '_' and '.'", source.Quote(route.ID))
 	}
 	before := r.faults.Count()
@@ -201,13 +243,13 @@ func pointProblem(err error) string {
 
 // locate gives the running distance of a position on a route's track, and
 // records why there is none.
-func (r *reader) locate(route *Route, p chainage.Point, c table.Cell, column string) (at chainage.Point, ok bool) {
+func (r *reader) locate(route *Route, p chainage.Point, c table.Cell, column string) (at unit.Distance, ok bool) {
 	if route.Track == nil {
-		return p, false
+		return 0, false
 	}
-	_, err := route.Track.Locate(p)
+	at, err := route.Track.Locate(p)
 	if err == nil {
-		return p, true
+		return at, true
 	}
 	segments := route.Track.Segments()
 	detail := ""
@@ -220,7 +262,7 @@ func (r *reader) locate(route *Route, p chainage.Point, c table.Cell, column str
 		detail = ": there are " + readings(p, route.Track)
 	}
 	r.faults.Add(c.Pos, "%s %s is %v%s", column, source.Quote(c.Text), err, detail)
-	return p, false
+	return 0, false
 }
 
 // readings lists the ways in which a repeated chainage is written.

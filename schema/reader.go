@@ -22,14 +22,37 @@ type reader struct {
 	refused map[string]bool // files and folders that have a fault already and are not opened
 	faults  source.Collector
 	files   []File
-	id      source.Position // of the id in the route.toml that was read last
+	id      source.Position            // of the id in the route.toml that was read last
+	seen    map[string]source.Position // ids of the table that is being read
+	kept    *kept                      // what is known of the version of a route that was read before; nil: nothing is kept
 	err     error
+}
+
+// Bounded is what a file system can offer beside fs.FS: it reads a whole file
+// that has at most some bytes, and only tells the size of a larger one.
+type Bounded interface {
+	ReadAtMost(name string, most int64) (content []byte, size int64, err error)
 }
 
 // file reads a file that may be missing.
 func (r *reader) file(name string, most int64) (content []byte, ok bool) {
 	if r.err != nil || r.refused[name] {
 		return nil, false
+	}
+	if b, ok := r.fsys.(Bounded); ok {
+		content, size, err := b.ReadAtMost(name, most)
+		switch {
+		case errors.Is(err, fs.ErrNotExist):
+			return nil, false
+		case err != nil:
+			r.err = err
+			return nil, false
+		case size > most:
+			r.faults.Add(source.Position{File: name}, "%d bytes, at most %d are allowed", size, most)
+			return nil, false
+		}
+		r.files = append(r.files, File{Path: name, Content: content})
+		return content, true
 	}
 	f, err := r.fsys.Open(name)
 	if errors.Is(err, fs.ErrNotExist) {

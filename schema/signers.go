@@ -4,7 +4,6 @@ import (
 	"bytes"
 	"crypto/rsa"
 	"fmt"
-	"regexp"
 	"strings"
 	"time"
 
@@ -45,12 +44,10 @@ func (r *reader) allowedSigners(p *Policy, content []byte) {
 	}
 }
 
-var principalForm = regexp.MustCompile(`^[a-z0-9._%+@-]{1,200}$`)
-
 // signerLine reads one line; problem says what is wrong with it.
 func signerLine(row string) (k Key, problem string) {
 	principal, rest, _ := strings.Cut(row, " ")
-	if !principalForm.MatchString(principal) {
+	if !madeOf(principal, 200, "._%+@-", false) {
 		return k, "principal " + source.Quote(principal) + " is not one literal name in lower case; lists and wildcards are refused"
 	}
 	k.Principal = principal

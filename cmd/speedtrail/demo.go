@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"io"
 	"path/filepath"
 
 	"github.com/spf13/cobra"
@@ -61,7 +62,9 @@ func (a *app) demo(ctx context.Context, dir string) error {
 	if err != nil {
 		return err
 	}
-	if err := a.render(doc, rec); err != nil {
+	style := a.style()
+	style.Brief = true
+	if err := a.write(func(w io.Writer) error { return render.Text(w, doc, rec, style) }); err != nil {
 		return err
 	}
 	file := filepath.Join(dir, "change-report.html")

@@ -155,7 +155,7 @@ func (t *demoTrail) sign(ctx context.Context, s demo.Signing) error {
 		if !errors.Is(err, approval.ErrRefused) {
 			return fmt.Errorf("the demonstration expects a refusal, got %v", err)
 		}
-		t.a.remark("a sign-off of %s by %s was tried and %s", s.Target, s.By.Principal, err)
+		t.a.remark("(part of the story: a sign-off of %s by %s was tried and is %s)", s.Target, s.By.Principal, err)
 		return nil
 	}
 	return err

@@ -212,6 +212,7 @@ type serviceRecord struct {
 	Recorded string   `json:"recorded"`
 	Reason   string   `json:"reason"`
 	Approved bool     `json:"approved"`
+	Late     string   `json:"approved_late"` // when, where that was after it went into service; else empty
 	Undoes   bool     `json:"undoes"`
 	Through  []int64  `json:"assessments"`
 }
@@ -229,7 +230,12 @@ type serviceFinding struct {
 }
 
 func serviceRecordOf(s history.Service) serviceRecord {
+	late := ""
+	if s.Late {
+		late = s.ApprovedAt.UTC().Format(signoff.TimeLayout)
+	}
 	return serviceRecord{
+		Late:  late,
 		Entry: s.Entry.Seq, Revision: s.Revision, Folder: s.Folder, Routes: append([]string{}, s.Routes...), Since: s.Since.Format(signoff.TimeLayout),
 		Signer: s.Signer, Key: s.Fingerprint, Stated: s.Time.Format(signoff.TimeLayout), Recorded: s.Recorded.Format(signoff.TimeLayout), Reason: s.Reason,
 		Approved: s.Approved, Undoes: s.Undoes, Through: append([]int64{}, s.Through...),
@@ -245,6 +251,8 @@ func (r serviceRecord) words() string {
 	switch {
 	case r.Undoes:
 		state = "approved, but UNDOES what was in service before"
+	case r.Late != "":
+		state = "NOT APPROVED THEN, only on " + r.Late
 	case r.Approved && len(r.Through) > 0:
 		state = fmt.Sprintf("approved by assessment %d", r.Through[0])
 	case r.Approved:
@@ -281,16 +289,16 @@ func (a *app) inforceLog(ctx context.Context) error {
 			return indentedJSON(w, serviceLog{"speedtrail-inforce 1", records, list})
 		}
 		for _, r := range records {
-			fmt.Fprintf(w, "%s\n", wrap(r.words(), 80))
+			fmt.Fprintf(w, "%s\n", wrap(r.words(), a.style().Width))
 		}
 		if len(records) == 0 {
 			fmt.Fprintf(w, "No revision is recorded as in service. Record one with: speedtrail inforce record REV --since T\n")
 		}
 		for _, f := range findings {
-			fmt.Fprintf(w, "%s\n", wrap("! "+f.ID+": "+source.Visible(f.Text), 80))
+			fmt.Fprintf(w, "%s\n", wrap("! "+f.ID+": "+source.Visible(f.Text), a.style().Width))
 		}
 		for _, p := range problems {
-			fmt.Fprintf(w, "%s\n", wrap("! does not count: "+source.Visible(p.Error()), 80))
+			fmt.Fprintf(w, "%s\n", wrap("! does not count: "+source.Visible(p.Error()), a.style().Width))
 		}
 		return nil
 	})

@@ -2,8 +2,10 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"io"
+	"strings"
 	"time"
 
 	"speedtrail/diff/profile"
@@ -76,7 +78,7 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 		if a.format == "json" {
 			return indentedJSON(w, answer)
 		}
-		return printInForce(w, &answer)
+		return printInForce(w, &answer, a.style().Width)
 	})
 }
 
@@ -128,7 +130,11 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 		s, err = route.Track.Locate(p)
 	}
 	if err != nil {
-		return nil, badCall("a position of the route, such as "+route.Track.Begins(0).String(), "--at %s is %v", source.Quote(at), err)
+		hint := "a position of the route, such as " + route.Track.Begins(0).String()
+		if errors.Is(err, chainage.ErrAmbiguous) {
+			hint = fmt.Sprintf("write %s#1, or another occurrence", p.Chainage.KM())
+		}
+		return nil, badCall(hint, "--at %s is %v", source.Quote(at), err)
 	}
 	inForce := func(t *schema.TemporaryRow) bool { return t.Valid.Overlaps(when, when) }
 	var list []pointSpeed
@@ -155,18 +161,25 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 	return list, nil
 }
 
-func printInForce(w io.Writer, x *inForceAnswer) error {
+func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 	if x.Record == nil {
 		_, err := fmt.Fprintf(w, "Nothing is recorded as in force at %s.\nhead of the ledger %s\n", x.When, x.Head)
 		return err
 	}
-	fmt.Fprintf(w, "In force at %s:\n%s\n%s\n", x.When, wrap(x.Record.words(), 80), wrap(source.Visible("commit "+x.Commit+", "+x.Subject), 80))
+	fmt.Fprintf(w, "In force at %s:\n%s\n%s\n", x.When, wrap(x.Record.words(), width), wrap(source.Visible("commit "+x.Commit+", "+x.Subject), width))
+	direction := ""
 	for _, s := range x.Speeds {
-		fmt.Fprintf(w, "%s\n", wrap(source.Visible(fmt.Sprintf("km %s %s, %s: %d km/h, %s", x.At, s.Direction, s.Train, s.Speed, joined(s.Governed))), 80))
+		if s.Direction != direction {
+			direction = s.Direction
+			fmt.Fprintf(w, "\n%s km %s, %s\n", source.Visible(x.Route), source.Visible(x.At), direction)
+		}
+		const indent = 28
+		governed := strings.ReplaceAll(wrap(source.Visible(strings.Join(s.Governed, "; ")), max(30, width-indent)), "\n", "\n"+strings.Repeat(" ", indent))
+		fmt.Fprintf(w, "  %-14s %3d km/h   %s\n", source.Visible(s.Train), s.Speed, governed)
 	}
 	fmt.Fprintf(w, "\nEvidence: recorded %s as entry %d, stated %s, key %s\n", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)
 	for _, e := range x.Signed {
-		fmt.Fprintf(w, "%s\n", wrap(source.Visible(fmt.Sprintf("assessment %d: %s as %s by %s at %s, entry %d, key %s", e.Assessment, e.Decision, e.Role, e.Signer, e.Time, e.Entry, e.Fingerprint)), 80))
+		fmt.Fprintf(w, "%s\n", wrap(source.Visible(fmt.Sprintf("assessment %d: %s as %s by %s at %s, entry %d, key %s", e.Assessment, e.Decision, e.Role, e.Signer, e.Time, e.Entry, e.Fingerprint)), width))
 	}
 	_, err := fmt.Fprintf(w, "head of the ledger %s; speedtrail verify proves the chain and the signatures\n", x.Head)
 	return err

@@ -4,11 +4,14 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"maps"
+	"slices"
 	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
 
+	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/history"
 	"speedtrail/history/approval"
 	"speedtrail/history/ledger"
@@ -109,13 +112,23 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			lines = append(lines, "still to sign: "+joined(state.Missing))
 		}
 		if len(state.Blocks) > 0 {
-			lines = append(lines, "kept from approval by "+source.Visible(joined(state.Blocks)))
+			lines = append(lines, "kept from approval: "+source.Visible(render.BlockWords(state.Blocks)))
 		}
 		if state.Superseded != 0 {
 			lines = append(lines, fmt.Sprintf("superseded by assessment %d", state.Superseded))
 		}
 		for _, text := range lines {
 			fmt.Fprintf(w, "      %s\n", strings.ReplaceAll(wrap(text, 74), "\n", "\n      "))
+		}
+	}
+	revoked := line.Revocations()
+	for _, fingerprint := range slices.Sorted(maps.Keys(revoked)) {
+		r := revoked[fingerprint]
+		fmt.Fprintf(w, "\n%s\n", wrap(source.Visible(fmt.Sprintf("key %s is out of use since entry %d, %s: %s", fingerprint, r.Entry.Seq, r.Signer, r.Reason)), 80))
+		for _, s := range line.SignOffs() {
+			if s.Fingerprint == fingerprint {
+				fmt.Fprintf(w, "      review assessment %d, %s as %s\n", s.Assessment, s.Decision, s.Role)
+			}
 		}
 	}
 	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\nnext: speedtrail report %d --out report.html\n", l.ID(), head, rows[0].Number)

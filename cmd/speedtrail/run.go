@@ -5,11 +5,14 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"runtime/debug"
 	"strings"
 
 	"github.com/spf13/cobra"
 
 	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/diff"
+	"speedtrail/history/ledger"
 	"speedtrail/schema/source"
 )
 
@@ -73,8 +76,8 @@ and keeps the result in an append-only ledger.
 Start with "speedtrail demo".
 
 Exit status: 0 done, nothing against it; 1 done, and there is an unaccepted
-finding, or verify found something wrong; 2 the call or the data is wrong; 3 the work could not be done (disk,
-ledger, repository).
+finding, or verify found something wrong; 2 the call or the data is wrong; 3 the
+work could not be done (disk, ledger, repository).
 
 NO_COLOR and --color are respected. Results go to standard output, progress and
 remarks to standard error.`,
@@ -82,12 +85,19 @@ remarks to standard error.`,
 		SilenceErrors: true,
 		Args: func(c *cobra.Command, args []string) error {
 			if len(args) > 0 {
-				return badCall("speedtrail --help lists the commands", "unknown command %q", args[0])
+				hint := "speedtrail --help lists the commands"
+				if near := c.SuggestionsFor(args[0]); len(near) > 0 {
+					hint = "did you mean " + strings.Join(near, ", ") + "? " + hint
+				}
+				return badCall(hint, "unknown command %q", args[0])
 			}
 			return nil
 		},
 		RunE: func(c *cobra.Command, _ []string) error { return c.Help() },
 	}
+	root.Version = version()
+	root.SuggestionsMinimumDistance = 2
+	root.SetVersionTemplate("speedtrail {{.Version}}, rules version " + fmt.Sprint(diff.RulesVersion) + ", ledger format " + fmt.Sprint(ledger.Format) + "\n")
 	flags := root.PersistentFlags()
 	flags.StringVar(&a.repo, "repo", ".", "the Git `repository`, or a folder in it; bare ones too")
 	flags.StringVar(&a.data, "data", ".", "the data set's `folder` inside the repository")
@@ -109,6 +119,15 @@ remarks to standard error.`,
 	}
 	withCaution(root)
 	return root
+}
+
+// version names the build, as the Go tool knows it.
+func version() string {
+	info, ok := debug.ReadBuildInfo()
+	if !ok || info.Main.Version == "" {
+		return "(unversioned build)"
+	}
+	return info.Main.Version
 }
 
 // withCaution ends every help text with the caution.
@@ -145,7 +164,11 @@ func wrap(text string, width int) string {
 func arguments(least, most int) cobra.PositionalArgs {
 	return func(c *cobra.Command, args []string) error {
 		if len(args) < least || len(args) > most {
-			return badCall("usage: "+c.UseLine(), "%d arguments given", len(args))
+			problem := fmt.Sprintf("%d arguments are given, at least %d are needed", len(args), least)
+			if len(args) > most {
+				problem = fmt.Sprintf("%d arguments are given, at most %d are allowed", len(args), most)
+			}
+			return badCall("usage: "+c.UseLine(), "%s", problem)
 		}
 		return nil
 	}

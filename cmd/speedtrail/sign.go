@@ -173,7 +173,7 @@ func (a *app) remarkState(ctx context.Context, l *ledger.Ledger, number int64) e
 		text += fmt.Sprintf("; still to sign: %s", joined(s.Missing))
 	}
 	if len(s.Blocks) > 0 {
-		text += fmt.Sprintf("; kept from approval by %s", joined(s.Blocks))
+		text += fmt.Sprintf("; kept from approval: %s", render.BlockWords(s.Blocks))
 	}
 	a.remark("%s", text)
 	return nil

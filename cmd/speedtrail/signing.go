@@ -190,7 +190,11 @@ func (s *signing) finish(a *app, statement signoff.Statement, key ssh.Signer) (*
 		a.remark("written to %s and %s.sig; nothing was recorded", s.write, s.write)
 		return nil, nil
 	}
-	a.remark("written to %s; nothing was recorded. Sign it with\n  ssh-keygen -Y sign -f KEY -n %s %s\nand bring both files back with --statement %s --signature %s.sig", s.write, signoff.Namespace, s.write, s.write, s.write)
+	back := fmt.Sprintf("--statement %s --signature %s.sig", s.write, s.write)
+	if statement.Kind == signoff.Anchor {
+		back = "--bring " + s.write
+	}
+	a.remark("written to %s; nothing was recorded. Sign it with\n  ssh-keygen -Y sign -f KEY -n %s %s\nand bring both files back with %s", s.write, signoff.Namespace, s.write, back)
 	return nil, nil
 }
 

@@ -189,8 +189,14 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 	if err != nil || found {
 		return h, err
 	}
-	debug.SetGCPercent(normal)
-	if err := x.Update(ctx, reader, name, tip, a.progress("indexing the history")); err != nil {
+	progress := a.progress("indexing the history")
+	defer debug.SetGCPercent(normal)
+	if err := x.Update(ctx, reader, name, tip, func(done, total int) {
+		if done < total {
+			debug.SetGCPercent(normal) // there is more to come than some commits
+		}
+		progress(done, total)
+	}); err != nil {
 		return nil, err
 	}
 	h, found, err = x.History(ctx, name, tip, route)

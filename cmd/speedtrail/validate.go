@@ -18,7 +18,9 @@ func (a *app) validateCommand() *cobra.Command {
 		Use:   "validate [REV]",
 		Short: "list every fault of the data set at a revision",
 		Long: `validate reads the whole data set at a revision (the working tree unless given)
-and lists every fault with file, line and column. Exit status 0: none, 2: some.`,
+and lists every fault with file, line and column. Exit status 0: none, 2: some.
+What requests and accepted.toml name and the revision does not have is remarked on
+standard error; assess holds the requests of a change to it.`,
 		Example: `  speedtrail validate
   speedtrail validate release-2`,
 		Args: arguments(0, 1),
@@ -70,8 +72,14 @@ func (a *app) validate(ctx context.Context, rev string) error {
 	if err != nil && !errors.As(err, &faults) {
 		return err
 	}
+	good := err == nil
 	if err := a.write(func(w io.Writer) error { return a.printValidation(w, s, data, faults) }); err != nil {
 		return err
+	}
+	if good {
+		for _, text := range doubtfulNames(data) {
+			a.remark("remark: %s", text)
+		}
 	}
 	if faults.Count > 0 {
 		return fmt.Errorf("%w at %s: %d %s", errFaulty, s.label(), faults.Count, plural(faults.Count, "fault", "faults"))

@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"io"
 
@@ -9,6 +10,7 @@ import (
 
 	"speedtrail/history"
 	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
 	"speedtrail/schema/source"
 )
 
@@ -70,6 +72,15 @@ type verifiedProblem struct {
 
 func (a *app) verify(ctx context.Context, o history.VerifyOptions) error {
 	l, err := a.openLedger(ctx, false)
+	if errors.Is(err, ledger.ErrForeign) || errors.Is(err, ledger.ErrDamaged) {
+		// That the file is not as it was made is what verify is asked for; nothing
+		// else in it can be relied on.
+		r := &history.Result{Problems: []history.Problem{{Kind: "file", Text: err.Error()}}}
+		if err := a.writeVerification(r, ""); err != nil {
+			return err
+		}
+		return errFindings
+	}
 	if err != nil {
 		return err
 	}
@@ -79,38 +90,54 @@ func (a *app) verify(ctx context.Context, o history.VerifyOptions) error {
 	if err != nil {
 		return err
 	}
-	out := verified{Format: "speedtrail-verification 1", Ledger: l.ID(), Head: r.Head.String(), Good: r.Good(), Problems: []verifiedProblem{}, Proved: append([]string{}, r.Proved...), Unproved: append([]string{}, r.Unproved...)}
+	if err := a.writeVerification(r, l.ID()); err != nil {
+		return err
+	}
+	if !r.Good() {
+		return errFindings
+	}
+	return nil
+}
+
+// writeVerification writes a result; the id is empty where the ledger could not
+// be read.
+func (a *app) writeVerification(r *history.Result, id string) error {
+	head := ""
+	if r.Head.Seq > 0 {
+		head = r.Head.String()
+	}
+	out := verified{Format: "speedtrail-verification 1", Ledger: id, Head: head, Good: r.Good(), Problems: []verifiedProblem{}, Proved: append([]string{}, r.Proved...), Unproved: append([]string{}, r.Unproved...)}
 	for _, p := range r.Problems {
 		out.Problems = append(out.Problems, verifiedProblem{p.Entry, p.Kind, p.Text})
 	}
-	err = a.write(func(w io.Writer) error {
+	return a.write(func(w io.Writer) error {
 		if a.format == "json" {
 			return indentedJSON(w, out)
 		}
-		return printVerification(w, r, l.ID())
+		return printVerification(w, r, id, a.style().Width)
 	})
-	if err == nil && !r.Good() {
-		return errFindings
-	}
-	return err
 }
 
-func printVerification(w io.Writer, r *history.Result, ledger string) error {
+func printVerification(w io.Writer, r *history.Result, id string, width int) error {
+	verdict := "Nothing is wrong."
+	if n := len(r.Problems); n == 1 {
+		verdict = "1 thing is wrong."
+	} else if n > 1 {
+		verdict = fmt.Sprintf("%d things are wrong.", n)
+	}
+	fmt.Fprintf(w, "%s\n\n", verdict)
 	for _, p := range r.Problems {
-		fmt.Fprintf(w, "%s\n", wrap("! "+source.Visible(p.String()), 80))
+		fmt.Fprintf(w, "%s\n", wrap("! "+source.Visible(p.String()), width))
 	}
 	for _, s := range r.Proved {
-		fmt.Fprintf(w, "%s\n", wrap("proved: "+source.Visible(s), 80))
+		fmt.Fprintf(w, "%s\n", wrap("proved: "+source.Visible(s), width))
 	}
 	for _, s := range r.Unproved {
-		fmt.Fprintf(w, "%s\n", wrap("left open: "+source.Visible(s), 80))
+		fmt.Fprintf(w, "%s\n", wrap("left open: "+source.Visible(s), width))
 	}
-	verdict := "nothing is wrong"
-	if n := len(r.Problems); n == 1 {
-		verdict = "1 thing is wrong"
-	} else if n > 1 {
-		verdict = fmt.Sprintf("%d things are wrong", n)
+	if id == "" {
+		return nil
 	}
-	_, err := fmt.Fprintf(w, "\nledger %s, head %s: %s\n", ledger, r.Head, verdict)
+	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\n", id, r.Head)
 	return err
 }

@@ -55,7 +55,7 @@ type Doubt struct {
 // Check looks at a route of a data set. at is the time that validities are
 // compared with.
 func Check(route *schema.Route, d *schema.Dataset, at time.Time) []Doubt {
-	c := &check{route: route, trains: d.Trains, limits: d.Limits, at: at}
+	c := &check{route: route, trains: d.Trains, limits: d.Limits, at: at, speeds: newSpeeds(route.Speed)}
 	c.speedRows()
 	c.axleLoadRows()
 	c.temporaryRows()
@@ -75,6 +75,7 @@ type check struct {
 	trains []schema.Train
 	limits schema.Limits
 	at     time.Time
+	speeds speeds
 	list   []Doubt
 }
 

@@ -9,6 +9,7 @@ import (
 	"speedtrail/diff/fleet"
 	"speedtrail/diff/impact"
 	"speedtrail/diff/profile"
+	"speedtrail/diff/step"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/source"
@@ -23,8 +24,9 @@ func (c *check) delays() {
 		if bridge.Kind != schema.Bridge {
 			continue
 		}
+		end := max(bridge.End, bridge.Start+1)
 		over := func(row *schema.Row) bool {
-			return !row.Delay && row.Start < max(bridge.End, bridge.Start+1) && bridge.Start < row.End
+			return !row.Delay && row.Start < end && bridge.Start < row.End
 		}
 		// near gives the directions in which the rear of the longest train can
 		// still be on the bridge when its front leaves the row.
@@ -49,9 +51,8 @@ func (c *check) delays() {
 		for k := range c.route.Temporary {
 			structure(&c.route.Temporary[k].Row, c.route.Temporary[k].ID)
 		}
-		for k := range c.route.Speed {
-			row := &c.route.Speed[k]
-			if !over(&row.Row) {
+		for row := range c.speeds.on(bridge.Start, end) {
+			if row.Delay {
 				continue
 			}
 			for _, d := range codes.AllDirections {
@@ -63,8 +64,8 @@ func (c *check) delays() {
 		}
 	}
 	for i := range c.route.Speed {
-		for k := range c.route.Speed {
-			a, b := &c.route.Speed[i], &c.route.Speed[k]
+		a := &c.route.Speed[i]
+		for b := range c.speeds.on(a.Start, a.Start+1) {
 			if a.Delay || !b.Delay || a.Start != b.Start || a.End != b.End || a.Directions&b.Directions != 0 {
 				continue
 			}
@@ -80,8 +81,11 @@ func (c *check) delays() {
 // risesAfter gives by how much the basic speed, or that of any category, rises
 // where a train leaves a row in a direction of travel.
 func (c *check) risesAfter(row *schema.SpeedRow, d codes.Direction) (rise unit.Speed) {
-	for i := range c.route.Speed {
-		next := &c.route.Speed[i]
+	at := row.End
+	if d == codes.Reverse {
+		at = row.Start - 1
+	}
+	for next := range c.speeds.on(at, at+1) {
 		if !next.Directions.Has(d) || d == codes.Nominal && next.Start != row.End || d == codes.Reverse && next.End != row.Start {
 			continue
 		}
@@ -110,13 +114,19 @@ func (c *check) steps() {
 		return
 	}
 	var steps, short []*seenBy
+	type key struct {
+		from, to unit.Distance
+		text     string
+	}
+	known := map[key]*seenBy{}
 	note := func(list *[]*seenBy, s seenBy, d codes.Direction, train string) {
-		i := slices.IndexFunc(*list, func(x *seenBy) bool { return x.from == s.from && x.to == s.to && x.text == s.text })
-		if i < 0 {
-			*list = append(*list, &s)
-			i = len(*list) - 1
+		k := key{s.from, s.to, s.text}
+		x, ok := known[k]
+		if !ok {
+			x = &s
+			known[k] = x
+			*list = append(*list, x)
 		}
-		x := (*list)[i]
 		x.directions |= 1 << d
 		if !slices.Contains(x.trains, train) {
 			x.trains = append(x.trains, train)
@@ -174,21 +184,22 @@ func (c *check) crossings() {
 		if !c.route.Directions.Has(d) {
 			continue
 		}
-		var compiler *profile.Compiler
-		var kinds []profile.Selection
+		var fastest []step.Func // of every kind of train
 		for i := range c.route.Places {
 			p := &c.route.Places[i]
 			from, to, ok := impact.Approach(p, d, c.route.Track.Length())
 			if !ok || p.WarningDS == 0 {
 				continue
 			}
-			if compiler == nil {
-				compiler = profile.New(c.route, d, profile.NoTemporary)
-				kinds = fleet.Selections(compiler)
+			if fastest == nil {
+				compiler := profile.New(c.route, d, profile.NoTemporary)
+				for _, sel := range fleet.Selections(compiler) {
+					fastest = append(fastest, compiler.Sweep(sel, 0, profile.NoMaximum))
+				}
 			}
 			least := int64(math.MaxInt64)
-			for _, sel := range kinds {
-				least = min(least, impact.ApproachTenths(compiler.Sweep(sel, 0, profile.NoMaximum), from, to))
+			for _, f := range fastest {
+				least = min(least, impact.ApproachTenths(f, from, to))
 			}
 			if least < int64(p.WarningDS) {
 				c.list = append(c.list, Doubt{CrossingWarning, 1 << d, p.Start, p.End, p.Pos, fmt.Sprintf(

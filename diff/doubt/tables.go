@@ -117,9 +117,8 @@ func (c *check) temporaryRows() {
 // highest is the highest speed that speed.csv gives to any train anywhere on a
 // row's stretch and in its directions.
 func (c *check) highest(row *schema.Row) (highest unit.Speed) {
-	for i := range c.route.Speed {
-		s := &c.route.Speed[i]
-		if s.Start >= row.End || row.Start >= s.End || s.Directions&row.Directions == 0 {
+	for s := range c.speeds.on(row.Start, row.End) {
+		if s.Directions&row.Directions == 0 {
 			continue
 		}
 		for cant := range codes.CantDeficiency(codes.CantDeficiencies) {
@@ -136,12 +135,8 @@ func (c *check) curves() {
 	for i := range c.route.Curves {
 		curve := &c.route.Curves[i]
 		var slowest unit.Speed
-		for k := range c.route.Speed {
-			row := &c.route.Speed[k]
+		for row := range c.speeds.on(curve.Start, curve.End) {
 			from, to := max(row.Start, curve.Start), min(row.End, curve.End)
-			if from >= to {
-				continue
-			}
 			for cat := range codes.CantDeficiency(codes.CantDeficiencies) {
 				v := row.Cant[cat]
 				if v > row.Basic && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM()) {

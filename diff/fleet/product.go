@@ -102,7 +102,7 @@ var categoryWords = [codes.Categories]string{"freight braked in P", "freight bra
 // setWords words a set of category sets as alternatives of conditions.
 func setWords(mask uint8) string {
 	if mask == anySets {
-		return "any other category"
+		return "any category"
 	}
 	var words []string
 	for _, c := range conditions(mask) {
@@ -132,7 +132,7 @@ const freight = codes.CategorySet(1<<codes.FreightP | 1<<codes.FreightG)
 
 func (c condition) String() string {
 	if c.has == 0 && c.lacks == codes.CategorySets-1 {
-		return "no other category"
+		return "no category"
 	}
 	var words []string
 	for k, word := range categoryWords {

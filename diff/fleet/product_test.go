@@ -34,18 +34,18 @@ func TestProductString(t *testing.T) {
 		p    Product
 		want string
 	}{
-		{"everything", Product{anyCant, anySets, anyAxle}, "any cant deficiency, any other category, " + all},
+		{"everything", Product{anyCant, anySets, anyAxle}, "any cant deficiency, any category, " + all},
 		{"the example of the rules", Product{anyCant &^ 7, sets(0, 4), anyAxle}, "cant deficiency 150 mm and above, not freight, " + all},
-		{"lowest cant deficiency only", Product{1, anySets, anyAxle}, "cant deficiency 80 mm, any other category, " + all},
-		{"highest cant deficiency only", Product{1 << 10, anySets, anyAxle}, "cant deficiency 300 mm, any other category, " + all},
-		{"up to", Product{3, anySets, anyAxle}, "cant deficiency up to 100 mm, any other category, " + all},
-		{"all but the highest", Product{anyCant >> 1, anySets, anyAxle}, "cant deficiency up to 275 mm, any other category, " + all},
-		{"all but the lowest", Product{anyCant &^ 1, anySets, anyAxle}, "cant deficiency 100 mm and above, any other category, " + all},
-		{"a range", Product{7 << 2, anySets, anyAxle}, "cant deficiency 130 to 165 mm, any other category, " + all},
-		{"two apart", Product{1<<2 | 1<<4, anySets, anyAxle}, "cant deficiency 130 mm or 165 mm, any other category, " + all},
-		{"ranges apart", Product{3 | 1<<4 | 3<<9, anySets, anyAxle}, "cant deficiency up to 100 mm or 165 mm or 275 mm and above, any other category, " + all},
-		{"all but one in the middle", Product{anyCant &^ 8, anySets, anyAxle}, "cant deficiency up to 130 mm or 165 mm and above, any other category, " + all},
-		{"no other category", Product{anyCant, sets(0), anyAxle}, "any cant deficiency, no other category, " + all},
+		{"lowest cant deficiency only", Product{1, anySets, anyAxle}, "cant deficiency 80 mm, any category, " + all},
+		{"highest cant deficiency only", Product{1 << 10, anySets, anyAxle}, "cant deficiency 300 mm, any category, " + all},
+		{"up to", Product{3, anySets, anyAxle}, "cant deficiency up to 100 mm, any category, " + all},
+		{"all but the highest", Product{anyCant >> 1, anySets, anyAxle}, "cant deficiency up to 275 mm, any category, " + all},
+		{"all but the lowest", Product{anyCant &^ 1, anySets, anyAxle}, "cant deficiency 100 mm and above, any category, " + all},
+		{"a range", Product{7 << 2, anySets, anyAxle}, "cant deficiency 130 to 165 mm, any category, " + all},
+		{"two apart", Product{1<<2 | 1<<4, anySets, anyAxle}, "cant deficiency 130 mm or 165 mm, any category, " + all},
+		{"ranges apart", Product{3 | 1<<4 | 3<<9, anySets, anyAxle}, "cant deficiency up to 100 mm or 165 mm or 275 mm and above, any category, " + all},
+		{"all but one in the middle", Product{anyCant &^ 8, anySets, anyAxle}, "cant deficiency up to 130 mm or 165 mm and above, any category, " + all},
+		{"no category", Product{anyCant, sets(0), anyAxle}, "any cant deficiency, no category, " + all},
 		{"braked in P", Product{anyCant, sets(1, 3, 5, 7), anyAxle}, "any cant deficiency, freight braked in P, " + all},
 		{"braked in G", Product{anyCant, sets(2, 3, 6, 7), anyAxle}, "any cant deficiency, freight braked in G, " + all},
 		{"passenger", Product{anyCant, sets(4, 5, 6, 7), anyAxle}, "any cant deficiency, passenger, " + all},
@@ -56,10 +56,10 @@ func TestProductString(t *testing.T) {
 		{"passenger and nothing else", Product{anyCant, sets(4), anyAxle}, "any cant deficiency, passenger, not freight, " + all},
 		{"both and nothing else", Product{anyCant, sets(3), anyAxle}, "any cant deficiency, freight braked in P and freight braked in G, not passenger, " + all},
 		{"all three", Product{anyCant, sets(7), anyAxle}, "any cant deficiency, freight braked in P and freight braked in G and passenger, " + all},
-		{"one axle load", Product{anyCant, anySets, 1 << 9}, "any cant deficiency, any other category, axle load D4"},
-		{"all but one axle load", Product{anyCant, anySets, anyAxle &^ (1 << 9)}, "any cant deficiency, any other category, any axle load but D4"},
-		{"six axle loads", Product{anyCant, anySets, 63}, "any cant deficiency, any other category, axle load A, HS17, B1, B2, C2, C3"},
-		{"seven axle loads", Product{anyCant, anySets, 127}, "any cant deficiency, any other category, any axle load but D2, D3, D4, D4XL, E4, E5"},
+		{"one axle load", Product{anyCant, anySets, 1 << 9}, "any cant deficiency, any category, axle load D4"},
+		{"all but one axle load", Product{anyCant, anySets, anyAxle &^ (1 << 9)}, "any cant deficiency, any category, any axle load but D4"},
+		{"six axle loads", Product{anyCant, anySets, 63}, "any cant deficiency, any category, axle load A, HS17, B1, B2, C2, C3"},
+		{"seven axle loads", Product{anyCant, anySets, 127}, "any cant deficiency, any category, any axle load but D2, D3, D4, D4XL, E4, E5"},
 		{"one class", Product{1 << 3, sets(2), 1 << 12}, "cant deficiency 150 mm, freight braked in G, not freight braked in P, not passenger, axle load E5"},
 	}
 	for _, test := range tests {
@@ -137,7 +137,7 @@ func readCant(text string) (mask uint16) {
 }
 
 func readSets(text string) (mask uint8) {
-	if text == "any other category" {
+	if text == "any category" {
 		return 255
 	}
 	between := " or "
@@ -157,7 +157,7 @@ func readSets(text string) (mask uint8) {
 // meets tells whether trains of a set of categories meet each of the
 // conditions of an alternative.
 func meets(set int, alternative string) bool {
-	if alternative == "no other category" {
+	if alternative == "no category" {
 		return set == 0
 	}
 	has := func(word string) bool { return set>>slices.Index(others, word)&1 == 1 }

@@ -75,6 +75,7 @@ func (p *pair) cellReach(before, after []profile.Bound, cell align.Cell, longest
 	}
 	slices.Sort(cuts)
 	cuts = slices.Compact(cuts)
+	heldBefore, heldAfter := holding(before, cuts), holding(after, cuts)
 	behindBefore, behindAfter := byEnd(before), byEnd(after)
 	var found []align.Interval
 	for i := range len(cuts) - 1 {
@@ -82,7 +83,7 @@ func (p *pair) cellReach(before, after []profile.Bound, cell align.Cell, longest
 		if !touches(zone, from, to) {
 			continue
 		}
-		if end := seenUntil(before, after, behindBefore, behindAfter, from, to, longest); end > from {
+		if end := seenUntil(heldBefore[i], heldAfter[i], behindBefore, behindAfter, from, to, longest); end > from {
 			found = append(found, p.place(cell, from, end))
 		}
 	}
@@ -90,21 +91,15 @@ func (p *pair) cellReach(before, after []profile.Bound, cell align.Cell, longest
 }
 
 // seenUntil gives the end of the part of from <= x < to in which some train
-// sees a difference; from itself where none does. No row begins or ends inside.
-func seenUntil(before, after, behindBefore, behindAfter []profile.Bound, from, to, longest unit.Distance) unit.Distance {
-	b, a := holding(before, from, to), holding(after, from, to)
+// sees a difference; from itself where none does. No row begins or ends inside;
+// b and a are the lowest speeds of the rows that hold there.
+func seenUntil(b, a unit.Speed, behindBefore, behindAfter []profile.Bound, from, to, longest unit.Distance) unit.Distance {
 	if b != a {
 		return to
 	}
-	i, k := 0, 0
+	// Rows that end ahead of from hold already or not at all.
+	i, k := firstBehind(behindBefore, from), firstBehind(behindAfter, from)
 	for {
-		// Rows that end ahead of from hold already or not at all.
-		for i < len(behindBefore) && behindBefore[i].End > from {
-			i++
-		}
-		for k < len(behindAfter) && behindAfter[k].End > from {
-			k++
-		}
 		if i == len(behindBefore) && k == len(behindAfter) {
 			return from
 		}
@@ -132,15 +127,45 @@ func seenUntil(before, after, behindBefore, behindAfter []profile.Bound, from, t
 	}
 }
 
-// holding gives the lowest speed of the rows that cover from to to.
-func holding(rows []profile.Bound, from, to unit.Distance) unit.Speed {
-	v := profile.NoMaximum
-	for _, r := range rows {
-		if r.Start <= from && r.End >= to {
-			v = min(v, r.Speed)
+// firstBehind gives the index of the first row, in the order of byEnd, that does
+// not end ahead of a place.
+func firstBehind(rows []profile.Bound, from unit.Distance) int {
+	i, _ := slices.BinarySearchFunc(rows, from, func(r profile.Bound, from unit.Distance) int { return cmp.Compare(from, r.End) })
+	return i
+}
+
+// holding gives, for each stretch between two cuts, the lowest speed of the rows
+// that cover it. Rows begin and end at cuts or outside them.
+func holding(rows []profile.Bound, cuts []unit.Distance) []unit.Speed {
+	held := make([]unit.Speed, len(cuts)-1)
+	// The lowest row comes first, so a stretch is settled by the first row that
+	// covers it; open leads from a settled stretch to the next that is not.
+	open := make([]int, len(cuts))
+	for i := range open {
+		open[i] = i
+	}
+	next := func(i int) int {
+		for open[i] != i {
+			open[i] = open[open[i]]
+			i = open[i]
+		}
+		return i
+	}
+	for i := range held {
+		held[i] = profile.NoMaximum
+	}
+	sorted := slices.Clone(rows)
+	slices.SortFunc(sorted, func(a, b profile.Bound) int { return cmp.Compare(a.Speed, b.Speed) })
+	for _, r := range sorted {
+		first, _ := slices.BinarySearch(cuts, r.Start)
+		for i := first; i < len(cuts)-1; i++ {
+			if i = next(i); i == len(cuts)-1 || cuts[i+1] > r.End {
+				break
+			}
+			held[i], open[i] = r.Speed, i+1
 		}
 	}
-	return v
+	return held
 }
 
 // byEnd lists the delayed rows, the one that ends last first.
@@ -202,10 +227,11 @@ func differing(before, after []profile.Bound, d codes.Direction, longest unit.Di
 }
 
 func touches(zone []align.Interval, from, to unit.Distance) bool {
-	for _, z := range zone {
-		if z.From < to && from < z.To {
-			return true
+	i, _ := slices.BinarySearchFunc(zone, from, func(z align.Interval, from unit.Distance) int {
+		if z.To > from {
+			return 1
 		}
-	}
-	return false
+		return -1
+	})
+	return i < len(zone) && zone[i].From < to
 }

@@ -123,9 +123,12 @@ func checkPieces(t *rapid.T, w drawn, f step.Func) {
 	}
 }
 
+// fataler is what ends a check, of a property or of a fuzz target.
+type fataler interface{ Fatalf(string, ...any) }
+
 // checkSources compares with the places of the model from from to to, and
 // checks the order: that of the track (start, end, layer, line), the train last.
-func checkSources(t *rapid.T, w drawn, got []profile.Source, places []metre.Place, from, to unit.Distance) {
+func checkSources(t fataler, w drawn, got []profile.Source, places []metre.Place, from, to unit.Distance) {
 	place := map[source.Position][4]int{w.train.MaxPos: {math.MaxInt}}
 	add := func(layer int, r schema.Row) { place[r.Pos] = [4]int{int(r.Start), int(r.End), layer, r.Pos.Line} }
 	for _, r := range w.route.Speed {

@@ -308,6 +308,17 @@ func (l *Line) checkNewest(r *Record) (*schema.Policy, error) {
 	return policy, nil
 }
 
+// knowsKey tells whether a policy that the line has seen has a key. A revocation of
+// another would protect nothing, and look as if it did.
+func (l *Line) knowsKey(fingerprint string) bool {
+	for _, p := range l.policies {
+		if p.Parsed != nil && p.Parsed.Key(fingerprint) != nil {
+			return true
+		}
+	}
+	return false
+}
+
 // checkRevocation checks that a key is taken out of use by its owner or by
 // somebody who satisfies a role independent of preparer.
 func (l *Line) checkRevocation(r *Record) error {
@@ -320,6 +331,9 @@ func (l *Line) checkRevocation(r *Record) error {
 	}
 	if earlier, ok := l.revoked[r.Key]; ok {
 		return refuse("the key is revoked already, by entry %d", earlier.Entry.Seq)
+	}
+	if !l.knowsKey(r.Key) {
+		return refuse("no policy in this ledger has a key %s", r.Key)
 	}
 	if r.Role == signoff.Owner {
 		if k := policy.Key(r.Key); k == nil || k.Principal != r.Signer {

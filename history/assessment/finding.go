@@ -23,13 +23,14 @@ const (
 	BaseNotAncestor   = "base-not-ancestor"
 	TrainsChanged     = "trains-changed"
 	RunOutLeavesRoute = "run-out-leaves-route"
+	UnknownPreparer   = "unknown-preparer"
 )
 
 // order is the one in which findings are looked at: what is wrong with the
 // comparison as a whole, what moves a speed unannounced, what nobody sees, what
 // is announced and did not happen, the rest.
 var order = append([]string{
-	BaseNotAncestor, PolicyChanged, AcceptedChanged, Outside, Masked, NotRepresented, TrainsChanged, Unseen, RunOutLeavesRoute,
+	BaseNotAncestor, UnknownPreparer, PolicyChanged, AcceptedChanged, Outside, Masked, NotRepresented, TrainsChanged, Unseen, RunOutLeavesRoute,
 }, doubt.IDs...)
 
 // explained says of each kind why it matters and what to do.
@@ -46,6 +47,8 @@ var explained = map[string][2]string{
 		"Have the people checked who may sign; the policy of the base decides about this change."},
 	AcceptedChanged: {"A change cannot accept its own findings.",
 		"Have the entry looked at by itself; it counts from the next change on."},
+	UnknownPreparer: {"Whoever prepared the change may not check it, and nobody can tell who this is: the change cannot be approved.",
+		"Add the address to its person in signoff.toml, in a change of its own that is approved first."},
 	BaseNotAncestor: {"The target does not hold everything that the base holds: changes of the base can silently be undone.",
 		"Compare with the last common release, or merge the base into the target first."},
 	TrainsChanged: {"The trains that everything is looked at with are not those of the base.",
@@ -88,8 +91,8 @@ type collector struct {
 // ranked is a finding with what it is sorted by.
 type ranked struct {
 	Finding
-	raised, structure bool
-	step              int
+	raised, structure, runOut bool
+	step                      int
 }
 
 // findings lists what needs eyes, in the order in which to look, and the entries
@@ -116,7 +119,7 @@ func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 		return cmp.Or(
 			before(a.Accepted == "", b.Accepted == ""),
 			cmp.Compare(slices.Index(order, a.ID), slices.Index(order, b.ID)),
-			before(a.raised, b.raised), before(a.structure, b.structure), cmp.Compare(b.step, a.step),
+			before(a.raised, b.raised), before(a.structure, b.structure), before(!a.runOut, !b.runOut), cmp.Compare(b.step, a.step),
 		)
 	})
 	list := make([]Finding, len(c.list))
@@ -186,7 +189,14 @@ func (c *collector) policy() {
 	for _, f := range c.doc.Source {
 		switch name := cmp.Or(f.Target, f.Base); name {
 		case "signoff.toml", "allowed_signers":
-			c.add(ranked{Finding: Finding{ID: PolicyChanged, Row: name, Text: name + " differs" + noteWords(f.Note)}})
+			c.add(ranked{Finding: Finding{ID: PolicyChanged, Row: name, Text: name + " differs" + noteWords(f.Note) + policyWords(f)}})
+		}
+	}
+	if p := c.in.Base.Policy; p != nil {
+		for _, x := range c.in.Preparers {
+			if p.Person(x.Email) == nil {
+				c.add(ranked{Finding: Finding{ID: UnknownPreparer, Row: "signoff.toml", Text: fmt.Sprintf("%s <%s> is no person of the base's policy", x.Name, x.Email)}})
+			}
 		}
 	}
 	for _, a := range c.in.Target.Accepted {
@@ -197,6 +207,41 @@ func (c *collector) policy() {
 			}})
 		}
 	}
+}
+
+// policyWords says whom and what a change of a policy file touches.
+func policyWords(f SourceFile) string {
+	var parts []string
+	for _, d := range f.Rows {
+		who := ""
+		for _, c := range d.Cells {
+			switch text := cmp.Or(c.After, c.Before); c.Column {
+			case "principal", "name":
+				who = strings.Trim(text, `"`)
+			case "line":
+				who, _, _ = strings.Cut(text, " ")
+			}
+		}
+		var keys []string
+		for _, c := range d.Cells {
+			if d.Kind == "altered" && c.Column != "line" {
+				keys = append(keys, c.Column+" "+cmp.Or(c.Before, "none")+" now "+cmp.Or(c.After, "none"))
+			}
+		}
+		part := strings.Join(strings.Fields(d.Kind+" "+d.Table+" "+who), " ")
+		if len(keys) > 0 {
+			part += " " + strings.Join(keys, ", ")
+		}
+		if len(parts) == mostRows {
+			parts = append(parts, fmt.Sprintf("%d more", len(f.Rows)-mostRows))
+			break
+		}
+		parts = append(parts, part)
+	}
+	if parts == nil {
+		return ""
+	}
+	return ": " + strings.Join(parts, "; ")
 }
 
 func noteWords(note string) string {

@@ -88,7 +88,7 @@ func (c *collector) finding(id string, r *diff.Route, s stretchOf, tail string) 
 			ID: id, Route: r.ID, Direction: s.direction.String(), From: r.Target.Track.Begins(s.from).String(), To: r.Target.Track.Ends(s.to).String(),
 			Row: c.rowsOf(r, s.changes), Text: text + tail,
 		},
-		raised: s.raised, structure: s.structure, step: int(abs(largest.After - largest.Before)),
+		raised: s.raised, structure: s.structure, runOut: s.allRunOut, step: int(abs(largest.After - largest.Before)),
 	}
 }
 

@@ -3,7 +3,6 @@ package index_test
 import (
 	"context"
 	"flag"
-	"io"
 	"os"
 	"os/exec"
 	"path/filepath"
@@ -60,37 +59,14 @@ func BenchmarkTrace(b *testing.B) {
 	size := network.Decade
 	size.Routes, size.Commits, size.Trains = *pastRoutes, *pastCommits, *pastTrains
 	dir := network.RepositoryWithPast(b, size)
-	program := filepath.Join(b.TempDir(), "speedtrail")
-	if out, err := exec.Command("go", "build", "-o", program, "speedtrail/cmd/speedtrail").CombinedOutput(); err != nil {
-		b.Fatalf("%v: %s", err, out)
-	}
+	program := buildProgram(b)
 	index := filepath.Join(dir, ".git", "speedtrail", "index.db")
 	trace := func(args ...string) cost {
 		return costOf(b, exec.Command(program, append([]string{"--repo", dir, "trace", "--route", "R0012", "--at", "12.4", "--train", "T003", "--direction", "nominal"}, args...)...))
 	}
 	blobs := blobsOf(b, dir)
-	git := func(stdin io.Reader, args ...string) cost {
-		c := network.Command(context.Background(), dir, args...)
-		c.Stdin = stdin
-		return costOf(b, c)
-	}
-	logL := func() cost { return git(nil, "log", "-L", "12,12:routes/r0012/speed.csv") }
-	report := func(b *testing.B, name string, ours, theirs []cost) {
-		least := func(list []cost, f func(cost) time.Duration) float64 {
-			var values []time.Duration
-			for _, c := range list {
-				values = append(values, f(c))
-			}
-			return float64(max(slices.Min(values), time.Microsecond))
-		}
-		wall, cpu := func(c cost) time.Duration { return c.wall }, func(c cost) time.Duration { return c.cpu }
-		b.ReportMetric(least(ours, wall), "ns/op")
-		b.ReportMetric(least(ours, cpu)/1e6, "cpu-ms")
-		b.ReportMetric(least(theirs, wall)/1e6, "ms-"+name)
-		b.ReportMetric(least(ours, wall)/least(theirs, wall), "x-"+name)
-		b.ReportMetric(least(ours, cpu)/least(theirs, cpu), "cpu-x-"+name)
-		b.ReportMetric(float64(slices.MaxFunc(ours, func(a, b cost) int { return int(a.peak - b.peak) }).peak)/1024, "MiB-peak")
-		b.ReportMetric(float64(slices.MaxFunc(theirs, func(a, b cost) int { return int(a.peak - b.peak) }).peak)/1024, "MiB-peak-"+name)
+	logL := func() cost {
+		return costOf(b, network.Command(context.Background(), dir, "log", "-L", "12,12:routes/r0012/speed.csv"))
 	}
 	var build []cost
 	b.Run("build", func(b *testing.B) {
@@ -98,9 +74,9 @@ func BenchmarkTrace(b *testing.B) {
 		for b.Loop() {
 			os.Remove(index)
 			build = append(build, trace())
-			g = append(g, git(nil, "log", "--raw", "--first-parent", "--no-abbrev", "--format=%H").plus(git(strings.NewReader(blobs), "cat-file", "--batch")))
+			g = append(g, costOfG(b, dir, blobs))
 		}
-		report(b, "G", build, g)
+		reportCosts(b, "G", build, g)
 	})
 	b.Run("add", func(b *testing.B) {
 		os.Remove(index)
@@ -117,23 +93,45 @@ func BenchmarkTrace(b *testing.B) {
 			add = append(add, trace())
 			plain = append(plain, trace())
 		}
-		report(b, "build", add, build)
-		report(b, "query", add, plain)
+		reportCosts(b, "build", add, build)
+		reportCosts(b, "query", add, plain)
 	})
 	b.Run("query", func(b *testing.B) {
 		var ours, theirs []cost
 		for b.Loop() {
 			ours, theirs = append(ours, trace()), append(theirs, logL())
 		}
-		report(b, "log-L", ours, theirs)
+		reportCosts(b, "log-L", ours, theirs)
 	})
 	b.Run("no-index", func(b *testing.B) {
 		var ours, theirs []cost
 		for b.Loop() {
 			ours, theirs = append(ours, trace("--no-index")), append(theirs, logL())
 		}
-		report(b, "log-L", ours, theirs)
+		reportCosts(b, "log-L", ours, theirs)
 	})
+}
+
+// reportCosts reports what ours took, and over theirs.
+func reportCosts(b *testing.B, name string, ours, theirs []cost) {
+	least := func(list []cost, f func(cost) time.Duration) float64 {
+		var values []time.Duration
+		for _, c := range list {
+			values = append(values, f(c))
+		}
+		return float64(max(slices.Min(values), time.Microsecond))
+	}
+	peak := func(list []cost) float64 {
+		return float64(slices.MaxFunc(list, func(a, b cost) int { return int(a.peak - b.peak) }).peak) / 1024
+	}
+	wall, cpu := func(c cost) time.Duration { return c.wall }, func(c cost) time.Duration { return c.cpu }
+	b.ReportMetric(least(ours, wall), "ns/op")
+	b.ReportMetric(least(ours, cpu)/1e6, "cpu-ms")
+	b.ReportMetric(least(theirs, wall)/1e6, "ms-"+name)
+	b.ReportMetric(least(ours, wall)/least(theirs, wall), "x-"+name)
+	b.ReportMetric(least(ours, cpu)/least(theirs, cpu), "cpu-x-"+name)
+	b.ReportMetric(peak(ours), "MiB-peak")
+	b.ReportMetric(peak(theirs), "MiB-peak-"+name)
 }
 
 // blobsOf lists the blobs that the history brings, one a line.

@@ -11,6 +11,7 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"slices"
 
 	"speedtrail/history/revision"
 	"speedtrail/history/trace"
@@ -20,9 +21,14 @@ import (
 type graph struct {
 	folder  int64
 	commits []trace.Commit
-	bases   []int32 // the nearest commit at or before it, along first parents, that loads; -1: none
-	numbers map[trace.Hash]int32
+	bases   []int32              // the nearest commit at or before it, along first parents, that loads; -1: none
+	numbers map[trace.Hash]int32 // nil until many were asked for
+	asked   int
 }
+
+// manyAsked is how many commits are looked for one by one: who asks for more gets
+// a map.
+const manyAsked = 64
 
 // chunkSize is how many commits one row holds at most.
 const chunkSize = 1024
@@ -80,6 +86,8 @@ func (g *graph) readChunk(data []byte, count int64) error {
 	}
 	previous := int64(0)
 	parents := make([]int32, 0, count+8)
+	g.commits = slices.Grow(g.commits, int(count))
+	g.bases = slices.Grow(g.bases, int(count))
 	for range count {
 		var c trace.Commit
 		if len(data) <= len(c.Hash) {
@@ -141,6 +149,9 @@ func (g *graph) add(c trace.Commit) {
 
 // graph reads the commits of a data set folder.
 func (x *Index) graph(ctx context.Context, path string) (*graph, error) {
+	if g := x.graphs[path]; g != nil {
+		return g, x.extend(ctx, g)
+	}
 	g := &graph{}
 	err := x.conn.QueryRowContext(ctx, "SELECT id FROM folder WHERE path = ?", path).Scan(&g.folder)
 	if errors.Is(err, sql.ErrNoRows) {
@@ -149,7 +160,14 @@ func (x *Index) graph(ctx context.Context, path string) (*graph, error) {
 	if err != nil {
 		return nil, err
 	}
-	return g, x.extend(ctx, g)
+	if err := x.extend(ctx, g); err != nil {
+		return nil, err
+	}
+	if x.graphs == nil {
+		x.graphs = map[string]*graph{}
+	}
+	x.graphs[path] = g
+	return g, nil
 }
 
 // extend reads the commits that were added since.
@@ -186,6 +204,9 @@ func (x *Index) extend(ctx context.Context, g *graph) error {
 
 // number finds a commit. What is asked for is mostly new.
 func (g *graph) number(h trace.Hash) (int32, bool) {
+	if g.asked++; g.numbers == nil && g.asked > manyAsked {
+		g.byHash()
+	}
 	if g.numbers != nil {
 		n, ok := g.numbers[h]
 		return n, ok

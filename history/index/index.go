@@ -17,7 +17,8 @@
 // For each data set folder its commits, parents before children: hash, parents,
 // time, and the first fault where the data set does not load. For each folder of
 // a route that was met, by the hash of its tree, the route's rows as far as
-// profiles are compiled from them (encode.go). For each
+// profiles are compiled from them (encode.go), or what they have otherwise than
+// those of another version (differ.go). For each
 // commit the routes that it has otherwise than the nearest commit before it,
 // along first parents, that loads.
 //
@@ -48,7 +49,7 @@ import (
 )
 
 // format is raised whenever the form of the file changes.
-const format = 1
+const format = 2
 
 // applicationID marks the file's header as an index of speedtrail ("spix").
 const applicationID = 0x73706978
@@ -66,15 +67,16 @@ const tables = `
 CREATE TABLE folder (id INTEGER PRIMARY KEY, path TEXT NOT NULL UNIQUE);
 CREATE TABLE chunk (folder INTEGER NOT NULL, first INTEGER NOT NULL, commits INTEGER NOT NULL, data BLOB NOT NULL, UNIQUE (folder, first));
 CREATE TABLE gap (folder INTEGER NOT NULL, number INTEGER NOT NULL, fault TEXT NOT NULL, PRIMARY KEY (folder, number)) WITHOUT ROWID;
-CREATE TABLE version (id INTEGER PRIMARY KEY, tree BLOB NOT NULL, zone TEXT NOT NULL, place TEXT NOT NULL, route TEXT NOT NULL, fault TEXT NOT NULL, data BLOB, UNIQUE (tree, zone));
+CREATE TABLE version (id INTEGER PRIMARY KEY, tree BLOB NOT NULL, zone TEXT NOT NULL, place TEXT NOT NULL, route TEXT NOT NULL, fault TEXT NOT NULL, base INTEGER, data BLOB, UNIQUE (tree, zone));
 CREATE TABLE change (folder INTEGER NOT NULL, route TEXT NOT NULL, number INTEGER NOT NULL, version INTEGER, place TEXT NOT NULL, PRIMARY KEY (folder, route, number)) WITHOUT ROWID;
 `
 
 // Index is an open index. It holds one connection and is not safe for concurrent
 // use.
 type Index struct {
-	db   *sql.DB
-	conn *sql.Conn
+	db     *sql.DB
+	conn   *sql.Conn
+	graphs map[string]*graph // that were read, by the names of their histories
 }
 
 // Open opens an index, making it where there is none. The error is of class

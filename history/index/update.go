@@ -3,15 +3,18 @@ package index
 import (
 	"context"
 	"database/sql"
+	"database/sql/driver"
 	"errors"
+	"sync"
+
+	"github.com/mattn/go-sqlite3"
 
 	"speedtrail/history/trace"
-	"speedtrail/schema"
 )
 
 // Update adds the commits that can be reached from tip and are not there yet to
 // the history of a name. What a cancelled or failed call has added stays.
-func (x *Index) Update(ctx context.Context, reader *trace.Reader, name string, tip trace.Hash, progress func(done, total int)) error {
+func (x *Index) Update(ctx context.Context, reader *trace.Reader, name string, tip trace.Hash, progress func(done, total int)) (err error) {
 	g, err := x.graph(ctx, name)
 	if err != nil {
 		return classify(err)
@@ -19,47 +22,56 @@ func (x *Index) Update(ctx context.Context, reader *trace.Reader, name string, t
 	if _, ok := g.number(tip); ok {
 		return nil
 	}
-	g.byHash()
-	walk, err := reader.Commits(ctx, tip, false, func(h trace.Hash) bool { _, ok := g.numbers[h]; return ok })
+	walk, err := reader.Commits(ctx, tip, false, func(h trace.Hash) bool { _, ok := g.number(h); return ok })
 	if err != nil {
 		return err
 	}
 	b := &builder{x: x, g: g, path: name, ids: map[trace.Key]int64{}}
 	defer b.close()
-	if err := b.begin(ctx); err != nil {
+	defer func() {
+		if err != nil {
+			x.graphs = nil // it may hold what was not written
+		}
+	}()
+	if err = b.begin(ctx); err != nil {
 		return classify(err)
 	}
+	var p packer
+	reader.Each(func(v *trace.Loaded) { v.Data, v.Route = p.pack(v.Key, v.Folder, v.Route), nil })
 	err = reader.Read(ctx, walk, b, progress, func(batch *trace.Batch) error {
 		return classify(x.transaction(ctx, func() error { return b.add(ctx, batch) }))
 	})
-	return classify(err)
+	err = classify(err)
+	return err
 }
 
-// builder adds batches. It is the trace.Prior of its reading.
+// builder adds batches. It is the trace.Prior of its reading, which asks while a
+// batch is added.
 type builder struct {
-	x          *Index
-	g          *graph
-	path       string
-	ids        map[trace.Key]int64 // of versions
-	empty      bool                // no version was there at the beginning
+	x     *Index
+	path  string
+	empty bool // no version was there at the beginning
+	ctx   context.Context
+
+	mu    sync.Mutex // guards what follows
+	g     *graph
+	ids   map[trace.Key]int64 // of versions
+	known int64               // the greatest id that was given; -1: others give ids, too
+
 	find       *sql.Stmt
-	statements []*sql.Stmt
 	addVersion *sql.Stmt
-	addChange  *sql.Stmt
-	ctx        context.Context
+	statements []*sql.Stmt
 }
 
 func (b *builder) begin(ctx context.Context) error {
 	b.ctx = ctx
-	var versions int64
-	if err := b.x.conn.QueryRowContext(ctx, "SELECT EXISTS (SELECT 1 FROM version)").Scan(&versions); err != nil {
+	if err := b.x.conn.QueryRowContext(ctx, greatestVersion).Scan(&b.known); err != nil {
 		return err
 	}
-	b.empty = versions == 0
+	b.empty = b.known == 0
 	for text, to := range map[string]**sql.Stmt{
-		"SELECT id, place, route, fault FROM version WHERE tree = ? AND zone = ?":                                                   &b.find,
-		"INSERT INTO version (tree, zone, place, route, fault, data) VALUES (?, ?, ?, ?, ?, ?) ON CONFLICT DO NOTHING RETURNING id": &b.addVersion,
-		"INSERT INTO change (folder, route, number, version, place) VALUES (?, ?, ?, ?, ?)":                                         &b.addChange,
+		"SELECT id, place, route, fault FROM version WHERE tree = ? AND zone = ?":                                                            &b.find,
+		"INSERT INTO version (tree, zone, place, route, fault, base, data) VALUES (?, ?, ?, ?, ?, ?, ?) ON CONFLICT DO NOTHING RETURNING id": &b.addVersion,
 	} {
 		s, err := b.x.conn.PrepareContext(ctx, text)
 		if err != nil {
@@ -71,6 +83,8 @@ func (b *builder) begin(ctx context.Context) error {
 	return nil
 }
 
+const greatestVersion = "SELECT coalesce(max(id), 0) FROM version"
+
 func (b *builder) close() {
 	for _, s := range b.statements {
 		s.Close()
@@ -79,7 +93,9 @@ func (b *builder) close() {
 
 // Base implements trace.Prior.
 func (b *builder) Base(h trace.Hash) (trace.Hash, bool) {
-	n, ok := b.g.numbers[h]
+	b.mu.Lock()
+	defer b.mu.Unlock()
+	n, ok := b.g.number(h)
 	if !ok || b.g.bases[n] < 0 {
 		return trace.Hash{}, false
 	}
@@ -100,7 +116,9 @@ func (b *builder) Version(key trace.Key) (*trace.Loaded, error) {
 	if err != nil {
 		return nil, classify(err)
 	}
+	b.mu.Lock()
 	b.ids[key] = id
+	b.mu.Unlock()
 	return v, nil
 }
 
@@ -115,16 +133,59 @@ func (b *builder) add(ctx context.Context, batch *trace.Batch) error {
 			return err
 		}
 	}
-	if err := b.x.extend(ctx, b.g); err != nil {
+	var greatest int64
+	if err := b.x.conn.QueryRowContext(ctx, greatestVersion).Scan(&greatest); err != nil {
 		return err
 	}
-	for _, v := range batch.Loaded {
-		var data []byte
-		if v.Route != nil {
-			data = encode(v.Route)
+	b.mu.Lock()
+	err := b.x.extend(ctx, b.g)
+	first := len(b.g.commits)
+	b.mu.Unlock()
+	if err != nil {
+		return err
+	}
+	if greatest == b.known {
+		err = b.addVersions(batch.Loaded)
+	} else {
+		b.known = -1
+		err = b.addVersionsOfMany(ctx, batch.Loaded)
+	}
+	if err != nil {
+		return err
+	}
+	if err := b.addDeltas(ctx, batch.Deltas); err != nil {
+		return err
+	}
+	return b.addChunks(ctx, first)
+}
+
+// addVersions adds versions where nobody else has added any.
+func (b *builder) addVersions(list []*trace.Loaded) error {
+	return b.x.inserting("version (id, tree, zone, place, route, fault, base, data)", func(rows *inserter) error {
+		for _, v := range list {
+			base, data, err := b.packed(v)
+			if err != nil {
+				return err
+			}
+			b.known++
+			if err := rows.add(b.known, v.Tree[:], v.Zone, v.Folder, v.ID, v.Fault, base, data); err != nil {
+				return err
+			}
+			b.setID(v.Key, b.known)
+		}
+		return nil
+	})
+}
+
+// addVersionsOfMany adds versions that may be there already.
+func (b *builder) addVersionsOfMany(ctx context.Context, list []*trace.Loaded) error {
+	for _, v := range list {
+		base, data, err := b.packed(v)
+		if err != nil {
+			return err
 		}
 		var id int64
-		err := b.addVersion.QueryRowContext(ctx, v.Tree[:], v.Zone, v.Folder, v.ID, v.Fault, data).Scan(&id)
+		err = b.addVersion.QueryRowContext(ctx, v.Tree[:], v.Zone, v.Folder, v.ID, v.Fault, base, data).Scan(&id)
 		if errors.Is(err, sql.ErrNoRows) {
 			var place, route, fault string
 			err = b.find.QueryRowContext(ctx, v.Tree[:], v.Zone).Scan(&id, &place, &route, &fault)
@@ -132,38 +193,83 @@ func (b *builder) add(ctx context.Context, batch *trace.Batch) error {
 		if err != nil {
 			return err
 		}
-		b.ids[v.Key] = id
+		b.setID(v.Key, id)
 	}
-	first := len(b.g.commits)
-	for i := range batch.Deltas {
-		d := &batch.Deltas[i]
-		if _, ok := b.g.numbers[d.Hash]; ok {
-			continue
+	return nil
+}
+
+func (b *builder) setID(key trace.Key, id int64) {
+	b.mu.Lock()
+	defer b.mu.Unlock()
+	b.ids[key] = id
+}
+
+// packed gives the row of a version; both are nil where it is faulty. Its base
+// has been added before it.
+func (b *builder) packed(v *trace.Loaded) (base, data driver.Value, err error) {
+	p, ok := v.Data.(packed)
+	if !ok {
+		return nil, nil, nil
+	}
+	if p.base == nil {
+		return nil, p.data, nil
+	}
+	b.mu.Lock()
+	defer b.mu.Unlock()
+	id, ok := b.ids[*p.base]
+	if !ok {
+		return nil, nil, errDamaged
+	}
+	return id, p.data, nil
+}
+
+// addDeltas adds commits and what they change.
+func (b *builder) addDeltas(ctx context.Context, list []trace.Delta) error {
+	type gap struct {
+		number int64
+		fault  string
+	}
+	var gaps []gap
+	b.mu.Lock()
+	err := b.x.inserting("change (folder, route, number, version, place)", func(rows *inserter) error {
+		for i := range list {
+			d := &list[i]
+			if _, ok := b.g.number(d.Hash); ok {
+				continue
+			}
+			number := int64(len(b.g.commits))
+			if d.Gap != "" {
+				gaps = append(gaps, gap{number, d.Gap})
+			}
+			if err := b.addDelta(d, number, rows); err != nil {
+				return err
+			}
 		}
-		if err := b.addDelta(ctx, d); err != nil {
+		return nil
+	})
+	b.mu.Unlock()
+	if err != nil {
+		return err
+	}
+	for _, g := range gaps {
+		if _, err := b.x.conn.ExecContext(ctx, "INSERT INTO gap VALUES (?, ?, ?)", b.g.folder, g.number, g.fault); err != nil {
 			return err
 		}
 	}
-	return b.addChunks(ctx, first)
+	return nil
 }
 
-func (b *builder) addDelta(ctx context.Context, d *trace.Delta) error {
-	number := int64(len(b.g.commits))
+func (b *builder) addDelta(d *trace.Delta, number int64, rows *inserter) error {
 	c := trace.Commit{Hash: d.Hash, When: d.When, Gap: d.Gap, Cut: d.Cut}
 	for _, p := range d.Parents {
-		n, ok := b.g.numbers[p]
+		n, ok := b.g.number(p)
 		if !ok {
 			return errDamaged
 		}
 		c.Parents = append(c.Parents, n)
 	}
-	if d.Gap != "" {
-		if _, err := b.x.conn.ExecContext(ctx, "INSERT INTO gap VALUES (?, ?, ?)", b.g.folder, number, d.Gap); err != nil {
-			return err
-		}
-	}
 	for _, change := range d.Changes {
-		var version any
+		var version driver.Value
 		if change.Version != nil {
 			id, ok := b.ids[change.Version.Key]
 			if !ok {
@@ -171,12 +277,27 @@ func (b *builder) addDelta(ctx context.Context, d *trace.Delta) error {
 			}
 			version = id
 		}
-		if _, err := b.addChange.ExecContext(ctx, b.g.folder, change.ID, number, version, change.Folder); err != nil {
+		if err := rows.add(b.g.folder, change.ID, number, version, change.Folder); err != nil {
 			return err
 		}
 	}
 	b.g.add(c)
 	return nil
+}
+
+// inserting runs work with an inserter.
+func (x *Index) inserting(into string, work func(*inserter) error) error {
+	return x.conn.Raw(func(c any) error {
+		rows, err := newInserter(c.(*sqlite3.SQLiteConn), into)
+		if err != nil {
+			return err
+		}
+		defer rows.close()
+		if err := work(rows); err != nil {
+			return err
+		}
+		return rows.flush()
+	})
 }
 
 // addChunks writes the commits from a number on, filling up the last row.
@@ -208,76 +329,4 @@ func (b *builder) addChunks(ctx context.Context, first int) error {
 		last = end
 	}
 	return nil
-}
-
-// History gives the past of a route up to a commit. It is false where the commit
-// is not in the index: Update adds it.
-func (x *Index) History(ctx context.Context, name string, tip trace.Hash, route string) (h *trace.History, found bool, err error) {
-	g, err := x.graph(ctx, name)
-	if err != nil {
-		return nil, false, classify(err)
-	}
-	if _, found = g.number(tip); !found {
-		return nil, false, nil
-	}
-	a := trace.NewAssembly(route, len(g.commits))
-	if err := x.gaps(ctx, g); err != nil {
-		return nil, false, classify(err)
-	}
-	rows, err := x.conn.QueryContext(ctx, `SELECT c.number, c.place, v.tree, v.data FROM change c LEFT JOIN version v ON v.id = c.version
-		WHERE c.folder = ? AND c.route = ? ORDER BY c.number`, g.folder, route)
-	if err != nil {
-		return nil, false, classify(err)
-	}
-	defer rows.Close()
-	added := 0
-	upTo := func(n int) {
-		for ; added < n; added++ {
-			a.Add(g.commits[added])
-		}
-	}
-	for rows.Next() {
-		var number int
-		var place string
-		var tree, data sql.RawBytes
-		if err := rows.Scan(&number, &place, &tree, &data); err != nil {
-			return nil, false, classify(err)
-		}
-		if number < added-1 || number >= len(g.commits) {
-			return nil, false, classify(errDamaged)
-		}
-		upTo(number + 1)
-		if tree == nil {
-			a.Gone()
-			continue
-		}
-		a.Has(trace.Hash(tree), place, func() (*schema.Route, error) { return decode(data, place) })
-	}
-	if err := rows.Err(); err != nil {
-		return nil, false, classify(err)
-	}
-	upTo(len(g.commits))
-	h, err = a.History(tip)
-	return h, err == nil, classify(err)
-}
-
-// gaps fills in why commits do not load.
-func (x *Index) gaps(ctx context.Context, g *graph) error {
-	rows, err := x.conn.QueryContext(ctx, "SELECT number, fault FROM gap WHERE folder = ?", g.folder)
-	if err != nil {
-		return err
-	}
-	defer rows.Close()
-	for rows.Next() {
-		var number int
-		var fault string
-		if err := rows.Scan(&number, &fault); err != nil {
-			return err
-		}
-		if number < 0 || number >= len(g.commits) {
-			return errDamaged
-		}
-		g.commits[number].Gap = fault
-	}
-	return rows.Err()
 }

@@ -9,7 +9,7 @@ import (
 
 // maxBaseCache bounds the bases that are kept to put other objects together, in
 // bytes.
-const maxBaseCache = 16 << 20
+const maxBaseCache = 8 << 20
 
 // baseCache keeps the objects of packs that differences were applied to, the
 // least recently used leaving first. It is safe for concurrent use.

@@ -44,6 +44,7 @@ type Commit struct {
 
 // links is what a walk needs of a commit.
 type links struct {
+	tree     plumbing.Hash
 	parents  []plumbing.Hash
 	when     int64 // seconds since 1970 of the committer
 	boundary bool  // history was cut here
@@ -98,13 +99,34 @@ func parseCommit(data []byte) (Commit, error) {
 	return c, nil
 }
 
+// timeOf gives what stands behind the address in "Name <address> seconds +hhmm",
+// cut at ASCII blanks. It looks at bytes, so that the encoding of the commit says
+// nothing of its time; none where there is no address.
+func timeOf(person []byte) []string {
+	open, end := bytes.IndexByte(person, '<'), bytes.LastIndexByte(person, '>')
+	if open < 0 || end < open {
+		return nil
+	}
+	return strings.FieldsFunc(string(person[end+1:]), func(r rune) bool { return r == ' ' || '\t' <= r && r <= '\r' })
+}
+
+func parseSeconds(text string) (int64, bool) {
+	seconds, err := strconv.ParseInt(text, 10, 64)
+	if err != nil || seconds < 0 || seconds > maxSeconds {
+		return 0, false
+	}
+	return seconds, true
+}
+
 // parseLinks reads of a commit object only what a walk needs.
 func parseLinks(data []byte) (links, error) {
 	var l links
 	line, rest := cutLine(data)
-	if _, err := headerHash(line, "tree "); err != nil {
+	tree, err := headerHash(line, "tree ")
+	if err != nil {
 		return links{}, err
 	}
+	l.tree = tree
 	for {
 		line, next := cutLine(rest)
 		if !bytes.HasPrefix(line, []byte("parent ")) {
@@ -120,7 +142,7 @@ func parseLinks(data []byte) (links, error) {
 		l.parents = append(l.parents, hash)
 		rest = next
 	}
-	_, rest, err := headerText(rest, "author ")
+	_, rest, err = headerText(rest, "author ")
 	if err != nil {
 		return links{}, err
 	}
@@ -128,8 +150,8 @@ func parseLinks(data []byte) (links, error) {
 	if err != nil {
 		return links{}, err
 	}
-	if when := parsePerson(committer, false).When; !when.IsZero() {
-		l.when = when.Unix()
+	if fields := timeOf(committer); len(fields) > 0 {
+		l.when, _ = parseSeconds(fields[0])
 	}
 	return l, nil
 }
@@ -208,12 +230,12 @@ func parsePerson(data []byte, latin bool) Person {
 		return p
 	}
 	p.Email = strings.TrimSpace(text[open+1 : end])
-	fields := strings.Fields(text[end+1:])
+	fields := timeOf(data)
 	if len(fields) == 0 {
 		return p
 	}
-	seconds, err := strconv.ParseInt(fields[0], 10, 64)
-	if err != nil || seconds < 0 || seconds > maxSeconds {
+	seconds, ok := parseSeconds(fields[0])
+	if !ok {
 		return p
 	}
 	offset := 0

@@ -7,6 +7,8 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"sync"
+	"sync/atomic"
 
 	"github.com/go-git/go-git/v5/plumbing"
 )
@@ -21,6 +23,9 @@ import (
 type packIndex struct {
 	r      io.ReaderAt
 	closer io.Closer
+	data   atomic.Pointer[[]byte] // all of it, once that was read
+	asked  atomic.Int32
+	whole  sync.Once
 	size   int64
 	fanout [256]uint32
 }
@@ -29,9 +34,11 @@ const (
 	idxHashes = 8 + 256*4 // where the hashes begin
 	hashSize  = 20
 
-	// An index of up to this size is read at once; of a larger one only the
-	// parts that are asked for.
-	maxIdxInMemory = 4 << 20
+	// A small index is read at once. Of a larger one only the parts that are asked
+	// for are read, and the whole once many were, if it is not too large.
+	smallIdx       = 256 << 10
+	maxIdxInMemory = 8 << 20
+	fewSearches    = 64
 )
 
 func openIndex(name string) (*packIndex, error) {
@@ -45,7 +52,7 @@ func openIndex(name string) (*packIndex, error) {
 		return nil, err
 	}
 	idx := &packIndex{r: f, closer: f, size: info.Size()}
-	if idx.size <= maxIdxInMemory {
+	if idx.size <= smallIdx {
 		data := make([]byte, idx.size)
 		_, err := io.ReadFull(f, data)
 		f.Close()
@@ -53,6 +60,7 @@ func openIndex(name string) (*packIndex, error) {
 			return nil, err
 		}
 		idx.r, idx.closer = bytes.NewReader(data), nil
+		idx.data.Store(&data)
 	}
 	if err := idx.readHeader(); err != nil {
 		idx.close()
@@ -121,13 +129,53 @@ func (x *packIndex) bucket(first byte) (low, high int64) {
 
 func (x *packIndex) hashAt(i int64) (plumbing.Hash, error) {
 	var h plumbing.Hash
-	_, err := x.r.ReadAt(h[:], idxHashes+i*hashSize)
-	return h, err
+	return h, x.readAt(h[:], idxHashes+i*hashSize)
+}
+
+// inMemory gives the whole index, where it is in memory; nil where it is not.
+func (x *packIndex) inMemory() []byte {
+	if data := x.data.Load(); data != nil {
+		return *data
+	}
+	if x.size > maxIdxInMemory || x.asked.Add(1) <= fewSearches {
+		return nil
+	}
+	x.whole.Do(func() {
+		data := make([]byte, x.size)
+		if n, err := x.r.ReadAt(data, 0); n == len(data) && (err == nil || err == io.EOF) {
+			x.data.Store(&data)
+		}
+	})
+	if data := x.data.Load(); data != nil {
+		return *data
+	}
+	return nil
+}
+
+func (x *packIndex) readAt(b []byte, at int64) error {
+	if data := x.data.Load(); data != nil && at >= 0 && at+int64(len(b)) <= int64(len(*data)) {
+		copy(b, (*data)[at:])
+		return nil
+	}
+	_, err := x.r.ReadAt(b, at)
+	return err
 }
 
 // search gives the position of the first hash that is not below h.
 func (x *packIndex) search(h plumbing.Hash) (int64, error) {
 	low, high := x.bucket(h[0])
+	if data := x.inMemory(); data != nil {
+		for low < high {
+			mid := (low + high) / 2
+			at := idxHashes + mid*hashSize
+			if bytes.Compare(data[at:at+hashSize], h[:]) < 0 {
+				low = mid + 1
+			} else {
+				high = mid
+			}
+		}
+		return low, nil
+	}
 	for low < high {
 		mid := (low + high) / 2
 		at, err := x.hashAt(mid)
@@ -155,7 +203,7 @@ func (x *packIndex) offset(h plumbing.Hash) (offset int64, ok bool, err error) {
 	}
 	offsets := idxHashes + x.count()*(hashSize+4)
 	var b [8]byte
-	if _, err := x.r.ReadAt(b[:4], offsets+i*4); err != nil {
+	if err := x.readAt(b[:4], offsets+i*4); err != nil {
 		return 0, false, err
 	}
 	short := binary.BigEndian.Uint32(b[:4])
@@ -163,7 +211,7 @@ func (x *packIndex) offset(h plumbing.Hash) (offset int64, ok bool, err error) {
 		return int64(short), true, nil
 	}
 	long := offsets + x.count()*4 + int64(short&^(1<<31))*8
-	if _, err := x.r.ReadAt(b[:], long); err != nil {
+	if err := x.readAt(b[:], long); err != nil {
 		return 0, false, err
 	}
 	return int64(binary.BigEndian.Uint64(b[:]) &^ (1 << 63)), true, nil

@@ -48,6 +48,39 @@ func (in *inflater) release() {
 	inflaters.Put(in)
 }
 
+// pieceInflater decompresses what is in memory.
+type pieceInflater struct {
+	from bytes.Reader
+	z    io.ReadCloser
+}
+
+var pieceInflaters = sync.Pool{New: func() any { return &pieceInflater{} }}
+
+// inflatePiece decompresses exactly size bytes from the beginning of a piece of a
+// file. Where the piece ends too early, the file at the offset is read.
+func inflatePiece(piece []byte, f io.ReaderAt, offset, size int64) ([]byte, error) {
+	in := pieceInflaters.Get().(*pieceInflater)
+	in.from.Reset(piece)
+	var err error
+	if in.z == nil {
+		in.z, err = zlib.NewReader(&in.from)
+	} else {
+		err = in.z.(zlib.Resetter).Reset(&in.from, nil)
+	}
+	var data []byte
+	if err == nil {
+		data, err = readExactly(in.z, size)
+	}
+	in.from.Reset(nil)
+	if in.z != nil {
+		pieceInflaters.Put(in)
+	}
+	if errors.Is(err, io.ErrUnexpectedEOF) || errors.Is(err, io.EOF) {
+		return inflateAll(f, offset, size)
+	}
+	return data, err
+}
+
 var errLength = errors.New("length is not the one that is recorded")
 
 // inflateAll decompresses exactly size bytes.

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"math"
 	"os"
 	"sync"
 
@@ -29,8 +30,9 @@ type pack struct {
 	name  string // path without extension
 	index *packIndex
 
-	mu   sync.Mutex
-	file *os.File // opened when first needed
+	mu     sync.Mutex
+	file   *os.File // opened when first needed
+	blocks *blocks  // of it
 }
 
 // open gives the pack file and remembers it.
@@ -53,7 +55,7 @@ func (p *pack) open() (*os.File, error) {
 		f.Close()
 		return nil, fmt.Errorf("pack %q is of version %d, 2 and 3 are supported", p.name, v)
 	}
-	p.file = f
+	p.file, p.blocks = f, &blocks{file: f}
 	return f, nil
 }
 
@@ -65,7 +67,7 @@ func (p *pack) close() error {
 		return nil
 	}
 	err := p.file.Close()
-	p.file = nil
+	p.file, p.blocks = nil, nil
 	return err
 }
 
@@ -82,8 +84,7 @@ var errPack = errors.New("malformed pack entry")
 
 // entry reads the head of the object at an offset.
 func (p *pack) entry(f io.ReaderAt, offset int64) (packEntry, error) {
-	// The longest head: 10 bytes of type and size, then 10 of offset or 20 of hash.
-	var buf [30]byte
+	var buf [maxPackHead]byte
 	n, err := f.ReadAt(buf[:], offset)
 	if err != nil && err != io.EOF {
 		return packEntry{}, err
@@ -140,6 +141,10 @@ func parsePackEntry(b []byte, at int64) (packEntry, error) {
 	e.data = at + int64(i)
 	return e, nil
 }
+
+// maxPackHead is the longest head: 10 bytes of type and size, then 10 of offset or
+// 20 of hash.
+const maxPackHead = 30
 
 // delta says whether an entry holds a difference.
 func (e packEntry) delta() bool {
@@ -210,9 +215,18 @@ func deltaTarget(f io.ReaderAt, e packEntry) (int64, error) {
 	return int64(size), nil
 }
 
+// errLong says that an object is longer than was asked for.
+var errLong = errors.New("object is too long")
+
 // read gives the whole object at an offset, putting differences together. It
 // does not check the hash.
 func (p *pack) read(f io.ReaderAt, offset int64, cache *baseCache) (plumbing.ObjectType, []byte, error) {
+	return p.readAtMost(&blocks{file: f}, offset, math.MaxInt64, cache)
+}
+
+// readAtMost is read for an object of at most limit bytes; of a longer one it
+// gives errLong.
+func (p *pack) readAtMost(b *blocks, offset, limit int64, cache *baseCache) (plumbing.ObjectType, []byte, error) {
 	type step struct {
 		offset int64
 		delta  []byte
@@ -226,19 +240,32 @@ func (p *pack) read(f io.ReaderAt, offset int64, cache *baseCache) (plumbing.Obj
 	for {
 		var ok bool
 		if kind, data, ok = cache.get(p, offset); ok {
+			if len(steps) == 0 && int64(len(data)) > limit {
+				return 0, nil, errLong
+			}
 			break
 		}
-		e, err := p.entry(f, offset)
+		piece, err := b.at(offset)
 		if err != nil {
 			return 0, nil, err
+		}
+		e, err := parsePackEntry(piece[:min(len(piece), maxPackHead)], offset)
+		if err != nil {
+			return 0, nil, err
+		}
+		if !e.delta() && len(steps) == 0 && e.size > limit {
+			return 0, nil, errLong
 		}
 		// The differences wait in memory for their base, so they count together.
 		if held += e.size; held > maxRebuilt {
 			return 0, nil, fmt.Errorf("object of more than %d bytes is not put together", maxRebuilt)
 		}
-		stored, err := inflateAll(f, e.data, e.size)
+		stored, err := inflatePiece(piece[e.data-offset:], b.file, e.data, e.size)
 		if err != nil {
 			return 0, nil, err
+		}
+		if e.delta() && len(steps) == 0 && deltaSize(stored) > limit {
+			return 0, nil, errLong
 		}
 		if !e.delta() {
 			kind, data = e.kind, stored

@@ -132,6 +132,9 @@ func (r *Repo) find(h plumbing.Hash, what string) (*object, error) {
 // read gives the content of an object that must be of a kind and have at most
 // limit bytes.
 func (r *Repo) read(h plumbing.Hash, kind plumbing.ObjectType, limit int64, what string) ([]byte, error) {
+	if got, data, ok := r.store.readAtMost(h, limit); ok && got == kind {
+		return data, nil
+	}
 	o, err := r.find(h, what)
 	if err != nil {
 		return nil, err

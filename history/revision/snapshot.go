@@ -69,7 +69,16 @@ func cleanFolder(folder string) (string, bool) {
 type snapshot struct {
 	repo *Repo
 	root treeEntry
-	what string // names the commit in errors
+	top  []treeEntry // of the root, where they were read; never empty then
+	what string      // names the commit in errors
+}
+
+// tree gives the entries of a tree.
+func (s *snapshot) tree(h plumbing.Hash) ([]treeEntry, error) {
+	if h == s.root.hash && s.top != nil {
+		return s.top, nil
+	}
+	return s.repo.tree(h, s.what)
 }
 
 // stop says at which name of a path the way ended.
@@ -99,7 +108,7 @@ func (s *snapshot) walk(name string) (treeEntry, error) {
 		if at.mode != modeTree {
 			return at, notFolder(at)
 		}
-		entries, err := s.repo.tree(at.hash, s.what)
+		entries, err := s.tree(at.hash)
 		if err != nil {
 			return at, err
 		}
@@ -182,6 +191,31 @@ func (s *snapshot) ReadFile(name string) ([]byte, error) {
 	return data, nil
 }
 
+// ReadAtMost gives the content of a file of at most some bytes, checked against
+// its hash; of a larger one it gives the size alone.
+func (s *snapshot) ReadAtMost(name string, most int64) (content []byte, size int64, err error) {
+	at, err := s.lookup("open", name)
+	if err != nil {
+		return nil, 0, err
+	}
+	if refusal(goMode(at.mode)) == nil {
+		if kind, data, ok := s.repo.store.readAtMost(at.hash, most); ok && kind == plumbing.BlobObject {
+			return data, int64(len(data)), nil
+		}
+	}
+	o, err := s.blob(at)
+	if err != nil {
+		return nil, 0, pathError("open", name, err)
+	}
+	if o.size > most {
+		return nil, o.size, nil
+	}
+	if content, err = s.repo.content(o, s.what); err != nil {
+		return nil, 0, pathError("read", name, err)
+	}
+	return content, o.size, nil
+}
+
 // Stat describes a file, folder or link. Links are not followed.
 func (s *snapshot) Stat(name string) (fs.FileInfo, error) {
 	at, err := s.lookup("stat", name)
@@ -227,13 +261,15 @@ func (s *snapshot) blob(at treeEntry) (*object, error) {
 }
 
 func (s *snapshot) entries(at treeEntry) ([]fs.DirEntry, error) {
-	entries, err := s.repo.tree(at.hash, s.what)
+	entries, err := s.tree(at.hash)
 	if err != nil {
 		return nil, err
 	}
 	out := make([]fs.DirEntry, len(entries))
+	all := make([]snapshotEntry, len(entries))
 	for i, e := range entries {
-		out[i] = &snapshotEntry{s, e}
+		all[i] = snapshotEntry{s, e}
+		out[i] = &all[i]
 	}
 	return out, nil
 }

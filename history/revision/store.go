@@ -315,7 +315,9 @@ func (o *object) content() ([]byte, error) {
 // content.
 func newSum(kind plumbing.ObjectType, size int64) hash.Hash {
 	sum := sha1.New()
-	fmt.Fprintf(sum, "%s %d\x00", kind, size)
+	var head [32]byte
+	text := append(append(head[:0], kind.Bytes()...), ' ')
+	sum.Write(append(strconv.AppendInt(text, size, 10), 0))
 	return sum
 }
 

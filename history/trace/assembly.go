@@ -26,44 +26,54 @@ func newAssembly(route string) *Assembly {
 	return &Assembly{route: route, index: map[Hash]int32{}, known: map[place]int32{}}
 }
 
-// NewAssembly begins the history of a route. Whoever gives parents as indices
-// needs no index by hash.
-func NewAssembly(route string, commits int) *Assembly {
+// NewAssembly begins the history of a route over commits that are known, and of
+// each the nearest at or before it, along first parents, that loads; -1: none.
+// Next goes from one to the next.
+func NewAssembly(route string, commits []Commit, bases []int32) *Assembly {
 	return &Assembly{
-		route: route, known: map[place]int32{}, bases: make([]int32, 0, commits),
-		h: History{Commits: make([]Commit, 0, commits), State: make([]int32, 0, commits)},
+		route: route, known: map[place]int32{}, bases: bases,
+		h: History{Commits: commits, State: make([]int32, 0, len(commits))},
 	}
+}
+
+// Next goes to the next commit, which has the route as its base has it.
+func (a *Assembly) Next() {
+	c := &a.h.Commits[len(a.h.State)]
+	state := NoTrack
+	switch {
+	case c.Gap != "":
+		state = Gap
+	case len(c.Parents) > 0:
+		if base := a.bases[c.Parents[0]]; base >= 0 {
+			state = a.h.State[base]
+		}
+	}
+	a.h.State = append(a.h.State, state)
 }
 
 // Add adds a commit that has the route as its base has it.
 func (a *Assembly) Add(c Commit) {
 	i := int32(len(a.h.Commits))
-	base, state := int32(-1), NoTrack
-	if len(c.Parents) > 0 {
-		if base = a.bases[c.Parents[0]]; base >= 0 {
-			state = a.h.State[base]
+	base := i
+	if c.Gap != "" {
+		base = -1
+		if len(c.Parents) > 0 {
+			base = a.bases[c.Parents[0]]
 		}
 	}
-	if c.Gap != "" {
-		state = Gap
-	} else {
-		base = i
-	}
 	a.h.Commits = append(a.h.Commits, c)
-	a.h.State = append(a.h.State, state)
 	a.bases = append(a.bases, base)
-	if a.index != nil {
-		a.index[c.Hash] = i
-	}
+	a.index[c.Hash] = i
+	a.Next()
 }
 
 // Gone says of the last commit that it does not have the route.
-func (a *Assembly) Gone() { a.Set(int32(len(a.h.Commits)-1), NoTrack) }
+func (a *Assembly) Gone() { a.Set(int32(len(a.h.State)-1), NoTrack) }
 
 // Has says of the last commit how it has the route. The function gives the route
 // when the version was not met before.
 func (a *Assembly) Has(tree Hash, folder string, route func() (*schema.Route, error)) {
-	a.Set(int32(len(a.h.Commits)-1), a.Version(tree, folder, route))
+	a.Set(int32(len(a.h.State)-1), a.Version(tree, folder, route))
 }
 
 // Set says how a commit has the route.

@@ -3,10 +3,12 @@ package trace
 import (
 	"context"
 	"errors"
+	"hash/fnv"
 	"io/fs"
 	"runtime"
+	"slices"
 	"strings"
-	"sync"
+	"time"
 
 	"golang.org/x/sync/errgroup"
 
@@ -30,6 +32,8 @@ type Loaded struct {
 	ID     string // of the route; empty where there is a fault
 	Fault  string // the first fault, its path from the route's folder
 	Route  *schema.Route
+	// Data is the route as the caller keeps it, where Each has set it.
+	Data any
 }
 
 // checker reads parts of data sets, each once, and knows whether they are sound.
@@ -37,10 +41,12 @@ type Loaded struct {
 // is passed.
 type checker struct {
 	prior    Prior
+	repo     *revision.Repo
+	each     func(*Loaded)
+	readers  []map[string]*schema.Versions // of each processor, by time zone
 	frames   map[string]*frameInfo
 	requests map[string]*requestInfo // by name, type and identity
 	sets     map[string]string       // folder of requests -> first fault
-	mu       sync.Mutex
 	versions map[Key]*Loaded
 	fresh    []*Loaded // read since they were last taken
 }
@@ -52,9 +58,9 @@ type frameInfo struct {
 
 type requestInfo struct{ id, fault string }
 
-func newChecker(prior Prior) *checker {
+func newChecker(repo *revision.Repo, prior Prior, each func(*Loaded)) *checker {
 	return &checker{
-		prior: prior, frames: map[string]*frameInfo{}, requests: map[string]*requestInfo{},
+		prior: prior, repo: repo, each: each, readers: make([]map[string]*schema.Versions, runtime.GOMAXPROCS(0)), frames: map[string]*frameInfo{}, requests: map[string]*requestInfo{},
 		sets: map[string]string{}, versions: map[Key]*Loaded{},
 	}
 }
@@ -92,12 +98,30 @@ func (k *checker) frame(ctx context.Context, l *listing) (*frameInfo, error) {
 	if f, ok := k.frames[l.frame]; ok {
 		return f, nil
 	}
+	files, err := k.repo.Folder(l.tree, what(l.commit))
+	if err != nil {
+		return nil, err
+	}
+	root, err := fs.ReadDir(files, ".")
+	if err != nil {
+		return nil, err
+	}
 	m := newMount()
-	for _, e := range l.root {
-		m.file(e, l.files)
+	var strays []fs.DirEntry
+	for _, e := range root {
+		folder := e.IsDir() && (e.Name() == "routes" || e.Name() == "requests")
+		if !folder && (e.Name() == "routes" || e.Name() == "requests" || slices.Contains(frameFiles, e.Name())) {
+			m.file(e, files)
+		}
+		if folder && e.Name() == "routes" && l.strays != "" {
+			if strays, err = fs.ReadDir(files, "routes"); err != nil {
+				return nil, err
+			}
+			strays = slices.DeleteFunc(strays, fs.DirEntry.IsDir)
+		}
 	}
 	m.plainRoute()
-	m.routes = append(m.routes, l.strays...)
+	m.routes = append(m.routes, strays...)
 	data, err := schema.Load(ctx, m)
 	f := &frameInfo{}
 	if f.fault, err = faultOf(err); err != nil {
@@ -118,7 +142,11 @@ func (k *checker) requestSet(ctx context.Context, l *listing) (string, error) {
 	if fault, ok := k.sets[l.requests]; ok {
 		return fault, nil
 	}
-	entries, err := fs.ReadDir(l.files, "requests")
+	files, err := k.repo.Folder(l.tree, what(l.commit))
+	if err != nil {
+		return "", err
+	}
+	entries, err := fs.ReadDir(files, "requests")
 	if err != nil {
 		return "", err
 	}
@@ -126,7 +154,7 @@ func (k *checker) requestSet(ctx context.Context, l *listing) (string, error) {
 	seen := make(map[string]bool, len(entries))
 	count := 0
 	for _, e := range entries {
-		q, err := k.request(ctx, l, e)
+		q, err := k.request(ctx, files, e)
 		if err != nil {
 			return "", err
 		}
@@ -147,7 +175,7 @@ func (k *checker) requestSet(ctx context.Context, l *listing) (string, error) {
 }
 
 // request reads one entry of the folder of requests.
-func (k *checker) request(ctx context.Context, l *listing, e fs.DirEntry) (*requestInfo, error) {
+func (k *checker) request(ctx context.Context, files fs.FS, e fs.DirEntry) (*requestInfo, error) {
 	key := e.Name() + "\x00" + e.Type().String() + identityOf(e)
 	if q, ok := k.requests[key]; ok {
 		return q, nil
@@ -155,7 +183,7 @@ func (k *checker) request(ctx context.Context, l *listing, e fs.DirEntry) (*requ
 	m := newMount()
 	m.plainFrame("")
 	m.plainRoute()
-	m.request(e, l.files)
+	m.request(e, files)
 	data, err := schema.Load(ctx, m)
 	q := &requestInfo{}
 	if q.fault, err = faultOf(err); err != nil {
@@ -171,8 +199,8 @@ func (k *checker) request(ctx context.Context, l *listing, e fs.DirEntry) (*requ
 // want is a folder that is to be read.
 type want struct {
 	Key
-	entry entry
-	files fs.FS
+	name   string
+	commit Hash // that has it
 }
 
 // version gives what came of a folder, reading it if need be.
@@ -201,91 +229,82 @@ func (k *checker) known(key Key) (*Loaded, error) {
 	return v, err
 }
 
-// groupSize is how many folders are read at once.
-const groupSize = 32
-
-// load reads folders, many at a time. Those of one group have different names
-// and stand in one made-up data set, which is sound when each of them is; where
-// it is not, they are read one by one.
+// load reads folders, on all processors. All versions of one folder are read by
+// the same one, which knows what it read last.
 func (k *checker) load(ctx context.Context, wants []want) error {
-	type group struct {
-		list  []want
-		names map[string]bool
-	}
-	var groups []*group
-	asked := map[Key]bool{}
+	shares := make([][]*Loaded, len(k.readers))
+	var fresh []*Loaded
+	of := map[Key]Hash{}
 	for _, w := range wants {
-		if asked[w.Key] {
+		if _, ok := of[w.Key]; ok {
 			continue
 		}
-		asked[w.Key] = true
-		var g *group
-		for i := len(groups) - 1; i >= 0 && g == nil; i-- {
-			x := groups[i]
-			if len(x.list) < groupSize && x.list[0].Zone == w.Zone && !x.names[strings.ToLower(w.entry.name)] {
-				g = x
-			}
-		}
-		if g == nil {
-			g = &group{names: map[string]bool{}}
-			groups = append(groups, g)
-		}
-		g.list = append(g.list, w)
-		g.names[strings.ToLower(w.entry.name)] = true
+		of[w.Key] = w.commit
+		v := &Loaded{Key: w.Key, Folder: "routes/" + w.name}
+		h := fnv.New32a()
+		h.Write([]byte(w.name))
+		n := h.Sum32() % uint32(len(shares))
+		shares[n] = append(shares[n], v)
+		fresh = append(fresh, v)
 	}
 	work, ctx := errgroup.WithContext(ctx)
-	work.SetLimit(runtime.GOMAXPROCS(0))
-	for _, g := range groups {
+	for n, share := range shares {
+		if len(share) == 0 {
+			continue
+		}
 		work.Go(func() error {
-			done, err := k.loadGroup(ctx, g.list)
-			if err != nil || done {
-				return err
-			}
-			for i := range g.list {
-				if _, err := k.loadGroup(ctx, g.list[i:i+1]); err != nil {
+			for _, v := range share {
+				if err := ctx.Err(); err != nil {
+					return err
+				}
+				if err := k.loadOne(n, v, of[v.Key]); err != nil {
 					return err
 				}
 			}
 			return nil
 		})
 	}
-	return work.Wait()
+	if err := work.Wait(); err != nil {
+		return err
+	}
+	for _, v := range fresh {
+		k.versions[v.Key] = v
+	}
+	k.fresh = append(k.fresh, fresh...)
+	return nil
 }
 
-// loadGroup reads folders together; false where more than one was asked for and
-// something is wrong.
-func (k *checker) loadGroup(ctx context.Context, list []want) (bool, error) {
-	m := newMount()
-	m.plainFrame(list[0].Zone)
-	for _, w := range list {
-		m.folder(w.entry.DirEntry, w.files)
+// loadOne reads a folder with the reader of a processor.
+func (k *checker) loadOne(n int, v *Loaded, commit Hash) error {
+	if k.readers[n] == nil {
+		k.readers[n] = map[string]*schema.Versions{}
 	}
-	data, err := schema.Load(ctx, m)
+	versions := k.readers[n][v.Zone]
+	if versions == nil {
+		zone, err := time.LoadLocation(v.Zone)
+		if err != nil {
+			return err
+		}
+		versions = schema.NewVersions(zone)
+		k.readers[n][v.Zone] = versions
+	}
+	files, err := k.repo.Folder(v.Tree, what(commit))
+	if err != nil {
+		return err
+	}
+	route, err := versions.Read(&under{v.Folder, files}, v.Folder)
 	fault, err := faultOf(err)
 	if err != nil {
-		return false, err
+		return err
 	}
-	if fault != "" && len(list) > 1 {
-		return false, nil
-	}
-	routes := map[string]*schema.Route{}
+	v.Fault = strings.TrimPrefix(fault, v.Folder+"/")
 	if fault == "" {
-		for _, r := range data.Routes {
-			routes[r.Folder] = r
+		v.ID, v.Route = route.ID, route
+		if k.each != nil {
+			k.each(v)
 		}
 	}
-	k.mu.Lock()
-	defer k.mu.Unlock()
-	for _, w := range list {
-		folder := "routes/" + w.entry.name
-		v := &Loaded{Key: w.Key, Folder: folder, Fault: strings.TrimPrefix(fault, folder+"/")}
-		if r := routes[folder]; r != nil {
-			v.ID, v.Route = r.ID, r
-		}
-		k.versions[w.Key] = v
-		k.fresh = append(k.fresh, v)
-	}
-	return true, nil
+	return nil
 }
 
 // take gives what was read since the last call.
@@ -298,6 +317,6 @@ func (k *checker) take() []*Loaded {
 // forget lets go of routes that were handed over.
 func forget(list []*Loaded) {
 	for _, v := range list {
-		v.Route = nil
+		v.Route, v.Data = nil, nil
 	}
 }

@@ -9,14 +9,9 @@ import (
 	"speedtrail/schema"
 )
 
-// routeChanges lists the routes that a listing has otherwise than its base's.
-// Both are sound.
-func (r *Reader) routeChanges(ctx context.Context, l, base *listing) ([]RouteChange, error) {
-	var before []entry
-	if base != nil {
-		before = base.routes
-	}
-	list := changes(before, l.routes)
+// routeChanges lists the routes that a listing has otherwise than its base's, of
+// which the folders that differ are given. Both are sound.
+func (r *Reader) routeChanges(ctx context.Context, l, base *listing, list []change) ([]RouteChange, error) {
 	if len(list) == 0 {
 		return nil, nil
 	}
@@ -29,24 +24,24 @@ func (r *Reader) routeChanges(ctx context.Context, l, base *listing) ([]RouteCha
 		}
 	}
 	for _, x := range list {
-		if x.now == nil {
+		if x.now == (Hash{}) {
 			continue
 		}
-		v, err := r.versionOf(ctx, l, f, x.now)
+		v, err := r.check.version(ctx, wantOf(l, f, x.name, x.now))
 		if err != nil {
 			return nil, err
 		}
-		now[v.ID] = RouteChange{v.ID, v, "routes/" + x.now.name}
+		now[v.ID] = RouteChange{v.ID, v, "routes/" + x.name}
 	}
 	for _, x := range list {
-		if x.old == nil {
+		if x.old == (Hash{}) {
 			continue
 		}
 		of, err := r.check.frame(ctx, base)
 		if err != nil {
 			return nil, err
 		}
-		v, err := r.versionOf(ctx, base, of, x.old)
+		v, err := r.check.version(ctx, wantOf(base, of, x.name, x.old))
 		if err != nil {
 			return nil, err
 		}
@@ -77,6 +72,11 @@ func (r *Reader) History(ctx context.Context, tip Hash, route string, o Options)
 	}
 	a := newAssembly(route)
 	routes := map[Key]*schema.Route{}
+	r.Each(func(v *Loaded) {
+		if v.ID != route {
+			v.Route = nil
+		}
+	})
 	err = r.Read(ctx, w, nil, o.Progress, func(b *Batch) error {
 		for _, v := range b.Loaded {
 			if v.ID == route {

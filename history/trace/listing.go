@@ -1,7 +1,6 @@
 package trace
 
 import (
-	"errors"
 	"io/fs"
 	"slices"
 	"strings"
@@ -13,14 +12,15 @@ import (
 // frameFiles are the files beside the routes and requests.
 var frameFiles = []string{"dataset.toml", "trains.toml", "accepted.toml", "signoff.toml", "allowed_signers"}
 
-// listing is what a commit holds of a data set, by name and identity.
+// listing is what a commit holds of a data set, by name and hash.
 type listing struct {
-	files fs.FS
+	commit Hash
+	tree   Hash // of the data set's folder; zero: there is none
 	// absent: there is nothing of a data set, or not even its folder.
 	absent bool
-	root   []fs.DirEntry // of frameFiles, and what stands in place of the folders
-	routes []entry       // the folders in routes/, in byte order
-	strays []fs.DirEntry // what else stands in routes/
+	routes Hash // of the folder routes/; zero: there is none
+	// strays names what else stands in routes/.
+	strays string
 	// frame is the same for equal frames: everything but routes and requests.
 	frame    string
 	requests string // identity of the folder, empty for none
@@ -28,64 +28,188 @@ type listing struct {
 
 // entry is a folder of a route.
 type entry struct {
-	fs.DirEntry
-	name, identity string
+	name string
+	tree Hash
 }
 
-// list reads what a commit holds.
-func list(repo *revision.Repo, commit Hash, folder string) (*listing, error) {
-	l := &listing{}
-	var err error
-	if l.files, err = repo.Snapshot(commit.String(), folder); errors.Is(err, revision.ErrNoFolder) {
-		l.absent = true
-		return l, nil
-	} else if err != nil {
-		return nil, err
+// change is a folder that differs between two listings: a zero hash stands for
+// one that is not there.
+type change struct {
+	name     string
+	old, now Hash
+}
+
+// lister lists what commits hold, mostly one after the other. It is not safe for
+// concurrent use.
+type lister struct {
+	repo   *revision.Repo
+	folder []string // the names on the way to the data set's folder
+	recent [8]recentTree
+	next   int
+}
+
+// recentTree is a folder routes/ that was read lately.
+type recentTree struct {
+	hash Hash
+	tree revision.Tree
+}
+
+func newLister(repo *revision.Repo, folder string) *lister {
+	l := &lister{repo: repo}
+	if folder != "" && folder != "." {
+		l.folder = strings.Split(folder, "/")
 	}
-	root, err := fs.ReadDir(l.files, ".")
+	return l
+}
+
+func what(commit Hash) string { return "commit " + commit.String() }
+
+// list lists what a commit holds, and the folders that it has otherwise than the
+// one before it; nil: there is none.
+func (l *lister) list(commit, root Hash, before *listing) (*listing, []change, error) {
+	if before == nil {
+		before = &listing{absent: true}
+	}
+	out := &listing{commit: commit, tree: root}
+	for _, name := range l.folder {
+		at, _, err := l.repo.Tree(out.tree, revision.Tree{}, what(commit))
+		if err != nil {
+			return nil, nil, err
+		}
+		e, ok := at.Find(name)
+		if !ok || !e.Mode.IsDir() {
+			out.tree, out.absent = Hash{}, true
+			list, err := l.changes(before, out)
+			return out, list, err
+		}
+		out.tree = e.Hash
+	}
+	if out.tree == before.tree {
+		again := *before
+		again.commit = commit
+		return &again, nil, nil
+	}
+	files, _, err := l.repo.Tree(out.tree, revision.Tree{}, what(commit))
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
-	l.absent = true
+	out.absent = true
 	var frame strings.Builder
-	note := func(e fs.DirEntry, name string, identity string) {
-		frame.WriteString(name + "\x00" + e.Type().String() + identity + "\n")
-	}
-	for _, e := range root {
-		name := e.Name()
+	for e := range files.All() {
+		name := e.Name
 		switch {
-		case name == "routes" && e.IsDir():
-			l.absent = false
-			if err := l.listRoutes(func(e fs.DirEntry, name string) { note(e, name, "") }); err != nil {
-				return nil, err
-			}
-		case name == "requests" && e.IsDir():
-			l.requests = identityOf(e)
+		case name == "routes" && e.Mode.IsDir():
+			out.absent, out.routes = false, e.Hash
+		case name == "requests" && e.Mode.IsDir():
+			out.requests = Hash(e.Hash).String()
 		case name == "routes" || name == "requests" || slices.Contains(frameFiles, name):
-			l.absent = l.absent && name != "dataset.toml" && name != "trains.toml"
-			l.root = append(l.root, e)
-			note(e, name, identityOf(e))
+			out.absent = out.absent && name != "dataset.toml" && name != "trains.toml"
+			frame.WriteString(name + "\x00" + e.Mode.Type().String() + string(e.Hash[:]) + "\n")
 		}
 	}
-	l.frame = frame.String()
-	return l, nil
+	list, err := l.changes(before, out)
+	frame.WriteString(out.strays)
+	out.frame = frame.String()
+	return out, list, err
 }
 
-func (l *listing) listRoutes(note func(fs.DirEntry, string)) error {
-	entries, err := fs.ReadDir(l.files, "routes")
+// changes lists the folders that differ between two listings, in byte order, and
+// fills in what else stands in routes/.
+func (l *lister) changes(before, now *listing) ([]change, error) {
+	now.strays = before.strays
+	if before.routes == now.routes {
+		return nil, nil
+	}
+	list, err := l.difference(before, now)
 	if err != nil {
-		return err
+		return nil, err
 	}
-	l.routes = make([]entry, 0, len(entries))
-	for _, e := range entries {
-		if !e.IsDir() {
-			l.strays = append(l.strays, e)
-			note(e, "routes/"+e.Name())
-			continue
+	var out []change
+	strays := false
+	for _, x := range list {
+		c := change{name: x.Old.Name + x.Now.Name}
+		if x.Old.Name != "" && x.Now.Name != "" {
+			c.name = x.Now.Name
 		}
-		l.routes = append(l.routes, entry{e, e.Name(), identityOf(e)})
+		if x.Old.Name != "" && x.Old.Mode.IsDir() {
+			c.old = x.Old.Hash
+		} else if x.Old.Name != "" {
+			strays = true
+		}
+		if x.Now.Name != "" && x.Now.Mode.IsDir() {
+			c.now = x.Now.Hash
+		} else if x.Now.Name != "" {
+			strays = true
+		}
+		if c.old != c.now {
+			out = append(out, c)
+		}
 	}
-	return nil
+	slices.SortFunc(out, func(a, b change) int { return strings.Compare(a.name, b.name) })
+	if !strays {
+		return out, nil
+	}
+	t, err := l.routes(now)
+	if err != nil {
+		return nil, err
+	}
+	now.strays = ""
+	for e := range t.All() {
+		if !e.Mode.IsDir() {
+			now.strays += "routes/" + e.Name + "\x00" + e.Mode.Type().String() + "\n"
+		}
+	}
+	return out, nil
+}
+
+// difference compares the folders routes/ of two listings.
+func (l *lister) difference(before, now *listing) ([]revision.TreeChange, error) {
+	old, err := l.routes(before)
+	if err != nil {
+		return nil, err
+	}
+	t, list, err := l.repo.Tree(now.routes, old, what(now.commit))
+	if err == nil {
+		l.remember(now.routes, t)
+	}
+	return list, err
+}
+
+// routes reads the folder routes/ of a listing.
+func (l *lister) routes(x *listing) (revision.Tree, error) {
+	for _, r := range l.recent {
+		if r.hash == x.routes {
+			return r.tree, nil // the zero hash is the zero tree
+		}
+	}
+	t, _, err := l.repo.Tree(x.routes, revision.Tree{}, what(x.commit))
+	if err == nil {
+		l.remember(x.routes, t)
+	}
+	return t, err
+}
+
+func (l *lister) remember(h Hash, t revision.Tree) {
+	if h != (Hash{}) {
+		l.recent[l.next] = recentTree{h, t}
+		l.next = (l.next + 1) % len(l.recent)
+	}
+}
+
+// all lists the folders of routes, in byte order.
+func (l *lister) all(x *listing) ([]entry, error) {
+	t, err := l.routes(x)
+	if err != nil {
+		return nil, err
+	}
+	var list []entry
+	for e := range t.All() {
+		if e.Mode.IsDir() {
+			list = append(list, entry{e.Name, e.Hash})
+		}
+	}
+	slices.SortFunc(list, func(a, b entry) int { return strings.Compare(a.name, b.name) })
+	return list, nil
 }
 
 func identityOf(e fs.DirEntry) string {
@@ -93,30 +217,4 @@ func identityOf(e fs.DirEntry) string {
 		return i.Identity()
 	}
 	return ""
-}
-
-// change is a folder that differs between two listings.
-type change struct{ old, now *entry } // nil where it is not there
-
-// changes lists the folders that differ.
-func changes(old, now []entry) []change {
-	var list []change
-	i, k := 0, 0
-	for i < len(old) || k < len(now) {
-		switch {
-		case k == len(now) || i < len(old) && old[i].name < now[k].name:
-			list = append(list, change{&old[i], nil})
-			i++
-		case i == len(old) || now[k].name < old[i].name:
-			list = append(list, change{nil, &now[k]})
-			k++
-		default:
-			if old[i].identity != now[k].identity {
-				list = append(list, change{&old[i], &now[k]})
-			}
-			i++
-			k++
-		}
-	}
-	return list
 }

@@ -3,13 +3,10 @@ package trace
 import (
 	"context"
 	"runtime"
-	"strings"
 
 	"golang.org/x/sync/errgroup"
 
 	"speedtrail/history/revision"
-	"speedtrail/schema"
-	"speedtrail/schema/source"
 )
 
 // Prior is what is known from earlier readings of the same repository and
@@ -50,19 +47,35 @@ type Batch struct {
 
 // Reader reads the history of a data set from a repository.
 type Reader struct {
-	repo     *revision.Repo
-	folder   string
-	batch    int
-	check    *checker
-	prior    Prior
-	bases    map[Hash]Hash // of commits that were read, where there is one
-	read     map[Hash]bool
-	listings map[Hash]*listing
+	repo    *revision.Repo
+	folder  string
+	batch   int
+	each    func(*Loaded)
+	check   *checker
+	prior   Prior
+	bases   map[Hash]Hash // of commits that were read, where there is one
+	read    map[Hash]bool
+	listers []*lister         // one for each processor
+	listed  map[Hash]*listing // of the commits of the last batches and their bases
 }
 
 // NewReader reads the data set in a folder of a repository.
 func NewReader(repo *revision.Repo, folder string) *Reader {
-	return &Reader{repo: repo, folder: folder, batch: 64}
+	return &Reader{repo: repo, folder: folder, batch: 256}
+}
+
+// InBatches sets how many commits are handed over at once, and gives the reader.
+func (r *Reader) InBatches(commits int) *Reader {
+	r.batch = max(1, commits)
+	return r
+}
+
+// Each sets what is done with each sound route as soon as it was read, on several
+// processors at once, and gives the reader. It may turn the Route into Data, and
+// let go of it: a route takes much memory until its batch is handed over.
+func (r *Reader) Each(f func(*Loaded)) *Reader {
+	r.each = f
+	return r
 }
 
 // Walk is a list of commits to be read.
@@ -77,35 +90,81 @@ func (r *Reader) Commits(ctx context.Context, tip Hash, firstParent bool, known 
 	return &Walk{list}, err
 }
 
-// Read reads commits and hands them over batch by batch. What is handed over
-// must not be kept beyond the call of take, the routes in it excepted.
+// Read reads commits and hands them over batch by batch, while it reads the next
+// one: prior is asked in another goroutine than the one that take is called in.
+// What is handed over must not be kept beyond the call of take, the routes in it
+// excepted.
 func (r *Reader) Read(ctx context.Context, w *Walk, prior Prior, progress func(done, total int), take func(*Batch) error) error {
-	r.prior, r.check = prior, newChecker(prior)
-	r.bases, r.read, r.listings = map[Hash]Hash{}, map[Hash]bool{}, map[Hash]*listing{}
-	for at := 0; at < len(w.list); at += r.batch {
-		part := w.list[at:min(at+r.batch, len(w.list))]
-		if err := r.listAll(ctx, part); err != nil {
+	r.prior, r.check = prior, newChecker(r.repo, prior, r.each)
+	r.bases, r.read, r.listed = map[Hash]Hash{}, map[Hash]bool{}, map[Hash]*listing{}
+	r.listers = nil
+	for range runtime.GOMAXPROCS(0) {
+		r.listers = append(r.listers, newLister(r.repo, r.folder))
+	}
+	reading, stop := context.WithCancel(ctx)
+	batches := make(chan *Batch)
+	var failed error
+	go func() {
+		defer close(batches)
+		failed = r.readBatches(reading, w.list, batches)
+	}()
+	defer func() {
+		stop()
+		for range batches {
+			// The reading ends before this call does.
+		}
+	}()
+	done := 0
+	for b := range batches {
+		if err := ctx.Err(); err != nil {
 			return err
 		}
-		if err := r.loadNew(ctx, part); err != nil {
-			return err
-		}
-		b := &Batch{Deltas: make([]Delta, len(part))}
-		for i, c := range part {
-			if err := r.delta(ctx, c, &b.Deltas[i]); err != nil {
-				return err
-			}
-		}
-		b.Loaded = r.check.take()
 		if err := take(b); err != nil {
 			return err
 		}
 		forget(b.Loaded)
+		done += len(b.Deltas)
 		if progress != nil {
-			progress(at+len(part), len(w.list))
+			progress(done, len(w.list))
 		}
 	}
+	if failed != nil {
+		return failed
+	}
 	return ctx.Err()
+}
+
+func (r *Reader) readBatches(ctx context.Context, list []walked, to chan<- *Batch) error {
+	for at := 0; at < len(list); at += r.batch {
+		b, err := r.readBatch(ctx, list[at:min(at+r.batch, len(list))])
+		if err != nil {
+			return err
+		}
+		select {
+		case to <- b:
+		case <-ctx.Done():
+			return ctx.Err()
+		}
+	}
+	return nil
+}
+
+func (r *Reader) readBatch(ctx context.Context, part []walked) (*Batch, error) {
+	found, err := r.listAll(ctx, part)
+	if err != nil {
+		return nil, err
+	}
+	if err := r.loadNew(ctx, found); err != nil {
+		return nil, err
+	}
+	b := &Batch{Deltas: make([]Delta, len(part))}
+	for i, c := range part {
+		if err := r.delta(ctx, c, found[i], &b.Deltas[i]); err != nil {
+			return nil, err
+		}
+	}
+	b.Loaded = r.check.take()
+	return b, nil
 }
 
 // baseOf gives the base of a commit: that of its first parent.
@@ -124,69 +183,80 @@ func (r *Reader) baseOf(c walked) (Hash, bool) {
 	return r.prior.Base(p)
 }
 
-// listAll lists what the commits of a batch and their bases hold, on all
-// processors. Listings that nobody asks for again are dropped.
-func (r *Reader) listAll(ctx context.Context, part []walked) error {
-	needed := map[Hash]bool{}
-	for _, c := range part {
-		needed[c.Hash] = true
-		if len(c.parents) > 0 {
-			needed[c.parents[0]] = true
-		}
-		if base, ok := r.baseOf(c); ok {
-			needed[base] = true
-		}
-	}
-	kept := make(map[Hash]*listing, len(needed))
-	var missing []Hash
-	for h := range needed {
-		if l := r.listings[h]; l != nil {
-			kept[h] = l
-		} else {
-			missing = append(missing, h)
-		}
-	}
-	found := make([]*listing, len(missing))
+// found is what a commit holds, and what it has otherwise than its first parent.
+type found struct {
+	listing *listing
+	changes []change
+}
+
+// listAll lists what the commits of a batch hold: each processor goes through a
+// row of commits that follow each other.
+func (r *Reader) listAll(ctx context.Context, part []walked) ([]found, error) {
+	out := make([]found, len(part))
 	work, ctx := errgroup.WithContext(ctx)
-	work.SetLimit(runtime.GOMAXPROCS(0))
-	for i, h := range missing {
-		work.Go(func() (err error) {
-			if err := ctx.Err(); err != nil {
-				return err
+	share := (len(part) + len(r.listers) - 1) / len(r.listers)
+	for n, l := range r.listers {
+		from, to := min(n*share, len(part)), min((n+1)*share, len(part))
+		work.Go(func() error {
+			own := map[Hash]*listing{}
+			for i := from; i < to; i++ {
+				if err := ctx.Err(); err != nil {
+					return err
+				}
+				c := part[i]
+				var before *listing
+				if len(c.parents) > 0 {
+					p := c.parents[0]
+					if before = own[p]; before == nil {
+						var err error
+						if before, err = r.listing(l, p); err != nil {
+							return err
+						}
+						own[p] = before
+					}
+				}
+				now, list, err := l.list(c.Hash, c.tree, before)
+				if err != nil {
+					return err
+				}
+				own[c.Hash] = now
+				out[i] = found{now, list}
 			}
-			found[i], err = list(r.repo, h, r.folder)
-			return err
+			return nil
 		})
 	}
 	if err := work.Wait(); err != nil {
-		return err
+		return nil, err
 	}
-	for i, h := range missing {
-		kept[h] = found[i]
+	// The commits of this batch are the parents and bases of those of the next;
+	// what is asked for later is listed again.
+	clear(r.listed)
+	for _, x := range out {
+		r.listed[x.listing.commit] = x.listing
 	}
-	r.listings = kept
-	return nil
+	return out, nil
 }
 
 // listing gives what a commit holds.
-func (r *Reader) listing(h Hash) (*listing, error) {
-	if l := r.listings[h]; l != nil {
-		return l, nil
+func (r *Reader) listing(l *lister, commit Hash) (*listing, error) {
+	if x := r.listed[commit]; x != nil {
+		return x, nil
 	}
-	l, err := list(r.repo, h, r.folder)
-	if err == nil {
-		r.listings[h] = l
+	c, err := r.repo.Link(commit)
+	if err != nil {
+		return nil, err
 	}
-	return l, err
+	x, _, err := l.list(commit, c.Tree, nil)
+	return x, err
 }
 
 // loadNew reads the folders that the commits of a batch have otherwise than
 // their first parents, together.
-func (r *Reader) loadNew(ctx context.Context, part []walked) error {
+func (r *Reader) loadNew(ctx context.Context, batch []found) error {
 	var wants []want
-	for _, c := range part {
-		l := r.listings[c.Hash]
-		if l.absent {
+	for _, x := range batch {
+		l := x.listing
+		if l.absent || len(x.changes) == 0 {
 			continue
 		}
 		f, err := r.check.frame(ctx, l)
@@ -196,18 +266,11 @@ func (r *Reader) loadNew(ctx context.Context, part []walked) error {
 		if f.fault != "" {
 			continue
 		}
-		var before []entry
-		if len(c.parents) > 0 {
-			before = r.listings[c.parents[0]].routes
-		}
-		for _, x := range changes(before, l.routes) {
-			if x.now == nil {
+		for _, c := range x.changes {
+			if c.now == (Hash{}) {
 				continue
 			}
-			w, err := wantOf(l, f, x.now)
-			if err != nil {
-				return err
-			}
+			w := wantOf(l, f, c.name, c.now)
 			if v, err := r.check.known(w.Key); err != nil {
 				return err
 			} else if v == nil {
@@ -218,27 +281,34 @@ func (r *Reader) loadNew(ctx context.Context, part []walked) error {
 	return r.check.load(ctx, wants)
 }
 
-func wantOf(l *listing, f *frameInfo, e *entry) (want, error) {
-	tree, err := ParseHash(e.identity)
-	return want{Key{tree, f.zone}, *e, l.files}, err
+func wantOf(l *listing, f *frameInfo, name string, tree Hash) want {
+	return want{Key{tree, f.zone}, name, l.commit}
 }
 
 // delta fills in what a commit has otherwise than its base.
-func (r *Reader) delta(ctx context.Context, c walked, d *Delta) error {
+func (r *Reader) delta(ctx context.Context, c walked, x found, d *Delta) error {
 	*d = Delta{Hash: c.Hash, Parents: c.parents, When: c.when, Cut: c.cut}
 	base, hasBase := r.baseOf(c)
 	var before *listing
+	l, list := x.listing, x.changes
+	var err error
 	if hasBase {
-		var err error
-		if before, err = r.listing(base); err != nil {
+		if before, err = r.listing(r.listers[0], base); err != nil {
+			return err
+		}
+		r.listed[base] = before
+	}
+	if len(c.parents) > 0 && (!hasBase || base != c.parents[0]) {
+		from := before
+		if from == nil {
+			from = &listing{}
+		}
+		now := *l // what else stands in routes/ is known
+		if list, err = r.listers[0].changes(from, &now); err != nil {
 			return err
 		}
 	}
-	l, err := r.listing(c.Hash)
-	if err != nil {
-		return err
-	}
-	if d.Gap, err = r.fault(ctx, l, before); err != nil {
+	if d.Gap, err = r.fault(ctx, l, before, list); err != nil {
 		return err
 	}
 	r.read[c.Hash] = true
@@ -249,132 +319,6 @@ func (r *Reader) delta(ctx context.Context, c walked, d *Delta) error {
 		return nil
 	}
 	r.bases[c.Hash] = c.Hash
-	d.Changes, err = r.routeChanges(ctx, l, before)
+	d.Changes, err = r.routeChanges(ctx, l, before, list)
 	return err
-}
-
-// fault gives the first fault of a commit's data set. Where there is a base,
-// which is sound, only what differs from it has to be looked at.
-func (r *Reader) fault(ctx context.Context, l, base *listing) (string, error) {
-	if l.absent {
-		return "", nil
-	}
-	f, err := r.check.frame(ctx, l)
-	if err != nil {
-		return "", err
-	}
-	fault := f.fault
-	requests, err := r.check.requestSet(ctx, l)
-	if err != nil {
-		return "", err
-	}
-	fault = earlier(fault, requests)
-	if len(l.routes) == 0 {
-		fault = earlier(fault, "routes: no route")
-	}
-	if f.fault != "" {
-		return fault, nil // without a time zone the routes cannot be read
-	}
-	if base != nil && !base.absent {
-		of, err := r.check.frame(ctx, base)
-		if err != nil {
-			return "", err
-		}
-		if of.zone == f.zone {
-			routes, same, err := r.faultOfChanges(ctx, l, base, f)
-			if err != nil || same {
-				return earlier(fault, routes), err
-			}
-		}
-	}
-	routes, err := r.faultOfAll(ctx, l, f)
-	return earlier(fault, routes), err
-}
-
-// faultOfChanges looks at the folders that differ from the base's; same is false
-// where ids may be others than there, so that all have to be looked at.
-func (r *Reader) faultOfChanges(ctx context.Context, l, base *listing, f *frameInfo) (fault string, same bool, err error) {
-	for _, x := range changes(base.routes, l.routes) {
-		if x.old == nil || x.now == nil {
-			return "", false, nil
-		}
-		now, err := r.versionOf(ctx, l, f, x.now)
-		if err != nil {
-			return "", false, err
-		}
-		if now.Fault != "" {
-			fault = earlier(fault, faultIn(now, x.now))
-			continue
-		}
-		old, err := r.versionOf(ctx, base, f, x.old)
-		if err != nil {
-			return "", false, err
-		}
-		if old.ID != now.ID {
-			return "", false, nil
-		}
-	}
-	return fault, true, nil
-}
-
-func (r *Reader) versionOf(ctx context.Context, l *listing, f *frameInfo, e *entry) (*Loaded, error) {
-	w, err := wantOf(l, f, e)
-	if err != nil {
-		return nil, err
-	}
-	return r.check.version(ctx, w)
-}
-
-// faultIn writes a fault of a folder where it stands now.
-func faultIn(v *Loaded, e *entry) string { return "routes/" + e.name + "/" + v.Fault }
-
-// faultOfAll looks at all folders, and at what concerns them together.
-func (r *Reader) faultOfAll(ctx context.Context, l *listing, f *frameInfo) (string, error) {
-	var wants []want
-	for i := range l.routes {
-		w, err := wantOf(l, f, &l.routes[i])
-		if err != nil {
-			return "", err
-		}
-		if v, err := r.check.known(w.Key); err != nil {
-			return "", err
-		} else if v == nil {
-			wants = append(wants, w)
-		}
-	}
-	if err := r.check.load(ctx, wants); err != nil {
-		return "", err
-	}
-	fault := ""
-	ids, folded := map[string]string{}, map[string]string{}
-	for i := range l.routes {
-		e := &l.routes[i]
-		v, err := r.versionOf(ctx, l, f, e)
-		if err != nil {
-			return "", err
-		}
-		if v.Fault != "" {
-			fault = earlier(fault, faultIn(v, e))
-			continue
-		}
-		if other, ok := ids[v.ID]; ok {
-			fault = earlier(fault, "routes/"+e.name+"/route.toml: route id "+source.Quote(v.ID)+" is that of routes/"+other+", too; ids are unique")
-		}
-		ids[v.ID] = e.name
-		fold := strings.ToLower(e.name)
-		if other, ok := folded[fold]; ok {
-			fault = earlier(fault, "routes/"+e.name+": the folder's name differs from "+source.Quote(other)+" in letter case only, which some file systems cannot hold")
-		}
-		folded[fold] = e.name
-	}
-	if len(l.routes) > schema.MaxRoutes {
-		fault = earlier(fault, "routes: too many route folders")
-	}
-	return fault, nil
-}
-
-// InBatches sets how many commits are handed over at once, and gives the reader.
-func (r *Reader) InBatches(commits int) *Reader {
-	r.batch = max(1, commits)
-	return r
 }

@@ -14,6 +14,7 @@ type Known func(Hash) bool
 // walked is a commit that a walk came to.
 type walked struct {
 	Hash
+	tree    Hash
 	parents []Hash
 	when    int64
 	cut     bool
@@ -36,22 +37,13 @@ func walk(ctx context.Context, repo *revision.Repo, tip Hash, firstParent bool, 
 			return nil
 		}
 		seen[h] = true
-		c, err := repo.Resolve(h.String())
+		c, err := repo.Link(h)
 		if err != nil {
 			return err
 		}
-		w := walked{Hash: h, when: c.Committer.When.Unix()}
-		if c.Committer.When.IsZero() {
-			w.when = 0
-		}
-		if w.cut = c.Boundary && len(c.Parents) > 0; !w.cut {
-			for _, p := range c.Parents {
-				hash, err := ParseHash(p)
-				if err != nil {
-					return err
-				}
-				w.parents = append(w.parents, hash)
-			}
+		w := walked{Hash: h, tree: c.Tree, when: c.When, cut: c.Boundary}
+		for _, p := range c.Parents {
+			w.parents = append(w.parents, p)
 		}
 		if firstParent && len(w.parents) > 1 {
 			w.parents = w.parents[:1]

@@ -18,7 +18,14 @@ var cantDeficiencyMM = [CantDeficiencies]int{80, 100, 130, 150, 165, 180, 210, 2
 func (c CantDeficiency) MM() int { return cantDeficiencyMM[c] }
 
 // Column gives the name of the category's column in speed.csv, as "cd150".
-func (c CantDeficiency) Column() string { return "cd" + strconv.Itoa(c.MM()) }
+func (c CantDeficiency) Column() string { return cantDeficiencyColumns[c] }
+
+var cantDeficiencyColumns = func() (names [CantDeficiencies]string) {
+	for c, mm := range cantDeficiencyMM {
+		names[c] = "cd" + strconv.Itoa(mm)
+	}
+	return names
+}()
 
 // CantDeficiencyOf finds the category of exactly mm millimetres.
 func CantDeficiencyOf(mm int) (CantDeficiency, bool) {

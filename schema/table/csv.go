@@ -1,6 +1,7 @@
 package table
 
 import (
+	"bufio"
 	"bytes"
 	"encoding/csv"
 	"errors"
@@ -8,6 +9,7 @@ import (
 	"iter"
 	"slices"
 	"strings"
+	"sync"
 	"unicode"
 
 	"speedtrail/schema/source"
@@ -24,8 +26,11 @@ type CSV struct {
 	Header source.Position // of the first header cell
 	// Columns are the columns that the file has, in its order.
 	Columns []string
+	file    string
 	index   map[string]int // column -> place in a row's cells
+	places  []int          // place in the file's row -> place in Columns, unnamed or unknown
 	rows    []Row
+	cells   []Cell // room for the cells of rows to come
 	// Broken tells that rows are missing because their form is faulty.
 	Broken bool
 }
@@ -48,11 +53,23 @@ func (t *CSV) Has(column string) bool { _, ok := t.index[column]; return ok }
 
 // Cell gives the cell of a column; a blank one where the file has no such
 // column.
-func (r Row) Cell(column string) Cell {
-	if i, ok := r.table.index[column]; ok {
-		return r.cells[i]
+func (r Row) Cell(column string) Cell { return r.At(r.table.Place(column)) }
+
+// Place gives the place of a column in Columns, -1 where the file has none of
+// this name: who reads many rows looks it up once.
+func (t *CSV) Place(column string) int {
+	if i, ok := t.index[column]; ok {
+		return i
 	}
-	return Cell{Pos: r.Pos}
+	return -1
+}
+
+// At gives the cell at a place; a blank one at -1.
+func (r Row) At(place int) Cell {
+	if place < 0 {
+		return Cell{Pos: r.Pos}
+	}
+	return r.cells[place]
 }
 
 // ReadCSV reads a table: comma separated, RFC 4180 quoting, header row first.
@@ -60,69 +77,104 @@ func (r Row) Cell(column string) Cell {
 // blank cells only are passed over. It always gives a table, with the rows that
 // could be read.
 func ReadCSV(file string, content []byte, known, required []string, faults *source.Collector) *CSV {
-	t := &CSV{index: map[string]int{}}
-	at := func(line, column int) source.Position { return source.Position{File: file, Line: line, Column: column} }
-	content = bytes.TrimPrefix(content, byteOrderMark)
-	if !CheckUTF8(file, content, faults) {
+	t := &CSV{file: file, index: map[string]int{}}
+	header := false
+	t.read(bytes.TrimPrefix(content, byteOrderMark), 1, faults, func(record []string, r *csv.Reader) bool {
+		if header {
+			return true
+		}
+		header = true
+		line, column := r.FieldPos(0)
+		t.Header = source.Position{File: file, Line: line, Column: column}
+		t.places = t.readHeader(record, r, known, required, faults)
+		return false
+	})
+	if !header && !t.Broken {
+		faults.Add(source.Position{File: file, Line: 1}, "no header row, expected %s", strings.Join(known, ","))
 		t.Broken = true
-		return t
+	}
+	return t
+}
+
+// Bare gives the table without its rows, for More.
+func (t *CSV) Bare() *CSV {
+	return &CSV{file: t.file, Header: t.Header, Columns: t.Columns, index: t.index, places: t.places}
+}
+
+// More reads further rows of the same columns, of which the first line has a
+// number. The table itself stays as it is.
+func (t *CSV) More(content []byte, line int, faults *source.Collector) *CSV {
+	more := t.Bare()
+	more.read(content, line, faults, func([]string, *csv.Reader) bool { return true })
+	return more
+}
+
+var buffers = sync.Pool{New: func() any { return bufio.NewReaderSize(nil, 4096) }}
+
+// read reads rows from lines of which the first has a number. A row that isRow
+// takes for itself is none.
+func (t *CSV) read(content []byte, first int, faults *source.Collector, isRow func(record []string, r *csv.Reader) bool) {
+	at := func(line, column int) source.Position {
+		return source.Position{File: t.file, Line: line + first - 1, Column: column}
+	}
+	if !CheckUTF8(t.file, content, faults) {
+		t.Broken = true
+		return
 	}
 	if i := bytes.IndexByte(content, 0); i >= 0 {
 		faults.Add(at(1+bytes.Count(content[:i], []byte("\n")), i-bytes.LastIndexByte(content[:i], '\n')), "the file holds a NUL byte, it is not text")
 		t.Broken = true
-		return t
+		return
 	}
-	r := csv.NewReader(bytes.NewReader(content))
+	// A csv.Reader takes this buffer for its own, which thousands of small texts
+	// can share.
+	buffer := buffers.Get().(*bufio.Reader)
+	buffer.Reset(bytes.NewReader(content))
+	defer func() {
+		buffer.Reset(nil)
+		buffers.Put(buffer)
+	}()
+	r := csv.NewReader(buffer)
 	r.Comment = '#'
 	r.FieldsPerRecord = -1
 	r.TrimLeadingSpace = true
 	r.ReuseRecord = true
-	var places []int // place in the file's row -> place in Columns, unnamed or unknown
-	header := false
 	for {
 		record, err := r.Read()
 		if errors.Is(err, io.EOF) {
-			break
+			return
 		}
 		if err != nil {
 			t.Broken = true
-			recordCSVError(file, content, err, faults)
+			recordCSVError(t.file, content, first, err, faults)
 			var syntax *csv.ParseError
-			if header && errors.As(err, &syntax) {
+			if t.places != nil && errors.As(err, &syntax) {
 				continue
 			}
-			return t // what follows a header that cannot be read is no header
+			return // what follows a header that cannot be read is no header
 		}
 		if !slices.ContainsFunc(record, func(s string) bool { return strings.TrimSpace(s) != "" }) {
 			continue
 		}
-		line, column := r.FieldPos(0)
-		if !header {
-			header = true
-			t.Header = at(line, column)
-			places = t.readHeader(record, r, file, known, required, faults)
-			if places == nil {
+		if !isRow(record, r) {
+			if t.places == nil {
 				t.Broken = true
-				return t
+				return
 			}
 			continue
 		}
+		line, _ := r.FieldPos(0)
 		if len(t.rows) == MaxRows {
 			faults.Add(at(line, 0), "more than %d rows", MaxRows)
 			t.Broken = true
-			return t
+			return
 		}
-		if row, ok := t.readRow(record, r, file, places, faults); ok {
+		if row, ok := t.readRow(record, r, first, faults); ok {
 			t.rows = append(t.rows, row)
 		} else {
 			t.Broken = true
 		}
 	}
-	if !header {
-		faults.Add(at(1, 0), "no header row, expected %s", strings.Join(known, ","))
-		t.Broken = true
-	}
-	return t
 }
 
 // Places of a file's column that is none of CSV.Columns.
@@ -132,10 +184,10 @@ const (
 )
 
 // readHeader finds the columns; nil where the table cannot be read by them.
-func (t *CSV) readHeader(record []string, r *csv.Reader, file string, known, required []string, faults *source.Collector) []int {
+func (t *CSV) readHeader(record []string, r *csv.Reader, known, required []string, faults *source.Collector) []int {
 	at := func(i int) source.Position {
 		line, column := r.FieldPos(i)
-		return source.Position{File: file, Line: line, Column: column}
+		return source.Position{File: t.file, Line: line, Column: column}
 	}
 	if len(record) > MaxColumns {
 		faults.Add(t.Header, "%d columns, at most %d are allowed", len(record), MaxColumns)
@@ -170,7 +222,7 @@ func (t *CSV) readHeader(record []string, r *csv.Reader, file string, known, req
 	}
 	for _, name := range required {
 		if !t.Has(name) {
-			faults.Add(source.Position{File: file, Line: t.Header.Line}, "column %s is missing", name)
+			faults.Add(source.Position{File: t.file, Line: t.Header.Line}, "column %s is missing", name)
 			good = false
 		}
 	}
@@ -180,33 +232,32 @@ func (t *CSV) readHeader(record []string, r *csv.Reader, file string, known, req
 	return places
 }
 
-// readRow takes over the cells of a row. A row may be shorter than the header,
-// as spreadsheets write it: the cells that are not there are blank.
-func (t *CSV) readRow(record []string, r *csv.Reader, file string, places []int, faults *source.Collector) (Row, bool) {
+// readRow takes over the cells of a row. A row may be shorter than the header, as
+// people and spreadsheets write it: the cells that are not there are blank. (A
+// blank cell hides no more than one that was emptied.)
+func (t *CSV) readRow(record []string, r *csv.Reader, first int, faults *source.Collector) (Row, bool) {
 	at := func(i int) source.Position {
 		line, column := r.FieldPos(i)
-		return source.Position{File: file, Line: line, Column: column}
+		return source.Position{File: t.file, Line: line + first - 1, Column: column}
 	}
-	row := Row{table: t, Pos: at(0), cells: make([]Cell, len(t.Columns))}
+	row := Row{table: t, Pos: at(0), cells: t.room()}
 	good := true
-	for i := range row.cells {
-		row.cells[i].Pos = row.Pos
-	}
 	if len(record) > MaxColumns {
 		faults.Add(row.Pos, "%d cells in a row, at most %d are allowed", len(record), MaxColumns)
 		return row, false
 	}
 	for i, cell := range record {
 		text := strings.TrimSpace(cell)
-		if i >= len(places) {
+		if i >= len(t.places) {
 			if text != "" {
 				faults.Add(at(i), "cell %s has no column in the header; a comma as decimal sign, or in a text without quotes, gives one cell too many", source.Quote(text))
 				return row, false
 			}
 			continue
 		}
-		if places[i] < 0 {
-			if text != "" && places[i] == unnamed {
+		place := t.places[i]
+		if place < 0 {
+			if text != "" && place == unnamed {
 				faults.Add(at(i), "cell %s stands in a column without a name", source.Quote(text))
 				good = false
 			}
@@ -217,23 +268,39 @@ func (t *CSV) readRow(record []string, r *csv.Reader, file string, places []int,
 			good = false
 			continue
 		}
-		row.cells[places[i]] = Cell{text, at(i)}
+		row.cells[place] = Cell{text, at(i)}
+	}
+	for i := range row.cells {
+		if row.cells[i].Pos.Line == 0 {
+			row.cells[i].Pos = row.Pos
+		}
 	}
 	return row, good
 }
 
-func recordCSVError(file string, content []byte, err error, faults *source.Collector) {
+// room gives the cells of a new row, out of a larger piece: a table has many.
+func (t *CSV) room() []Cell {
+	n := len(t.Columns)
+	if len(t.cells) < n {
+		t.cells = make([]Cell, n*min(max(1, len(t.rows)), 64))
+	}
+	cells := t.cells[:n:n]
+	t.cells = t.cells[n:]
+	return cells
+}
+
+func recordCSVError(file string, content []byte, first int, err error, faults *source.Collector) {
 	var e *csv.ParseError
 	if !errors.As(err, &e) {
 		faults.Add(source.Position{File: file}, "the table cannot be read: %v", err)
 		return
 	}
-	at := source.Position{File: file, Line: e.Line, Column: e.Column}
+	at := source.Position{File: file, Line: e.Line + first - 1, Column: e.Column}
 	switch {
 	case errors.Is(err, csv.ErrBareQuote):
 		faults.Add(at, `a quote (") inside a cell without quotes; quote the whole cell and write "" for a quote in it`)
 	case errors.Is(err, csv.ErrQuote):
-		at.Line = e.StartLine
+		at.Line = e.StartLine + first - 1
 		if e.StartLine != e.Line {
 			at.Column = 0
 		} else if open := openQuote(content, e.Line); open > 0 {

@@ -60,6 +60,9 @@ func CheckUTF8(file string, content []byte, faults *source.Collector) bool {
 // TextProblem says why a text may not stand in a data set: it holds a code that
 // a reader does not see, or it is too long. It is empty for a good text.
 func TextProblem(s string) string {
+	if len(s) <= MaxCell && plain(s) {
+		return ""
+	}
 	if !utf8.ValidString(s) {
 		return "not valid UTF-8"
 	}
@@ -77,4 +80,15 @@ func TextProblem(s string) string {
 		}
 	}
 	return ""
+}
+
+// plain tells whether a text is made of visible ASCII characters and blanks, as
+// most are.
+func plain(s string) bool {
+	for i := range len(s) {
+		if s[i] < ' ' || s[i] > '~' {
+			return false
+		}
+	}
+	return true
 }

@@ -152,6 +152,9 @@ func (e edit) apply(files map[string]string) error {
 		}
 	case e.old == "":
 		files[e.file] = e.now
+		if e.made != nil {
+			files[e.file] = e.made()
+		}
 	case strings.Count(files[e.file], e.old) != 1:
 		return fmt.Errorf("%s: %w: %q", e.file, errors.New("the text to replace does not occur exactly once"), e.old)
 	default:

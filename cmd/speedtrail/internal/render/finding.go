@@ -175,7 +175,7 @@ func reconciliation(c *assessment.Computed) string {
 	case c.Options.NoRequests:
 		return "The comparison with change requests was left out (--request none)."
 	case len(c.Requests) == 0:
-		return "No change request was added or altered, so that every change is outside."
+		return "No change request was added or altered; a change would be outside."
 	case len(c.Options.Requests) > 0:
 		return "The requests named with --request count."
 	}

@@ -8,6 +8,7 @@ import (
 	"html/template"
 	"io"
 	"strings"
+	"sync"
 
 	"speedtrail/history/assessment"
 	"speedtrail/schema/source"
@@ -29,10 +30,13 @@ var pageCSS string
 //go:embed page.js
 var pageJS string
 
-var pageTemplate = template.Must(template.New("page").Funcs(template.FuncMap{
-	"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
-	"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords,
-}).Parse(pageText))
+// Every start of the program would pay for what is parsed here.
+var pageTemplate = sync.OnceValue(func() *template.Template {
+	return template.Must(template.New("page").Funcs(template.FuncMap{
+		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
+		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords,
+	}).Parse(pageText))
+})
 
 // page is what the template shows.
 type page struct {
@@ -151,7 +155,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 			p.Track = append(p.Track, pageTrack{route.ID, route.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate})
 		}
 	}
-	return pageTemplate.Execute(w, p)
+	return pageTemplate().Execute(w, p)
 }
 
 // inlineHash names an inline part in a content security policy.

@@ -88,7 +88,7 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 			}
 			shown++
 			if k == 0 || x.Direction != route.Changes[k-1].Direction {
-				add("\n## %s %s, %s\n\n| from, km | to, km | length, m | before, km/h | after, km/h | step | trains | before by | after by |\n|--:|--:|--:|--:|--:|--:|---|---|---|\n", md(route.ID), md(route.Name), x.Direction)
+				add("\n## %s %s, %s\n\n| from, km | to, km | length, m | before, km/h | after, km/h | step | trains | before by | after by | declared by |\n|--:|--:|--:|--:|--:|--:|---|---|---|---|\n", md(route.ID), md(route.Name), x.Direction)
 			}
 			step := signed(x.After - x.Before)
 			if x.RunOut {

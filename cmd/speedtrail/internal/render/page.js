@@ -17,6 +17,16 @@
     train.addEventListener("change", show);
     route.addEventListener("change", show);
   }
+  // On paper nothing is folded away.
+  var folded = [];
+  window.addEventListener("beforeprint", function () {
+    folded = Array.prototype.slice.call(document.querySelectorAll("details:not([open])"));
+    folded.forEach(function (d) { d.open = true; });
+  });
+  window.addEventListener("afterprint", function () {
+    folded.forEach(function (d) { d.open = false; });
+    folded = [];
+  });
   var read = function (s) { return s ? s.split(";").map(function (p) { return p.split(",").map(Number); }) : []; };
   var at = function (list, s) { for (var i = 0; i < list.length; i++) if (s >= list[i][0] && s < list[i][1]) return list[i]; return null; };
   Array.prototype.forEach.call(document.querySelectorAll("svg.chart"), function (svg) {

@@ -42,6 +42,8 @@ func (p Profile) title() string {
 	t := fmt.Sprintf("%s %s, %s, train %s (%s), at %s", p.Route, p.RouteName, p.Direction, p.Train, p.TrainName, p.Revision)
 	if p.On != "" {
 		t += ", temporary restrictions of " + p.On
+	} else {
+		t += ", all temporary restrictions, whatever their dates"
 	}
 	return source.Visible(t)
 }
@@ -60,12 +62,12 @@ func ProfileText(w io.Writer, s Style, list ...Profile) error {
 		t.SetColumnConfigs([]table.ColumnConfig{
 			{Number: 1, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 2, Align: text.AlignRight, AlignHeader: text.AlignRight},
 			{Number: 3, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 4, Align: text.AlignRight, AlignHeader: text.AlignRight},
-			{Number: 5, WidthMax: max(30, s.Width-46), WidthMaxEnforcer: text.WrapSoft},
 		})
 		for _, piece := range p.Pieces {
 			lines := make([]string, len(piece.Sources))
 			for k, src := range piece.Sources {
-				lines[k] = source.Visible(src.Text())
+				// Wrapped here: the table would run the sources together.
+				lines[k] = strings.Join(wrap(source.Visible(src.Text()), max(30, s.Width-44)), "\n  ")
 			}
 			t.AppendRow(table.Row{minus(piece.From), minus(piece.To), metres(piece.End - piece.Start), piece.Speed, strings.Join(lines, "\n")})
 		}
@@ -103,7 +105,12 @@ func chart(w io.Writer, s Style, p Profile) error {
 	for _, piece := range p.Pieces {
 		top = max(top, piece.Speed)
 	}
-	top = (top + 19) / 20 * 20
+	for _, round := range []int{40, 80, 120, 160, 200, 240, 320, 400, 480, 600} {
+		if round >= top {
+			top = round
+			break
+		}
+	}
 	lowest := make([]int, columns)
 	k := 0
 	for c := range columns {

@@ -53,6 +53,7 @@ type SignOff struct {
 type Style struct {
 	Width int
 	Color bool
+	Brief bool // what decides only: verdict, findings, trains
 }
 
 // km writes millimetres as kilometres.

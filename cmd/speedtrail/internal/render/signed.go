@@ -14,6 +14,26 @@ func VerifyCommand(signer string, at time.Time) string {
 	return fmt.Sprintf("ssh-keygen -Y verify -f allowed_signers -I '%s' -n speedtrail-signoff -O verify-time=%s -s statement.sig < statement", signer, at.UTC().Format("20060102150405Z"))
 }
 
+// BlockWords says what keeps an assessment from being approved.
+func BlockWords(blocks []string) string {
+	var parts []string
+	for _, b := range blocks {
+		id, rest, _ := strings.Cut(b, ": ")
+		switch id {
+		case "base-not-approved":
+			b = "its base is not approved (base-not-approved)"
+		case "base-not-ancestor":
+			b = "its base is not part of its history (base-not-ancestor)"
+		case "unknown-preparer":
+			b = "nobody knows who prepared it (unknown-preparer): " + rest
+		case "no policy is anchored":
+			b = "no policy is anchored (speedtrail anchor puts one in force)"
+		}
+		parts = append(parts, b)
+	}
+	return strings.Join(parts, "; ")
+}
+
 // stateWords says where an assessment stands, with what is missing.
 func stateWords(r Record) string {
 	s := r.State
@@ -21,7 +41,7 @@ func stateWords(r Record) string {
 		s += "; still to sign: " + strings.Join(r.Missing, ", ")
 	}
 	if len(r.Blocks) > 0 {
-		s += "; kept from approval by " + strings.Join(r.Blocks, "; ")
+		s += "; kept from approval: " + BlockWords(r.Blocks)
 	}
 	if r.Superseded != 0 {
 		s += fmt.Sprintf("; superseded by assessment %d", r.Superseded)

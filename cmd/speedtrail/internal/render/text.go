@@ -22,6 +22,9 @@ func Text(w io.Writer, d *assessment.Document, r Record, s Style) error {
 	p.verdict()
 	p.findings()
 	p.trains()
+	if s.Brief {
+		return p.err
+	}
 	p.track()
 	p.changes()
 	p.declared()
@@ -121,7 +124,7 @@ func (p *textWriter) findings() {
 	if len(groups) == 0 {
 		return
 	}
-	p.heading("Findings")
+	p.heading("What needs eyes first")
 	for i, g := range groups {
 		if i > 0 {
 			p.printf("\n")
@@ -248,7 +251,7 @@ func (p *textWriter) family(r *assessment.Route, f family) {
 	remark := ""
 	switch {
 	case x.RunOut:
-		remark = "  run-out of the train length"
+		remark = "  run-out"
 	case f.first != x:
 		remark = "  by train length"
 	}

@@ -12,7 +12,7 @@ import (
 // declared sets what the requests declare against what was observed.
 func (p *textWriter) declared() {
 	p.heading("Declared against observed")
-	p.paragraph("", reconciliation(p.c))
+	p.paragraph("", reconciliation(p.c)+" Lengths are added up over both directions of travel.")
 	for _, q := range p.c.Requests {
 		for _, d := range q.Declares {
 			p.paragraph("  ", fmt.Sprintf("%s %s %s, km %s to %s, %s, %s", q.ID, d.Route, d.Direction, minus(d.From), minus(d.To), d.Effect, declaredTrains(d)))
@@ -64,7 +64,7 @@ func (p *textWriter) figures() {
 		t.AppendHeader(table.Row{"route", "direction", "train", "before", "after", "difference"})
 		t.SetColumnConfigs(right[2:])
 		for i, r := range f.Runs {
-			if i == mostTextFigures {
+			if i == mostTextFigures && len(f.Runs) > mostTextFigures+10 {
 				break
 			}
 			t.AppendRow(table.Row{source.Visible(r.Route), r.Direction, source.Visible(r.Train), clock(r.Before), clock(r.After), seconds(r.After - r.Before)})
@@ -84,7 +84,7 @@ func (p *textWriter) figures() {
 		p.paragraph("", curveWords)
 		list := curvesOfInterest(f.Curves)
 		for i, x := range list {
-			if i == mostTextFigures {
+			if i == mostTextFigures && len(list) > mostTextFigures+10 {
 				break
 			}
 			p.paragraph("  ", fmt.Sprintf("%s %s, km %s to %s (%s): %s", x.Route, directionWords(x.Direction), minus(x.From), minus(x.To), trainNames(p.c, x.Trains, 6), curveLine(x)))
@@ -94,7 +94,7 @@ func (p *textWriter) figures() {
 	if len(f.Short) > 0 {
 		p.heading("Raises too short to be used")
 		for i, x := range f.Short {
-			if i == mostTextFigures {
+			if i == mostTextFigures && len(f.Short) > mostTextFigures+10 {
 				break
 			}
 			p.paragraph("  ", fmt.Sprintf("%s %s, km %s to %s, %s: %s", x.Route, x.Direction, minus(x.From), minus(x.To), x.Train, shortLine(x)))
@@ -104,7 +104,7 @@ func (p *textWriter) figures() {
 }
 
 func (p *textWriter) more(n int) {
-	if n > mostTextFigures {
+	if n > mostTextFigures+10 {
 		p.printf("and %d more, in the other formats\n", n-mostTextFigures)
 	}
 }

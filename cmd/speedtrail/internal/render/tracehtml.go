@@ -6,6 +6,7 @@ import (
 	"html/template"
 	"io"
 	"strings"
+	"sync"
 
 	"speedtrail/history/assessment"
 	"speedtrail/schema/source"
@@ -14,7 +15,9 @@ import (
 //go:embed trace.html
 var traceText string
 
-var traceTemplate = template.Must(template.New("trace").Funcs(template.FuncMap{"visible": source.Visible}).Parse(traceText))
+var traceTemplate = sync.OnceValue(func() *template.Template {
+	return template.Must(template.New("trace").Funcs(template.FuncMap{"visible": source.Visible}).Parse(traceText))
+})
 
 const traceCSS = `
 .gap > * { color: #555; font-style: italic; } .aside > * { color: #555; }
@@ -106,7 +109,7 @@ func TraceHTML(w io.Writer, t *Trace) error {
 	for _, c := range t.Cut {
 		p.Cut = append(p.Cut, short(t.Commits[c].Hash))
 	}
-	return traceTemplate.Execute(w, p)
+	return traceTemplate().Execute(w, p)
 }
 
 // row writes what is said of a commit.

@@ -138,11 +138,14 @@ func trainSentence(c *assessment.Computed) string {
 
 // outsideSentence says how much lies outside what the requests declare.
 func outsideSentence(c *assessment.Computed) string {
-	outside, unseen := 0, 0
+	outside, unseen, first := 0, 0, ""
 	for _, f := range c.Findings {
 		switch f.ID {
 		case assessment.Outside:
-			outside++
+			if outside++; outside == 1 {
+				what, _, _ := strings.Cut(f.Text, ":")
+				first = " First: " + findingPlace(f) + ", " + what + "."
+			}
 		case assessment.Unseen:
 			unseen++
 		}
@@ -160,9 +163,9 @@ func outsideSentence(c *assessment.Computed) string {
 	case c.Options.NoRequests:
 		return "What requests declare was not looked at."
 	case outside > 0 && len(ids) == 0:
-		words = append(words, "No change request declares any of it.")
+		words = append(words, "No change request declares any of it."+first)
 	case outside > 0:
-		words = append(words, plural(outside, "change lies", "changes lie")+" outside "+declared+".")
+		words = append(words, plural(outside, "change lies", "changes lie")+" outside "+declared+"."+first)
 	case len(ids) > 0 && unseen == 0:
 		words = append(words, "Everything is inside "+declared+".")
 	}

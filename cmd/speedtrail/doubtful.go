@@ -1,0 +1,63 @@
+package main
+
+import (
+	"fmt"
+	"slices"
+
+	"speedtrail/diff/doubt"
+	"speedtrail/schema"
+	"speedtrail/schema/source"
+)
+
+// doubtfulNames lists what requests and acceptances name and a data set does not
+// have. It is no fault of the data set: old requests outlive routes, and only the
+// requests in play are held to it, by assess.
+func doubtfulNames(d *schema.Dataset) []string {
+	var list []string
+	add := func(at source.Position, format string, args ...any) {
+		list = append(list, at.String()+": "+fmt.Sprintf(format, args...))
+	}
+	trains := map[string]bool{}
+	for _, t := range d.Trains {
+		trains[t.ID] = true
+	}
+	span := func(at source.Position, what, id string, s schema.Span) {
+		r := routeByID(d, id)
+		if r == nil {
+			add(at, "%s names route %s, which is not in this revision", what, source.Quote(id))
+			return
+		}
+		from, errFrom := r.Track.Locate(s.From)
+		to, errTo := r.Track.Locate(s.To)
+		switch {
+		case errFrom != nil:
+			add(at, "%s: from_km %s is %v of route %s", what, s.From, errFrom, id)
+		case errTo != nil:
+			add(at, "%s: to_km %s is %v of route %s", what, s.To, errTo, id)
+		case from >= to:
+			add(at, "%s: to_km %s does not lie after from_km %s along route %s", what, s.To, s.From, id)
+		}
+	}
+	for _, q := range d.Requests {
+		what := "request " + q.ID
+		if len(q.Declare) == 0 {
+			add(q.Pos, "%s declares nothing", what)
+		}
+		for _, x := range q.Declare {
+			span(x.Pos, what, x.Route, x.Span)
+			for _, id := range x.Trains {
+				if !trains[id] {
+					add(x.Pos, "%s names train %s, which is not in this revision", what, source.Quote(id))
+				}
+			}
+		}
+	}
+	for _, a := range d.Accepted {
+		if !slices.Contains(doubt.IDs, a.Finding) {
+			add(a.Pos, "the entry accepts nothing: %s is none of the findings that can be accepted", source.Quote(a.Finding))
+			continue
+		}
+		span(a.Pos, "the entry", a.Route, a.Span)
+	}
+	return list
+}

@@ -1,0 +1,246 @@
+package revision
+
+import (
+	"bytes"
+	"fmt"
+	"io/fs"
+	"iter"
+
+	"github.com/go-git/go-git/v5/plumbing"
+)
+
+// Whoever goes through thousands of commits reads them and their trees with what
+// is here: without file systems, and without a look at what two trees have in
+// common.
+
+// Link is what a walk needs of a commit.
+type Link struct {
+	Tree    [20]byte
+	Parents [][20]byte // as far as this clone goes
+	When    int64      // of the committer, in seconds since 1970; 0 where it cannot be read
+	// Boundary tells that a shallow clone ends here: there were parents.
+	Boundary bool
+}
+
+// Link reads a commit.
+func (r *Repo) Link(commit [20]byte) (Link, error) {
+	data, err := r.read(commit, plumbing.CommitObject, maxCommit, "the history")
+	if err != nil {
+		return Link{}, err
+	}
+	l, err := parseLinks(data)
+	if err != nil {
+		return Link{}, corrupt(fmt.Sprintf("commit %s is malformed", plumbing.Hash(commit)), err)
+	}
+	out := Link{Tree: l.tree, When: l.when}
+	if r.shallow[commit] {
+		// What lies behind is cut off even where an object happens to be here.
+		out.Boundary = len(l.parents) > 0
+		return out, nil
+	}
+	out.Parents = make([][20]byte, len(l.parents))
+	for i, p := range l.parents {
+		out.Parents[i] = p
+	}
+	return out, nil
+}
+
+// TreeEntry is a line of a tree.
+type TreeEntry struct {
+	Name string
+	Mode fs.FileMode // as a Snapshot has it
+	Hash [20]byte
+}
+
+// TreeChange is a line that two trees do not have in common. A side that has no
+// line of this name and kind, folder or not, is without a Name.
+type TreeChange struct{ Old, Now TreeEntry }
+
+// Tree is a tree as it is stored. The zero Tree has no lines.
+type Tree struct{ data []byte }
+
+// Tree reads a tree, and lists what it has otherwise than another one, in the
+// order of trees. Only what differs is looked at: the other tree was read so, too.
+// The zero hash stands for the zero Tree; what names the commit in errors.
+func (r *Repo) Tree(tree [20]byte, before Tree, what string) (Tree, []TreeChange, error) {
+	var t Tree
+	if tree != plumbing.ZeroHash && tree != emptyTree {
+		var err error
+		if t.data, err = r.read(tree, plumbing.TreeObject, maxTree, what); err != nil {
+			return Tree{}, nil, err
+		}
+	}
+	list, err := t.changes(before)
+	if err != nil {
+		return Tree{}, nil, corrupt(fmt.Sprintf("tree %s is malformed", plumbing.Hash(tree)), err)
+	}
+	return t, list, nil
+}
+
+// rawEntry gives the length of the first entry, 0 where it is cut short.
+func rawEntry(data []byte) int {
+	end := bytes.IndexByte(data, 0)
+	if end < 0 || len(data)-end-1 < hashSize {
+		return 0
+	}
+	return end + 1 + hashSize
+}
+
+// parseEntry reads an entry of its own.
+func parseEntry(raw []byte) (treeEntry, error) {
+	mode, rest, err := parseMode(raw)
+	if err != nil {
+		return treeEntry{}, err
+	}
+	n := len(rest) - hashSize - 1
+	if n < 0 {
+		return treeEntry{}, fmt.Errorf("an entry is cut short")
+	}
+	e := treeEntry{name: string(rest[:n]), mode: mode}
+	copy(e.hash[:], rest[n+1:])
+	return e, checkName(e.name)
+}
+
+func (e treeEntry) public() TreeEntry { return TreeEntry{e.name, goMode(e.mode), e.hash} }
+
+// changes compares two trees, of which the first is trusted. It refuses what
+// parseTree refuses.
+func (t Tree) changes(before Tree) ([]TreeChange, error) {
+	var list []TreeChange
+	a, b := before.data, t.data
+	last, ordered := "", true // key of the last entry of t; ordered: it stands in before, too
+	var lastRaw []byte
+	var added []string // names that before does not have, or has for another kind
+	var old treeEntry
+	oldLen, oldKey := 0, ""
+	for len(a) > 0 || len(b) > 0 {
+		n := rawEntry(b)
+		if len(b) > 0 && n == 0 {
+			return nil, fmt.Errorf("the last entry is cut short")
+		}
+		if n > 0 && len(a) >= n && bytes.Equal(a[:n], b[:n]) {
+			if !ordered {
+				e, err := parseEntry(b[:n])
+				if err != nil {
+					return nil, err
+				}
+				if sortKey(e) <= last {
+					return nil, fmt.Errorf("entry %q is out of order", e.name)
+				}
+				ordered = true
+			}
+			lastRaw, a, b, oldLen = b[:n], a[n:], b[n:], 0
+			continue
+		}
+		if len(a) > 0 && oldLen == 0 {
+			var err error
+			if oldLen = rawEntry(a); oldLen == 0 {
+				return nil, fmt.Errorf("an entry is cut short")
+			}
+			if old, err = parseEntry(a[:oldLen]); err != nil {
+				return nil, err
+			}
+			oldKey = sortKey(old)
+		}
+		if n == 0 {
+			list = append(list, TreeChange{Old: old.public()})
+			a, oldLen = a[oldLen:], 0
+			continue
+		}
+		e, err := parseEntry(b[:n])
+		if err != nil {
+			return nil, err
+		}
+		key := sortKey(e)
+		if len(a) > 0 && oldKey < key {
+			list = append(list, TreeChange{Old: old.public()})
+			a, oldLen = a[oldLen:], 0
+			continue
+		}
+		if ordered && lastRaw != nil {
+			before, err := parseEntry(lastRaw)
+			if err != nil {
+				return nil, err
+			}
+			last = sortKey(before)
+		}
+		if key <= last {
+			return nil, fmt.Errorf("entry %q is out of order", e.name)
+		}
+		last, ordered, lastRaw = key, false, nil
+		if len(a) > 0 && oldKey == key {
+			list = append(list, TreeChange{old.public(), e.public()})
+			a, oldLen = a[oldLen:], 0
+		} else {
+			list = append(list, TreeChange{Now: e.public()})
+			added = append(added, e.name)
+		}
+		b = b[n:]
+	}
+	return list, t.once(added)
+}
+
+// once checks that names do not stand in the tree for a folder and for something
+// else, too.
+func (t Tree) once(names []string) error {
+	if len(names) == 0 {
+		return nil
+	}
+	count := make(map[string]int, len(names))
+	for _, n := range names {
+		count[n] = 0
+	}
+	for e := range t.All() {
+		if n, ok := count[e.Name]; ok {
+			if n > 0 {
+				return fmt.Errorf("entry %q occurs twice", e.Name)
+			}
+			count[e.Name]++
+		}
+	}
+	return nil
+}
+
+// All runs over the lines in the order of trees.
+func (t Tree) All() iter.Seq[TreeEntry] {
+	return func(yield func(TreeEntry) bool) {
+		for data := t.data; len(data) > 0; {
+			n := rawEntry(data)
+			if n == 0 {
+				return
+			}
+			e, err := parseEntry(data[:n])
+			if err != nil || !yield(e.public()) {
+				return
+			}
+			data = data[n:]
+		}
+	}
+}
+
+// Find finds a line by its name.
+func (t Tree) Find(name string) (TreeEntry, bool) {
+	for e := range t.All() {
+		if e.Name == name {
+			return e, true
+		}
+	}
+	return TreeEntry{}, false
+}
+
+// Folder gives the files of a tree, as Snapshot gives those of a commit. It is for
+// trees that are looked at once: they are not kept.
+func (r *Repo) Folder(tree [20]byte, what string) (fs.FS, error) {
+	s := &snapshot{repo: r, root: treeEntry{name: ".", mode: modeTree, hash: tree}, what: what}
+	if tree == emptyTree {
+		return s, nil
+	}
+	data, err := r.read(tree, plumbing.TreeObject, maxTree, what)
+	if err != nil {
+		return nil, err
+	}
+	if s.top, err = parseTree(data); err != nil {
+		return nil, corrupt(fmt.Sprintf("tree %s is malformed", plumbing.Hash(tree)), err)
+	}
+	return s, nil
+}
