@@ -59,3 +59,51 @@ func words(command string) []string {
 	}
 	return list
 }
+
+// The files that the README shows are taken without a fault, in the data set of
+// the demonstration.
+func TestReadmeFiles(t *testing.T) {
+	text, err := os.ReadFile("../../README.md")
+	if err != nil {
+		t.Fatal(err)
+	}
+	dir := filepath.Join(t.TempDir(), "demo")
+	var out, remarks bytes.Buffer
+	if status := run(t.Context(), []string{"demo", dir}, nil, &out, &remarks); status != statusDone {
+		t.Fatalf("status %d: %s", status, &remarks)
+	}
+	write := func(name, content string) {
+		if err := os.WriteFile(filepath.Join(dir, name), []byte(content), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	for name, first := range map[string]string{
+		"requests/CR-2701.toml": `id = "CR-2701"`, "accepted.toml": "[[accepted]]",
+		"dataset.toml": "format = 1\n    name =", "signoff.toml": "format = 1\n\n    [[person]]",
+	} {
+		_, rest, ok := strings.Cut(string(text), "\n\n    "+first)
+		if !ok {
+			t.Fatalf("the README shows no %s", name)
+		}
+		content := first
+		for _, line := range strings.SplitAfter(rest, "\n") {
+			if line != "\n" && content != first && !strings.HasPrefix(line, "    ") {
+				break
+			}
+			content += line
+		}
+		write(name, strings.ReplaceAll(content, "\n    ", "\n"))
+	}
+	keys, err := os.ReadFile(filepath.Join(dir, "allowed_signers"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, key, _ := strings.Cut(string(keys), "ssh-ed25519 ")
+	key, _, _ = strings.Cut(key, "\n")
+	write("allowed_signers", "m.vane@example.org ssh-ed25519 "+key+"\n")
+	out.Reset()
+	remarks.Reset()
+	if status := run(t.Context(), []string{"--repo", dir, "validate"}, nil, &out, &remarks); status != statusDone || strings.Contains(remarks.String(), "CR-2701") || strings.Contains(remarks.String(), "accepted.toml") {
+		t.Errorf("status %d\n%s%s", status, &out, &remarks)
+	}
+}

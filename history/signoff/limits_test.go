@@ -1,0 +1,62 @@
+package signoff
+
+import (
+	"errors"
+	"strings"
+	"testing"
+)
+
+// A reason, a statement and a signature of as many bytes as are allowed, and of
+// one more.
+func TestLimits(t *testing.T) {
+	good := example(SignOff)
+	good.Reason = strings.Repeat("ö", MaxReason/2)
+	text, err := good.Text()
+	if err != nil {
+		t.Fatal(err)
+	}
+	if again, err := Parse(text); err != nil || again.Reason != good.Reason {
+		t.Errorf("a reason of %d bytes: %v", MaxReason, err)
+	}
+	good.Reason += "x"
+	want := "malformed statement: the reason has 501 bytes, at most 500 are allowed"
+	if _, err := good.Text(); !errors.Is(err, ErrMalformed) || err.Error() != want {
+		t.Errorf("written: %v, want %s", err, want)
+	}
+	if _, err := Parse([]byte(strings.Replace(string(text), "reason: ", "reason: x", 1))); !errors.Is(err, ErrMalformed) || err.Error() != want {
+		t.Errorf("read: %v, want %s", err, want)
+	}
+
+	good.Reason = "r"
+	good.Folder = "f"
+	if text, err = good.Text(); err != nil {
+		t.Fatal(err)
+	}
+	good.Folder = strings.Repeat("f", MaxStatement-len(text)+1)
+	if text, err = good.Text(); err != nil || len(text) != MaxStatement {
+		t.Fatalf("%d bytes, %v", len(text), err)
+	}
+	if again, err := Parse(text); err != nil || again.Folder != good.Folder {
+		t.Errorf("a statement of %d bytes: %v", len(text), err)
+	}
+	good.Folder += "f"
+	want = "malformed statement: longer than 65536 bytes"
+	if _, err := good.Text(); err == nil || err.Error() != want {
+		t.Errorf("written: %v, want %s", err, want)
+	}
+	if _, err := Parse([]byte(strings.Replace(string(text), "folder: ", "folder: f", 1))); err == nil || err.Error() != want {
+		t.Errorf("read: %v, want %s", err, want)
+	}
+
+	// No key of today fills a signature up to its limit; at it the form is looked
+	// at, past it only the length.
+	padded := func(n int) []byte {
+		return []byte(armorBegin + strings.Repeat("A", n-len(armorBegin)-len(armorEnd)) + armorEnd)
+	}
+	for n, past := range map[int]bool{MaxSignature: false, MaxSignature + 1: true} {
+		_, _, err := Key(padded(n))
+		if !errors.Is(err, ErrSignature) || strings.Contains(err.Error(), "longer than 16384 bytes") != past {
+			t.Errorf("%d bytes: %v", n, err)
+		}
+	}
+}
