@@ -16,6 +16,7 @@ import (
 	"speedtrail/history/canon"
 	"speedtrail/history/chain"
 	"speedtrail/history/ledger"
+	"speedtrail/schema/source"
 )
 
 // Bounds of what is imported.
@@ -38,7 +39,7 @@ type exported struct {
 // them anyone can check the chain (package chain has the algorithm), and Import
 // makes a ledger with the same head.
 func Export(ctx context.Context, l *ledger.Ledger, w io.Writer) error {
-	b := bufio.NewWriterSize(w, 1<<16)
+	b := bufio.NewWriterSize(source.InertJSON(w), 1<<16)
 	for e, err := range l.Entries(ctx, 1) {
 		if err != nil {
 			return err

@@ -132,7 +132,9 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 		Preparers: []assessment.Person{}, Options: options, At: time.Now(), BaseIsAncestor: true,
 	}
 	if !to.isWorkingTree() {
-		in.At = to.commit.Committer.When
+		if in.At = to.commit.Committer.When; in.At.IsZero() {
+			return nil, badCall("make a new commit of the same content", "the commit %s has no time that can be read, and the terms of restrictions and acceptances are compared with it", to.commit.Hash)
+		}
 	}
 	if err := a.descent(ctx, repo, from, to, &in); err != nil {
 		return nil, err

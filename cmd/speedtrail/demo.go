@@ -13,6 +13,7 @@ import (
 	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/history/assessment"
 	"speedtrail/history/compose"
+	"speedtrail/schema/source"
 )
 
 func (a *app) demoCommand() *cobra.Command {
@@ -36,7 +37,8 @@ when that is done, whatever the findings.`,
 	}
 }
 
-func (a *app) demo(ctx context.Context, dir string) error {
+func (a *app) demo(ctx context.Context, dir string) (err error) {
+	undo := compose.Undo(dir)
 	network, err := demo.Write(ctx, dir)
 	if errors.Is(err, compose.ErrNotEmpty) {
 		return badCall("name a folder that is not there yet: speedtrail demo DIR", "%s is not empty and was left alone", dir)
@@ -44,7 +46,13 @@ func (a *app) demo(ctx context.Context, dir string) error {
 	if err != nil {
 		return fmt.Errorf("the demonstration was not written: %w", err)
 	}
-	fmt.Fprintf(a.out, "Wrote an invented network with its history to %s\n\n", dir)
+	// Half a demonstration would be of no use, and be in the way of the next.
+	defer func() {
+		if err != nil {
+			undo()
+		}
+	}()
+	fmt.Fprintf(a.out, "Wrote an invented network with its history to %s\n\n", source.Visible(dir))
 	a.repo, a.format = dir, "text"
 	repo, err := a.openRepo()
 	if err != nil {
@@ -72,7 +80,7 @@ func (a *app) demo(ctx context.Context, dir string) error {
 	if err := a.render(doc, rec); err != nil {
 		return err
 	}
-	fmt.Fprintf(a.out, "\nThe change report: %s (open it in a browser)\n", file)
+	fmt.Fprintf(a.out, "\nThe change report: %s (open it in a browser)\n", source.Visible(file))
 	a.printHints(network)
 	return nil
 }

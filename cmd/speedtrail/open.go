@@ -75,11 +75,19 @@ func (s side) revisionOf() assessment.Revision {
 	}
 	return assessment.Revision{
 		Commit:    s.commit.Hash,
-		Committed: s.commit.Committer.When.UTC().Format(time.RFC3339),
+		Committed: instant(s.commit.Committer.When),
 		Subject:   validText(s.commit.Subject),
 		Author:    person(s.commit.Author),
 		Tree:      content(s.files),
 	}
+}
+
+// instant writes a time of a commit, empty where it has none.
+func instant(t time.Time) string {
+	if t.IsZero() {
+		return ""
+	}
+	return t.UTC().Format(time.RFC3339)
 }
 
 // content gives the hash of a folder's Git tree.

@@ -6,7 +6,6 @@ import (
 	"io"
 	"path/filepath"
 	"runtime/debug"
-	"time"
 
 	"github.com/spf13/cobra"
 
@@ -118,7 +117,7 @@ func (a *app) trace(ctx context.Context, call traceCall) error {
 		return err
 	}
 	t.doc.Revision = render.TraceRevision{
-		Commit: newest.Hash, Committed: newest.Committer.When.UTC().Format(time.RFC3339), Typed: validText(call.rev),
+		Commit: newest.Hash, Committed: instant(newest.Committer.When), Typed: validText(call.rev),
 	}
 	if call.at != "" {
 		err = t.point()

@@ -134,6 +134,9 @@ func (t *tracing) value(v trace.Value) render.TraceValue {
 
 // committed writes when a commit was made.
 func (t *tracing) committed(c int32) string {
+	if t.h.Commits[c].When == 0 {
+		return ""
+	}
 	return time.Unix(t.h.Commits[c].When, 0).UTC().Format(time.RFC3339)
 }
 
@@ -246,8 +249,8 @@ func (t *tracing) describe(ctx context.Context) error {
 			return err
 		}
 		out := render.TraceCommit{
-			Hash: commit.Hash, Author: person(commit.Author), Authored: commit.Author.When.UTC().Format(time.RFC3339),
-			Committed: commit.Committer.When.UTC().Format(time.RFC3339), Subject: validText(commit.Subject),
+			Hash: commit.Hash, Author: person(commit.Author), Authored: instant(commit.Author.When),
+			Committed: instant(commit.Committer.When), Subject: validText(commit.Subject),
 			Requests: []render.TraceRequest{}, Assessments: assessed(c),
 		}
 		if base, ok := t.h.Base(c); ok && changed[i] {

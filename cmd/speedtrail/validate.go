@@ -2,7 +2,6 @@ package main
 
 import (
 	"context"
-	"encoding/json"
 	"errors"
 	"fmt"
 	"io"
@@ -96,15 +95,13 @@ func (a *app) printValidation(w io.Writer, s side, data *schema.Dataset, faults 
 		for _, f := range faults.List {
 			v.Faults = append(v.Faults, validationFault{f.File, f.Line, f.Column, f.Problem})
 		}
-		e := json.NewEncoder(w)
-		e.SetIndent("", "  ")
-		return e.Encode(v)
+		return indentedJSON(w, v)
 	}
 	if faults.Count > 0 {
 		_, err := fmt.Fprintln(w, faults.Error())
 		return err
 	}
-	_, err := fmt.Fprintf(w, "%s: no fault in %q (%d %s, %d reference %s, %d change %s)\n", s.label(), data.Name,
+	_, err := fmt.Fprintf(w, "%s: no fault in %q (%d %s, %d reference %s, %d change %s)\n", source.Visible(s.label()), data.Name,
 		len(data.Routes), plural(len(data.Routes), "route", "routes"),
 		len(data.Trains), plural(len(data.Trains), "train", "trains"),
 		len(data.Requests), plural(len(data.Requests), "request", "requests"))

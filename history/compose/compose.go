@@ -57,17 +57,16 @@ func Write(ctx context.Context, dir string, history []Commit) (err error) {
 		return err
 	}
 	entries, err := os.ReadDir(dir)
-	existed := err == nil
+	undo := Undo(dir)
 	switch {
 	case err == nil && len(entries) > 0:
 		return ErrNotEmpty
 	case err != nil && !errors.Is(err, os.ErrNotExist):
 		return err
 	}
-	made := missing(dir)
 	defer func() {
 		if err != nil {
-			remove(dir, existed, made)
+			undo()
 		}
 	}()
 	if err := os.MkdirAll(dir, 0o755); err != nil {
@@ -121,19 +120,24 @@ func missing(dir string) []string {
 	}
 }
 
-// remove takes away what was written. An empty folder that was there before
-// stays; of those above that were made, the ones that are empty go.
-func remove(dir string, existed bool, made []string) {
-	if !existed {
-		os.RemoveAll(dir)
-		for _, name := range made {
-			os.Remove(name)
+// Undo gives a function that takes away what is written into dir from now on,
+// for a dir that is empty or not there. An empty folder that is there stays; of
+// those above that are made, the ones that are empty go.
+func Undo(dir string) func() {
+	_, err := os.Lstat(dir)
+	existed, made := err == nil, missing(dir)
+	return func() {
+		if !existed {
+			os.RemoveAll(dir)
+			for _, name := range made {
+				os.Remove(name)
+			}
+			return
 		}
-		return
-	}
-	entries, _ := os.ReadDir(dir)
-	for _, e := range entries {
-		os.RemoveAll(filepath.Join(dir, e.Name()))
+		entries, _ := os.ReadDir(dir)
+		for _, e := range entries {
+			os.RemoveAll(filepath.Join(dir, e.Name()))
+		}
 	}
 }
 

@@ -65,6 +65,11 @@ type builder struct {
 
 func (b *builder) begin(ctx context.Context) error {
 	b.ctx = ctx
+	// Versions come in the order of hashes: with the driver's cache of 2 MB, a long
+	// history would read and write the same pages again and again.
+	if err := b.x.exec(ctx, "PRAGMA cache_size = -8192"); err != nil {
+		return err
+	}
 	if err := b.x.conn.QueryRowContext(ctx, greatestVersion).Scan(&b.known); err != nil {
 		return err
 	}

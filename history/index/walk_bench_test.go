@@ -191,8 +191,8 @@ func (r *everything) route(tree [20]byte) error {
 
 // BenchmarkGrowth measures the whole process of a first trace, which makes the
 // index, for histories of once, four and sixteen times the routes, the commits
-// and the trains of a small one. An exponent of 1 is linear: it is that of the
-// processor time from four times to sixteen.
+// and the trains of a small one. No peak is below that of this process itself, as
+// the system counts.
 //
 //	go test ./history/index -run '^$' -bench Growth -benchtime 1x -args -past-routes 125 -past-commits 1250
 func BenchmarkGrowth(b *testing.B) {

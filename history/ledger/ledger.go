@@ -207,18 +207,8 @@ func (l *Ledger) prepare(ctx context.Context, o Options) error {
 	if err != nil {
 		return err
 	}
-	var body firstBody
-	if err := canon.Unmarshal(first.Body, &body); err != nil || first.Kind != chain.Ledger {
-		return fail(ErrForeign, errors.New("the first entry names no ledger"))
-	}
-	if body.Format != firstFormat {
-		return fail(ErrNewer, fmt.Errorf("entries of form %d, this version knows %d", body.Format, firstFormat))
-	}
-	if id, err := hex.DecodeString(body.ID); err != nil || len(id) != 16 || hex.EncodeToString(id) != body.ID {
-		return fail(ErrForeign, errors.New("the first entry has no id of 32 hexadecimal digits"))
-	}
-	l.id = body.ID
-	return nil
+	l.id, err = idOf(first)
+	return err
 }
 
 func (l *Ledger) exec(ctx context.Context, statements ...string) error {
@@ -409,4 +399,19 @@ func (l *Ledger) Close() error {
 		err = l.conn.Close()
 	}
 	return errors.Join(err, l.db.Close())
+}
+
+// idOf gives the id of the ledger that a first entry begins.
+func idOf(first chain.Entry) (string, error) {
+	var body firstBody
+	if err := canon.Unmarshal(first.Body, &body); err != nil || first.Kind != chain.Ledger {
+		return "", fail(ErrForeign, errors.New("the first entry names no ledger"))
+	}
+	if body.Format != firstFormat {
+		return "", fail(ErrNewer, fmt.Errorf("entries of form %d, this version knows %d", body.Format, firstFormat))
+	}
+	if id, err := hex.DecodeString(body.ID); err != nil || len(id) != 16 || hex.EncodeToString(id) != body.ID {
+		return "", fail(ErrForeign, errors.New("the first entry has no id of 32 hexadecimal digits"))
+	}
+	return body.ID, nil
 }

@@ -74,6 +74,11 @@ func Restore(ctx context.Context, file string, entries iter.Seq2[Restored, error
 			if (e.Seq == 1) != (e.Kind == chain.Ledger) {
 				return fmt.Errorf("entry %d is of kind %s", e.Seq, e.Kind)
 			}
+			if e.Seq == 1 {
+				if _, err := idOf(e.Entry); err != nil {
+					return err
+				}
+			}
 			if err := l.insertEntry(ctx, e.Entry); err != nil {
 				return err
 			}

@@ -3,6 +3,7 @@ package render
 import (
 	"encoding/csv"
 	"io"
+	"regexp"
 	"strconv"
 	"strings"
 
@@ -15,12 +16,14 @@ func harmless(s string) string {
 	if s == "" || !strings.ContainsRune("=+-@\t\r\n", rune(s[0])) {
 		return s
 	}
-	number, _, _ := strings.Cut(s, "#")
-	if _, err := strconv.ParseFloat(number, 64); err == nil && s[0] == '-' {
+	if negative.MatchString(s) {
 		return s
 	}
 	return "'" + s
 }
+
+// negative is a number or position below 0.
+var negative = regexp.MustCompile(`^-[0-9]+(\.[0-9]+)?(#[0-9]+)?$`)
 
 func yesNo(b bool) string {
 	if b {

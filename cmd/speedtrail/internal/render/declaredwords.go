@@ -48,8 +48,11 @@ func declaredWords(c *assessment.Computed, r *assessment.Route, pieces int) stri
 
 // isOutside tells whether some of a change is outside all declarations.
 func isOutside(c *assessment.Computed, r *assessment.Route, pieces int) bool {
+	if c.Options.NoRequests { // then there are no pieces
+		return false
+	}
 	list := r.Pieces[pieces]
-	return !c.Options.NoRequests && (len(list) == 0 || slices.ContainsFunc(list, func(p assessment.Piece) bool { return p.By < 0 }))
+	return len(list) == 0 || slices.ContainsFunc(list, func(p assessment.Piece) bool { return p.By < 0 })
 }
 
 // weight is what a stretch is sorted by for a reviewer.

@@ -7,6 +7,7 @@ import (
 	"github.com/go-json-experiment/json/jsontext"
 
 	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
 )
 
 // Formats of the JSON reports; their schemas stand under schema/json.
@@ -49,7 +50,7 @@ func ProfileJSON(w io.Writer, list ...Profile) error {
 
 // indented writes a value for people; a list without elements is an empty array.
 func indented(w io.Writer, v any) error {
-	if err := json.MarshalWrite(w, v, json.Deterministic(true), jsontext.WithIndent("  ")); err != nil {
+	if err := json.MarshalWrite(source.InertJSON(w), v, json.Deterministic(true), jsontext.WithIndent("  ")); err != nil {
 		return err
 	}
 	_, err := io.WriteString(w, "\n")

@@ -1,6 +1,7 @@
 package render
 
 import (
+	"cmp"
 	"fmt"
 	"io"
 	"strings"
@@ -100,7 +101,7 @@ func details(r assessment.Revision) string {
 	if r.Commit == "" {
 		return ""
 	}
-	return ", " + r.Committed[:min(10, len(r.Committed))] + ", " + r.Subject
+	return ", " + cmp.Or(date(r.Committed), noTime) + ", " + r.Subject
 }
 
 func people(list []assessment.Person) string {

@@ -7,6 +7,7 @@ import (
 	"strings"
 
 	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
 )
 
 const traceJSONFormat = "speedtrail-trace 1"
@@ -151,7 +152,7 @@ func TraceCSV(w io.Writer, t *Trace) error {
 	out := csv.NewWriter(w)
 	commit := func(i int) []string {
 		c := &t.Commits[i]
-		return []string{c.Hash, harmless(c.Author.Name), c.Authored, c.Committed, harmless(c.Subject)}
+		return []string{c.Hash, harmless(source.Visible(c.Author.Name)), c.Authored, c.Committed, harmless(source.Visible(c.Subject))}
 	}
 	tail := func(i int) []string {
 		c := &t.Commits[i]

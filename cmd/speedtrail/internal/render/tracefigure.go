@@ -37,10 +37,14 @@ func instant(text string) int64 {
 	return t.Unix()
 }
 
+// date gives the day of an instant, empty for none.
 func date(text string) string {
 	d, _, _ := strings.Cut(text, "T")
 	return d
 }
+
+// noTime stands in the place of the time of a commit that has none.
+const noTime = "no time"
 
 // timeChart draws the speed at a point over time, along the line of first
 // parents.

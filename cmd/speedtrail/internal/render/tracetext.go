@@ -1,6 +1,7 @@
 package render
 
 import (
+	"cmp"
 	"fmt"
 	"io"
 	"strconv"
@@ -100,8 +101,7 @@ func (t *Trace) gapsText(b *strings.Builder, s Style, gaps []TraceGap) {
 }
 
 func day(c *TraceCommit) string {
-	d, _, _ := strings.Cut(c.Committed, "T")
-	return d
+	return cmp.Or(date(c.Committed), noTime)
 }
 
 // indent writes a text over several lines, each behind a margin.
