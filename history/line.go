@@ -22,15 +22,24 @@ import (
 // entries that do not count, with the reason; they do not stop the reading.
 func ReadLine(ctx context.Context, l *ledger.Ledger) (line *approval.Line, problems []error, err error) {
 	line = approval.New(l.ID())
-	for e, err := range l.Entries(ctx, 1) {
+	problems, err = ReadOn(ctx, l, line)
+	if err != nil {
+		return nil, nil, err
+	}
+	return line, problems, nil
+}
+
+// ReadOn follows a line through the entries that came after those it knows.
+func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problems []error, err error) {
+	for e, err := range l.Entries(ctx, line.Head().Seq+1) {
 		if err != nil {
-			return nil, nil, err
+			return nil, err
 		}
 		var a *approval.Assessment
 		if e.Kind == chain.Assessment {
 			number, err := l.NumberOf(ctx, e.Seq)
 			if err != nil {
-				return nil, nil, err
+				return nil, err
 			}
 			doc, err := assessment.Decode(e.Body)
 			if err == nil {
@@ -44,7 +53,7 @@ func ReadLine(ctx context.Context, l *ledger.Ledger) (line *approval.Line, probl
 			problems = append(problems, fmt.Errorf("entry %d (%s): %w", e.Seq, e.Kind, err))
 		}
 	}
-	return line, problems, nil
+	return problems, nil
 }
 
 // AssessmentOf gives what the line of approval needs of an assessment.

@@ -214,7 +214,7 @@ func (a *app) record(ctx context.Context, doc *assessment.Document) (render.Reco
 	} else {
 		a.remark("assessment %d holds this result already, nothing was added; head of the ledger %s", number, head)
 	}
-	if line, _, err = history.ReadLine(ctx, l); err != nil {
+	if _, err := history.ReadOn(ctx, l, line); err != nil {
 		return render.Record{}, err
 	}
 	return recordOf(line, l.ID(), number, digest), nil
