@@ -276,8 +276,6 @@ func TestReaderAmongWriters(t *testing.T) {
 	}
 }
 
-const countedLate = "verify counts the rows of the tables after it has read the entries, without one view of both; what others record in between is called a fault of the ledger"
-
 // The same with others coming in at every single moment at which they can: after
 // each time that the reader has given up its lock.
 func TestReaderBetweenReads(t *testing.T) {
