@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"path/filepath"
+	"strings"
 
 	"github.com/spf13/cobra"
 
@@ -89,7 +90,7 @@ func (a *app) demo(ctx context.Context, dir string) (err error) {
 func (a *app) printHints(network demo.Repository) {
 	fmt.Fprintf(a.out, "\nWhat to look at\n")
 	for _, h := range network.Look {
-		fmt.Fprintf(a.out, "\n%s\n", wrap("- "+h.Text, 78))
+		fmt.Fprintf(a.out, "\n- %s\n", strings.ReplaceAll(wrap(h.Text, 76), "\n", "\n  "))
 		if h.Command != "" {
 			fmt.Fprintf(a.out, "      %s\n", h.Command)
 		}
