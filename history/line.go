@@ -19,7 +19,8 @@ import (
 )
 
 // ReadLine follows the line of approval through a ledger. problems are the
-// entries that do not count, with the reason; they do not stop the reading.
+// entries that do not count, with the reason; they do not stop the reading. An
+// entry that does not follow in the chain is an error of class ledger.ErrDamaged.
 func ReadLine(ctx context.Context, l *ledger.Ledger) (line *approval.Line, problems []error, err error) {
 	line = approval.New(l.ID())
 	problems, err = ReadOn(ctx, l, line)
@@ -29,11 +30,16 @@ func ReadLine(ctx context.Context, l *ledger.Ledger) (line *approval.Line, probl
 	return line, problems, nil
 }
 
-// ReadOn follows a line through the entries that came after those it knows.
+// ReadOn follows a line through the entries that came after those it knows. An
+// entry that does not follow in the chain is an error of class ledger.ErrDamaged.
 func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problems []error, err error) {
 	for e, err := range l.Entries(ctx, line.Head().Seq+1) {
 		if err != nil {
 			return nil, err
+		}
+		// Nobody is shown, and nobody signs, what is not what was recorded.
+		if err := chain.Check(line.Head(), e); err != nil {
+			return nil, ledger.Damaged(err)
 		}
 		var a *approval.Assessment
 		if e.Kind == chain.Assessment {

@@ -315,6 +315,9 @@ func (v *verifier) git() error {
 				v.lock.Unlock()
 			case digest != d.digest:
 				v.problem(d.entry, "recompute", "computed anew the assessment has the digest %s, recorded is %s", digest, d.digest)
+				v.lock.Lock()
+				failed++
+				v.lock.Unlock()
 			}
 			v.lock.Lock()
 			defer v.lock.Unlock()

@@ -196,7 +196,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 	}
 	p := line.Newest(folder)
 	if p.Parsed == nil {
-		return refused(fmt.Errorf("no policy is anchored for the folder %s", folder))
+		return refused(fmt.Errorf("no policy is anchored for the folder %s; speedtrail anchor puts one in force", folder))
 	}
 	key, done, err := s.signerKey(a, p.Parsed)
 	if err != nil {

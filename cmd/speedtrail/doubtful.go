@@ -24,7 +24,7 @@ func doubtfulNames(d *schema.Dataset) []string {
 	span := func(at source.Position, what, id string, s schema.Span) {
 		r := routeByID(d, id)
 		if r == nil {
-			add(at, "%s names route %s, which is not in this revision", what, source.Quote(id))
+			add(at, "%s names route %s, which is not in this revision; assess refuses a request in play that names what neither side has", what, source.Quote(id))
 			return
 		}
 		from, errFrom := r.Track.Locate(s.From)

@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"fmt"
 
 	"github.com/spf13/cobra"
 
@@ -72,6 +73,9 @@ func recorded(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.
 	line, _, err := history.ReadLine(ctx, l)
 	if err != nil {
 		return nil, render.Record{}, err
+	}
+	if x := line.Assessment(number); x == nil || x.Digest != row.Digest {
+		return nil, render.Record{}, ledger.Damaged(fmt.Errorf("the digest in the row of assessment %d is not that of its entry", number))
 	}
 	return doc, recordOf(line, l.ID(), number, row.Digest), nil
 }

@@ -88,6 +88,9 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	if err != nil {
 		return err
 	}
+	if x := line.Assessment(number); x == nil || x.Digest != row.Digest {
+		return ledger.Damaged(fmt.Errorf("the digest in the row of assessment %d is not that of its entry", number))
+	}
 	if s.statement != "" {
 		brought, err := s.brought()
 		if err != nil {
@@ -118,6 +121,11 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 		return err
 	}
 	a.showForSigning(doc, x)
+	for _, role := range x.Policy.Parsed.Roles {
+		if role.Name != s.role && x.Policy.Parsed.Independent(role.Name, s.role) && role.May(statement.Signer) {
+			a.remark("who signs as %s cannot sign this data as %s as well", source.Visible(s.role), source.Visible(role.Name))
+		}
+	}
 	result, err := s.finish(a, statement, key)
 	if err != nil || result == nil {
 		return err

@@ -138,6 +138,7 @@ func printVerification(w io.Writer, r *history.Result, id string, width int) err
 	if id == "" {
 		return nil
 	}
+	fmt.Fprintln(w, wrap("left open: whether what went into service was approved; speedtrail inforce says that", width))
 	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\n", id, r.Head)
 	return err
 }

@@ -148,7 +148,11 @@ func allowedKey(p *schema.Policy, fingerprint, signer string, times ...time.Time
 func checkRole(p *schema.Policy, role, signer string) error {
 	r := p.Role(role)
 	if r == nil {
-		return refuse("the policy has no role %q", role)
+		var names []string
+		for _, x := range p.Roles {
+			names = append(names, x.Name)
+		}
+		return refuse("the policy has no role %q; it has %s", role, strings.Join(names, ", "))
 	}
 	if !r.May(signer) {
 		return refuse("%s is no signer of the role %s", signer, role)
@@ -296,7 +300,7 @@ func (l *Line) checkInForce(r *Record) error {
 func (l *Line) checkNewest(r *Record) (*schema.Policy, error) {
 	newest := l.Newest(r.Folder)
 	if newest.Hash == "" {
-		return nil, refuse("no policy is anchored for the folder %s", r.Folder)
+		return nil, refuse("no policy is anchored for the folder %s; speedtrail anchor puts one in force", r.Folder)
 	}
 	policy, err := usable(newest, "the newest approved revision")
 	if err != nil {

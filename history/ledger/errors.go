@@ -27,7 +27,7 @@ var hints = map[error]string{
 	ErrLocked:       "wait until it is done and try again; nothing was recorded",
 	ErrReadOnly:     "check the rights of the file and its folder, or name another file with --ledger; nothing was recorded",
 	ErrFull:         "free some space and do it again; register shows whether it was recorded, and nothing is recorded twice",
-	ErrDamaged:      "keep the file as it is and restore a backup; compare its head with one noted elsewhere",
+	ErrDamaged:      "keep the file as it is and restore a backup; compare its head with one noted elsewhere; speedtrail verify says more",
 	ErrSymlink:      "name the file itself with --ledger",
 	ErrNoAssessment: "speedtrail register lists the assessments",
 	ErrExists:       "name a file that is not there yet with --ledger",
@@ -52,6 +52,9 @@ func (e *Error) Unwrap() []error { return []error{e.Class, e.Err} }
 
 // Hint says what to do.
 func (e *Error) Hint() string { return hints[e.Class] }
+
+// Damaged gives an error of class ErrDamaged for what a reader of entries finds.
+func Damaged(err error) error { return fail(ErrDamaged, err) }
 
 func fail(class, err error) error { return &Error{class, err} }
 
