@@ -49,6 +49,10 @@ func (a *app) export(ctx context.Context, args []string) error {
 		}
 		defer a.remark("the signer: speedtrail import FILE --ledger copy.db, then in a clone: speedtrail sign %d --ledger copy.db --role ROLE --decision approve --reason TEXT --key FILE --write statement; the custodian: speedtrail sign %d --statement statement --signature statement.sig", number, number)
 	}
+	// What import would refuse is no copy of the ledger.
+	if _, _, err := history.ReadLine(ctx, l); err != nil {
+		return err
+	}
 	if err := a.write(func(w io.Writer) error { return history.Export(ctx, l, w) }); err != nil {
 		return err
 	}
