@@ -25,6 +25,7 @@ type reader struct {
 	id      source.Position            // of the id in the route.toml that was read last
 	seen    map[string]source.Position // ids of the table that is being read
 	kept    *kept                      // what is known of the version of a route that was read before; nil: nothing is kept
+	reuse   bool                       // what is kept may be overwritten
 	err     error
 }
 

@@ -1,6 +1,7 @@
 package schema
 
 import (
+	"slices"
 	"time"
 
 	"speedtrail/schema/chainage"
@@ -26,6 +27,14 @@ type Route struct {
 	Curves    []CurveRow
 	Gradients []GradientRow
 	Places    []PlaceRow
+}
+
+// Clone gives a route with tables of its own.
+func (r *Route) Clone() *Route {
+	out := *r
+	out.Speed, out.AxleLoad, out.Temporary = slices.Clone(r.Speed), slices.Clone(r.AxleLoad), slices.Clone(r.Temporary)
+	out.Curves, out.Gradients, out.Places = slices.Clone(r.Curves), slices.Clone(r.Gradients), slices.Clone(r.Places)
+	return &out
 }
 
 // JumpRow is a [[jump]] of route.toml with its place in the file.

@@ -3,6 +3,7 @@ package schema
 import (
 	"bytes"
 	"io/fs"
+	"slices"
 	"time"
 
 	"speedtrail/schema/table"
@@ -14,6 +15,7 @@ import (
 // Load gives. It is not safe for concurrent use.
 type Versions struct {
 	zone   *time.Location
+	reuse  bool
 	routes map[string]*kept // by folder
 	rows   int              // of all of them
 }
@@ -29,6 +31,14 @@ func NewVersions(zone *time.Location) *Versions {
 	return &Versions{zone: zone, routes: map[string]*kept{}}
 }
 
+// Reusing makes Read write the rows of a version in place of those of the one
+// before it, and gives v: a route is good until the next version of its folder is
+// read, and whoever wants it for longer takes a Clone.
+func (v *Versions) Reusing() *Versions {
+	v.reuse = true
+	return v
+}
+
 // Read reads a route's folder. Where it is faulty, the error is a
 // *source.Faults; else it is an error of fsys. The route shares tables with other
 // versions: it must not be changed.
@@ -39,7 +49,7 @@ func (v *Versions) Read(fsys fs.FS, folder string) (*Route, error) {
 	}
 	v.rows -= k.size()
 	delete(v.routes, folder)
-	r := &reader{fsys: fsys, zone: v.zone, kept: k}
+	r := &reader{fsys: fsys, zone: v.zone, kept: k, reuse: v.reuse}
 	route := r.route(folder)
 	if r.err != nil {
 		return nil, r.err
@@ -102,7 +112,7 @@ type keptTable[T any] struct {
 
 // readAgain reads a table that was kept in another version: the lines that both
 // have at the beginning and at the end are not read again. It is false where
-// anything is out of the ordinary; then nothing was done.
+// anything is out of the ordinary; then before is of no use any more.
 func (d *definition[T]) readAgain(r *reader, route *Route, rows *[]T, before *keptTable[T], content []byte) (keptTable[T], bool) {
 	old := before.content
 	// In quotes, a line may not be a row.
@@ -130,8 +140,11 @@ func (d *definition[T]) readAgain(r *reader, route *Route, rows *[]T, before *ke
 	}
 	for to = from; to < len(before.rows) && d.common(&before.rows[to]).Pos.Line < first+oldLines; to++ {
 	}
-	all := make([]T, 0, len(before.rows)-(to-from)+len(between))
-	all = append(append(append(all, before.rows[:from]...), between...), before.rows[to:]...)
+	all := before.rows
+	if !r.reuse {
+		all = slices.Clone(all)
+	}
+	all = slices.Replace(all, from, to, between...)
 	if len(all) == 0 || len(all) > table.MaxRows {
 		return keptTable[T]{}, false
 	}

@@ -38,12 +38,13 @@ func (x *Index) Update(ctx context.Context, reader *trace.Reader, name string, t
 	}
 	var p packer
 	reader.Each(func(v *trace.Loaded) { v.Data, v.Route = p.pack(v.Key, v.Folder, v.Route), nil })
-	err = reader.Read(ctx, walk, b, progress, func(batch *trace.Batch) error {
-		return classify(x.transaction(ctx, func() error { return b.add(ctx, batch) }))
-	})
-	err = classify(err)
-	return err
+	err = reader.Read(ctx, walk, b, progress, func(batch *trace.Batch) error { return classify(b.add(ctx, batch)) })
+	return classify(errors.Join(err, b.finish(ctx)))
 }
+
+// mostCommits is how many commits one transaction adds at most, some batch more:
+// while it lasts, another process that adds has to wait.
+const mostCommits = 4096
 
 // builder adds batches. It is the trace.Prior of its reading, which asks while a
 // batch is added.
@@ -57,6 +58,8 @@ type builder struct {
 	g     *graph
 	ids   map[trace.Key]int64 // of versions
 	known int64               // the greatest id that was given; -1: others give ids, too
+	open  bool                // a transaction is under way
+	first int                 // how many commits there were when it began
 
 	find       *sql.Stmt
 	addVersion *sql.Stmt
@@ -67,7 +70,9 @@ func (b *builder) begin(ctx context.Context) error {
 	b.ctx = ctx
 	// Versions come in the order of hashes: with the driver's cache of 2 MB, a long
 	// history would read and write the same pages again and again.
-	if err := b.x.exec(ctx, "PRAGMA cache_size = -8192"); err != nil {
+	// What a statement of many rows would take back if it failed stays in memory,
+	// too.
+	if err := b.x.exec(ctx, "PRAGMA cache_size = -8192", "PRAGMA temp_store = MEMORY"); err != nil {
 		return err
 	}
 	if err := b.x.conn.QueryRowContext(ctx, greatestVersion).Scan(&b.known); err != nil {
@@ -127,9 +132,41 @@ func (b *builder) Version(key trace.Key) (*trace.Loaded, error) {
 	return v, nil
 }
 
-// add writes a batch. Of commits and versions that another process has added
-// since, it keeps that one's.
+// add adds a batch. A transaction takes as many commits as there are already:
+// each writes most pages of the index again, as versions come in the order of
+// hashes.
 func (b *builder) add(ctx context.Context, batch *trace.Batch) error {
+	if !b.open {
+		if err := b.start(ctx); err != nil {
+			return err
+		}
+	}
+	err := b.addBatch(ctx, batch)
+	if err != nil {
+		b.rollback(ctx)
+		return err
+	}
+	if added := len(b.g.commits) - b.first; added < min(b.first, mostCommits) {
+		return nil
+	}
+	return b.finish(ctx)
+}
+
+// start begins a transaction and takes in what another process has added since
+// the last one.
+func (b *builder) start(ctx context.Context) error {
+	if err := b.x.exec(ctx, "BEGIN IMMEDIATE"); err != nil {
+		return err
+	}
+	b.open = true
+	err := b.catchUp(ctx)
+	if err != nil {
+		b.rollback(ctx)
+	}
+	return err
+}
+
+func (b *builder) catchUp(ctx context.Context) error {
 	if b.g.folder == 0 {
 		if _, err := b.x.conn.ExecContext(ctx, "INSERT INTO folder (path) VALUES (?) ON CONFLICT DO NOTHING", b.path); err != nil {
 			return err
@@ -142,26 +179,53 @@ func (b *builder) add(ctx context.Context, batch *trace.Batch) error {
 	if err := b.x.conn.QueryRowContext(ctx, greatestVersion).Scan(&greatest); err != nil {
 		return err
 	}
-	b.mu.Lock()
-	err := b.x.extend(ctx, b.g)
-	first := len(b.g.commits)
-	b.mu.Unlock()
-	if err != nil {
-		return err
+	if greatest != b.known {
+		b.known = -1
 	}
-	if greatest == b.known {
+	b.mu.Lock()
+	defer b.mu.Unlock()
+	err := b.x.extend(ctx, b.g)
+	b.first = len(b.g.commits)
+	return err
+}
+
+// addBatch adds what is not there yet. Of commits and versions that another
+// process has added, it keeps that one's.
+func (b *builder) addBatch(ctx context.Context, batch *trace.Batch) error {
+	var err error
+	if b.known >= 0 {
 		err = b.addVersions(batch.Loaded)
 	} else {
-		b.known = -1
 		err = b.addVersionsOfMany(ctx, batch.Loaded)
 	}
 	if err != nil {
 		return err
 	}
-	if err := b.addDeltas(ctx, batch.Deltas); err != nil {
+	return b.addDeltas(ctx, batch.Deltas)
+}
+
+// finish ends a transaction that is under way, even where the context has ended:
+// what was read stays.
+func (b *builder) finish(ctx context.Context) error {
+	if !b.open {
+		return nil
+	}
+	ctx = context.WithoutCancel(ctx)
+	err := b.addChunks(ctx, b.first)
+	if err == nil {
+		err = b.x.exec(ctx, "COMMIT")
+	}
+	if err != nil {
+		b.rollback(ctx)
 		return err
 	}
-	return b.addChunks(ctx, first)
+	b.open = false
+	return nil
+}
+
+func (b *builder) rollback(ctx context.Context) {
+	_, _ = b.x.conn.ExecContext(context.WithoutCancel(ctx), "ROLLBACK")
+	b.open = false
 }
 
 // addVersions adds versions where nobody else has added any.

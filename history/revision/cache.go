@@ -1,7 +1,6 @@
 package revision
 
 import (
-	"container/list"
 	"sync"
 
 	"github.com/go-git/go-git/v5/plumbing"
@@ -11,13 +10,14 @@ import (
 // bytes.
 const maxBaseCache = 8 << 20
 
-// baseCache keeps the objects of packs that differences were applied to, the
-// least recently used leaving first. It is safe for concurrent use.
+// baseCache keeps the objects of packs that differences were applied to: those of
+// two spans of time, of which the later one takes what is asked for over from the
+// earlier one, and follows it when it is full. (A list in the order of use would
+// cost as much as the difference does.) It is safe for concurrent use.
 type baseCache struct {
-	mu    sync.Mutex
-	items map[baseKey]*list.Element
-	order list.List // of *baseItem, most recently used first
-	bytes int
+	mu           sync.Mutex
+	now, earlier map[baseKey]baseItem
+	bytes        int // of now
 }
 
 type baseKey struct {
@@ -26,21 +26,21 @@ type baseKey struct {
 }
 
 type baseItem struct {
-	key  baseKey
 	kind plumbing.ObjectType
 	data []byte // never changed once it is here
 }
 
 func (c *baseCache) get(p *pack, offset int64) (plumbing.ObjectType, []byte, bool) {
+	key := baseKey{p, offset}
 	c.mu.Lock()
 	defer c.mu.Unlock()
-	e, ok := c.items[baseKey{p, offset}]
+	item, ok := c.now[key]
 	if !ok {
-		return 0, nil, false
+		if item, ok = c.earlier[key]; ok {
+			c.add(key, item)
+		}
 	}
-	c.order.MoveToFront(e)
-	item := e.Value.(*baseItem)
-	return item.kind, item.data, true
+	return item.kind, item.data, ok
 }
 
 func (c *baseCache) put(p *pack, offset int64, kind plumbing.ObjectType, data []byte) {
@@ -49,19 +49,16 @@ func (c *baseCache) put(p *pack, offset int64, kind plumbing.ObjectType, data []
 	}
 	c.mu.Lock()
 	defer c.mu.Unlock()
-	key := baseKey{p, offset}
-	if _, ok := c.items[key]; ok {
+	c.add(baseKey{p, offset}, baseItem{kind, data})
+}
+
+func (c *baseCache) add(key baseKey, item baseItem) {
+	if _, ok := c.now[key]; ok {
 		return
 	}
-	if c.items == nil {
-		c.items = map[baseKey]*list.Element{}
+	if c.now == nil || c.bytes+len(item.data) > maxBaseCache/2 {
+		c.earlier, c.now, c.bytes = c.now, make(map[baseKey]baseItem, len(c.now)), 0
 	}
-	c.items[key] = c.order.PushFront(&baseItem{key, kind, data})
-	c.bytes += len(data)
-	for c.bytes > maxBaseCache {
-		last := c.order.Back()
-		item := c.order.Remove(last).(*baseItem)
-		delete(c.items, item.key)
-		c.bytes -= len(item.data)
-	}
+	c.now[key] = item
+	c.bytes += len(item.data)
 }

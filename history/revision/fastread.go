@@ -1,9 +1,12 @@
 package revision
 
 import (
+	"crypto/sha1"
 	"errors"
+	"hash"
 	"io/fs"
 	"os"
+	"sync"
 
 	"github.com/go-git/go-git/v5/plumbing"
 )
@@ -58,8 +61,15 @@ func (s *store) readAtMost(h plumbing.Hash, limit int64) (kind plumbing.ObjectTy
 	return 0, nil, false
 }
 
+// sums are hashes for use again: most objects are small.
+var sums = sync.Pool{New: func() any { return sha1.New() }}
+
+// sumIs checks the hash of a whole object.
 func sumIs(kind plumbing.ObjectType, data []byte, h plumbing.Hash) bool {
-	sum := newSum(kind, int64(len(data)))
+	sum := sums.Get().(hash.Hash)
+	defer sums.Put(sum)
+	sum.Reset()
+	writeHead(sum, kind, int64(len(data)))
 	sum.Write(data)
 	return checkSum(sum, h) == nil
 }

@@ -128,6 +128,9 @@ func (t Tree) changes(before Tree) ([]TreeChange, error) {
 					return nil, fmt.Errorf("entry %q is out of order", e.name)
 				}
 				ordered = true
+				if bytes.Equal(a[n:], b[n:]) {
+					break // most changes are single lines
+				}
 			}
 			lastRaw, a, b, oldLen = b[:n], a[n:], b[n:], 0
 			continue

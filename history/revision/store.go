@@ -283,9 +283,9 @@ func (o *object) openLoose(f *os.File) (*inflater, error) {
 func (o *object) read() ([]byte, error) {
 	data, err := o.content()
 	if err == nil {
-		sum := newSum(o.kind, o.size)
-		sum.Write(data)
-		err = checkSum(sum, o.hash)
+		if !sumIs(o.kind, data, o.hash) {
+			err = errHash
+		}
 	}
 	if err != nil {
 		return nil, corrupt(fmt.Sprintf("object %s cannot be read", o.hash), err)
@@ -311,20 +311,26 @@ func (o *object) content() ([]byte, error) {
 	return readExactly(z, o.size)
 }
 
-// newSum begins the hash of an object: Git puts its type and size before the
-// content.
+// newSum begins the hash of an object.
 func newSum(kind plumbing.ObjectType, size int64) hash.Hash {
 	sum := sha1.New()
+	writeHead(sum, kind, size)
+	return sum
+}
+
+// writeHead writes what Git puts before the content to hash an object: its type
+// and size.
+func writeHead(sum hash.Hash, kind plumbing.ObjectType, size int64) {
 	var head [32]byte
 	text := append(append(head[:0], kind.Bytes()...), ' ')
 	sum.Write(append(strconv.AppendInt(text, size, 10), 0))
-	return sum
 }
 
 var errHash = errors.New("content does not have this hash")
 
 func checkSum(sum hash.Hash, want plumbing.Hash) error {
-	if !bytes.Equal(sum.Sum(nil), want[:]) {
+	var have [sha1.Size]byte
+	if !bytes.Equal(sum.Sum(have[:0]), want[:]) {
 		return errHash
 	}
 	return nil

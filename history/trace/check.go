@@ -286,6 +286,9 @@ func (k *checker) loadOne(n int, v *Loaded, commit Hash) error {
 			return err
 		}
 		versions = schema.NewVersions(zone)
+		if k.each != nil {
+			versions.Reusing()
+		}
 		k.readers[n][v.Zone] = versions
 	}
 	files, err := k.repo.Folder(v.Tree, what(commit))

@@ -73,7 +73,9 @@ func (r *Reader) History(ctx context.Context, tip Hash, route string, o Options)
 	a := newAssembly(route)
 	routes := map[Key]*schema.Route{}
 	r.Each(func(v *Loaded) {
-		if v.ID != route {
+		if v.ID == route {
+			v.Route = v.Route.Clone()
+		} else {
 			v.Route = nil
 		}
 	})
@@ -114,11 +116,10 @@ func InFolder(r *schema.Route, folder string) *schema.Route {
 	if r.Folder == folder {
 		return r
 	}
-	out := *r
+	out := r.Clone()
 	out.Folder = folder
 	move := func(file *string) { *file = folder + "/" + path.Base(*file) }
 	move(&out.Pos.File)
-	out.Speed, out.AxleLoad, out.Temporary = slices.Clone(r.Speed), slices.Clone(r.AxleLoad), slices.Clone(r.Temporary)
 	for i := range out.Speed {
 		move(&out.Speed[i].Pos.File)
 	}
@@ -128,5 +129,5 @@ func InFolder(r *schema.Route, folder string) *schema.Route {
 	for i := range out.Temporary {
 		move(&out.Temporary[i].Pos.File)
 	}
-	return &out
+	return out
 }

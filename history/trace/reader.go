@@ -71,8 +71,8 @@ func (r *Reader) InBatches(commits int) *Reader {
 }
 
 // Each sets what is done with each sound route as soon as it was read, on several
-// processors at once, and gives the reader. It may turn the Route into Data, and
-// let go of it: a route takes much memory until its batch is handed over.
+// processors at once, and gives the reader. The Route is the call's own until it
+// returns: it turns it into Data, puts a Clone in its place, or lets go of it.
 func (r *Reader) Each(f func(*Loaded)) *Reader {
 	r.each = f
 	return r
