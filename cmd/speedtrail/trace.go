@@ -146,6 +146,7 @@ func (a *app) trace(ctx context.Context, call traceCall) error {
 // pastOf gives the past of the route, from the index where that is possible.
 func (a *app) pastOf(ctx context.Context, repo *revision.Repo, folder string, tip trace.Hash, call traceCall) (*trace.History, error) {
 	reader := trace.NewReader(repo, folder)
+	defer debug.SetGCPercent(debug.SetGCPercent(littleGarbage))
 	if !call.noIndex {
 		h, err := a.indexed(ctx, repo, reader, folder, tip, call.route)
 		if err == nil || !errors.Is(err, index.ErrForeign) && !errors.Is(err, index.ErrFailed) {
@@ -153,8 +154,27 @@ func (a *app) pastOf(ctx context.Context, repo *revision.Repo, folder string, ti
 		}
 		a.remark("read without an index: %v", err)
 	}
-	h, err := reader.History(ctx, tip, call.route, trace.Options{FirstParent: call.firstParent, Progress: a.progress("reading the history")})
+	h, err := reader.History(ctx, tip, call.route, trace.Options{FirstParent: call.firstParent, Progress: longer(a.progress("reading the history"))})
 	return h, err
+}
+
+// How much may become garbage before it is collected, in per cent of what is in
+// use. A question takes some milliseconds and little memory, of which collecting
+// would be a third. To read a whole history takes some 100 MB, of which the usual
+// 100 per cent would save a quarter and cost a tenth of the time.
+const (
+	littleGarbage = 400
+	muchGarbage   = 200
+)
+
+// longer is progress of what turns out to be more than a few commits.
+func longer(progress func(done, total int)) func(done, total int) {
+	return func(done, total int) {
+		if done < total {
+			debug.SetGCPercent(muchGarbage)
+		}
+		progress(done, total)
+	}
 }
 
 // indexed brings the index up to date and asks it.
@@ -175,12 +195,8 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 	if err != nil {
 		return nil, err
 	}
-	// A question takes some milliseconds and little memory, of which collecting
-	// garbage would be a third.
-	normal := debug.SetGCPercent(400)
 	x, err := index.Open(ctx, file)
 	if err != nil {
-		debug.SetGCPercent(normal)
 		return nil, err
 	}
 	defer x.Close()
@@ -188,14 +204,7 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 	if err != nil || found {
 		return h, err
 	}
-	progress := a.progress("indexing the history")
-	defer debug.SetGCPercent(normal)
-	if err := x.Update(ctx, reader, name, tip, func(done, total int) {
-		if done < total {
-			debug.SetGCPercent(normal) // there is more to come than some commits
-		}
-		progress(done, total)
-	}); err != nil {
+	if err := x.Update(ctx, reader, name, tip, longer(a.progress("indexing the history"))); err != nil {
 		return nil, err
 	}
 	h, found, err = x.History(ctx, name, tip, route)

@@ -1,15 +1,12 @@
 package table
 
 import (
-	"bufio"
 	"bytes"
 	"encoding/csv"
 	"errors"
-	"io"
 	"iter"
 	"slices"
 	"strings"
-	"sync"
 	"unicode"
 
 	"speedtrail/schema/source"
@@ -79,14 +76,13 @@ func (r Row) At(place int) Cell {
 func ReadCSV(file string, content []byte, known, required []string, faults *source.Collector) *CSV {
 	t := &CSV{file: file, index: map[string]int{}}
 	header := false
-	t.read(bytes.TrimPrefix(content, byteOrderMark), 1, faults, func(record []string, r *csv.Reader) bool {
+	t.read(bytes.TrimPrefix(content, byteOrderMark), 1, faults, func(r *record) bool {
 		if header {
 			return true
 		}
 		header = true
-		line, column := r.FieldPos(0)
-		t.Header = source.Position{File: file, Line: line, Column: column}
-		t.places = t.readHeader(record, r, known, required, faults)
+		t.Header = r.at(0)
+		t.places = t.readHeader(r, known, required, faults)
 		return false
 	})
 	if !header && !t.Broken {
@@ -105,15 +101,13 @@ func (t *CSV) Bare() *CSV {
 // number. The table itself stays as it is.
 func (t *CSV) More(content []byte, line int, faults *source.Collector) *CSV {
 	more := t.Bare()
-	more.read(content, line, faults, func([]string, *csv.Reader) bool { return true })
+	more.read(content, line, faults, func(*record) bool { return true })
 	return more
 }
 
-var buffers = sync.Pool{New: func() any { return bufio.NewReaderSize(nil, 4096) }}
-
 // read reads rows from lines of which the first has a number. A row that isRow
 // takes for itself is none.
-func (t *CSV) read(content []byte, first int, faults *source.Collector, isRow func(record []string, r *csv.Reader) bool) {
+func (t *CSV) read(content []byte, first int, faults *source.Collector, isRow func(*record) bool) {
 	at := func(line, column int) source.Position {
 		return source.Position{File: t.file, Line: line + first - 1, Column: column}
 	}
@@ -122,28 +116,15 @@ func (t *CSV) read(content []byte, first int, faults *source.Collector, isRow fu
 		return
 	}
 	if i := bytes.IndexByte(content, 0); i >= 0 {
-		faults.Add(at(1+bytes.Count(content[:i], []byte("\n")), i-bytes.LastIndexByte(content[:i], '\n')), "the file holds a NUL byte, it is not text")
+		faults.Add(at(1+bytes.Count(content[:i], newline), i-bytes.LastIndexByte(content[:i], '\n')), "the file holds a NUL byte, it is not text")
 		t.Broken = true
 		return
 	}
-	// A csv.Reader takes this buffer for its own, which thousands of small texts
-	// can share.
-	buffer := buffers.Get().(*bufio.Reader)
-	buffer.Reset(bytes.NewReader(content))
-	defer func() {
-		buffer.Reset(nil)
-		buffers.Put(buffer)
-	}()
-	r := csv.NewReader(buffer)
-	r.Comment = '#'
-	r.FieldsPerRecord = -1
-	r.TrimLeadingSpace = true
-	r.ReuseRecord = true
-	for {
-		record, err := r.Read()
-		if errors.Is(err, io.EOF) {
-			return
-		}
+	records := quotedRecords
+	if bytes.IndexByte(content, '"') < 0 {
+		records = plainRecords
+	}
+	for r, err := range records(t.file, content, first) {
 		if err != nil {
 			t.Broken = true
 			recordCSVError(t.file, content, first, err, faults)
@@ -153,23 +134,22 @@ func (t *CSV) read(content []byte, first int, faults *source.Collector, isRow fu
 			}
 			return // what follows a header that cannot be read is no header
 		}
-		if !slices.ContainsFunc(record, func(s string) bool { return strings.TrimSpace(s) != "" }) {
+		if !slices.ContainsFunc(r.cells, func(s string) bool { return s != "" }) {
 			continue
 		}
-		if !isRow(record, r) {
+		if !isRow(r) {
 			if t.places == nil {
 				t.Broken = true
 				return
 			}
 			continue
 		}
-		line, _ := r.FieldPos(0)
 		if len(t.rows) == MaxRows {
-			faults.Add(at(line, 0), "more than %d rows", MaxRows)
+			faults.Add(source.Position{File: t.file, Line: r.at(0).Line}, "more than %d rows", MaxRows)
 			t.Broken = true
 			return
 		}
-		if row, ok := t.readRow(record, r, first, faults); ok {
+		if row, ok := t.readRow(r, faults); ok {
 			t.rows = append(t.rows, row)
 		} else {
 			t.Broken = true
@@ -184,36 +164,31 @@ const (
 )
 
 // readHeader finds the columns; nil where the table cannot be read by them.
-func (t *CSV) readHeader(record []string, r *csv.Reader, known, required []string, faults *source.Collector) []int {
-	at := func(i int) source.Position {
-		line, column := r.FieldPos(i)
-		return source.Position{File: t.file, Line: line, Column: column}
-	}
-	if len(record) > MaxColumns {
-		faults.Add(t.Header, "%d columns, at most %d are allowed", len(record), MaxColumns)
+func (t *CSV) readHeader(r *record, known, required []string, faults *source.Collector) []int {
+	if len(r.cells) > MaxColumns {
+		faults.Add(t.Header, "%d columns, at most %d are allowed", len(r.cells), MaxColumns)
 		return nil
 	}
-	if len(record) == 1 && strings.Contains(record[0], ";") {
+	if len(r.cells) == 1 && strings.Contains(r.cells[0], ";") {
 		faults.Add(t.Header, "columns are separated by semicolons, commas are needed")
 		return nil
 	}
-	places := make([]int, len(record))
+	places := make([]int, len(r.cells))
 	good := true
-	for i, cell := range record {
-		name := strings.TrimSpace(cell)
+	for i, name := range r.cells {
 		places[i] = unnamed
 		switch {
 		case name == "":
-			if slices.ContainsFunc(record[i:], func(s string) bool { return strings.TrimSpace(s) != "" }) {
-				faults.Add(at(i), "column without a name")
+			if slices.ContainsFunc(r.cells[i:], func(s string) bool { return s != "" }) {
+				faults.Add(r.at(i), "column without a name")
 				good = false
 			}
 		case t.Has(name):
-			faults.Add(at(i), "column %s stands twice", source.Quote(name))
+			faults.Add(r.at(i), "column %s stands twice", source.Quote(name))
 			good = false
 		case !slices.Contains(known, name):
 			places[i] = unknown
-			faults.Add(at(i), "unknown column %s, known are %s", source.Quote(name), strings.Join(known, ", "))
+			faults.Add(r.at(i), "unknown column %s, known are %s", source.Quote(name), strings.Join(known, ", "))
 		default:
 			places[i] = len(t.Columns)
 			t.index[name] = len(t.Columns)
@@ -235,22 +210,17 @@ func (t *CSV) readHeader(record []string, r *csv.Reader, known, required []strin
 // readRow takes over the cells of a row. A row may be shorter than the header, as
 // people and spreadsheets write it: the cells that are not there are blank. (A
 // blank cell hides no more than one that was emptied.)
-func (t *CSV) readRow(record []string, r *csv.Reader, first int, faults *source.Collector) (Row, bool) {
-	at := func(i int) source.Position {
-		line, column := r.FieldPos(i)
-		return source.Position{File: t.file, Line: line + first - 1, Column: column}
-	}
-	row := Row{table: t, Pos: at(0), cells: t.room()}
+func (t *CSV) readRow(r *record, faults *source.Collector) (Row, bool) {
+	row := Row{table: t, Pos: r.at(0), cells: t.room()}
 	good := true
-	if len(record) > MaxColumns {
-		faults.Add(row.Pos, "%d cells in a row, at most %d are allowed", len(record), MaxColumns)
+	if len(r.cells) > MaxColumns {
+		faults.Add(row.Pos, "%d cells in a row, at most %d are allowed", len(r.cells), MaxColumns)
 		return row, false
 	}
-	for i, cell := range record {
-		text := strings.TrimSpace(cell)
+	for i, text := range r.cells {
 		if i >= len(t.places) {
 			if text != "" {
-				faults.Add(at(i), "cell %s has no column in the header; a comma as decimal sign, or in a text without quotes, gives one cell too many", source.Quote(text))
+				faults.Add(r.at(i), "cell %s has no column in the header; a comma as decimal sign, or in a text without quotes, gives one cell too many", source.Quote(text))
 				return row, false
 			}
 			continue
@@ -258,17 +228,17 @@ func (t *CSV) readRow(record []string, r *csv.Reader, first int, faults *source.
 		place := t.places[i]
 		if place < 0 {
 			if text != "" && place == unnamed {
-				faults.Add(at(i), "cell %s stands in a column without a name", source.Quote(text))
+				faults.Add(r.at(i), "cell %s stands in a column without a name", source.Quote(text))
 				good = false
 			}
 			continue
 		}
 		if problem := TextProblem(text); problem != "" {
-			faults.Add(at(i), "text %s is %s", source.Quote(text), problem)
+			faults.Add(r.at(i), "text %s is %s", source.Quote(text), problem)
 			good = false
 			continue
 		}
-		row.cells[place] = Cell{text, at(i)}
+		row.cells[place] = Cell{text, r.at(i)}
 	}
 	for i := range row.cells {
 		if row.cells[i].Pos.Line == 0 {

@@ -1,7 +1,9 @@
 package table
 
 import (
+	"bytes"
 	"fmt"
+	"iter"
 	"slices"
 	"strings"
 	"testing"
@@ -214,6 +216,18 @@ func TestTextProblem(t *testing.T) {
 	}
 }
 
+func records(read func(string, []byte, int) iter.Seq2[*record, error], content []byte) string {
+	var b strings.Builder
+	for r, err := range read("t.csv", content, 7) {
+		if err != nil {
+			fmt.Fprintln(&b, err)
+			continue
+		}
+		fmt.Fprintf(&b, "%q %v\n", r.cells, r.places)
+	}
+	return b.String()
+}
+
 func FuzzReadCSV(f *testing.F) {
 	for _, s := range []string{"from_km,to_km\n0,1\n", "\ufeff# why\r\nnote,from_km\r\n\"a, \"\"b\"\"\",0\r\n", "from_km,,\n0,1,\n", "a;b\n", "from_km\n\"open\n", "from_km\n0\x00\n",
 		"from_km,note\n  0,\"x\"y\n,,,\n1,\xff\n", "\n\n#\nfrom_km\r1\r"} {
@@ -224,6 +238,11 @@ func FuzzReadCSV(f *testing.F) {
 		table := ReadCSV("t.csv", content, known, []string{"from_km"}, &faults)
 		if second := ReadCSV("t.csv", content, known, []string{"from_km"}, &again); dump(second) != dump(table) || faultText(&again) != faultText(&faults) {
 			t.Fatal("read twice, two results")
+		}
+		if !bytes.Contains(content, []byte(`"`)) {
+			if plain, quoted := records(plainRecords, content), records(quotedRecords, content); plain != quoted {
+				t.Fatalf("without quotes:\n%s\nas encoding/csv has it:\n%s", plain, quoted)
+			}
 		}
 		if faults.Count() == 0 && !table.Has("from_km") {
 			t.Fatal("a required column is missing and not told")
