@@ -11,6 +11,7 @@ require (
 	github.com/hiddeco/sshsig v0.2.0
 	github.com/invopop/jsonschema v0.14.0
 	github.com/jedib0t/go-pretty/v6 v6.8.3
+	github.com/klauspost/compress v1.20.4
 	github.com/mattn/go-sqlite3 v1.14.53
 	github.com/pelletier/go-toml/v2 v2.4.3
 	github.com/psanford/sqlite3vfs v0.0.0-20260519004904-f9180fa2acc9

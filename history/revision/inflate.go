@@ -3,7 +3,7 @@ package revision
 import (
 	"bufio"
 	"bytes"
-	"compress/zlib"
+	"github.com/klauspost/compress/zlib"
 	"errors"
 	"io"
 	"math"
