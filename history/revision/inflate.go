@@ -3,8 +3,8 @@ package revision
 import (
 	"bufio"
 	"bytes"
-	"github.com/klauspost/compress/zlib"
 	"errors"
+	"github.com/klauspost/compress/zlib"
 	"io"
 	"math"
 	"sync"

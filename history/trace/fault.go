@@ -72,7 +72,7 @@ func faultIn(v *Loaded, name string) string { return "routes/" + name + "/" + v.
 
 // faultOfAll looks at all folders, and at what concerns them together.
 func (r *Reader) faultOfAll(ctx context.Context, l *listing, f *frameInfo) (string, error) {
-	routes, err := r.listers[0].all(l)
+	routes, err := r.lister.all(l)
 	if err != nil {
 		return "", err
 	}

@@ -2,7 +2,6 @@ package trace
 
 import (
 	"context"
-	"runtime"
 
 	"golang.org/x/sync/errgroup"
 
@@ -47,16 +46,16 @@ type Batch struct {
 
 // Reader reads the history of a data set from a repository.
 type Reader struct {
-	repo    *revision.Repo
-	folder  string
-	batch   int
-	each    func(*Loaded)
-	check   *checker
-	prior   Prior
-	bases   map[Hash]Hash // of commits that were read, where there is one
-	read    map[Hash]bool
-	listers []*lister         // one for each processor
-	listed  map[Hash]*listing // of the commits of the last batches and their bases
+	repo   *revision.Repo
+	folder string
+	batch  int
+	each   func(*Loaded)
+	check  *checker
+	prior  Prior
+	bases  map[Hash]Hash // of commits that were read, where there is one
+	read   map[Hash]bool
+	lister *lister
+	listed map[Hash]*listing // of the commits of the last batches and their bases
 }
 
 // NewReader reads the data set in a folder of a repository.
@@ -97,10 +96,7 @@ func (r *Reader) Commits(ctx context.Context, tip Hash, firstParent bool, known 
 func (r *Reader) Read(ctx context.Context, w *Walk, prior Prior, progress func(done, total int), take func(*Batch) error) error {
 	r.prior, r.check = prior, newChecker(r.repo, prior, r.each)
 	r.bases, r.read, r.listed = map[Hash]Hash{}, map[Hash]bool{}, map[Hash]*listing{}
-	r.listers = nil
-	for range runtime.GOMAXPROCS(0) {
-		r.listers = append(r.listers, newLister(r.repo, r.folder))
-	}
+	r.lister = newLister(r.repo, r.folder)
 	reading, stop := context.WithCancel(ctx)
 	batches := make(chan *Batch)
 	var failed error
@@ -135,24 +131,37 @@ func (r *Reader) Read(ctx context.Context, w *Walk, prior Prior, progress func(d
 }
 
 func (r *Reader) readBatches(ctx context.Context, list []walked, to chan<- *Batch) error {
-	for at := 0; at < len(list); at += r.batch {
-		b, err := r.readBatch(ctx, list[at:min(at+r.batch, len(list))])
-		if err != nil {
-			return err
+	work, ctx := errgroup.WithContext(ctx)
+	parts := make(chan listed)
+	work.Go(func() error {
+		defer close(parts)
+		return newScout(r.repo, r.folder).run(ctx, list, r.batch, parts)
+	})
+	work.Go(func() error {
+		for p := range parts {
+			b, err := r.readBatch(ctx, p.commits, p.found)
+			if err != nil {
+				return err
+			}
+			select {
+			case to <- b:
+			case <-ctx.Done():
+				return ctx.Err()
+			}
 		}
-		select {
-		case to <- b:
-		case <-ctx.Done():
-			return ctx.Err()
-		}
-	}
-	return nil
+		return nil
+	})
+	return work.Wait()
 }
 
-func (r *Reader) readBatch(ctx context.Context, part []walked) (*Batch, error) {
-	found, err := r.listAll(ctx, part)
-	if err != nil {
-		return nil, err
+func (r *Reader) readBatch(ctx context.Context, part []walked, found []found) (*Batch, error) {
+	// The commits of a batch are the parents and bases of those of the next; what
+	// is asked for later is listed again.
+	if len(r.listed) > 2*len(found) {
+		clear(r.listed)
+	}
+	for _, x := range found {
+		r.listed[x.listing.commit] = x.listing
 	}
 	if err := r.loadNew(ctx, found); err != nil {
 		return nil, err
@@ -183,71 +192,9 @@ func (r *Reader) baseOf(c walked) (Hash, bool) {
 	return r.prior.Base(p)
 }
 
-// found is what a commit holds, and what it has otherwise than its first parent.
-type found struct {
-	listing *listing
-	changes []change
-}
-
-// listAll lists what the commits of a batch hold: each processor goes through a
-// row of commits that follow each other.
-func (r *Reader) listAll(ctx context.Context, part []walked) ([]found, error) {
-	out := make([]found, len(part))
-	work, ctx := errgroup.WithContext(ctx)
-	share := (len(part) + len(r.listers) - 1) / len(r.listers)
-	for n, l := range r.listers {
-		from, to := min(n*share, len(part)), min((n+1)*share, len(part))
-		work.Go(func() error {
-			own := map[Hash]*listing{}
-			for i := from; i < to; i++ {
-				if err := ctx.Err(); err != nil {
-					return err
-				}
-				c := part[i]
-				var before *listing
-				if len(c.parents) > 0 {
-					p := c.parents[0]
-					if before = own[p]; before == nil {
-						var err error
-						if before, err = r.listing(l, p); err != nil {
-							return err
-						}
-						own[p] = before
-					}
-				}
-				now, list, err := l.list(c.Hash, c.tree, before)
-				if err != nil {
-					return err
-				}
-				own[c.Hash] = now
-				out[i] = found{now, list}
-			}
-			return nil
-		})
-	}
-	if err := work.Wait(); err != nil {
-		return nil, err
-	}
-	// The commits of this batch are the parents and bases of those of the next;
-	// what is asked for later is listed again.
-	clear(r.listed)
-	for _, x := range out {
-		r.listed[x.listing.commit] = x.listing
-	}
-	return out, nil
-}
-
 // listing gives what a commit holds.
-func (r *Reader) listing(l *lister, commit Hash) (*listing, error) {
-	if x := r.listed[commit]; x != nil {
-		return x, nil
-	}
-	c, err := r.repo.Link(commit)
-	if err != nil {
-		return nil, err
-	}
-	x, _, err := l.list(commit, c.Tree, nil)
-	return x, err
+func (r *Reader) listing(commit Hash) (*listing, error) {
+	return listingOf(r.repo, r.lister, r.listed, commit)
 }
 
 // loadNew reads the folders that the commits of a batch have otherwise than
@@ -293,7 +240,7 @@ func (r *Reader) delta(ctx context.Context, c walked, x found, d *Delta) error {
 	l, list := x.listing, x.changes
 	var err error
 	if hasBase {
-		if before, err = r.listing(r.listers[0], base); err != nil {
+		if before, err = r.listing(base); err != nil {
 			return err
 		}
 		r.listed[base] = before
@@ -304,7 +251,7 @@ func (r *Reader) delta(ctx context.Context, c walked, x found, d *Delta) error {
 			from = &listing{}
 		}
 		now := *l // what else stands in routes/ is known
-		if list, err = r.listers[0].changes(from, &now); err != nil {
+		if list, err = r.lister.changes(from, &now); err != nil {
 			return err
 		}
 	}
