@@ -18,17 +18,16 @@ type Versions struct {
 	reuse  bool
 	routes map[string]*kept // by folder
 	rows   int              // of all of them
+	most   int              // of rows
 }
 
-// maxKeptRows bounds the rows that are kept: some 200 bytes each.
-const maxKeptRows = 100_000
-
-// NewVersions reads bare dates in a time zone; nil is UTC.
-func NewVersions(zone *time.Location) *Versions {
+// NewVersions reads bare dates in a time zone; nil is UTC. It keeps at most so
+// many rows, of some 200 bytes each.
+func NewVersions(zone *time.Location, rows int) *Versions {
 	if zone == nil {
 		zone = time.UTC
 	}
-	return &Versions{zone: zone, routes: map[string]*kept{}}
+	return &Versions{zone: zone, routes: map[string]*kept{}, most: rows}
 }
 
 // Reusing makes Read write the rows of a version in place of those of the one
@@ -57,7 +56,10 @@ func (v *Versions) Read(fsys fs.FS, folder string) (*Route, error) {
 	if err := r.faults.Err(); err != nil {
 		return nil, err
 	}
-	if v.rows += k.size(); v.rows > maxKeptRows {
+	if k.size() > v.most {
+		return route, nil
+	}
+	if v.rows += k.size(); v.rows > v.most {
 		// Full: begin anew, as everything can be read again.
 		clear(v.routes)
 		v.rows = k.size()

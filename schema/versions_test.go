@@ -82,7 +82,7 @@ func TestVersionsEqualLoad(t *testing.T) {
 	for seed := range uint64(300) {
 		rnd := rand.New(rand.NewPCG(seed, 5))
 		m := versioned()
-		v := NewVersions(nil)
+		v := NewVersions(nil, 1_000)
 		if seed%2 == 0 {
 			v.Reusing()
 		}

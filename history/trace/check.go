@@ -43,7 +43,7 @@ type checker struct {
 	prior    Prior
 	repo     *revision.Repo
 	each     func(*Loaded)
-	readers  []map[string]*schema.Versions // of each processor, by time zone
+	readers  []map[string]*schema.Versions // of each share of the folders, by time zone
 	frames   map[string]*frameInfo
 	requests map[string]*requestInfo // by name, type and identity
 	sets     map[string]string       // folder of requests -> first fault
@@ -58,9 +58,17 @@ type frameInfo struct {
 
 type requestInfo struct{ id, fault string }
 
+// Folders are divided into shares, of which each is read by one processor at a
+// time, which knows what it read last. There are more of them than processors, so
+// that all have something to do until the last one is done.
+const (
+	shares   = 16
+	keptRows = 16_000 // of each share
+)
+
 func newChecker(repo *revision.Repo, prior Prior, each func(*Loaded)) *checker {
 	return &checker{
-		prior: prior, repo: repo, each: each, readers: make([]map[string]*schema.Versions, runtime.GOMAXPROCS(0)), frames: map[string]*frameInfo{}, requests: map[string]*requestInfo{},
+		prior: prior, repo: repo, each: each, readers: make([]map[string]*schema.Versions, shares), frames: map[string]*frameInfo{}, requests: map[string]*requestInfo{},
 		sets: map[string]string{}, versions: map[Key]*Loaded{},
 	}
 }
@@ -229,10 +237,9 @@ func (k *checker) known(key Key) (*Loaded, error) {
 	return v, err
 }
 
-// load reads folders, on all processors. All versions of one folder are read by
-// the same one, which knows what it read last.
+// load reads folders, on all processors.
 func (k *checker) load(ctx context.Context, wants []want) error {
-	shares := make([][]*Loaded, len(k.readers))
+	var parts [shares][]*Loaded
 	var fresh []*Loaded
 	of := map[Key]Hash{}
 	for _, w := range wants {
@@ -243,17 +250,18 @@ func (k *checker) load(ctx context.Context, wants []want) error {
 		v := &Loaded{Key: w.Key, Folder: "routes/" + w.name}
 		h := fnv.New32a()
 		h.Write([]byte(w.name))
-		n := h.Sum32() % uint32(len(shares))
-		shares[n] = append(shares[n], v)
+		n := h.Sum32() % shares
+		parts[n] = append(parts[n], v)
 		fresh = append(fresh, v)
 	}
 	work, ctx := errgroup.WithContext(ctx)
-	for n, share := range shares {
-		if len(share) == 0 {
+	work.SetLimit(runtime.GOMAXPROCS(0))
+	for n, part := range parts {
+		if len(part) == 0 {
 			continue
 		}
 		work.Go(func() error {
-			for _, v := range share {
+			for _, v := range part {
 				if err := ctx.Err(); err != nil {
 					return err
 				}
@@ -274,7 +282,7 @@ func (k *checker) load(ctx context.Context, wants []want) error {
 	return nil
 }
 
-// loadOne reads a folder with the reader of a processor.
+// loadOne reads a folder with the reader of its share.
 func (k *checker) loadOne(n int, v *Loaded, commit Hash) error {
 	if k.readers[n] == nil {
 		k.readers[n] = map[string]*schema.Versions{}
@@ -285,7 +293,7 @@ func (k *checker) loadOne(n int, v *Loaded, commit Hash) error {
 		if err != nil {
 			return err
 		}
-		versions = schema.NewVersions(zone)
+		versions = schema.NewVersions(zone, keptRows)
 		if k.each != nil {
 			versions.Reusing()
 		}
