@@ -6,6 +6,7 @@ import (
 	"slices"
 	"time"
 
+	"speedtrail/schema/common"
 	"speedtrail/schema/table"
 )
 
@@ -187,17 +188,14 @@ var newline = []byte("\n")
 // commonLines gives the length of the whole lines that two texts have in common
 // at their beginning.
 func commonLines(a, b []byte) int {
-	n := commonStart(a, b)
+	n := common.Start(a, b)
 	return bytes.LastIndexByte(a[:n], '\n') + 1
 }
 
 // commonEnd gives the length of the whole lines that two texts have in common at
 // their end; what comes before them begins at the beginning of a line.
 func commonEnd(a, b []byte) int {
-	n, most := 0, min(len(a), len(b))
-	for n < most && a[len(a)-1-n] == b[len(b)-1-n] {
-		n++
-	}
+	n := common.End(a, b)
 	if n == len(a) && n == len(b) {
 		return n
 	}
@@ -208,18 +206,4 @@ func commonEnd(a, b []byte) int {
 		return 0
 	}
 	return n - i - 1
-}
-
-// commonStart gives the number of bytes that two texts have in common at their
-// beginning.
-func commonStart(a, b []byte) int {
-	const step = 64
-	most, n := min(len(a), len(b)), 0
-	for n+step <= most && bytes.Equal(a[n:n+step], b[n:n+step]) {
-		n += step
-	}
-	for n < most && a[n] == b[n] {
-		n++
-	}
-	return n
 }

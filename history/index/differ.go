@@ -10,6 +10,7 @@ import (
 
 	"speedtrail/history/trace"
 	"speedtrail/schema"
+	"speedtrail/schema/common"
 )
 
 // Versions of a route mostly differ in one row. A version is therefore kept as
@@ -67,13 +68,8 @@ func (p *packer) pack(key trace.Key, folder string, r *schema.Route) packed {
 // difference writes what a sealed blob has otherwise than another one.
 func difference(before, now []byte) []byte {
 	a, b := before[:len(before)-crc32.Size], now[:len(now)-crc32.Size]
-	most, start, end := min(len(a), len(b)), 0, 0
-	for start < most && a[start] == b[start] {
-		start++
-	}
-	for end < most-start && a[len(a)-1-end] == b[len(b)-1-end] {
-		end++
-	}
+	start := common.Start(a, b)
+	end := common.End(a[start:], b[start:])
 	d := make([]byte, 0, 16+len(b)-start-end)
 	d = append(d, now[len(b):]...)
 	d = binary.AppendUvarint(d, uint64(start))
