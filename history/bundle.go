@@ -113,11 +113,7 @@ func readLine(text []byte) (e ledger.Restored, err error) {
 	}
 	e.Entry = chain.Entry{Seq: x.Seq, Time: x.Time, Kind: chain.Kind(x.Kind), Body: []byte(x.Body), Previous: x.Previous, Hash: x.Hash}
 	if e.Kind == chain.Assessment {
-		doc, err := assessment.Decode(e.Body)
-		if err != nil {
-			return e, err
-		}
-		digest, err := assessment.DigestOf(e.Body)
+		doc, digest, err := assessment.Decode(e.Body)
 		if err != nil {
 			return e, err
 		}

@@ -196,11 +196,7 @@ func (x *tamperer) fillSignOff(s *signoff.Statement, number int64, entries []cha
 		if n++; n != number {
 			continue
 		}
-		doc, err := assessment.Decode(e.Body)
-		if err != nil {
-			x.t.Fatal(err)
-		}
-		digest, err := assessment.DigestOf(e.Body)
+		doc, digest, err := assessment.Decode(e.Body)
 		if err != nil {
 			x.t.Fatal(err)
 		}
@@ -297,11 +293,7 @@ func (x *tamperer) rows(db *sql.DB, e chain.Entry, number string) {
 	if number != "" {
 		n = x.number(number)
 	}
-	doc, err := assessment.Decode(e.Body)
-	var digest string
-	if err == nil {
-		digest, err = assessment.DigestOf(e.Body)
-	}
+	doc, digest, err := assessment.Decode(e.Body)
 	if err != nil {
 		insert("assessment", n, e.Seq, "none", "none", "none", ".", "none", 2, 0, 0)
 		return

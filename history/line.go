@@ -33,13 +33,13 @@ func ReadLine(ctx context.Context, l *ledger.Ledger) (line *approval.Line, probl
 // ReadOn follows a line through the entries that came after those it knows. An
 // entry that does not follow in the chain is an error of class ledger.ErrDamaged.
 func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problems []error, err error) {
-	for e, err := range l.Entries(ctx, line.Head().Seq+1) {
+	for e, err := range openAhead(ctx, l, line.Head(), false) {
 		if err != nil {
 			return nil, err
 		}
 		// Nobody is shown, and nobody signs, what is not what was recorded.
-		if err := chain.Check(line.Head(), e); err != nil {
-			return nil, ledger.Damaged(err)
+		if e.broken != nil {
+			return nil, ledger.Damaged(e.broken)
 		}
 		var a *approval.Assessment
 		if e.Kind == chain.Assessment {
@@ -47,15 +47,11 @@ func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problem
 			if err != nil {
 				return nil, err
 			}
-			doc, err := assessment.Decode(e.Body)
-			if err == nil {
-				digest, err := assessment.DigestOf(e.Body)
-				if err == nil {
-					a = AssessmentOf(line, number, digest, doc)
-				}
+			if e.unreadable == nil {
+				a = AssessmentOf(line, number, e.digest, e.doc)
 			}
 		}
-		if err := line.Add(e, a); err != nil {
+		if err := line.Add(e.Entry, a); err != nil {
 			problems = append(problems, fmt.Errorf("entry %d (%s): %w", e.Seq, e.Kind, err))
 		}
 	}

@@ -12,7 +12,6 @@ import (
 
 	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
-	"speedtrail/history/canon"
 	"speedtrail/history/chain"
 	"speedtrail/history/ledger"
 )
@@ -127,18 +126,16 @@ func (v *verifier) entries() error {
 	v.counts = map[string]int64{}
 	v.r.Line = approval.New(v.l.ID())
 	var head chain.Head
-	seen := int64(0)
-	for e, err := range v.l.Entries(v.ctx, 1) {
+	for e, err := range openAhead(v.ctx, v.l, head, true) {
 		if err != nil {
 			return err
 		}
-		seen++
-		if err := chain.Check(head, e); err != nil {
-			v.problem(e.Seq, "chain", "it %v", errors.Unwrap(err))
+		if e.broken != nil {
+			v.problem(e.Seq, "chain", "it %v", errors.Unwrap(e.broken))
 		}
 		head = e.Head()
-		if err := canon.Check(e.Body); err != nil {
-			v.problem(e.Seq, "body", "%v", err)
+		if e.canonical != nil {
+			v.problem(e.Seq, "body", "%v", e.canonical)
 		}
 		if (e.Seq == 1) != (e.Kind == chain.Ledger) {
 			v.problem(e.Seq, "chain", "an entry of kind %s stands here", e.Kind)
@@ -147,7 +144,7 @@ func (v *verifier) entries() error {
 		if err != nil {
 			return err
 		}
-		if err := v.r.Line.Add(e, a); err != nil {
+		if err := v.r.Line.Add(e.Entry, a); err != nil {
 			v.problem(e.Seq, "statement", "%s: %v", e.Kind, err)
 		}
 	}
@@ -165,12 +162,12 @@ func (v *verifier) entries() error {
 }
 
 // rows compares the rows that repeat an entry with its body.
-func (v *verifier) rows(e chain.Entry) (*approval.Assessment, error) {
+func (v *verifier) rows(e *opened) (*approval.Assessment, error) {
 	switch e.Kind {
 	case chain.Assessment:
 		return v.assessmentRows(e)
 	case chain.Anchor, chain.SignOff, chain.InForce, chain.Revocation:
-		want, err := SignedRows(e)
+		want, err := SignedRows(e.Entry)
 		if err != nil {
 			v.problem(e.Seq, "body", "it cannot be read: %v", err)
 			return nil, nil
@@ -214,7 +211,7 @@ func difference(table ledger.Table, have, want []ledger.Row) string {
 	return ""
 }
 
-func (v *verifier) assessmentRows(e chain.Entry) (*approval.Assessment, error) {
+func (v *verifier) assessmentRows(e *opened) (*approval.Assessment, error) {
 	v.assessments++
 	number, err := v.l.NumberOf(v.ctx, e.Seq)
 	if errors.Is(err, ledger.ErrDamaged) {
@@ -227,16 +224,11 @@ func (v *verifier) assessmentRows(e chain.Entry) (*approval.Assessment, error) {
 	if number != v.assessments {
 		v.problem(e.Seq, "rows", "the assessment has the number %d, by its place it is %d", number, v.assessments)
 	}
-	doc, err := assessment.Decode(e.Body)
-	var digest string
-	if err == nil {
-		digest, err = assessment.DigestOf(e.Body)
-	}
-	if err != nil {
-		v.problem(e.Seq, "body", "it cannot be read: %v", err)
+	if e.unreadable != nil {
+		v.problem(e.Seq, "body", "it cannot be read: %v", e.unreadable)
 		return nil, nil
 	}
-	counts, err := v.l.CompareRows(v.ctx, number, e.Seq, assessment.LedgerRecord(doc, e.Body, digest))
+	counts, err := v.l.CompareRows(v.ctx, number, e.Seq, assessment.LedgerRecord(e.doc, e.Body, e.digest))
 	for table, n := range counts {
 		v.counts[table] += n
 	}
@@ -245,8 +237,8 @@ func (v *verifier) assessmentRows(e chain.Entry) (*approval.Assessment, error) {
 	} else if err != nil {
 		return nil, err
 	}
-	v.docs = append(v.docs, recorded{e.Seq, digest, doc})
-	return AssessmentOf(v.r.Line, number, digest, doc), nil
+	v.docs = append(v.docs, recorded{e.Seq, e.digest, e.doc})
+	return AssessmentOf(v.r.Line, number, e.digest, e.doc), nil
 }
 
 // heads holds the ledger against what was noted elsewhere.

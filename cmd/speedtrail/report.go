@@ -66,7 +66,7 @@ func recorded(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.
 	if err != nil {
 		return nil, render.Record{}, err
 	}
-	doc, err := assessment.Decode(body)
+	doc, _, err := assessment.Decode(body)
 	if err != nil {
 		return nil, render.Record{}, err
 	}

@@ -77,7 +77,7 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	if err != nil {
 		return err
 	}
-	doc, err := assessment.Decode(body)
+	doc, _, err := assessment.Decode(body)
 	if err != nil {
 		return err
 	}

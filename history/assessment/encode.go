@@ -5,22 +5,9 @@ import (
 	"iter"
 	"slices"
 
-	"speedtrail/history/canon"
 	"speedtrail/history/ledger"
 	"speedtrail/schema/source"
 )
-
-// Decode reads a stored document.
-func Decode(body []byte) (*Document, error) {
-	d := new(Document)
-	if err := canon.Unmarshal(body, d); err != nil {
-		return nil, err
-	}
-	if err := d.Computed.check(); err != nil {
-		return nil, err
-	}
-	return d, nil
-}
 
 // check proves that every index points to something, so that nothing that is
 // written from a stored document can go wrong.
