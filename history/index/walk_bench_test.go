@@ -38,6 +38,40 @@ func BenchmarkWalk(b *testing.B) {
 	reportCosts(b, "G", ours, g)
 }
 
+// BenchmarkStorage measures BenchmarkWalk and the first part of BenchmarkTrace for
+// each way in which objects can lie on disk.
+//
+//	go test ./history/index -run '^$' -bench Storage -benchtime 3x -args -past-routes 500 -past-commits 5000
+func BenchmarkStorage(b *testing.B) {
+	program := buildProgram(b)
+	for _, storage := range network.Storages {
+		size := network.Decade
+		size.Routes, size.Commits, size.Trains, size.Storage = *pastRoutes, *pastCommits, *pastTrains, storage
+		dir := network.RepositoryWithPast(b, size)
+		blobs := blobsOf(b, dir)
+		index := filepath.Join(dir, ".git", "speedtrail", "index.db")
+		for name, command := range map[string]func() *exec.Cmd{
+			"walk": func() *exec.Cmd {
+				c := exec.Command(os.Args[0], "-test.run=^TestWalk$", "-test.v")
+				c.Env = append(os.Environ(), "WALK_TEST_REPO="+dir)
+				return c
+			},
+			"build": func() *exec.Cmd {
+				os.Remove(index)
+				return exec.Command(program, "--repo", dir, "trace", "--route", "R0012", "--at", "12.4", "--train", "T003", "--direction", "nominal")
+			},
+		} {
+			b.Run(fmt.Sprintf("%s/%s", storage, name), func(b *testing.B) {
+				var ours, g []cost
+				for b.Loop() {
+					ours, g = append(ours, costOf(b, command())), append(g, costOfG(b, dir, blobs))
+				}
+				reportCosts(b, "G", ours, g)
+			})
+		}
+	}
+}
+
 // costOfG runs the git commands that ours is measured against, one after the
 // other.
 func costOfG(b *testing.B, dir, blobs string) cost {
@@ -49,27 +83,47 @@ func costOfG(b *testing.B, dir, blobs string) cost {
 	return git(nil, "log", "--raw", "--first-parent", "--no-abbrev", "--format=%H").plus(git(strings.NewReader(blobs), "cat-file", "--batch"))
 }
 
-// What the walk reads is what git says that the commits bring.
+// What the walk reads is what git says that the commits bring, however the
+// objects lie on disk.
 func TestWalk(t *testing.T) {
-	dir := os.Getenv("WALK_TEST_REPO")
-	measured := dir != ""
-	if !measured {
-		size := network.Decade
-		size.Routes, size.Commits = 12, 60
-		dir = network.RepositoryWithPast(t, size)
+	if dir := os.Getenv("WALK_TEST_REPO"); dir != "" { // to be measured
+		walked(t, dir)
+		return
 	}
+	packs := map[network.Storage]int{network.OnePack: 1, network.Imported: 1, network.TwelvePacks: 12, network.Loose: 0}
+	for _, storage := range network.Storages {
+		size := network.Decade
+		size.Routes, size.Commits, size.Storage = 12, 120, storage
+		dir := network.RepositoryWithPast(t, size)
+		list, err := filepath.Glob(filepath.Join(dir, ".git", "objects", "pack", "*.pack"))
+		if err != nil || len(list) != packs[storage] {
+			t.Fatalf("%s: %d packs, %v", storage, len(list), err)
+		}
+		files, length := walked(t, dir)
+		wantFiles, wantSize := brought(t, dir)
+		if files != wantFiles || length != wantSize {
+			t.Errorf("%s: %d files of %d bytes were read, git names %d of %d", storage, files, length, wantFiles, wantSize)
+		}
+	}
+}
+
+func walked(t *testing.T, dir string) (files, size int) {
+	t.Helper()
 	repo, err := revision.Open(dir)
 	if err != nil {
 		t.Fatal(err)
 	}
 	defer repo.Close()
-	files, size, err := readAll(repo)
-	if err != nil || measured {
-		if err != nil {
-			t.Fatal(err)
-		}
-		return
+	files, size, err = readAll(repo)
+	if err != nil {
+		t.Fatal(err)
 	}
+	return files, size
+}
+
+// brought asks git for the number and the length of the files.
+func brought(t *testing.T, dir string) (files, size int) {
+	t.Helper()
 	out, err := network.Command(t.Context(), dir, "log", "--raw", "--first-parent", "--no-abbrev", "--format=%H").Output()
 	if err != nil {
 		t.Fatal(err)
@@ -80,17 +134,14 @@ func TestWalk(t *testing.T) {
 			blobs[f[3]] = true
 		}
 	}
-	wantSize := 0
 	for blob := range blobs {
 		data, err := network.Command(t.Context(), dir, "cat-file", "blob", blob).Output()
 		if err != nil {
 			t.Fatal(err)
 		}
-		wantSize += len(data)
+		size += len(data)
 	}
-	if files != len(blobs) || size != wantSize {
-		t.Errorf("%d files of %d bytes were read, git names %d of %d", files, size, len(blobs), wantSize)
-	}
+	return len(blobs), size
 }
 
 // readAll reads every file of a route that a commit on the line of first parents

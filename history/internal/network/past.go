@@ -3,7 +3,6 @@ package network
 import (
 	"bufio"
 	"context"
-	"errors"
 	"fmt"
 	"io"
 	"math/rand/v2"
@@ -19,6 +18,8 @@ type PastSize struct {
 	// Branch: every so many commits, three are a commit on a branch, one beside
 	// it and their merge; 0: the history is a line.
 	Branch int
+	// Storage is how the objects lie on disk; everything in one pack, if empty.
+	Storage Storage
 }
 
 // Decade is the history of a large network: 500 routes of 60 rows, 5,000
@@ -26,8 +27,7 @@ type PastSize struct {
 var Decade = PastSize{Size: Size{Routes: 500, Rows: 60, AxleLoad: 15, Temp: 3, Trains: 10}, Commits: 5000, Branch: 20}
 
 // RepositoryWithPast writes the network of a size with its history into a new
-// folder that lives as long as the test, everything in one pack, nothing checked
-// out. It skips the test where the git program is absent; in CI that is a
+// folder that lives as long as the test, nothing checked out. It skips the test where the git program is absent; in CI that is a
 // failure.
 func RepositoryWithPast(tb testing.TB, s PastSize) (dir string) {
 	tb.Helper()
@@ -57,7 +57,10 @@ func WritePast(ctx context.Context, dir string, s PastSize) error {
 	}()
 	err := Git(ctx, dir, stream, "fast-import", "--quiet", "--done")
 	stream.Close() // ends the writer where git ended early
-	return errors.Join(err, Git(ctx, dir, nil, "repack", "-adfq"))
+	if err != nil {
+		return err
+	}
+	return s.Storage.store(ctx, dir)
 }
 
 // past writes a history.
