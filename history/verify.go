@@ -51,8 +51,8 @@ var ErrOtherRules = errors.New("made by another version of the rules")
 // Checker re-derives from Git what the ledger says. It may be called from several
 // goroutines at once.
 type Checker interface {
-	// Recompute gives the digest of the assessment that the document describes,
-	// computed anew.
+	// Recompute gives the digest of the assessment of which the document says what
+	// was asked (assessment.Document.Asked), computed anew.
 	Recompute(ctx context.Context, doc *assessment.Document) (digest string, err error)
 	// Content gives the tree of a folder at a commit and the policy files there.
 	Content(ctx context.Context, commit, folder string) (tree, signoff, allowedSigners string, err error)
@@ -237,7 +237,7 @@ func (v *verifier) assessmentRows(e *opened) (*approval.Assessment, error) {
 	} else if err != nil {
 		return nil, err
 	}
-	v.docs = append(v.docs, recorded{e.Seq, e.digest, e.doc})
+	v.docs = append(v.docs, recorded{e.Seq, e.digest, e.doc.Asked()})
 	return AssessmentOf(v.r.Line, number, e.digest, e.doc), nil
 }
 

@@ -27,6 +27,14 @@ type Document struct {
 	Named    Named    `json:"named"`
 }
 
+// Asked gives the part of a document that says what was assessed, and how: the
+// folder, the revisions, the options and the version of the rules. Of thousands of
+// assessments to be computed anew, no more is kept.
+func (d *Document) Asked() *Document {
+	c := &d.Computed
+	return &Document{Format: d.Format, Named: d.Named, Computed: Computed{Base: c.Base, Folder: c.Folder, Options: c.Options, RulesVersion: c.RulesVersion, Target: c.Target}}
+}
+
 // Named is how the revisions were called; it is not in the digest.
 type Named struct {
 	Base       string `json:"base"`        // as typed
