@@ -264,11 +264,11 @@ func TestRefusedIsNotRecorded(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := history.RecordSigned(t.Context(), w.l, chain.SignOff, text, signature, w.now()); !errors.Is(err, approval.ErrRefused) || !strings.Contains(err.Error(), "no policy is anchored") {
+	if _, err := history.RecordSigned(t.Context(), w.l, nil, chain.SignOff, text, signature, w.now()); !errors.Is(err, approval.ErrRefused) || !strings.Contains(err.Error(), "no policy is anchored") {
 		t.Errorf("a sign-off without an anchor: %v", err)
 	}
 	for _, kind := range []chain.Kind{chain.Anchor, chain.Ledger, chain.Assessment, chain.InForce, chain.Revocation, "note"} {
-		if _, err := history.RecordSigned(t.Context(), w.l, kind, text, signature, w.now()); err == nil {
+		if _, err := history.RecordSigned(t.Context(), w.l, nil, kind, text, signature, w.now()); err == nil {
 			t.Errorf("a sign-off is recorded as %s", kind)
 		}
 	}
@@ -276,7 +276,7 @@ func TestRefusedIsNotRecorded(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := history.RecordAnchor(t.Context(), w.l, body, w.now()); !errors.Is(err, approval.ErrRefused) {
+	if _, err := history.RecordAnchor(t.Context(), w.l, nil, body, w.now()); !errors.Is(err, approval.ErrRefused) {
 		t.Errorf("an anchor that lacks a role: %v", err)
 	}
 	if export(t, w.l) != before {
@@ -324,5 +324,50 @@ func TestExportedLines(t *testing.T) {
 				t.Errorf("%s: %d members, %s", line, len(m), name)
 			}
 		}
+	}
+}
+
+// A line that was read before is followed through what others have added since;
+// one that goes on beyond the ledger, as where a backup was put in its place
+// meanwhile, is not recorded by.
+func TestLineOfAMomentAgo(t *testing.T) {
+	file := filepath.Join(quickDir(t), "ledger.db")
+	w := newLedger(t, file)
+	w.anchor("a")
+	n := w.assess("a", "b")
+	old, _, err := history.ReadLine(t.Context(), w.l)
+	if err != nil {
+		t.Fatal(err)
+	}
+	backup, err := os.ReadFile(file)
+	if err != nil {
+		t.Fatal(err)
+	}
+	// The checker may not approve as well: only what came later tells.
+	w.signOff(n, "ada", "checker", signoff.Approve)
+	text, signature, err := sign(signOffOf(old.Assessment(n), "approver", signoff.Approve), "ada", old.Head(), w.now())
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := history.RecordSigned(t.Context(), w.l, old, chain.SignOff, text, signature, w.now()); !errors.Is(err, approval.ErrRefused) {
+		t.Errorf("the checker approves, too: %v", err)
+	}
+	if old.Head() != w.head {
+		t.Errorf("the line ends at %v, the ledger at %v", old.Head(), w.head)
+	}
+	restored := filepath.Join(quickDir(t), "ledger.db")
+	if err := os.WriteFile(restored, backup, 0o600); err != nil {
+		t.Fatal(err)
+	}
+	l, err := ledger.Open(t.Context(), restored, ledger.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer l.Close()
+	if text, signature, err = sign(signOffOf(old.Assessment(n), "approver", signoff.Approve), "bea", w.head, w.now()); err != nil {
+		t.Fatal(err)
+	}
+	if _, err := history.RecordSigned(t.Context(), l, old, chain.SignOff, text, signature, w.now()); !errors.Is(err, ledger.ErrDamaged) {
+		t.Errorf("the end of the ledger is gone: %v", err)
 	}
 }

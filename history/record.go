@@ -2,6 +2,7 @@ package history
 
 import (
 	"context"
+	"fmt"
 	"time"
 
 	"speedtrail/history/approval"
@@ -17,12 +18,13 @@ var formats = map[chain.Kind]string{
 
 // RecordSigned checks a signed statement of kind sign-off, in-force or revocation
 // as verify does, and appends it. Both happen with the ledger locked, so that
-// nothing can come between. The error is of class approval.ErrRefused,
+// nothing can come between. line is what the caller has read of the ledger, which
+// is followed to its end first; nil: nothing. The error is of class approval.ErrRefused,
 // signoff.ErrSignature or signoff.ErrMalformed, or one of the ledger; then
 // nothing was recorded.
-func RecordSigned(ctx context.Context, l *ledger.Ledger, kind chain.Kind, statement, signature []byte, now time.Time) (chain.Head, error) {
+func RecordSigned(ctx context.Context, l *ledger.Ledger, line *approval.Line, kind chain.Kind, statement, signature []byte, now time.Time) (chain.Head, error) {
 	e, err := l.Append(ctx, now, kind, func() ([]byte, []ledger.Row, error) {
-		line, _, err := ReadLine(ctx, l)
+		line, err := followed(ctx, l, line)
 		if err != nil {
 			return nil, nil, err
 		}
@@ -39,9 +41,9 @@ func RecordSigned(ctx context.Context, l *ledger.Ledger, kind chain.Kind, statem
 }
 
 // RecordAnchor checks an anchor and appends it, in the same way.
-func RecordAnchor(ctx context.Context, l *ledger.Ledger, body approval.AnchorBody, now time.Time) (chain.Head, error) {
+func RecordAnchor(ctx context.Context, l *ledger.Ledger, line *approval.Line, body approval.AnchorBody, now time.Time) (chain.Head, error) {
 	e, err := l.Append(ctx, now, chain.Anchor, func() ([]byte, []ledger.Row, error) {
-		line, _, err := ReadLine(ctx, l)
+		line, err := followed(ctx, l, line)
 		if err != nil {
 			return nil, nil, err
 		}
@@ -53,4 +55,19 @@ func RecordAnchor(ctx context.Context, l *ledger.Ledger, body approval.AnchorBod
 		return b, anchorRows(a), err
 	})
 	return e.Head(), err
+}
+
+// followed follows a line to the end of the ledger.
+func followed(ctx context.Context, l *ledger.Ledger, line *approval.Line) (*approval.Line, error) {
+	if line == nil {
+		line = approval.New(l.ID())
+	}
+	if _, err := ReadOn(ctx, l, line); err != nil {
+		return nil, err
+	}
+	head, err := l.Head(ctx)
+	if err == nil && head != line.Head() {
+		err = ledger.Damaged(fmt.Errorf("the ledger ends at %s, and a moment ago went on to %s", head, line.Head()))
+	}
+	return line, err
 }

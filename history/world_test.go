@@ -207,7 +207,7 @@ func (w *writer) record(kind chain.Kind, s signoff.Statement, key string) {
 	if err != nil {
 		w.t.Fatal(err)
 	}
-	if w.head, err = history.RecordSigned(w.t.Context(), w.l, kind, text, signature, w.now()); err != nil {
+	if w.head, err = history.RecordSigned(w.t.Context(), w.l, nil, kind, text, signature, w.now()); err != nil {
 		w.t.Fatal(err)
 	}
 }
@@ -248,7 +248,7 @@ func (w *writer) anchor(c string) {
 	w.t.Helper()
 	body, err := anchorBody(c, w.repo.commits[c].tree, w.repo.commits[c].policy, w.head, w.now(), "checker:ada", "approver:bea", "in-service:cem")
 	if err == nil {
-		w.head, err = history.RecordAnchor(w.t.Context(), w.l, body, w.now())
+		w.head, err = history.RecordAnchor(w.t.Context(), w.l, nil, body, w.now())
 	}
 	if err != nil {
 		w.t.Fatal(err)

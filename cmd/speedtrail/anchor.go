@@ -137,7 +137,7 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 		}
 		body.Statements = append(body.Statements, approval.Signed{Format: approval.AnchorFormat, Signature: string(result.signature), Statement: string(result.statement)})
 	}
-	head, err := history.RecordAnchor(ctx, l, body, time.Now())
+	head, err := history.RecordAnchor(ctx, l, line, body, time.Now())
 	switch {
 	case errors.Is(err, approval.ErrRefused), errors.Is(err, signoff.ErrMalformed), errors.Is(err, signoff.ErrSignature):
 		return refused(err)
@@ -192,7 +192,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 		if err != nil {
 			return err
 		}
-		return a.recordSigned(ctx, l, chain.Revocation, brought)
+		return a.recordSigned(ctx, l, line, chain.Revocation, brought)
 	}
 	p := line.Newest(folder)
 	if p.Parsed == nil {
@@ -214,7 +214,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 	if err != nil || result == nil {
 		return err
 	}
-	if err := a.recordSigned(ctx, l, chain.Revocation, result); err != nil {
+	if err := a.recordSigned(ctx, l, line, chain.Revocation, result); err != nil {
 		return err
 	}
 	for _, r := range line.SignOffs() {

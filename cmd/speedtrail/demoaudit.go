@@ -102,7 +102,7 @@ func (t *demoTrail) anchor(ctx context.Context) error {
 		}
 		body.Statements = append(body.Statements, approval.Signed{Format: approval.AnchorFormat, Signature: string(signed.signature), Statement: string(signed.statement)})
 	}
-	_, err = history.RecordAnchor(ctx, t.l, body, demo.AnchorTime)
+	_, err = history.RecordAnchor(ctx, t.l, line, body, demo.AnchorTime)
 	return err
 }
 
@@ -150,7 +150,7 @@ func (t *demoTrail) sign(ctx context.Context, s demo.Signing) error {
 	if err != nil {
 		return err
 	}
-	_, err = history.RecordSigned(ctx, t.l, chain.SignOff, signed.statement, signed.signature, s.When)
+	_, err = history.RecordSigned(ctx, t.l, line, chain.SignOff, signed.statement, signed.signature, s.When)
 	if s.Refused {
 		if !errors.Is(err, approval.ErrRefused) {
 			return fmt.Errorf("the demonstration expects a refusal, got %v", err)
@@ -182,6 +182,6 @@ func (t *demoTrail) service(ctx context.Context, tag, reason string, since, when
 	if err != nil {
 		return err
 	}
-	_, err = history.RecordSigned(ctx, t.l, chain.InForce, signed.statement, signed.signature, when)
+	_, err = history.RecordSigned(ctx, t.l, line, chain.InForce, signed.statement, signed.signature, when)
 	return err
 }

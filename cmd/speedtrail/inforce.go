@@ -122,7 +122,7 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 		if err != nil {
 			return err
 		}
-		return a.recordSigned(ctx, l, chain.InForce, brought)
+		return a.recordSigned(ctx, l, nil, chain.InForce, brought)
 	}
 	repo, err := a.openRepo()
 	if err != nil {
@@ -173,7 +173,7 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	if err != nil || result == nil {
 		return err
 	}
-	if err := a.recordSigned(ctx, l, chain.InForce, result); err != nil {
+	if err := a.recordSigned(ctx, l, line, chain.InForce, result); err != nil {
 		return err
 	}
 	if !line.ApprovedContent(folder, statement.Content) && !strings.HasPrefix(corrects, approval.Voids) {

@@ -99,10 +99,10 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 		if st, err := signoff.Parse(brought.statement); err == nil && st.Assessment != number {
 			return refused(fmt.Errorf("the statement is about assessment %d, not %d", st.Assessment, number))
 		}
-		if err := a.recordSigned(ctx, l, chain.SignOff, brought); err != nil {
+		if err := a.recordSigned(ctx, l, line, chain.SignOff, brought); err != nil {
 			return err
 		}
-		return a.remarkState(ctx, l, number)
+		return a.remarkState(ctx, l, line, number)
 	}
 	x := line.Assessment(number)
 	if x == nil || x.Policy.Parsed == nil {
@@ -130,10 +130,10 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	if err != nil || result == nil {
 		return err
 	}
-	if err := a.recordSigned(ctx, l, chain.SignOff, result); err != nil {
+	if err := a.recordSigned(ctx, l, line, chain.SignOff, result); err != nil {
 		return err
 	}
-	return a.remarkState(ctx, l, number)
+	return a.remarkState(ctx, l, line, number)
 }
 
 // showForSigning says what decides, before somebody signs.
@@ -169,10 +169,9 @@ func (a *app) recompute(ctx context.Context, doc *assessment.Document, recorded 
 	return nil
 }
 
-// remarkState says where an assessment stands.
-func (a *app) remarkState(ctx context.Context, l *ledger.Ledger, number int64) error {
-	line, _, err := history.ReadLine(ctx, l)
-	if err != nil {
+// remarkState says where an assessment stands at the end of the ledger.
+func (a *app) remarkState(ctx context.Context, l *ledger.Ledger, line *approval.Line, number int64) error {
+	if _, err := history.ReadOn(ctx, l, line); err != nil {
 		return err
 	}
 	s := line.State(number)

@@ -242,9 +242,10 @@ func refused(err error) error {
 	return &callError{err.Error(), "nothing was recorded"}
 }
 
-// recordSigned checks and appends a signed statement.
-func (a *app) recordSigned(ctx context.Context, l *ledger.Ledger, kind chain.Kind, s *signed) error {
-	head, err := history.RecordSigned(ctx, l, kind, s.statement, s.signature, time.Now())
+// recordSigned checks and appends a signed statement. line is what was read of the
+// ledger before.
+func (a *app) recordSigned(ctx context.Context, l *ledger.Ledger, line *approval.Line, kind chain.Kind, s *signed) error {
+	head, err := history.RecordSigned(ctx, l, line, kind, s.statement, s.signature, time.Now())
 	switch {
 	case errors.Is(err, approval.ErrRefused), errors.Is(err, signoff.ErrMalformed), errors.Is(err, signoff.ErrSignature):
 		return refused(err)

@@ -133,7 +133,7 @@ func signOff(ctx context.Context, l *ledger.Ledger, at time.Time, number int64, 
 	if err != nil {
 		return chain.Head{}, err
 	}
-	return history.RecordSigned(ctx, l, chain.SignOff, statement, signature, at)
+	return history.RecordSigned(ctx, l, nil, chain.SignOff, statement, signature, at)
 }
 
 // anchor records the anchor.
@@ -153,7 +153,7 @@ func anchor(ctx context.Context, l *ledger.Ledger, at time.Time) (chain.Head, er
 	if err != nil {
 		return chain.Head{}, err
 	}
-	return history.RecordAnchor(ctx, l, approval.AnchorBody{
+	return history.RecordAnchor(ctx, l, nil, approval.AnchorBody{
 		Format: approval.AnchorFormat, SignOff: policyFiles.SignOff, AllowedSigners: policyFiles.AllowedSigners,
 		Statements: []approval.Signed{{Format: approval.AnchorFormat, Signature: string(signature), Statement: string(statement)}},
 	}, at)

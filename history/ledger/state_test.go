@@ -273,7 +273,7 @@ func TestClockJumpsBack(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		_, err = history.RecordSigned(ctx, l, chain.SignOff, statement, signature, test.recorded)
+		_, err = history.RecordSigned(ctx, l, nil, chain.SignOff, statement, signature, test.recorded)
 		after, _ := l.Head(ctx)
 		switch {
 		case test.refused == "" && err != nil:
