@@ -2,54 +2,55 @@ package revision
 
 import (
 	"io"
-	"sync"
+	"sync/atomic"
 )
 
-// Blocks of a pack are kept: the objects of a history stand close together, and
-// to ask the system for each by itself costs more than to decompress it.
+// Blocks of packs are kept: the objects of a history stand close together, and to
+// ask the system for each by itself costs more than to decompress it.
 const (
 	blockSize  = 64 << 10
-	blockExtra = 4 << 10 // what a block has beyond its size, so that a small object never ends past it
-	maxBlocks  = 64      // of a pack: 4 MiB
+	blockExtra = 4 << 10  // what a block has beyond its size, so that a small object never ends past it
+	maxBlocks  = 16 << 20 // bytes, of all packs
 
 	// The first objects are read without blocks: who asks for a few does not
 	// need their neighbours.
 	fewReads = 200
 )
 
-// blocks reads a file by position, block by block. It is safe for concurrent use.
-type blocks struct {
-	file io.ReaderAt
-	mu   sync.Mutex
-	kept map[int64][]byte // never changed once they are here
-	few  int              // reads without blocks
+// blockCache keeps the blocks of packs.
+type blockCache struct {
+	recent[blockKey, []byte]
+	few atomic.Int32 // reads without blocks
 }
 
-// at gives what follows an offset, some blockExtra bytes at least unless the file
-// ends before.
-func (b *blocks) at(offset int64) ([]byte, error) {
-	n := offset / blockSize
-	b.mu.Lock()
-	if b.few < fewReads {
-		b.few++
-		b.mu.Unlock()
-		return readUpTo(b.file, offset, blockExtra)
+type blockKey struct {
+	pack   *pack
+	number int64
+}
+
+func newBlockCache() *blockCache {
+	return &blockCache{recent: recent[blockKey, []byte]{most: maxBlocks, size: func(b []byte) int { return len(b) }}}
+}
+
+// piece gives what follows an offset of the pack's file, some blockExtra bytes at
+// least unless the file ends before. Without a cache, just that is read.
+func (p *pack) piece(f io.ReaderAt, offset int64, cache *blockCache) ([]byte, error) {
+	if cache == nil || cache.few.Load() < fewReads {
+		if cache != nil {
+			cache.few.Add(1)
+		}
+		return readUpTo(f, offset, blockExtra)
 	}
-	data, ok := b.kept[n]
-	b.mu.Unlock()
+	key := blockKey{p, offset / blockSize}
+	data, ok := cache.get(key)
 	if !ok {
 		var err error
-		if data, err = readUpTo(b.file, n*blockSize, blockSize+blockExtra); err != nil {
+		if data, err = readUpTo(f, key.number*blockSize, blockSize+blockExtra); err != nil {
 			return nil, err
 		}
-		b.mu.Lock()
-		if len(b.kept) >= maxBlocks || b.kept == nil {
-			b.kept = map[int64][]byte{}
-		}
-		b.kept[n] = data
-		b.mu.Unlock()
+		cache.put(key, data)
 	}
-	if offset -= n * blockSize; offset >= int64(len(data)) {
+	if offset -= key.number * blockSize; offset >= int64(len(data)) {
 		return nil, io.EOF
 	}
 	return data[offset:], nil

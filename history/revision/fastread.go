@@ -27,10 +27,11 @@ func (s *store) readAtMost(h plumbing.Hash, limit int64) (kind plumbing.ObjectTy
 		if !here {
 			continue
 		}
-		if _, err := p.open(); err != nil {
+		f, err := p.open()
+		if err != nil {
 			return 0, nil, false
 		}
-		if kind, data, err = p.readAtMost(p.blocks, offset, limit, &s.bases); err != nil {
+		if kind, data, err = p.readAtMost(f, offset, limit, s.bases, s.blocks); err != nil {
 			return 0, nil, false
 		}
 		return kind, data, sumIs(kind, data, h)

@@ -178,15 +178,15 @@ func FuzzPack(f *testing.F) {
 		p := &pack{name: "fuzz", index: index}
 		r := bytes.NewReader(data)
 		kind, size, err := p.describe(r, offset)
-		var cache baseCache
-		kind2, content, err2 := p.read(r, offset, &cache)
+		cache := newBaseCache()
+		kind2, content, err2 := p.read(r, offset, cache)
 		if err2 != nil {
 			return
 		}
 		if err != nil || kind != kind2 || size != int64(len(content)) {
 			t.Fatalf("described as %s of %d bytes (%v), read as %s of %d", kind, size, err, kind2, len(content))
 		}
-		kind3, again, err := p.read(r, offset, &cache)
+		kind3, again, err := p.read(r, offset, cache)
 		if err != nil || kind3 != kind2 || !bytes.Equal(again, content) {
 			t.Fatalf("from the cache it is another one, %v", err)
 		}

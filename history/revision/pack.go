@@ -30,9 +30,8 @@ type pack struct {
 	name  string // path without extension
 	index *packIndex
 
-	mu     sync.Mutex
-	file   *os.File // opened when first needed
-	blocks *blocks  // of it
+	mu   sync.Mutex
+	file *os.File // opened when first needed
 }
 
 // open gives the pack file and remembers it.
@@ -55,7 +54,7 @@ func (p *pack) open() (*os.File, error) {
 		f.Close()
 		return nil, fmt.Errorf("pack %q is of version %d, 2 and 3 are supported", p.name, v)
 	}
-	p.file, p.blocks = f, &blocks{file: f}
+	p.file = f
 	return f, nil
 }
 
@@ -67,7 +66,7 @@ func (p *pack) close() error {
 		return nil
 	}
 	err := p.file.Close()
-	p.file, p.blocks = nil, nil
+	p.file = nil
 	return err
 }
 
@@ -221,12 +220,12 @@ var errLong = errors.New("object is too long")
 // read gives the whole object at an offset, putting differences together. It
 // does not check the hash.
 func (p *pack) read(f io.ReaderAt, offset int64, cache *baseCache) (plumbing.ObjectType, []byte, error) {
-	return p.readAtMost(&blocks{file: f}, offset, math.MaxInt64, cache)
+	return p.readAtMost(f, offset, math.MaxInt64, cache, nil)
 }
 
 // readAtMost is read for an object of at most limit bytes; of a longer one it
 // gives errLong.
-func (p *pack) readAtMost(b *blocks, offset, limit int64, cache *baseCache) (plumbing.ObjectType, []byte, error) {
+func (p *pack) readAtMost(f io.ReaderAt, offset, limit int64, cache *baseCache, blocks *blockCache) (plumbing.ObjectType, []byte, error) {
 	type step struct {
 		offset int64
 		delta  []byte
@@ -238,14 +237,14 @@ func (p *pack) readAtMost(b *blocks, offset, limit int64, cache *baseCache) (plu
 	)
 	held := int64(0)
 	for {
-		var ok bool
-		if kind, data, ok = cache.get(p, offset); ok {
+		if base, ok := cache.get(baseKey{p, offset}); ok {
+			kind, data = base.kind, base.data
 			if len(steps) == 0 && int64(len(data)) > limit {
 				return 0, nil, errLong
 			}
 			break
 		}
-		piece, err := b.at(offset)
+		piece, err := p.piece(f, offset, blocks)
 		if err != nil {
 			return 0, nil, err
 		}
@@ -260,7 +259,7 @@ func (p *pack) readAtMost(b *blocks, offset, limit int64, cache *baseCache) (plu
 		if held += e.size; held > maxRebuilt {
 			return 0, nil, fmt.Errorf("object of more than %d bytes is not put together", maxRebuilt)
 		}
-		stored, err := inflatePiece(piece[e.data-offset:], b.file, e.data, e.size)
+		stored, err := inflatePiece(piece[e.data-offset:], f, e.data, e.size)
 		if err != nil {
 			return 0, nil, err
 		}
@@ -270,7 +269,7 @@ func (p *pack) readAtMost(b *blocks, offset, limit int64, cache *baseCache) (plu
 		if !e.delta() {
 			kind, data = e.kind, stored
 			if len(steps) > 0 {
-				cache.put(p, offset, kind, data)
+				cache.put(baseKey{p, offset}, baseItem{kind, data})
 			}
 			break
 		}
@@ -290,7 +289,7 @@ func (p *pack) readAtMost(b *blocks, offset, limit int64, cache *baseCache) (plu
 		if data, err = packfile.PatchDelta(data, steps[i].delta); err != nil {
 			return 0, nil, err
 		}
-		cache.put(p, steps[i].offset, kind, data)
+		cache.put(baseKey{p, steps[i].offset}, baseItem{kind, data})
 	}
 	return kind, data, nil
 }

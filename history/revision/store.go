@@ -33,7 +33,8 @@ const (
 type store struct {
 	dirs    []string // object folders, the repository's own first
 	lacking []string // those that are named and not there, which hold it up only where they are needed
-	bases   baseCache
+	bases   *baseCache
+	blocks  *blockCache
 
 	mu    sync.RWMutex
 	packs []*pack
@@ -43,7 +44,7 @@ type store struct {
 }
 
 func newStore(commonDir string) (*store, error) {
-	s := &store{known: map[string]bool{}}
+	s := &store{known: map[string]bool{}, bases: newBaseCache(), blocks: newBlockCache()}
 	if err := s.addDir(filepath.Join(commonDir, "objects"), 0); err != nil {
 		return nil, err
 	}
@@ -295,7 +296,7 @@ func (o *object) read() ([]byte, error) {
 
 func (o *object) content() ([]byte, error) {
 	if o.pack != nil {
-		_, data, err := o.pack.read(o.file, o.offset, &o.store.bases)
+		_, data, err := o.pack.read(o.file, o.offset, o.store.bases)
 		return data, err
 	}
 	f, err := os.Open(o.loose)
