@@ -132,7 +132,7 @@ func (r *Reader) Read(ctx context.Context, w *Walk, prior Prior, progress func(d
 
 func (r *Reader) readBatches(ctx context.Context, list []walked, to chan<- *Batch) error {
 	work, ctx := errgroup.WithContext(ctx)
-	parts := make(chan listed)
+	parts := make(chan listed, 2)
 	work.Go(func() error {
 		defer close(parts)
 		return newScout(r.repo, r.folder).run(ctx, list, r.batch, parts)
