@@ -12,6 +12,7 @@ import (
 	"os"
 	"path/filepath"
 	"slices"
+	"sync"
 
 	"speedtrail/history/revision"
 	"speedtrail/history/trace"
@@ -61,17 +62,18 @@ func appendCommit(data []byte, c *trace.Commit, number int32, previous int64) []
 
 var errDamaged = errors.New("a row of the index is damaged")
 
-var castagnoli = crc32.MakeTable(crc32.Castagnoli)
+// castagnoli is made when it is needed: every command would wait for it.
+var castagnoli = sync.OnceValue(func() *crc32.Table { return crc32.MakeTable(crc32.Castagnoli) })
 
 // sealed ends a blob with its checksum: a bad disk must not change an answer.
 func sealed(data []byte) []byte {
-	return binary.LittleEndian.AppendUint32(data, crc32.Checksum(data, castagnoli))
+	return binary.LittleEndian.AppendUint32(data, crc32.Checksum(data, castagnoli()))
 }
 
 // opened undoes sealed.
 func opened(data []byte) ([]byte, error) {
 	n := len(data) - crc32.Size
-	if n < 0 || binary.LittleEndian.Uint32(data[n:]) != crc32.Checksum(data[:n], castagnoli) {
+	if n < 0 || binary.LittleEndian.Uint32(data[n:]) != crc32.Checksum(data[:n], castagnoli()) {
 		return nil, errDamaged
 	}
 	return data[:n], nil
