@@ -87,6 +87,7 @@ time; --no-index does without and gives the same answer.`,
 }
 
 func (a *app) trace(ctx context.Context, call traceCall) error {
+	defer debug.SetGCPercent(debug.SetGCPercent(littleGarbage))
 	repo, err := a.openRepo()
 	if err != nil {
 		return err
@@ -146,7 +147,6 @@ func (a *app) trace(ctx context.Context, call traceCall) error {
 // pastOf gives the past of the route, from the index where that is possible.
 func (a *app) pastOf(ctx context.Context, repo *revision.Repo, folder string, tip trace.Hash, call traceCall) (*trace.History, error) {
 	reader := trace.NewReader(repo, folder)
-	defer debug.SetGCPercent(debug.SetGCPercent(littleGarbage))
 	if !call.noIndex {
 		h, err := a.indexed(ctx, repo, reader, folder, tip, call.route)
 		if err == nil || !errors.Is(err, index.ErrForeign) && !errors.Is(err, index.ErrFailed) {

@@ -34,6 +34,10 @@ const manyAsked = 64
 // chunkSize is how many commits one row holds at most.
 const chunkSize = 1024
 
+// mostReserved bounds the commits for which room is made before they are read: the
+// file is not trusted so far.
+const mostReserved = 1 << 20
+
 // The flags of a commit in a chunk.
 const (
 	isGap = 1 << iota
@@ -176,6 +180,13 @@ func (x *Index) graph(ctx context.Context, path string) (*graph, error) {
 func (x *Index) extend(ctx context.Context, g *graph) error {
 	// The last chunk may have grown: it is read again. All before it are full.
 	have := int64(len(g.commits))
+	var all int64
+	if err := x.conn.QueryRowContext(ctx, "SELECT coalesce(max(first), 0) + ? FROM chunk WHERE folder = ?", chunkSize, g.folder).Scan(&all); err != nil {
+		return err
+	}
+	if more := all - have; more > 0 && all <= mostReserved {
+		g.commits, g.bases = slices.Grow(g.commits, int(more)), slices.Grow(g.bases, int(more))
+	}
 	rows, err := x.conn.QueryContext(ctx, "SELECT first, commits, data FROM chunk WHERE folder = ? AND first > ? ORDER BY first", g.folder, have-chunkSize)
 	if err != nil {
 		return err
