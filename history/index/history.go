@@ -11,19 +11,28 @@ import (
 // History gives the past of a route up to a commit. It is false where the commit
 // is not in the index: Update adds it.
 func (x *Index) History(ctx context.Context, name string, tip trace.Hash, route string) (h *trace.History, found bool, err error) {
+	// All as of one instant: another process may be adding to the index.
+	err = x.transaction(ctx, "BEGIN", func() error {
+		h, found, err = x.history(ctx, name, tip, route)
+		return err
+	})
+	return h, found, classify(err)
+}
+
+func (x *Index) history(ctx context.Context, name string, tip trace.Hash, route string) (h *trace.History, found bool, err error) {
 	g, err := x.graph(ctx, name)
 	if err != nil {
-		return nil, false, classify(err)
+		return nil, false, err
 	}
 	if _, found = g.number(tip); !found {
 		return nil, false, nil
 	}
 	if err := x.gaps(ctx, g); err != nil {
-		return nil, false, classify(err)
+		return nil, false, err
 	}
 	list, err := x.changes(ctx, g, route)
 	if err != nil {
-		return nil, false, classify(err)
+		return nil, false, err
 	}
 	x.graphs = nil // its commits are the caller's now
 	a := trace.NewAssembly(route, g.commits, g.bases)
@@ -39,7 +48,7 @@ func (x *Index) History(ctx context.Context, name string, tip trace.Hash, route 
 	}
 	for _, c := range list {
 		if c.number < added-1 || c.number >= len(g.commits) {
-			return nil, false, classify(errDamaged)
+			return nil, false, errDamaged
 		}
 		upTo(c.number + 1)
 		if c.version.id == 0 {
@@ -56,7 +65,7 @@ func (x *Index) History(ctx context.Context, name string, tip trace.Hash, route 
 	}
 	upTo(len(g.commits))
 	h, err = a.History(tip)
-	return h, err == nil, classify(err)
+	return h, err == nil, err
 }
 
 // changed is a commit that has a route otherwise than its base.

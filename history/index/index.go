@@ -148,7 +148,7 @@ func (x *Index) prepare(ctx context.Context) error {
 	}
 	// The pages are written in place of a copy of their old content; a kill
 	// leaves the last whole batch.
-	return x.transaction(ctx, func() error {
+	return x.transaction(ctx, "BEGIN IMMEDIATE", func() error {
 		// Another process may have done it meanwhile.
 		if current, err := x.check(ctx); err != nil || current {
 			return err
@@ -188,9 +188,9 @@ func (x *Index) exec(ctx context.Context, statements ...string) error {
 	return nil
 }
 
-// transaction runs work with the index locked for writing.
-func (x *Index) transaction(ctx context.Context, work func() error) error {
-	if err := x.exec(ctx, "BEGIN IMMEDIATE"); err != nil {
+// transaction runs work between a statement that begins a transaction and its end.
+func (x *Index) transaction(ctx context.Context, begin string, work func() error) error {
+	if err := x.exec(ctx, begin); err != nil {
 		return err
 	}
 	err := work()

@@ -372,3 +372,46 @@ func TestOtherFiles(t *testing.T) {
 		t.Error(err)
 	}
 }
+
+// What another process adds while a question is answered does not mix with the
+// answer.
+func TestHistoryWhileAnotherAdds(t *testing.T) {
+	d := draw(t, 3)
+	file := filepath.Join(t.TempDir(), "index.db")
+	old, ok := ancestor(t, d, "HEAD~6")
+	if !ok {
+		t.Skip("the history is too short")
+	}
+	x, y := mustOpen(t, file), mustOpen(t, file)
+	if err := x.Update(context.Background(), trace.NewReader(d.repo, "."), ".", old, nil); err != nil {
+		t.Fatal(err)
+	}
+	done := make(chan error)
+	go func() {
+		done <- y.Update(context.Background(), trace.NewReader(d.repo, ".").InBatches(1), ".", d.tip, nil)
+	}()
+	for adding := true; adding; {
+		select {
+		case err := <-done:
+			if err != nil {
+				t.Fatal(err)
+			}
+			adding = false
+		default:
+		}
+		d.check(t, x, old, "R1")
+	}
+}
+
+func ancestor(t *testing.T, d *drawn, rev string) (trace.Hash, bool) {
+	t.Helper()
+	c, err := d.repo.Resolve(rev)
+	if err != nil {
+		return trace.Hash{}, false
+	}
+	h, err := trace.ParseHash(c.Hash)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return h, true
+}
