@@ -9,6 +9,7 @@ package history
 import (
 	"context"
 	"fmt"
+	"slices"
 	"strings"
 
 	"speedtrail/history/approval"
@@ -20,7 +21,8 @@ import (
 
 // ReadLine follows the line of approval through a ledger. problems are the
 // entries that do not count, with the reason; they do not stop the reading. An
-// entry that does not follow in the chain is an error of class ledger.ErrDamaged.
+// entry that does not follow in the chain, and an assessment whose row does not
+// repeat it, are errors of class ledger.ErrDamaged.
 func ReadLine(ctx context.Context, l *ledger.Ledger) (line *approval.Line, problems []error, err error) {
 	line = approval.New(l.ID())
 	problems, err = ReadOn(ctx, l, line)
@@ -43,12 +45,15 @@ func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problem
 		}
 		var a *approval.Assessment
 		if e.Kind == chain.Assessment {
-			number, err := l.NumberOf(ctx, e.Seq)
+			row, err := l.AssessmentOf(ctx, e.Seq)
 			if err != nil {
 				return nil, err
 			}
 			if e.unreadable == nil {
-				a = AssessmentOf(line, number, e.digest, e.doc)
+				if err := repeats(row, e); err != nil {
+					return nil, ledger.Damaged(err)
+				}
+				a = AssessmentOf(line, row.Number, e.digest, e.doc)
 			}
 		}
 		if err := line.Add(e.Entry, a); err != nil {
@@ -56,6 +61,44 @@ func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problem
 		}
 	}
 	return problems, nil
+}
+
+// repeats checks that the row of an assessment, which lists are made of, says what
+// its entry says.
+func repeats(row ledger.AssessmentRow, e *opened) error {
+	c := &e.doc.Computed
+	changes := int64(0)
+	for i := range c.Routes {
+		for k := range c.Routes[i].Changes {
+			changes += int64(len(c.Routes[i].Changes[k].Trains))
+		}
+	}
+	requests := make([]string, len(c.Requests))
+	for i := range requests {
+		requests[i] = c.Requests[i].ID
+	}
+	if !slices.Equal(row.Requests, requests) {
+		return fmt.Errorf("the rows of assessment %d have the requests %s, its entry says %s", row.Number, listed(row.Requests), listed(requests))
+	}
+	for _, x := range []struct {
+		name       string
+		have, want any
+	}{
+		{"digest", row.Digest, e.digest}, {"base", row.Base, c.Base.Commit}, {"target", row.Target, c.Target.Commit}, {"folder", row.Folder, c.Folder},
+		{"dataset", row.Dataset, c.Dataset}, {"speed_changes", row.Changes, changes}, {"findings", row.Findings, int64(len(c.Findings))},
+	} {
+		if x.have != x.want {
+			return fmt.Errorf("the row of assessment %d has the %s %v, its entry says %v", row.Number, x.name, x.have, x.want)
+		}
+	}
+	return nil
+}
+
+func listed(names []string) string {
+	if len(names) == 0 {
+		return "none"
+	}
+	return strings.Join(names, ", ")
 }
 
 // AssessmentOf gives what the line of approval needs of an assessment.

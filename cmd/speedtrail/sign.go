@@ -81,15 +81,15 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	if err != nil {
 		return err
 	}
-	if err := a.recompute(ctx, doc, row.Digest); err != nil {
-		return err
-	}
 	line, _, err := history.ReadLine(ctx, l)
 	if err != nil {
 		return err
 	}
 	if x := line.Assessment(number); x == nil || x.Digest != row.Digest {
 		return ledger.Damaged(fmt.Errorf("the digest in the row of assessment %d is not that of its entry", number))
+	}
+	if err := a.recompute(ctx, doc, row.Digest); err != nil {
+		return err
 	}
 	if s.statement != "" {
 		brought, err := s.brought()

@@ -210,6 +210,18 @@ func (l *Ledger) Assessment(ctx context.Context, number int64) (AssessmentRow, [
 	return a, e.Body, err
 }
 
+// AssessmentOf gives the row that repeats the assessment of an entry.
+func (l *Ledger) AssessmentOf(ctx context.Context, entry int64) (AssessmentRow, error) {
+	a, err := l.scan(l.conn.QueryRowContext(ctx, selectAssessment+"WHERE a.entry = ?", entry))
+	if errors.Is(err, sql.ErrNoRows) {
+		return a, fail(ErrDamaged, fmt.Errorf("the assessment of entry %d has no row", entry))
+	}
+	if err == nil {
+		a.Requests, err = l.requests(ctx, a.Number)
+	}
+	return a, classify(err)
+}
+
 // Assessments lists all assessments, newest first.
 func (l *Ledger) Assessments(ctx context.Context) ([]AssessmentRow, error) {
 	rows, err := l.conn.QueryContext(ctx, selectAssessment+"ORDER BY a.number DESC")
