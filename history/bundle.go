@@ -83,6 +83,9 @@ func readExport(ctx context.Context, r io.Reader) iter.Seq2[ledger.Restored, err
 		line := 0
 		for s.Scan() {
 			line++
+			if len(bytes.TrimSpace(s.Bytes())) == 0 {
+				continue // as an editor leaves at the end
+			}
 			e, err := readLine(s.Bytes())
 			if err == nil {
 				err = chain.Check(head, e.Entry)

@@ -256,6 +256,10 @@ func (r *reader) locate(route *Route, p chainage.Point, c table.Cell, column str
 	switch {
 	case errors.Is(err, chainage.ErrOutside):
 		detail = fmt.Sprintf(", which runs from %s to %s", segments[0].From.KM(), segments[len(segments)-1].To.KM())
+	case errors.Is(err, chainage.ErrMissingPosts):
+		if j, ok := route.Track.Skipped(p.Chainage); ok {
+			detail = ": from " + j.Arriving.KM() + " the posts go on at " + j.Leaving.KM()
+		}
 	case errors.Is(err, chainage.ErrAmbiguous):
 		detail = ": write " + readings(p, route.Track)
 	case errors.Is(err, chainage.ErrNoOccurrence):

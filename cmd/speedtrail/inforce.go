@@ -169,6 +169,9 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	if err := s.complete(&statement, key, p.Parsed); err != nil {
 		return err
 	}
+	if since.After(statement.Time) {
+		a.remark("! %s lies in the future: until then the revision is not in force, and after it nothing asks whether it went into service", since.Format(signoff.TimeLayout))
+	}
 	result, err := s.finish(a, statement, key)
 	if err != nil || result == nil {
 		return err

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"io/fs"
 	"os"
 	"path/filepath"
 	"slices"
@@ -85,6 +86,10 @@ func writeFile(name string, result func(io.Writer) error) (err error) {
 	}
 	f, err := os.CreateTemp(filepath.Dir(name), "."+filepath.Base(name)+".*")
 	if err != nil {
+		var inner *fs.PathError
+		if errors.As(err, &inner) { // the name of the new file tells nobody anything
+			err = fmt.Errorf("folder %s: %w", source.Quote(filepath.Dir(name)), inner.Err)
+		}
 		return err
 	}
 	defer func() {

@@ -251,6 +251,9 @@ func located(route *schema.Route, option, text string) (unit.Distance, error) {
 	if err != nil {
 		segments := route.Track.Segments()
 		hint := "route " + route.ID + " runs from " + segments[0].From.KM() + " to " + segments[len(segments)-1].To.KM()
+		if j, ok := route.Track.Skipped(p.Chainage); ok && errors.Is(err, chainage.ErrMissingPosts) {
+			hint = "from " + j.Arriving.KM() + " the posts go on at " + j.Leaving.KM()
+		}
 		if errors.Is(err, chainage.ErrAmbiguous) {
 			hint = "write the occurrence along the track: " + text + "#1, " + text + "#2"
 		}

@@ -40,6 +40,11 @@ are claims.`,
 				}
 				o.Against = append(o.Against, h)
 			}
+			for _, s := range anchors {
+				if !chain.IsHash(s) {
+					return badCall("the hash of an anchor is printed when it is recorded", "%q is no hash of 64 lower-case hexadecimal digits", s)
+				}
+			}
 			if !ledgerOnly {
 				o.Checker = &checker{a}
 			}

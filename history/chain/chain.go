@@ -68,6 +68,9 @@ func (h Head) String() string { return strconv.FormatInt(h.Seq, 10) + ":" + h.Ha
 
 var hashForm = regexp.MustCompile(`^[0-9a-f]{64}$`)
 
+// IsHash tells whether a text has the form of an entry's hash.
+func IsHash(s string) bool { return hashForm.MatchString(s) }
+
 // ParseHead reads "SEQ:HASH".
 func ParseHead(s string) (Head, error) {
 	seq, hash, _ := strings.Cut(s, ":")

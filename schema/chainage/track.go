@@ -130,6 +130,17 @@ func (t *Track) Locate(p Point) (unit.Distance, error) {
 	return at, nil
 }
 
+// Skipped gives the jump among whose missing posts a chainage lies; false where it
+// lies among none.
+func (t *Track) Skipped(km unit.Distance) (Jump, bool) {
+	for i, s := range t.segments[1:] {
+		if j := (Jump{t.segments[i].To, s.From}); j.Arriving < km && km < j.Leaving {
+			return j, true
+		}
+	}
+	return Jump{}, false
+}
+
 // Occurrences counts the places along the track that read km.
 func (t *Track) Occurrences(km unit.Distance) int {
 	n := 0
