@@ -232,7 +232,6 @@ func TestRepresentedPermanently(t *testing.T) {
 		base, target rows
 		trains       []schema.Train
 		want         []string
-		bug          string
 	}{
 		{
 			name: "hidden altogether, seen without", base: nominal(60, fleetRow{from: 0, to: 1000, basic: 40, temporary: true}), target: nominal(80, fleetRow{from: 0, to: 1000, basic: 40, temporary: true}),
@@ -276,9 +275,6 @@ func TestRepresentedPermanently(t *testing.T) {
 	}
 	for _, test := range tests {
 		t.Run(test.name, func(t *testing.T) {
-			if test.bug != "" {
-				t.Skip("BUG: " + test.bug)
-			}
 			checkFleetText(t, test.base, test.target, test.trains, test.want)
 		})
 	}

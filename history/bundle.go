@@ -3,7 +3,9 @@ package history
 import (
 	"bufio"
 	"bytes"
+	"cmp"
 	"context"
+	"errors"
 	"fmt"
 	"io"
 	"iter"
@@ -80,11 +82,16 @@ func readExport(ctx context.Context, r io.Reader) iter.Seq2[ledger.Restored, err
 		s := bufio.NewScanner(r)
 		s.Buffer(make([]byte, 0, 1<<16), maxLine)
 		var head chain.Head
-		line := 0
+		line, blank := 0, 0
 		for s.Scan() {
 			line++
 			if len(bytes.TrimSpace(s.Bytes())) == 0 {
-				continue // as an editor leaves at the end
+				blank = cmp.Or(blank, line) // an editor leaves some at the end
+				continue
+			}
+			if blank > 0 {
+				yield(ledger.Restored{}, &ImportError{blank, errors.New("it is blank, and entries follow it")})
+				return
 			}
 			e, err := readLine(s.Bytes())
 			if err == nil {

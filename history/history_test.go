@@ -141,7 +141,7 @@ func TestImportRefuses(t *testing.T) {
 		"a line twice":       {append(append([]string{}, lines[:5]...), lines[4:]...), 6, "entry 5 is not the next number"},
 		"a member more":      {edit(3, `{"body"`, `{"note":"x","body"`), 3, "note"},
 		"a member twice":     {edit(3, `"seq":3`, `"seq":3,"seq":3`), 3, "duplicate"},
-		"a blank line":       {append([]string{lines[0], "\n"}, lines[1:]...), 2, ""},
+		"a blank line":       {append([]string{lines[0], "\n"}, lines[1:]...), 2, "it is blank, and entries follow it"},
 		"no JSON":            {append([]string{"entries\n"}, lines...), 1, ""},
 		"half a line":        {append(append([]string{}, lines[:16]...), lines[16][:100]), 17, ""},
 		"nothing":            {nil, 0, "no entry was given"},

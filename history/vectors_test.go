@@ -30,7 +30,6 @@ type vector struct {
 	file, name string
 	head       string // the lines of the case, as they stand in the file
 	breaks     string // the kind of failure
-	bug        string
 	say        bool
 	steps      []string
 	found      []string
@@ -58,8 +57,6 @@ func readVector(t *testing.T, file string) *vector {
 			v.imported = append(v.imported, line)
 		case word == "breaks":
 			v.breaks = rest
-		case word == "bug":
-			v.bug = rest
 		case line == "say":
 			v.say = true
 		default:
@@ -322,12 +319,6 @@ func TestVectors(t *testing.T) {
 func (v *vector) compare(t *testing.T, found, imported []string) {
 	t.Helper()
 	failed := slices.ContainsFunc(found, isFailure)
-	if v.bug != "" {
-		if !failed || slices.ContainsFunc(found, func(s string) bool { return strings.HasPrefix(s, "panic: ") }) {
-			t.Skip("BUG: " + v.bug + "; found: " + strings.Join(found, " | "))
-		}
-		t.Error("what the bug line says is repaired: remove the line and run with -update")
-	}
 	if (v.breaks == "nothing") == failed {
 		t.Errorf("it breaks %s, and this is found:\n  %s", v.breaks, strings.Join(found, "\n  "))
 	}

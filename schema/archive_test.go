@@ -20,7 +20,6 @@ const faultsFile = "faults"
 type directives struct {
 	escapes bool                   // \xNN stands for a byte
 	types   map[string]fs.FileMode // what a path is instead of a file
-	bug     string                 // why the expected faults do not come out yet
 }
 
 func readDirectives(comment string) directives {
@@ -36,8 +35,6 @@ func readDirectives(comment string) directives {
 			d.types[value] = fs.ModeIrregular
 		case "device":
 			d.types[value] = fs.ModeDevice
-		case "bug":
-			d.bug = value
 		}
 	}
 	return d

@@ -68,7 +68,6 @@ type example struct {
 	at    time.Time
 	files files
 	want  string
-	bug   string // why it does not come out yet
 }
 
 // examples of each id. Those that want nothing are sound and lie close to
@@ -96,9 +95,6 @@ func TestExamples(t *testing.T) {
 		fires, sound := 0, 0
 		for _, x := range examples[id] {
 			t.Run(id+"/"+x.name, func(t *testing.T) {
-				if x.bug != "" {
-					t.Skip("BUG: " + x.bug)
-				}
 				at := x.at
 				if at.IsZero() {
 					at = then
