@@ -163,19 +163,10 @@ func (x *packIndex) readAt(b []byte, at int64) error {
 
 // search gives the position of the first hash that is not below h.
 func (x *packIndex) search(h plumbing.Hash) (int64, error) {
-	low, high := x.bucket(h[0])
 	if data := x.inMemory(); data != nil {
-		for low < high {
-			mid := (low + high) / 2
-			at := idxHashes + mid*hashSize
-			if bytes.Compare(data[at:at+hashSize], h[:]) < 0 {
-				low = mid + 1
-			} else {
-				high = mid
-			}
-		}
-		return low, nil
+		return x.searchIn(data, h), nil
 	}
+	low, high := x.bucket(h[0])
 	for low < high {
 		mid := (low + high) / 2
 		at, err := x.hashAt(mid)
@@ -191,30 +182,65 @@ func (x *packIndex) search(h plumbing.Hash) (int64, error) {
 	return low, nil
 }
 
+// searchIn is search in the whole index.
+func (x *packIndex) searchIn(data []byte, h plumbing.Hash) int64 {
+	low, high := x.bucket(h[0])
+	for low < high {
+		mid := (low + high) / 2
+		at := idxHashes + mid*hashSize
+		if bytes.Compare(data[at:at+hashSize], h[:]) < 0 {
+			low = mid + 1
+		} else {
+			high = mid
+		}
+	}
+	return low
+}
+
 // offset gives where in the pack an object begins.
 func (x *packIndex) offset(h plumbing.Hash) (offset int64, ok bool, err error) {
+	if data := x.inMemory(); data != nil {
+		// Most objects of many packs are not in this one.
+		i := x.searchIn(data, h)
+		if at := idxHashes + i*hashSize; i >= x.count() || !bytes.Equal(data[at:at+hashSize], h[:]) {
+			return 0, false, nil
+		}
+		return x.offsetAt(i, func(at int64) ([]byte, error) {
+			if at > int64(len(data))-8 {
+				return nil, io.ErrUnexpectedEOF
+			}
+			return data[at:], nil
+		})
+	}
 	i, err := x.search(h)
 	if err != nil || i >= x.count() {
 		return 0, false, err
 	}
-	at, err := x.hashAt(i)
-	if err != nil || at != h {
+	if at, err := x.hashAt(i); err != nil || at != h {
 		return 0, false, err
 	}
+	return x.offsetAt(i, func(at int64) ([]byte, error) {
+		b := make([]byte, 8)
+		return b, x.readAt(b, at)
+	})
+}
+
+// offsetAt reads the offset at a position; read gives 8 bytes from a place on,
+// which two checksums follow.
+func (x *packIndex) offsetAt(i int64, read func(at int64) ([]byte, error)) (offset int64, ok bool, err error) {
 	offsets := idxHashes + x.count()*(hashSize+4)
-	var b [8]byte
-	if err := x.readAt(b[:4], offsets+i*4); err != nil {
+	b, err := read(offsets + i*4)
+	if err != nil {
 		return 0, false, err
 	}
-	short := binary.BigEndian.Uint32(b[:4])
+	short := binary.BigEndian.Uint32(b)
 	if short>>31 == 0 {
 		return int64(short), true, nil
 	}
-	long := offsets + x.count()*4 + int64(short&^(1<<31))*8
-	if err := x.readAt(b[:], long); err != nil {
+	if b, err = read(offsets + x.count()*4 + int64(short&^(1<<31))*8); err != nil {
 		return 0, false, err
 	}
-	return int64(binary.BigEndian.Uint64(b[:]) &^ (1 << 63)), true, nil
+	return int64(binary.BigEndian.Uint64(b) &^ (1 << 63)), true, nil
 }
 
 // withPrefix calls fn for each hash that begins with the first digits half bytes

@@ -7,6 +7,8 @@ import (
 	"iter"
 
 	"github.com/go-git/go-git/v5/plumbing"
+
+	"speedtrail/schema/common"
 )
 
 // Whoever goes through thousands of commits reads them and their trees with what
@@ -113,6 +115,15 @@ func (t Tree) changes(before Tree) ([]TreeChange, error) {
 	var added []string // names that before does not have, or has for another kind
 	var old treeEntry
 	oldLen, oldKey := 0, ""
+	// What both begin with is passed over, but for the last of its lines, which
+	// the next one has to follow.
+	for same := common.Start(a, b); ; {
+		n := rawEntry(b)
+		if n == 0 || n > same {
+			break
+		}
+		lastRaw, a, b, same = b[:n], a[n:], b[n:], same-n
+	}
 	for len(a) > 0 || len(b) > 0 {
 		n := rawEntry(b)
 		if len(b) > 0 && n == 0 {
