@@ -6,6 +6,7 @@ import (
 	"database/sql/driver"
 	"errors"
 	"sync"
+	"time"
 
 	"github.com/mattn/go-sqlite3"
 
@@ -42,9 +43,12 @@ func (x *Index) Update(ctx context.Context, reader *trace.Reader, name string, t
 	return classify(errors.Join(err, b.finish(ctx)))
 }
 
-// mostCommits is how many commits one transaction adds at most, some batch more:
-// while it lasts, another process that adds has to wait.
-const mostCommits = 4096
+// A transaction ends with the batch in which it has added so many commits, or has
+// lasted so long: another process that adds has to wait for its end.
+const (
+	mostCommits = 4096
+	longest     = time.Second
+)
 
 // builder adds batches. It is the trace.Prior of its reading, which asks while a
 // batch is added.
@@ -59,6 +63,7 @@ type builder struct {
 	ids   map[trace.Key]int64 // of versions
 	known int64               // the greatest id that was given; -1: others give ids, too
 	open  bool                // a transaction is under way
+	begun time.Time           // when it began
 	first int                 // how many commits there were when it began
 
 	find       *sql.Stmt
@@ -146,7 +151,7 @@ func (b *builder) add(ctx context.Context, batch *trace.Batch) error {
 		b.rollback(ctx)
 		return err
 	}
-	if added := len(b.g.commits) - b.first; added < min(b.first, mostCommits) {
+	if added := len(b.g.commits) - b.first; added < min(b.first, mostCommits) && time.Since(b.begun) < longest {
 		return nil
 	}
 	return b.finish(ctx)
@@ -158,7 +163,7 @@ func (b *builder) start(ctx context.Context) error {
 	if err := b.x.exec(ctx, "BEGIN IMMEDIATE"); err != nil {
 		return err
 	}
-	b.open = true
+	b.open, b.begun = true, time.Now()
 	err := b.catchUp(ctx)
 	if err != nil {
 		b.rollback(ctx)
