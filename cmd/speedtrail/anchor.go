@@ -210,6 +210,9 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 	if err := s.complete(&statement, key, p.Parsed); err != nil {
 		return err
 	}
+	if err := a.foresee(line, statement, key); err != nil {
+		return err
+	}
 	result, err := s.finish(a, statement, key)
 	if err != nil || result == nil {
 		return err

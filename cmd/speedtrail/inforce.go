@@ -169,6 +169,12 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	if err := s.complete(&statement, key, p.Parsed); err != nil {
 		return err
 	}
+	if err := a.foresee(line, statement, key); err != nil {
+		return err
+	}
+	if !line.ApprovedContent(folder, statement.Content) && !strings.HasPrefix(corrects, approval.Voids) {
+		a.remark("! the revision is not approved: finding %s", history.ServiceUnapproved)
+	}
 	if since.After(statement.Time) {
 		a.remark("! %s lies in the future: until then the revision is not in force, and after it nothing asks whether it went into service", since.Format(signoff.TimeLayout))
 	}
@@ -176,13 +182,7 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	if err != nil || result == nil {
 		return err
 	}
-	if err := a.recordSigned(ctx, l, line, chain.InForce, result); err != nil {
-		return err
-	}
-	if !line.ApprovedContent(folder, statement.Content) && !strings.HasPrefix(corrects, approval.Voids) {
-		a.remark("! the revision is not approved: finding %s", history.ServiceUnapproved)
-	}
-	return nil
+	return a.recordSigned(ctx, l, line, chain.InForce, result)
 }
 
 func routeByID(d *schema.Dataset, id string) *schema.Route {
@@ -291,8 +291,14 @@ func (a *app) inforceLog(ctx context.Context) error {
 			}
 			return indentedJSON(w, serviceLog{"speedtrail-inforce 1", records, list})
 		}
-		for _, r := range records {
-			fmt.Fprintf(w, "%s\n", wrap(r.words(), a.style().Width))
+		for i, r := range records {
+			if i > 0 {
+				fmt.Fprintln(w)
+			}
+			fmt.Fprintf(w, "%s\n", strings.ReplaceAll(wrap(r.words(), a.style().Width-2), "\n", "\n  "))
+		}
+		if len(records) > 0 && len(findings)+len(problems) > 0 {
+			fmt.Fprintln(w)
 		}
 		if len(records) == 0 {
 			fmt.Fprintf(w, "No revision is recorded as in service. Record one with: speedtrail inforce record REV --since T\n")

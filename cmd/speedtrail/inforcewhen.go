@@ -2,7 +2,6 @@ package main
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"io"
 	"strings"
@@ -13,10 +12,8 @@ import (
 	"speedtrail/history/approval"
 	"speedtrail/history/signoff"
 	"speedtrail/schema"
-	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/source"
-	"speedtrail/schema/unit"
 )
 
 // inForceAnswer is the JSON form of what was in force at an instant.
@@ -124,17 +121,9 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 	if route == nil {
 		return nil, badCall("routes in force then: "+joined(routeIDs(data)), "there is no route %q", id)
 	}
-	p, err := chainage.ParsePoint(at)
-	var s unit.Distance
-	if err == nil {
-		s, err = route.Track.Locate(p)
-	}
+	s, err := located(route, "--at", at)
 	if err != nil {
-		hint := "a position of the route, such as " + route.Track.Begins(0).String()
-		if errors.Is(err, chainage.ErrAmbiguous) {
-			hint = fmt.Sprintf("write %s#1, or another occurrence", p.Chainage.KM())
-		}
-		return nil, badCall(hint, "--at %s is %v", source.Quote(at), err)
+		return nil, err
 	}
 	inForce := func(t *schema.TemporaryRow) bool { return t.Valid.Overlaps(when, when) }
 	var list []pointSpeed
@@ -163,7 +152,7 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 
 func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 	if x.Record == nil {
-		_, err := fmt.Fprintf(w, "Nothing is recorded as in force at %s.\nhead of the ledger %s\n", x.When, x.Head)
+		_, err := fmt.Fprintf(w, "Nothing is recorded as in force at %s; speedtrail inforce lists what is.\nhead of the ledger %s\n", x.When, x.Head)
 		return err
 	}
 	fmt.Fprintf(w, "In force at %s:\n%s\n%s\n", x.When, wrap(x.Record.words(), width), wrap(source.Visible("commit "+x.Commit+", "+x.Subject), width))
@@ -177,10 +166,10 @@ func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		governed := strings.ReplaceAll(wrap(source.Visible(strings.Join(s.Governed, "; ")), max(30, width-indent)), "\n", "\n"+strings.Repeat(" ", indent))
 		fmt.Fprintf(w, "  %-14s %3d km/h   %s\n", source.Visible(s.Train), s.Speed, governed)
 	}
-	fmt.Fprintf(w, "\nEvidence: recorded %s as entry %d, stated %s, key %s\n", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)
+	fmt.Fprintf(w, "\n%s\n", wrap(source.Visible(fmt.Sprintf("Evidence: recorded %s as entry %d, stated %s, key %s", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)), width))
 	for _, e := range x.Signed {
 		fmt.Fprintf(w, "%s\n", wrap(source.Visible(fmt.Sprintf("assessment %d: %s as %s by %s at %s, entry %d, key %s", e.Assessment, e.Decision, e.Role, e.Signer, e.Time, e.Entry, e.Fingerprint)), width))
 	}
-	_, err := fmt.Fprintf(w, "head of the ledger %s; speedtrail verify proves the chain and the signatures\n", x.Head)
+	_, err := fmt.Fprintf(w, "head of the ledger %s\nspeedtrail verify proves the chain and the signatures\n", x.Head)
 	return err
 }

@@ -24,9 +24,14 @@ func (a *app) outputFlags(c *cobra.Command, formats ...string) {
 	c.Flags().StringVar(&a.format, "format", formats[0], strings.Join(formats, ", "))
 	c.Flags().StringVarP(&a.outTo, "out", "o", "", "write the result to a `file`, whole or not at all; its ending can choose the format")
 	c.PreRunE = func(c *cobra.Command, _ []string) error {
-		if !c.Flags().Changed("format") && a.outTo != "" {
+		if !c.Flags().Changed("format") {
+			// The flags of all commands are one variable, and have the default of the
+			// last of them so far.
+			a.format = formats[0]
 			if f := formatOf(a.outTo); slices.Contains(formats, f) {
 				a.format = f
+			} else if f != "" {
+				return badCall("choose with --format: "+strings.Join(formats, ", "), "the ending of %s is that of no format", source.Quote(a.outTo))
 			}
 		}
 		if !slices.Contains(formats, a.format) {

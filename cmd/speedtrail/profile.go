@@ -44,7 +44,11 @@ those in force at that instant.`,
 				return badCall("--direction is nominal, reverse or both", "unknown value %q for --direction", direction)
 			}
 			if route == "" || len(trains) == 0 {
-				return badCall("usage: "+c.UseLine(), "--route and --train are needed")
+				missing := "--train is missing"
+				if route == "" {
+					missing = "--route is missing"
+				}
+				return badCall("usage: "+c.UseLine(), "%s", missing)
 			}
 			return a.profile(c.Context(), rev, route, trains, directions, on)
 		},

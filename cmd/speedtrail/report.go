@@ -32,7 +32,7 @@ same assessment gives the same bytes.`,
 			return a.report(c.Context(), n)
 		},
 	}
-	a.outputFlags(c, "html", "text", "markdown", "csv", "json")
+	a.outputFlags(c, "text", "html", "markdown", "csv", "json")
 	return c
 }
 

@@ -120,6 +120,9 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	if err := s.complete(&statement, key, x.Policy.Parsed); err != nil {
 		return err
 	}
+	if err := a.foresee(line, statement, key); err != nil {
+		return err
+	}
 	for _, r := range line.SignOffs() {
 		if r.Assessment == number && r.Role == s.role && r.Signer == statement.Signer {
 			a.remark("%s has signed as %s already, in entry %d: %s; the later decision counts", source.Visible(r.Signer), source.Visible(r.Role), r.Entry.Seq, source.Visible(r.Decision))

@@ -242,6 +242,18 @@ func refused(err error) error {
 	return &callError{err.Error(), "nothing was recorded"}
 }
 
+// foresee refuses what could not be recorded, before anybody is asked to sign it.
+func (a *app) foresee(line *approval.Line, s signoff.Statement, key ssh.Signer) error {
+	fingerprint := ""
+	if key != nil {
+		fingerprint = ssh.FingerprintSHA256(key.PublicKey())
+	}
+	if err := line.Foresee(s, fingerprint, time.Now()); errors.Is(err, approval.ErrRefused) {
+		return refused(err)
+	}
+	return nil // what else is wrong, its signing says
+}
+
 // recordSigned checks and appends a signed statement. line is what was read of the
 // ledger before.
 func (a *app) recordSigned(ctx context.Context, l *ledger.Ledger, line *approval.Line, kind chain.Kind, s *signed) error {

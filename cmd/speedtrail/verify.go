@@ -112,6 +112,10 @@ func (a *app) writeVerification(r *history.Result, id string) error {
 		head = r.Head.String()
 	}
 	out := verified{Format: "speedtrail-verification 1", Ledger: id, Head: head, Good: r.Good(), Problems: []verifiedProblem{}, Proved: append([]string{}, r.Proved...), Unproved: append([]string{}, r.Unproved...)}
+	if id != "" {
+		r.Unproved = append(r.Unproved, "whether what went into service was approved; speedtrail inforce says that")
+		out.Unproved = append([]string{}, r.Unproved...)
+	}
 	for _, p := range r.Problems {
 		out.Problems = append(out.Problems, verifiedProblem{p.Entry, p.Kind, p.Text})
 	}
@@ -143,7 +147,6 @@ func printVerification(w io.Writer, r *history.Result, id string, width int) err
 	if id == "" {
 		return nil
 	}
-	fmt.Fprintln(w, wrap("left open: whether what went into service was approved; speedtrail inforce says that", width))
 	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\n", id, r.Head)
 	return err
 }

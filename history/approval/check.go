@@ -56,18 +56,34 @@ func (l *Line) Check(kind chain.Kind, body Signed, recorded time.Time) (Record, 
 		return Record{}, refuse("a statement of kind %s cannot serve as %s", s.Kind, k.statement)
 	}
 	r := Record{Statement: s, Recorded: recorded, Signature: []byte(body.Signature), Text: []byte(body.Statement)}
-	switch kind {
-	case chain.SignOff:
-		err = l.checkSignOff(&r)
-	case chain.InForce:
-		err = l.checkInForce(&r)
-	case chain.Revocation:
-		err = l.checkRevocation(&r)
+	if err := l.check(&r); err != nil {
+		return r, err
 	}
-	if err == nil {
-		r.Entry = chain.Head{Seq: int64(len(l.heads)) + 1}
+	r.Entry = chain.Head{Seq: int64(len(l.heads)) + 1}
+	return r, nil
+}
+
+func (l *Line) check(r *Record) error {
+	switch r.Kind {
+	case signoff.SignOff:
+		return l.checkSignOff(r)
+	case signoff.InForce:
+		return l.checkInForce(r)
+	case signoff.Revocation:
+		return l.checkRevocation(r)
 	}
-	return r, err
+	return refuse("a statement of kind %s is not recorded by itself", r.Kind)
+}
+
+// Foresee tells why a statement could not be recorded at a time if the key with a
+// fingerprint signed it; without a fingerprint, if a key that may did. Nobody need
+// sign what is refused afterwards.
+func (l *Line) Foresee(s signoff.Statement, fingerprint string, recorded time.Time) error {
+	text, err := s.Text()
+	if err != nil {
+		return err
+	}
+	return l.check(&Record{Statement: s, Recorded: recorded, Text: text, Fingerprint: fingerprint, foreseen: true})
 }
 
 // checkForm checks what all statements have in common but the signature: the
@@ -93,16 +109,20 @@ func (l *Line) checkForm(r *Record) error {
 
 // checkSignature checks the signer and the signature by a policy.
 func (l *Line) checkSignature(r *Record, p *schema.Policy) error {
-	_, fingerprint, err := signoff.Key(r.Signature)
-	if err != nil {
-		return err
+	if r.foreseen && r.Fingerprint == "" {
+		return nil
 	}
-	r.Fingerprint = fingerprint
-	if revocation, ok := l.revoked[fingerprint]; ok {
-		return refuse("the key %s was revoked by entry %d: %s", fingerprint, revocation.Entry.Seq, revocation.Reason)
+	if !r.foreseen {
+		var err error
+		if _, r.Fingerprint, err = signoff.Key(r.Signature); err != nil {
+			return err
+		}
 	}
-	key, err := allowedKey(p, fingerprint, r.Signer, r.Time, r.Recorded)
-	if err != nil {
+	if revocation, ok := l.revoked[r.Fingerprint]; ok {
+		return refuse("the key %s was revoked by entry %d: %s", r.Fingerprint, revocation.Entry.Seq, revocation.Reason)
+	}
+	key, err := allowedKey(p, r.Fingerprint, r.Signer, r.Time, r.Recorded)
+	if err != nil || r.foreseen {
 		return err
 	}
 	return signoff.Verify(r.Text, r.Signature, key.Public)
@@ -231,6 +251,9 @@ func (l *Line) checkSignOff(r *Record) error {
 	newest, err := usable(l.Newest(a.Folder), "the newest approved revision")
 	if err != nil {
 		return err
+	}
+	if r.foreseen && r.Fingerprint == "" {
+		return nil
 	}
 	if _, err := allowedKey(newest, r.Fingerprint, r.Signer, r.Time, r.Recorded); err != nil {
 		return refuse("by the newest approved policy: %v", strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))

@@ -83,6 +83,8 @@ type Record struct {
 	Fingerprint string
 	Signature   []byte
 	Text        []byte
+
+	foreseen bool // nobody has signed it so far: Foresee
 }
 
 // AnchorRecord is the root of a line of approval.

@@ -1,6 +1,7 @@
 package render
 
 import (
+	"maps"
 	"slices"
 	"strings"
 
@@ -44,6 +45,42 @@ func declaredWords(c *assessment.Computed, r *assessment.Route, pieces int) stri
 		parts = append(parts, text)
 	}
 	return strings.Join(parts, "; ")
+}
+
+// declaredFamily says which requests hold changes that differ only by the length of
+// the train, and for which trains; empty where that was not looked at.
+func declaredFamily(c *assessment.Computed, r *assessment.Route, f family) string {
+	if c.Options.NoRequests {
+		return ""
+	}
+	ids := declarationIDs(c)
+	trains := map[string][]int{}
+	for _, x := range f.all {
+		var by []string
+		for _, p := range r.Pieces[x.Pieces] {
+			id := "outside"
+			if p.By >= 0 {
+				id = ids[p.By]
+			}
+			if !slices.Contains(by, id) {
+				by = append(by, id)
+			}
+		}
+		text := strings.Join(by, " and ")
+		if text == "" {
+			text = "outside"
+		}
+		trains[text] = append(trains[text], x.Trains...)
+	}
+	words := slices.Sorted(maps.Keys(trains))
+	if len(words) == 1 {
+		return words[0]
+	}
+	for i, text := range words {
+		slices.Sort(trains[text])
+		words[i] = text + " (" + trainNames(c, slices.Compact(trains[text]), 6) + ")"
+	}
+	return strings.Join(words, "; ")
 }
 
 // isOutside tells whether some of a change is outside all declarations.

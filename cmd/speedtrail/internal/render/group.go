@@ -75,6 +75,7 @@ func (g *group) trainsOf(x *assessment.Change) []int {
 type family struct {
 	first, last *assessment.Change // the ones that reach least and furthest
 	trains      []int
+	all         []*assessment.Change
 }
 
 // families gathers the changes of one direction of a route.
@@ -87,11 +88,12 @@ func families(changes []assessment.Change) []family {
 				(f.first.From == x.From || f.first.To == x.To)
 		})
 		if k < 0 {
-			list = append(list, family{x, x, slices.Clone(x.Trains)})
+			list = append(list, family{x, x, slices.Clone(x.Trains), []*assessment.Change{x}})
 			continue
 		}
 		f := &list[k]
 		f.trains = append(f.trains, x.Trains...)
+		f.all = append(f.all, x)
 		if x.Length > f.last.Length {
 			f.last = x
 		}

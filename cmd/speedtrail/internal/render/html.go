@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"html/template"
 	"io"
+	"slices"
 	"strings"
 	"sync"
 
@@ -58,7 +59,8 @@ type page struct {
 	CSS       template.CSS
 	JS        template.JS
 	Policy    string
-	Routes    []string
+	Routes    []string // of the stretches that are drawn
+	Undrawn   []string // routes that differ and have none
 	Trains    []string
 	Track     []pageTrack
 	Altered   []pageTrain
@@ -148,8 +150,11 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 		}
 	}
 	for _, route := range c.Routes {
-		if len(route.Changes) > 0 {
+		switch {
+		case slices.ContainsFunc(p.Stretches, func(s pageStretch) bool { return s.Route == route.ID }):
 			p.Routes = append(p.Routes, route.ID)
+		case len(route.Changes) > 0:
+			p.Undrawn = append(p.Undrawn, route.ID)
 		}
 		for _, t := range route.Track {
 			p.Track = append(p.Track, pageTrack{route.ID, route.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate})

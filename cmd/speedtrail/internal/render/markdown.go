@@ -52,7 +52,7 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 			add("\n**%s**: %s %s\n\n", md(g.title()), md(g.Why), md(g.Do))
 			for i, f := range g.List {
 				if i == mostHTMLFindings {
-					add("- and %d more\n", len(g.List)-i)
+					add("- and %d more, in the JSON form\n", len(g.List)-i)
 					break
 				}
 				add("- %s", md(joinPlace(findingPlace(f), f.Text)))
@@ -63,6 +63,9 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 					add(" Accepted: %s", md(f.Accepted))
 				}
 				add("\n")
+				if f.Example != "" {
+					add("\n%s\n", shifted(source.VisibleLines(f.Example), "      "))
+				}
 			}
 		}
 	}
@@ -99,7 +102,7 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 		}
 	}
 	if all > shown {
-		add("\n%d more changes are not shown here.\n", all-shown)
+		add("\n%d more changes are not shown here; --format csv lists every change.\n", all-shown)
 	}
 	markdownAccount(&b, c)
 	markdownSigned(&b, r)
@@ -198,4 +201,9 @@ func markdownAccount(b *strings.Builder, c *assessment.Computed) {
 			add("- %s:%s %s: %s\n", md(fileName(*s)), rowLines(d), md(rowWords(s, d)), md(effectWords(c, d, results[assessment.Cause{File: i, Row: k}])))
 		}
 	}
+}
+
+// shifted puts blanks before each line: in a list, that is text as it is typed.
+func shifted(text, blanks string) string {
+	return blanks + strings.ReplaceAll(strings.TrimRight(text, "\n"), "\n", "\n"+blanks) + "\n"
 }

@@ -133,7 +133,7 @@ func (p *textWriter) findings() {
 		p.paragraph("", g.title()+". "+g.Why+" "+g.Do)
 		for k, f := range g.List {
 			if k == mostTextFindings {
-				p.printf("  and %d more, in the other formats\n", len(g.List)-k)
+				p.printf("  and %d more, in the JSON form\n", len(g.List)-k)
 				break
 			}
 			mark := "! "
@@ -143,6 +143,9 @@ func (p *textWriter) findings() {
 			p.paragraph(mark, joinPlace(findingPlace(f), f.Text))
 			if f.Row != "" {
 				p.paragraph("    ", f.Row)
+			}
+			for line := range strings.Lines(source.VisibleLines(f.Example)) {
+				p.printf("      %s\n", strings.TrimRight(line, "\n"))
 			}
 			if f.Accepted != "" {
 				p.paragraph("    ", "accepted: "+f.Accepted)
@@ -260,6 +263,9 @@ func (p *textWriter) family(r *assessment.Route, f family) {
 	p.paragraph("    ", trainNames(p.c, f.trains, 0))
 	for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
 		p.paragraph("    ", line)
+	}
+	if text := declaredFamily(p.c, r, f); text != "" {
+		p.paragraph("    ", "declared by: "+text)
 	}
 }
 

@@ -35,8 +35,13 @@ func (p *textWriter) fleet() {
 	shown := 0
 	for i := range p.c.Fleet {
 		f := &p.c.Fleet[i]
+		lines := fleetLines(f)
+		if shown >= mostTextFleet {
+			shown += len(lines)
+			continue
+		}
 		p.paragraph("", fleetTitle(f)+": "+fleetStatement(f))
-		for _, line := range fleetLines(f) {
+		for _, line := range lines {
 			if shown++; shown > mostTextFleet {
 				continue
 			}
@@ -48,7 +53,7 @@ func (p *textWriter) fleet() {
 		}
 	}
 	if shown > mostTextFleet {
-		p.printf("and %d more, in the other formats\n", shown-mostTextFleet)
+		p.printf("and %d more, in the HTML and JSON forms\n", shown-mostTextFleet)
 	}
 }
 
@@ -105,7 +110,7 @@ func (p *textWriter) figures() {
 
 func (p *textWriter) more(n int) {
 	if n > mostTextFigures+10 {
-		p.printf("and %d more, in the other formats\n", n-mostTextFigures)
+		p.printf("and %d more, in the JSON form\n", n-mostTextFigures)
 	}
 }
 
@@ -152,9 +157,9 @@ func (p *textWriter) sources() {
 		}
 	}
 	if shown > mostTextRows {
-		p.printf("and %d more rows, in the other formats\n", shown-mostTextRows)
+		p.printf("and %d more rows, in the JSON form\n", shown-mostTextRows)
 	}
 	if quiet > 0 {
-		p.paragraph("", fmt.Sprintf("%s without an effect on any reference train; the HTML report lists them with the reason.", plural(quiet, "row", "rows")))
+		p.paragraph("", fmt.Sprintf("%s without an effect on any reference train; the HTML and Markdown reports list them with the reason.", plural(quiet, "row", "rows")))
 	}
 }
