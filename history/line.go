@@ -49,6 +49,9 @@ func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problem
 			if err != nil {
 				return nil, err
 			}
+			if number := line.Numbered() + 1; row.Number != number {
+				return nil, ledger.Damaged(fmt.Errorf("the assessment of entry %d has the number %d, by its place it is %d", e.Seq, row.Number, number))
+			}
 			if e.unreadable == nil {
 				if err := repeats(row, e); err != nil {
 					return nil, ledger.Damaged(err)
@@ -60,7 +63,11 @@ func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problem
 			problems = append(problems, fmt.Errorf("entry %d (%s): %w", e.Seq, e.Kind, err))
 		}
 	}
-	return problems, nil
+	rows, orphans, err := l.RowCount(ctx, "assessment", line.Head().Seq)
+	if err == nil && rows+orphans != line.Numbered() {
+		err = ledger.Damaged(fmt.Errorf("table assessment has %d rows, the entries ask for %d", rows+orphans, line.Numbered()))
+	}
+	return problems, err
 }
 
 // repeats checks that the row of an assessment, which lists are made of, says what

@@ -13,6 +13,7 @@ import (
 	"speedtrail/history/approval"
 	"speedtrail/history/chain"
 	"speedtrail/history/signoff"
+	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
 
@@ -79,6 +80,9 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 	if err != nil {
 		return err
 	}
+	if _, err := schema.Load(ctx, s.files); err != nil {
+		return &sideError{s.label(), err}
+	}
 	tree, signOff, signers, err := (&checker{a: a}).content(ctx, repo, s.commit.Hash, folder)
 	if err != nil {
 		return err
@@ -132,6 +136,9 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 	}
 	for _, file := range o.brings {
 		result, err := (&signing{statement: file, signature: file + ".sig"}).brought()
+		if err == nil {
+			err = broughtAbout(result, s.commit.Hash, folder, tree, nil)
+		}
 		if err != nil {
 			return err
 		}
@@ -178,7 +185,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 	if err != nil {
 		return err
 	}
-	l, err := a.openLedger(ctx, s.write == "")
+	l, err := a.openLedgerFor(ctx, s.write == "")
 	if err != nil {
 		return err
 	}
@@ -191,6 +198,9 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 		brought, err := s.brought()
 		if err != nil {
 			return err
+		}
+		if st, err := signoff.Parse(brought.statement); err == nil && (st.Key != fingerprint || st.Folder != folder) {
+			return refused(fmt.Errorf("the statement is about the key %s and the folder %s, not %s and %s", source.Visible(st.Key), source.Visible(st.Folder), source.Visible(fingerprint), folder))
 		}
 		return a.recordSigned(ctx, l, line, chain.Revocation, brought)
 	}

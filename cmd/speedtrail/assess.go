@@ -76,12 +76,13 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 		return err
 	}
 	defer repo.Close()
-	doc, err := a.compute(ctx, repo, base, target, options)
+	record = record && target != workingTree
+	doc, err := a.compute(ctx, repo, base, target, options, record)
 	if err != nil {
 		return err
 	}
 	var rec render.Record
-	if record && target != workingTree {
+	if record {
 		if rec, err = a.record(ctx, doc); err != nil {
 			return err
 		}
@@ -93,8 +94,12 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 	return verdictOf(doc)
 }
 
-// compute makes the document of two revisions.
-func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target string, options assessment.Options) (*assessment.Document, error) {
+// errShallow says that the clone does not hold all commits between two revisions.
+var errShallow = &callError{"the clone is shallow and its history ends between base and target: who prepared the change cannot be known", "git fetch --unshallow brings the rest; --no-record assesses without it"}
+
+// compute makes the document of two revisions. What is recorded, or held against
+// what is recorded, needs the whole history between them.
+func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target string, options assessment.Options, whole bool) (*assessment.Document, error) {
 	folder, err := a.folder()
 	if err != nil {
 		return nil, err
@@ -136,36 +141,44 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 			return nil, badCall("make a new commit of the same content", "the commit %s has no time that can be read, and the terms of restrictions and acceptances are compared with it", to.commit.Hash)
 		}
 	}
-	if err := a.descent(ctx, repo, from, to, &in); err != nil {
+	complete, err := a.descent(ctx, repo, from, to, &in)
+	if err != nil {
 		return nil, err
+	}
+	if !complete && whole {
+		return nil, errShallow
+	}
+	if !complete {
+		a.remark("! %v", errShallow.problem)
 	}
 	return assessment.Build(in), nil
 }
 
-// descent fills in what the history between the revisions says.
-func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, in *assessment.Input) (err error) {
+// descent fills in what the history between the revisions says. It is not complete
+// where a shallow clone ends between them.
+func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, in *assessment.Input) (complete bool, err error) {
 	if from.isWorkingTree() {
-		return nil
+		return true, nil
 	}
 	if to.isWorkingTree() {
 		head, err := repo.Resolve("HEAD")
 		if err != nil {
-			return err
+			return false, err
 		}
 		in.BaseIsAncestor, err = repo.IsAncestor(ctx, from.commit.Hash, head.Hash)
-		return err
+		return true, err
 	}
 	if in.BaseIsAncestor, err = repo.IsAncestor(ctx, from.commit.Hash, to.commit.Hash); err != nil {
-		return err
+		return false, err
 	}
-	commits, _, err := repo.Between(ctx, from.commit.Hash, to.commit.Hash)
+	commits, complete, err := repo.Between(ctx, from.commit.Hash, to.commit.Hash)
 	if err != nil {
-		return err
+		return false, err
 	}
 	for _, p := range repo.Preparers(commits) {
 		in.Preparers = append(in.Preparers, assessment.Person{Name: validText(p.Name), Email: validText(p.Email)})
 	}
-	return nil
+	return complete, nil
 }
 
 // unread finds routes among the folders that were left unread, all of which are

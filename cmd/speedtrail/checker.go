@@ -36,7 +36,7 @@ func (c *checker) recompute(ctx context.Context, repo *revision.Repo, doc *asses
 	one := &app{in: c.a.in, out: c.a.out, err: c.a.err, repo: c.a.repo, data: d.Folder, quiet: true}
 	options := d.Options
 	options.Requests = slices.Clone(options.Requests)
-	again, err := one.compute(ctx, repo, d.Base.Commit, d.Target.Commit, options)
+	again, err := one.compute(ctx, repo, d.Base.Commit, d.Target.Commit, options, true)
 	if err != nil {
 		return "", err
 	}

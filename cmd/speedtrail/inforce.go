@@ -91,6 +91,9 @@ voids it.`,
 					return err
 				}
 			}
+			if c.Flags().Changed("routes") && len(routes) == 0 {
+				return badCall("leave it out for the whole network", "--routes names no route")
+			}
 			corrects := approval.CorrectsNothing
 			switch {
 			case replaces > 0 && voids > 0:
@@ -112,18 +115,11 @@ voids it.`,
 }
 
 func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, routes []string, corrects string, s *signing) error {
-	l, err := a.openLedger(ctx, s.write == "")
+	l, err := a.openLedgerFor(ctx, s.write == "")
 	if err != nil {
 		return err
 	}
 	defer l.Close()
-	if s.statement != "" {
-		brought, err := s.brought()
-		if err != nil {
-			return err
-		}
-		return a.recordSigned(ctx, l, nil, chain.InForce, brought)
-	}
 	repo, err := a.openRepo()
 	if err != nil {
 		return err
@@ -152,6 +148,16 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	line, _, err := history.ReadLine(ctx, l)
 	if err != nil {
 		return err
+	}
+	if s.statement != "" {
+		brought, err := s.brought()
+		if err != nil {
+			return err
+		}
+		if err := broughtAbout(brought, at.commit.Hash, folder, content(at.files), data); err != nil {
+			return err
+		}
+		return a.recordSigned(ctx, l, line, chain.InForce, brought)
 	}
 	p := line.Newest(folder)
 	if p.Parsed == nil {

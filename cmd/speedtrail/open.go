@@ -122,6 +122,12 @@ func (a *app) openLedger(ctx context.Context, write bool) (*ledger.Ledger, error
 	return a.openLedgerWith(ctx, ledger.Options{Create: write, ReadOnly: !write, Now: time.Now})
 }
 
+// openLedgerFor opens a ledger that must be there, for writing or for reading: a
+// call that is refused, or a mistyped name, makes no new one.
+func (a *app) openLedgerFor(ctx context.Context, write bool) (*ledger.Ledger, error) {
+	return a.openLedgerWith(ctx, ledger.Options{ReadOnly: !write, Now: time.Now})
+}
+
 // openLedgerAt opens the ledger for writing, made at a given time if need be.
 func (a *app) openLedgerAt(ctx context.Context, at time.Time) (*ledger.Ledger, error) {
 	return a.openLedgerWith(ctx, ledger.Options{Create: true, Now: func() time.Time { return at }})

@@ -68,7 +68,7 @@ func assessmentNumber(text string) (int64, error) {
 }
 
 func (a *app) sign(ctx context.Context, number int64, decision string, s *signing) error {
-	l, err := a.openLedger(ctx, s.write == "")
+	l, err := a.openLedgerFor(ctx, s.write == "")
 	if err != nil {
 		return err
 	}

@@ -237,6 +237,27 @@ func (s *signing) brought() (*signed, error) {
 	return out, nil
 }
 
+// broughtAbout checks that a statement that was signed elsewhere is about a revision
+// as Git has it, and that its routes are there; data is nil where it names none.
+// What cannot be read at all, its recording says.
+func broughtAbout(s *signed, commit, folder, tree string, data *schema.Dataset) error {
+	st, err := signoff.Parse(s.statement)
+	if err != nil {
+		return nil
+	}
+	for _, x := range []struct{ name, have, want string }{{"commit", st.Revision, commit}, {"folder", st.Folder, folder}, {"content", st.Content, tree}} {
+		if x.have != x.want {
+			return refused(fmt.Errorf("the statement is about the %s %s, the revision that is named has %s", x.name, source.Visible(x.have), x.want))
+		}
+	}
+	for _, id := range st.Routes {
+		if data != nil && routeByID(data, id) == nil {
+			return refused(fmt.Errorf("the statement names the route %s, which the revision does not have", source.Visible(id)))
+		}
+	}
+	return nil
+}
+
 // refused gives an error of the call for what a policy does not allow.
 func refused(err error) error {
 	return &callError{err.Error(), "nothing was recorded"}

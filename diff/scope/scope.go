@@ -63,16 +63,20 @@ func (d *Declared) allows(o *Observed) bool {
 }
 
 // runOut gives the stretch past the far end within which the run-out of a train
-// is inside, and whether a row behind the change ends in the declaration.
+// is inside, and whether a row behind the change ends in the declaration: a row
+// that ends where the declaration begins lies outside it.
 func (d *Declared) runOut(o *Observed) (from, to unit.Distance, ok bool) {
 	if !o.RunOut {
 		return 0, 0, false
 	}
-	for _, end := range o.RowEnds {
-		ok = ok || d.From <= end && end <= d.To
-	}
 	if o.Direction == codes.Reverse {
+		for _, end := range o.RowEnds {
+			ok = ok || d.From <= end && end < d.To
+		}
 		return d.From - o.TrainLength, d.From, ok
+	}
+	for _, end := range o.RowEnds {
+		ok = ok || d.From < end && end <= d.To
 	}
 	return d.To, d.To + o.TrainLength, ok
 }

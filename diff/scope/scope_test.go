@@ -42,6 +42,10 @@ func TestCut(t *testing.T) {
 		{"run-out past the far end", runOut, []Declared{all}, []Piece{{200 * m, 230 * m, 0, true}}},
 		{"run-out against the distance", back, []Declared{all}, []Piece{{70 * m, 100 * m, 0, true}}},
 		{"run-out of a row that ends elsewhere", runOut, []Declared{with(func(d *Declared) { d.To = 190 * m })}, []Piece{{200 * m, 230 * m, Outside, false}}},
+		{"run-out of a row that ends where it begins", runOut, []Declared{with(func(d *Declared) { d.From, d.To = 200*m, 205*m })},
+			[]Piece{{200 * m, 205 * m, 0, false}, {205 * m, 230 * m, Outside, false}}},
+		{"the same against the distance", back, []Declared{with(func(d *Declared) { d.From, d.To = 95*m, 100*m })},
+			[]Piece{{70 * m, 95 * m, Outside, false}, {95 * m, 100 * m, 0, false}}},
 		{"run-out longer than the train", with2(runOut, func(o *Observed) { o.To = 240 * m }), []Declared{all},
 			[]Piece{{200 * m, 230 * m, 0, true}, {230 * m, 240 * m, Outside, false}}},
 		{"not run-out", with2(runOut, func(o *Observed) { o.RunOut = false }), []Declared{all}, []Piece{{200 * m, 230 * m, Outside, false}}},
@@ -100,13 +104,13 @@ func TestCutPointByPoint(t *testing.T) {
 				if d.From <= s && s < d.To {
 					return true
 				}
-				if !o.RunOut || o.RowEnds[0] < d.From || o.RowEnds[0] > d.To {
-					return false
-				}
+				// The last millimetre of the row, seen in the direction of travel,
+				// lies in the declaration.
+				end := o.RowEnds[0]
 				if o.Direction == codes.Nominal {
-					return s >= d.To && s < d.To+o.TrainLength
+					return o.RunOut && d.From <= end-1 && end-1 < d.To && s >= d.To && s < d.To+o.TrainLength
 				}
-				return s < d.From && s >= d.From-o.TrainLength
+				return o.RunOut && d.From <= end && end < d.To && s < d.From && s >= d.From-o.TrainLength
 			})
 			i := slices.IndexFunc(pieces, func(p Piece) bool { return p.From <= s && s < p.To })
 			if (pieces[i].By != Outside) != inside {

@@ -224,7 +224,9 @@ func (l *Line) checkSignOff(r *Record) error {
 	if r.Head.Seq < a.Entry.Seq {
 		return refuse("the head that the statement names, %d, is older than the assessment, entry %d", r.Head.Seq, a.Entry.Seq)
 	}
-	for _, i := range l.ofAssessment[a.Number] {
+	// A decision is on the content, by whatever number: an approval of before a
+	// rejection does not lift it.
+	for _, i := range l.ofContent[a.content()] {
 		earlier := &l.signOffs[i]
 		if earlier.Signer == r.Signer && r.Head.Seq < earlier.Entry.Seq {
 			return refuse("the head that the statement names, %d, is older than the last decision of %s on it, entry %d", r.Head.Seq, r.Signer, earlier.Entry.Seq)
@@ -279,7 +281,8 @@ func (l *Line) blocked(a *Assessment) string {
 }
 
 // checkIndependence keeps a person from taking two parts that must be taken by
-// different people. The earlier part counts.
+// different people. The earlier part counts: a decision on the assessment, an
+// approval of the same content by whatever number.
 func (l *Line) checkIndependence(r *Record, a *Assessment, p *schema.Policy) error {
 	if p.Independent(r.Role, schema.Preparer) {
 		for _, email := range a.Preparers {
@@ -288,9 +291,10 @@ func (l *Line) checkIndependence(r *Record, a *Assessment, p *schema.Policy) err
 			}
 		}
 	}
-	for _, i := range l.ofAssessment[a.Number] {
+	for _, i := range l.ofContent[a.content()] {
 		earlier := &l.signOffs[i]
-		if earlier.Signer == r.Signer && earlier.Role != r.Role && p.Independent(r.Role, earlier.Role) {
+		part := earlier.Assessment == r.Assessment || earlier.Decision == signoff.Approve
+		if part && earlier.Signer == r.Signer && earlier.Role != r.Role && p.Independent(r.Role, earlier.Role) {
 			return refuse("%s signed as %s (entry %d), and the role %s is independent of that", r.Signer, earlier.Role, earlier.Entry.Seq, r.Role)
 		}
 	}

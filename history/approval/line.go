@@ -102,6 +102,7 @@ type Line struct {
 	heads       []chain.Head
 	times       []time.Time
 	assessments []*Assessment
+	numbered    int64 // entries of kind assessment, also those whose body cannot be read
 	byNumber    map[int64]*Assessment
 	anchors     map[string]*AnchorRecord // by folder
 	signOffs    []Record
@@ -147,6 +148,7 @@ func (l *Line) add(e chain.Entry, recorded time.Time, assessment *Assessment) er
 	case chain.Ledger:
 		return nil
 	case chain.Assessment:
+		l.numbered++
 		if assessment == nil {
 			return errors.New("its body cannot be read")
 		}
@@ -193,6 +195,10 @@ func (l *Line) Head() chain.Head {
 	}
 	return l.heads[len(l.heads)-1]
 }
+
+// Numbered is how many assessments there are, readable or not: their numbers are
+// 1, 2, ... in the order of the ledger.
+func (l *Line) Numbered() int64 { return l.numbered }
 
 // Assessments lists the assessments in the order of the ledger.
 func (l *Line) Assessments() []*Assessment { return l.assessments }
