@@ -19,7 +19,8 @@ type Service struct {
 	// Undoes: the revision is approved, but not by a way from what was in service
 	// before: of two approved siblings the second undoes the first.
 	Undoes bool
-	// Late: it is approved, but was not when it went into service.
+	// Late: it is approved, by a way from what was in service before, but was not
+	// when it went into service. Later signatures do not take that away.
 	Late       bool
 	ApprovedAt time.Time
 	// Through are the approved assessments whose target it is.
@@ -41,11 +42,13 @@ func ServiceOf(line *approval.Line, r approval.Record) Service {
 			}
 		}
 	}
+	var befores []*approval.Record
 	for _, route := range routes {
 		before := beforeRecord(line, r, route)
 		if before == nil {
 			continue
 		}
+		befores = append(befores, before)
 		undone := s.Approved && !line.Led(r.Folder, before.Content, r.Content)
 		if s.Before == nil || undone && !s.Undoes {
 			s.Before = before
@@ -55,8 +58,13 @@ func ServiceOf(line *approval.Line, r approval.Record) Service {
 	if s.Undoes {
 		s.Approved = false
 	}
-	if at, ok := line.ApprovedAt(r.Folder, r.Content); ok && s.Approved {
-		s.ApprovedAt, s.Late = at, at.After(r.Since)
+	approved := func(l *approval.Line) bool {
+		return l.ApprovedContent(r.Folder, r.Content) &&
+			!slices.ContainsFunc(befores, func(b *approval.Record) bool { return !l.Led(r.Folder, b.Content, r.Content) })
+	}
+	if s.Approved && !approved(line.AsOf(r.Since)) {
+		s.Late = true
+		s.ApprovedAt, _ = line.Since(approved)
 	}
 	for _, a := range line.Assessments() {
 		if a.Folder == r.Folder && a.TargetTree == r.Content && line.State(a.Number).Word == approval.Approved {

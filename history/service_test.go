@@ -4,6 +4,7 @@ import (
 	"path/filepath"
 	"slices"
 	"testing"
+	"time"
 
 	"speedtrail/history"
 	"speedtrail/history/approval"
@@ -172,4 +173,50 @@ func TestServiceWithoutApproval(t *testing.T) {
 	if s, _ := w.services(); s[open].Approved {
 		t.Error("a rejected revision is approved in service")
 	}
+}
+
+// What a later signature allows was not allowed when it went into service: the
+// record of that stays.
+func TestServiceBeforeItsApproval(t *testing.T) {
+	t.Run("rejected in between", func(t *testing.T) {
+		w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+		w.anchor("a")
+		n := w.approve("a", "b", "ada")
+		w.signOff(n, "cem", "checker", signoff.Reject)
+		entry := w.inService("b", clock(w.head.Seq+1).Format(time.RFC3339), "all")
+		if s, findings := w.services(); s[entry].Approved || !slices.Equal(ids(findings), []string{history.ServiceUnapproved}) {
+			t.Errorf("rejected: %+v, %v", s[entry], findings)
+		}
+		w.signOff(n, "cem", "checker", signoff.Approve)
+		s, findings := w.services()
+		if got := s[entry]; !got.Approved || !got.Late || !got.ApprovedAt.Equal(clock(w.head.Seq)) || !slices.Equal(ids(findings), []string{history.ServiceUnapproved}) {
+			t.Errorf("approved again: %+v, %v", got, findings)
+		}
+	})
+	t.Run("undone, and led to later", func(t *testing.T) {
+		w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+		w.anchor("a")
+		w.approve("a", "b", "cem")
+		w.approve("b", "c", "cem")
+		w.approve("b", "d", "cem")
+		w.inService("c", clock(w.head.Seq+1).Format(time.RFC3339), "all")
+		entry := w.inService("d", clock(w.head.Seq+1).Format(time.RFC3339), "all")
+		if s, findings := w.services(); !s[entry].Undoes || !slices.Contains(ids(findings), history.ServiceUndoes) {
+			t.Errorf("undoes c: %+v, %v", s[entry], findings)
+		}
+		w.approve("c", "d", "cem")
+		s, findings := w.services()
+		if got := s[entry]; !got.Approved || !got.Late || !got.ApprovedAt.Equal(clock(w.head.Seq)) || !slices.Contains(ids(findings), history.ServiceUnapproved) {
+			t.Errorf("led to from c: %+v, %v", got, findings)
+		}
+	})
+	t.Run("in time", func(t *testing.T) {
+		w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+		w.anchor("a")
+		w.approve("a", "b", "ada")
+		entry := w.inService("b", clock(w.head.Seq+1).Format(time.RFC3339), "all")
+		if s, findings := w.services(); !s[entry].Approved || s[entry].Late || len(findings) > 0 {
+			t.Errorf("%+v, %v", s[entry], findings)
+		}
+	})
 }

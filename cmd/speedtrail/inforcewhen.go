@@ -1,6 +1,7 @@
 package main
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"io"
@@ -25,6 +26,9 @@ type inForceAnswer struct {
 	Record  *serviceRecord `json:"record" jsonschema:"nullable"` // null: nothing is recorded
 	Commit  string         `json:"commit"`
 	Subject string         `json:"subject"`
+	// Routes are the records of single routes that hold then in place of Record,
+	// where no route is asked for.
+	Routes []serviceRecord `json:"routes"`
 	// Signed are the decisions on the assessments that led to the revision.
 	Signed []evidence   `json:"signed"`
 	Speeds []pointSpeed `json:"speeds"`
@@ -64,8 +68,11 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 	if err != nil {
 		return err
 	}
-	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Route: route, At: at, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
+	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Route: route, At: at, Routes: []serviceRecord{}, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
 	now, _ := line.InForceAt(folder, route, when)
+	if route == "" {
+		answer.Routes = recordsOfRoutes(line, folder, when, now)
+	}
 	if now != nil {
 		if err := a.fillInForce(ctx, &answer, line, *now, when, route, at); err != nil {
 			return err
@@ -77,6 +84,24 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 		}
 		return printInForce(w, &answer, a.style().Width)
 	})
+}
+
+// recordsOfRoutes gives the records that hold on some routes in place of that of the
+// whole network.
+func recordsOfRoutes(line *approval.Line, folder string, when time.Time, network *approval.Record) []serviceRecord {
+	list := []serviceRecord{}
+	seen := map[int64]bool{}
+	for _, r := range line.Standing(folder) {
+		for _, id := range r.Routes {
+			x, _ := line.InForceAt(folder, id, when)
+			if x == nil || network != nil && x.Entry == network.Entry || seen[x.Entry.Seq] {
+				continue
+			}
+			seen[x.Entry.Seq] = true
+			list = append(list, serviceRecordOf(history.ServiceOf(line, *x)))
+		}
+	}
+	return list
 }
 
 // fillInForce adds the evidence, and the speeds at the point.
@@ -151,8 +176,11 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 }
 
 func printInForce(w io.Writer, x *inForceAnswer, width int) error {
+	for _, r := range x.Routes {
+		fmt.Fprintf(w, "On single routes at %s:\n%s\n\n", x.When, wrap(r.words(), width))
+	}
 	if x.Record == nil {
-		_, err := fmt.Fprintf(w, "Nothing is recorded as in force at %s; speedtrail inforce lists what is.\nhead of the ledger %s\n", x.When, x.Head)
+		_, err := fmt.Fprintf(w, "Nothing is recorded as in force on %s at %s; speedtrail inforce lists what is.\nhead of the ledger %s\n", cmp.Or(source.Visible(x.Route), "the whole network"), x.When, x.Head)
 		return err
 	}
 	fmt.Fprintf(w, "In force at %s:\n%s\n%s\n", x.When, wrap(x.Record.words(), width), wrap(source.Visible("commit "+x.Commit+", "+x.Subject), width))

@@ -4,8 +4,6 @@ import (
 	"context"
 	"fmt"
 	"io"
-	"maps"
-	"slices"
 	"strings"
 	"time"
 
@@ -121,12 +119,10 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			fmt.Fprintf(w, "      %s\n", strings.ReplaceAll(wrap(text, 74), "\n", "\n      "))
 		}
 	}
-	revoked := line.Revocations()
-	for _, fingerprint := range slices.Sorted(maps.Keys(revoked)) {
-		r := revoked[fingerprint]
-		fmt.Fprintf(w, "\n%s\n", wrap(source.Visible(fmt.Sprintf("key %s is out of use since entry %d, %s: %s", fingerprint, r.Entry.Seq, r.Signer, r.Reason)), 80))
+	for _, r := range line.Revocations() {
+		fmt.Fprintf(w, "\n%s\n", wrap(source.Visible(fmt.Sprintf("key %s is out of use since entry %d, %s: %s", r.Key, r.Entry.Seq, r.Signer, r.Reason)), 80))
 		for _, s := range line.SignOffs() {
-			if s.Fingerprint == fingerprint {
+			if s.Fingerprint == r.Key {
 				fmt.Fprintf(w, "      review assessment %d, %s as %s\n", s.Assessment, s.Decision, s.Role)
 			}
 		}

@@ -118,7 +118,7 @@ func (l *Line) checkSignature(r *Record, p *schema.Policy) error {
 			return err
 		}
 	}
-	if revocation, ok := l.revoked[r.Fingerprint]; ok {
+	if revocation, ok := l.Revoked(r.Fingerprint); ok {
 		return refuse("the key %s was revoked by entry %d: %s", r.Fingerprint, revocation.Entry.Seq, revocation.Reason)
 	}
 	key, err := allowedKey(p, r.Fingerprint, r.Signer, r.Time, r.Recorded)
@@ -260,7 +260,27 @@ func (l *Line) checkSignOff(r *Record) error {
 	if _, err := allowedKey(newest, r.Fingerprint, r.Signer, r.Time, r.Recorded); err != nil {
 		return refuse("by the newest approved policy: %v", strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))
 	}
+	return l.checkTakenOut(r)
+}
+
+// checkTakenOut refuses a key that an approved policy took out.
+func (l *Line) checkTakenOut(r *Record) error {
+	if r.foreseen && r.Fingerprint == "" {
+		return nil
+	}
+	if by := l.takenOut(r.Folder, r.Fingerprint); by != nil {
+		return refuse("the key %s was taken out of the policy by assessment %d, which is approved", r.Fingerprint, by.Number)
+	}
 	return nil
+}
+
+// checkNewestSignature checks the signature of a statement that goes by the newest
+// approved policy.
+func (l *Line) checkNewestSignature(r *Record, p *schema.Policy) error {
+	if err := l.checkSignature(r, p); err != nil {
+		return err
+	}
+	return l.checkTakenOut(r)
 }
 
 // blocked says why nobody may sign an assessment; empty where somebody may.
@@ -319,7 +339,7 @@ func (l *Line) checkInForce(r *Record) error {
 	if err := l.checkCorrection(r); err != nil {
 		return err
 	}
-	return l.checkSignature(r, policy)
+	return l.checkNewestSignature(r, policy)
 }
 
 // checkNewest gives the newest approved policy of the folder of a statement,
@@ -360,7 +380,7 @@ func (l *Line) checkRevocation(r *Record) error {
 	if err != nil {
 		return err
 	}
-	if earlier, ok := l.revoked[r.Key]; ok {
+	if earlier, ok := l.Revoked(r.Key); ok {
 		return refuse("the key is revoked already, by entry %d", earlier.Entry.Seq)
 	}
 	if !l.knowsKey(r.Key) {
@@ -378,5 +398,5 @@ func (l *Line) checkRevocation(r *Record) error {
 			return refuse("the role %s is not independent of preparer", r.Role)
 		}
 	}
-	return l.checkSignature(r, policy)
+	return l.checkNewestSignature(r, policy)
 }

@@ -18,8 +18,11 @@
 package approval
 
 import (
+	"cmp"
 	"errors"
 	"fmt"
+	"maps"
+	"slices"
 	"time"
 
 	"speedtrail/history/canon"
@@ -115,6 +118,7 @@ type Line struct {
 	ofContent    map[content][]int         // the same, by what was decided on
 	done         map[int64]int64           // what signedOff gave, by assessment
 	contents     map[string]map[string]way // approved contents by folder
+	past         map[int64]*Line           // the line as it stood after an entry
 }
 
 // New begins a line for the ledger of an id.
@@ -140,6 +144,7 @@ func (l *Line) Add(e chain.Entry, assessment *Assessment) error {
 	}
 	l.heads = append(l.heads, e.Head())
 	l.times = append(l.times, recorded)
+	l.past = nil
 	return err
 }
 
@@ -171,17 +176,11 @@ func (l *Line) add(e chain.Entry, recorded time.Time, assessment *Assessment) er
 		l.statements[signoff.Hash(r.Text)] = e.Seq
 		switch e.Kind {
 		case chain.SignOff:
-			l.ofAssessment[r.Assessment] = append(l.ofAssessment[r.Assessment], len(l.signOffs))
-			decided := l.byNumber[r.Assessment].content()
-			l.ofContent[decided] = append(l.ofContent[decided], len(l.signOffs))
-			l.signOffs = append(l.signOffs, r)
-			l.forget(decided)
+			l.take(r)
 		case chain.InForce:
 			l.inForce = append(l.inForce, r)
 		default:
-			if _, ok := l.revoked[r.Key]; !ok {
-				l.revoked[r.Key] = r
-			}
+			l.revoked[r.Key] = r
 		}
 		return nil
 	}
@@ -218,8 +217,17 @@ func (l *Line) SignOffs() []Record { return l.signOffs }
 // InForce lists the in-force records that count, in the order of the ledger.
 func (l *Line) InForce() []Record { return l.inForce }
 
-// Revocations gives the revocations that count, by the key's fingerprint.
-func (l *Line) Revocations() map[string]Record { return l.revoked }
+// Revocations lists the revocations that count, in the order of the ledger.
+func (l *Line) Revocations() []Record {
+	return slices.SortedFunc(maps.Values(l.revoked), func(a, b Record) int { return cmp.Compare(a.Entry.Seq, b.Entry.Seq) })
+}
+
+// Revoked gives the revocation of a key. It holds for all folders: where a key is
+// stolen, the thief has it for each of them.
+func (l *Line) Revoked(fingerprint string) (Record, bool) {
+	r, ok := l.revoked[fingerprint]
+	return r, ok
+}
 
 // policy reads a policy, each one once.
 func (l *Line) policy(signOff, allowedSigners string) Policy {
@@ -252,7 +260,7 @@ func (l *Line) forget(decided content) {
 // Newest gives the policy that is in force for a folder: the one to which an
 // approved assessment turned last, else the anchor's. An assessment whose target
 // was approved before turns nothing, nor does one that leaves the policy as it
-// is: so a key that was taken out does not come back by another way.
+// is.
 func (l *Line) Newest(folder string) Policy {
 	anchor := l.anchors[folder]
 	if anchor == nil {
@@ -265,4 +273,29 @@ func (l *Line) Newest(folder string) Policy {
 		}
 	}
 	return newest
+}
+
+// takenOut gives the approved assessment that took a key out of the policy of a
+// folder: what another one, which never had to do with the key, leaves in its policy
+// does not bring it back. It is nil where the key was not taken out, or was brought
+// in again.
+func (l *Line) takenOut(folder, fingerprint string) *Assessment {
+	var turns []way
+	for _, s := range l.approvedContents(folder) {
+		if s.by != nil && s.by.Policy.Hash != s.by.Next.Hash && s.by.Policy.Parsed != nil && s.by.Next.Parsed != nil {
+			turns = append(turns, s)
+		}
+	}
+	slices.SortFunc(turns, func(a, b way) int { return cmp.Or(cmp.Compare(a.at, b.at), cmp.Compare(a.by.Number, b.by.Number)) })
+	var by *Assessment
+	for _, s := range turns {
+		before, after := s.by.Policy.Parsed.Key(fingerprint) != nil, s.by.Next.Parsed.Key(fingerprint) != nil
+		switch {
+		case before && !after:
+			by = s.by
+		case after && !before:
+			by = nil
+		}
+	}
+	return by
 }

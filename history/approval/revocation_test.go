@@ -42,7 +42,7 @@ func TestRevocationRules(t *testing.T) {
 			err := s.record(chain.Revocation, s.sign(st, c.by, RevocationFormat))
 			if c.refuse == "" {
 				s.must(err)
-				if got, ok := s.line.Revocations()[fingerprintOf(c.key)]; !ok || got.Entry != s.head {
+				if got, ok := s.line.Revoked(fingerprintOf(c.key)); !ok || got.Entry != s.head {
 					t.Error("it does not count")
 				}
 				return

@@ -137,6 +137,27 @@ func TestNewestPolicyIsNotTurnedBack(t *testing.T) {
 	}
 }
 
+// What a sibling leaves in its policy, which another release took out, does not
+// come back with it; what it brings in does.
+func TestKeyTakenOutStaysOut(t *testing.T) {
+	note := ordinary().role("reader 1 -") // anything but the keys
+	s := anchored(t, ordinary())
+	without, sibling := s.assess("a", "b", ordinary(), ordinary().without("fin"), nil), s.assess("a", "c", ordinary(), note, nil)
+	other := s.assess("a", "d", ordinary(), ordinary(), nil)
+	s.approve(without)
+	s.refused(s.signOff(other, "fin", "checker", "approve"), "by the newest approved policy")
+	s.approve(sibling)
+	if s.line.Newest(".").Hash != note.hash() {
+		t.Fatal("the sibling turns nothing")
+	}
+	s.refused(s.signOff(other, "fin", "checker", "approve"), "was taken out of the policy by assessment 1, which is approved")
+	s.must(s.signOff(other, "eva", "checker", "approve"))
+	// From the release that took it out, the key can be brought in again.
+	again := s.assess("b", "e", ordinary().without("fin"), ordinary(), nil)
+	s.approve(again)
+	s.must(s.signOff(other, "fin", "approver", "approve"))
+}
+
 // valid-after and valid-before include their bounds (ssh-keygen(1), ALLOWED
 // SIGNERS, with the inclusive reading of the design), at the time of the statement
 // and at that of the recording.

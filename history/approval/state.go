@@ -4,7 +4,6 @@ import (
 	"fmt"
 	"slices"
 	"strings"
-	"time"
 
 	"speedtrail/history/signoff"
 )
@@ -239,16 +238,6 @@ func (l *Line) approvedContents(folder string) map[string]way {
 func (l *Line) approved(a *Assessment, contents map[string]way) bool {
 	_, ok := contents[a.BaseTree]
 	return ok && l.signedOff(a) > 0
-}
-
-// ApprovedAt gives when a content of a folder came to be approved by an
-// assessment, as the entry says that made it so; false where it was not.
-func (l *Line) ApprovedAt(folder, tree string) (time.Time, bool) {
-	w, ok := l.approvedContents(folder)[tree]
-	if !ok || w.by == nil {
-		return time.Time{}, false
-	}
-	return l.times[w.at-1], true
 }
 
 // ApprovedContent tells whether a content of a folder is approved.
