@@ -59,7 +59,7 @@ func (p *pair) fleet(trains []Train) []Fleet {
 			s = p.permanent
 		}
 		found := fleet.CompareSides(s.base, s.target, p.direction, s.cells, asked)
-		f := Fleet{Direction: p.direction, Permanent: permanent, Shortest: shortest, Longest: longest, Reach: found.Reach, Changes: joinLengths(found.Changes)}
+		f := Fleet{Direction: p.direction, Permanent: permanent, Shortest: shortest, Longest: longest, Reach: found.Reach, Changes: joinLengths(append(found.Changes, found.Between...))}
 		if permanent {
 			f.Changes = slices.DeleteFunc(f.Changes, func(c FleetChange) bool { return slices.ContainsFunc(list[0].Changes, c.same) })
 			if len(f.Changes) == 0 && slices.Equal(f.Reach, list[0].Reach) {

@@ -6,11 +6,13 @@
 // Reference trains are samples, and a sample can miss. Result lists each
 // change with the trains that see it, as few products of category sets, and
 // the stretches outside which no train of any length up to the longest sees a
-// change at all.
+// change at all. What only trains of a length between those asked for see is listed
+// for such a length.
 package fleet
 
 import (
 	"cmp"
+	"maps"
 	"slices"
 
 	"speedtrail/diff/align"
@@ -34,6 +36,10 @@ type Change struct {
 // temporary restrictions.
 type Result struct {
 	Changes []Change // by train length as asked for, then position, then speeds
+	// Between are changes that kinds of trains see on a stretch where they see none
+	// at a length that was asked for: for lengths above the shortest of those and up
+	// to the longest, in the same order.
+	Between []Change
 	// Reach covers every point at which a train of some length, up to the
 	// longest asked for, sees a change; on the target's track, in its order.
 	Reach []align.Interval
@@ -48,16 +54,19 @@ func Compare(base, target *schema.Route, d codes.Direction, cells []align.Cell, 
 // CompareSides is Compare for sides that are prepared. Their rows and the cells
 // may be those only that can matter for trains up to the longest.
 func CompareSides(base, target *profile.Compiler, d codes.Direction, cells []align.Cell, lengths []unit.Distance) Result {
-	p := pair{base: base, target: target, cells: cells, direction: d}
+	p := pair{base: base, target: target, cells: cells, direction: d, lengths: lengths}
 	var r Result
 	if len(cells) == 0 {
 		return r
 	}
 	p.distinguish()
 	for _, length := range lengths {
-		r.Changes = append(r.Changes, p.changes(length)...)
+		r.Changes = append(r.Changes, p.changes(length, nil)...)
 	}
 	r.Reach = p.reach(slices.Max(lengths))
+	for _, length := range slices.Sorted(maps.Keys(p.between)) {
+		r.Between = append(r.Between, p.changes(length, p.between[length])...)
+	}
 	return r
 }
 
@@ -69,6 +78,8 @@ type pair struct {
 	direction    codes.Direction
 	kinds        []kind
 	memory       [2]step.Func // for profiles, used again
+	lengths      []unit.Distance
+	between      map[unit.Distance]map[int][]align.Interval // what only trains of a length between see, by kind
 }
 
 // kind is a set of classes that every row of both sides treats alike.
@@ -123,8 +134,9 @@ func (p *pair) distinguish() {
 	}
 }
 
-// changes lists the changes that trains of a length see.
-func (p *pair) changes(length unit.Distance) []Change {
+// changes lists the changes that trains of a length see; with only, those of some
+// kinds that lie on some stretches.
+func (p *pair) changes(length unit.Distance, only map[int][]align.Interval) []Change {
 	sets := map[delta.Delta]*classSet{}
 	var order []delta.Delta
 	sweep := func(k *kind, length unit.Distance) (b, t step.Func) {
@@ -134,9 +146,18 @@ func (p *pair) changes(length unit.Distance) []Change {
 		return m[0], m[1]
 	}
 	for i := range p.kinds {
+		stretches, wanted := only[i]
+		if only != nil && !wanted {
+			continue
+		}
 		k := &p.kinds[i]
 		b, t := sweep(k, length)
 		found := delta.Between(b, t, p.cells)
+		if only != nil {
+			found = slices.DeleteFunc(found, func(d delta.Delta) bool {
+				return !slices.ContainsFunc(stretches, func(x align.Interval) bool { return d.Target < x.To && x.From < d.Target+d.Length })
+			})
+		}
 		if len(found) == 0 {
 			continue
 		}

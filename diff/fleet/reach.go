@@ -29,7 +29,7 @@ func (p *pair) reach(longest unit.Distance) []align.Interval {
 			continue
 		}
 		for _, cell := range p.cells {
-			found = append(found, p.cellReach(p.view(before, cell, cell.Base), p.view(after, cell, cell.Target), cell, longest)...)
+			found = append(found, p.cellReach(i, p.view(before, cell, cell.Base), p.view(after, cell, cell.Target), cell, longest)...)
 		}
 	}
 	return align.Union(found)
@@ -57,8 +57,9 @@ func (p *pair) place(cell align.Cell, from, to unit.Distance) align.Interval {
 	return align.Interval{From: cell.Target + from, To: cell.Target + to}
 }
 
-// cellReach finds the reach within one cell, of which the rows are views.
-func (p *pair) cellReach(before, after []profile.Bound, cell align.Cell, longest unit.Distance) []align.Interval {
+// cellReach finds the reach of a kind of trains within one cell, of which the rows
+// are views.
+func (p *pair) cellReach(kind int, before, after []profile.Bound, cell align.Cell, longest unit.Distance) []align.Interval {
 	zone := differing(before, after, p.direction, longest)
 	if len(zone) == 0 {
 		return nil
@@ -85,9 +86,72 @@ func (p *pair) cellReach(before, after []profile.Bound, cell align.Cell, longest
 		}
 		if end := seenUntil(heldBefore[i], heldAfter[i], behindBefore, behindAfter, from, to, longest); end > from {
 			found = append(found, p.place(cell, from, end))
+			for _, length := range p.lengthsBetween(heldBefore[i], heldAfter[i], behindBefore, behindAfter, from, to) {
+				p.sightBetween(length, kind, p.place(cell, from, end))
+			}
 		}
 	}
 	return found
+}
+
+// mostBetween bounds the lengths for which changes are listed beyond those that
+// were asked for.
+const mostBetween = 8
+
+func (p *pair) sightBetween(length unit.Distance, kind int, at align.Interval) {
+	if p.between == nil {
+		p.between = map[unit.Distance]map[int][]align.Interval{}
+	}
+	if p.between[length] == nil {
+		if len(p.between) == mostBetween {
+			return
+		}
+		p.between[length] = map[int][]align.Interval{}
+	}
+	p.between[length][kind] = append(p.between[length][kind], at)
+}
+
+// lengthsBetween gives lengths of trains that see a difference at from, where no
+// length that was asked for sees it there or further on, as far as to; longer than
+// the shortest of those, up to the longest. The speed is the same between two ends
+// of delayed rows behind a place, as it is for seenUntil.
+func (p *pair) lengthsBetween(b, a unit.Speed, behindBefore, behindAfter []profile.Bound, from, to unit.Distance) []unit.Distance {
+	shortest, longest := slices.Min(p.lengths), slices.Max(p.lengths)
+	var list []unit.Distance
+	asked := false
+	i, k := firstBehind(behindBefore, from), firstBehind(behindAfter, from)
+	for above := unit.Distance(0); above < longest; {
+		// Trains longer than above, up to upTo, see the rows b and a.
+		upTo := longest
+		for _, rows := range [...][]profile.Bound{behindBefore[i:], behindAfter[k:]} {
+			if len(rows) > 0 {
+				upTo = min(upTo, from-rows[0].End)
+			}
+		}
+		if b != a && upTo > above {
+			asked = asked || slices.ContainsFunc(p.lengths, func(l unit.Distance) bool { return above < l && l < upTo+to-from })
+			length := upTo
+			if whole := upTo / unit.Metre * unit.Metre; whole > max(above, shortest) {
+				length = whole
+			}
+			if length > shortest {
+				list = append(list, length)
+			}
+		}
+		for i < len(behindBefore) && from-behindBefore[i].End <= upTo {
+			b = min(b, behindBefore[i].Speed)
+			i++
+		}
+		for k < len(behindAfter) && from-behindAfter[k].End <= upTo {
+			a = min(a, behindAfter[k].Speed)
+			k++
+		}
+		above = upTo
+	}
+	if asked {
+		return nil
+	}
+	return list
 }
 
 // seenUntil gives the end of the part of from <= x < to in which some train

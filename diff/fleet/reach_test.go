@@ -9,6 +9,7 @@ import (
 	"pgregory.net/rapid"
 
 	"speedtrail/diff/align"
+	"speedtrail/diff/delta"
 	"speedtrail/diff/internal/metre"
 	"speedtrail/diff/profile"
 	"speedtrail/schema"
@@ -285,6 +286,55 @@ func TestReachIsThatOfEveryLength(t *testing.T) {
 			t.Logf("%d draws with a reach, %d where it is that of lengths in between", some, between)
 		})
 	}
+}
+
+// Law: where a train of a length between those asked for sees a change, a change is
+// listed for its kind on the same stretch of the reach.
+func TestNothingIsSeenOnlyBetween(t *testing.T) {
+	between := 0
+	check(t, 100, func(t *rapid.T) {
+		w := ladder(t)
+		short := unit.Distance(w.dice(1, 3)) * halfMetre
+		long := short + unit.Distance(w.dice(2, 20))*halfMetre
+		r := w.compare(profile.All, short, long)
+		between += len(r.Between)
+		all := append(slices.Clone(r.Changes), r.Between...)
+		sides := [2]*profile.Compiler{profile.New(w.base, w.direction, profile.All), profile.New(w.target, w.direction, profile.All)}
+		type sight struct {
+			at     delta.Delta
+			length unit.Distance
+		}
+		seen := bySelection(sides, func(before, after profile.Selection) (list []sight) {
+			for length := short; length <= long; length += halfMetre {
+				for _, d := range delta.Between(sides[0].Sweep(before, length, profile.NoMaximum), sides[1].Sweep(after, length, profile.NoMaximum), w.cells()) {
+					list = append(list, sight{d, length})
+				}
+			}
+			return list
+		})
+		for _, c := range everyClass() {
+			for _, x := range seen(c) {
+				k := slices.IndexFunc(r.Reach, func(i align.Interval) bool { return i.From <= x.at.Target && x.at.Target < i.To })
+				if k < 0 {
+					t.Fatalf("%v%+v lies outside the reach %v", w, x, r.Reach)
+				}
+				if !slices.ContainsFunc(all, func(l Change) bool {
+					return l.Target < r.Reach[k].To && r.Reach[k].From < l.Target+l.Length && slices.ContainsFunc(l.Products, func(p Product) bool { return p.Has(c) })
+				}) {
+					t.Fatalf("%vclass %+v sees %+v, and on %v nothing is listed for it: %+v", w, c, x, r.Reach[k], all)
+				}
+			}
+		}
+		for _, x := range r.Between {
+			if x.TrainLength <= short || x.TrainLength > long {
+				t.Fatalf("%v%+v is not between %d and %d", w, x, short, long)
+			}
+		}
+	})
+	if !t.Failed() && flag.Lookup("rapid.checks").Value.String() == "100" && between == 0 {
+		t.Error("no draw has a change that only lengths between see")
+	}
+	t.Logf("%d changes that only lengths between see", between)
 }
 
 // Reaches that were worked out by hand: at x, a train sees the rows at its
