@@ -191,7 +191,12 @@ func (a *Account) reconcileRoute(index int) {
 	if len(target[1]) == 0 {
 		return
 	}
-	for _, list := range [...][]Change{r.Changes, r.Masked} {
+	type eyes struct {
+		direction codes.Direction
+		train     int
+	}
+	visible := map[eyes][]scope.Observed{}
+	for masked, list := range [...][]Change{r.Changes, r.Masked} {
 		for i := range list {
 			c := &list[i]
 			o := scope.Observed{
@@ -199,10 +204,25 @@ func (a *Account) reconcileRoute(index int) {
 				Raised: c.Raised(), RunOut: c.RunOut, RowEnds: r.rowEnds(c),
 			}
 			c.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, target[1])[0], owners[1])
+			e := eyes{c.Direction, c.Train}
 			for k := range target[1] {
-				if inside, runOut := scope.Seen(&o, &target[1][k]); inside+runOut > 0 {
+				d := &target[1][k]
+				inside, runOut := scope.Seen(&o, d)
+				if masked == 1 {
+					// What is seen today, and goes further without temporary
+					// restrictions, counts once.
+					seen, ran := scope.SeenBoth(&o, visible[e], d)
+					inside, runOut = inside-seen, runOut-ran
+					if inside+runOut == 0 && seen+ran > 0 {
+						continue
+					}
+				}
+				if inside+runOut > 0 {
 					a.Declared[owners[1][k]].see(c.Train, inside, runOut)
 				}
+			}
+			if masked == 0 {
+				visible[e] = append(visible[e], o)
 			}
 		}
 	}

@@ -66,7 +66,7 @@ func (p *pair) fleet(trains []Train) []Fleet {
 				break
 			}
 		}
-		p.represent(&f, s, trains)
+		p.represent(&f, &found, s, trains)
 		list = append(list, f)
 	}
 	return list
@@ -106,11 +106,11 @@ type shown struct {
 
 // represent finds the products of which a reference train sees the change: it
 // changes in the same sense on a part of the same place; or it sees, as far as
-// its maximum speed lets it, the same speeds change elsewhere on the same
-// connected stretch, where its length carries the change.
-func (p *pair) represent(f *Fleet, s sides, trains []Train) {
-	partOf := func(at unit.Distance) int {
-		return slices.IndexFunc(f.Reach, func(i align.Interval) bool { return i.From <= at && at < i.To })
+// its maximum speed lets it, the same speeds change elsewhere on the same stretch
+// that trains of its kind see without a gap, where its length carries the change.
+func (p *pair) represent(f *Fleet, found *fleet.Result, s sides, trains []Train) {
+	partOf := func(class profile.Class, at unit.Distance) int {
+		return slices.IndexFunc(found.ReachOf(class), func(i align.Interval) bool { return i.From <= at && at < i.To })
 	}
 	var list []shown
 	for i, t := range trains {
@@ -129,7 +129,7 @@ func (p *pair) represent(f *Fleet, s sides, trains []Train) {
 			list = append(list, shown{class: class, from: c.Target, to: c.Target + c.Length, raised: c.After > c.Before, part: -1})
 			for _, u := range free {
 				if u.Target < c.Target+c.Length && c.Target < u.Target+u.Length && (u.After > u.Before) == (c.After > c.Before) {
-					list = append(list, shown{class: class, raised: c.After > c.Before, part: partOf(u.Target), before: u.Before, after: u.After})
+					list = append(list, shown{class: class, raised: c.After > c.Before, part: partOf(class, u.Target), before: u.Before, after: u.After})
 				}
 			}
 		}
@@ -144,7 +144,7 @@ func (p *pair) represent(f *Fleet, s sides, trains []Train) {
 					return false
 				}
 				if x.part >= 0 {
-					return x.before == c.Before && x.after == c.After && x.part == partOf(c.Target)
+					return x.before == c.Before && x.after == c.After && x.part == partOf(x.class, c.Target)
 				}
 				return x.from < c.Target+c.Length && c.Target < x.to
 			})

@@ -24,8 +24,12 @@ var curveSpeed = []example{
 		// 11.8 x 19600 / 1000 = 231.28, 111.28 mm of deficiency: too much for 80 and 100 mm.
 		want: "curve-speed both 1.000 2.000 speed.csv:2 cd100 is 140 km/h; on the curve of 1000 m with 120 mm of cant (curves.csv:2) that is a cant deficiency of 111.28 mm, and 100 mm carry 135 km/h\n" +
 			"curve-speed both 1.000 2.000 speed.csv:2 cd80 is 140 km/h; on the curve of 1000 m with 120 mm of cant (curves.csv:2) that is a cant deficiency of 111.28 mm, and 80 mm carry 130 km/h\n"},
-	{name: "the speed of the basic profile, which has no category",
-		files: files{"speed.csv": "from_km,to_km,basic,cd150\n0,10,160,160\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"}},
+	{name: "the basic speed, as a reference train has it",
+		files: files{"speed.csv": "from_km,to_km,basic,cd150\n0,10,160,160\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"},
+		// 11.8 x 25600 / 600 = 503.47 mm; 150 + 100 mm carry 110 km/h, 11.8 x 12100 / 600 = 237.97.
+		want: "curve-speed both 1.000 2.000 speed.csv:2 160 km/h for T; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 403.47 mm, and 150 mm carry 110 km/h\n"},
+	{name: "a basic speed that the category of the reference train carries",
+		files: files{"speed.csv": "from_km,to_km,basic\n0,10,110\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"}},
 	{name: "a row that only touches the curve",
 		files: files{"speed.csv": "from_km,to_km,basic,cd150\n0,1,100,160\n1,2,100,100\n2,10,100,160\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"}},
 }

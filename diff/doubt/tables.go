@@ -147,6 +147,7 @@ func (c *check) curves() {
 						impact.SpeedForCantDeficiency(curve.RadiusM, curve.CantMM, cat.MM()))})
 				}
 			}
+			c.trainsOnCurve(row, curve, from, to)
 			for _, t := range c.trains {
 				v := min(profile.StaticSpeedOf(row, profile.ClassOf(t)), t.Max)
 				if slowest == 0 || v < slowest {
@@ -158,6 +159,39 @@ func (c *check) curves() {
 			c.add(CantExcess, &curve.Row, fmt.Sprintf("at %d km/h, the lowest line speed of a reference train, the cant of %d mm on %d m is an excess of %s mm; the limit of dataset.toml is %d",
 				slowest, curve.CantMM, curve.RadiusM, hundredths(-impact.CantDeficiency(slowest, curve.RadiusM, curve.CantMM)), limit))
 		}
+	}
+}
+
+// trainsOnCurve looks at the speeds that reference trains have on a curve by other
+// columns than that of a cant deficiency category, which is looked at by itself.
+func (c *check) trainsOnCurve(row *schema.SpeedRow, curve *schema.CurveRow, from, to unit.Distance) {
+	type reason struct {
+		cant codes.CantDeficiency
+		v    unit.Speed
+	}
+	var order []reason
+	trains := map[reason][]string{}
+	for _, t := range c.trains {
+		v := min(profile.StaticSpeedOf(row, profile.ClassOf(t)), t.Max)
+		byColumn := false
+		for cat := range t.Cant + 1 {
+			byColumn = byColumn || row.Cant[cat] == v && v > row.Basic && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM())
+		}
+		if byColumn || !impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, t.Cant.MM()) {
+			continue
+		}
+		x := reason{t.Cant, v}
+		if trains[x] == nil {
+			order = append(order, x)
+		}
+		trains[x] = append(trains[x], t.ID)
+	}
+	for _, x := range order {
+		c.list = append(c.list, Doubt{CurveSpeed, row.Directions & c.route.Directions, from, to, row.Pos, fmt.Sprintf(
+			"%d km/h for %s; on the curve of %d m with %d mm of cant (%s) that is a cant deficiency of %s mm, and %d mm carry %d km/h",
+			x.v, strings.Join(trains[x], ", "), curve.RadiusM, curve.CantMM, place(curve.Pos.File, curve.Pos.Line),
+			hundredths(impact.CantDeficiency(x.v, curve.RadiusM, curve.CantMM)), x.cant.MM(),
+			impact.SpeedForCantDeficiency(curve.RadiusM, curve.CantMM, x.cant.MM()))})
 	}
 }
 

@@ -40,6 +40,8 @@ type Result struct {
 	// at a length that was asked for: for lengths above the shortest of those and up
 	// to the longest, in the same order.
 	Between []Change
+	// kinds are the classes that the rows tell apart, with the reach of each.
+	kinds []kind
 	// Reach covers every point at which a train of some length, up to the
 	// longest asked for, sees a change; on the target's track, in its order.
 	Reach []align.Interval
@@ -64,6 +66,7 @@ func CompareSides(base, target *profile.Compiler, d codes.Direction, cells []ali
 		r.Changes = append(r.Changes, p.changes(length, nil)...)
 	}
 	r.Reach = p.reach(slices.Max(lengths))
+	r.kinds = p.kinds
 	for _, length := range slices.Sorted(maps.Keys(p.between)) {
 		r.Between = append(r.Between, p.changes(length, p.between[length])...)
 	}
@@ -86,6 +89,17 @@ type pair struct {
 type kind struct {
 	before, after profile.Selection
 	set           classSet
+	reach         []align.Interval
+}
+
+// ReachOf is Reach for the trains of a class alone.
+func (r *Result) ReachOf(c profile.Class) []align.Interval {
+	for i := range r.kinds {
+		if k := &r.kinds[i]; k.set[c.Cant][c.Categories]&(1<<c.AxleLoad) != 0 {
+			return k.reach
+		}
+	}
+	return nil
 }
 
 // distinguish sorts the classes into kinds. What a row gives depends on the

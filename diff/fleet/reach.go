@@ -29,8 +29,10 @@ func (p *pair) reach(longest unit.Distance) []align.Interval {
 			continue
 		}
 		for _, cell := range p.cells {
-			found = append(found, p.cellReach(i, p.view(before, cell, cell.Base), p.view(after, cell, cell.Target), cell, longest)...)
+			k.reach = append(k.reach, p.cellReach(i, p.view(before, cell, cell.Base), p.view(after, cell, cell.Target), cell, longest)...)
 		}
+		k.reach = align.Union(k.reach)
+		found = append(found, k.reach...)
 	}
 	return align.Union(found)
 }
@@ -111,10 +113,10 @@ func (p *pair) sightBetween(length unit.Distance, kind int, at align.Interval) {
 	p.between[length][kind] = append(p.between[length][kind], at)
 }
 
-// lengthsBetween gives lengths of trains that see a difference at from, where no
-// length that was asked for sees it there or further on, as far as to; longer than
-// the shortest of those, up to the longest. The speed is the same between two ends
-// of delayed rows behind a place, as it is for seenUntil.
+// lengthsBetween gives lengths, in whole metres, of trains that see a difference at
+// from or further on, before to, where no length that was asked for does; longer
+// than the shortest of those, up to the longest. The speed is the same between two
+// ends of delayed rows behind a place, as it is for seenUntil.
 func (p *pair) lengthsBetween(b, a unit.Speed, behindBefore, behindAfter []profile.Bound, from, to unit.Distance) []unit.Distance {
 	shortest, longest := slices.Min(p.lengths), slices.Max(p.lengths)
 	var list []unit.Distance
@@ -130,11 +132,13 @@ func (p *pair) lengthsBetween(b, a unit.Speed, behindBefore, behindAfter []profi
 		}
 		if b != a && upTo > above {
 			asked = asked || slices.ContainsFunc(p.lengths, func(l unit.Distance) bool { return above < l && l < upTo+to-from })
-			length := upTo
-			if whole := upTo / unit.Metre * unit.Metre; whole > max(above, shortest) {
-				length = whole
+			// Trains have whole metres. One that is a little too long here sees it
+			// further on.
+			length := upTo / unit.Metre * unit.Metre
+			if length <= max(above, shortest) {
+				length = max(above, shortest)/unit.Metre*unit.Metre + unit.Metre
 			}
-			if length > shortest {
+			if length <= longest && length < upTo+to-from {
 				list = append(list, length)
 			}
 		}

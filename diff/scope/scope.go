@@ -150,6 +150,24 @@ func Seen(o *Observed, d *Declared) (inside, runOut unit.Distance) {
 	return inside, runOut
 }
 
+// SeenBoth gives what of Seen a declaration holds of other changes in the same
+// place, too, of which none overlaps another.
+func SeenBoth(o *Observed, others []Observed, d *Declared) (inside, runOut unit.Distance) {
+	for i := range others {
+		x := others[i]
+		if x.From, x.To = max(x.From, o.From), min(x.To, o.To); x.From >= x.To {
+			continue
+		}
+		part := *o
+		part.From, part.To = x.From, x.To
+		in, out := Seen(&x, d)
+		ownIn, ownOut := Seen(&part, d)
+		inside += min(in, ownIn)
+		runOut += min(out, ownOut)
+	}
+	return inside, runOut
+}
+
 func overlap(o *Observed, from, to unit.Distance) unit.Distance {
 	return max(0, min(o.To, to)-max(o.From, from))
 }

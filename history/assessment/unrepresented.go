@@ -1,7 +1,6 @@
 package assessment
 
 import (
-	"cmp"
 	"fmt"
 	"slices"
 	"strings"
@@ -21,7 +20,6 @@ type unseenBy struct {
 	hidden     bool // only without temporary restrictions
 	changes    []diff.FleetChange
 	largest    diff.FleetChange
-	shortest   unit.Distance // the least length at which a change was found
 }
 
 // unrepresented finds changes that only trains see which no reference train
@@ -47,13 +45,12 @@ func note(list []unseenBy, x diff.FleetChange, p fleet.Product, f diff.Fleet) []
 	raised := x.After > x.Before
 	i := slices.IndexFunc(list, func(u unseenBy) bool { return u.product == p && u.raised == raised && u.hidden == f.Permanent })
 	if i < 0 {
-		list = append(list, unseenBy{product: p, raised: raised, hidden: f.Permanent, largest: x, shortest: x.Lengths[0]})
+		list = append(list, unseenBy{product: p, raised: raised, hidden: f.Permanent, largest: x})
 		i = len(list) - 1
 	}
 	u := &list[i]
 	u.changes = append(u.changes, x)
 	u.directions |= 1 << f.Direction
-	u.shortest = min(u.shortest, x.Lengths[0])
 	if abs(x.After-x.Before) > abs(u.largest.After-u.largest.Before) {
 		u.largest = x
 	}
@@ -81,7 +78,7 @@ func (c *collector) unrepresentedFinding(r *diff.Route, u unseenBy) ranked {
 		text += fmt.Sprintf(", in %d pieces", n)
 	}
 	if u.hidden {
-		text += ", hidden today by temporary restrictions"
+		text += ", without temporary restrictions"
 	}
 	return ranked{
 		Finding: Finding{
@@ -111,7 +108,7 @@ func (c *collector) example(route string, u unseenBy, top unit.Speed) string {
 	if len(categories) > 0 {
 		fmt.Fprintf(&b, "categories = [%s]\n", strings.Join(categories, ", "))
 	}
-	length := cmp.Or(u.shortest/unit.Metre, 1)
+	length := u.largest.Lengths[0] / unit.Metre
 	fmt.Fprintf(&b, "axle_load = %q\nlength_m = %d\nmax_speed_kmh = %d\n", class.AxleLoad, length, top)
 	return b.String()
 }
