@@ -91,6 +91,7 @@ type Route struct {
 	sources    sourceTable
 	causes     causeTable
 	pieces     map[string]int
+	alike      map[leavingKey]bool // see carriesAlike
 	neighbours neighbours
 }
 

@@ -127,6 +127,8 @@ func TestDeclared(t *testing.T) {
 			"nominal 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "nominal 6.000-6.200 T 80>90 run-out: 6.000-6.050 CR-1/0, 6.050-6.200 CR-1/0 run-out", "CR-1/0 sees T 2050+150"}},
 		{"a change that is hidden today", over(flat, texts{"temporary.csv": temporary("4,5,60")}), asked(raise, declares("R1", "both", 4, 4.5, "raise", "")), []string{
 			"nominal 5.000-6.000 T 80>90: outside", "masked nominal 4.000-5.000 T 80>90: 4.000-4.500 CR-1/0, 4.500-5.000 outside", "CR-1/0 sees T 500"}},
+		{"a change that is seen and goes further without temporary restrictions counts once", over(flat, texts{"temporary.csv": temporary("4,5,85")}), asked(raise, declares("R1", "both", 4, 6, "raise", "")), []string{
+			"nominal 4.000-5.000 T 80>85: 4.000-5.000 CR-1/0", "nominal 5.000-6.000 T 80>90: 5.000-6.000 CR-1/0", "masked nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "CR-1/0 sees T 2000"}},
 		{"added track needs any effect", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "both", 0, 10, "raise", ""), declares("R1", "reverse", 2, 6, "any", "")), []string{
 			"added reverse: 0.000-2.000 outside, 2.000-6.000 CR-1/1, 6.000-10.000 outside", "CR-1/0 sees nothing", "CR-1/1 sees track 4000"}},
 		{"any effect for one train is not for the track", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "reverse", 2, 6, "any", `"T"`)), []string{

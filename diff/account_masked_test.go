@@ -93,6 +93,8 @@ func TestLeaving(t *testing.T) {
 		{"without train length delay", nil, axle("9.5,9.9,,60,,no,\n"), nil},
 		{"a row that goes", axle("9.5,9.9,,60,,,\n"), texts{"axle-load.csv": gone}, []string{"axle-load.csv -2 nominal line 2, 200 m, removed"}},
 		{"a note", axle("9.5,9.9,,60,,,\n"), axle("9.5,9.9,,60,,,x\n"), nil},
+		{"one row for both directions, and one for each", axle("9.5,9.9,both,60,,,\n0.1,0.5,both,60,,,\n"), axle("9.5,9.9,nominal,60,,,\n9.5,9.9,reverse,60,,,\n0.1,0.5,both,60,,,\n"), nil},
+		{"two rows written anew", axle("9.5,9.9,,60,,,\n9.6,9.9,,70,,,\n"), axle("9.6,9.9,both,70,,yes,\n9.5,9.9,both,60,,yes,\n"), nil},
 		{"a row that is as it was", axle("9.5,9.9,,60,,,\n"), texts{"speed.csv": strings.Replace(ground["speed.csv"], "80", "90", 1)}, nil},
 		{"of a category without a reference train", axle("9.5,9.9,,60,50,,\n"), axle("9.5,9.9,,60,40,,\n"), []string{"axle-load.csv -2 +2 nominal line 2, 200 m"}},
 		{"a whole route of one speed, both ends", texts{"speed.csv": "from_km,to_km,basic\n0,10,100\n"}, texts{"speed.csv": "from_km,to_km,basic\n0,10,110\n"},

@@ -45,6 +45,9 @@ func (r *Route) leaving(trains []Train) []Leaving {
 				}) {
 					continue
 				}
+				if r.carriesAlike(layer, direction, longest) {
+					continue // whatever the rows are that say it
+				}
 				for _, row := range now {
 					list = append(list, Leaving{c, direction, row, false, longest})
 				}
@@ -60,6 +63,48 @@ func (r *Route) leaving(trains []Train) []Leaving {
 		}
 	}
 	return list
+}
+
+// carriesAlike tells whether all rows of a layer together carry the same beyond the
+// end of the route in both revisions, for every class of trains.
+func (r *Route) carriesAlike(layer profile.Layer, direction codes.Direction, longest unit.Distance) bool {
+	key := leavingKey{layer, direction}
+	if alike, known := r.alike[key]; known {
+		return alike
+	}
+	var lines [2][]int
+	for side, route := range [...]*schema.Route{r.Base, r.Target} {
+		switch layer {
+		case profile.StaticSpeed:
+			for i := range route.Speed {
+				lines[side] = append(lines[side], route.Speed[i].Pos.Line)
+			}
+		case profile.AxleLoad:
+			for i := range route.AxleLoad {
+				lines[side] = append(lines[side], route.AxleLoad[i].Pos.Line)
+			}
+		case profile.Temporary:
+			for i := range route.Temporary {
+				lines[side] = append(lines[side], route.Temporary[i].Pos.Line)
+			}
+		}
+	}
+	for side, route := range [...]*schema.Route{r.Base, r.Target} {
+		lines[side] = slices.DeleteFunc(lines[side], func(line int) bool { return len(beyond(route, layer, []int{line}, direction, longest)) == 0 })
+	}
+	alike := !concernsIn(direction, func(direction codes.Direction, class profile.Class) bool {
+		return !slices.Equal(carried(r.Base, layer, lines[0], direction, longest, class), carried(r.Target, layer, lines[1], direction, longest, class))
+	})
+	if r.alike == nil {
+		r.alike = map[leavingKey]bool{}
+	}
+	r.alike[key] = alike
+	return alike
+}
+
+type leavingKey struct {
+	layer     profile.Layer
+	direction codes.Direction
 }
 
 // load is what a row carries beyond the end of a route: a speed, to a train length
