@@ -133,6 +133,8 @@ func TestDeclared(t *testing.T) {
 			"added reverse: 0.000-2.000 outside, 2.000-6.000 CR-1/1, 6.000-10.000 outside", "CR-1/0 sees nothing", "CR-1/1 sees track 4000"}},
 		{"any effect for one train is not for the track", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "reverse", 2, 6, "any", `"T"`)), []string{
 			"added reverse: outside", "CR-1/0 sees nothing"}},
+		{"an end that only the base has", over(flat, texts{"route.toml": oneWay}), asked(over(raise, texts{"route.toml": strings.Replace(oneWay, "end_km = 10", "end_km = 5", 1), "speed.csv": "from_km,to_km,basic,train_length_delay\n0,4,100,no\n4,5,90,no\n"}), declares("R1", "both", 4, 10, "any", "")), []string{
+			"removed nominal: 5.000-10.000 CR-1/0", "nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "CR-1/0 sees T 1000 track 5000"}},
 		{"removed track, by the posts of the base", texts{"route.toml": oneWay}, asked(texts{"route.toml": oneWay + "[[jump]]\narriving_km = 8\nleaving_km = 8.5\n"}, declares("R1", "both", 8, 8.5, "any", "")), []string{
 			"removed nominal: 8.000-8.500 CR-1/0", "CR-1/0 sees track 500"}},
 	}, declaredOf)

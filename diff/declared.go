@@ -120,7 +120,34 @@ func (a *Account) locate(o *Options, x *schema.Declaration, faults *source.Colle
 	if d.base == nil && d.target == nil {
 		faults.Add(x.Pos, "the declaration on route %s: %s", source.Quote(x.Route), problem)
 	}
+	if sides[0] != nil && sides[1] != nil && (d.base == nil) != (d.target == nil) {
+		d.acrossTracks(align.Tracks(sides[0].Track, sides[1].Track).Common)
+	}
 	return d, nil
+}
+
+// acrossTracks gives a declaration, of which only one revision has both ends, its
+// stretch on the other one: that between the outermost points which both have.
+func (d *Declared) acrossTracks(common []align.Cell) {
+	have, other := d.base, &d.target
+	if have == nil {
+		have, other = d.target, &d.base
+	}
+	for _, c := range common {
+		own, there := c.Base, c.Target
+		if d.base == nil {
+			own, there = c.Target, c.Base
+		}
+		from, to := max(have.From, own), min(have.To, own+c.Length)
+		if from >= to {
+			continue
+		}
+		from, to = from-own+there, to-own+there
+		if *other == nil {
+			*other = &align.Interval{From: from, To: to}
+		}
+		(*other).From, (*other).To = min((*other).From, from), max((*other).To, to)
+	}
 }
 
 // span finds a stretch on a track, or says why it is not there.
