@@ -199,6 +199,10 @@ func (r *reader) directions(m table.Reader, route *Route) {
 			r.faults.Add(v.Pos, "direction %s is none of nominal, reverse", source.Quote(v.Text))
 			continue
 		}
+		if route.Directions&d != 0 {
+			r.faults.Add(v.Pos, "direction %s stands twice", source.Quote(v.Text))
+			continue
+		}
 		route.Directions |= d
 	}
 	if route.Directions == 0 && r.faults.Count() == before {
