@@ -13,9 +13,9 @@ import (
 )
 
 // assessments gives a function that lists the recorded assessments whose range
-// base..target holds a commit, the oldest first.
-func (t *tracing) assessments(ctx context.Context) (func(int32) []render.TraceAssessment, error) {
-	none := func(int32) []render.TraceAssessment { return []render.TraceAssessment{} }
+// base..target holds a commit, the oldest first, and the entry that anchors it.
+func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceAssessment, string), error) {
+	none := func(int32) ([]render.TraceAssessment, string) { return []render.TraceAssessment{}, "" }
 	l, err := t.app.openLedger(ctx, false)
 	if errors.Is(err, ledger.ErrNoLedger) || errors.Is(err, os.ErrNotExist) {
 		return none, nil
@@ -45,10 +45,13 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) []render.TraceAs
 			ranges = append(ranges, r)
 		}
 	}
-	return func(c int32) []render.TraceAssessment {
-		list := []render.TraceAssessment{}
+	return func(c int32) (list []render.TraceAssessment, anchor string) {
+		list = []render.TraceAssessment{}
+		if a := line.Anchor(t.folder); a != nil && a.Revision == t.h.Commits[c].Hash.String() {
+			anchor = a.Entry.String()
+		}
 		if len(ranges) == 0 {
-			return list
+			return list, anchor
 		}
 		after := t.h.Descendants(c)
 		for _, r := range ranges {
@@ -56,7 +59,7 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) []render.TraceAs
 				list = append(list, render.TraceAssessment{Number: r.number, State: line.State(r.number).Word, SignOffs: append([]string{}, signedBy(line, r.number)...)})
 			}
 		}
-		return list
+		return list, anchor
 	}, nil
 }
 

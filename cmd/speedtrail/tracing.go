@@ -248,10 +248,12 @@ func (t *tracing) describe(ctx context.Context) error {
 		if err != nil {
 			return err
 		}
+		list, anchor := assessed(c)
 		out := render.TraceCommit{
-			Hash: commit.Hash, Author: person(commit.Author), Authored: instant(commit.Author.When),
+			Anchor: anchor,
+			Hash:   commit.Hash, Author: person(commit.Author), Authored: instant(commit.Author.When),
 			Committed: instant(commit.Committer.When), Subject: validText(commit.Subject),
-			Requests: []render.TraceRequest{}, Assessments: assessed(c),
+			Requests: []render.TraceRequest{}, Assessments: list,
 		}
 		if base, ok := t.h.Base(c); ok && changed[i] {
 			requests, err := trace.Requests(ctx, t.repo, t.folder, t.h.Commits[base].Hash, hash)

@@ -44,6 +44,7 @@ type TraceRevision struct {
 
 // TraceCommit is a commit that a trace names.
 type TraceCommit struct {
+	Anchor      string            `json:"anchor"`      // the entry that made it the root of the line of approval, SEQ:HASH; empty: it is not
 	Assessments []TraceAssessment `json:"assessments"` // whose range holds the commit; none: it is not assessed
 	Author      assessment.Person `json:"author"`
 	Authored    string            `json:"authored"`
@@ -216,6 +217,9 @@ func assessmentNumbers(c *TraceCommit) string {
 	var list []string
 	for _, a := range c.Assessments {
 		list = append(list, strings.Join(append([]string{strconv.FormatInt(a.Number, 10) + " " + a.State}, a.SignOffs...), ", "))
+	}
+	if c.Anchor != "" {
+		list = append(list, "approved, the anchor")
 	}
 	if len(list) == 0 {
 		return "not assessed"

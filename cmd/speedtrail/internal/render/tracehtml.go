@@ -25,6 +25,7 @@ const traceCSS = `
 
 // tracePage is what the template shows.
 type tracePage struct {
+	Key                    string // what the speeds are
 	T                      *Trace
 	Title, Caution, Policy string
 	CSS                    template.CSS
@@ -59,16 +60,12 @@ func TraceHTML(w io.Writer, t *Trace) error {
 	if t.At == "" {
 		where = "km " + minus(t.From) + " to " + minus(t.To)
 	}
-	p := tracePage{T: t, Title: source.Visible(fmt.Sprintf("%s %s, %s", t.Route, t.RouteName, where)), Caution: Caution}
+	p := tracePage{T: t, Title: source.Visible(fmt.Sprintf("%s %s, %s", t.Route, t.RouteName, where)), Caution: Caution, Key: traceKey}
 	p.CSS = template.CSS(strings.Replace(pageCSS, "HEADER", "trace of "+short(t.Revision.Commit), 1) + traceCSS)
 	p.Policy = "default-src 'none'; style-src '" + inlineHash(string(p.CSS)) + "'"
 	for i := range t.Trails {
 		trail := &t.Trails[i]
-		now := speedWords(trail.Now.Speed)
-		if trail.Now.Speed > 0 {
-			now += " km/h"
-		}
-		s := traceSection{Title: source.Visible(fmt.Sprintf("%s, %s: now %s", trail.Direction, strings.Join(trail.Trains, ", "), now))}
+		s := traceSection{Title: source.Visible(fmt.Sprintf("%s, %s: %s at %s", trail.Direction, strings.Join(trail.Trains, ", "), speedAt(trail.Now.Speed), t.Revision.Typed))}
 		// Charts are built from escaped texts and numbers only.
 		s.Chart = template.HTML(t.timeChart(trail, fmt.Sprintf("p%d", i+1)))
 		gaps := t.Gaps
@@ -117,7 +114,7 @@ func (t *Trace) row(commit int) traceRow {
 	c := &t.Commits[commit]
 	return traceRow{
 		Day: day(c), Hash: c.Hash, Author: source.Visible(c.Author.Name), Authored: c.Authored, Subject: source.Visible(c.Subject),
-		Requests: source.Visible(requestWords(c)), Assessments: source.Visible(assessmentWords(c)), Assessed: len(c.Assessments) > 0,
+		Requests: source.Visible(requestWords(c)), Assessments: source.Visible(assessmentWords(c)), Assessed: len(c.Assessments) > 0 || c.Anchor != "",
 	}
 }
 

@@ -26,10 +26,24 @@ func (t *Trace) title() string {
 	return fmt.Sprintf("%s %s, %s: the history up to %s (%s), %s", t.Route, t.RouteName, where, t.Revision.Typed, short(t.Revision.Commit), line)
 }
 
+// traceKey says what the speeds of a trace are, and are not.
+const traceKey = "Speeds are those of each revision, with all its temporary restrictions whatever their dates; what was in service when, speedtrail inforce says."
+
+// speedAt writes a speed with its unit.
+func speedAt(v int) string {
+	if v == 0 {
+		return speedWords(v)
+	}
+	return speedWords(v) + " km/h"
+}
+
 // TraceText writes a trace for the terminal.
 func TraceText(w io.Writer, t *Trace, s Style) error {
 	b := &strings.Builder{}
 	for _, line := range wrap(source.Visible(t.title()), s.Width) {
+		fmt.Fprintln(b, line)
+	}
+	for _, line := range wrap(traceKey, s.Width) {
 		fmt.Fprintln(b, line)
 	}
 	for i := range t.Trails {
@@ -50,10 +64,7 @@ func TraceText(w io.Writer, t *Trace, s Style) error {
 
 func (t *Trace) trailText(b *strings.Builder, trail *TraceTrail, s Style) {
 	fmt.Fprintln(b)
-	head := fmt.Sprintf("%s, %s: now %s", trail.Direction, strings.Join(trail.Trains, ", "), speedWords(trail.Now.Speed))
-	if trail.Now.Speed > 0 {
-		head += " km/h"
-	}
+	head := fmt.Sprintf("%s, %s: %s at %s", trail.Direction, strings.Join(trail.Trains, ", "), speedAt(trail.Now.Speed), t.Revision.Typed)
 	for _, line := range wrap(source.Visible(head), s.Width) {
 		fmt.Fprintln(b, line)
 	}
@@ -157,10 +168,14 @@ func requestWords(c *TraceCommit) string {
 }
 
 func assessmentWords(c *TraceCommit) string {
-	if len(c.Assessments) == 0 {
+	if len(c.Assessments) == 0 && c.Anchor == "" {
 		return "not assessed"
 	}
 	var list []string
+	if c.Anchor != "" {
+		seq, _, _ := strings.Cut(c.Anchor, ":")
+		list = append(list, "approved, the anchor (entry "+seq+")")
+	}
 	for _, a := range c.Assessments {
 		list = append(list, fmt.Sprintf("in assessment %d (%s)", a.Number, strings.Join(append([]string{a.State}, a.SignOffs...), "; ")))
 	}
