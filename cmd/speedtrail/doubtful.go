@@ -35,7 +35,11 @@ func doubtfulNames(d *schema.Dataset) []string {
 		case errTo != nil:
 			add(at, "%s: to_km %s is %v of route %s", what, s.To, errTo, id)
 		case from >= to:
-			add(at, "%s: to_km %s does not lie after from_km %s along route %s", what, s.To, s.From, id)
+			how := "does not lie after"
+			if from == to {
+				how = "is the same place as"
+			}
+			add(at, "%s: to_km %s %s from_km %s along route %s", what, s.To, how, s.From, id)
 		}
 	}
 	for _, q := range d.Requests {

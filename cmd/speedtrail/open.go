@@ -13,6 +13,7 @@ import (
 	"speedtrail/history/ledger"
 	"speedtrail/history/revision"
 	"speedtrail/schema"
+	"speedtrail/schema/source"
 )
 
 // workingTree is the name that stands for the files on disk.
@@ -57,15 +58,60 @@ func (a *app) openSide(repo *revision.Repo, rev string) (side, error) {
 	}
 	s := side{typed: rev}
 	if rev == workingTree {
-		s.files, err = repo.Working(folder)
-		return s, err
+		if s.files, err = repo.Working(folder); err != nil {
+			return s, err
+		}
+		return s, elsewhere(s, folder)
 	}
 	if s.commit, err = repo.Resolve(rev); err != nil {
 		return side{}, err
 	}
 	s.name = repo.Describe(s.commit)
-	s.files, err = repo.Snapshot(s.commit.Hash, folder)
-	return s, err
+	if s.files, err = repo.Snapshot(s.commit.Hash, folder); err != nil {
+		return s, err
+	}
+	return s, elsewhere(s, folder)
+}
+
+// elsewhere refuses a folder without anything of a data set where there is one below
+// it: the call lacks --data, and a list of faults would not say so.
+func elsewhere(s side, folder string) error {
+	for _, name := range []string{"dataset.toml", "trains.toml", "routes"} {
+		if _, err := fs.Stat(s.files, name); err == nil {
+			return nil
+		}
+	}
+	found := dataSets(s.files, ".", 0, nil)
+	if len(found) == 0 {
+		return nil
+	}
+	for i := range found {
+		found[i] = "--data " + path.Join(folder, found[i])
+	}
+	return badCall("there is one below: "+joined(found), "%s has no data set in the folder %s", s.label(), source.Visible(folder))
+}
+
+// dataSets looks for folders with a dataset.toml: not deep, and for a few.
+func dataSets(files fs.FS, dir string, depth int, found []string) []string {
+	entries, err := fs.ReadDir(files, dir)
+	if err != nil || depth > 3 {
+		return found
+	}
+	for _, e := range entries {
+		if len(found) == 3 {
+			break
+		}
+		name := path.Join(dir, e.Name())
+		switch {
+		case !e.IsDir():
+			if e.Name() == "dataset.toml" {
+				found = append(found, dir)
+			}
+		case e.Name() != "routes" && e.Name() != "requests":
+			found = dataSets(files, name, depth+1, found)
+		}
+	}
+	return found
 }
 
 // revisionOf writes the side for a document.

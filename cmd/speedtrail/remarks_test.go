@@ -6,6 +6,8 @@ import (
 	"strings"
 	"testing"
 	"time"
+
+	"speedtrail/history/compose"
 )
 
 // What a person is told beside the result: what went before, what looks wrong, and
@@ -75,4 +77,26 @@ func TestPositionAmongMissingPosts(t *testing.T) {
 	if !strings.Contains(got.out+got.errors, "among the missing posts of a chainage jump: from 2.000 the posts go on at 2.400") {
 		t.Errorf("status %d\n%s%s", got.status, got.out, got.errors)
 	}
+}
+
+// A data set that lies in a folder of the repository is found where --data is
+// missing.
+func TestDataSetElsewhere(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	files := map[string]string{"README": "x\n"}
+	for name, content := range plainFiles(t, t.TempDir(), 80) {
+		files["net/lines/"+name] = content
+	}
+	repo := filepath.Join(t.TempDir(), "repo")
+	who := compose.Person{Name: "Cem Orr", Email: "cem@tarn.example"}
+	if err := compose.Write(t.Context(), repo, []compose.Commit{{Files: files, Author: who, When: at, Message: "One\n"}}); err != nil {
+		t.Fatal(err)
+	}
+	for _, args := range [][]string{{"validate"}, {"validate", "HEAD"}, {"assess", "HEAD", "HEAD"}, {"profile", "--route", "R1", "--train", "T"}} {
+		got := call(t, append([]string{"--repo", repo}, args...)...)
+		if got.status != statusInput || !strings.Contains(got.errors, "has no data set in the folder .") || !strings.Contains(got.errors, "--data net/lines") {
+			t.Errorf("%q: status %d\n%s%s", args, got.status, got.out, got.errors)
+		}
+	}
+	call(t, "--repo", repo, "--data", "net/lines", "validate").want(t, 0)
 }

@@ -152,6 +152,16 @@ func seenWords(d assessment.Declaration) string {
 		}
 		parts = append(parts, strings.Join(g.trains, ", ")+" "+text)
 	}
+	// Asked for by name, and not seen.
+	var missing []string
+	for _, id := range d.Trains {
+		if len(d.Seen) > 0 && d.Track == 0 && !slices.ContainsFunc(d.Seen, func(s assessment.Seen) bool { return s.Train == id }) {
+			missing = append(missing, id)
+		}
+	}
+	if len(missing) > 0 {
+		parts = append(parts, strings.Join(missing, ", ")+" not seen")
+	}
 	if d.Track > 0 {
 		parts = append(parts, km(d.Track)+" km of added or removed track")
 	}
