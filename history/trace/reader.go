@@ -48,7 +48,7 @@ type Batch struct {
 type Reader struct {
 	repo   *revision.Repo
 	folder string
-	batch  int
+	batch  batches
 	each   func(*Loaded)
 	check  *checker
 	prior  Prior
@@ -58,14 +58,19 @@ type Reader struct {
 	listed map[Hash]*listing // of the commits of the last batches and their bases
 }
 
+// batches says how many commits are handed over at once: first some, so that there
+// is progress to be seen, then more and more. In a large batch the versions of a
+// folder, of which each is stored as a difference to the next, are read together.
+type batches struct{ first, most int }
+
 // NewReader reads the data set in a folder of a repository.
 func NewReader(repo *revision.Repo, folder string) *Reader {
-	return &Reader{repo: repo, folder: folder, batch: 256}
+	return &Reader{repo: repo, folder: folder, batch: batches{128, 1024}}
 }
 
 // InBatches sets how many commits are handed over at once, and gives the reader.
 func (r *Reader) InBatches(commits int) *Reader {
-	r.batch = max(1, commits)
+	r.batch = batches{max(1, commits), max(1, commits)}
 	return r
 }
 

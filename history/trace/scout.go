@@ -38,9 +38,11 @@ func newScout(repo *revision.Repo, folder string) *scout {
 }
 
 // run lists commits, some at a time.
-func (s *scout) run(ctx context.Context, list []walked, batch int, to chan<- listed) error {
-	for at := 0; at < len(list); at += batch {
-		p := listed{commits: list[at:min(at+batch, len(list))]}
+func (s *scout) run(ctx context.Context, list []walked, batch batches, to chan<- listed) error {
+	for size := batch.first; len(list) > 0; size = min(2*size, batch.most) {
+		n := min(size, len(list))
+		p := listed{commits: list[:n]}
+		list = list[n:]
 		var err error
 		if p.found, err = s.list(ctx, p.commits); err != nil {
 			return err
