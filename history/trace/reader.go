@@ -65,7 +65,7 @@ type batches struct{ first, most int }
 
 // NewReader reads the data set in a folder of a repository.
 func NewReader(repo *revision.Repo, folder string) *Reader {
-	return &Reader{repo: repo, folder: folder, batch: batches{128, 1024}}
+	return &Reader{repo: repo, folder: folder, batch: batches{256, 2048}}
 }
 
 // InBatches sets how many commits are handed over at once, and gives the reader.
