@@ -123,3 +123,52 @@ func TestStatementsThatAreBrought(t *testing.T) {
 		t.Errorf("an empty list of routes: status %d\n%s", got.status, got.errors)
 	}
 }
+
+// A call that is refused makes no ledger, and a faulty data set no root of approval.
+func TestRefusedLeavesNoLedger(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 63}, []time.Time{at, at.Add(time.Hour)})
+	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	key := func(name string) string { return filepath.Join(keys, name) }
+	for _, args := range [][]string{
+		{"sign", "1", "--role", "checker", "--decision", "approve", "--reason", "seen", "--key", key("ada"), "-y"},
+		{"revoke", "SHA256:x", "--role", "owner", "--reason", "lost", "--key", key("ada"), "-y"},
+		{"inforce", "record", "c0", "--since", "2026-03-03T00:00:00Z", "--reason", "start", "--key", key("cem"), "-y"},
+		{"anchor", "c1", "--sign", "checker=" + key("ada"), "--sign", "approver=" + key("bea"), "--sign", "in-service=" + key("cem"), "--reason", "root", "-y"},
+	} {
+		if got := call(t, in(args...)...); got.status == 0 {
+			t.Errorf("%q: status 0\n%s%s", args, got.out, got.errors)
+		}
+		if _, err := os.Stat(filepath.Join(repo, ".git", "speedtrail", "ledger.db")); err == nil {
+			t.Fatalf("%q has made a ledger", args)
+		}
+	}
+	got := call(t, in("anchor", "c1", "--sign", "checker="+key("ada"), "--reason", "root", "-y")...)
+	if got.status != statusInput || !strings.Contains(got.errors, `"63" is not`) {
+		t.Errorf("a faulty data set is anchored: status %d\n%s", got.status, got.errors)
+	}
+}
+
+// What would be refused is refused before anybody is asked to sign it.
+func TestRefusedBeforeSigning(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80, 100}, []time.Time{at, at.Add(time.Hour), at.Add(2 * time.Hour)})
+	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	key := func(name string) string { return filepath.Join(keys, name) }
+	call(t, in("anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y")...).want(t, 0)
+	call(t, in("assess", "c0", "c1")...).want(t, 1)
+	call(t, in("assess", "c1", "c2")...).want(t, 1)
+	for text, args := range map[string][]string{
+		"base-not-approved":   {"sign", "2", "--role", "checker", "--key", key("ada")},
+		`no role "aprover"`:   {"sign", "1", "--role", "aprover", "--key", key("ada")},
+		"prepared the change": {"sign", "1", "--role", "checker", "--key", key("cem")},
+	} {
+		// Without --yes and without a terminal, asking would be an error of its own.
+		got := call(t, in(append(args, "--decision", "approve", "--reason", "seen")...)...)
+		if got.status != statusInput || !strings.Contains(got.errors, text) || strings.Contains(got.errors, "The statement:") || strings.Contains(got.errors, "no terminal to ask") {
+			t.Errorf("%q: status %d\n%s", args, got.status, got.errors)
+		}
+	}
+}

@@ -3,6 +3,8 @@ package approval
 import (
 	"slices"
 	"testing"
+
+	"speedtrail/history/signoff"
 )
 
 func TestStates(t *testing.T) {
@@ -100,6 +102,29 @@ func TestRejectionClearedInAnotherRole(t *testing.T) {
 	s.state(second, Rejected)
 	s.must(s.signOff(second, "bea", "checker", "approve"))
 	s.state(second, Approved)
+}
+
+// An approval that was signed before a rejection does not lift it when it is handed
+// in afterwards, whatever the numbers.
+func TestRejectionIsNotLiftedByTheOlder(t *testing.T) {
+	s := anchored(t, ordinary())
+	first := s.assess("a", "b", ordinary(), ordinary(), nil)
+	before, at := s.head, s.line.times[s.head.Seq-1]
+	second := s.assess("a", "b", ordinary(), ordinary(), nil)
+	s.must(s.signOff(second, "bea", "approver", "reject"))
+	s.refused(s.signOff(first, "bea", "approver", "approve", func(st *signoff.Statement) { st.Head, st.Time = before, at }), "is older than the last decision of bea@tarn.example on it")
+	s.state(first, Rejected)
+	s.state(second, Rejected)
+}
+
+// Who approved a content in one role does not take another one, which is to be
+// independent, by another number.
+func TestIndependenceIsByContent(t *testing.T) {
+	s := anchored(t, ordinary())
+	first := s.assess("a", "b", ordinary(), ordinary(), nil)
+	second := s.assess("a", "b", ordinary(), ordinary(), nil)
+	s.must(s.signOff(first, "ada", "checker", "approve"))
+	s.refused(s.signOff(second, "ada", "approver", "approve"), "ada@tarn.example signed as checker")
 }
 
 // Another content is not rejected with it.
