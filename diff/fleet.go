@@ -3,6 +3,7 @@ package diff
 import (
 	"cmp"
 	"slices"
+	"sort"
 
 	"speedtrail/diff/align"
 	"speedtrail/diff/delta"
@@ -110,7 +111,12 @@ type shown struct {
 // that trains of its kind see without a gap, where its length carries the change.
 func (p *pair) represent(f *Fleet, found *fleet.Result, s sides, trains []Train) {
 	partOf := func(class profile.Class, at unit.Distance) int {
-		return slices.IndexFunc(found.ReachOf(class), func(i align.Interval) bool { return i.From <= at && at < i.To })
+		reach := found.ReachOf(class)
+		i := sort.Search(len(reach), func(i int) bool { return reach[i].To > at })
+		if i == len(reach) || at < reach[i].From {
+			return -1
+		}
+		return i
 	}
 	var list []shown
 	for i, t := range trains {
@@ -138,13 +144,22 @@ func (p *pair) represent(f *Fleet, found *fleet.Result, s sides, trains []Train)
 		c := &f.Changes[i]
 		raised := c.After > c.Before
 		c.Represented = make([]bool, len(c.Products))
+		parts := map[profile.Class]int{}
+		part := func(class profile.Class) int {
+			i, ok := parts[class]
+			if !ok {
+				i = partOf(class, c.Target)
+				parts[class] = i
+			}
+			return i
+		}
 		for k, product := range c.Products {
 			c.Represented[k] = slices.ContainsFunc(list, func(x shown) bool {
 				if x.raised != raised || !product.Has(x.class) {
 					return false
 				}
 				if x.part >= 0 {
-					return x.before == c.Before && x.after == c.After && x.part == partOf(x.class, c.Target)
+					return x.before == c.Before && x.after == c.After && x.part == part(x.class)
 				}
 				return x.from < c.Target+c.Length && c.Target < x.to
 			})

@@ -23,6 +23,8 @@ type Service struct {
 	// when it went into service. Later signatures do not take that away.
 	Late       bool
 	ApprovedAt time.Time
+	// Lapsed: it was approved when it went into service, and is not any more.
+	Lapsed bool
 	// Through are the approved assessments whose target it is.
 	Through []int64
 }
@@ -64,8 +66,9 @@ func ServiceOf(line *approval.Line, r approval.Record) Service {
 	}
 	if s.Approved && !approved(line.AsOf(r.Since)) {
 		s.Late = true
-		s.ApprovedAt, _ = line.Since(approved)
+		s.ApprovedAt, _ = line.Since(r.Folder, approved)
 	}
+	s.Lapsed = !s.Approved && !s.Undoes && approved(line.AsOf(r.Since))
 	for _, a := range line.Assessments() {
 		if a.Folder == r.Folder && a.TargetTree == r.Content && line.State(a.Number).Word == approval.Approved {
 			s.Through = append(s.Through, a.Number)
@@ -123,6 +126,8 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 			list = append(list, ServiceFinding{ServiceUndoes, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and is approved, but no approved assessment leads to it from commit %s, which was in service before: what that one changed is undone", r.Entry.Seq, r.Revision, where, at, s.Before.Revision)})
 		case s.Late:
 			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and was approved only on %s", r.Entry.Seq, r.Revision, where, at, s.ApprovedAt.UTC().Format(time.RFC3339))})
+		case s.Lapsed:
+			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and was approved then; it is not any more", r.Entry.Seq, r.Revision, where, at)})
 		case !s.Approved:
 			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s without approval", r.Entry.Seq, r.Revision, where, at)})
 		}

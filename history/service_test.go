@@ -3,6 +3,7 @@ package history_test
 import (
 	"path/filepath"
 	"slices"
+	"strings"
 	"testing"
 	"time"
 
@@ -208,6 +209,17 @@ func TestServiceBeforeItsApproval(t *testing.T) {
 		s, findings := w.services()
 		if got := s[entry]; !got.Approved || !got.Late || !got.ApprovedAt.Equal(clock(w.head.Seq)) || !slices.Contains(ids(findings), history.ServiceUnapproved) {
 			t.Errorf("led to from c: %+v, %v", got, findings)
+		}
+	})
+	t.Run("rejected since", func(t *testing.T) {
+		w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+		w.anchor("a")
+		n := w.approve("a", "b", "ada")
+		entry := w.inService("b", clock(w.head.Seq+1).Format(time.RFC3339), "all")
+		w.signOff(n, "ada", "checker", signoff.Reject)
+		s, findings := w.services()
+		if got := s[entry]; got.Approved || !got.Lapsed || len(findings) != 1 || findings[0].ID != history.ServiceUnapproved || !strings.Contains(findings[0].Text, "was approved then; it is not any more") {
+			t.Errorf("%+v, %v", got, findings)
 		}
 	})
 	t.Run("in time", func(t *testing.T) {

@@ -166,6 +166,9 @@ independent of preparer. Assessments that the key has signed before are listed f
 review.`,
 		Args: arguments(1, 1),
 		RunE: func(c *cobra.Command, args []string) error {
+			if err := s.alone(c); err != nil {
+				return err
+			}
 			if err := s.check(); err != nil {
 				return err
 			}

@@ -81,6 +81,9 @@ newest approved policy. An earlier record is corrected by a new one that replace
 voids it.`,
 		Args: arguments(1, 1),
 		RunE: func(c *cobra.Command, args []string) error {
+			if err := s.alone(c); err != nil {
+				return err
+			}
 			if err := s.check(); err != nil {
 				return err
 			}
@@ -221,9 +224,10 @@ type serviceRecord struct {
 	Recorded string   `json:"recorded"`
 	Reason   string   `json:"reason"`
 	Approved bool     `json:"approved"`
-	Late     string   `json:"approved_late"` // when, where that was after it went into service; else empty
-	Undoes   bool     `json:"undoes"`
-	Through  []int64  `json:"assessments"`
+	lapsed   bool
+	Late     string  `json:"approved_late"` // when, where that was after it went into service; else empty
+	Undoes   bool    `json:"undoes"`
+	Through  []int64 `json:"assessments"`
 }
 
 // serviceLog is the JSON form of the log of what went into service.
@@ -247,6 +251,7 @@ func serviceRecordOf(s history.Service) serviceRecord {
 		Late:  late,
 		Entry: s.Entry.Seq, Revision: s.Revision, Folder: s.Folder, Routes: append([]string{}, s.Routes...), Since: s.Since.Format(signoff.TimeLayout),
 		Signer: s.Signer, Key: s.Fingerprint, Stated: s.Time.Format(signoff.TimeLayout), Recorded: s.Recorded.Format(signoff.TimeLayout), Reason: s.Reason,
+		lapsed:   s.Lapsed,
 		Approved: s.Approved, Undoes: s.Undoes, Through: append([]int64{}, s.Through...),
 	}
 }
@@ -260,6 +265,8 @@ func (r serviceRecord) words() string {
 	switch {
 	case r.Undoes:
 		state = "approved, but UNDOES what was in service before"
+	case r.lapsed:
+		state = "approved then, NOT APPROVED ANY MORE"
 	case r.Late != "":
 		state = "NOT APPROVED THEN, only on " + r.Late
 	case r.Approved && len(r.Through) > 0:

@@ -172,3 +172,17 @@ func TestRefusedBeforeSigning(t *testing.T) {
 		}
 	}
 }
+
+// Beside a statement that is brought, no option says what it says.
+func TestNothingBesideAStatement(t *testing.T) {
+	for _, args := range [][]string{
+		{"sign", "1", "--decision", "reject"}, {"sign", "1", "--role", "approver"}, {"sign", "1", "--reason", "x"},
+		{"inforce", "record", "c0", "--since", "2031-01-01T00:00:00Z"}, {"inforce", "record", "c0", "--routes", "R1"}, {"inforce", "record", "c0", "--voids", "3"},
+		{"revoke", "SHA256:x", "--role", "owner"},
+	} {
+		got := call(t, append(args, "--statement", "s", "--signature", "s.sig")...)
+		if got.status != statusInput || !strings.Contains(got.errors, "does not go with --statement") {
+			t.Errorf("%q: status %d\n%s", args, got.status, got.errors)
+		}
+	}
+}

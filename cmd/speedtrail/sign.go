@@ -40,6 +40,9 @@ brings both back.`,
 			if err != nil {
 				return err
 			}
+			if err := s.alone(c); err != nil {
+				return err
+			}
 			if err := s.check(); err != nil {
 				return err
 			}

@@ -215,6 +215,19 @@ func (s *signing) ask(a *app) error {
 	return nil
 }
 
+// alone refuses options beside --statement that say what the statement says already.
+func (s *signing) alone(c *cobra.Command) error {
+	if s.statement == "" {
+		return nil
+	}
+	for _, name := range []string{"role", "decision", "reason", "signer", "since", "routes", "replaces", "voids"} {
+		if c.Flags().Changed(name) {
+			return badCall("leave it out", "--%s does not go with --statement, which says it", name)
+		}
+	}
+	return nil
+}
+
 // brought reads the files of --statement and --signature.
 func (s *signing) brought() (*signed, error) {
 	out := &signed{}

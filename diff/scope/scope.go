@@ -10,6 +10,7 @@ package scope
 
 import (
 	"slices"
+	"sort"
 
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
@@ -151,12 +152,12 @@ func Seen(o *Observed, d *Declared) (inside, runOut unit.Distance) {
 }
 
 // SeenBoth gives what of Seen a declaration holds of other changes in the same
-// place, too, of which none overlaps another.
+// place, too, which stand in their order and of which none overlaps another.
 func SeenBoth(o *Observed, others []Observed, d *Declared) (inside, runOut unit.Distance) {
-	for i := range others {
-		x := others[i]
+	first := sort.Search(len(others), func(i int) bool { return others[i].To > o.From })
+	for _, x := range others[first:] {
 		if x.From, x.To = max(x.From, o.From), min(x.To, o.To); x.From >= x.To {
-			continue
+			break
 		}
 		part := *o
 		part.From, part.To = x.From, x.To

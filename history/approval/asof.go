@@ -54,15 +54,28 @@ func (l *Line) take(r Record) {
 	l.forget(decided)
 }
 
-// Since gives the entry with which something came to be true that is true now, and
-// its time: it was not true before, and has been ever since. It asks about sign-offs
+// Since gives the time at which something about a folder came to be true that is
+// true now: it was not true before, and has been ever since. It asks about sign-offs
 // only; false where it was always true.
-func (l *Line) Since(is func(*Line) bool) (at time.Time, ok bool) {
-	for i := len(l.signOffs) - 1; i >= 0; i-- {
-		seq := l.signOffs[i].Entry.Seq
-		if !is(l.upTo(seq - 1)) {
-			return l.times[seq-1], true
+func (l *Line) Since(folder string, is func(*Line) bool) (at time.Time, ok bool) {
+	past := New(l.ledger)
+	past.anchors, past.policies = l.anchors, l.policies
+	next, holds := 0, is(past)
+	for i := range l.signOffs {
+		r := &l.signOffs[i]
+		for ; next < len(l.assessments) && l.assessments[next].Entry.Seq < r.Entry.Seq; next++ {
+			a := l.assessments[next]
+			past.assessments = append(past.assessments, a)
+			past.byNumber[a.Number] = a
+		}
+		past.take(*r)
+		if r.Folder != folder {
+			continue
+		}
+		before := holds
+		if holds = is(past); holds && !before {
+			at, ok = l.times[r.Entry.Seq-1], true
 		}
 	}
-	return time.Time{}, false
+	return at, ok
 }

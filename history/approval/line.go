@@ -266,13 +266,28 @@ func (l *Line) Newest(folder string) Policy {
 	if anchor == nil {
 		return Policy{}
 	}
-	newest, at := anchor.Policy, int64(0)
+	if turns := l.turns(folder); len(turns) > 0 {
+		return turns[len(turns)-1].by.Next
+	}
+	return anchor.Policy
+}
+
+// turns lists the approved assessments that turned the policy of a folder, in the
+// order in which they were complete for the first time, a release after the one that
+// it is based on: whoever takes an approval back and gives it again moves nothing.
+func (l *Line) turns(folder string) []way {
+	var list []way
 	for _, s := range l.approvedContents(folder) {
-		if s.by != nil && s.by.Policy.Hash != s.by.Next.Hash && s.at > at {
-			newest, at = s.by.Next, s.at
+		if s.by != nil && s.by.Policy.Hash != s.by.Next.Hash {
+			list = append(list, s)
 		}
 	}
-	return newest
+	slices.SortFunc(list, inOrder)
+	return list
+}
+
+func inOrder(a, b way) int {
+	return cmp.Or(cmp.Compare(a.first, b.first), cmp.Compare(a.depth, b.depth), cmp.Compare(a.by.Number, b.by.Number))
 }
 
 // takenOut gives the approved assessment that took a key out of the policy of a
@@ -280,20 +295,32 @@ func (l *Line) Newest(folder string) Policy {
 // does not bring it back. It is nil where the key was not taken out, or was brought
 // in again.
 func (l *Line) takenOut(folder, fingerprint string) *Assessment {
-	var turns []way
-	for _, s := range l.approvedContents(folder) {
-		if s.by != nil && s.by.Policy.Hash != s.by.Next.Hash && s.by.Policy.Parsed != nil && s.by.Next.Parsed != nil {
-			turns = append(turns, s)
+	turns := l.turns(folder)
+	brings := len(turns)
+	// A release that goes back to an approved content turns nothing, and takes out all
+	// the same.
+	contents := l.approvedContents(folder)
+	for _, a := range l.assessments {
+		base, ok := contents[a.BaseTree]
+		if ok && a.Folder == folder && a.Policy.Hash != a.Next.Hash && contents[a.TargetTree].by != a && l.signedOff(a) > 0 {
+			turns = append(turns, way{by: a, first: max(base.first, l.firstSigned(a)), depth: base.depth + 1})
 		}
 	}
-	slices.SortFunc(turns, func(a, b way) int { return cmp.Or(cmp.Compare(a.at, b.at), cmp.Compare(a.by.Number, b.by.Number)) })
+	turning := map[*Assessment]bool{}
+	for _, s := range turns[:brings] {
+		turning[s.by] = true
+	}
+	slices.SortFunc(turns, inOrder)
 	var by *Assessment
 	for _, s := range turns {
+		if s.by.Policy.Parsed == nil || s.by.Next.Parsed == nil {
+			continue
+		}
 		before, after := s.by.Policy.Parsed.Key(fingerprint) != nil, s.by.Next.Parsed.Key(fingerprint) != nil
 		switch {
 		case before && !after:
 			by = s.by
-		case after && !before:
+		case after && !before && turning[s.by]:
 			by = nil
 		}
 	}

@@ -158,6 +158,44 @@ func TestKeyTakenOutStaysOut(t *testing.T) {
 	s.must(s.signOff(other, "fin", "approver", "approve"))
 }
 
+// Whoever takes an approval back and gives it again moves no turn of the policy
+// behind a later one, and a key that is out stays out; so it does where a release
+// goes back to what was approved before.
+func TestPolicyTurnsKeepTheirOrder(t *testing.T) {
+	more := ordinary().key("ada2")
+	for name, end := range map[string]string{"forward": "c", "back to the anchor": "a"} {
+		t.Run(name, func(t *testing.T) {
+			s := anchored(t, ordinary())
+			// The later release has the lower number.
+			second := s.assess("b", end, more, ordinary(), nil)
+			first := s.assess("a", "b", ordinary(), more, nil)
+			other := s.assess("a", "d", ordinary(), ordinary(), nil)
+			sign := func(n int64) {
+				t.Helper()
+				s.must(s.signOff(n, "ada", "checker", "approve"))
+				s.must(s.signOff(n, "bea", "approver", "approve"))
+			}
+			sign(first)
+			sign(second)
+			late := s.assess("b", "e", more, more, nil)
+			check := func() {
+				t.Helper()
+				if end != "a" && s.line.Newest(".").Hash != ordinary().hash() {
+					t.Error("the newest policy is that of an older release")
+				}
+				s.refused(s.signOff(late, "ada2", "checker", "approve"), fingerprintOf("ada2"))
+			}
+			check()
+			s.must(s.signOff(first, "ada", "checker", "reject"))
+			s.must(s.signOff(first, "ada", "checker", "approve"))
+			for range 20 { // whatever the order of maps
+				check()
+			}
+			s.must(s.signOff(other, "fin", "checker", "approve"))
+		})
+	}
+}
+
 // valid-after and valid-before include their bounds (ssh-keygen(1), ALLOWED
 // SIGNERS, with the inclusive reading of the design), at the time of the statement
 // and at that of the recording.

@@ -6,6 +6,7 @@ import (
 	"strings"
 
 	"speedtrail/history/signoff"
+	"speedtrail/schema"
 )
 
 // States of an assessment.
@@ -148,6 +149,34 @@ func (l *Line) blocks(a *Assessment) []string {
 type way struct {
 	at int64
 	by *Assessment
+	// first is the entry at which the way was complete for the first time, whatever
+	// was taken back and given again since; depth is how many releases it has.
+	first int64
+	depth int
+}
+
+// firstSigned gives the entry with which all roles had signed an assessment for the
+// first time; 0 where they never had.
+func (l *Line) firstSigned(a *Assessment) int64 {
+	if a.Policy.Parsed == nil {
+		return 0
+	}
+	type part struct{ role, signer string }
+	approve := map[part]bool{}
+	for _, i := range l.ofAssessment[a.Number] {
+		r := &l.signOffs[i]
+		approve[part{r.Role, r.Signer}] = r.Decision == signoff.Approve
+		count := map[string]int{}
+		for x, yes := range approve {
+			if yes {
+				count[x.role]++
+			}
+		}
+		if !slices.ContainsFunc(a.Policy.Parsed.Roles, func(role schema.Role) bool { return role.Name != InServiceRole && count[role.Name] < role.Needed }) {
+			return r.Entry.Seq
+		}
+	}
+	return 0
 }
 
 // signedOff gives the entry with which all roles had signed an assessment, and 0
@@ -214,7 +243,7 @@ func (l *Line) approvedContents(folder string) map[string]way {
 	if anchor == nil {
 		return approved
 	}
-	approved[anchor.Content] = way{at: anchor.Entry.Seq}
+	approved[anchor.Content] = way{at: anchor.Entry.Seq, first: anchor.Entry.Seq}
 	for grown := true; grown; {
 		grown = false
 		for _, a := range l.assessments {
@@ -228,7 +257,7 @@ func (l *Line) approvedContents(folder string) map[string]way {
 			}
 			at := max(base.at, signed)
 			if have, ok := approved[a.TargetTree]; !ok || at < have.at {
-				approved[a.TargetTree], grown = way{at, a}, true
+				approved[a.TargetTree], grown = way{at, a, max(base.first, l.firstSigned(a)), base.depth + 1}, true
 			}
 		}
 	}
