@@ -3,6 +3,7 @@ package fleet
 import (
 	"cmp"
 	"slices"
+	"sort"
 
 	"speedtrail/diff/align"
 	"speedtrail/diff/profile"
@@ -28,13 +29,41 @@ func (p *pair) reach(longest unit.Distance) []align.Interval {
 		if straight && slices.Equal(before, after) {
 			continue
 		}
+		windowBefore, windowAfter := newWindow(before, longest), newWindow(after, longest)
 		for _, cell := range p.cells {
-			k.reach = append(k.reach, p.cellReach(i, p.view(before, cell, cell.Base), p.view(after, cell, cell.Target), cell, longest)...)
+			b, a := windowBefore.near(cell.Base, cell.Base+cell.Length), windowAfter.near(cell.Target, cell.Target+cell.Length)
+			k.reach = append(k.reach, p.cellReach(i, p.view(b, cell, cell.Base), p.view(a, cell, cell.Target), cell, longest)...)
 		}
 		k.reach = align.Union(k.reach)
 		found = append(found, k.reach...)
 	}
 	return align.Union(found)
+}
+
+// window finds rows near a stretch: of a long route with thousands of changes, each
+// stretch has to do with a few.
+type window struct {
+	rows    []profile.Bound // in the order of the track
+	ends    []unit.Distance // the greatest end so far, of each row and those before it
+	longest unit.Distance
+}
+
+func newWindow(rows []profile.Bound, longest unit.Distance) window {
+	w := window{rows, make([]unit.Distance, len(rows)), longest}
+	for i, r := range rows {
+		w.ends[i] = r.End
+		if i > 0 {
+			w.ends[i] = max(r.End, w.ends[i-1])
+		}
+	}
+	return w
+}
+
+// near gives the rows that can bind a train on a stretch, and perhaps some more.
+func (w *window) near(from, to unit.Distance) []profile.Bound {
+	first := sort.Search(len(w.ends), func(i int) bool { return w.ends[i]+w.longest > from })
+	end := sort.Search(len(w.rows), func(i int) bool { return w.rows[i].Start-w.longest >= to })
+	return w.rows[min(first, end):end]
 }
 
 // view shifts rows so that the cell begins at 0, and turns them round for the
