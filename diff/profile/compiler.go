@@ -26,7 +26,8 @@ var (
 type Compiler struct {
 	route     *schema.Route
 	direction codes.Direction
-	rows      []restriction
+	rows      []restriction   // by where they begin
+	latest    []unit.Distance // the greatest end so far, of each row and those before it
 	// The ends of the rows in the order in which the sweep meets them. Train
 	// length delay moves those of the second list, all by the length of the
 	// train, so that each list has one order for all trains and no train needs
@@ -78,7 +79,19 @@ func New(route *schema.Route, direction codes.Direction, filter Filter) *Compile
 	for _, list := range [...][]rowEnd{c.fixed, c.moved} {
 		slices.SortFunc(list, func(a, b rowEnd) int { return cmp.Compare(a.at, b.at) })
 	}
+	c.latest = latestOf(c.rows)
 	return c
+}
+
+func latestOf(rows []restriction) []unit.Distance {
+	list := make([]unit.Distance, len(rows))
+	for i := range rows {
+		list[i] = rows[i].end
+		if i > 0 {
+			list[i] = max(list[i], list[i-1])
+		}
+	}
+	return list
 }
 
 // Delayed tells whether the length of a train matters on this route at all.

@@ -136,6 +136,6 @@ func (c *Compiler) only(keep func(*restriction) bool) *Compiler {
 		}
 		return list
 	}
-	p.fixed, p.moved = renumber(c.fixed), renumber(c.moved)
+	p.fixed, p.moved, p.latest = renumber(c.fixed), renumber(c.moved), latestOf(p.rows)
 	return p
 }

@@ -2,6 +2,7 @@ package profile
 
 import (
 	"encoding/binary"
+	"sort"
 	"strconv"
 
 	"speedtrail/diff/step"
@@ -24,11 +25,16 @@ func (c *Compiler) Governing(sel Selection, length unit.Distance, maximum unit.S
 // AppendGoverning appends the rows of Governing to a list.
 func (c *Compiler) AppendGoverning(rows []int32, sel Selection, length unit.Distance, maximum unit.Speed, from, to unit.Distance, v unit.Speed) []int32 {
 	before, after := c.shifts(length)
-	for i := range c.rows {
+	// Rows that end before the stretch, whatever the delay, come first.
+	first := sort.Search(len(c.latest), func(i int) bool { return c.latest[i]+after > from })
+	for i := first; i < len(c.rows); i++ {
+		r := &c.rows[i]
+		if r.start-before >= to {
+			break
+		}
 		if sel[i] != v {
 			continue
 		}
-		r := &c.rows[i]
 		start, end := r.start, r.end
 		if r.delay {
 			start, end = start-before, end+after
