@@ -22,7 +22,7 @@ import (
 )
 
 // RulesVersion is raised whenever the same data can give another result.
-const RulesVersion = 3
+const RulesVersion = 4
 
 // Account is all that differs between two revisions of a data set.
 type Account struct {

@@ -193,8 +193,7 @@ func TestInterruptLedger(t *testing.T) {
 				t.Fatal(err)
 			}
 			w.Close()
-			// The pipe is full before all is written, so that the process waits in it.
-			time.Sleep(300 * time.Millisecond)
+			fills(t, r)
 			if err := c.Process.Signal(signal); err != nil {
 				t.Fatal("it was done before it could be interrupted: ", err)
 			}
@@ -216,7 +215,7 @@ func TestInterruptLedger(t *testing.T) {
 				t.Fatal(err)
 			}
 			w.Close()
-			time.Sleep(300 * time.Millisecond)
+			fills(t, r)
 			if err := c.Process.Signal(signal); err != nil {
 				t.Fatal("it was done before it could be interrupted: ", err)
 			}
@@ -303,4 +302,14 @@ func TestInterruptDemo(t *testing.T) {
 			t.Errorf("an interrupted demo leaves a folder, which a second demo refuses: %d files, the last %s", len(left), left[len(left)-1])
 		})
 	}
+}
+
+// fills waits until a process has begun to write into a pipe and has had time to
+// fill it: what it writes is more than the pipe holds, so that it waits there.
+func fills(t *testing.T, r *os.File) {
+	t.Helper()
+	if _, err := r.Read(make([]byte, 1)); err != nil {
+		t.Fatal(err)
+	}
+	time.Sleep(300 * time.Millisecond)
 }

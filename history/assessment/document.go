@@ -112,15 +112,19 @@ type File struct {
 
 // Finding is something that needs eyes.
 type Finding struct {
-	Accepted  string `json:"accepted"` // reason, where accepted.toml of the base accepts it
-	Direction string `json:"direction"`
-	Example   string `json:"example"` // lines for a file of the data set, where they help
-	From      string `json:"from_km"`
-	ID        string `json:"id"`
-	Route     string `json:"route"`
-	Row       string `json:"row"`  // path:line of the row or rows behind it
-	Text      string `json:"text"` // what, without the place
-	To        string `json:"to_km"`
+	Accepted string `json:"accepted"` // reason, where accepted.toml of the base accepts it
+	// AlsoInBase tells that the base has the same doubtful data in the same place,
+	// by its own trains and limits and at the time of the target: the change did not
+	// bring it.
+	AlsoInBase bool   `json:"also_in_base"`
+	Direction  string `json:"direction"`
+	Example    string `json:"example"` // lines for a file of the data set, where they help
+	From       string `json:"from_km"`
+	ID         string `json:"id"`
+	Route      string `json:"route"`
+	Row        string `json:"row"`  // path:line of the row or rows behind it
+	Text       string `json:"text"` // what, without the place
+	To         string `json:"to_km"`
 }
 
 // Explanation says of a kind of finding why it matters and what to do.

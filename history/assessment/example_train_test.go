@@ -64,13 +64,32 @@ func TestExampleTrain(t *testing.T) {
 	}
 }
 
-// The id of an example is not that of a reference train.
+// The id of an example is not that of a reference train, and not that of another
+// example, so that all of them can be taken over.
 func TestExampleTrainID(t *testing.T) {
-	base := texts{"axle-load.csv": "from_km,to_km,E5\n4,5,60\n", "trains.toml": trainText("X-80-E5", 80, "", "C2", 200, 200) + trainText("X-80-E5-2", 80, "", "C2", 200, 200)}
-	for _, f := range unrepresented(compute(t, base, texts{"axle-load.csv": "from_km,to_km,E5\n4,5,40\n"}, nil)) {
-		if !strings.Contains(f.Example, "id = \"X-80-E5-3\"\n") {
+	base := texts{"axle-load.csv": "from_km,to_km,E5\n4,5,60\n", "trains.toml": trainText("X-80-E5-200m-60", 80, "", "C2", 200, 200) + trainText("X-80-E5-200m-60-2", 80, "", "C2", 200, 200)}
+	list := unrepresented(compute(t, base, texts{"axle-load.csv": "from_km,to_km,E5\n4,5,40\n"}, nil))
+	if len(list) == 0 {
+		t.Fatal("no finding")
+	}
+	for _, f := range list {
+		if !strings.Contains(f.Example, "id = \"X-80-E5-200m-60-3\"\n") {
 			t.Errorf("got\n%s", f.Example)
 		}
+	}
+
+	const head = "from_km,to_km,basic,cd150,cd300,freight_p,train_length_delay\n"
+	target := texts{"speed.csv": head + "0,20,100,140,160,70,no\n"}
+	list = unrepresented(compute(t, texts{"speed.csv": head + "0,20,100,120,130,80,no\n"}, target, nil))
+	trains := ground["trains.toml"]
+	for _, f := range list {
+		trains += f.Example
+	}
+	if len(list) < 3 {
+		t.Fatalf("%d findings", len(list))
+	}
+	if left := unrepresented(compute(t, texts{"speed.csv": head + "0,20,100,120,130,80,no\n", "trains.toml": trains}, target, nil)); len(left) > 0 {
+		t.Errorf("with all examples in trains.toml, %v is left", left)
 	}
 }
 

@@ -8,6 +8,7 @@ import (
 
 	"speedtrail/diff"
 	"speedtrail/diff/doubt"
+	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
@@ -119,6 +120,7 @@ func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 		return cmp.Or(
 			before(a.Accepted == "", b.Accepted == ""),
 			cmp.Compare(slices.Index(order, a.ID), slices.Index(order, b.ID)),
+			before(!a.AlsoInBase, !b.AlsoInBase),
 			before(a.raised, b.raised), before(a.structure, b.structure), before(!a.runOut, !b.runOut), cmp.Compare(b.step, a.step),
 		)
 	})
@@ -326,10 +328,22 @@ func (c *collector) route(index int) {
 	if r.Target == nil {
 		return
 	}
-	for _, d := range doubt.Check(r.Target, c.in.Target, c.in.At) {
-		c.add(ranked{Finding: Finding{
-			ID: d.ID, Route: r.ID, Direction: d.Directions.String(), From: r.Target.Track.Begins(d.From).String(), To: r.Target.Track.Ends(d.To).String(),
-			Row: fmt.Sprintf("%s:%d", d.Row.File, d.Row.Line), Text: d.Text,
-		}})
+	before := map[Finding]bool{}
+	if r.Base != nil {
+		for _, d := range doubt.Check(r.Base, c.in.Base, c.in.At) {
+			before[doubtful(r.Base, d)] = true
+		}
 	}
+	for _, d := range doubt.Check(r.Target, c.in.Target, c.in.At) {
+		f := doubtful(r.Target, d)
+		f.AlsoInBase = before[f]
+		f.Row = fmt.Sprintf("%s:%d", d.Row.File, d.Row.Line)
+		c.add(ranked{Finding: f})
+	}
+}
+
+// doubtful words doubtful data of a route, without its row: rows move up and
+// down in a table, and the doubt stays the same.
+func doubtful(r *schema.Route, d doubt.Doubt) Finding {
+	return Finding{ID: d.ID, Route: r.ID, Direction: d.Directions.String(), From: r.Track.Begins(d.From).String(), To: r.Track.Ends(d.To).String(), Text: d.Text}
 }

@@ -93,22 +93,24 @@ func (c *collector) unrepresentedFinding(r *diff.Route, u unseenBy) ranked {
 // example writes a reference train that shows the change, for trains.toml.
 func (c *collector) example(route string, u unseenBy, top unit.Speed) string {
 	class := u.product.Example()
-	var categories []string
+	length := u.largest.Lengths[0] / unit.Metre
+	var categories, names []string
 	for k := range codes.Category(codes.Categories) {
 		if class.Categories.Has(k) {
-			categories = append(categories, fmt.Sprintf("%q", k))
+			categories, names = append(categories, fmt.Sprintf("%q", k)), append(names, k.String())
 		}
 	}
-	id := fmt.Sprintf("X-%d-%s", class.Cant.MM(), class.AxleLoad)
-	for n := 2; slices.ContainsFunc(c.in.Account.Trains, func(t diff.Train) bool { return t.ID == id }); n++ {
-		id = fmt.Sprintf("X-%d-%s-%d", class.Cant.MM(), class.AxleLoad, n)
+	// Two examples have one id only if they are the same train.
+	names = append(names, class.AxleLoad.String(), fmt.Sprintf("%dm", length), fmt.Sprint(top))
+	id := fmt.Sprintf("X-%d-%s", class.Cant.MM(), strings.Join(names, "-"))
+	for n, first := 2, id; slices.ContainsFunc(c.in.Account.Trains, func(t diff.Train) bool { return t.ID == id }); n++ {
+		id = fmt.Sprintf("%s-%d", first, n)
 	}
 	var b strings.Builder
 	fmt.Fprintf(&b, "[[train]]\nid = %q\nname = \"Shows a change on %s\"\ncant_deficiency_mm = %d\n", id, route, class.Cant.MM())
 	if len(categories) > 0 {
 		fmt.Fprintf(&b, "categories = [%s]\n", strings.Join(categories, ", "))
 	}
-	length := u.largest.Lengths[0] / unit.Metre
 	fmt.Fprintf(&b, "axle_load = %q\nlength_m = %d\nmax_speed_kmh = %d\n", class.AxleLoad, length, top)
 	return b.String()
 }

@@ -69,6 +69,14 @@ func findingPlace(f assessment.Finding) string {
 	return s
 }
 
+// findingRow gives the row behind a finding, and whether the change brought it.
+func findingRow(f assessment.Finding) string {
+	if f.AlsoInBase {
+		return f.Row + "; also in the base"
+	}
+	return f.Row
+}
+
 func joinPlace(place, text string) string {
 	if place == "" {
 		return text

@@ -51,7 +51,7 @@ func (p *page) fillFindings() {
 				out.More = len(g.List) - i
 				break
 			}
-			out.List = append(out.List, pageFinding{source.Visible(findingPlace(f)), source.Visible(f.Text), source.Visible(f.Row), source.Visible(f.Accepted), source.VisibleLines(f.Example)})
+			out.List = append(out.List, pageFinding{source.Visible(findingPlace(f)), source.Visible(f.Text), source.Visible(findingRow(f)), source.Visible(f.Accepted), source.VisibleLines(f.Example)})
 		}
 		p.Findings = append(p.Findings, out)
 	}

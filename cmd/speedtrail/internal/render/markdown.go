@@ -57,7 +57,7 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 				}
 				add("- %s", md(joinPlace(findingPlace(f), f.Text)))
 				if f.Row != "" {
-					add(" (%s)", md(f.Row))
+					add(" (%s)", md(findingRow(f)))
 				}
 				if f.Accepted != "" {
 					add(" Accepted: %s", md(f.Accepted))

@@ -142,7 +142,7 @@ func (p *textWriter) findings() {
 			}
 			p.paragraph(mark, joinPlace(findingPlace(f), f.Text))
 			if f.Row != "" {
-				p.paragraph("    ", f.Row)
+				p.paragraph("    ", findingRow(f))
 			}
 			for line := range strings.Lines(source.VisibleLines(f.Example)) {
 				p.printf("      %s\n", strings.TrimRight(line, "\n"))

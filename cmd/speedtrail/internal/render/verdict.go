@@ -176,19 +176,27 @@ func outsideSentence(c *assessment.Computed) string {
 }
 
 func findingSentence(c *assessment.Computed) string {
-	open, accepted := 0, 0
+	open, accepted, old := 0, 0, 0
 	for _, f := range c.Findings {
-		if f.Accepted == "" {
-			open++
-		} else {
+		switch {
+		case f.Accepted != "":
 			accepted++
+		case f.AlsoInBase:
+			old++
+			fallthrough
+		default:
+			open++
 		}
+	}
+	base := ""
+	if old > 0 {
+		base = fmt.Sprintf(" (%d also in the base)", old)
 	}
 	switch {
 	case open > 0 && accepted > 0:
-		return fmt.Sprintf("%s not accepted, %d accepted.", plural(open, "finding", "findings"), accepted)
+		return fmt.Sprintf("%s not accepted%s, %d accepted.", plural(open, "finding", "findings"), base, accepted)
 	case open > 0:
-		return plural(open, "finding", "findings") + " not accepted."
+		return plural(open, "finding", "findings") + " not accepted" + base + "."
 	case accepted > 0:
 		return plural(accepted, "finding", "findings") + ", all accepted."
 	}
