@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"encoding/json"
 	"errors"
+	"strings"
 	"testing"
 
 	"github.com/gowebpki/jcs"
@@ -91,10 +92,48 @@ func TestAgainstAnotherImplementation(t *testing.T) {
 	})
 }
 
+// What is taken at sight to be canonical is so for the library as well, and the
+// bodies that the ledger holds are taken at sight.
+func TestPlainly(t *testing.T) {
+	for _, x := range []struct {
+		body  string
+		plain bool // taken at sight
+		canon bool
+	}{
+		{`{}`, true, true}, {`[]`, true, true}, {`{"a":[1,true,null,"x"],"b":{"c":-12}}`, true, true}, {`0`, true, true}, {`""`, true, true},
+		{`{"":1,"A":1,"a":2}`, true, true}, {`{"a":1,"aa":2}`, true, true}, {`{"aa":1,"a":2}`, false, false}, {`{"a":1,"a":2}`, false, false},
+		{`{"b":1,"a":2}`, false, false}, {`{"":1,"":2}`, false, false}, {`[{"b":1},{"a":1}]`, true, true},
+		{`"\b\t\n\f\r\"\\"`, true, true}, {`"\u0000\u000b\u000e\u001f"`, true, true}, {`"\u0008"`, false, false}, {`"\u0009"`, false, false},
+		{`"\u000a"`, false, false}, {`"\u000c"`, false, false}, {`"\u000d"`, false, false}, {`"\u001F"`, false, false}, {`"\u0020"`, false, false},
+		{`"\/"`, false, false}, {`"\u00"`, false, false}, {`"\`, false, false}, {`"\u`, false, false}, {`"\x"`, false, false},
+		{"\"\u00e9\u20ac\U0001f600\u007f\"", true, true}, {"\"\xc3\"", false, false}, {"\"\xed\xa0\x80\"", false, false}, {"\"\x1f\"", false, false}, {"\"\n\"", false, false},
+		{"{\"\u00e9\":1}", false, true}, {`{"\n":1}`, false, true},
+		{`999999999999999`, true, true}, {`9007199254740991`, false, true}, {`-0`, false, false}, {`01`, false, false}, {`-01`, false, false}, {`-`, false, false},
+		{`1.5`, false, true}, {`1e3`, false, false}, {`+1`, false, false}, {`1.`, false, false},
+		{`tru`, false, false}, {`nul`, false, false}, {`falsey`, false, false}, {`true,`, false, false}, {`[1,]`, false, false}, {`[,1]`, false, false}, {`[1 ,2]`, false, false},
+		{`{"a":1,}`, false, false}, {`{,}`, false, false}, {`{"a"}`, false, false}, {`{"a":}`, false, false}, {`{"a":1`, false, false}, {`[1`, false, false}, {`[`, false, false},
+		{`{`, false, false}, {``, false, false}, {` 1`, false, false}, {`1 `, false, false}, {`{a:1}`, false, false}, {`[1]]`, false, false}, {`[1}`, false, false}, {`{"a":1]`, false, false},
+		{strings.Repeat("[", mostDepth) + strings.Repeat("]", mostDepth), true, true}, {strings.Repeat("[", mostDepth+1) + strings.Repeat("]", mostDepth+1), false, true},
+	} {
+		if got := plainly([]byte(x.body)); got != x.plain {
+			t.Errorf("%q: at sight %v", x.body, got)
+		}
+		if got := checkByLibrary([]byte(x.body)) == nil; got != x.canon {
+			t.Errorf("%q: by the library %v", x.body, got)
+		}
+	}
+}
+
 func FuzzCheck(f *testing.F) {
 	f.Add([]byte(`{"a":[1,true,null,"x"]}`))
 	f.Add([]byte(`{"b":1,"a":1}`))
+	f.Add([]byte(`{"\u0001":-10,"a":"\n","b":{"c":[]}}`))
 	f.Fuzz(func(t *testing.T, body []byte) {
+		if plainly(body) {
+			if err := checkByLibrary(body); err != nil {
+				t.Fatalf("%q is taken for canonical: %v", body, err)
+			}
+		}
 		if Check(body) != nil {
 			return
 		}
