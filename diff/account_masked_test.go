@@ -70,6 +70,9 @@ func leavingOf(a *diff.Account) string {
 			if l.OfBase {
 				text += ", removed"
 			}
+			if l.ByTrack {
+				text += ", by the track"
+			}
 			lines = append(lines, text)
 		}
 	}
@@ -114,5 +117,28 @@ func TestLeavingNoMore(t *testing.T) {
 	runAccounts(t, []accountTest{
 		{"the delay goes", axle("9.5,9.9,60,yes\n"), axle("9.5,9.9,60,no\n"), []string{"axle-load.csv -2 +2 nominal line 2, 200 m, removed"}},
 		{"the row ends earlier", axle("9.5,9.9,60,yes\n"), axle("9.5,9.7,60,yes\n"), []string{"axle-load.csv -2 +2 nominal line 2, 200 m, removed"}},
+	}, leavingOf)
+}
+
+// A row that is the same reaches beyond the end of the route by another length
+// where the end has moved.
+func TestLeavingByTrack(t *testing.T) {
+	route := func(start, end, more string) texts {
+		return texts{
+			"route.toml": "id = \"R1\"\nname = \"One\"\nstart_km = " + start + "\nend_km = " + end + "\n" + more,
+			"speed.csv":  "from_km,to_km,basic,train_length_delay\n" + start + "," + end + ",80,no\n",
+		}
+	}
+	axle := texts{"axle-load.csv": "from_km,to_km,C2\n0.1,0.3,60\n9.5,9.9,60\n"}
+	runAccounts(t, []accountTest{
+		{"the end comes nearer", over(route("0", "10", ""), axle), route("0", "9.95", ""), []string{"route.toml -1 +1 nominal line 3, 200 m, by the track"}},
+		{"the end goes further, within a train length", over(route("0", "10", ""), axle), route("0", "10.05", ""), []string{"route.toml -1 +1 nominal line 3, 200 m, by the track"}},
+		{"the end goes out of reach", over(route("0", "10", ""), axle), route("0", "11", ""), []string{"route.toml -1 +1 nominal line 3, 200 m, removed, by the track"}},
+		{"the start goes out of reach", over(route("0", "10", ""), axle), route("-1", "10", ""), []string{"route.toml -1 +1 reverse line 2, 200 m, removed, by the track"}},
+		{"neither was in reach", over(route("0", "12", ""), axle), route("0", "11", ""), nil},
+		{"posts are missing before the end", over(route("0", "10", ""), axle), route("0", "10", "[[jump]]\narriving_km = 9.95\nleaving_km = 9.98\n"), []string{"route.toml +6 nominal line 3, 200 m, by the track"}},
+		{"posts are missing elsewhere", over(route("0", "10", ""), axle), route("0", "10", "[[jump]]\narriving_km = 5\nleaving_km = 6\n"), nil},
+		{"a direction goes", over(route("0", "10", ""), axle), route("0", "10", "directions = [\"reverse\"]\n"), nil},
+		{"the row moves with the end", over(route("0", "10", ""), texts{"axle-load.csv": "from_km,to_km,C2\n9.5,9.9,60\n"}), over(route("0", "10.1", ""), texts{"axle-load.csv": "from_km,to_km,C2\n9.5,10,60\n"}), nil},
 	}, leavingOf)
 }

@@ -12,12 +12,15 @@ import (
 
 // Leaving is a row that differs, holds until the rear of the train has left it,
 // and lies so close to the end of the route that a reference train carries it
-// beyond: what it does on the neighbouring route is not looked at.
+// beyond: what it does on the neighbouring route is not looked at. So is a row
+// that is the same and reaches further beyond, or less far, because the track
+// between it and the end of the route differs.
 type Leaving struct {
 	Cause
 	Direction codes.Direction
 	Row       *schema.Row // of the target; of the base where the target has none that reaches beyond
 	OfBase    bool
+	ByTrack   bool          // the row is the same; Cause is the first difference of the track
 	Longest   unit.Distance // length of the longest reference train
 }
 
@@ -49,7 +52,7 @@ func (r *Route) leaving(trains []Train) []Leaving {
 					continue // whatever the rows are that say it
 				}
 				for _, row := range now {
-					list = append(list, Leaving{c, direction, row, false, longest})
+					list = append(list, Leaving{Cause: c, Direction: direction, Row: row, Longest: longest})
 				}
 				if len(now) > 0 {
 					continue
@@ -57,12 +60,12 @@ func (r *Route) leaving(trains []Train) []Leaving {
 				// A row that reached beyond and does so no more lets go of trains
 				// there.
 				for _, row := range before {
-					list = append(list, Leaving{c, direction, row, true, longest})
+					list = append(list, Leaving{Cause: c, Direction: direction, Row: row, OfBase: true, Longest: longest})
 				}
 			}
 		}
 	}
-	return list
+	return append(list, r.leavingByTrack(longest)...)
 }
 
 // carriesAlike tells whether all rows of a layer together carry the same beyond the
@@ -74,23 +77,7 @@ func (r *Route) carriesAlike(layer profile.Layer, direction codes.Direction, lon
 	}
 	var lines [2][]int
 	for side, route := range [...]*schema.Route{r.Base, r.Target} {
-		switch layer {
-		case profile.StaticSpeed:
-			for i := range route.Speed {
-				lines[side] = append(lines[side], route.Speed[i].Pos.Line)
-			}
-		case profile.AxleLoad:
-			for i := range route.AxleLoad {
-				lines[side] = append(lines[side], route.AxleLoad[i].Pos.Line)
-			}
-		case profile.Temporary:
-			for i := range route.Temporary {
-				lines[side] = append(lines[side], route.Temporary[i].Pos.Line)
-			}
-		}
-	}
-	for side, route := range [...]*schema.Route{r.Base, r.Target} {
-		lines[side] = slices.DeleteFunc(lines[side], func(line int) bool { return len(beyond(route, layer, []int{line}, direction, longest)) == 0 })
+		lines[side] = slices.DeleteFunc(layerLines(route, layer), func(line int) bool { return len(beyond(route, layer, []int{line}, direction, longest)) == 0 })
 	}
 	alike := !concernsIn(direction, func(direction codes.Direction, class profile.Class) bool {
 		return !slices.Equal(carried(r.Base, layer, lines[0], direction, longest, class), carried(r.Target, layer, lines[1], direction, longest, class))

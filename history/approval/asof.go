@@ -1,8 +1,6 @@
 package approval
 
-import (
-	"time"
-)
+import "time"
 
 // AsOf gives the line as it stood at an instant: with the entries up to the first
 // one that was recorded after it. Anchors are all there, as whoever begins a ledger

@@ -316,7 +316,12 @@ func (c *collector) route(index int) {
 	c.unrepresented(r)
 	for _, l := range r.Leaving {
 		what, track := "the row differs and reaches", r.Target.Track
-		if l.OfBase {
+		switch {
+		case l.ByTrack && l.OfBase:
+			what, track = "the track before the end of the route differs, and the row, which is the same, reaches no more", r.Base.Track
+		case l.ByTrack:
+			what = "the track before the end of the route differs, and the row, which is the same, reaches another length"
+		case l.OfBase:
 			what, track = "the row of the base reached, and does no more,", r.Base.Track
 		}
 		c.add(ranked{Finding: Finding{
