@@ -113,7 +113,7 @@ func AssessmentOf(line *approval.Line, number int64, digest string, doc *assessm
 	c := &doc.Computed
 	a := &approval.Assessment{
 		Number: number, Digest: digest, Base: c.Base.Commit, Target: c.Target.Commit, BaseTree: c.Base.Tree, TargetTree: c.Target.Tree,
-		Folder: c.Folder, Rules: c.RulesVersion, Findings: Findings(c),
+		Folder: c.Folder, Rules: c.RulesVersion, Findings: Findings(c), Since: c.PreparedSince,
 		Policy: line.Policy(c.Policy.Base.SignOff, c.Policy.Base.AllowedSigners),
 		Next:   line.Policy(c.Policy.Target.SignOff, c.Policy.Target.AllowedSigners),
 	}
@@ -127,7 +127,10 @@ func AssessmentOf(line *approval.Line, number int64, digest string, doc *assessm
 }
 
 // Findings lists the findings that nobody has accepted as statements write them:
-// each id with its number, in the order of the assessment; "none" for none.
+// each id with its number, in the order of the assessment; "none" for none. Before
+// them it says that nobody compared the change with requests, where that is so: who
+// signs then signs for that as well. Statements over assessments of before version 4
+// of the rules did not.
 func Findings(c *assessment.Computed) string {
 	var ids []string
 	count := map[string]int{}
@@ -140,11 +143,14 @@ func Findings(c *assessment.Computed) string {
 		}
 		count[f.ID]++
 	}
-	if ids == nil {
-		return "none"
-	}
 	for i, id := range ids {
 		ids[i] = fmt.Sprintf("%s %d", id, count[id])
+	}
+	if c.Options.NoRequests && c.RulesVersion >= 4 {
+		ids = slices.Insert(ids, 0, "requests not looked at")
+	}
+	if ids == nil {
+		return "none"
 	}
 	return strings.Join(ids, ", ")
 }

@@ -102,11 +102,13 @@ type ServiceFinding struct {
 const (
 	ServiceUnapproved = "in-service-unapproved"
 	ServiceUndoes     = "in-service-undoes"
+	ServiceCorrected  = "in-service-corrected"
 	NeverInService    = "approved-never-in-service"
 )
 
 // ServiceFindings looks at the in-force log of a folder: revisions in service
-// without approval, and approved ones that never went into service.
+// without approval, also by records that do not stand any more, and approved ones
+// that never went into service.
 func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 	var list []ServiceFinding
 	served := map[string]bool{}
@@ -130,6 +132,14 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and was approved then; it is not any more", r.Entry.Seq, r.Revision, where, at)})
 		case !s.Approved:
 			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s without approval", r.Entry.Seq, r.Revision, where, at)})
+		}
+	}
+	// Whoever may record what is in service does not make unapproved service go away by
+	// taking the record back.
+	for _, x := range line.Corrections(folder) {
+		if !line.AsOf(x.Record.Since).ApprovedContent(folder, x.Record.Content) {
+			list = append(list, ServiceFinding{ServiceCorrected, fmt.Sprintf("entry %d said that commit %s, which was not approved then, went into service from %s; entry %d %s it (%s: %s)",
+				x.Record.Entry.Seq, x.Record.Revision, x.Record.Since.UTC().Format(time.RFC3339), x.By.Entry.Seq, x.How, x.By.Signer, x.By.Reason)})
 		}
 	}
 	for _, a := range line.Assessments() {

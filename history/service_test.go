@@ -1,6 +1,7 @@
 package history_test
 
 import (
+	"fmt"
 	"path/filepath"
 	"slices"
 	"strings"
@@ -231,4 +232,33 @@ func TestServiceBeforeItsApproval(t *testing.T) {
 			t.Errorf("%+v, %v", s[entry], findings)
 		}
 	})
+}
+
+// Whoever may record what is in service cannot make an unapproved revision vanish
+// from the log by taking the record back; a record of an approved one may go.
+func TestServiceCorrected(t *testing.T) {
+	w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+	w.anchor("a")
+	w.approve("a", "b", "ada")
+	w.inService("a", "2026-03-01T03:00:00Z", "all")
+	approved := w.inService("b", "2026-03-02T03:00:00Z", "all")
+	w.inForce("b", "P1", "2026-03-03T03:00:00Z", "all", fmt.Sprintf("%s %d", approval.Replaces, approved))
+	if _, findings := w.services(); len(findings) > 0 {
+		t.Errorf("an approved revision whose instant is corrected: %v", findings)
+	}
+	then := clock(w.head.Seq + 1).Format(time.RFC3339)
+	unapproved := w.inService("c", then, "all")
+	w.inForce("a", "P1", then, "all", fmt.Sprintf("%s %d", approval.Voids, unapproved))
+	s, findings := w.services()
+	if _, stands := s[unapproved]; stands || !slices.Equal(ids(findings), []string{history.ServiceCorrected}) {
+		t.Fatalf("%v, %v", s, findings)
+	}
+	if want := fmt.Sprintf("entry %d said that commit ", unapproved); !strings.HasPrefix(findings[0].Text, want) || !strings.Contains(findings[0].Text, fmt.Sprintf("; entry %d voids it (", unapproved+1)) {
+		t.Errorf("%s", findings[0].Text)
+	}
+	// A later approval does not alter what was so then.
+	w.approve("b", "c", "ada")
+	if _, findings := w.services(); !slices.Contains(ids(findings), history.ServiceCorrected) {
+		t.Errorf("after a later approval: %v", findings)
+	}
 }

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -77,13 +78,24 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 	}
 	defer repo.Close()
 	record = record && target != workingTree
-	doc, err := a.compute(ctx, repo, base, target, options, record)
+	var into recording
+	defer into.close()
+	since := fromBase
+	if record {
+		since = func(base assessment.Revision, target, folder string) (string, error) {
+			if err := into.open(ctx, a); err != nil {
+				return "", err
+			}
+			return approvedCommit(ctx, repo, into.line, base, target, folder)
+		}
+	}
+	doc, err := a.compute(ctx, repo, base, target, options, record, since)
 	if err != nil {
 		return err
 	}
 	var rec render.Record
 	if record {
-		if rec, err = a.record(ctx, doc); err != nil {
+		if rec, err = a.record(ctx, doc, &into); err != nil {
 			return err
 		}
 	}
@@ -99,7 +111,7 @@ var errShallow = &callError{"the clone is shallow and its history ends between b
 
 // compute makes the document of two revisions. What is recorded, or held against
 // what is recorded, needs the whole history between them.
-func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target string, options assessment.Options, whole bool) (*assessment.Document, error) {
+func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target string, options assessment.Options, whole bool, since counting) (*assessment.Document, error) {
 	folder, err := a.folder()
 	if err != nil {
 		return nil, err
@@ -141,7 +153,7 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 			return nil, badCall("make a new commit of the same content", "the commit %s has no time that can be read, and the terms of restrictions and acceptances are compared with it", to.commit.Hash)
 		}
 	}
-	complete, err := a.descent(ctx, repo, from, to, &in)
+	complete, err := a.descent(ctx, repo, from, to, since, &in)
 	if err != nil {
 		return nil, err
 	}
@@ -156,7 +168,7 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 
 // descent fills in what the history between the revisions says. It is not complete
 // where a shallow clone ends between them.
-func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, in *assessment.Input) (complete bool, err error) {
+func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, since counting, in *assessment.Input) (complete bool, err error) {
 	if from.isWorkingTree() {
 		return true, nil
 	}
@@ -171,7 +183,10 @@ func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, i
 	if in.BaseIsAncestor, err = repo.IsAncestor(ctx, from.commit.Hash, to.commit.Hash); err != nil {
 		return false, err
 	}
-	commits, complete, err := repo.Between(ctx, from.commit.Hash, to.commit.Hash)
+	if in.PreparedSince, err = since(in.BaseRev, to.commit.Hash, in.Folder); err != nil {
+		return false, err
+	}
+	commits, complete, err := repo.Between(ctx, cmp.Or(in.PreparedSince, from.commit.Hash), to.commit.Hash)
 	if err != nil {
 		return false, err
 	}
@@ -201,16 +216,11 @@ func unread(files fs.FS, folders []schema.Folder) func(string) (*schema.Route, e
 }
 
 // record writes a document to the ledger.
-func (a *app) record(ctx context.Context, doc *assessment.Document) (render.Record, error) {
-	l, err := a.openLedger(ctx, true)
-	if err != nil {
+func (a *app) record(ctx context.Context, doc *assessment.Document, into *recording) (render.Record, error) {
+	if err := into.make(ctx, a); err != nil {
 		return render.Record{}, err
 	}
-	defer l.Close()
-	line, _, err := history.ReadLine(ctx, l)
-	if err != nil {
-		return render.Record{}, err
-	}
+	l, line := into.ledger, into.line
 	if err := needPolicies(line, &doc.Computed); err != nil {
 		return render.Record{}, err
 	}

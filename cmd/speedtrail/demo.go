@@ -63,11 +63,13 @@ func (a *app) demo(ctx context.Context, dir string) (err error) {
 	if err := a.demoAudit(ctx, repo, dir); err != nil {
 		return fmt.Errorf("the demonstration's audit trail was not written: %w", err)
 	}
-	doc, err := a.compute(ctx, repo, network.Base, network.Target, assessment.Options{Requests: []string{}}, true)
+	doc, err := a.compute(ctx, repo, network.Base, network.Target, assessment.Options{Requests: []string{}}, true, fromBase)
 	if err != nil {
 		return err
 	}
-	rec, err := a.record(ctx, doc)
+	var into recording
+	defer into.close()
+	rec, err := a.record(ctx, doc, &into)
 	if err != nil {
 		return err
 	}

@@ -232,9 +232,32 @@ type serviceRecord struct {
 
 // serviceLog is the JSON form of the log of what went into service.
 type serviceLog struct {
-	Format   string           `json:"format"`
-	Records  []serviceRecord  `json:"records"` // that stand, by instant
-	Findings []serviceFinding `json:"findings"`
+	Format  string          `json:"format"`
+	Records []serviceRecord `json:"records"` // that stand, by instant
+	// Corrected are the records that another one replaces or voids, by entry.
+	Corrected []correctedRecord `json:"corrected"`
+	Findings  []serviceFinding  `json:"findings"`
+}
+
+// correctedRecord is an in-force record that does not stand any more.
+type correctedRecord struct {
+	Record serviceRecord `json:"record"`
+	How    string        `json:"how" jsonschema:"enum=replaces,enum=voids"` // what the later one does
+	Entry  int64         `json:"by_entry"`                                  // the later one
+	Signer string        `json:"by_signer"`
+	Reason string        `json:"by_reason"`
+}
+
+func (x correctedRecord) words() string {
+	return x.Record.words() + source.Visible(fmt.Sprintf("; entry %d %s it, signed by %s (%s)", x.Entry, x.How, x.Signer, x.Reason))
+}
+
+func corrections(line *approval.Line, folder string) []correctedRecord {
+	list := []correctedRecord{}
+	for _, x := range line.Corrections(folder) {
+		list = append(list, correctedRecord{serviceRecordOf(history.ServiceOf(line, x.Record)), x.How, x.By.Entry.Seq, x.By.Signer, x.By.Reason})
+	}
+	return list
 }
 
 type serviceFinding struct {
@@ -295,6 +318,7 @@ func (a *app) inforceLog(ctx context.Context) error {
 	for _, r := range line.Standing(folder) {
 		records = append(records, serviceRecordOf(history.ServiceOf(line, r)))
 	}
+	corrected := corrections(line, folder)
 	findings := history.ServiceFindings(line, folder)
 	err = a.write(func(w io.Writer) error {
 		if a.format == "json" {
@@ -302,7 +326,7 @@ func (a *app) inforceLog(ctx context.Context) error {
 			for _, f := range findings {
 				list = append(list, serviceFinding(f))
 			}
-			return indentedJSON(w, serviceLog{"speedtrail-inforce 1", records, list})
+			return indentedJSON(w, serviceLog{"speedtrail-inforce 1", records, corrected, list})
 		}
 		for i, r := range records {
 			if i > 0 {
@@ -310,7 +334,10 @@ func (a *app) inforceLog(ctx context.Context) error {
 			}
 			fmt.Fprintf(w, "%s\n", strings.ReplaceAll(wrap(r.words(), a.style().Width-2), "\n", "\n  "))
 		}
-		if len(records) > 0 && len(findings)+len(problems) > 0 {
+		for _, x := range corrected {
+			fmt.Fprintf(w, "\nNot any more: %s\n", strings.ReplaceAll(wrap(x.words(), a.style().Width-2), "\n", "\n  "))
+		}
+		if len(records)+len(corrected) > 0 && len(findings)+len(problems) > 0 {
 			fmt.Fprintln(w)
 		}
 		if len(records) == 0 {

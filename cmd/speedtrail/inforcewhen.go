@@ -11,6 +11,7 @@ import (
 	"speedtrail/diff/profile"
 	"speedtrail/history"
 	"speedtrail/history/approval"
+	"speedtrail/history/ledger"
 	"speedtrail/history/signoff"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
@@ -124,12 +125,17 @@ func (a *app) fillInForce(ctx context.Context, answer *inForceAnswer, line *appr
 		return err
 	}
 	answer.Commit, answer.Subject = commit.Hash, validText(commit.Subject)
-	if route == "" {
-		return nil
-	}
 	files, err := repo.Snapshot(commit.Hash, now.Folder)
 	if err != nil {
 		return err
+	}
+	// What is approved is the content that the statement names: a commit of another one
+	// would be shown as approved.
+	if tree := content(files); tree != now.Content {
+		return ledger.Damaged(fmt.Errorf("entry %d says that commit %s has the content %s, in Git it has %s", now.Entry.Seq, now.Revision, now.Content, tree))
+	}
+	if route == "" {
+		return nil
 	}
 	data, err := schema.Load(ctx, files)
 	if err != nil {

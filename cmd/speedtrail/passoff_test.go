@@ -4,9 +4,14 @@ import (
 	"os"
 	"os/exec"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 	"time"
+
+	"speedtrail/history"
+	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
 )
 
 // A shallow clone does not know who prepared the change: nothing is recorded or
@@ -121,6 +126,23 @@ func TestStatementsThatAreBrought(t *testing.T) {
 	call(t, in("inforce", "record", "c0", "--statement", file, "--signature", file+".sig")...).want(t, 0)
 	if got := call(t, in("inforce", "record", "c0", "--since", "2026-03-04T00:00:00Z", "--routes", "", "--reason", "x", "--key", key("cem"), "-y")...); got.status != statusInput || !strings.Contains(got.errors, "names no route") {
 		t.Errorf("an empty list of routes: status %d\n%s", got.status, got.errors)
+	}
+
+	// What came into the ledger by another way names an approved content and a commit
+	// of another: its speeds are not shown as approved ones.
+	file = written("foreign", "cem", [2]string{hash("c0^{commit}"), hash("c1^{commit}")}, append(slices.Clone(record[:4]), "2026-03-05T00:00:00Z", "--reason", "start", "--signer", "cem@tarn.example")...)
+	l, err := ledger.Open(t.Context(), filepath.Join(repo, ".git", "speedtrail", "ledger.db"), ledger.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	statement, signature := readFileOf(t, file), readFileOf(t, file+".sig")
+	if _, err := history.RecordSigned(t.Context(), l, nil, chain.InForce, statement, signature, time.Now()); err != nil {
+		t.Fatal(err)
+	}
+	l.Close()
+	call(t, in("inforce", "--when", "2026-03-04T00:00:00Z", "--route", "R1", "--at", "1")...).want(t, 0)
+	if got := call(t, in("inforce", "--when", "2026-03-06T00:00:00Z", "--route", "R1", "--at", "1")...); got.status != statusFailed || !strings.Contains(got.errors, "has the content "+tree0+", in Git it has "+tree1) || strings.Contains(got.out, "km/h") {
+		t.Errorf("a commit of another content: status %d\n%s%s", got.status, got.out, got.errors)
 	}
 }
 

@@ -238,8 +238,14 @@ func (l *Line) checkSignOff(r *Record) error {
 	if problem := l.blocked(a); problem != "" {
 		return refuse("assessment %d cannot be signed: %s", a.Number, problem)
 	}
-	if err := checkRole(policy, r.Role, r.Signer); err != nil {
+	if r.inForce, err = usable(l.Newest(a.Folder), "the newest approved revision"); err != nil {
 		return err
+	}
+	// A role that only the policy in force has may be taken all the same.
+	if policy.Role(r.Role) != nil || r.inForce.Role(r.Role) == nil {
+		if err := checkRole(policy, r.Role, r.Signer); err != nil {
+			return err
+		}
 	}
 	if r.Role == InServiceRole {
 		return refuse("the role %s records what is in force and approves nothing", InServiceRole)
@@ -250,17 +256,26 @@ func (l *Line) checkSignOff(r *Record) error {
 	if err := l.checkSignature(r, policy); err != nil {
 		return err
 	}
-	newest, err := usable(l.Newest(a.Folder), "the newest approved revision")
-	if err != nil {
+	if err := l.checkByNewest(r, a); err != nil {
 		return err
 	}
-	if r.foreseen && r.Fingerprint == "" {
-		return nil
+	return l.checkTakenOut(r)
+}
+
+// checkByNewest holds a sign-off against the newest approved policy as well: a base
+// of before a turn of the policy does not bring the former one back.
+func (l *Line) checkByNewest(r *Record, a *Assessment) error {
+	err := checkRole(r.inForce, r.Role, r.Signer)
+	if err == nil {
+		err = l.checkIndependence(r, a, r.inForce)
 	}
-	if _, err := allowedKey(newest, r.Fingerprint, r.Signer, r.Time, r.Recorded); err != nil {
+	if err == nil && (!r.foreseen || r.Fingerprint != "") {
+		_, err = allowedKey(r.inForce, r.Fingerprint, r.Signer, r.Time, r.Recorded)
+	}
+	if err != nil {
 		return refuse("by the newest approved policy: %v", strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))
 	}
-	return l.checkTakenOut(r)
+	return nil
 }
 
 // checkTakenOut refuses a key that an approved policy took out.
@@ -296,6 +311,12 @@ func (l *Line) blocked(a *Assessment) string {
 		return "nobody is known to have prepared it"
 	case !l.ApprovedContent(a.Folder, a.BaseTree):
 		return "its base is neither the anchor nor an approved target (base-not-approved)"
+	}
+	if problem := l.otherPolicy(a); problem != "" {
+		return problem
+	}
+	if !l.counted(a) {
+		return "its preparers are counted from " + a.since() + ", which is not the approved commit but another one of the same content: who prepared that is not known; assess the change again"
 	}
 	return ""
 }

@@ -1,6 +1,7 @@
 package approval
 
 import (
+	"cmp"
 	"slices"
 	"strconv"
 	"strings"
@@ -82,6 +83,31 @@ func (l *Line) Standing(folder string) []Record {
 		}
 	}
 	slices.SortStableFunc(list, func(a, b Record) int { return a.Since.Compare(b.Since) })
+	return list
+}
+
+// Correction is an in-force record that another one replaces or voids.
+type Correction struct {
+	Record, By Record
+	How        string // Replaces or Voids
+}
+
+// Corrections lists the in-force records of a folder that do not stand any more, in
+// the order of the ledger: what was said once is not taken out of sight.
+func (l *Line) Corrections(folder string) []Correction {
+	var list []Correction
+	for _, by := range l.inForce {
+		word, entry, _ := correction(&by)
+		if by.Folder != folder || word == CorrectsNothing {
+			continue
+		}
+		for _, r := range l.inForce {
+			if r.Folder == folder && r.Entry.Seq == entry {
+				list = append(list, Correction{r, by, word})
+			}
+		}
+	}
+	slices.SortStableFunc(list, func(a, b Correction) int { return cmp.Compare(a.Record.Entry.Seq, b.Record.Entry.Seq) })
 	return list
 }
 

@@ -68,6 +68,9 @@ type Assessment struct {
 	Preparers            []string
 	Findings             string // as statements write them
 	BaseNotAncestor      bool
+	// Since is the approved commit from which preparers are counted, where the base is
+	// another commit of the same content; else it is empty.
+	Since string
 }
 
 // Policy is a policy with the bytes that it was read from.
@@ -87,7 +90,8 @@ type Record struct {
 	Signature   []byte
 	Text        []byte
 
-	foreseen bool // nobody has signed it so far: Foresee
+	foreseen bool           // nobody has signed it so far: Foresee
+	inForce  *schema.Policy // of a sign-off: the newest approved policy when it was recorded
 }
 
 // AnchorRecord is the root of a line of approval.
@@ -117,6 +121,7 @@ type Line struct {
 	ofAssessment map[int64][]int           // indices in signOffs
 	ofContent    map[content][]int         // the same, by what was decided on
 	done         map[int64]int64           // what signedOff gave, by assessment
+	begun        map[int64]int64           // what firstSigned gave
 	contents     map[string]map[string]way // approved contents by folder
 	past         map[int64]*Line           // the line as it stood after an entry
 }
@@ -124,7 +129,7 @@ type Line struct {
 // New begins a line for the ledger of an id.
 func New(ledger string) *Line {
 	return &Line{ledger: ledger, byNumber: map[int64]*Assessment{}, anchors: map[string]*AnchorRecord{}, revoked: map[string]Record{}, statements: map[string]int64{}, policies: map[string]Policy{},
-		ofAssessment: map[int64][]int{}, ofContent: map[content][]int{}, done: map[int64]int64{}, contents: map[string]map[string]way{}}
+		ofAssessment: map[int64][]int{}, ofContent: map[content][]int{}, done: map[int64]int64{}, begun: map[int64]int64{}, contents: map[string]map[string]way{}}
 }
 
 // ErrRefused is the class of everything that a policy or the rules of signing
@@ -253,6 +258,7 @@ func (l *Line) Policy(signOff, allowedSigners string) Policy {
 func (l *Line) forget(decided content) {
 	for _, i := range l.ofContent[decided] {
 		delete(l.done, l.signOffs[i].Assessment)
+		delete(l.begun, l.signOffs[i].Assessment)
 	}
 	delete(l.contents, decided.folder)
 }

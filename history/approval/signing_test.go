@@ -6,6 +6,7 @@ import (
 	"crypto/rand"
 	"encoding/base64"
 	"math/big"
+	"slices"
 	"strings"
 	"testing"
 	"time"
@@ -140,7 +141,7 @@ func TestNewestPolicyIsNotTurnedBack(t *testing.T) {
 // What a sibling leaves in its policy, which another release took out, does not
 // come back with it; what it brings in does.
 func TestKeyTakenOutStaysOut(t *testing.T) {
-	note := ordinary().role("reader 1 -") // anything but the keys
+	note := ordinary().role("in-service 1 - eva") // anything but the keys
 	s := anchored(t, ordinary())
 	without, sibling := s.assess("a", "b", ordinary(), ordinary().without("fin"), nil), s.assess("a", "c", ordinary(), note, nil)
 	other := s.assess("a", "d", ordinary(), ordinary(), nil)
@@ -402,4 +403,96 @@ func TestKinds(t *testing.T) {
 			t.Errorf("a signed statement passes as an entry of kind %q", kind)
 		}
 	}
+}
+
+// A base of before a turn of the policy does not bring the former policy back: the
+// numbers, signers and independence of the newest approved one count as well, and
+// so do roles that only it has.
+func TestOldBaseDoesNotBringOldPolicyBack(t *testing.T) {
+	lone := rules{ordinary().people, []string{"checker 1 preparer", "in-service 1 - cem"}, ordinary().keys}
+	anchoredLone := func(t *testing.T) *story {
+		s := newStory(t)
+		s.rules = lone
+		s.must(s.anchor("a", lone, nil, "checker:ada", "in-service:cem"))
+		return s
+	}
+	begin := func(t *testing.T, old, now rules) (s *story, n int64) {
+		if old.hash() == lone.hash() {
+			s = anchoredLone(t)
+		} else {
+			s = anchored(t, old)
+		}
+		n = s.assess("a", "c", old, old, nil)
+		turn := s.assess("a", "b", old, now, nil)
+		s.must(s.signOff(turn, "ada", "checker", "approve"))
+		if old.hash() != lone.hash() {
+			s.must(s.signOff(turn, "bea", "approver", "approve"))
+		}
+		s.state(turn, Approved)
+		return s, n
+	}
+	t.Run("a role more", func(t *testing.T) {
+		s, n := begin(t, lone, ordinary())
+		s.must(s.signOff(n, "eva", "checker", "approve"))
+		if got := s.state(n, Partly); !slices.Equal(got.Missing, []string{"approver (0 of 1)"}) {
+			t.Errorf("missing %v", got.Missing)
+		}
+		s.refused(s.signOff(n, "eva", "approver", "approve"), "eva@tarn.example signed as checker")
+		s.refused(s.signOff(n, "dan", "approver", "approve"), "dan@tarn.example prepared the change")
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		s.state(n, Approved)
+	})
+	t.Run("one person more", func(t *testing.T) {
+		s, n := begin(t, ordinary(), ordinary().role("checker 2 preparer"))
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		if got := s.state(n, Partly); !slices.Equal(got.Missing, []string{"checker (1 of 2)"}) {
+			t.Errorf("missing %v", got.Missing)
+		}
+		s.must(s.signOff(n, "eva", "checker", "approve"))
+		s.state(n, Approved)
+	})
+	t.Run("a signer less", func(t *testing.T) {
+		s, n := begin(t, ordinary(), ordinary().role("approver 1 preparer,checker bea"))
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.refused(s.signOff(n, "eva", "approver", "approve"), "by the newest approved policy: eva@tarn.example is no signer of the role approver")
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		s.state(n, Approved)
+	})
+	t.Run("a role that has gone", func(t *testing.T) {
+		s, n := begin(t, ordinary(), lone)
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.refused(s.signOff(n, "bea", "approver", "approve"), "by the newest approved policy: the policy has no role \"approver\"")
+		s.state(n, Partly)
+	})
+	t.Run("independence", func(t *testing.T) {
+		loose := ordinary().role("approver 1 -")
+		s, n := begin(t, loose, ordinary())
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.refused(s.signOff(n, "ada", "approver", "approve"), "by the newest approved policy: ada@tarn.example signed as checker")
+		s.refused(s.signOff(n, "dan", "approver", "approve"), "by the newest approved policy: dan@tarn.example prepared the change")
+	})
+	t.Run("what was signed before the turn counts by it only", func(t *testing.T) {
+		loose := ordinary().role("approver 1 -")
+		s := anchored(t, loose)
+		n, turn := s.assess("a", "c", loose, loose, nil), s.assess("a", "b", loose, ordinary(), nil)
+		s.must(s.signOff(n, "dan", "approver", "approve")) // who prepared it
+		s.must(s.signOff(turn, "ada", "checker", "approve"))
+		s.must(s.signOff(turn, "bea", "approver", "approve"))
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		if got := s.state(n, Partly); !slices.Equal(got.Missing, []string{"approver (0 of 1)"}) {
+			t.Errorf("missing %v", got.Missing)
+		}
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		s.state(n, Approved)
+	})
+	t.Run("what was complete before the turn stays approved", func(t *testing.T) {
+		s := anchoredLone(t)
+		n, turn := s.assess("a", "c", lone, lone, nil), s.assess("a", "b", lone, ordinary(), nil)
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.must(s.signOff(turn, "ada", "checker", "approve"))
+		if got := s.state(n, Approved); len(got.Missing) > 0 {
+			t.Errorf("missing %v", got.Missing)
+		}
+	})
 }

@@ -1,12 +1,10 @@
 package approval
 
 import (
-	"fmt"
 	"slices"
 	"strings"
 
 	"speedtrail/history/signoff"
-	"speedtrail/schema"
 )
 
 // States of an assessment.
@@ -49,14 +47,7 @@ func (l *Line) State(number int64) State {
 	for _, i := range l.ofAssessment[number] {
 		s.Signed = append(s.Signed, l.signOffs[i])
 	}
-	approvals := l.approvals(a)
-	if a.Policy.Parsed != nil {
-		for _, role := range a.Policy.Parsed.Roles {
-			if n := len(approvals[role.Name]); role.Name != InServiceRole && n < role.Needed {
-				s.Missing = append(s.Missing, fmt.Sprintf("%s (%d of %d)", role.Name, n, role.Needed))
-			}
-		}
-	}
+	s.Missing = l.missing(a)
 	s.Blocks = l.blocks(a)
 	s.RejectedBy = l.rejections(a.content())
 	contents := l.approvedContents(a.Folder)
@@ -65,7 +56,7 @@ func (l *Line) State(number int64) State {
 		s.Word = Rejected
 	case l.approved(a, contents):
 		s.Word = Approved
-	case len(approvals) > 0:
+	case len(l.standing(a)) > 0:
 		s.Word = Partly
 	}
 	for _, other := range l.assessments {
@@ -74,24 +65,6 @@ func (l *Line) State(number int64) State {
 		}
 	}
 	return s
-}
-
-// approvals gives, for each role, the people whose last decision on the
-// assessment in it is to approve.
-func (l *Line) approvals(a *Assessment) map[string][]string {
-	type part struct{ role, signer string }
-	last := map[part]string{}
-	for _, i := range l.ofAssessment[a.Number] {
-		r := &l.signOffs[i]
-		last[part{r.Role, r.Signer}] = r.Decision
-	}
-	out := map[string][]string{}
-	for p, decision := range last {
-		if decision == signoff.Approve {
-			out[p.role] = append(out[p.role], p.signer)
-		}
-	}
-	return out
 }
 
 // rejections lists the rejections of a content that stand: of people whose last
@@ -137,6 +110,10 @@ func (l *Line) blocks(a *Assessment) []string {
 	}
 	if !l.ApprovedContent(a.Folder, a.BaseTree) {
 		list = append(list, "base-not-approved")
+	} else if problem := l.otherPolicy(a); problem != "" {
+		list = append(list, problem)
+	} else if !l.counted(a) {
+		list = append(list, "assess again: its preparers are counted from "+a.since()+", which is not the approved commit")
 	}
 	if unknown := a.UnknownPreparers(); len(unknown) > 0 {
 		list = append(list, "unknown-preparer: "+strings.Join(unknown, ", "))
@@ -158,21 +135,27 @@ type way struct {
 // firstSigned gives the entry with which all roles had signed an assessment for the
 // first time; 0 where they never had.
 func (l *Line) firstSigned(a *Assessment) int64 {
-	if a.Policy.Parsed == nil {
-		return 0
+	at, ok := l.begun[a.Number]
+	if !ok {
+		at = l.firstMet(a)
+		l.begun[a.Number] = at
 	}
-	type part struct{ role, signer string }
-	approve := map[part]bool{}
+	return at
+}
+
+func (l *Line) firstMet(a *Assessment) int64 {
+	approve := map[part]int{}
 	for _, i := range l.ofAssessment[a.Number] {
 		r := &l.signOffs[i]
-		approve[part{r.Role, r.Signer}] = r.Decision == signoff.Approve
-		count := map[string]int{}
-		for x, yes := range approve {
-			if yes {
-				count[x.role]++
-			}
+		x := part{r.Role, r.Signer}
+		if r.Decision != signoff.Approve {
+			delete(approve, x)
+			continue
 		}
-		if !slices.ContainsFunc(a.Policy.Parsed.Roles, func(role schema.Role) bool { return role.Name != InServiceRole && count[role.Name] < role.Needed }) {
+		if _, ok := approve[x]; !ok {
+			approve[x] = i
+		}
+		if met(a, approve, r.inForce) {
 			return r.Entry.Seq
 		}
 	}
@@ -194,40 +177,10 @@ func (l *Line) signedOff(a *Assessment) int64 {
 }
 
 func (l *Line) lastNeeded(a *Assessment) int64 {
-	p := a.Policy.Parsed
-	if len(l.ofAssessment[a.Number]) == 0 || p == nil || a.Next.Parsed == nil || a.BaseNotAncestor || len(a.Preparers) == 0 || len(a.UnknownPreparers()) > 0 || len(l.rejections(a.content())) > 0 {
+	if len(l.ofAssessment[a.Number]) == 0 || a.Policy.Parsed == nil || a.Next.Parsed == nil || a.BaseNotAncestor || len(a.Preparers) == 0 || len(a.UnknownPreparers()) > 0 || len(l.rejections(a.content())) > 0 {
 		return 0
 	}
-	// The first approvals that stand, role by role.
-	type part struct{ role, signer string }
-	since := map[part]int64{}
-	for _, i := range l.ofAssessment[a.Number] {
-		r := &l.signOffs[i]
-		x := part{r.Role, r.Signer}
-		switch {
-		case r.Decision != signoff.Approve:
-			delete(since, x)
-		case since[x] == 0:
-			since[x] = r.Entry.Seq
-		}
-	}
-	byRole := map[string][]int64{}
-	for x, at := range since {
-		byRole[x.role] = append(byRole[x.role], at)
-	}
-	last := int64(0)
-	for _, role := range p.Roles {
-		if role.Name == InServiceRole {
-			continue
-		}
-		list := byRole[role.Name]
-		if len(list) < role.Needed {
-			return 0
-		}
-		slices.Sort(list)
-		last = max(last, list[role.Needed-1])
-	}
-	return last
+	return l.completed(a)
 }
 
 // approvedContents gives the contents of a folder that are approved: the

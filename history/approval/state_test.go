@@ -69,7 +69,7 @@ func TestRejectionFollowsContent(t *testing.T) {
 	for name, again := range map[string]func(a *Assessment){
 		"a new assessment of the same commits": nil,
 		"a new commit without a change":        func(a *Assessment) { a.Target = commitOf("empty") },
-		"another base":                         func(a *Assessment) { a.Base = commitOf("a2") },
+		"another base":                         func(a *Assessment) { a.Base, a.Since = commitOf("a2"), commitOf("a") },
 		"other findings":                       func(a *Assessment) { a.Findings = "outside 1" },
 	} {
 		t.Run(name, func(t *testing.T) {
@@ -205,7 +205,19 @@ func TestBlocks(t *testing.T) {
 		"base is the target":        {"a", "b", func(a *Assessment) { a.Target = a.Base }, "", "its base is its target"},
 		"no policy of the target":   {"a", "b", func(a *Assessment) { a.Next = Policy{} }, "", "the target has no policy"},
 		"target's policy is faulty": {"a", "b", func(a *Assessment) { a.Next = New(ledgerID).Policy("x", "y") }, "", "the policy of the target is not valid"},
-		"base's policy is faulty":   {"a", "b", func(a *Assessment) { a.Policy = New(ledgerID).Policy("x", "y") }, "", "the policy of the base is not valid"},
+		"base's policy is faulty": {"a", "b", func(a *Assessment) { a.Policy = New(ledgerID).Policy("x", "y") },
+			"its base has another policy than the approved revision of the same content", "the policy of the base is not valid"},
+		"another policy of the anchor": {"a", "b", func(a *Assessment) { a.Policy = New(ledgerID).Policy(ordinary().role("reader 1 -").files()) },
+			"its base has another policy than the approved revision of the same content", "its base has another policy"},
+		"another policy of the anchor, as a target": {"a", "b", func(a *Assessment) {
+			a.TargetTree, a.Next = treeOf("a"), New(ledgerID).Policy(ordinary().role("reader 1 -").files())
+		}, "its target has another policy than the approved revision of the same content", "its target has another policy"},
+		// The history of another commit of the same content can hold people who
+		// prepared what the target takes up.
+		"another commit of the anchor's content": {"a", "b", func(a *Assessment) { a.Base = commitOf("a2") },
+			"assess again: its preparers are counted from " + commitOf("a2") + ", which is not the approved commit", "who prepared that is not known"},
+		"counted from a commit that is not approved": {"a", "b", func(a *Assessment) { a.Since = commitOf("a2") },
+			"assess again: its preparers are counted from " + commitOf("a2") + ", which is not the approved commit", "who prepared that is not known"},
 	} {
 		t.Run(name, func(t *testing.T) {
 			s := anchored(t, ordinary())
@@ -251,5 +263,36 @@ func TestLineInAnyOrder(t *testing.T) {
 	s.approve(two)
 	if !s.line.Led(".", treeOf("a"), treeOf("c")) {
 		t.Error("approved assessments do not lead from a to c")
+	}
+}
+
+// The approved commits of a content are the anchor's and the targets of approved
+// assessments; from each of them preparers can be counted.
+func TestApprovedCommits(t *testing.T) {
+	s := anchored(t, ordinary())
+	commits := func(name string) []string { return s.line.ApprovedCommits(".", treeOf(name)) }
+	if got := commits("a"); !slices.Equal(got, []string{commitOf("a")}) {
+		t.Errorf("the anchor's: %v", got)
+	}
+	n := s.assess("a", "b", ordinary(), ordinary(), nil)
+	s.must(s.signOff(n, "ada", "checker", "approve"))
+	if got := commits("b"); got != nil {
+		t.Errorf("of a partly signed target: %v", got)
+	}
+	s.must(s.signOff(n, "bea", "approver", "approve"))
+	s.approve(s.assess("a", "b", ordinary(), ordinary(), func(a *Assessment) { a.Target = commitOf("squashed") }))
+	if got := commits("b"); !slices.Equal(got, []string{commitOf("b"), commitOf("squashed")}) {
+		t.Errorf("of two approved commits of one content: %v", got)
+	}
+	if got := s.line.ApprovedCommits("data", treeOf("a")); got != nil {
+		t.Errorf("of another folder: %v", got)
+	}
+	for _, base := range []string{"b", "squashed"} {
+		s.approve(s.assess("b", "c", ordinary(), ordinary(), func(a *Assessment) { a.Base, a.Target = commitOf(base), commitOf("from "+base) }))
+	}
+	s.approve(s.assess("b", "d", ordinary(), ordinary(), func(a *Assessment) { a.Base, a.Since = commitOf("merged"), commitOf("squashed") }))
+	s.must(s.signOff(n, "fin", "checker", "reject"))
+	if got := commits("b"); got != nil {
+		t.Errorf("of a content that is rejected: %v", got)
 	}
 }

@@ -27,7 +27,9 @@ type Input struct {
 	Named        Named
 	Folder       string // "." for the repository's root
 	Preparers    []Person
-	Options      Options
+	// PreparedSince is the commit from which preparers are counted; empty: the base.
+	PreparedSince string
+	Options       Options
 	// At is what validities are compared with: the target's committer date, for
 	// the working tree the present.
 	At time.Time
@@ -38,20 +40,21 @@ type Input struct {
 // Build makes the document. The same input gives the same document.
 func Build(in Input) *Document {
 	c := Computed{
-		At:           in.At.UTC().Format(time.RFC3339),
-		Base:         in.BaseRev,
-		Dataset:      in.Target.Name,
-		EqualRoutes:  in.Account.Equal,
-		Files:        files(in.Base.Files, in.Target.Files),
-		Folder:       in.Folder,
-		Options:      in.Options,
-		Policy:       Policies{Base: policy(in.Base), Target: policy(in.Target)},
-		Preparers:    in.Preparers,
-		Requests:     requests(in.Account),
-		Routes:       make([]Route, len(in.Account.Routes)),
-		RulesVersion: diff.RulesVersion,
-		Target:       in.TargetRev,
-		Trains:       trains(in.Account),
+		At:            in.At.UTC().Format(time.RFC3339),
+		Base:          in.BaseRev,
+		Dataset:       in.Target.Name,
+		EqualRoutes:   in.Account.Equal,
+		Files:         files(in.Base.Files, in.Target.Files),
+		Folder:        in.Folder,
+		Options:       in.Options,
+		Policy:        Policies{Base: policy(in.Base), Target: policy(in.Target)},
+		Preparers:     in.Preparers,
+		PreparedSince: in.PreparedSince,
+		Requests:      requests(in.Account),
+		Routes:        make([]Route, len(in.Account.Routes)),
+		RulesVersion:  diff.RulesVersion,
+		Target:        in.TargetRev,
+		Trains:        trains(in.Account),
 	}
 	var places [][]int
 	c.Source, places = sourceFiles(in.Account)

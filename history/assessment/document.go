@@ -32,7 +32,7 @@ type Document struct {
 // assessments to be computed anew, no more is kept.
 func (d *Document) Asked() *Document {
 	c := &d.Computed
-	return &Document{Format: d.Format, Named: d.Named, Computed: Computed{Base: c.Base, Folder: c.Folder, Options: c.Options, RulesVersion: c.RulesVersion, Target: c.Target}}
+	return &Document{Format: d.Format, Named: d.Named, Computed: Computed{Base: c.Base, Folder: c.Folder, Options: c.Options, PreparedSince: c.PreparedSince, RulesVersion: c.RulesVersion, Target: c.Target}}
 }
 
 // Named is how the revisions were called; it is not in the digest.
@@ -45,27 +45,30 @@ type Named struct {
 
 // Computed is all that the digest covers.
 type Computed struct {
-	Accepted     []Acceptance  `json:"accepted"` // the entries of the target's accepted.toml
-	At           string        `json:"at"`       // the time that validities are compared with, RFC 3339
-	Base         Revision      `json:"base"`
-	Dataset      string        `json:"dataset"`      // the target's name of the data set
-	EqualRoutes  int           `json:"equal_routes"` // routes whose files are the same
-	Explained    []Explanation `json:"explained"`    // the kinds of finding that occur, in their order
-	Figures      Figures       `json:"figures"`
-	Files        []File        `json:"files"`
-	Findings     []Finding     `json:"findings"` // in the order in which to look at them
-	Fleet        []Fleet       `json:"fleet"`
-	Folder       string        `json:"folder"` // the data set's folder in the repository, "." for its root
-	Options      Options       `json:"options"`
-	Policy       Policies      `json:"policy"`
-	Preparers    []Person      `json:"preparers"`
-	Requests     []Request     `json:"requests"` // in play
-	Routes       []Route       `json:"routes"`   // that differ
-	RulesVersion int           `json:"rules_version"`
-	Source       []SourceFile  `json:"source"`
-	Stretches    Stretches     `json:"stretches"`
-	Target       Revision      `json:"target"`
-	Trains       []Train       `json:"trains"`
+	Accepted    []Acceptance  `json:"accepted"` // the entries of the target's accepted.toml
+	At          string        `json:"at"`       // the time that validities are compared with, RFC 3339
+	Base        Revision      `json:"base"`
+	Dataset     string        `json:"dataset"`      // the target's name of the data set
+	EqualRoutes int           `json:"equal_routes"` // routes whose files are the same
+	Explained   []Explanation `json:"explained"`    // the kinds of finding that occur, in their order
+	Figures     Figures       `json:"figures"`
+	Files       []File        `json:"files"`
+	Findings    []Finding     `json:"findings"` // in the order in which to look at them
+	Fleet       []Fleet       `json:"fleet"`
+	Folder      string        `json:"folder"` // the data set's folder in the repository, "." for its root
+	Options     Options       `json:"options"`
+	Policy      Policies      `json:"policy"`
+	// PreparedSince is the commit from which preparers are counted, where that is not
+	// the base: the approved commit of the base's content.
+	PreparedSince string       `json:"prepared_since"`
+	Preparers     []Person     `json:"preparers"`
+	Requests      []Request    `json:"requests"` // in play
+	Routes        []Route      `json:"routes"`   // that differ
+	RulesVersion  int          `json:"rules_version"`
+	Source        []SourceFile `json:"source"`
+	Stretches     Stretches    `json:"stretches"`
+	Target        Revision     `json:"target"`
+	Trains        []Train      `json:"trains"`
 }
 
 // Revision is one side of an assessment. For the working tree, Commit is empty.

@@ -1,9 +1,11 @@
 package assessment
 
 import (
+	"errors"
 	"fmt"
 	"iter"
 	"slices"
+	"strings"
 
 	"speedtrail/history/ledger"
 	"speedtrail/schema/source"
@@ -14,6 +16,9 @@ import (
 func (c *Computed) check() error {
 	within := func(n int, list ...int) bool {
 		return !slices.ContainsFunc(list, func(i int) bool { return i < 0 || i >= n })
+	}
+	if strings.Trim(c.PreparedSince, "0123456789abcdef") != "" {
+		return errors.New("prepared_since is no hash of a commit")
 	}
 	for i := range c.Routes {
 		r := &c.Routes[i]

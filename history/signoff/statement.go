@@ -75,7 +75,7 @@ type Statement struct {
 	Content    string // anchor, in-force: hash of the folder's Git tree
 	Rules      int    // sign-off: version of the rules
 	Policy     string // SHA-256 of the policy that counts, see PolicyHash
-	Findings   string // sign-off: "none", or ids with their numbers, "outside 2, masked 1"
+	Findings   string // sign-off: "none", or ids with their numbers, "outside 2, masked 1"; "requests not looked at" before them
 	Routes     []string
 	Since      time.Time // in-force: the instant
 	Corrects   string    // in-force: "nothing", "replaces SEQ" or "voids SEQ"

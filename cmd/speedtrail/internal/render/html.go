@@ -35,7 +35,7 @@ var pageJS string
 var pageTemplate = sync.OnceValue(func() *template.Template {
 	return template.Must(template.New("page").Funcs(template.FuncMap{
 		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
-		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords,
+		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords,
 	}).Parse(pageText))
 })
 

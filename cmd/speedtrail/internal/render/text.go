@@ -89,7 +89,7 @@ func (p *textWriter) title() {
 		p.paragraph(fmt.Sprintf("%-10s", word), q.ID+"  "+q.Title)
 	}
 	if len(p.c.Preparers) > 0 {
-		p.paragraph("prepared  ", people(p.c.Preparers))
+		p.paragraph("prepared  ", people(p.c.Preparers)+countedWords(p.c))
 	}
 	if p.r.Digest != "" {
 		p.printf("%-10s%s\n", "digest", p.r.Digest)
@@ -102,6 +102,14 @@ func details(r assessment.Revision) string {
 		return ""
 	}
 	return ", " + cmp.Or(date(r.Committed), noTime) + ", " + r.Subject
+}
+
+// countedWords says from where preparers are counted, where that is not the base.
+func countedWords(c *assessment.Computed) string {
+	if c.PreparedSince == "" {
+		return ""
+	}
+	return fmt.Sprintf(" (counted from %.10s, the approved commit of the base's content)", c.PreparedSince)
 }
 
 func people(list []assessment.Person) string {

@@ -1,0 +1,131 @@
+package approval
+
+import (
+	"cmp"
+	"fmt"
+	"maps"
+	"slices"
+
+	"speedtrail/history/signoff"
+	"speedtrail/schema"
+)
+
+// part is what a person does for an assessment.
+type part struct{ role, signer string }
+
+// need is how many people a role has, and how many it needs.
+type need struct {
+	role         string
+	have, needed int
+}
+
+// needs counts, for the roles of a policy that take part in approvals, the people
+// who approve and may do so by that policy, in parts that are independent of each
+// other. approve holds, for each part, a number that grows with the order of the
+// decisions.
+func needs(p *schema.Policy, a *Assessment, approve map[part]int) []need {
+	var list []need
+	for _, role := range p.Roles {
+		if role.Name == InServiceRole {
+			continue
+		}
+		n := need{role: role.Name, needed: role.Needed}
+		for x, at := range approve {
+			if x.role == role.Name && checkRole(p, x.role, x.signer) == nil && !prepared(p, a, x) && !takenBefore(p, x, at, approve) {
+				n.have++
+			}
+		}
+		list = append(list, n)
+	}
+	return list
+}
+
+// prepared tells whether a signer prepared the change in spite of a role that is
+// independent of preparer.
+func prepared(p *schema.Policy, a *Assessment, x part) bool {
+	return p.Independent(x.role, schema.Preparer) && slices.ContainsFunc(a.Preparers, func(email string) bool {
+		person := p.Person(email)
+		return person != nil && person.Principal == x.signer
+	})
+}
+
+// takenBefore tells whether a signer took another part earlier that the role has to
+// be independent of.
+func takenBefore(p *schema.Policy, x part, at int, approve map[part]int) bool {
+	for y, earlier := range approve {
+		if y.signer == x.signer && y.role != x.role && earlier < at && p.Independent(x.role, y.role) {
+			return true
+		}
+	}
+	return false
+}
+
+// met tells whether the roles of the base's policy have the people that they need,
+// and those of the policy that was in force at a decision: whoever chooses an old
+// base does not choose the rules.
+func met(a *Assessment, approve map[part]int, inForce *schema.Policy) bool {
+	for _, p := range []*schema.Policy{a.Policy.Parsed, inForce} {
+		if p == nil || slices.ContainsFunc(needs(p, a, approve), func(n need) bool { return n.have < n.needed }) {
+			return false
+		}
+	}
+	return true
+}
+
+// standing gives the parts whose last decision on an assessment is to approve, each
+// with the place in signOffs since which that is so.
+func (l *Line) standing(a *Assessment) map[part]int {
+	since := map[part]int{}
+	for _, i := range l.ofAssessment[a.Number] {
+		r := &l.signOffs[i]
+		x := part{r.Role, r.Signer}
+		if r.Decision != signoff.Approve {
+			delete(since, x)
+		} else if _, ok := since[x]; !ok {
+			since[x] = i
+		}
+	}
+	return since
+}
+
+// completed gives the entry with which the roles of an assessment had the people
+// that they need, of those whose approvals stand; 0 where they do not have them.
+func (l *Line) completed(a *Assessment) int64 {
+	since := l.standing(a)
+	inOrder := slices.SortedFunc(maps.Keys(since), func(x, y part) int { return cmp.Compare(since[x], since[y]) })
+	approve := map[part]int{}
+	for _, x := range inOrder {
+		approve[x] = since[x]
+		if r := &l.signOffs[since[x]]; met(a, approve, r.inForce) {
+			return r.Entry.Seq
+		}
+	}
+	return 0
+}
+
+// missing lists the roles that lack people for an assessment: by the policy of its
+// base, and by the one that is in force now.
+func (l *Line) missing(a *Assessment) []string {
+	if a.Policy.Parsed == nil || l.completed(a) > 0 {
+		return nil
+	}
+	approve := l.standing(a)
+	list := needs(a.Policy.Parsed, a, approve)
+	if newest := l.Newest(a.Folder).Parsed; newest != nil {
+		for _, n := range needs(newest, a, approve) {
+			i := slices.IndexFunc(list, func(have need) bool { return have.role == n.role })
+			if i < 0 {
+				list = append(list, n)
+			} else if list[i].needed-list[i].have < n.needed-n.have {
+				list[i] = n
+			}
+		}
+	}
+	var words []string
+	for _, n := range list {
+		if n.have < n.needed {
+			words = append(words, fmt.Sprintf("%s (%d of %d)", n.role, n.have, n.needed))
+		}
+	}
+	return words
+}
