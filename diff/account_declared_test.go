@@ -90,6 +90,10 @@ func asked(target texts, declarations ...string) texts {
 func TestDeclared(t *testing.T) {
 	raise := texts{"speed.csv": flatSpeed(90)}
 	delayed := texts{"speed.csv": strings.Replace(ground["speed.csv"], "80", "90", 1)}
+	hold := texts{"route.toml": oneWay, "speed.csv": "from_km,to_km,basic\n0,10,100\n"}
+	held := func(rows string) texts {
+		return texts{"axle-load.csv": "from_km,to_km,C2,train_length_delay\n5.15,5.175,60,no\n" + rows}
+	}
 	two := trainText("T", 150, "", "C2", 200, 200) + trainText("U", 80, "", "D4", 700, 90)
 	runAccounts(t, []accountTest{
 		{"no request in play", flat, raise, []string{"nominal 4.000-6.000 T 80>90: outside"}},
@@ -125,6 +129,14 @@ func TestDeclared(t *testing.T) {
 				"nominal 5.200-6.000 T 60>100: 5.200-5.500 outside, 5.500-6.000 CR-1/0", "nominal 6.000-6.200 T 60>100 run-out: 6.000-6.200 CR-1/0 run-out", "CR-1/0 sees T 500+200"}},
 		{"run-out inside the declaration itself", texts{"route.toml": oneWay}, asked(delayed, declares("R1", "both", 4, 6.05, "raise", "")), []string{
 			"nominal 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "nominal 6.000-6.200 T 80>90 run-out: 6.000-6.050 CR-1/0, 6.050-6.200 CR-1/0 run-out", "CR-1/0 sees T 2050+150"}},
+		// Another row that ends past the declaration holds the train as well: its going
+		// is not declared. A lower row covers its own stretch.
+		{"run-out of a row that is declared beside one that is not", over(hold, held("4,5,80,yes\n5.15,5.175,80,yes\n")), asked(held(""), declares("R1", "both", 4, 5.15, "raise", "")), []string{
+			"nominal 4.000-5.000 T 80>100: 4.000-5.000 CR-1/0", "nominal 5.000-5.150 T 80>100 run-out: 5.000-5.150 CR-1/0", "nominal 5.175-5.375 T 80>100 run-out: outside", "CR-1/0 sees T 1150"}},
+		{"the same where both are declared", over(hold, held("4,5,80,yes\n5.15,5.175,80,yes\n")), asked(held(""), declares("R1", "both", 4, 5.175, "raise", "")), []string{
+			"nominal 4.000-5.000 T 80>100: 4.000-5.000 CR-1/0", "nominal 5.000-5.150 T 80>100 run-out: 5.000-5.150 CR-1/0", "nominal 5.175-5.375 T 80>100 run-out: 5.175-5.375 CR-1/0 run-out", "CR-1/0 sees T 1150+200"}},
+		{"the same as a reduction, which each of them makes", over(hold, held("")), asked(held("4,5,80,yes\n5.15,5.175,80,yes\n"), declares("R1", "both", 4, 5.15, "lower", "")), []string{
+			"nominal 4.000-5.000 T 100>80: 4.000-5.000 CR-1/0", "nominal 5.000-5.150 T 100>80 run-out: 5.000-5.150 CR-1/0", "nominal 5.175-5.375 T 100>80 run-out: 5.175-5.200 CR-1/0 run-out, 5.200-5.375 outside", "CR-1/0 sees T 1150+25"}},
 		{"a change that is hidden today", over(flat, texts{"temporary.csv": temporary("4,5,60")}), asked(raise, declares("R1", "both", 4, 4.5, "raise", "")), []string{
 			"nominal 5.000-6.000 T 80>90: outside", "masked nominal 4.000-5.000 T 80>90: 4.000-4.500 CR-1/0, 4.500-5.000 outside", "CR-1/0 sees T 500"}},
 		{"a change that is seen and goes further without temporary restrictions counts once", over(flat, texts{"temporary.csv": temporary("4,5,85")}), asked(raise, declares("R1", "both", 4, 6, "raise", "")), []string{

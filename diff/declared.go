@@ -228,8 +228,10 @@ func (a *Account) reconcileRoute(index int) {
 			c := &list[i]
 			o := scope.Observed{
 				Direction: c.Direction, From: c.From, To: c.To, Train: c.Train, TrainLength: a.Trains[c.Train].Length,
-				Raised: c.Raised(), RunOut: c.RunOut, RowEnds: r.rowEnds(c),
+				Raised: c.Raised(), RunOut: c.RunOut,
 			}
+			o.RowEnds, o.Unplaced = r.rowEnds(c)
+			o.Prepare(target[1])
 			c.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, target[1])[0], owners[1])
 			e := eyes{c.Direction, c.Train}
 			for k := range target[1] {
@@ -304,16 +306,16 @@ func (r *Route) pieceIndex(pieces []scope.Piece, owners []int) int {
 
 // rowEnds gives the far ends, in the direction of travel and on the target's
 // track, of the rows that differ and govern a change: for a raise, rows of the
-// base; for a reduction, rows of the target.
-func (r *Route) rowEnds(c *Change) []unit.Distance {
+// base; for a reduction, rows of the target. unplaced tells that there is one whose
+// end the target's track does not have.
+func (r *Route) rowEnds(c *Change) (ends []unit.Distance, unplaced bool) {
 	if !c.RunOut {
-		return nil
+		return nil, false
 	}
 	route, sources := r.Base, r.Sources[c.BeforeSources]
 	if !c.Raised() {
 		route, sources = r.Target, r.Sources[c.AfterSources]
 	}
-	var ends []unit.Distance
 	for _, cause := range r.Causes[c.Causes] {
 		f := &r.Files[cause.File]
 		d := &f.Rows[cause.Row]
@@ -337,10 +339,13 @@ func (r *Route) rowEnds(c *Change) []unit.Distance {
 			if c.Direction == codes.Reverse {
 				p = row.From
 			}
-			if end, err := find(r.Target.Track, p); err == nil {
-				ends = append(ends, end)
+			end, err := find(r.Target.Track, p)
+			if err != nil {
+				unplaced = true
+				continue
 			}
+			ends = append(ends, end)
 		}
 	}
-	return ends
+	return ends, unplaced
 }

@@ -29,6 +29,11 @@ type Observed struct {
 	// RowEnds are the far ends, in the direction of travel, of the altered rows
 	// that govern the change.
 	RowEnds []unit.Distance
+	// Unplaced: a row that governs the change ends where the target has no track.
+	Unplaced bool
+
+	// undeclared is where a row holds the raise back that no declaration lets go.
+	undeclared []interval
 }
 
 // Declared is what a change request declares on one route.
@@ -63,25 +68,6 @@ func (d *Declared) allows(o *Observed) bool {
 	return true
 }
 
-// runOut gives the stretch past the far end within which the run-out of a train
-// is inside, and whether a row behind the change ends in the declaration: a row
-// that ends where the declaration begins lies outside it.
-func (d *Declared) runOut(o *Observed) (from, to unit.Distance, ok bool) {
-	if !o.RunOut {
-		return 0, 0, false
-	}
-	if o.Direction == codes.Reverse {
-		for _, end := range o.RowEnds {
-			ok = ok || d.From <= end && end < d.To
-		}
-		return d.From - o.TrainLength, d.From, ok
-	}
-	for _, end := range o.RowEnds {
-		ok = ok || d.From < end && end <= d.To
-	}
-	return d.To, d.To + o.TrainLength, ok
-}
-
 // Cut cuts each observed change at the limits of the declarations that matter
 // to it. Neighbouring pieces of a change differ in By or RunOut.
 func Cut(observed []Observed, declared []Declared) [][]Piece {
@@ -93,6 +79,7 @@ func Cut(observed []Observed, declared []Declared) [][]Piece {
 }
 
 func cut(o *Observed, declared []Declared) []Piece {
+	o.Prepare(declared)
 	type claim struct {
 		from, to unit.Distance
 		by       int
@@ -107,9 +94,9 @@ func cut(o *Observed, declared []Declared) []Piece {
 		}
 		plain = append(plain, claim{d.From, d.To, i, false})
 		limits = append(limits, d.From, d.To)
-		if from, to, ok := d.runOut(o); ok {
-			runOuts = append(runOuts, claim{from, to, i, true})
-			limits = append(limits, from, to)
+		for _, x := range d.runOut(o) {
+			runOuts = append(runOuts, claim{x.from, x.to, i, true})
+			limits = append(limits, x.from, x.to)
 		}
 	}
 	// A plain claim counts before one by run-out.
@@ -139,14 +126,15 @@ func cut(o *Observed, declared []Declared) []Piece {
 }
 
 // Seen gives how much of an observed change a declaration holds: by its own
-// range, and as run-out past its far end.
+// range, and as run-out past its far end. Before, Cut or Prepare has to have looked
+// at all declarations.
 func Seen(o *Observed, d *Declared) (inside, runOut unit.Distance) {
 	if !d.allows(o) {
 		return 0, 0
 	}
 	inside = overlap(o, d.From, d.To)
-	if from, to, ok := d.runOut(o); ok {
-		runOut = overlap(o, from, to)
+	for _, x := range d.runOut(o) {
+		runOut += overlap(o, x.from, x.to)
 	}
 	return inside, runOut
 }

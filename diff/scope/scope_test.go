@@ -48,6 +48,23 @@ func TestCut(t *testing.T) {
 			[]Piece{{70 * m, 95 * m, Outside, false}, {95 * m, 100 * m, 0, false}}},
 		{"run-out longer than the train", with2(runOut, func(o *Observed) { o.To = 240 * m }), []Declared{all},
 			[]Piece{{200 * m, 230 * m, 0, true}, {230 * m, 240 * m, Outside, false}}},
+		// Two rows hold the train: a reduction is inside as far as one of them does
+		// that ends inside, a raise needs both to end inside where both hold.
+		{"a reduction by two rows", with2(runOut, func(o *Observed) { o.To, o.RowEnds = 250*m, []unit.Distance{200 * m, 220 * m} }), []Declared{all},
+			[]Piece{{200 * m, 230 * m, 0, true}, {230 * m, 250 * m, Outside, false}}},
+		{"in the other order", with2(runOut, func(o *Observed) { o.To, o.RowEnds = 250*m, []unit.Distance{220 * m, 200 * m} }), []Declared{all},
+			[]Piece{{200 * m, 230 * m, 0, true}, {230 * m, 250 * m, Outside, false}}},
+		{"a raise by two rows", with2(runOut, func(o *Observed) { o.To, o.RowEnds, o.Raised = 250*m, []unit.Distance{200 * m, 220 * m}, true }), []Declared{all},
+			[]Piece{{200 * m, 220 * m, 0, true}, {220 * m, 250 * m, Outside, false}}},
+		{"a raise by two rows, of two declarations", with2(runOut, func(o *Observed) { o.To, o.RowEnds, o.Raised = 250*m, []unit.Distance{200 * m, 220 * m}, true }),
+			[]Declared{all, with(func(d *Declared) { d.From, d.To = 210*m, 220*m })},
+			[]Piece{{200 * m, 210 * m, 0, true}, {210 * m, 220 * m, 1, false}, {220 * m, 230 * m, 0, true}, {230 * m, 250 * m, 1, true}}},
+		{"a raise by two rows against the distance", with2(back, func(o *Observed) { o.From, o.RowEnds, o.Raised = 50*m, []unit.Distance{80 * m, 100 * m}, true }), []Declared{all},
+			[]Piece{{50 * m, 80 * m, Outside, false}, {80 * m, 100 * m, 0, true}}},
+		{"a raise by a row that ends where there is no track any more", with2(runOut, func(o *Observed) { o.Raised, o.Unplaced = true, true }), []Declared{all}, []Piece{{200 * m, 230 * m, Outside, false}}},
+		{"a reduction in the same case", with2(runOut, func(o *Observed) { o.Unplaced = true }), []Declared{all}, []Piece{{200 * m, 230 * m, 0, true}}},
+		{"as far as the row reaches, not the declaration", with2(runOut, func(o *Observed) { o.From, o.To = 205*m, 235*m }), []Declared{with(func(d *Declared) { d.To = 205 * m })},
+			[]Piece{{205 * m, 230 * m, 0, true}, {230 * m, 235 * m, Outside, false}}},
 		{"not run-out", with2(runOut, func(o *Observed) { o.RunOut = false }), []Declared{all}, []Piece{{200 * m, 230 * m, Outside, false}}},
 	}
 	for _, test := range tests {
@@ -69,7 +86,8 @@ func TestCutPointByPoint(t *testing.T) {
 		o := Observed{
 			Direction: codes.Direction(rapid.IntRange(0, 1).Draw(t, "direction")), From: from, To: from + 1 + number("length"),
 			Train: rapid.IntRange(0, 2).Draw(t, "train"), TrainLength: 1 + number("train length"),
-			Raised: rapid.Bool().Draw(t, "raised"), RunOut: rapid.Bool().Draw(t, "run-out"), RowEnds: []unit.Distance{number("end")},
+			Raised: rapid.Bool().Draw(t, "raised"), RunOut: rapid.Bool().Draw(t, "run-out"),
+			RowEnds: rapid.SliceOfN(rapid.Custom(func(t *rapid.T) unit.Distance { return unit.Distance(rapid.IntRange(0, 60).Draw(t, "at")) }), 0, 3).Draw(t, "ends"),
 		}
 		var declared []Declared
 		for range rapid.IntRange(0, 4).Draw(t, "declarations") {
@@ -94,24 +112,33 @@ func TestCutPointByPoint(t *testing.T) {
 		if at != o.To {
 			t.Fatalf("pieces end at %d: %v", at, pieces)
 		}
+		right := func(d *Declared) bool {
+			return d.Directions.Has(o.Direction) && (d.Trains == nil || slices.Contains(d.Trains, o.Train)) &&
+				(d.Effect == schema.AnyEffect || (d.Effect == schema.Raise) == o.Raised)
+		}
+		// The last millimetre of the row, seen in the direction of travel, lies in the
+		// declaration.
+		endsIn := func(d *Declared, end unit.Distance) bool {
+			if o.Direction == codes.Nominal {
+				end--
+			}
+			return d.From <= end && end < d.To
+		}
 		for s := o.From; s < o.To; s++ {
-			inside := slices.ContainsFunc(declared, func(d Declared) bool {
-				right := d.Directions.Has(o.Direction) && (d.Trains == nil || slices.Contains(d.Trains, o.Train)) &&
-					(d.Effect == schema.AnyEffect || (d.Effect == schema.Raise) == o.Raised)
-				if !right {
-					return false
+			var holding []unit.Distance // ends of the rows that hold the train at s
+			for _, end := range o.RowEnds {
+				if behind := map[codes.Direction]unit.Distance{codes.Nominal: s - end, codes.Reverse: end - 1 - s}[o.Direction]; 0 <= behind && behind < o.TrainLength {
+					holding = append(holding, end)
 				}
-				if d.From <= s && s < d.To {
-					return true
-				}
-				// The last millimetre of the row, seen in the direction of travel,
-				// lies in the declaration.
-				end := o.RowEnds[0]
-				if o.Direction == codes.Nominal {
-					return o.RunOut && d.From <= end-1 && end-1 < d.To && s >= d.To && s < d.To+o.TrainLength
-				}
-				return o.RunOut && d.From <= end && end < d.To && s < d.From && s >= d.From-o.TrainLength
-			})
+			}
+			declaredEnd := func(end unit.Distance) bool {
+				return slices.ContainsFunc(declared, func(d Declared) bool { return right(&d) && endsIn(&d, end) })
+			}
+			inside := slices.ContainsFunc(declared, func(d Declared) bool { return right(&d) && d.From <= s && s < d.To })
+			if !inside && o.RunOut && len(holding) > 0 {
+				undeclared := slices.ContainsFunc(holding, func(end unit.Distance) bool { return !declaredEnd(end) })
+				inside = slices.ContainsFunc(holding, declaredEnd) && !(o.Raised && undeclared)
+			}
 			i := slices.IndexFunc(pieces, func(p Piece) bool { return p.From <= s && s < p.To })
 			if (pieces[i].By != Outside) != inside {
 				t.Fatalf("at %d: inside is %v, pieces %v", s, inside, pieces)
