@@ -104,12 +104,28 @@ func TestCrossings(t *testing.T) {
 		{"over two steps: 450 m at 120 and 450 m at 60", over(cross, texts{"route.toml": oneWay}), texts{"speed.csv": "from_km,to_km,basic,cd150\n0,4.55,100,120\n4.55,10,60,\n"}, []string{"nominal Mill Lane 270>405"}},
 		{"a temporary restriction hides it", over(cross, texts{"route.toml": oneWay, "temporary.csv": temporary("0,10,60")}), texts{"speed.csv": at(140)}, []string{"nominal Mill Lane 270>231 permanent"}},
 		{"and ends", over(cross, texts{"route.toml": oneWay, "temporary.csv": temporary("0,10,60")}), texts{"speed.csv": at(140), "temporary.csv": gone}, []string{"nominal Mill Lane 540>231", "nominal Mill Lane 270>231 permanent"}},
+		{"a strike-in that is shortened with it: 500 m at 140", over(cross, texts{"route.toml": oneWay}), texts{"speed.csv": at(140), "places.csv": place + "5,5.01,,crossing,Mill Lane,500,\n"}, []string{"nominal Mill Lane 270>128 27.0 s needed before"}},
+		{"the strike-in alone", over(cross, texts{"route.toml": oneWay}), texts{"places.csv": place + "5,5.01,,crossing,Mill Lane,800,27\n"}, []string{"nominal Mill Lane 270>240"}},
+		{"the warning time alone", over(cross, texts{"route.toml": oneWay}), texts{"places.csv": place + "5,5.01,,crossing,Mill Lane,900,30\n"}, []string{"nominal Mill Lane 270>270 27.0 s needed before"}},
+		{"a new crossing, where the train is faster", over(cross, texts{"route.toml": oneWay, "places.csv": gone}), texts{"speed.csv": at(140), "places.csv": place + "5,5.01,,crossing,Mill Lane,900,27\n"}, []string{"nominal Mill Lane 270>231 new"}},
+		{"a strike-in that was not given", over(cross, texts{"route.toml": oneWay, "places.csv": place + "5,5.01,,crossing,Mill Lane,,\n"}), texts{"places.csv": place + "5,5.01,,crossing,Mill Lane,900,27\n"}, []string{"nominal Mill Lane -1>270 0.0 s needed before"}},
+		{"its own track before, which differs", over(cross, texts{"route.toml": oneWay, "speed.csv": "from_km,to_km,basic,cd150\n0,4.6,100,120\n4.6,10,100,60\n"}),
+			texts{"route.toml": oneWay + "[[jump]]\narriving_km = 4.5\nleaving_km = 4.7\n", "speed.csv": "from_km,to_km,basic,cd150\n0,10,100,120\n"}, []string{"nominal Mill Lane 324>270"}},
 		{"the strike-in before the route", over(cross, texts{"places.csv": place + "0.8,0.81,nominal,crossing,Mill Lane,900,27\n"}), texts{"speed.csv": at(140)}, nil},
 	}, func(a *diff.Account) string {
 		var lines []string
 		for _, r := range a.Routes {
 			for _, x := range r.Figures.Crossings {
-				lines = append(lines, strings.TrimSpace(fmt.Sprintf("%s %s %d>%d %s", x.Direction, x.Place.Name, x.Before, x.After, map[bool]string{true: "permanent"}[x.Permanent])))
+				text := fmt.Sprintf("%s %s %d>%d", x.Direction, x.Place.Name, x.Before, x.After)
+				switch {
+				case x.Permanent:
+					text += " permanent"
+				case x.Old == nil:
+					text += " new"
+				case x.Old.WarningDS != x.Place.WarningDS:
+					text += fmt.Sprintf(" %d.%d s needed before", x.Old.WarningDS/10, x.Old.WarningDS%10)
+				}
+				lines = append(lines, text)
 			}
 		}
 		return strings.Join(lines, "\n")

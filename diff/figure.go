@@ -47,9 +47,13 @@ type Part struct {
 type Crossing struct {
 	Direction codes.Direction
 	Place     *schema.PlaceRow // of the target
+	Old       *schema.PlaceRow // of the base in the same place; nil where it has none
 	// Permanent: without temporary restrictions. Given where it is another time.
-	Permanent     bool
-	Before, After int64 // tenths of a second, rounded down; Before -1 where the base's track differs here
+	Permanent bool
+	// In tenths of a second, rounded down. Before is that of the base's own strike-in;
+	// where the base has no crossing here, over the same stretch, and -1 where it has
+	// neither.
+	Before, After int64
 }
 
 // Curve is the cant deficiency on a curve for the trains of equal speeds and
@@ -220,19 +224,24 @@ func (p *pair) crossings(f *Figures) {
 	for i := range route.Places {
 		place := &route.Places[i]
 		from, to, ok := impact.Approach(place, p.direction, route.Track.Length())
-		if !ok || !p.seen(from, to) {
+		if !ok {
 			continue
 		}
-		base, onBase := p.onBase(from, to)
+		old := p.crossingBefore(place)
+		altered := old != nil && (old.StrikeIn != place.StrikeIn || old.WarningDS != place.WarningDS)
+		if !altered && !p.seen(from, to) {
+			continue
+		}
+		baseFrom, baseTo, onBase := p.approachBefore(old, from, to)
 		compute := func(sides [2]*profile.Compiler) Crossing {
-			c := Crossing{Direction: p.direction, Place: place, Before: -1, After: fastest(sides[1], from, to)}
+			c := Crossing{Direction: p.direction, Place: place, Old: old, Before: -1, After: fastest(sides[1], from, to)}
 			if onBase {
-				c.Before = fastest(sides[0], base, base+to-from)
+				c.Before = fastest(sides[0], baseFrom, baseTo)
 			}
 			return c
 		}
 		now := compute(p.whole)
-		if now.Before != now.After {
+		if now.Before != now.After || altered {
 			f.Crossings = append(f.Crossings, now)
 		}
 		if p.temporary {
@@ -243,6 +252,26 @@ func (p *pair) crossings(f *Figures) {
 			}
 		}
 	}
+}
+
+// crossingBefore finds the base's crossing in the place of one of the target.
+func (p *pair) crossingBefore(place *schema.PlaceRow) *schema.PlaceRow {
+	for i := range p.route.Base.Places {
+		if old := &p.route.Base.Places[i]; old.Kind == schema.Crossing && samePlace(&old.Row, &place.Row) {
+			return old
+		}
+	}
+	return nil
+}
+
+// approachBefore gives the approach on the base's track: that of its own crossing,
+// else the stretch of the target's, as far as the base has it.
+func (p *pair) approachBefore(old *schema.PlaceRow, from, to unit.Distance) (baseFrom, baseTo unit.Distance, ok bool) {
+	if old != nil {
+		return impact.Approach(old, p.direction, p.route.Base.Track.Length())
+	}
+	base, ok := p.onBase(from, to)
+	return base, base + to - from, ok
 }
 
 func (p *pair) curves(f *Figures, trains []Train) {

@@ -66,14 +66,18 @@ type RunPart struct {
 // CrossingFigure is the approach of the fastest train to a level crossing.
 type CrossingFigure struct {
 	After     int64  `json:"after_ds"`  // tenths of a second, rounded down
-	Before    int64  `json:"before_ds"` // -1 where the base's track differs here
+	Before    int64  `json:"before_ds"` // by the base's own strike-in; -1 where it has no such approach
 	Direction string `json:"direction" jsonschema:"enum=nominal,enum=reverse"`
 	Km        string `json:"km"`
 	Name      string `json:"name"`
 	Permanent bool   `json:"permanent"` // without temporary restrictions
 	Route     string `json:"route"`
-	StrikeIn  int64  `json:"strike_in_mm"`
-	Warning   int64  `json:"warning_ds"` // needed; 0 where it is not given
+	// StrikeInBefore and WarningBefore are those of the base's crossing, 0 where it has
+	// none here or does not give them.
+	StrikeInBefore int64 `json:"strike_in_before_mm"`
+	StrikeIn       int64 `json:"strike_in_mm"`
+	WarningBefore  int64 `json:"warning_before_ds"`
+	Warning        int64 `json:"warning_ds"` // needed; 0 where it is not given
 }
 
 // CurveFigure is the cant deficiency on a curve for trains of equal speeds and

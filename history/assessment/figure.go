@@ -78,10 +78,14 @@ func figuresOf(a *diff.Account, r *diff.Route) (out Figures) {
 		out.Runs = append(out.Runs, run)
 	}
 	for _, x := range r.Figures.Crossings {
-		out.Crossings = append(out.Crossings, CrossingFigure{
+		c := CrossingFigure{
 			Route: r.ID, Direction: x.Direction.String(), Name: x.Place.Name, Km: x.Place.From.String(), Permanent: x.Permanent,
 			Before: x.Before, After: x.After, StrikeIn: int64(x.Place.StrikeIn), Warning: int64(x.Place.WarningDS),
-		})
+		}
+		if x.Old != nil {
+			c.StrikeInBefore, c.WarningBefore = int64(x.Old.StrikeIn), int64(x.Old.WarningDS)
+		}
+		out.Crossings = append(out.Crossings, c)
 	}
 	for _, x := range r.Figures.Curves {
 		f := curveFigure(a, r, &x)

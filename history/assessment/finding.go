@@ -339,11 +339,29 @@ func (c *collector) route(index int) {
 			before[doubtful(r.Base, d)] = true
 		}
 	}
-	for _, d := range doubt.Check(r.Target, c.in.Target, c.in.At) {
+	judged := *c.in.Target
+	judged.Limits = stricter(c.in.Base.Limits, judged.Limits)
+	for _, d := range doubt.Check(r.Target, &judged, c.in.At) {
 		f := doubtful(r.Target, d)
 		f.AlsoInBase = before[f]
 		f.Row = fmt.Sprintf("%s:%d", d.Row.File, d.Row.Line)
 		c.add(ranked{Finding: f})
+	}
+}
+
+// stricter gives the stricter of each limit of two revisions: a change does not
+// switch off the checks that judge it, as it does not accept its own findings.
+func stricter(base, target schema.Limits) schema.Limits {
+	least := func(a, b int) int {
+		if a == 0 || b == 0 {
+			return max(a, b)
+		}
+		return min(a, b)
+	}
+	return schema.Limits{
+		CantExcessMM:    least(base.CantExcessMM, target.CantExcessMM),
+		LargestStep:     unit.Speed(least(int(base.LargestStep), int(target.LargestStep))),
+		ShortestStretch: max(base.ShortestStretch, target.ShortestStretch),
 	}
 }
 

@@ -20,13 +20,19 @@ const crossingWords = "Time from the strike-in point to the crossing for the fas
 	"the sum of length over speed of each step, exactly, rounded down to tenths of a second."
 
 func crossingLine(x assessment.CrossingFigure) string {
-	before := "no such track before"
+	before := "no such approach before"
 	if x.Before >= 0 {
 		before = fmt.Sprintf("%d.%d s before", x.Before/10, x.Before%10)
+		if x.StrikeInBefore != 0 && x.StrikeInBefore != x.StrikeIn {
+			before += ", over " + metres(x.StrikeInBefore) + " m"
+		}
 	}
 	s := fmt.Sprintf("%s, %d.%d s now, over %s m", before, x.After/10, x.After%10, metres(x.StrikeIn))
 	if x.Permanent {
 		s += ", when no temporary restriction is in force"
+	}
+	if x.WarningBefore != 0 && x.WarningBefore != x.Warning {
+		s += fmt.Sprintf("; before, %d.%d s were needed", x.WarningBefore/10, x.WarningBefore%10)
 	}
 	switch {
 	case x.Warning == 0:
