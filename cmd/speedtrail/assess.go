@@ -289,10 +289,27 @@ func (a *app) summarise(doc *assessment.Document, rec render.Record) {
 			a.remark("track %s: %s %s, km %s to %s", t.Fate, r.ID, t.Direction, t.From, t.To)
 		}
 	}
+	a.remarkHidden(doc)
 	if a.outTo != "" {
 		a.remark("written to %s", a.outTo)
 	} else if rec.Number != 0 {
 		a.remark("next: speedtrail report %d --out report.html", rec.Number)
+	}
+}
+
+// remarkHidden says what the rows of CSV, which are the changes of today, leave out.
+func (a *app) remarkHidden(doc *assessment.Document) {
+	if a.format != "csv" {
+		return
+	}
+	n := 0
+	for i := range doc.Computed.Routes {
+		for _, c := range doc.Computed.Routes[i].Masked {
+			n += len(c.Trains)
+		}
+	}
+	if n > 0 {
+		a.remark("! changes that temporary restrictions hide today, and that CSV does not hold: %d (a train and stretch each); the other formats have them", n)
 	}
 }
 

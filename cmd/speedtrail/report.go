@@ -49,6 +49,7 @@ func (a *app) report(ctx context.Context, number int64) error {
 	if err := a.render(doc, rec); err != nil {
 		return err
 	}
+	a.remarkHidden(doc)
 	a.remarkFile()
 	return nil
 }

@@ -131,7 +131,9 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 			a.remark("%s has signed as %s already, in entry %d: %s; the later decision counts", source.Visible(r.Signer), source.Visible(r.Role), r.Entry.Seq, source.Visible(r.Decision))
 		}
 	}
-	a.showForSigning(doc, x)
+	if err := a.showForSigning(doc, x, line, l.ID()); err != nil {
+		return err
+	}
 	for _, role := range x.Policy.Parsed.Roles {
 		if role.Name != s.role && x.Policy.Parsed.Independent(role.Name, s.role) && role.May(statement.Signer) {
 			a.remark("who signs as %s cannot sign this data as %s as well", source.Visible(s.role), source.Visible(role.Name))
@@ -148,19 +150,17 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 }
 
 // showForSigning says what decides, before somebody signs.
-func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment) {
-	fmt.Fprintf(a.err, "%s\n", wrap(source.Visible(render.Verdict(doc)), 80))
-	for _, f := range doc.Computed.Findings {
-		if f.Accepted == "" {
-			fmt.Fprintf(a.err, "! %s\n", wrap(source.Visible(f.ID+" "+f.Route+" "+f.Direction+" "+f.From+" "+f.To+": "+f.Text), 78))
-		}
-	}
-	for _, p := range doc.Computed.Preparers {
-		fmt.Fprintf(a.err, "prepared by %s\n", source.Visible(p.Name+" <"+p.Email+">"))
+func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment, line *approval.Line, ledgerID string) error {
+	style := a.style()
+	style.Color = false // it goes to the standard error
+	if err := render.BeforeSigning(a.err, doc, recordOf(line, ledgerID, x.Number, x.Digest), style); err != nil {
+		return err
 	}
 	for _, email := range x.UnknownPreparers() {
 		fmt.Fprintf(a.err, "! unknown-preparer %s is no person of the policy: the assessment cannot be approved\n", source.Visible(email))
 	}
+	fmt.Fprintf(a.err, "The whole report: speedtrail report %d --out report.html\n\n", x.Number)
+	return nil
 }
 
 // recompute computes an assessment anew and refuses any difference.
