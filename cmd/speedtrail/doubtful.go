@@ -39,7 +39,7 @@ func doubtfulNames(d *schema.Dataset) []string {
 			if from == to {
 				how = "is the same place as"
 			}
-			add(at, "%s: to_km %s %s from_km %s along route %s", what, s.To, how, s.From, id)
+			add(at, "%s: to_km %s %s from_km %s along route %s; where the track has gone since, nothing need be done", what, s.To, how, s.From, id)
 		}
 	}
 	for _, q := range d.Requests {

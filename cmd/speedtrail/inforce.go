@@ -211,6 +211,14 @@ func routeIDs(d *schema.Dataset) []string {
 	return ids
 }
 
+// serviceAdvice says what to do about each kind of finding.
+var serviceAdvice = map[string]string{
+	history.ServiceUnapproved: "Have the data looked at and signed now, or take it out of service; that it ran without approval stays on record.",
+	history.ServiceUndoes:     "Look at what the revision before had changed; assess from that one, and have it signed.",
+	history.ServiceCorrected:  "Ask who took the record back, and what ran then; both records stay.",
+	history.NeverInService:    "Record it when it goes into service: speedtrail inforce record REV --since T.",
+}
+
 // serviceRecord is the JSON form of an in-force record.
 type serviceRecord struct {
 	Entry    int64    `json:"entry"`
@@ -343,8 +351,11 @@ func (a *app) inforceLog(ctx context.Context) error {
 		if len(records) == 0 {
 			fmt.Fprintf(w, "No revision is recorded as in service. Record one with: speedtrail inforce record REV --since T\n")
 		}
-		for _, f := range findings {
+		for i, f := range findings {
 			fmt.Fprintf(w, "%s\n", wrap("! "+f.ID+": "+source.Visible(f.Text), a.style().Width))
+			if i == len(findings)-1 || findings[i+1].ID != f.ID {
+				fmt.Fprintf(w, "  %s\n", strings.ReplaceAll(wrap(serviceAdvice[f.ID], a.style().Width-2), "\n", "\n  "))
+			}
 		}
 		for _, p := range problems {
 			fmt.Fprintf(w, "%s\n", wrap("! does not count: "+source.Visible(p.Error()), a.style().Width))

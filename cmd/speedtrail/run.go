@@ -164,9 +164,10 @@ func wrap(text string, width int) string {
 func arguments(least, most int) cobra.PositionalArgs {
 	return func(c *cobra.Command, args []string) error {
 		if len(args) < least || len(args) > most {
-			problem := fmt.Sprintf("%d arguments are given, at least %d are needed", len(args), least)
-			if len(args) > most {
-				problem = fmt.Sprintf("%d arguments are given, at most %d are allowed", len(args), most)
+			problem := fmt.Sprintf("%d %s given, at most %d allowed", len(args), plural(len(args), "argument is", "arguments are"), most)
+			if len(args) < least {
+				// The line of use names them in their order.
+				problem = joined(strings.Fields(c.Use)[1+len(args):1+least]) + " is missing"
 			}
 			return badCall("usage: "+c.UseLine(), "%s", problem)
 		}

@@ -109,7 +109,7 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	}
 	x := line.Assessment(number)
 	if x == nil || x.Policy.Parsed == nil {
-		return refused(fmt.Errorf("the base of assessment %d has no valid policy (signoff.toml and allowed_signers)", number))
+		return badCall("README.md has a whole signoff.toml; speedtrail anchor puts the first policy in force", "the base of assessment %d has no valid policy (signoff.toml and allowed_signers): nothing was recorded", number)
 	}
 	key, done, err := s.signerKey(a, x.Policy.Parsed)
 	if err != nil {

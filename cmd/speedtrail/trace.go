@@ -68,8 +68,10 @@ time; --no-index does without and gives the same answer.`,
 			switch {
 			case call.rev == workingTree:
 				return badCall("commit first, or ask for HEAD", "a trace goes from commit to commit, the working tree is none")
-			case call.route == "" || point == stretch || stretch && (call.from == "" || call.to == ""):
-				return badCall("usage: "+c.UseLine(), "--route is needed, and --at for a point or --from and --to for a stretch")
+			case call.route == "":
+				return badCall("usage: "+c.UseLine(), "--route is missing")
+			case point == stretch || stretch && (call.from == "" || call.to == ""):
+				return badCall("usage: "+c.UseLine(), "either --at is needed, for a point, or --from and --to, for a stretch")
 			}
 			return a.trace(c.Context(), call)
 		},
