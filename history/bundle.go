@@ -70,9 +70,9 @@ func (e *ImportError) Error() string { return fmt.Sprintf("line %d: %v", e.Line,
 // Unwrap gives what is wrong.
 func (e *ImportError) Unwrap() error { return e.Err }
 
-// Import makes a ledger from an export. A file that exists is refused; where the
-// import is faulty nothing is left of it. The error is an *ImportError or one of
-// the ledger.
+// Import makes a ledger from an export. A file that holds something is refused;
+// where the import is faulty nothing is left of it, or an empty file on a file
+// system without links. The error is an *ImportError or one of the ledger.
 func Import(ctx context.Context, file string, r io.Reader) (chain.Head, error) {
 	return ledger.Restore(ctx, file, readExport(ctx, r))
 }

@@ -3,7 +3,9 @@ package ledger
 import (
 	"context"
 	"database/sql"
+	"errors"
 	"fmt"
+	"os"
 	"testing"
 	"time"
 
@@ -15,6 +17,12 @@ import (
 func WithVFS(o Options, name string) Options {
 	o.vfs = name
 	return o
+}
+
+// WithoutLinks has files have one name only, as some file systems do.
+func WithoutLinks() (back func()) {
+	link = func(string, string) error { return errors.ErrUnsupported }
+	return func() { link = os.Link }
 }
 
 // FormatOf is the format of an open ledger's file.

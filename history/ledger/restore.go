@@ -2,9 +2,11 @@ package ledger
 
 import (
 	"context"
+	"crypto/rand"
 	"database/sql"
 	"errors"
 	"fmt"
+	"io/fs"
 	"iter"
 	"os"
 	"path/filepath"
@@ -24,16 +26,110 @@ type Restored struct {
 	Rows       []Row
 }
 
-// Restore writes a ledger anew from entries, all in one transaction: the file
-// holds all of them, or is removed again. Each entry is checked against the one
-// before. A file that exists is refused.
+// link gives a file a second name, and fails where there is one by that name.
+var link = os.Link
+
+// Restore writes a ledger anew from entries: the file holds all of them, or there
+// is none. Each entry is checked against the one before. A file that holds
+// something is refused, also one that another process makes meanwhile: nothing is
+// written over or removed that this call has not made.
 func Restore(ctx context.Context, file string, entries iter.Seq2[Restored, error]) (head chain.Head, err error) {
-	if _, err := os.Lstat(file); err == nil {
-		return head, fail(ErrExists, nil)
-	}
 	if err := os.MkdirAll(filepath.Dir(file), 0o755); err != nil {
 		return head, fail(ErrReadOnly, err)
 	}
+	here, err := standing(file)
+	if err != nil {
+		return head, err
+	}
+	if here {
+		return fill(ctx, file, entries)
+	}
+	temporary, err := beside(file)
+	if err != nil {
+		return head, err
+	}
+	// SQLite takes the journal away itself, unless it was stopped by an error.
+	defer os.Remove(temporary + "-journal")
+	defer os.Remove(temporary)
+	probe := temporary + "-link"
+	if err := link(temporary, probe); err != nil {
+		// A file system without a second name for a file: the place itself is filled,
+		// and where that fails an empty file stays. Others may wait for it by now,
+		// and would write into a file that is gone.
+		return fill(ctx, file, entries)
+	}
+	if err := os.Remove(probe); err != nil {
+		return head, fail(ErrReadOnly, err)
+	}
+	if head, err = fill(ctx, temporary, entries); err != nil {
+		return chain.Head{}, err
+	}
+	if err := link(temporary, file); err != nil {
+		if errors.Is(err, fs.ErrExist) {
+			return chain.Head{}, fail(ErrExists, nil)
+		}
+		return chain.Head{}, fail(ErrReadOnly, err)
+	}
+	os.Remove(temporary)
+	syncFolder(file)
+	return head, nil
+}
+
+// standing tells whether something stands in the place of a ledger that only
+// SQLite can judge, with its locks: an empty file, or what a process left that was
+// stopped while it made the ledger. What is no such thing is refused.
+func standing(file string) (bool, error) {
+	info, err := os.Lstat(file)
+	if err != nil && !errors.Is(err, fs.ErrNotExist) {
+		return false, fail(ErrReadOnly, err)
+	}
+	there := err == nil
+	if there && !info.Mode().IsRegular() {
+		return false, fail(ErrExists, nil)
+	}
+	// A journal that stays behind would be played back into a file that is put
+	// beside it. Before an empty one SQLite removes it.
+	for _, ending := range []string{"-journal", "-wal"} {
+		if _, err := os.Lstat(file + ending); err == nil {
+			return true, nil
+		}
+	}
+	if there && info.Size() > 0 {
+		return false, fail(ErrExists, nil)
+	}
+	return there, nil
+}
+
+// beside makes an empty file in the folder of another one, with the rights that a
+// ledger has. What stays of it after a kill disturbs nobody.
+func beside(file string) (string, error) {
+	name := filepath.Join(filepath.Dir(file), ".ledger-import-"+rand.Text())
+	f, err := os.OpenFile(name, os.O_CREATE|os.O_EXCL|os.O_WRONLY, 0o644)
+	if err != nil {
+		var inner *fs.PathError
+		if errors.As(err, &inner) { // nobody knows the name of the new file
+			err = fmt.Errorf("folder %s: %w", filepath.Dir(file), inner.Err)
+		}
+		return "", fail(ErrReadOnly, err)
+	}
+	if err := f.Close(); err != nil {
+		return "", fail(ErrReadOnly, err)
+	}
+	return name, nil
+}
+
+// syncFolder has the new name outlive a loss of power. Not every system can do
+// that, and the ledger is whole without.
+func syncFolder(file string) {
+	if d, err := os.Open(filepath.Dir(file)); err == nil {
+		_ = d.Sync()
+		d.Close()
+	}
+}
+
+// fill writes entries into a file that holds nothing, all in one transaction: a
+// file that holds something by the time it is locked is left as it is.
+func fill(ctx context.Context, file string, entries iter.Seq2[Restored, error]) (head chain.Head, err error) {
 	db, err := sql.Open("sqlite3", address(file, Options{Create: true}))
 	if err != nil {
 		return head, classify(err)
@@ -43,17 +139,21 @@ func Restore(ctx context.Context, file string, entries iter.Seq2[Restored, error
 		if closed := l.Close(); err == nil {
 			err = classify(closed)
 		}
-		if err != nil {
-			os.Remove(file)
-		}
 	}()
 	if l.conn, err = db.Conn(ctx); err != nil {
 		return head, classify(err)
 	}
-	if err := l.exec(ctx, "PRAGMA trusted_schema = OFF", "PRAGMA foreign_keys = ON", "PRAGMA recursive_triggers = ON", "PRAGMA synchronous = EXTRA", "PRAGMA journal_mode = DELETE"); err != nil {
+	if err := l.exec(ctx, "PRAGMA trusted_schema = OFF", "PRAGMA cell_size_check = ON", "PRAGMA foreign_keys = ON", "PRAGMA recursive_triggers = ON", "PRAGMA synchronous = EXTRA"); err != nil {
 		return head, classify(err)
 	}
 	err = l.transaction(ctx, func() error {
+		empty, err := l.check(ctx)
+		if errors.Is(err, ErrForeign) || errors.Is(err, ErrNewer) || err == nil && !empty {
+			return fail(ErrExists, nil)
+		}
+		if err != nil {
+			return err
+		}
 		if err := migrate(ctx, l.conn, 0, Format); err != nil {
 			return err
 		}

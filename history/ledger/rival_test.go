@@ -40,6 +40,12 @@ func rival(work, file, name string, number int) {
 	ctx := context.Background()
 	o := ledger.Options{Now: clock, Wait: time.Minute}
 	switch work {
+	case "import in place":
+		ledger.WithoutLinks()
+		fallthrough
+	case "import":
+		tell(history.Import(ctx, file, os.Stdin))
+		return
 	case "read":
 		o.ReadOnly = true
 	case "make":
