@@ -74,7 +74,13 @@ func (e *ImportError) Unwrap() error { return e.Err }
 // where the import is faulty nothing is left of it, or an empty file on a file
 // system without links. The error is an *ImportError or one of the ledger.
 func Import(ctx context.Context, file string, r io.Reader) (chain.Head, error) {
-	return ledger.Restore(ctx, file, readExport(ctx, r))
+	head, err := ledger.Restore(ctx, file, readExport(ctx, r))
+	var wrong *ledger.EntryError
+	if errors.As(err, &wrong) {
+		// Every entry has a line, and they are numbered in their order.
+		err = &ImportError{int(wrong.Seq), wrong.Err}
+	}
+	return head, err
 }
 
 func readExport(ctx context.Context, r io.Reader) iter.Seq2[ledger.Restored, error] {

@@ -127,7 +127,7 @@ func TestImportRefuses(t *testing.T) {
 	without := func(n int) []string { return append(append([]string{}, lines[:n-1]...), lines[n:]...) }
 	for name, c := range map[string]struct {
 		lines []string
-		line  int // 0: the whole
+		line  int
 		text  string
 	}{
 		"a body altered":     {edit(5, "looked at it", "looked it at"), 5, "entry 5 does not have the hash of its content"},
@@ -144,13 +144,13 @@ func TestImportRefuses(t *testing.T) {
 		"a blank line":       {append([]string{lines[0], "\n"}, lines[1:]...), 2, "it is blank, and entries follow it"},
 		"no JSON":            {append([]string{"entries\n"}, lines...), 1, ""},
 		"half a line":        {append(append([]string{}, lines[:16]...), lines[16][:100]), 17, ""},
-		"nothing":            {nil, 0, "no entry was given"},
+		"nothing":            {nil, 1, "no entry was given"},
 	} {
 		t.Run(name, func(t *testing.T) {
 			file := filepath.Join(quickDir(t), "copy.db")
 			_, err := history.Import(t.Context(), file, strings.NewReader(strings.Join(c.lines, "")))
 			var at *history.ImportError
-			if err == nil || !strings.Contains(err.Error(), c.text) || (c.line > 0) != errors.As(err, &at) || c.line > 0 && at.Line != c.line {
+			if err == nil || !strings.Contains(err.Error(), c.text) || !errors.As(err, &at) || at.Line != c.line {
 				t.Errorf("got %v, want line %d and %q", err, c.line, c.text)
 			}
 			if _, err := os.Lstat(file); !errors.Is(err, os.ErrNotExist) {
@@ -160,6 +160,44 @@ func TestImportRefuses(t *testing.T) {
 	}
 	if _, err := history.Import(t.Context(), filepath.Join(quickDir(t), "copy.db"), strings.NewReader(strings.TrimSuffix(strings.Join(lines, ""), "\n"))); err != nil {
 		t.Errorf("a last line without its end is refused: %v", err)
+	}
+}
+
+// The same for entries that follow each other as they should and make no ledger.
+func TestImportRefusesEntries(t *testing.T) {
+	first := `ledger 2026-03-01T08:00:00Z {"format":1,"id":"` + ledgerID + `"}`
+	signed := ""
+	for e, err := range openLedger(t, baseLedger(t)).Entries(t.Context(), 1) {
+		if err != nil {
+			t.Fatal(err)
+		}
+		if e.Kind == chain.SignOff {
+			signed = string(e.Kind) + " " + e.Time + " " + string(e.Body)
+		}
+	}
+	for name, c := range map[string]struct {
+		entries []string
+		line    int
+		text    string
+	}{
+		"a first one of another kind":   {[]string{signed}, 1, "it is of kind sign-off"},
+		"a first one without an id":     {[]string{`ledger 2026-03-01T08:00:00Z {"format":1}`}, 1, "the first entry has no id"},
+		"a first one of a new version":  {[]string{`ledger 2026-03-01T08:00:00Z {"format":9}`}, 1, "entries of form 9"},
+		"a second ledger":               {[]string{first, first}, 2, "it is of kind ledger"},
+		"a body that is not canonical":  {[]string{first, `note 2026-03-01T08:00:00Z {"b":1, "a":2}`}, 2, "the body is"},
+		"a sign-off of what is missing": {[]string{first, signed}, 2, "it does not go with those before it"},
+	} {
+		t.Run(name, func(t *testing.T) {
+			file := filepath.Join(quickDir(t), "copy.db")
+			_, err := history.Import(t.Context(), file, bytes.NewReader(chainedLines([]byte(strings.Join(c.entries, "\n")))))
+			var at *history.ImportError
+			if !errors.As(err, &at) || at.Line != c.line || !strings.Contains(err.Error(), c.text) {
+				t.Errorf("got %v, want line %d and %q", err, c.line, c.text)
+			}
+			if _, err := os.Lstat(file); !errors.Is(err, os.ErrNotExist) {
+				t.Error("a file is left behind")
+			}
+		})
 	}
 }
 

@@ -11,6 +11,8 @@ import (
 	"os"
 	"path/filepath"
 
+	"github.com/mattn/go-sqlite3"
+
 	"speedtrail/history/canon"
 	"speedtrail/history/chain"
 )
@@ -26,12 +28,24 @@ type Restored struct {
 	Rows       []Row
 }
 
+// EntryError is what is wrong with the entries that a ledger was to be made of.
+type EntryError struct {
+	Seq int64 // of the entry; of the first one where there is none
+	Err error
+}
+
+// Error gives the entry and what is wrong with it.
+func (e *EntryError) Error() string { return fmt.Sprintf("entry %d: %v", e.Seq, e.Err) }
+
+// Unwrap gives what is wrong.
+func (e *EntryError) Unwrap() error { return e.Err }
+
 // link gives a file a second name, and fails where there is one by that name.
 var link = os.Link
 
 // Restore writes a ledger anew from entries: the file holds all of them, or there
-// is none. Each entry is checked against the one before. A file that holds
-// something is refused, also one that another process makes meanwhile: nothing is
+// is none. Each entry is checked against the one before; what is wrong with one is
+// an *EntryError. A file that holds something is refused, also one that another process makes meanwhile: nothing is
 // written over or removed that this call has not made.
 func Restore(ctx context.Context, file string, entries iter.Seq2[Restored, error]) (head chain.Head, err error) {
 	if err := os.MkdirAll(filepath.Dir(file), 0o755); err != nil {
@@ -165,40 +179,59 @@ func fill(ctx context.Context, file string, entries iter.Seq2[Restored, error]) 
 			if err != nil {
 				return err
 			}
-			if err := chain.Check(head, e.Entry); err != nil {
-				return err
-			}
-			if err := canon.Check(e.Body); err != nil {
-				return fmt.Errorf("entry %d: the body is %w", e.Seq, err)
-			}
-			if (e.Seq == 1) != (e.Kind == chain.Ledger) {
-				return fmt.Errorf("entry %d is of kind %s", e.Seq, e.Kind)
-			}
-			if e.Seq == 1 {
-				if _, err := idOf(e.Entry); err != nil {
-					return err
-				}
-			}
-			if err := l.insertEntry(ctx, e.Entry); err != nil {
-				return err
+			if err := fits(head, e.Entry); err != nil {
+				return &EntryError{e.Seq, err}
 			}
 			if e.Assessment != nil {
 				number++
-				if err := l.insertRows(ctx, number, e.Seq, *e.Assessment); err != nil {
-					return err
-				}
 			}
-			for _, r := range e.Rows {
-				if err := l.insertRow(ctx, e.Seq, r); err != nil {
-					return err
-				}
+			if err := l.insertRestored(ctx, number, e); err != nil {
+				return err
 			}
 			head = e.Head()
 		}
 		if head.Seq == 0 {
-			return errors.New("no entry was given")
+			return &EntryError{1, errors.New("no entry was given")}
 		}
 		return nil
 	})
 	return head, err
+}
+
+// fits checks what an entry has to be to follow a head, whatever it says.
+func fits(head chain.Head, e chain.Entry) error {
+	if err := chain.Check(head, e); err != nil {
+		return fmt.Errorf("it %w", errors.Unwrap(err))
+	}
+	if err := canon.Check(e.Body); err != nil {
+		return fmt.Errorf("the body is %w", err)
+	}
+	if (e.Seq == 1) != (e.Kind == chain.Ledger) {
+		return fmt.Errorf("it is of kind %s", e.Kind)
+	}
+	if e.Seq == 1 {
+		_, err := idOf(e)
+		return err
+	}
+	return nil
+}
+
+// insertRestored writes an entry with its rows; number is that of its assessment,
+// where it is one.
+func (l *Ledger) insertRestored(ctx context.Context, number int64, e Restored) error {
+	err := l.insertEntry(ctx, e.Entry)
+	if err == nil && e.Assessment != nil {
+		err = l.insertRows(ctx, number, e.Seq, *e.Assessment)
+	}
+	for _, r := range e.Rows {
+		if err == nil {
+			err = l.insertRow(ctx, e.Seq, r)
+		}
+	}
+	var s sqlite3.Error
+	if errors.As(err, &s) && s.Code == sqlite3.ErrConstraint {
+		// A sign-off of no assessment, a digest that is there already, and the like.
+		return &EntryError{e.Seq, fmt.Errorf("it does not go with those before it: %w", err)}
+	}
+	return err
 }
