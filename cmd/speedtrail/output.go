@@ -122,6 +122,14 @@ func writeFile(name string, result func(io.Writer) error) (err error) {
 	return os.Rename(f.Name(), name)
 }
 
+// writeBytes is writeFile for what is there already.
+func writeBytes(name string, content []byte) error {
+	return writeFile(name, func(w io.Writer) error {
+		_, err := w.Write(content)
+		return err
+	})
+}
+
 // style is how text looks where it goes to.
 func (a *app) style() render.Style {
 	s := render.Style{Width: 80, Color: a.color == "always"}

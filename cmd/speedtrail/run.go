@@ -110,10 +110,10 @@ remarks to standard error.`,
 	root.AddCommand(a.demoCommand(), a.validateCommand(), a.profileCommand(), a.assessCommand(), a.reportCommand(), a.registerCommand(), a.traceCommand(),
 		a.signCommand(), a.anchorCommand(), a.revokeCommand(), a.inforceCommand(), a.verifyCommand(), a.exportCommand(), a.importCommand())
 	root.CompletionOptions.HiddenDefaultCmd = true
-	root.PersistentPreRunE = func(*cobra.Command, []string) error {
+	root.PersistentPreRunE = func(c *cobra.Command, _ []string) error {
 		switch a.color {
 		case "auto", "always", "never":
-			return nil
+			return a.spareLedger(c)
 		}
 		return badCall("--color is auto, always or never", "unknown value %q for --color", a.color)
 	}

@@ -180,11 +180,11 @@ func (s *signing) finish(a *app, statement signoff.Statement, key ssh.Signer) (*
 	if s.write == "" {
 		return &signed{text, signature}, nil
 	}
-	if err := os.WriteFile(s.write, text, 0o644); err != nil {
+	if err := writeBytes(s.write, text); err != nil {
 		return nil, fmt.Errorf("the statement was not written: %w", err)
 	}
 	if signature != nil {
-		if err := os.WriteFile(s.write+".sig", signature, 0o644); err != nil {
+		if err := writeBytes(s.write+".sig", signature); err != nil {
 			return nil, fmt.Errorf("the signature was not written: %w", err)
 		}
 		a.remark("written to %s and %s.sig; nothing was recorded", s.write, s.write)
