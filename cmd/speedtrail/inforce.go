@@ -97,14 +97,9 @@ voids it.`,
 			if c.Flags().Changed("routes") && len(routes) == 0 {
 				return badCall("leave it out for the whole network", "--routes names no route")
 			}
-			corrects := approval.CorrectsNothing
-			switch {
-			case replaces > 0 && voids > 0:
-				return badCall("choose one", "--replaces and --voids are both given")
-			case replaces > 0:
-				corrects = fmt.Sprintf("%s %d", approval.Replaces, replaces)
-			case voids > 0:
-				corrects = fmt.Sprintf("%s %d", approval.Voids, voids)
+			corrects, err := correctionOf(c, replaces, voids)
+			if err != nil {
+				return err
 			}
 			return a.inforceRecord(c.Context(), args[0], t, routes, corrects, &s)
 		},
@@ -115,6 +110,25 @@ voids it.`,
 	c.Flags().Int64Var(&replaces, "replaces", 0, "the `entry` of a record that this one replaces")
 	c.Flags().Int64Var(&voids, "voids", 0, "the `entry` of a record that was wrong and that nothing takes the place of")
 	return c
+}
+
+// correctionOf says what a record corrects, as statements write it. A number that
+// names no entry would otherwise leave the record standing that it was to correct.
+func correctionOf(c *cobra.Command, replaces, voids int64) (string, error) {
+	given := func(name string) bool { return c.Flags().Changed(name) }
+	switch {
+	case given("replaces") && given("voids"):
+		return "", badCall("choose one", "--replaces and --voids are both given")
+	case given("replaces") && replaces < 1:
+		return "", badCall("speedtrail inforce lists the records with their entries", "--replaces %d is the number of no entry", replaces)
+	case given("voids") && voids < 1:
+		return "", badCall("speedtrail inforce lists the records with their entries", "--voids %d is the number of no entry", voids)
+	case given("replaces"):
+		return fmt.Sprintf("%s %d", approval.Replaces, replaces), nil
+	case given("voids"):
+		return fmt.Sprintf("%s %d", approval.Voids, voids), nil
+	}
+	return approval.CorrectsNothing, nil
 }
 
 func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, routes []string, corrects string, s *signing) error {

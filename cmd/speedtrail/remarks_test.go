@@ -46,6 +46,34 @@ func TestRemarks(t *testing.T) {
 	}
 }
 
+// A correction of what cannot be an entry is not taken for none.
+func TestCorrectionOfNoEntry(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80}, []time.Time{at, at.Add(time.Hour)})
+	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	key := func(name string) string { return filepath.Join(keys, name) }
+	call(t, in("anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y")...).want(t, 0)
+	record := in("inforce", "record", "c0", "--since", "2026-03-03T00:00:00Z", "--reason", "start", "--key", key("cem"), "-y")
+	call(t, record...).want(t, 0)
+	for _, c := range []struct {
+		text string
+		args []string
+	}{
+		{"--voids -3 is", []string{"--voids", "-3"}}, {"--voids 0 is", []string{"--voids", "0"}},
+		{"--replaces -1 is", []string{"--replaces=-1"}}, {"--replaces 0 is", []string{"--replaces", "0"}},
+		{"both given", []string{"--replaces", "3", "--voids", "0"}},
+	} {
+		if got := call(t, append(record, c.args...)...); got.status != statusInput || !strings.Contains(got.errors, c.text) || !strings.Contains(got.errors, "hint:") {
+			t.Errorf("%q: status %d\n%s", c.args, got.status, got.errors)
+		}
+	}
+	if got := call(t, in("verify")...).want(t, 0); !strings.Contains(got.out, "head 3:") {
+		t.Errorf("something was recorded: %s", got.out)
+	}
+	call(t, append(record, "--replaces", "3")...).want(t, 0)
+}
+
 // An export that an editor has given a blank line at its end is one.
 func TestBlankLineInExport(t *testing.T) {
 	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
