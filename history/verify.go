@@ -66,21 +66,21 @@ type VerifyOptions struct {
 	Progress func(done, total int)
 }
 
-// Verify re-derives everything that a ledger says. Problems do not stop it; the
-// error is one of the ledger's file or of the context.
+// Verify re-derives everything that a ledger says. Problems do not stop it, but for
+// a place where the file cannot be read any further. The error is one of reaching
+// the file, or of the context.
 func Verify(ctx context.Context, l *ledger.Ledger, o VerifyOptions) (*Result, error) {
 	v := &verifier{ctx: ctx, l: l, o: o, r: &Result{}}
-	if err := v.file(); err != nil {
-		return nil, err
-	}
-	if err := v.entries(); err != nil {
-		return nil, err
-	}
-	if err := v.heads(); err != nil {
-		return nil, err
-	}
-	if err := v.git(); err != nil {
-		return nil, err
+	for _, step := range []func() error{v.file, v.entries, v.heads, v.git} {
+		err := step()
+		if errors.Is(err, ledger.ErrDamaged) {
+			v.problem(0, "file", "%v", err)
+			v.stopped = true
+			break
+		}
+		if err != nil {
+			return nil, err
+		}
 	}
 	v.summary()
 	slices.SortStableFunc(v.r.Problems, func(a, b Problem) int { return int(a.Entry - b.Entry) })
@@ -96,6 +96,7 @@ type verifier struct {
 	// assessments counts them: their numbers are 1, 2, ... in the order of entries.
 	assessments int64
 	docs        []recorded
+	stopped     bool // the file could not be read to its end
 	lock        sync.Mutex
 }
 
@@ -354,6 +355,10 @@ func (v *verifier) statements() error {
 func (v *verifier) summary() {
 	wrong := func(kinds ...string) bool {
 		return slices.ContainsFunc(v.r.Problems, func(p Problem) bool { return slices.Contains(kinds, p.Kind) })
+	}
+	if v.stopped {
+		v.r.Unproved = append(v.r.Unproved, "everything that was to be read after the place where the file is damaged")
+		return
 	}
 	var proved []string
 	if !wrong("file", "chain", "body", "rows") {

@@ -2,7 +2,9 @@ package main
 
 import (
 	"database/sql"
+	"os"
 	"path/filepath"
+	"regexp"
 	"strings"
 	"testing"
 	"time"
@@ -99,6 +101,83 @@ func TestAlteredLedger(t *testing.T) {
 			// Proved is only what agrees.
 			if name == "a speed" && (!strings.Contains(got.out, "computed anew the assessment has the digest") || !strings.Contains(got.out, "proved: 0 of 1 assessments were computed anew")) {
 				t.Errorf("verify: %s", got.out)
+			}
+		})
+	}
+}
+
+// past alters a ledger past its schema, whose text stands there again afterwards.
+func past(t *testing.T, file, table, column, statement string) {
+	t.Helper()
+	db, err := sql.Open("sqlite3", file)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer db.Close()
+	var text string
+	if err := db.QueryRow("SELECT sql FROM sqlite_schema WHERE name = ?", table).Scan(&text); err != nil {
+		t.Fatal(err)
+	}
+	loose := regexp.MustCompile(`(?m)^(  `+column+` +\w+) NOT NULL`).ReplaceAllString(text, "$1")
+	if loose == text {
+		t.Fatalf("the column %s may be NULL already\n%s", column, text)
+	}
+	schema := func(text string) {
+		t.Helper()
+		db, err := sql.Open("sqlite3", file)
+		if err != nil {
+			t.Fatal(err)
+		}
+		defer db.Close()
+		db.SetMaxOpenConns(1)
+		for _, s := range []string{"PRAGMA writable_schema = ON", "UPDATE sqlite_schema SET sql = '" + strings.ReplaceAll(text, "'", "''") + "' WHERE name = '" + table + "'"} {
+			if _, err := db.Exec(s); err != nil {
+				t.Fatal(err)
+			}
+		}
+	}
+	schema(loose)
+	alter(t, file, statement)
+	schema(text)
+}
+
+// A value that the schema does not allow is damage, whichever it is: verify says
+// so with its own status, everything else refuses the ledger.
+func TestNullInLedger(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80, 100}, []time.Time{at, at.Add(time.Hour), at.Add(2 * time.Hour)})
+	key := func(name string) string { return filepath.Join(keys, name) }
+	template := filepath.Join(repo, ".git", "speedtrail", "ledger.db")
+	call(t, "--repo", repo, "anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y").want(t, 0)
+	call(t, "--repo", repo, "assess", "c0", "c1").want(t, 1)
+	content := readFileOf(t, template)
+	for _, c := range []struct{ table, column, where string }{
+		{"entry", "time", "seq = 3"}, {"entry", "kind", "seq = 2"}, {"entry", "previous", "seq = 3"}, {"entry", "hash", "seq = 3"}, {"entry", "body", "seq = 3"},
+		{"entry", "hash", "seq = 1"}, {"entry", "time", "seq = 1"},
+		{"assessment", "digest", "number = 1"}, {"assessment", "entry", "number = 1"}, {"assessment", "base", "number = 1"}, {"assessment", "findings", "number = 1"},
+		{"anchor", "role", "place = 2"},
+	} {
+		t.Run(c.table+"."+c.column+" "+c.where, func(t *testing.T) {
+			file := filepath.Join(t.TempDir(), "ledger.db")
+			if err := os.WriteFile(file, content, 0o600); err != nil {
+				t.Fatal(err)
+			}
+			past(t, file, c.table, c.column, "UPDATE "+c.table+" SET "+c.column+" = NULL WHERE "+c.where)
+			in := func(args ...string) []string { return append([]string{"--repo", repo, "--ledger", file}, args...) }
+			for _, format := range []string{"text", "json"} {
+				got := call(t, in("verify", "--format", format)...)
+				if got.status != statusFinding || !strings.Contains(got.out, "NULL") || strings.Contains(got.out, "Nothing is wrong") || strings.Contains(got.out, `"good": true`) {
+					t.Errorf("verify: status %d\n%s%s", got.status, got.out, got.errors)
+				}
+			}
+			if c.table != "entry" || c.column == "body" {
+				return
+			}
+			for _, args := range [][]string{{"register"}, {"export"}, {"inforce"}, {"assess", "c1", "c2"}} {
+				if got := call(t, in(args...)...); got.status != statusFailed || !strings.Contains(got.errors, "the ledger's file is damaged") {
+					t.Errorf("%q: status %d\n%s%s", args, got.status, got.out, got.errors)
+				}
 			}
 		})
 	}

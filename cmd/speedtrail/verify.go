@@ -147,6 +147,10 @@ func printVerification(w io.Writer, r *history.Result, id string, width int) err
 	if id == "" {
 		return nil
 	}
-	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\n", id, r.Head)
+	fmt.Fprintf(w, "\nledger %s\n", id)
+	if r.Head.Seq == 0 { // it was not reached
+		return nil
+	}
+	_, err := fmt.Fprintf(w, "head %s\n", r.Head)
 	return err
 }

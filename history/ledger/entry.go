@@ -21,13 +21,21 @@ func (l *Ledger) Head(ctx context.Context) (chain.Head, error) {
 
 // Entry gives the entry of a number.
 func (l *Ledger) Entry(ctx context.Context, seq int64) (chain.Entry, error) {
-	var e chain.Entry
-	err := l.conn.QueryRowContext(ctx, "SELECT seq, time, kind, body, previous, hash FROM entry WHERE seq = ?", seq).
-		Scan(&e.Seq, &e.Time, &e.Kind, &e.Body, &e.Previous, &e.Hash)
+	e, err := scanEntry(l.conn.QueryRowContext(ctx, "SELECT seq, time, kind, body, previous, hash FROM entry WHERE seq = ?", seq))
 	if errors.Is(err, sql.ErrNoRows) {
 		return e, fail(ErrDamaged, fmt.Errorf("entry %d is missing", seq))
 	}
-	return e, classify(err)
+	return e, err
+}
+
+// scanEntry reads the row of an entry.
+func scanEntry(row *sql.Row) (e chain.Entry, err error) {
+	scanned := row.Scan(&e.Seq, &e.Time, &e.Kind, &e.Body, &e.Previous, &e.Hash)
+	err = classify(scanned)
+	if errors.Is(err, ErrDamaged) && e.Seq > 0 {
+		err = fail(ErrDamaged, fmt.Errorf("entry %d cannot be read: %w", e.Seq, scanned))
+	}
+	return e, err
 }
 
 // insertEntry appends an entry. It is called inside a transaction that has read

@@ -2,6 +2,7 @@ package ledger
 
 import (
 	"errors"
+	"strings"
 	"syscall"
 
 	"github.com/mattn/go-sqlite3"
@@ -58,11 +59,18 @@ func Damaged(err error) error { return fail(ErrDamaged, err) }
 
 func fail(class, err error) error { return &Error{class, err} }
 
-// classify sorts an error of SQLite into a class. One that has a class keeps it.
+// classify sorts an error of SQLite, or of reading a row, into a class. One that has a class keeps it.
 func classify(err error) error {
 	var s sqlite3.Error
 	var classed *Error
-	if err == nil || errors.As(err, &classed) || !errors.As(err, &s) {
+	switch {
+	case err == nil || errors.As(err, &classed):
+		return err
+	case strings.HasPrefix(err.Error(), "sql: Scan error"):
+		// A value that the schema does not allow, NULL for the most part: it was written
+		// past it. The package database/sql has no type for that error.
+		return fail(ErrDamaged, err)
+	case !errors.As(err, &s):
 		return err
 	}
 	switch s.Code {

@@ -127,14 +127,12 @@ func (l *Ledger) Entries(ctx context.Context, from int64) iter.Seq2[chain.Entry,
 		// One at a time, so that the caller may ask for other things in between:
 		// the ledger has one connection.
 		for seq := from; ; {
-			var e chain.Entry
-			err := l.conn.QueryRowContext(ctx, "SELECT seq, time, kind, body, previous, hash FROM entry WHERE seq >= ? ORDER BY seq LIMIT 1", seq).
-				Scan(&e.Seq, &e.Time, &e.Kind, &e.Body, &e.Previous, &e.Hash)
+			e, err := scanEntry(l.conn.QueryRowContext(ctx, "SELECT seq, time, kind, body, previous, hash FROM entry WHERE seq >= ? ORDER BY seq LIMIT 1", seq))
 			if errors.Is(err, sql.ErrNoRows) {
 				return
 			}
 			if err != nil {
-				yield(e, classify(err))
+				yield(e, err)
 				return
 			}
 			if !yield(e, nil) {
