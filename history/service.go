@@ -104,6 +104,9 @@ const (
 	ServiceUndoes     = "in-service-undoes"
 	ServiceCorrected  = "in-service-corrected"
 	NeverInService    = "approved-never-in-service"
+	// DoesNotCount is an entry that ReadLine has left out, of whichever folder: what
+	// is in service may not be what somebody recorded.
+	DoesNotCount = "does-not-count"
 )
 
 // ServiceFindings looks at the in-force log of a folder: revisions in service

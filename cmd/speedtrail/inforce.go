@@ -24,7 +24,7 @@ func (a *app) inforceCommand() *cobra.Command {
 		Short: "what was in force when",
 		Long: `inforce lists which revisions went into service when, by whose record, and what
 about it needs eyes: revisions in service without approval, approved ones that never
-went into service. Exit status 1 if there is any.
+went into service, entries that do not count. Exit status 1 if there is any.
 
 With --when it answers which revision was in force at an instant, with the whole
 chain of evidence; with --route and --at also the effective speed at a point for
@@ -231,6 +231,7 @@ var serviceAdvice = map[string]string{
 	history.ServiceUndoes:     "Look at what the revision before had changed; assess from that one, and have it signed.",
 	history.ServiceCorrected:  "Ask who took the record back, and what ran then; both records stay.",
 	history.NeverInService:    "Record it when it goes into service: speedtrail inforce record REV --since T.",
+	history.DoesNotCount:      "Ask who added the entry, and past which check; what it says has no effect.",
 }
 
 // serviceRecord is the JSON form of an in-force record.
@@ -342,6 +343,9 @@ func (a *app) inforceLog(ctx context.Context) error {
 	}
 	corrected := corrections(line, folder)
 	findings := history.ServiceFindings(line, folder)
+	for _, p := range problems {
+		findings = append(findings, history.ServiceFinding{ID: history.DoesNotCount, Text: p.Error()})
+	}
 	err = a.write(func(w io.Writer) error {
 		if a.format == "json" {
 			list := []serviceFinding{}
@@ -359,7 +363,7 @@ func (a *app) inforceLog(ctx context.Context) error {
 		for _, x := range corrected {
 			fmt.Fprintf(w, "\nNot any more: %s\n", strings.ReplaceAll(wrap(x.words(), a.style().Width-2), "\n", "\n  "))
 		}
-		if len(records)+len(corrected) > 0 && len(findings)+len(problems) > 0 {
+		if len(records)+len(corrected) > 0 && len(findings) > 0 {
 			fmt.Fprintln(w)
 		}
 		if len(records) == 0 {
@@ -370,9 +374,6 @@ func (a *app) inforceLog(ctx context.Context) error {
 			if i == len(findings)-1 || findings[i+1].ID != f.ID {
 				fmt.Fprintf(w, "  %s\n", strings.ReplaceAll(wrap(serviceAdvice[f.ID], a.style().Width-2), "\n", "\n  "))
 			}
-		}
-		for _, p := range problems {
-			fmt.Fprintf(w, "%s\n", wrap("! does not count: "+source.Visible(p.Error()), a.style().Width))
 		}
 		return nil
 	})

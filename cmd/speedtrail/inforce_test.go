@@ -1,0 +1,40 @@
+package main
+
+import (
+	"path/filepath"
+	"strings"
+	"testing"
+	"time"
+
+	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
+)
+
+// An entry that does not count is something against it, in every format.
+func TestInForceDoesNotCount(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80}, []time.Time{at, at.Add(time.Hour)})
+	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	key := func(name string) string { return filepath.Join(keys, name) }
+	call(t, in("anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y")...).want(t, 0)
+	call(t, in("inforce", "record", "c0", "--since", "2026-03-03T00:00:00Z", "--reason", "start", "--key", key("cem"), "-y")...).want(t, 0)
+	call(t, in("inforce")...).want(t, 0)
+	l, err := ledger.Open(t.Context(), filepath.Join(repo, ".git", "speedtrail", "ledger.db"), ledger.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, err = l.Append(t.Context(), time.Now(), chain.InForce, func() ([]byte, []ledger.Row, error) { return []byte("{}"), nil, nil })
+	l.Close()
+	if err != nil {
+		t.Fatal(err)
+	}
+	if got := call(t, in("inforce")...); !strings.HasSuffix(got.out, "  Ask who added the entry, and past which check; what it says has no effect.\n") {
+		t.Errorf("no advice: %s", got.out)
+	}
+	for format, want := range map[string]string{"text": "! does-not-count: entry 4 (in-force): refused:", "json": `"id": "does-not-count"`} {
+		if got := call(t, in("inforce", "--format", format)...).want(t, statusFinding); !strings.Contains(got.out, want) {
+			t.Errorf("%s: %s", format, got.out)
+		}
+	}
+}
