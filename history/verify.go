@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"runtime"
 	"slices"
+	"strings"
 	"sync"
 
 	"golang.org/x/sync/errgroup"
@@ -96,7 +97,8 @@ type verifier struct {
 	// assessments counts them: their numbers are 1, 2, ... in the order of entries.
 	assessments int64
 	docs        []recorded
-	stopped     bool // the file could not be read to its end
+	stopped     bool     // the file could not be read to its end
+	backwards   []string // where the times of entries go back
 	lock        sync.Mutex
 }
 
@@ -127,12 +129,20 @@ func (v *verifier) entries() error {
 	v.counts = map[string]int64{}
 	v.r.Line = approval.New(v.l.ID())
 	var head chain.Head
+	last := "" // the time of the entry before
 	for e, err := range openAhead(v.ctx, v.l, head, true) {
 		if err != nil {
 			return err
 		}
 		if e.broken != nil {
 			v.problem(e.Seq, "chain", "it %v", errors.Unwrap(e.broken))
+			last = ""
+		} else {
+			// The form of a time is one whose texts stand in the order of the times.
+			if e.Time < last {
+				v.backwards = append(v.backwards, fmt.Sprintf("entry %d was recorded before entry %d", e.Seq, head.Seq))
+			}
+			last = e.Time
 		}
 		head = e.Head()
 		if e.canonical != nil {
@@ -350,11 +360,21 @@ func (v *verifier) statements() error {
 	return v.ctx.Err()
 }
 
+// mostBackwards is how many places are named at which the times of entries go back.
+const mostBackwards = 5
+
 // summary says what was proved of the ledger itself, also where something else is
 // wrong.
 func (v *verifier) summary() {
 	wrong := func(kinds ...string) bool {
 		return slices.ContainsFunc(v.r.Problems, func(p Problem) bool { return slices.Contains(kinds, p.Kind) })
+	}
+	if n := len(v.backwards); n > 0 {
+		// Clocks are put right, and machines differ: that is no proof of anything wrong.
+		if n > mostBackwards {
+			v.backwards = append(v.backwards[:mostBackwards], fmt.Sprintf("and so on, %d times", n))
+		}
+		v.r.Unproved = append(v.r.Unproved, "which clock was right: by their times "+strings.Join(v.backwards, ", "))
 	}
 	if v.stopped {
 		v.r.Unproved = append(v.r.Unproved, "everything that was to be read after the place where the file is damaged")

@@ -213,3 +213,37 @@ func TestClockGoesBack(t *testing.T) {
 		t.Errorf("entries do not bear the times of the clock: %s", rows)
 	}
 }
+
+// A newest entry from the future bars signatures until another one follows: the
+// refusal says so, and verify says afterwards where times go back, as a remark.
+func TestEntryFromTheFuture(t *testing.T) {
+	keys := t.TempDir()
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	repo := composed(t, keys, []int{60, 80}, []time.Time{at, at.Add(time.Hour)})
+	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	key := func(name string) string { return filepath.Join(keys, name) }
+	late := &app{in: strings.NewReader(""), out: os.Stderr, err: os.Stderr, repo: repo, data: ".", quiet: true}
+	l, err := late.openLedgerAt(t.Context(), time.Date(2099, 12, 31, 0, 0, 0, 0, time.UTC))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := l.Close(); err != nil {
+		t.Fatal(err)
+	}
+	anchor := in("anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y")
+	got := call(t, anchor...)
+	if got.status != statusInput || !strings.Contains(got.errors, "before the entry 1 that it names, of 2099") || !strings.Contains(got.errors, "hint: nothing was recorded; put the clock right") || !strings.Contains(got.errors, "record an assessment") {
+		t.Errorf("status %d\n%s", got.status, got.errors)
+	}
+	if got := call(t, in("verify")...).want(t, 0); strings.Contains(got.out, "which clock") {
+		t.Errorf("one entry goes back: %s", got.out)
+	}
+	call(t, in("assess", "c0", "c1")...).want(t, 1)
+	call(t, anchor...).want(t, 0)
+	for _, format := range []string{"text", "json"} {
+		got := call(t, in("verify", "--format", format)...).want(t, 0)
+		if words := strings.Join(strings.Fields(got.out), " "); strings.Count(words, "which clock was right: by their times entry 2 was recorded before entry 1") != 1 || strings.Contains(words, "entry 3 was") {
+			t.Error(got.out)
+		}
+	}
+}

@@ -273,7 +273,11 @@ func broughtAbout(s *signed, commit, folder, tree string, data *schema.Dataset) 
 
 // refused gives an error of the call for what a policy does not allow.
 func refused(err error) error {
-	return &callError{err.Error(), "nothing was recorded"}
+	hint := "nothing was recorded"
+	if todo := hintOf(err); todo != "" {
+		hint += "; " + todo
+	}
+	return &callError{err.Error(), hint}
 }
 
 // foresee refuses what could not be recorded, before anybody is asked to sign it.

@@ -1,6 +1,7 @@
 package approval
 
 import (
+	"fmt"
 	"slices"
 	"strings"
 	"time"
@@ -99,7 +100,10 @@ func (l *Line) checkForm(r *Record) error {
 		return refuse("the statement is recorded already, as entry %d", at)
 	}
 	if seen := l.times[r.Head.Seq-1]; r.Time.Before(seen) {
-		return refuse("the statement is of %s, before the entry %d that it names, of %s", r.Time.Format(signoff.TimeLayout), r.Head.Seq, seen.Format(signoff.TimeLayout))
+		return &hinted{
+			refuse("the statement is of %s, before the entry %d that it names, of %s", r.Time.Format(signoff.TimeLayout), r.Head.Seq, seen.Format(signoff.TimeLayout)),
+			fmt.Sprintf("put the clock right; if the one by which entry %d was recorded was wrong, record an assessment with this one first: a statement that is made after it names its entry", r.Head.Seq),
+		}
 	}
 	if r.Time.After(r.Recorded.Add(Tolerance)) {
 		return refuse("the statement is of %s, after the time of recording, %s", r.Time.Format(signoff.TimeLayout), r.Recorded.Format(signoff.TimeLayout))

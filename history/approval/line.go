@@ -140,6 +140,18 @@ func refuse(format string, args ...any) error {
 	return fmt.Errorf("%w: "+format, append([]any{ErrRefused}, args...)...)
 }
 
+// hinted is a refusal that knows what to do about it.
+type hinted struct {
+	error
+	hint string
+}
+
+// Unwrap gives the refusal.
+func (e *hinted) Unwrap() error { return e.error }
+
+// Hint says what to do.
+func (e *hinted) Hint() string { return e.hint }
+
 // Add takes up the next entry of the ledger. An error says why the entry, which
 // is recorded all the same, does not count.
 func (l *Line) Add(e chain.Entry, assessment *Assessment) error {

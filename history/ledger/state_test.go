@@ -4,8 +4,10 @@ import (
 	"bufio"
 	"bytes"
 	"errors"
+	"fmt"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 	"time"
@@ -286,6 +288,33 @@ func TestClockJumpsBack(t *testing.T) {
 	}
 	if _, err := verified(ctx, l, head, signed, ahead); err != nil {
 		t.Fatal(err)
+	}
+}
+
+// Where times go back is said, of many places the first ones, and is nothing wrong.
+func TestTimesThatGoBack(t *testing.T) {
+	file := filepath.Join(quickDir(t), "ledger.db")
+	anchored(t, file)
+	l := opened(t, file, ledger.Options{})
+	for _, c := range []struct {
+		n    int64
+		want string
+	}{
+		{1, "entry 4 was recorded before entry 3"},
+		{7, "entry 4 was recorded before entry 3, entry 5 was recorded before entry 4, entry 6 was recorded before entry 5, entry 7 was recorded before entry 6, entry 8 was recorded before entry 7, and so on, 7 times"},
+	} {
+		for head, err := l.Head(t.Context()); head.Seq < 3+c.n; head, err = l.Head(t.Context()) {
+			if err != nil {
+				t.Fatal(err)
+			}
+			if _, err := assess(t.Context(), l, when.Add(-time.Duration(head.Seq)*time.Hour), fmt.Sprint("back ", head.Seq), 2); err != nil {
+				t.Fatal(err)
+			}
+		}
+		r, err := history.Verify(t.Context(), l, history.VerifyOptions{})
+		if err != nil || !r.Good() || !slices.Contains(r.Unproved, "which clock was right: by their times "+c.want) {
+			t.Error(c.n, err, r)
+		}
 	}
 }
 
