@@ -46,7 +46,12 @@ func (p Product) Example() profile.Class {
 // String words the product for a board, as "cant deficiency 150 mm and above,
 // not freight, any axle load".
 func (p Product) String() string {
-	return cantWords(p.Cant) + ", " + setWords(p.Sets) + ", " + axleWords(p.Axle)
+	sets := setWords(p.Sets)
+	if strings.Contains(sets, "; ") {
+		// Each alternative is of trains of that cant deficiency and axle load.
+		sets = "(" + sets + ")"
+	}
+	return cantWords(p.Cant) + ", " + sets + ", " + axleWords(p.Axle)
 }
 
 func cantWords(mask uint16) string {
@@ -105,11 +110,23 @@ func setWords(mask uint8) string {
 		return "any category"
 	}
 	var words []string
-	for _, c := range conditions(mask) {
+	list := conditions(mask)
+	// What is asked for comes first: "not freight or passenger" would be read as
+	// neither of them.
+	slices.SortStableFunc(list, func(a, b condition) int {
+		return min(bits.OnesCount8(uint8(b.has)), 1) - min(bits.OnesCount8(uint8(a.has)), 1)
+	})
+	negative := 0
+	for _, c := range list {
 		words = append(words, c.String())
+		if c.has == 0 {
+			negative++
+		}
 	}
-	// A condition with a comma in it would run into the next one.
-	if slices.ContainsFunc(words, func(w string) bool { return strings.Contains(w, ", ") }) {
+	// A condition of several parts would run into the next one, and a "not" into
+	// the one behind it.
+	several := func(w string) bool { return strings.Contains(w, ", ") || strings.Contains(w, " and ") }
+	if len(words) > 1 && (negative > 1 || slices.ContainsFunc(words, several)) {
 		return strings.Join(words, "; or ")
 	}
 	return strings.Join(words, " or ")

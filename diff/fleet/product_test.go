@@ -53,6 +53,9 @@ func TestProductString(t *testing.T) {
 		{"not braked in P", Product{anyCant, sets(0, 2, 4, 6), anyAxle}, "any cant deficiency, not freight braked in P, " + all},
 		{"freight", Product{anyCant, sets(1, 2, 3, 5, 6, 7), anyAxle}, "any cant deficiency, freight braked in P or freight braked in G, " + all},
 		{"at least one", Product{anyCant, anySets &^ 1, anyAxle}, "any cant deficiency, freight braked in P or freight braked in G or passenger, " + all},
+		{"passenger, and what is no freight", Product{anyCant, sets(0, 4, 5, 6, 7), anyAxle}, "any cant deficiency, passenger or not freight, " + all},
+		{"not both", Product{anyCant, sets(0, 1, 2, 4, 5, 6), anyAxle}, "any cant deficiency, (not freight braked in P; or not freight braked in G), " + all},
+		{"several parts", Product{anyCant, sets(3, 4, 5, 6, 7), anyAxle}, "any cant deficiency, (freight braked in P and freight braked in G; or passenger), " + all},
 		{"passenger and nothing else", Product{anyCant, sets(4), anyAxle}, "any cant deficiency, passenger, not freight, " + all},
 		{"both and nothing else", Product{anyCant, sets(3), anyAxle}, "any cant deficiency, freight braked in P and freight braked in G, not passenger, " + all},
 		{"all three", Product{anyCant, sets(7), anyAxle}, "any cant deficiency, freight braked in P and freight braked in G and passenger, " + all},
@@ -105,7 +108,7 @@ func TestWordsAreReadBack(t *testing.T) {
 			if at < 0 {
 				t.Fatalf("%q ends without axle loads", text)
 			}
-			if got := (Product{readCant(cant), readSets(rest[:at]), readAxle(rest[at+2:])}); got != p {
+			if got := (Product{readCant(cant), readSets(strings.Trim(rest[:at], "()")), readAxle(rest[at+2:])}); got != p {
 				t.Fatalf("%+v: %q reads as %+v", p, text, got)
 			}
 		})
@@ -144,7 +147,16 @@ func readSets(text string) (mask uint8) {
 	if strings.Contains(text, "; or ") {
 		between = "; or "
 	}
-	for _, alternative := range strings.Split(text, between) {
+	alternatives := strings.Split(text, between)
+	if between == " or " {
+		// A hasty reader takes a "not" for one of all that follows, and does not
+		// know whether "and" or "or" joins more closely.
+		at := slices.IndexFunc(alternatives, func(s string) bool { return strings.HasPrefix(s, "not ") })
+		if at >= 0 && at < len(alternatives)-1 || len(alternatives) > 1 && strings.Contains(text, " and ") {
+			return 0
+		}
+	}
+	for _, alternative := range alternatives {
 		for set := range 8 {
 			if meets(set, alternative) {
 				mask |= 1 << set
