@@ -26,6 +26,9 @@ type Fleet struct {
 	// Reach covers every point at which a train of any kind and any length up
 	// to the longest sees a change; on the target's track.
 	Reach []align.Interval
+	// LeftOut is what only trains of lengths between see and Changes does not hold,
+	// because it takes more lengths than are looked at.
+	LeftOut fleet.LeftOut
 }
 
 // FleetChange is a change that products of category sets see.
@@ -60,10 +63,13 @@ func (p *pair) fleet(trains []Train) []Fleet {
 			s = p.permanent
 		}
 		found := fleet.CompareSides(s.base, s.target, p.direction, s.cells, asked)
-		f := Fleet{Direction: p.direction, Permanent: permanent, Shortest: shortest, Longest: longest, Reach: found.Reach, Changes: joinLengths(append(found.Changes, found.Between...))}
+		f := Fleet{Direction: p.direction, Permanent: permanent, Shortest: shortest, Longest: longest, Reach: found.Reach, Changes: joinLengths(append(found.Changes, found.Between...)), LeftOut: found.LeftOut}
 		if permanent {
 			f.Changes = slices.DeleteFunc(f.Changes, func(c FleetChange) bool { return slices.ContainsFunc(list[0].Changes, c.same) })
-			if len(f.Changes) == 0 && slices.Equal(f.Reach, list[0].Reach) {
+			if f.LeftOut.Same(list[0].LeftOut) {
+				f.LeftOut = fleet.LeftOut{}
+			}
+			if len(f.Changes) == 0 && len(f.LeftOut.Lengths) == 0 && slices.Equal(f.Reach, list[0].Reach) {
 				break
 			}
 		}

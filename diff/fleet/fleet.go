@@ -40,6 +40,7 @@ type Result struct {
 	// at a length that was asked for: for lengths above the shortest of those and up
 	// to the longest, in the same order.
 	Between []Change
+	LeftOut LeftOut
 	// kinds are the classes that the rows tell apart, with the reach of each.
 	kinds []kind
 	// Reach covers every point at which a train of some length, up to the
@@ -67,9 +68,11 @@ func CompareSides(base, target *profile.Compiler, d codes.Direction, cells []ali
 	}
 	r.Reach = p.reach(slices.Max(lengths))
 	r.kinds = p.kinds
-	for _, length := range slices.Sorted(maps.Keys(p.between)) {
-		r.Between = append(r.Between, p.changes(length, p.between[length])...)
+	chosen, leftOut := chooseLengths(p.between)
+	for _, length := range slices.Sorted(maps.Keys(chosen)) {
+		r.Between = append(r.Between, p.changes(length, chosen[length])...)
 	}
+	r.LeftOut = leftOut
 	return r
 }
 
@@ -82,7 +85,7 @@ type pair struct {
 	kinds        []kind
 	memory       [2]step.Func // for profiles, used again
 	lengths      []unit.Distance
-	between      map[unit.Distance]map[int][]align.Interval // what only trains of a length between see, by kind
+	between      []sight // what only trains of a length between see
 }
 
 // kind is a set of classes that every row of both sides treats alike.
@@ -149,7 +152,7 @@ func (p *pair) distinguish() {
 }
 
 // changes lists the changes that trains of a length see; with only, those of some
-// kinds that lie on some stretches.
+// kinds that lie on some stretches, which stand in order and do not touch.
 func (p *pair) changes(length unit.Distance, only map[int][]align.Interval) []Change {
 	sets := map[delta.Delta]*classSet{}
 	var order []delta.Delta
@@ -169,7 +172,7 @@ func (p *pair) changes(length unit.Distance, only map[int][]align.Interval) []Ch
 		found := delta.Between(b, t, p.cells)
 		if only != nil {
 			found = slices.DeleteFunc(found, func(d delta.Delta) bool {
-				return !slices.ContainsFunc(stretches, func(x align.Interval) bool { return d.Target < x.To && x.From < d.Target+d.Length })
+				return !touches(stretches, d.Target, d.Target+d.Length)
 			})
 		}
 		if len(found) == 0 {

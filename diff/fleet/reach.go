@@ -116,75 +116,15 @@ func (p *pair) cellReach(kind int, before, after []profile.Bound, cell align.Cel
 			continue
 		}
 		if end := seenUntil(heldBefore[i], heldAfter[i], behindBefore, behindAfter, from, to, longest); end > from {
-			found = append(found, p.place(cell, from, end))
-			for _, length := range p.lengthsBetween(heldBefore[i], heldAfter[i], behindBefore, behindAfter, from, to) {
-				p.sightBetween(length, kind, p.place(cell, from, end))
+			at := p.place(cell, from, end)
+			found = append(found, at)
+			for _, s := range p.lengthsBetween(heldBefore[i], heldAfter[i], behindBefore, behindAfter, from, to) {
+				s.kind, s.at = kind, at
+				p.between = append(p.between, s)
 			}
 		}
 	}
 	return found
-}
-
-// mostBetween bounds the lengths for which changes are listed beyond those that
-// were asked for.
-const mostBetween = 8
-
-func (p *pair) sightBetween(length unit.Distance, kind int, at align.Interval) {
-	if p.between == nil {
-		p.between = map[unit.Distance]map[int][]align.Interval{}
-	}
-	if p.between[length] == nil {
-		if len(p.between) == mostBetween {
-			return
-		}
-		p.between[length] = map[int][]align.Interval{}
-	}
-	p.between[length][kind] = append(p.between[length][kind], at)
-}
-
-// lengthsBetween gives lengths, in whole metres, of trains that see a difference at
-// from or further on, before to, where no length that was asked for does; longer
-// than the shortest of those, up to the longest. The speed is the same between two
-// ends of delayed rows behind a place, as it is for seenUntil.
-func (p *pair) lengthsBetween(b, a unit.Speed, behindBefore, behindAfter []profile.Bound, from, to unit.Distance) []unit.Distance {
-	shortest, longest := slices.Min(p.lengths), slices.Max(p.lengths)
-	var list []unit.Distance
-	asked := false
-	i, k := firstBehind(behindBefore, from), firstBehind(behindAfter, from)
-	for above := unit.Distance(0); above < longest; {
-		// Trains longer than above, up to upTo, see the rows b and a.
-		upTo := longest
-		for _, rows := range [...][]profile.Bound{behindBefore[i:], behindAfter[k:]} {
-			if len(rows) > 0 {
-				upTo = min(upTo, from-rows[0].End)
-			}
-		}
-		if b != a && upTo > above {
-			asked = asked || slices.ContainsFunc(p.lengths, func(l unit.Distance) bool { return above < l && l < upTo+to-from })
-			// Trains have whole metres. One that is a little too long here sees it
-			// further on.
-			length := upTo / unit.Metre * unit.Metre
-			if length <= max(above, shortest) {
-				length = max(above, shortest)/unit.Metre*unit.Metre + unit.Metre
-			}
-			if length <= longest && length < upTo+to-from {
-				list = append(list, length)
-			}
-		}
-		for i < len(behindBefore) && from-behindBefore[i].End <= upTo {
-			b = min(b, behindBefore[i].Speed)
-			i++
-		}
-		for k < len(behindAfter) && from-behindAfter[k].End <= upTo {
-			a = min(a, behindAfter[k].Speed)
-			k++
-		}
-		above = upTo
-	}
-	if asked {
-		return nil
-	}
-	return list
 }
 
 // seenUntil gives the end of the part of from <= x < to in which some train

@@ -5,7 +5,10 @@ package assessment
 type Fleet struct {
 	Changes   []FleetChange `json:"changes"`
 	Direction string        `json:"direction" jsonschema:"enum=nominal,enum=reverse"`
-	Longest   int64         `json:"longest_mm"`
+	// LeftOut are lengths of trains, between the shortest and the longest, that see
+	// changes which are not listed.
+	LeftOut []int64 `json:"left_out_lengths_mm"`
+	Longest int64   `json:"longest_mm"`
 	// Permanent: without temporary restrictions; only what then differs from the
 	// account with them.
 	Permanent bool    `json:"permanent"`

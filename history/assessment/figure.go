@@ -25,7 +25,10 @@ func fleets(a *diff.Account) []Fleet {
 }
 
 func fleetOf(r *diff.Route, f *diff.Fleet) Fleet {
-	doc := Fleet{Route: r.ID, Direction: f.Direction.String(), Permanent: f.Permanent, Shortest: int64(f.Shortest), Longest: int64(f.Longest), Changes: []FleetChange{}, Reach: []Reach{}}
+	doc := Fleet{Route: r.ID, Direction: f.Direction.String(), Permanent: f.Permanent, Shortest: int64(f.Shortest), Longest: int64(f.Longest), Changes: []FleetChange{}, Reach: []Reach{}, LeftOut: []int64{}}
+	for _, l := range f.LeftOut.Lengths {
+		doc.LeftOut = append(doc.LeftOut, int64(l))
+	}
 	for _, x := range f.Reach {
 		doc.Reach = append(doc.Reach, Reach{From: r.Target.Track.Begins(x.From).String(), To: r.Target.Track.Ends(x.To).String()})
 	}

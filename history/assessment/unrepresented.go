@@ -38,6 +38,38 @@ func (c *collector) unrepresented(r *diff.Route) {
 	for _, u := range list {
 		c.add(c.unrepresentedFinding(r, u))
 	}
+	for _, f := range r.Fleet {
+		if len(f.LeftOut.Lengths) > 0 {
+			c.add(leftOutFinding(r, &f))
+		}
+	}
+}
+
+// leftOutFinding says that there is more than an account looks at: nobody knows
+// whether a reference train stands for it.
+func leftOutFinding(r *diff.Route, f *diff.Fleet) ranked {
+	text := "changes that only trains of " + lengthsBetween(f.LeftOut.Lengths) + " see are not listed, and no reference train was held against them"
+	if f.Permanent {
+		text += ", without temporary restrictions"
+	}
+	track := r.Target.Track
+	return ranked{Finding: Finding{
+		ID: NotRepresented, Route: r.ID, Direction: f.Direction.String(),
+		From: track.Begins(f.LeftOut.From).String(), To: track.Ends(f.LeftOut.To).String(), Text: text,
+	}}
+}
+
+// lengthsBetween words lengths of trains: the first few, and how many more.
+func lengthsBetween(list []unit.Distance) string {
+	var parts []string
+	for _, l := range list[:min(len(list), mostRows)] {
+		parts = append(parts, l.M()+" m")
+	}
+	text := strings.Join(parts, ", ")
+	if more := len(list) - mostRows; more > 0 {
+		text += fmt.Sprintf(" and %d more lengths", more)
+	}
+	return text
 }
 
 // note adds a change to the entry of its trains and sense.

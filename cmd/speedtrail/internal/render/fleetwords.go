@@ -23,6 +23,9 @@ func fleetStatement(f *assessment.Fleet) string {
 	if f.Permanent {
 		end = " then"
 	}
+	if len(f.LeftOut) > 0 {
+		end += fmt.Sprintf(". What only trains of %s see is not listed", plural(len(f.LeftOut), "more length", "more lengths"))
+	}
 	if len(f.Reach) == 0 {
 		return fmt.Sprintf("No train up to %s m long sees a change%s.", metres(f.Longest), end)
 	}
