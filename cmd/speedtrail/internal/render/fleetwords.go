@@ -46,6 +46,7 @@ type fleetLine struct {
 // those that no reference train stands for first.
 func fleetLines(f *assessment.Fleet) []fleetLine {
 	var list []fleetLine
+	var pieces [][]*assessment.FleetChange
 	for k := range f.Changes {
 		x := &f.Changes[k]
 		step := fmt.Sprintf("%d to %d km/h", x.Before, x.After)
@@ -54,9 +55,13 @@ func fleetLines(f *assessment.Fleet) []fleetLine {
 			if i < 0 {
 				i = len(list)
 				list = append(list, fleetLine{Who: m.Who, Step: step, Represented: m.Represented})
+				pieces = append(pieces, nil)
 			}
-			list[i].Where = appendPiece(list[i].Where, f, x)
+			pieces[i] = append(pieces[i], x)
 		}
+	}
+	for i := range list {
+		list[i].Where = whereWords(f, pieces[i])
 	}
 	slices.SortStableFunc(list, func(a, b fleetLine) int {
 		switch {
@@ -70,21 +75,51 @@ func fleetLines(f *assessment.Fleet) []fleetLine {
 	return list
 }
 
-func appendPiece(where string, f *assessment.Fleet, x *assessment.FleetChange) string {
-	piece := "km " + minus(x.From) + " to " + minus(x.To)
-	if x.RunOut {
-		piece = "run-out to " + minus(x.To)
-		if f.Direction == "reverse" {
-			piece = "run-out to " + minus(x.From)
+// whereWords lists the pieces of a line. Run-out stands behind the piece that it
+// continues in the direction of travel, and then says only how far it goes.
+func whereWords(f *assessment.Fleet, pieces []*assessment.FleetChange) string {
+	near, far := func(x *assessment.FleetChange) string { return x.From }, func(x *assessment.FleetChange) string { return x.To }
+	if f.Direction == "reverse" {
+		near, far = far, near
+	}
+	last := map[string]int{} // by their far end, the last of the pieces that are not run-out
+	behind := map[string][]*assessment.FleetChange{}
+	for i, x := range pieces {
+		if x.RunOut {
+			behind[near(x)] = append(behind[near(x)], x)
+		} else {
+			last[far(x)] = i
 		}
 	}
-	if len(x.Lengths) == 1 && f.Shortest != f.Longest {
-		piece += " (" + metres(x.Lengths[0]) + " m long)"
+	var parts []string
+	for i, x := range pieces {
+		if x.RunOut {
+			if _, ok := last[near(x)]; !ok {
+				parts = append(parts, "run-out km "+minus(x.From)+" to "+minus(x.To)+lengthWords(f, x))
+			}
+			continue
+		}
+		parts = append(parts, "km "+minus(x.From)+" to "+minus(x.To)+lengthWords(f, x))
+		if last[far(x)] == i {
+			for _, r := range behind[far(x)] {
+				parts = append(parts, "run-out to "+minus(far(r))+lengthWords(f, r))
+			}
+		}
 	}
-	if where == "" {
-		return piece
+	return strings.Join(parts, "; ")
+}
+
+// lengthWords names the lengths of trains for which a change was found; nothing
+// where they are those of the shortest and of the longest train.
+func lengthWords(f *assessment.Fleet, x *assessment.FleetChange) string {
+	if slices.Contains(x.Lengths, f.Shortest) && slices.Contains(x.Lengths, f.Longest) {
+		return ""
 	}
-	return where + "; " + piece
+	var list []string
+	for _, l := range x.Lengths {
+		list = append(list, metres(l))
+	}
+	return " (" + strings.Join(list, ", ") + " m long)"
 }
 
 // rowWords says in short how a row differs.
