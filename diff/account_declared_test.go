@@ -64,6 +64,9 @@ func declaredOf(a *diff.Account) string {
 			if s.RunOut > 0 {
 				text += "+" + s.RunOut.M()
 			}
+			if s.Hidden > 0 {
+				text += " hidden " + s.Hidden.M()
+			}
 		}
 		if d.Track > 0 {
 			text += " track " + d.Track.M()
@@ -138,7 +141,9 @@ func TestDeclared(t *testing.T) {
 		{"the same as a reduction, which each of them makes", over(hold, held("")), asked(held("4,5,80,yes\n5.15,5.175,80,yes\n"), declares("R1", "both", 4, 5.15, "lower", "")), []string{
 			"nominal 4.000-5.000 T 100>80: 4.000-5.000 CR-1/0", "nominal 5.000-5.150 T 100>80 run-out: 5.000-5.150 CR-1/0", "nominal 5.175-5.375 T 100>80 run-out: 5.175-5.200 CR-1/0 run-out, 5.200-5.375 outside", "CR-1/0 sees T 1150+25"}},
 		{"a change that is hidden today", over(flat, texts{"temporary.csv": temporary("4,5,60")}), asked(raise, declares("R1", "both", 4, 4.5, "raise", "")), []string{
-			"nominal 5.000-6.000 T 80>90: outside", "masked nominal 4.000-5.000 T 80>90: 4.000-4.500 CR-1/0, 4.500-5.000 outside", "CR-1/0 sees T 500"}},
+			"nominal 5.000-6.000 T 80>90: outside", "masked nominal 4.000-5.000 T 80>90: 4.000-4.500 CR-1/0, 4.500-5.000 outside", "CR-1/0 sees T 0 hidden 500"}},
+		{"hidden today in part", over(flat, texts{"temporary.csv": temporary("4,5,60")}), asked(raise, declares("R1", "both", 4, 6, "raise", "")), []string{
+			"nominal 5.000-6.000 T 80>90: 5.000-6.000 CR-1/0", "masked nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "CR-1/0 sees T 1000 hidden 1000"}},
 		{"a change that is seen and goes further without temporary restrictions counts once", over(flat, texts{"temporary.csv": temporary("4,5,85")}), asked(raise, declares("R1", "both", 4, 6, "raise", "")), []string{
 			"nominal 4.000-5.000 T 80>85: 4.000-5.000 CR-1/0", "nominal 5.000-6.000 T 80>90: 5.000-6.000 CR-1/0", "masked nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "CR-1/0 sees T 2000"}},
 		{"added track needs any effect", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "both", 0, 10, "raise", ""), declares("R1", "reverse", 2, 6, "any", "")), []string{

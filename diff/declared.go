@@ -30,6 +30,7 @@ type Declared struct {
 type Seen struct {
 	Train          int // index in Account.Trains
 	Inside, RunOut unit.Distance
+	Hidden         unit.Distance // today, by temporary restrictions: not in the others
 }
 
 // Unseen tells whether nothing of the declaration was observed.
@@ -246,9 +247,16 @@ func (a *Account) reconcileRoute(index int) {
 						continue
 					}
 				}
-				if inside+runOut > 0 {
-					a.Declared[owners[1][k]].see(c.Train, inside, runOut)
+				if inside+runOut == 0 {
+					continue
 				}
+				s := a.Declared[owners[1][k]].seenBy(c.Train)
+				if masked == 1 {
+					s.Hidden += inside + runOut
+					continue
+				}
+				s.Inside += inside
+				s.RunOut += runOut
 			}
 			if masked == 0 {
 				visible[e] = append(visible[e], o)
@@ -262,15 +270,14 @@ func (a *Account) reconcileRoute(index int) {
 	}
 }
 
-func (d *Declared) see(train int, inside, runOut unit.Distance) {
-	for i := range d.Seen {
-		if d.Seen[i].Train == train {
-			d.Seen[i].Inside += inside
-			d.Seen[i].RunOut += runOut
-			return
-		}
+// seenBy gives the entry of a train, a new one where it has none.
+func (d *Declared) seenBy(train int) *Seen {
+	i := slices.IndexFunc(d.Seen, func(s Seen) bool { return s.Train == train })
+	if i < 0 {
+		i = len(d.Seen)
+		d.Seen = append(d.Seen, Seen{Train: train})
 	}
-	d.Seen = append(d.Seen, Seen{train, inside, runOut})
+	return &d.Seen[i]
 }
 
 // pieceIndex gives the place of a list in Route.Pieces; 0 for a list of one

@@ -180,6 +180,7 @@ type Declaration struct {
 // Seen is how much a train was seen to change inside a declaration, over both
 // directions of travel.
 type Seen struct {
+	Hidden int64  `json:"hidden_mm"` // today, by temporary restrictions: not in the others
 	Inside int64  `json:"inside_mm"`
 	RunOut int64  `json:"run_out_mm"` // past the far end, inside as run-out
 	Train  string `json:"train"`

@@ -18,7 +18,7 @@ func requests(a *diff.Account) []Request {
 				next++
 				doc.Track, doc.Unseen = int64(seen.Track), seen.Unseen() && !namesTrainThatDiffers(a, seen)
 				for _, s := range seen.Seen {
-					doc.Seen = append(doc.Seen, Seen{Train: a.Trains[s.Train].ID, Inside: int64(s.Inside), RunOut: int64(s.RunOut)})
+					doc.Seen = append(doc.Seen, Seen{Train: a.Trains[s.Train].ID, Inside: int64(s.Inside), RunOut: int64(s.RunOut), Hidden: int64(s.Hidden)})
 				}
 			}
 			r.Declares = append(r.Declares, doc)

@@ -135,15 +135,15 @@ func seenWords(d assessment.Declaration) string {
 		return "unseen"
 	}
 	type group struct {
-		inside, least, most int64
-		trains              []string
+		inside, hidden, least, most int64
+		trains                      []string
 	}
 	var groups []*group
 	for _, s := range d.Seen {
-		i := slices.IndexFunc(groups, func(g *group) bool { return g.inside == s.Inside })
+		i := slices.IndexFunc(groups, func(g *group) bool { return g.inside == s.Inside && g.hidden == s.Hidden })
 		if i < 0 {
 			i = len(groups)
-			groups = append(groups, &group{inside: s.Inside, least: s.RunOut, most: s.RunOut})
+			groups = append(groups, &group{inside: s.Inside, hidden: s.Hidden, least: s.RunOut, most: s.RunOut})
 		}
 		g := groups[i]
 		g.trains = append(g.trains, s.Train)
@@ -153,10 +153,15 @@ func seenWords(d assessment.Declaration) string {
 	for _, g := range groups {
 		text := km(g.inside) + " km"
 		switch {
+		case g.hidden > 0 && g.inside+g.most == 0:
+			text = ""
 		case g.most > g.least:
 			text += " and " + km(g.least) + " to " + km(g.most) + " km of run-out"
 		case g.most > 0:
 			text += " and " + km(g.most) + " km of run-out"
+		}
+		if g.hidden > 0 {
+			text = strings.TrimPrefix(text+", "+km(g.hidden)+" km hidden today", ", ")
 		}
 		parts = append(parts, strings.Join(g.trains, ", ")+" "+text)
 	}

@@ -29,13 +29,10 @@ func Verdict(d *assessment.Document) string {
 		}
 		s := fmt.Sprintf("%d of %s %s on %d of %s", changed, plural(len(c.Trains), "train", "trains"),
 			map[bool]string{true: "changes", false: "change"}[changed == 1], routes, plural(targetRoutes(c), "route", "routes"))
-		var extremes []string
-		for _, up := range []bool{true, false} {
-			if e := extreme(c, up); e != "" {
-				extremes = append(extremes, e)
-			}
-		}
-		parts = append(parts, s+": "+strings.Join(extremes, ", ")+".")
+		parts = append(parts, s+": "+extremes(c, func(r *assessment.Route) []assessment.Change { return r.Changes })+".")
+	}
+	if s := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Masked }); s != "" {
+		parts = append(parts, "Hidden today by temporary restrictions: "+s+".")
 	}
 	if s := trackSentence(c); s != "" {
 		parts = append(parts, s)
@@ -63,8 +60,20 @@ func targetRoutes(c *assessment.Computed) int {
 	return n
 }
 
+// extremes words the largest raise and the largest reduction of one kind of
+// changes; empty where there are none.
+func extremes(c *assessment.Computed, of func(*assessment.Route) []assessment.Change) string {
+	var parts []string
+	for _, up := range []bool{true, false} {
+		if e := extreme(c, of, up); e != "" {
+			parts = append(parts, e)
+		}
+	}
+	return strings.Join(parts, ", ")
+}
+
 // extreme words the largest raise or reduction.
-func extreme(c *assessment.Computed, up bool) string {
+func extreme(c *assessment.Computed, of func(*assessment.Route) []assessment.Change, up bool) string {
 	var best *assessment.Change
 	size := func(x *assessment.Change) int {
 		if up {
@@ -73,8 +82,9 @@ func extreme(c *assessment.Computed, up bool) string {
 		return x.Before - x.After
 	}
 	for i := range c.Routes {
-		for k := range c.Routes[i].Changes {
-			x := &c.Routes[i].Changes[k]
+		list := of(&c.Routes[i])
+		for k := range list {
+			x := &list[k]
 			if size(x) <= 0 {
 				continue
 			}

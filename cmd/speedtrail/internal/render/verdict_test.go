@@ -1,0 +1,53 @@
+package render
+
+import (
+	"testing"
+
+	"speedtrail/history/assessment"
+)
+
+// What temporary restrictions hide today has a clause of its own in the verdict.
+func TestVerdictOnHidden(t *testing.T) {
+	change := func(before, after int, length int64) assessment.Change {
+		return assessment.Change{Before: before, After: after, Length: length, Trains: []int{0}}
+	}
+	for _, x := range []struct {
+		name            string
+		changes, masked []assessment.Change
+		want            string
+	}{
+		{"all hidden", nil, []assessment.Change{change(100, 120, 10_000_000), change(100, 110, 12_000_000)},
+			"None of the 1 reference train is faster or slower anywhere on the 1 route of the target. Hidden today by temporary restrictions: up to +20 km/h over 10.000 km (N)."},
+		{"some hidden, up and down", []assessment.Change{change(100, 110, 1_000_000)}, []assessment.Change{change(100, 120, 2_000_000), change(100, 70, 500_000)},
+			"1 of 1 train changes on 1 of 1 route: up to +10 km/h over 1.000 km (N). Hidden today by temporary restrictions: up to +20 km/h over 2.000 km (N), down to \u221230 km/h over 0.500 km (N)."},
+	} {
+		t.Run(x.name, func(t *testing.T) {
+			train := assessment.Train{ID: "N", Fate: "kept"}
+			if x.changes != nil {
+				train.Routes = []string{"A"}
+			}
+			d := &assessment.Document{Computed: assessment.Computed{Trains: []assessment.Train{train}, Routes: []assessment.Route{{ID: "A", Changes: x.changes, Masked: x.masked}}}}
+			if got := Verdict(d); got != x.want {
+				t.Errorf("got  %s\nwant %s", got, x.want)
+			}
+		})
+	}
+}
+
+// What a declaration has seen keeps apart what is hidden today.
+func TestSeenWords(t *testing.T) {
+	for _, x := range []struct {
+		want string
+		seen []assessment.Seen
+	}{
+		{"N 2.000 km", []assessment.Seen{{Train: "N", Inside: 2_000_000}}},
+		{"N 20.000 km hidden today", []assessment.Seen{{Train: "N", Hidden: 20_000_000}}},
+		{"N 2.000 km and 0.400 km of run-out, 1.000 km hidden today; M 2.000 km", []assessment.Seen{
+			{Train: "N", Inside: 2_000_000, RunOut: 400_000, Hidden: 1_000_000}, {Train: "M", Inside: 2_000_000}}},
+		{"N, M 1.000 km hidden today", []assessment.Seen{{Train: "N", Hidden: 1_000_000}, {Train: "M", Hidden: 1_000_000}}},
+	} {
+		if got := seenWords(assessment.Declaration{Seen: x.seen}); got != x.want {
+			t.Errorf("got  %s\nwant %s", got, x.want)
+		}
+	}
+}
