@@ -148,7 +148,7 @@ func trainSentence(c *assessment.Computed) string {
 
 // outsideSentence says how much lies outside what the requests declare.
 func outsideSentence(c *assessment.Computed) string {
-	outside, unseen, first := 0, 0, ""
+	outside, unseen, trains, first := 0, 0, 0, ""
 	for _, f := range c.Findings {
 		switch f.ID {
 		case assessment.Outside:
@@ -158,6 +158,8 @@ func outsideSentence(c *assessment.Computed) string {
 			}
 		case assessment.Unseen:
 			unseen++
+		case assessment.TrainsChanged:
+			trains++
 		}
 	}
 	var ids []string
@@ -176,8 +178,13 @@ func outsideSentence(c *assessment.Computed) string {
 		words = append(words, "No change request declares any of it."+first)
 	case outside > 0:
 		words = append(words, plural(outside, "change lies", "changes lie")+" outside "+declared+"."+first)
+	case len(ids) > 0 && unseen == 0 && trains > 0:
+		words = append(words, "Everything else is inside "+declared+".")
 	case len(ids) > 0 && unseen == 0:
 		words = append(words, "Everything is inside "+declared+".")
+	}
+	if trains > 0 && (outside == 0 || len(ids) > 0) {
+		words = append(words, plural(trains, "reference train differs and is", "reference trains differ and are")+" not declared.")
 	}
 	if unseen > 0 {
 		words = append(words, plural(unseen, "declaration is", "declarations are")+" not seen.")

@@ -51,3 +51,36 @@ func TestSeenWords(t *testing.T) {
 		}
 	}
 }
+
+// A reference train that differs and that no request names is not inside what they
+// declare.
+func TestVerdictOnTrains(t *testing.T) {
+	trains := func(n int) (list []assessment.Finding) {
+		for range n {
+			list = append(list, assessment.Finding{ID: assessment.TrainsChanged, Text: "reference train N is altered"})
+		}
+		return list
+	}
+	outside := assessment.Finding{ID: assessment.Outside, Route: "A", From: "1.000", To: "2.000", Text: "raised: no declaration"}
+	one := []assessment.Request{{ID: "CR-1"}}
+	for _, x := range []struct {
+		name     string
+		requests []assessment.Request
+		findings []assessment.Finding
+		want     string
+	}{
+		{"declared", one, nil, "Everything is inside what CR-1 declares."},
+		{"one train", one, trains(1), "Everything else is inside what CR-1 declares. 1 reference train differs and is not declared."},
+		{"two trains", one, trains(2), "Everything else is inside what CR-1 declares. 2 reference trains differ and are not declared."},
+		{"a train beside a change", one, append(trains(1), outside), "1 change lies outside what CR-1 declares. First: A, km 1.000 to 2.000, raised. 1 reference train differs and is not declared."},
+		{"nothing asked for", nil, trains(1), "1 reference train differs and is not declared."},
+		{"nothing asked for, a change", nil, append(trains(1), outside), "No change request declares any of it. First: A, km 1.000 to 2.000, raised."},
+		{"a declaration that is not seen", one, append(trains(1), assessment.Finding{ID: assessment.Unseen}), "1 reference train differs and is not declared. 1 declaration is not seen."},
+	} {
+		t.Run(x.name, func(t *testing.T) {
+			if got := outsideSentence(&assessment.Computed{Requests: x.requests, Findings: x.findings}); got != x.want {
+				t.Errorf("got  %s\nwant %s", got, x.want)
+			}
+		})
+	}
+}
