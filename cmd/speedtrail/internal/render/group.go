@@ -8,9 +8,9 @@ import (
 	"speedtrail/history/assessment"
 )
 
-// group is the stretches of one place whose pictures differ only in how far the
-// length of a train carries a change: one chart, that of the train for which it
-// reaches furthest, serves them all. The table lists each of them.
+// group is the stretches of one place on which trains see the same steps by the same
+// rows, one of them wherever the others do, if further: one chart, that of the train
+// for which it reaches furthest, serves them all. The table lists each of them.
 type group struct {
 	drawn   *assessment.Stretch
 	trains  []int // indices in Computed.Trains, ascending
@@ -20,18 +20,27 @@ type group struct {
 // groups arranges the stretches of a document, in their order.
 func groups(c *assessment.Computed) []*group {
 	var list []*group
-	seen := map[string]*group{}
+	seen := map[string][]*group{}
 	for i := range c.Stretches.List {
 		s := &c.Stretches.List[i]
-		key := signature(&c.Routes[s.Route], s)
-		g := seen[key]
-		if g == nil || !overlap(g.drawn, s) {
-			g = &group{drawn: s}
-			seen[key] = g
-			list = append(list, g)
+		r := &c.Routes[s.Route]
+		key := signature(r, s)
+		var g *group
+		for _, x := range seen[key] {
+			if within(r, s, x.drawn) {
+				g = x
+				break
+			}
+			if within(r, x.drawn, s) {
+				g = x
+				g.drawn = s
+				break
+			}
 		}
-		if s.To-s.From > g.drawn.To-g.drawn.From {
-			g.drawn = s
+		if g == nil {
+			g = &group{drawn: s}
+			seen[key] = append(seen[key], g)
+			list = append(list, g)
 		}
 		g.trains = append(g.trains, s.Trains...)
 		g.changes = append(g.changes, s.Changes...)
@@ -44,20 +53,60 @@ func groups(c *assessment.Computed) []*group {
 	return list
 }
 
-// signature writes the changes of a stretch without their places.
+// signature writes the changes of a stretch without their places: with the rows that
+// govern before and after, and what they come of.
 func signature(r *assessment.Route, s *assessment.Stretch) string {
 	var b strings.Builder
 	fmt.Fprintf(&b, "%d %s", s.Route, s.Direction)
 	for _, k := range s.Changes {
-		x := &r.Changes[k]
-		if !x.RunOut { // run-out can begin or cease with the length
-			fmt.Fprintf(&b, " %d>%d", x.Before, x.After)
+		if x := &r.Changes[k]; !x.RunOut { // run-out can begin or cease with the length
+			fmt.Fprintf(&b, " %v", stepOf(x))
 		}
 	}
 	return b.String()
 }
 
-func overlap(a, b *assessment.Stretch) bool { return a.From < b.To && b.From < a.To }
+// step is what two changes have in common that differ in their places and trains only.
+type step struct {
+	before, after, beforeSource, afterSource, cause int
+	runOut                                          bool
+}
+
+func stepOf(x *assessment.Change) step {
+	return step{x.Before, x.After, x.BeforeSource, x.AfterSource, x.Cause, x.RunOut}
+}
+
+// within tells whether the chart of one stretch serves another one of the same
+// signature: it reaches as far on both sides, each change shares an end with its own,
+// and it has each run-out.
+func within(r *assessment.Route, s, drawn *assessment.Stretch) bool {
+	if s.From < drawn.From || s.To > drawn.To {
+		return false
+	}
+	split := func(s *assessment.Stretch) (changes, runOuts []*assessment.Change) {
+		for _, k := range s.Changes {
+			if x := &r.Changes[k]; x.RunOut {
+				runOuts = append(runOuts, x)
+			} else {
+				changes = append(changes, x)
+			}
+		}
+		return changes, runOuts
+	}
+	changes, runOuts := split(s)
+	ownChanges, ownRunOuts := split(drawn)
+	for i, x := range changes {
+		if y := ownChanges[i]; x.From != y.From && x.To != y.To {
+			return false
+		}
+	}
+	for _, x := range runOuts {
+		if !slices.ContainsFunc(ownRunOuts, func(y *assessment.Change) bool { return stepOf(x) == stepOf(y) }) {
+			return false
+		}
+	}
+	return true
+}
 
 // trainsOf lists the trains of a change that belong to a group.
 func (g *group) trainsOf(x *assessment.Change) []int {
@@ -66,44 +115,6 @@ func (g *group) trainsOf(x *assessment.Change) []int {
 		if slices.Contains(g.trains, t) {
 			list = append(list, t)
 		}
-	}
-	return list
-}
-
-// family is changes that differ only in how far the length of a train carries
-// them: they begin or end at the same place, with the same speeds.
-type family struct {
-	first, last *assessment.Change // the ones that reach least and furthest
-	trains      []int
-	all         []*assessment.Change
-}
-
-// families gathers the changes of one direction of a route.
-func families(changes []assessment.Change) []family {
-	var list []family
-	for i := range changes {
-		x := &changes[i]
-		k := slices.IndexFunc(list, func(f family) bool {
-			return f.first.Before == x.Before && f.first.After == x.After && f.first.RunOut == x.RunOut &&
-				(f.first.From == x.From || f.first.To == x.To)
-		})
-		if k < 0 {
-			list = append(list, family{x, x, slices.Clone(x.Trains), []*assessment.Change{x}})
-			continue
-		}
-		f := &list[k]
-		f.trains = append(f.trains, x.Trains...)
-		f.all = append(f.all, x)
-		if x.Length > f.last.Length {
-			f.last = x
-		}
-		if x.Length < f.first.Length {
-			f.first = x
-		}
-	}
-	for i := range list {
-		slices.Sort(list[i].trains)
-		list[i].trains = slices.Compact(list[i].trains)
 	}
 	return list
 }

@@ -223,6 +223,7 @@ func (p *textWriter) track() {
 
 func (p *textWriter) changes() {
 	shown, all := 0, 0
+	pictures := picturesOf(p.c)
 	for i := range p.c.Routes {
 		r := &p.c.Routes[i]
 		for list := r.Changes; len(list) > 0; {
@@ -237,7 +238,7 @@ func (p *textWriter) changes() {
 				fs = fs[:min(len(fs), room)]
 				shown += len(fs)
 				for _, f := range fs {
-					p.family(r, f)
+					p.family(r, f, pictures)
 				}
 			}
 			list = list[n:]
@@ -248,9 +249,9 @@ func (p *textWriter) changes() {
 	}
 }
 
-// family writes changes that differ only by the length of the train.
-func (p *textWriter) family(r *assessment.Route, f family) {
-	x := f.last
+// family writes changes that differ only in their trains and one of their ends.
+func (p *textWriter) family(r *assessment.Route, f family, pictures pictures) {
+	x := f.all[0]
 	step := signed(x.After - x.Before)
 	if p.s.Color {
 		color := "31" // raised: look first
@@ -259,13 +260,17 @@ func (p *textWriter) family(r *assessment.Route, f family) {
 		}
 		step = "\x1b[" + color + "m" + step + "\x1b[0m"
 	}
-	line := fmt.Sprintf("km %s to %s", between(x.From, f.first.From), between(f.first.To, x.To))
+	line := fmt.Sprintf("km %s to %s", between(f.from[0].From, f.from[1].From), between(f.to[0].To, f.to[1].To))
 	remark := ""
-	switch {
-	case x.RunOut:
+	if x.RunOut {
 		remark = "  run-out"
-	case f.first != x:
-		remark = "  by train length"
+	}
+	switch {
+	case f.begin() && f.end():
+	case pictures.byLength(r, &f):
+		remark += "  by train length"
+	default:
+		remark += "  by train"
 	}
 	p.printf("%-34s %3d to %3d km/h  %s%s\n", line, x.Before, x.After, step, remark)
 	p.paragraph("    ", trainNames(p.c, f.trains, 0))
