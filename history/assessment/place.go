@@ -26,6 +26,7 @@ type stretchOf struct {
 	from, to  unit.Distance
 	raised    bool
 	trains    []int
+	seen      map[int]unit.Distance // how far each train sees changes without a gap, from the beginning
 	changes   []*diff.Change
 	allRunOut bool
 	allHidden bool
@@ -41,13 +42,17 @@ func (c *collector) gather(r *diff.Route, parts []part) []stretchOf {
 	for _, p := range parts {
 		n := len(list) - 1
 		if n < 0 || list[n].direction != p.change.Direction || list[n].raised != p.change.Raised() || p.from > list[n].to {
-			list = append(list, stretchOf{direction: p.change.Direction, from: p.from, to: p.to, raised: p.change.Raised(), allRunOut: true, allHidden: true})
+			list = append(list, stretchOf{direction: p.change.Direction, from: p.from, to: p.to, raised: p.change.Raised(), allRunOut: true, allHidden: true, seen: map[int]unit.Distance{}})
 			n++
 		}
 		s := &list[n]
 		s.to = max(s.to, p.to)
-		if !slices.Contains(s.trains, p.change.Train) {
-			s.trains = append(s.trains, p.change.Train)
+		t := p.change.Train
+		if _, ok := s.seen[t]; !ok {
+			s.trains, s.seen[t] = append(s.trains, t), s.from
+		}
+		if p.from <= s.seen[t] {
+			s.seen[t] = max(s.seen[t], p.to)
 		}
 		s.changes = append(s.changes, p.change)
 		s.allRunOut = s.allRunOut && p.change.RunOut
@@ -71,15 +76,11 @@ func (c *collector) finding(id string, r *diff.Route, s stretchOf, tail string) 
 			largest = x
 		}
 	}
-	var names []string
-	for _, t := range s.trains {
-		names = append(names, c.in.Account.Trains[t].ID)
-	}
 	word := "raised"
 	if !s.raised {
 		word = "lowered"
 	}
-	text := fmt.Sprintf("%s by up to %d km/h, %d to %d (%s)", word, abs(largest.After-largest.Before), largest.Before, largest.After, strings.Join(names, ", "))
+	text := fmt.Sprintf("%s by up to %d km/h, %d to %d (%s)", word, abs(largest.After-largest.Before), largest.Before, largest.After, c.trainsOf(s, largest))
 	if s.allRunOut {
 		text += ", run-out of the train length"
 	}
@@ -90,6 +91,35 @@ func (c *collector) finding(id string, r *diff.Route, s stretchOf, tail string) 
 		},
 		raised: s.raised, structure: s.structure, runOut: s.allRunOut, step: int(abs(largest.After - largest.Before)),
 	}
+}
+
+// trainsOf names the trains of a stretch: those that see its largest change, those
+// that see other speeds, and whether each of them sees a change everywhere on it.
+func (c *collector) trainsOf(s stretchOf, largest *diff.Change) string {
+	sees := map[int]bool{}
+	for _, x := range s.changes {
+		if x.Before == largest.Before && x.After == largest.After {
+			sees[x.Train] = true
+		}
+	}
+	var names, others []string
+	throughout := true
+	for _, t := range s.trains {
+		if id := c.in.Account.Trains[t].ID; sees[t] {
+			names = append(names, id)
+		} else {
+			others = append(others, id)
+		}
+		throughout = throughout && s.seen[t] == s.to
+	}
+	text := strings.Join(names, ", ")
+	if len(others) > 0 {
+		text += "; other speeds for " + strings.Join(others, ", ")
+	}
+	if !throughout {
+		text += "; not each of them throughout"
+	}
+	return text
 }
 
 func abs(v unit.Speed) unit.Speed { return max(v, -v) }
