@@ -14,6 +14,10 @@ import (
 // Preparer is the built-in role of those who wrote a change.
 const Preparer = "preparer"
 
+// InService is the role of those who record that a revision went into service. It
+// takes no part in approvals, so it makes no approval independent of anybody.
+const InService = "in-service"
+
 // Policy says who may sign what off: signoff.toml and allowed_signers.
 type Policy struct {
 	Persons []Person
@@ -201,10 +205,13 @@ func (r *reader) checkRoles(p *Policy) {
 		r.faults.Add(source.Position{File: signoffFile}, "no role, at least one [[role]] is needed")
 		return
 	}
-	independent := false
+	independent, service := false, false
 	for _, role := range p.Roles {
 		for _, other := range role.IndependentOf {
-			independent = independent || other == Preparer
+			if other == Preparer {
+				independent = independent || role.Name != InService
+				service = service || role.Name == InService
+			}
 			if other != Preparer && !slices.ContainsFunc(p.Roles, func(r Role) bool { return r.Name == other }) {
 				r.faults.Add(role.Pos, "role %s is independent of %s, which is no role", source.Quote(role.Name), source.Quote(other))
 			}
@@ -222,7 +229,10 @@ func (r *reader) checkRoles(p *Policy) {
 			r.faults.Add(role.Pos, "role %s needs %d people and has %d", source.Quote(role.Name), role.Needed, people)
 		}
 	}
-	if !independent {
+	switch {
+	case !independent && service:
+		r.faults.Add(p.Roles[0].Pos, "only %s is independent of preparer, and it takes no part in approvals; another role has to be independent, too", InService)
+	case !independent:
 		r.faults.Add(p.Roles[0].Pos, "no role is independent of preparer, at least one has to be")
 	}
 	for _, k := range p.Keys {

@@ -16,7 +16,7 @@ const Tolerance = 5 * time.Minute
 
 // InServiceRole is the role of those who may record that a revision went into
 // service. It takes no part in approvals.
-const InServiceRole = "in-service"
+const InServiceRole = schema.InService
 
 // kinds says which statement belongs to which entry.
 var kinds = map[chain.Kind]struct {
