@@ -4,6 +4,8 @@ import (
 	"slices"
 	"strings"
 	"time"
+	"unicode"
+	"unicode/utf8"
 
 	"golang.org/x/crypto/ssh"
 
@@ -116,8 +118,11 @@ func (d *Dataset) PolicyFiles() (signoff, allowedSigners []byte) {
 }
 
 // Person gives the person of an e-mail address, compared without ASCII letter
-// case; nil where it is nobody's.
+// case; nil where it is nobody's, as is that of a commit without one.
 func (p *Policy) Person(email string) *Person {
+	if email == "" {
+		return nil
+	}
 	email = asciiLower(email)
 	for i := range p.Persons {
 		if slices.Contains(p.Persons[i].Emails, email) {
@@ -170,8 +175,13 @@ func (r *reader) signoff(p *Policy, m table.Reader) {
 	for _, t := range m.Tables("person") {
 		person := Person{Pos: t.Pos, Principal: t.Text("principal", true)}
 		r.once(principals, "person", person.Principal, valuePlace(t, "principal"))
+		r.checkBlanks(t, "emails")
 		for _, v := range t.Texts("emails") {
 			email := asciiLower(v.Text)
+			if problem := emailProblem(email); problem != "" {
+				r.faults.Add(v.Pos, "e-mail address %s %s", source.Quote(v.Text), problem)
+				continue
+			}
 			r.once(emails, "e-mail address", email, v.Pos)
 			person.Emails = append(person.Emails, email)
 		}
@@ -240,6 +250,37 @@ func (r *reader) checkRoles(p *Policy) {
 			r.faults.Add(k.Pos, "principal %s is no person of %s", source.Quote(k.Principal), signoffFile)
 		}
 	}
+}
+
+// checkBlanks refuses blanks at the ends of texts, which other lists may have: an
+// address is compared with that of a commit, and what is compared stands there.
+func (r *reader) checkBlanks(t table.Reader, key string) {
+	v := t.Get(key)
+	if v == nil {
+		return
+	}
+	for _, item := range v.Items {
+		if item.Kind == table.StringKind && strings.TrimSpace(item.Text) != item.Text && strings.TrimSpace(item.Text) != "" {
+			r.faults.Add(item.Pos, "e-mail address %s has blanks at its ends, write it without", source.Quote(item.Text))
+		}
+	}
+}
+
+// emailProblem says why an address would be that of nobody, or of too many: a
+// commit without an address is nobody's, and bytes that cannot be read all turn
+// into the same character.
+func emailProblem(email string) string {
+	switch {
+	case email == "":
+		return "is empty, a commit without an address belongs to no person"
+	case strings.ContainsFunc(email, unicode.IsSpace):
+		return "holds a blank, an address has none"
+	case strings.ContainsAny(email, "<>"):
+		return "holds '<' or '>', write what stands between them"
+	case strings.ContainsRune(email, utf8.RuneError):
+		return "holds U+FFFD, which stands for every byte that cannot be read"
+	}
+	return ""
 }
 
 // asciiLower lowers ASCII letters only: other letters have no one lower form.
