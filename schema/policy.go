@@ -16,6 +16,10 @@ import (
 // Preparer is the built-in role of those who wrote a change.
 const Preparer = "preparer"
 
+// Owner is what a revocation has in the place of a role where the owner of the key
+// signs it. It is no role.
+const Owner = "owner"
+
 // InService is the role of those who record that a revision went into service. It
 // takes no part in approvals, so it makes no approval independent of anybody.
 const InService = "in-service"
@@ -81,6 +85,9 @@ func (r *reader) policy() *Policy {
 		if r.faults.Count() == before {
 			r.checkRoles(p)
 		}
+		if haveKeys && r.faults.Count() == before {
+			r.checkEnough(p)
+		}
 	}
 	return p
 }
@@ -95,6 +102,9 @@ func ParsePolicy(signoff, allowedSigners []byte) (*Policy, error) {
 		r.signoff(p, table.Reader{Map: m, Faults: &r.faults})
 		if r.faults.Count() == 0 {
 			r.checkRoles(p)
+		}
+		if r.faults.Count() == 0 {
+			r.checkEnough(p)
 		}
 	}
 	if err := r.faults.Err(); err != nil {
@@ -195,6 +205,8 @@ func (r *reader) signoff(p *Policy, m table.Reader) {
 		}
 		if role.Name != "" && !madeOf(role.Name, 50, "-", true) || role.Name == Preparer {
 			r.faults.Add(valuePlace(t, "name"), "role name %s is not made of up to 50 letters, digits and '-', or is the built-in %s", source.Quote(role.Name), Preparer)
+		} else if problem := builtIn(role.Name); problem != "" {
+			r.faults.Add(valuePlace(t, "name"), "role name %s %s", source.Quote(role.Name), problem)
 		}
 		r.once(names, "role", role.Name, valuePlace(t, "name"))
 		for _, v := range t.Texts("independent_of") {
@@ -250,6 +262,20 @@ func (r *reader) checkRoles(p *Policy) {
 			r.faults.Add(k.Pos, "principal %s is no person of %s", source.Quote(k.Principal), signoffFile)
 		}
 	}
+}
+
+// builtIn says why a role may not have a name that means something else, or that
+// a reader takes for one that does.
+func builtIn(name string) string {
+	switch lower := asciiLower(name); {
+	case lower == Owner:
+		return "is the word for the owner of a key where one is revoked, take another"
+	case lower == Preparer:
+		return "looks like the built-in " + Preparer + ", take another"
+	case lower == InService && name != InService:
+		return "looks like " + InService + " and would be a role of approvals, write " + InService + " or take another"
+	}
+	return ""
 }
 
 // checkBlanks refuses blanks at the ends of texts, which other lists may have: an

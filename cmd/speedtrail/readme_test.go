@@ -98,9 +98,14 @@ func TestReadmeFiles(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	_, key, _ := strings.Cut(string(keys), "ssh-ed25519 ")
-	key, _, _ = strings.Cut(key, "\n")
-	write("allowed_signers", "m.vane@example.org ssh-ed25519 "+key+"\n")
+	// A key for each of the people, as the roles need them.
+	found := strings.Split(string(keys), "ssh-ed25519 ")
+	signers := ""
+	for i, name := range []string{"m.vane", "l.coster", "d.reyl"} {
+		key, _, _ := strings.Cut(found[i+1], "\n")
+		signers += name + "@example.org ssh-ed25519 " + key + "\n"
+	}
+	write("allowed_signers", signers)
 	out.Reset()
 	remarks.Reset()
 	if status := run(t.Context(), []string{"--repo", dir, "validate"}, nil, &out, &remarks); status != statusDone || strings.Contains(remarks.String(), "CR-2701") || strings.Contains(remarks.String(), "accepted.toml") {

@@ -145,7 +145,7 @@ func allowedKey(p *schema.Policy, fingerprint, signer string, times ...time.Time
 		if k.Principal != signer {
 			return nil, refuse("the key %s belongs to %s, not to the signer %s", fingerprint, k.Principal, signer)
 		}
-		if len(k.Namespaces) > 0 && !slices.Contains(k.Namespaces, signoff.Namespace) {
+		if !k.Signs() {
 			problem = refuse("the key %s is not for the namespace %s", fingerprint, signoff.Namespace)
 			continue
 		}

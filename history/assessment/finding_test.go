@@ -99,15 +99,21 @@ func place(f assessment.Finding) string {
 	return strings.TrimSpace(fmt.Sprintf("%s %s %s-%s", f.ID, f.Direction, f.From, f.To))
 }
 
-// policy is a policy that one person can meet, with as many people needed.
+// policy is a policy of two people with a key each, with as many people needed.
 func policy(needed int) texts {
-	key, err := ssh.NewPublicKey(ed25519.NewKeyFromSeed(make([]byte, ed25519.SeedSize)).Public())
-	if err != nil {
-		panic(err)
+	signers := ""
+	for _, name := range []string{"a", "b"} {
+		seed := make([]byte, ed25519.SeedSize)
+		copy(seed, name)
+		key, err := ssh.NewPublicKey(ed25519.NewKeyFromSeed(seed).Public())
+		if err != nil {
+			panic(err)
+		}
+		signers += name + " " + string(ssh.MarshalAuthorizedKey(key))
 	}
 	return texts{
 		"signoff.toml":    fmt.Sprintf("format = 1\n[[person]]\nprincipal = \"a\"\n[[person]]\nprincipal = \"b\"\n[[role]]\nname = \"check\"\nneeded = %d\nindependent_of = [\"preparer\"]\n", needed),
-		"allowed_signers": "a " + string(ssh.MarshalAuthorizedKey(key)),
+		"allowed_signers": signers,
 	}
 }
 

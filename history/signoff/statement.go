@@ -31,10 +31,11 @@ import (
 	"unicode/utf8"
 
 	"speedtrail/history/chain"
+	"speedtrail/schema"
 )
 
 // Namespace is that of every signature.
-const Namespace = "speedtrail-signoff"
+const Namespace = schema.Namespace
 
 // Bounds of a statement.
 const (
@@ -98,7 +99,7 @@ const (
 )
 
 // Owner is the role of a revocation by the key's own principal.
-const Owner = "owner"
+const Owner = schema.Owner
 
 // TimeLayout is the form of times, always UTC.
 const TimeLayout = chain.TimeLayout
