@@ -15,7 +15,7 @@ import (
 
 // allowedSigners reads the OpenSSH file of that name (ssh-keygen(1), ALLOWED
 // SIGNERS) in a strict form: one literal lower-case principal a line, plain
-// keys, times in UTC.
+// keys, literal namespaces, times in UTC. What it takes ssh-keygen takes as well.
 func (r *reader) allowedSigners(p *Policy, content []byte) {
 	if !table.CheckUTF8(signersFile, content, &r.faults) {
 		return
@@ -63,36 +63,72 @@ func signerLine(row string) (k Key, problem string) {
 	if bits := rsaBits(public); bits > 0 && bits < leastRSABits {
 		return k, fmt.Sprintf("an RSA key of %d bits is refused, at least %d are needed", bits, leastRSABits)
 	}
+	// The library passes over empty options, and over commas that divide nothing.
+	after, _ := strings.CutPrefix(strings.TrimSpace(rest), strings.Join(options, ","))
+	if !strings.HasPrefix(strings.TrimLeft(after, " \t"), public.Type()) {
+		return k, "the options are not divided by one comma each"
+	}
 	values := map[string]string{}
 	for _, option := range options {
-		name, value, _ := strings.Cut(option, "=")
-		value = strings.Trim(value, `"`)
+		name, given, _ := strings.Cut(option, "=")
 		lower := strings.ToLower(name)
 		if _, ok := values[lower]; ok {
 			return k, "option " + source.Quote(name) + " stands twice"
 		}
-		values[lower] = value
 		switch lower {
-		case "namespaces":
-			k.Namespaces = strings.Split(value, ",")
-		case "valid-after":
-			k.ValidAfter, problem = signerTime(value)
-		case "valid-before":
-			k.ValidBefore, problem = signerTime(value)
+		case "namespaces", "valid-after", "valid-before":
 		case "cert-authority":
 			return k, "cert-authority is refused: who holds such a key could make any signer"
 		default:
 			return k, "option " + source.Quote(name) + " is not known"
 		}
+		value, ok := unquoted(given)
+		if !ok {
+			return k, "option " + source.Quote(option) + " is not written NAME=\"VALUE\", as ssh-keygen has it"
+		}
+		values[lower] = value
+		switch lower {
+		case "namespaces":
+			k.Namespaces = strings.Split(value, ",")
+			problem = namespaceProblem(k.Namespaces)
+		case "valid-after":
+			k.ValidAfter, problem = signerTime(value)
+		case "valid-before":
+			k.ValidBefore, problem = signerTime(value)
+		}
 		if problem != "" {
 			return k, name + " " + source.Quote(value) + " " + problem
 		}
 	}
-	if !k.ValidAfter.IsZero() && !k.ValidBefore.IsZero() && k.ValidAfter.After(k.ValidBefore) {
-		return k, "valid-after " + source.Quote(values["valid-after"]) + " is later than valid-before " + source.Quote(values["valid-before"])
+	if !k.ValidAfter.IsZero() && !k.ValidBefore.IsZero() && !k.ValidAfter.Before(k.ValidBefore) {
+		return k, "valid-after " + source.Quote(values["valid-after"]) + " is not before valid-before " + source.Quote(values["valid-before"])
 	}
 	k.Public, k.Fingerprint = public, ssh.FingerprintSHA256(public)
 	return k, ""
+}
+
+// unquoted gives what stands between two quotes, which is all that an option has.
+func unquoted(s string) (string, bool) {
+	if len(s) < 2 || s[0] != '"' || s[len(s)-1] != '"' {
+		return "", false
+	}
+	s = s[1 : len(s)-1]
+	return s, !strings.ContainsAny(s, `"\\`)
+}
+
+// namespaceProblem says what is wrong with a list of namespaces. To ssh-keygen each
+// is a pattern, and one with '!' in front takes back what others give; here they
+// are names, so that both read the same.
+func namespaceProblem(names []string) string {
+	for _, name := range names {
+		switch {
+		case strings.ContainsAny(name, "!*?"):
+			return "is not a list of literal names; wildcards and exclusions by '!' are refused"
+		case !madeOf(name, 100, "-._+@", true):
+			return "is not a list of names of letters, digits and '-._+@' with commas and no blanks between them"
+		}
+	}
+	return ""
 }
 
 // leastRSABits is what an RSA key has at least: shorter ones can be broken.
@@ -110,6 +146,10 @@ func rsaBits(public ssh.PublicKey) int {
 
 // signerTime reads YYYYMMDDZ, YYYYMMDDHHMMZ or YYYYMMDDHHMMSSZ.
 func signerTime(s string) (t time.Time, problem string) {
+	// Parse takes fractions of a second unasked.
+	if strings.Contains(s, ".") || strings.Contains(s, ",") {
+		return t, notUTC
+	}
 	for _, layout := range []string{"20060102Z", "200601021504Z", "20060102150405Z"} {
 		t, err := time.Parse(layout, s)
 		switch {
@@ -120,5 +160,7 @@ func signerTime(s string) (t time.Time, problem string) {
 		}
 		return t, ""
 	}
-	return time.Time{}, "is no time in UTC such as 20260301Z or 202603010600Z"
+	return time.Time{}, notUTC
 }
+
+const notUTC = "is no time in UTC such as 20260301Z or 202603010600Z"

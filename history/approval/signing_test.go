@@ -214,8 +214,9 @@ func TestValidity(t *testing.T) {
 		"before, signed in time":       {`valid-before="20260305120000Z"`, -time.Hour, 0, ""},
 		"before, recorded a second on": {`valid-before="20260305120000Z"`, -time.Hour, time.Second, "was valid until 2026-03-05T12:00:00Z"},
 		"before, signed a second on":   {`valid-before="20260305120000Z"`, time.Second, 0, "was valid until 2026-03-05T12:00:00Z"},
-		"both, one instant":            {`valid-after="20260305120000Z",valid-before="20260305120000Z"`, 0, 0, ""},
-		"both, a second late":          {`valid-after="20260305120000Z",valid-before="20260305120000Z"`, 0, time.Second, "was valid until"},
+		"both, at one bound":           {`valid-after="20260305120000Z",valid-before="20260305120001Z"`, 0, 0, ""},
+		"both, at the other one":       {`valid-after="20260305115959Z",valid-before="20260305120000Z"`, 0, 0, ""},
+		"both, a second late":          {`valid-after="20260305115959Z",valid-before="20260305120000Z"`, 0, time.Second, "was valid until"},
 		"a day, from midnight":         {`valid-after="20260305Z"`, -12 * time.Hour, -12 * time.Hour, ""},
 		"a day, before midnight":       {`valid-after="20260305Z"`, -12*time.Hour - time.Second, 0, "is valid from 2026-03-05T00:00:00Z only"},
 	} {
