@@ -1,6 +1,7 @@
 package approval
 
 import (
+	"cmp"
 	"slices"
 	"strings"
 
@@ -85,7 +86,7 @@ func (l *Line) rejections(c content) []Record {
 }
 
 // UnknownPreparers lists the addresses of preparers who are no person of the
-// base's policy.
+// base's policy, and says so where one has none.
 func (a *Assessment) UnknownPreparers() []string {
 	if a.Policy.Parsed == nil {
 		return nil
@@ -93,7 +94,7 @@ func (a *Assessment) UnknownPreparers() []string {
 	var list []string
 	for _, email := range a.Preparers {
 		if a.Policy.Parsed.Person(email) == nil {
-			list = append(list, email)
+			list = append(list, cmp.Or(email, "somebody without an address"))
 		}
 	}
 	return list

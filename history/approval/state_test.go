@@ -200,6 +200,7 @@ func TestBlocks(t *testing.T) {
 		"no ancestor":               {"a", "b", func(a *Assessment) { a.BaseNotAncestor = true }, "base-not-ancestor", "no ancestor"},
 		"unknown preparer":          {"a", "b", func(a *Assessment) { a.Preparers = []string{"dan@tarn.example", "who@fell.example"} }, "unknown-preparer: who@fell.example", ""},
 		"several unknown preparers": {"a", "b", func(a *Assessment) { a.Preparers = []string{"b@fell.example", "a@fell.example"} }, "unknown-preparer: b@fell.example, a@fell.example", ""},
+		"a preparer of no address":  {"a", "b", func(a *Assessment) { a.Preparers = []string{"", "dan@tarn.example"} }, "unknown-preparer: somebody without an address", ""},
 		"another folder":            {"a", "b", func(a *Assessment) { a.Folder = "data" }, "no policy is anchored", "no policy is anchored"},
 		"nobody prepared it":        {"a", "b", func(a *Assessment) { a.Preparers = nil }, "", "nobody is known to have prepared it"},
 		"base is the target":        {"a", "b", func(a *Assessment) { a.Target = a.Base }, "", "its base is its target"},

@@ -98,6 +98,19 @@ type Person struct {
 	Name  string `json:"name"`
 }
 
+// String gives name and address, and says which of them a commit does not have.
+func (p Person) String() string {
+	switch {
+	case p.Name == "" && p.Email == "":
+		return "somebody without name and address"
+	case p.Email == "":
+		return p.Name + " (no address)"
+	case p.Name == "":
+		return "<" + p.Email + ">"
+	}
+	return p.Name + " <" + p.Email + ">"
+}
+
 // Options are the options that can change a result.
 type Options struct {
 	NoRequests bool     `json:"no_requests"` // the reconciliation was left out

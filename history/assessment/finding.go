@@ -197,7 +197,7 @@ func (c *collector) policy() {
 	if p := c.in.Base.Policy; p != nil {
 		for _, x := range c.in.Preparers {
 			if p.Person(x.Email) == nil {
-				c.add(ranked{Finding: Finding{ID: UnknownPreparer, Row: "signoff.toml", Text: fmt.Sprintf("%s <%s> is no person of the base's policy", x.Name, x.Email)}})
+				c.add(ranked{Finding: Finding{ID: UnknownPreparer, Row: "signoff.toml", Text: x.String() + " is no person of the base's policy"}})
 			}
 		}
 	}

@@ -272,3 +272,22 @@ func TestRowOfASplit(t *testing.T) {
 		t.Errorf("got %s, want %s", got, want)
 	}
 }
+
+// Whoever is no person of the policy is a finding, also where a commit names
+// nobody: there, too, it is words that a reader sees.
+func TestUnknownPreparers(t *testing.T) {
+	c := compute(t, policy(1), texts{}, func(in *assessment.Input) {
+		in.Preparers = []assessment.Person{{}, {Name: "Only A Name"}, {Email: "only@x"}, {Name: "Both", Email: "both@x"}}
+	})
+	var got []string
+	for _, f := range c.Findings {
+		if f.ID == assessment.UnknownPreparer {
+			who, _, _ := strings.Cut(f.Text, " is no person of the base's policy")
+			got = append(got, who)
+		}
+	}
+	slices.Sort(got)
+	if want := []string{"<only@x>", "Both <both@x>", "Only A Name (no address)", "somebody without name and address"}; !slices.Equal(got, want) {
+		t.Errorf("%q, want %q", got, want)
+	}
+}

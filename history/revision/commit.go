@@ -37,6 +37,12 @@ type Commit struct {
 	Subject   string // first paragraph of the message on one line
 	Message   string // whole message, the subject included
 
+	// Further holds the authors and committers of lines that a commit may not have
+	// twice, and that damaged ones do.
+	Further []Person
+	// Encoding is the one that the commit says it is in; empty where it says none.
+	Encoding string
+
 	// Boundary says that a shallow clone ends here: the commit may record
 	// parents, but they are not part of this clone's history.
 	Boundary bool
@@ -84,12 +90,22 @@ func parseCommit(data []byte) (Commit, error) {
 	if err != nil {
 		return Commit{}, err
 	}
-	latin := false
+	latin, said := false, false
+	var further [][]byte
 	for len(rest) > 0 && rest[0] != '\n' {
 		line, rest = cutLine(rest)
-		if name, ok := strings.CutPrefix(string(line), "encoding "); ok {
-			latin = isLatin1(name)
+		if name, ok := bytes.CutPrefix(line, []byte("encoding ")); ok && !said {
+			said = true // git goes by the first line, too
+			latin, c.Encoding = isLatin1(string(name)), decodeText(name, false)
 		}
+		for _, key := range [...]string{"author ", "committer "} {
+			if text, ok := bytes.CutPrefix(line, []byte(key)); ok {
+				further = append(further, text)
+			}
+		}
+	}
+	for _, text := range further {
+		c.Further = append(c.Further, parsePerson(text, latin))
 	}
 	c.Author, c.Committer = parsePerson(author, latin), parsePerson(committer, latin)
 	if len(rest) > 0 {

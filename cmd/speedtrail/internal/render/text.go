@@ -115,7 +115,7 @@ func countedWords(c *assessment.Computed) string {
 func people(list []assessment.Person) string {
 	names := make([]string, len(list))
 	for i, p := range list {
-		names[i] = p.Name + " <" + p.Email + ">"
+		names[i] = p.String()
 	}
 	return strings.Join(names, ", ")
 }
