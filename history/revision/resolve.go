@@ -3,6 +3,7 @@ package revision
 import (
 	"errors"
 	"fmt"
+	"regexp"
 	"strconv"
 	"strings"
 
@@ -166,6 +167,9 @@ func (r *Repo) resolveBase(base, rev string) (plumbing.Hash, error) {
 		base = "HEAD"
 	}
 	h, ok, err := r.resolveName(base, rev)
+	if err == nil && ok {
+		err = r.checkNameIsNoHash(base, h, rev)
+	}
 	if err != nil || ok {
 		return h, err
 	}
@@ -231,6 +235,49 @@ func (r *Repo) resolveName(name, rev string) (plumbing.Hash, bool, error) {
 	return first, len(hits) > 0, nil
 }
 
+// checkNameIsNoHash refuses a name that somebody may have typed as the hash of
+// another commit, abbreviated or as git describe writes it. Git takes the name, with
+// a warning at most. A name from refs/ on is no hash, and a whole hash
+// is never looked up as a name, here and in git.
+func (r *Repo) checkNameIsNoHash(name string, h plumbing.Hash, rev string) error {
+	digits := name
+	if m := described.FindStringSubmatch(name); m != nil {
+		digits = m[1]
+	}
+	if len(digits) < minAbbrev || len(digits) > 40 || !isHex(digits) || strings.HasPrefix(name, "refs/") {
+		return nil // most names, at no cost
+	}
+	named, err := r.peelFor(h, rev)
+	if err != nil {
+		return err
+	}
+	commits, _, err := r.withPrefix(digits)
+	if err != nil {
+		return err
+	}
+	var others []string
+	for _, c := range commits {
+		if peeled, err := r.peel(c); err != nil {
+			return err
+		} else if peeled != named {
+			others = append(others, c.String())
+		}
+	}
+	if len(others) == 0 {
+		return nil
+	}
+	if len(others) > maxListed {
+		others = append(others[:maxListed], "...")
+	}
+	return &Error{
+		Kind: ErrAmbiguous, Text: fmt.Sprintf("revision %q is ambiguous: the name of %s, and the hash of %s", rev, named, strings.Join(others, ", ")),
+		Hint: "write the full name, such as refs/heads/" + name + " or refs/tags/" + name + ", or more digits of the hash",
+	}
+}
+
+// described is what git describe writes of a commit behind a tag.
+var described = regexp.MustCompile(`-[0-9]+-g([0-9a-fA-F]+)$`)
+
 // ambiguousHint says how to name one of several references. Where the name is
 // already full, as HEAD is, it can only be made clear again by taking the other
 // one away.
@@ -247,21 +294,14 @@ func (r *Repo) resolveAbbrev(digits, rev string) (plumbing.Hash, bool, error) {
 	if len(digits) < minAbbrev || len(digits) > 40 || !isHex(digits) {
 		return plumbing.ZeroHash, false, nil
 	}
-	const limit = 10_000 // more candidates than this are ambiguous by any measure
-	hashes, err := r.store.withPrefix(strings.ToLower(digits), limit)
+	hits, hashes, err := r.withPrefix(digits)
 	if err != nil {
 		return plumbing.ZeroHash, false, err
 	}
 	var commits []string
 	var hit plumbing.Hash
-	for _, h := range hashes {
-		if _, err := r.peel(h); errors.Is(err, ErrNotCommit) {
-			continue
-		} else if err != nil {
-			return h, false, err
-		}
-		hit = h
-		commits = append(commits, h.String())
+	for _, hit = range hits {
+		commits = append(commits, hit.String())
 	}
 	switch {
 	case len(commits) == 1:
@@ -281,6 +321,25 @@ func (r *Repo) resolveAbbrev(digits, rev string) (plumbing.Hash, bool, error) {
 		}
 	}
 	return hit, false, nil
+}
+
+// withPrefix gives the commits, and the tags of commits, whose hash begins with
+// some digits, and the objects of any kind whose hash does.
+func (r *Repo) withPrefix(digits string) (commits, all []plumbing.Hash, err error) {
+	const limit = 10_000 // more candidates than this are ambiguous by any measure
+	all, err = r.store.withPrefix(strings.ToLower(digits), limit)
+	if err != nil {
+		return nil, nil, err
+	}
+	for _, h := range all {
+		if _, err := r.peel(h); errors.Is(err, ErrNotCommit) {
+			continue
+		} else if err != nil {
+			return nil, nil, err
+		}
+		commits = append(commits, h)
+	}
+	return commits, all, nil
 }
 
 // peel follows tags to the commit. Its error is of class ErrNotCommit where

@@ -16,9 +16,7 @@ func TestResolve(t *testing.T) {
 	t.Parallel()
 	g := sample(t)
 	main, old := g.git("rev-parse", "main"), g.git("rev-parse", "main~4")
-	// A branch whose name could be a short hash, and one whose name is a whole one:
-	// git takes the first for the branch, the second for the hash.
-	g.git("branch", old[:7], "side")
+	// A branch whose name is a whole hash, which git takes for the hash.
 	g.git("update-ref", "refs/heads/"+old, "side")
 	g.git("update-ref", "refs/heads/name.with-gdeadbeef", "side")
 	g.git("update-ref", "ORIG_HEAD", "side")
@@ -30,7 +28,7 @@ func TestResolve(t *testing.T) {
 		"origin", "origin/main", "origin/only-there", "remotes/origin/main", "refs/remotes/origin/HEAD", "refs/notes/other", "notes/other",
 		"HEAD~", "HEAD^", "HEAD~0", "HEAD^0", "HEAD~2", "HEAD~02", "HEAD^^", "HEAD^1", "HEAD~3^2", "main~3^3", "main~3^4", "main~2^3~1", "@~1", "@^",
 		"HEAD~4", "HEAD~9", "HEAD~10", "main^{}", "v1^{}", "v1^{commit}", "v1-again^{}", "v1-again^{commit}~1", "v1~1", "v1^", "v1^{object}", "main^{commit}^{}",
-		main, strings.ToUpper(main), main + "~1", main[:39], main[:12], strings.ToUpper(main[:12]), main[:4], old[:7], old, old[:8],
+		main, strings.ToUpper(main), main + "~1", main[:39], main[:12], strings.ToUpper(main[:12]), main[:4], old, old[:8],
 		tag, tag[:10], tag + "^{commit}", tag[:10] + "~1",
 		"v1-3-g" + main[:9], "anything-0-g" + old[:9] + "~1", "v1-g" + main[:9], "name.with-gdeadbeef",
 		"ORIG_HEAD", "FETCH_HEAD", "FETCH_HEAD~1",
@@ -193,6 +191,40 @@ func TestResolveTagAndBranch(t *testing.T) {
 		wantClass(t, err, ErrAmbiguous, `"`+name+`"`, "write "+other, "the hash of its commit", "rename "+other)
 		checkResolve(t, g, r, []string{other})
 	}
+}
+
+// TestResolveNameOrHash: a name that is the hash of another commit, abbreviated or
+// as git describe has it, is refused, where git takes the name and says little.
+func TestResolveNameOrHash(t *testing.T) {
+	t.Parallel()
+	g := sample(t)
+	main, old, tag := g.git("rev-parse", "main"), g.git("rev-parse", "main~4"), g.git("rev-parse", "v1")
+	odd := strings.ToUpper(old[:8])
+	described, annotated := "v1-3-g"+old[:9], tag[:10]
+	g.git("branch", old[:7], "side")
+	g.git("tag", odd, "side")
+	g.git("tag", described, "side")
+	g.git("tag", annotated, "side")
+	g.git("branch", main[:6], "main")           // the same commit both ways
+	g.git("tag", "v1-0-g"+main[:7], "main")     // so
+	g.git("branch", "deadbeefdeadbeef", "side") // no commit has it
+	g.git("branch", "fix-g"+old[:7], "side")    // not what git describe writes
+	g.git("branch", old[:3], "side")            // too short for a hash
+	g.git("branch", old[:9]+"x", "side")
+	g.git("update-ref", "refs/heads/"+old, "side")
+	tree := g.git("rev-parse", "main^{tree}")
+	g.git("branch", tree[:12], "side") // a tree is no commit
+	r := g.open()
+	for name, hash := range map[string]string{old[:7]: old, odd: old, described: old, annotated: tag} {
+		for _, rev := range []string{name, name + "~1", name + "^{commit}"} {
+			_, err := r.Resolve(rev)
+			wantClass(t, err, ErrAmbiguous, `"`+rev+`"`, g.git("rev-parse", "side"), hash, "write the full name")
+		}
+	}
+	checkResolve(t, g, r, []string{
+		"refs/heads/" + old[:7], "heads/" + old[:7], "refs/tags/" + described, old[:10], old, main[:6], "v1-0-g" + main[:7], "deadbeefdeadbeef",
+		"fix-g" + old[:7], old[:3], old[:9] + "x", tree[:12],
+	})
 }
 
 // TestResolveReflog checks NAME@{N}, @{-N} and @{upstream} against git.
