@@ -55,7 +55,6 @@ type drawing struct {
 	strings.Builder
 	f   *figure
 	top int // speed at the upper edge
-	id  string
 }
 
 func (d *drawing) add(format string, args ...any) { fmt.Fprintf(&d.Builder, format, args...) }
@@ -72,10 +71,10 @@ func (d *drawing) y(speed int) float64 {
 	return plotBottom - plotHeight*float64(speed)/float64(d.top)
 }
 
-// svg draws the figure. id tells its patterns from those of other figures of
-// the page.
+// svg draws the figure. id tells its title from those of other figures of the
+// page.
 func (f *figure) svg(id string) string {
-	d := &drawing{f: f, id: id}
+	d := &drawing{f: f}
 	for _, list := range [][]level{f.Before, f.After} {
 		for _, l := range list {
 			d.top = max(d.top, l.Speed)
@@ -88,8 +87,6 @@ func (f *figure) svg(id string) string {
 	d.add(`<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %d %d" role="img" aria-labelledby="%s-t %s-d" class="chart" font-family="system-ui, sans-serif" font-size="11" data-from="%d" data-to="%d" data-left="%d" data-right="%d" data-width="%d" data-before="%s" data-after="%s" data-km="%s">`,
 		chartWidth, height, id, id, f.From, f.To, plotLeft, plotRight, chartWidth, levelData(f.Before), levelData(f.After), segmentData(f.Segments))
 	d.add("\n<title id=\"%s-t\">%s</title><desc id=\"%s-d\">%s</desc>\n", id, esc(f.Title), id, esc(f.Text))
-	d.add(`<defs><pattern id="%s-u" width="6" height="6" patternUnits="userSpaceOnUse"><path d="M0 6L6 0M-1 1L1 -1M5 7L7 5" stroke="#a33b00" stroke-width="1.1"/></pattern>`, id)
-	d.add(`<pattern id="%s-l" width="6" height="6" patternUnits="userSpaceOnUse"><path d="M0 0L6 6M-1 5L1 7M5 -1L7 1" stroke="#00508f" stroke-width="1.1"/></pattern></defs>`+"\n", id)
 	d.overview()
 	d.grid()
 	d.axis()
@@ -193,9 +190,9 @@ func (d *drawing) axis() {
 // other for lowered, lighter for run-out.
 func (d *drawing) marks() {
 	for _, m := range d.f.Marks {
-		pattern := "u"
+		color := "#a33b00"
 		if m.After < m.Before {
-			pattern = "l"
+			color = "#00508f"
 		}
 		opacity := ""
 		if m.RunOut {
@@ -203,7 +200,7 @@ func (d *drawing) marks() {
 		}
 		high, low := max(m.Before, m.After), min(m.Before, m.After)
 		x, y := d.x(m.From), d.y(high)
-		d.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="%.1f" fill="url(#%s-%s)"%s/>`, x, y, d.x(m.To)-x, d.y(low)-y, d.id, pattern, opacity)
+		d.add(`<path d="%s" stroke="%s" stroke-width="1.1" fill="none"%s/>`, hatch(x, y, d.x(m.To)-x, d.y(low)-y, m.After > m.Before), color, opacity)
 	}
 	d.add("\n")
 }

@@ -19,13 +19,20 @@ type sketch struct{ strings.Builder }
 
 func (s *sketch) add(format string, args ...any) { fmt.Fprintf(&s.Builder, format, args...) }
 
-// begin opens a picture with words for those who do not see it, and its
-// patterns.
+// begin opens a picture with words for those who do not see it.
 func (s *sketch) begin(id string, height float64, title, text string) {
 	s.add(`<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %d %.0f" role="img" aria-labelledby="%s-t %s-d" class="chart" font-family="system-ui, sans-serif" font-size="11">`, chartWidth, height, id, id)
 	s.add("\n<title id=\"%s-t\">%s</title><desc id=\"%s-d\">%s</desc>\n", id, esc(title), id, esc(text))
-	s.add(`<defs><pattern id="%s-n" width="6" height="6" patternUnits="userSpaceOnUse"><path d="M0 6L6 0M-1 1L1 -1M5 7L7 5" stroke="#999" stroke-width="1"/></pattern>`, id)
-	s.add(`<pattern id="%s-g" width="8" height="8" patternUnits="userSpaceOnUse"><path d="M0 0L8 8M8 0L0 8" stroke="#777" stroke-width="0.9"/></pattern></defs>`+"\n", id)
+}
+
+// stripes fills a box where there is no such track, crosses one of which nothing
+// is known.
+func (s *sketch) stripes(x, y, width, height float64, crossed bool) {
+	path, color := hatch(x, y, width, height, true), "#999"
+	if crossed {
+		path, color = path+hatch(x, y, width, height, false), "#777"
+	}
+	s.add(`<path d="%s" stroke="%s" fill="none"/>`, path, color)
 }
 
 // instant reads a time of a trace.
@@ -95,11 +102,8 @@ func (t *Trace) timeChart(trail *TraceTrail, id string) string {
 			to = max(from, x(instant(trail.Line[i+1].Committed)))
 		}
 		switch {
-		case r.Gap:
-			s.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="%.1f" fill="url(#%s-g)"/>`, from, y(top), max(to-from, 2), y(0)-y(top), id)
-			previous = 0
-		case r.Speed == 0:
-			s.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="%.1f" fill="url(#%s-n)"/>`, from, y(top), max(to-from, 2), y(0)-y(top), id)
+		case r.Gap || r.Speed == 0:
+			s.stripes(from, y(top), max(to-from, 2), y(0)-y(top), r.Gap)
 			previous = 0
 		default:
 			line := fmt.Sprintf("M%.1f %.1f", from, y(r.Speed))
@@ -148,7 +152,7 @@ func (t *Trace) distanceChart(stretch *TraceStretch, id string) string {
 	y := 24 + height
 	for i := range bands {
 		y -= heights[i]
-		t.band(s, id, bands, i, x, y, heights[i], top)
+		t.band(s, bands, i, x, y, heights[i], top)
 	}
 	s.add(`<text x="%d" y="16" text-anchor="end" fill="#333">since</text><text x="%d" y="16" fill="#333">km/h</text>`+"\n", traceLeft-8, traceLeft)
 	t.kilometres(s, x, from, to, 24+height)
@@ -174,17 +178,20 @@ func bandHeights(bands []TraceBand, end int64) (heights []float64, all float64) 
 }
 
 // band draws one profile as a row of boxes.
-func (t *Trace) band(s *sketch, id string, bands []TraceBand, i int, x func(int64) float64, y, h float64, top int) {
+func (t *Trace) band(s *sketch, bands []TraceBand, i int, x func(int64) float64, y, h float64, top int) {
 	b := &bands[i]
 	s.add(`<text x="%d" y="%.1f" text-anchor="end">%s</text>`, traceLeft-8, y+h-5, esc(date(b.Committed)))
 	for _, p := range b.Pieces {
 		left, width := x(p.Start), x(p.End)-x(p.Start)
-		fill, halo := fmt.Sprintf("url(#%s-n)", id), ""
+		fill, halo := "none", ""
 		if b.Gap {
-			fill, halo = fmt.Sprintf("url(#%s-g)", id), ` stroke="#fff" stroke-width="4" paint-order="stroke"`
-		} else if p.Speed > 0 {
+			halo = ` stroke="#fff" stroke-width="4" paint-order="stroke"`
+		}
+		if p.Speed > 0 && !b.Gap {
 			shade := 105 + 145*p.Speed/top
 			fill = fmt.Sprintf("#%02x%02x%02x", shade, shade, shade)
+		} else {
+			s.stripes(left, y, width, h, b.Gap)
 		}
 		s.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="%.1f" fill="%s" stroke="#fff" stroke-width="0.6"/>`, left, y, width, h, fill)
 		label := ""
