@@ -8,7 +8,7 @@ import (
 
 // Measures of the pictures of a trace, in their own units.
 const (
-	traceLeft   = 92
+	traceLeft   = 128
 	traceBottom = 250 // of the plot of a point
 	bandHeight  = 18  // the least of a band
 	bandsHeight = 420 // of all bands, where their number leaves it free
@@ -48,6 +48,23 @@ func instant(text string) int64 {
 func date(text string) string {
 	d, _, _ := strings.Cut(text, "T")
 	return d
+}
+
+// distinct writes the days of instants, with as much of the time of day as tells
+// each from those beside it.
+func distinct(instants []string) []string {
+	lengths := []int{len("2006-01-02"), len("2006-01-02T15:04"), len("2006-01-02T15:04:05")}
+	out := make([]string, len(instants))
+	for i, text := range instants {
+		cut := func(s string, n int) string { return s[:min(n, len(s))] }
+		for _, n := range lengths {
+			out[i] = strings.Replace(cut(text, n), "T", " ", 1)
+			if (i == 0 || cut(instants[i-1], n) != cut(text, n)) && (i+1 == len(instants) || cut(instants[i+1], n) != cut(text, n)) {
+				break
+			}
+		}
+	}
+	return out
 }
 
 // noTime stands in the place of the time of a commit that has none.
@@ -92,6 +109,11 @@ func (t *Trace) timeChart(trail *TraceTrail, id string) string {
 		s.add(`<path d="M%d %.1fH%d" stroke="%s"/><text x="%d" y="%.1f" text-anchor="end" fill="#333">%d</text>`, traceLeft, y(v), plotRight, map[bool]string{true: "#111", false: "#e2e2e2"}[v == 0], traceLeft-7, y(v)+4, v)
 	}
 	s.add(`<text x="%d" y="30" fill="#333">km/h</text>`+"\n", traceLeft-44)
+	days := make([]string, len(trail.Line))
+	for i, r := range trail.Line {
+		days[i] = r.Committed
+	}
+	days = distinct(days)
 	at, previous := float64(traceLeft), 0.0
 	labels := [2]float64{}
 	for i, r := range trail.Line {
@@ -116,9 +138,9 @@ func (t *Trace) timeChart(trail *TraceTrail, id string) string {
 		}
 		s.add(`<path d="M%.1f %dv5" stroke="#111"/>`, from, traceBottom)
 		for k := range labels {
-			if half := 10 * letterWidth / 2; from-half > labels[k] {
+			if half := float64(len(days[i])) * letterWidth / 2; from-half > labels[k] {
 				labels[k] = from + half + 4
-				s.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, min(from, plotRight-half), traceBottom+18+13*k, esc(date(r.Committed)))
+				s.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, min(from, plotRight-half), traceBottom+18+13*k, esc(days[i]))
 				break
 			}
 		}
@@ -145,6 +167,11 @@ func (t *Trace) distanceChart(stretch *TraceStretch, id string) string {
 			top = max(top, p.Speed)
 		}
 	}
+	days := make([]string, len(bands))
+	for i := range bands {
+		days[i] = bands[i].Committed
+	}
+	days = distinct(days)
 	heights, height := bandHeights(bands, instant(t.Revision.Committed))
 	s := &sketch{}
 	s.begin(id, height+92, "Profile over time on the line of first parents",
@@ -152,6 +179,7 @@ func (t *Trace) distanceChart(stretch *TraceStretch, id string) string {
 	y := 24 + height
 	for i := range bands {
 		y -= heights[i]
+		s.add(`<text x="%d" y="%.1f" text-anchor="end">%s</text>`, traceLeft-8, y+heights[i]-5, esc(days[i]))
 		t.band(s, bands, i, x, y, heights[i], top)
 	}
 	s.add(`<text x="%d" y="16" text-anchor="end" fill="#333">since</text><text x="%d" y="16" fill="#333">km/h</text>`+"\n", traceLeft-8, traceLeft)
@@ -180,7 +208,6 @@ func bandHeights(bands []TraceBand, end int64) (heights []float64, all float64) 
 // band draws one profile as a row of boxes.
 func (t *Trace) band(s *sketch, bands []TraceBand, i int, x func(int64) float64, y, h float64, top int) {
 	b := &bands[i]
-	s.add(`<text x="%d" y="%.1f" text-anchor="end">%s</text>`, traceLeft-8, y+h-5, esc(date(b.Committed)))
 	for _, p := range b.Pieces {
 		left, width := x(p.Start), x(p.End)-x(p.Start)
 		fill, halo := "none", ""
