@@ -3,6 +3,7 @@ package render
 import (
 	"fmt"
 	"html"
+	"slices"
 	"strings"
 
 	"speedtrail/history/assessment"
@@ -22,14 +23,14 @@ type figure struct {
 	Before, After []level
 	Marks         []mark
 	Places        []assessment.Place
-	Governs       []string // legend of level.Note, from 1
+	Elsewhere     string // where that stands for which a chart has no room
 }
 
-// level is a piece of a profile; Note is the number of its legend, 0 for none.
+// level is a piece of a profile, with the rows that govern it.
 type level struct {
 	From, To int64
 	Speed    int
-	Note     int
+	Govern   string
 }
 
 // mark is a change in a chart.
@@ -37,6 +38,7 @@ type mark struct {
 	From, To      int64
 	Before, After int
 	RunOut        bool
+	Aside         bool // of another chart: it is hatched and not labelled
 }
 
 // Measures of a chart in its own units; it scales to the width of the page.
@@ -81,9 +83,15 @@ func (f *figure) svg(id string) string {
 		}
 	}
 	d.top = (d.top + 9 + 20) / 20 * 20
-	places := f.placeLegend()
-	governs := f.governLegend()
-	height := plotBottom + 92 + 15*(len(places)+len(governs))
+	labels, unlabelled := d.placeLabels()
+	letters, unlettered := d.placeLetters()
+	cells, governs, unnumbered := d.cells()
+	legend := slices.Concat(fill(letterLegend(letters)), fill(governs), d.leftOut(unlabelled, unlettered, unnumbered))
+	height := plotBottom + 92 + 15*len(legend)
+	above := slices.ContainsFunc(cells, func(c cell) bool { return c.above })
+	if above {
+		height += numberHeight
+	}
 	d.add(`<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %d %d" role="img" aria-labelledby="%s-t %s-d" class="chart" font-family="system-ui, sans-serif" font-size="11" data-from="%d" data-to="%d" data-left="%d" data-right="%d" data-width="%d" data-before="%s" data-after="%s" data-km="%s">`,
 		chartWidth, height, id, id, f.From, f.To, plotLeft, plotRight, chartWidth, levelData(f.Before), levelData(f.After), segmentData(f.Segments))
 	d.add("\n<title id=\"%s-t\">%s</title><desc id=\"%s-d\">%s</desc>\n", id, esc(f.Title), id, esc(f.Text))
@@ -93,8 +101,8 @@ func (f *figure) svg(id string) string {
 	d.marks()
 	d.line(f.Before, `stroke="#8a8a8a" stroke-width="1.4"`)
 	d.line(f.After, `stroke="#111" stroke-width="2.6"`)
-	d.labels()
-	d.strips(places, governs)
+	d.labels(labels)
+	d.strips(letters, cells, above, legend)
 	d.add("</svg>\n")
 	return d.String()
 }
@@ -166,10 +174,15 @@ func (d *drawing) axis() {
 			first = s.Chainage / step * step
 		}
 		for c := first; c <= s.Chainage+s.To-s.From; c += step {
+			// At a joint both readings stand below; one of them here would be read as the
+			// reading.
+			if at := s.From + c - s.Chainage; at == s.From && i > 0 || at == s.To && i < len(f.Segments)-1 {
+				continue
+			}
 			x := d.x(s.From + c - s.Chainage)
 			d.add(`<path d="M%.1f %dv5" stroke="#111"/>`, x, plotBottom)
 			label := minus(km(c))
-			if half := float64(len(label)) * letterWidth / 2; x-half > free+6 && x+half < chartWidth {
+			if half := float64(len([]rune(label))) * letterWidth / 2; x-half > free+6 && x+half < chartWidth {
 				d.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, x, plotBottom+18, label)
 				free = x + half
 			}
@@ -219,122 +232,4 @@ func (d *drawing) line(list []level, style string) {
 	if path.Len() > 0 {
 		d.add(`<path d="%s" fill="none" %s/>`+"\n", path.String(), style)
 	}
-}
-
-// labels writes the signed steps above the changes, in up to three rows so that
-// none covers another. What finds no room stands in the table.
-func (d *drawing) labels() {
-	rows := [3]float64{}
-	for _, m := range d.f.Marks {
-		label := signed(m.After - m.Before)
-		if m.RunOut {
-			label += " run-out"
-		}
-		half := float64(len([]rune(label))) * 6.6 / 2
-		x := min(max((d.x(m.From)+d.x(m.To))/2, plotLeft+half), plotRight-half)
-		for r := range rows {
-			if x-half < rows[r]+4 {
-				continue
-			}
-			rows[r] = x + half
-			weight := "600"
-			if m.RunOut {
-				weight = "400"
-			}
-			y := float64(plotTop - 4 - 13*r)
-			d.add(`<path d="M%.1f %.1fV%.1f" stroke="#bbb" stroke-width="0.8"/>`, x, y+2, d.y(max(m.Before, m.After)))
-			d.add(`<text x="%.1f" y="%.1f" text-anchor="middle" font-weight="%s" font-size="12">%s</text>`, x, y, weight, label)
-			break
-		}
-	}
-	d.add("\n")
-}
-
-// letter numbers places: A to Z, then A1, B1, ...
-func letter(i int) string {
-	s := string(rune('A' + i%26))
-	if i >= 26 {
-		s += fmt.Sprint(i / 26)
-	}
-	return s
-}
-
-func (f *figure) placeLegend() []string {
-	var items []string
-	for i, p := range f.Places {
-		items = append(items, fmt.Sprintf("%s %s (%s)", letter(i), p.Name, p.Kind))
-	}
-	return fill(items)
-}
-
-func (f *figure) governLegend() []string {
-	var items []string
-	for i, g := range f.Governs {
-		items = append(items, fmt.Sprintf("%d %s", i+1, g))
-	}
-	return fill(items)
-}
-
-// fill puts items into lines of about legendLength characters.
-func fill(items []string) []string {
-	var lines []string
-	line := ""
-	for _, s := range items {
-		s = clip(s, legendLength)
-		if line != "" && len([]rune(line))+len([]rune(s))+3 > legendLength {
-			lines = append(lines, line)
-			line = ""
-		}
-		if line != "" {
-			line += "   "
-		}
-		line += s
-	}
-	if line != "" {
-		lines = append(lines, line)
-	}
-	return lines
-}
-
-// clip cuts a long text.
-func clip(s string, most int) string {
-	if r := []rune(s); len(r) > most {
-		return string(r[:most-1]) + "\u2026"
-	}
-	return s
-}
-
-// strips draws what lies below the axis: the places, and what governs each step.
-func (d *drawing) strips(places, governs []string) {
-	y := float64(plotBottom + 42)
-	d.add(`<text x="8" y="%.1f" fill="#333">places</text>`, y+11)
-	free := 0.0
-	for i, p := range d.f.Places {
-		from, to := max(d.x(max(p.From, d.f.From)), plotLeft), min(d.x(min(p.To, d.f.To)), plotRight)
-		d.add(`<path d="M%.1f %.1fv-5" stroke="#111" stroke-width="1.5"/>`, from, y)
-		if p.To > p.From {
-			d.add(`<path d="M%.1f %.1fH%.1f" stroke="#111" stroke-width="3"/>`, from, y-2, max(to, from+1))
-		}
-		if x := (from + to) / 2; x > free {
-			d.add(`<text x="%.1f" y="%.1f" text-anchor="middle">%s</text>`, x, y+11, letter(i))
-			free = x + 9
-		}
-	}
-	y += 18
-	d.add("\n"+`<text x="8" y="%.1f" fill="#333">by</text>`, y+12)
-	for _, l := range d.f.After {
-		x, w := d.x(l.From), d.x(l.To)-d.x(l.From)
-		d.add(`<rect x="%.1f" y="%.1f" width="%.1f" height="16" fill="#fff" stroke="#777" stroke-width="0.8"/>`, x, y, w)
-		if label := fmt.Sprint(l.Note); l.Note > 0 && w > float64(len(label))*letterWidth+2 {
-			d.add(`<text x="%.1f" y="%.1f" text-anchor="middle">%s</text>`, x+w/2, y+12, label)
-		}
-	}
-	y += 32
-	for _, lines := range [][]string{places, governs} {
-		for _, line := range lines {
-			d.add("\n"+`<text x="%d" y="%.1f" fill="#222" xml:space="preserve">%s</text>`, plotLeft, y, esc(line))
-			y += 15
-		}
-	}
-	d.add("\n")
 }

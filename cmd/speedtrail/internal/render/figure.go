@@ -3,47 +3,62 @@ package render
 import (
 	"fmt"
 	"io"
+	"slices"
 	"strings"
 
 	"speedtrail/history/assessment"
 )
 
-// stretchFigure arranges the chart of a stretch.
-func stretchFigure(c *assessment.Computed, s *assessment.Stretch) *figure {
+// stretchFigure arranges the chart of a part of a stretch.
+func stretchFigure(c *assessment.Computed, s *assessment.Stretch, p *panel) *figure {
 	r := &c.Routes[s.Route]
 	f := &figure{
-		Title:     stretchTitle(c, s),
-		Direction: s.Direction, From: s.WindowFrom, To: s.WindowTo, RouteLength: s.RouteLength,
-		Start: r.Start, End: r.End, Segments: s.Segments, Places: s.Places,
+		Title:     stretchTitle(c, s, p),
+		Direction: s.Direction, From: p.WindowFrom, To: p.WindowTo, RouteLength: s.RouteLength,
+		Start: r.Start, End: r.End, Elsewhere: "the table lists them",
+	}
+	for _, g := range s.Segments {
+		if from, to := f.within(g.From, g.To); from < to {
+			f.Segments = append(f.Segments, assessment.Segment{Chainage: g.Chainage + from - g.From, From: from, To: to})
+		}
+	}
+	for _, place := range s.Places {
+		if place.To >= f.From && place.From <= f.To {
+			f.Places = append(f.Places, place)
+		}
 	}
 	for _, b := range s.Before {
-		f.Before = append(f.Before, level{From: b.From, To: b.To, Speed: b.Speed})
-	}
-	numbers := map[string]int{}
-	for _, a := range s.After {
-		text := governWords(r.Sources[a.Source])
-		n, ok := numbers[text]
-		if !ok {
-			f.Governs = append(f.Governs, text)
-			n = len(f.Governs)
-			numbers[text] = n
+		if from, to := f.within(b.From, b.To); from < to {
+			f.Before = append(f.Before, level{From: from, To: to, Speed: b.Speed})
 		}
-		f.After = append(f.After, level{From: a.From, To: a.To, Speed: a.Speed, Note: n})
+	}
+	for _, a := range s.After {
+		if from, to := f.within(a.From, a.To); from < to {
+			f.After = append(f.After, level{From: from, To: to, Speed: a.Speed, Govern: governWords(r.Sources[a.Source])})
+		}
 	}
 	var sentences []string
 	for _, k := range s.Changes {
 		x := &r.Changes[k]
-		f.Marks = append(f.Marks, mark{x.Start, x.Start + x.Length, x.Before, x.After, x.RunOut})
-		sentences = append(sentences, fmt.Sprintf("km %s to %s: %d before, %d after", x.From, x.To, x.Before, x.After))
+		own := slices.Contains(p.Changes, k)
+		if from, to := f.within(x.Start, x.Start+x.Length); from < to {
+			f.Marks = append(f.Marks, mark{from, to, x.Before, x.After, x.RunOut, !own})
+		}
+		if own {
+			sentences = append(sentences, fmt.Sprintf("km %s to %s: %d before, %d after", x.From, x.To, x.Before, x.After))
+		}
 	}
 	f.Text = "Speed in km/h over chainage in km. " + strings.Join(sentences, "; ")
 	return f
 }
 
-// stretchTitle names a stretch and the trains that share its picture.
-func stretchTitle(c *assessment.Computed, s *assessment.Stretch) string {
+// within cuts a range to the window.
+func (f *figure) within(from, to int64) (int64, int64) { return max(from, f.From), min(to, f.To) }
+
+// stretchTitle names a part of a stretch and the trains that share its picture.
+func stretchTitle(c *assessment.Computed, s *assessment.Stretch, p *panel) string {
 	r := &c.Routes[s.Route]
-	first, last := r.Changes[s.Changes[0]], r.Changes[s.Changes[len(s.Changes)-1]]
+	first, last := r.Changes[p.Changes[0]], r.Changes[p.Changes[len(p.Changes)-1]]
 	return fmt.Sprintf("%s %s, %s, km %s to %s: %s", r.ID, r.Name, s.Direction, minus(first.From), minus(last.To), trainNames(c, s.Trains, 8))
 }
 
@@ -62,18 +77,10 @@ func profileFigure(p Profile) *figure {
 	f := &figure{
 		Title: p.title(), Text: "Effective speed in km/h over chainage in km.", Direction: p.Direction,
 		From: 0, To: p.length(), RouteLength: p.length(), Start: p.Pieces[0].From, End: p.Pieces[len(p.Pieces)-1].To,
-		Segments: p.Segments, Places: p.Places,
+		Segments: p.Segments, Places: p.Places, Elsewhere: "the other formats list them",
 	}
-	numbers := map[string]int{}
 	for _, piece := range p.Pieces {
-		text := governWords(piece.Sources)
-		n, ok := numbers[text]
-		if !ok {
-			f.Governs = append(f.Governs, text)
-			n = len(f.Governs)
-			numbers[text] = n
-		}
-		f.After = append(f.After, level{piece.Start, piece.End, piece.Speed, n})
+		f.After = append(f.After, level{piece.Start, piece.End, piece.Speed, governWords(piece.Sources)})
 	}
 	return f
 }

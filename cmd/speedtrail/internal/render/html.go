@@ -90,8 +90,14 @@ type pageStretch struct {
 	ID, Route, Names, Direction, RouteName string
 	Drawn                                  string // trains of the chart, where it stands for more
 	TrainIDs                               string // joined by a line feed, for the filter
-	Chart                                  template.HTML
-	Rows                                   []pageRow
+	Panels                                 []pagePanel
+}
+
+// pagePanel is a chart with its table.
+type pagePanel struct {
+	ID, Title string // no title where the stretch has one chart
+	Chart     template.HTML
+	Rows      []pageRow
 }
 
 type pageRow struct {
@@ -187,28 +193,44 @@ func (p *page) fillStretches() {
 		out := pageStretch{
 			ID: id, Route: r.ID, RouteName: r.Name, Direction: s.Direction, Names: names,
 			TrainIDs: strings.ReplaceAll(names, ", ", "\n"),
-			// The chart is built from escaped texts and numbers only.
-			Chart: template.HTML(stretchFigure(p.C, s).svg(id)),
 		}
 		if len(s.Trains) < len(g.trains) {
 			out.Drawn = trainNames(p.C, s.Trains, 0)
 		}
-		for _, k := range g.changes {
-			x := &r.Changes[k]
-			row := pageRow{
-				From: minus(x.From), To: minus(x.To), Length: metres(x.Length), Before: x.Before, After: x.After,
-				Step: signed(x.After - x.Before), Raised: x.After > x.Before, RunOut: x.RunOut, Trains: trainNames(p.C, g.trainsOf(x), 0),
-				Declared: declaredWords(p.C, r, x.Pieces), Outside: isOutside(p.C, r, x.Pieces),
+		charts := panels(r, s)
+		for n := range charts {
+			chart := &charts[n]
+			panel := pagePanel{ID: fmt.Sprintf("%s-%d", id, n+1)}
+			// The chart is built from escaped texts and numbers only.
+			panel.Chart = template.HTML(stretchFigure(p.C, s, chart).svg(panel.ID + "c"))
+			if len(charts) > 1 {
+				first, last := &r.Changes[chart.Changes[0]], &r.Changes[chart.Changes[len(chart.Changes)-1]]
+				panel.Title = fmt.Sprintf("km %s to %s (chart %d of %d)", minus(first.From), minus(last.To), n+1, len(charts))
 			}
-			for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
-				row.Because = append(row.Because, source.Visible(line))
+			for _, k := range g.changes {
+				if x := &r.Changes[k]; chart.holds(x) {
+					panel.Rows = append(panel.Rows, p.row(r, x, g.trainsOf(x)))
+					p.ShownRows++
+				}
 			}
-			out.Rows = append(out.Rows, row)
-			p.ShownRows++
+			out.Panels = append(out.Panels, panel)
 		}
 		p.Stretches = append(p.Stretches, out)
 	}
 	p.LeftOut += p.C.Stretches.LeftOut
+}
+
+// row writes a change for a table.
+func (p *page) row(r *assessment.Route, x *assessment.Change, trains []int) pageRow {
+	row := pageRow{
+		From: minus(x.From), To: minus(x.To), Length: metres(x.Length), Before: x.Before, After: x.After,
+		Step: signed(x.After - x.Before), Raised: x.After > x.Before, RunOut: x.RunOut, Trains: trainNames(p.C, trains, 0),
+		Declared: declaredWords(p.C, r, x.Pieces), Outside: isOutside(p.C, r, x.Pieces),
+	}
+	for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
+		row.Because = append(row.Because, source.Visible(line))
+	}
+	return row
 }
 
 func (p *page) fillSource() {

@@ -31,7 +31,7 @@
   var at = function (list, s) { for (var i = 0; i < list.length; i++) if (s >= list[i][0] && s < list[i][1]) return list[i]; return null; };
   Array.prototype.forEach.call(document.querySelectorAll("svg.chart"), function (svg) {
     var d = svg.dataset, before = read(d.before), after = read(d.after), km = read(d.km);
-    var out = svg.closest("article").querySelector(".pointer");
+    var out = svg.closest(".panel").querySelector(".pointer");
     svg.addEventListener("pointermove", function (e) {
       var box = svg.getBoundingClientRect(), x = (e.clientX - box.left) * d.width / box.width;
       var s = Number(d.from) + (x - d.left) / (d.right - d.left) * (d.to - d.from);
