@@ -128,10 +128,17 @@ func TestReportInBrowser(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	// A link to a stretch that the filter hides shows it.
+	choose("route", "BW5")
+	lifted := ask[bool](t, ctx, `(function () { var a = Array.from(document.querySelectorAll("#findings a")).find(a => document.querySelector(a.getAttribute("href")).closest("article[hidden]"));
+		a.click(); return document.querySelector(a.getAttribute("href")).getBoundingClientRect().height > 0 })()`)
 	w.lock.Lock()
 	defer w.lock.Unlock()
 	for _, p := range w.problems {
 		t.Error(p)
+	}
+	if !lifted {
+		t.Error("a link to what the filter hides leads nowhere")
 	}
 	if !strings.Contains(title, "Brackwater") {
 		t.Errorf("title %q", title)

@@ -19,18 +19,24 @@ func declarationIDs(c *assessment.Computed) []string {
 	return ids
 }
 
-// declaredWords says which requests hold a change; empty where that was not
+// declaredPart is a piece of a change and what holds it.
+type declaredPart struct {
+	text string
+	by   int // declaration, as pieces count them; -1: none
+}
+
+// declaredParts says which requests hold a change; nothing where that was not
 // looked at.
-func declaredWords(c *assessment.Computed, r *assessment.Route, pieces int) string {
+func declaredParts(c *assessment.Computed, r *assessment.Route, pieces int) []declaredPart {
 	if c.Options.NoRequests {
-		return ""
+		return nil
 	}
 	list := r.Pieces[pieces]
 	if len(list) == 0 {
-		return "outside"
+		return []declaredPart{{"outside", -1}}
 	}
 	ids := declarationIDs(c)
-	var parts []string
+	var parts []declaredPart
 	for _, p := range list {
 		text := "outside"
 		if p.By >= 0 {
@@ -42,9 +48,18 @@ func declaredWords(c *assessment.Computed, r *assessment.Route, pieces int) stri
 		if len(list) > 1 {
 			text = minus(p.From) + " to " + minus(p.To) + " " + text
 		}
-		parts = append(parts, text)
+		parts = append(parts, declaredPart{text, p.By})
 	}
-	return strings.Join(parts, "; ")
+	return parts
+}
+
+// declaredWords says which requests hold a change in one text.
+func declaredWords(c *assessment.Computed, r *assessment.Route, pieces int) string {
+	var words []string
+	for _, p := range declaredParts(c, r, pieces) {
+		words = append(words, p.text)
+	}
+	return strings.Join(words, "; ")
 }
 
 // declaredFamily says which requests hold changes that differ only by the length of

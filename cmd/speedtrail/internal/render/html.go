@@ -36,6 +36,8 @@ var pageTemplate = sync.OnceValue(func() *template.Template {
 	return template.Must(template.New("page").Funcs(template.FuncMap{
 		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
 		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords,
+		"link": func(text, id string) pageLink { return pageLink{text, id} },
+		"step": func(p page, row pageRow) pageStep { return pageStep{row, p.C.Options.NoRequests} },
 	}).Parse(pageText))
 })
 
@@ -47,6 +49,7 @@ type page struct {
 	Title     string
 	State     string
 	Verdict   string
+	Contents  []pageLink
 	Base      string
 	Target    string
 	Stretches []pageStretch
@@ -59,7 +62,7 @@ type page struct {
 	CSS       template.CSS
 	JS        template.JS
 	Policy    string
-	Routes    []string // of the stretches that are drawn
+	Routes    []string // of the stretches that are drawn and of the changes that are hidden
 	Undrawn   []string // routes that differ and have none
 	Trains    []string
 	Track     []pageTrack
@@ -80,6 +83,12 @@ type page struct {
 
 	Standing string
 	Signed   []pageSigned
+
+	Hidden     []pageHidden
+	HiddenLeft int
+	// Requests has, for each request, where the page lists its declarations.
+	Requests []string
+	anchors  anchors
 
 	Rows, Quiet                                []pageSourceRow
 	RowsLeft, QuietLeft                        int
@@ -106,9 +115,16 @@ type pageRow struct {
 	Before, After    int
 	Step             string
 	Raised, RunOut   bool
-	Declared         string
+	Declared         []pageLink
 	Outside          bool
-	Because          []string
+	Because          []pageLink
+	trains           []int
+}
+
+// pageStep is a row with what the whole table is like.
+type pageStep struct {
+	Row        pageRow
+	NoRequests bool
 }
 
 type pageFile struct {
@@ -120,7 +136,7 @@ type pageLine struct {
 	Number, Op, Text, Class string
 }
 
-type pageTrack struct{ Route, Name, Direction, From, To, Length, Fate string }
+type pageTrack struct{ Route, Name, Direction, From, To, Length, Fate, Command string }
 
 type pageTrain struct{ ID, Fate, Before, After string }
 
@@ -141,13 +157,15 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	p.CSS = template.CSS(strings.Replace(pageCSS, "HEADER", header, 1))
 	p.Policy = "default-src 'none'; style-src '" + inlineHash(string(p.CSS)) + "'; script-src '" + inlineHash(pageJS) + "'"
 	p.Times = runningTimes(c)
+	// What is pointed to comes before what points to it.
+	p.fillRows()
+	p.fillDeclared()
+	p.fillStretches()
+	p.fillHidden()
 	p.fillFindings()
 	p.fillSigned()
-	p.fillStretches()
-	p.fillDeclared()
 	p.fillFleet()
 	p.fillFigures()
-	p.fillRows()
 	p.fillSource()
 	for _, t := range c.Trains {
 		p.Trains = append(p.Trains, t.ID)
@@ -156,16 +174,18 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 		}
 	}
 	for _, route := range c.Routes {
-		switch {
-		case slices.ContainsFunc(p.Stretches, func(s pageStretch) bool { return s.Route == route.ID }):
+		drawn := slices.ContainsFunc(p.Stretches, func(s pageStretch) bool { return s.Route == route.ID })
+		if drawn || slices.ContainsFunc(p.Hidden, func(h pageHidden) bool { return h.Route == route.ID }) {
 			p.Routes = append(p.Routes, route.ID)
-		case len(route.Changes) > 0:
+		}
+		if !drawn && len(route.Changes) > 0 {
 			p.Undrawn = append(p.Undrawn, route.ID)
 		}
 		for _, t := range route.Track {
-			p.Track = append(p.Track, pageTrack{route.ID, route.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate})
+			p.Track = append(p.Track, pageTrack{route.ID, route.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate, p.profileCommand(route.ID, t)})
 		}
 	}
+	p.fillContents()
 	return pageTemplate().Execute(w, p)
 }
 
@@ -209,7 +229,8 @@ func (p *page) fillStretches() {
 			}
 			for _, k := range g.changes {
 				if x := &r.Changes[k]; chart.holds(x) {
-					panel.Rows = append(panel.Rows, p.row(r, x, g.trainsOf(x)))
+					panel.Rows, _ = p.appendRow(panel.Rows, r, x, g.trainsOf(x))
+					p.anchors.add(r, x, panel.ID, false)
 					p.ShownRows++
 				}
 			}
@@ -220,17 +241,33 @@ func (p *page) fillStretches() {
 	p.LeftOut += p.C.Stretches.LeftOut
 }
 
-// row writes a change for a table.
-func (p *page) row(r *assessment.Route, x *assessment.Change, trains []int) pageRow {
+// appendRow adds a change to a table. Changes that read the same are one row, for
+// the trains of all of them. at is the row that has it.
+func (p *page) appendRow(rows []pageRow, r *assessment.Route, x *assessment.Change, trains []int) (out []pageRow, at int) {
 	row := pageRow{
 		From: minus(x.From), To: minus(x.To), Length: metres(x.Length), Before: x.Before, After: x.After,
-		Step: signed(x.After - x.Before), Raised: x.After > x.Before, RunOut: x.RunOut, Trains: trainNames(p.C, trains, 0),
-		Declared: declaredWords(p.C, r, x.Pieces), Outside: isOutside(p.C, r, x.Pieces),
+		Step: signed(x.After - x.Before), Raised: x.After > x.Before, RunOut: x.RunOut,
+		Declared: p.declaredLinks(r, x.Pieces), Outside: isOutside(p.C, r, x.Pieces),
+		Because: p.becauseLinks(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]),
 	}
-	for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
-		row.Because = append(row.Because, source.Visible(line))
+	for i := range rows {
+		old := &rows[i]
+		if row.equal(old) {
+			old.trains = append(old.trains, trains...)
+			slices.Sort(old.trains)
+			old.trains = slices.Compact(old.trains)
+			old.Trains = trainNames(p.C, old.trains, 0)
+			return rows, i
+		}
 	}
-	return row
+	row.trains, row.Trains = slices.Clone(trains), trainNames(p.C, trains, 0)
+	return append(rows, row), len(rows)
+}
+
+// equal tells whether two rows read the same but for the trains.
+func (r *pageRow) equal(o *pageRow) bool {
+	return r.From == o.From && r.To == o.To && r.Length == o.Length && r.Before == o.Before && r.After == o.After && r.RunOut == o.RunOut &&
+		slices.Equal(r.Declared, o.Declared) && slices.Equal(r.Because, o.Because)
 }
 
 func (p *page) fillSource() {

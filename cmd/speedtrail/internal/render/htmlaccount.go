@@ -17,11 +17,11 @@ type pageFindings struct {
 	More           int
 }
 
-type pageFinding struct{ Place, Text, Row, Accepted, Example string }
+type pageFinding struct{ Place, Link, Text, Row, Accepted, Example string }
 
 type pageDeclaration struct {
-	Request, Row, Route, Direction, From, To, Effect, Trains, Seen string
-	Unseen                                                         bool
+	ID, Request, Row, Route, Direction, From, To, Effect, Trains, Seen string
+	Unseen                                                             bool
 }
 
 type pageFleet struct {
@@ -40,7 +40,7 @@ type pageLineItem struct {
 }
 
 type pageSourceRow struct {
-	File, Lines, Words, Effect string
+	ID, File, Lines, Words, Effect string
 }
 
 func (p *page) fillFindings() {
@@ -51,7 +51,7 @@ func (p *page) fillFindings() {
 				out.More = len(g.List) - i
 				break
 			}
-			out.List = append(out.List, pageFinding{source.Visible(findingPlace(f)), source.Visible(f.Text), source.Visible(findingRow(f)), source.Visible(f.Accepted), source.VisibleLines(f.Example)})
+			out.List = append(out.List, pageFinding{source.Visible(findingPlace(f)), p.anchors.of(f), source.Visible(f.Text), source.Visible(findingRow(f)), source.Visible(f.Accepted), source.VisibleLines(f.Example)})
 		}
 		p.Findings = append(p.Findings, out)
 	}
@@ -63,13 +63,18 @@ func (p *page) fillFindings() {
 func (p *page) fillDeclared() {
 	p.Reconciliation = reconciliation(p.C)
 	for _, q := range p.C.Requests {
-		for _, d := range q.Declares {
+		p.Requests = append(p.Requests, "")
+		for i, d := range q.Declares {
+			id := declarationAnchor(len(p.Declared))
+			if i == 0 {
+				p.Requests[len(p.Requests)-1] = id
+			}
 			seen := seenWords(d)
 			if p.C.Options.NoRequests {
 				seen = "not looked at"
 			}
 			p.Declared = append(p.Declared, pageDeclaration{
-				Request: q.ID, Row: source.Visible(q.File) + ":" + itoa(d.Line), Route: d.Route, Direction: d.Direction, From: minus(d.From), To: minus(d.To),
+				ID: id, Request: q.ID, Row: source.Visible(q.File) + ":" + itoa(d.Line), Route: d.Route, Direction: d.Direction, From: minus(d.From), To: minus(d.To),
 				Effect: d.Effect, Trains: declaredTrains(d), Seen: seen, Unseen: d.Unseen,
 			})
 		}
@@ -141,8 +146,14 @@ func (p *page) fillRows() {
 			}
 			if d.Effect == "none" {
 				row.Effect = strings.TrimPrefix(row.Effect, "no change: ")
+				if len(p.Quiet) < mostHTMLRows {
+					row.ID = p.anchors.addRow(f, d)
+				}
 				p.Quiet = append(p.Quiet, row)
 				continue
+			}
+			if len(p.Rows) < mostHTMLRows {
+				row.ID = p.anchors.addRow(f, d)
 			}
 			p.Rows = append(p.Rows, row)
 		}

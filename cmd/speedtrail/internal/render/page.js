@@ -4,7 +4,7 @@
   if (form) {
     form.hidden = false;
     var train = document.getElementById("train"), route = document.getElementById("route"), count = document.getElementById("count");
-    var articles = Array.prototype.slice.call(document.querySelectorAll("article.stretch"));
+    var articles = Array.prototype.slice.call(document.querySelectorAll("article"));
     var show = function () {
       var n = 0;
       articles.forEach(function (a) {
@@ -12,10 +12,15 @@
         a.hidden = !hit;
         if (hit) n++;
       });
-      count.textContent = n === articles.length ? "" : n + " of " + articles.length + " stretches shown";
+      count.textContent = n === articles.length ? "" : n + " of " + articles.length + " shown";
     };
     train.addEventListener("change", show);
     route.addEventListener("change", show);
+    // A link to what the filter hides lifts the filter.
+    document.addEventListener("click", function (e) {
+      var a = e.target.closest('a[href^="#"]'), to = a && document.getElementById(a.getAttribute("href").slice(1));
+      if (to && to.closest("[hidden]")) { train.value = route.value = ""; show(); }
+    });
   }
   // On paper nothing is folded away.
   var folded = [];

@@ -1,0 +1,100 @@
+package render
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"speedtrail/history/assessment"
+	"speedtrail/schema/source"
+)
+
+// pageHidden is the changes of one direction of a route that temporary
+// restrictions hide today.
+type pageHidden struct {
+	Route, RouteName, Direction string
+	TrainIDs                    string // joined by a line feed, for the filter
+	Rows                        []pageRow
+	IDs                         []string // of the rows
+}
+
+// fillHidden lists the changes that appear when temporary restrictions end.
+func (p *page) fillHidden() {
+	shown := 0
+	for i := range p.C.Routes {
+		r := &p.C.Routes[i]
+		for list := r.Masked; len(list) > 0; {
+			n := 1
+			for n < len(list) && list[n].Direction == list[0].Direction {
+				n++
+			}
+			room := min(n, mostHTMLRows-shown)
+			p.HiddenLeft += n - room
+			if room > 0 {
+				p.Hidden = append(p.Hidden, p.hiddenTable(r, list[:room], shown))
+				shown += room
+			}
+			list = list[n:]
+		}
+	}
+}
+
+// hiddenTable arranges the changes of one direction; n is how many the page has so
+// far.
+func (p *page) hiddenTable(r *assessment.Route, list []assessment.Change, n int) pageHidden {
+	out := pageHidden{Route: r.ID, RouteName: r.Name, Direction: list[0].Direction}
+	var trains []int
+	for k := range list {
+		var at int
+		out.Rows, at = p.appendRow(out.Rows, r, &list[k], list[k].Trains)
+		p.anchors.add(r, &list[k], hiddenAnchor(n+at), true)
+		trains = append(trains, list[k].Trains...)
+	}
+	for k := range out.Rows {
+		out.IDs = append(out.IDs, hiddenAnchor(n+k))
+	}
+	slices.Sort(trains)
+	out.TrainIDs = strings.ReplaceAll(trainNames(p.C, slices.Compact(trains), 0), ", ", "\n")
+	return out
+}
+
+func hiddenAnchor(i int) string { return fmt.Sprintf("h%d", i+1) }
+
+// profileCommand writes the command that shows the speeds on track that only one
+// revision has: a comparison has none.
+func (p *page) profileCommand(route string, t assessment.TrackPiece) string {
+	side := &p.C.Target
+	if t.Fate == "removed" {
+		side = &p.C.Base
+	}
+	words := []string{"speedtrail", "profile"}
+	if side.Commit != "" {
+		words = append(words, short(side.Commit))
+	}
+	if p.C.Folder != "." {
+		words = append(words, "--data="+p.C.Folder)
+	}
+	words = append(words, "--route="+route, "--direction="+t.Direction)
+	for _, train := range p.C.Trains {
+		if t.Fate == "removed" && train.Before == nil || t.Fate != "removed" && train.After == nil {
+			continue
+		}
+		words = append(words, "--train="+train.ID)
+		break
+	}
+	for i, w := range words {
+		words[i] = shellWord(w)
+	}
+	return source.Visible(strings.Join(words, " "))
+}
+
+// shellWord quotes a word for a shell where it needs that.
+func shellWord(s string) string {
+	plain := func(r rune) bool {
+		return r >= 'a' && r <= 'z' || r >= 'A' && r <= 'Z' || r >= '0' && r <= '9' || strings.ContainsRune("-_=./,:+@", r)
+	}
+	if s != "" && strings.IndexFunc(s, func(r rune) bool { return !plain(r) }) < 0 {
+		return s
+	}
+	return "'" + strings.ReplaceAll(s, "'", `'\''`) + "'"
+}
