@@ -132,6 +132,13 @@ func TestReportInBrowser(t *testing.T) {
 	choose("route", "BW5")
 	lifted := ask[bool](t, ctx, `(function () { var a = Array.from(document.querySelectorAll("#findings a")).find(a => document.querySelector(a.getAttribute("href")).closest("article[hidden]"));
 		a.click(); return document.querySelector(a.getAttribute("href")).getBoundingClientRect().height > 0 })()`)
+	// On a telephone only the charts are wider than the screen, and say so.
+	if err := chromedp.Do(ctx, chromedp.EmulateViewport(390, 844, chromedp.EmulateMobile)); err != nil {
+		t.Fatal(err)
+	}
+	cutOff := ask[string](t, ctx, `Array.from(document.querySelectorAll("body *")).filter(e => !e.closest("svg") && e.getBoundingClientRect().right > innerWidth).slice(0, 5).map(e => e.tagName + "." + e.className).join(" ")`)
+	phone := ask[int](t, ctx, `document.documentElement.scrollWidth`)
+	cue := ask[string](t, ctx, `getComputedStyle(document.querySelector(".figure"), "::before").content`)
 	w.lock.Lock()
 	defer w.lock.Unlock()
 	for _, p := range w.problems {
@@ -139,6 +146,9 @@ func TestReportInBrowser(t *testing.T) {
 	}
 	if !lifted {
 		t.Error("a link to what the filter hides leads nowhere")
+	}
+	if cutOff != "" || phone > 390 || !strings.Contains(cue, "wider than the screen") {
+		t.Errorf("at a width of 390: the page is %d wide, cut off are %q, the charts say %q", phone, cutOff, cue)
 	}
 	if !strings.Contains(title, "Brackwater") {
 		t.Errorf("title %q", title)
