@@ -40,6 +40,12 @@ func TestTracePages(t *testing.T) {
 		charts := ask[int](t, ctx, `document.querySelectorAll("svg").length`)
 		body := ask[string](t, ctx, `document.body.innerText`)
 		wide := ask[int](t, ctx, `document.documentElement.scrollWidth - document.documentElement.clientWidth`)
+		if err := chromedp.Do(ctx, chromedp.EmulateViewport(390, 844, chromedp.EmulateMobile)); err != nil {
+			t.Fatal(name, err)
+		}
+		if phone := ask[int](t, ctx, `document.documentElement.scrollWidth`); phone > 390 {
+			t.Errorf("%s: %d wide at a width of 390", name, phone)
+		}
 		w.lock.Lock()
 		if len(w.problems) > 0 || w.requests != 1 || wide > 0 {
 			t.Errorf("%s: %v, %d requests, %d pixels wider than the window", name, w.problems, w.requests, wide)

@@ -21,6 +21,12 @@ var traceTemplate = sync.OnceValue(func() *template.Template {
 
 const traceCSS = `
 .gap > * { color: #555; font-style: italic; } .aside > * { color: #555; }
+@media screen and (max-width: 720px) {
+  .gaps.stack td { grid-column: 1 / -1; }
+  .point tr:not(.gap) > td:nth-child(1)::before { content: "committed"; } .point tr:not(.gap) > td:nth-child(2)::before { content: "before, km/h"; } .point tr:not(.gap) > td:nth-child(3)::before { content: "after, km/h"; } .point tr:not(.gap) > td:nth-child(4)::before { content: "commit"; } .point tr:not(.gap) > td:nth-child(5)::before { content: "because of"; } .point tr:not(.gap) > td:nth-child(6)::before { content: "request, assessment"; }
+  .dates tr:not(.gap) > td:nth-child(1)::before { content: "from, km"; } .dates tr:not(.gap) > td:nth-child(2)::before { content: "to, km"; } .dates tr:not(.gap) > td:nth-child(3)::before { content: "length, m"; } .dates tr:not(.gap) > td:nth-child(4)::before { content: "km/h"; } .dates tr:not(.gap) > td:nth-child(5)::before { content: "dates from"; } .dates tr:not(.gap) > td:nth-child(6)::before { content: "commit"; } .dates tr:not(.gap) > td:nth-child(7)::before { content: "rows of today"; } .dates tr:not(.gap) > td:nth-child(8)::before { content: "request, assessment"; }
+  .gaps tr:not(.gap) > td:nth-child(1)::before { content: "committed"; } .gaps tr:not(.gap) > td:nth-child(2)::before { content: "commit"; } .gaps tr:not(.gap) > td:nth-child(3)::before { content: "first fault"; }
+}
 `
 
 // tracePage is what the template shows.
