@@ -182,11 +182,7 @@ func (l *loading) list() error {
 			l.refused[e.Name()] = true
 		}
 		if !dir && !file {
-			known := []string{datasetFile, trainsFile, acceptedFile, signoffFile, signersFile}
-			if e.IsDir() {
-				known = []string{routesDir, requestsDir}
-			}
-			mistyped(&l.faults, e, e.Name(), known)
+			mistyped(&l.faults, e.Name(), e.Name(), namesBeside(e.IsDir()))
 		}
 	}
 	if i := slices.IndexFunc(root, func(e fs.DirEntry) bool { return e.Name() == routesDir && e.IsDir() }); i < 0 {

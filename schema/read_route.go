@@ -38,7 +38,7 @@ func (r *reader) route(folder string) *Route {
 		case !checkType(&r.faults, e, p, false):
 		case slices.Contains(routeFiles[:], e.Name()):
 			here.add(e)
-		case !isData(e.Name()) && mistyped(&r.faults, e, p, routeFiles[:]):
+		case !isData(e.Name()) && mistyped(&r.faults, e.Name(), p, routeFiles[:]):
 		case isData(e.Name()):
 			r.faults.Add(source.Position{File: p}, "unknown file, a route has %s; another name would hide data", strings.Join(routeFiles[:], ", "))
 		}

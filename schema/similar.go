@@ -1,7 +1,6 @@
 package schema
 
 import (
-	"io/fs"
 	"path"
 	"strings"
 
@@ -10,8 +9,7 @@ import (
 
 // mistyped records a file or folder whose name is nearly one that is read: it
 // would hide data. Copies that editors leave behind are not meant.
-func mistyped(faults *source.Collector, e fs.DirEntry, p string, known []string) bool {
-	name := e.Name()
+func mistyped(faults *source.Collector, name, p string, known []string) bool {
 	for _, ending := range []string{"~", ".bak", ".orig", ".rej", ".swp", ".tmp", ".lock"} {
 		if strings.HasSuffix(name, ending) {
 			return false
@@ -24,6 +22,21 @@ func mistyped(faults *source.Collector, e fs.DirEntry, p string, known []string)
 		}
 	}
 	return false
+}
+
+// NearlyNamed tells whether an entry of a data set's folder has nearly the name of
+// one that is read there, which Load refuses.
+func NearlyNamed(name string, folder bool) bool {
+	var faults source.Collector
+	return mistyped(&faults, name, name, namesBeside(folder))
+}
+
+// namesBeside lists the names of what is read in a data set's folder.
+func namesBeside(folder bool) []string {
+	if folder {
+		return []string{routesDir, requestsDir}
+	}
+	return []string{datasetFile, trainsFile, acceptedFile, signoffFile, signersFile}
 }
 
 // near tells whether two names differ in at most two letters, and in the ending in

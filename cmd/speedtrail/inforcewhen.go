@@ -5,6 +5,7 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"slices"
 	"strings"
 	"time"
 
@@ -29,11 +30,18 @@ type inForceAnswer struct {
 	Subject string         `json:"subject"`
 	// Routes are the records of single routes that hold then in place of Record,
 	// where no route is asked for.
-	Routes []serviceRecord `json:"routes"`
+	Routes []heldRecord `json:"routes"`
 	// Signed are the decisions on the assessments that led to the revision.
 	Signed []evidence   `json:"signed"`
 	Speeds []pointSpeed `json:"speeds"`
 	Head   string       `json:"head"`
+}
+
+// heldRecord is a record with the routes on which it is the one that holds at an
+// instant: of those that it names, later records can have taken some.
+type heldRecord struct {
+	serviceRecord
+	HoldsOn []string `json:"holds_on"`
 }
 
 // evidence is a decision that somebody signed.
@@ -69,7 +77,7 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 	if err != nil {
 		return err
 	}
-	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Route: route, At: at, Routes: []serviceRecord{}, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
+	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Route: route, At: at, Routes: []heldRecord{}, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
 	now, _ := line.InForceAt(folder, route, when)
 	if route == "" {
 		answer.Routes = recordsOfRoutes(line, folder, when, now)
@@ -88,18 +96,24 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 }
 
 // recordsOfRoutes gives the records that hold on some routes in place of that of the
-// whole network.
-func recordsOfRoutes(line *approval.Line, folder string, when time.Time, network *approval.Record) []serviceRecord {
-	list := []serviceRecord{}
-	seen := map[int64]bool{}
-	for _, r := range line.Standing(folder) {
-		for _, id := range r.Routes {
-			x, _ := line.InForceAt(folder, id, when)
-			if x == nil || network != nil && x.Entry == network.Entry || seen[x.Entry.Seq] {
-				continue
-			}
-			seen[x.Entry.Seq] = true
-			list = append(list, serviceRecordOf(history.ServiceOf(line, *x)))
+// whole network, by instant.
+func recordsOfRoutes(line *approval.Line, folder string, when time.Time, network *approval.Record) []heldRecord {
+	standing := line.Standing(folder)
+	var ids []string
+	for _, r := range standing {
+		ids = append(ids, r.Routes...)
+	}
+	slices.Sort(ids)
+	held := map[int64][]string{} // entry -> routes
+	for _, id := range slices.Compact(ids) {
+		if x, _ := line.InForceAt(folder, id, when); x != nil && (network == nil || x.Entry != network.Entry) {
+			held[x.Entry.Seq] = append(held[x.Entry.Seq], id)
+		}
+	}
+	list := []heldRecord{}
+	for _, r := range standing {
+		if on := held[r.Entry.Seq]; on != nil {
+			list = append(list, heldRecord{serviceRecordOf(history.ServiceOf(line, r)), on})
 		}
 	}
 	return list
@@ -182,14 +196,25 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 }
 
 func printInForce(w io.Writer, x *inForceAnswer, width int) error {
-	for _, r := range x.Routes {
-		fmt.Fprintf(w, "On single routes at %s:\n%s\n\n", x.When, wrap(r.words(), width))
+	var apart []string
+	if len(x.Routes) > 0 {
+		fmt.Fprintf(w, "On single routes at %s:\n", x.When)
+		for _, r := range x.Routes {
+			apart = append(apart, r.HoldsOn...)
+			fmt.Fprintf(w, "%s\n", wrap(source.Visible(joined(r.HoldsOn))+": "+r.words(), width))
+		}
+		fmt.Fprintln(w)
 	}
 	if x.Record == nil {
 		_, err := fmt.Fprintf(w, "Nothing is recorded as in force on %s at %s; speedtrail inforce lists what is.\nhead of the ledger %s\n", cmp.Or(source.Visible(x.Route), "the whole network"), x.When, x.Head)
 		return err
 	}
-	fmt.Fprintf(w, "In force at %s:\n%s\n%s\n", x.When, wrap(x.Record.words(), width), wrap(source.Visible("commit "+x.Commit+", "+x.Subject), width))
+	except := ""
+	if len(apart) > 0 {
+		slices.Sort(apart)
+		except = ", except on " + source.Visible(joined(apart))
+	}
+	fmt.Fprintf(w, "In force at %s%s:\n%s\n%s\n", x.When, except, wrap(x.Record.words(), width), wrap(source.Visible("commit "+x.Commit+", "+x.Subject), width))
 	direction := ""
 	for _, s := range x.Speeds {
 		if s.Direction != direction {

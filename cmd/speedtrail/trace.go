@@ -16,6 +16,7 @@ import (
 	"speedtrail/schema"
 	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
+	"speedtrail/schema/source"
 	"speedtrail/schema/unit"
 )
 
@@ -133,6 +134,7 @@ func (a *app) trace(ctx context.Context, call traceCall) error {
 	if err := t.describe(ctx); err != nil {
 		return err
 	}
+	a.remarkGaps(&t.doc)
 	return a.write(func(w io.Writer) error {
 		switch a.format {
 		case "csv":
@@ -144,6 +146,26 @@ func (a *app) trace(ctx context.Context, call traceCall) error {
 		}
 		return render.TraceText(w, &t.doc, a.style())
 	})
+}
+
+// mostGapRemarks is how many revisions are named that do not load.
+const mostGapRemarks = 10
+
+// remarkGaps says what the rows of CSV, which are changes, leave out.
+func (a *app) remarkGaps(t *render.Trace) {
+	if a.format != "csv" {
+		return
+	}
+	for i, g := range t.Gaps {
+		if i == mostGapRemarks {
+			a.remark("! and %d more revisions that do not load; the other formats have them", len(t.Gaps)-i)
+			break
+		}
+		a.remark("! revision %s does not load and has no row: %s", t.Commits[g.Commit].Hash, source.Visible(g.Fault))
+	}
+	for _, c := range t.Cut {
+		a.remark("! the clone is shallow: what came before revision %s is not known", t.Commits[c].Hash)
+	}
 }
 
 // pastOf gives the past of the route, from the index where that is possible.

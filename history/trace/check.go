@@ -118,7 +118,7 @@ func (k *checker) frame(ctx context.Context, l *listing) (*frameInfo, error) {
 	var strays []fs.DirEntry
 	for _, e := range root {
 		folder := e.IsDir() && (e.Name() == "routes" || e.Name() == "requests")
-		if !folder && (e.Name() == "routes" || e.Name() == "requests" || slices.Contains(frameFiles, e.Name())) {
+		if !folder && (e.Name() == "routes" || e.Name() == "requests" || slices.Contains(frameFiles, e.Name()) || schema.NearlyNamed(e.Name(), e.IsDir())) {
 			m.file(e, files)
 		}
 		if folder && e.Name() == "routes" && l.strays != "" {

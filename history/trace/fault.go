@@ -12,8 +12,8 @@ import (
 // fault gives the first fault of a commit's data set. Where there is a base,
 // which is sound, only what differs from it has to be looked at.
 func (r *Reader) fault(ctx context.Context, l, base *listing, list []change) (string, error) {
-	if l.absent {
-		return "", nil
+	if l.absent || l.fault != "" {
+		return l.fault, nil
 	}
 	f, err := r.check.frame(ctx, l)
 	if err != nil {

@@ -7,6 +7,7 @@ import (
 
 	"speedtrail/history/revision"
 	"speedtrail/schema"
+	"speedtrail/schema/source"
 )
 
 // frameFiles are the files beside the routes and requests.
@@ -21,6 +22,8 @@ type listing struct {
 	routes Hash // of the folder routes/; zero: there is none
 	// strays names what else stands in routes/.
 	strays string
+	// fault is what makes the folder itself none that is read.
+	fault string
 	// frame is the same for equal frames: everything but routes and requests.
 	frame    string
 	requests string // identity of the folder, empty for none
@@ -46,6 +49,12 @@ type lister struct {
 	folder []string // the names on the way to the data set's folder
 	recent [8]recentTree
 	next   int
+	near   map[nearName]bool // what schema.NearlyNamed has said
+}
+
+type nearName struct {
+	name   string
+	folder bool
 }
 
 // recentTree is a folder routes/ that was read lately.
@@ -78,7 +87,10 @@ func (l *lister) list(commit, root Hash, before *listing) (*listing, []change, e
 		}
 		e, ok := at.Find(name)
 		if !ok || !e.Mode.IsDir() {
-			out.tree, out.absent = Hash{}, true
+			out.tree, out.absent = Hash{}, !ok
+			if ok {
+				out.fault = source.Quote(name) + " is a file or a link, and not a folder with a data set"
+			}
 			list, err := l.changes(before, out)
 			return out, list, err
 		}
@@ -105,12 +117,30 @@ func (l *lister) list(commit, root Hash, before *listing) (*listing, []change, e
 		case name == "routes" || name == "requests" || slices.Contains(frameFiles, name):
 			out.absent = out.absent && name != "dataset.toml" && name != "trains.toml"
 			frame.WriteString(name + "\x00" + e.Mode.Type().String() + string(e.Hash[:]) + "\n")
+		case l.nearlyNamed(name, e.Mode.IsDir()):
+			// It is refused, whatever it holds.
+			out.absent = false
+			frame.WriteString(name + "\x00" + e.Mode.Type().String() + "\n")
 		}
 	}
 	list, err := l.changes(before, out)
 	frame.WriteString(out.strays)
 	out.frame = frame.String()
 	return out, list, err
+}
+
+// nearlyNamed is schema.NearlyNamed, which is asked about each name once.
+func (l *lister) nearlyNamed(name string, folder bool) bool {
+	key := nearName{name, folder}
+	near, known := l.near[key]
+	if !known {
+		if l.near == nil || len(l.near) >= 10_000 {
+			l.near = map[nearName]bool{}
+		}
+		near = schema.NearlyNamed(name, folder)
+		l.near[key] = near
+	}
+	return near
 }
 
 // changes lists the folders that differ between two listings, in byte order, and

@@ -208,7 +208,7 @@ func (r *Reader) loadNew(ctx context.Context, batch []found) error {
 	var wants []want
 	for _, x := range batch {
 		l := x.listing
-		if l.absent || len(x.changes) == 0 {
+		if l.absent || l.fault != "" || len(x.changes) == 0 {
 			continue
 		}
 		f, err := r.check.frame(ctx, l)

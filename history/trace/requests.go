@@ -92,7 +92,7 @@ func Newest(ctx context.Context, repo *revision.Repo, folder string, commit Hash
 	}
 	m := newMount()
 	for _, e := range root {
-		if slices.Contains(frameFiles, e.Name()) {
+		if slices.Contains(frameFiles, e.Name()) || schema.NearlyNamed(e.Name(), e.IsDir()) {
 			m.file(e, files)
 		}
 	}
