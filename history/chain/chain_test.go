@@ -55,6 +55,10 @@ func TestCheckFindsTampering(t *testing.T) {
 		{"time", func(l []Entry) []Entry { l[3].Time = "2026-03-01T12:09:00Z"; return l }, ErrHash},
 		{"time's form", func(l []Entry) []Entry { l[3].Time = "2026-03-01 12:03:00"; return l }, ErrTime},
 		{"time that is none", func(l []Entry) []Entry { l[3].Time = "2026-02-30T12:03:00Z"; return l }, ErrTime},
+		{"time with a fraction, hashed again", func(l []Entry) []Entry { return retimed(l, "2026-03-01T12:03:00.5Z") }, ErrTime},
+		{"time with a comma, hashed again", func(l []Entry) []Entry { return retimed(l, "2026-03-01T12:03:00,5Z") }, ErrTime},
+		{"time with a short hour, hashed again", func(l []Entry) []Entry { return retimed(l, "2026-03-01T2:03:00Z") }, ErrTime},
+		{"time of another zone, hashed again", func(l []Entry) []Entry { return retimed(l, "2026-03-01T13:03:00+01:00") }, ErrTime},
 		{"kind", func(l []Entry) []Entry { l[3].Kind = Ledger; return l }, ErrHash},
 		{"hash", func(l []Entry) []Entry { l[3].Hash = l[2].Hash; return l }, ErrHash},
 		{"previous", func(l []Entry) []Entry { l[3].Previous = l[1].Hash; return l }, ErrPrevious},
@@ -80,6 +84,14 @@ func TestCheckFindsTampering(t *testing.T) {
 			t.Errorf("%s: got %v, want %v", test.name, err, test.want)
 		}
 	}
+}
+
+// retimed gives an entry another time and the hash that goes with it: only the form
+// of the time is wrong.
+func retimed(l []Entry, time string) []Entry {
+	l[3].Time = time
+	l[3].Hash = l[3].sum()
+	return l
 }
 
 // The same hash by the sha256sum program, from the package comment alone.

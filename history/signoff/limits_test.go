@@ -2,6 +2,7 @@ package signoff
 
 import (
 	"errors"
+	"fmt"
 	"strings"
 	"testing"
 )
@@ -58,5 +59,36 @@ func TestLimits(t *testing.T) {
 		if !errors.Is(err, ErrSignature) || strings.Contains(err.Error(), "longer than 16384 bytes") != past {
 			t.Errorf("%d bytes: %v", n, err)
 		}
+	}
+}
+
+// Characters that can deceive a reader (signoff.md, Signing): each by itself, in
+// a value that is else the same, written and read.
+func TestDeceivingCharacters(t *testing.T) {
+	text, err := example(SignOff).Text()
+	if err != nil {
+		t.Fatal(err)
+	}
+	for name, c := range map[string]rune{
+		"a tab": '\t', "a carriage return": '\r', "an escape": 0x1b, "delete": 0x7f, "a next line": 0x85,
+		"a line separator": 0x2028, "a paragraph separator": 0x2029, "a byte order mark": 0xFEFF,
+		"a right-to-left override": 0x202E, "a left-to-right mark": 0x200E, "an Arabic letter mark": 0x061C, "the end of an isolate": 0x2069,
+	} {
+		want := fmt.Sprintf("holds the character %U, which can deceive a reader", c)
+		s := example(SignOff)
+		s.Reason = "checked" + string(c) + "it"
+		if _, err := s.Text(); !errors.Is(err, ErrMalformed) || !strings.Contains(err.Error(), "reason "+want) {
+			t.Errorf("%s, written: %v", name, err)
+		}
+		forged := strings.Replace(string(text), "checked", "checked"+string(c), 1)
+		if _, err := Parse([]byte(forged)); !errors.Is(err, ErrMalformed) || !strings.Contains(err.Error(), want) {
+			t.Errorf("%s, read: %v", name, err)
+		}
+	}
+	// What only looks unusual may stand.
+	s := example(SignOff)
+	s.Reason = "Prüfung über 3 Blätter – naïve, 軌道, 🚆"
+	if _, err := s.Text(); err != nil {
+		t.Error(err)
 	}
 }
