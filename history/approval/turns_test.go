@@ -1,0 +1,52 @@
+package approval
+
+import "testing"
+
+// Of two releases from one base the policy of the one that was complete last counts,
+// whatever their numbers (signoff.md, The line of approval; DEVELOPERS.md, Turns of
+// the policy).
+func TestTurnsByCompletion(t *testing.T) {
+	p1, p2 := ordinary().key("ada2"), ordinary().key("ada3")
+	for name, c := range map[string]struct {
+		last int
+		want rules
+	}{"in the order of the numbers": {1, p2}, "against it": {0, p1}} {
+		t.Run(name, func(t *testing.T) {
+			s := anchored(t, ordinary())
+			numbers := [2]int64{s.assess("a", "b", ordinary(), p1, nil), s.assess("a", "c", ordinary(), p2, nil)}
+			// Begun in the other order: the last signature that is needed decides.
+			s.must(s.signOff(numbers[c.last], "ada", "checker", "approve"))
+			s.approve(numbers[1-c.last])
+			s.must(s.signOff(numbers[c.last], "bea", "approver", "approve"))
+			if got := s.line.Newest(".").Hash; got != c.want.hash() {
+				t.Errorf("the newest policy is not that of assessment %d, which was complete last", numbers[c.last])
+			}
+			// And so it is asked for.
+			s.rules = c.want
+			s.must(s.inForce("b", day(1), "all", CorrectsNothing))
+		})
+	}
+}
+
+// Who approves once more what stands approved moves nothing: a content stays
+// approved by the way that was complete first.
+func TestRepeatedApproval(t *testing.T) {
+	q, r := ordinary().key("ada2"), ordinary().key("ada3")
+	s := anchored(t, ordinary())
+	one := s.assess("a", "t", ordinary(), q, nil)
+	two := s.assess("a", "b", ordinary(), r, nil)
+	s.approve(one)
+	s.approve(two)
+	three := s.assess("b", "t", r, q, nil) // to what is approved already: no turn
+	s.approve(three)
+	newest := func(when string) {
+		t.Helper()
+		if s.line.Newest(".").Hash != r.hash() {
+			t.Errorf("%s, the newest policy is not that of assessment %d", when, two)
+		}
+	}
+	newest("before")
+	s.must(s.signOff(one, "bea", "approver", "approve"))
+	s.must(s.signOff(one, "fin", "approver", "approve"))
+	newest("approved again")
+}
