@@ -34,11 +34,11 @@ func TestComputeAgain(t *testing.T) {
 			g = step.Func(nil).AppendPart(f, 0, from).Append(step.Piece{From: from, To: to, Speed: 45}).AppendPart(f, to, end)
 		}
 		m := Motion{rapid.IntRange(1, 1500).Draw(t, "acceleration"), rapid.IntRange(1, 1500).Draw(t, "braking"), rapid.Bool().Draw(t, "rolling")}
-		like := NewRun(f, m)
+		like := newRun(f, m)
 		var r Run
 		r.Compute(draw(5), m, nil)
 		r.Compute(g, m, like)
-		want := NewRun(g, m)
+		want := newRun(g, m)
 		if !slices.Equal(r.edges, want.edges) || !slices.Equal(r.times, want.times) || !slices.Equal(r.reached, want.reached) {
 			t.Fatalf("got %v, want %v", r, want)
 		}

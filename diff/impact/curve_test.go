@@ -58,6 +58,20 @@ func TestSpeedForCantDeficiencyEN13803(t *testing.T) {
 	}
 }
 
+// The highest and the lowest speed may lie anywhere on a stretch; what only touches
+// it does not count.
+func TestExtremes(t *testing.T) {
+	f := profileOf(100, 60, 200, 40, 300, 80)
+	for _, test := range []struct {
+		from, to        unit.Distance
+		highest, lowest unit.Speed
+	}{{0, 300, 80, 40}, {0, 100, 60, 60}, {0, 101, 60, 40}, {100, 200, 40, 40}, {150, 250, 80, 40}, {99, 100, 60, 60}, {250, 300, 80, 80}} {
+		if highest, lowest := Extremes(f, test.from*unit.Metre, test.to*unit.Metre); highest != test.highest || lowest != test.lowest {
+			t.Errorf("%d to %d m: got %d and %d, want %d and %d", test.from, test.to, highest, lowest, test.highest, test.lowest)
+		}
+	}
+}
+
 // Distance = V t / 3.6: 100 km/h x 20 s = 555.56 m, 120 x 27 s = 900 m,
 // 140 x 27 s = 1050 m, 160 x 27 s = 1200 m; 140 km/h over 900 m leaves 23.14 s.
 func TestApproachTime(t *testing.T) {
@@ -96,6 +110,20 @@ func TestApproach(t *testing.T) {
 	}
 	if _, _, ok := Approach(at(800, 810), codes.Nominal, 5000); ok {
 		t.Error("an approach that begins before the route was computed")
+	}
+	if from, to, ok := Approach(at(900, 910), codes.Nominal, 5000); from != 0 || to != 900 || !ok {
+		t.Error("an approach that begins with the route:", from, to, ok)
+	}
+	if _, _, ok := Approach(at(4200, 4210), codes.Reverse, 5000); ok {
+		t.Error("an approach that begins beyond the route was computed")
+	}
+	if from, to, ok := Approach(at(4090, 4100), codes.Reverse, 5000); from != 4100 || to != 5000 || !ok {
+		t.Error("an approach that begins with the end of the route:", from, to, ok)
+	}
+	without := at(1000, 1010)
+	without.StrikeIn = 0
+	if _, _, ok := Approach(without, codes.Nominal, 5000); ok {
+		t.Error("a crossing without strike-in has no approach time")
 	}
 	station := at(1000, 1000)
 	station.Kind = schema.Station

@@ -9,7 +9,7 @@ import (
 // digits is the precision, in bits, of the computation that decides a rounding.
 const digits = 256
 
-// exactTenths makes the sum of NewRun again with long numbers. They are the
+// exactTenths makes the sum of Compute again with long numbers. They are the
 // same on every machine, and a time that close to the middle between two tenths
 // is rounded up.
 func (r *Run) exactTenths() int64 {

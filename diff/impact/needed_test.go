@@ -48,10 +48,10 @@ func checkShort(t *testing.T, property func(*rapid.T, short)) {
 	}
 	rapid.Check(t, func(t *rapid.T) {
 		f, m := drawProfile(t)
-		run := NewRun(f, m)
+		run := newRun(f, m)
 		for i, p := range f {
 			if run.piece(i).peak() < mmps(p.Speed)-1e-6 {
-				_, needed := NewRun(lengthened(f, i, 1000*unit.Kilometre), m).Peak(p.From)
+				_, needed := newRun(lengthened(f, i, 1000*unit.Kilometre), m).Peak(p.From)
 				property(t, short{f, m, i, needed})
 			}
 		}
@@ -65,7 +65,7 @@ func TestNeededLengthByRecomputing(t *testing.T) {
 	checkShort(t, func(t *rapid.T, s short) {
 		full := mmps(s.f[s.piece].Speed)
 		peak := func(length unit.Distance) float64 {
-			return NewRun(lengthened(s.f, s.piece, length), s.m).piece(s.piece).peak()
+			return newRun(lengthened(s.f, s.piece, length), s.m).piece(s.piece).peak()
 		}
 		if got := peak(s.needed); got < full-1e-6 {
 			t.Fatalf("%v: %v mm/s of %v with the needed %s m", s, got, full, s.needed.M())
@@ -79,7 +79,7 @@ func TestNeededLengthByRecomputing(t *testing.T) {
 // The needed length is the one that recomputing gives.
 func TestNeededLength(t *testing.T) {
 	checkShort(t, func(t *rapid.T, s short) {
-		if _, needed := NewRun(s.f, s.m).Peak(s.f[s.piece].From); needed != s.needed {
+		if _, needed := newRun(s.f, s.m).Peak(s.f[s.piece].From); needed != s.needed {
 			t.Fatalf("%v: %s m", s, needed.M())
 		}
 	})
@@ -90,7 +90,7 @@ func TestNeededLength(t *testing.T) {
 func TestNeededLengthOfFixedEnds(t *testing.T) {
 	checked := 0
 	checkShort(t, func(t *rapid.T, s short) {
-		now, then := NewRun(s.f, s.m), NewRun(lengthened(s.f, s.piece, s.needed), s.m)
+		now, then := newRun(s.f, s.m), newRun(lengthened(s.f, s.piece, s.needed), s.m)
 		if now.edges[s.piece] != then.edges[s.piece] || now.edges[s.piece+1] != then.edges[s.piece+1] {
 			return
 		}
@@ -110,7 +110,7 @@ func TestNeededLengthOfFixedEnds(t *testing.T) {
 // only accelerates.
 func TestNeededLengthOfAStart(t *testing.T) {
 	f := profileOf(100, 160, 9000, 200)
-	if _, needed := NewRun(f, Motion{Acceleration: 500, Braking: 500}).Peak(0); needed != 1_975_309 {
+	if _, needed := newRun(f, Motion{Acceleration: 500, Braking: 500}).Peak(0); needed != 1_975_309 {
 		t.Errorf("got %s m, want 1975.309 m", needed.M())
 	}
 }
@@ -119,7 +119,7 @@ func TestNeededLengthOfAStart(t *testing.T) {
 // 0.5 m/s² 833.333 m each.
 func TestNeededLengthBetween(t *testing.T) {
 	f := profileOf(2000, 60, 2100, 120, 5000, 60)
-	if _, needed := NewRun(f, Motion{Acceleration: 500, Braking: 500}).Peak(2000 * unit.Metre); needed != 1_666_667 {
+	if _, needed := newRun(f, Motion{Acceleration: 500, Braking: 500}).Peak(2000 * unit.Metre); needed != 1_666_667 {
 		t.Errorf("got %s m, want 1666.667 m", needed.M())
 	}
 }

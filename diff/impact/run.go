@@ -54,17 +54,10 @@ var inMMPS = func() (table [unit.MaxSpeed + 1]float64) {
 // Products that are added stand in float64(...): Go then rounds each on its own
 // and fuses none, so that every processor computes the same.
 
-// NewRun computes the run. The profile must be in the order of travel: for the
-// reverse direction, give it Mirrored.
-func NewRun(f step.Func, m Motion) *Run {
-	r := &Run{}
-	r.Compute(f, m, nil)
-	return r
-}
-
-// Compute makes r the run of NewRun and uses its memory again. like, if given,
-// is a run by the same motion whose times are taken over for the pieces at the
-// beginning and at the end that are run in the same way. r holds on to f.
+// Compute makes r the run along a profile in the order of travel (for the reverse
+// direction, Mirror it) and uses its memory again. like, if given, is a run by the
+// same motion whose times are taken over for the pieces at the beginning and at the
+// end that are run in the same way. r holds on to f.
 func (r *Run) Compute(f step.Func, m Motion, like *Run) {
 	n := len(f)
 	r.profile, r.motion = f, m
@@ -244,15 +237,8 @@ func (r *Run) leaving(i int) float64 {
 	return v
 }
 
-// Mirrored turns a profile round, for a run against the running distance. The
-// piece that ends at the length of the track then begins at 0.
-func Mirrored(f step.Func) step.Func {
-	out := slices.Clone(f)
-	Mirror(out)
-	return out
-}
-
-// Mirror turns a profile round in place.
+// Mirror turns a profile round in place, for a run against the running distance.
+// The piece that ends at the length of the track then begins at 0.
 func Mirror(f step.Func) {
 	if len(f) == 0 {
 		return
