@@ -1,0 +1,45 @@
+package diff_test
+
+import (
+	"fmt"
+	"strings"
+	"testing"
+)
+
+// A declaration of which one revision has an end, and the other has not, holds on
+// the other one between the outermost points that both have, by the running
+// distances there (DEVELOPERS.md, Decisions).
+func TestDeclaredAcrossTracks(t *testing.T) {
+	track := func(start, end, jump string) string {
+		text := "id = \"R1\"\nname = \"One\"\nstart_km = " + start + "\nend_km = " + end + "\ndirections = [\"nominal\"]\n"
+		if jump != "" {
+			arriving, leaving, _ := strings.Cut(jump, " ")
+			text += "[[jump]]\narriving_km = " + arriving + "\nleaving_km = " + leaving + "\n"
+		}
+		return text
+	}
+	side := func(start, end, jump string, speed int) texts {
+		return texts{"route.toml": track(start, end, jump), "speed.csv": fmt.Sprintf("from_km,to_km,basic,train_length_delay\n%s,4,80,no\n4,7,%d,no\n7,%s,80,no\n", start, speed, end)}
+	}
+	runAccounts(t, []accountTest{
+		{"a start that only the base has", side("0", "10", "", 80), asked(side("2", "10", "", 90), declares("R1", "both", 1, 6, "any", "")), []string{
+			"removed nominal: 0.000-1.000 outside, 1.000-2.000 CR-1/0", "nominal 4.000-7.000 T 80>90: 4.000-6.000 CR-1/0, 6.000-7.000 outside", "CR-1/0 sees T 2000 track 1000"}},
+		{"a start that only the target has", side("2", "10", "", 80), asked(side("0", "10", "", 90), declares("R1", "both", 1, 6, "any", "")), []string{
+			"added nominal: 0.000-1.000 outside, 1.000-2.000 CR-1/0", "nominal 4.000-7.000 T 80>90: 4.000-6.000 CR-1/0, 6.000-7.000 outside", "CR-1/0 sees T 2000 track 1000"}},
+		{"an end that only the base has, behind posts that only it has", side("0", "10", "", 80), asked(side("0", "9", "5 5.5", 90), declares("R1", "both", 4.2, 10, "any", "")), []string{
+			"removed nominal: 5.000-5.500 CR-1/0", "removed nominal: 9.000-10.000 CR-1/0",
+			"nominal 4.000-5.000 T 80>90: 4.000-4.200 outside, 4.200-5.000 CR-1/0", "nominal 5.500-7.000 T 80>90: 5.500-7.000 CR-1/0", "CR-1/0 sees T 2300 track 1500"}},
+		{"an end that only the target has, behind posts that only it has", side("0", "9", "5 5.5", 80), asked(side("0", "10", "", 90), declares("R1", "both", 4, 10, "any", "")), []string{
+			"added nominal: 5.000-5.500 CR-1/0", "added nominal: 9.000-10.000 CR-1/0",
+			"nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "nominal 5.500-7.000 T 80>90: 5.500-7.000 CR-1/0", "CR-1/0 sees T 2500 track 1500"}},
+		{"an end that only the base has, on a track that begins elsewhere", side("2", "10", "", 80), asked(side("0", "9", "", 90), declares("R1", "both", 3, 9.5, "any", "")), []string{
+			"removed nominal: 9.000-9.500 CR-1/0, 9.500-10.000 outside", "added nominal: outside", "nominal 4.000-7.000 T 80>90: 4.000-7.000 CR-1/0", "CR-1/0 sees T 3000 track 500"}},
+		{"a start that only the target has, before posts that only the base has", side("2", "10", "", 80), asked(side("0", "10", "2.5 2.8", 90), declares("R1", "both", 1, 5, "any", "")), []string{
+			"removed nominal: 2.500-2.800 CR-1/0", "added nominal: 0.000-1.000 outside, 1.000-2.000 CR-1/0", "nominal 4.000-7.000 T 80>90: 4.000-5.000 CR-1/0, 5.000-7.000 outside", "CR-1/0 sees T 1000 track 1300"}},
+		{"both ends only in the base, on either side of what both have", side("0", "10", "", 80), asked(side("2", "9", "5 5.5", 90), declares("R1", "both", 1, 9.5, "any", "")), []string{
+			"removed nominal: 0.000-1.000 outside, 1.000-2.000 CR-1/0", "removed nominal: 5.000-5.500 CR-1/0", "removed nominal: 9.000-9.500 CR-1/0, 9.500-10.000 outside",
+			"nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "nominal 5.500-7.000 T 80>90: 5.500-7.000 CR-1/0", "CR-1/0 sees T 2500 track 2000"}},
+		{"all of it only in the base", side("0", "10", "", 80), asked(side("2", "10", "", 90), declares("R1", "both", 0, 1, "any", "")), []string{
+			"removed nominal: 0.000-1.000 CR-1/0, 1.000-2.000 outside", "nominal 4.000-7.000 T 80>90: outside", "CR-1/0 sees track 1000"}},
+	}, declaredOf)
+}
