@@ -81,7 +81,7 @@ func TestRepresentedIsByAReferenceTrain(t *testing.T) {
 			})
 			t.Log(seen)
 			for _, word := range []string{"here true near true: true", "here false near true: true", "here false near true: false", "here false near false: false"} {
-				if !t.Failed() && seen[word] < 3 {
+				if !t.Failed() && !testing.Short() && seen[word] < 3 {
 					t.Errorf("%s was seen %d times only", word, seen[word])
 				}
 			}
@@ -166,7 +166,7 @@ func TestFleetIsThatOfTheModel(t *testing.T) {
 			}
 		}
 	})
-	if !t.Failed() && permanently < 50 {
+	if !t.Failed() && !testing.Short() && permanently < 50 {
 		t.Errorf("only %d accounts without temporary restrictions", permanently)
 	}
 }

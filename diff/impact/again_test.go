@@ -46,7 +46,7 @@ func TestComputeAgain(t *testing.T) {
 			taken++
 		}
 	})
-	if taken < 20 {
+	if !testing.Short() && taken < 20 {
 		t.Errorf("times were taken over %d times", taken)
 	}
 }

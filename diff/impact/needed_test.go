@@ -99,7 +99,7 @@ func TestNeededLengthOfFixedEnds(t *testing.T) {
 			t.Fatalf("%v: %s m", s, needed.M())
 		}
 	})
-	if checked < 10 {
+	if !testing.Short() && checked < 10 {
 		t.Errorf("only %d pieces", checked)
 	}
 }

@@ -77,7 +77,7 @@ func TestNarrow(t *testing.T) {
 			}
 		}
 	})
-	if inside < 1000 || outside < 1000 {
+	if !testing.Short() && (inside < 1000 || outside < 1000) {
 		t.Errorf("looked at %d pieces inside and %d outside", inside, outside)
 	}
 }
