@@ -85,6 +85,8 @@ func TestReasons(t *testing.T) {
 			"requests/a.toml": requestText("CR-1", "R1", 1, 2, "any", "")},
 			[]string{"dataset.toml  altered: not the track", "requests/a.toml  added: not the track", "requests/a.toml declares added: not the track", "trains.toml train altered: not the track"}},
 		{"a jump", nil, texts{"route.toml": ground["route.toml"] + "[[jump]]\narriving_km = 8\nleaving_km = 8.1\n"}, []string{"route.toml +6: track"}},
+		{"a note beside a jump, which alone is of the track", texts{"curves.csv": "from_km,to_km,radius_m,cant_mm,note\n1,2,900,10,\n"}, texts{"route.toml": ground["route.toml"] + "[[jump]]\narriving_km = 8\nleaving_km = 8.1\n", "curves.csv": "from_km,to_km,radius_m,cant_mm,note\n1,2,900,10,x\n"},
+			[]string{"curves.csv -2 +2: only text", "route.toml +6: track"}},
 		{"a route removed", texts{"routes/r2/route.toml": strings.ReplaceAll(ground["route.toml"], "R1", "R2"), "routes/r2/speed.csv": "from_km,to_km,basic\n0,10,100\n"},
 			texts{"routes/r2/route.toml": gone, "routes/r2/speed.csv": gone}, []string{"route.toml -1: track", "speed.csv -2: track"}},
 		{"nothing", nil, nil, nil},
@@ -109,10 +111,21 @@ func TestReasonsOfSeveralRows(t *testing.T) {
 func TestRowsOfAddedTrack(t *testing.T) {
 	one := texts{"route.toml": oneWay}
 	longer := texts{"route.toml": strings.Replace(oneWay, "10", "11", 1), "speed.csv": strings.Replace(ground["speed.csv"], "6,10,", "6,11,", 1)}
+	apart := texts{"route.toml": oneWay + "[[jump]]\narriving_km = 7\nleaving_km = 7.5\n"} // without km 7 to 7.5
 	new := over(longer, texts{"speed.csv": ground["speed.csv"] + "10,11,90\n", "axle-load.csv": "from_km,to_km,C2\n10.5,10.8,60\n"})
 	runAccounts(t, []accountTest{
 		{"the last row becomes longer", one, longer, []string{"route.toml -1 +1: track", "speed.csv -4 +4: track"}},
 		{"the last row becomes shorter", longer, over(ground, one), []string{"route.toml -1 +1: track", "speed.csv -4 +4: track"}},
+		{"a row behind track that is added in the middle", apart, over(one, texts{"axle-load.csv": "from_km,to_km,C2,E5\n8,9,,60\n"}),
+			[]string{"axle-load.csv +2: no such train", "route.toml -7: track"}},
+		{"a row before track that is added in the middle", apart, over(one, texts{"axle-load.csv": "from_km,to_km,C2,E5\n5,7,,60\n"}),
+			[]string{"axle-load.csv +2: no such train", "route.toml -7: track"}},
+		{"a row that reaches into it", apart, over(one, texts{"axle-load.csv": "from_km,to_km,C2,E5\n5,7.1,,60\n"}),
+			[]string{"axle-load.csv +2: track", "route.toml -7: track"}},
+		{"a row on either side of removed track", over(one, texts{"axle-load.csv": "from_km,to_km,C2,E5\n5,7,,60\n7.2,7.3,,60\n7.5,9,,60\n"}), over(apart, texts{"axle-load.csv": gone}),
+			[]string{"axle-load.csv -2: no such train", "axle-load.csv -3: track", "axle-load.csv -4: no such train", "route.toml +7: track"}},
+		{"a new row at the running distance that removed track had", one, over(apart, texts{"axle-load.csv": "from_km,to_km,C2,E5\n7.6,7.9,,60\n"}),
+			[]string{"axle-load.csv +2: no such train", "route.toml +7: track"}},
 		{"new rows on it", one, new, []string{"axle-load.csv +2: track", "route.toml -1 +1: track", "speed.csv +5: track"}},
 	}, effects)
 }
