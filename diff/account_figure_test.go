@@ -21,6 +21,11 @@ var moving = ground["trains.toml"] + "acceleration_ms2 = 0.5\nbraking_ms2 = 0.5\
 // and lost on the one stretch around the change.
 func TestRunningTimes(t *testing.T) {
 	base := texts{"trains.toml": moving, "route.toml": strings.Replace(oneWay, "10", "6", 1), "speed.csv": "from_km,to_km,basic,train_length_delay\n0,2,100,\n2,3,60,no\n3,6,120,\n"}
+	// 30 km at 120 km/h with two slow parts of 2 km that are not half way apart.
+	thirty := texts{"trains.toml": moving, "route.toml": strings.Replace(oneWay, "10", "30", 1)}
+	slow := func(one, two int) string {
+		return fmt.Sprintf("from_km,to_km,basic,train_length_delay\n0,4,120,no\n4,6,%d,no\n6,20,120,no\n20,22,%d,no\n22,30,120,no\n", one, two)
+	}
 	held := texts{"speed.csv": "from_km,to_km,basic\n0,2,100\n2,3,60\n3,6,120\n"}
 	runAccounts(t, []accountTest{
 		{"stop to stop", base, held, []string{"nominal T 2959>3019: 0.000-6.000 -60"}},
@@ -34,6 +39,11 @@ func TestRunningTimes(t *testing.T) {
 		{"two changes that lie apart", texts{"trains.toml": moving, "route.toml": strings.Replace(oneWay, "10", "30", 1), "speed.csv": "from_km,to_km,basic,train_length_delay\n0,4,120,no\n4,6,60,no\n6,24,120,no\n24,26,60,no\n26,30,120,no\n"},
 			texts{"speed.csv": "from_km,to_km,basic,train_length_delay\n0,4,120,no\n4,6,90,no\n6,24,120,no\n24,26,90,no\n26,30,120,no\n"},
 			[]string{"nominal T 11200>10150: 0.000-15.000 525, 15.000-30.000 525"}},
+		// Braking from 120 to 90 and to 60 cost 2.083 and 8.333 s each way, and 2 km at
+		// 90 in place of 60 gain 40 s: what the one change gains the other loses.
+		{"a raise and a reduction that lie apart", over(thirty, texts{"speed.csv": slow(60, 90)}), texts{"speed.csv": slow(90, 60)}, []string{"nominal T 10675>10675: 0.000-13.000 525, 13.000-30.000 -525"}},
+		{"against the running distance", over(thirty, texts{"route.toml": strings.Replace(thirty["route.toml"], "nominal", "reverse", 1), "speed.csv": slow(60, 90)}), texts{"speed.csv": slow(90, 60)},
+			[]string{"reverse T 10675>10675: 0.000-13.000 525, 13.000-30.000 -525"}},
 		{"other tracks have no parts", base, texts{"route.toml": strings.Replace(oneWay, "10", "7", 1), "speed.csv": "from_km,to_km,basic\n0,2,100\n2,3,60\n3,7,120\n"}, []string{"nominal T 2959>3319: "}},
 	}, func(a *diff.Account) string {
 		var lines []string
