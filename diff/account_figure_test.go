@@ -21,10 +21,10 @@ var moving = ground["trains.toml"] + "acceleration_ms2 = 0.5\nbraking_ms2 = 0.5\
 // and lost on the one stretch around the change.
 func TestRunningTimes(t *testing.T) {
 	base := texts{"trains.toml": moving, "route.toml": strings.Replace(oneWay, "10", "6", 1), "speed.csv": "from_km,to_km,basic,train_length_delay\n0,2,100,\n2,3,60,no\n3,6,120,\n"}
-	// 30 km at 120 km/h with two slow parts of 2 km that are not half way apart.
+	// 30 km at 120 km/h with two slow parts of 2 km in its first half.
 	thirty := texts{"trains.toml": moving, "route.toml": strings.Replace(oneWay, "10", "30", 1)}
 	slow := func(one, two int) string {
-		return fmt.Sprintf("from_km,to_km,basic,train_length_delay\n0,4,120,no\n4,6,%d,no\n6,20,120,no\n20,22,%d,no\n22,30,120,no\n", one, two)
+		return fmt.Sprintf("from_km,to_km,basic,train_length_delay\n0,4,120,no\n4,6,%d,no\n6,10,120,no\n10,12,%d,no\n12,30,120,no\n", one, two)
 	}
 	held := texts{"speed.csv": "from_km,to_km,basic\n0,2,100\n2,3,60\n3,6,120\n"}
 	runAccounts(t, []accountTest{
@@ -41,9 +41,9 @@ func TestRunningTimes(t *testing.T) {
 			[]string{"nominal T 11200>10150: 0.000-15.000 525, 15.000-30.000 525"}},
 		// Braking from 120 to 90 and to 60 cost 2.083 and 8.333 s each way, and 2 km at
 		// 90 in place of 60 gain 40 s: what the one change gains the other loses.
-		{"a raise and a reduction that lie apart", over(thirty, texts{"speed.csv": slow(60, 90)}), texts{"speed.csv": slow(90, 60)}, []string{"nominal T 10675>10675: 0.000-13.000 525, 13.000-30.000 -525"}},
+		{"a raise and a reduction that lie apart", over(thirty, texts{"speed.csv": slow(60, 90)}), texts{"speed.csv": slow(90, 60)}, []string{"nominal T 10675>10675: 0.000-8.000 525, 8.000-30.000 -525"}},
 		{"against the running distance", over(thirty, texts{"route.toml": strings.Replace(thirty["route.toml"], "nominal", "reverse", 1), "speed.csv": slow(60, 90)}), texts{"speed.csv": slow(90, 60)},
-			[]string{"reverse T 10675>10675: 0.000-13.000 525, 13.000-30.000 -525"}},
+			[]string{"reverse T 10675>10675: 0.000-8.000 525, 8.000-30.000 -525"}},
 		{"other tracks have no parts", base, texts{"route.toml": strings.Replace(oneWay, "10", "7", 1), "speed.csv": "from_km,to_km,basic\n0,2,100\n2,3,60\n3,7,120\n"}, []string{"nominal T 2959>3319: "}},
 	}, func(a *diff.Account) string {
 		var lines []string
@@ -105,7 +105,18 @@ func TestPartsOfRunningTimes(t *testing.T) {
 func TestCrossings(t *testing.T) {
 	const place = "km,to_km,direction,kind,name,strike_in_m,warning_s\n"
 	at := func(v int) string { return fmt.Sprintf("from_km,to_km,basic,cd150\n0,10,100,%d\n", v) }
+	jump := func(arriving, leaving string) string {
+		return "[[jump]]\narriving_km = " + arriving + "\nleaving_km = " + leaving + "\n"
+	}
 	cross := texts{"trains.toml": trainText("S", 80, "", "C2", 200, 60), "speed.csv": at(120), "places.csv": place + "5,5.01,,crossing,Mill Lane,900,27\n"}
+	// The line is slow up to the strike-in of Mill Lane, 900 m by the posts; of an
+	// approach without 200 m of posts, 200 m are: 12 s.
+	side := func(route, places string, v int) texts {
+		return over(cross, texts{"route.toml": route, "places.csv": places, "speed.csv": fmt.Sprintf("from_km,to_km,basic,cd150\n0,4.1,60,\n4.1,10,100,%d\n", v)})
+	}
+	without := func(route string, v int) texts { return side(route, gone, v) }
+	with := func(route string, v int) texts { return side(route, cross["places.csv"], v) }
+	back := strings.Replace(oneWay, "nominal", "reverse", 1)
 	runAccounts(t, []accountTest{
 		{"faster, no reference train", cross, texts{"speed.csv": at(140)}, []string{"nominal Mill Lane 270>231", "reverse Mill Lane 270>231"}},
 		{"one direction", over(cross, texts{"places.csv": place + "5,5.01,reverse,crossing,Mill Lane,900,27\n"}), texts{"speed.csv": at(140)}, []string{"reverse Mill Lane 270>231"}},
@@ -121,6 +132,15 @@ func TestCrossings(t *testing.T) {
 		{"a strike-in that was not given", over(cross, texts{"route.toml": oneWay, "places.csv": place + "5,5.01,,crossing,Mill Lane,,\n"}), texts{"places.csv": place + "5,5.01,,crossing,Mill Lane,900,27\n"}, []string{"nominal Mill Lane -1>270 0.0 s needed before"}},
 		{"its own track before, which differs", over(cross, texts{"route.toml": oneWay, "speed.csv": "from_km,to_km,basic,cd150\n0,4.6,100,120\n4.6,10,100,60\n"}),
 			texts{"route.toml": oneWay + "[[jump]]\narriving_km = 4.5\nleaving_km = 4.7\n", "speed.csv": "from_km,to_km,basic,cd150\n0,10,100,120\n"}, []string{"nominal Mill Lane 324>270"}},
+		// Where the base has no crossing, the same stretch of its track counts, and none
+		// where that is not in one piece.
+		{"a new crossing, posts that go in its approach", without(oneWay, 120), with(oneWay+jump("4.5", "4.7"), 120), []string{"nominal Mill Lane -1>330 new"}},
+		{"a new crossing, posts that come in its approach", without(oneWay+jump("4.5", "4.7"), 120), with(oneWay, 120), []string{"nominal Mill Lane -1>270 new"}},
+		{"a new crossing, posts that go in front of its approach", without(oneWay, 120), with(oneWay+jump("3.5", "4"), 140), []string{"nominal Mill Lane 270>231 new"}},
+		{"a new crossing, posts that go right in front of its approach", without(oneWay, 120), with(oneWay+jump("3.5", "4.1"), 140), []string{"nominal Mill Lane 270>231 new"}},
+		{"a new crossing, posts that go right behind its approach", without(back, 120), with(back+jump("5.91", "6.1"), 140), []string{"reverse Mill Lane 270>231 new"}},
+		{"a new crossing, posts that go behind it", without(oneWay, 120), with(oneWay+jump("5.01", "5.2"), 140), []string{"nominal Mill Lane 270>231 new"}},
+		{"a new crossing, posts that both lack in its approach", without(oneWay+jump("4.5", "4.7"), 120), with(oneWay+jump("4.5", "4.7"), 140), []string{"nominal Mill Lane 330>300 new"}},
 		{"the strike-in before the route", over(cross, texts{"places.csv": place + "0.8,0.81,nominal,crossing,Mill Lane,900,27\n"}), texts{"speed.csv": at(140)}, nil},
 	}, func(a *diff.Account) string {
 		var lines []string
@@ -191,6 +211,7 @@ func TestShortRaises(t *testing.T) {
 		{"just long enough", base, short("5.666667"), nil},
 		{"in the reverse direction", over(base, texts{"route.toml": strings.Replace(oneWay, "nominal", "reverse", 1)}), short("4.5"), []string{"reverse T 4.000-4.500 120, 82 reached, 1666.667 m needed"}},
 		{"a reduction", over(base, short("4.5")), texts{"speed.csv": base["speed.csv"]}, nil},
+		{"a reduction of a piece that was too short before", over(base, short("4.5")), texts{"speed.csv": strings.Replace(short("4.5")["speed.csv"], "120", "110", 1)}, nil},
 		{"without acceleration", over(base, texts{"trains.toml": ground["trains.toml"]}), short("4.5"), nil},
 	}, func(a *diff.Account) string {
 		var lines []string
