@@ -100,14 +100,16 @@ func TestPartsOfRunningTimes(t *testing.T) {
 	}
 }
 
+// jump is a place in route.toml at which posts are missing, or repeat.
+func jump(arriving, leaving string) string {
+	return "[[jump]]\narriving_km = " + arriving + "\nleaving_km = " + leaving + "\n"
+}
+
 // 120 km/h over 900 m take 27 s, 140 km/h 23.14 s, whatever the reference
 // trains.
 func TestCrossings(t *testing.T) {
 	const place = "km,to_km,direction,kind,name,strike_in_m,warning_s\n"
 	at := func(v int) string { return fmt.Sprintf("from_km,to_km,basic,cd150\n0,10,100,%d\n", v) }
-	jump := func(arriving, leaving string) string {
-		return "[[jump]]\narriving_km = " + arriving + "\nleaving_km = " + leaving + "\n"
-	}
 	cross := texts{"trains.toml": trainText("S", 80, "", "C2", 200, 60), "speed.csv": at(120), "places.csv": place + "5,5.01,,crossing,Mill Lane,900,27\n"}
 	// The line is slow up to the strike-in of Mill Lane, 900 m by the posts; of an
 	// approach without 200 m of posts, 200 m are: 12 s.
@@ -172,6 +174,13 @@ func TestCurves(t *testing.T) {
 		{"faster through one of them", base, texts{"speed.csv": "from_km,to_km,basic,cd150,train_length_delay\n0,4.7,100,120,no\n4.7,6,100,140,no\n6,10,100,120,no\n"},
 			[]string{"4.200 cd150 T U 120>140, lowest 60 V"}},
 		{"another cant", base, texts{"curves.csv": head + "4.2,4.8,1000,110\n7,8,900,50\n"}, []string{"4.200 cd150 T U 120>120 cant 100>110, lowest 60 V", "4.200 cd80 V 60>60 cant 100>110, lowest 60 V"}},
+		{"another radius", base, texts{"curves.csv": head + "4.2,4.8,900,100\n7,8,900,50\n"}, []string{"4.200 cd150 T U 120>120 radius 1000>900, lowest 60 V", "4.200 cd80 V 60>60 radius 1000>900, lowest 60 V"}},
+		// What lies on track of the base in two pieces has neither a curve nor a speed
+		// before.
+		{"posts that go in a curve", base, texts{"route.toml": oneWay + jump("4.5", "4.7")}, []string{"4.200 cd150 T U 0>120 new, lowest 60 V", "4.200 cd80 V 0>60 new, lowest 60 V"}},
+		{"posts that come in a curve", over(base, texts{"route.toml": oneWay + jump("4.5", "4.7")}), texts{"route.toml": oneWay}, []string{"4.200 cd150 T U 0>120 new, lowest 60 V", "4.200 cd80 V 0>60 new, lowest 60 V"}},
+		{"posts that go between curves", base, texts{"route.toml": oneWay + jump("5", "6")}, nil},
+		{"posts that go right behind a curve and in front of another", base, texts{"route.toml": oneWay + jump("4.8", "7")}, nil},
 		{"a new curve", base, texts{"curves.csv": head + "4.2,4.8,1000,100\n7,8,900,50\n9,9.5,800,0\n"}, []string{"9.000 cd150 T U 120>120 new, lowest 60 V", "9.000 cd80 V 60>60 new, lowest 60 V"}},
 		{"a curve that goes", base, texts{"curves.csv": head + "7,8,900,50\n"}, nil},
 		{"a note", base, texts{"curves.csv": "from_km,to_km,radius_m,cant_mm,note\n4.2,4.8,1000,100,x\n7,8,900,50,\n"}, nil},
@@ -187,6 +196,8 @@ func TestCurves(t *testing.T) {
 				switch {
 				case x.Old == nil:
 					text += " new"
+				case x.Old.RadiusM != x.Row.RadiusM:
+					text += fmt.Sprintf(" radius %d>%d", x.Old.RadiusM, x.Row.RadiusM)
 				case x.Old.CantMM != x.Row.CantMM:
 					text += fmt.Sprintf(" cant %d>%d", x.Old.CantMM, x.Row.CantMM)
 				}
