@@ -80,7 +80,8 @@ func leavingOf(a *diff.Account) string {
 }
 
 // A row with train length delay that ends within a train length of the end of
-// the route holds beyond it. The longest reference train has 200 m.
+// the route holds beyond it (SUBSET-026 3.11.3.1.3, cut at the end of the route). The
+// longest reference train has 200 m.
 func TestLeaving(t *testing.T) {
 	axle := func(rows string) texts {
 		return texts{"axle-load.csv": "from_km,to_km,direction,C2,E5,train_length_delay,note\n" + rows}
@@ -94,6 +95,10 @@ func TestLeaving(t *testing.T) {
 		{"exactly one train length behind it", nil, axle("0.2,0.5,,60,,,\n"), nil},
 		{"not in this direction", nil, axle("9.5,9.9,reverse,60,,,\n0.1,0.5,nominal,60,,,\n"), nil},
 		{"without train length delay", nil, axle("9.5,9.9,,60,,no,\n"), nil},
+		{"the far end moves, within a train length", axle("9.5,9.9,,60,,yes,\n"), axle("9.5,9.95,,60,,yes,\n"), []string{"axle-load.csv -2 +2 nominal line 2, 200 m"}},
+		{"the far end moves, against the running distance", axle("0.1,0.5,,60,,yes,\n"), axle("0.05,0.5,,60,,yes,\n"), []string{"axle-load.csv -2 +2 reverse line 2, 200 m"}},
+		{"the near end moves", axle("9.5,9.9,,60,,yes,\n"), axle("9.6,9.9,,60,,yes,\n"), nil},
+		{"the near end moves, against the running distance", axle("0.1,0.5,,60,,yes,\n"), axle("0.1,0.6,,60,,yes,\n"), nil},
 		{"a row that goes", axle("9.5,9.9,,60,,,\n"), texts{"axle-load.csv": gone}, []string{"axle-load.csv -2 nominal line 2, 200 m, removed"}},
 		{"a note", axle("9.5,9.9,,60,,,\n"), axle("9.5,9.9,,60,,,x\n"), nil},
 		{"one row for both directions, and one for each", axle("9.5,9.9,both,60,,,\n0.1,0.5,both,60,,,\n"), axle("9.5,9.9,nominal,60,,,\n9.5,9.9,reverse,60,,,\n0.1,0.5,both,60,,,\n"), nil},

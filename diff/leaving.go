@@ -27,10 +27,7 @@ type Leaving struct {
 // leaving lists the rows that leave a route which both revisions have, in the
 // order of its files.
 func (r *Route) leaving(trains []Train) []Leaving {
-	longest := unit.Distance(0)
-	for _, t := range trains {
-		longest = max(longest, t.Length)
-	}
+	longest := longestOf(trains)
 	var list []Leaving
 	for i := range r.Files {
 		f := &r.Files[i]
