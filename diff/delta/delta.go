@@ -21,12 +21,12 @@ type Delta struct {
 	RunOut bool
 }
 
-// Between lists the maximal stretches on which two profiles differ. It ends a stretch where the cells do not
-// continue each other: there, the track is discontinuous on one side.
+// Between lists the maximal stretches on which two profiles differ. No cell goes on
+// where the one before it ends, as package align makes them, and neighbouring pieces
+// of a profile differ: no stretch goes on where another ends.
 func Between(before, after step.Func, cells []align.Cell) []Delta {
 	var found []Delta
-	for k, cell := range cells {
-		joined := k > 0 && cells[k-1].Continues(cell)
+	for _, cell := range cells {
 		b, t := before.CursorAt(cell.Base), after.CursorAt(cell.Target)
 		for at := unit.Distance(0); at < cell.Length; {
 			b.Advance(cell.Base + at)
@@ -34,23 +34,12 @@ func Between(before, after step.Func, cells []align.Cell) []Delta {
 			old, now := b.Piece(), t.Piece()
 			next := min(cell.Length, old.To-cell.Base, now.To-cell.Target)
 			if old.Speed != now.Speed {
-				c := Delta{Base: cell.Base + at, Target: cell.Target + at, Length: next - at, Before: old.Speed, After: now.Speed}
-				if n := len(found) - 1; n >= 0 && (at > 0 || joined) && found[n].continues(c) {
-					found[n].Length += c.Length
-				} else {
-					found = append(found, c)
-				}
+				found = append(found, Delta{Base: cell.Base + at, Target: cell.Target + at, Length: next - at, Before: old.Speed, After: now.Speed})
 			}
 			at = next
 		}
 	}
 	return found
-}
-
-// continues tells whether d goes on where c ends, with the same speeds.
-func (c Delta) continues(d Delta) bool {
-	return c.Target+c.Length == d.Target && c.Base+c.Length == d.Base &&
-		c.Before == d.Before && c.After == d.After
 }
 
 // MarkRunOut splits differences where a train of no length begins or ceases to see
