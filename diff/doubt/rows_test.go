@@ -30,6 +30,15 @@ var curveSpeed = []example{
 		want: "curve-speed both 1.000 2.000 speed.csv:2 160 km/h for T; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 403.47 mm, and 150 mm carry 110 km/h\n"},
 	{name: "a basic speed that the category of the reference train carries",
 		files: files{"speed.csv": "from_km,to_km,basic\n0,10,110\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"}},
+	{name: "a category's speed, of which the train's own maximum is left",
+		files: files{"trains.toml": train("T", 150, "", "C2", 200, 140), "speed.csv": "from_km,to_km,basic,cd150\n0,10,100,160\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"},
+		// 11.8 x 19600 / 600 = 385.47 mm.
+		want: "curve-speed both 1.000 2.000 speed.csv:2 140 km/h for T; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 285.47 mm, and 150 mm carry 110 km/h\n" +
+			"curve-speed both 1.000 2.000 speed.csv:2 cd150 is 160 km/h; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 403.47 mm, and 150 mm carry 110 km/h\n"},
+	{name: "another category in place of that of cant deficiency, which is too fast as well",
+		files: files{"trains.toml": train("P", 150, `"passenger"`, "C2", 200, 200), "speed.csv": "from_km,to_km,basic,cd150,passenger,passenger_rule\n0,10,100,160,140,replaces\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"},
+		want: "curve-speed both 1.000 2.000 speed.csv:2 140 km/h for P; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 285.47 mm, and 150 mm carry 110 km/h\n" +
+			"curve-speed both 1.000 2.000 speed.csv:2 cd150 is 160 km/h; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 403.47 mm, and 150 mm carry 110 km/h\n"},
 	{name: "a row that only touches the curve",
 		files: files{"speed.csv": "from_km,to_km,basic,cd150\n0,1,100,160\n1,2,100,100\n2,10,100,160\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"}},
 }
@@ -38,6 +47,9 @@ var curveSpeed = []example{
 var cantExcess = []example{
 	{name: "a millimetre above the limit",
 		files: files{"dataset.toml": limits("cant_excess_mm = 110"), "speed.csv": "from_km,to_km,basic\n0,10,50\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1180,136\n"},
+		want:  "cant-excess both 1.000 2.000 curves.csv:2 at 50 km/h, the lowest line speed of a reference train, the cant of 136 mm on 1180 m is an excess of 111.00 mm; the limit of dataset.toml is 110\n"},
+	{name: "rows of speed.csv that do not stand in the order of the track",
+		files: files{"dataset.toml": limits("cant_excess_mm = 110"), "speed.csv": "from_km,to_km,basic\n5,10,100\n0,5,50\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1180,136\n"},
 		want:  "cant-excess both 1.000 2.000 curves.csv:2 at 50 km/h, the lowest line speed of a reference train, the cant of 136 mm on 1180 m is an excess of 111.00 mm; the limit of dataset.toml is 110\n"},
 	{name: "exactly at the limit",
 		files: files{"dataset.toml": limits("cant_excess_mm = 110"), "speed.csv": "from_km,to_km,basic\n0,10,50\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1180,135\n"}},
@@ -98,6 +110,9 @@ var axleLoadMissing = []example{
 	{name: "neither lighter nor heavier",
 		files: files{"trains.toml": train("H", 80, "", "D2", 500, 100), "axle-load.csv": "from_km,to_km,C4\n1,2,80\n"},
 		want:  "axle-load-missing both 1.000 2.000 axle-load.csv:2 no speed for D2 (H), which the row then does not restrict\n"},
+	{name: "heavier than one and lighter than another",
+		files: files{"trains.toml": train("H", 80, "", "C2", 500, 100), "axle-load.csv": "from_km,to_km,B1,E5\n1,2,80,60\n"},
+		want:  "axle-load-missing both 1.000 2.000 axle-load.csv:2 no speed for C2 (H), which the row then does not restrict\n"},
 	{name: "each category once, by its first train",
 		files: files{"trains.toml": train("J", 80, "", "E5", 500, 100) + train("I", 80, "", "E4", 500, 100) + train("H", 80, "", "E4", 500, 100) + train("A", 80, "", "A", 500, 100), "axle-load.csv": "from_km,to_km,D4\n1,2,60\n"},
 		want:  "axle-load-missing both 1.000 2.000 axle-load.csv:2 no speed for E4 (I), E5 (J), which the row then does not restrict\n"},
