@@ -63,10 +63,12 @@ func (c *check) delays() {
 			}
 		}
 	}
+	// The rows of a direction cover its track once: two rows of one place are for
+	// different directions.
 	for i := range c.route.Speed {
 		a := &c.route.Speed[i]
 		for b := range c.speeds.on(a.Start, a.Start+1) {
-			if a.Delay || !b.Delay || a.Start != b.Start || a.End != b.End || a.Directions&b.Directions != 0 {
+			if a.Delay || !b.Delay || a.Start != b.Start || a.End != b.End {
 				continue
 			}
 			for _, d := range codes.AllDirections {
@@ -79,14 +81,15 @@ func (c *check) delays() {
 }
 
 // risesAfter gives by how much the basic speed, or that of any category, rises
-// where a train leaves a row in a direction of travel.
+// where a train leaves a row in a direction of travel. The rows of a direction cover
+// its track once: the one behind begins where this one ends.
 func (c *check) risesAfter(row *schema.SpeedRow, d codes.Direction) (rise unit.Speed) {
 	at := row.End
 	if d == codes.Reverse {
 		at = row.Start - 1
 	}
 	for next := range c.speeds.on(at, at+1) {
-		if !next.Directions.Has(d) || d == codes.Nominal && next.Start != row.End || d == codes.Reverse && next.End != row.Start {
+		if !next.Directions.Has(d) {
 			continue
 		}
 		for _, t := range c.trains {
