@@ -7,7 +7,6 @@ import (
 	"speedtrail/history/canon"
 	"speedtrail/history/chain"
 	"speedtrail/history/signoff"
-	"speedtrail/schema"
 )
 
 // addAnchor takes up an anchor.
@@ -109,15 +108,4 @@ func (l *Line) checkAnchorStatement(signed Signed, recorded time.Time, p Policy)
 		return r, err
 	}
 	return r, l.checkSignature(&r, p.Parsed)
-}
-
-// RolesOf lists the roles in which a principal may sign by a policy.
-func RolesOf(p *schema.Policy, principal string) []string {
-	var list []string
-	for i := range p.Roles {
-		if p.Roles[i].May(principal) {
-			list = append(list, p.Roles[i].Name)
-		}
-	}
-	return list
 }

@@ -123,14 +123,3 @@ func TestAnchorForm(t *testing.T) {
 		})
 	}
 }
-
-// RolesOf lists the roles that somebody may take.
-func TestRolesOf(t *testing.T) {
-	l := New(ledgerID)
-	p := l.Policy(ordinary().files())
-	for who, want := range map[string]int{"ada@tarn.example": 2, "cem@tarn.example": 3} {
-		if got := RolesOf(p.Parsed, who); len(got) != want {
-			t.Errorf("%s may sign as %v", who, got)
-		}
-	}
-}
