@@ -47,12 +47,16 @@ func FuzzAllowedSigners(f *testing.F) {
 			return
 		}
 		told := map[int]bool{}
+		most := len(lines) // up to which line all faults are listed
 		if faults, ok := r.faults.Err().(*source.Faults); ok {
 			for _, fault := range faults.List {
 				if fault.File != signersFile || fault.Line < 1 || fault.Line > len(lines) || told[fault.Line] {
 					t.Fatalf("%v of %d lines", fault, len(lines))
 				}
 				told[fault.Line] = true
+			}
+			if faults.Count > len(faults.List) {
+				most = faults.List[len(faults.List)-1].Line
 			}
 		}
 		owners := map[string]string{}
@@ -74,7 +78,7 @@ func FuzzAllowedSigners(f *testing.F) {
 			}
 			told[k.Pos.Line] = true
 		}
-		for i, line := range lines {
+		for i, line := range lines[:most] {
 			if s := strings.TrimSpace(line); s != "" && !strings.HasPrefix(s, "#") && !told[i+1] {
 				t.Fatalf("nothing is said of line %d: %q", i+1, line)
 			}

@@ -237,6 +237,7 @@ func (r *reader) requests(d *Dataset) {
 		p := requestsDir + "/" + e.Name()
 		switch {
 		case r.badName(e, p):
+			continue
 		case e.IsDir():
 			r.noDataBelow(p, 1)
 			continue

@@ -65,7 +65,8 @@ func TestSeen(t *testing.T) {
 }
 
 // Metre by metre: what is seen is what lies in the declaration, and past its far end
-// within the train length; by both, what is by the one and by another.
+// as far as the train carries a row that ends in it; by both, what is by the one and
+// by another.
 func TestSeenPointByPoint(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		number := func(name string) unit.Distance { return unit.Distance(rapid.IntRange(0, 40).Draw(t, name)) }
@@ -97,8 +98,8 @@ func TestSeenPointByPoint(t *testing.T) {
 				return 0
 			}
 			end := x.RowEnds[0]
-			if direction == codes.Nominal && d.From <= end-1 && end-1 < d.To && s >= d.To && s < d.To+trainLength ||
-				direction == codes.Reverse && d.From <= end && end < d.To && s < d.From && s >= d.From-trainLength {
+			if direction == codes.Nominal && d.From <= end-1 && end-1 < d.To && s >= d.To && end <= s && s < end+trainLength ||
+				direction == codes.Reverse && d.From <= end && end < d.To && s < d.From && s < end && s >= end-trainLength {
 				return 2
 			}
 			return 0

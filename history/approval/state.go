@@ -122,10 +122,8 @@ func (l *Line) blocks(a *Assessment) []string {
 	return list
 }
 
-// way is how a content came to be approved: by an assessment, nil for the
-// anchor, with an entry.
+// way is how a content came to be approved: by an assessment, nil for the anchor.
 type way struct {
-	at int64
 	by *Assessment
 	// first is the entry at which the way was complete for the first time, whatever
 	// was taken back and given again since; depth is how many releases it has.
@@ -186,7 +184,7 @@ func (l *Line) lastNeeded(a *Assessment) int64 {
 
 // approvedContents gives the contents of a folder that are approved: the
 // anchor's, and those that approved assessments lead to from it, each by the way
-// that was complete first.
+// that was complete first, whatever was taken back and given again since.
 func (l *Line) approvedContents(folder string) map[string]way {
 	if known := l.contents[folder]; known != nil {
 		return known
@@ -197,7 +195,7 @@ func (l *Line) approvedContents(folder string) map[string]way {
 	if anchor == nil {
 		return approved
 	}
-	approved[anchor.Content] = way{at: anchor.Entry.Seq, first: anchor.Entry.Seq}
+	approved[anchor.Content] = way{first: anchor.Entry.Seq}
 	for grown := true; grown; {
 		grown = false
 		for _, a := range l.assessments {
@@ -209,9 +207,9 @@ func (l *Line) approvedContents(folder string) map[string]way {
 			if signed == 0 {
 				continue
 			}
-			at := max(base.at, signed)
-			if have, ok := approved[a.TargetTree]; !ok || at < have.at {
-				approved[a.TargetTree], grown = way{at, a, max(base.first, l.firstSigned(a)), base.depth + 1}, true
+			first := max(base.first, cmp.Or(l.firstSigned(a), signed))
+			if have, ok := approved[a.TargetTree]; !ok || first < have.first {
+				approved[a.TargetTree], grown = way{a, first, base.depth + 1}, true
 			}
 		}
 	}

@@ -49,4 +49,7 @@ func TestRepeatedApproval(t *testing.T) {
 	s.must(s.signOff(one, "bea", "approver", "approve"))
 	s.must(s.signOff(one, "fin", "approver", "approve"))
 	newest("approved again")
+	s.must(s.signOff(one, "bea", "approver", "reject"))
+	s.must(s.signOff(one, "bea", "approver", "approve"))
+	newest("rejected, and approved again")
 }

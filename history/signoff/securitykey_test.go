@@ -185,7 +185,7 @@ func (r renamed) Sign(random io.Reader, data []byte) (*ssh.Signature, error) {
 func TestSurplusBehindSignature(t *testing.T) {
 	message, _ := example(SignOff).Text()
 	made := keys(t)
-	for _, name := range []string{"ed25519", "ecdsa"} {
+	for _, name := range []string{"ed25519", "ecdsa", "rsa"} {
 		signer := signerOf(t, made[name])
 		good, err := Sign(message, signer)
 		if err != nil {

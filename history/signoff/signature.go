@@ -133,6 +133,9 @@ func allowed(key ssh.PublicKey, s *ssh.Signature) error {
 		if s.Format != ssh.KeyAlgoRSASHA256 && s.Format != ssh.KeyAlgoRSASHA512 {
 			return bad("algorithm %q, RSA signs with SHA-256 or SHA-512", s.Format)
 		}
+		if len(s.Rest) != 0 {
+			return bad("surplus bytes follow it")
+		}
 		public, ok := key.(ssh.CryptoPublicKey).CryptoPublicKey().(*rsa.PublicKey)
 		if !ok || public.N.BitLen() < leastRSA {
 			return bad("the RSA key is shorter than %d bits", leastRSA)
