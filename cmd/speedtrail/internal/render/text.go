@@ -176,7 +176,7 @@ var right = []table.ColumnConfig{
 func (p *textWriter) trains() {
 	p.heading("Trains")
 	t := plainTable()
-	t.AppendHeader(table.Row{"train", "raised km", "lowered km", "most up", "most down", "time", "routes"})
+	t.AppendHeader(table.Row{"train", "raised km", "lowered km", "up km/h", "down km/h", "time s", "routes"})
 	t.SetColumnConfigs(append([]table.ColumnConfig{{Number: 7, WidthMax: max(12, p.s.Width-68), WidthMaxEnforcer: text.WrapSoft}}, right...))
 	times := runningTimes(p.c)
 	for _, x := range p.c.Trains {
@@ -191,7 +191,7 @@ func (p *textWriter) trains() {
 		t.AppendRow(table.Row{name, lengthCell(x.Raised), lengthCell(x.Lowered), stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(strings.Join(x.Routes, ", "))})
 	}
 	p.printf("%s\n", tidy(t.Render()))
-	p.paragraph("", "Lengths, and running times in seconds (minus: faster), are added up over routes and both directions of travel.")
+	p.paragraph("", "Up and down are the largest steps. Lengths, and running times (minus: faster), are added up over routes and both directions of travel.")
 }
 
 func lengthCell(mm int64) string {
