@@ -58,6 +58,12 @@ type builder struct {
 	empty bool // no version was there at the beginning
 	ctx   context.Context
 
+	// asking is held while a version is looked for, and while a transaction begins:
+	// SQLite does not wait for the transaction of another process where a question
+	// on the same connection is not answered to the end. A connection of its own
+	// would have to wait for the transactions of this one.
+	asking sync.Mutex
+
 	mu    sync.Mutex // guards what follows
 	g     *graph
 	ids   map[trace.Key]int64 // of versions
@@ -124,7 +130,9 @@ func (b *builder) Version(key trace.Key) (*trace.Loaded, error) {
 	}
 	v := &trace.Loaded{Key: key}
 	var id int64
+	b.asking.Lock()
 	err := b.find.QueryRowContext(b.ctx, key.Tree[:], key.Zone).Scan(&id, &v.Folder, &v.ID, &v.Fault)
+	b.asking.Unlock()
 	if errors.Is(err, sql.ErrNoRows) {
 		return nil, nil
 	}
@@ -160,12 +168,14 @@ func (b *builder) add(ctx context.Context, batch *trace.Batch) error {
 // start begins a transaction and takes in what another process has added since
 // the last one.
 func (b *builder) start(ctx context.Context) error {
-	if err := b.x.exec(ctx, "BEGIN IMMEDIATE"); err != nil {
+	b.asking.Lock()
+	err := b.x.exec(ctx, "BEGIN IMMEDIATE")
+	b.asking.Unlock()
+	if err != nil {
 		return err
 	}
 	b.open, b.begun = true, time.Now()
-	err := b.catchUp(ctx)
-	if err != nil {
+	if err = b.catchUp(ctx); err != nil {
 		b.rollback(ctx)
 	}
 	return err
