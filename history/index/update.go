@@ -72,7 +72,10 @@ type builder struct {
 	begun time.Time           // when it began
 	first int                 // how many commits there were when it began
 
+	depths map[int64]int // of versions where others add some, too: how many are below
+
 	find       *sql.Stmt
+	baseOf     *sql.Stmt
 	addVersion *sql.Stmt
 	statements []*sql.Stmt
 }
@@ -91,8 +94,9 @@ func (b *builder) begin(ctx context.Context) error {
 	}
 	b.empty = b.known == 0
 	for text, to := range map[string]**sql.Stmt{
-		"SELECT id, place, route, fault FROM version WHERE tree = ? AND zone = ?":                                                            &b.find,
-		"INSERT INTO version (tree, zone, place, route, fault, base, data) VALUES (?, ?, ?, ?, ?, ?, ?) ON CONFLICT DO NOTHING RETURNING id": &b.addVersion,
+		"SELECT id, place, route, fault FROM version WHERE tree = ? AND zone = ?":                                     &b.find,
+		"SELECT base FROM version WHERE id = ?":                                                                       &b.baseOf,
+		"INSERT INTO version (tree, zone, place, route, fault, base, data) VALUES (?, ?, ?, ?, ?, ?, ?) RETURNING id": &b.addVersion,
 	} {
 		s, err := b.x.conn.PrepareContext(ctx, text)
 		if err != nil {
@@ -259,27 +263,6 @@ func (b *builder) addVersions(list []*trace.Loaded) error {
 		}
 		return nil
 	})
-}
-
-// addVersionsOfMany adds versions that may be there already.
-func (b *builder) addVersionsOfMany(ctx context.Context, list []*trace.Loaded) error {
-	for _, v := range list {
-		base, data, err := b.packed(v)
-		if err != nil {
-			return err
-		}
-		var id int64
-		err = b.addVersion.QueryRowContext(ctx, v.Tree[:], v.Zone, v.Folder, v.ID, v.Fault, base, data).Scan(&id)
-		if errors.Is(err, sql.ErrNoRows) {
-			var place, route, fault string
-			err = b.find.QueryRowContext(ctx, v.Tree[:], v.Zone).Scan(&id, &place, &route, &fault)
-		}
-		if err != nil {
-			return err
-		}
-		b.setID(v.Key, id)
-	}
-	return nil
 }
 
 func (b *builder) setID(key trace.Key, id int64) {
