@@ -224,18 +224,9 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 		return nil, err
 	}
 	defer x.Close()
-	h, found, err := x.History(ctx, name, tip, route)
-	if err != nil || found {
-		return h, err
-	}
-	if err := x.Update(ctx, reader, name, tip, longer(a.progress("indexing the history"))); err != nil {
-		return nil, err
-	}
-	h, found, err = x.History(ctx, name, tip, route)
-	if err == nil && !found {
-		err = index.ErrFailed
-	}
-	return h, err
+	return x.Past(ctx, reader, name, tip, route, longer(a.progress("indexing the history")), func() {
+		a.remark("the index is damaged, it is made again")
+	})
 }
 
 // newestOf gives the trains and the route of the newest revision.

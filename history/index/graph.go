@@ -153,8 +153,11 @@ func (g *graph) add(c trace.Commit) {
 	}
 }
 
-// graph reads the commits of a data set folder.
+// graph reads the commits of a data set folder. It is called in a transaction.
 func (x *Index) graph(ctx context.Context, path string) (*graph, error) {
+	if err := x.renew(ctx); err != nil {
+		return nil, err
+	}
 	if g := x.graphs[path]; g != nil {
 		return g, x.extend(ctx, g)
 	}

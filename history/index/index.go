@@ -9,8 +9,7 @@
 //
 //	x, err := index.Open(ctx, "index.db")
 //	name, err := index.Name(repo, ".")
-//	err = x.Update(ctx, trace.NewReader(repo, "."), name, tip, progress)
-//	h, found, err := x.History(ctx, name, tip, "SM1")
+//	h, err := x.Past(ctx, trace.NewReader(repo, "."), name, tip, "SM1", progress, healing)
 //
 // # What it holds
 //
@@ -28,7 +27,7 @@
 //
 // Commits are added in batches, one transaction each: an interrupted build goes
 // on where it ended, and two processes that build at once do no harm to each
-// other.
+// other. An index of which a row turns out to be damaged is emptied, too.
 package index
 
 import (
@@ -74,9 +73,10 @@ CREATE TABLE change (folder INTEGER NOT NULL, route TEXT NOT NULL, number INTEGE
 // Index is an open index. It holds one connection and is not safe for concurrent
 // use.
 type Index struct {
-	db     *sql.DB
-	conn   *sql.Conn
-	graphs map[string]*graph // that were read, by the names of their histories
+	db      *sql.DB
+	conn    *sql.Conn
+	graphs  map[string]*graph // that were read, by the names of their histories
+	edition int64             // that they are of (heal.go)
 }
 
 // Open opens an index, making it where there is none. The error is of class
@@ -128,7 +128,7 @@ func classify(err error) error {
 	switch {
 	case err == nil || errors.Is(err, ErrForeign) || errors.Is(err, ErrFailed):
 		return err
-	case errors.Is(err, errDamaged):
+	case errors.Is(err, errDamaged) || errors.Is(err, errEmptied):
 		return fmt.Errorf("%w: %w", ErrFailed, err)
 	case errors.Is(err, context.Canceled):
 		return err
@@ -153,13 +153,18 @@ func (x *Index) prepare(ctx context.Context) error {
 		if current, err := x.check(ctx); err != nil || current {
 			return err
 		}
-		for _, name := range []string{"folder", "chunk", "gap", "version", "change"} {
-			if err := x.exec(ctx, "DROP TABLE IF EXISTS "+name); err != nil {
-				return err
-			}
-		}
-		return x.exec(ctx, tables, fmt.Sprintf("PRAGMA application_id = %d", applicationID), fmt.Sprintf("PRAGMA user_version = %d", version))
+		return x.create(ctx)
 	})
+}
+
+// create makes the tables anew.
+func (x *Index) create(ctx context.Context) error {
+	for _, name := range []string{"folder", "chunk", "gap", "version", "change"} {
+		if err := x.exec(ctx, "DROP TABLE IF EXISTS "+name); err != nil {
+			return err
+		}
+	}
+	return x.exec(ctx, tables, fmt.Sprintf("PRAGMA application_id = %d", applicationID), fmt.Sprintf("PRAGMA user_version = %d", version))
 }
 
 // check tells whether the file is an index of this version; it refuses what is

@@ -14,9 +14,14 @@ import (
 )
 
 // Update adds the commits that can be reached from tip and are not there yet to
-// the history of a name. What a cancelled or failed call has added stays.
+// the history of a name. What a cancelled or failed call has added stays. Past calls
+// it again where another process has emptied the index meanwhile.
 func (x *Index) Update(ctx context.Context, reader *trace.Reader, name string, tip trace.Hash, progress func(done, total int)) (err error) {
-	g, err := x.graph(ctx, name)
+	var g *graph
+	err = x.transaction(ctx, "BEGIN", func() (err error) {
+		g, err = x.graph(ctx, name)
+		return err
+	})
 	if err != nil {
 		return classify(err)
 	}
@@ -186,6 +191,12 @@ func (b *builder) start(ctx context.Context) error {
 }
 
 func (b *builder) catchUp(ctx context.Context) error {
+	// The commits and ids that are known here would be those of nothing.
+	if now, err := b.x.editionNow(ctx); err != nil {
+		return err
+	} else if now != b.x.edition {
+		return errEmptied
+	}
 	if b.g.folder == 0 {
 		if _, err := b.x.conn.ExecContext(ctx, "INSERT INTO folder (path) VALUES (?) ON CONFLICT DO NOTHING", b.path); err != nil {
 			return err

@@ -26,6 +26,9 @@ func TestWaitWhileAsked(t *testing.T) {
 	if err := x.exec(ctx, "INSERT INTO version VALUES (1, zeroblob(20), 'UTC', '', '', '', NULL, NULL)"); err != nil {
 		t.Fatal(err)
 	}
+	if err := x.renew(ctx); err != nil {
+		t.Fatal(err)
+	}
 	b := &builder{x: x, g: &graph{}, path: ".", ids: map[trace.Key]int64{}}
 	if err := b.begin(ctx); err != nil {
 		t.Fatal(err)
