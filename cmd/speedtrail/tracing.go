@@ -98,7 +98,10 @@ func (t *tracing) point() error {
 	for _, d := range codes.AllDirections {
 		seen := map[string]int{}
 		for i, trail := range trails[d] {
-			out := t.trail(d, &trail)
+			out, err := t.trail(d, &trail)
+			if err != nil {
+				return err
+			}
 			key := fmt.Sprint(out)
 			if n, ok := seen[key]; ok {
 				t.doc.Trails[n].Trains = append(t.doc.Trails[n].Trains, t.trains[i].ID)
@@ -113,7 +116,7 @@ func (t *tracing) point() error {
 }
 
 // trail writes a trail without its trains.
-func (t *tracing) trail(d codes.Direction, trail *trace.Trail) render.TraceTrail {
+func (t *tracing) trail(d codes.Direction, trail *trace.Trail) (render.TraceTrail, error) {
 	out := render.TraceTrail{Direction: d.String(), Now: t.value(trail.Now), Steps: []render.TraceStep{}, Line: []render.TraceReign{}}
 	for _, s := range trail.Steps {
 		step := render.TraceStep{After: t.value(s.After), Before: []render.TraceValue{}, Across: s.Across, Aside: s.Aside}
@@ -123,21 +126,31 @@ func (t *tracing) trail(d codes.Direction, trail *trace.Trail) render.TraceTrail
 		out.Steps = append(out.Steps, step)
 	}
 	for _, r := range trail.Line {
-		out.Line = append(out.Line, render.TraceReign{Committed: t.committed(r.From), Gap: r.Gap, Speed: int(r.Speed)})
+		committed, err := t.committed(r.From)
+		if err != nil {
+			return out, err
+		}
+		out.Line = append(out.Line, render.TraceReign{Committed: committed, Gap: r.Gap, Speed: int(r.Speed)})
 	}
-	return out
+	return out, nil
 }
 
 func (t *tracing) value(v trace.Value) render.TraceValue {
 	return render.TraceValue{Commit: t.rank[v.Commit], Speed: int(v.Speed), Sources: assessment.Sources(v.Sources)}
 }
 
-// committed writes when a commit was made.
-func (t *tracing) committed(c int32) string {
-	if t.h.Commits[c].When == 0 {
-		return ""
+// committed writes when a commit was made. Of second 0 the history does not tell
+// whether it is a time or stands for none.
+func (t *tracing) committed(c int32) (string, error) {
+	commit := &t.h.Commits[c]
+	if commit.When != 0 {
+		return instant(time.Unix(commit.When, 0)), nil
 	}
-	return time.Unix(t.h.Commits[c].When, 0).UTC().Format(time.RFC3339)
+	whole, err := t.repo.Resolve(commit.Hash.String())
+	if err != nil {
+		return "", err
+	}
+	return instant(whole.Committer.When), nil
 }
 
 // mostBands is how many revisions a picture of a stretch shows.
@@ -186,7 +199,11 @@ func (t *tracing) stretch() error {
 			bands := views[d].Bands(t.trains[i], from, to)
 			out.LeftOut = max(0, len(bands)-mostBands)
 			for _, b := range bands[out.LeftOut:] {
-				out.Bands = append(out.Bands, render.TraceBand{Committed: t.committed(b.From), Gap: b.Gap, Pieces: levels(b.Profile)})
+				committed, err := t.committed(b.From)
+				if err != nil {
+					return err
+				}
+				out.Bands = append(out.Bands, render.TraceBand{Committed: committed, Gap: b.Gap, Pieces: levels(b.Profile)})
 			}
 			key := fmt.Sprint(out)
 			if n, ok := seen[key]; ok {
