@@ -1,21 +1,19 @@
 package scope
 
 import (
-	"cmp"
 	"slices"
 
+	"speedtrail/diff/align"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
 
-type interval struct{ from, to unit.Distance }
-
 // reach gives where the rear of the train carries a row beyond its far end.
-func (o *Observed) reach(end unit.Distance) interval {
+func (o *Observed) reach(end unit.Distance) align.Interval {
 	if o.Direction == codes.Reverse {
-		return interval{end - o.TrainLength, end}
+		return align.Interval{From: end - o.TrainLength, To: end}
 	}
-	return interval{end, end + o.TrainLength}
+	return align.Interval{From: end, To: end + o.TrainLength}
 }
 
 // Prepare looks at where rows hold a raise back by run-out that no declaration lets
@@ -27,7 +25,7 @@ func (o *Observed) Prepare(declared []Declared) {
 		return
 	}
 	if o.Unplaced {
-		o.undeclared = []interval{{o.From, o.To}}
+		o.undeclared = []align.Interval{{From: o.From, To: o.To}}
 		return
 	}
 	for _, end := range o.RowEnds {
@@ -50,58 +48,48 @@ func (d *Declared) ends(o *Observed, end unit.Distance) bool {
 // runOut gives the stretches past the far end in which run-out is inside: as far as
 // the train carries a row that ends in the declaration, and no row holds it back
 // that ends elsewhere.
-func (d *Declared) runOut(o *Observed) []interval {
+func (d *Declared) runOut(o *Observed) []align.Interval {
 	if !o.RunOut {
 		return nil
 	}
-	var list []interval
+	var list []align.Interval
 	for _, end := range o.RowEnds {
 		if !d.ends(o, end) {
 			continue
 		}
 		x := o.reach(end)
 		if o.Direction == codes.Reverse {
-			x.to = min(x.to, d.From)
+			x.To = min(x.To, d.From)
 		} else {
-			x.from = max(x.from, d.To)
+			x.From = max(x.From, d.To)
 		}
 		list = append(list, x)
 	}
 	return without(union(list), o.undeclared)
 }
 
-// union joins intervals that overlap or touch, and sorts them.
-func union(list []interval) []interval {
-	list = slices.DeleteFunc(list, func(x interval) bool { return x.from >= x.to })
-	slices.SortFunc(list, func(a, b interval) int { return cmp.Compare(a.from, b.from) })
-	joined := list[:0]
-	for _, x := range list {
-		if n := len(joined); n > 0 && x.from <= joined[n-1].to {
-			joined[n-1].to = max(joined[n-1].to, x.to)
-			continue
-		}
-		joined = append(joined, x)
-	}
-	return joined
+// union joins the intervals that are not empty.
+func union(list []align.Interval) []align.Interval {
+	return align.Union(slices.DeleteFunc(list, func(x align.Interval) bool { return x.From >= x.To }))
 }
 
 // without takes the parts out of a union that lie in another.
-func without(list, out []interval) []interval {
+func without(list, out []align.Interval) []align.Interval {
 	if len(out) == 0 {
 		return list
 	}
-	var left []interval
+	var left []align.Interval
 	for _, x := range list {
 		for _, o := range out {
-			if o.to <= x.from || x.to <= o.from {
+			if o.To <= x.From || x.To <= o.From {
 				continue
 			}
-			if x.from < o.from {
-				left = append(left, interval{x.from, o.from})
+			if x.From < o.From {
+				left = append(left, align.Interval{From: x.From, To: o.From})
 			}
-			x.from = min(x.to, o.to)
+			x.From = min(x.To, o.To)
 		}
-		if x.from < x.to {
+		if x.From < x.To {
 			left = append(left, x)
 		}
 	}

@@ -12,6 +12,7 @@ import (
 	"slices"
 	"sort"
 
+	"speedtrail/diff/align"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -33,7 +34,7 @@ type Observed struct {
 	Unplaced bool
 
 	// undeclared is where a row holds the raise back that no declaration lets go.
-	undeclared []interval
+	undeclared []align.Interval
 }
 
 // Declared is what a change request declares on one route.
@@ -95,8 +96,8 @@ func cut(o *Observed, declared []Declared) []Piece {
 		plain = append(plain, claim{d.From, d.To, i, false})
 		limits = append(limits, d.From, d.To)
 		for _, x := range d.runOut(o) {
-			runOuts = append(runOuts, claim{x.from, x.to, i, true})
-			limits = append(limits, x.from, x.to)
+			runOuts = append(runOuts, claim{x.From, x.To, i, true})
+			limits = append(limits, x.From, x.To)
 		}
 	}
 	// A plain claim counts before one by run-out.
@@ -134,7 +135,7 @@ func Seen(o *Observed, d *Declared) (inside, runOut unit.Distance) {
 	}
 	inside = overlap(o, d.From, d.To)
 	for _, x := range d.runOut(o) {
-		runOut += overlap(o, x.from, x.to)
+		runOut += overlap(o, x.From, x.To)
 	}
 	return inside, runOut
 }
