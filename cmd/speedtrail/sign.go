@@ -111,7 +111,12 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	if x == nil || x.Policy.Parsed == nil {
 		return badCall("README.md has a whole signoff.toml; speedtrail anchor puts the first policy in force", "the base of assessment %d has no valid policy (signoff.toml and allowed_signers): nothing was recorded", number)
 	}
-	key, done, err := s.signerKey(a, x.Policy.Parsed)
+	// A role that only the policy in force has is taken by that one.
+	policy := x.Policy.Parsed
+	if newest := line.Newest(x.Folder).Parsed; newest != nil && policy.Role(s.role) == nil && newest.Role(s.role) != nil {
+		policy = newest
+	}
+	key, done, err := s.signerKey(a, policy)
 	if err != nil {
 		return err
 	}
@@ -120,7 +125,7 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 		Kind: signoff.SignOff, Ledger: l.ID(), Assessment: number, Digest: x.Digest, Base: x.Base, Target: x.Target, Folder: x.Folder, Rules: x.Rules,
 		Policy: x.Policy.Hash, Findings: x.Findings, Role: s.role, Decision: decision, Reason: s.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
 	}
-	if err := s.complete(&statement, key, x.Policy.Parsed); err != nil {
+	if err := s.complete(&statement, key, policy); err != nil {
 		return err
 	}
 	if err := a.foresee(line, statement, key); err != nil {

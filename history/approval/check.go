@@ -257,7 +257,11 @@ func (l *Line) checkSignOff(r *Record) error {
 	if err := l.checkIndependence(r, a, policy); err != nil {
 		return err
 	}
-	if err := l.checkSignature(r, policy); err != nil {
+	signer := policy
+	if policy.Role(r.Role) == nil {
+		signer = r.inForce
+	}
+	if err := l.checkSignature(r, signer); err != nil {
 		return err
 	}
 	if err := l.checkByNewest(r, a); err != nil {
@@ -269,6 +273,9 @@ func (l *Line) checkSignOff(r *Record) error {
 // checkByNewest holds a sign-off against the newest approved policy as well: a base
 // of before a turn of the policy does not bring the former one back.
 func (l *Line) checkByNewest(r *Record, a *Assessment) error {
+	if r.inForce.Role(r.Role) == nil {
+		return refuse("by the newest approved policy: it has no role %q; base the change on the newest release, and assess it again", r.Role)
+	}
 	err := checkRole(r.inForce, r.Role, r.Signer)
 	if err == nil {
 		err = l.checkIndependence(r, a, r.inForce)
@@ -321,6 +328,10 @@ func (l *Line) blocked(a *Assessment) string {
 	}
 	if !l.counted(a) {
 		return "its preparers are counted from " + a.since() + ", which is not the approved commit but another one of the same content: who prepared that is not known; assess the change again"
+	}
+	if a.BaseTree == a.TargetTree {
+		// Else a commit that brings history without content would become an approved one.
+		return "its target has the content of its base, so that there is nothing to sign"
 	}
 	return ""
 }

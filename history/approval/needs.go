@@ -1,9 +1,7 @@
 package approval
 
 import (
-	"cmp"
 	"fmt"
-	"maps"
 	"slices"
 
 	"speedtrail/history/signoff"
@@ -90,17 +88,47 @@ func (l *Line) standing(a *Assessment) map[part]int {
 
 // completed gives the entry with which the roles of an assessment had the people
 // that they need, of those whose approvals stand; 0 where they do not have them.
+// Where a rejection of the content was cleared, they have to have them then, by the
+// policy of then, or later.
 func (l *Line) completed(a *Assessment) int64 {
 	since := l.standing(a)
-	inOrder := slices.SortedFunc(maps.Keys(since), func(x, y part) int { return cmp.Compare(since[x], since[y]) })
-	approve := map[part]int{}
-	for _, x := range inOrder {
-		approve[x] = since[x]
-		if r := &l.signOffs[since[x]]; met(a, approve, r.inForce) {
+	floor := l.cleared(a.content())
+	points := slices.Clone(l.ofAssessment[a.Number])
+	if floor >= 0 && !slices.Contains(points, floor) {
+		points = append(points, floor)
+		slices.Sort(points)
+	}
+	for _, i := range points {
+		if i < floor {
+			continue
+		}
+		approve := map[part]int{}
+		for x, at := range since {
+			if at <= i {
+				approve[x] = at
+			}
+		}
+		if r := &l.signOffs[i]; met(a, approve, r.inForce) {
 			return r.Entry.Seq
 		}
 	}
 	return 0
+}
+
+// cleared gives the place in signOffs of the last decision with which somebody who
+// had rejected a content approved it; -1 where nobody had.
+func (l *Line) cleared(c content) int {
+	rejects := map[string]bool{}
+	last := -1
+	for _, i := range l.ofContent[c] {
+		r := &l.signOffs[i]
+		now := r.Decision == signoff.Reject
+		if rejects[r.Signer] && !now {
+			last = i
+		}
+		rejects[r.Signer] = now
+	}
+	return last
 }
 
 // missing lists the roles that lack people for an assessment: by the policy of its

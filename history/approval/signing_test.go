@@ -463,7 +463,7 @@ func TestOldBaseDoesNotBringOldPolicyBack(t *testing.T) {
 	t.Run("a role that has gone", func(t *testing.T) {
 		s, n := begin(t, ordinary(), lone)
 		s.must(s.signOff(n, "ada", "checker", "approve"))
-		s.refused(s.signOff(n, "bea", "approver", "approve"), "by the newest approved policy: the policy has no role \"approver\"")
+		s.refused(s.signOff(n, "bea", "approver", "approve"), "by the newest approved policy: it has no role \"approver\"")
 		s.state(n, Partly)
 	})
 	t.Run("independence", func(t *testing.T) {
@@ -495,5 +495,46 @@ func TestOldBaseDoesNotBringOldPolicyBack(t *testing.T) {
 		if got := s.state(n, Approved); len(got.Missing) > 0 {
 			t.Errorf("missing %v", got.Missing)
 		}
+	})
+	t.Run("a role more, for somebody whom only the new policy has", func(t *testing.T) {
+		few := ordinary().without("eva")
+		now := ordinary().role("safety 1 - eva")
+		s, n := begin(t, few, now)
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		if got := s.state(n, Partly); !slices.Equal(got.Missing, []string{"safety (0 of 1)"}) {
+			t.Errorf("missing %v", got.Missing)
+		}
+		s.must(s.signOff(n, "eva", "safety", "approve"))
+		s.state(n, Approved)
+	})
+	t.Run("one person more for a while", func(t *testing.T) {
+		more := ordinary().role("approver 2 preparer,checker")
+		s, n := begin(t, ordinary(), more)
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		s.state(n, Partly)
+		back := s.assess("b", "d", more, ordinary(), nil)
+		s.must(s.signOff(back, "ada", "checker", "approve"))
+		s.must(s.signOff(back, "bea", "approver", "approve"))
+		s.must(s.signOff(back, "eva", "approver", "approve"))
+		s.state(back, Approved)
+		s.must(s.signOff(n, "bea", "approver", "approve")) // once more, by the policy of now
+		s.state(n, Approved)
+	})
+	t.Run("a rejection that is cleared after the turn", func(t *testing.T) {
+		s := anchored(t, ordinary())
+		n, turn := s.assess("a", "c", ordinary(), ordinary(), nil), s.assess("a", "b", ordinary(), ordinary().role("approver 2 preparer,checker"), nil)
+		s.must(s.signOff(n, "fin", "checker", "reject"))
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		s.must(s.signOff(turn, "ada", "checker", "approve"))
+		s.must(s.signOff(turn, "bea", "approver", "approve"))
+		s.must(s.signOff(n, "fin", "checker", "approve"))
+		if got := s.state(n, Partly); !slices.Equal(got.Missing, []string{"approver (1 of 2)"}) {
+			t.Errorf("missing %v", got.Missing)
+		}
+		s.must(s.signOff(n, "eva", "approver", "approve"))
+		s.state(n, Approved)
 	})
 }

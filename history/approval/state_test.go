@@ -202,6 +202,7 @@ func TestBlocks(t *testing.T) {
 		"several unknown preparers": {"a", "b", func(a *Assessment) { a.Preparers = []string{"b@fell.example", "a@fell.example"} }, "unknown-preparer: b@fell.example, a@fell.example", ""},
 		"a preparer of no address":  {"a", "b", func(a *Assessment) { a.Preparers = []string{"", "dan@tarn.example"} }, "unknown-preparer: somebody without an address", ""},
 		"another folder":            {"a", "b", func(a *Assessment) { a.Folder = "data" }, "no policy is anchored", "no policy is anchored"},
+		"the content of the base":   {"a", "b", func(a *Assessment) { a.TargetTree = a.BaseTree }, "", "there is nothing to sign"},
 		"nobody prepared it":        {"a", "b", func(a *Assessment) { a.Preparers = nil }, "", "nobody is known to have prepared it"},
 		"base is the target":        {"a", "b", func(a *Assessment) { a.Target = a.Base }, "", "its base is its target"},
 		"no policy of the target":   {"a", "b", func(a *Assessment) { a.Next = Policy{} }, "", "the target has no policy"},
