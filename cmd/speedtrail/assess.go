@@ -86,7 +86,7 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 			if err := into.open(ctx, a); err != nil {
 				return "", err
 			}
-			return approvedCommit(ctx, repo, into.line, base, target, folder)
+			return a.approvedCommit(ctx, repo, into.line, base, target, folder)
 		}
 	}
 	doc, err := a.compute(ctx, repo, base, target, options, record, since)
@@ -189,6 +189,11 @@ func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, s
 	commits, complete, err := repo.Between(ctx, cmp.Or(in.PreparedSince, from.commit.Hash), to.commit.Hash)
 	if err != nil {
 		return false, err
+	}
+	if in.PreparedSince != "" {
+		if commits, err = withoutCopies(repo, commits, in.BaseRev.Tree, in.Folder); err != nil {
+			return false, err
+		}
 	}
 	for _, p := range repo.Preparers(commits) {
 		in.Preparers = append(in.Preparers, assessment.Person{Name: validText(p.Name), Email: validText(p.Email)})

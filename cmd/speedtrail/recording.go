@@ -62,7 +62,7 @@ func fromBase(assessment.Revision, string, string) (string, error) { return "", 
 // more history, and with it people who prepared what the target takes up. One that
 // the target descends from is taken before others, then the newest that the
 // repository has.
-func approvedCommit(ctx context.Context, repo *revision.Repo, line *approval.Line, base assessment.Revision, target, folder string) (string, error) {
+func (a *app) approvedCommit(ctx context.Context, repo *revision.Repo, line *approval.Line, base assessment.Revision, target, folder string) (string, error) {
 	if line == nil {
 		return "", nil
 	}
@@ -89,5 +89,32 @@ func approvedCommit(ctx context.Context, repo *revision.Repo, line *approval.Lin
 			found = c
 		}
 	}
+	if found == "" && len(commits) > 0 {
+		a.remark("! the base has the content of the approved commit %s, which this repository does not have: fetch it and assess again, else the assessment cannot be signed", commits[len(commits)-1])
+	}
 	return found, nil
+}
+
+// withoutCopies leaves out the commits that have the approved content on parents
+// that were approved before, as a squashed branch is: they bring nothing that was
+// not looked at.
+func withoutCopies(repo *revision.Repo, commits []revision.Commit, tree, folder string) ([]revision.Commit, error) {
+	since := map[string]bool{}
+	for _, c := range commits {
+		since[c.Hash] = true
+	}
+	var out []revision.Commit
+	for _, c := range commits {
+		if len(c.Parents) > 0 && !slices.ContainsFunc(c.Parents, func(p string) bool { return since[p] }) {
+			files, err := repo.Snapshot(c.Hash, folder)
+			if err != nil && !errors.Is(err, revision.ErrNoFolder) {
+				return nil, err
+			}
+			if err == nil && content(files) == tree {
+				continue
+			}
+		}
+		out = append(out, c)
+	}
+	return out, nil
 }
