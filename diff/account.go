@@ -92,6 +92,7 @@ type Route struct {
 	causes     causeTable
 	pieces     map[string]int
 	alike      map[leavingKey]bool // see carriesAlike
+	held       map[codes.Direction][]heldRow
 	neighbours neighbours
 }
 

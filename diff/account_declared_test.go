@@ -94,6 +94,9 @@ func TestDeclared(t *testing.T) {
 	raise := texts{"speed.csv": flatSpeed(90)}
 	delayed := texts{"speed.csv": strings.Replace(ground["speed.csv"], "80", "90", 1)}
 	hold := texts{"route.toml": oneWay, "speed.csv": "from_km,to_km,basic\n0,10,100\n"}
+	under := func(v int) string {
+		return fmt.Sprintf("from_km,to_km,basic,train_length_delay\n0,1,100,\n1,2,%d,yes\n2,2.2,80,no\n2.2,2.3,100,\n2.3,3,60,yes\n3,10,100,\n", v)
+	}
 	held := func(rows string) texts {
 		return texts{"axle-load.csv": "from_km,to_km,C2,train_length_delay\n5.15,5.175,60,no\n" + rows}
 	}
@@ -138,6 +141,16 @@ func TestDeclared(t *testing.T) {
 			"nominal 4.000-5.000 T 80>100: 4.000-5.000 CR-1/0", "nominal 5.000-5.150 T 80>100 run-out: 5.000-5.150 CR-1/0", "nominal 5.175-5.375 T 80>100 run-out: outside", "CR-1/0 sees T 1150"}},
 		{"the same where both are declared", over(hold, held("4,5,80,yes\n5.15,5.175,80,yes\n")), asked(held(""), declares("R1", "both", 4, 5.175, "raise", "")), []string{
 			"nominal 4.000-5.000 T 80>100: 4.000-5.000 CR-1/0", "nominal 5.000-5.150 T 80>100 run-out: 5.000-5.150 CR-1/0", "nominal 5.175-5.375 T 80>100 run-out: 5.175-5.375 CR-1/0 run-out", "CR-1/0 sees T 1150+200"}},
+		// A row that is removed held the train as well, at a speed that another row
+		// undercut.
+		{"run-out of a declared row in front of a higher one that is not declared",
+			texts{"route.toml": oneWay, "trains.toml": trainText("T", 150, "", "C2", 300, 200), "axle-load.csv": "from_km,to_km,C2\n2,2.2,80\n", "speed.csv": under(60)},
+			asked(texts{"axle-load.csv": gone, "speed.csv": under(100)}, declares("R1", "both", 1, 2, "raise", "")), []string{
+				"nominal 1.000-2.000 T 60>100: 1.000-2.000 CR-1/0", "nominal 2.000-2.200 T 60>80 run-out: 2.000-2.200 CR-1/0 run-out", "nominal 2.200-2.300 T 60>100 run-out: outside", "CR-1/0 sees T 1000+200"}},
+		{"the same where that one stays",
+			texts{"route.toml": oneWay, "trains.toml": trainText("T", 150, "", "C2", 300, 200), "axle-load.csv": "from_km,to_km,C2\n2,2.2,80\n", "speed.csv": under(60)},
+			asked(texts{"speed.csv": under(100)}, declares("R1", "both", 1, 2, "raise", "")), []string{
+				"nominal 1.000-2.000 T 60>100: 1.000-2.000 CR-1/0", "nominal 2.000-2.300 T 60>80 run-out: 2.000-2.300 CR-1/0 run-out", "CR-1/0 sees T 1000+300"}},
 		{"the same as a reduction, which each of them makes", over(hold, held("")), asked(held("4,5,80,yes\n5.15,5.175,80,yes\n"), declares("R1", "both", 4, 5.15, "lower", "")), []string{
 			"nominal 4.000-5.000 T 100>80: 4.000-5.000 CR-1/0", "nominal 5.000-5.150 T 100>80 run-out: 5.000-5.150 CR-1/0", "nominal 5.175-5.375 T 100>80 run-out: 5.175-5.200 CR-1/0 run-out, 5.200-5.375 outside", "CR-1/0 sees T 1150+25"}},
 		{"a change that is hidden today", over(flat, texts{"temporary.csv": temporary("4,5,60")}), asked(raise, declares("R1", "both", 4, 4.5, "raise", "")), []string{

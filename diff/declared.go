@@ -6,7 +6,6 @@ import (
 	"slices"
 
 	"speedtrail/diff/align"
-	"speedtrail/diff/profile"
 	"speedtrail/diff/scope"
 	"speedtrail/schema"
 	"speedtrail/schema/chainage"
@@ -232,6 +231,9 @@ func (a *Account) reconcileRoute(index int) {
 				Raised: c.Raised(), RunOut: c.RunOut,
 			}
 			o.RowEnds, o.Unplaced = r.rowEnds(c)
+			if o.RunOut && o.Raised {
+				o.RowEnds = append(o.RowEnds, r.holding(c, a.Trains[c.Train].Train, masked == 1)...)
+			}
 			o.Prepare(target[1])
 			c.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, target[1])[0], owners[1])
 			e := eyes{c.Direction, c.Train}
@@ -309,50 +311,4 @@ func (r *Route) pieceIndex(pieces []scope.Piece, owners []int) int {
 		r.Pieces = append(r.Pieces, pieces)
 	}
 	return i
-}
-
-// rowEnds gives the far ends, in the direction of travel and on the target's
-// track, of the rows that differ and govern a change: for a raise, rows of the
-// base; for a reduction, rows of the target. unplaced tells that there is one whose
-// end the target's track does not have.
-func (r *Route) rowEnds(c *Change) (ends []unit.Distance, unplaced bool) {
-	if !c.RunOut {
-		return nil, false
-	}
-	route, sources := r.Base, r.Sources[c.BeforeSources]
-	if !c.Raised() {
-		route, sources = r.Target, r.Sources[c.AfterSources]
-	}
-	for _, cause := range r.Causes[c.Causes] {
-		f := &r.Files[cause.File]
-		d := &f.Rows[cause.Row]
-		layer, ok := layerOf(f.Path())
-		if !ok {
-			continue
-		}
-		lines := linesOf(f.Tables[d.Table].Old.Rows, d.Old)
-		if !c.Raised() {
-			lines = linesOf(f.Tables[d.Table].New.Rows, d.New)
-		}
-		for _, line := range lines {
-			if !slices.ContainsFunc(sources, func(s profile.Source) bool { return s.Layer == layer && s.Pos.Line == line }) {
-				continue
-			}
-			row := anyRow(route, layer, line)
-			if row == nil {
-				continue
-			}
-			p := row.To
-			if c.Direction == codes.Reverse {
-				p = row.From
-			}
-			end, err := find(r.Target.Track, p)
-			if err != nil {
-				unplaced = true
-				continue
-			}
-			ends = append(ends, end)
-		}
-	}
-	return ends, unplaced
 }
