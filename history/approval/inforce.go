@@ -6,6 +6,8 @@ import (
 	"strconv"
 	"strings"
 	"time"
+
+	"speedtrail/schema"
 )
 
 // Corrections of an in-force record.
@@ -14,6 +16,44 @@ const (
 	Replaces        = "replaces"
 	Voids           = "voids"
 )
+
+// checkInForce checks a record that a revision went into service.
+func (l *Line) checkInForce(r *Record) error {
+	if err := l.checkForm(r); err != nil {
+		return err
+	}
+	policy, err := l.checkNewest(r)
+	if err != nil {
+		return err
+	}
+	if r.Role != InServiceRole {
+		return refuse("the role is %q, %q is needed", r.Role, InServiceRole)
+	}
+	if err := checkRole(policy, r.Role, r.Signer); err != nil {
+		return err
+	}
+	if err := l.checkCorrection(r); err != nil {
+		return err
+	}
+	return l.checkNewestSignature(r, policy)
+}
+
+// checkNewest gives the newest approved policy of the folder of a statement,
+// which has to name it.
+func (l *Line) checkNewest(r *Record) (*schema.Policy, error) {
+	newest := l.Newest(r.Folder)
+	if newest.Hash == "" {
+		return nil, refuse("no policy is anchored for the folder %s; speedtrail anchor puts one in force", r.Folder)
+	}
+	policy, err := usable(newest, "the newest approved revision")
+	if err != nil {
+		return nil, err
+	}
+	if newest.Hash != r.Policy {
+		return nil, refuse("the statement names the policy %s, in force is %s", r.Policy, newest.Hash)
+	}
+	return policy, nil
+}
 
 // correction reads what a record corrects: the word and the entry.
 func correction(r *Record) (word string, entry int64, ok bool) {

@@ -59,7 +59,8 @@ func Damaged(err error) error { return fail(ErrDamaged, err) }
 
 func fail(class, err error) error { return &Error{class, err} }
 
-// classify sorts an error of SQLite, or of reading a row, into a class. One that has a class keeps it.
+// classify sorts an error of SQLite, or of reading a row, into a class. One that has
+// a class keeps it.
 func classify(err error) error {
 	var s sqlite3.Error
 	var classed *Error

@@ -45,8 +45,9 @@ var link = os.Link
 
 // Restore writes a ledger anew from entries: the file holds all of them, or there
 // is none. Each entry is checked against the one before; what is wrong with one is
-// an *EntryError. A file that holds something is refused, also one that another process makes meanwhile: nothing is
-// written over or removed that this call has not made.
+// an *EntryError. A file that holds something is refused, also one that another
+// process makes meanwhile: nothing is written over or removed that this call has not
+// made.
 func Restore(ctx context.Context, file string, entries iter.Seq2[Restored, error]) (head chain.Head, err error) {
 	if err := os.MkdirAll(filepath.Dir(file), 0o755); err != nil {
 		return head, fail(ErrReadOnly, err)
