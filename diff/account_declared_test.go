@@ -97,6 +97,10 @@ func TestDeclared(t *testing.T) {
 	under := func(v int) string {
 		return fmt.Sprintf("from_km,to_km,basic,train_length_delay\n0,1,100,\n1,2,%d,yes\n2,2.2,80,no\n2.2,2.3,100,\n2.3,3,60,yes\n3,10,100,\n", v)
 	}
+	mirrored := func(v int) string {
+		return fmt.Sprintf("from_km,to_km,basic,train_length_delay\n0,7,100,\n7,7.7,60,yes\n7.7,7.8,100,\n7.8,8,80,no\n8,9,%d,yes\n9,10,100,\n", v)
+	}
+	const both = "id,from_km,to_km,speed,train_length_delay\nB,5,5.2,40,no\n"
 	held := func(rows string) texts {
 		return texts{"axle-load.csv": "from_km,to_km,C2,train_length_delay\n5.15,5.175,60,no\n" + rows}
 	}
@@ -147,6 +151,14 @@ func TestDeclared(t *testing.T) {
 			texts{"route.toml": oneWay, "trains.toml": trainText("T", 150, "", "C2", 300, 200), "axle-load.csv": "from_km,to_km,C2\n2,2.2,80\n", "speed.csv": under(60)},
 			asked(texts{"axle-load.csv": gone, "speed.csv": under(100)}, declares("R1", "both", 1, 2, "raise", "")), []string{
 				"nominal 1.000-2.000 T 60>100: 1.000-2.000 CR-1/0", "nominal 2.000-2.200 T 60>80 run-out: 2.000-2.200 CR-1/0 run-out", "nominal 2.200-2.300 T 60>100 run-out: outside", "CR-1/0 sees T 1000+200"}},
+		{"the same against the distance",
+			texts{"route.toml": strings.Replace(oneWay, "nominal", "reverse", 1), "trains.toml": trainText("T", 150, "", "C2", 300, 200), "axle-load.csv": "from_km,to_km,C2\n7.8,8,80\n", "speed.csv": mirrored(60)},
+			asked(texts{"axle-load.csv": gone, "speed.csv": mirrored(100)}, declares("R1", "both", 8, 9, "raise", "")), []string{
+				"reverse 7.700-7.800 T 60>100 run-out: outside", "reverse 7.800-8.000 T 60>80 run-out: 7.800-8.000 CR-1/0 run-out", "reverse 8.000-9.000 T 60>100: 8.000-9.000 CR-1/0", "CR-1/0 sees T 1000+200"}},
+		{"a temporary restriction that goes holds nobody back where none is in force",
+			texts{"route.toml": oneWay, "speed.csv": "from_km,to_km,basic\n0,4,100\n4,5,80\n5,10,100\n", "temporary.csv": both + "X,5,5.05,90,yes\n"},
+			asked(texts{"speed.csv": "from_km,to_km,basic\n0,10,100\n", "temporary.csv": both}, declares("R1", "both", 4, 5, "raise", "")), []string{
+				"nominal 4.000-5.000 T 80>100: 4.000-5.000 CR-1/0", "nominal 5.200-5.250 T 90>100 run-out: outside", "masked nominal 5.000-5.200 T 80>100 run-out: 5.000-5.200 CR-1/0 run-out", "CR-1/0 sees T 1000 hidden 200"}},
 		{"the same where that one stays",
 			texts{"route.toml": oneWay, "trains.toml": trainText("T", 150, "", "C2", 300, 200), "axle-load.csv": "from_km,to_km,C2\n2,2.2,80\n", "speed.csv": under(60)},
 			asked(texts{"speed.csv": under(100)}, declares("R1", "both", 1, 2, "raise", "")), []string{
