@@ -90,7 +90,7 @@ func (a *app) demo(ctx context.Context, dir string) (err error) {
 
 // printHints says what to look at and what to try next.
 func (a *app) printHints(network demo.Repository, dir string) {
-	fmt.Fprintf(a.out, "\nWhat to look at, in the folder of the network (the program is the one that runs here;\ngo install ./cmd/speedtrail puts it on the path)\n      cd %s\n", source.Visible(dir))
+	fmt.Fprintf(a.out, "\nWhat to look at, in the folder of the network (go install ./cmd/speedtrail puts\nthe program on the path)\n      cd %s\n", source.Visible(dir))
 	for _, h := range network.Look {
 		fmt.Fprintf(a.out, "\n- %s\n", strings.ReplaceAll(wrap(h.Text, 76), "\n", "\n  "))
 		if h.Command != "" {
