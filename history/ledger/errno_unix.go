@@ -4,5 +4,14 @@ package ledger
 
 import "syscall"
 
-// noQuota is the system's word for a full share of a disk.
-const noQuota = syscall.EDQUOT
+// systemClass sorts what the system said of a failed call into a class, nil where
+// it tells none. Numbers are those of errno(3).
+func systemClass(errno syscall.Errno) error {
+	switch errno {
+	case syscall.ENOSPC, syscall.EFBIG, syscall.EDQUOT:
+		return ErrFull
+	case syscall.EACCES, syscall.EPERM, syscall.EROFS:
+		return ErrReadOnly
+	}
+	return nil
+}

@@ -3,7 +3,6 @@ package ledger
 import (
 	"errors"
 	"strings"
-	"syscall"
 
 	"github.com/mattn/go-sqlite3"
 )
@@ -83,11 +82,8 @@ func classify(err error) error {
 		return fail(ErrFull, err)
 	case sqlite3.ErrIoErr:
 		// What the system said tells more than which call it was.
-		switch s.SystemErrno {
-		case syscall.ENOSPC, syscall.EFBIG, noQuota:
-			return fail(ErrFull, err)
-		case syscall.EACCES, syscall.EPERM, syscall.EROFS:
-			return fail(ErrReadOnly, err)
+		if class := systemClass(s.SystemErrno); class != nil {
+			return fail(class, err)
 		}
 		return fail(ErrDamaged, err)
 	case sqlite3.ErrNotADB:

@@ -25,6 +25,10 @@ const (
 	Kilometre           = 1000 * Metre
 )
 
+// Counts, sizes and speeds are ints all over the program, and their bounds were
+// chosen for 64 bits: on a machine with fewer it does not compile.
+const _ = uint(1 << 63)
+
 // MaxKM bounds the chainages that are read: six digits before the point. It
 // keeps every sum of distances far inside 64 bits.
 const MaxKM = 999_999
