@@ -1,6 +1,7 @@
 package main
 
 import (
+	"fmt"
 	"os"
 	"path/filepath"
 	"strings"
@@ -41,7 +42,7 @@ func TestRemarks(t *testing.T) {
 
 	out := filepath.Join(t.TempDir(), "absent", "report.html")
 	got = call(t, in("report", "1", "--out", out)...)
-	if got.status == 0 || !strings.Contains(got.errors, "folder \""+filepath.Dir(out)+"\"") || strings.Contains(got.errors, ".report.html") {
+	if got.status == 0 || !strings.Contains(got.errors, fmt.Sprintf("folder %q", filepath.Dir(out))) || strings.Contains(got.errors, ".report.html") {
 		t.Errorf("a folder that is not there: status %d\n%s", got.status, got.errors)
 	}
 }

@@ -5,6 +5,7 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"runtime"
 	"strings"
 	"sync"
 	"testing"
@@ -147,7 +148,17 @@ func (d *disk) do(c call, whole, half func() error) error {
 	return nil
 }
 
+// native is the name of a file as the system has it: of a URI with a drive letter
+// SQLite gives the slash before it to a layer that is not its own.
+func native(name string) string {
+	if runtime.GOOS == "windows" {
+		return filepath.FromSlash(strings.TrimPrefix(name, "/"))
+	}
+	return name
+}
+
 func (d *disk) Open(name string, flags sqlite3vfs.OpenFlag) (sqlite3vfs.File, sqlite3vfs.OpenFlag, error) {
+	name = native(name)
 	if name == "" {
 		f, err := os.CreateTemp("", "speedtrail-test-")
 		if err != nil {
@@ -185,6 +196,7 @@ func (d *disk) Open(name string, flags sqlite3vfs.OpenFlag) (sqlite3vfs.File, sq
 }
 
 func (d *disk) Delete(name string, dirSync bool) error {
+	name = native(name)
 	remove := func() error {
 		if err := os.Remove(name); err != nil {
 			return sqlite3vfs.IOError
@@ -197,7 +209,7 @@ func (d *disk) Delete(name string, dirSync bool) error {
 
 // Access does as SQLite's own layer: an empty file does not count.
 func (d *disk) Access(name string, _ sqlite3vfs.AccessFlag) (bool, error) {
-	info, err := os.Stat(name)
+	info, err := os.Stat(native(name))
 	return err == nil && (!info.Mode().IsRegular() || info.Size() > 0), nil
 }
 

@@ -69,7 +69,14 @@ func comments(r *reflected.Reflector, root, dir string) error {
 		return err
 	}
 	defer os.Chdir(old)
-	return r.AddGoComments("speedtrail", dir)
+	if err := r.AddGoComments("speedtrail", dir); err != nil {
+		return err
+	}
+	// It names packages by file paths of the system that the test runs on.
+	for name, text := range r.CommentMap {
+		r.CommentMap[strings.ReplaceAll(name, `\`, "/")] = text
+	}
+	return nil
 }
 
 // Obey proves that an output obeys the schema of its form, and that with a member
