@@ -5,14 +5,12 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"net"
 	"os"
 	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
 	"golang.org/x/crypto/ssh"
-	"golang.org/x/crypto/ssh/agent"
 	"golang.org/x/term"
 
 	"speedtrail/history"
@@ -102,31 +100,6 @@ func readKey(a *app, file string) (ssh.Signer, error) {
 		return nil, badCall("--key is a private key of OpenSSH", "the key %s cannot be used: %v", file, err)
 	}
 	return key, nil
-}
-
-// agentKey finds the key of a principal in ssh-agent.
-func agentKey(p *schema.Policy, signer string) (ssh.Signer, func(), error) {
-	socket := os.Getenv("SSH_AUTH_SOCK")
-	if socket == "" {
-		return nil, nil, badCall("start ssh-agent and add the key, or use --key", "no ssh-agent is there (SSH_AUTH_SOCK is not set)")
-	}
-	conn, err := net.Dial("unix", socket)
-	if err != nil {
-		return nil, nil, badCall("start ssh-agent and add the key, or use --key", "ssh-agent does not answer: %v", err)
-	}
-	signers, err := agent.NewClient(conn).Signers()
-	if err != nil {
-		conn.Close()
-		return nil, nil, fmt.Errorf("ssh-agent: %w", err)
-	}
-	for _, key := range signers {
-		k := p.Key(ssh.FingerprintSHA256(key.PublicKey()))
-		if k != nil && (signer == "" || k.Principal == signer) {
-			return key, func() { conn.Close() }, nil
-		}
-	}
-	conn.Close()
-	return nil, nil, badCall("add the key with ssh-add", "ssh-agent holds no key that the policy allows to %s", orAnyone(signer))
 }
 
 func orAnyone(signer string) string {
