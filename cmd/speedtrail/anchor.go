@@ -109,7 +109,7 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 	}
 	if o.write != "" {
 		statement.Role, statement.Signer = o.role, o.signer
-		_, err := (&signing{write: o.write}).finish(a, statement, nil)
+		_, err := (&signing{write: o.write}).finish(ctx, a, statement, nil)
 		return err
 	}
 	body := approval.AnchorBody{AllowedSigners: signers, Format: approval.AnchorFormat, SignOff: signOff}
@@ -118,7 +118,7 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 		if !ok {
 			return badCall("--sign ROLE=KEYFILE, for example --sign checker=key", "unknown value %q for --sign", sign)
 		}
-		key, err := readKey(a, file)
+		key, err := readKey(ctx, a, file)
 		if err != nil {
 			return err
 		}
@@ -128,7 +128,7 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 		if err := flags.complete(&one, key, p.Parsed); err != nil {
 			return err
 		}
-		result, err := flags.finish(a, one, key)
+		result, err := flags.finish(ctx, a, one, key)
 		if err != nil {
 			return err
 		}
@@ -211,7 +211,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 	if p.Parsed == nil {
 		return refused(fmt.Errorf("no policy is anchored for the folder %s; speedtrail anchor puts one in force", folder))
 	}
-	key, done, err := s.signerKey(a, p.Parsed)
+	key, done, err := s.signerKey(ctx, a, p.Parsed)
 	if err != nil {
 		return err
 	}
@@ -226,7 +226,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 	if err := a.foresee(line, statement, key); err != nil {
 		return err
 	}
-	result, err := s.finish(a, statement, key)
+	result, err := s.finish(ctx, a, statement, key)
 	if err != nil || result == nil {
 		return err
 	}

@@ -180,7 +180,7 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	if p.Parsed == nil {
 		return refused(fmt.Errorf("no policy is anchored for the folder %s; speedtrail anchor puts one in force", folder))
 	}
-	key, done, err := s.signerKey(a, p.Parsed)
+	key, done, err := s.signerKey(ctx, a, p.Parsed)
 	if err != nil {
 		return err
 	}
@@ -201,7 +201,7 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	if since.After(statement.Time) {
 		a.remark("! %s lies in the future: until then the revision is not in force, and after it nothing asks whether it went into service", since.Format(signoff.TimeLayout))
 	}
-	result, err := s.finish(a, statement, key)
+	result, err := s.finish(ctx, a, statement, key)
 	if err != nil || result == nil {
 		return err
 	}

@@ -116,7 +116,7 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	if newest := line.Newest(x.Folder).Parsed; newest != nil && policy.Role(s.role) == nil && newest.Role(s.role) != nil {
 		policy = newest
 	}
-	key, done, err := s.signerKey(a, policy)
+	key, done, err := s.signerKey(ctx, a, policy)
 	if err != nil {
 		return err
 	}
@@ -144,7 +144,7 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 			a.remark("who signs as %s cannot sign this data as %s as well", source.Visible(s.role), source.Visible(role.Name))
 		}
 	}
-	result, err := s.finish(a, statement, key)
+	result, err := s.finish(ctx, a, statement, key)
 	if err != nil || result == nil {
 		return err
 	}

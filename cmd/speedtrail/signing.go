@@ -1,17 +1,14 @@
 package main
 
 import (
-	"bufio"
 	"context"
 	"errors"
 	"fmt"
 	"os"
-	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
 	"golang.org/x/crypto/ssh"
-	"golang.org/x/term"
 
 	"speedtrail/history"
 	"speedtrail/history/approval"
@@ -64,42 +61,15 @@ func (s *signing) check() error {
 
 // signerKey opens the key to sign with; nil where there is none to be used. done
 // releases it.
-func (s *signing) signerKey(a *app, p *schema.Policy) (key ssh.Signer, done func(), err error) {
+func (s *signing) signerKey(ctx context.Context, a *app, p *schema.Policy) (key ssh.Signer, done func(), err error) {
 	done = func() {}
 	switch {
 	case s.key != "":
-		key, err = readKey(a, s.key)
+		key, err = readKey(ctx, a, s.key)
 	case s.agent:
 		key, done, err = agentKey(p, s.signer)
 	}
 	return key, done, err
-}
-
-// readKey reads a private key, asking for its passphrase on the terminal.
-func readKey(a *app, file string) (ssh.Signer, error) {
-	content, err := os.ReadFile(file)
-	if err != nil {
-		return nil, badCall("name the file of a private key with --key", "the key cannot be read: %v", err)
-	}
-	key, err := ssh.ParsePrivateKey(content)
-	var locked *ssh.PassphraseMissingError
-	if errors.As(err, &locked) {
-		in, ok := a.in.(*os.File)
-		if !ok || !term.IsTerminal(int(in.Fd())) {
-			return nil, badCall("use ssh-agent (--agent), or sign in two steps (--write)", "the key %s has a passphrase, and there is no terminal to ask for it", file)
-		}
-		fmt.Fprintf(a.err, "passphrase of %s: ", source.Visible(file))
-		passphrase, readErr := term.ReadPassword(int(in.Fd()))
-		fmt.Fprintln(a.err)
-		if readErr != nil {
-			return nil, readErr
-		}
-		key, err = ssh.ParsePrivateKeyWithPassphrase(content, passphrase)
-	}
-	if err != nil {
-		return nil, badCall("--key is a private key of OpenSSH", "the key %s cannot be used: %v", file, err)
-	}
-	return key, nil
 }
 
 func orAnyone(signer string) string {
@@ -135,7 +105,7 @@ type signed struct{ statement, signature []byte }
 
 // finish shows the statement, asks, and signs it; with --write it writes the
 // files and gives nothing.
-func (s *signing) finish(a *app, statement signoff.Statement, key ssh.Signer) (*signed, error) {
+func (s *signing) finish(ctx context.Context, a *app, statement signoff.Statement, key ssh.Signer) (*signed, error) {
 	text, err := statement.Text()
 	if err != nil {
 		return nil, badCall("values are one line of visible text; the reason has at most 500 bytes", "%v", err)
@@ -143,7 +113,7 @@ func (s *signing) finish(a *app, statement signoff.Statement, key ssh.Signer) (*
 	fmt.Fprintf(a.err, "The statement:\n\n%s\n", text)
 	var signature []byte
 	if key != nil {
-		if err := s.ask(a); err != nil {
+		if err := s.ask(ctx, a); err != nil {
 			return nil, err
 		}
 		if signature, err = signoff.Sign(text, key); err != nil {
@@ -169,23 +139,6 @@ func (s *signing) finish(a *app, statement signoff.Statement, key ssh.Signer) (*
 	}
 	a.remark("written to %s; nothing was recorded. Sign it with\n  ssh-keygen -Y sign -f KEY -n %s %s\nand bring both files back with %s", s.write, signoff.Namespace, s.write, back)
 	return nil, nil
-}
-
-// ask asks for a yes.
-func (s *signing) ask(a *app) error {
-	if s.yes {
-		return nil
-	}
-	in, ok := a.in.(*os.File)
-	if !ok || !term.IsTerminal(int(in.Fd())) {
-		return badCall("--yes signs without asking", "there is no terminal to ask on")
-	}
-	fmt.Fprint(a.err, "Sign this statement? Type yes: ")
-	answer, _ := bufio.NewReader(in).ReadString('\n')
-	if strings.TrimSpace(answer) != "yes" {
-		return badCall("nothing was signed", "not signed")
-	}
-	return nil
 }
 
 // alone refuses options beside --statement that say what the statement says already.

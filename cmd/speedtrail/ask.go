@@ -1,0 +1,99 @@
+package main
+
+import (
+	"bufio"
+	"context"
+	"errors"
+	"fmt"
+	"os"
+	"strings"
+
+	"golang.org/x/crypto/ssh"
+	"golang.org/x/term"
+
+	"speedtrail/schema/source"
+)
+
+// readKey reads a private key, asking for its passphrase on the terminal.
+func readKey(ctx context.Context, a *app, file string) (ssh.Signer, error) {
+	content, err := os.ReadFile(file)
+	if err != nil {
+		return nil, badCall("name the file of a private key with --key", "the key cannot be read: %v", err)
+	}
+	key, err := ssh.ParsePrivateKey(content)
+	var locked *ssh.PassphraseMissingError
+	if errors.As(err, &locked) {
+		in, ok := terminal(a)
+		if !ok {
+			return nil, badCall("use ssh-agent (--agent), or sign in two steps (--write)", "the key %s has a passphrase, and there is no terminal to ask for it", file)
+		}
+		fmt.Fprintf(a.err, "passphrase of %s: ", source.Visible(file))
+		passphrase, readErr := answer(ctx, in, func() ([]byte, error) { return term.ReadPassword(int(in.Fd())) })
+		fmt.Fprintln(a.err)
+		if readErr != nil {
+			return nil, readErr
+		}
+		key, err = ssh.ParsePrivateKeyWithPassphrase(content, passphrase)
+	}
+	if err != nil {
+		return nil, badCall("--key is a private key of OpenSSH", "the key %s cannot be used: %v", file, err)
+	}
+	return key, nil
+}
+
+// ask asks for a yes.
+func (s *signing) ask(ctx context.Context, a *app) error {
+	if s.yes {
+		return nil
+	}
+	in, ok := terminal(a)
+	if !ok {
+		return badCall("--yes signs without asking", "there is no terminal to ask on")
+	}
+	fmt.Fprint(a.err, "Sign this statement? Type yes: ")
+	said, err := answer(ctx, in, func() (string, error) {
+		line, _ := bufio.NewReader(in).ReadString('\n')
+		return strings.TrimSpace(line), nil
+	})
+	if err != nil {
+		fmt.Fprintln(a.err)
+		return err
+	}
+	if said != "yes" {
+		return badCall("nothing was signed", "not signed")
+	}
+	return nil
+}
+
+// terminal is where a person can be asked, if there is one.
+func terminal(a *app) (*os.File, bool) {
+	in, ok := a.in.(*os.File)
+	return in, ok && term.IsTerminal(int(in.Fd()))
+}
+
+// answer waits for what a person types. Where the work is stopped meanwhile it
+// waits no longer, and gives the terminal the state back that reading took from it,
+// the echo above all; what reads goes with the process.
+func answer[T any](ctx context.Context, in *os.File, read func() (T, error)) (T, error) {
+	type answered struct {
+		said T
+		err  error
+	}
+	fd := int(in.Fd())
+	state, stateErr := term.GetState(fd)
+	got := make(chan answered, 1)
+	go func() {
+		said, err := read()
+		got <- answered{said, err}
+	}()
+	select {
+	case a := <-got:
+		return a.said, a.err
+	case <-ctx.Done():
+		if stateErr == nil {
+			_ = term.Restore(fd, state)
+		}
+		var none T
+		return none, ctx.Err()
+	}
+}
