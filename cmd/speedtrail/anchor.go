@@ -33,6 +33,9 @@ speedtrail-signoff FILE signs it, --bring FILE takes it and FILE.sig up.
 
 Its hash is printed. Note it elsewhere: verify --anchor HASH proves by it that the
 root is still this one.`,
+		Example: `  speedtrail anchor release-1 --sign checker=holm --sign approver=brand --sign in-service=sand --reason "first release"
+  speedtrail anchor release-1 --write holm.txt --role checker --signer r.holm@brackwater.example --reason "first release"
+  speedtrail anchor release-1 --bring holm.txt --bring brand.txt --bring sand.txt`,
 		Args: arguments(1, 1),
 		RunE: func(c *cobra.Command, args []string) error {
 			switch {
@@ -163,8 +166,11 @@ func (a *app) revokeCommand() *cobra.Command {
 		Long: `revoke records that nothing that a key signs from now on counts. It is signed by
 the key's owner (--role owner), or by somebody who may sign in a role that is
 independent of preparer. Assessments that the key has signed before are listed for
-review.`,
-		Args: arguments(1, 1),
+review, here and below the list of register.
+
+FINGERPRINT is what ssh-keygen -lf KEY.pub prints, with SHA256: in front.`,
+		Example: `  speedtrail revoke SHA256:Xa0c... --role owner --reason "laptop stolen" --key ~/.ssh/id_ed25519`,
+		Args:    arguments(1, 1),
 		RunE: func(c *cobra.Command, args []string) error {
 			if err := s.alone(c); err != nil {
 				return err

@@ -38,7 +38,10 @@ that Git ignores left out. The working tree is never recorded.
 
 Every change has to be declared by a change request (requests/*.toml): those
 that were added or altered between the revisions count, or those named with
---request. "--request none" leaves that comparison out.`,
+--request. "--request none" leaves that comparison out.
+
+Exit status 1 for any finding that is not accepted, one that the base has too
+included. A pipeline needs a clone that holds the history from BASE to TARGET.`,
 		Example: `  speedtrail assess release-1 release-2
   speedtrail assess HEAD
   speedtrail assess --no-record --format csv main HEAD`,

@@ -78,7 +78,13 @@ func (a *app) inforceRecordCommand() *cobra.Command {
 		Long: `record states that a revision is in force from an instant on, on the whole network or
 on some routes. It is signed by somebody who may take the role in-service by the
 newest approved policy. An earlier record is corrected by a new one that replaces or
-voids it.`,
+voids it; with --voids repeat REV and --since of the record that was wrong.
+
+--statement FILE --signature FILE.sig take up what was signed elsewhere, with REV and
+without --since and --reason, which the statement says.`,
+		Example: `  speedtrail inforce record release-2 --since 2026-03-08T03:00:00Z --reason "timetable change" --key ~/.ssh/id_ed25519
+  speedtrail inforce record release-3 --since 2026-04-01T03:00:00Z --routes SM1,SM2 --reason "track renewed" --key ~/.ssh/id_ed25519
+  speedtrail inforce record release-3 --since 2026-04-01T03:00:00Z --voids 17 --reason "put off" --key ~/.ssh/id_ed25519`,
 		Args: arguments(1, 1),
 		RunE: func(c *cobra.Command, args []string) error {
 			if err := s.alone(c); err != nil {

@@ -25,7 +25,8 @@ func (a *app) profileCommand() *cobra.Command {
 		Short: "the effective speed profile of a train on a route",
 		Long: `profile compiles the most restrictive speed profile of a reference train on a
 route at a revision (the working tree unless given) and prints each piece with
-the rows that govern it.
+the rows that govern it, in the order of the kilometres for both directions of
+travel.
 
 All temporary restrictions count, whatever their validity; with --on a date,
 those in force at any moment of that day, with --on a date-time (RFC 3339),

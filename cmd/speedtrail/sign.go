@@ -31,7 +31,7 @@ revision, whose data has to be approved itself (speedtrail anchor is the root).
 
 A statement can be signed elsewhere: --write FILE writes it, ssh-keygen -Y sign
 -n speedtrail-signoff FILE signs it, --statement FILE --signature FILE.sig
-brings both back.`,
+brings both back and records it without a question.`,
 		Example: `  speedtrail sign 3 --role checker --decision approve --reason "checked against BN-144" --key ~/.ssh/id_ed25519
   speedtrail sign 3 --role approver --decision reject --reason "km 12.4 is wrong" --agent --signer m.okoro@harbourline.example`,
 		Args: arguments(1, 1),
