@@ -143,6 +143,13 @@ func TestCrossings(t *testing.T) {
 		{"a new crossing, posts that go right behind its approach", without(back, 120), with(back+jump("5.91", "6.1"), 140), []string{"reverse Mill Lane 270>231 new"}},
 		{"a new crossing, posts that go behind it", without(oneWay, 120), with(oneWay+jump("5.01", "5.2"), 140), []string{"nominal Mill Lane 270>231 new"}},
 		{"a new crossing, posts that both lack in its approach", without(oneWay+jump("4.5", "4.7"), 120), with(oneWay+jump("4.5", "4.7"), 140), []string{"nominal Mill Lane 330>300 new"}},
+		// One row a direction, each with a strike-in of its own.
+		{"a row for each direction", over(cross, texts{"places.csv": place + "5,5.01,nominal,crossing,Mill Lane,900,27\n5,5.01,reverse,crossing,Mill Lane,600,18\n"}), texts{"speed.csv": at(140)},
+			[]string{"nominal Mill Lane 270>231", "reverse Mill Lane 180>154"}},
+		{"a row for each direction, in the other order", over(cross, texts{"places.csv": place + "5,5.01,reverse,crossing,Mill Lane,600,18\n5,5.01,nominal,crossing,Mill Lane,900,27\n"}), texts{"speed.csv": at(140)},
+			[]string{"nominal Mill Lane 270>231", "reverse Mill Lane 180>154"}},
+		{"a row for each direction, nothing differs", over(cross, texts{"places.csv": place + "5,5.01,nominal,crossing,Mill Lane,900,27\n5,5.01,reverse,crossing,Mill Lane,600,18\n"}),
+			texts{"speed.csv": "from_km,to_km,basic,cd150\n0,1,100,140\n1,10,100,120\n"}, nil},
 		{"the strike-in before the route", over(cross, texts{"places.csv": place + "0.8,0.81,nominal,crossing,Mill Lane,900,27\n"}), texts{"speed.csv": at(140)}, nil},
 	}, func(a *diff.Account) string {
 		var lines []string

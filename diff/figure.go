@@ -254,10 +254,11 @@ func (p *pair) crossings(f *Figures) {
 	}
 }
 
-// crossingBefore finds the base's crossing in the place of one of the target.
+// crossingBefore finds the base's crossing in the place of one of the target, for
+// this direction of travel: each may have a row of its own, with its strike-in.
 func (p *pair) crossingBefore(place *schema.PlaceRow) *schema.PlaceRow {
 	for i := range p.route.Base.Places {
-		if old := &p.route.Base.Places[i]; old.Kind == schema.Crossing && samePlace(&old.Row, &place.Row) {
+		if old := &p.route.Base.Places[i]; old.Kind == schema.Crossing && old.Directions.Has(p.direction) && samePlace(&old.Row, &place.Row) {
 			return old
 		}
 	}
