@@ -131,7 +131,12 @@ const mostRows = 3
 // row was removed.
 func (c *collector) rowsOf(r *diff.Route, changes []*diff.Change) string {
 	var names []string
+	listed, looked := map[string]bool{}, map[int]bool{}
 	for _, x := range changes {
+		if looked[x.Causes] {
+			continue
+		}
+		looked[x.Causes] = true
 		for _, cause := range r.Causes[x.Causes] {
 			f := &r.Files[cause.File]
 			d := &f.Rows[cause.Row]
@@ -141,7 +146,8 @@ func (c *collector) rowsOf(r *diff.Route, changes []*diff.Change) string {
 			} else {
 				name = fmt.Sprintf("%s:%d of the base", f.Base, t.Old.Rows[d.Old[0]].Line)
 			}
-			if !slices.Contains(names, name) {
+			if !listed[name] {
+				listed[name] = true
 				names = append(names, name)
 			}
 		}
