@@ -123,6 +123,17 @@ func Union(list []Interval) []Interval {
 	return out
 }
 
+// Touches tells whether one of the intervals of a Union has a part of from <= x < to.
+func Touches(union []Interval, from, to unit.Distance) bool {
+	i, _ := slices.BinarySearchFunc(union, from, func(x Interval, from unit.Distance) int {
+		if x.To > from {
+			return 1
+		}
+		return -1
+	})
+	return i < len(union) && union[i].From < to
+}
+
 // Whole tells whether two tracks have everything in common, laid side by side
 // as they are.
 func (a *Alignment) Whole() bool {

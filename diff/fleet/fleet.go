@@ -172,7 +172,7 @@ func (p *pair) changes(length unit.Distance, only map[int][]align.Interval) []Ch
 		found := delta.Between(b, t, p.cells)
 		if only != nil {
 			found = slices.DeleteFunc(found, func(d delta.Delta) bool {
-				return !touches(stretches, d.Target, d.Target+d.Length)
+				return !align.Touches(stretches, d.Target, d.Target+d.Length)
 			})
 		}
 		if len(found) == 0 {

@@ -112,7 +112,7 @@ func (p *pair) cellReach(kind int, before, after []profile.Bound, cell align.Cel
 	var found []align.Interval
 	for i := range len(cuts) - 1 {
 		from, to := cuts[i], cuts[i+1]
-		if !touches(zone, from, to) {
+		if !align.Touches(zone, from, to) {
 			continue
 		}
 		if end := seenUntil(heldBefore[i], heldAfter[i], behindBefore, behindAfter, from, to, longest); end > from {
@@ -261,14 +261,4 @@ func differing(before, after []profile.Bound, d codes.Direction, longest unit.Di
 		}
 	}
 	return align.Union(zone)
-}
-
-func touches(zone []align.Interval, from, to unit.Distance) bool {
-	i, _ := slices.BinarySearchFunc(zone, from, func(z align.Interval, from unit.Distance) int {
-		if z.To > from {
-			return 1
-		}
-		return -1
-	})
-	return i < len(zone) && zone[i].From < to
 }

@@ -25,15 +25,7 @@ func (c *Compiler) extent(r *restriction, longest unit.Distance) align.Interval 
 // the compilers give what the whole ones give; outside, they must not be asked.
 func Narrow(base, target *Compiler, longest unit.Distance) (b, t *Compiler, near []align.Interval) {
 	near = differing(base, target, longest)
-	inside := func(i align.Interval) bool {
-		k, _ := slices.BinarySearchFunc(near, i.From, func(n align.Interval, from unit.Distance) int {
-			if n.To > from {
-				return 1
-			}
-			return -1
-		})
-		return k < len(near) && near[k].From < i.To
-	}
+	inside := func(i align.Interval) bool { return align.Touches(near, i.From, i.To) }
 	return base.part(longest, inside), target.part(longest, inside), near
 }
 
