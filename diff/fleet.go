@@ -65,7 +65,7 @@ func (p *pair) fleet(trains []Train) []Fleet {
 		found := fleet.CompareSides(s.base, s.target, p.direction, s.cells, asked)
 		f := Fleet{Direction: p.direction, Permanent: permanent, Shortest: shortest, Longest: longest, Reach: found.Reach, Changes: joinLengths(append(found.Changes, found.Between...)), LeftOut: found.LeftOut}
 		if permanent {
-			f.Changes = slices.DeleteFunc(f.Changes, func(c FleetChange) bool { return slices.ContainsFunc(list[0].Changes, c.same) })
+			f.Changes = without(f.Changes, list[0].Changes)
 			if f.LeftOut.Same(list[0].LeftOut) {
 				f.LeftOut = fleet.LeftOut{}
 			}
@@ -79,20 +79,32 @@ func (p *pair) fleet(trains []Train) []Fleet {
 	return list
 }
 
-func (c FleetChange) same(d FleetChange) bool {
-	return c.Delta == d.Delta && slices.Equal(c.Lengths, d.Lengths) && slices.Equal(c.Products, d.Products)
+// without takes the changes out of a list that another holds as well.
+func without(list, out []FleetChange) []FleetChange {
+	at := make(map[delta.Delta][]int, len(out))
+	for i, c := range out {
+		at[c.Delta] = append(at[c.Delta], i)
+	}
+	return slices.DeleteFunc(list, func(c FleetChange) bool {
+		return slices.ContainsFunc(at[c.Delta], func(i int) bool {
+			return slices.Equal(c.Lengths, out[i].Lengths) && slices.Equal(c.Products, out[i].Products)
+		})
+	})
 }
 
 // joinLengths joins changes that trains of several lengths see alike.
 func joinLengths(changes []fleet.Change) []FleetChange {
 	var list []FleetChange
+	at := make(map[delta.Delta][]int, len(changes)) // indices in list
 	for _, c := range changes {
-		i := slices.IndexFunc(list, func(f FleetChange) bool { return f.Delta == c.Delta && slices.Equal(f.Products, c.Products) })
-		if i < 0 {
+		same := at[c.Delta]
+		k := slices.IndexFunc(same, func(i int) bool { return slices.Equal(list[i].Products, c.Products) })
+		if k < 0 {
+			at[c.Delta] = append(same, len(list))
 			list = append(list, FleetChange{Delta: c.Delta, Lengths: []unit.Distance{c.TrainLength}, Products: c.Products})
 			continue
 		}
-		list[i].Lengths = append(list[i].Lengths, c.TrainLength)
+		list[same[k]].Lengths = append(list[same[k]].Lengths, c.TrainLength)
 	}
 	slices.SortStableFunc(list, func(a, b FleetChange) int {
 		return cmp.Or(cmp.Compare(a.Target, b.Target), cmp.Compare(a.Length, b.Length), cmp.Compare(a.Before, b.Before), cmp.Compare(a.After, b.After))
@@ -100,15 +112,31 @@ func joinLengths(changes []fleet.Change) []FleetChange {
 	return list
 }
 
-// shown is a change that a reference train shows: of its own, and as it would
-// be without its maximum speed.
+// shown is what the reference trains of a class show.
 type shown struct {
-	class    profile.Class
-	from, to unit.Distance
-	raised   bool
-	// without a maximum speed, in the stretch of the reach:
+	// raised and lowered are the stretches on which one of them sees a change of
+	// that sense.
+	raised, lowered []align.Interval
+	// free are the changes that they see without their maximum speed in the same
+	// place and sense.
+	free map[freeChange]bool
+	// reach is where trains of the class, of some length, see a change.
+	reach []align.Interval
+}
+
+// freeChange is a change without a maximum speed, with the number of the stretch
+// of the reach that it lies on.
+type freeChange struct {
 	part          int
 	before, after unit.Speed
+}
+
+// of gives the stretches of a sense.
+func (s *shown) of(raised bool) *[]align.Interval {
+	if raised {
+		return &s.raised
+	}
+	return &s.lowered
 }
 
 // represent finds the products of which a reference train sees the change: it
@@ -116,19 +144,28 @@ type shown struct {
 // its maximum speed lets it, the same speeds change elsewhere on the same stretch
 // that trains of its kind see without a gap, where its length carries the change.
 func (p *pair) represent(f *Fleet, found *fleet.Result, s sides, trains []Train) {
-	partOf := func(class profile.Class, at unit.Distance) int {
-		reach := found.ReachOf(class)
-		i := sort.Search(len(reach), func(i int) bool { return reach[i].To > at })
-		if i == len(reach) || at < reach[i].From {
-			return -1
+	byClass := p.show(f.Permanent, found, s, trains)
+	for i := range f.Changes {
+		c := &f.Changes[i]
+		end := c.Target + c.Length
+		c.Represented = make([]bool, len(c.Products))
+		for class, x := range byClass {
+			seen := align.Touches(*x.of(c.After > c.Before), c.Target, end) ||
+				x.free[freeChange{partOf(x.reach, c.Target), c.Before, c.After}]
+			for k, product := range c.Products {
+				c.Represented[k] = c.Represented[k] || seen && product.Has(class)
+			}
 		}
-		return i
 	}
-	var list []shown
+}
+
+// show gives what the reference trains show, by their class.
+func (p *pair) show(permanent bool, found *fleet.Result, s sides, trains []Train) map[profile.Class]*shown {
+	byClass := map[profile.Class]*shown{}
 	for i, t := range trains {
 		class := profile.ClassOf(t.Train)
 		seen := p.sights[i].changes
-		if f.Permanent {
+		if permanent {
 			// Not what it sees today: a change that a temporary restriction makes
 			// stands for no permanent one.
 			seen = s.compare(s.base.Select(class), s.target.Select(class), t.Length, t.Max)
@@ -136,39 +173,42 @@ func (p *pair) represent(f *Fleet, found *fleet.Result, s sides, trains []Train)
 		if len(seen) == 0 {
 			continue
 		}
+		x := byClass[class]
+		if x == nil {
+			x = &shown{free: map[freeChange]bool{}, reach: found.ReachOf(class)}
+			byClass[class] = x
+		}
+		// Both lists are in the order of the target's track, without overlap.
 		free := s.compare(s.base.Select(class), s.target.Select(class), t.Length, profile.NoMaximum)
 		for _, c := range seen {
-			list = append(list, shown{class: class, from: c.Target, to: c.Target + c.Length, raised: c.After > c.Before, part: -1})
+			raised, end := c.After > c.Before, c.Target+c.Length
+			list := x.of(raised)
+			*list = append(*list, align.Interval{From: c.Target, To: end})
+			for len(free) > 0 && free[0].Target+free[0].Length <= c.Target {
+				free = free[1:]
+			}
 			for _, u := range free {
-				if u.Target < c.Target+c.Length && c.Target < u.Target+u.Length && (u.After > u.Before) == (c.After > c.Before) {
-					list = append(list, shown{class: class, raised: c.After > c.Before, part: partOf(class, u.Target), before: u.Before, after: u.After})
+				if u.Target >= end {
+					break
+				}
+				if part := partOf(x.reach, u.Target); part >= 0 && (u.After > u.Before) == raised {
+					x.free[freeChange{part, u.Before, u.After}] = true
 				}
 			}
 		}
 	}
-	for i := range f.Changes {
-		c := &f.Changes[i]
-		raised := c.After > c.Before
-		c.Represented = make([]bool, len(c.Products))
-		parts := map[profile.Class]int{}
-		part := func(class profile.Class) int {
-			i, ok := parts[class]
-			if !ok {
-				i = partOf(class, c.Target)
-				parts[class] = i
-			}
-			return i
-		}
-		for k, product := range c.Products {
-			c.Represented[k] = slices.ContainsFunc(list, func(x shown) bool {
-				if x.raised != raised || !product.Has(x.class) {
-					return false
-				}
-				if x.part >= 0 {
-					return x.before == c.Before && x.after == c.After && x.part == part(x.class)
-				}
-				return x.from < c.Target+c.Length && c.Target < x.to
-			})
-		}
+	for _, x := range byClass {
+		x.raised, x.lowered = align.Union(x.raised), align.Union(x.lowered)
 	}
+	return byClass
+}
+
+// partOf gives the number of the stretch of a reach that a place lies on; -1 where
+// it lies on none.
+func partOf(reach []align.Interval, at unit.Distance) int {
+	i := sort.Search(len(reach), func(i int) bool { return reach[i].To > at })
+	if i == len(reach) || at < reach[i].From {
+		return -1
+	}
+	return i
 }
