@@ -4,6 +4,7 @@ import (
 	"cmp"
 	"encoding/binary"
 	"slices"
+	"sort"
 
 	"speedtrail/diff/align"
 	"speedtrail/diff/profile"
@@ -226,11 +227,20 @@ func (a *Account) split(s Stretch, whole *[2]*profile.Compiler, cells []align.Ce
 	return list
 }
 
-// changesOf lists the changes that a train sees in a stretch.
+// changesOf lists the changes that a train sees in a stretch. The changes of a
+// route are in the order of direction and place.
 func (r *Route) changesOf(s Stretch, train int) []int {
 	var list []int
-	for i, c := range r.Changes {
-		if c.Train == train && c.Direction == s.Direction && c.From >= s.From && c.To <= s.To {
+	first := sort.Search(len(r.Changes), func(i int) bool {
+		c := &r.Changes[i]
+		return cmp.Or(cmp.Compare(c.Direction, s.Direction), cmp.Compare(c.From, s.From)) >= 0
+	})
+	for i := first; i < len(r.Changes); i++ {
+		c := &r.Changes[i]
+		if c.Direction != s.Direction || c.From >= s.To {
+			break
+		}
+		if c.Train == train && c.To <= s.To {
 			list = append(list, i)
 		}
 	}
