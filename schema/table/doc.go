@@ -28,6 +28,7 @@ const (
 	MaxColumns   = 64
 	MaxRows      = 200_000
 	MaxCell      = 4096 // bytes of a cell or of a text
+	MaxKeys      = 1000 // of one TOML table, and tables of different names in a file
 )
 
 var byteOrderMark = []byte("\xEF\xBB\xBF")

@@ -85,6 +85,11 @@ func ReadTOML(file string, content []byte, faults *source.Collector) *Map {
 	if !CheckUTF8(file, content, faults) {
 		return nil
 	}
+	r := tomlReader{file: file, lines: lineStarts(content)}
+	if at, many := r.manyKeys(content); many {
+		faults.Add(at, "more than %d keys in a table, or tables of different names", MaxKeys)
+		return nil
+	}
 	// The library's decoder checks what the parser alone does not: keys that
 	// stand twice, tables that are opened twice, dates that do not exist.
 	var checked map[string]any
@@ -98,7 +103,6 @@ func ReadTOML(file string, content []byte, faults *source.Collector) *Map {
 		faults.Add(at, "not valid TOML: %s", source.Visible(strings.TrimPrefix(problem, "toml: ")))
 		return nil
 	}
-	r := tomlReader{file: file, lines: lineStarts(content)}
 	r.p.Reset(content)
 	top := newMap(source.Position{File: file, Line: 1})
 	here := top
@@ -148,6 +152,58 @@ func (r *tomlReader) pos(n *unstable.Node) source.Position {
 		line--
 	}
 	return source.Position{File: r.file, Line: line + 1, Column: at - r.lines[line] + 1}
+}
+
+// fewKeys is the size, in bytes, of a file that is too short for so many keys that
+// it matters.
+const fewKeys = 16 << 10
+
+// manyKeys tells whether a table has more than MaxKeys keys, or the file tables of
+// more than so many names, and where. The library's decoder compares each key with
+// those beside it.
+func (r *tomlReader) manyKeys(content []byte) (source.Position, bool) {
+	if len(content) < fewKeys {
+		return source.Position{}, false
+	}
+	names, keys := map[string]bool{}, 0
+	r.p.Reset(content)
+	for r.p.NextExpression() {
+		e := r.p.Expression()
+		path := r.key(e)
+		switch e.Kind {
+		case unstable.Table, unstable.ArrayTable:
+			keys = 0
+			name := ""
+			for _, k := range path {
+				name += "\x00" + k.name
+			}
+			names[name] = true
+		case unstable.KeyValue:
+			keys += 1 + keysIn(e.Value())
+		}
+		if max(keys, len(names)) > MaxKeys {
+			return path[0].pos, true
+		}
+	}
+	return source.Position{}, false
+}
+
+// keysIn counts the keys of the table in a value, with those of the tables in it; of
+// an array, those of its largest element.
+func keysIn(n *unstable.Node) (keys int) {
+	switch n.Kind {
+	case unstable.Array:
+		for it := n.Children(); it.Next(); {
+			keys = max(keys, keysIn(it.Node()))
+		}
+	case unstable.InlineTable:
+		for it := n.Children(); it.Next(); {
+			keys += keysIn(it.Node())
+		}
+	case unstable.KeyValue:
+		return 1 + keysIn(n.Value())
+	}
+	return keys
 }
 
 type tomlKey struct {

@@ -107,6 +107,43 @@ func TestReadTOMLFaults(t *testing.T) {
 	}
 }
 
+// The library compares each key with those beside it, so that their number is
+// bounded; elements of arrays have keys of their own.
+func TestManyKeys(t *testing.T) {
+	list := func(n int, item func(i int) string) string {
+		var b strings.Builder
+		for i := range n {
+			b.WriteString(item(i))
+		}
+		return b.String()
+	}
+	pad := "# " + strings.Repeat("x", fewKeys) + "\n"
+	const want = "more than 1000 keys in a table, or tables of different names"
+	tests := []struct{ name, content, want string }{
+		{"as many as there may be", pad + list(1000, func(i int) string { return fmt.Sprintf("a%d = 1\n", i) }), ""},
+		{"one too many", pad + list(1001, func(i int) string { return fmt.Sprintf("a%d = 1\n", i) }), "t.toml:1002:1: " + want},
+		{"in an element", pad + "[[t]]\na = 1\n[[t]]\n" + list(1001, func(i int) string { return fmt.Sprintf("a%d = 1\n", i) }), "t.toml:1005:1: " + want},
+		{"over elements", list(3000, func(i int) string { return "[[t]]\na = 1\nb = 2\n" }), ""},
+		{"over inline elements", "t = [" + list(3000, func(i int) string { return "{a = 1, b = 2}, " }) + "]\n", ""},
+		{"in an inline table", "t = {" + list(2000, func(i int) string { return fmt.Sprintf("k%d = [{}], ", i) }) + "z = 1}\n", "t.toml:1:1: " + want},
+		{"tables of different names", list(2000, func(i int) string { return fmt.Sprintf("[t%d]\na = 1\n", i) }), "t.toml:2001:2: " + want},
+		{"arrays of tables of different names", list(2000, func(i int) string { return fmt.Sprintf("[[t%d]]\na = 1\n", i) }), "t.toml:2001:3: " + want},
+		{"a form that is faulty", pad + "a =\n", ""},
+	}
+	for _, c := range tests {
+		t.Run(c.name, func(t *testing.T) {
+			var faults source.Collector
+			r := ReadTOML("t.toml", []byte(c.content), &faults)
+			switch {
+			case c.want != "" && (r != nil || faultText(&faults) != c.want):
+				t.Errorf("got %s, want %s", faultText(&faults), c.want)
+			case c.want == "" && strings.Contains(faultText(&faults), want):
+				t.Errorf("refused: %s", faultText(&faults))
+			}
+		})
+	}
+}
+
 func TestReader(t *testing.T) {
 	const content = `text = "  x "
 blank = " "
