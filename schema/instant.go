@@ -39,11 +39,18 @@ func (r *reader) instant(c table.Cell, column string, until bool) time.Time {
 		r.faults.Add(c.Pos, "%s %s "+implausible, column, source.Quote(c.Text))
 		return time.Time{}
 	case day && until:
-		return firstInstant(t.AddDate(0, 0, 1), r.zone)
+		_, t = Day(t, r.zone)
 	case day:
-		return firstInstant(t, r.zone)
+		t, _ = Day(t, r.zone)
 	}
 	return t
+}
+
+// Day gives the instants between which the clocks of a zone show a day, or would:
+// from <= t < until. The day is given by its midnight in UTC. A day that the clocks
+// pass over is empty.
+func Day(day time.Time, zone *time.Location) (from, until time.Time) {
+	return firstInstant(day, zone), firstInstant(day.AddDate(0, 0, 1), zone)
 }
 
 // firstInstant gives the first instant at which a zone's clocks show a day,

@@ -3,7 +3,6 @@ package main
 import (
 	"context"
 	"io"
-	"regexp"
 	"slices"
 	"strings"
 	"time"
@@ -167,8 +166,6 @@ func some(names []string) string {
 	return strings.Join(names, ", ")
 }
 
-var bareDate = regexp.MustCompile(`^\d{4}-\d\d-\d\d$`)
-
 // inForce reads --on: nothing counts every temporary restriction, a date those
 // in force at any moment of that day in the data set's time zone, a date-time
 // those in force at that instant (SUBSET-026 3.11.5 knows no validity; it is a
@@ -179,9 +176,9 @@ func inForce(on string, zone *time.Location) (profile.Filter, error) {
 	}
 	from, err := time.Parse(time.RFC3339, on)
 	until := from
-	if bareDate.MatchString(on) {
-		from, err = time.ParseInLocation(time.DateOnly, on, zone)
-		until = from.AddDate(0, 0, 1)
+	if day, bad := time.Parse(time.DateOnly, on); bad == nil {
+		from, until = schema.Day(day, zone)
+		err = nil
 	}
 	if err != nil {
 		return nil, badCall("write 2026-03-01 or 2026-03-01T06:00:00Z", "%q is no date or date-time", on)
