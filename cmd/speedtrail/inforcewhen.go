@@ -178,18 +178,14 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 		}
 		c := profile.New(route, d, inForce)
 		for _, t := range data.Trains {
-			pieces := c.Profile(t)
-			for i, piece := range pieces {
-				if piece.From <= s && s < piece.To || i == len(pieces)-1 && s >= piece.From {
-					x := pointSpeed{Train: t.ID, Direction: d.String(), Speed: int(piece.Speed), Governed: []string{}}
-					// Of the piece's sources, those that hold at the point itself.
-					for _, row := range c.Governing(c.Select(profile.ClassOf(t)), t.Length, t.Max, min(s, route.Track.Length()-1), min(s, route.Track.Length()-1)+1, piece.Speed) {
-						x.Governed = append(x.Governed, c.Source(row, t).String())
-					}
-					list = append(list, x)
-					break
-				}
+			v := c.Compile(t).At(s)
+			x := pointSpeed{Train: t.ID, Direction: d.String(), Speed: int(v), Governed: []string{}}
+			// The last point of a route belongs to its last piece.
+			within := min(s, route.Track.Length()-1)
+			for _, row := range c.Governing(c.Select(profile.ClassOf(t)), t.Length, t.Max, within, within+1, v) {
+				x.Governed = append(x.Governed, c.Source(row, t).String())
 			}
+			list = append(list, x)
 		}
 	}
 	return list, nil
