@@ -60,6 +60,7 @@ func TestReasons(t *testing.T) {
 	runAccounts(t, []accountTest{
 		{"same value", nil, texts{"speed.csv": strings.Replace(ground["speed.csv"], "4,6,", "4.000,6.0,", 1)}, []string{"speed.csv -3 +3: same value"}},
 		{"same value in route.toml", nil, texts{"route.toml": strings.Replace(ground["route.toml"], "= 0", "= 0.0", 1)}, []string{"route.toml -1 +1: same value"}},
+		{"another text that looks like the same number", over(ground, texts{"route.toml": strings.Replace(ground["route.toml"], "One", "7", 1)}), texts{"route.toml": strings.Replace(ground["route.toml"], "One", "7.0", 1)}, []string{"route.toml -1 +1: only text"}},
 		{"same value in the frame", texts{"requests/a.toml": requestText("CR-1", "R1", 1, 2, "any", "")}, texts{"requests/a.toml": strings.Replace(requestText("CR-1", "R1", 1, 2, "any", ""), "= 2", "= 2.00", 1)},
 			[]string{"requests/a.toml declares altered: same value"}},
 		{"a note", cells(",,,"), cells(",,,checked"), []string{"speed.csv -3 +3: only text"}},

@@ -41,9 +41,6 @@ func (r Reason) String() string {
 	}[r]
 }
 
-// texts are the columns and keys that only people read.
-var texts = []string{"note", "reason", "name", "id"}
-
 // explain gives every difference of the route that no change comes of its
 // reason.
 func (r *Route) explain(trains []Train) {
@@ -119,13 +116,13 @@ func (r *Route) reason(c Cause, trains []Train) Reason {
 	switch {
 	case d.Kind == rows.Altered && f.sameValues(d):
 		return SameValue
-	case within(texts...) && d.Kind == rows.Altered:
+	case within(written.Texts...) && d.Kind == rows.Altered:
 		return OnlyText
 	case path.Base(f.Path()) == "route.toml":
 		return TrackUnaffected
 	case !speeds:
 		return NoSpeed
-	case layer == profile.Temporary && within(append(slices.Clone(texts), "valid_from", "valid_to")...):
+	case layer == profile.Temporary && within(append(slices.Clone(written.Texts), "valid_from", "valid_to")...):
 		return OnlyValidity
 	case d.Masks:
 		return HiddenToday
@@ -159,7 +156,7 @@ func concernsIn(direction codes.Direction, holds func(codes.Direction, profile.C
 func (f *File) sameValues(d *RowDifference) bool {
 	t := &f.Tables[d.Table]
 	for _, c := range d.Cells {
-		if !written.SameValue(t.Old.Rows[c.Old].Cells[c.Column], t.New.Rows[c.New].Cells[c.Column]) {
+		if !written.SameValue(t.New.Columns[c.Column], t.Old.Rows[c.Old].Cells[c.Column], t.New.Rows[c.New].Cells[c.Column]) {
 			return false
 		}
 	}

@@ -5,8 +5,7 @@
 // A CSV file is one table. A TOML file is one table of its keys, a row of one
 // each, and a table for each array of tables, such as [[train]]. The file
 // allowed_signers is a table of its lines. Comments, blank lines, the order of
-// columns and rows and the form of line ends are not cells; SameCells tells that
-// two files differ in nothing else.
+// columns and rows and the form of line ends are not cells.
 //
 //	for _, t := range written.Pair("routes/r1/speed.csv", old, now, oldTrack, nowTrack) {
 //		rows.Compare(&t.Old, &t.New)
@@ -26,6 +25,9 @@ import (
 	"speedtrail/schema/source"
 	"speedtrail/schema/table"
 )
+
+// Texts are the columns and keys that only people read.
+var Texts = []string{"note", "reason", "name", "id"}
 
 // Table is the same table of a file in two revisions.
 type Table struct {
@@ -121,22 +123,15 @@ func lineRows(content []byte) []rows.Row {
 	return list
 }
 
-// SameCells tells whether two files hold the same rows with the same cells, in
-// whatever order.
-func SameCells(tables []Table) bool {
-	for i := range tables {
-		if len(rows.Compare(&tables[i].Old, &tables[i].New)) > 0 {
-			return false
-		}
-	}
-	return true
-}
-
-// SameValue tells whether two cells are written differently and mean the same:
-// numbers with other zeros, a first occurrence with and without its mark.
-func SameValue(a, b string) bool {
+// SameValue tells whether two cells of a column are written differently and mean the
+// same: numbers with other zeros, a first occurrence with and without its mark.
+// Texts mean what they are: the train "7" is another one than "7.0".
+func SameValue(column, a, b string) bool {
 	if a == b {
 		return true
+	}
+	if isText(column, a) || isText(column, b) {
+		return false
 	}
 	p, errA := chainage.ParsePoint(strings.Trim(a, `"`))
 	q, errB := chainage.ParsePoint(strings.Trim(b, `"`))
@@ -144,6 +139,12 @@ func SameValue(a, b string) bool {
 		return false
 	}
 	return p.Chainage == q.Chainage && max(p.Occurrence, 1) == max(q.Occurrence, 1)
+}
+
+// isText tells whether a cell is a text that may look like a number. In TOML all
+// that is quoted is one, but for positions.
+func isText(column, cell string) bool {
+	return slices.Contains(Texts, column) || strings.HasPrefix(cell, `"`) && !strings.HasSuffix(column, "_km")
 }
 
 // tomlPair gives the tables of a TOML file.
