@@ -368,5 +368,9 @@ func stricter(base, target schema.Limits) schema.Limits {
 // doubtful words doubtful data of a route, without its row: rows move up and
 // down in a table, and the doubt stays the same.
 func doubtful(r *schema.Route, d doubt.Doubt) Finding {
-	return Finding{ID: d.ID, Route: r.ID, Direction: d.Directions.String(), From: r.Track.Begins(d.From).String(), To: r.Track.Ends(d.To).String(), Text: d.Text}
+	f := Finding{ID: d.ID, Route: r.ID, Direction: d.Directions.String(), From: r.Track.Begins(d.From).String(), To: r.Track.Ends(d.To).String(), Text: d.Text}
+	if d.From == d.To {
+		f.To = f.From // the two readings of a joint are no stretch
+	}
+	return f
 }
