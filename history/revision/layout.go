@@ -14,6 +14,7 @@ type layout struct {
 	gitDir    string // HEAD, index
 	commonDir string // objects, refs, config; differs from gitDir in a linked worktree
 	workTree  string // "" in a bare repository
+	itself    bool   // the folder that was looked at is a git folder itself
 }
 
 // maxSmallFile bounds the little text files of a repository (.git, commondir, a
@@ -75,6 +76,7 @@ func inspect(dir string) (bool, layout, error) {
 			return false, layout{}, err
 		}
 		l, err := atGitDir(dir, filepath.Base(dir) == ".git")
+		l.itself = true
 		return true, l, err
 	case err != nil:
 		return false, layout{}, err

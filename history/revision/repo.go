@@ -47,6 +47,9 @@ func Open(dir string) (*Repo, error) {
 	if r.shallow, err = readShallow(filepath.Join(at.commonDir, "shallow")); err != nil {
 		return nil, corrupt("list of shallow commits cannot be read", err)
 	}
+	if err := r.refuseShipped(); err != nil {
+		return nil, err
+	}
 	if r.store, err = newStore(at.commonDir); err != nil {
 		return nil, corrupt(fmt.Sprintf("repository %q cannot be read", at.commonDir), err)
 	}
