@@ -17,6 +17,7 @@ import (
 	"speedtrail/history"
 	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
+	"speedtrail/history/ledger"
 	"speedtrail/history/revision"
 	"speedtrail/schema"
 	"speedtrail/schema/source"
@@ -247,6 +248,9 @@ func (a *app) record(ctx context.Context, doc *assessment.Document, into *record
 	}
 	if _, err := history.ReadOn(ctx, l, line); err != nil {
 		return render.Record{}, err
+	}
+	if x := line.Assessment(number); x == nil || x.Digest != digest {
+		return render.Record{}, ledger.Damaged(fmt.Errorf("assessment %d, which is said to hold this result, holds another", number))
 	}
 	return recordOf(line, l.ID(), number, digest), nil
 }

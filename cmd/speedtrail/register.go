@@ -66,6 +66,11 @@ func (a *app) register(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
+	for _, r := range rows {
+		if x := line.Assessment(r.Number); x != nil && x.Entry != r.Entry {
+			return misled(r.Number)
+		}
+	}
 	head := line.Head()
 	return a.write(func(w io.Writer) error {
 		if a.format == "json" {

@@ -10,6 +10,7 @@ import (
 	"speedtrail/history"
 	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
+	"speedtrail/history/chain"
 	"speedtrail/history/ledger"
 	"speedtrail/history/signoff"
 	"speedtrail/schema/source"
@@ -63,22 +64,40 @@ func (a *app) remarkFile() {
 
 // recorded reads an assessment back from the ledger.
 func recorded(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.Document, render.Record, error) {
-	row, body, err := l.Assessment(ctx, number)
+	doc, x, line, err := documentOf(ctx, l, number)
 	if err != nil {
 		return nil, render.Record{}, err
 	}
-	doc, _, err := assessment.Decode(body)
+	return doc, recordOf(line, l.ID(), number, x.Digest), nil
+}
+
+// documentOf reads the document of an assessment, and follows the line. Two ways lead
+// to the document, the row of a number and the entries one after the other: that they
+// lead to the same one is asked of the bytes, since a row, or the index by which it is
+// found, can be altered, also while this reads.
+func documentOf(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.Document, *approval.Assessment, *approval.Line, error) {
+	_, e, err := l.Assessment(ctx, number)
 	if err != nil {
-		return nil, render.Record{}, err
+		return nil, nil, nil, err
+	}
+	doc, digest, err := assessment.Decode(e.Body)
+	if err != nil {
+		return nil, nil, nil, err
 	}
 	line, _, err := history.ReadLine(ctx, l)
 	if err != nil {
-		return nil, render.Record{}, err
+		return nil, nil, nil, err
 	}
-	if x := line.Assessment(number); x == nil || x.Digest != row.Digest {
-		return nil, render.Record{}, ledger.Damaged(fmt.Errorf("the digest in the row of assessment %d is not that of its entry", number))
+	x := line.Assessment(number)
+	if x == nil || x.Digest != digest || x.Entry != e.Head() || chain.Check(chain.Head{Seq: e.Seq - 1, Hash: e.Previous}, e) != nil {
+		return nil, nil, nil, misled(number)
 	}
-	return doc, recordOf(line, l.ID(), number, row.Digest), nil
+	return doc, x, line, nil
+}
+
+// misled says that the row of an assessment leads to something else than it did.
+func misled(number int64) error {
+	return ledger.Damaged(fmt.Errorf("the row of assessment %d does not lead to its entry", number))
 }
 
 // recordOf says what the ledger knows about an assessment.

@@ -76,22 +76,11 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 		return err
 	}
 	defer l.Close()
-	row, body, err := l.Assessment(ctx, number)
+	doc, x, line, err := documentOf(ctx, l, number)
 	if err != nil {
 		return err
 	}
-	doc, _, err := assessment.Decode(body)
-	if err != nil {
-		return err
-	}
-	line, _, err := history.ReadLine(ctx, l)
-	if err != nil {
-		return err
-	}
-	if x := line.Assessment(number); x == nil || x.Digest != row.Digest {
-		return ledger.Damaged(fmt.Errorf("the digest in the row of assessment %d is not that of its entry", number))
-	}
-	if err := a.recompute(ctx, doc, row.Digest); err != nil {
+	if err := a.recompute(ctx, doc, x.Digest); err != nil {
 		return err
 	}
 	if s.statement != "" {
@@ -107,8 +96,7 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 		}
 		return a.remarkState(ctx, l, line, number)
 	}
-	x := line.Assessment(number)
-	if x == nil || x.Policy.Parsed == nil {
+	if x.Policy.Parsed == nil {
 		return badCall("README.md has a whole signoff.toml; speedtrail anchor puts the first policy in force", "the base of assessment %d has no valid policy (signoff.toml and allowed_signers): nothing was recorded", number)
 	}
 	// A role that only the policy in force has is taken by that one.

@@ -197,17 +197,17 @@ func (l *Ledger) scan(row interface{ Scan(...any) error }) (AssessmentRow, error
 	return a, err
 }
 
-// Assessment gives an assessment and its body.
-func (l *Ledger) Assessment(ctx context.Context, number int64) (AssessmentRow, []byte, error) {
+// Assessment gives the row of an assessment and the entry that it names.
+func (l *Ledger) Assessment(ctx context.Context, number int64) (AssessmentRow, chain.Entry, error) {
 	a, err := l.scan(l.conn.QueryRowContext(ctx, selectAssessment+"WHERE a.number = ?", number))
 	if errors.Is(err, sql.ErrNoRows) {
-		return a, nil, fail(ErrNoAssessment, fmt.Errorf("number %d", number))
+		return a, chain.Entry{}, fail(ErrNoAssessment, fmt.Errorf("number %d", number))
 	}
 	if err != nil {
-		return a, nil, classify(err)
+		return a, chain.Entry{}, classify(err)
 	}
 	e, err := l.Entry(ctx, a.Entry.Seq)
-	return a, e.Body, err
+	return a, e, err
 }
 
 // AssessmentOf gives the row that repeats the assessment of an entry.

@@ -35,7 +35,7 @@ func TestFirstFormat(t *testing.T) {
 	if list, err := r.Assessments(ctx); err != nil || len(list) != 2 || list[1].Changes != 3 {
 		t.Error(list, err)
 	}
-	if a, body, err := r.Assessment(ctx, 1); err != nil || a.Target != named("one") || !bytes.Equal(body, recordOf("one", 3).Body) {
+	if a, e, err := r.Assessment(ctx, 1); err != nil || a.Target != named("one") || !bytes.Equal(e.Body, recordOf("one", 3).Body) {
 		t.Error(a, err)
 	}
 	if line, problems, err := history.ReadLine(ctx, r); err != nil || len(problems) > 0 || line.State(1).Word != approval.Open {

@@ -72,9 +72,9 @@ func TestRecord(t *testing.T) {
 	if n, _, _, err := l.RecordAssessment(t.Context(), when, record("two", 0)); err != nil || n != 2 {
 		t.Fatal(n, err)
 	}
-	row, body, err := l.Assessment(t.Context(), 1)
-	if err != nil || string(body) != `{"name":"one"}` || row.Changes != 45 || row.Findings != 1 || row.Entry != head {
-		t.Fatal(row, string(body), err)
+	row, e, err := l.Assessment(t.Context(), 1)
+	if err != nil || string(e.Body) != `{"name":"one"}` || row.Changes != 45 || row.Findings != 1 || row.Entry != head {
+		t.Fatal(row, string(e.Body), err)
 	}
 	list, err := l.Assessments(t.Context())
 	if err != nil || len(list) != 2 || list[0].Number != 2 || !slices.Equal(list[0].Requests, []string{"CR-1", "CR-2"}) {
