@@ -113,7 +113,7 @@ func (x *tamperer) body(kind chain.Kind, f fields, entries []chain.Entry, record
 		b, _ := encoded(repo.document(base, target))
 		return []byte(x.edit(string(b), edit))
 	case chain.Anchor:
-		a, err := anchorBody(f.take("commit", "a"), f.take("tree", "a"), f.take("policy", "P1"), head, recorded, strings.Split(f.take("sign", "checker:ada,approver:bea,in-service:cem"), ",")...)
+		a, err := anchorBody(f.take("commit", "a"), f.take("tree", "a"), f.take("folder", "."), f.take("policy", "P1"), head, recorded, strings.Split(f.take("sign", "checker:ada,approver:bea,in-service:cem"), ",")...)
 		if err != nil {
 			x.t.Fatal(err)
 		}

@@ -310,7 +310,7 @@ func TestRefusedIsNotRecorded(t *testing.T) {
 			t.Errorf("a sign-off is recorded as %s", kind)
 		}
 	}
-	body, err := anchorBody("a", "a", "P1", w.head, w.now(), "checker:ada", "approver:bea")
+	body, err := anchorBody("a", "a", ".", "P1", w.head, w.now(), "checker:ada", "approver:bea")
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -52,7 +52,7 @@ func longLedger(t testing.TB, releases int) *ledger.Ledger {
 	}
 	now := func() time.Time { return begin.Add(time.Duration(head.Seq) * time.Minute) }
 	add(chain.Ledger, map[string]any{"format": 1, "id": ledgerID}, nil)
-	anchor, err := anchorBody("r0", "a", "P1", head, now(), "checker:ada", "approver:bea", "in-service:cem")
+	anchor, err := anchorBody("r0", "a", ".", "P1", head, now(), "checker:ada", "approver:bea", "in-service:cem")
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"maps"
 	"runtime"
 	"slices"
 	"strings"
@@ -285,6 +286,13 @@ func (v *verifier) heads() error {
 	}
 	if len(v.o.Anchors) == 0 {
 		v.r.Unproved = append(v.r.Unproved, "policy root not proved: no hash of an anchor that was noted elsewhere is given (--anchor HASH)")
+		return nil
+	}
+	// Whoever may add to the ledger can anchor a folder of his own.
+	for _, folder := range slices.Sorted(maps.Keys(anchors)) {
+		if a := anchors[folder]; !slices.Contains(v.o.Anchors, a.Entry.Hash) {
+			v.r.Unproved = append(v.r.Unproved, fmt.Sprintf("policy root of the folder %s not proved: the hash of its anchor, entry %d, is none of those that are given (--anchor HASH)", folder, a.Entry.Seq))
+		}
 	}
 	return nil
 }

@@ -227,7 +227,7 @@ func signOffOf(a *approval.Assessment, role, decision string) signoff.Statement 
 }
 
 // anchorBody makes the anchor of a commit; signs lists "role:key".
-func anchorBody(c, tree, policy string, head chain.Head, now time.Time, signs ...string) (approval.AnchorBody, error) {
+func anchorBody(c, tree, folder, policy string, head chain.Head, now time.Time, signs ...string) (approval.AnchorBody, error) {
 	s, k := policyFiles(policy)
 	body := approval.AnchorBody{AllowedSigners: k, Format: approval.AnchorFormat, SignOff: s}
 	for _, part := range signs {
@@ -235,7 +235,7 @@ func anchorBody(c, tree, policy string, head chain.Head, now time.Time, signs ..
 			continue
 		}
 		role, key, _ := strings.Cut(part, ":")
-		text, signature, err := sign(signoff.Statement{Kind: signoff.Anchor, Revision: commitOf(c), Content: treeOf(tree), Policy: policyHash(policy), Role: role}, key, head, now)
+		text, signature, err := sign(signoff.Statement{Kind: signoff.Anchor, Revision: commitOf(c), Folder: folder, Content: treeOf(tree), Policy: policyHash(policy), Role: role}, key, head, now)
 		if err != nil {
 			return body, err
 		}
@@ -246,7 +246,7 @@ func anchorBody(c, tree, policy string, head chain.Head, now time.Time, signs ..
 
 func (w *writer) anchor(c string) {
 	w.t.Helper()
-	body, err := anchorBody(c, w.repo.commits[c].tree, w.repo.commits[c].policy, w.head, w.now(), "checker:ada", "approver:bea", "in-service:cem")
+	body, err := anchorBody(c, w.repo.commits[c].tree, ".", w.repo.commits[c].policy, w.head, w.now(), "checker:ada", "approver:bea", "in-service:cem")
 	if err == nil {
 		w.head, err = history.RecordAnchor(w.t.Context(), w.l, nil, body, w.now())
 	}
