@@ -142,6 +142,11 @@ func (p *Policy) Person(email string) *Person {
 	return nil
 }
 
+// Known tells whether a principal is a person of the policy.
+func (p *Policy) Known(principal string) bool {
+	return slices.ContainsFunc(p.Persons, func(x Person) bool { return x.Principal == principal })
+}
+
 // Role gives the role of a name; nil where there is none.
 func (p *Policy) Role(name string) *Role {
 	for i := range p.Roles {

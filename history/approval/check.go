@@ -1,8 +1,8 @@
 package approval
 
 import (
+	"cmp"
 	"fmt"
-	"slices"
 	"strings"
 	"time"
 
@@ -181,7 +181,7 @@ func checkRole(p *schema.Policy, role, signer string) error {
 	if !r.May(signer) {
 		return refuse("%s is no signer of the role %s", signer, role)
 	}
-	if !slices.ContainsFunc(p.Persons, func(x schema.Person) bool { return x.Principal == signer }) {
+	if !p.Known(signer) {
 		return refuse("%s is no person of the policy", signer)
 	}
 	return nil
@@ -341,10 +341,11 @@ func (l *Line) blocked(a *Assessment) string {
 // approval of the same content by whatever number.
 func (l *Line) checkIndependence(r *Record, a *Assessment, p *schema.Policy) error {
 	if p.Independent(r.Role, schema.Preparer) {
-		for _, email := range a.Preparers {
-			if person := p.Person(email); person != nil && person.Principal == r.Signer {
-				return refuse("%s prepared the change (%s), and the role %s is independent of preparer", r.Signer, email, r.Role)
-			}
+		switch email, known, ok := a.hand(p, r.Signer); {
+		case ok && known:
+			return refuse("%s prepared the change (%s), and the role %s is independent of preparer", r.Signer, email, r.Role)
+		case ok:
+			return refuse("whether %s prepared the change cannot be told: %s is no person of this policy, and the role %s is independent of preparer", r.Signer, cmp.Or(email, "somebody without an address"), r.Role)
 		}
 	}
 	for _, i := range l.ofContent[a.content()] {

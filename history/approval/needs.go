@@ -41,10 +41,30 @@ func needs(p *schema.Policy, a *Assessment, approve map[part]int) []need {
 // prepared tells whether a signer prepared the change in spite of a role that is
 // independent of preparer.
 func prepared(p *schema.Policy, a *Assessment, x part) bool {
-	return p.Independent(x.role, schema.Preparer) && slices.ContainsFunc(a.Preparers, func(email string) bool {
-		person := p.Person(email)
-		return person != nil && person.Principal == x.signer
-	})
+	if !p.Independent(x.role, schema.Preparer) {
+		return false
+	}
+	_, _, ok := a.hand(p, x.signer)
+	return ok
+}
+
+// hand gives the address with which a signer prepared the change, or may have: an
+// address belongs to the person to whom the policy of the base or another one gives
+// it, as whoever is called otherwise since is the same. Of a signer whom that of the
+// base does not know, an address that the other one does not know may be his.
+func (a *Assessment) hand(p *schema.Policy, signer string) (email string, known, ok bool) {
+	base := a.Policy.Parsed
+	inBase := base.Known(signer)
+	for _, email := range a.Preparers {
+		here, there := p.Person(email), base.Person(email)
+		if here != nil && here.Principal == signer || there != nil && there.Principal == signer {
+			return email, true, true
+		}
+		if here == nil && !inBase {
+			return email, false, true
+		}
+	}
+	return "", false, false
 }
 
 // takenBefore tells whether a signer took another part earlier that the role has to

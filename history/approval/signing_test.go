@@ -538,3 +538,48 @@ func TestOldBaseDoesNotBringOldPolicyBack(t *testing.T) {
 		s.state(n, Approved)
 	})
 }
+
+// Who is called otherwise since, or has another address, is the same person: he does
+// not sign his own change in a role that only the newest policy has.
+func TestPreparerUnderAnotherName(t *testing.T) {
+	now := func(people ...string) rules {
+		r := ordinary().role("assessor 1 preparer eva," + strings.Join(people, ","))
+		r.people, r.keys = append([]string{"ada", "bea", "cem", "eva", "fin"}, people...), append([]string{"ada", "bea", "cem", "eva", "fin"}, people...)
+		return r
+	}
+	begin := func(t *testing.T, newest rules, edit func(*Assessment)) (s *story, n int64) {
+		s = anchored(t, ordinary())
+		s.approve(s.assess("a", "b", ordinary(), newest, nil))
+		return s, s.assess("a", "c", ordinary(), ordinary(), edit)
+	}
+	t.Run("another principal", func(t *testing.T) {
+		s, n := begin(t, now("dax"), nil)
+		s.refused(s.signOff(n, "dax", "assessor", "approve"), "whether dax@tarn.example prepared the change cannot be told: dan@tarn.example is no person of this policy")
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		if got := s.state(n, Partly); !slices.Equal(got.Missing, []string{"assessor (0 of 1)"}) {
+			t.Errorf("missing %v", got.Missing)
+		}
+	})
+	t.Run("another address", func(t *testing.T) {
+		// The address that dan has in the base's policy is nobody's in the newest.
+		s, n := begin(t, now("dan"), func(a *Assessment) { a.Preparers = []string{"dan@elsewhere.example"} })
+		sign, keys := ordinary().files()
+		a := s.line.Assessment(n)
+		a.Policy = s.line.Policy(strings.Replace(sign, "dan@Users.Example", "dan@elsewhere.example", 1), keys)
+		if email, known, ok := a.hand(s.line.Newest(".").Parsed, "dan@tarn.example"); !ok || !known || email != "dan@elsewhere.example" {
+			t.Error(email, known, ok)
+		}
+		if _, _, ok := a.hand(s.line.Newest(".").Parsed, "eva@tarn.example"); ok {
+			t.Error("somebody whom the base knows has prepared nothing")
+		}
+	})
+	t.Run("where both policies know the preparer", func(t *testing.T) {
+		s, n := begin(t, now("dan", "zed"), nil)
+		s.refused(s.signOff(n, "dan", "assessor", "approve"), "dan@tarn.example prepared the change")
+		s.must(s.signOff(n, "zed", "assessor", "approve"))
+		s.must(s.signOff(n, "ada", "checker", "approve"))
+		s.must(s.signOff(n, "bea", "approver", "approve"))
+		s.state(n, Approved)
+	})
+}
