@@ -32,25 +32,8 @@ type Service struct {
 // ServiceOf describes an in-force record.
 func ServiceOf(line *approval.Line, r approval.Record) Service {
 	s := Service{Record: r, Approved: line.ApprovedContent(r.Folder, r.Content)}
-	routes := r.Routes
-	if len(routes) == 0 {
-		// The whole network: each route that a record names, and all others.
-		routes = []string{""}
-		for _, x := range line.Standing(r.Folder) {
-			for _, id := range x.Routes {
-				if !slices.Contains(routes, id) {
-					routes = append(routes, id)
-				}
-			}
-		}
-	}
-	var befores []*approval.Record
-	for _, route := range routes {
-		before := beforeRecord(line, r, route)
-		if before == nil {
-			continue
-		}
-		befores = append(befores, before)
+	befores := beforeRecords(line.Standing(r.Folder), r)
+	for _, before := range befores {
 		undone := s.Approved && !line.Led(r.Folder, before.Content, r.Content)
 		if s.Before == nil || undone && !s.Undoes {
 			s.Before = before
@@ -77,10 +60,32 @@ func ServiceOf(line *approval.Line, r approval.Record) Service {
 	return s
 }
 
+// beforeRecords finds the records of a list, by instant, that were in force just
+// before another one, on each route that it names.
+func beforeRecords(standing []approval.Record, r approval.Record) (befores []*approval.Record) {
+	routes := r.Routes
+	if len(routes) == 0 {
+		// The whole network: each route that a record names, and all others.
+		routes = []string{""}
+		for _, x := range standing {
+			for _, id := range x.Routes {
+				if !slices.Contains(routes, id) {
+					routes = append(routes, id)
+				}
+			}
+		}
+	}
+	for _, route := range routes {
+		if before := beforeRecord(standing, r, route); before != nil {
+			befores = append(befores, before)
+		}
+	}
+	return befores
+}
+
 // beforeRecord finds the record that was in force on a route just before another;
 // nil where there was none. An empty route stands for those that no record names.
-func beforeRecord(line *approval.Line, r approval.Record, route string) (before *approval.Record) {
-	standing := line.Standing(r.Folder)
+func beforeRecord(standing []approval.Record, r approval.Record, route string) (before *approval.Record) {
 	for i := range standing {
 		x := &standing[i]
 		if x.Entry.Seq == r.Entry.Seq || !x.Since.Before(r.Since) {
@@ -140,9 +145,9 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 	// Whoever may record what is in service does not make unapproved service go away by
 	// taking the record back.
 	for _, x := range line.Corrections(folder) {
-		if !line.AsOf(x.Record.Since).ApprovedContent(folder, x.Record.Content) {
-			list = append(list, ServiceFinding{ServiceCorrected, fmt.Sprintf("entry %d said that commit %s, which was not approved then, went into service from %s; entry %d %s it (%s: %s)",
-				x.Record.Entry.Seq, x.Record.Revision, x.Record.Since.UTC().Format(time.RFC3339), x.By.Entry.Seq, x.How, x.By.Signer, x.By.Reason)})
+		if wrong := wrongThen(line, x); wrong != "" {
+			list = append(list, ServiceFinding{ServiceCorrected, fmt.Sprintf("entry %d said that commit %s, %s went into service from %s; entry %d %s it (%s: %s)",
+				x.Record.Entry.Seq, x.Record.Revision, wrong, x.Record.Since.UTC().Format(time.RFC3339), x.By.Entry.Seq, x.How, x.By.Signer, x.By.Reason)})
 		}
 	}
 	for _, a := range line.Assessments() {
@@ -152,4 +157,19 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 		}
 	}
 	return list
+}
+
+// wrongThen says what was wrong with a record that does not stand any more, beside
+// those that stood until it was corrected; empty where nothing was.
+func wrongThen(line *approval.Line, x approval.Correction) string {
+	then, r := line.AsOf(x.Record.Since), x.Record
+	if !then.ApprovedContent(r.Folder, r.Content) {
+		return "which was not approved then,"
+	}
+	for _, before := range beforeRecords(line.StandingBefore(r.Folder, x.By.Entry.Seq), r) {
+		if !then.Led(r.Folder, before.Content, r.Content) {
+			return fmt.Sprintf("to which no approved assessment led then from commit %s, which was in service before,", before.Revision)
+		}
+	}
+	return ""
 }

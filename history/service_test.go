@@ -262,3 +262,38 @@ func TestServiceCorrected(t *testing.T) {
 		t.Errorf("after a later approval: %v", findings)
 	}
 }
+
+// That of two siblings the second undid the first does not go away by taking the
+// record back.
+func TestUndoingRecordTakenBack(t *testing.T) {
+	for name, corrects := range map[string]string{"voided": approval.Voids, "replaced": approval.Replaces} {
+		t.Run(name, func(t *testing.T) {
+			w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+			w.anchor("a")
+			w.approve("a", "b", "ada")
+			w.approve("b", "c", "ada")
+			w.approve("c", "d", "ada2")
+			w.approve("c", "f", "ada2")
+			w.inService("c", "2026-03-01T03:00:00Z", "all")
+			d := w.inService("d", "2026-03-02T03:00:00Z", "all")
+			f := w.inService("f", "2026-03-03T03:00:00Z", "R1")
+			_, findings := w.services()
+			if !slices.Contains(ids(findings), history.ServiceUndoes) {
+				t.Fatal(findings)
+			}
+			w.inForce("d", "P2", "2026-03-03T03:00:00Z", "R1", fmt.Sprintf("%s %d", corrects, f))
+			// Nor by taking back, after that, what it undid.
+			w.inForce("d", "P2", "2026-03-02T03:00:00Z", "all", fmt.Sprintf("%s %d", approval.Voids, d))
+			_, findings = w.services()
+			var texts []string
+			for _, x := range findings {
+				if x.ID == history.ServiceCorrected {
+					texts = append(texts, x.Text)
+				}
+			}
+			if len(texts) != 1 || !strings.Contains(texts[0], fmt.Sprintf("entry %d said that commit %s, to which no approved assessment led then from commit %s", f, commitOf("f"), commitOf("d"))) {
+				t.Errorf("%v", findings)
+			}
+		})
+	}
+}

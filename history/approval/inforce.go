@@ -102,11 +102,16 @@ func overlap(a, b []string) bool {
 // Standing lists the in-force records of a folder that nothing replaces or voids,
 // by instant.
 func (l *Line) Standing(folder string) []Record {
+	return l.StandingBefore(folder, int64(len(l.heads))+1)
+}
+
+// StandingBefore lists those that stood before an entry was recorded.
+func (l *Line) StandingBefore(folder string, seq int64) []Record {
 	gone := map[int64]bool{}
 	var list []Record
 	for i := range l.inForce {
 		r := &l.inForce[i]
-		if r.Folder != folder {
+		if r.Folder != folder || r.Entry.Seq >= seq {
 			continue
 		}
 		word, entry, _ := correction(r)
@@ -118,7 +123,7 @@ func (l *Line) Standing(folder string) []Record {
 		}
 	}
 	for _, r := range l.inForce {
-		if r.Folder == folder && !gone[r.Entry.Seq] {
+		if r.Folder == folder && r.Entry.Seq < seq && !gone[r.Entry.Seq] {
 			list = append(list, r)
 		}
 	}
