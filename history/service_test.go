@@ -10,6 +10,8 @@ import (
 
 	"speedtrail/history"
 	"speedtrail/history/approval"
+	"speedtrail/history/assessment"
+	"speedtrail/history/chain"
 	"speedtrail/history/signoff"
 )
 
@@ -295,5 +297,51 @@ func TestUndoingRecordTakenBack(t *testing.T) {
 				t.Errorf("%v", findings)
 			}
 		})
+	}
+}
+
+// The time of an assessment is signed by nobody: one that is said to be of a far year
+// does not make everything late that is signed after it.
+func TestAssessmentFromTheFuture(t *testing.T) {
+	w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+	w.anchor("a")
+	d := w.repo.document("a", "e")
+	body, digest := encoded(d)
+	var err error
+	if _, _, w.head, err = w.l.RecordAssessment(t.Context(), begin.AddDate(70, 0, 0), assessment.LedgerRecord(d, body, digest)); err != nil {
+		t.Fatal(err)
+	}
+	w.approve("a", "b", "ada")
+	entry := w.inService("b", "2026-04-02T03:00:00Z", "all")
+	s, findings := w.services()
+	if got := s[entry]; !got.Approved || got.Late || len(findings) > 0 {
+		t.Errorf("approved %t, late %t: %v", got.Approved, got.Late, findings)
+	}
+}
+
+// A late approval is not made an early one by recording it with a clock that was put
+// back: it stands after the statement of what went into service.
+func TestLateApprovalByAnotherClock(t *testing.T) {
+	w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+	w.anchor("a")
+	n := w.assess("a", "b")
+	assessed, early := w.head, w.now().Add(-30*time.Minute)
+	entry := w.inService("b", early.Add(10*time.Minute).Format(time.RFC3339), "all")
+	for _, x := range [][2]string{{"ada", "checker"}, {"bea", "approver"}} {
+		line, _, err := history.ReadLine(t.Context(), w.l)
+		if err != nil {
+			t.Fatal(err)
+		}
+		text, signature, err := sign(signOffOf(line.Assessment(n), x[1], signoff.Approve), x[0], assessed, early)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, chain.SignOff, text, signature, early); err != nil {
+			t.Fatal(err)
+		}
+	}
+	s, findings := w.services()
+	if got := s[entry]; !got.Late || !slices.Equal(ids(findings), []string{history.ServiceUnapproved}) {
+		t.Errorf("approved %t, late %t: %v", got.Approved, got.Late, findings)
 	}
 }

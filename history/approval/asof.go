@@ -2,45 +2,64 @@ package approval
 
 import "time"
 
-// AsOf gives the line as it stood at an instant: with the entries up to the first
-// one that was recorded after it. Anchors are all there, as whoever begins a ledger
-// has data in service already. It answers questions about approval and nothing
-// else, and must not be added to.
+// AsOf gives the line as it stood at an instant: with the sign-offs that were recorded
+// by then, up to the first statement that somebody made later. The time of an entry
+// is a claim of whoever recorded it, and an assessment has no signer: one that is said
+// to be of next year takes nothing away from what was signed after it. Anchors are all
+// there, as whoever begins a ledger has data in service already. It answers questions
+// about approval and nothing else, and must not be added to.
 func (l *Line) AsOf(at time.Time) *Line {
-	n := 0
-	for n < len(l.times) && !l.times[n].After(at) {
-		n++
+	end := int64(len(l.heads))
+	until := func(records []Record) {
+		for i := range records {
+			if r := &records[i]; r.Time.After(at) {
+				end = min(end, r.Entry.Seq-1)
+			}
+		}
 	}
-	return l.upTo(int64(n))
-}
-
-// upTo gives the line as it stood after an entry.
-func (l *Line) upTo(seq int64) *Line {
-	if seq >= int64(len(l.heads)) {
-		return l
+	until(l.signOffs)
+	until(l.inForce)
+	for _, r := range l.revoked {
+		until([]Record{r})
 	}
-	if past := l.past[seq]; past != nil {
+	for _, a := range l.anchors {
+		until(a.Records)
+	}
+	var recorded []Record
+	for _, r := range l.signOffs {
+		if r.Entry.Seq <= end && !r.Recorded.After(at) {
+			recorded = append(recorded, r)
+		}
+	}
+	// Of two instants with the same end, the later one has all sign-offs of the other.
+	key := instant{end, len(recorded)}
+	if past := l.past[key]; past != nil {
 		return past
 	}
 	past := New(l.ledger)
-	past.heads, past.times = l.heads[:seq:seq], l.times[:seq:seq]
+	past.heads, past.times = l.heads[:end:end], l.times[:end:end]
 	past.anchors, past.policies = l.anchors, l.policies
 	for _, a := range l.assessments {
-		if a.Entry.Seq <= seq {
+		if a.Entry.Seq <= end {
 			past.assessments = append(past.assessments, a)
 			past.byNumber[a.Number] = a
 		}
 	}
-	for _, r := range l.signOffs {
-		if r.Entry.Seq <= seq {
-			past.take(r)
-		}
+	for _, r := range recorded {
+		past.take(r)
 	}
 	if l.past == nil {
-		l.past = map[int64]*Line{}
+		l.past = map[instant]*Line{}
 	}
-	l.past[seq] = past
+	l.past[key] = past
 	return past
+}
+
+// instant tells the lines of the past apart: by their last entry, and by how many
+// sign-offs there are up to it.
+type instant struct {
+	end      int64
+	signOffs int
 }
 
 // take takes up a sign-off that counts.

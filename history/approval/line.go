@@ -123,7 +123,7 @@ type Line struct {
 	done         map[int64]int64           // what signedOff gave, by assessment
 	begun        map[int64]int64           // what firstSigned gave
 	contents     map[string]map[string]way // approved contents by folder
-	past         map[int64]*Line           // the line as it stood after an entry
+	past         map[instant]*Line         // the line as it stood at an instant
 }
 
 // New begins a line for the ledger of an id.
