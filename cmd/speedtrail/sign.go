@@ -1,9 +1,11 @@
 package main
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"strconv"
+	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
@@ -149,6 +151,13 @@ func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment, l
 	if err := render.BeforeSigning(a.err, doc, recordOf(line, ledgerID, x.Number, x.Digest), style); err != nil {
 		return err
 	}
+	otherwise, err := a.calledOtherwise(doc)
+	if err != nil {
+		return err
+	}
+	for _, text := range otherwise {
+		fmt.Fprintf(a.err, "%s\n", wrap("! "+text, style.Width))
+	}
 	for _, email := range x.UnknownPreparers() {
 		fmt.Fprintf(a.err, "! unknown-preparer %s is no person of the policy: the assessment cannot be approved\n", source.Visible(email))
 	}
@@ -171,6 +180,33 @@ func (a *app) recompute(ctx context.Context, doc *assessment.Document, recorded 
 		return refused(fmt.Errorf("computed anew the assessment has another digest, %s, than the recorded one, %s", digest, recorded))
 	}
 	return nil
+}
+
+// calledOtherwise says where the names under which a document shows its revisions
+// mean something else in this repository: no digest covers them, and whoever brings a
+// ledger can write what he likes.
+func (a *app) calledOtherwise(doc *assessment.Document) ([]string, error) {
+	repo, err := a.openRepo()
+	if err != nil {
+		return nil, err
+	}
+	defer repo.Close()
+	c := &doc.Computed
+	var list []string
+	for _, x := range []struct{ side, name, commit string }{
+		{"base", cmp.Or(doc.Named.BaseName, doc.Named.Base), c.Base.Commit}, {"target", cmp.Or(doc.Named.TargetName, doc.Named.Target), c.Target.Commit},
+	} {
+		if strings.HasPrefix(x.commit, x.name) {
+			continue // the hash is shown alone
+		}
+		switch here, err := repo.Resolve(x.name); {
+		case err != nil:
+			list = append(list, fmt.Sprintf("the assessment calls its %s %s, which this repository does not know; what is signed is about the commit %s", x.side, source.Visible(x.name), x.commit))
+		case here.Hash != x.commit:
+			list = append(list, fmt.Sprintf("the assessment calls its %s %s, which in this repository is the commit %s; what is signed is about the commit %s", x.side, source.Visible(x.name), here.Hash, x.commit))
+		}
+	}
+	return list, nil
 }
 
 // remarkState says where an assessment stands at the end of the ledger.

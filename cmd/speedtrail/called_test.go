@@ -1,0 +1,44 @@
+package main
+
+import (
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+	"time"
+)
+
+// TestCalledOtherwise: no digest covers how the revisions of an assessment were called.
+// Where a name means another commit to the signer, he is told before he signs.
+func TestCalledOtherwise(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80}, []time.Time{at, at.Add(time.Hour)})
+	key := func(name string) string { return filepath.Join(keys, name) }
+	call(t, "--repo", repo, "anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y").want(t, 0)
+	call(t, "--repo", repo, "assess", "c0", "c1").want(t, 1)
+	sign := func(want ...string) {
+		t.Helper()
+		got := call(t, "--repo", repo, "sign", "1", "--role", "checker", "--decision", "approve", "--reason", "seen", "--signer", "ada@tarn.example", "--write", filepath.Join(t.TempDir(), "statement"))
+		got.want(t, 0)
+		text := strings.Join(strings.Fields(got.errors), " ")
+		if strings.Contains(text, "the assessment calls its") != (len(want) > 0) {
+			t.Errorf("want %q\n%s", want, got.errors)
+		}
+		for _, w := range want {
+			if !strings.Contains(text, w) {
+				t.Errorf("%q is missing\n%s", w, got.errors)
+			}
+		}
+	}
+	sign()
+	file := func(name string) string { return filepath.Join(repo, ".git", "refs", "tags", name) }
+	if err := os.WriteFile(file("c1"), []byte(readFileOf(t, file("c0"))), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	sign("! the assessment calls its target c1, which in this repository is the commit ")
+	if err := os.Remove(file("c0")); err != nil {
+		t.Fatal(err)
+	}
+	sign("! the assessment calls its base c0, which this repository does not know", "calls its target c1, which in this")
+}
