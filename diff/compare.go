@@ -33,7 +33,10 @@ type Options struct {
 }
 
 // An UnknownRequestError names a request that the target does not have.
-type UnknownRequestError struct{ ID string }
+type UnknownRequestError struct {
+	ID    string
+	Known []string // the ids that there are
+}
 
 // Error names the request.
 func (e *UnknownRequestError) Error() string {

@@ -35,7 +35,11 @@ func requestsInPlay(base, target *schema.Dataset, names []string) ([]schema.Chan
 	for _, id := range slices.Compact(slices.Sorted(slices.Values(names))) {
 		i := slices.IndexFunc(target.Requests, func(q schema.ChangeRequest) bool { return q.ID == id })
 		if i < 0 {
-			return nil, &UnknownRequestError{id}
+			unknown := &UnknownRequestError{ID: id}
+			for _, q := range target.Requests {
+				unknown.Known = append(unknown.Known, q.ID)
+			}
+			return nil, unknown
 		}
 		list = append(list, target.Requests[i])
 	}

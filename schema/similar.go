@@ -1,7 +1,9 @@
 package schema
 
 import (
+	"cmp"
 	"path"
+	"slices"
 	"strings"
 
 	"speedtrail/schema/source"
@@ -65,9 +67,59 @@ func swapped(a, b string) bool {
 	return false
 }
 
+// Most names that Nearest gives, and the longest text that it looks at: names of
+// more letters are not typed by hand.
+const (
+	mostNearest = 3
+	longestNear = 200
+)
+
+// Nearest gives those of the known names that a mistyped one can have meant: the
+// nearest, and others that are as near, at most three. One letter in three may differ, small and capital
+// letters are the same, and one of which more or less than the whole was typed counts.
+func Nearest(name string, known []string) []string {
+	if name == "" || len(name) > longestNear {
+		return nil
+	}
+	type near struct {
+		name string
+		off  int
+	}
+	typed := strings.ToLower(name)
+	most := max(1, min(3, len([]rune(name))/3))
+	var list []near
+	for _, k := range known {
+		if k == "" || len(k) > longestNear {
+			continue
+		}
+		lower := strings.ToLower(k)
+		off := distance(typed, lower)
+		switch {
+		case off > 1 && swapped(typed, lower):
+			off = 1
+		case off > most && min(len(typed), len(lower)) > 1 && (strings.HasPrefix(lower, typed) || strings.HasPrefix(typed, lower)):
+			off = most
+		}
+		// What shares no letter with the other, such as 7 with 4, is no mistyped name.
+		if off <= most && off < max(len([]rune(lower)), len([]rune(typed))) {
+			list = append(list, near{k, off})
+		}
+	}
+	slices.SortFunc(list, func(a, b near) int { return cmp.Or(cmp.Compare(a.off, b.off), strings.Compare(a.name, b.name)) })
+	list = slices.Compact(list)
+	var names []string
+	for _, n := range list[:min(mostNearest, len(list))] {
+		if n.off == list[0].off {
+			names = append(names, n.name)
+		}
+	}
+	return names
+}
+
 // distance is how many letters have to be added, left out or replaced to make one
 // text of the other.
-func distance(a, b string) int {
+func distance(x, y string) int {
+	a, b := []rune(x), []rune(y)
 	row := make([]int, len(b)+1)
 	for j := range row {
 		row[j] = j

@@ -7,6 +7,7 @@ import (
 	"net"
 	"os"
 	"runtime"
+	"slices"
 	"strings"
 
 	"golang.org/x/crypto/ssh"
@@ -33,7 +34,15 @@ func agentKey(p *schema.Policy, signer string) (ssh.Signer, func(), error) {
 		}
 	}
 	conn.Close()
-	return nil, nil, badCall("add the key with ssh-add", "ssh-agent holds no key that the policy allows to %s", orAnyone(signer))
+	var principals []string
+	for _, k := range p.Keys {
+		principals = append(principals, k.Principal)
+	}
+	hint := "add the key with ssh-add"
+	if !slices.Contains(principals, signer) {
+		hint = meant(signer, principals, hint)
+	}
+	return nil, nil, badCall(hint, "ssh-agent holds no key that the policy allows to %s", orAnyone(signer))
 }
 
 // agentPipe is where ssh-agent of OpenSSH for Windows listens.

@@ -140,7 +140,7 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 	var faults *source.Faults
 	switch {
 	case errors.As(err, &unknown):
-		return nil, badCall("the requests of a revision stand in its folder requests/", "%v", err)
+		return nil, badCall(meant(unknown.ID, unknown.Known, "the requests of a revision stand in its folder requests/: "+cmp.Or(some(unknown.Known), "none")), "%v", err)
 	case errors.As(err, &faults):
 		return nil, &sideError{to.label(), err}
 	case err != nil:

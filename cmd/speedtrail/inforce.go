@@ -161,7 +161,7 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	}
 	for _, id := range routes {
 		if routeByID(data, id) == nil {
-			return badCall("routes of that revision: "+strings.Join(routeIDs(data), ", "), "%s has no route %q", rev, id)
+			return badCall(meant(id, routeIDs(data), "routes of that revision: "+some(routeIDs(data))), "%s has no route %q", rev, id)
 		}
 	}
 	folder, err := a.folder()

@@ -164,7 +164,7 @@ func (a *app) fillInForce(ctx context.Context, answer *inForceAnswer, line *appr
 func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed, error) {
 	route := routeByID(data, id)
 	if route == nil {
-		return nil, badCall("routes in force then: "+joined(routeIDs(data)), "there is no route %q", id)
+		return nil, badCall(meant(id, routeIDs(data), "routes in force then: "+some(routeIDs(data))), "there is no route %q", id)
 	}
 	s, err := located(route, "--at", at)
 	if err != nil {

@@ -63,7 +63,7 @@ func (a *app) openSide(repo *revision.Repo, rev string) (side, error) {
 		}
 		return s, elsewhere(s, folder)
 	}
-	if s.commit, err = repo.Resolve(rev); err != nil {
+	if s.commit, err = resolve(repo, rev); err != nil {
 		return side{}, err
 	}
 	s.name = repo.Describe(s.commit)

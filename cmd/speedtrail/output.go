@@ -35,7 +35,7 @@ func (a *app) outputFlags(c *cobra.Command, formats ...string) {
 			}
 		}
 		if !slices.Contains(formats, a.format) {
-			return badCall("--format is one of "+strings.Join(formats, ", "), "unknown value %q for --format", a.format)
+			return badCall(meant(a.format, formats, "--format is one of "+strings.Join(formats, ", ")), "unknown value %q for --format", a.format)
 		}
 		return nil
 	}

@@ -3,8 +3,6 @@ package main
 import (
 	"context"
 	"io"
-	"slices"
-	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
@@ -39,10 +37,10 @@ those in force at that instant.`,
 			if len(args) == 1 {
 				rev = args[0]
 			}
-			directions, ok := codes.ParseDirections(direction)
-			if !ok {
-				return badCall("--direction is nominal, reverse or both", "unknown value %q for --direction", direction)
+			if err := chosen("--direction", direction, "nominal", "reverse", "both"); err != nil {
+				return err
 			}
+			directions, _ := codes.ParseDirections(direction)
 			if route == "" || len(trains) == 0 {
 				missing := "--train is missing"
 				if route == "" {
@@ -142,7 +140,7 @@ func routeOf(data *schema.Dataset, id string) (*schema.Route, error) {
 		}
 		ids[i] = r.ID
 	}
-	return nil, badCall("its routes: "+some(ids), "the data set has no route %q", id)
+	return nil, badCall(meant(id, ids, "its routes: "+some(ids)), "the data set has no route %q", id)
 }
 
 func trainOf(data *schema.Dataset, id string) (schema.Train, error) {
@@ -153,17 +151,7 @@ func trainOf(data *schema.Dataset, id string) (schema.Train, error) {
 		}
 		ids[i] = t.ID
 	}
-	return schema.Train{}, badCall("its reference trains: "+some(ids), "the data set has no reference train %q", id)
-}
-
-// some lists the first of many names.
-func some(names []string) string {
-	const most = 12
-	slices.Sort(names)
-	if len(names) > most {
-		names = append(names[:most:most], "...")
-	}
-	return strings.Join(names, ", ")
+	return schema.Train{}, badCall(meant(id, ids, "its reference trains: "+some(ids)), "the data set has no reference train %q", id)
 }
 
 // inForce reads --on: nothing counts every temporary restriction, a date those

@@ -111,11 +111,10 @@ remarks to standard error.`,
 		a.signCommand(), a.anchorCommand(), a.revokeCommand(), a.inforceCommand(), a.verifyCommand(), a.exportCommand(), a.importCommand())
 	root.CompletionOptions.HiddenDefaultCmd = true
 	root.PersistentPreRunE = func(c *cobra.Command, _ []string) error {
-		switch a.color {
-		case "auto", "always", "never":
-			return a.spareLedger(c)
+		if err := chosen("--color", a.color, "auto", "always", "never"); err != nil {
+			return err
 		}
-		return badCall("--color is auto, always or never", "unknown value %q for --color", a.color)
+		return a.spareLedger(c)
 	}
 	withCaution(root)
 	return root

@@ -51,8 +51,10 @@ brings both back and records it without a question.`,
 			if s.statement == "" && (s.role == "" || decision == "") {
 				return badCall("for example --role checker --decision approve", "--role and --decision are needed")
 			}
-			if decision != "" && decision != signoff.Approve && decision != signoff.Reject {
-				return badCall("--decision is approve or reject", "unknown value %q for --decision", decision)
+			if decision != "" {
+				if err := chosen("--decision", decision, signoff.Approve, signoff.Reject); err != nil {
+					return err
+				}
 			}
 			return a.sign(c.Context(), number, decision, &s)
 		},

@@ -61,10 +61,10 @@ time; --no-index does without and gives the same answer.`,
 			if len(args) == 1 {
 				call.rev = args[0]
 			}
-			var ok bool
-			if call.directions, ok = codes.ParseDirections(direction); !ok {
-				return badCall("--direction is nominal, reverse or both", "unknown value %q for --direction", direction)
+			if err := chosen("--direction", direction, "nominal", "reverse", "both"); err != nil {
+				return err
 			}
+			call.directions, _ = codes.ParseDirections(direction)
 			point, stretch := call.at != "", call.from != "" || call.to != ""
 			switch {
 			case call.rev == workingTree:
@@ -100,7 +100,7 @@ func (a *app) trace(ctx context.Context, call traceCall) error {
 	if err != nil {
 		return err
 	}
-	newest, err := repo.Resolve(call.rev)
+	newest, err := resolve(repo, call.rev)
 	if err != nil {
 		return err
 	}

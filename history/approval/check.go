@@ -176,15 +176,32 @@ func checkRole(p *schema.Policy, role, signer string) error {
 		for _, x := range p.Roles {
 			names = append(names, x.Name)
 		}
-		return refuse("the policy has no role %q; it has %s", role, strings.Join(names, ", "))
+		return nearly(refuse("the policy has no role %q; it has %s", role, strings.Join(names, ", ")), role, names)
 	}
 	if !r.May(signer) {
-		return refuse("%s is no signer of the role %s", signer, role)
+		problem := refuse("%s is no signer of the role %s", signer, role)
+		if p.Known(signer) { // no mistyped name, and no reason to sign as somebody else
+			return problem
+		}
+		return nearly(problem, signer, r.Signers)
 	}
 	if !p.Known(signer) {
-		return refuse("%s is no person of the policy", signer)
+		var names []string
+		for _, x := range p.Persons {
+			names = append(names, x.Principal)
+		}
+		return nearly(refuse("%s is no person of the policy", signer), signer, names)
 	}
 	return nil
+}
+
+// nearly adds to a refusal which names a mistyped one can have meant.
+func nearly(err error, name string, known []string) error {
+	near := schema.Nearest(name, known)
+	if len(near) == 0 {
+		return err
+	}
+	return &hinted{err, "did you mean " + strings.Join(near, " or ") + "?"}
 }
 
 // usable gives a policy that can be used, or says why not.

@@ -201,13 +201,25 @@ func (l *Ledger) scan(row interface{ Scan(...any) error }) (AssessmentRow, error
 func (l *Ledger) Assessment(ctx context.Context, number int64) (AssessmentRow, chain.Entry, error) {
 	a, err := l.scan(l.conn.QueryRowContext(ctx, selectAssessment+"WHERE a.number = ?", number))
 	if errors.Is(err, sql.ErrNoRows) {
-		return a, chain.Entry{}, fail(ErrNoAssessment, fmt.Errorf("number %d", number))
+		return a, chain.Entry{}, fail(ErrNoAssessment, fmt.Errorf("number %d; %s", number, l.numbers(ctx)))
 	}
 	if err != nil {
 		return a, chain.Entry{}, classify(err)
 	}
 	e, err := l.Entry(ctx, a.Entry.Seq)
 	return a, e, err
+}
+
+// numbers says which numbers of assessments there are: they have no gaps.
+func (l *Ledger) numbers(ctx context.Context) string {
+	var n int64
+	switch err := l.conn.QueryRowContext(ctx, "SELECT COALESCE(MAX(number), 0) FROM assessment").Scan(&n); {
+	case err != nil || n == 0:
+		return "the ledger has none"
+	case n == 1:
+		return "the ledger has number 1 only"
+	}
+	return fmt.Sprintf("the ledger has numbers 1 to %d", n)
 }
 
 // AssessmentOf gives the row that repeats the assessment of an entry.

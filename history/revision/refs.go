@@ -213,6 +213,22 @@ func (r *Repo) Describe(c Commit) string {
 	return r.names[h]
 }
 
+// Names gives the tags, branches and remote-tracking branches as they are typed, for
+// those who look for a name that is nearly theirs; what cannot be read is left out.
+func (r *Repo) Names() []string {
+	names := []string{"HEAD"}
+	for _, prefix := range []string{"refs/tags/", "refs/heads/", "refs/remotes/"} {
+		refs, err := r.listRefs(prefix)
+		if err != nil {
+			continue
+		}
+		for _, ref := range refs {
+			names = append(names, strings.TrimPrefix(ref.name, prefix))
+		}
+	}
+	return names
+}
+
 func (r *Repo) nameCommits() (map[plumbing.Hash]string, error) {
 	names := map[plumbing.Hash]string{}
 	for _, prefix := range []string{"refs/tags/", "refs/heads/", "refs/remotes/"} {

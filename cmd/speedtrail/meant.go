@@ -1,0 +1,68 @@
+package main
+
+import (
+	"errors"
+	"slices"
+	"strings"
+
+	"speedtrail/history/revision"
+	"speedtrail/schema"
+	"speedtrail/schema/source"
+)
+
+// meant puts the names that a mistyped one can have meant in front of a hint.
+func meant(name string, known []string, hint string) string {
+	near := schema.Nearest(name, known)
+	if len(near) == 0 {
+		return hint
+	}
+	for i := range near {
+		near[i] = source.Visible(near[i])
+	}
+	last := len(near) - 1
+	words := near[last]
+	if last > 0 {
+		words = strings.Join(near[:last], ", ") + " or " + words
+	}
+	return strings.TrimSuffix("did you mean "+words+"? "+hint, " ")
+}
+
+// chosen refuses the value of an option that is none of a few words.
+func chosen(option, value string, words ...string) error {
+	if slices.Contains(words, value) {
+		return nil
+	}
+	last := len(words) - 1
+	return badCall(meant(value, words, option+" is "+strings.Join(words[:last], ", ")+" or "+words[last]), "unknown value %q for %s", value, option)
+}
+
+// some lists the first of many names.
+func some(names []string) string {
+	const most = 12
+	names = slices.Sorted(slices.Values(names))
+	rest := ""
+	if n := len(names); n > most {
+		names, rest = names[:most], ", ..."
+	}
+	for i := range names {
+		names[i] = source.Visible(names[i])
+	}
+	return strings.Join(names, ", ") + rest
+}
+
+// resolve finds the commit of a revision; of an unknown one it says which branches
+// and tags have nearly its name.
+func resolve(repo *revision.Repo, rev string) (revision.Commit, error) {
+	c, err := repo.Resolve(rev)
+	var unknown *revision.Error
+	if errors.Is(err, revision.ErrUnknown) && errors.As(err, &unknown) {
+		name := rev
+		if i := strings.IndexAny(rev, "~^@"); i > 0 {
+			name = rev[:i]
+		}
+		nearer := *unknown
+		nearer.Hint = meant(name, repo.Names(), unknown.Hint)
+		return c, &nearer
+	}
+	return c, err
+}
