@@ -187,6 +187,11 @@ func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, s
 	if in.BaseIsAncestor, err = repo.IsAncestor(ctx, from.commit.Hash, to.commit.Hash); err != nil {
 		return false, err
 	}
+	if !in.BaseIsAncestor {
+		if in.TargetIsAncestor, err = repo.IsAncestor(ctx, to.commit.Hash, from.commit.Hash); err != nil {
+			return false, err
+		}
+	}
 	if in.PreparedSince, err = since(in.BaseRev, to.commit.Hash, in.Folder); err != nil {
 		return false, err
 	}

@@ -35,6 +35,9 @@ type Input struct {
 	At time.Time
 	// BaseIsAncestor tells whether the target's history holds the base.
 	BaseIsAncestor bool
+	// TargetIsAncestor tells, where it does not, whether the base's history holds the
+	// target.
+	TargetIsAncestor bool
 }
 
 // Build makes the document. The same input gives the same document.

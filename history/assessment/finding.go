@@ -27,6 +27,9 @@ const (
 	UnknownPreparer   = "unknown-preparer"
 )
 
+// Swapped is the text of BaseNotAncestor where the target lies before the base.
+const Swapped = "the target is part of the base's history, and the base not of the target's: the two were perhaps swapped"
+
 // order is the one in which findings are looked at: what is wrong with the
 // comparison as a whole, what moves a speed unannounced, what nobody sees, what
 // is announced and did not happen, the rest.
@@ -101,7 +104,11 @@ type ranked struct {
 func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 	c := &collector{in: in, doc: doc}
 	if !in.BaseIsAncestor {
-		c.add(ranked{Finding: Finding{ID: BaseNotAncestor, Text: "the base is not part of the target's history"}})
+		text := "the base is not part of the target's history"
+		if in.TargetIsAncestor {
+			text = Swapped
+		}
+		c.add(ranked{Finding: Finding{ID: BaseNotAncestor, Text: text}})
 	}
 	c.policy()
 	c.trains()

@@ -11,6 +11,12 @@ import (
 func Verdict(d *assessment.Document) string {
 	c := &d.Computed
 	var parts []string
+	for _, f := range c.Findings {
+		if f.ID == assessment.BaseNotAncestor && f.Text == assessment.Swapped {
+			// It comes first, since it turns the sense of everything after it.
+			parts = append(parts, "The target is part of the base's history: base and target were perhaps swapped.")
+		}
+	}
 	changed := 0
 	for _, t := range c.Trains {
 		if len(t.Routes) > 0 {
@@ -18,8 +24,15 @@ func Verdict(d *assessment.Document) string {
 		}
 	}
 	if changed == 0 {
-		parts = append(parts, fmt.Sprintf("None of the %s is faster or slower anywhere on the %s of the target.",
-			plural(len(c.Trains), "reference train", "reference trains"), plural(targetRoutes(c), "route", "routes")))
+		who := fmt.Sprintf("None of the %d reference trains is", len(c.Trains))
+		if len(c.Trains) == 1 {
+			who = "The only reference train is not"
+		}
+		where := fmt.Sprintf("the %d routes", targetRoutes(c))
+		if targetRoutes(c) == 1 {
+			where = "the only route"
+		}
+		parts = append(parts, fmt.Sprintf("%s faster or slower anywhere on %s of the target.", who, where))
 	} else {
 		routes := 0
 		for _, r := range c.Routes {
