@@ -9,6 +9,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/history"
 	"speedtrail/history/approval"
 	"speedtrail/history/chain"
@@ -364,10 +365,10 @@ func (a *app) inforceLog(ctx context.Context) error {
 			if i > 0 {
 				fmt.Fprintln(w)
 			}
-			fmt.Fprintf(w, "%s\n", strings.ReplaceAll(wrap(r.words(), a.style().Width-2), "\n", "\n  "))
+			fmt.Fprintf(w, "%s\n", render.Hanging(r.words(), a.style().Width, "  "))
 		}
 		for _, x := range corrected {
-			fmt.Fprintf(w, "\nNot any more: %s\n", strings.ReplaceAll(wrap(x.words(), a.style().Width-2), "\n", "\n  "))
+			fmt.Fprintf(w, "\n%s\n", render.Hanging("Not any more: "+x.words(), a.style().Width, "  "))
 		}
 		if len(records)+len(corrected) > 0 && len(findings) > 0 {
 			fmt.Fprintln(w)
@@ -376,9 +377,9 @@ func (a *app) inforceLog(ctx context.Context) error {
 			fmt.Fprintf(w, "No revision is recorded as in service. Record one with: speedtrail inforce record REV --since T\n")
 		}
 		for i, f := range findings {
-			fmt.Fprintf(w, "%s\n", wrap("! "+f.ID+": "+source.Visible(f.Text), a.style().Width))
+			fmt.Fprintf(w, "%s\n", render.Hanging("! "+f.ID+": "+source.Visible(f.Text), a.style().Width, "  "))
 			if i == len(findings)-1 || findings[i+1].ID != f.ID {
-				fmt.Fprintf(w, "  %s\n", strings.ReplaceAll(wrap(serviceAdvice[f.ID], a.style().Width-2), "\n", "\n  "))
+				fmt.Fprintf(w, "  %s\n", render.Hanging(serviceAdvice[f.ID], a.style().Width, "  "))
 			}
 		}
 		return nil

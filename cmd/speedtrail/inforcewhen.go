@@ -9,6 +9,7 @@ import (
 	"strings"
 	"time"
 
+	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/diff/profile"
 	"speedtrail/history"
 	"speedtrail/history/approval"
@@ -197,12 +198,12 @@ func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		fmt.Fprintf(w, "On single routes at %s:\n", x.When)
 		for _, r := range x.Routes {
 			apart = append(apart, r.HoldsOn...)
-			fmt.Fprintf(w, "%s\n", wrap(source.Visible(joined(r.HoldsOn))+": "+r.words(), width))
+			fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(joined(r.HoldsOn))+": "+r.words(), width, "  "))
 		}
 		fmt.Fprintln(w)
 	}
 	if x.Record == nil {
-		_, err := fmt.Fprintf(w, "Nothing is recorded as in force on %s at %s; speedtrail inforce lists what is.\nhead of the ledger %s\n", cmp.Or(source.Visible(x.Route), "the whole network"), x.When, x.Head)
+		_, err := fmt.Fprintf(w, "Nothing is recorded as in force on %s at %s; speedtrail inforce lists what is.\nhead %s\n", cmp.Or(source.Visible(x.Route), "the whole network"), x.When, x.Head)
 		return err
 	}
 	except := ""
@@ -210,21 +211,30 @@ func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		slices.Sort(apart)
 		except = ", except on " + source.Visible(joined(apart))
 	}
-	fmt.Fprintf(w, "In force at %s%s:\n%s\n%s\n", x.When, except, wrap(x.Record.words(), width), wrap(source.Visible("commit "+x.Commit+", "+x.Subject), width))
+	fmt.Fprintf(w, "In force at %s%s:\n%s\n%s\n", x.When, except, render.Hanging(x.Record.words(), width, "  "), render.Hanging(source.Visible("commit "+x.Commit+", "+x.Subject), width, "  "))
 	direction := ""
+	names := 8 // the width of the names of trains; a longer one has a line of its own
+	for _, s := range x.Speeds {
+		names = max(names, min(render.Cells(source.Visible(s.Train)), 24))
+	}
 	for _, s := range x.Speeds {
 		if s.Direction != direction {
 			direction = s.Direction
 			fmt.Fprintf(w, "\n%s km %s, %s\n", source.Visible(x.Route), source.Visible(x.At), direction)
 		}
-		const indent = 28
-		governed := strings.ReplaceAll(wrap(source.Visible(strings.Join(s.Governed, "; ")), max(30, width-indent)), "\n", "\n"+strings.Repeat(" ", indent))
-		fmt.Fprintf(w, "  %-14s %3d km/h   %s\n", source.Visible(s.Train), s.Speed, governed)
+		name := source.Visible(s.Train)
+		if render.Cells(name) > names {
+			fmt.Fprintf(w, "  %s\n", name)
+			name = ""
+		}
+		indent := strings.Repeat(" ", names+14)
+		governed := render.Hanging(source.Visible(strings.Join(s.Governed, "; ")), max(width, len(indent)+30), indent)
+		fmt.Fprintf(w, "  %s%s %3d km/h   %s\n", name, strings.Repeat(" ", names-render.Cells(name)), s.Speed, governed)
 	}
-	fmt.Fprintf(w, "\n%s\n", wrap(source.Visible(fmt.Sprintf("Evidence: recorded %s as entry %d, stated %s, key %s", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)), width))
+	fmt.Fprintf(w, "\n%s\n", render.Hanging(source.Visible(fmt.Sprintf("Evidence: recorded %s as entry %d, stated %s, key %s", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)), width, "  "))
 	for _, e := range x.Signed {
-		fmt.Fprintf(w, "%s\n", wrap(source.Visible(fmt.Sprintf("assessment %d: %s as %s by %s at %s, entry %d, key %s", e.Assessment, e.Decision, e.Role, e.Signer, e.Time, e.Entry, e.Fingerprint)), width))
+		fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(fmt.Sprintf("assessment %d: %s as %s by %s at %s, entry %d, key %s", e.Assessment, e.Decision, e.Role, e.Signer, e.Time, e.Entry, e.Fingerprint)), width, "  "))
 	}
-	_, err := fmt.Fprintf(w, "head of the ledger %s\nspeedtrail verify proves the chain and the signatures\n", x.Head)
+	_, err := fmt.Fprintf(w, "head %s\nspeedtrail verify proves the chain and the signatures\n", x.Head)
 	return err
 }

@@ -90,15 +90,16 @@ func (a *app) register(ctx context.Context) error {
 
 func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, rows []ledger.AssessmentRow, head string) error {
 	if len(rows) == 0 {
-		_, err := fmt.Fprintf(w, "No assessment is recorded yet. Record one with: speedtrail assess BASE TARGET\nhead of the ledger %s\n", head)
+		_, err := fmt.Fprintf(w, "No assessment is recorded yet. Record one with: speedtrail assess BASE TARGET\nhead %s\n", head)
 		return err
 	}
+	width := a.style().Width
 	for i, r := range rows {
 		if i > 0 {
 			fmt.Fprintln(w)
 		}
 		state := line.State(r.Number)
-		fmt.Fprintf(w, "%4d  %s  %s\n", r.Number, strings.Replace(strings.TrimSuffix(r.Time, "Z"), "T", " ", 1), state.Word)
+		fmt.Fprintf(w, "%4d  %s UTC  %s\n", r.Number, strings.Replace(strings.TrimSuffix(r.Time, "Z"), "T", " ", 1), state.Word)
 		requests := "no change request"
 		if len(r.Requests) > 0 {
 			requests = strings.Join(r.Requests, ", ")
@@ -109,7 +110,7 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			fmt.Sprintf("speed changes %d, findings %d", r.Changes, r.Findings),
 		}
 		for _, x := range state.Signed {
-			lines = append(lines, source.Visible(fmt.Sprintf("%s %s by %s, %s", x.Decision, x.Role, x.Signer, x.Time.UTC().Format(time.DateOnly))))
+			lines = append(lines, source.Visible(fmt.Sprintf("%s as %s by %s, %s", x.Decision, x.Role, x.Signer, x.Time.UTC().Format(time.DateOnly))))
 		}
 		if len(state.Missing) > 0 && state.Word != approval.Rejected {
 			lines = append(lines, "still to sign: "+joined(state.Missing))
@@ -121,11 +122,11 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			lines = append(lines, fmt.Sprintf("superseded by assessment %d", state.Superseded))
 		}
 		for _, text := range lines {
-			fmt.Fprintf(w, "      %s\n", strings.ReplaceAll(wrap(text, 74), "\n", "\n      "))
+			fmt.Fprintf(w, "      %s\n", render.Hanging(text, width, "      "))
 		}
 	}
 	for _, r := range line.Revocations() {
-		fmt.Fprintf(w, "\n%s\n", wrap(source.Visible(fmt.Sprintf("key %s is out of use since entry %d, %s: %s", r.Key, r.Entry.Seq, r.Signer, r.Reason)), 80))
+		fmt.Fprintf(w, "\n%s\n", render.Hanging(source.Visible(fmt.Sprintf("key %s is out of use since entry %d, %s: %s", r.Key, r.Entry.Seq, r.Signer, r.Reason)), width, "  "))
 		for _, s := range line.SignOffs() {
 			if s.Fingerprint == r.Key {
 				fmt.Fprintf(w, "      review assessment %d, %s as %s\n", s.Assessment, s.Decision, s.Role)

@@ -138,25 +138,8 @@ func withCaution(root *cobra.Command) {
 	})
 }
 
-// wrap breaks a text into lines of at most width bytes.
-func wrap(text string, width int) string {
-	var b strings.Builder
-	column := 0
-	for _, word := range strings.Fields(text) {
-		switch {
-		case column == 0:
-		case column+1+len(word) > width:
-			b.WriteByte('\n')
-			column = 0
-		default:
-			b.WriteByte(' ')
-			column++
-		}
-		b.WriteString(word)
-		column += len(word)
-	}
-	return b.String()
-}
+// wrap breaks a text into lines of at most width columns.
+func wrap(text string, width int) string { return strings.Join(render.Wrap(text, width), "\n") }
 
 // arguments checks how many there are, with a message in the same form as all
 // others.

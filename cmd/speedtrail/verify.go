@@ -8,6 +8,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/history"
 	"speedtrail/history/chain"
 	"speedtrail/history/ledger"
@@ -136,13 +137,13 @@ func printVerification(w io.Writer, r *history.Result, id string, width int) err
 	}
 	fmt.Fprintf(w, "%s\n\n", verdict)
 	for _, p := range r.Problems {
-		fmt.Fprintf(w, "%s\n", wrap("! "+source.Visible(p.String()), width))
+		fmt.Fprintf(w, "%s\n", render.Hanging("! "+source.Visible(p.String()), width, "  "))
 	}
 	for _, s := range r.Proved {
-		fmt.Fprintf(w, "%s\n", wrap("proved: "+source.Visible(s), width))
+		fmt.Fprintf(w, "%s\n", render.Hanging("proved: "+source.Visible(s), width, "  "))
 	}
 	for _, s := range r.Unproved {
-		fmt.Fprintf(w, "%s\n", wrap("left open: "+source.Visible(s), width))
+		fmt.Fprintf(w, "%s\n", render.Hanging("left open: "+source.Visible(s), width, "  "))
 	}
 	if id == "" {
 		return nil

@@ -19,6 +19,9 @@ func declarationIDs(c *assessment.Computed) []string {
 	return ids
 }
 
+// outside stands for the request where none declares a change.
+const outside = "outside"
+
 // declaredPart is a piece of a change and what holds it.
 type declaredPart struct {
 	text string
@@ -33,12 +36,12 @@ func declaredParts(c *assessment.Computed, r *assessment.Route, pieces int) []de
 	}
 	list := r.Pieces[pieces]
 	if len(list) == 0 {
-		return []declaredPart{{"outside", -1}}
+		return []declaredPart{{outside, -1}}
 	}
 	ids := declarationIDs(c)
 	var parts []declaredPart
 	for _, p := range list {
-		text := "outside"
+		text := outside
 		if p.By >= 0 {
 			text = ids[p.By]
 		}
@@ -73,7 +76,7 @@ func declaredFamily(c *assessment.Computed, r *assessment.Route, f family) strin
 	for _, x := range f.all {
 		var by []string
 		for _, p := range r.Pieces[x.Pieces] {
-			id := "outside"
+			id := outside
 			if p.By >= 0 {
 				id = ids[p.By]
 			}
@@ -83,7 +86,7 @@ func declaredFamily(c *assessment.Computed, r *assessment.Route, f family) strin
 		}
 		text := strings.Join(by, " and ")
 		if text == "" {
-			text = "outside"
+			text = outside
 		}
 		trains[text] = append(trains[text], x.Trains...)
 	}

@@ -37,6 +37,27 @@ func findingGroups(c *assessment.Computed) []findingGroup {
 	return list
 }
 
+// commonTail gives the texts of the findings. What all of them end with, after a
+// colon, is said once, in tail.
+func (g findingGroup) commonTail() (texts []string, tail string) {
+	for i, f := range g.List {
+		text, end, ok := strings.Cut(f.Text, ": ")
+		if !ok || i > 0 && end != tail {
+			tail = ""
+			break
+		}
+		texts, tail = append(texts, text), end
+	}
+	if tail == "" || len(g.List) <= mostWholeFinding {
+		texts = nil
+		for _, f := range g.List {
+			texts = append(texts, f.Text)
+		}
+		return texts, ""
+	}
+	return texts, " Of each: " + tail + "."
+}
+
 func (g findingGroup) title() string {
 	s := g.ID
 	if n := len(g.List); n > 1 {
@@ -132,7 +153,7 @@ func runningTimes(c *assessment.Computed) map[string]string {
 // same lengths at once.
 func seenWords(d assessment.Declaration) string {
 	if d.Unseen {
-		return "unseen"
+		return "nothing of it (unseen)"
 	}
 	type group struct {
 		inside, hidden, least, most int64

@@ -119,14 +119,6 @@ func (g *group) trainsOf(x *assessment.Change) []int {
 	return list
 }
 
-// between writes one position, or two between which it lies.
-func between(a, b string) string {
-	if a == b {
-		return minus(a)
-	}
-	return minus(a) + " .. " + minus(b)
-}
-
 // because names the rows behind a change: one line where the same kind of cell
 // in the same table has another value, else the rows before and after.
 func because(before, after []assessment.Source) []string {

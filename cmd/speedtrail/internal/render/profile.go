@@ -63,13 +63,19 @@ func ProfileText(w io.Writer, s Style, list ...Profile) error {
 			{Number: 1, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 2, Align: text.AlignRight, AlignHeader: text.AlignRight},
 			{Number: 3, Align: text.AlignRight, AlignHeader: text.AlignRight}, {Number: 4, Align: text.AlignRight, AlignHeader: text.AlignRight},
 		})
-		for _, piece := range p.Pieces {
+		from, to, length := make([]string, len(p.Pieces)), make([]string, len(p.Pieces)), make([]string, len(p.Pieces))
+		for k, piece := range p.Pieces {
+			from[k], to[k], length[k] = minus(piece.From), minus(piece.To), metres(piece.End-piece.Start)
+		}
+		from, to, length = onPoint(from), onPoint(to), onPoint(length)
+		before := max(7, Cells(from[0])) + max(5, Cells(to[0])) + max(8, Cells(length[0])) + 12
+		for k, piece := range p.Pieces {
 			lines := make([]string, len(piece.Sources))
-			for k, src := range piece.Sources {
+			for n, src := range piece.Sources {
 				// Wrapped here: the table would run the sources together.
-				lines[k] = strings.Join(wrap(source.Visible(src.Text()), max(30, s.Width-44)), "\n  ")
+				lines[n] = Hanging(source.Visible(src.Text()), max(30, s.Width-before), "  ")
 			}
-			t.AppendRow(table.Row{minus(piece.From), minus(piece.To), metres(piece.End - piece.Start), piece.Speed, strings.Join(lines, "\n")})
+			t.AppendRow(table.Row{from[k], to[k], length[k], piece.Speed, strings.Join(lines, "\n")})
 		}
 		if _, err := fmt.Fprintf(w, "\n%s\n", tidy(t.Render())); err != nil {
 			return err
@@ -123,7 +129,7 @@ func chart(w io.Writer, s Style, p Profile) error {
 			lowest[c] = min(lowest[c], p.Pieces[n].Speed)
 		}
 	}
-	for _, line := range wrap(p.title(), s.Width) {
+	for _, line := range Wrap(p.title(), s.Width) {
 		fmt.Fprintln(w, line)
 	}
 	fmt.Fprintln(w, "km/h")

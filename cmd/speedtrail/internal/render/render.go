@@ -112,24 +112,3 @@ func trainNames(c *assessment.Computed, trains []int, most int) string {
 	}
 	return strings.Join(names, ", ")
 }
-
-// wrap breaks a text into lines of at most width characters.
-func wrap(text string, width int) []string {
-	var lines []string
-	line := ""
-	for _, word := range strings.Fields(text) {
-		switch {
-		case line == "":
-			line = word
-		case len([]rune(line))+1+len([]rune(word)) > width:
-			lines = append(lines, line)
-			line = word
-		default:
-			line += " " + word
-		}
-	}
-	if line != "" {
-		lines = append(lines, line)
-	}
-	return lines
-}

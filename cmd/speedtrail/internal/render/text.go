@@ -4,6 +4,8 @@ import (
 	"cmp"
 	"fmt"
 	"io"
+	"maps"
+	"slices"
 	"strings"
 
 	"github.com/jedib0t/go-pretty/v6/table"
@@ -54,7 +56,7 @@ func (p *textWriter) printf(format string, args ...any) {
 
 // paragraph writes a text wrapped to the width, with what hides made visible.
 func (p *textWriter) paragraph(indent, s string) {
-	for i, line := range wrap(source.Visible(s), p.s.Width-len(indent)) {
+	for i, line := range Wrap(source.Visible(s), max(minWidth, p.s.Width-len(indent))) {
 		if i == 1 {
 			indent = strings.Repeat(" ", len(indent))
 		}
@@ -62,12 +64,21 @@ func (p *textWriter) paragraph(indent, s string) {
 	}
 }
 
-func (p *textWriter) heading(s string) {
-	if p.s.Color {
-		p.printf("\n\x1b[1m%s\x1b[0m\n", s)
-		return
+// heading begins a part. Names, as that of a route, keep their letters.
+func (p *textWriter) heading(s string, names ...string) {
+	if !p.s.Color {
+		s = strings.ToUpper(s)
 	}
-	p.printf("\n%s\n", strings.ToUpper(s))
+	p.printf("\n")
+	for i, line := range Wrap(s+" "+source.Visible(strings.Join(names, " ")), p.s.Width-2) {
+		if i > 0 {
+			line = "  " + line
+		}
+		if p.s.Color {
+			line = "\x1b[1m" + line + "\x1b[0m"
+		}
+		p.printf("%s\n", line)
+	}
 }
 
 func (p *textWriter) title() {
@@ -125,8 +136,13 @@ func (p *textWriter) verdict() {
 	p.paragraph("", Verdict(p.d))
 }
 
-// mostTextFindings is how many findings of a kind the terminal shows.
-const mostTextFindings = 12
+// How many findings of a kind the terminal shows; of that many each has its own
+// lines, of more each has one below its route.
+const (
+	mostTextFindings = 60
+	mostWholeFinding = 8
+	mostRoutesNamed  = 20 // of those that are not shown
+)
 
 func (p *textWriter) findings() {
 	groups := findingGroups(p.c)
@@ -138,32 +154,129 @@ func (p *textWriter) findings() {
 		if i > 0 {
 			p.printf("\n")
 		}
-		p.paragraph("", g.title()+". "+g.Why+" "+g.Do)
+		text, tail := g.commonTail()
+		if len(g.List) > mostWholeFinding && g.List[0].Example != "" {
+			tail += " The trains stand in the report: " + p.command("html", len(g.List), mostHTMLFindings) + "."
+		}
+		p.paragraph("", g.title()+". "+g.Why+" "+g.Do+tail)
+		if len(g.List) > mostWholeFinding {
+			p.findingsByRoute(g, text)
+			continue
+		}
 		for k, f := range g.List {
-			if k == mostTextFindings {
-				p.printf("  and %d more, in the JSON form\n", len(g.List)-k)
-				break
-			}
-			mark := "! "
-			if f.Accepted != "" {
-				mark = "  "
-			}
-			p.paragraph(mark, joinPlace(findingPlace(f), f.Text))
-			if f.Row != "" {
-				p.paragraph("    ", findingRow(f))
-			}
-			for line := range strings.Lines(source.VisibleLines(f.Example)) {
-				p.printf("      %s\n", strings.TrimRight(line, "\n"))
-			}
-			if f.Accepted != "" {
-				p.paragraph("    ", "accepted: "+f.Accepted)
-			}
+			p.paragraph(findingMark(f), joinPlace(findingPlace(f), text[k]))
+			p.findingRest("    ", f)
 		}
 	}
 	for _, a := range p.c.Accepted {
 		if a.State != "used" && a.State != "unread" {
 			p.paragraph("  ", acceptanceWords(a))
 		}
+	}
+}
+
+// findingMark begins a finding: an exclamation mark unless it is accepted.
+func findingMark(f assessment.Finding) string {
+	if f.Accepted != "" {
+		return "  "
+	}
+	return "! "
+}
+
+// findingRest writes what follows the place and the text of a finding.
+func (p *textWriter) findingRest(indent string, f assessment.Finding) {
+	if f.Row != "" {
+		p.paragraph(indent, findingRow(f))
+	}
+	for line := range strings.Lines(source.VisibleLines(f.Example)) {
+		p.printf("%s  %s\n", indent, strings.TrimRight(line, "\n"))
+	}
+	if f.Accepted != "" {
+		p.paragraph(indent, "accepted: "+f.Accepted)
+	}
+}
+
+// findingsByRoute writes many findings of a kind, the worst of them, those of a route
+// together. The routes stand in the order of their worst finding.
+func (p *textWriter) findingsByRoute(g findingGroup, text []string) {
+	var routes []string
+	shown, left := map[string][]int{}, map[string]int{}
+	for i, f := range g.List {
+		switch {
+		case i >= mostTextFindings:
+			left[f.Route]++
+			continue
+		case shown[f.Route] == nil:
+			routes = append(routes, f.Route)
+		}
+		shown[f.Route] = append(shown[f.Route], i)
+	}
+	for _, route := range routes {
+		list := shown[route]
+		together := route != "" && len(list) > 1
+		if together {
+			p.paragraph("  ", "on "+route)
+		}
+		for _, i := range list {
+			f := g.List[i]
+			place := findingPlace(f)
+			if together {
+				place = strings.TrimLeft(strings.TrimPrefix(place, route), " ,")
+			}
+			p.paragraph(findingMark(f), joinPlace(place, text[i])+rowTail(f))
+			f.Row, f.Example = "", ""
+			p.findingRest("    ", f)
+		}
+	}
+	if n := len(g.List) - mostTextFindings; n > 0 {
+		where := slices.Sorted(maps.Keys(left))
+		rest := ""
+		if len(where) > mostRoutesNamed {
+			rest = plural(len(where)-mostRoutesNamed, "more route", "more routes")
+			where = where[:mostRoutesNamed]
+		}
+		for i, r := range where {
+			where[i] = fmt.Sprintf("%s (%d)", r, left[r])
+			if r == "" {
+				where[i] = fmt.Sprintf("no route (%d)", left[r])
+			}
+		}
+		if rest != "" {
+			where = append(where, rest)
+		}
+		p.paragraph("  ", fmt.Sprintf("and %d more, on %s; %s lists all", n, strings.Join(where, ", "), p.command("html", len(g.List), mostHTMLFindings)))
+	}
+}
+
+// rowTail is the row behind a finding at the end of its line.
+func rowTail(f assessment.Finding) string {
+	if f.Row == "" {
+		return ""
+	}
+	return "; " + findingRow(f)
+}
+
+// command gives the command that writes all of an assessment in a format. Where a page
+// has not all of a list either, the JSON form has.
+func (p *textWriter) command(format string, n, most int) string {
+	if format == "html" && n > most {
+		format = "json"
+	}
+	switch {
+	case p.r.Number == 0 && format == "html":
+		return "--format html --out report.html"
+	case p.r.Number == 0:
+		return "--format " + format
+	case format == "html":
+		return fmt.Sprintf("speedtrail report %d --out report.html", p.r.Number)
+	}
+	return fmt.Sprintf("speedtrail report %d --format %s", p.r.Number, format)
+}
+
+// more says that a list goes on, and which command writes all of it.
+func (p *textWriter) more(n int, format string) {
+	if n > 0 {
+		p.paragraph("  ", fmt.Sprintf("and %d more; %s lists all", n, p.command(format, n, mostHTMLRows/2)))
 	}
 }
 
@@ -177,18 +290,35 @@ func (p *textWriter) trains() {
 	p.heading("Trains")
 	t := plainTable()
 	t.AppendHeader(table.Row{"train", "raised km", "lowered km", "up km/h", "down km/h", "time s", "routes"})
-	t.SetColumnConfigs(append([]table.ColumnConfig{{Number: 7, WidthMax: max(12, p.s.Width-68), WidthMaxEnforcer: text.WrapSoft}}, right...))
 	times := runningTimes(p.c)
-	for _, x := range p.c.Trains {
-		name := source.Visible(x.ID)
+	// The numbers take 51 columns with their gaps; names are given what they need of the
+	// rest, but for room for a route.
+	const numbers, gap, aRoute = 51, 2, 12
+	names, widest := make([]string, len(p.c.Trains)), 0
+	for i, x := range p.c.Trains {
+		names[i] = source.Visible(x.ID)
 		if x.Fate != "kept" {
-			name += " (" + x.Fate + ")"
+			names[i] += " (" + x.Fate + ")"
 		}
+		widest = max(widest, Cells(names[i]))
+	}
+	widest = max(8, min(widest, p.s.Width-numbers-2*gap-aRoute))
+	t.SetColumnConfigs(append([]table.ColumnConfig{
+		{Number: 1, WidthMax: widest, WidthMaxEnforcer: text.WrapSoft},
+		{Number: 7, WidthMax: max(aRoute, p.s.Width-numbers-2*gap-widest), WidthMaxEnforcer: text.WrapSoft},
+	}, right...))
+	raised, lowered := make([]string, len(names)), make([]string, len(names))
+	for i, x := range p.c.Trains {
+		raised[i], lowered[i] = lengthCell(x.Raised), lengthCell(x.Lowered)
+	}
+	raised, lowered = onPoint(raised), onPoint(lowered)
+	for i, x := range p.c.Trains {
+		name := names[i]
 		if len(x.Routes) == 0 {
 			t.AppendRow(table.Row{name, "no change", "", "", "", "", ""})
 			continue
 		}
-		t.AppendRow(table.Row{name, lengthCell(x.Raised), lengthCell(x.Lowered), stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(strings.Join(x.Routes, ", "))})
+		t.AppendRow(table.Row{name, raised[i], lowered[i], stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(strings.Join(x.Routes, ", "))})
 	}
 	p.printf("%s\n", tidy(t.Render()))
 	p.paragraph("", "Up and down are the largest steps. Lengths, and running times (minus: faster), are added up over routes and both directions of travel.")
@@ -216,7 +346,7 @@ func (p *textWriter) track() {
 				p.heading("Track that only one revision has")
 				heading = true
 			}
-			p.paragraph("", fmt.Sprintf("%s %s, %s: %s to %s km %s (%s m)", r.ID, r.Name, t.Direction, minus(t.From), minus(t.To), t.Fate, metres(t.Length)))
+			p.paragraph("", fmt.Sprintf("%s %s, %s: km %s to %s %s (%s m)", r.ID, r.Name, t.Direction, minus(t.From), minus(t.To), t.Fate, metres(t.Length)))
 		}
 	}
 }
@@ -234,23 +364,54 @@ func (p *textWriter) changes() {
 			fs := families(list[:n])
 			all += len(fs)
 			if room := mostTextChanges - shown; room > 0 {
-				p.heading(source.Visible(fmt.Sprintf("Changes on %s %s, %s", r.ID, r.Name, list[0].Direction)))
+				p.heading("Changes on", r.ID, r.Name+",", list[0].Direction)
 				fs = fs[:min(len(fs), room)]
 				shown += len(fs)
-				for _, f := range fs {
-					p.family(r, f, pictures)
+				for i, place := range familyPlaces(fs) {
+					p.family(r, fs[i], place, pictures)
 				}
 			}
 			list = list[n:]
 		}
 	}
 	if all > shown {
-		p.printf("\n%d more are not shown here; --format csv lists every change.\n", all-shown)
+		p.printf("\n")
+		p.more(all-shown, "csv")
 	}
 }
 
+// familyPlaces words where families are, one below the other: the place that all of a
+// family begin at, or the last of them, and that where they end, or the first, stand
+// on the decimal point.
+func familyPlaces(list []family) []string {
+	from, to := make([]string, len(list)), make([]string, len(list))
+	earlier, later := make([]string, len(list)), make([]string, len(list))
+	width := 0
+	for i, f := range list {
+		from[i], to[i] = minus(f.from[1].From), minus(f.to[0].To)
+		if first := minus(f.from[0].From); first != from[i] {
+			earlier[i] = first + " .. "
+		}
+		if last := minus(f.to[1].To); last != to[i] {
+			later[i] = " .. " + last
+		}
+		width = max(width, Cells(earlier[i]))
+	}
+	from, to = onPoint(from), onPoint(to)
+	out := make([]string, len(list))
+	whole := 0
+	for i := range list {
+		out[i] = "km " + strings.Repeat(" ", width-Cells(earlier[i])) + earlier[i] + from[i] + " to " + to[i] + later[i]
+		whole = max(whole, Cells(out[i]))
+	}
+	for i := range out {
+		out[i] = padded(out[i], whole)
+	}
+	return out
+}
+
 // family writes changes that differ only in their trains and one of their ends.
-func (p *textWriter) family(r *assessment.Route, f family, pictures pictures) {
+func (p *textWriter) family(r *assessment.Route, f family, place string, pictures pictures) {
 	x := f.all[0]
 	step := signed(x.After - x.Before)
 	if p.s.Color {
@@ -260,24 +421,33 @@ func (p *textWriter) family(r *assessment.Route, f family, pictures pictures) {
 		}
 		step = "\x1b[" + color + "m" + step + "\x1b[0m"
 	}
-	line := fmt.Sprintf("km %s to %s", between(f.from[0].From, f.from[1].From), between(f.to[0].To, f.to[1].To))
-	remark := ""
+	line := fmt.Sprintf("%s %3d to %3d km/h  ", padded(place, 34), x.Before, x.After)
+	var remarks []string
 	if x.RunOut {
-		remark = "  run-out"
+		remarks = append(remarks, "run-out")
 	}
 	switch {
 	case f.begin() && f.end():
 	case pictures.byLength(r, &f):
-		remark += "  by train length"
+		remarks = append(remarks, "by train length")
 	default:
-		remark += "  by train"
+		remarks = append(remarks, "by train")
 	}
-	p.printf("%-34s %3d to %3d km/h  %s%s\n", line, x.Before, x.After, step, remark)
+	remark := strings.Join(remarks, ", ")
+	if remark != "" && Cells(line)+6+Cells(remark) <= p.s.Width {
+		step, remark = step+"  "+remark, ""
+	}
+	p.printf("%s%s\n", line, step)
+	if remark != "" {
+		p.paragraph("    ", remark)
+	}
 	p.paragraph("    ", trainNames(p.c, f.trains, 0))
 	for _, line := range because(r.Sources[x.BeforeSource], r.Sources[x.AfterSource]) {
 		p.paragraph("    ", line)
 	}
-	if text := declaredFamily(p.c, r, f); text != "" {
+	if text := declaredFamily(p.c, r, f); text == outside {
+		p.paragraph("    ", "declared by no request (outside)")
+	} else if text != "" {
 		p.paragraph("    ", "declared by: "+text)
 	}
 }

@@ -4,6 +4,7 @@ import (
 	"fmt"
 
 	"github.com/jedib0t/go-pretty/v6/table"
+	"github.com/jedib0t/go-pretty/v6/text"
 
 	"speedtrail/history/assessment"
 	"speedtrail/schema/source"
@@ -15,7 +16,7 @@ func (p *textWriter) declared() {
 	p.paragraph("", reconciliation(p.c)+" Lengths are added up over both directions of travel.")
 	for _, q := range p.c.Requests {
 		for _, d := range q.Declares {
-			p.paragraph("  ", fmt.Sprintf("%s %s %s, km %s to %s, %s, %s", q.ID, d.Route, d.Direction, minus(d.From), minus(d.To), d.Effect, declaredTrains(d)))
+			p.paragraph("  ", fmt.Sprintf("%s %s %s, km %s to %s, %s, %s", q.ID, d.Route, directionWords(d.Direction), minus(d.From), minus(d.To), d.Effect, declaredTrains(d)))
 			if !p.c.Options.NoRequests {
 				p.paragraph("      ", "seen: "+seenWords(d))
 			}
@@ -53,12 +54,21 @@ func (p *textWriter) fleet() {
 		}
 	}
 	if shown > mostTextFleet {
-		p.printf("and %d more, in the HTML and JSON forms\n", shown-mostTextFleet)
+		p.more(shown-mostTextFleet, "html")
 	}
 }
 
 // mostTextFigures is how many lines of each kind of figure the terminal shows.
 const mostTextFigures = 40
+
+// cut is how many of a list of figures the terminal does not show: none of one that
+// is hardly longer.
+func cut(n int) int {
+	if n <= mostTextFigures+10 {
+		return 0
+	}
+	return n - mostTextFigures
+}
 
 func (p *textWriter) figures() {
 	f := &p.c.Figures
@@ -67,15 +77,19 @@ func (p *textWriter) figures() {
 		p.paragraph("", motionWords(p.c))
 		t := plainTable()
 		t.AppendHeader(table.Row{"route", "direction", "train", "before", "after", "difference"})
-		t.SetColumnConfigs(right[2:])
+		// Beside the names stand 41 columns.
+		name := table.ColumnConfig{WidthMax: max(8, (p.s.Width-41)/2), WidthMaxEnforcer: text.WrapSoft}
+		route, train := name, name
+		route.Number, train.Number = 1, 3
+		t.SetColumnConfigs(append([]table.ColumnConfig{route, train}, right[2:]...))
 		for i, r := range f.Runs {
-			if i == mostTextFigures && len(f.Runs) > mostTextFigures+10 {
+			if i == mostTextFigures && cut(len(f.Runs)) > 0 {
 				break
 			}
 			t.AppendRow(table.Row{source.Visible(r.Route), r.Direction, source.Visible(r.Train), clock(r.Before), clock(r.After), seconds(r.After - r.Before)})
 		}
 		p.printf("%s\n", tidy(t.Render()))
-		p.more(len(f.Runs))
+		p.more(cut(len(f.Runs)), "html")
 	}
 	if len(f.Crossings) > 0 {
 		p.heading("Level crossings")
@@ -89,28 +103,22 @@ func (p *textWriter) figures() {
 		p.paragraph("", curveWords)
 		list := curvesOfInterest(f.Curves)
 		for i, x := range list {
-			if i == mostTextFigures && len(list) > mostTextFigures+10 {
+			if i == mostTextFigures && cut(len(list)) > 0 {
 				break
 			}
 			p.paragraph("  ", fmt.Sprintf("%s %s, km %s to %s (%s): %s", x.Route, directionWords(x.Direction), minus(x.From), minus(x.To), trainNames(p.c, x.Trains, 6), curveLine(x)))
 		}
-		p.more(len(list))
+		p.more(cut(len(list)), "html")
 	}
 	if len(f.Short) > 0 {
 		p.heading("Raises too short to be used")
 		for i, x := range f.Short {
-			if i == mostTextFigures && len(f.Short) > mostTextFigures+10 {
+			if i == mostTextFigures && cut(len(f.Short)) > 0 {
 				break
 			}
 			p.paragraph("  ", fmt.Sprintf("%s %s, km %s to %s, %s: %s", x.Route, x.Direction, minus(x.From), minus(x.To), x.Train, shortLine(x)))
 		}
-		p.more(len(f.Short))
-	}
-}
-
-func (p *textWriter) more(n int) {
-	if n > mostTextFigures+10 {
-		p.printf("and %d more, in the JSON form\n", n-mostTextFigures)
+		p.more(cut(len(f.Short)), "html")
 	}
 }
 
@@ -157,7 +165,7 @@ func (p *textWriter) sources() {
 		}
 	}
 	if shown > mostTextRows {
-		p.printf("and %d more rows, in the JSON form\n", shown-mostTextRows)
+		p.more(shown-mostTextRows, "html")
 	}
 	if quiet > 0 {
 		p.paragraph("", fmt.Sprintf("%s without an effect on any reference train; the HTML and Markdown reports list them with the reason.", plural(quiet, "row", "rows")))

@@ -40,10 +40,10 @@ func speedAt(v int) string {
 // TraceText writes a trace for the terminal.
 func TraceText(w io.Writer, t *Trace, s Style) error {
 	b := &strings.Builder{}
-	for _, line := range wrap(source.Visible(t.title()), s.Width) {
+	for _, line := range Wrap(source.Visible(t.title()), s.Width) {
 		fmt.Fprintln(b, line)
 	}
-	for _, line := range wrap(traceKey, s.Width) {
+	for _, line := range Wrap(traceKey, s.Width) {
 		fmt.Fprintln(b, line)
 	}
 	for i := range t.Trails {
@@ -65,7 +65,7 @@ func TraceText(w io.Writer, t *Trace, s Style) error {
 func (t *Trace) trailText(b *strings.Builder, trail *TraceTrail, s Style) {
 	fmt.Fprintln(b)
 	head := fmt.Sprintf("%s, %s: %s at %s", trail.Direction, strings.Join(trail.Trains, ", "), speedAt(trail.Now.Speed), t.Revision.Typed)
-	for _, line := range wrap(source.Visible(head), s.Width) {
+	for _, line := range Wrap(source.Visible(head), s.Width) {
 		fmt.Fprintln(b, line)
 	}
 	gaps := t.Gaps
@@ -117,7 +117,7 @@ func day(c *TraceCommit) string {
 
 // indent writes a text over several lines, each behind a margin.
 func indent(b *strings.Builder, margin, s string, style Style) {
-	for _, line := range wrap(s, max(40, style.Width-len(margin))) {
+	for _, line := range Wrap(s, max(40, style.Width-len(margin))) {
 		fmt.Fprintln(b, margin+line)
 	}
 }
@@ -127,7 +127,7 @@ const margin = "              "
 
 func (t *Trace) stepText(b *strings.Builder, step *TraceStep, s Style) {
 	c := &t.Commits[step.After.Commit]
-	before := "-"
+	before := "none"
 	if len(step.Before) > 0 {
 		before = speedWords(step.Before[0].Speed)
 	}
@@ -184,17 +184,22 @@ func assessmentWords(c *TraceCommit) string {
 
 func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) {
 	fmt.Fprintln(b)
-	for _, line := range wrap(source.Visible(stretch.Direction+", "+strings.Join(stretch.Trains, ", ")), s.Width) {
+	for _, line := range Wrap(source.Visible(stretch.Direction+", "+strings.Join(stretch.Trains, ", ")), s.Width) {
 		fmt.Fprintln(b, line)
 	}
+	from, to := make([]string, len(stretch.Pieces)), make([]string, len(stretch.Pieces))
+	for i, p := range stretch.Pieces {
+		from[i], to[i] = minus(p.From), minus(p.To)
+	}
+	from, to = onPoint(from), onPoint(to)
 	for i := range stretch.Pieces {
 		p := &stretch.Pieces[i]
 		c := &t.Commits[p.Origin]
-		speed := speedWords(p.Speed) + " km/h"
+		speed := fmt.Sprintf("%3s km/h", speedWords(p.Speed))
 		if s.Color {
 			speed = text.Bold.Sprint(speed)
 		}
-		fmt.Fprintf(b, "\n  km %s to %s  %s  since %s  %s  %s\n", minus(p.From), minus(p.To), speed, day(c), short(c.Hash), source.Visible(c.Author.Name))
+		fmt.Fprintf(b, "\n  km %s to %s  %s  since %s  %s  %s\n", from[i], to[i], speed, day(c), short(c.Hash), source.Visible(c.Author.Name))
 		indent(b, margin, source.Visible(c.Subject), s)
 		lines := [][2]string{{"by", assessment.SourceText(p.Sources)}, {"request", requestWords(c)}, {"assessed", assessmentWords(c)}}
 		for _, remark := range pieceRemarks(t, p) {
@@ -207,7 +212,7 @@ func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) 
 // labelled writes lines behind a label each.
 func labelled(b *strings.Builder, lines [][2]string, s Style) {
 	for _, l := range lines {
-		for i, line := range wrap(source.Visible(l[1]), max(40, s.Width-len(margin)-10)) {
+		for i, line := range Wrap(source.Visible(l[1]), max(40, s.Width-len(margin)-10)) {
 			label := l[0]
 			if i > 0 {
 				label = ""

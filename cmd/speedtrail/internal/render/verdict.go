@@ -24,15 +24,15 @@ func Verdict(d *assessment.Document) string {
 		}
 	}
 	if changed == 0 {
-		who := fmt.Sprintf("None of the %d reference trains is", len(c.Trains))
+		who := fmt.Sprintf("None of the %d reference trains is faster or slower", len(c.Trains))
 		if len(c.Trains) == 1 {
-			who = "The only reference train is not"
+			who = "The only reference train is neither faster nor slower"
 		}
 		where := fmt.Sprintf("the %d routes", targetRoutes(c))
 		if targetRoutes(c) == 1 {
 			where = "the only route"
 		}
-		parts = append(parts, fmt.Sprintf("%s faster or slower anywhere on %s of the target.", who, where))
+		parts = append(parts, fmt.Sprintf("%s anywhere on %s of the target.", who, where))
 	} else {
 		routes := 0
 		for _, r := range c.Routes {

@@ -17,7 +17,7 @@ func TestVerdictOnHidden(t *testing.T) {
 		want            string
 	}{
 		{"all hidden", nil, []assessment.Change{change(100, 120, 10_000_000), change(100, 110, 12_000_000)},
-			"The only reference train is not faster or slower anywhere on the only route of the target. Hidden today by temporary restrictions: up to +20 km/h over 10.000 km (N)."},
+			"The only reference train is neither faster nor slower anywhere on the only route of the target. Hidden today by temporary restrictions: up to +20 km/h over 10.000 km (N)."},
 		{"some hidden, up and down", []assessment.Change{change(100, 110, 1_000_000)}, []assessment.Change{change(100, 120, 2_000_000), change(100, 70, 500_000)},
 			"1 of 1 train changes on 1 of 1 route: up to +10 km/h over 1.000 km (N). Hidden today by temporary restrictions: up to +20 km/h over 2.000 km (N), down to \u221230 km/h over 0.500 km (N)."},
 	} {

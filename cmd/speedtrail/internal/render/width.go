@@ -1,0 +1,104 @@
+package render
+
+import (
+	"strings"
+
+	"github.com/jedib0t/go-pretty/v6/text"
+)
+
+func init() {
+	// Else the environment would decide how wide a minus sign is, and the same result
+	// would be laid out in two ways. Chinese, Japanese and Korean letters take two
+	// columns all the same.
+	text.OverrideRuneWidthEastAsianWidth(false)
+}
+
+// Cells is how many columns of a terminal a text takes.
+func Cells(s string) int {
+	n := 0
+	for _, r := range s {
+		n += text.RuneWidth(r)
+	}
+	return n
+}
+
+// padded fills a text up with blanks on the right.
+func padded(s string, width int) string { return s + strings.Repeat(" ", max(0, width-Cells(s))) }
+
+// Wrap breaks a text into lines of at most width columns, at its blanks, and within
+// words where letters of two columns stand beside each other: their languages write
+// no blanks. A longer word, such as a path, stays whole.
+func Wrap(s string, width int) []string {
+	var lines []string
+	line, used := "", 0
+	for _, word := range strings.Fields(s) {
+		gap := 1
+		for _, part := range parts(word) {
+			n := Cells(part)
+			switch {
+			case line == "":
+				line, used = part, n
+			case used+gap+n > width:
+				lines = append(lines, line)
+				line, used = part, n
+			default:
+				line += strings.Repeat(" ", gap) + part
+				used += gap + n
+			}
+			gap = 0
+		}
+	}
+	if line != "" {
+		lines = append(lines, line)
+	}
+	return lines
+}
+
+// parts cuts a word where a line may end: before and after each letter of two
+// columns.
+func parts(word string) []string {
+	var list []string
+	start, wide := 0, false
+	for i, r := range word {
+		n := text.RuneWidth(r)
+		if n == 0 { // belongs to the letter before
+			continue
+		}
+		if i > start && (wide || n > 1) {
+			list = append(list, word[start:i])
+			start = i
+		}
+		wide = n > 1
+	}
+	return append(list, word[start:])
+}
+
+// Hanging is Wrap with the lines after the first set in.
+func Hanging(s string, width int, indent string) string {
+	return strings.Join(Wrap(s, max(minWidth, width-len(indent))), "\n"+indent)
+}
+
+// minWidth is the width of a text in the narrowest terminal.
+const minWidth = 20
+
+// onPoint sets positions, lengths and other numbers below each other by the decimal
+// point; what follows the decimals, as the occurrence of a position does, stands out
+// on the right.
+func onPoint(list []string) []string {
+	left, right := 0, 0
+	at := make([]int, len(list))
+	for i, s := range list {
+		if at[i] = strings.IndexByte(s, '.'); at[i] < 0 {
+			at[i] = len(s)
+		}
+		left, right = max(left, Cells(s[:at[i]])), max(right, Cells(s[at[i]:]))
+	}
+	out := make([]string, len(list))
+	for i, s := range list {
+		if s != "" {
+			s = strings.Repeat(" ", left-Cells(s[:at[i]])) + padded(s, Cells(s[:at[i]])+right)
+		}
+		out[i] = s
+	}
+	return out
+}
