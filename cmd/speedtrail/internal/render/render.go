@@ -107,7 +107,7 @@ func trainNames(c *assessment.Computed, trains []int, most int) string {
 	for _, i := range trains {
 		names = append(names, c.Trains[i].ID)
 	}
-	if most > 0 && len(names) > most {
+	if most > 0 && len(names) > most+1 { // "and 1 more" is no shorter than its name
 		return strings.Join(names[:most], ", ") + fmt.Sprintf(" and %d more", len(names)-most)
 	}
 	return strings.Join(names, ", ")

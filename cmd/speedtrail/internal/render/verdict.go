@@ -2,6 +2,7 @@ package render
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 
 	"speedtrail/history/assessment"
@@ -88,6 +89,7 @@ func extremes(c *assessment.Computed, of func(*assessment.Route) []assessment.Ch
 // extreme words the largest raise or reduction.
 func extreme(c *assessment.Computed, of func(*assessment.Route) []assessment.Change, up bool) string {
 	var best *assessment.Change
+	var trains []int // of all changes of that step and that length
 	size := func(x *assessment.Change) int {
 		if up {
 			return x.After - x.Before
@@ -101,19 +103,24 @@ func extreme(c *assessment.Computed, of func(*assessment.Route) []assessment.Cha
 			if size(x) <= 0 {
 				continue
 			}
-			if best == nil || size(x) > size(best) || size(x) == size(best) && x.Length > best.Length {
-				best = x
+			switch {
+			case best == nil || size(x) > size(best) || size(x) == size(best) && x.Length > best.Length:
+				best, trains = x, slices.Clone(x.Trains)
+			case size(x) == size(best) && x.Length == best.Length:
+				trains = append(trains, x.Trains...)
 			}
 		}
 	}
 	if best == nil {
 		return ""
 	}
+	slices.Sort(trains)
+	trains = slices.Compact(trains)
 	word := "up to"
 	if !up {
 		word = "down to"
 	}
-	return fmt.Sprintf("%s %s km/h over %s km (%s)", word, signed(best.After-best.Before), km(best.Length), trainNames(c, best.Trains, 3))
+	return fmt.Sprintf("%s %s km/h over %s km (%s)", word, signed(best.After-best.Before), km(best.Length), trainNames(c, trains, 3))
 }
 
 func trackSentence(c *assessment.Computed) string {

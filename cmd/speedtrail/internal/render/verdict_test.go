@@ -34,6 +34,20 @@ func TestVerdictOnHidden(t *testing.T) {
 	}
 }
 
+// All trains of the largest step are named, whatever rows bring it to them.
+func TestVerdictOnExtremes(t *testing.T) {
+	change := func(train, after int, length int64) assessment.Change {
+		return assessment.Change{Before: 100, After: after, Length: length, Trains: []int{train}}
+	}
+	c := &assessment.Computed{
+		Trains: []assessment.Train{{ID: "A", Fate: "kept"}, {ID: "B", Fate: "kept"}, {ID: "C", Fate: "kept"}},
+		Routes: []assessment.Route{{Changes: []assessment.Change{change(2, 120, 3000000), change(0, 120, 3000000), change(1, 120, 2000000), change(1, 110, 9000000), change(0, 120, 3000000)}}},
+	}
+	if got, want := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Changes }), "up to +20 km/h over 3.000 km (A, C)"; got != want {
+		t.Errorf("got %q, want %q", got, want)
+	}
+}
+
 // What a declaration has seen keeps apart what is hidden today.
 func TestSeenWords(t *testing.T) {
 	for _, x := range []struct {
