@@ -82,7 +82,7 @@ func TestAgent(t *testing.T) {
 		t.Errorf("%s%s", got.out, got.errors)
 	}
 	sign("--role", "approver", "--signer", "bea@tarn.example").want(t, 0)
-	if got := call(t, in("register")...).want(t, 0); !strings.Contains(got.out, "approve approver by bea@tarn.example") {
+	if got := call(t, in("register")...).want(t, 0); !strings.Contains(got.out, "approve as approver by bea@tarn.example") {
 		t.Error(got.out)
 	}
 	call(t, in("verify")...).want(t, 0)

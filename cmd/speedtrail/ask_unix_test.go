@@ -118,7 +118,12 @@ func TestAsk(t *testing.T) {
 				}
 			}
 			status := ended(t, c, 20*time.Second)
-			time.Sleep(50 * time.Millisecond) // what it wrote last is on its way
+			for range 500 { // what it wrote last is on its way
+				if strings.Contains(s.String(), test.message) {
+					break
+				}
+				time.Sleep(10 * time.Millisecond)
+			}
 			if !status.Exited() || status.ExitStatus() != test.status || !strings.Contains(s.String(), test.message) {
 				t.Errorf("exited %v, status %d\n%s", status.Exited(), status.ExitStatus(), &s)
 			}
@@ -128,7 +133,7 @@ func TestAsk(t *testing.T) {
 			if after, err := term.GetState(int(theirs.Fd())); err != nil || !reflect.DeepEqual(after, before) {
 				t.Errorf("the terminal is %v, it was %v (%v)", after, before, err)
 			}
-			signed := strings.Contains(call(t, in("register")...).want(t, 0).out, "approve checker by ada")
+			signed := strings.Contains(call(t, in("register")...).want(t, 0).out, "approve as checker by ada")
 			if signed != (test.status == 0) {
 				t.Errorf("signed: %v", signed)
 			}

@@ -81,7 +81,7 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 		return err
 	}
 	defer repo.Close()
-	record = record && target != workingTree
+	record = record && base != workingTree && target != workingTree
 	var into recording
 	defer into.close()
 	since := fromBase
@@ -111,7 +111,7 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 }
 
 // errShallow says that the clone does not hold all commits between two revisions.
-var errShallow = &callError{"the clone is shallow and its history ends between base and target: who prepared the change cannot be known", "git fetch --unshallow brings the rest; --no-record assesses without it"}
+var errShallow = &callError{"the clone is shallow and its history ends between base and target: who prepared the change cannot be known, nor perhaps whether the base came before", "git fetch --unshallow brings the rest; --no-record assesses without it"}
 
 // compute makes the document of two revisions. What is recorded, or held against
 // what is recorded, needs the whole history between them.
@@ -181,10 +181,11 @@ func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, s
 		if err != nil {
 			return false, err
 		}
-		in.BaseIsAncestor, err = repo.IsAncestor(ctx, from.commit.Hash, head.Hash)
-		return true, err
+		in.BaseIsAncestor, complete, err = ancestor(ctx, repo, from, head)
+		return complete, err
 	}
-	if in.BaseIsAncestor, err = repo.IsAncestor(ctx, from.commit.Hash, to.commit.Hash); err != nil {
+	known := true
+	if in.BaseIsAncestor, known, err = ancestor(ctx, repo, from, to.commit); err != nil {
 		return false, err
 	}
 	if !in.BaseIsAncestor {
@@ -207,7 +208,18 @@ func (a *app) descent(ctx context.Context, repo *revision.Repo, from, to side, s
 	for _, p := range repo.Preparers(commits) {
 		in.Preparers = append(in.Preparers, assessment.Person{Name: validText(p.Name), Email: validText(p.Email)})
 	}
-	return complete, nil
+	return complete && known, nil
+}
+
+// ancestor tells whether base came before target. Where a shallow clone ends before
+// that can be seen it is not known, and taken to be so: it is no finding against
+// the change.
+func ancestor(ctx context.Context, repo *revision.Repo, base side, target revision.Commit) (is, known bool, err error) {
+	is, err = repo.IsAncestor(ctx, base.commit.Hash, target.Hash)
+	if errors.Is(err, revision.ErrShallow) {
+		return true, false, nil
+	}
+	return is, true, err
 }
 
 // unread finds routes among the folders that were left unread, all of which are

@@ -2,8 +2,10 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"io/fs"
+	"os"
 	"path"
 	"path/filepath"
 	"strings"
@@ -198,9 +200,19 @@ func (a *app) openLedgerWith(ctx context.Context, o ledger.Options) (*ledger.Led
 		// With --ledger, a ledger can be read where there is no repository.
 		return nil, err
 	}
+	_, missing := os.Lstat(file)
+	begun := o.Create && errors.Is(missing, fs.ErrNotExist)
+	if folder := filepath.Dir(file); begun && a.ledger != "" {
+		if _, err := os.Stat(folder); errors.Is(err, fs.ErrNotExist) {
+			return nil, badCall("correct --ledger, or make the folder first", "the ledger %s is not there, nor is its folder", file)
+		}
+	}
 	l, err := ledger.Open(ctx, file, o)
 	if err != nil {
 		return nil, fmt.Errorf("ledger %s: %w", file, err)
+	}
+	if begun && a.ledger != "" {
+		a.remark("! there was no ledger %s; a new one was begun", source.Visible(file))
 	}
 	return l, nil
 }

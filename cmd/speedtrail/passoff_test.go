@@ -49,6 +49,19 @@ func TestShallowCloneHidesNoPreparer(t *testing.T) {
 	if got := call(t, "--repo", shallow, "assess", base, "merged", "--no-record"); got.status != statusFinding || !strings.Contains(got.errors, "the clone is shallow") {
 		t.Errorf("--no-record: status %d\n%s", got.status, got.errors)
 	}
+	// The clone of a pipeline: one commit of each, with nothing between them.
+	apart := filepath.Join(t.TempDir(), "apart")
+	git(t.TempDir(), "clone", "-q", "--depth", "1", "--branch", "merged", "file://"+filepath.ToSlash(full), apart)
+	git(apart, "fetch", "-q", "--depth", "1", "origin", "tag", "c0")
+	if got := call(t, "--repo", apart, "assess", "c0", "merged"); got.status != statusInput || !strings.Contains(got.errors, "who prepared the change cannot be known") {
+		t.Errorf("apart: status %d\n%s", got.status, got.errors)
+	}
+	for _, target := range []string{"merged", "."} {
+		got := call(t, "--repo", apart, "assess", "c0", target, "--no-record")
+		if got.status != statusFinding || !strings.Contains(got.errors, "the clone is shallow") || strings.Contains(got.out, "base-not-ancestor") || !strings.Contains(got.out, "R1") {
+			t.Errorf("apart, %s: status %d\n%s%s", target, got.status, got.errors, got.out)
+		}
+	}
 	got := call(t, "--repo", shallow, "verify", "--ledger", filepath.Join(full, ".git", "speedtrail", "ledger.db"))
 	if got.status != statusFinding || !strings.Contains(got.out, "cannot be computed anew: the clone is shallow") {
 		t.Errorf("verify: status %d\n%s%s", got.status, got.out, got.errors)

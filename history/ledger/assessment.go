@@ -55,10 +55,14 @@ type Change struct {
 const largeBody = 8 << 20
 
 // RecordAssessment appends an assessment. One whose digest is there already
-// adds nothing: added is false and number is that of the one that is there.
+// adds nothing: added is false and number is that of the one that is there. One
+// without both commits, as of a working tree, is refused.
 func (l *Ledger) RecordAssessment(ctx context.Context, now time.Time, r Record) (number int64, added bool, head chain.Head, err error) {
 	if len(r.Body) > largeBody {
 		debug.FreeOSMemory()
+	}
+	if r.Base == "" || r.Target == "" {
+		return 0, false, chain.Head{}, errors.New("an assessment of what is not committed cannot be computed anew, and is not recorded")
 	}
 	err = l.transaction(ctx, func() error {
 		if head, err = l.Head(ctx); err != nil {

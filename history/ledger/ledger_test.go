@@ -537,3 +537,18 @@ func BenchmarkSQLite3Import(b *testing.B) {
 	}
 	b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/rows, "ns/row")
 }
+
+// What is not committed cannot be computed anew, so that nobody could verify it.
+func TestUncommittedIsNotRecorded(t *testing.T) {
+	l := open(t, filepath.Join(t.TempDir(), "ledger.db"))
+	for _, without := range []func(*Record){func(r *Record) { r.Base = "" }, func(r *Record) { r.Target = "" }} {
+		r := record("one", 1)
+		without(&r)
+		if n, added, _, err := l.RecordAssessment(t.Context(), when, r); err == nil {
+			t.Errorf("recorded as %d, %v", n, added)
+		}
+	}
+	if head, err := l.Head(t.Context()); err != nil || head.Seq != 1 {
+		t.Error(head, err)
+	}
+}
