@@ -40,6 +40,17 @@ func TestRemarks(t *testing.T) {
 		t.Errorf("a hash that is none: status %d\n%s", got.status, got.errors)
 	}
 
+	// A mistyped name of a ledger is not taken for a wish to have another one.
+	elsewhere := t.TempDir()
+	got = call(t, in("assess", "c0", "c1", "--ledger", filepath.Join(elsewhere, "absent", "ledger.db"))...)
+	if got.status != statusInput || !strings.Contains(got.errors, "is not there, nor is its folder") {
+		t.Errorf("a ledger in no folder: status %d\n%s", got.status, got.errors)
+	}
+	got = call(t, in("assess", "c0", "c1", "--ledger", filepath.Join(elsewhere, "ledgr.db"))...)
+	if got.status != statusFinding || !strings.Contains(got.errors, "! there was no ledger") {
+		t.Errorf("a new ledger: status %d\n%s", got.status, got.errors)
+	}
+
 	out := filepath.Join(t.TempDir(), "absent", "report.html")
 	got = call(t, in("report", "1", "--out", out)...)
 	if got.status == 0 || !strings.Contains(got.errors, fmt.Sprintf("folder %q", filepath.Dir(out))) || strings.Contains(got.errors, ".report.html") {
