@@ -143,17 +143,22 @@ func Seen(o *Observed, d *Declared) (inside, runOut unit.Distance) {
 // SeenBoth gives what of Seen a declaration holds of other changes in the same
 // place, too, which stand in their order and of which none overlaps another.
 func SeenBoth(o *Observed, others []Observed, d *Declared) (inside, runOut unit.Distance) {
+	if !d.allows(o) {
+		return 0, 0
+	}
 	first := sort.Search(len(others), func(i int) bool { return others[i].To > o.From })
-	for _, x := range others[first:] {
-		if x.From, x.To = max(x.From, o.From), min(x.To, o.To); x.From >= x.To {
-			break
+	for i := first; i < len(others) && others[i].From < o.To; i++ {
+		x := &others[i]
+		if !d.allows(x) {
+			continue
 		}
-		part := *o
-		part.From, part.To = x.From, x.To
-		in, out := Seen(&x, d)
-		ownIn, ownOut := Seen(&part, d)
-		inside += min(in, ownIn)
-		runOut += min(out, ownOut)
+		both := Observed{From: max(x.From, o.From), To: min(x.To, o.To)}
+		inside += overlap(&both, d.From, d.To)
+		for _, own := range d.runOut(o) {
+			for _, other := range d.runOut(x) {
+				runOut += overlap(&both, max(own.From, other.From), min(own.To, other.To))
+			}
+		}
 	}
 	return inside, runOut
 }

@@ -6,6 +6,7 @@ import (
 
 	"pgregory.net/rapid"
 
+	"speedtrail/diff/align"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -21,6 +22,10 @@ func TestSeen(t *testing.T) {
 	upTo := func(to unit.Distance) Declared { return Declared{Directions: codes.Both, From: 0, To: to * m} }
 	with := func(d Declared, change func(*Declared)) Declared { change(&d); return d }
 	from := func(o Observed, from, to unit.Distance) Observed { o.From, o.To = from*m, to*m; return o }
+	undeclared := func(o Observed, from, to unit.Distance) Observed {
+		o.undeclared = []align.Interval{{From: from * m, To: to * m}}
+		return o
+	}
 	lowered := func(o Observed) Observed { o.Raised = false; return o }
 	tests := []struct {
 		name         string
@@ -50,6 +55,8 @@ func TestSeen(t *testing.T) {
 		{"run-out of a row that ends elsewhere", runOut, []Observed{with2(runOut, func(o *Observed) { o.RowEnds = []unit.Distance{210 * m} })}, upTo(200), 0, 0, 30, 0},
 		{"run-out beside a change that is none", runOut, []Observed{with2(runOut, func(o *Observed) { o.RunOut = false })}, upTo(200), 0, 0, 30, 0},
 		{"run-out within the declaration and past it", runOut, []Observed{runOut}, upTo(210), 10, 10, 20, 20},
+		{"run-out that is outside at the beginning of one and at the end of the other", undeclared(runOut, 200, 210), []Observed{undeclared(runOut, 220, 230)}, upTo(200), 0, 0, 20, 10},
+		{"run-out that is outside on other parts", undeclared(runOut, 200, 215), []Observed{undeclared(runOut, 215, 230)}, upTo(200), 0, 0, 15, 0},
 		{"run-out of a train that goes further", from(runOut, 200, 250), []Observed{runOut}, upTo(200), 0, 0, 30, 30},
 	}
 	for _, test := range tests {
