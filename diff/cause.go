@@ -238,7 +238,7 @@ func bindings(r *schema.Route, layer profile.Layer, lines []int, d codes.Directi
 	for _, line := range lines {
 		row, v := rowOf(r, layer, line, class)
 		if row != nil && v != 0 && row.Directions.Has(d) {
-			all = append(all, placed{binding{first(row.From), first(row.To), row.Delay, v}, row.Start, row.End})
+			all = append(all, placed{binding{row.From.Plain(), row.To.Plain(), row.Delay, v}, row.Start, row.End})
 		}
 	}
 	slices.SortFunc(all, func(a, b placed) int {
@@ -261,14 +261,6 @@ func delayed(delay bool) int {
 		return 1
 	}
 	return 0
-}
-
-// first writes a position without the mark of a first occurrence.
-func first(p chainage.Point) chainage.Point {
-	if p.Occurrence == 1 {
-		p.Occurrence = 0
-	}
-	return p
 }
 
 // rowOf finds the row of a layer that stands in a line, and the speed that it

@@ -154,9 +154,13 @@ func (d *Declared) acrossTracks(common []align.Cell) {
 func span(t *chainage.Track, s schema.Span) (*align.Interval, string) {
 	var at [2]unit.Distance
 	for i, p := range [...]chainage.Point{s.From, s.To} {
-		d, err := find(t, p)
+		d, err := t.Find(p)
 		if err != nil {
-			return nil, [...]string{"from_km ", "to_km "}[i] + p.String() + " is " + err.Error()
+			why := [...]string{"from_km ", "to_km "}[i] + p.String() + " is " + err.Error()
+			if errors.Is(err, chainage.ErrAmbiguous) {
+				why += "; write " + p.Chainage.KM() + "#1 or another occurrence"
+			}
+			return nil, why
 		}
 		at[i] = d
 	}
@@ -164,19 +168,6 @@ func span(t *chainage.Track, s schema.Span) (*align.Interval, string) {
 		return nil, "to_km " + s.To.String() + " does not lie after from_km " + s.From.String() + " along the track"
 	}
 	return &align.Interval{From: at[0], To: at[1]}, ""
-}
-
-// find gives the running distance of a position that was written for this or
-// another revision of the track: the first occurrence may be marked or not.
-func find(t *chainage.Track, p chainage.Point) (unit.Distance, error) {
-	d, err := t.Locate(p)
-	switch {
-	case errors.Is(err, chainage.ErrNotRepeated) && p.Occurrence == 1:
-		return t.Locate(chainage.Point{Chainage: p.Chainage})
-	case errors.Is(err, chainage.ErrAmbiguous):
-		return 0, errors.New(err.Error() + "; write " + p.Chainage.KM() + "#1 or another occurrence")
-	}
-	return d, err
 }
 
 // reconcileRoute cuts the changes of a route at the limits of the declarations.

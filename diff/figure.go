@@ -326,5 +326,5 @@ func (p *pair) curves(f *Figures, trains []Train) {
 
 // samePlace tells whether two rows are for the same stretch.
 func samePlace(a, b *schema.Row) bool {
-	return first(a.From) == first(b.From) && first(a.To) == first(b.To)
+	return a.From.Plain() == b.From.Plain() && a.To.Plain() == b.To.Plain()
 }

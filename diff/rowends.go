@@ -45,7 +45,7 @@ func (r *Route) rowEnds(c *Change) (ends []unit.Distance, unplaced bool) {
 			if c.Direction == codes.Reverse {
 				p = row.From
 			}
-			end, err := find(r.Target.Track, p)
+			end, err := r.Target.Track.Find(p)
 			if err != nil {
 				unplaced = true
 				continue
@@ -117,7 +117,7 @@ func (r *Route) heldRows(d codes.Direction) []heldRow {
 				if d == codes.Reverse {
 					p = x.From
 				}
-				if end, err := find(r.Target.Track, p); err == nil {
+				if end, err := r.Target.Track.Find(p); err == nil {
 					list = append(list, heldRow{layer, line, end})
 				}
 			}

@@ -103,10 +103,7 @@ func point(text string) chainage.Point {
 	if err != nil {
 		return chainage.Point{}
 	}
-	if p.Occurrence == 1 {
-		p.Occurrence = 0
-	}
-	return p
+	return p.Plain()
 }
 
 // lineRows takes the lines of a text that are not blank or comments.
@@ -138,7 +135,7 @@ func SameValue(column, a, b string) bool {
 	if errA != nil || errB != nil {
 		return false
 	}
-	return p.Chainage == q.Chainage && max(p.Occurrence, 1) == max(q.Occurrence, 1)
+	return p.Plain() == q.Plain()
 }
 
 // isText tells whether a cell is a text that may look like a number. In TOML all

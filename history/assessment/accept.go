@@ -57,11 +57,11 @@ func (c *collector) accept() []Acceptance {
 
 // cover marks the findings that lie wholly inside an entry.
 func (c *collector) cover(a schema.Acceptance, t *chainage.Track) (n int) {
-	from, err := locate(t, a.Span.From)
+	from, err := t.Find(a.Span.From)
 	if err != nil {
 		return 0
 	}
-	to, err := locate(t, a.Span.To)
+	to, err := t.Find(a.Span.To)
 	if err != nil {
 		return 0
 	}
@@ -87,14 +87,4 @@ func written(t *chainage.Track, km string) (unit.Distance, error) {
 		return 0, err
 	}
 	return t.Locate(p)
-}
-
-// locate finds a position that may carry the mark of a first occurrence where
-// nothing repeats.
-func locate(t *chainage.Track, p chainage.Point) (unit.Distance, error) {
-	at, err := t.Locate(p)
-	if err != nil && p.Occurrence == 1 {
-		return t.Locate(chainage.Point{Chainage: p.Chainage})
-	}
-	return at, err
 }

@@ -47,6 +47,15 @@ func ParsePoint(s string) (Point, error) {
 	return Point{d, int(n)}, nil
 }
 
+// Plain gives the position without the mark of a first occurrence: with and without
+// it, two revisions mean the same point where only one of them repeats the posts.
+func (p Point) Plain() Point {
+	if p.Occurrence == 1 {
+		p.Occurrence = 0
+	}
+	return p
+}
+
 // String writes the position as it is read, with three to six decimals.
 func (p Point) String() string {
 	if p.Occurrence == 0 {

@@ -130,6 +130,16 @@ func (t *Track) Locate(p Point) (unit.Distance, error) {
 	return at, nil
 }
 
+// Find is Locate for a position that was written for this or for another revision
+// of the track: a first occurrence may be marked where nothing repeats.
+func (t *Track) Find(p Point) (unit.Distance, error) {
+	at, err := t.Locate(p)
+	if errors.Is(err, ErrNotRepeated) && p.Occurrence == 1 {
+		return t.Locate(p.Plain())
+	}
+	return at, err
+}
+
 // Skipped gives the jump among whose missing posts a chainage lies; false where it
 // lies among none.
 func (t *Track) Skipped(km unit.Distance) (Jump, bool) {

@@ -297,3 +297,37 @@ func TestSegmentsJoin(t *testing.T) {
 		}
 	})
 }
+
+// Find takes what was written for another revision of the track: what both mean by
+// a first occurrence, and nothing else.
+func TestFind(t *testing.T) {
+	tr := track(t, "1", "3.5", "2 1.95", "2.95 3")
+	for _, c := range []located{
+		{"1.5", 500 * unit.Metre, nil},
+		{"1.5#1", 500 * unit.Metre, nil},
+		{"1.5#2", 0, ErrNotRepeated},
+		{"1.97#1", 970 * unit.Metre, nil},
+		{"1.97#2", 1020 * unit.Metre, nil},
+		{"1.97#3", 0, ErrNoOccurrence},
+		{"1.97", 0, ErrAmbiguous},
+		{"2.975#1", 0, ErrMissingPosts},
+		{"4#1", 0, ErrOutside},
+	} {
+		p, err := ParsePoint(c.point)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if at, err := tr.Find(p); at != c.want || !errors.Is(err, c.err) {
+			t.Errorf("%s is at %d, %v; want %d, %v", c.point, at, err, c.want, c.err)
+		}
+	}
+}
+
+func TestPlain(t *testing.T) {
+	for text, want := range map[string]string{"1.5": "1.500", "1.5#1": "1.500", "1.5#2": "1.500#2"} {
+		p, err := ParsePoint(text)
+		if got := p.Plain().String(); err != nil || got != want {
+			t.Errorf("%s gives %s, %v; want %s", text, got, err, want)
+		}
+	}
+}
