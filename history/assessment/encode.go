@@ -8,12 +8,24 @@ import (
 	"strings"
 
 	"speedtrail/history/ledger"
+	"speedtrail/schema"
 	"speedtrail/schema/source"
+	"speedtrail/schema/unit"
 )
 
-// check proves that every index points to something, so that nothing that is
-// written from a stored document can go wrong.
+// farthest is beyond every running distance, in millimetres.
+const farthest = int64(schema.MaxJumps+1) * 2 * unit.MaxKM * int64(unit.Kilometre)
+
+// check proves that every index points to something, and that what charts are drawn
+// from lies where a chart can, so that nothing that is written from a stored document
+// can go wrong.
 func (c *Computed) check() error {
+	speeds := func(list ...int) bool {
+		return !slices.ContainsFunc(list, func(v int) bool { return v < 0 || v > int(unit.MaxSpeed) })
+	}
+	ascend := func(list ...int64) bool {
+		return slices.IsSorted(list) && list[0] >= 0 && list[len(list)-1] <= farthest
+	}
 	within := func(n int, list ...int) bool {
 		return !slices.ContainsFunc(list, func(i int) bool { return i < 0 || i >= n })
 	}
@@ -27,6 +39,9 @@ func (c *Computed) check() error {
 				x := &list[k]
 				if !within(len(r.Sources), x.BeforeSource, x.AfterSource) || !within(len(r.Causes), x.Cause) || !within(len(c.Trains), x.Trains...) || !c.hasPieces(r, x.Pieces) {
 					return fmt.Errorf("change %d of route %s points to what is not there", k, source.Quote(r.ID))
+				}
+				if !speeds(x.Before, x.After) || !ascend(x.Start, x.Start+x.Length) {
+					return fmt.Errorf("change %d of route %s has a speed or a place that cannot be", k, source.Quote(r.ID))
 				}
 			}
 		}
@@ -48,10 +63,16 @@ func (c *Computed) check() error {
 		if !within(len(c.Routes), s.Route) || len(s.Changes) == 0 || !within(len(c.Routes[s.Route].Changes), s.Changes...) || !within(len(c.Trains), s.Trains...) {
 			return fmt.Errorf("stretch %d points to what is not there", i)
 		}
-		for _, x := range s.After {
+		for _, x := range slices.Concat(s.Before, s.After) {
 			if !within(len(c.Routes[s.Route].Sources), x.Source) {
 				return fmt.Errorf("stretch %d points to what is not there", i)
 			}
+			if !speeds(x.Speed) || !ascend(x.From, x.To) {
+				return fmt.Errorf("stretch %d has a speed or a place that cannot be", i)
+			}
+		}
+		if !ascend(s.WindowFrom, s.From, s.To, s.WindowTo, s.RouteLength) {
+			return fmt.Errorf("stretch %d has a place that cannot be", i)
 		}
 	}
 	for i, x := range c.Figures.Curves {
