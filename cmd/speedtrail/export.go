@@ -6,7 +6,6 @@ import (
 	"fmt"
 	"io"
 	"os"
-	"path/filepath"
 
 	"github.com/spf13/cobra"
 
@@ -73,16 +72,7 @@ file with --ledger. "-" reads standard input.`,
 }
 
 func (a *app) importLedger(ctx context.Context, name string) error {
-	file := a.ledger
-	if file == "" {
-		repo, err := a.openRepo()
-		if err != nil {
-			return err
-		}
-		file = a.ledgerPath(repo)
-		repo.Close()
-	}
-	file, err := filepath.Abs(file)
+	file, err := a.ledgerFile()
 	if err != nil {
 		return err
 	}

@@ -182,22 +182,8 @@ func (a *app) openLedgerAt(ctx context.Context, at time.Time) (*ledger.Ledger, e
 }
 
 func (a *app) openLedgerWith(ctx context.Context, o ledger.Options) (*ledger.Ledger, error) {
-	file := a.ledger
-	repo, err := a.openRepo()
-	if err == nil {
-		defer repo.Close()
-		if file, err = filepath.Abs(a.ledgerPath(repo)); err != nil {
-			return nil, err
-		}
-		tracked, err := repo.Tracked(file)
-		if err != nil {
-			return nil, err
-		}
-		if tracked {
-			return nil, badCall("choose another place with --ledger", "the ledger %s is a file that Git tracks; a checkout would replace it", file)
-		}
-	} else if file == "" {
-		// With --ledger, a ledger can be read where there is no repository.
+	file, err := a.ledgerFile()
+	if err != nil {
 		return nil, err
 	}
 	_, missing := os.Lstat(file)
@@ -215,4 +201,61 @@ func (a *app) openLedgerWith(ctx context.Context, o ledger.Options) (*ledger.Led
 		a.remark("! there was no ledger %s; a new one was begun", source.Visible(file))
 	}
 	return l, nil
+}
+
+// ledgerFile gives the ledger's file as an absolute path. One that Git tracks is
+// refused, and one of which Git tracks a file that SQLite puts beside it: a checkout
+// would replace it, and SQLite would play back what a commit brings as a transaction
+// that was stopped.
+func (a *app) ledgerFile() (string, error) {
+	file := a.ledger
+	repo, err := a.openRepo()
+	switch {
+	case err == nil:
+		defer repo.Close()
+		file = a.ledgerPath(repo)
+	case file == "":
+		// With --ledger, a ledger can be read where there is no repository.
+		return "", err
+	}
+	if file, err = filepath.Abs(file); err != nil {
+		return "", err
+	}
+	tracked, err := a.tracked(repo, file)
+	switch {
+	case err != nil:
+		return "", err
+	case tracked == file:
+		return "", badCall("choose another place with --ledger", "the ledger %s is a file that Git tracks; a checkout would replace it", file)
+	case tracked != "":
+		return "", badCall("take that file out of the repository; if a command has used the ledger since it came, restore a backup", "%s is a file that Git tracks, and SQLite would change the ledger by it", tracked)
+	}
+	return file, nil
+}
+
+// tracked gives the first file that Git tracks of a database and of what SQLite looks
+// for beside it; empty where it tracks none. repo may be nil.
+func (a *app) tracked(repo *revision.Repo, file string) (string, error) {
+	repos := []*revision.Repo{repo}
+	if a.ledger != "" {
+		// It may lie in another repository than the one that is asked about.
+		around, err := revision.Open(filepath.Dir(file))
+		if err == nil {
+			defer around.Close()
+			repos = append(repos, around)
+		} else if !errors.Is(err, revision.ErrNoRepository) {
+			return "", err
+		}
+	}
+	for _, r := range repos {
+		if r == nil {
+			continue
+		}
+		for _, ending := range []string{"", "-journal", "-wal", "-shm"} {
+			if tracked, err := r.Tracked(file + ending); err != nil || tracked {
+				return file + ending, err
+			}
+		}
+	}
+	return "", nil
 }

@@ -209,9 +209,9 @@ func (a *app) indexed(ctx context.Context, repo *revision.Repo, reader *trace.Re
 	}
 	if a.ledger != "" {
 		// Inside the working tree it could be a file of the user.
-		if tracked, err := repo.Tracked(file); err != nil {
+		if tracked, err := a.tracked(repo, file); err != nil {
 			return nil, err
-		} else if tracked {
+		} else if tracked != "" {
 			return nil, index.ErrForeign
 		}
 	}
