@@ -95,7 +95,7 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 		return err
 	}
 	defer l.Close()
-	line, _, err := history.ReadLine(ctx, l)
+	line, err := a.readLine(ctx, l)
 	if err != nil {
 		return err
 	}
@@ -199,7 +199,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 		return err
 	}
 	defer l.Close()
-	line, _, err := history.ReadLine(ctx, l)
+	line, err := a.readLine(ctx, l)
 	if err != nil {
 		return err
 	}

@@ -169,7 +169,7 @@ func (a *app) inforceRecord(ctx context.Context, rev string, since time.Time, ro
 	if err != nil {
 		return err
 	}
-	line, _, err := history.ReadLine(ctx, l)
+	line, err := a.readLine(ctx, l)
 	if err != nil {
 		return err
 	}

@@ -74,7 +74,7 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 		return err
 	}
 	defer l.Close()
-	line, _, err := history.ReadLine(ctx, l)
+	line, err := a.readLine(ctx, l)
 	if err != nil {
 		return err
 	}

@@ -11,6 +11,8 @@ import (
 	"strings"
 	"time"
 
+	"speedtrail/history"
+	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
 	"speedtrail/history/ledger"
 	"speedtrail/history/revision"
@@ -202,6 +204,23 @@ func (a *app) openLedgerWith(ctx context.Context, o ledger.Options) (*ledger.Led
 	}
 	return l, nil
 }
+
+// readLine follows the line of approval, and says which entries do not count: what
+// is shown without one of them could be the opposite of what somebody signed.
+func (a *app) readLine(ctx context.Context, l *ledger.Ledger) (*approval.Line, error) {
+	line, problems, err := history.ReadLine(ctx, l)
+	for i, p := range problems {
+		if i == mostNotCounting {
+			a.remark("! and %d more entries that do not count", len(problems)-i)
+			break
+		}
+		a.remark("! it does not count, speedtrail verify says more: %v", p)
+	}
+	return line, err
+}
+
+// mostNotCounting is how many entries that do not count are named.
+const mostNotCounting = 5
 
 // ledgerFile gives the ledger's file as an absolute path. One that Git tracks is
 // refused, and one of which Git tracks a file that SQLite puts beside it: a checkout

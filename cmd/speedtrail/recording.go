@@ -5,7 +5,6 @@ import (
 	"errors"
 	"slices"
 
-	"speedtrail/history"
 	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
 	"speedtrail/history/ledger"
@@ -28,7 +27,7 @@ func (r *recording) open(ctx context.Context, a *app) error {
 		return err
 	}
 	r.ledger = l
-	r.line, _, err = history.ReadLine(ctx, l)
+	r.line, err = a.readLine(ctx, l)
 	return err
 }
 
@@ -40,7 +39,7 @@ func (r *recording) make(ctx context.Context, a *app) (err error) {
 	if r.ledger, err = a.openLedger(ctx, true); err != nil {
 		return err
 	}
-	r.line, _, err = history.ReadLine(ctx, r.ledger)
+	r.line, err = a.readLine(ctx, r.ledger)
 	return err
 }
 

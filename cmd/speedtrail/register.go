@@ -10,7 +10,6 @@ import (
 	"github.com/spf13/cobra"
 
 	"speedtrail/cmd/speedtrail/internal/render"
-	"speedtrail/history"
 	"speedtrail/history/approval"
 	"speedtrail/history/ledger"
 	"speedtrail/schema/source"
@@ -62,7 +61,7 @@ func (a *app) register(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	line, _, err := history.ReadLine(ctx, l)
+	line, err := a.readLine(ctx, l)
 	if err != nil {
 		return err
 	}

@@ -7,7 +7,6 @@ import (
 	"github.com/spf13/cobra"
 
 	"speedtrail/cmd/speedtrail/internal/render"
-	"speedtrail/history"
 	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
 	"speedtrail/history/chain"
@@ -43,7 +42,7 @@ func (a *app) report(ctx context.Context, number int64) error {
 		return err
 	}
 	defer l.Close()
-	doc, rec, err := recorded(ctx, l, number)
+	doc, rec, err := a.recorded(ctx, l, number)
 	if err != nil {
 		return err
 	}
@@ -63,8 +62,8 @@ func (a *app) remarkFile() {
 }
 
 // recorded reads an assessment back from the ledger.
-func recorded(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.Document, render.Record, error) {
-	doc, x, line, err := documentOf(ctx, l, number)
+func (a *app) recorded(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.Document, render.Record, error) {
+	doc, x, line, err := a.documentOf(ctx, l, number)
 	if err != nil {
 		return nil, render.Record{}, err
 	}
@@ -75,7 +74,7 @@ func recorded(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.
 // to the document, the row of a number and the entries one after the other: that they
 // lead to the same one is asked of the bytes, since a row, or the index by which it is
 // found, can be altered, also while this reads.
-func documentOf(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.Document, *approval.Assessment, *approval.Line, error) {
+func (a *app) documentOf(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.Document, *approval.Assessment, *approval.Line, error) {
 	_, e, err := l.Assessment(ctx, number)
 	if err != nil {
 		return nil, nil, nil, err
@@ -84,7 +83,7 @@ func documentOf(ctx context.Context, l *ledger.Ledger, number int64) (*assessmen
 	if err != nil {
 		return nil, nil, nil, err
 	}
-	line, _, err := history.ReadLine(ctx, l)
+	line, err := a.readLine(ctx, l)
 	if err != nil {
 		return nil, nil, nil, err
 	}

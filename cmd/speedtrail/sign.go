@@ -80,7 +80,7 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 		return err
 	}
 	defer l.Close()
-	doc, x, line, err := documentOf(ctx, l, number)
+	doc, x, line, err := a.documentOf(ctx, l, number)
 	if err != nil {
 		return err
 	}

@@ -6,7 +6,6 @@ import (
 	"os"
 
 	"speedtrail/cmd/speedtrail/internal/render"
-	"speedtrail/history"
 	"speedtrail/history/ledger"
 	"speedtrail/history/revision"
 	"speedtrail/history/trace"
@@ -28,7 +27,7 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 	if err != nil {
 		return nil, err
 	}
-	line, _, err := history.ReadLine(ctx, l)
+	line, err := t.app.readLine(ctx, l)
 	if err != nil {
 		return nil, err
 	}
