@@ -132,7 +132,7 @@ type way struct {
 }
 
 // firstSigned gives the entry with which all roles had signed an assessment for the
-// first time; 0 where they never had.
+// first time, while nobody's rejection of the content stood; 0 where that never was.
 func (l *Line) firstSigned(a *Assessment) int64 {
 	at, ok := l.begun[a.Number]
 	if !ok {
@@ -144,17 +144,23 @@ func (l *Line) firstSigned(a *Assessment) int64 {
 
 func (l *Line) firstMet(a *Assessment) int64 {
 	approve := map[part]int{}
-	for _, i := range l.ofAssessment[a.Number] {
+	rejects := map[string]bool{} // who rejects the content
+	for _, i := range l.ofContent[a.content()] {
 		r := &l.signOffs[i]
-		x := part{r.Role, r.Signer}
-		if r.Decision != signoff.Approve {
-			delete(approve, x)
-			continue
+		if r.Decision == signoff.Approve {
+			delete(rejects, r.Signer)
+		} else {
+			rejects[r.Signer] = true
 		}
-		if _, ok := approve[x]; !ok {
-			approve[x] = i
+		if r.Assessment == a.Number {
+			x := part{r.Role, r.Signer}
+			if r.Decision != signoff.Approve {
+				delete(approve, x)
+			} else if _, ok := approve[x]; !ok {
+				approve[x] = i
+			}
 		}
-		if met(a, approve, r.inForce) {
+		if len(rejects) == 0 && met(a, approve, r.inForce) {
 			return r.Entry.Seq
 		}
 	}

@@ -53,3 +53,23 @@ func TestRepeatedApproval(t *testing.T) {
 	s.must(s.signOff(one, "bea", "approver", "approve"))
 	newest("rejected, and approved again")
 }
+
+// A release that somebody rejects is not complete, whoever else signs it: its policy
+// turns when the rejection is cleared, not before a release that was approved
+// meanwhile.
+func TestTurnOfWhatIsRejected(t *testing.T) {
+	strict, note := ordinary().role("approver 2 preparer,checker"), ordinary().key("ada2")
+	s := anchored(t, ordinary())
+	one := s.assess("a", "b", ordinary(), strict, nil)
+	two := s.assess("a", "c", ordinary(), note, nil)
+	s.must(s.signOff(one, "fin", "checker", "reject"))
+	s.must(s.signOff(one, "ada", "checker", "approve"))
+	s.must(s.signOff(one, "bea", "approver", "approve"))
+	s.state(one, Rejected)
+	s.approve(two)
+	s.must(s.signOff(one, "fin", "checker", "approve"))
+	s.state(one, Approved)
+	if s.line.Newest(".").Hash != strict.hash() {
+		t.Error("the release that came last does not turn the policy")
+	}
+}
