@@ -42,3 +42,15 @@ func TestCalledOtherwise(t *testing.T) {
 	}
 	sign("! the assessment calls its base c0, which this repository does not know", "calls its target c1, which in this")
 }
+
+// TestStatementShown: what is signed is shown with every mark that a terminal does not
+// show.
+func TestStatementShown(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60}, []time.Time{at})
+	got := call(t, "--repo", repo, "anchor", "c0", "--write", filepath.Join(t.TempDir(), "statement"), "--role", "checker", "--signer", "ada@tarn.example", "--reason", "ro\u200bot").want(t, 0)
+	if !strings.Contains(got.errors, `reason: ro\u200bot`+"\n") || strings.Contains(got.errors, "\u200b") {
+		t.Errorf("%q", got.errors)
+	}
+}

@@ -110,7 +110,8 @@ func (s *signing) finish(ctx context.Context, a *app, statement signoff.Statemen
 	if err != nil {
 		return nil, badCall("values are one line of visible text; the reason has at most 500 bytes", "%v", err)
 	}
-	fmt.Fprintf(a.err, "The statement:\n\n%s\n", text)
+	// A mark without width would let one name pass for another.
+	fmt.Fprintf(a.err, "The statement:\n\n%s\n", source.VisibleLines(string(text)))
 	var signature []byte
 	if key != nil {
 		if err := s.ask(ctx, a); err != nil {
