@@ -92,3 +92,28 @@ func TestDeceivingCharacters(t *testing.T) {
 		t.Error(err)
 	}
 }
+
+// The names of routes that would stand for something else in the list of a statement.
+func TestRoutesOfStatement(t *testing.T) {
+	for name, routes := range map[string][]string{
+		"the word for all": {AllRoutes}, "two in one": {"R1,R2"}, "none beside one": {"R1", ""}, "none": {""}, "a blank before": {"R1", " R2"}, "a blank behind": {"R1 ", "R2"},
+	} {
+		s := example(InForce)
+		s.Routes = routes
+		if _, err := s.Text(); !errors.Is(err, ErrMalformed) {
+			t.Errorf("%s, written: %v", name, err)
+		}
+	}
+	s := example(InForce)
+	s.Routes = []string{"R1"}
+	text, err := s.Text()
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, list := range []string{"R1,", ",R1", "R1,,R2", "R1, R2", "R1 ,R2"} {
+		forged := strings.Replace(string(text), "routes: R1\n", "routes: "+list+"\n", 1)
+		if _, err := Parse([]byte(forged)); forged == string(text) || !errors.Is(err, ErrMalformed) {
+			t.Errorf("%q, read: %v", list, err)
+		}
+	}
+}

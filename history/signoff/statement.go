@@ -206,7 +206,8 @@ func (s Statement) Text() ([]byte, error) {
 		return nil, malformed("the reason has %d bytes, at most %d are allowed", len(s.Reason), MaxReason)
 	}
 	for _, r := range s.Routes {
-		if r == AllRoutes || strings.Contains(r, ",") {
+		// No name, as behind a comma at the end, would stand for the whole network.
+		if r == AllRoutes || strings.Contains(r, ",") || r == "" || strings.TrimFunc(r, unicode.IsSpace) != r {
 			return nil, malformed("route %q cannot be named in a statement", r)
 		}
 	}
