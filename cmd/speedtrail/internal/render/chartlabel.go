@@ -187,7 +187,7 @@ func fill(items []string) []string {
 	line := ""
 	for _, s := range items {
 		s = clip(s, legendLength)
-		if line != "" && len([]rune(line))+len([]rune(s))+3 > legendLength {
+		if line != "" && Cells(line)+Cells(s)+3 > legendLength {
 			lines = append(lines, line)
 			line = ""
 		}
@@ -202,10 +202,16 @@ func fill(items []string) []string {
 	return lines
 }
 
-// clip cuts a long text.
+// clip cuts a long text to a number of letters, of which wide ones count twice.
 func clip(s string, most int) string {
-	if r := []rune(s); len(r) > most {
-		return string(r[:most-1]) + "\u2026"
+	if Cells(s) <= most {
+		return s
+	}
+	n := 0
+	for i, r := range s {
+		if n += Cells(string(r)); n > most-1 {
+			return s[:i] + "\u2026"
+		}
 	}
 	return s
 }
@@ -214,6 +220,9 @@ func clip(s string, most int) string {
 func (d *drawing) strips(letters []placeLetter, cells []cell, above bool, legend []string) {
 	y := float64(plotBottom + 42)
 	d.add(`<text x="8" y="%.1f" fill="#333">places</text>`, y+11)
+	if len(letters) == 0 {
+		d.add(`<text x="%d" y="%.1f" fill="#555">none given here</text>`, plotLeft, y+11)
+	}
 	for _, l := range letters {
 		d.add(`<path d="M%.1f %.1fv-5" stroke="#111" stroke-width="1.5"/>`, l.from, y)
 		if l.extent {

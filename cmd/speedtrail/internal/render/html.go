@@ -1,6 +1,7 @@
 package render
 
 import (
+	"bytes"
 	"crypto/sha256"
 	_ "embed" // the page's parts
 	"encoding/base64"
@@ -43,31 +44,34 @@ var pageTemplate = sync.OnceValue(func() *template.Template {
 
 // page is what the template shows.
 type page struct {
-	D         *assessment.Document
-	C         *assessment.Computed
-	R         Record
-	Title     string
-	State     string
-	Verdict   string
-	Contents  []pageLink
-	Base      string
-	Target    string
-	Stretches []pageStretch
-	ShownRows int
-	AllRows   int
-	LeftOut   int // stretches that are not drawn
-	Lines     []pageFile
-	LinesLeft int
-	Caution   string
-	CSS       template.CSS
-	JS        template.JS
-	Policy    string
-	Routes    []string // of the stretches that are drawn and of the changes that are hidden
-	Undrawn   []string // routes that differ and have none
-	Trains    []string
-	Track     []pageTrack
-	Altered   []pageTrain
-	Times     map[string]string
+	D       *assessment.Document
+	C       *assessment.Computed
+	R       Record
+	Title   string
+	State   string
+	Verdict string
+	// JSONCommand is the command that writes all of it, after a comma; empty for one
+	// that is not recorded.
+	JSONCommand string
+	Contents    []pageLink
+	Base        string
+	Target      string
+	Stretches   []pageStretch
+	ShownRows   int
+	AllRows     int
+	LeftOut     int // stretches that are not drawn
+	Lines       []pageFile
+	LinesLeft   int
+	Caution     string
+	CSS         template.CSS
+	JS          template.JS
+	Policy      string
+	Routes      []string // of the stretches that are drawn and of the changes that are hidden
+	Undrawn     []string // routes that differ and have none
+	Trains      []string
+	Track       []pageTrack
+	Altered     []pageTrain
+	Times       map[string]string
 
 	Findings       []pageFindings
 	Acceptances    []string
@@ -152,6 +156,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	header := "not recorded"
 	if r.Number != 0 {
 		p.State = r.State
+		p.JSONCommand = fmt.Sprintf(", speedtrail report %d --format json", r.Number)
 		header = fmt.Sprintf("assessment %d, digest %s", r.Number, short(r.Digest))
 	}
 	p.CSS = template.CSS(strings.Replace(pageCSS, "HEADER", header, 1))
@@ -186,7 +191,20 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 		}
 	}
 	p.fillContents()
-	return pageTemplate().Execute(w, p)
+	return executed(w, pageTemplate(), p)
+}
+
+// executed writes a page whole.
+func executed(w io.Writer, t *template.Template, p any) error {
+	var b bytes.Buffer
+	if err := t.Execute(&b, p); err != nil {
+		return err
+	}
+	if hasFromTheRight(b.Bytes()) {
+		return writeMarked(w, b.Bytes())
+	}
+	_, err := w.Write(b.Bytes())
+	return err
 }
 
 // inlineHash names an inline part in a content security policy.
@@ -212,7 +230,7 @@ func (p *page) fillStretches() {
 		names := trainNames(p.C, g.trains, 0)
 		out := pageStretch{
 			ID: id, Route: r.ID, RouteName: r.Name, Direction: s.Direction, Names: names,
-			TrainIDs: strings.ReplaceAll(names, ", ", "\n"),
+			TrainIDs: filterIDs(p.C, g.trains),
 		}
 		if len(s.Trains) < len(g.trains) {
 			out.Drawn = trainNames(p.C, s.Trains, 0)
@@ -239,6 +257,15 @@ func (p *page) fillStretches() {
 		p.Stretches = append(p.Stretches, out)
 	}
 	p.LeftOut += p.C.Stretches.LeftOut
+}
+
+// filterIDs joins the ids of trains as the filter compares them: as they are shown.
+func filterIDs(c *assessment.Computed, trains []int) string {
+	ids := make([]string, len(trains))
+	for i, t := range trains {
+		ids[i] = source.Visible(c.Trains[t].ID)
+	}
+	return strings.Join(ids, "\n")
 }
 
 // appendRow adds a change to a table. Changes that read the same are one row, for

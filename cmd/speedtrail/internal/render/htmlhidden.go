@@ -54,7 +54,7 @@ func (p *page) hiddenTable(r *assessment.Route, list []assessment.Change, n int)
 		out.IDs = append(out.IDs, hiddenAnchor(n+k))
 	}
 	slices.Sort(trains)
-	out.TrainIDs = strings.ReplaceAll(trainNames(p.C, slices.Compact(trains), 0), ", ", "\n")
+	out.TrainIDs = filterIDs(p.C, slices.Compact(trains))
 	return out
 }
 

@@ -32,17 +32,48 @@
     folded.forEach(function (d) { d.open = false; });
     folded = [];
   });
+  Array.prototype.forEach.call(document.querySelectorAll(".scripted"), function (x) { x.hidden = false; });
+  // What is wider than its place can be moved with the keys.
+  var scrollers = Array.prototype.slice.call(document.querySelectorAll(".wide, .figure"));
+  var fit = function () {
+    scrollers.forEach(function (x) {
+      if (x.scrollWidth > x.clientWidth + 1) {
+        x.tabIndex = 0;
+        x.setAttribute("role", "group");
+        x.setAttribute("aria-label", "wider than the screen, move it sideways");
+      } else ["tabindex", "role", "aria-label"].forEach(function (name) { x.removeAttribute(name); });
+    });
+  };
+  window.addEventListener("resize", fit);
+  fit();
   var read = function (s) { return s ? s.split(";").map(function (p) { return p.split(",").map(Number); }) : []; };
   var at = function (list, s) { for (var i = 0; i < list.length; i++) if (s >= list[i][0] && s < list[i][1]) return list[i]; return null; };
   Array.prototype.forEach.call(document.querySelectorAll("svg.chart"), function (svg) {
     var d = svg.dataset, before = read(d.before), after = read(d.after), km = read(d.km);
     var out = svg.closest(".panel").querySelector(".pointer");
-    svg.addEventListener("pointermove", function (e) {
-      var box = svg.getBoundingClientRect(), x = (e.clientX - box.left) * d.width / box.width;
-      var s = Number(d.from) + (x - d.left) / (d.right - d.left) * (d.to - d.from);
+    var from = Number(d.from), to = Number(d.to), here = from;
+    var show = function (s) {
       var segment = at(km, s), b = at(before, s), a = at(after, s);
       out.textContent = segment && a ? "km " + ((segment[2] + s - segment[0]) / 1e6).toFixed(3).replace("-", "\u2212") + ":  before " + (b ? b[2] + " km/h" : "no track") + ", after " + a[2] + " km/h" : "";
+    };
+    svg.addEventListener("pointermove", function (e) {
+      var box = svg.getBoundingClientRect(), x = (e.clientX - box.left) * d.width / box.width;
+      show(from + (x - d.left) / (d.right - d.left) * (to - from));
     });
     svg.addEventListener("pointerleave", function () { out.textContent = ""; });
+    // The arrow keys do what the pointer does, a hundredth of the chart at a time.
+    svg.tabIndex = 0;
+    svg.addEventListener("focus", function () { // read aloud only for those who ask by keys
+      out.setAttribute("aria-live", "polite");
+      if (svg.matches(":focus-visible")) show(here);
+    });
+    svg.addEventListener("blur", function () { out.setAttribute("aria-live", "off"); out.textContent = ""; });
+    svg.addEventListener("keydown", function (e) {
+      var step = { ArrowLeft: -1, ArrowRight: 1, Home: -101, End: 101 }[e.key];
+      if (!step || e.altKey || e.ctrlKey || e.metaKey) return;
+      here = Math.min(to - 1, Math.max(from, here + step * (e.shiftKey ? 10 : 1) * (to - from) / 100));
+      show(here);
+      e.preventDefault();
+    });
   });
 })();

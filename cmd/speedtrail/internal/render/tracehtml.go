@@ -21,6 +21,7 @@ var traceTemplate = sync.OnceValue(func() *template.Template {
 
 const traceCSS = `
 .gap > * { color: #555; font-style: italic; } .aside > * { color: #555; }
+@media (min-width: 721px) { .dates td:nth-child(6), .point td:nth-child(4) { min-width: 14rem; } .dates td:nth-child(7) { min-width: 10rem; } .dates td:nth-child(8) { min-width: 11rem; } }
 @media screen and (max-width: 720px) {
   .gaps.stack td { grid-column: 1 / -1; }
   .point tr:not(.gap) > td:nth-child(1)::before { content: "committed"; } .point tr:not(.gap) > td:nth-child(2)::before { content: "before, km/h"; } .point tr:not(.gap) > td:nth-child(3)::before { content: "after, km/h"; } .point tr:not(.gap) > td:nth-child(4)::before { content: "commit"; } .point tr:not(.gap) > td:nth-child(5)::before { content: "because of"; } .point tr:not(.gap) > td:nth-child(6)::before { content: "request, assessment"; }
@@ -112,7 +113,7 @@ func TraceHTML(w io.Writer, t *Trace) error {
 	for _, c := range t.Cut {
 		p.Cut = append(p.Cut, short(t.Commits[c].Hash))
 	}
-	return traceTemplate().Execute(w, p)
+	return executed(w, traceTemplate(), p)
 }
 
 // row writes what is said of a commit.

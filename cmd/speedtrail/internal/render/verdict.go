@@ -166,6 +166,10 @@ func trainSentence(c *assessment.Computed) string {
 	return "Reference trains: " + strings.Join(words, "; ") + "."
 }
 
+// mostVerdictTrains is how long the clause about the first change outside may be with
+// the trains in it.
+const mostVerdictTrains = 120
+
 // outsideSentence says how much lies outside what the requests declare.
 func outsideSentence(c *assessment.Computed) string {
 	outside, unseen, trains, first := 0, 0, 0, ""
@@ -174,6 +178,9 @@ func outsideSentence(c *assessment.Computed) string {
 		case assessment.Outside:
 			if outside++; outside == 1 {
 				what, _, _ := strings.Cut(f.Text, ":")
+				if head, _, ok := strings.Cut(what, " ("); ok && Cells(what) > mostVerdictTrains {
+					what = head // the finding itself names them
+				}
 				first = " First: " + findingPlace(f) + ", " + what + "."
 			}
 		case assessment.Unseen:

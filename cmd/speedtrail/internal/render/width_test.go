@@ -88,3 +88,13 @@ func TestFamilyPlaces(t *testing.T) {
 		t.Errorf("got\n%s\nwant\n%s", strings.Join(got, "\n"), strings.Join(want, "\n"))
 	}
 }
+
+func TestClip(t *testing.T) {
+	for _, x := range []struct{ text, want string }{
+		{"short", "short"}, {"seven letters", "seven\u2026"}, {"\u5317\u7ebf\u6539", "\u5317\u7ebf\u6539"}, {"\u5317\u7ebf\u6539\u5efa", "\u5317\u7ebf\u2026"},
+	} {
+		if got := clip(x.text, 6); got != x.want {
+			t.Errorf("%q: got %q, want %q", x.text, got, x.want)
+		}
+	}
+}
