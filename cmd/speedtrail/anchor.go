@@ -23,7 +23,7 @@ func (a *app) anchorCommand() *cobra.Command {
 	var yes bool
 	c := &cobra.Command{
 		Use:   "anchor REV --sign ROLE=KEYFILE ... --reason TEXT",
-		Short: "put the policy of a revision in force as the root of the line of approval",
+		Short: "put a policy in force as the root of the line of approval",
 		Long: `anchor records the policy (signoff.toml and allowed_signers) and the data of a
 revision as the root from which approvals start. There is one for each ledger
 and data set folder. It is signed by people who satisfy every role of the policy:

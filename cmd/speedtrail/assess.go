@@ -28,7 +28,7 @@ func (a *app) assessCommand() *cobra.Command {
 	var requests []string
 	c := &cobra.Command{
 		Use:   "assess BASE [TARGET]",
-		Short: "compare two revisions: who is faster or slower, where, because of which row",
+		Short: "compare two revisions: who is faster or slower, where and why",
 		Long: `assess compiles the effective speed profile of every reference train at two
 revisions, lists where they differ with the rows behind it, records the result
 in the ledger and prints it.

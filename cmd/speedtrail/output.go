@@ -152,5 +152,25 @@ func (a *app) remark(format string, args ...any) {
 		return
 	}
 	a.endProgress()
-	fmt.Fprintln(a.err, source.VisibleLines(fmt.Sprintf(format, args...)))
+	fmt.Fprintln(a.err, a.fitted(source.VisibleLines(fmt.Sprintf(format, args...))))
+}
+
+// fitted wraps a text for the terminal to which errors and remarks go, else it is left
+// alone: a program that reads them finds each in one line.
+func (a *app) fitted(text string) string {
+	f, ok := a.err.(*os.File)
+	if !ok || !term.IsTerminal(int(f.Fd())) {
+		return text
+	}
+	width, _, err := term.GetSize(int(f.Fd()))
+	if err != nil || width <= 0 {
+		return text
+	}
+	lines := strings.Split(text, "\n")
+	for i, line := range lines {
+		if !strings.HasPrefix(line, " ") { // what is set in was laid out
+			lines[i] = render.Hanging(line, width, "  ")
+		}
+	}
+	return strings.Join(lines, "\n")
 }

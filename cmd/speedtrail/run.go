@@ -41,9 +41,9 @@ func run(ctx context.Context, args []string, stdin io.Reader, stdout, stderr io.
 // printError writes an error and what to do about it. Faults of a data set
 // stand a line each.
 func (a *app) printError(err error) {
-	fmt.Fprintf(a.err, "speedtrail: %s\n", source.VisibleLines(err.Error()))
+	fmt.Fprintln(a.err, a.fitted("speedtrail: "+source.VisibleLines(err.Error())))
 	if hint := hintOf(err); hint != "" {
-		fmt.Fprintf(a.err, "hint: %s\n", source.VisibleLines(hint))
+		fmt.Fprintln(a.err, a.fitted("hint: "+source.VisibleLines(hint)))
 	}
 }
 
@@ -117,6 +117,8 @@ remarks to standard error.`,
 		return a.spareLedger(c)
 	}
 	withCaution(root)
+	// The usual template lets long lines of options run on.
+	root.SetUsageTemplate(strings.ReplaceAll(root.UsageTemplate(), ".FlagUsages", ".FlagUsagesWrapped 80"))
 	return root
 }
 
@@ -133,9 +135,21 @@ func version() string {
 func withCaution(root *cobra.Command) {
 	help := root.HelpFunc()
 	root.SetHelpFunc(func(c *cobra.Command, args []string) {
+		c.Long = filled(c.Long, 80)
 		help(c, args)
 		fmt.Fprintf(c.OutOrStdout(), "\n%s\n", wrap("Caution: "+render.Caution, 80))
 	})
+}
+
+// filled wraps the paragraphs of a text; those whose lines are set in stay.
+func filled(text string, width int) string {
+	paragraphs := strings.Split(text, "\n\n")
+	for i, p := range paragraphs {
+		if !strings.Contains("\n"+p, "\n ") {
+			paragraphs[i] = wrap(p, width)
+		}
+	}
+	return strings.Join(paragraphs, "\n\n")
 }
 
 // wrap breaks a text into lines of at most width columns.

@@ -33,7 +33,7 @@ func (a *app) traceCommand() *cobra.Command {
 	var direction string
 	c := &cobra.Command{
 		Use:   "trace --route R (--at KM | --from KM --to KM) [REV]",
-		Short: "since when, by whom and why: the past of the speed at a point or on a stretch",
+		Short: "since when, by whom and why a speed holds at a place",
 		Long: `trace lists every revision at which the effective speed at a point changed, the
 newest first: before, after, the commit with its author and dates, the rows that
 governed as they stood, the change requests in play and the recorded assessments
@@ -53,8 +53,8 @@ the releases, where work is merged into one branch.
 What is read is kept in an index beside the ledger. It can be deleted at any
 time; --no-index does without and gives the same answer.`,
 		Example: `  speedtrail trace --route SM1 --at 12.4 --train EXP-3
-  speedtrail trace --route SM1 --from 10 --to 20 --train EXP-3 --direction nominal
-  speedtrail trace --route SM1 --at 31.180#2 --first-parent --out trail.html release-4`,
+  speedtrail trace --route SM1 --from 10 --to 20 --train EXP-3
+  speedtrail trace --route SM1 --at 31.180#2 --first-parent --out trail.html v4`,
 		Args: arguments(0, 1),
 		RunE: func(c *cobra.Command, args []string) error {
 			call.rev = "HEAD"

@@ -8,6 +8,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
@@ -101,10 +102,11 @@ func (a *app) printValidation(w io.Writer, s side, data *schema.Dataset, faults 
 		_, err := fmt.Fprintln(w, faults.Error())
 		return err
 	}
-	_, err := fmt.Fprintf(w, "%s: no fault in %q (%d %s, %d reference %s, %d change %s)\n", source.Visible(s.label()), data.Name,
+	line := fmt.Sprintf("%s: no fault in %q (%d %s, %d reference %s, %d change %s)", source.Visible(s.label()), data.Name,
 		len(data.Routes), plural(len(data.Routes), "route", "routes"),
 		len(data.Trains), plural(len(data.Trains), "train", "trains"),
 		len(data.Requests), plural(len(data.Requests), "request", "requests"))
+	_, err := fmt.Fprintln(w, render.Hanging(line, a.style().Width, "  "))
 	return err
 }
 

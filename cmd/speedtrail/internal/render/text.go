@@ -168,9 +168,12 @@ func (p *textWriter) findings() {
 			p.findingRest("    ", f)
 		}
 	}
+	gap := "\n"
 	for _, a := range p.c.Accepted {
 		if a.State != "used" && a.State != "unread" {
+			p.printf("%s", gap)
 			p.paragraph("  ", acceptanceWords(a))
+			gap = ""
 		}
 	}
 }
@@ -413,7 +416,7 @@ func familyPlaces(list []family) []string {
 // family writes changes that differ only in their trains and one of their ends.
 func (p *textWriter) family(r *assessment.Route, f family, place string, pictures pictures) {
 	x := f.all[0]
-	step := signed(x.After - x.Before)
+	step := fmt.Sprintf("%4s", signed(x.After-x.Before))
 	if p.s.Color {
 		color := "31" // raised: look first
 		if x.After < x.Before {
@@ -421,7 +424,7 @@ func (p *textWriter) family(r *assessment.Route, f family, place string, picture
 		}
 		step = "\x1b[" + color + "m" + step + "\x1b[0m"
 	}
-	line := fmt.Sprintf("%s %3d to %3d km/h  ", padded(place, 34), x.Before, x.After)
+	line := fmt.Sprintf("%s %3d to %3d km/h ", padded(place, 34), x.Before, x.After)
 	var remarks []string
 	if x.RunOut {
 		remarks = append(remarks, "run-out")

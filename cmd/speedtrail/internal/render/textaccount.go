@@ -160,8 +160,8 @@ func (p *textWriter) sources() {
 				continue
 			}
 			title()
-			p.paragraph(fmt.Sprintf("  %5s ", rowLines(d)), rowWords(f, d))
-			p.paragraph("        ", effectWords(p.c, d, results[assessment.Cause{File: i, Row: k}]))
+			p.printf("  %s\n", Hanging(source.Visible("line "+rowLines(d)+" "+rowWords(f, d)), p.s.Width, "      "))
+			p.paragraph("      ", "effect: "+effectWords(p.c, d, results[assessment.Cause{File: i, Row: k}]))
 		}
 	}
 	if shown > mostTextRows {
