@@ -145,35 +145,55 @@ func chart(w io.Writer, s Style, p Profile) error {
 		}
 		fmt.Fprintf(w, "%s \u2502%s\n", label, strings.TrimRight(b.String(), " "))
 	}
-	fmt.Fprintf(w, "   0 \u2514%s\n", strings.Repeat("\u2500", columns))
-	_, err := fmt.Fprintln(w, axis(p, columns))
+	line, labels := axis(p, columns)
+	_, err := fmt.Fprintf(w, "   0 \u2514%s\n%s\n", line, labels)
 	return err
 }
 
-// axis writes chainages below a chart, at about every twelfth column, and both
-// readings of a chainage jump.
-func axis(p Profile, columns int) string {
-	line := []rune(strings.Repeat(" ", columns+12))
-	end := -2
-	put := func(column int, label string) {
-		if column < end+2 || column+len([]rune(label)) > len(line) {
-			return
+// axis gives the line below a chart and the chainages below that: of both ends, both
+// readings of a chainage jump, and round kilometres at about every eleventh column
+// where there is room. A label begins at its column, which a mark on the line tells.
+func axis(p Profile, columns int) (line, labels string) {
+	marks, below := []rune(strings.Repeat("\u2500", columns)), []rune(strings.Repeat(" ", columns+12))
+	put := func(column int, label string, mark rune) {
+		r := []rune(label)
+		for i := max(0, column-1); i < column+len(r)+1; i++ {
+			if i >= len(below) || below[i] != ' ' {
+				return
+			}
 		}
-		copy(line[column:], []rune(label))
-		end = column + len([]rune(label)) - 1
+		copy(below[column:], r)
+		if mark != 0 {
+			marks[column] = mark
+		}
 	}
-	first, last := p.Pieces[0], p.Pieces[len(p.Pieces)-1]
-	put(0, minus(first.From))
-	lastLabel := minus(last.To)
-	limit := columns - len([]rune(lastLabel)) - 2
+	first, last := minus(p.Pieces[0].From), minus(p.Pieces[len(p.Pieces)-1].To)
+	put(0, first, 0)
+	put(columns-len([]rune(last)), last, 0)
+	at := func(distance int64) int { return int(distance * int64(columns) / p.length()) }
 	for i, s := range p.Segments {
-		if c := int(s.From * int64(columns) / p.length()); i > 0 && c < limit-8 {
+		if i > 0 {
 			before := p.Segments[i-1]
-			put(c, minus(km(before.Chainage+before.To-before.From))+"|"+minus(km(s.Chainage)))
+			put(at(s.From), minus(km(before.Chainage+before.To-before.From))+"|"+minus(km(s.Chainage)), '\u253c')
 		}
 	}
-	put(columns-len([]rune(lastLabel)), lastLabel)
-	return "  km  " + strings.TrimRight(string(line), " ")
+	step := tickSteps[len(tickSteps)-1]
+	for _, s := range tickSteps {
+		if s*int64(columns) >= 11*p.length() {
+			step = s
+			break
+		}
+	}
+	for _, s := range p.Segments {
+		c := (s.Chainage + step - 1) / step * step
+		if s.Chainage < 0 {
+			c = s.Chainage / step * step
+		}
+		for ; c < s.Chainage+s.To-s.From; c += step {
+			put(at(s.From+c-s.Chainage), minus(km(c)), '\u252c')
+		}
+	}
+	return string(marks), "  km  " + strings.TrimRight(string(below), " ")
 }
 
 // plainTable makes a table with a rule below its head and nothing else.

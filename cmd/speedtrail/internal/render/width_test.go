@@ -98,3 +98,19 @@ func TestClip(t *testing.T) {
 		}
 	}
 }
+
+// Below a chart stand both ends, both readings of jumps, and round kilometres between
+// them, none over another.
+func TestAxis(t *testing.T) {
+	p := Profile{
+		Pieces:   []Piece{{From: "-0.400", To: "12.000", End: 11_900_000}},
+		Segments: []assessment.Segment{{Chainage: -400_000, From: 0, To: 4_600_000}, {Chainage: 4_500_000, From: 4_600_000, To: 12_100_000}},
+	}
+	line, labels := axis(p, 72)
+	if want := "  km  \u22120.400        2.000        4.200|4.500           8.000            12.000"; labels != want {
+		t.Errorf("labels\n%s, want\n%s", labels, want)
+	}
+	if want := "\u2500\u2500\u2500\u2500\u2500\u2500\u2500\u2500\u2500\u2500\u2500\u2500\u2500\u2500\u252c"; !strings.HasPrefix(line, want) || strings.Count(line, "\u252c") != 2 || strings.Count(line, "\u253c") != 1 || Cells(line) != 72 {
+		t.Errorf("line %s", line)
+	}
+}
