@@ -9,6 +9,7 @@ import (
 	"speedtrail/history/chain"
 	"speedtrail/history/signoff"
 	"speedtrail/schema"
+	"speedtrail/schema/source"
 )
 
 // Tolerance is by how much the clock of a signer may be ahead.
@@ -200,6 +201,9 @@ func nearly(err error, name string, known []string) error {
 	near := schema.Nearest(name, known)
 	if len(near) == 0 {
 		return err
+	}
+	for i := range near {
+		near[i] = source.Visible(near[i])
 	}
 	return &hinted{err, "did you mean " + strings.Join(near, " or ") + "?"}
 }

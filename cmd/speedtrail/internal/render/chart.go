@@ -167,7 +167,7 @@ func (d *drawing) axis() {
 			break
 		}
 	}
-	free := float64(plotLeft - 20) // the right end of the last label
+	free := 24.0 // the right end of the last label, at first of that of the axis
 	for i, s := range f.Segments {
 		first := (s.Chainage + step - 1) / step * step
 		if s.Chainage < 0 {
@@ -182,9 +182,10 @@ func (d *drawing) axis() {
 			x := d.x(s.From + c - s.Chainage)
 			d.add(`<path d="M%.1f %dv5" stroke="#111"/>`, x, plotBottom)
 			label := minus(km(c))
-			if half := float64(len([]rune(label))) * letterWidth / 2; x-half > free+6 && x+half < chartWidth {
-				d.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, x, plotBottom+18, label)
-				free = x + half
+			half := float64(len([]rune(label))) * letterWidth / 2
+			if middle := min(x, chartWidth-4-half); middle-half > free+6 { // at the edge it stands a little aside
+				d.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, middle, plotBottom+18, label)
+				free = middle + half
 			}
 		}
 		if i > 0 {

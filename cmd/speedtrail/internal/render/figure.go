@@ -85,10 +85,17 @@ func profileFigure(p Profile) *figure {
 	return f
 }
 
+// The title of a picture: letters to a line, and its height.
+const (
+	titleLength = 108
+	titleHeight = 18
+)
+
 // ProfileSVG draws a profile as one SVG file; several are drawn one below the
 // other.
 func ProfileSVG(w io.Writer, list ...Profile) error {
 	type part struct {
+		title  []string
 		text   string
 		height int
 	}
@@ -99,20 +106,25 @@ func ProfileSVG(w io.Writer, list ...Profile) error {
 		text := f.svg(fmt.Sprintf("p%d", i))
 		height := 0
 		fmt.Sscanf(text[strings.Index(text, `viewBox="`):], `viewBox="0 0 960 %d"`, &height)
-		parts = append(parts, part{text, height + 34})
-		total += height + 34
+		// Whole: it says which train it is and which restrictions count.
+		title := Wrap(p.title(), titleLength)
+		parts = append(parts, part{title, text, height})
+		total += height + 16 + titleHeight*len(title)
 	}
 	if _, err := fmt.Fprintf(w, `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %d %d" font-family="system-ui, sans-serif">`+"\n<rect width=\"100%%\" height=\"100%%\" fill=\"#fff\"/>\n", chartWidth, total); err != nil {
 		return err
 	}
 	y := 0
-	for i, p := range parts {
-		fmt.Fprintf(w, `<text x="8" y="%d" font-size="14" font-weight="600">%s</text>`+"\n", y+20, esc(clip(list[i].title(), 120)))
-		inner := strings.Replace(p.text, "<svg ", fmt.Sprintf(`<svg y="%d" width="%d" height="%d" `, y+30, chartWidth, p.height-34), 1)
+	for _, p := range parts {
+		for _, line := range p.title {
+			y += titleHeight
+			fmt.Fprintf(w, `<text x="8" y="%d" font-size="14" font-weight="600">%s</text>`+"\n", y+2, esc(line))
+		}
+		inner := strings.Replace(p.text, "<svg ", fmt.Sprintf(`<svg y="%d" width="%d" height="%d" `, y+12, chartWidth, p.height), 1)
 		if _, err := io.WriteString(w, inner); err != nil {
 			return err
 		}
-		y += p.height
+		y += p.height + 16
 	}
 	_, err := io.WriteString(w, "</svg>\n")
 	return err

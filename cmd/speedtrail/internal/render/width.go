@@ -55,13 +55,13 @@ func Wrap(s string, width int) []string {
 }
 
 // parts cuts a word where a line may end: before and after each letter of two
-// columns.
+// columns, but not before a comma and the like.
 func parts(word string) []string {
 	var list []string
 	start, wide := 0, false
 	for i, r := range word {
 		n := text.RuneWidth(r)
-		if n == 0 { // belongs to the letter before
+		if n == 0 || strings.ContainsRune(",.;:)]\u3001\u3002\uff0c\uff09", r) { // belongs to the letter before
 			continue
 		}
 		if i > start && (wide || n > 1) {

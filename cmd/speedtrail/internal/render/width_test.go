@@ -19,6 +19,7 @@ func TestWrap(t *testing.T) {
 		{"one two  three", 7, []string{"one two", "three"}},
 		{"routes/a-long-one/speed.csv:4 basic", 10, []string{"routes/a-long-one/speed.csv:4", "basic"}},
 		{"\u5317\u7ebf\u6539\u5efa\u5de5\u7a0b ab", 8, []string{"\u5317\u7ebf\u6539\u5efa", "\u5de5\u7a0b ab"}},
+		{"\u5317\u7ebf, \u6539", 4, []string{"\u5317", "\u7ebf,", "\u6539"}},
 		{"R1 \u5317\u7ebf\u6539", 6, []string{"R1 \u5317", "\u7ebf\u6539"}},
 		{"e\u0301e\u0301 e\u0301", 4, []string{"e\u0301e\u0301 e\u0301"}},
 		{"\u221220 \u221230", 7, []string{"\u221220 \u221230"}},
