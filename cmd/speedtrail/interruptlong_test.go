@@ -223,7 +223,7 @@ func TestInterruptLedger(t *testing.T) {
 			if err := c.Process.Signal(signal); err != nil {
 				t.Fatal("the first signal has ended it, though nobody reads what it writes: ", err)
 			}
-			status := ended(t, c, time.Second)
+			status := ended(t, c, 10*time.Second)
 			if !status.Signaled() || status.Signal() != signal {
 				t.Errorf("exited %v, status %d, signal %v", status.Exited(), status.ExitStatus(), status.Signal())
 			}
