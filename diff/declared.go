@@ -129,13 +129,13 @@ func (a *Account) locate(o *Options, x *schema.Declaration, faults *source.Colle
 // acrossTracks gives a declaration, of which only one revision has both ends, its
 // stretch on the other one: that between the outermost points which both have.
 func (d *Declared) acrossTracks(common []align.Cell) {
-	have, other := d.base, &d.target
-	if have == nil {
+	have, other, byTarget := d.base, &d.target, d.base == nil
+	if byTarget {
 		have, other = d.target, &d.base
 	}
 	for _, c := range common {
 		own, there := c.Base, c.Target
-		if d.base == nil {
+		if byTarget {
 			own, there = c.Target, c.Base
 		}
 		from, to := max(have.From, own), min(have.To, own+c.Length)

@@ -12,8 +12,11 @@ import (
 func TestDeclaredAcrossTracks(t *testing.T) {
 	track := func(start, end, jump string) string {
 		text := "id = \"R1\"\nname = \"One\"\nstart_km = " + start + "\nend_km = " + end + "\ndirections = [\"nominal\"]\n"
-		if jump != "" {
-			arriving, leaving, _ := strings.Cut(jump, " ")
+		for jump := range strings.SplitSeq(jump, ", ") {
+			arriving, leaving, ok := strings.Cut(jump, " ")
+			if !ok {
+				continue
+			}
 			text += "[[jump]]\narriving_km = " + arriving + "\nleaving_km = " + leaving + "\n"
 		}
 		return text
@@ -36,6 +39,9 @@ func TestDeclaredAcrossTracks(t *testing.T) {
 			"removed nominal: 9.000-9.500 CR-1/0, 9.500-10.000 outside", "added nominal: outside", "nominal 4.000-7.000 T 80>90: 4.000-7.000 CR-1/0", "CR-1/0 sees T 3000 track 500"}},
 		{"a start that only the target has, before posts that only the base has", side("2", "10", "", 80), asked(side("0", "10", "2.5 2.8", 90), declares("R1", "both", 1, 5, "any", "")), []string{
 			"removed nominal: 2.500-2.800 CR-1/0", "added nominal: 0.000-1.000 outside, 1.000-2.000 CR-1/0", "nominal 4.000-7.000 T 80>90: 4.000-5.000 CR-1/0, 5.000-7.000 outside", "CR-1/0 sees T 1000 track 1300"}},
+		{"a start that only the target has, with posts behind the end that only the base has", side("2", "10", "", 80), asked(side("0", "10", "2.5 2.8, 8 8.3", 90), declares("R1", "both", 1, 5, "any", "")), []string{
+			"removed nominal: 2.500-2.800 CR-1/0", "removed nominal: outside", "added nominal: 0.000-1.000 outside, 1.000-2.000 CR-1/0",
+			"nominal 4.000-7.000 T 80>90: 4.000-5.000 CR-1/0, 5.000-7.000 outside", "CR-1/0 sees T 1000 track 1300"}},
 		{"both ends only in the base, on either side of what both have", side("0", "10", "", 80), asked(side("2", "9", "5 5.5", 90), declares("R1", "both", 1, 9.5, "any", "")), []string{
 			"removed nominal: 0.000-1.000 outside, 1.000-2.000 CR-1/0", "removed nominal: 5.000-5.500 CR-1/0", "removed nominal: 9.000-9.500 CR-1/0, 9.500-10.000 outside",
 			"nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "nominal 5.500-7.000 T 80>90: 5.500-7.000 CR-1/0", "CR-1/0 sees T 2500 track 2000"}},
