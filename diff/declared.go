@@ -4,6 +4,7 @@ import (
 	"encoding/binary"
 	"errors"
 	"slices"
+	"sort"
 
 	"speedtrail/diff/align"
 	"speedtrail/diff/scope"
@@ -174,24 +175,32 @@ func span(t *chainage.Track, s schema.Span) (*align.Interval, string) {
 func (a *Account) reconcileRoute(index int) {
 	r := &a.Routes[index]
 	r.Pieces = [][]scope.Piece{nil} // the first: no declaration holds any of it
-	var target, track [2][]scope.Declared
-	var owners, trackOwners [2][]int
+	var target []scope.Declared
+	var owners []int
+	var track [2][]scope.Declared
+	var trackOwners [2][]int
 	for i := range a.Declared {
 		d := &a.Declared[i]
-		if d.Route != index {
+		if d.Route != index || d.base == nil && d.target == nil {
 			continue
 		}
 		x := &a.Requests[d.Request].Declare[d.Declaration]
+		// A side that has nothing of it has an empty stretch, in which nothing lies.
+		var sides [2]align.Interval
 		for side, interval := range [...]*align.Interval{d.base, d.target} {
 			if interval == nil {
 				continue
 			}
-			s := scope.Declared{Directions: x.Span.Directions, From: interval.From, To: interval.To, Effect: x.Effect, Trains: d.trains}
-			target[side], owners[side] = append(target[side], s), append(owners[side], i)
+			sides[side] = *interval
 			if x.Effect == schema.AnyEffect && d.trains == nil {
+				s := scope.Declared{Directions: x.Span.Directions, From: interval.From, To: interval.To, Effect: x.Effect}
 				track[side], trackOwners[side] = append(track[side], s), append(trackOwners[side], i)
 			}
 		}
+		target = append(target, scope.Declared{
+			Directions: x.Span.Directions, From: sides[1].From, To: sides[1].To, Effect: x.Effect, Trains: d.trains, Base: &sides[0],
+		})
+		owners = append(owners, i)
 	}
 	for i := range r.Track {
 		t := &r.Track[i]
@@ -206,7 +215,7 @@ func (a *Account) reconcileRoute(index int) {
 			a.Declared[trackOwners[side][k]].Track += inside
 		}
 	}
-	if len(target[1]) == 0 {
+	if len(target) == 0 {
 		return
 	}
 	type eyes struct {
@@ -214,6 +223,10 @@ func (a *Account) reconcileRoute(index int) {
 		train     int
 	}
 	visible := map[eyes][]scope.Observed{}
+	var common []align.Cell
+	if r.Base != nil && r.Target != nil {
+		common = align.Tracks(r.Base.Track, r.Target.Track).Common
+	}
 	for masked, list := range [...][]Change{r.Changes, r.Masked} {
 		for i := range list {
 			c := &list[i]
@@ -221,15 +234,17 @@ func (a *Account) reconcileRoute(index int) {
 				Direction: c.Direction, From: c.From, To: c.To, Train: c.Train, TrainLength: a.Trains[c.Train].Length,
 				Raised: c.Raised(), RunOut: c.RunOut,
 			}
-			o.RowEnds, o.Unplaced = r.rowEnds(c)
+			o.RowEnds = r.rowEnds(c)
 			if o.RunOut && o.Raised {
-				o.RowEnds = append(o.RowEnds, r.holding(c, a.Trains[c.Train].Train, masked == 1)...)
+				o.Ahead = ahead(common, c.From)
+				gone, same := r.holding(c, o.Ahead, a.Trains[c.Train].Train, masked == 1)
+				o.RowEnds, o.Same = append(o.RowEnds, gone...), same
 			}
-			o.Prepare(target[1])
-			c.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, target[1])[0], owners[1])
+			o.Prepare(target)
+			c.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, target)[0], owners)
 			e := eyes{c.Direction, c.Train}
-			for k := range target[1] {
-				d := &target[1][k]
+			for k := range target {
+				d := &target[k]
 				inside, runOut := scope.Seen(&o, d)
 				if masked == 1 {
 					// What is seen today, and goes further without temporary
@@ -243,7 +258,7 @@ func (a *Account) reconcileRoute(index int) {
 				if inside+runOut == 0 {
 					continue
 				}
-				s := a.Declared[owners[1][k]].seenBy(c.Train)
+				s := a.Declared[owners[k]].seenBy(c.Train)
 				if masked == 1 {
 					s.Hidden += inside + runOut
 					continue
@@ -261,6 +276,13 @@ func (a *Account) reconcileRoute(index int) {
 			slices.SortFunc(d.Seen, func(x, y Seen) int { return x.Train - y.Train })
 		}
 	}
+}
+
+// ahead gives by how much a point of the target's track that both have lies further
+// on than on the base's.
+func ahead(common []align.Cell, at unit.Distance) unit.Distance {
+	i := sort.Search(len(common), func(i int) bool { return common[i].Target+common[i].Length > at })
+	return common[i].Target - common[i].Base
 }
 
 // seenBy gives the entry of a train, a new one where it has none.

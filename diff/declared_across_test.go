@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"strings"
 	"testing"
+
+	"speedtrail/diff"
 )
 
 // A declaration of which one revision has an end, and the other has not, holds on
@@ -48,4 +50,47 @@ func TestDeclaredAcrossTracks(t *testing.T) {
 		{"all of it only in the base", side("0", "10", "", 80), asked(side("2", "10", "", 90), declares("R1", "both", 0, 1, "any", "")), []string{
 			"removed nominal: 0.000-1.000 CR-1/0, 1.000-2.000 outside", "nominal 4.000-7.000 T 80>90: outside", "CR-1/0 sees track 1000"}},
 	}, declaredOf)
+}
+
+// The rows that held a raise back are the base's: they reach as far as they did there,
+// wherever the target's track leaves their ends, and each of them has to end in a
+// declaration (rules.md, Declared against observed; DEVELOPERS.md, Decisions).
+func TestRunOutAcrossTracks(t *testing.T) {
+	// C holds 60 for the front on both sides, so that of B only the run-out is seen.
+	const c = "id,from_km,to_km,speed,train_length_delay\nC,1,4.1,60,no\n"
+	const axle = "from_km,to_km,C2\n"
+	base := func(end string) texts {
+		return texts{"route.toml": oneWay, "speed.csv": "from_km,to_km,basic,train_length_delay\n0,10,100,no\n", "axle-load.csv": axle + "2,4.1,60\n1," + end + ",80\n", "temporary.csv": c}
+	}
+	target := func(jump, row string) texts {
+		arriving, leaving, _ := strings.Cut(jump, " ")
+		return asked(texts{"route.toml": oneWay + "[[jump]]\narriving_km = " + arriving + "\nleaving_km = " + leaving + "\n", "axle-load.csv": axle + row}, declares("R1", "both", 4.05, 4.1, "raise", ""))
+	}
+	only := func(a *diff.Account) string {
+		var lines []string
+		for _, line := range strings.Split(declaredOf(a), "\n") {
+			if strings.Contains(line, "run-out") && !strings.Contains(line, "masked") {
+				lines = append(lines, line)
+			}
+		}
+		return strings.Join(lines, "\n")
+	}
+	const behind = "nominal 4.100-4.300 T 60>100 run-out: 4.100-4.200 outside, 4.200-4.300 CR-1/0 run-out"
+	runAccounts(t, []accountTest{
+		{"the track differs elsewhere", base("4"), target("9 9.1", ""), []string{behind}},
+		{"a row ends among posts that the target lacks", base("4"), target("3.9 4.04", ""), []string{behind}},
+		{"a row ends at a post that the target has twice", base("4"), target("4.01 3.99", ""), []string{behind}},
+		{"a row ends further off on the target's track", base("3.95"), target("4.04 3.96", ""), []string{strings.ReplaceAll(behind, "4.200", "4.150")}},
+		{"a row that is the same lets go because the track is longer", base("4"), target("4.05 4.01", "1,4,80\n"), []string{
+			"nominal 4.100-4.160 T 60>80 run-out: 4.100-4.160 CR-1/0 run-out", "nominal 4.160-4.300 T 60>100 run-out: 4.160-4.200 outside, 4.200-4.300 CR-1/0 run-out"}},
+	}, only)
+	// A row that ends where the target's track does is in a declaration that goes on.
+	runAccounts(t, []accountTest{
+		{"a row behind the end of the target's track", over(ground, texts{"route.toml": strings.Replace(oneWay, "nominal", "reverse", 1), "speed.csv": "from_km,to_km,basic\n0,9,100\n9,10,80\n"}),
+			asked(texts{"route.toml": "id = \"R1\"\nname = \"One\"\nstart_km = 0\nend_km = 9\ndirections = [\"reverse\"]\n", "speed.csv": "from_km,to_km,basic\n0,9,100\n"}, declares("R1", "both", 8.9, 10, "raise", "")),
+			[]string{"reverse 8.800-9.000 T 80>100 run-out: 8.800-8.900 CR-1/0 run-out, 8.900-9.000 CR-1/0"}},
+		{"a declaration behind the end of the target's track", over(ground, texts{"route.toml": strings.Replace(oneWay, "nominal", "reverse", 1), "speed.csv": "from_km,to_km,basic\n0,9,100\n9,10,80\n"}),
+			asked(texts{"route.toml": "id = \"R1\"\nname = \"One\"\nstart_km = 0\nend_km = 9\ndirections = [\"reverse\"]\n", "speed.csv": "from_km,to_km,basic\n0,9,100\n"}, declares("R1", "both", 9, 10, "raise", "")),
+			[]string{"reverse 8.800-9.000 T 80>100 run-out: 8.800-9.000 CR-1/0 run-out"}},
+	}, only)
 }

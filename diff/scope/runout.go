@@ -8,8 +8,10 @@ import (
 	"speedtrail/schema/unit"
 )
 
-// reach gives where the rear of the train carries a row beyond its far end.
+// reach gives where the rear of the train carries a row beyond its far end, on the
+// target's track: as far as on that of the row.
 func (o *Observed) reach(end unit.Distance) align.Interval {
+	end += o.ahead()
 	if o.Direction == codes.Reverse {
 		return align.Interval{From: end - o.TrainLength, To: end}
 	}
@@ -24,25 +26,41 @@ func (o *Observed) Prepare(declared []Declared) {
 	if !o.RunOut || !o.Raised {
 		return
 	}
-	if o.Unplaced {
-		o.undeclared = []align.Interval{{From: o.From, To: o.To}}
-		return
-	}
 	for _, end := range o.RowEnds {
 		if !slices.ContainsFunc(declared, func(d Declared) bool { return d.allows(o) && d.ends(o, end) }) {
 			o.undeclared = append(o.undeclared, o.reach(end))
 		}
 	}
+	for _, end := range o.Same {
+		o.undeclared = append(o.undeclared, o.reach(end))
+	}
 	o.undeclared = union(o.undeclared)
+}
+
+// ahead is how much further on the change lies than on the track of its rows.
+func (o *Observed) ahead() unit.Distance {
+	if o.Raised {
+		return o.Ahead
+	}
+	return 0
+}
+
+// byRows gives the stretch of a declaration on the track of the rows of a change.
+func (d *Declared) byRows(o *Observed) align.Interval {
+	if o.Raised && d.Base != nil {
+		return *d.Base
+	}
+	return align.Interval{From: d.From, To: d.To}
 }
 
 // ends tells whether a row that ends somewhere lies in the declaration: one that
 // ends where the declaration begins does not.
 func (d *Declared) ends(o *Observed, end unit.Distance) bool {
+	on := d.byRows(o)
 	if o.Direction == codes.Reverse {
-		return d.From <= end && end < d.To
+		return on.From <= end && end < on.To
 	}
-	return d.From < end && end <= d.To
+	return on.From < end && end <= on.To
 }
 
 // runOut gives the stretches past the far end in which run-out is inside: as far as
@@ -57,11 +75,11 @@ func (d *Declared) runOut(o *Observed) []align.Interval {
 		if !d.ends(o, end) {
 			continue
 		}
-		x := o.reach(end)
+		x, on := o.reach(end), d.byRows(o)
 		if o.Direction == codes.Reverse {
-			x.To = min(x.To, d.From)
+			x.To = min(x.To, on.From+o.ahead())
 		} else {
-			x.From = max(x.From, d.To)
+			x.From = max(x.From, on.To+o.ahead())
 		}
 		list = append(list, x)
 	}

@@ -27,11 +27,15 @@ type Observed struct {
 	TrainLength unit.Distance
 	Raised      bool
 	RunOut      bool
-	// RowEnds are the far ends, in the direction of travel, of the altered rows
-	// that govern the change.
+	// Ahead: by how much a raise by run-out lies further on on the target's track than
+	// on the base's. The rows that held the train back are rows of the base.
+	Ahead unit.Distance
+	// RowEnds are the far ends, in the direction of travel, of the altered rows that
+	// govern the change, or held it back: for a raise on the base's track.
 	RowEnds []unit.Distance
-	// Unplaced: a row that governs the change ends where the target has no track.
-	Unplaced bool
+	// Same are those of rows that held a raise back and are not altered: the track
+	// differs, and no row that is declared lets the train go.
+	Same []unit.Distance
 
 	// undeclared is where a row holds the raise back that no declaration lets go.
 	undeclared []align.Interval
@@ -43,6 +47,9 @@ type Declared struct {
 	From, To   unit.Distance
 	Effect     schema.Effect
 	Trains     []int // nil: every train
+	// Base is the stretch on the base's track, where a raise by run-out has its rows;
+	// nil: the same running distances.
+	Base *align.Interval
 }
 
 // Outside stands in Piece.By for no declaration.

@@ -7,6 +7,7 @@ import (
 
 	"pgregory.net/rapid"
 
+	"speedtrail/diff/align"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -61,8 +62,20 @@ func TestCut(t *testing.T) {
 			[]Piece{{200 * m, 210 * m, 0, true}, {210 * m, 220 * m, 1, false}, {220 * m, 230 * m, 0, true}, {230 * m, 250 * m, 1, true}}},
 		{"a raise by two rows against the distance", with2(back, func(o *Observed) { o.From, o.RowEnds, o.Raised = 50*m, []unit.Distance{80 * m, 100 * m}, true }), []Declared{all},
 			[]Piece{{50 * m, 80 * m, Outside, false}, {80 * m, 100 * m, 0, true}}},
-		{"a raise by a row that ends where there is no track any more", with2(runOut, func(o *Observed) { o.Raised, o.Unplaced = true, true }), []Declared{all}, []Piece{{200 * m, 230 * m, Outside, false}}},
-		{"a reduction in the same case", with2(runOut, func(o *Observed) { o.Unplaced = true }), []Declared{all}, []Piece{{200 * m, 230 * m, 0, true}}},
+		{"a raise by a row that is the same, and another", with2(runOut, func(o *Observed) { o.Raised, o.Same = true, []unit.Distance{185 * m} }), []Declared{all},
+			[]Piece{{200 * m, 215 * m, Outside, false}, {215 * m, 230 * m, 0, true}}},
+		// The rows of a raise are the base's: they reach as far as they do there, and
+		// end inside by the stretch that the declaration has there.
+		{"a raise further on than on the base", with2(runOut, func(o *Observed) {
+			o.Raised, o.Ahead, o.RowEnds = true, 50*m, []unit.Distance{150 * m, 140 * m}
+		}), []Declared{with(func(d *Declared) { d.Base = &align.Interval{From: 140 * m, To: 150 * m} })},
+			[]Piece{{200 * m, 220 * m, Outside, false}, {220 * m, 230 * m, 0, true}}},
+		{"a raise, declared up to where only the base has track", with2(back, func(o *Observed) { o.Raised, o.RowEnds = true, []unit.Distance{100 * m} }),
+			[]Declared{with(func(d *Declared) { d.From, d.To, d.Base = 80*m, 100*m, &align.Interval{From: 80 * m, To: 150 * m} })},
+			[]Piece{{70 * m, 80 * m, 0, true}, {80 * m, 100 * m, 0, false}}},
+		{"a reduction, declared likewise", with2(back, func(o *Observed) { o.RowEnds = []unit.Distance{100 * m} }),
+			[]Declared{with(func(d *Declared) { d.From, d.To, d.Base = 80*m, 100*m, &align.Interval{From: 80 * m, To: 150 * m} })},
+			[]Piece{{70 * m, 80 * m, Outside, false}, {80 * m, 100 * m, 0, false}}},
 		{"as far as the row reaches, not the declaration", with2(runOut, func(o *Observed) { o.From, o.To = 205*m, 235*m }), []Declared{with(func(d *Declared) { d.To = 205 * m })},
 			[]Piece{{205 * m, 230 * m, 0, true}, {230 * m, 235 * m, Outside, false}}},
 		{"not run-out", with2(runOut, func(o *Observed) { o.RunOut = false }), []Declared{all}, []Piece{{200 * m, 230 * m, Outside, false}}},
