@@ -90,19 +90,20 @@ func figuresOf(a *diff.Account, r *diff.Route) (out Figures) {
 		}
 		out.Crossings = append(out.Crossings, c)
 	}
+	ofRow := map[string][]int{} // indices in out.Curves
 	for _, x := range r.Figures.Curves {
 		f := curveFigure(a, r, &x)
-		same := func(g CurveFigure) bool {
-			trains := slices.Equal(f.Trains, g.Trains)
-			g.Direction, g.Trains = f.Direction, nil
-			h := f
-			h.Trains = nil
-			return trains && reflect.DeepEqual(g, h)
-		}
-		if k := slices.IndexFunc(out.Curves, same); k >= 0 {
-			out.Curves[k].Direction = codes.Both.String()
+		// Both directions of travel may say the same.
+		k := slices.IndexFunc(ofRow[f.Row], func(i int) bool {
+			g := out.Curves[i]
+			g.Direction = f.Direction
+			return reflect.DeepEqual(f, g)
+		})
+		if k >= 0 {
+			out.Curves[ofRow[f.Row][k]].Direction = codes.Both.String()
 			continue
 		}
+		ofRow[f.Row] = append(ofRow[f.Row], len(out.Curves))
 		out.Curves = append(out.Curves, f)
 	}
 	for _, x := range r.Figures.Short {
