@@ -51,7 +51,7 @@ func checkShort(t *testing.T, property func(*rapid.T, short)) {
 		run := newRun(f, m)
 		for i, p := range f {
 			if run.piece(i).peak() < mmps(p.Speed)-1e-6 {
-				_, needed := newRun(lengthened(f, i, 1000*unit.Kilometre), m).Peak(p.From)
+				needed := newRun(lengthened(f, i, 1000*unit.Kilometre), m).Needed(p.From)
 				property(t, short{f, m, i, needed})
 			}
 		}
@@ -79,7 +79,7 @@ func TestNeededLengthByRecomputing(t *testing.T) {
 // The needed length is the one that recomputing gives.
 func TestNeededLength(t *testing.T) {
 	checkShort(t, func(t *rapid.T, s short) {
-		if _, needed := newRun(s.f, s.m).Peak(s.f[s.piece].From); needed != s.needed {
+		if needed := newRun(s.f, s.m).Needed(s.f[s.piece].From); needed != s.needed {
 			t.Fatalf("%v: %s m", s, needed.M())
 		}
 	})
@@ -95,7 +95,7 @@ func TestNeededLengthOfFixedEnds(t *testing.T) {
 			return
 		}
 		checked++
-		if _, needed := now.Peak(s.f[s.piece].From); needed != s.needed {
+		if needed := now.Needed(s.f[s.piece].From); needed != s.needed {
 			t.Fatalf("%v: %s m", s, needed.M())
 		}
 	})
@@ -110,7 +110,7 @@ func TestNeededLengthOfFixedEnds(t *testing.T) {
 // only accelerates.
 func TestNeededLengthOfAStart(t *testing.T) {
 	f := profileOf(100, 160, 9000, 200)
-	if _, needed := newRun(f, Motion{Acceleration: 500, Braking: 500}).Peak(0); needed != 1_975_309 {
+	if needed := newRun(f, Motion{Acceleration: 500, Braking: 500}).Needed(0); needed != 1_975_309 {
 		t.Errorf("got %s m, want 1975.309 m", needed.M())
 	}
 }
@@ -119,7 +119,7 @@ func TestNeededLengthOfAStart(t *testing.T) {
 // 0.5 m/s² 833.333 m each.
 func TestNeededLengthBetween(t *testing.T) {
 	f := profileOf(2000, 60, 2100, 120, 5000, 60)
-	if _, needed := newRun(f, Motion{Acceleration: 500, Braking: 500}).Peak(2000 * unit.Metre); needed != 1_666_667 {
+	if needed := newRun(f, Motion{Acceleration: 500, Braking: 500}).Needed(2000 * unit.Metre); needed != 1_666_667 {
 		t.Errorf("got %s m, want 1666.667 m", needed.M())
 	}
 }

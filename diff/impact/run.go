@@ -187,19 +187,24 @@ func (r *Run) Tenths() int64 {
 }
 
 // Peak gives the highest speed, in whole mm/s rounded down, that the train
-// reaches in the piece of the profile at s, and the length that the piece would
-// need for its full speed to be reached at all: from the speed with which the
-// train can come into it to the one with which it has to leave it.
-func (r *Run) Peak(s unit.Distance) (mmPerSecond int64, needed unit.Distance) {
+// reaches in the piece of the profile at s.
+func (r *Run) Peak(s unit.Distance) int64 {
 	c := r.profile.CursorAt(s)
-	i := c.Index()
-	p := r.piece(i)
-	_, peak := p.time()
+	_, peak := r.piece(c.Index()).time()
+	return int64(math.Floor(peak + 1e-6))
+}
+
+// Needed gives the length that the piece of the profile at s would need for its
+// full speed to be reached at all: from the speed with which the train can come
+// into it to the one with which it has to leave it. It looks at the whole profile.
+func (r *Run) Needed(s unit.Distance) unit.Distance {
+	c := r.profile.CursorAt(s)
+	p := r.piece(c.Index())
 	// A longer piece does not slow the train on the way in for the braking behind
 	// it, nor on the way out for want of speed.
-	p.in, p.out = r.arriving(i), r.leaving(i)
+	p.in, p.out = r.arriving(c.Index()), r.leaving(c.Index())
 	up, down := p.distances(max(p.top, p.in, p.out))
-	return int64(math.Floor(peak + 1e-6)), unit.Distance(math.Ceil(up + down - 1e-6))
+	return unit.Distance(math.Ceil(up + down - 1e-6))
 }
 
 // limit is the highest speed at the beginning of piece i, or at the end of the
