@@ -62,7 +62,7 @@ func (p *pair) fleet(trains []Train) []Fleet {
 			}
 			s = p.permanent
 		}
-		found := fleet.CompareSides(s.base, s.target, p.direction, s.cells, asked)
+		found := fleet.Compare(s.base, s.target, p.direction, s.cells, asked)
 		f := Fleet{Direction: p.direction, Permanent: permanent, Shortest: shortest, Longest: longest, Reach: found.Reach, Changes: joinLengths(append(found.Changes, found.Between...)), LeftOut: found.LeftOut}
 		if permanent {
 			f.Changes = without(f.Changes, list[0].Changes)

@@ -19,7 +19,6 @@ import (
 	"speedtrail/diff/delta"
 	"speedtrail/diff/profile"
 	"speedtrail/diff/step"
-	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
@@ -48,15 +47,10 @@ type Result struct {
 	Reach []align.Interval
 }
 
-// Compare compiles both sides for every class of trains. The lengths are those
-// for which changes are listed.
-func Compare(base, target *schema.Route, d codes.Direction, cells []align.Cell, filter profile.Filter, lengths []unit.Distance) Result {
-	return CompareSides(profile.New(base, d, filter), profile.New(target, d, filter), d, cells, lengths)
-}
-
-// CompareSides is Compare for sides that are prepared. Their rows and the cells
-// may be those only that can matter for trains up to the longest.
-func CompareSides(base, target *profile.Compiler, d codes.Direction, cells []align.Cell, lengths []unit.Distance) Result {
+// Compare compiles both sides, in direction d, for every class of trains. Their rows
+// and the cells may be those only that can matter for trains up to the longest. The
+// lengths, one at least, are those for which changes are listed.
+func Compare(base, target *profile.Compiler, d codes.Direction, cells []align.Cell, lengths []unit.Distance) Result {
 	p := pair{base: base, target: target, cells: cells, direction: d, lengths: lengths}
 	var r Result
 	if len(cells) == 0 {

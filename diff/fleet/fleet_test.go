@@ -69,7 +69,7 @@ func (w drawn) directed(t *rapid.T) drawn {
 }
 
 func (w drawn) compare(filter profile.Filter, lengths ...unit.Distance) Result {
-	return Compare(w.base, w.target, w.direction, w.cells(), filter, lengths)
+	return Compare(profile.New(w.base, w.direction, filter), profile.New(w.target, w.direction, filter), w.direction, w.cells(), lengths)
 }
 
 func (w drawn) cells() []align.Cell { return align.Tracks(w.base.Track, w.target.Track).Common }
