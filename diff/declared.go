@@ -171,14 +171,23 @@ func span(t *chainage.Track, s schema.Span) (*align.Interval, string) {
 	return &align.Interval{From: at[0], To: at[1]}, ""
 }
 
-// reconcileRoute cuts the changes of a route at the limits of the declarations.
+// inPlay is what declarations say of one side of a route.
+type inPlay struct {
+	list   []scope.Declared
+	owners []int // of each, the index in Account.Declared
+}
+
+func (p *inPlay) add(d scope.Declared, owner int) {
+	p.list, p.owners = append(p.list, d), append(p.owners, owner)
+}
+
+// reconcileRoute cuts the changes of a route, and the track that one side only has,
+// at the limits of the declarations.
 func (a *Account) reconcileRoute(index int) {
 	r := &a.Routes[index]
 	r.Pieces = [][]scope.Piece{nil} // the first: no declaration holds any of it
-	var target []scope.Declared
-	var owners []int
-	var track [2][]scope.Declared
-	var trackOwners [2][]int
+	var changes inPlay
+	var track [2]inPlay // base, target
 	for i := range a.Declared {
 		d := &a.Declared[i]
 		if d.Route != index || d.base == nil && d.target == nil {
@@ -193,31 +202,45 @@ func (a *Account) reconcileRoute(index int) {
 			}
 			sides[side] = *interval
 			if x.Effect == schema.AnyEffect && d.trains == nil {
-				s := scope.Declared{Directions: x.Span.Directions, From: interval.From, To: interval.To, Effect: x.Effect}
-				track[side], trackOwners[side] = append(track[side], s), append(trackOwners[side], i)
+				track[side].add(scope.Declared{Directions: x.Span.Directions, From: interval.From, To: interval.To, Effect: x.Effect}, i)
 			}
 		}
-		target = append(target, scope.Declared{
+		changes.add(scope.Declared{
 			Directions: x.Span.Directions, From: sides[1].From, To: sides[1].To, Effect: x.Effect, Trains: d.trains, Base: &sides[0],
-		})
-		owners = append(owners, i)
+		}, i)
 	}
+	a.reconcileTrack(r, &track)
+	if len(changes.list) > 0 {
+		a.reconcileChanges(r, &changes)
+	}
+	for i := range a.Declared {
+		if d := &a.Declared[i]; d.Route == index {
+			slices.SortFunc(d.Seen, func(x, y Seen) int { return x.Train - y.Train })
+		}
+	}
+}
+
+// reconcileTrack cuts the track that one side only has. Removed track stands on the
+// base's.
+func (a *Account) reconcileTrack(r *Route, declared *[2]inPlay) {
 	for i := range r.Track {
 		t := &r.Track[i]
-		side := 1
+		on := &declared[1]
 		if t.Fate == Removed {
-			side = 0
+			on = &declared[0]
 		}
 		o := scope.Observed{Direction: t.Direction, From: t.From, To: t.To, Train: -1}
-		t.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, track[side])[0], trackOwners[side])
-		for k := range track[side] {
-			inside, _ := scope.Seen(&o, &track[side][k])
-			a.Declared[trackOwners[side][k]].Track += inside
+		t.Pieces = r.pieceIndex(scope.Cut(&o, on.list), on.owners)
+		for k := range on.list {
+			inside, _ := scope.Seen(&o, &on.list[k])
+			a.Declared[on.owners[k]].Track += inside
 		}
 	}
-	if len(target) == 0 {
-		return
-	}
+}
+
+// reconcileChanges cuts the changes of a route, and adds up what each declaration
+// sees of them.
+func (a *Account) reconcileChanges(r *Route, declared *inPlay) {
 	type eyes struct {
 		direction codes.Direction
 		train     int
@@ -227,55 +250,48 @@ func (a *Account) reconcileRoute(index int) {
 	if r.Base != nil && r.Target != nil {
 		common = align.Tracks(r.Base.Track, r.Target.Track).Common
 	}
-	for masked, list := range [...][]Change{r.Changes, r.Masked} {
-		for i := range list {
-			c := &list[i]
-			o := scope.Observed{
-				Direction: c.Direction, From: c.From, To: c.To, Train: c.Train, TrainLength: a.Trains[c.Train].Length,
-				Raised: c.Raised(), RunOut: c.RunOut,
-			}
-			o.RowEnds = r.rowEnds(c)
-			if o.RunOut && o.Raised {
-				o.Ahead = ahead(common, c.From)
-				gone, same := r.holding(c, o.Ahead, a.Trains[c.Train].Train, masked == 1)
-				o.RowEnds, o.Same = append(o.RowEnds, gone...), same
-			}
-			o.Prepare(target)
-			c.Pieces = r.pieceIndex(scope.Cut([]scope.Observed{o}, target)[0], owners)
-			e := eyes{c.Direction, c.Train}
-			for k := range target {
-				d := &target[k]
-				inside, runOut := scope.Seen(&o, d)
-				if masked == 1 {
-					// What is seen today, and goes further without temporary
-					// restrictions, counts once.
-					seen, ran := scope.SeenBoth(&o, visible[e], d)
-					inside, runOut = inside-seen, runOut-ran
-					if inside+runOut == 0 && seen+ran > 0 {
-						continue
-					}
-				}
-				if inside+runOut == 0 {
-					continue
-				}
-				s := a.Declared[owners[k]].seenBy(c.Train)
-				if masked == 1 {
-					s.Hidden += inside + runOut
-					continue
-				}
+	for i := range r.Changes {
+		c := &r.Changes[i]
+		o := a.observed(r, c, common, false)
+		c.Pieces = r.pieceIndex(scope.Cut(&o, declared.list), declared.owners)
+		visible[eyes{c.Direction, c.Train}] = append(visible[eyes{c.Direction, c.Train}], o)
+		for k := range declared.list {
+			if inside, runOut := scope.Seen(&o, &declared.list[k]); inside+runOut > 0 {
+				s := a.Declared[declared.owners[k]].seenBy(c.Train)
 				s.Inside += inside
 				s.RunOut += runOut
 			}
-			if masked == 0 {
-				visible[e] = append(visible[e], o)
+		}
+	}
+	for i := range r.Masked {
+		c := &r.Masked[i]
+		o := a.observed(r, c, common, true)
+		c.Pieces = r.pieceIndex(scope.Cut(&o, declared.list), declared.owners)
+		for k := range declared.list {
+			d := &declared.list[k]
+			inside, runOut := scope.Seen(&o, d)
+			// What is seen today, and goes further without temporary restrictions,
+			// counts once.
+			seen, ran := scope.SeenBoth(&o, visible[eyes{c.Direction, c.Train}], d)
+			if hidden := inside + runOut - seen - ran; hidden > 0 {
+				a.Declared[declared.owners[k]].seenBy(c.Train).Hidden += hidden
 			}
 		}
 	}
-	for i := range a.Declared {
-		if d := &a.Declared[i]; d.Route == index {
-			slices.SortFunc(d.Seen, func(x, y Seen) int { return x.Train - y.Train })
-		}
+}
+
+// observed gives a change as declarations see it; common is the track that both
+// revisions have; permanent, without temporary restrictions.
+func (a *Account) observed(r *Route, c *Change, common []align.Cell, permanent bool) scope.Observed {
+	t := a.Trains[c.Train].Train
+	o := scope.Observed{Direction: c.Direction, From: c.From, To: c.To, Train: c.Train, TrainLength: t.Length, Raised: c.Raised(), RunOut: c.RunOut}
+	o.RowEnds = r.rowEnds(c)
+	if o.RunOut && o.Raised {
+		o.Ahead = ahead(common, c.From)
+		gone, same := r.holding(c, o.Ahead, t, permanent)
+		o.RowEnds, o.Same = append(o.RowEnds, gone...), same
 	}
+	return o
 }
 
 // ahead gives by how much a point of the target's track that both have lies further

@@ -18,10 +18,10 @@ func (o *Observed) reach(end unit.Distance) align.Interval {
 	return align.Interval{From: end, To: end + o.TrainLength}
 }
 
-// Prepare looks at where rows hold a raise back by run-out that no declaration lets
+// prepare looks at where rows hold a raise back by run-out that no declaration lets
 // go: a train is faster at a point only when all rows that held it back there are
 // gone, and so all of them have to be declared. It is slower as soon as one comes.
-func (o *Observed) Prepare(declared []Declared) {
+func (o *Observed) prepare(declared []Declared) {
 	o.undeclared = nil
 	if !o.RunOut || !o.Raised {
 		return

@@ -5,7 +5,8 @@
 // train length may lie past the far end of the declaration that holds the row
 // behind it. Everything else is outside.
 //
-//	scope.Cut(observed, declared) // one list for each observed change
+//	pieces := scope.Cut(&observed, declared)
+//	inside, runOut := scope.Seen(&observed, &declared[0])
 package scope
 
 import (
@@ -76,18 +77,10 @@ func (d *Declared) allows(o *Observed) bool {
 	return true
 }
 
-// Cut cuts each observed change at the limits of the declarations that matter
-// to it. Neighbouring pieces of a change differ in By or RunOut.
-func Cut(observed []Observed, declared []Declared) [][]Piece {
-	out := make([][]Piece, len(observed))
-	for i := range observed {
-		out[i] = cut(&observed[i], declared)
-	}
-	return out
-}
-
-func cut(o *Observed, declared []Declared) []Piece {
-	o.Prepare(declared)
+// Cut cuts an observed change at the limits of the declarations that matter to it,
+// of all that there are. Neighbouring pieces differ in By or RunOut.
+func Cut(o *Observed, declared []Declared) []Piece {
+	o.prepare(declared)
 	type claim struct {
 		from, to unit.Distance
 		by       int
@@ -134,8 +127,8 @@ func cut(o *Observed, declared []Declared) []Piece {
 }
 
 // Seen gives how much of an observed change a declaration holds: by its own
-// range, and as run-out past its far end. Before, Cut or Prepare has to have looked
-// at all declarations.
+// range, and as run-out past its far end. Before, Cut has to have looked at all
+// declarations.
 func Seen(o *Observed, d *Declared) (inside, runOut unit.Distance) {
 	if !d.allows(o) {
 		return 0, 0

@@ -82,7 +82,7 @@ func TestCut(t *testing.T) {
 	}
 	for _, test := range tests {
 		t.Run(test.name, func(t *testing.T) {
-			if got := Cut([]Observed{test.observed}, test.declared)[0]; !reflect.DeepEqual(got, test.want) {
+			if got := Cut(&test.observed, test.declared); !reflect.DeepEqual(got, test.want) {
 				t.Errorf("got %v, want %v", got, test.want)
 			}
 		})
@@ -114,7 +114,7 @@ func TestCutPointByPoint(t *testing.T) {
 			}
 			declared = append(declared, d)
 		}
-		pieces := Cut([]Observed{o}, declared)[0]
+		pieces := Cut(&o, declared)
 		at := o.From
 		for _, p := range pieces {
 			if p.From != at || p.To <= p.From {
