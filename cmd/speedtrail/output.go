@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"io/fs"
+	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"slices"
@@ -76,10 +77,12 @@ func wrote(name string, err error) error {
 	return fmt.Errorf("%s was not written: %w", name, err)
 }
 
-// writeFile replaces a file by what result writes, or leaves it as it was.
+// writeFile replaces a file by what result writes, or leaves it as it was. Who may
+// read it is as it was, or as the user has it for new files.
 func writeFile(name string, result func(io.Writer) error) (err error) {
-	if info, err := os.Stat(name); err == nil && !info.Mode().IsRegular() {
-		if info.IsDir() {
+	before, err := os.Stat(name)
+	if err == nil && !before.Mode().IsRegular() {
+		if before.IsDir() {
 			return errors.New("it is a folder")
 		}
 		// A device or a pipe cannot be replaced, only written to.
@@ -89,7 +92,8 @@ func writeFile(name string, result func(io.Writer) error) (err error) {
 		}
 		return errors.Join(result(f), f.Close())
 	}
-	f, err := os.CreateTemp(filepath.Dir(name), "."+filepath.Base(name)+".*")
+	there := err == nil
+	f, err := createBeside(name)
 	if err != nil {
 		var inner *fs.PathError
 		if errors.As(err, &inner) { // the name of the new file tells nobody anything
@@ -110,8 +114,10 @@ func writeFile(name string, result func(io.Writer) error) (err error) {
 	if err = b.Flush(); err != nil {
 		return err
 	}
-	if err = f.Chmod(0o644); err != nil {
-		return err
+	if there {
+		if err = f.Chmod(before.Mode().Perm()); err != nil {
+			return err
+		}
 	}
 	if err = f.Sync(); err != nil {
 		return err
@@ -120,6 +126,19 @@ func writeFile(name string, result func(io.Writer) error) (err error) {
 		return err
 	}
 	return os.Rename(f.Name(), name)
+}
+
+// createBeside makes a new file beside another one. (os.CreateTemp makes one that
+// nobody else may read.)
+func createBeside(name string) (f *os.File, err error) {
+	for range 100 {
+		beside := fmt.Sprintf(".%s.%d", filepath.Base(name), rand.Uint32())
+		f, err = os.OpenFile(filepath.Join(filepath.Dir(name), beside), os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o666)
+		if !errors.Is(err, fs.ErrExist) {
+			break
+		}
+	}
+	return f, err
 }
 
 // writeBytes is writeFile for what is there already.
