@@ -14,6 +14,7 @@ package doubt
 import (
 	"cmp"
 	"slices"
+	"strings"
 	"time"
 
 	"speedtrail/schema"
@@ -50,6 +51,19 @@ type Doubt struct {
 	From, To   unit.Distance   // running distance; equal for a point
 	Row        source.Position // the row to look at
 	Text       string          // what is doubtful, without the place
+	// Key is Text without the line of another row that it names: rows move up and
+	// down in a table, and the doubt stays the same.
+	Key string
+}
+
+// other stands in a text for another row, which a reader is to find and which the
+// doubt does not depend on.
+const other = "\x00"
+
+// named puts another row into the text of a doubt.
+func named(d Doubt, row string) Doubt {
+	d.Text, d.Key = strings.ReplaceAll(d.Text, other, row), strings.ReplaceAll(d.Text, other, "")
+	return d
 }
 
 // Check looks at a route of a data set. at is the time that validities are
@@ -63,6 +77,11 @@ func Check(route *schema.Route, d *schema.Dataset, at time.Time) []Doubt {
 	c.delays()
 	c.steps()
 	c.crossings()
+	for i := range c.list {
+		if d := &c.list[i]; d.Key == "" {
+			d.Key = d.Text
+		}
+	}
 	slices.SortStableFunc(c.list, func(a, b Doubt) int {
 		return cmp.Or(cmp.Compare(a.From, b.From), cmp.Compare(a.To, b.To), cmp.Compare(slices.Index(IDs, a.ID), slices.Index(IDs, b.ID)),
 			a.Row.Compare(b.Row), cmp.Compare(a.Text, b.Text))
@@ -80,7 +99,7 @@ type check struct {
 }
 
 func (c *check) add(id string, row *schema.Row, text string) {
-	c.list = append(c.list, Doubt{id, row.Directions & c.route.Directions, row.Start, row.End, row.Pos, text})
+	c.list = append(c.list, Doubt{ID: id, Directions: row.Directions & c.route.Directions, From: row.Start, To: row.End, Row: row.Pos, Text: text})
 }
 
 // longest is the length of the longest reference train.

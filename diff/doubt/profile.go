@@ -41,7 +41,7 @@ func (c *check) delays() {
 		}
 		structure := func(row *schema.Row, what string) {
 			if set := near(row); over(row) && set != 0 {
-				c.list = append(c.list, Doubt{DelayOverBridge, set, row.Start, row.End, row.Pos, fmt.Sprintf(
+				c.list = append(c.list, Doubt{ID: DelayOverBridge, Directions: set, From: row.Start, To: row.End, Row: row.Pos, Text: fmt.Sprintf(
 					"%s over %s ends for the front of a train whose rear can still be on the bridge", what, bridge.Name)})
 			}
 		}
@@ -57,7 +57,7 @@ func (c *check) delays() {
 			}
 			for _, d := range codes.AllDirections {
 				if near(&row.Row).Has(d) && c.risesAfter(row, d) > 0 {
-					c.list = append(c.list, Doubt{DelayOverBridge, 1 << d, row.Start, row.End, row.Pos, fmt.Sprintf(
+					c.list = append(c.list, Doubt{ID: DelayOverBridge, Directions: 1 << d, From: row.Start, To: row.End, Row: row.Pos, Text: fmt.Sprintf(
 						"the speed rises for the front of a train whose rear can still be on %s", bridge.Name)})
 				}
 			}
@@ -73,7 +73,9 @@ func (c *check) delays() {
 			}
 			for _, d := range codes.AllDirections {
 				if a.Directions == 1<<d && c.risesAfter(a, d) > 0 && c.risesAfter(b, 1-d) > 0 {
-					c.add(DelayOneSided, &a.Row, fmt.Sprintf("the speed rises at the end of this stretch without train length delay in direction %s; in direction %s (line %d) it waits for the rear", d, 1-d, b.Pos.Line))
+					c.list = append(c.list, named(Doubt{ID: DelayOneSided, Directions: 1 << d & c.route.Directions, From: a.Start, To: a.End, Row: a.Pos, Text: fmt.Sprintf(
+						"the speed rises at the end of this stretch without train length delay in direction %s; in direction %s (%s) it waits for the rear", d, 1-d, other)},
+						fmt.Sprintf("line %d", b.Pos.Line)))
 				}
 			}
 		}
@@ -161,7 +163,7 @@ func (c *check) steps() {
 	}
 	for id, list := range map[string][]*seenBy{StepSize: steps, ShortStretch: short} {
 		for _, s := range list {
-			c.list = append(c.list, Doubt{id, s.directions, s.from, s.to, s.row, s.text + " (" + strings.Join(s.trains, ", ") + ")"})
+			c.list = append(c.list, Doubt{ID: id, Directions: s.directions, From: s.from, To: s.to, Row: s.row, Text: s.text + " (" + strings.Join(s.trains, ", ") + ")"})
 		}
 	}
 }
@@ -205,7 +207,7 @@ func (c *check) crossings() {
 				least = min(least, impact.ApproachTenths(f, from, to))
 			}
 			if least < int64(p.WarningDS) {
-				c.list = append(c.list, Doubt{CrossingWarning, 1 << d, p.Start, p.End, p.Pos, fmt.Sprintf(
+				c.list = append(c.list, Doubt{ID: CrossingWarning, Directions: 1 << d, From: p.Start, To: p.End, Row: p.Pos, Text: fmt.Sprintf(
 					"the fastest train that the rows admit, without temporary restrictions, is at %s %s s after its strike-in point; the crossing needs %s s",
 					p.Name, tenths(least), tenths(int64(p.WarningDS)))})
 			}

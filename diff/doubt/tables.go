@@ -140,11 +140,7 @@ func (c *check) curves() {
 			for cat := range codes.CantDeficiency(codes.CantDeficiencies) {
 				v := row.Cant[cat]
 				if v > row.Basic && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM()) {
-					c.list = append(c.list, Doubt{CurveSpeed, row.Directions & c.route.Directions, from, to, row.Pos, fmt.Sprintf(
-						"%s is %d km/h; on the curve of %d m with %d mm of cant (%s) that is a cant deficiency of %s mm, and %d mm carry %d km/h",
-						cat.Column(), v, curve.RadiusM, curve.CantMM, place(curve.Pos.File, curve.Pos.Line),
-						hundredths(impact.CantDeficiency(v, curve.RadiusM, curve.CantMM)), cat.MM(),
-						impact.SpeedForCantDeficiency(curve.RadiusM, curve.CantMM, cat.MM()))})
+					c.curveSpeed(row, curve, from, to, fmt.Sprintf("%s is %d km/h", cat.Column(), v), v, cat)
 				}
 			}
 			c.trainsOnCurve(row, curve, from, to)
@@ -187,12 +183,17 @@ func (c *check) trainsOnCurve(row *schema.SpeedRow, curve *schema.CurveRow, from
 		trains[x] = append(trains[x], t.ID)
 	}
 	for _, x := range order {
-		c.list = append(c.list, Doubt{CurveSpeed, row.Directions & c.route.Directions, from, to, row.Pos, fmt.Sprintf(
-			"%d km/h for %s; on the curve of %d m with %d mm of cant (%s) that is a cant deficiency of %s mm, and %d mm carry %d km/h",
-			x.v, strings.Join(trains[x], ", "), curve.RadiusM, curve.CantMM, place(curve.Pos.File, curve.Pos.Line),
-			hundredths(impact.CantDeficiency(x.v, curve.RadiusM, curve.CantMM)), x.cant.MM(),
-			impact.SpeedForCantDeficiency(curve.RadiusM, curve.CantMM, x.cant.MM()))})
+		c.curveSpeed(row, curve, from, to, fmt.Sprintf("%d km/h for %s", x.v, strings.Join(trains[x], ", ")), x.v, x.cant)
 	}
+}
+
+// curveSpeed adds that a speed on a curve asks for more cant deficiency than a
+// category admits; says is whose speed it is.
+func (c *check) curveSpeed(row *schema.SpeedRow, curve *schema.CurveRow, from, to unit.Distance, says string, v unit.Speed, cat codes.CantDeficiency) {
+	c.list = append(c.list, named(Doubt{ID: CurveSpeed, Directions: row.Directions & c.route.Directions, From: from, To: to, Row: row.Pos, Text: fmt.Sprintf(
+		"%s; on the curve of %d m with %d mm of cant (%s) that is a cant deficiency of %s mm, and %d mm carry %d km/h",
+		says, curve.RadiusM, curve.CantMM, other, hundredths(impact.CantDeficiency(v, curve.RadiusM, curve.CantMM)), cat.MM(),
+		impact.SpeedForCantDeficiency(curve.RadiusM, curve.CantMM, cat.MM()))}, place(curve.Pos.File, curve.Pos.Line)))
 }
 
 func place(file string, line int) string {

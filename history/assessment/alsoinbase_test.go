@@ -17,6 +17,27 @@ func TestAlsoInBase(t *testing.T) {
 		"speed.csv":     "from_km,to_km,basic,train_length_delay\n0,4,100,no\n4,4.05,60,no\n4.05,10,100,no\n10,20,30,no\n",
 		"temporary.csv": "id,from_km,to_km,speed,valid_to\nA,10,11,20,2026-02-15\n",
 	}
+	// Doubts that name a row of another table, and another row of the same one.
+	curved := texts{
+		"speed.csv":  "from_km,to_km,direction,basic,train_length_delay\n0,4,both,200,yes\n4,6,nominal,100,no\n4,6,reverse,100,yes\n6,20,both,200,yes\n",
+		"curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,900,100\n",
+	}
+	t.Run("other rows that move down", func(t *testing.T) {
+		c := compute(t, curved, texts{
+			"speed.csv":  "# why\nfrom_km,to_km,direction,basic,train_length_delay\n0,4,both,200,yes\n# why\n4,6,nominal,100,no\n4,6,reverse,100,yes\n6,20,both,200,yes\n",
+			"curves.csv": "from_km,to_km,radius_m,cant_mm\n# why\n1,2,900,100\n",
+		}, nil)
+		ids := map[string]bool{}
+		for _, f := range c.Findings {
+			ids[f.ID] = true
+			if !f.AlsoInBase {
+				t.Errorf("%s, %s, is said to be new", f.ID, f.Text)
+			}
+		}
+		if !ids["curve-speed"] || !ids["delay-one-sided"] {
+			t.Errorf("findings of %v", ids)
+		}
+	})
 	for _, x := range []struct {
 		name   string
 		target texts

@@ -343,14 +343,14 @@ func (c *collector) route(index int) {
 	before := map[Finding]bool{}
 	if r.Base != nil {
 		for _, d := range doubt.Check(r.Base, c.in.Base, c.in.At) {
-			before[doubtful(r.Base, d)] = true
+			before[doubtful(r.Base, d, d.Key)] = true
 		}
 	}
 	judged := *c.in.Target
 	judged.Limits = stricter(c.in.Base.Limits, judged.Limits)
 	for _, d := range doubt.Check(r.Target, &judged, c.in.At) {
-		f := doubtful(r.Target, d)
-		f.AlsoInBase = before[f]
+		f := doubtful(r.Target, d, d.Text)
+		f.AlsoInBase = before[doubtful(r.Target, d, d.Key)]
 		f.Row = fmt.Sprintf("%s:%d", d.Row.File, d.Row.Line)
 		c.add(ranked{Finding: f})
 	}
@@ -372,10 +372,9 @@ func stricter(base, target schema.Limits) schema.Limits {
 	}
 }
 
-// doubtful words doubtful data of a route, without its row: rows move up and
-// down in a table, and the doubt stays the same.
-func doubtful(r *schema.Route, d doubt.Doubt) Finding {
-	f := Finding{ID: d.ID, Route: r.ID, Direction: d.Directions.String(), From: r.Track.Begins(d.From).String(), To: r.Track.Ends(d.To).String(), Text: d.Text}
+// doubtful words doubtful data of a route, without its row.
+func doubtful(r *schema.Route, d doubt.Doubt, text string) Finding {
+	f := Finding{ID: d.ID, Route: r.ID, Direction: d.Directions.String(), From: r.Track.Begins(d.From).String(), To: r.Track.Ends(d.To).String(), Text: text}
 	if d.From == d.To {
 		f.To = f.From // the two readings of a joint are no stretch
 	}
