@@ -21,10 +21,9 @@ import (
 	"speedtrail/schema/source"
 )
 
-// Bounds of what is imported.
-const (
-	maxLine = 512 << 20 // bytes of an entry's line
-)
+// maxLine bounds the line of an entry, in bytes: SQLite holds bodies of up to 10^9,
+// and of their bytes the quotes take two in a line. What was recorded can be imported.
+const maxLine = 4 << 30
 
 // exported is an entry as a line of JSON. The body is a text: its bytes are
 // hashed as they stand there.
