@@ -9,6 +9,7 @@ import (
 	"fmt"
 	"io"
 	"iter"
+	"math"
 
 	"github.com/go-json-experiment/json"
 	"github.com/go-json-experiment/json/jsontext"
@@ -23,7 +24,7 @@ import (
 
 // maxLine bounds the line of an entry, in bytes: SQLite holds bodies of up to 10^9,
 // and of their bytes the quotes take two in a line. What was recorded can be imported.
-const maxLine = 4 << 30
+const maxLine = min(4<<30, math.MaxInt)
 
 // exported is an entry as a line of JSON. The body is a text: its bytes are
 // hashed as they stand there.

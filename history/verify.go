@@ -1,6 +1,7 @@
 package history
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -85,7 +86,7 @@ func Verify(ctx context.Context, l *ledger.Ledger, o VerifyOptions) (*Result, er
 		}
 	}
 	v.summary()
-	slices.SortStableFunc(v.r.Problems, func(a, b Problem) int { return int(a.Entry - b.Entry) })
+	slices.SortStableFunc(v.r.Problems, func(a, b Problem) int { return cmp.Compare(a.Entry, b.Entry) })
 	return v.r, nil
 }
 

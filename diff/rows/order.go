@@ -2,6 +2,7 @@ package rows
 
 import (
 	"cmp"
+	"math"
 	"slices"
 	"strings"
 
@@ -52,7 +53,7 @@ func (m *matcher) inOrder(a, b []int) []Difference {
 			if i == len(a) && k == len(b) {
 				continue
 			}
-			found := way{price: 1 << 60}
+			found := way{price: math.MaxInt}
 			take := func(price, da, db int) {
 				if p := price + best[i+da][k+db].price; p < found.price {
 					found = way{p, da, db}

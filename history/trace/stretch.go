@@ -1,6 +1,7 @@
 package trace
 
 import (
+	"cmp"
 	"slices"
 
 	"speedtrail/diff/profile"
@@ -73,7 +74,7 @@ func (v *View) Stretch(t schema.Train, from, to unit.Distance) []Piece {
 			found = append(found, piece)
 		}
 	}
-	slices.SortFunc(found, func(a, b Piece) int { return int(a.From - b.From) })
+	slices.SortFunc(found, func(a, b Piece) int { return cmp.Compare(a.From, b.From) })
 	newest := v.version(v.h.State[v.h.Tip])
 	var list []Piece
 	for _, p := range found {
@@ -147,7 +148,7 @@ func cut(f step.Func, from, to unit.Distance) []step.Piece {
 
 // joined sorts pieces and joins those that touch and have one speed.
 func joined(list []step.Piece) []step.Piece {
-	slices.SortFunc(list, func(a, b step.Piece) int { return int(a.From - b.From) })
+	slices.SortFunc(list, func(a, b step.Piece) int { return cmp.Compare(a.From, b.From) })
 	out := list[:0:0]
 	for _, p := range list {
 		if n := len(out); n > 0 && out[n-1].To == p.From && out[n-1].Speed == p.Speed {
