@@ -4,7 +4,6 @@ import (
 	"bytes"
 	"errors"
 	"fmt"
-	"hash"
 	"io"
 	"io/fs"
 	"os"
@@ -23,7 +22,7 @@ type blobFile struct {
 	from   io.Reader // nil before the first Read
 	z      *inflater // under from, while it is open
 	loose  *os.File  // under z, while it is open
-	sum    hash.Hash // of what was read; nil where the content is checked already
+	sum    summing   // of what was read; nil where the content is checked already
 	left   int64     // bytes to come
 	err    error     // the end, or what went wrong
 	closed bool

@@ -1,9 +1,7 @@
 package revision
 
 import (
-	"crypto/sha1"
 	"errors"
-	"hash"
 	"io/fs"
 	"os"
 	"sync"
@@ -34,7 +32,7 @@ func (s *store) readAtMost(h plumbing.Hash, limit int64) (kind plumbing.ObjectTy
 		if kind, data, err = p.readAtMost(f, offset, limit, s.bases, s.blocks); err != nil {
 			return 0, nil, false
 		}
-		return kind, data, sumIs(kind, data, h)
+		return kind, data, sumIs(kind, data, h) == nil
 	}
 	for _, dir := range s.dirs {
 		o := &object{hash: h, store: s, loose: hex2(dir, h)}
@@ -57,20 +55,20 @@ func (s *store) readAtMost(h plumbing.Hash, limit int64) (kind plumbing.ObjectTy
 		if data, err = readExactly(z, o.size); err != nil {
 			return 0, nil, false
 		}
-		return o.kind, data, sumIs(o.kind, data, h)
+		return o.kind, data, sumIs(o.kind, data, h) == nil
 	}
 	return 0, nil, false
 }
 
 // sums are hashes for use again: most objects are small.
-var sums = sync.Pool{New: func() any { return sha1.New() }}
+var sums = sync.Pool{New: func() any { return newSumming() }}
 
 // sumIs checks the hash of a whole object.
-func sumIs(kind plumbing.ObjectType, data []byte, h plumbing.Hash) bool {
-	sum := sums.Get().(hash.Hash)
+func sumIs(kind plumbing.ObjectType, data []byte, h plumbing.Hash) error {
+	sum := sums.Get().(summing)
 	defer sums.Put(sum)
 	sum.Reset()
 	writeHead(sum, kind, int64(len(data)))
 	sum.Write(data)
-	return checkSum(sum, h) == nil
+	return checkSum(sum, h)
 }

@@ -3,10 +3,8 @@ package revision
 import (
 	"bytes"
 	"cmp"
-	"crypto/sha1"
 	"errors"
 	"fmt"
-	"hash"
 	"io"
 	"io/fs"
 	"os"
@@ -17,6 +15,7 @@ import (
 	"sync"
 
 	"github.com/go-git/go-git/v5/plumbing"
+	"github.com/pjbgf/sha1cd"
 )
 
 // maxAlternates bounds how many object folders a repository may borrow from;
@@ -284,9 +283,7 @@ func (o *object) openLoose(f *os.File) (*inflater, error) {
 func (o *object) read() ([]byte, error) {
 	data, err := o.content()
 	if err == nil {
-		if !sumIs(o.kind, data, o.hash) {
-			err = errHash
-		}
+		err = sumIs(o.kind, data, o.hash)
 	}
 	if err != nil {
 		return nil, corrupt(fmt.Sprintf("object %s cannot be read", o.hash), err)
@@ -312,26 +309,40 @@ func (o *object) content() ([]byte, error) {
 	return readExactly(z, o.size)
 }
 
+// summing computes the hash of an object, and finds out whether its bytes were made to
+// collide with others.
+type summing = sha1cd.CollisionResistantHash
+
+func newSumming() summing { return sha1cd.New().(summing) }
+
 // newSum begins the hash of an object.
-func newSum(kind plumbing.ObjectType, size int64) hash.Hash {
-	sum := sha1.New()
+func newSum(kind plumbing.ObjectType, size int64) summing {
+	sum := newSumming()
 	writeHead(sum, kind, size)
 	return sum
 }
 
 // writeHead writes what Git puts before the content to hash an object: its type
 // and size.
-func writeHead(sum hash.Hash, kind plumbing.ObjectType, size int64) {
+func writeHead(sum summing, kind plumbing.ObjectType, size int64) {
 	var head [32]byte
 	text := append(append(head[:0], kind.Bytes()...), ' ')
 	sum.Write(append(strconv.AppendInt(text, size, 10), 0))
 }
 
-var errHash = errors.New("content does not have this hash")
+var (
+	errHash    = errors.New("content does not have this hash")
+	errCollide = errors.New("content was made to have the hash of other content")
+)
 
-func checkSum(sum hash.Hash, want plumbing.Hash) error {
-	var have [sha1.Size]byte
-	if !bytes.Equal(sum.Sum(have[:0]), want[:]) {
+// checkSum checks a hash. What is approved is known by its hash, so that no content
+// may stand for another: SHA-1 is broken, and the known ways to break it leave marks.
+func checkSum(sum summing, want plumbing.Hash) error {
+	var have [sha1cd.Size]byte
+	switch got, collides := sum.CollisionResistantSum(have[:0]); {
+	case collides:
+		return errCollide
+	case !bytes.Equal(got, want[:]):
 		return errHash
 	}
 	return nil
