@@ -82,11 +82,7 @@ func parseCommit(data []byte) (Commit, error) {
 		c.Parents = append(c.Parents, hash.String())
 		rest = next
 	}
-	author, rest, err := headerText(rest, "author ")
-	if err != nil {
-		return Commit{}, err
-	}
-	committer, rest, err := headerText(rest, "committer ")
+	author, committer, rest, err := headerPeople(rest)
 	if err != nil {
 		return Commit{}, err
 	}
@@ -158,11 +154,7 @@ func parseLinks(data []byte) (links, error) {
 		l.parents = append(l.parents, hash)
 		rest = next
 	}
-	_, rest, err = headerText(rest, "author ")
-	if err != nil {
-		return links{}, err
-	}
-	committer, _, err := headerText(rest, "committer ")
+	_, committer, _, err := headerPeople(rest)
 	if err != nil {
 		return links{}, err
 	}
@@ -202,13 +194,24 @@ func headerHash(line []byte, key string) (plumbing.Hash, error) {
 	return hash, nil
 }
 
-func headerText(data []byte, key string) (text, rest []byte, err error) {
-	line, rest := cutLine(data)
-	text, ok := bytes.CutPrefix(line, []byte(key))
-	if !ok {
-		return nil, nil, fmt.Errorf("a line that begins with %q is missing", key)
+// headerPeople takes the lines of author and committer, where they stand. Git does
+// without them, and one commit that somebody wrote by hand may not take the history
+// from everybody: those who made it are people without a name.
+func headerPeople(data []byte) (author, committer, rest []byte, err error) {
+	rest = data
+	for _, x := range []struct {
+		key string
+		to  *[]byte
+	}{{"author ", &author}, {"committer ", &committer}} {
+		line, after := cutLine(rest)
+		if text, ok := bytes.CutPrefix(line, []byte(x.key)); ok {
+			*x.to, rest = text, after
+		}
+		if bytes.HasPrefix(rest, []byte("parent ")) {
+			return nil, nil, nil, errors.New("a parent stands behind the people")
+		}
 	}
-	return text, rest, nil
+	return author, committer, rest, nil
 }
 
 // parseHash reads 40 hexadecimal digits.

@@ -3,6 +3,7 @@ package revision
 import (
 	"fmt"
 	"math/rand/v2"
+	"slices"
 	"strings"
 	"testing"
 )
@@ -20,8 +21,6 @@ func TestCommits(t *testing.T) {
 		"tree is no hash":      "tree " + strings.Repeat("g", 40) + "\n" + people + "\nx\n",
 		"short parent":         "tree " + tree + "\nparent " + tree[:10] + "\n" + people + "\nx\n",
 		"parent after author":  "tree " + tree + "\nauthor Ann <a@fernway.example> 1 +0000\nparent " + tree + "\n" + people,
-		"no author":            "tree " + tree + "\ncommitter Ann <a@fernway.example> 1767000000 +0100\n\nx\n",
-		"no committer":         "tree " + tree + "\nauthor Ann <a@fernway.example> 1767000000 +0100\n\nx\n",
 		"space before the tag": " tree " + tree + "\n" + people,
 	} {
 		hash := g.object("commit", content)
@@ -58,6 +57,46 @@ func TestCommits(t *testing.T) {
 		}
 		if err != nil || got.Author.Name != c.wantName || got.Author.Email != c.wantEmail || date != c.wantDate || got.Message != "x\n" {
 			t.Errorf("%s: %+v %s (%v)", name, got.Author, date, err)
+		}
+	}
+}
+
+// TestCommitWithoutPeople: a commit that lacks the line of a person is read, as git
+// reads it, and somebody without a name has prepared it.
+func TestCommitWithoutPeople(t *testing.T) {
+	t.Parallel()
+	g := newGit(t)
+	first := g.commit("x")
+	const author, committer = "author Ann <a@fernway.example> 1767000000 +0100\n", "committer Bo <b@fernway.example> 1767000000 +0100\n"
+	for name, c := range map[string]struct {
+		people string
+		emails []string
+	}{
+		"no author":        {committer, []string{"", "b@fernway.example"}},
+		"no committer":     {author, []string{"", "a@fernway.example"}},
+		"neither":          {"", []string{""}},
+		"in another order": {committer + author, []string{"", "a@fernway.example", "b@fernway.example"}},
+	} {
+		hash := g.object("commit", "tree "+g.mktree()+"\nparent "+first+"\n"+c.people+"\nx\n")
+		next := g.object("commit", "tree "+g.mktree()+"\nparent "+hash+"\n"+author+committer+"\ny\n")
+		r := g.open()
+		commits, complete, err := r.Between(t.Context(), first, hash)
+		if err != nil || !complete || len(commits) != 1 || commits[0].Message != "x\n" {
+			t.Errorf("%s: %+v %v", name, commits, err)
+			continue
+		}
+		var emails []string
+		for _, p := range r.Preparers(commits) {
+			emails = append(emails, p.Email)
+		}
+		if !slices.Equal(emails, c.emails) {
+			t.Errorf("%s: prepared by %q, want %q", name, emails, c.emails)
+		}
+		if before, err := r.IsAncestor(t.Context(), first, next); err != nil || !before {
+			t.Errorf("%s: its parent is not found: %v", name, err)
+		}
+		if got := g.git("rev-list", "--count", first+".."+next); got != "2" {
+			t.Errorf("%s: git counts %s", name, got)
 		}
 	}
 }

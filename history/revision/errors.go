@@ -25,6 +25,11 @@ var (
 	ErrNotFile       = errors.New("not a regular file")
 	ErrTooLarge      = errors.New("too large")
 	ErrUnreadable    = errors.New("may not be read") // the system refuses it, mostly for lack of rights
+
+	// ErrMalformed is a class within ErrCorrupt: the object has the content that its
+	// hash says, and that is not of the form that is needed. Somebody made it so, and
+	// every clone has it.
+	ErrMalformed = errors.New("malformed object")
 )
 
 // Error is a failure to read a repository.
@@ -33,7 +38,12 @@ type Error struct {
 	Text string // what is wrong, with the name it is about
 	Hint string // what to do next; may be empty
 	Err  error  // what was underneath; may be nil
+
+	malformed bool
 }
+
+// Is tells whether the error is of class ErrMalformed as well.
+func (e *Error) Is(target error) bool { return e.malformed && target == ErrMalformed }
 
 // Error gives the text and, on a line of its own, the hint.
 func (e *Error) Error() string {
@@ -65,6 +75,11 @@ func corrupt(text string, err error) *Error {
 		Kind: ErrCorrupt, Text: text, Err: err,
 		Hint: "run `git fsck`, then fetch the object again or use another clone",
 	}
+}
+
+// malformed is the error for an object of which nothing is damaged.
+func malformed(text string, err error) *Error {
+	return &Error{Kind: ErrCorrupt, Text: text, Err: err, Hint: "it was made so, and every clone has it; `git fsck` says more", malformed: true}
 }
 
 // unreadable is the error for what the system refuses to open or to list.

@@ -74,7 +74,7 @@ func (r *Repo) Tree(tree [20]byte, before Tree, what string) (Tree, []TreeChange
 	}
 	list, err := t.changes(before)
 	if err != nil {
-		return Tree{}, nil, corrupt(fmt.Sprintf("tree %s is malformed", plumbing.Hash(tree)), err)
+		return Tree{}, nil, malformed(fmt.Sprintf("tree %s is malformed", plumbing.Hash(tree)), err)
 	}
 	return t, list, nil
 }
@@ -254,7 +254,7 @@ func (r *Repo) Folder(tree [20]byte, what string) (fs.FS, error) {
 		return nil, err
 	}
 	if s.top, err = parseTree(data); err != nil {
-		return nil, corrupt(fmt.Sprintf("tree %s is malformed", plumbing.Hash(tree)), err)
+		return nil, malformed(fmt.Sprintf("tree %s is malformed", plumbing.Hash(tree)), err)
 	}
 	return s, nil
 }

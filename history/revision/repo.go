@@ -143,7 +143,7 @@ func (r *Repo) read(h plumbing.Hash, kind plumbing.ObjectType, limit int64, what
 		return nil, err
 	}
 	if o.kind != kind {
-		return nil, corrupt(fmt.Sprintf("object %s is a %s, a %s is needed for %s", h, o.kind, kind, what), nil)
+		return nil, malformed(fmt.Sprintf("object %s is a %s, a %s is needed for %s", h, o.kind, kind, what), nil)
 	}
 	if o.size > limit {
 		return nil, &Error{
@@ -212,7 +212,7 @@ func (r *Repo) tree(h plumbing.Hash, what string) ([]treeEntry, error) {
 	}
 	entries, err := parseTree(data)
 	if err != nil {
-		return nil, corrupt(fmt.Sprintf("tree %s is malformed", h), err)
+		return nil, malformed(fmt.Sprintf("tree %s is malformed", h), err)
 	}
 	r.trees.put(h, entries)
 	return entries, nil

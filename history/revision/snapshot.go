@@ -255,7 +255,7 @@ func (s *snapshot) blob(at treeEntry) (*object, error) {
 	}
 	o, err := s.repo.find(at.hash, s.what)
 	if err == nil && o.kind != plumbing.BlobObject {
-		return nil, corrupt(fmt.Sprintf("object %s of file %q is a %s", at.hash, at.name, o.kind), nil)
+		return nil, malformed(fmt.Sprintf("object %s of file %q is a %s", at.hash, at.name, o.kind), nil)
 	}
 	return o, err
 }

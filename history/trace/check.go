@@ -82,7 +82,7 @@ func faultOf(err error) (string, error) {
 		return "", nil
 	case errors.As(err, &faults):
 		return faults.List[0].Error(), nil
-	case errors.Is(err, revision.ErrNotFile), errors.Is(err, revision.ErrTooLarge):
+	case errors.Is(err, revision.ErrNotFile), errors.Is(err, revision.ErrTooLarge), errors.Is(err, revision.ErrMalformed):
 		return firstLine(err.Error()), nil
 	}
 	return "", err
@@ -155,10 +155,10 @@ func (k *checker) requestSet(ctx context.Context, l *listing) (string, error) {
 		return "", err
 	}
 	entries, err := fs.ReadDir(files, "requests")
+	fault, err := faultOf(err)
 	if err != nil {
 		return "", err
 	}
-	fault := ""
 	seen := make(map[string]bool, len(entries))
 	count := 0
 	for _, e := range entries {
@@ -299,11 +299,11 @@ func (k *checker) loadOne(n int, v *Loaded, commit Hash) error {
 		}
 		k.readers[n][v.Zone] = versions
 	}
+	var route *schema.Route
 	files, err := k.repo.Folder(v.Tree, what(commit))
-	if err != nil {
-		return err
+	if err == nil {
+		route, err = versions.Read(&under{v.Folder, files}, v.Folder)
 	}
-	route, err := versions.Read(&under{v.Folder, files}, v.Folder)
 	fault, err := faultOf(err)
 	if err != nil {
 		return err

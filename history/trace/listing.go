@@ -74,11 +74,22 @@ func newLister(repo *revision.Repo, folder string) *lister {
 func what(commit Hash) string { return "commit " + commit.String() }
 
 // list lists what a commit holds, and the folders that it has otherwise than the
-// one before it; nil: there is none.
+// one before it; nil: there is none. A commit with a tree that is none is one that does
+// not load: it stays in the history for ever, and may not stop the reading of all.
 func (l *lister) list(commit, root Hash, before *listing) (*listing, []change, error) {
 	if before == nil {
 		before = &listing{absent: true}
 	}
+	out, list, err := l.sound(commit, root, before)
+	if fault, failed := faultOf(err); fault != "" && failed == nil {
+		out = &listing{commit: commit, fault: fault}
+		list, err = l.changes(before, out)
+	}
+	return out, list, err
+}
+
+// sound lists a commit whose trees can be read.
+func (l *lister) sound(commit, root Hash, before *listing) (*listing, []change, error) {
 	out := &listing{commit: commit, tree: root}
 	for _, name := range l.folder {
 		at, _, err := l.repo.Tree(out.tree, revision.Tree{}, what(commit))
