@@ -94,6 +94,18 @@ func TestOddTrees(t *testing.T) {
 					t.Errorf("%s\n%s", option, got.out)
 				}
 			}
+			again, err := revision.Open(repo)
+			if err != nil {
+				t.Fatal(err)
+			}
+			defer again.Close()
+			commit, err := again.Resolve(bad)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if left, err := withoutCopies(again, []revision.Commit{commit}, c.Tree, "network"); err != nil || len(left) != 1 {
+				t.Errorf("its people are not counted: %v %v", left, err)
+			}
 			// What is asked about the commit itself says that it is no fault of the clone.
 			got := call(t, "--repo", repo, "assess", "--no-record", "c0", bad)
 			if got.status == 0 || got.status == statusFinding {

@@ -106,7 +106,8 @@ func withoutCopies(repo *revision.Repo, commits []revision.Commit, tree, folder 
 	for _, c := range commits {
 		if len(c.Parents) > 0 && !slices.ContainsFunc(c.Parents, func(p string) bool { return since[p] }) {
 			files, err := repo.Snapshot(c.Hash, folder)
-			if err != nil && !errors.Is(err, revision.ErrNoFolder) {
+			// What has no folder, or a tree that is none, is no copy.
+			if err != nil && !errors.Is(err, revision.ErrNoFolder) && !errors.Is(err, revision.ErrMalformed) {
 				return nil, err
 			}
 			if err == nil && content(files) == tree {
