@@ -276,6 +276,7 @@ type correctedRecord struct {
 	Entry  int64         `json:"by_entry"`                                  // the later one
 	Signer string        `json:"by_signer"`
 	Reason string        `json:"by_reason"`
+	record approval.Record
 }
 
 func (x correctedRecord) words() string {
@@ -285,7 +286,7 @@ func (x correctedRecord) words() string {
 func corrections(line *approval.Line, folder string) []correctedRecord {
 	list := []correctedRecord{}
 	for _, x := range line.Corrections(folder) {
-		list = append(list, correctedRecord{serviceRecordOf(history.ServiceOf(line, x.Record)), x.How, x.By.Entry.Seq, x.By.Signer, x.By.Reason})
+		list = append(list, correctedRecord{serviceRecordOf(history.ServiceOf(line, x.Record)), x.How, x.By.Entry.Seq, x.By.Signer, x.By.Reason, x.Record})
 	}
 	return list
 }

@@ -48,3 +48,30 @@ func TestInForceDoesNotCount(t *testing.T) {
 		}
 	}
 }
+
+// What a record said of an instant is told with the answer, after another one has
+// taken its place.
+func TestInForceWhenCorrected(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80}, []time.Time{at, at.Add(time.Hour)})
+	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	key := func(name string) string { return filepath.Join(keys, name) }
+	record := func(rev, since string, more ...string) {
+		t.Helper()
+		call(t, in(append([]string{"inforce", "record", rev, "--since", since, "--reason", "start", "--key", key("cem"), "-y"}, more...)...)...).want(t, 0)
+	}
+	call(t, in("anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y")...).want(t, 0)
+	record("c0", "2026-03-02T00:00:00Z")
+	record("c1", "2026-03-04T00:00:00Z", "--routes", "R1")
+	record("c1", "2026-03-08T00:00:00Z", "--replaces", "4")
+	for when, want := range map[string]bool{"2026-03-03T00:00:00Z": false, "2026-03-05T00:00:00Z": true, "2026-03-09T00:00:00Z": false} {
+		for _, route := range [][]string{nil, {"--route", "R1", "--at", "1.5"}} {
+			args := append([]string{"inforce", "--when", when}, route...)
+			text, form := call(t, in(args...)...).want(t, 0), call(t, in(append(args, "--format", "json")...)...).want(t, 0)
+			if strings.Contains(strings.Join(strings.Fields(text.out), " "), "Said otherwise, and not any more: 2026-03-04T00:00:00Z commit") != want || strings.Contains(form.out, `"by_entry": 5`) != want {
+				t.Errorf("%q: want %v\n%s%s", args, want, text.out, form.out)
+			}
+		}
+	}
+}

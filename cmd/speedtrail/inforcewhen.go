@@ -32,6 +32,9 @@ type inForceAnswer struct {
 	// Routes are the records of single routes that hold then in place of Record,
 	// where no route is asked for.
 	Routes []heldRecord `json:"routes"`
+	// Corrected are records that said otherwise of that instant until another one
+	// replaced or voided them, by entry.
+	Corrected []correctedRecord `json:"corrected"`
 	// Signed are the decisions on the assessments that led to the revision.
 	Signed []evidence   `json:"signed"`
 	Speeds []pointSpeed `json:"speeds"`
@@ -78,10 +81,15 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 	if err != nil {
 		return err
 	}
-	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Route: route, At: at, Routes: []heldRecord{}, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
+	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Route: route, At: at, Routes: []heldRecord{}, Corrected: []correctedRecord{}, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
 	now, _ := line.InForceAt(folder, route, when)
 	if route == "" {
 		answer.Routes = recordsOfRoutes(line, folder, when, now)
+	}
+	for _, x := range corrections(line, folder) {
+		if saidOtherwise(x.record, now, when, route) {
+			answer.Corrected = append(answer.Corrected, x)
+		}
 	}
 	if now != nil {
 		if err := a.fillInForce(ctx, &answer, line, *now, when, route, at); err != nil {
@@ -94,6 +102,12 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 		}
 		return printInForce(w, &answer, a.style().Width)
 	})
+}
+
+// saidOtherwise tells whether a record that was corrected would be the answer, for a
+// route or for any, beside the one that is.
+func saidOtherwise(r approval.Record, now *approval.Record, when time.Time, route string) bool {
+	return !r.Since.After(when) && (now == nil || !r.Since.Before(now.Since)) && (route == "" || len(r.Routes) == 0 || slices.Contains(r.Routes, route))
 }
 
 // recordsOfRoutes gives the records that hold on some routes in place of that of the
@@ -201,6 +215,9 @@ func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 			fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(joined(r.HoldsOn))+": "+r.words(), width, "  "))
 		}
 		fmt.Fprintln(w)
+	}
+	for _, c := range x.Corrected {
+		fmt.Fprintf(w, "%s\n\n", wrap("Said otherwise, and not any more: "+c.words(), width))
 	}
 	if x.Record == nil {
 		_, err := fmt.Fprintf(w, "Nothing is recorded as in force on %s at %s; speedtrail inforce lists what is.\nhead %s\n", cmp.Or(source.Visible(x.Route), "the whole network"), x.When, x.Head)
