@@ -43,6 +43,24 @@ func TestCalledOtherwise(t *testing.T) {
 	sign("! the assessment calls its base c0, which this repository does not know", "calls its target c1, which in this")
 }
 
+// TestRequestsChosen: that somebody chose the requests that declare a change is told to
+// whoever signs it.
+func TestRequestsChosen(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80}, []time.Time{at, at.Add(time.Hour)})
+	key := func(name string) string { return filepath.Join(keys, name) }
+	call(t, "--repo", repo, "anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y").want(t, 0)
+	call(t, "--repo", repo, "assess", "c0", "c1").want(t, 1)
+	call(t, "--repo", repo, "assess", "c0", "c1", "--request", "CR").want(t, 1)
+	for number, want := range map[string]bool{"1": false, "2": true} {
+		got := call(t, "--repo", repo, "sign", number, "--role", "checker", "--decision", "approve", "--reason", "seen", "--signer", "ada@tarn.example", "--write", filepath.Join(t.TempDir(), "statement")).want(t, 0)
+		if strings.Contains(strings.Join(strings.Fields(got.errors), " "), "chose the requests that count (--request CR)") != want {
+			t.Errorf("assessment %s: want %v\n%s", number, want, got.errors)
+		}
+	}
+}
+
 // TestStatementShown: what is signed is shown with every mark that a terminal does not
 // show.
 func TestStatementShown(t *testing.T) {

@@ -157,6 +157,10 @@ func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment, l
 	if err != nil {
 		return err
 	}
+	if named := doc.Computed.Options.Requests; len(named) > 0 {
+		// The statement says nothing of it where no finding is left.
+		otherwise = append(otherwise, fmt.Sprintf("whoever assessed this chose the requests that count (--request %s); what else the change adds or alters in requests/ was not looked at", source.Visible(strings.Join(named, ", "))))
+	}
 	for _, text := range otherwise {
 		fmt.Fprintf(a.err, "%s\n", wrap("! "+text, style.Width))
 	}
