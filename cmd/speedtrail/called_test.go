@@ -43,6 +43,31 @@ func TestCalledOtherwise(t *testing.T) {
 	sign("! the assessment calls its base c0, which this repository does not know", "calls its target c1, which in this")
 }
 
+// TestOddTime: the time by which an assessment judges is a claim of whoever committed.
+func TestOddTime(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	for name, c := range map[string]struct {
+		target time.Time
+		want   string
+	}{
+		"after the base":  {at.Add(time.Hour), ""},
+		"of the same":     {at, ""},
+		"before the base": {at.Add(-time.Second), "of 2026-03-01T11:59:59Z, before its base of 2026-03-01T12:00:00Z: by it the terms of acceptances"},
+		"to come":         {time.Now().AddDate(1, 0, 0), ", which is to come: by it the terms of acceptances"},
+	} {
+		keys := t.TempDir()
+		repo := composed(t, keys, []int{60, 80}, []time.Time{at, c.target})
+		key := func(name string) string { return filepath.Join(keys, name) }
+		call(t, "--repo", repo, "anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y").want(t, 0)
+		call(t, "--repo", repo, "assess", "c0", "c1").want(t, 1)
+		got := call(t, "--repo", repo, "sign", "1", "--role", "checker", "--decision", "approve", "--reason", "seen", "--signer", "ada@tarn.example", "--write", filepath.Join(t.TempDir(), "statement")).want(t, 0)
+		text := strings.Join(strings.Fields(got.errors), " ")
+		if strings.Contains(text, "the target's commit says") != (c.want != "") || !strings.Contains(text, c.want) {
+			t.Errorf("%s\n%s", name, got.errors)
+		}
+	}
+}
+
 // TestRequestsChosen: that somebody chose the requests that declare a change is told to
 // whoever signs it.
 func TestRequestsChosen(t *testing.T) {

@@ -161,6 +161,9 @@ func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment, l
 		// The statement says nothing of it where no finding is left.
 		otherwise = append(otherwise, fmt.Sprintf("whoever assessed this chose the requests that count (--request %s); what else the change adds or alters in requests/ was not looked at", source.Visible(strings.Join(named, ", "))))
 	}
+	if text := oddTime(&doc.Computed, time.Now()); text != "" {
+		otherwise = append(otherwise, text)
+	}
 	for _, text := range otherwise {
 		fmt.Fprintf(a.err, "%s\n", wrap("! "+text, style.Width))
 	}
@@ -169,6 +172,23 @@ func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment, l
 	}
 	fmt.Fprintf(a.err, "The whole report: speedtrail report %d --out report.html\n\n", x.Number)
 	return nil
+}
+
+// oddTime says where the time of the target cannot be right; empty where it can. Whoever
+// commits writes what he likes, and the terms of acceptances are compared with it.
+func oddTime(c *assessment.Computed, now time.Time) string {
+	const why = ": by it the terms of acceptances and of temporary restrictions are judged"
+	target, err := time.Parse(time.RFC3339, c.Target.Committed)
+	base, baseErr := time.Parse(time.RFC3339, c.Base.Committed)
+	switch {
+	case err != nil:
+		return ""
+	case target.After(now.Add(approval.Tolerance)):
+		return "the target's commit says that it is of " + c.Target.Committed + ", which is to come" + why
+	case baseErr == nil && target.Before(base):
+		return "the target's commit says that it is of " + c.Target.Committed + ", before its base of " + c.Base.Committed + why
+	}
+	return ""
 }
 
 // recompute computes an assessment anew and refuses any difference.
