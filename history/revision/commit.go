@@ -207,9 +207,11 @@ func headerPeople(data []byte) (author, committer, rest []byte, err error) {
 		if text, ok := bytes.CutPrefix(line, []byte(x.key)); ok {
 			*x.to, rest = text, after
 		}
-		if bytes.HasPrefix(rest, []byte("parent ")) {
-			return nil, nil, nil, errors.New("a parent stands behind the people")
-		}
+	}
+	// A parent that stands elsewhere is none to git: what came before it would be out
+	// of sight.
+	if headers, _, _ := bytes.Cut(data, []byte("\n\n")); bytes.HasPrefix(data, []byte("parent ")) || len(data) > 0 && data[0] != '\n' && bytes.Contains(headers, []byte("\nparent ")) {
+		return nil, nil, nil, errors.New("a parent does not stand beside the tree")
 	}
 	return author, committer, rest, nil
 }

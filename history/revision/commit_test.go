@@ -21,6 +21,9 @@ func TestCommits(t *testing.T) {
 		"tree is no hash":      "tree " + strings.Repeat("g", 40) + "\n" + people + "\nx\n",
 		"short parent":         "tree " + tree + "\nparent " + tree[:10] + "\n" + people + "\nx\n",
 		"parent after author":  "tree " + tree + "\nauthor Ann <a@fernway.example> 1 +0000\nparent " + tree + "\n" + people,
+		"parent after people":  "tree " + tree + "\n" + people + "parent " + tree + "\n\nx\n",
+		"parent after another": "tree " + tree + "\nother\nparent " + tree + "\n" + people + "\nx\n",
+		"two trees":            "tree " + tree + "\ntree " + tree + "\nparent " + tree + "\n" + people + "\nx\n",
 		"space before the tag": " tree " + tree + "\n" + people,
 	} {
 		hash := g.object("commit", content)
