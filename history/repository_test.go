@@ -22,6 +22,7 @@ type commit struct {
 //	a - b - c - d - g (empty)      c turns the keys over
 //	     \       \- f              f is a sibling of d
 //	      (a) - e                  eva, who is no person, had a part in e
+//	c - h, i                       h turns to a policy in which dan has another name
 //	a - m - o                      mal writes a policy of his own into m
 //	c - n - q                      n has no policy
 //	c - l - p, t - u               l has a lax policy, t a key of two principals
@@ -44,6 +45,8 @@ func newRepository() *repository {
 		"e": {"a", "e", "P1", []string{"dan@users.example", "eva@fell.example"}, nil},
 		"f": {"c", "f", "P2", dan, nil},
 		"g": {"d", "d", "P2", []string{"cem@users.example"}, nil},
+		"h": {"c", "h", "P3", dan, []string{"policy-changed"}},
+		"i": {"c", "i", "P2", dan, nil},
 		"m": {"a", "m", "own", dan, []string{"policy-changed"}},
 		"o": {"m", "o", "own", dan, nil},
 		"n": {"c", "n", "none", dan, nil},

@@ -64,6 +64,7 @@ func ownerOf(key string) string { return strings.TrimRight(key, "0123456789") + 
 //
 //	P1      that of the anchor
 //	P2      the same, with the key ada2 in the place of ada
+//	P3      as P2, with dax, another name of dan, in the place of dan, and a role more
 //	own     valid, but mal may do everything
 //	lax     not valid: no role is independent of preparer
 //	two     not valid: one key belongs to two principals
@@ -84,10 +85,13 @@ func writePolicy(name string) (signoff, signers string) {
 	people, keys := []string{"ada", "bea", "cem", "dan", "fay", "gus", "hal"}, []string{
 		"ada", "bea", "bea2", "cem", "dan", `fay valid-after="20270101Z"`, `gus valid-before="20260101Z"`, `hal namespaces="file"`,
 	}
-	independent, service := `["preparer"]`, "cem"
+	independent, service, more := `["preparer"]`, "cem", ""
 	switch name {
 	case "P2":
 		keys[0] = "ada2"
+	case "P3":
+		people[3], keys[0], keys[4] = "dax", "ada2", "dax"
+		more = "\n[[role]]\nname = \"reader\"\nneeded = 1\nindependent_of = [\"preparer\"]\n"
 	case "own":
 		people, keys, service = []string{"mal", "nan", "dan"}, []string{"mal", "nan", "dan"}, "mal"
 	case "lax":
@@ -101,6 +105,7 @@ func writePolicy(name string) (signoff, signers string) {
 	fmt.Fprintf(&b, "\n[[role]]\nname = \"checker\"\nneeded = 1\nindependent_of = %s\n", independent)
 	fmt.Fprintf(&b, "\n[[role]]\nname = \"approver\"\nneeded = 1\nindependent_of = %s\n", strings.Replace(independent, `"]`, `", "checker"]`, 1))
 	fmt.Fprintf(&b, "\n[[role]]\nname = \"in-service\"\nneeded = 1\nindependent_of = []\nsigners = [\"%s@tarn.example\"]\n", service)
+	b.WriteString(more)
 	for _, line := range keys {
 		key, options, _ := strings.Cut(line, " ")
 		if options != "" {
