@@ -112,6 +112,9 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 	}
 	if o.write != "" {
 		statement.Role, statement.Signer = o.role, o.signer
+		if err := approval.CheckRole(p.Parsed, o.role, o.signer); err != nil {
+			return refused(err) // or it would be signed elsewhere for nothing
+		}
 		_, err := (&signing{write: o.write}).finish(ctx, a, statement, nil)
 		return err
 	}

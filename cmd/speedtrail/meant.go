@@ -2,8 +2,11 @@ package main
 
 import (
 	"errors"
+	"regexp"
 	"slices"
 	"strings"
+
+	"github.com/spf13/cobra"
 
 	"speedtrail/history/revision"
 	"speedtrail/schema"
@@ -55,14 +58,34 @@ func some(names []string) string {
 func resolve(repo *revision.Repo, rev string) (revision.Commit, error) {
 	c, err := repo.Resolve(rev)
 	var unknown *revision.Error
-	if errors.Is(err, revision.ErrUnknown) && errors.As(err, &unknown) {
-		name := rev
-		if i := strings.IndexAny(rev, "~^@"); i > 0 {
-			name = rev[:i]
-		}
-		nearer := *unknown
-		nearer.Hint = meant(name, repo.Names(), unknown.Hint)
-		return c, &nearer
+	if !errors.Is(err, revision.ErrUnknown) || !errors.As(err, &unknown) {
+		return c, err
 	}
-	return c, err
+	name, names := rev, repo.Names()
+	if i := strings.IndexAny(rev, "~^@"); i > 0 {
+		name = rev[:i]
+	}
+	if slices.Contains(names, name) { // it is what follows that is wrong
+		return c, err
+	}
+	nearer := *unknown
+	nearer.Hint = meant(name, names, unknown.Hint)
+	return c, &nearer
+}
+
+// optionName finds the options in the list that help prints.
+var optionName = regexp.MustCompile(`(?m)^ +(?:-\w, )?(--[a-z-]+)`)
+
+// flagHint says what to do about an option that a command does not have.
+func flagHint(c *cobra.Command, err error) string {
+	hint := c.CommandPath() + " --help lists the options"
+	name, ok := strings.CutPrefix(err.Error(), "unknown flag: ")
+	if !ok {
+		return hint
+	}
+	var known []string
+	for _, found := range optionName.FindAllStringSubmatch(c.Flags().FlagUsages(), -1) {
+		known = append(known, found[1])
+	}
+	return meant(name, known, hint)
 }

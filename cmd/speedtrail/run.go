@@ -105,7 +105,7 @@ remarks to standard error.`,
 	flags.StringVar(&a.color, "color", "auto", "auto, always or never")
 	flags.BoolVarP(&a.quiet, "quiet", "q", false, "no progress and no remarks")
 	root.SetFlagErrorFunc(func(c *cobra.Command, err error) error {
-		return badCall(c.CommandPath()+" --help lists the options", "%v", err)
+		return badCall(flagHint(c, err), "%v", err)
 	})
 	root.AddCommand(a.demoCommand(), a.validateCommand(), a.profileCommand(), a.assessCommand(), a.reportCommand(), a.registerCommand(), a.traceCommand(),
 		a.signCommand(), a.anchorCommand(), a.revokeCommand(), a.inforceCommand(), a.verifyCommand(), a.exportCommand(), a.importCommand())

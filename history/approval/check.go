@@ -196,6 +196,9 @@ func checkRole(p *schema.Policy, role, signer string) error {
 	return nil
 }
 
+// CheckRole tells why a policy does not let a signer take a role; nil where it does.
+func CheckRole(p *schema.Policy, role, signer string) error { return checkRole(p, role, signer) }
+
 // nearly adds to a refusal which names a mistyped one can have meant.
 func nearly(err error, name string, known []string) error {
 	near := schema.Nearest(name, known)

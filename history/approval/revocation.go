@@ -5,15 +5,22 @@ import (
 	"speedtrail/schema"
 )
 
-// knowsKey tells whether a policy that the line has seen has a key. A revocation of
-// another would protect nothing, and look as if it did.
-func (l *Line) knowsKey(fingerprint string) bool {
+// checkKnown refuses a key that no policy has which the line has seen. A revocation of
+// it would protect nothing, and look as if it did.
+func (l *Line) checkKnown(fingerprint string) error {
+	var known []string
 	for _, p := range l.policies {
-		if p.Parsed != nil && p.Parsed.Key(fingerprint) != nil {
-			return true
+		if p.Parsed == nil {
+			continue
+		}
+		for _, k := range p.Parsed.Keys {
+			if k.Fingerprint == fingerprint {
+				return nil
+			}
+			known = append(known, k.Fingerprint)
 		}
 	}
-	return false
+	return nearly(refuse("no policy in this ledger has a key %s", fingerprint), fingerprint, known)
 }
 
 // checkRevocation checks that a key is taken out of use by its owner or by
@@ -29,8 +36,8 @@ func (l *Line) checkRevocation(r *Record) error {
 	if earlier, ok := l.Revoked(r.Key); ok {
 		return refuse("the key is revoked already, by entry %d", earlier.Entry.Seq)
 	}
-	if !l.knowsKey(r.Key) {
-		return refuse("no policy in this ledger has a key %s", r.Key)
+	if err := l.checkKnown(r.Key); err != nil {
+		return err
 	}
 	if r.Role == signoff.Owner {
 		if k := policy.Key(r.Key); k == nil || k.Principal != r.Signer {
@@ -38,7 +45,7 @@ func (l *Line) checkRevocation(r *Record) error {
 		}
 	} else {
 		if err := checkRole(policy, r.Role, r.Signer); err != nil {
-			return err
+			return nearly(err, r.Role, []string{signoff.Owner})
 		}
 		if !policy.Independent(r.Role, schema.Preparer) {
 			return refuse("the role %s is not independent of preparer", r.Role)
