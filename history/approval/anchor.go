@@ -104,7 +104,7 @@ func (l *Line) checkAnchorStatement(signed Signed, recorded time.Time, p Policy)
 	if r.Policy != p.Hash {
 		return r, refuse("the statement names the policy %s, the anchor holds %s", r.Policy, p.Hash)
 	}
-	if err := checkRole(p.Parsed, r.Role, r.Signer); err != nil {
+	if err := CheckRole(p.Parsed, r.Role, r.Signer); err != nil {
 		return r, err
 	}
 	return r, l.checkSignature(&r, p.Parsed)

@@ -169,8 +169,8 @@ func allowedKey(p *schema.Policy, fingerprint, signer string, times ...time.Time
 	return found, nil
 }
 
-// checkRole checks that a policy lets the signer take a role.
-func checkRole(p *schema.Policy, role, signer string) error {
+// CheckRole tells why a policy does not let a signer take a role; nil where it does.
+func CheckRole(p *schema.Policy, role, signer string) error {
 	r := p.Role(role)
 	if r == nil {
 		var names []string
@@ -195,9 +195,6 @@ func checkRole(p *schema.Policy, role, signer string) error {
 	}
 	return nil
 }
-
-// CheckRole tells why a policy does not let a signer take a role; nil where it does.
-func CheckRole(p *schema.Policy, role, signer string) error { return checkRole(p, role, signer) }
 
 // nearly adds to a refusal which names a mistyped one can have meant.
 func nearly(err error, name string, known []string) error {
@@ -271,7 +268,7 @@ func (l *Line) checkSignOff(r *Record) error {
 	}
 	// A role that only the policy in force has may be taken all the same.
 	if policy.Role(r.Role) != nil || r.inForce.Role(r.Role) == nil {
-		if err := checkRole(policy, r.Role, r.Signer); err != nil {
+		if err := CheckRole(policy, r.Role, r.Signer); err != nil {
 			return err
 		}
 	}
@@ -300,7 +297,7 @@ func (l *Line) checkByNewest(r *Record, a *Assessment) error {
 	if r.inForce.Role(r.Role) == nil {
 		return refuse("by the newest approved policy: it has no role %q; base the change on the newest release, and assess it again", r.Role)
 	}
-	err := checkRole(r.inForce, r.Role, r.Signer)
+	err := CheckRole(r.inForce, r.Role, r.Signer)
 	if err == nil {
 		err = l.checkIndependence(r, a, r.inForce)
 	}

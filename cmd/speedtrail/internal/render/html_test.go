@@ -127,3 +127,11 @@ func TestPageTrack(t *testing.T) {
 		}
 	}
 }
+
+// The filter compares ids as its list shows them, whatever stands in them.
+func TestFilterIDs(t *testing.T) {
+	c := &assessment.Computed{Trains: []assessment.Train{{ID: "A, B"}, {ID: "C\u202eD"}}}
+	if got, want := filterIDs(c, []int{0, 1}), "A, B\nC\\u202eD"; got != want {
+		t.Errorf("got %q, want %q", got, want)
+	}
+}
