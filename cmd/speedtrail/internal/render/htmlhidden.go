@@ -63,24 +63,32 @@ func hiddenAnchor(i int) string { return fmt.Sprintf("h%d", i+1) }
 // profileCommand writes the command that shows the speeds on track that only one
 // revision has: a comparison has none.
 func (p *page) profileCommand(route string, t assessment.TrackPiece) string {
-	side := &p.C.Target
+	side, id := &p.C.Target, ""
 	if t.Fate == "removed" {
 		side = &p.C.Base
 	}
-	words := []string{"speedtrail", "profile"}
-	if side.Commit != "" {
-		words = append(words, short(side.Commit))
-	}
-	if p.C.Folder != "." {
-		words = append(words, "--data="+p.C.Folder)
-	}
-	words = append(words, "--route="+route, "--direction="+t.Direction)
 	for _, train := range p.C.Trains {
 		if t.Fate == "removed" && train.Before == nil || t.Fate != "removed" && train.After == nil {
 			continue
 		}
-		words = append(words, "--train="+train.ID)
+		id = train.ID
 		break
+	}
+	return profileCommand(p.C, side, route, t.Direction, id)
+}
+
+// profileCommand writes the command that shows the profile of a train.
+func profileCommand(c *assessment.Computed, side *assessment.Revision, route, direction, train string) string {
+	words := []string{"speedtrail", "profile"}
+	if side.Commit != "" {
+		words = append(words, short(side.Commit))
+	}
+	if c.Folder != "." {
+		words = append(words, "--data="+c.Folder)
+	}
+	words = append(words, "--route="+route, "--direction="+direction)
+	if train != "" {
+		words = append(words, "--train="+train)
 	}
 	for i, w := range words {
 		words[i] = shellWord(w)

@@ -458,7 +458,30 @@ func (p *textWriter) family(r *assessment.Route, f family, place string, picture
 func (p *textWriter) end() {
 	p.printf("\n")
 	p.paragraph("", "Caution: "+Caution)
-	if p.r.Number != 0 {
-		p.printf("\nnext: speedtrail report %d --out report.html\n", p.r.Number)
+	p.printf("\n")
+	if command := p.oneTrain(); command != "" {
+		p.printf("one train: %s\n", command)
 	}
+	if p.r.Number != 0 {
+		p.printf("next: speedtrail report %d --out report.html\n", p.r.Number)
+	} else {
+		p.printf("next: the same call with --out report.html writes the report\n")
+	}
+}
+
+// oneTrain gives the command that shows the profile after the change of a train that
+// changes; empty where none does.
+func (p *textWriter) oneTrain() string {
+	for i := range p.c.Routes {
+		r := &p.c.Routes[i]
+		for k := range r.Changes {
+			x := &r.Changes[k]
+			for _, n := range x.Trains {
+				if t := &p.c.Trains[n]; t.After != nil {
+					return profileCommand(p.c, &p.c.Target, r.ID, x.Direction, t.ID)
+				}
+			}
+		}
+	}
+	return ""
 }
