@@ -102,7 +102,7 @@ func whereWords(f *assessment.Fleet, pieces []*assessment.FleetChange) string {
 		parts = append(parts, "km "+minus(x.From)+" to "+minus(x.To)+lengthWords(f, x))
 		if last[far(x)] == i {
 			for _, r := range behind[far(x)] {
-				parts = append(parts, "run-out to "+minus(far(r))+lengthWords(f, r))
+				parts = append(parts, "run-out to km "+minus(far(r))+lengthWords(f, r))
 			}
 		}
 	}

@@ -18,16 +18,16 @@ func TestWhereWords(t *testing.T) {
 		name, direction, want string
 		pieces                []*assessment.FleetChange
 	}{
-		{"run-out that continues", "nominal", "km 9.000 to 10.000; run-out to 10.300", []*assessment.FleetChange{
+		{"run-out that continues", "nominal", "km 9.000 to 10.000; run-out to km 10.300", []*assessment.FleetChange{
 			piece("9.000", "10.000", false, short, long), piece("10.000", "10.300", true, short, long)}},
-		{"run-out behind a gap", "nominal", "km 9.000 to 10.000; run-out to 10.300; run-out km 10.350 to 10.700", []*assessment.FleetChange{
+		{"run-out behind a gap", "nominal", "km 9.000 to 10.000; run-out to km 10.300; run-out km 10.350 to 10.700", []*assessment.FleetChange{
 			piece("9.000", "10.000", false, short, long), piece("10.000", "10.300", true, short, long), piece("10.350", "10.700", true, short, long)}},
 		{"run-out alone", "nominal", "run-out km 10.350 to 10.700", []*assessment.FleetChange{piece("10.350", "10.700", true, short, long)}},
-		{"run-out of each length", "nominal", "km 1.000 to 2.000; run-out to 2.100 (100 m long); run-out to 2.400 (400 m long)", []*assessment.FleetChange{
+		{"run-out of each length", "nominal", "km 1.000 to 2.000; run-out to km 2.100 (100 m long); run-out to km 2.400 (400 m long)", []*assessment.FleetChange{
 			piece("1.000", "2.000", false, short, long), piece("2.000", "2.100", true, short), piece("2.000", "2.400", true, long)}},
-		{"reverse", "reverse", "km 1.000 to 2.000; run-out to 0.600 (400 m long); run-out to 0.900 (100 m long); run-out km 3.000 to 3.100", []*assessment.FleetChange{
+		{"reverse", "reverse", "km 1.000 to 2.000; run-out to km 0.600 (400 m long); run-out to km 0.900 (100 m long); run-out km 3.000 to 3.100", []*assessment.FleetChange{
 			piece("0.600", "1.000", true, long), piece("0.900", "1.000", true, short), piece("1.000", "2.000", false, short, long), piece("3.000", "3.100", true, short, long)}},
-		{"pieces of two lengths that end together", "nominal", "km 1.000 to 2.000 (100 m long); km 1.300 to 2.000 (400 m long); run-out to 2.100 (100 m long)", []*assessment.FleetChange{
+		{"pieces of two lengths that end together", "nominal", "km 1.000 to 2.000 (100 m long); km 1.300 to 2.000 (400 m long); run-out to km 2.100 (100 m long)", []*assessment.FleetChange{
 			piece("1.000", "2.000", false, short), piece("1.300", "2.000", false, long), piece("2.000", "2.100", true, short)}},
 		{"lengths between", "nominal", "km 1.000 to 2.000 (150, 200 m long); km 3.000 to 4.000 (100, 200 m long); km 5.000 to 6.000", []*assessment.FleetChange{
 			piece("1.000", "2.000", false, 150_000, 200_000), piece("3.000", "4.000", false, short, 200_000), piece("5.000", "6.000", false, short, 200_000, long)}},

@@ -1,6 +1,7 @@
 package render
 
 import (
+	"bytes"
 	"fmt"
 	"io"
 	"strings"
@@ -22,7 +23,9 @@ func md(s string) string {
 		}
 		b.WriteRune(r)
 	}
-	return b.String()
+	var marked bytes.Buffer // Markdown is read in a browser, too
+	markText(&marked, []byte(b.String()))
+	return marked.String()
 }
 
 // Markdown writes the change report as Markdown with tables.
@@ -175,7 +178,7 @@ func markdownAccount(b *strings.Builder, c *assessment.Computed) {
 	list(curveWords, curves)
 	list("Raises too short to be used.", short)
 	if len(f.Runs) > 0 {
-		add("\n%s\n\n| route | direction | train | before | after | difference, s |\n|---|---|---|--:|--:|--:|\n", md(motionWords(c)))
+		add("\n%s\n\n| route | direction | train | before, min:s | after, min:s | difference, s |\n|---|---|---|--:|--:|--:|\n", md(motionWords(c)))
 		runs, more := bounded(f.Runs)
 		for _, r := range runs {
 			add("| %s | %s | %s | %s | %s | %s |\n", md(r.Route), r.Direction, md(r.Train), clock(r.Before), clock(r.After), seconds(r.After-r.Before))

@@ -76,9 +76,9 @@ func (p *textWriter) figures() {
 		p.heading("Running times")
 		p.paragraph("", motionWords(p.c))
 		t := plainTable()
-		t.AppendHeader(table.Row{"route", "direction", "train", "before", "after", "difference"})
-		// Beside the names stand 41 columns.
-		name := table.ColumnConfig{WidthMax: max(8, (p.s.Width-41)/2), WidthMaxEnforcer: text.WrapSoft}
+		t.AppendHeader(table.Row{"route", "direction", "train", "before min:s", "after min:s", "difference s"})
+		// Beside the names stand 54 columns.
+		name := table.ColumnConfig{WidthMax: max(8, (p.s.Width-54)/2), WidthMaxEnforcer: text.WrapSoft}
 		route, train := name, name
 		route.Number, train.Number = 1, 3
 		t.SetColumnConfigs(append([]table.ColumnConfig{route, train}, right[2:]...))
