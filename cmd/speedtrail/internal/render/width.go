@@ -25,13 +25,14 @@ func Cells(s string) int {
 // padded fills a text up with blanks on the right.
 func padded(s string, width int) string { return s + strings.Repeat(" ", max(0, width-Cells(s))) }
 
-// Wrap breaks a text into lines of at most width columns, at its blanks, and within
+// Wrap breaks a text into lines of at most width columns, at its blanks but for those
+// between a number and its unit, and within
 // words where letters of two columns stand beside each other: their languages write
 // no blanks. A longer word, such as a path, stays whole.
 func Wrap(s string, width int) []string {
 	var lines []string
 	line, used := "", 0
-	for _, word := range strings.Fields(s) {
+	for _, word := range withUnits(strings.Fields(s)) {
 		gap := 1
 		for _, part := range parts(word) {
 			n := Cells(part)
@@ -52,6 +53,33 @@ func Wrap(s string, width int) []string {
 		lines = append(lines, line)
 	}
 	return lines
+}
+
+// withUnits joins words that a reader needs beside each other: km and the position
+// after it, a number and the unit after it.
+func withUnits(words []string) []string {
+	var list []string
+	for _, word := range words {
+		if n := len(list) - 1; n >= 0 {
+			before := list[n]
+			before = before[strings.LastIndexByte(before, ' ')+1:]
+			position := strings.Trim(before, "(") == "km" && startsWithDigit(word)
+			unit := strings.TrimRight(word, ",;:.)")
+			if position || units[unit] && before[len(before)-1] >= '0' && before[len(before)-1] <= '9' {
+				list[n] += " " + word
+				continue
+			}
+		}
+		list = append(list, word)
+	}
+	return list
+}
+
+var units = map[string]bool{"km": true, "m": true, "mm": true, "s": true, "km/h": true}
+
+func startsWithDigit(s string) bool {
+	s = strings.TrimLeft(s, "\u2212-")
+	return s != "" && s[0] >= '0' && s[0] <= '9'
 }
 
 // parts cuts a word where a line may end: before and after each letter of two

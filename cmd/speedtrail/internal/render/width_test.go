@@ -22,6 +22,8 @@ func TestWrap(t *testing.T) {
 		{"\u5317\u7ebf, \u6539", 4, []string{"\u5317", "\u7ebf,", "\u6539"}},
 		{"R1 \u5317\u7ebf\u6539", 6, []string{"R1 \u5317", "\u7ebf\u6539"}},
 		{"e\u0301e\u0301 e\u0301", 4, []string{"e\u0301e\u0301 e\u0301"}},
+		{"to km 5.200 (600 m) at 100 km/h, then", 12, []string{"to km 5.200", "(600 m) at", "100 km/h,", "then"}},
+		{"over km and 20 minutes", 12, []string{"over km and", "20 minutes"}},
 		{"\u221220 \u221230", 7, []string{"\u221220 \u221230"}},
 	} {
 		if got := Wrap(x.text, x.width); !slices.Equal(got, x.want) {
