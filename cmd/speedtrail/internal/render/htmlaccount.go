@@ -8,7 +8,7 @@ import (
 )
 
 // mostHTMLFindings is how many findings of a kind a page shows.
-const mostHTMLFindings = 100
+const mostHTMLFindings = 500
 
 type pageFindings struct {
 	Title, Why, Do string

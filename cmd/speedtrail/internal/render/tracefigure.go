@@ -215,7 +215,7 @@ func (t *Trace) band(s *sketch, bands []TraceBand, i int, x func(int64) float64,
 			halo = ` stroke="#fff" stroke-width="4" paint-order="stroke"`
 		}
 		if p.Speed > 0 && !b.Gap {
-			shade := 105 + 145*p.Speed/top
+			shade := 118 + 132*p.Speed/top // black on the darkest has a contrast of 4.5 to 1
 			fill = fmt.Sprintf("#%02x%02x%02x", shade, shade, shade)
 		} else {
 			s.stripes(left, y, width, h, b.Gap)

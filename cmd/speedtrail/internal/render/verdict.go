@@ -170,6 +170,16 @@ func trainSentence(c *assessment.Computed) string {
 // the trains in it.
 const mostVerdictTrains = 120
 
+// withoutTrains leaves the bracket with the trains out of a long clause; the finding
+// itself names them. What follows the bracket stays.
+func withoutTrains(what string) string {
+	from, to := strings.Index(what, " ("), strings.LastIndexByte(what, ')')
+	if Cells(what) <= mostVerdictTrains || from < 0 || to < from {
+		return what
+	}
+	return what[:from] + what[to+1:]
+}
+
 // outsideSentence says how much lies outside what the requests declare.
 func outsideSentence(c *assessment.Computed) string {
 	outside, unseen, trains, first := 0, 0, 0, ""
@@ -178,9 +188,7 @@ func outsideSentence(c *assessment.Computed) string {
 		case assessment.Outside:
 			if outside++; outside == 1 {
 				what, _, _ := strings.Cut(f.Text, ":")
-				if head, _, ok := strings.Cut(what, " ("); ok && Cells(what) > mostVerdictTrains {
-					what = head // the finding itself names them
-				}
+				what = withoutTrains(what)
 				first = " First: " + findingPlace(f) + ", " + what + "."
 			}
 		case assessment.Unseen:

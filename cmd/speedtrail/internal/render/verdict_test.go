@@ -1,6 +1,7 @@
 package render
 
 import (
+	"strings"
 	"testing"
 
 	"speedtrail/history/assessment"
@@ -45,6 +46,20 @@ func TestVerdictOnExtremes(t *testing.T) {
 	}
 	if got, want := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Changes }), "up to +20 km/h over 3.000 km (A, C)"; got != want {
 		t.Errorf("got %q, want %q", got, want)
+	}
+}
+
+// Of a long clause the trains go, and nothing else.
+func TestWithoutTrains(t *testing.T) {
+	many := strings.Repeat("T01 (up), ", 20) + "T02"
+	for _, x := range [][2]string{
+		{"raised by up to 5 km/h, 30 to 35 (A, B), hidden today", "raised by up to 5 km/h, 30 to 35 (A, B), hidden today"},
+		{"raised by up to 5 km/h, 30 to 35 (" + many + "), hidden today", "raised by up to 5 km/h, 30 to 35, hidden today"},
+		{strings.Repeat("word ", 40), strings.Repeat("word ", 40)},
+	} {
+		if got := withoutTrains(x[0]); got != x[1] {
+			t.Errorf("%q: got %q", x[0], got)
+		}
 	}
 }
 
