@@ -41,8 +41,8 @@ func findingGroups(c *assessment.Computed) []findingGroup {
 // colon, is said once, in tail.
 func (g findingGroup) commonTail() (texts []string, tail string) {
 	for i, f := range g.List {
-		text, end, ok := strings.Cut(f.Text, ": ")
-		if !ok || i > 0 && end != tail {
+		text, end := cutTail(f.Text)
+		if end == "" || i > 0 && end != tail {
 			tail = ""
 			break
 		}
@@ -56,6 +56,16 @@ func (g findingGroup) commonTail() (texts []string, tail string) {
 		return texts, ""
 	}
 	return texts, " Of each: " + tail + "."
+}
+
+// cutTail takes what follows the last colon from a text: ids of trains, which stand
+// before, can have colons of their own.
+func cutTail(text string) (head, tail string) {
+	i := strings.LastIndex(text, ": ")
+	if i < 0 {
+		return text, ""
+	}
+	return text[:i], text[i+2:]
 }
 
 func (g findingGroup) title() string {

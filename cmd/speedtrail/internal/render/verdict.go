@@ -187,7 +187,7 @@ func outsideSentence(c *assessment.Computed) string {
 		switch f.ID {
 		case assessment.Outside:
 			if outside++; outside == 1 {
-				what, _, _ := strings.Cut(f.Text, ":")
+				what, _ := cutTail(f.Text)
 				what = withoutTrains(what)
 				first = " First: " + findingPlace(f) + ", " + what + "."
 			}

@@ -49,6 +49,15 @@ func TestVerdictOnExtremes(t *testing.T) {
 	}
 }
 
+// An id with a colon does not cut a finding short.
+func TestCutTail(t *testing.T) {
+	for _, x := range [][3]string{{"raised (A: B): nobody asked", "raised (A: B)", "nobody asked"}, {"raised", "raised", ""}} {
+		if head, tail := cutTail(x[0]); head != x[1] || tail != x[2] {
+			t.Errorf("%q: got %q, %q", x[0], head, tail)
+		}
+	}
+}
+
 // Of a long clause the trains go, and nothing else.
 func TestWithoutTrains(t *testing.T) {
 	many := strings.Repeat("T01 (up), ", 20) + "T02"
