@@ -4,6 +4,7 @@ import (
 	"cmp"
 	"math"
 	"slices"
+	"sort"
 
 	"speedtrail/diff/align"
 	"speedtrail/diff/delta"
@@ -12,6 +13,7 @@ import (
 	"speedtrail/diff/profile"
 	"speedtrail/diff/step"
 	"speedtrail/schema"
+	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
@@ -193,17 +195,26 @@ func tenths(seconds float64) int64 { return int64(math.Floor(float64(seconds*10)
 // onBase gives where a stretch of the target's track lies on the base's; false
 // where that is not in one piece there.
 func (p *pair) onBase(from, to unit.Distance) (unit.Distance, bool) {
-	for _, c := range p.cells {
-		if c.Target <= from && to <= c.Target+c.Length {
-			return c.Base + from - c.Target, true
-		}
+	i := cellAt(p.cells, from)
+	if i == len(p.cells) || p.cells[i].Target > from || to > p.cells[i].Target+p.cells[i].Length {
+		return 0, false
 	}
-	return 0, false
+	return p.cells[i].Base + from - p.cells[i].Target, true
+}
+
+// cellAt gives the index of the first cell that ends beyond a place on the target's
+// track.
+func cellAt(cells []align.Cell, at unit.Distance) int {
+	return sort.Search(len(cells), func(i int) bool { return cells[i].Target+cells[i].Length > at })
 }
 
 // seen tells whether the sides can differ on a stretch of the target's track.
 func (p *pair) seen(from, to unit.Distance) bool {
-	return !p.same || slices.ContainsFunc(p.all.cells, func(c align.Cell) bool { return c.Target < to && from < c.Target+c.Length })
+	if !p.same {
+		return true
+	}
+	i := cellAt(p.all.cells, from)
+	return i < len(p.all.cells) && p.all.cells[i].Target < to
 }
 
 // fastest gives the time of approach of the fastest train that a side admits.
@@ -220,13 +231,14 @@ func fastest(c *profile.Compiler, from, to unit.Distance) int64 {
 
 func (p *pair) crossings(f *Figures) {
 	route := p.route.Target
+	before := p.crossingsBefore()
 	for i := range route.Places {
 		place := &route.Places[i]
 		from, to, ok := impact.Approach(place, p.direction, route.Track.Length())
 		if !ok {
 			continue
 		}
-		old := p.crossingBefore(place)
+		old := before[postsOf(&place.Row)]
 		altered := old != nil && (old.StrikeIn != place.StrikeIn || old.WarningDS != place.WarningDS)
 		if !altered && !p.seen(from, to) {
 			continue
@@ -253,15 +265,17 @@ func (p *pair) crossings(f *Figures) {
 	}
 }
 
-// crossingBefore finds the base's crossing in the place of one of the target, for
-// this direction of travel: each may have a row of its own, with its strike-in.
-func (p *pair) crossingBefore(place *schema.PlaceRow) *schema.PlaceRow {
+// crossingsBefore gives the base's crossings by their places, for this direction of
+// travel: each may have a row of its own, with its strike-in.
+func (p *pair) crossingsBefore() map[posts]*schema.PlaceRow {
+	list := map[posts]*schema.PlaceRow{}
 	for i := range p.route.Base.Places {
-		if old := &p.route.Base.Places[i]; old.Kind == schema.Crossing && old.Directions.Has(p.direction) && samePlace(&old.Row, &place.Row) {
-			return old
+		old := &p.route.Base.Places[i]
+		if at := postsOf(&old.Row); old.Kind == schema.Crossing && old.Directions.Has(p.direction) && list[at] == nil {
+			list[at] = old
 		}
 	}
-	return nil
+	return list
 }
 
 // approachBefore gives the approach on the base's track: that of its own crossing,
@@ -276,16 +290,16 @@ func (p *pair) approachBefore(old *schema.PlaceRow, from, to unit.Distance) (bas
 
 func (p *pair) curves(f *Figures, trains []Train) {
 	longest := longestOf(trains)
+	olds := map[posts]*schema.CurveRow{}
+	for i := range p.route.Base.Curves {
+		olds[postsOf(&p.route.Base.Curves[i].Row)] = &p.route.Base.Curves[i]
+	}
 	for i := range p.route.Target.Curves {
 		row := &p.route.Target.Curves[i]
 		base, onBase := p.onBase(row.Start, row.End)
 		var old *schema.CurveRow
 		if onBase {
-			for k := range p.route.Base.Curves {
-				if c := &p.route.Base.Curves[k]; samePlace(&c.Row, &row.Row) {
-					old = c
-				}
-			}
+			old = olds[postsOf(&row.Row)]
 		}
 		altered := old == nil || old.RadiusM != row.RadiusM || old.CantMM != row.CantMM
 		if !altered && !p.seen(row.Start, row.End) {
@@ -323,7 +337,7 @@ func (p *pair) curves(f *Figures, trains []Train) {
 	}
 }
 
-// samePlace tells whether two rows are for the same stretch.
-func samePlace(a, b *schema.Row) bool {
-	return a.From.Plain() == b.From.Plain() && a.To.Plain() == b.To.Plain()
-}
+// posts is the stretch that a row is for, as it is written in either revision.
+type posts struct{ from, to chainage.Point }
+
+func postsOf(r *schema.Row) posts { return posts{r.From.Plain(), r.To.Plain()} }

@@ -65,12 +65,18 @@ func New(route *schema.Route, direction codes.Direction, filter Filter) *Compile
 	slices.SortStableFunc(c.rows, func(a, b restriction) int {
 		return cmp.Or(comparePlace(&a, &b), cmp.Compare(a.pos.Line, b.pos.Line))
 	})
+	c.prepare()
+	return c
+}
+
+// prepare fills in what the rows, which are in their order, are found by.
+func (c *Compiler) prepare() {
 	for i, r := range c.rows {
 		start, end := rowEnd{r.start, int32(i), false}, rowEnd{r.end, int32(i), true}
 		switch {
 		case !r.delay:
 			c.fixed = append(c.fixed, start, end)
-		case direction == codes.Reverse:
+		case c.direction == codes.Reverse:
 			c.fixed, c.moved = append(c.fixed, end), append(c.moved, start)
 		default:
 			c.fixed, c.moved = append(c.fixed, start), append(c.moved, end)
@@ -80,7 +86,6 @@ func New(route *schema.Route, direction codes.Direction, filter Filter) *Compile
 		slices.SortFunc(list, func(a, b rowEnd) int { return cmp.Compare(a.at, b.at) })
 	}
 	c.latest = latestOf(c.rows)
-	return c
 }
 
 func latestOf(rows []restriction) []unit.Distance {

@@ -3,6 +3,7 @@ package profile
 import (
 	"cmp"
 	"slices"
+	"sort"
 
 	"speedtrail/diff/align"
 	"speedtrail/schema/unit"
@@ -88,9 +89,19 @@ func (c *Compiler) sameCells(r *restriction, d *Compiler, s *restriction) bool {
 }
 
 // Window gives a compiler of the rows that can hold between two distances for a
-// train up to the longest. There it gives what the whole one gives.
+// train up to the longest. There it gives what the whole one gives. It looks at those
+// rows only, but for long ones before them.
 func (c *Compiler) Window(from, to, longest unit.Distance) *Compiler {
-	return c.part(longest, func(i align.Interval) bool { return i.From < to && from < i.To })
+	p := &Compiler{route: c.route, direction: c.direction}
+	before, after := c.shifts(longest)
+	first := sort.Search(len(c.latest), func(i int) bool { return c.latest[i]+after > from })
+	for i := first; i < len(c.rows) && c.rows[i].start-before < to; i++ {
+		if x := c.extent(&c.rows[i], longest); x.From < to && from < x.To {
+			p.rows = append(p.rows, c.rows[i])
+		}
+	}
+	p.prepare()
+	return p
 }
 
 // Permanent gives a compiler of the rows that are not temporary restrictions.
