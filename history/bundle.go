@@ -9,7 +9,6 @@ import (
 	"fmt"
 	"io"
 	"iter"
-	"math"
 
 	"github.com/go-json-experiment/json"
 	"github.com/go-json-experiment/json/jsontext"
@@ -22,9 +21,8 @@ import (
 	"speedtrail/schema/source"
 )
 
-// maxLine bounds the line of an entry, in bytes: SQLite holds bodies of up to 10^9,
-// and of their bytes the quotes take two in a line. What was recorded can be imported.
-const maxLine = min(4<<30, math.MaxInt)
+// maxLine bounds the line of an entry that is imported, in bytes.
+const maxLine = 512 << 20
 
 // exported is an entry as a line of JSON. The body is a text: its bytes are
 // hashed as they stand there.
@@ -56,6 +54,40 @@ func Export(ctx context.Context, l *ledger.Ledger, w io.Writer) error {
 		}
 	}
 	return b.Flush()
+}
+
+// CheckBody refuses a body that is so large that no import would read the export of
+// its entry: once recorded, it would stand in the way of every export.
+func CheckBody(body []byte) error { return checkBody(body, maxLine) }
+
+func checkBody(body []byte, most int) error {
+	// Beside the body a line has less than restOfLine bytes, and of the body's bytes
+	// none takes more than six.
+	const restOfLine, largest = 1000, 6
+	if len(body) <= (most-restOfLine)/largest {
+		return nil
+	}
+	text, err := json.Marshal(string(body))
+	if err != nil {
+		return err
+	}
+	var n counted
+	if _, err := source.InertJSON(&n).Write(text); err != nil {
+		return err
+	}
+	if int(n) > most-restOfLine {
+		return fmt.Errorf("it takes %d bytes in an export, of which import reads %d at most", n, most-restOfLine)
+	}
+	return nil
+}
+
+// counted counts what is written.
+type counted int
+
+// Write implements io.Writer.
+func (n *counted) Write(p []byte) (int, error) {
+	*n += counted(len(p))
+	return len(p), nil
 }
 
 // ImportError is what is wrong with a line of an import.

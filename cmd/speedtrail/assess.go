@@ -254,6 +254,9 @@ func (a *app) record(ctx context.Context, doc *assessment.Document, into *record
 	if err != nil {
 		return render.Record{}, err
 	}
+	if err := history.CheckBody(body); err != nil {
+		return render.Record{}, badCall("assess with fewer reference trains, or the change in steps; --no-record shows the result", "the assessment is too large to be recorded: %v", err)
+	}
 	number, added, head, err := l.RecordAssessment(ctx, time.Now(), assessment.LedgerRecord(doc, body, digest))
 	if err != nil {
 		return render.Record{}, fmt.Errorf("the assessment was not recorded: %w", err)
