@@ -38,15 +38,14 @@ func (a *app) export(ctx context.Context, args []string) error {
 		return err
 	}
 	defer l.Close()
+	var number int64
 	if len(args) == 1 {
-		number, err := assessmentNumber(args[0])
-		if err != nil {
+		if number, err = assessmentNumber(args[0]); err != nil {
 			return err
 		}
 		if _, _, err := l.Assessment(ctx, number); err != nil {
 			return err
 		}
-		defer a.remark("the signer: speedtrail import FILE --ledger copy.db, then in a clone: speedtrail sign %d --ledger copy.db --role ROLE --decision approve --reason TEXT --key FILE --write statement; the custodian: speedtrail sign %d --statement statement --signature statement.sig", number, number)
 	}
 	// What import would refuse is no copy of the ledger.
 	if _, _, err := history.ReadLine(ctx, l); err != nil {
@@ -56,6 +55,9 @@ func (a *app) export(ctx context.Context, args []string) error {
 		return err
 	}
 	a.remarkFile()
+	if number > 0 {
+		a.remark("the signer: speedtrail import FILE --ledger copy.db, then in a clone: speedtrail sign %d --ledger copy.db --role ROLE --decision approve --reason TEXT --key FILE --write statement; the custodian: speedtrail sign %d --statement statement --signature statement.sig", number, number)
+	}
 	return nil
 }
 

@@ -56,6 +56,13 @@ func TestRemarks(t *testing.T) {
 	if got.status == 0 || !strings.Contains(got.errors, fmt.Sprintf("folder %q", filepath.Dir(out))) || strings.Contains(got.errors, ".report.html") {
 		t.Errorf("a folder that is not there: status %d\n%s", got.status, got.errors)
 	}
+	// What to do with an export is said of one that was written.
+	for folder, status := range map[string]int{filepath.Dir(out): statusFailed, t.TempDir(): statusDone} {
+		got = call(t, in("export", "1", "--out", filepath.Join(folder, "bundle.jsonl"))...)
+		if got.status != status || strings.Contains(got.errors, "the signer:") != (status == statusDone) {
+			t.Errorf("export to %s: status %d\n%s", folder, got.status, got.errors)
+		}
+	}
 }
 
 // A correction of what cannot be an entry is not taken for none.
