@@ -108,7 +108,7 @@ func (c *check) temporaryRows() {
 		if !row.Valid.Until.IsZero() && !row.Valid.Until.After(c.at) {
 			c.add(TemporaryExpired, &row.Row, fmt.Sprintf("%s, %d km/h, was valid to %s", row.ID, row.Speed, row.Valid.WrittenTo))
 		}
-		if highest := c.highest(&row.Row); row.Speed >= highest && highest > 0 {
+		if highest := c.highest(&row.Row); row.Speed >= highest && highest > 0 && !c.holdsBehind(row, row.Speed) {
 			c.add(TemporaryNoEffect, &row.Row, fmt.Sprintf("%s, %d km/h, is nowhere below the line speed, at most %d km/h here for any train", row.ID, row.Speed, highest))
 		}
 	}
@@ -128,6 +128,31 @@ func (c *check) highest(row *schema.Row) (highest unit.Speed) {
 		}
 	}
 	return highest
+}
+
+// holdsBehind tells whether a restriction can hold a train, by its length, where it
+// has left the stretch: the row of speed.csv that it ends in lets go of the train for
+// its front, and a faster one lies within the longest reference train behind it.
+func (c *check) holdsBehind(row *schema.TemporaryRow, v unit.Speed) bool {
+	if !row.Delay {
+		return false
+	}
+	for _, d := range codes.AllDirections {
+		if !(row.Directions & c.route.Directions).Has(d) {
+			continue
+		}
+		behind, last := row.Row, row.End-1
+		behind.Directions, behind.Start, behind.End = 1<<d, row.End, min(row.End+c.longest(), c.route.Track.Length())
+		if d == codes.Reverse {
+			behind.Start, behind.End, last = max(row.Start-c.longest(), 0), row.Start, row.Start
+		}
+		for s := range c.speeds.on(last, last+1) {
+			if s.Directions.Has(d) && !s.Delay && behind.Start < behind.End && c.highest(&behind) > v {
+				return true
+			}
+		}
+	}
+	return false
 }
 
 // curves looks at the speeds on curves.
