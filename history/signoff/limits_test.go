@@ -117,3 +117,21 @@ func TestRoutesOfStatement(t *testing.T) {
 		}
 	}
 }
+
+// A folder has one form, so that there is one line of approval for it.
+func TestFolderOfStatement(t *testing.T) {
+	for _, folder := range []string{"./", "a/", "/a", "a//b", "./a", "a/..", "..", "../a", "a/./b"} {
+		s := example(SignOff)
+		s.Folder = folder
+		if _, err := s.Text(); !errors.Is(err, ErrMalformed) {
+			t.Errorf("%q: %v", folder, err)
+		}
+	}
+	for _, folder := range []string{".", "a", "a/b", "..a", "a b/c", `a\b`} {
+		s := example(SignOff)
+		s.Folder = folder
+		if _, err := s.Text(); err != nil {
+			t.Errorf("%q: %v", folder, err)
+		}
+	}
+}

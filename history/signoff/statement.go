@@ -23,6 +23,7 @@ package signoff
 import (
 	"errors"
 	"fmt"
+	"path"
 	"slices"
 	"strconv"
 	"strings"
@@ -204,6 +205,10 @@ func (s Statement) Text() ([]byte, error) {
 	}
 	if len(s.Reason) > MaxReason {
 		return nil, malformed("the reason has %d bytes, at most %d are allowed", len(s.Reason), MaxReason)
+	}
+	// Another way to write a folder would be another folder: with an anchor of its own.
+	if f := s.Folder; path.Clean(f) != f || path.IsAbs(f) || f == ".." || strings.HasPrefix(f, "../") {
+		return nil, malformed("folder %q is not a path from the root of a repository in its one form", f)
 	}
 	for _, r := range s.Routes {
 		// No name, as behind a comma at the end, would stand for the whole network.
