@@ -321,7 +321,7 @@ func (v *verifier) git() error {
 				other++
 				v.lock.Unlock()
 			case err != nil:
-				v.problem(d.entry, "git", "the assessment cannot be computed anew: %v", err)
+				v.problem(d.entry, "git", "the assessment cannot be computed anew: %s", unhinted(err))
 				v.lock.Lock()
 				failed++
 				v.lock.Unlock()
@@ -353,7 +353,7 @@ func (v *verifier) statements() error {
 		tree, signoff, signers, err := v.o.Checker.Content(v.ctx, revision, folder)
 		switch {
 		case err != nil:
-			v.problem(entry, "git", "the commit %s that it names cannot be read: %v", revision, err)
+			v.problem(entry, "git", "the commit %s that it names cannot be read: %s", revision, unhinted(err))
 		case tree != content:
 			v.problem(entry, "git", "the folder %s of commit %s has the content %s, the statement says %s", folder, revision, tree, content)
 		case policy != nil && (policy.SignOff != signoff || policy.AllowedSigners != signers):
@@ -367,6 +367,12 @@ func (v *verifier) statements() error {
 		check(r.Entry.Seq, r.Revision, r.Folder, r.Content, nil)
 	}
 	return v.ctx.Err()
+}
+
+// unhinted leaves out what an error says to do: here it says what was found.
+func unhinted(err error) string {
+	text, _, _ := strings.Cut(err.Error(), "\nhint: ")
+	return text
 }
 
 // mostBackwards is how many places are named at which the times of entries go back.

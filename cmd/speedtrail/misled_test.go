@@ -113,3 +113,17 @@ func TestRowLeadsElsewhere(t *testing.T) {
 		t.Errorf("verify: status %d\n%s", got.status, got.out)
 	}
 }
+
+// TestVerifyOfGoneCommit: what is wrong is one sentence.
+func TestVerifyOfGoneCommit(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80}, []time.Time{at, at.Add(time.Hour)})
+	other := composed(t, keys, []int{70}, []time.Time{at})
+	file := filepath.Join(repo, ".git", "speedtrail", "ledger.db")
+	call(t, "--repo", repo, "assess", "c0", "c1").want(t, 1)
+	got := call(t, "--repo", other, "--ledger", file, "verify").want(t, statusFinding)
+	if !strings.Contains(got.out, "no such object here\n") || strings.Contains(got.out, "hint") {
+		t.Error(got.out)
+	}
+}
