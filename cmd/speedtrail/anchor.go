@@ -110,6 +110,9 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 		Kind: signoff.Anchor, Ledger: l.ID(), Revision: s.commit.Hash, Folder: folder, Content: tree, Policy: p.Hash,
 		Reason: o.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
 	}
+	if o.write != "" || len(o.signs) > 0 {
+		a.showPolicy(p.Parsed)
+	}
 	if o.write != "" {
 		statement.Role, statement.Signer = o.role, o.signer
 		if err := approval.CheckRole(p.Parsed, o.role, o.signer); err != nil {

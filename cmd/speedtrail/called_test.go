@@ -86,6 +86,27 @@ func TestRequestsChosen(t *testing.T) {
 	}
 }
 
+// TestPolicyShown: of an anchor the statement holds a hash; what it is the hash of is
+// told beside it.
+func TestPolicyShown(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60}, []time.Time{at})
+	key := func(name string) string { return filepath.Join(keys, name) }
+	for _, args := range [][]string{
+		{"--write", filepath.Join(t.TempDir(), "statement"), "--role", "checker", "--signer", "ada@tarn.example"},
+		{"--sign", "checker=" + key("ada"), "--sign", "approver=" + key("bea"), "--sign", "in-service=" + key("cem"), "-y"},
+	} {
+		got := call(t, append([]string{"--repo", repo, "anchor", "c0", "--reason", "root"}, args...)...).want(t, 0)
+		shown, _, _ := strings.Cut(got.errors, "The statement:")
+		for _, want := range []string{"The policy:\n", "  role checker: needed 1, of any person, independent of preparer\n", "  person ada@tarn.example: ada@tarn.example", "  key SHA256:", " of ada@tarn.example\n"} {
+			if !strings.Contains(shown, want) {
+				t.Errorf("%q is missing\n%s", want, got.errors)
+			}
+		}
+	}
+}
+
 // TestStatementShown: what is signed is shown with every mark that a terminal does not
 // show.
 func TestStatementShown(t *testing.T) {
