@@ -4,6 +4,7 @@ import (
 	"cmp"
 	"fmt"
 	"io"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -139,7 +140,7 @@ func (t *Trace) stepText(b *strings.Builder, step *TraceStep, s Style) {
 		change = text.Bold.Sprint(change)
 	}
 	fmt.Fprintf(b, "\n  %s  %s  %s  %s\n", day(c), change, short(c.Hash), source.Visible(c.Author.Name))
-	indent(b, margin, source.Visible(c.Subject), s)
+	subjectText(b, c.Subject, s)
 	lines := [][2]string{}
 	for _, v := range step.Before {
 		if v.Speed > 0 {
@@ -200,7 +201,7 @@ func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) 
 			speed = text.Bold.Sprint(speed)
 		}
 		fmt.Fprintf(b, "\n  km %s to %s  %s  since %s  %s  %s\n", from[i], to[i], speed, day(c), short(c.Hash), source.Visible(c.Author.Name))
-		indent(b, margin, source.Visible(c.Subject), s)
+		subjectText(b, c.Subject, s)
 		lines := [][2]string{{"by", assessment.SourceText(p.Sources)}, {"request", requestWords(c)}, {"assessed", assessmentWords(c)}}
 		for _, remark := range pieceRemarks(t, p) {
 			lines = append(lines, [2]string{"remark", remark})
@@ -208,6 +209,25 @@ func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) 
 		labelled(b, lines, s)
 	}
 }
+
+// subjectText writes the subject of a commit so that no line of it passes for one that
+// has a label: whoever commits words it.
+func subjectText(b *strings.Builder, subject string, s Style) {
+	words := strings.Fields(source.Visible(subject))
+	if len(words) > 0 && slices.Contains(labels, strings.ToLower(words[0])) {
+		words[0] = `"` + words[0]
+		words[len(words)-1] += `"`
+	}
+	for i, line := range Wrap(strings.Join(words, " "), max(40, s.Width-len(margin)-2)) {
+		if i > 0 {
+			line = "  " + line
+		}
+		fmt.Fprintln(b, margin+line)
+	}
+}
+
+// labels stand before the lines of a step or piece.
+var labels = []string{"before", "after", "by", "request", "assessed", "remark", "gap"}
 
 // labelled writes lines behind a label each.
 func labelled(b *strings.Builder, lines [][2]string, s Style) {
