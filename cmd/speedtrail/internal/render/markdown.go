@@ -37,7 +37,7 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 	if r.Number != 0 {
 		state = fmt.Sprintf("assessment %d, %s", r.Number, r.State)
 	}
-	add("# Change of route speed data: %s (%s)\n\n", md(c.Dataset), state)
+	add("# Change of route speed data: %s (%s)\n\n", md(titled(c.Dataset)), state)
 	add("| | |\n|---|---|\n| base | %s |\n| target | %s |\n", md(revisionName(d.Named.Base, d.Named.BaseName, c.Base)+details(c.Base)), md(revisionName(d.Named.Target, d.Named.TargetName, c.Target)+details(c.Target)))
 	if len(c.Preparers) > 0 {
 		add("| prepared by | %s |\n", md(people(c.Preparers)+countedWords(c)))

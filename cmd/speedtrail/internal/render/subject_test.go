@@ -23,3 +23,12 @@ func TestSubjectText(t *testing.T) {
 		}
 	}
 }
+
+// Nor can the name of a data set look like the state of an assessment.
+func TestTitled(t *testing.T) {
+	for name, want := range map[string]string{"Fell network": "Fell network", "Fell (assessment 3, approved)": `"Fell (assessment 3, approved)"`, `Fell" (approved)`: `"Fell\" (approved)"`} {
+		if got := titled(name); got != want {
+			t.Errorf("%s, want %s", got, want)
+		}
+	}
+}

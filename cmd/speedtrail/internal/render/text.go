@@ -86,7 +86,7 @@ func (p *textWriter) title() {
 	if p.r.Number != 0 {
 		state = fmt.Sprintf("assessment %d, %s", p.r.Number, p.r.State)
 	}
-	p.paragraph("", fmt.Sprintf("Change of route speed data: %s (%s)", p.c.Dataset, state))
+	p.paragraph("", fmt.Sprintf("Change of route speed data: %s (%s)", titled(p.c.Dataset), state))
 	side := func(word, typed, name string, r assessment.Revision) {
 		p.paragraph(fmt.Sprintf("%-10s", word), revisionName(typed, name, r)+details(r))
 	}
@@ -105,6 +105,15 @@ func (p *textWriter) title() {
 	if p.r.Digest != "" {
 		p.printf("%-10s%s\n", "digest", p.r.Digest)
 	}
+}
+
+// titled writes the name of a data set where a state follows it in brackets: a name
+// that has brackets of its own stands in quotes.
+func titled(name string) string {
+	if strings.ContainsAny(name, "()") {
+		return source.Quote(name)
+	}
+	return name
 }
 
 // details gives date and subject of a commit.
