@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"slices"
+	"strings"
 
 	"speedtrail/diff/doubt"
 	"speedtrail/schema"
@@ -41,6 +42,12 @@ func doubtfulNames(d *schema.Dataset) []string {
 			}
 			add(at, "%s: to_km %s %s from_km %s along route %s; where the track has gone since, nothing need be done", what, s.To, how, s.From, id)
 		}
+	}
+	if off := doubt.Unchecked(d.Limits); len(off) > 0 {
+		for i, id := range off {
+			off[i] = id + " (" + doubt.LimitKey(id) + ")"
+		}
+		add(source.Position{File: "dataset.toml"}, "not looked for, as [limits] sets no limit: %s", strings.Join(off, ", "))
 	}
 	for _, q := range d.Requests {
 		what := "request " + q.ID

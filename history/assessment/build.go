@@ -49,6 +49,7 @@ func Build(in Input) *Document {
 		EqualRoutes:   in.Account.Equal,
 		Files:         files(in.Base.Files, in.Target.Files),
 		Folder:        in.Folder,
+		Limits:        limits(in.Base.Limits, in.Target.Limits),
 		Options:       in.Options,
 		Policy:        Policies{Base: policy(in.Base), Target: policy(in.Target)},
 		Preparers:     in.Preparers,

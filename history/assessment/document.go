@@ -56,6 +56,7 @@ type Computed struct {
 	Findings    []Finding     `json:"findings"` // in the order in which to look at them
 	Fleet       []Fleet       `json:"fleet"`
 	Folder      string        `json:"folder"` // the data set's folder in the repository, "." for its root
+	Limits      Limits        `json:"limits"`
 	Options     Options       `json:"options"`
 	Policy      Policies      `json:"policy"`
 	// PreparedSince is the commit from which preparers are counted, where that is not
@@ -116,6 +117,16 @@ type Options struct {
 	NoRequests bool     `json:"no_requests"` // the reconciliation was left out
 	Requests   []string `json:"requests"`    // ids given with --request; empty: those added or altered
 	Rolling    bool     `json:"rolling"`     // running times begin and end at speed
+}
+
+// Limits are the limits of dataset.toml by which doubtful data is looked for, of each
+// the stricter of both revisions; 0 where neither sets it.
+type Limits struct {
+	CantExcess      int   `json:"cant_excess_mm"`
+	LargestStep     int   `json:"largest_step_kmh"`
+	ShortestStretch int64 `json:"shortest_stretch_mm"`
+	// Unchecked are the findings that nobody looked for, as their limit is not set.
+	Unchecked []string `json:"unchecked"`
 }
 
 // File is a file that was read on at least one side, with the SHA-256 of its

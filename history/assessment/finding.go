@@ -372,6 +372,14 @@ func stricter(base, target schema.Limits) schema.Limits {
 	}
 }
 
+// limits writes the limits that judge a change.
+func limits(base, target schema.Limits) Limits {
+	l := stricter(base, target)
+	return Limits{
+		CantExcess: l.CantExcessMM, LargestStep: int(l.LargestStep), ShortestStretch: int64(l.ShortestStretch), Unchecked: doubt.Unchecked(l),
+	}
+}
+
 // doubtful words doubtful data of a route, without its row.
 func doubtful(r *schema.Route, d doubt.Doubt, text string) Finding {
 	f := Finding{ID: d.ID, Route: r.ID, Direction: d.Directions.String(), From: r.Track.Begins(d.From).String(), To: r.Track.Ends(d.To).String(), Text: text}

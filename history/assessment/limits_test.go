@@ -1,8 +1,11 @@
 package assessment_test
 
 import (
+	"reflect"
 	"slices"
 	"testing"
+
+	"speedtrail/history/assessment"
 )
 
 // A change does not switch off the checks that judge it: of each limit the stricter
@@ -38,6 +41,30 @@ func TestLimitsOfTheBaseCount(t *testing.T) {
 			if slices.Sort(got); !slices.Equal(got, x.want) {
 				t.Errorf("got %v, want %v", got, x.want)
 			}
+			for _, id := range x.want {
+				if slices.Contains(c.Limits.Unchecked, id) {
+					t.Errorf("%s is found and said to be unchecked", id)
+				}
+			}
 		})
+	}
+}
+
+// What nobody looks for, as neither revision sets the limit, is said.
+func TestUnchecked(t *testing.T) {
+	limits := func(lines string) texts { return texts{"dataset.toml": ground["dataset.toml"] + "[limits]\n" + lines} }
+	for _, x := range []struct {
+		base, target string
+		want         assessment.Limits
+	}{
+		{"", "", assessment.Limits{Unchecked: []string{"cant-excess", "short-stretch", "step-size"}}},
+		{"largest_step_kmh = 60\n", "", assessment.Limits{LargestStep: 60, Unchecked: []string{"cant-excess", "short-stretch"}}},
+		{"largest_step_kmh = 60\n", "largest_step_kmh = 70\ncant_excess_mm = 110\n", assessment.Limits{LargestStep: 60, CantExcess: 110, Unchecked: []string{"short-stretch"}}},
+		{"shortest_stretch_m = 100\n", "shortest_stretch_m = 90\n", assessment.Limits{ShortestStretch: 100_000, Unchecked: []string{"cant-excess", "step-size"}}},
+	} {
+		// No route differs: said all the same.
+		if c := compute(t, limits(x.base), limits(x.target), nil); !reflect.DeepEqual(c.Limits, x.want) {
+			t.Errorf("%q, %q: got %+v, want %+v", x.base, x.target, c.Limits, x.want)
+		}
 	}
 }

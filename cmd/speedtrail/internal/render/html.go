@@ -85,6 +85,8 @@ type page struct {
 
 	Motion, CrossingWords, CurveWords string
 
+	Unchecked, Limits string // which doubtful data nobody looked for, and by which limits
+
 	Standing string
 	Signed   []pageSigned
 
@@ -151,7 +153,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 		D: d, C: c, R: r, Verdict: Verdict(d), Caution: Caution, State: "not recorded",
 		Title: source.Visible("Change of route speed data: " + c.Dataset),
 		Base:  revisionName(d.Named.Base, d.Named.BaseName, c.Base), Target: revisionName(d.Named.Target, d.Named.TargetName, c.Target),
-		JS: template.JS(pageJS),
+		JS: template.JS(pageJS), Unchecked: uncheckedWords(c), Limits: limitWords(c),
 	}
 	header := "not recorded"
 	if r.Number != 0 {

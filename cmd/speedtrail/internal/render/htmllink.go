@@ -144,7 +144,7 @@ func (p *page) fillContents() {
 		text, id string
 		shown    bool
 	}{
-		{"What needs eyes first", "findings", len(p.Findings)+len(p.Acceptances) > 0},
+		{"What needs eyes first", "findings", len(p.Findings)+len(p.Acceptances)+len(p.Unchecked) > 0},
 		{"Trains", "trains", true},
 		{"Reference trains that differ", "altered", len(p.Altered) > 0},
 		{"Track that only one revision has", "track", len(p.Track) > 0},

@@ -72,6 +72,9 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 			}
 		}
 	}
+	if text := limitWords(c); text != "" {
+		add("\n%s\n", md(text))
+	}
 	add("\n## Trains\n\n| train | raised, km | lowered, km | largest raise, km/h | largest reduction, km/h | running time, s | routes |\n|---|--:|--:|--:|--:|--:|---|\n")
 	times := runningTimes(c)
 	for _, t := range c.Trains {

@@ -24,6 +24,7 @@ func Text(w io.Writer, d *assessment.Document, r Record, s Style) error {
 	p.title()
 	p.verdict()
 	p.findings()
+	p.unchecked()
 	p.trains()
 	if s.Brief {
 		return p.err
@@ -184,6 +185,14 @@ func (p *textWriter) findings() {
 			p.paragraph("  ", acceptanceWords(a))
 			gap = ""
 		}
+	}
+}
+
+// unchecked says which doubtful data nobody looked for.
+func (p *textWriter) unchecked() {
+	if text := uncheckedWords(p.c); text != "" {
+		p.printf("\n")
+		p.paragraph("", text)
 	}
 }
 
