@@ -27,7 +27,16 @@ func TestRunningTimes(t *testing.T) {
 		return fmt.Sprintf("from_km,to_km,basic,train_length_delay\n0,4,120,no\n4,6,%d,no\n6,10,120,no\n10,12,%d,no\n12,30,120,no\n", one, two)
 	}
 	held := texts{"speed.csv": "from_km,to_km,basic\n0,2,100\n2,3,60\n3,6,120\n"}
+	// 10 km at 100 km/h, stop to stop: 360 s and 55.556 s for start and stop.
+	even := texts{"trains.toml": moving, "route.toml": oneWay, "speed.csv": "from_km,to_km,basic\n0,10,100\n"}
 	runAccounts(t, []accountTest{
+		{"posts that come to repeat: 3 km more, and no change of speed", even, texts{"route.toml": oneWay + jump("9", "6")}, []string{"nominal T 4156>5236: "}},
+		{"posts that go: 3 km less", even, texts{"route.toml": oneWay + jump("4", "7")}, []string{"nominal T 4156>3076: "}},
+		{"the same in the reverse direction", over(even, texts{"route.toml": strings.Replace(oneWay, "nominal", "reverse", 1)}), texts{"route.toml": strings.Replace(oneWay, "nominal", "reverse", 1) + jump("4", "7")}, []string{"reverse T 4156>3076: "}},
+		{"track that is added at the end", even, texts{"route.toml": strings.Replace(oneWay, "10", "11", 1), "speed.csv": "from_km,to_km,basic\n0,11,100\n"}, []string{"nominal T 4156>4516: "}},
+		{"as much added as removed", even, texts{"route.toml": oneWay + jump("2", "2.5") + jump("7", "6.5")}, nil},
+		{"a jump that both have, at another place", over(even, texts{"route.toml": oneWay + jump("4", "7")}), texts{"route.toml": oneWay + jump("4", "6")}, []string{"nominal T 3076>3436: "}},
+		{"longer, and no acceleration given", over(even, texts{"trains.toml": ground["trains.toml"]}), texts{"route.toml": oneWay + jump("9", "6")}, nil},
 		{"stop to stop", base, held, []string{"nominal T 2959>3019: 0.000-6.000 -60"}},
 		{"in the reverse direction", texts{"trains.toml": moving, "route.toml": strings.NewReplacer("10", "6", "nominal", "reverse").Replace(oneWay), "speed.csv": "from_km,to_km,basic,train_length_delay\n0,3,120,\n3,4,60,no\n4,6,100,\n"},
 			texts{"speed.csv": "from_km,to_km,basic\n0,3,120\n3,4,60\n4,6,100\n"}, []string{"reverse T 2959>3019: 0.000-6.000 -60"}},

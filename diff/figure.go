@@ -21,7 +21,7 @@ import (
 // Figures are what goes with the changes of a route: aids for the reader, by
 // the formulas of package impact.
 type Figures struct {
-	Runs      []RunTime  // of the trains that change and whose data allow it
+	Runs      []RunTime  // of the trains that change, or run longer or shorter, and whose data allow it
 	Crossings []Crossing // whose approach time changes
 	Curves    []Curve    // on which the highest speed of a train, or the curve itself, changes
 	Short     []ShortRaise
@@ -90,7 +90,9 @@ func (p *pair) figures(trains []Train, rolling bool) {
 	var w runs
 	for i, t := range trains {
 		m := impact.Motion{Acceleration: t.Acceleration, Braking: t.Braking, Rolling: rolling}
-		if s := p.sights[i]; m.Given() && len(s.changes) > 0 {
+		// Where the track is another one, a train without a change of speed takes another
+		// time, too.
+		if s := p.sights[i]; m.Given() && (len(s.changes) > 0 || !p.same) {
 			p.running(f, i, t, s.changes, m, &w)
 		}
 	}
@@ -136,6 +138,9 @@ func (p *pair) running(f *Figures, train int, t Train, changes []delta.Delta, m 
 	w.compute(p, t, m)
 	before, after := &w.before, &w.after
 	run := RunTime{Direction: p.direction, Train: train, Before: before.Tenths(), After: after.Tenths()}
+	if len(changes) == 0 && run.Before == run.After {
+		return
+	}
 	length := p.route.Target.Track.Length()
 	// travelled gives how far along the way a place of the target's track lies.
 	travelled := func(at unit.Distance) unit.Distance {

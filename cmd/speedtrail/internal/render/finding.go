@@ -2,6 +2,7 @@ package render
 
 import (
 	"fmt"
+	"iter"
 	"slices"
 	"strings"
 
@@ -157,6 +158,65 @@ func runningTimes(c *assessment.Computed) map[string]string {
 		out[train] = seconds(sum)
 	}
 	return out
+}
+
+// trainRoutes words, for each train, on which routes it sees a change: of speed, or
+// of its running time alone. It has no words for one that sees none.
+func trainRoutes(c *assessment.Computed) map[string]string {
+	timed := make([][]string, len(c.Trains))
+	for i, r := range byTrackAlone(c) {
+		if n := len(timed[i]); n == 0 || timed[i][n-1] != r.Route { // the runs of a route stand together
+			timed[i] = append(timed[i], r.Route)
+		}
+	}
+	out := map[string]string{}
+	for i, t := range c.Trains {
+		words := strings.Join(t.Routes, ", ")
+		if len(timed[i]) > 0 {
+			if words != "" {
+				words += "; "
+			}
+			words += "running time only: " + strings.Join(timed[i], ", ")
+		}
+		if words != "" {
+			out[t.ID] = words
+		}
+	}
+	return out
+}
+
+// byTrackAlone runs over the running times that differ although the train sees no
+// change of speed on the route, each with the index of its train.
+func byTrackAlone(c *assessment.Computed) iter.Seq2[int, assessment.RunFigure] {
+	return func(yield func(int, assessment.RunFigure) bool) {
+		index := map[string]int{}
+		for i, t := range c.Trains {
+			index[t.ID] = i
+		}
+		for _, r := range c.Figures.Runs {
+			i, ok := index[r.Train]
+			if !ok || r.After == r.Before {
+				continue
+			}
+			if _, faster := slices.BinarySearch(c.Trains[i].Routes, r.Route); !faster && !yield(i, r) {
+				return
+			}
+		}
+	}
+}
+
+// unchangedWords says of a train that it sees no change: of speed alone where track
+// became longer or shorter and its running time is not known.
+func unchangedWords(c *assessment.Computed, t assessment.Train) string {
+	d := t.After
+	if d == nil {
+		d = t.Before
+	}
+	other := slices.ContainsFunc(c.Routes, func(r assessment.Route) bool { return r.Fate == "kept" && len(r.Track) > 0 })
+	if other && d != nil && (d.Acceleration == "" || d.Braking == "") {
+		return "no change of speed"
+	}
+	return "no change"
 }
 
 // seenWords says what was seen inside a declaration, for trains that share the

@@ -36,7 +36,7 @@ var pageJS string
 var pageTemplate = sync.OnceValue(func() *template.Template {
 	return template.Must(template.New("page").Funcs(template.FuncMap{
 		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
-		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords,
+		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords, "unchanged": unchangedWords,
 		"link": func(text, id string) pageLink { return pageLink{text, id} },
 		"step": func(p page, row pageRow) pageStep { return pageStep{row, p.C.Options.NoRequests} },
 	}).Parse(pageText))
@@ -72,6 +72,7 @@ type page struct {
 	Track       []pageTrack
 	Altered     []pageTrain
 	Times       map[string]string
+	Seen        map[string]string // by train, on which routes it sees a change
 
 	Findings       []pageFindings
 	Acceptances    []string
@@ -163,7 +164,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	}
 	p.CSS = template.CSS(strings.Replace(pageCSS, "HEADER", header, 1))
 	p.Policy = "default-src 'none'; style-src '" + inlineHash(string(p.CSS)) + "'; script-src '" + inlineHash(pageJS) + "'"
-	p.Times = runningTimes(c)
+	p.Times, p.Seen = runningTimes(c), trainRoutes(c)
 	// What is pointed to comes before what points to it.
 	p.fillRows()
 	p.fillDeclared()

@@ -76,13 +76,13 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 		add("\n%s\n", md(text))
 	}
 	add("\n## Trains\n\n| train | raised, km | lowered, km | largest raise, km/h | largest reduction, km/h | running time, s | routes |\n|---|--:|--:|--:|--:|--:|---|\n")
-	times := runningTimes(c)
+	times, routes := runningTimes(c), trainRoutes(c)
 	for _, t := range c.Trains {
-		if len(t.Routes) == 0 {
-			add("| %s | | | | | | no change |\n", md(t.ID))
+		if routes[t.ID] == "" {
+			add("| %s | | | | | | %s |\n", md(t.ID), unchangedWords(c, t))
 			continue
 		}
-		add("| %s | %s | %s | %s | %s | %s | %s |\n", md(t.ID), lengthCell(t.Raised), lengthCell(t.Lowered), stepCell(t.LargestRaise), stepCell(-t.LargestReduction), times[t.ID], md(strings.Join(t.Routes, ", ")))
+		add("| %s | %s | %s | %s | %s | %s | %s |\n", md(t.ID), lengthCell(t.Raised), lengthCell(t.Lowered), stepCell(t.LargestRaise), stepCell(-t.LargestReduction), times[t.ID], md(routes[t.ID]))
 	}
 	shown, all := 0, 0
 	for i := range c.Routes {

@@ -311,7 +311,7 @@ func (p *textWriter) trains() {
 	p.heading("Trains")
 	t := plainTable()
 	t.AppendHeader(table.Row{"train", "raised km", "lowered km", "up km/h", "down km/h", "time s", "routes"})
-	times := runningTimes(p.c)
+	times, routes := runningTimes(p.c), trainRoutes(p.c)
 	// The numbers take 51 columns with their gaps; names are given what they need of the
 	// rest, but for room for a route.
 	const numbers, gap, aRoute = 51, 2, 12
@@ -335,11 +335,11 @@ func (p *textWriter) trains() {
 	raised, lowered = onPoint(raised), onPoint(lowered)
 	for i, x := range p.c.Trains {
 		name := names[i]
-		if len(x.Routes) == 0 {
-			t.AppendRow(table.Row{name, "no change", "", "", "", "", ""})
+		if routes[x.ID] == "" {
+			t.AppendRow(table.Row{name, unchangedWords(p.c, x), "", "", "", "", ""})
 			continue
 		}
-		t.AppendRow(table.Row{name, raised[i], lowered[i], stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(strings.Join(x.Routes, ", "))})
+		t.AppendRow(table.Row{name, raised[i], lowered[i], stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(routes[x.ID])})
 	}
 	p.printf("%s\n", tidy(t.Render()))
 	p.paragraph("", "Up and down are the largest steps. Lengths, and running times (minus: faster), are added up over routes and both directions of travel.")

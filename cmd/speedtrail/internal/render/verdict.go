@@ -51,6 +51,9 @@ func Verdict(d *assessment.Document) string {
 	if s := trackSentence(c); s != "" {
 		parts = append(parts, s)
 	}
+	if s := timeSentence(c); s != "" {
+		parts = append(parts, s)
+	}
 	if s := trainSentence(c); s != "" {
 		parts = append(parts, s)
 	}
@@ -145,6 +148,36 @@ func trackSentence(c *assessment.Computed) string {
 		return ""
 	}
 	return "Track, counted for each direction of travel: " + strings.Join(words, ", ") + "."
+}
+
+// timeSentence says by how much running times differ on routes where the train sees
+// no change of speed: the track alone takes it longer or less long.
+func timeSentence(c *assessment.Computed) string {
+	var most [2]int64 // longer, less long
+	var trains [2][]int
+	for i, r := range byTrackAlone(c) {
+		k, by := 0, r.After-r.Before
+		if by < 0 {
+			k, by = 1, -by
+		}
+		switch {
+		case by > most[k]:
+			most[k], trains[k] = by, []int{i}
+		case by == most[k]:
+			trains[k] = append(trains[k], i)
+		}
+	}
+	var parts []string
+	for k, sign := range []int64{1, -1} {
+		if most[k] > 0 {
+			slices.Sort(trains[k])
+			parts = append(parts, fmt.Sprintf("up to %s s (%s)", seconds(most[k]*sign), trainNames(c, slices.Compact(trains[k]), 3)))
+		}
+	}
+	if parts == nil {
+		return ""
+	}
+	return "Running time by the track alone: " + strings.Join(parts, ", ") + "."
 }
 
 func trainSentence(c *assessment.Computed) string {
