@@ -255,14 +255,15 @@ func TestDeclaredFaults(t *testing.T) {
 		base, target texts
 		want         []string
 	}{
-		{"a route", nil, asked(nil, declares("R9", "both", 1, 2, "any", "")), []string{`requests/cr-1.toml:4:3: the declaration names route "R9", which neither revision has`}},
-		{"a train", nil, asked(nil, declares("R1", "both", 1, 2, "any", `"T", "X"`)), []string{`requests/cr-1.toml:4:3: the declaration names train "X", which neither revision has`}},
-		{"a position outside", nil, asked(nil, declares("R1", "both", 1, 12, "any", "")), []string{`requests/cr-1.toml:4:3: the declaration on route "R1": to_km 12.000 is outside the route`}},
-		{"the wrong way round", nil, asked(nil, declares("R1", "both", 2, 1, "any", "")), []string{`requests/cr-1.toml:4:3: the declaration on route "R1": to_km 1.000 does not lie after from_km 2.000 along the track`}},
-		{"an ambiguous position", repeated, asked(nil, declares("R1", "both", 1, 4.75, "any", "")), []string{`requests/cr-1.toml:4:3: the declaration on route "R1": to_km 4.750 is ambiguous, posts repeat here; write 4.750#1 or another occurrence`}},
+		{"a route", nil, asked(nil, declares("R9", "both", 1, 2, "any", "")), []string{`requests/cr-1.toml:5:9: the declaration names route "R9", which neither revision has`}},
+		{"a train", nil, asked(nil, declares("R1", "both", 1, 2, "any", `"T", "X"`)), []string{`requests/cr-1.toml:10:16: the declaration names train "X", which neither revision has`}},
+		{"a position outside", nil, asked(nil, declares("R1", "both", 1, 12, "any", "")), []string{`requests/cr-1.toml:8:9: the declaration on route "R1": to_km 12.000 is outside the route, which runs from 0.000 to 10.000`}},
+		{"the wrong way round, as only the track can tell", repeated, asked(nil, strings.Replace(declares("R1", "both", 1, 6, "any", ""), "from_km = 1", `from_km = "4.75#2"`, 1), strings.NewReplacer("from_km = 1", `from_km = "4.75#2"`, "to_km = 6", `to_km = "4.9#1"`).Replace(declares("R1", "both", 1, 6, "any", ""))), []string{
+			`requests/cr-1.toml:14:9: the declaration on route "R1": to_km 4.900#1 does not lie after from_km 4.750#2 along the track`}},
+		{"an ambiguous position", repeated, asked(nil, declares("R1", "both", 1, 4.75, "any", "")), []string{`requests/cr-1.toml:8:9: the declaration on route "R1": to_km 4.750 is ambiguous, posts repeat here: write 4.750#1 or 4.750#2`}},
 		{"several", nil, asked(nil, declares("R9", "both", 1, 2, "any", `"X"`), declares("R1", "both", 11, 12, "any", "")), []string{
-			`requests/cr-1.toml:4:3: the declaration names train "X", which neither revision has`, `requests/cr-1.toml:4:3: the declaration names route "R9", which neither revision has`,
-			`requests/cr-1.toml:11:3: the declaration on route "R1": from_km 11.000 is outside the route`}},
+			`requests/cr-1.toml:5:9: the declaration names route "R9", which neither revision has`, `requests/cr-1.toml:10:11: the declaration names train "X", which neither revision has`,
+			`requests/cr-1.toml:14:11: the declaration on route "R1": from_km 11.000 is outside the route, which runs from 0.000 to 10.000`}},
 		{"a position that only the base has", repeated, asked(texts{"route.toml": ground["route.toml"], "speed.csv": ground["speed.csv"]}, strings.Replace(declares("R1", "both", 1, 2, "any", ""), "to_km = 2", `to_km = "4.75#2"`, 1)), nil},
 		{"a first occurrence that is marked", nil, asked(nil, strings.Replace(declares("R1", "both", 1, 2, "any", ""), "to_km = 2", `to_km = "4.75#1"`, 1)), nil},
 	} {
@@ -294,9 +295,9 @@ func TestDeclaredOnUnreadRoute(t *testing.T) {
 		unread     func(string) (*schema.Route, error)
 	}{
 		{"there", "", 2, func(string) (*schema.Route, error) { return other, nil }},
-		{"there, but not so long", `requests/cr-1.toml:4:3: the declaration on route "R2": to_km 12.000 is outside the route`, 12, func(string) (*schema.Route, error) { return other, nil }},
-		{"not there", `requests/cr-1.toml:4:3: the declaration names route "R2", which neither revision has`, 2, func(string) (*schema.Route, error) { return nil, nil }},
-		{"nobody to ask", `requests/cr-1.toml:4:3: the declaration names route "R2", which neither revision has`, 2, nil},
+		{"there, but not so long", `requests/cr-1.toml:8:9: the declaration on route "R2": to_km 12.000 is outside the route, which runs from 0.000 to 10.000`, 12, func(string) (*schema.Route, error) { return other, nil }},
+		{"not there", `requests/cr-1.toml:5:9: the declaration names route "R2", which neither revision has`, 2, func(string) (*schema.Route, error) { return nil, nil }},
+		{"nobody to ask", `requests/cr-1.toml:5:9: the declaration names route "R2", which neither revision has`, 2, nil},
 		{"not to be read", refused.Error(), 2, func(string) (*schema.Route, error) { return nil, refused }},
 	} {
 		t.Run(x.name, func(t *testing.T) {

@@ -2,7 +2,6 @@ package diff
 
 import (
 	"encoding/binary"
-	"errors"
 	"slices"
 	"sort"
 
@@ -80,10 +79,14 @@ func (a *Account) reconcile(o *Options) error {
 // locate finds the route, the trains and the positions of a declaration.
 func (a *Account) locate(o *Options, x *schema.Declaration, faults *source.Collector) (Declared, error) {
 	d := Declared{Route: slices.IndexFunc(a.Routes, func(r Route) bool { return r.ID == x.Route })}
-	for _, id := range x.Trains {
+	for k, id := range x.Trains {
 		i := slices.IndexFunc(a.Trains, func(t Train) bool { return t.ID == id })
 		if i < 0 {
-			faults.Add(x.Pos, "the declaration names train %s, which neither revision has", source.Quote(id))
+			var known []string
+			for _, t := range a.Trains {
+				known = append(known, t.ID)
+			}
+			faults.Add(x.Places.Trains[k], "the declaration names train %s, which neither revision has%s", source.Quote(id), schema.Meant(id, known))
 			continue
 		}
 		d.trains = append(d.trains, i)
@@ -99,17 +102,18 @@ func (a *Account) locate(o *Options, x *schema.Declaration, faults *source.Colle
 		sides[1] = r
 	}
 	if sides[0] == nil && sides[1] == nil {
-		faults.Add(x.Pos, "the declaration names route %s, which neither revision has", source.Quote(x.Route))
+		faults.Add(x.Places.Route, "the declaration names route %s, which neither revision has", source.Quote(x.Route))
 		return d, nil
 	}
+	var at source.Position
 	problem := ""
 	for i, r := range sides {
 		if r == nil {
 			continue
 		}
-		interval, why := span(r.Track, x.Span)
-		if why != "" {
-			problem = why
+		interval, why := span(r.Track, x)
+		if why != nil {
+			at, problem = why.Position, why.Problem
 			continue
 		}
 		if i == 0 {
@@ -119,7 +123,7 @@ func (a *Account) locate(o *Options, x *schema.Declaration, faults *source.Colle
 		}
 	}
 	if d.base == nil && d.target == nil {
-		faults.Add(x.Pos, "the declaration on route %s: %s", source.Quote(x.Route), problem)
+		faults.Add(at, "the declaration on route %s: %s", source.Quote(x.Route), problem)
 	}
 	if sides[0] != nil && sides[1] != nil && (d.base == nil) != (d.target == nil) {
 		d.acrossTracks(align.Tracks(sides[0].Track, sides[1].Track).Common)
@@ -151,24 +155,23 @@ func (d *Declared) acrossTracks(common []align.Cell) {
 	}
 }
 
-// span finds a stretch on a track, or says why it is not there.
-func span(t *chainage.Track, s schema.Span) (*align.Interval, string) {
+// span finds the stretch of a declaration on a track, or says why it is not there.
+func span(t *chainage.Track, x *schema.Declaration) (*align.Interval, *source.Fault) {
+	s := x.Span
 	var at [2]unit.Distance
 	for i, p := range [...]chainage.Point{s.From, s.To} {
 		d, err := t.Find(p)
 		if err != nil {
-			why := [...]string{"from_km ", "to_km "}[i] + p.String() + " is " + err.Error()
-			if errors.Is(err, chainage.ErrAmbiguous) {
-				why += "; write " + p.Chainage.KM() + "#1 or another occurrence"
+			return nil, &source.Fault{
+				Position: [...]source.Position{x.Places.From, x.Places.To}[i], Problem: [...]string{"from_km ", "to_km "}[i] + p.String() + " is " + schema.LocationProblem(t, p, err),
 			}
-			return nil, why
 		}
 		at[i] = d
 	}
 	if at[0] >= at[1] {
-		return nil, "to_km " + s.To.String() + " does not lie after from_km " + s.From.String() + " along the track"
+		return nil, &source.Fault{Position: x.Places.To, Problem: "to_km " + s.To.String() + " does not lie after from_km " + s.From.String() + " along the track"}
 	}
-	return &align.Interval{From: at[0], To: at[1]}, ""
+	return &align.Interval{From: at[0], To: at[1]}, nil
 }
 
 // inPlay is what declarations say of one side of a route.

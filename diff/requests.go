@@ -51,7 +51,7 @@ func unplaced(q schema.ChangeRequest) schema.ChangeRequest {
 	q.Pos = source.Position{}
 	declare := make([]schema.Declaration, len(q.Declare))
 	for i, d := range q.Declare {
-		d.Pos = source.Position{}
+		d.Pos, d.Places = source.Position{}, schema.Places{}
 		declare[i] = d
 	}
 	q.Declare = declare

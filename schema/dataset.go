@@ -68,6 +68,13 @@ type Declaration struct {
 	Span   Span
 	Effect Effect
 	Trains []string // ids; empty: every train
+	Places Places
+}
+
+// Places are where the values of a declaration or of an acceptance stand.
+type Places struct {
+	Finding, Route, From, To source.Position
+	Trains                   []source.Position // in the order of the trains
 }
 
 // Effect is the sense that a declaration allows.
@@ -84,7 +91,7 @@ const (
 func (e Effect) String() string { return [...]string{"any", "raise", "lower"}[e] }
 
 // Acceptance is one entry of accepted.toml: a kind of finding that was looked
-// at and accepted on a stretch.
+// at and accepted on a stretch, or at a point where From and To are the same.
 type Acceptance struct {
 	Pos     source.Position
 	Finding string // id of the finding
@@ -92,4 +99,5 @@ type Acceptance struct {
 	Span    Span
 	Reason  string
 	Until   string // local date YYYY-MM-DD, the last day on which it counts; empty: no end
+	Places  Places
 }

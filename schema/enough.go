@@ -66,7 +66,7 @@ func (r *reader) checkEnough(p *Policy) {
 	before := r.faults.Count()
 	for i := range p.Roles {
 		if role, n := &p.Roles[i], able(1<<i); n < role.Needed {
-			r.faults.Add(role.Pos, "role %s needs %d people with a key in %s and has %d", source.Quote(role.Name), role.Needed, signersFile, n)
+			r.faults.Add(role.Places.Needed, "role %s needs %d people with a key in %s and has %d", source.Quote(role.Name), role.Needed, signersFile, n)
 		}
 	}
 	if r.faults.Count() > before {

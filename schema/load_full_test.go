@@ -31,16 +31,21 @@ func TestLoadFullFrame(t *testing.T) {
 	const first, second = "requests/b-first.toml", "requests/a-second.toml"
 	equal(t, "requests", d.Requests, []ChangeRequest{
 		{Pos: at(first, 1, 1), ID: "CR-0001", Title: "Lower through Hollow tunnel", Reason: "Lining under repair", Declare: []Declaration{
-			{Pos: at(first, 5, 3), Route: "FW.1_a-b", Span: span("3", "3.4", codes.OnlyNominal), Effect: Lower, Trains: []string{"EXP-3", "TLT"}},
-			{Pos: at(first, 13, 3), Route: "FW.1_a-b", Span: span("-0.35", "4.2", codes.Both), Effect: AnyEffect},
+			{Pos: at(first, 5, 3), Route: "FW.1_a-b", Span: span("3", "3.4", codes.OnlyNominal), Effect: Lower, Trains: []string{"EXP-3", "TLT"},
+				Places: Places{Route: at(first, 6, 9), From: at(first, 8, 11), To: at(first, 9, 9), Trains: []source.Position{at(first, 11, 11), at(first, 11, 20)}}},
+			{Pos: at(first, 13, 3), Route: "FW.1_a-b", Span: span("-0.35", "4.2", codes.Both), Effect: AnyEffect,
+				Places: Places{Route: at(first, 14, 9), From: at(first, 15, 11), To: at(first, 16, 9)}},
 		}},
 		{Pos: at(second, 1, 1), ID: "CR-0002", Title: "Raise at a place with posts twice", Reason: "Renewed", Declare: []Declaration{
-			{Pos: at(second, 5, 3), Route: "no such route, which is not checked here", Span: span("31.18#1", "31.18#2", codes.Both), Effect: Raise},
+			{Pos: at(second, 5, 3), Route: "no such route, which is not checked here", Span: span("31.18#1", "31.18#2", codes.Both), Effect: Raise,
+				Places: Places{Route: at(second, 6, 9), From: at(second, 8, 11), To: at(second, 9, 9)}},
 		}},
 	})
 	equal(t, "accepted", d.Accepted, []Acceptance{
-		{Pos: at("accepted.toml", 1, 3), Finding: "step-size", Route: "FW.1_a-b", Span: span("1.4", "1.6", codes.Both), Reason: "Station throat", Until: "2027-06-30"},
-		{Pos: at("accepted.toml", 9, 3), Finding: "short-stretch", Route: "FW.1_a-b", Span: span("31.18#1", "31.2", codes.Both), Reason: "Bridge"},
+		{Pos: at("accepted.toml", 1, 3), Finding: "step-size", Route: "FW.1_a-b", Span: span("1.4", "1.6", codes.Both), Reason: "Station throat", Until: "2027-06-30",
+			Places: Places{Finding: at("accepted.toml", 2, 11), Route: at("accepted.toml", 3, 9), From: at("accepted.toml", 4, 11), To: at("accepted.toml", 5, 9)}},
+		{Pos: at("accepted.toml", 9, 3), Finding: "short-stretch", Route: "FW.1_a-b", Span: span("31.18#1", "31.2", codes.Both), Reason: "Bridge",
+			Places: Places{Finding: at("accepted.toml", 10, 11), Route: at("accepted.toml", 11, 9), From: at("accepted.toml", 12, 11), To: at("accepted.toml", 13, 9)}},
 	})
 }
 
@@ -145,9 +150,15 @@ func TestLoadFullPolicy(t *testing.T) {
 		{Pos: at("signoff.toml", 11, 3), Principal: "nils"},
 	})
 	equal(t, "roles", p.Roles, []Role{
-		{Pos: at("signoff.toml", 14, 3), Name: "checker", Needed: 1, IndependentOf: []string{"preparer"}},
-		{Pos: at("signoff.toml", 19, 3), Name: "approver-2", Needed: 2, IndependentOf: []string{"preparer", "checker"}, Signers: []string{lio, ruta}},
-		{Pos: at("signoff.toml", 25, 3), Name: "in-service", Needed: 3},
+		{Pos: at("signoff.toml", 14, 3), Name: "checker", Needed: 1, IndependentOf: []string{"preparer"},
+			Places: RolePlaces{Needed: at("signoff.toml", 16, 10), IndependentOf: []source.Position{at("signoff.toml", 17, 19)}}},
+		{Pos: at("signoff.toml", 19, 3), Name: "approver-2", Needed: 2, IndependentOf: []string{"preparer", "checker"}, Signers: []string{lio, ruta},
+			Places: RolePlaces{
+				Needed:        at("signoff.toml", 21, 10),
+				IndependentOf: []source.Position{at("signoff.toml", 22, 19), at("signoff.toml", 22, 31)},
+				Signers:       []source.Position{at("signoff.toml", 23, 12), at("signoff.toml", 23, 39)},
+			}},
+		{Pos: at("signoff.toml", 25, 3), Name: "in-service", Needed: 3, Places: RolePlaces{Needed: at("signoff.toml", 27, 10)}},
 	})
 	content := string(files[signersFile].Data)
 	for i := range p.Keys {

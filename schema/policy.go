@@ -45,6 +45,13 @@ type Role struct {
 	Needed        int      // how many different people, at least 1
 	IndependentOf []string // names of roles, Preparer among them
 	Signers       []string // principals; empty: every person
+	Places        RolePlaces
+}
+
+// RolePlaces are where the values of a role stand.
+type RolePlaces struct {
+	Needed                 source.Position
+	IndependentOf, Signers []source.Position // in the order of the lists
 }
 
 // Key is a public key that a principal may sign with.
@@ -205,6 +212,7 @@ func (r *reader) signoff(p *Policy, m table.Reader) {
 	}
 	for _, t := range m.Tables("role") {
 		role := Role{Pos: t.Pos, Name: t.Text("name", true), Needed: whole(t, "needed", 1, 100)}
+		role.Places.Needed = valuePlace(t, "needed")
 		if t.Get("needed") == nil {
 			r.faults.Add(t.Pos, "needed is missing")
 		}
@@ -215,10 +223,10 @@ func (r *reader) signoff(p *Policy, m table.Reader) {
 		}
 		r.once(names, "role", role.Name, valuePlace(t, "name"))
 		for _, v := range t.Texts("independent_of") {
-			role.IndependentOf = append(role.IndependentOf, v.Text)
+			role.IndependentOf, role.Places.IndependentOf = append(role.IndependentOf, v.Text), append(role.Places.IndependentOf, v.Pos)
 		}
 		for _, v := range t.Texts("signers") {
-			role.Signers = append(role.Signers, v.Text)
+			role.Signers, role.Places.Signers = append(role.Signers, v.Text), append(role.Places.Signers, v.Pos)
 		}
 		t.Finish()
 		p.Roles = append(p.Roles, role)
@@ -234,26 +242,30 @@ func (r *reader) checkRoles(p *Policy) {
 	}
 	independent, service := false, false
 	for _, role := range p.Roles {
-		for _, other := range role.IndependentOf {
+		for i, other := range role.IndependentOf {
 			if other == Preparer {
 				independent = independent || role.Name != InService
 				service = service || role.Name == InService
 			}
 			if other != Preparer && !slices.ContainsFunc(p.Roles, func(r Role) bool { return r.Name == other }) {
-				r.faults.Add(role.Pos, "role %s is independent of %s, which is no role", source.Quote(role.Name), source.Quote(other))
+				known := []string{Preparer}
+				for _, x := range p.Roles {
+					known = append(known, x.Name)
+				}
+				r.faults.Add(role.Places.IndependentOf[i], "role %s is independent of %s, which is no role%s", source.Quote(role.Name), source.Quote(other), Meant(other, known))
 			}
 		}
 		people := len(p.Persons)
 		if len(role.Signers) > 0 {
 			people = len(slices.Compact(slices.Sorted(slices.Values(role.Signers))))
-			for _, s := range role.Signers {
+			for i, s := range role.Signers {
 				if !slices.ContainsFunc(p.Persons, func(person Person) bool { return person.Principal == s }) {
-					r.faults.Add(role.Pos, "role %s names the signer %s, who is no person of this file", source.Quote(role.Name), source.Quote(s))
+					r.faults.Add(role.Places.Signers[i], "role %s names the signer %s, who is no person of this file", source.Quote(role.Name), source.Quote(s))
 				}
 			}
 		}
 		if people < role.Needed {
-			r.faults.Add(role.Pos, "role %s needs %d people and has %d", source.Quote(role.Name), role.Needed, people)
+			r.faults.Add(role.Places.Needed, "role %s needs %d people and has %d", source.Quote(role.Name), role.Needed, people)
 		}
 	}
 	switch {

@@ -1,6 +1,7 @@
 package schema
 
 import (
+	"cmp"
 	"errors"
 	"io/fs"
 	"path"
@@ -10,6 +11,7 @@ import (
 	"time"
 	_ "time/tzdata" // time zones of dataset.toml on machines without a database of them
 
+	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/source"
 	"speedtrail/schema/table"
@@ -273,8 +275,9 @@ func (r *reader) requests(d *Dataset) {
 
 func (r *reader) declaration(t table.Reader) Declaration {
 	d := Declaration{Pos: t.Pos, Route: t.Text("route", true)}
-	d.Span = r.span(t)
+	d.Span = r.span(t, false)
 	d.Span.Directions = codes.Both
+	d.Places = placesOf(t)
 	if text := t.Text("direction", false); text != "" {
 		s, ok := codes.ParseDirections(text)
 		if !ok {
@@ -293,6 +296,7 @@ func (r *reader) declaration(t table.Reader) Declaration {
 	}
 	for _, v := range t.Texts("trains") {
 		d.Trains = append(d.Trains, v.Text)
+		d.Places.Trains = append(d.Places.Trains, v.Pos)
 	}
 	if v := t.Get("trains"); v != nil && v.Kind == table.ArrayKind && len(v.Items) == 0 {
 		r.faults.Add(v.Pos, "trains is empty, leave it out for every train")
@@ -308,8 +312,10 @@ func (r *reader) accepted(d *Dataset) {
 	}
 	for _, t := range m.Tables("accepted") {
 		a := Acceptance{Pos: t.Pos, Finding: t.Text("finding", true), Route: t.Text("route", true), Reason: t.Text("reason", true)}
-		a.Span = r.span(t)
+		a.Span = r.span(t, true)
 		a.Span.Directions = codes.Both
+		a.Places = placesOf(t)
+		a.Places.Finding = valuePlace(t, "finding")
 		if v := t.Get("until"); v != nil {
 			day, err := time.Parse(time.DateOnly, v.Text)
 			switch {
@@ -328,7 +334,38 @@ func (r *reader) accepted(d *Dataset) {
 	m.Finish()
 }
 
-// span reads from_km and to_km as they are written.
-func (r *reader) span(t table.Reader) Span {
-	return Span{From: r.pointOf(t, "from_km"), To: r.pointOf(t, "to_km")}
+// placesOf gives where the values stand that a declaration and an acceptance have in
+// common.
+func placesOf(t table.Reader) Places {
+	return Places{Route: valuePlace(t, "route"), From: valuePlace(t, "from_km"), To: valuePlace(t, "to_km")}
+}
+
+// span reads from_km and to_km as they are written. What cannot be a stretch on any
+// track is a fault, whether or not the route is there; point: both may be one place.
+func (r *reader) span(t table.Reader, point bool) Span {
+	before := r.faults.Count()
+	s := Span{From: r.pointOf(t, "from_km"), To: r.pointOf(t, "to_km")}
+	if r.faults.Count() > before {
+		return s
+	}
+	at := valuePlace(t, "to_km")
+	switch order := writtenOrder(s.From, s.To); {
+	case order > 0:
+		r.faults.Add(at, "to_km %s does not lie after from_km %s; from_km comes first in the nominal direction, whatever the direction of travel", s.To, s.From)
+	case order == 0 && !point:
+		r.faults.Add(at, "to_km %s is the place of from_km, a stretch is needed: write where it ends", s.To)
+	}
+	return s
+}
+
+// writtenOrder compares two positions by what is written: 1 where the first cannot
+// lie before the second. With posts that repeat only the track can tell.
+func writtenOrder(a, b chainage.Point) int {
+	if a.Chainage == b.Chainage {
+		return cmp.Compare(max(a.Occurrence, 1), max(b.Occurrence, 1)) // bare is the first
+	}
+	if a.Occurrence == 0 && b.Occurrence == 0 {
+		return cmp.Compare(a.Chainage, b.Chainage)
+	}
+	return -1
 }

@@ -255,22 +255,27 @@ func (r *reader) locate(route *Route, p chainage.Point, c table.Cell, column str
 	if err == nil {
 		return at, true
 	}
-	segments := route.Track.Segments()
-	detail := ""
+	r.faults.Add(c.Pos, "%s %s is %s", column, source.Quote(c.Text), LocationProblem(route.Track, p, err))
+	return 0, false
+}
+
+// LocationProblem words why a position is not on a track, and what can be written in
+// its place.
+func LocationProblem(t *chainage.Track, p chainage.Point, err error) string {
+	segments := t.Segments()
 	switch {
 	case errors.Is(err, chainage.ErrOutside):
-		detail = fmt.Sprintf(", which runs from %s to %s", segments[0].From.KM(), segments[len(segments)-1].To.KM())
+		return fmt.Sprintf("%v, which runs from %s to %s", err, segments[0].From.KM(), segments[len(segments)-1].To.KM())
 	case errors.Is(err, chainage.ErrMissingPosts):
-		if j, ok := route.Track.Skipped(p.Chainage); ok {
-			detail = ": from " + j.Arriving.KM() + " the posts go on at " + j.Leaving.KM()
+		if j, ok := t.Skipped(p.Chainage); ok {
+			return fmt.Sprintf("%v: from %s the posts go on at %s", err, j.Arriving.KM(), j.Leaving.KM())
 		}
 	case errors.Is(err, chainage.ErrAmbiguous):
-		detail = ": write " + readings(p, route.Track)
+		return err.Error() + ": write " + readings(p, t)
 	case errors.Is(err, chainage.ErrNoOccurrence):
-		detail = ": there are " + readings(p, route.Track)
+		return err.Error() + ": there are " + readings(p, t)
 	}
-	r.faults.Add(c.Pos, "%s %s is %v%s", column, source.Quote(c.Text), err, detail)
-	return 0, false
+	return err.Error()
 }
 
 // readings lists the ways in which a repeated chainage is written.

@@ -138,3 +138,16 @@ func distance(x, y string) int {
 	}
 	return row[len(b)]
 }
+
+// Meant words what a mistyped name can have meant, to follow a message; nothing where
+// no known name is near.
+func Meant(name string, known []string) string {
+	near := Nearest(name, known)
+	if len(near) == 0 {
+		return ""
+	}
+	for i := range near {
+		near[i] = source.Visible(near[i])
+	}
+	return "; did you mean " + strings.Join(near, " or ") + "?"
+}

@@ -18,57 +18,63 @@ func doubtfulNames(d *schema.Dataset) []string {
 	add := func(at source.Position, format string, args ...any) {
 		list = append(list, at.String()+": "+fmt.Sprintf(format, args...))
 	}
-	trains := map[string]bool{}
-	for _, t := range d.Trains {
-		trains[t.ID] = true
+	var routes, trains []string
+	for _, r := range d.Routes {
+		routes = append(routes, r.ID)
 	}
-	span := func(at source.Position, what, id string, s schema.Span) {
+	for _, t := range d.Trains {
+		trains = append(trains, t.ID)
+	}
+	// span looks for a stretch; point: a place without length is one, too.
+	span := func(at schema.Places, what, id string, s schema.Span, point bool) {
 		r := routeByID(d, id)
 		if r == nil {
-			add(at, "%s names route %s, which is not in this revision; assess refuses a request in play that names what neither side has", what, source.Quote(id))
+			add(at.Route, "%s names route %s, which is not in this revision%s", what, source.Quote(id), schema.Meant(id, routes))
 			return
 		}
 		from, errFrom := r.Track.Locate(s.From)
 		to, errTo := r.Track.Locate(s.To)
 		switch {
 		case errFrom != nil:
-			add(at, "%s: from_km %s is %v of route %s", what, s.From, errFrom, id)
+			add(at.From, "%s: on route %s, from_km %s is %s", what, id, s.From, schema.LocationProblem(r.Track, s.From, errFrom))
 		case errTo != nil:
-			add(at, "%s: to_km %s is %v of route %s", what, s.To, errTo, id)
-		case from >= to:
+			add(at.To, "%s: on route %s, to_km %s is %s", what, id, s.To, schema.LocationProblem(r.Track, s.To, errTo))
+		case from > to || from == to && !point:
 			how := "does not lie after"
 			if from == to {
 				how = "is the same place as"
 			}
-			add(at, "%s: to_km %s %s from_km %s along route %s; where the track has gone since, nothing need be done", what, s.To, how, s.From, id)
+			add(at.To, "%s: to_km %s %s from_km %s along route %s; where the track has gone since, nothing need be done", what, s.To, how, s.From, id)
 		}
-	}
-	if off := doubt.Unchecked(d.Limits); len(off) > 0 {
-		for i, id := range off {
-			off[i] = id + " (" + doubt.LimitKey(id) + ")"
-		}
-		add(source.Position{File: "dataset.toml"}, "not looked for, as [limits] sets no limit: %s", strings.Join(off, ", "))
 	}
 	for _, q := range d.Requests {
 		what := "request " + q.ID
+		before := len(list)
 		if len(q.Declare) == 0 {
 			add(q.Pos, "%s declares nothing", what)
 		}
 		for _, x := range q.Declare {
-			span(x.Pos, what, x.Route, x.Span)
-			for _, id := range x.Trains {
-				if !trains[id] {
-					add(x.Pos, "%s names train %s, which is not in this revision", what, source.Quote(id))
+			span(x.Places, what, x.Route, x.Span, false)
+			for k, id := range x.Trains {
+				if !slices.Contains(trains, id) {
+					add(x.Places.Trains[k], "%s names train %s, which is not in this revision%s", what, source.Quote(id), schema.Meant(id, trains))
 				}
 			}
+		}
+		if len(list) > before && len(q.Declare) > 0 {
+			add(q.Pos, "%s: assess refuses it where it is in play and names what neither side has", what)
 		}
 	}
 	for _, a := range d.Accepted {
 		if !slices.Contains(doubt.IDs, a.Finding) {
-			add(a.Pos, "the entry accepts nothing: %s is none of the findings that can be accepted", source.Quote(a.Finding))
+			known := schema.Meant(a.Finding, doubt.IDs)
+			if known == "" {
+				known = "; these are: " + strings.Join(doubt.IDs, ", ")
+			}
+			add(a.Places.Finding, "the entry accepts nothing: %s is none of the findings that can be accepted%s", source.Quote(a.Finding), known)
 			continue
 		}
-		span(a.Pos, "the entry", a.Route, a.Span)
+		span(a.Places, "the entry", a.Route, a.Span, true)
 	}
 	return list
 }

@@ -46,6 +46,8 @@ func TestAcceptance(t *testing.T) {
 		{"a metre short of the stretch", acceptance("short-stretch", "R1", 4, 4.049, ""), acceptance("short-stretch", "R1", 4, 4.049, ""), nil, at, "unused 0", "", "short-stretch step-size"},
 		{"a metre beyond its beginning", acceptance("short-stretch", "R1", 4.001, 5, ""), acceptance("short-stretch", "R1", 4.001, 5, ""), nil, at, "unused 0", "", "short-stretch step-size"},
 		{"a point at the end of the range", acceptance("step-size", "R1", 5, 10, ""), acceptance("step-size", "R1", 5, 10, ""), nil, at, "used 1", "step-size", "short-stretch"},
+		{"the point alone", acceptance("step-size", "R1", 10, 10, ""), acceptance("step-size", "R1", 10, 10, ""), nil, at, "used 1", "step-size", "short-stretch"},
+		{"the point beside it", acceptance("step-size", "R1", 10.001, 10.001, ""), acceptance("step-size", "R1", 10.001, 10.001, ""), nil, at, "unused 0", "", "short-stretch step-size"},
 		{"another finding", acceptance("cant-excess", "R1", 0, 20, ""), acceptance("cant-excess", "R1", 0, 20, ""), nil, at, "unused 0", "", "short-stretch step-size"},
 		{"new", gone, short, nil, at, "new 0", "", "accepted-changed short-stretch step-size"},
 		{"one more", short, short + stepAt, nil, at, "used 1; new 0", "short-stretch", "accepted-changed step-size"},

@@ -6,7 +6,9 @@ import (
 	"slices"
 	"strings"
 
+	"speedtrail/diff/doubt"
 	"speedtrail/history/assessment"
+	"speedtrail/schema"
 )
 
 // findingGroup is the findings of one kind: why they matter is said once.
@@ -123,7 +125,7 @@ func acceptanceWords(a assessment.Acceptance) string {
 		"unused": "covers nothing and can be removed",
 		"new":    "does not count yet: it does not stand unaltered in the base",
 		"over":   "does not count any more: it was for the time until " + a.Until,
-		"never":  "does not count: a finding of this kind cannot be accepted",
+		"never":  "does not count: a finding of this kind cannot be accepted" + schema.Meant(a.Finding, doubt.IDs),
 		"unread": "is for a route that is the same in both revisions",
 	}[a.State]
 	return fmt.Sprintf("accepted.toml:%d, %s on %s km %s to %s, %s", a.Line, a.Finding, a.Route, minus(a.From), minus(a.To), state)
