@@ -212,6 +212,10 @@ func (r *reader) directions(m table.Reader, route *Route) {
 
 // chainageOf reads a chainage that carries no occurrence.
 func (r *reader) chainageOf(m table.Reader, key string) chainage.Point {
+	if v := m.Get(key); v != nil && v.Mark != "" {
+		r.faults.Add(v.Pos, "%s is a chainage without an occurrence, and %s is taken for a comment: take it away, or put a blank before it", key, v.Mark)
+		return chainage.Point{}
+	}
 	p := r.pointOf(m, key)
 	if p.Occurrence != 0 {
 		r.faults.Add(valuePlace(m, key), "%s is a chainage without an occurrence", key)
@@ -228,6 +232,12 @@ func (r *reader) pointOf(m table.Reader, key string) chainage.Point {
 	}
 	if v.Kind != table.NumberKind && v.Kind != table.StringKind {
 		r.faults.Add(v.Pos, "%s is %s, a position in kilometres is needed", key, v.Kind)
+		return chainage.Point{}
+	}
+	if v.Mark != "" {
+		// Else the first place that reads so, or an ambiguous one, would be taken.
+		written := v.Text + v.Mark
+		r.faults.Add(v.Pos, "%s %s needs quotes, without them %s is a comment: write %s = %s", key, source.Visible(written), v.Mark, key, source.Quote(written))
 		return chainage.Point{}
 	}
 	p, err := chainage.ParsePoint(strings.TrimSpace(v.Text))

@@ -33,8 +33,11 @@ func (k Kind) String() string {
 
 // Value is a TOML value with its place.
 type Value struct {
-	Kind  Kind
-	Text  string // of a string its content, of a number, date or boolean as written
+	Kind Kind
+	Text string // of a string its content, of a number, date or boolean as written
+	// Mark is a # with digits that follows a number without a blank between: to TOML it
+	// is a comment, and whoever wrote it may have meant an occurrence.
+	Mark  string
 	Pos   source.Position
 	Items []Value // of an array
 	Table *Map    // of a table
@@ -85,7 +88,7 @@ func ReadTOML(file string, content []byte, faults *source.Collector) *Map {
 	if !CheckUTF8(file, content, faults) {
 		return nil
 	}
-	r := tomlReader{file: file, lines: lineStarts(content)}
+	r := tomlReader{file: file, content: content, lines: lineStarts(content)}
 	if at, many := r.manyKeys(content); many {
 		faults.Add(at, "more than %d keys in a table, or tables of different names", MaxKeys)
 		return nil
@@ -125,9 +128,10 @@ func ReadTOML(file string, content []byte, faults *source.Collector) *Map {
 }
 
 type tomlReader struct {
-	file  string
-	p     unstable.Parser
-	lines []int // offsets at which lines begin
+	file    string
+	content []byte
+	p       unstable.Parser
+	lines   []int // offsets at which lines begin
 }
 
 func lineStarts(content []byte) []int {
@@ -263,6 +267,18 @@ func (r *tomlReader) keyValue(m *Map, e *unstable.Node) {
 	m.set(last.name, last.pos, &v)
 }
 
+// mark gives the # and the digits at the beginning of what follows a number.
+func mark(rest []byte) string {
+	n := 0
+	for n < len(rest) && (n == 0 && rest[n] == '#' || n > 0 && '0' <= rest[n] && rest[n] <= '9') {
+		n++
+	}
+	if n < 2 {
+		return ""
+	}
+	return string(rest[:n])
+}
+
 func (r *tomlReader) value(n *unstable.Node, around source.Position) Value {
 	v := Value{Pos: r.pos(n), Text: string(n.Data)}
 	if v.Pos.Line == 0 {
@@ -270,7 +286,7 @@ func (r *tomlReader) value(n *unstable.Node, around source.Position) Value {
 	}
 	switch n.Kind {
 	case unstable.Integer, unstable.Float:
-		v.Kind = NumberKind
+		v.Kind, v.Mark = NumberKind, mark(r.content[n.Raw.Offset+n.Raw.Length:])
 	case unstable.Bool:
 		v.Kind = BoolKind
 	case unstable.LocalDate, unstable.LocalTime, unstable.LocalDateTime, unstable.DateTime:
