@@ -7,12 +7,15 @@ import (
 
 	"speedtrail/diff/doubt"
 	"speedtrail/schema"
+	"speedtrail/schema/codes"
 	"speedtrail/schema/source"
+	"speedtrail/schema/unit"
 )
 
 // doubtfulNames lists what requests and acceptances name and a data set does not
 // have. It is no fault of the data set: old requests outlive routes, and only the
-// requests in play are held to it, by assess.
+// requests in play are held to it, by assess. Beside that it lists checks that are off
+// and axle load rows that do nothing.
 func doubtfulNames(d *schema.Dataset) []string {
 	var list []string
 	add := func(at source.Position, format string, args ...any) {
@@ -20,6 +23,11 @@ func doubtfulNames(d *schema.Dataset) []string {
 	}
 	var routes, trains []string
 	for _, r := range d.Routes {
+		for i := range r.AxleLoad {
+			if row := &r.AxleLoad[i]; row.Limit == ([codes.AxleLoads]unit.Speed{}) {
+				add(row.Pos, "the row gives no speed to any category and restricts no train")
+			}
+		}
 		routes = append(routes, r.ID)
 	}
 	for _, t := range d.Trains {

@@ -36,6 +36,7 @@ func TestDoubtfulNames(t *testing.T) {
 		"[[accepted]]", `finding = "crossing-warning"`, `route = "R1"`, "from_km = 2", "to_km = 2", `reason = "a point"`,
 		"[[accepted]]", `finding = "frobnication"`, `route = "R1"`, "from_km = 1", "to_km = 2", `reason = "C"`,
 		"[[accepted]]", `finding = "outside"`, `route = "R1"`, "from_km = 1", "to_km = 2", `reason = "C"`)
+	write("routes/r1/axle-load.csv", "from_km,to_km,C2,note", "1,2,60,", "2,3,,a cell was lost")
 	got := call(t, "--repo", repo, "validate").want(t, 0)
 	var remarks []string
 	for line := range strings.Lines(got.errors) {
@@ -44,6 +45,7 @@ func TestDoubtfulNames(t *testing.T) {
 		}
 	}
 	want := []string{
+		`routes/r1/axle-load.csv:3:1: the row gives no speed to any category and restricts no train`,
 		`requests/a.toml:5:9: request CR-1 names route "R2", which is not in this revision; did you mean R1?`,
 		`requests/a.toml:12:9: request CR-1: on route R1, to_km 7.500 is outside the route, which runs from 0.000 to 5.000`,
 		`requests/a.toml:14:16: request CR-1 names train "Tt", which is not in this revision; did you mean T?`,

@@ -20,7 +20,8 @@ func (a *app) validateCommand() *cobra.Command {
 		Long: `validate reads the whole data set at a revision (the working tree unless given)
 and lists every fault with file, line and column. Exit status 0: none, 2: some.
 What requests and accepted.toml name and the revision does not have is remarked on
-standard error; assess holds the requests of a change to it.`,
+standard error, since assess holds the requests of a change to it; so are checks for
+which no limit is set, and axle load rows without a speed.`,
 		Example: `  speedtrail validate
   speedtrail validate release-2`,
 		Args: arguments(0, 1),

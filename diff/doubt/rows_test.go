@@ -119,6 +119,9 @@ var axleLoadMissing = []example{
 	{name: "lighter than all", files: files{"axle-load.csv": "from_km,to_km,D2,D4\n1,2,80,60\n"}},
 	{name: "listed", files: files{"axle-load.csv": "from_km,to_km,C2,D4\n1,2,80,60\n"}},
 	{name: "no reference train of it", files: files{"axle-load.csv": "from_km,to_km,C2\n1,2,80\n"}},
+	{name: "every cell is blank, whatever the trains",
+		files: files{"axle-load.csv": "from_km,to_km,direction,C2,D4\n1,2,reverse,,\n2,3,,80,60\n"},
+		want:  "axle-load-missing reverse 1.000 2.000 axle-load.csv:2 no speed for any category: the row restricts no train\n"},
 	{name: "no row at all", files: files{"axle-load.csv": "from_km,to_km,D4\n"}},
 }
 

@@ -86,7 +86,11 @@ func (c *check) missing(row *schema.AxleLoadRow) {
 				lightest = lightest && lighter(a, b)
 			}
 		}
-		if !given || lightest {
+		if !given {
+			c.add(AxleLoadMissing, &row.Row, "no speed for any category: the row restricts no train")
+			return
+		}
+		if lightest {
 			continue
 		}
 		for _, t := range c.trains {
