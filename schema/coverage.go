@@ -5,6 +5,7 @@ import (
 	"slices"
 
 	"speedtrail/schema/codes"
+	"speedtrail/schema/source"
 	"speedtrail/schema/unit"
 )
 
@@ -19,6 +20,15 @@ func (r *reader) coverage(route *Route) {
 			gaps[d] = coverageOf(route, d)
 		} else {
 			whole &^= 1 << d
+		}
+	}
+	// What can be done about a gap is said once, at the first one.
+	hinted := source.Position{}
+	for _, list := range gaps {
+		for _, g := range list {
+			if at := route.Speed[g.row].Pos; !g.overlap && (hinted.Line == 0 || at.Compare(hinted) < 0) {
+				hinted = at
+			}
 		}
 	}
 	// What is wrong in both directions alike is said once.
@@ -39,7 +49,11 @@ func (r *reader) coverage(route *Route) {
 				r.faults.Add(at, "the row overlaps that of line %d%s from %s to %s, each place has one row", other.Line, direction, from, to)
 				continue
 			}
-			r.faults.Add(at, "no row covers %s to %s%s, the basic speed is always given (SUBSET-026 3.11.3.2.2)", from, to, direction)
+			hint := ""
+			if at == hinted {
+				hint, hinted = ", the basic speed is always given (SUBSET-026 3.11.3.2.2); where posts alone are missing or repeat, write a [[jump]] in route.toml; where track is, make a second route", source.Position{}
+			}
+			r.faults.Add(at, "no row covers %s to %s%s%s", from, to, direction, hint)
 		}
 	}
 }

@@ -188,8 +188,9 @@ func (d *definition[T]) read(r *reader, route *Route, rows *[]T, k *keptTable[T]
 
 // places is where the columns of a table stand.
 type places struct {
-	own    []int // by the place of the column in the definition
-	common commonAt
+	own     []int // by the place of the column in the definition
+	common  commonAt
+	shifted shiftedAt
 }
 
 func (d *definition[T]) placesIn(t *table.CSV) *places {
@@ -201,6 +202,7 @@ func (d *definition[T]) placesIn(t *table.CSV) *places {
 	if d.place {
 		p.common.from = t.Place("km")
 	}
+	p.shifted = shiftedIn(t)
 	return p
 }
 
@@ -212,8 +214,17 @@ func (d *definition[T]) rowsOf(r *reader, route *Route, t *table.CSV, p *places)
 	line := cells{places: p.own}
 	rows := make([]T, 0, t.Len())
 	for line.row = range t.Rows() {
+		if r.decimalComma(t, line.row, &p.shifted) {
+			t.Broken = true
+			continue
+		}
+		before := r.faults.Count()
 		base, good := r.row(route, line.row, &p.common)
 		row, sound := d.row(r, line, base)
+		if faulty := r.faults.Count() - before; faulty > 0 && r.twoCells(line.row, p.shifted.numbers) {
+			r.faults.Drop(faulty) // they come of it
+			good = false
+		}
 		rows = append(rows, row)
 		if !good || !sound {
 			t.Broken = true

@@ -60,6 +60,15 @@ func (c *Collector) Add(at Position, format string, args ...any) {
 	}
 }
 
+// Drop takes back the n faults before the last one, which says what they come of.
+// Where some of them are only counted, all stay.
+func (c *Collector) Drop(n int) {
+	if last := len(c.list) - 1; c.count == len(c.list) && n <= last {
+		c.list = append(c.list[:last-n], c.list[last])
+		c.count -= n
+	}
+}
+
 // Count returns how many faults were recorded.
 func (c *Collector) Count() int { return c.count }
 

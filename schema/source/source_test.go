@@ -162,3 +162,21 @@ func TestFaultLimit(t *testing.T) {
 		t.Errorf("the text ends with %q", faults.Error()[len(faults.Error())-60:])
 	}
 }
+
+// A fault that says what others come of takes their place.
+func TestDrop(t *testing.T) {
+	var c Collector
+	for i := range 4 {
+		c.Add(Position{File: "f", Line: i + 1}, "problem")
+	}
+	c.Drop(2)
+	if err := c.Err(); c.Count() != 2 || err.Error() != "f:1: problem\nf:4: problem" {
+		t.Errorf("%d faults: %v", c.Count(), err)
+	}
+	for range FaultLimit {
+		c.Add(Position{File: "g", Line: 1}, "problem")
+	}
+	if c.Drop(1); c.Count() != FaultLimit+2 {
+		t.Errorf("%d faults", c.Count())
+	}
+}

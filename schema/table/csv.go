@@ -120,6 +120,11 @@ func (t *CSV) read(content []byte, first int, faults *source.Collector, isRow fu
 		t.Broken = true
 		return
 	}
+	if line, ok := mergeMarker(content); ok {
+		faults.Add(at(line, 1), "%s", unresolved)
+		t.Broken = true
+		return
+	}
 	records := quotedRecords
 	if bytes.IndexByte(content, '"') < 0 {
 		records = plainRecords
@@ -169,9 +174,13 @@ func (t *CSV) readHeader(r *record, known, required []string, faults *source.Col
 		faults.Add(t.Header, "%d columns, at most %d are allowed", len(r.cells), MaxColumns)
 		return nil
 	}
-	if len(r.cells) == 1 && strings.Contains(r.cells[0], ";") {
-		faults.Add(t.Header, "columns are separated by semicolons, commas are needed")
-		return nil
+	if len(r.cells) == 1 {
+		for _, x := range [...][2]string{{";", "semicolons"}, {"\t", "tabs"}} {
+			if strings.Contains(r.cells[0], x[0]) {
+				faults.Add(t.Header, "columns are separated by %s, commas are needed", x[1])
+				return nil
+			}
+		}
 	}
 	places := make([]int, len(r.cells))
 	good := true
