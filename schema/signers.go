@@ -20,6 +20,10 @@ func (r *reader) allowedSigners(p *Policy, content []byte) {
 	if !table.CheckUTF8(signersFile, content, &r.faults) {
 		return
 	}
+	if line, ok := table.MergeMarker(content); ok {
+		r.faults.Add(source.Position{File: signersFile, Line: line, Column: 1}, "%s", table.Unresolved)
+		return
+	}
 	owners := map[string]string{}
 	line := 0
 	for text := range bytes.Lines(content) {

@@ -21,6 +21,12 @@ func doubtfulNames(d *schema.Dataset) []string {
 	add := func(at source.Position, format string, args ...any) {
 		list = append(list, at.String()+": "+fmt.Sprintf(format, args...))
 	}
+	if off := doubt.Unchecked(d.Limits); len(off) > 0 {
+		for i, id := range off {
+			off[i] = id + " (" + doubt.LimitKey(id) + ")"
+		}
+		add(source.Position{File: "dataset.toml"}, "not looked for, as [limits] sets no limit: %s", strings.Join(off, ", "))
+	}
 	var routes, trains []string
 	for _, r := range d.Routes {
 		for i := range r.AxleLoad {
@@ -33,12 +39,13 @@ func doubtfulNames(d *schema.Dataset) []string {
 	for _, t := range d.Trains {
 		trains = append(trains, t.ID)
 	}
-	// span looks for a stretch; point: a place without length is one, too.
-	span := func(at schema.Places, what, id string, s schema.Span, point bool) {
+	// span looks for a stretch, and tells whether the revision lacks what it names;
+	// point: a place without length is a stretch, too.
+	span := func(at schema.Places, what, id string, s schema.Span, point bool) (lacking bool) {
 		r := routeByID(d, id)
 		if r == nil {
 			add(at.Route, "%s names route %s, which is not in this revision%s", what, source.Quote(id), schema.Meant(id, routes))
-			return
+			return true
 		}
 		from, errFrom := r.Track.Locate(s.From)
 		to, errTo := r.Track.Locate(s.To)
@@ -54,22 +61,24 @@ func doubtfulNames(d *schema.Dataset) []string {
 			}
 			add(at.To, "%s: to_km %s %s from_km %s along route %s; where the track has gone since, nothing need be done", what, s.To, how, s.From, id)
 		}
+		return errFrom != nil || errTo != nil
 	}
 	for _, q := range d.Requests {
 		what := "request " + q.ID
-		before := len(list)
+		lacking := false
 		if len(q.Declare) == 0 {
 			add(q.Pos, "%s declares nothing", what)
 		}
 		for _, x := range q.Declare {
-			span(x.Places, what, x.Route, x.Span, false)
+			lacking = span(x.Places, what, x.Route, x.Span, false) || lacking
 			for k, id := range x.Trains {
 				if !slices.Contains(trains, id) {
+					lacking = true
 					add(x.Places.Trains[k], "%s names train %s, which is not in this revision%s", what, source.Quote(id), schema.Meant(id, trains))
 				}
 			}
 		}
-		if len(list) > before && len(q.Declare) > 0 {
+		if lacking {
 			add(q.Pos, "%s: assess refuses it where it is in play and names what neither side has", what)
 		}
 	}

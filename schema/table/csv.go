@@ -120,8 +120,8 @@ func (t *CSV) read(content []byte, first int, faults *source.Collector, isRow fu
 		t.Broken = true
 		return
 	}
-	if line, ok := mergeMarker(content); ok {
-		faults.Add(at(line, 1), "%s", unresolved)
+	if line, ok := MergeMarker(content); ok {
+		faults.Add(at(line, 1), "%s", Unresolved)
 		t.Broken = true
 		return
 	}

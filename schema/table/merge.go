@@ -2,11 +2,11 @@ package table
 
 import "bytes"
 
-// unresolved is what is wrong with a file in which a mergeMarker stands.
-const unresolved = "a merge of Git left both versions here: keep the lines that hold, and take the marks <<<<<<<, ======= and >>>>>>> away"
+// Unresolved is what is wrong with a file in which a MergeMarker stands.
+const Unresolved = "a merge of Git left both versions here: keep the lines that hold, and take the marks <<<<<<<, ======= and >>>>>>> away"
 
-// mergeMarker finds the first line by which Git marks what it could not merge.
-func mergeMarker(content []byte) (line int, ok bool) {
+// MergeMarker finds the first line by which Git marks what it could not merge.
+func MergeMarker(content []byte) (line int, ok bool) {
 	first := len(content)
 	for _, mark := range [...]string{"<<<<<<< ", "=======", ">>>>>>> "} {
 		for from := 0; from < first; {

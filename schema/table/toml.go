@@ -98,8 +98,8 @@ func ReadTOML(file string, content []byte, faults *source.Collector) *Map {
 	var checked map[string]any
 	if err := toml.Unmarshal(content, &checked); err != nil {
 		at := source.Position{File: file, Line: 1}
-		if line, ok := mergeMarker(content); ok {
-			faults.Add(source.Position{File: file, Line: line, Column: 1}, "%s", unresolved)
+		if line, ok := MergeMarker(content); ok {
+			faults.Add(source.Position{File: file, Line: line, Column: 1}, "%s", Unresolved)
 			return nil
 		}
 		problem := err.Error()
