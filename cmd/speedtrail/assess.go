@@ -243,19 +243,20 @@ func unread(files fs.FS, folders []schema.Folder) func(string) (*schema.Route, e
 
 // record writes a document to the ledger.
 func (a *app) record(ctx context.Context, doc *assessment.Document, into *recording) (render.Record, error) {
-	if err := into.make(ctx, a); err != nil {
-		return render.Record{}, err
-	}
-	l, line := into.ledger, into.line
-	if err := needPolicies(line, &doc.Computed); err != nil {
-		return render.Record{}, err
-	}
+	// A call that is refused makes no ledger.
 	body, digest, err := doc.Encode()
 	if err != nil {
 		return render.Record{}, err
 	}
 	if err := history.CheckBody(body); err != nil {
 		return render.Record{}, badCall("assess with fewer reference trains, or the change in steps; --no-record shows the result", "the assessment is too large to be recorded: %v", err)
+	}
+	if err := into.make(ctx, a); err != nil {
+		return render.Record{}, err
+	}
+	l, line := into.ledger, into.line
+	if err := needPolicies(line, &doc.Computed); err != nil {
+		return render.Record{}, err
 	}
 	number, added, head, err := l.RecordAssessment(ctx, time.Now(), assessment.LedgerRecord(doc, body, digest))
 	if err != nil {

@@ -3,7 +3,6 @@ package trace
 import (
 	"bytes"
 	"container/heap"
-	"slices"
 )
 
 // line is what a trace goes along: the commits before the newest one, and for
@@ -15,6 +14,7 @@ type line struct {
 	before      [][]int32 // of each commit that loads
 	across      []int32   // how many commits that do not load lie between
 	reached     []bool
+	listed      []int32 // of each commit: one more than the last one that has it in before
 }
 
 // parents gives the parents that count.
@@ -27,7 +27,7 @@ func (l *line) parents(c int32) []int32 {
 }
 
 func newLine(h *History, firstParent bool) *line {
-	l := &line{h: h, firstParent: firstParent, reached: make([]bool, len(h.Commits))}
+	l := &line{h: h, firstParent: firstParent, reached: make([]bool, len(h.Commits)), listed: make([]int32, len(h.Commits))}
 	// Parents stand before their children: one pass from the newest finds all
 	// that is reached, one from the oldest looks through the gaps.
 	children := make([]int32, len(h.Commits))
@@ -75,24 +75,23 @@ func (l *line) lookThrough(c int32) {
 		return
 	}
 	var list []int32
+	add := func(p int32) {
+		if l.listed[p] != c+1 {
+			l.listed[p] = c + 1
+			list = append(list, p)
+		}
+	}
 	for _, p := range parents {
 		if l.h.State[p] != Gap {
-			list = appendNew(list, p)
+			add(p)
 			continue
 		}
 		l.across[c] = max(l.across[c], l.across[p]+1)
 		for _, q := range l.before[p] {
-			list = appendNew(list, q)
+			add(q)
 		}
 	}
 	l.before[c] = list
-}
-
-func appendNew(list []int32, c int32) []int32 {
-	if slices.Contains(list, c) {
-		return list
-	}
-	return append(list, c)
 }
 
 // newest is a heap of commits by the committer's date, the newest first, equal
