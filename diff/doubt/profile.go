@@ -103,13 +103,30 @@ func (c *check) risesAfter(row *schema.SpeedRow, d codes.Direction) (rise unit.S
 	return rise
 }
 
-// seenBy is a doubtful piece of a profile and who meets it.
+// seenBy is a doubtful piece of a profile and who meets it, by direction of travel.
 type seenBy struct {
-	from, to   unit.Distance
-	text       string
-	row        source.Position
-	directions codes.Directions
-	trains     []string
+	id       string
+	from, to unit.Distance
+	text     string
+	rows     [2]source.Position
+	trains   [2][]string
+}
+
+// doubts gives one doubt for both directions if the same trains meet it in both.
+func (s *seenBy) doubts() []Doubt {
+	doubt := func(set codes.Directions, d codes.Direction) Doubt {
+		return Doubt{ID: s.id, Directions: set, From: s.from, To: s.to, Row: s.rows[d], Text: s.text + " (" + strings.Join(s.trains[d], ", ") + ")"}
+	}
+	if slices.Equal(s.trains[0], s.trains[1]) {
+		return []Doubt{doubt(codes.Both, codes.Nominal)}
+	}
+	var list []Doubt
+	for _, d := range codes.AllDirections {
+		if len(s.trains[d]) > 0 {
+			list = append(list, doubt(1<<d, d))
+		}
+	}
+	return list
 }
 
 // steps looks at the permanent line speeds of the reference trains, without
@@ -118,23 +135,25 @@ func (c *check) steps() {
 	if c.limits.LargestStep == 0 && c.limits.ShortestStretch == 0 {
 		return
 	}
-	var steps, short []*seenBy
 	type key struct {
 		from, to unit.Distance
 		text     string
 	}
+	var list []*seenBy
 	known := map[key]*seenBy{}
-	note := func(list *[]*seenBy, s seenBy, d codes.Direction, train string) {
-		k := key{s.from, s.to, s.text}
+	note := func(id string, from, to unit.Distance, text string, row source.Position, d codes.Direction, train string) {
+		k := key{from, to, text}
 		x, ok := known[k]
 		if !ok {
-			x = &s
+			x = &seenBy{id: id, from: from, to: to, text: text}
 			known[k] = x
-			*list = append(*list, x)
+			list = append(list, x)
 		}
-		x.directions |= 1 << d
-		if !slices.Contains(x.trains, train) {
-			x.trains = append(x.trains, train)
+		if len(x.trains[d]) == 0 {
+			x.rows[d] = row
+		}
+		if !slices.Contains(x.trains[d], train) {
+			x.trains[d] = append(x.trains[d], train)
 		}
 	}
 	for _, d := range codes.AllDirections {
@@ -152,19 +171,17 @@ func (c *check) steps() {
 						low, high = high, low
 					}
 					if limit := c.limits.LargestStep; limit > 0 && high.Speed-low.Speed > limit {
-						note(&steps, seenBy{from: p.From, to: p.From, row: c.rowAt(low, d), text: fmt.Sprintf("%d and %d km/h meet, a step of more than %d", pieces[i-1].Speed, p.Speed, limit)}, d, t.ID)
+						note(StepSize, p.From, p.From, fmt.Sprintf("%d and %d km/h meet, a step of more than %d", pieces[i-1].Speed, p.Speed, limit), c.rowAt(low, d), d, t.ID)
 					}
 				}
 				if limit := c.limits.ShortestStretch; i > 0 && i < len(pieces)-1 && p.To-p.From < limit {
-					note(&short, seenBy{from: p.From, to: p.To, row: c.rowAt(p, d), text: fmt.Sprintf("%d km/h holds for %s m only, below the %s m of dataset.toml", p.Speed, (p.To - p.From).M(), limit.M())}, d, t.ID)
+					note(ShortStretch, p.From, p.To, fmt.Sprintf("%d km/h holds for %s m only, below the %s m of dataset.toml", p.Speed, (p.To-p.From).M(), limit.M()), c.rowAt(p, d), d, t.ID)
 				}
 			}
 		}
 	}
-	for id, list := range map[string][]*seenBy{StepSize: steps, ShortStretch: short} {
-		for _, s := range list {
-			c.list = append(c.list, Doubt{ID: id, Directions: s.directions, From: s.from, To: s.to, Row: s.row, Text: s.text + " (" + strings.Join(s.trains, ", ") + ")"})
-		}
+	for _, s := range list {
+		c.list = append(c.list, s.doubts()...)
 	}
 }
 

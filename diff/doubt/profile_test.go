@@ -26,6 +26,11 @@ var shortStretch = []example{
 		files: files{"dataset.toml": limits("shortest_stretch_m = 100"), "trains.toml": train("S", 150, "", "C2", 200, 60) + train("U", 80, "", "C2", 700, 120) + train("T", 150, "", "C2", 200, 200) + train("V", 80, "", "C2", 30, 100),
 			"speed.csv": "from_km,to_km,basic,cd150\n0,4,100,\n4,4.05,60,100\n4.05,10,100,\n"},
 		want: "short-stretch both 4.000 4.050 speed.csv:3 60 km/h holds for 50 m only, below the 100 m of dataset.toml (U, V)\n"},
+	{name: "of other trains in the other direction",
+		files: files{"dataset.toml": limits("shortest_stretch_m = 100"), "trains.toml": train("T", 80, `"passenger"`, "C2", 200, 200) + train("U", 80, "", "C2", 200, 200),
+			"speed.csv": "from_km,to_km,direction,basic,passenger,passenger_rule\n0,4,,100,,\n4,4.05,nominal,100,60,limits\n4,4.05,reverse,60,100,replaces\n4.05,10,,100,,\n"},
+		want: "short-stretch nominal 4.000 4.050 speed.csv:3 60 km/h holds for 50 m only, below the 100 m of dataset.toml (T)\n" +
+			"short-stretch reverse 4.000 4.050 speed.csv:4 60 km/h holds for 50 m only, below the 100 m of dataset.toml (U)\n"},
 	{name: "the row of the track, where the train's own maximum speed holds",
 		files: files{"dataset.toml": limits("shortest_stretch_m = 100"), "trains.toml": train("T", 150, "", "C2", 200, 120), "speed.csv": "from_km,to_km,basic\n0,4,100\n4,4.05,160\n4.05,10,100\n"},
 		want:  "short-stretch both 4.000 4.050 speed.csv:3 120 km/h holds for 50 m only, below the 100 m of dataset.toml (T)\n"},
