@@ -8,6 +8,7 @@ import (
 	"os"
 	"path"
 	"path/filepath"
+	"slices"
 	"strings"
 	"time"
 
@@ -252,6 +253,17 @@ func (a *app) ledgerFile() (string, error) {
 	return file, nil
 }
 
+// besideIt tells whether there is a file that SQLite looks for beside a database.
+func besideIt(file string) bool {
+	return slices.ContainsFunc(sqliteFiles[1:], func(ending string) bool {
+		_, err := os.Lstat(file + ending)
+		return err == nil
+	})
+}
+
+// sqliteFiles are the endings of a database and of what SQLite puts beside it.
+var sqliteFiles = []string{"", "-journal", "-wal", "-shm"}
+
 // tracked gives the first file that Git tracks of a database and of what SQLite looks
 // for beside it; empty where it tracks none. repo may be nil.
 func (a *app) tracked(repo *revision.Repo, file string) (string, error) {
@@ -262,15 +274,15 @@ func (a *app) tracked(repo *revision.Repo, file string) (string, error) {
 		if err == nil {
 			defer around.Close()
 			repos = append(repos, around)
-		} else if !errors.Is(err, revision.ErrNoRepository) {
-			return "", err
+		} else if !errors.Is(err, revision.ErrNoRepository) && besideIt(file) {
+			return "", err // whether a commit brought that cannot be seen
 		}
 	}
 	for _, r := range repos {
 		if r == nil {
 			continue
 		}
-		for _, ending := range []string{"", "-journal", "-wal", "-shm"} {
+		for _, ending := range sqliteFiles {
 			if tracked, err := r.Tracked(file + ending); err != nil || tracked {
 				return file + ending, err
 			}

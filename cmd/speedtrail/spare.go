@@ -50,7 +50,7 @@ func (a *app) keptFiles() (list []string) {
 			continue
 		}
 		for _, base := range []string{file, filepath.Join(filepath.Dir(file), "index.db")} {
-			for _, ending := range []string{"", "-journal", "-wal", "-shm"} {
+			for _, ending := range sqliteFiles {
 				list = append(list, base+ending)
 			}
 		}
