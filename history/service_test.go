@@ -319,6 +319,38 @@ func TestAssessmentFromTheFuture(t *testing.T) {
 	}
 }
 
+// A clock of a signer that is a little ahead makes nothing late that others sign.
+func TestStatementOfClockAhead(t *testing.T) {
+	w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+	w.anchor("a")
+	n := w.assess("a", "b")
+	recorded := w.now()
+	w.record(chain.InForce, signoff.Statement{Kind: signoff.InForce, Revision: commitOf("a"), Content: treeOf("a"), Policy: policyHash("P1"), Since: begin,
+		Corrects: approval.CorrectsNothing, Role: approval.InServiceRole, Time: recorded.Add(4 * time.Minute)}, "cem")
+	line := func() *approval.Line {
+		line, _, err := history.ReadLine(t.Context(), w.l)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return line
+	}
+	for _, x := range [][2]string{{"ada", "checker"}, {"bea", "approver"}} {
+		at := recorded.Add(time.Minute)
+		text, signature, err := sign(signOffOf(line().Assessment(n), x[1], signoff.Approve), x[0], w.head, at)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, chain.SignOff, text, signature, at); err != nil {
+			t.Fatal(err)
+		}
+	}
+	for minutes, want := range map[time.Duration]bool{0: false, 2: true} {
+		if got := line().AsOf(recorded.Add(minutes*time.Minute)).ApprovedContent(".", treeOf("b")); got != want {
+			t.Errorf("%d minutes after: approved is %v", minutes, got)
+		}
+	}
+}
+
 // A late approval is not made an early one by recording it with a clock that was put
 // back: it stands after the statement of what went into service.
 func TestLateApprovalByAnotherClock(t *testing.T) {

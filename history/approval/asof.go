@@ -12,7 +12,8 @@ func (l *Line) AsOf(at time.Time) *Line {
 	end := int64(len(l.heads))
 	until := func(records []Record) {
 		for i := range records {
-			if r := &records[i]; r.Time.After(at) {
+			// A signer's clock may be ahead.
+			if r := &records[i]; r.Time.After(at) && r.Recorded.After(at) {
 				end = min(end, r.Entry.Seq-1)
 			}
 		}
