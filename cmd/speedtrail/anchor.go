@@ -171,8 +171,9 @@ func (a *app) revokeCommand() *cobra.Command {
 		Short: "take a key out of use",
 		Long: `revoke records that nothing that a key signs from now on counts. It is signed by
 the key's owner (--role owner), or by somebody who may sign in a role that is
-independent of preparer. Assessments that the key has signed before are listed for
-review, here and below the list of register.
+independent of preparer. What the key has signed before is listed for review, here
+and below the list of register, and every report says of each signature whether its
+key was revoked later.
 
 FINGERPRINT is what ssh-keygen -lf KEY.pub prints, with SHA256: in front.`,
 		Example: `  speedtrail revoke SHA256:Xa0c... --role owner --reason "laptop stolen" --key ~/.ssh/id_ed25519`,
@@ -245,10 +246,8 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 	if err := a.recordSigned(ctx, l, line, chain.Revocation, result); err != nil {
 		return err
 	}
-	for _, r := range line.SignOffs() {
-		if r.Fingerprint == fingerprint {
-			fmt.Fprintf(a.out, "review assessment %d: %s signed it as %s (%s) with this key, entry %d\n", r.Assessment, source.Visible(r.Signer), r.Role, r.Decision, r.Entry.Seq)
-		}
+	for _, text := range toReview(line, fingerprint) {
+		fmt.Fprintln(a.out, text)
 	}
 	return nil
 }

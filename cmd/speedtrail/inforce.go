@@ -250,14 +250,18 @@ type serviceRecord struct {
 	Since    string   `json:"since"`
 	Signer   string   `json:"signer"`
 	Key      string   `json:"key"`
-	Stated   string   `json:"stated"`
-	Recorded string   `json:"recorded"`
-	Reason   string   `json:"reason"`
-	Approved bool     `json:"approved"`
+	// Revoked is null while the key is in use.
+	Revoked  *render.Revocation `json:"key_revoked" jsonschema:"nullable"`
+	Stated   string             `json:"stated"`
+	Recorded string             `json:"recorded"`
+	Reason   string             `json:"reason"`
+	Approved bool               `json:"approved"`
 	lapsed   bool
 	Late     string  `json:"approved_late"` // when, where that was after it went into service; else empty
 	Undoes   bool    `json:"undoes"`
 	Through  []int64 `json:"assessments"`
+	// Review are the statements by which it is approved whose keys were revoked later.
+	Review []evidence `json:"review"`
 }
 
 // serviceLog is the JSON form of the log of what went into service.
@@ -275,18 +279,24 @@ type correctedRecord struct {
 	How    string        `json:"how" jsonschema:"enum=replaces,enum=voids"` // what the later one does
 	Entry  int64         `json:"by_entry"`                                  // the later one
 	Signer string        `json:"by_signer"`
-	Reason string        `json:"by_reason"`
-	record approval.Record
+	// Revoked is null while the key of the later one is in use.
+	Revoked *render.Revocation `json:"by_key_revoked" jsonschema:"nullable"`
+	Reason  string             `json:"by_reason"`
+	record  approval.Record
 }
 
 func (x correctedRecord) words() string {
-	return x.Record.words() + source.Visible(fmt.Sprintf("; entry %d %s it, signed by %s (%s)", x.Entry, x.How, x.Signer, x.Reason))
+	text := fmt.Sprintf("; entry %d %s it, signed by %s (%s)", x.Entry, x.How, x.Signer, x.Reason)
+	if x.Revoked != nil {
+		text += "; ! its " + x.Revoked.Short()
+	}
+	return x.Record.words() + source.Visible(text)
 }
 
 func corrections(line *approval.Line, folder string) []correctedRecord {
 	list := []correctedRecord{}
 	for _, x := range line.Corrections(folder) {
-		list = append(list, correctedRecord{serviceRecordOf(history.ServiceOf(line, x.Record)), x.How, x.By.Entry.Seq, x.By.Signer, x.By.Reason, x.Record})
+		list = append(list, correctedRecord{serviceRecordOf(line, history.ServiceOf(line, x.Record)), x.How, x.By.Entry.Seq, x.By.Signer, revocationOf(line, x.By.Fingerprint), x.By.Reason, x.Record})
 	}
 	return list
 }
@@ -296,7 +306,7 @@ type serviceFinding struct {
 	Text string `json:"text"`
 }
 
-func serviceRecordOf(s history.Service) serviceRecord {
+func serviceRecordOf(line *approval.Line, s history.Service) serviceRecord {
 	late := ""
 	if s.Late {
 		late = s.ApprovedAt.UTC().Format(signoff.TimeLayout)
@@ -305,6 +315,7 @@ func serviceRecordOf(s history.Service) serviceRecord {
 		Late:  late,
 		Entry: s.Entry.Seq, Revision: s.Revision, Folder: s.Folder, Routes: append([]string{}, s.Routes...), Since: s.Since.Format(signoff.TimeLayout),
 		Signer: s.Signer, Key: s.Fingerprint, Stated: s.Time.Format(signoff.TimeLayout), Recorded: s.Recorded.Format(signoff.TimeLayout), Reason: s.Reason,
+		Revoked: revocationOf(line, s.Fingerprint), Review: byRevoked(evidenceOf(line, s.Folder, s.Content, s.Through)),
 		lapsed:   s.Lapsed,
 		Approved: s.Approved, Undoes: s.Undoes, Through: append([]int64{}, s.Through...),
 	}
@@ -328,7 +339,14 @@ func (r serviceRecord) words() string {
 	case r.Approved:
 		state = "approved, the anchor"
 	}
-	return source.Visible(fmt.Sprintf("%s  commit %s on %s; %s; entry %d, signed by %s (%s)", r.Since, short(r.Revision), where, state, r.Entry, r.Signer, r.Reason))
+	text := fmt.Sprintf("%s  commit %s on %s; %s; entry %d, signed by %s (%s)", r.Since, short(r.Revision), where, state, r.Entry, r.Signer, r.Reason)
+	if r.Revoked != nil {
+		text += "; ! its " + r.Revoked.Short()
+	}
+	for _, e := range r.Review {
+		text += "; ! " + e.by() + ": " + e.Revoked.Short()
+	}
+	return source.Visible(text)
 }
 
 func (a *app) inforceLog(ctx context.Context) error {
@@ -347,7 +365,7 @@ func (a *app) inforceLog(ctx context.Context) error {
 	}
 	records := []serviceRecord{}
 	for _, r := range line.Standing(folder) {
-		records = append(records, serviceRecordOf(history.ServiceOf(line, r)))
+		records = append(records, serviceRecordOf(line, history.ServiceOf(line, r)))
 	}
 	corrected := corrections(line, folder)
 	findings := history.ServiceFindings(line, folder)

@@ -35,7 +35,8 @@ type inForceAnswer struct {
 	// Corrected are records that said otherwise of that instant until another one
 	// replaced or voided them, by entry.
 	Corrected []correctedRecord `json:"corrected"`
-	// Signed are the decisions on the assessments that led to the revision.
+	// Signed are the decisions on the assessments that led to the revision, and the
+	// statements of the anchor where it has the anchor's content.
 	Signed []evidence   `json:"signed"`
 	Speeds []pointSpeed `json:"speeds"`
 	Head   string       `json:"head"`
@@ -50,13 +51,23 @@ type heldRecord struct {
 
 // evidence is a decision that somebody signed.
 type evidence struct {
-	Assessment  int64  `json:"assessment"`
+	Assessment  int64  `json:"assessment"` // 0: the anchor
 	Entry       int64  `json:"entry"`
 	Role        string `json:"role"`
-	Decision    string `json:"decision"`
+	Decision    string `json:"decision" jsonschema:"enum=approve,enum=reject,enum=anchor"`
 	Signer      string `json:"signer"`
 	Fingerprint string `json:"key"`
-	Time        string `json:"time"`
+	// Revoked is null while the key is in use.
+	Revoked *render.Revocation `json:"key_revoked" jsonschema:"nullable"`
+	Time    string             `json:"time"`
+}
+
+// by says what was signed, and who did.
+func (e *evidence) by() string {
+	if e.Assessment == 0 {
+		return fmt.Sprintf("the anchor as %s by %s", e.Role, e.Signer)
+	}
+	return fmt.Sprintf("assessment %d: %s as %s by %s", e.Assessment, e.Decision, e.Role, e.Signer)
 }
 
 // pointSpeed is the effective speed of a train at a point.
@@ -128,7 +139,7 @@ func recordsOfRoutes(line *approval.Line, folder string, when time.Time, network
 	list := []heldRecord{}
 	for _, r := range standing {
 		if on := held[r.Entry.Seq]; on != nil {
-			list = append(list, heldRecord{serviceRecordOf(history.ServiceOf(line, r)), on})
+			list = append(list, heldRecord{serviceRecordOf(line, history.ServiceOf(line, r)), on})
 		}
 	}
 	return list
@@ -137,13 +148,9 @@ func recordsOfRoutes(line *approval.Line, folder string, when time.Time, network
 // fillInForce adds the evidence, and the speeds at the point.
 func (a *app) fillInForce(ctx context.Context, answer *inForceAnswer, line *approval.Line, now approval.Record, when time.Time, route, at string) error {
 	s := history.ServiceOf(line, now)
-	r := serviceRecordOf(s)
+	r := serviceRecordOf(line, s)
 	answer.Record = &r
-	for _, number := range s.Through {
-		for _, d := range line.State(number).Signed {
-			answer.Signed = append(answer.Signed, evidence{number, d.Entry.Seq, d.Role, d.Decision, d.Signer, d.Fingerprint, d.Time.Format(signoff.TimeLayout)})
-		}
-	}
+	answer.Signed = evidenceOf(line, now.Folder, now.Content, s.Through)
 	repo, err := a.openRepo()
 	if err != nil {
 		return err
@@ -248,9 +255,9 @@ func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		governed := render.Hanging(source.Visible(strings.Join(s.Governed, "; ")), max(width, len(indent)+30), indent)
 		fmt.Fprintf(w, "  %s%s %3d km/h   %s\n", name, strings.Repeat(" ", names-render.Cells(name)), s.Speed, governed)
 	}
-	fmt.Fprintf(w, "\n%s\n", render.Hanging(source.Visible(fmt.Sprintf("Evidence: recorded %s as entry %d, stated %s, key %s", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)), width, "  "))
+	fmt.Fprintf(w, "\n%s\n", render.Hanging(source.Visible(fmt.Sprintf("Evidence: recorded %s as entry %d, stated %s, key %s", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)+x.Record.Revoked.Behind()), width, "  "))
 	for _, e := range x.Signed {
-		fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(fmt.Sprintf("assessment %d: %s as %s by %s at %s, entry %d, key %s", e.Assessment, e.Decision, e.Role, e.Signer, e.Time, e.Entry, e.Fingerprint)), width, "  "))
+		fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(fmt.Sprintf("%s at %s, entry %d, key %s", e.by(), e.Time, e.Entry, e.Fingerprint)+e.Revoked.Behind()), width, "  "))
 	}
 	_, err := fmt.Fprintf(w, "head %s\nspeedtrail verify proves the chain and the signatures\n", x.Head)
 	return err

@@ -28,19 +28,20 @@ func (a *app) registerCommand() *cobra.Command {
 
 // registered is the JSON form of a line of the register.
 type registered struct {
-	Number   int64    `json:"number"`
-	Recorded string   `json:"recorded"`
-	State    string   `json:"state"`
-	SignOffs []string `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"
-	Base     string   `json:"base"`
-	Target   string   `json:"target"`
-	Folder   string   `json:"folder"`
-	Dataset  string   `json:"dataset"`
-	Requests []string `json:"requests"`
-	Changes  int64    `json:"speed_changes"`
-	Findings int64    `json:"findings"`
-	Digest   string   `json:"digest"`
-	Entry    string   `json:"entry"` // SEQ:HASH
+	Number   int64                   `json:"number"`
+	Recorded string                  `json:"recorded"`
+	State    string                  `json:"state"`
+	SignOffs []string                `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"
+	Revoked  []render.RevokedSignOff `json:"revoked"`   // of sign_offs, those by keys that were revoked later
+	Base     string                  `json:"base"`
+	Target   string                  `json:"target"`
+	Folder   string                  `json:"folder"`
+	Dataset  string                  `json:"dataset"`
+	Requests []string                `json:"requests"`
+	Changes  int64                   `json:"speed_changes"`
+	Findings int64                   `json:"findings"`
+	Digest   string                  `json:"digest"`
+	Entry    string                  `json:"entry"` // SEQ:HASH
 }
 
 // registerList is the JSON form of the register.
@@ -76,7 +77,7 @@ func (a *app) register(ctx context.Context) error {
 			list := make([]registered, len(rows))
 			for i, r := range rows {
 				list[i] = registered{
-					Number: r.Number, Recorded: r.Time, State: line.State(r.Number).Word, SignOffs: signedBy(line, r.Number), Base: r.Base, Target: r.Target, Folder: r.Folder,
+					Number: r.Number, Recorded: r.Time, State: line.State(r.Number).Word, SignOffs: signedBy(line, r.Number), Revoked: revokedOf(line, line.State(r.Number).Signed), Base: r.Base, Target: r.Target, Folder: r.Folder,
 					Dataset: r.Dataset, Requests: r.Requests, Changes: r.Changes, Findings: r.Findings, Digest: r.Digest,
 					Entry: r.Entry.String(),
 				}
@@ -109,7 +110,11 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			fmt.Sprintf("speed changes %d, findings %d", r.Changes, r.Findings),
 		}
 		for _, x := range state.Signed {
-			lines = append(lines, source.Visible(fmt.Sprintf("%s as %s by %s, %s", x.Decision, x.Role, x.Signer, x.Time.UTC().Format(time.DateOnly))))
+			text := fmt.Sprintf("%s as %s by %s, %s", x.Decision, x.Role, x.Signer, x.Time.UTC().Format(time.DateOnly))
+			if revoked := revocationOf(line, x.Fingerprint); revoked != nil {
+				text += " (! " + revoked.Short() + ")"
+			}
+			lines = append(lines, source.Visible(text))
 		}
 		if len(state.Missing) > 0 && state.Word != approval.Rejected {
 			lines = append(lines, "still to sign: "+joined(state.Missing))
@@ -126,10 +131,8 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 	}
 	for _, r := range line.Revocations() {
 		fmt.Fprintf(w, "\n%s\n", render.Hanging(source.Visible(fmt.Sprintf("key %s is out of use since entry %d, %s: %s", r.Key, r.Entry.Seq, r.Signer, r.Reason)), width, "  "))
-		for _, s := range line.SignOffs() {
-			if s.Fingerprint == r.Key {
-				fmt.Fprintf(w, "      review assessment %d, %s as %s\n", s.Assessment, s.Decision, s.Role)
-			}
+		for _, text := range toReview(line, r.Key) {
+			fmt.Fprintf(w, "      %s\n", render.Hanging(text, width, "      "))
 		}
 	}
 	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\nnext: speedtrail report %d --out report.html\n", l.ID(), head, rows[0].Number)

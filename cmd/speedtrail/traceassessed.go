@@ -6,6 +6,7 @@ import (
 	"os"
 
 	"speedtrail/cmd/speedtrail/internal/render"
+	"speedtrail/history/approval"
 	"speedtrail/history/ledger"
 	"speedtrail/history/revision"
 	"speedtrail/history/trace"
@@ -13,8 +14,10 @@ import (
 
 // assessments gives a function that lists the recorded assessments whose range
 // base..target holds a commit, the oldest first, and the entry that anchors it.
-func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceAssessment, string), error) {
-	none := func(int32) ([]render.TraceAssessment, string) { return []render.TraceAssessment{}, "" }
+func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceAssessment, traceAnchor), error) {
+	none := func(int32) ([]render.TraceAssessment, traceAnchor) {
+		return []render.TraceAssessment{}, noAnchor
+	}
 	l, err := t.app.openLedger(ctx, false)
 	if errors.Is(err, ledger.ErrNoLedger) || errors.Is(err, os.ErrNotExist) {
 		return none, nil
@@ -44,10 +47,10 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 			ranges = append(ranges, r)
 		}
 	}
-	return func(c int32) (list []render.TraceAssessment, anchor string) {
-		list = []render.TraceAssessment{}
+	return func(c int32) (list []render.TraceAssessment, anchor traceAnchor) {
+		list, anchor = []render.TraceAssessment{}, noAnchor
 		if a := line.Anchor(t.folder); a != nil && a.Revision == t.h.Commits[c].Hash.String() {
-			anchor = a.Entry.String()
+			anchor = traceAnchor{a.Entry.String(), anchoredBy(a), revokedOf(line, a.Records)}
 		}
 		if len(ranges) == 0 {
 			return list, anchor
@@ -55,11 +58,29 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 		after := t.h.Descendants(c)
 		for _, r := range ranges {
 			if r.holds(t.h.Commits[c].Hash, after) {
-				list = append(list, render.TraceAssessment{Number: r.number, State: line.State(r.number).Word, SignOffs: append([]string{}, signedBy(line, r.number)...)})
+				list = append(list, render.TraceAssessment{Number: r.number, State: line.State(r.number).Word, SignOffs: signedBy(line, r.number), Revoked: revokedOf(line, line.State(r.number).Signed)})
 			}
 		}
 		return list, anchor
 	}, nil
+}
+
+// traceAnchor is what a trace says of an anchor.
+type traceAnchor struct {
+	entry    string // SEQ:HASH, empty: none
+	signOffs []string
+	revoked  []render.RevokedSignOff
+}
+
+var noAnchor = traceAnchor{signOffs: []string{}, revoked: []render.RevokedSignOff{}}
+
+// anchoredBy lists who signed an anchor, in which role.
+func anchoredBy(a *approval.AnchorRecord) []string {
+	list := []string{}
+	for _, r := range a.Records {
+		list = append(list, r.Role+" "+r.Signer)
+	}
+	return list
 }
 
 // assessedRange is the commits that an assessment covers: those that its target

@@ -267,8 +267,8 @@ func (t *tracing) describe(ctx context.Context) error {
 		}
 		list, anchor := assessed(c)
 		out := render.TraceCommit{
-			Anchor: anchor,
-			Hash:   commit.Hash, Author: person(commit.Author), Authored: instant(commit.Author.When),
+			Anchor: anchor.entry, AnchorSignOffs: anchor.signOffs, AnchorRevoked: anchor.revoked,
+			Hash: commit.Hash, Author: person(commit.Author), Authored: instant(commit.Author.When),
 			Committed: instant(commit.Committer.When), Subject: validText(commit.Subject),
 			Requests: []render.TraceRequest{}, Assessments: list,
 		}

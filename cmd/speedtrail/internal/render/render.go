@@ -42,11 +42,13 @@ type SignOff struct {
 	Entry       int64  `json:"entry"`
 	Fingerprint string `json:"key"`
 	Reason      string `json:"reason"`
-	Role        string `json:"role"`
-	Signature   string `json:"signature"`
-	Signer      string `json:"signer"`
-	Statement   string `json:"statement"`
-	Time        string `json:"time"` // as the signer states it
+	// Revoked is null while the key is in use.
+	Revoked   *Revocation `json:"key_revoked" jsonschema:"nullable"`
+	Role      string      `json:"role"`
+	Signature string      `json:"signature"`
+	Signer    string      `json:"signer"`
+	Statement string      `json:"statement"`
+	Time      string      `json:"time"` // as the signer states it
 }
 
 // Style is how text looks where it goes to.

@@ -2,6 +2,7 @@ package render
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 	"time"
 
@@ -46,6 +47,9 @@ func stateWords(r Record) string {
 	if r.Superseded != 0 {
 		s += fmt.Sprintf("; superseded by assessment %d", r.Superseded)
 	}
+	if slices.ContainsFunc(r.SignOffs, func(x SignOff) bool { return x.Revoked != nil }) {
+		s += "; ! signed with a key that was revoked later"
+	}
 	return s
 }
 
@@ -67,7 +71,7 @@ func (p *textWriter) signOffs() {
 	p.paragraph("", stateWords(p.r))
 	for _, s := range p.r.SignOffs {
 		p.paragraph("  ", signedWords(p.r, s))
-		p.paragraph("    ", fmt.Sprintf("entry %d, key %s", s.Entry, s.Fingerprint))
+		p.paragraph("    ", s.keyWords())
 	}
 }
 
@@ -78,7 +82,7 @@ func markdownSigned(b *strings.Builder, r Record) {
 	}
 	fmt.Fprintf(b, "\n## Sign-off\n\n%s\n", md(stateWords(r)))
 	for _, s := range r.SignOffs {
-		fmt.Fprintf(b, "\n- %s; entry %d, key %s\n", md(signedWords(r, s)), s.Entry, md(s.Fingerprint))
+		fmt.Fprintf(b, "\n- %s; %s\n", md(signedWords(r, s)), md(s.keyWords()))
 	}
 }
 
@@ -91,7 +95,7 @@ func (p *page) fillSigned() {
 	p.Standing = source.Visible(stateWords(p.R))
 	for _, s := range p.R.SignOffs {
 		p.Signed = append(p.Signed, pageSigned{
-			Words: source.Visible(signedWords(p.R, s)), Key: fmt.Sprintf("entry %d, key %s", s.Entry, s.Fingerprint),
+			Words: source.Visible(signedWords(p.R, s)), Key: source.Visible(s.keyWords()),
 			Statement: source.VisibleLines(s.Statement), Signature: source.VisibleLines(s.Signature), Command: source.Visible(s.Command),
 		})
 	}

@@ -44,21 +44,25 @@ type TraceRevision struct {
 
 // TraceCommit is a commit that a trace names.
 type TraceCommit struct {
-	Anchor      string            `json:"anchor"`      // the entry that made it the root of the line of approval, SEQ:HASH; empty: it is not
-	Assessments []TraceAssessment `json:"assessments"` // whose range holds the commit; none: it is not assessed
-	Author      assessment.Person `json:"author"`
-	Authored    string            `json:"authored"`
-	Committed   string            `json:"committed"`
-	Hash        string            `json:"hash"`
-	Requests    []TraceRequest    `json:"requests"` // in play between the commit and its first parent
-	Subject     string            `json:"subject"`
+	Anchor string `json:"anchor"` // the entry that made it the root of the line of approval, SEQ:HASH; empty: it is not
+	// AnchorSignOffs are the statements of the anchor, "checker m.okoro@harbourline.example".
+	AnchorSignOffs []string          `json:"anchor_sign_offs"`
+	AnchorRevoked  []RevokedSignOff  `json:"anchor_revoked"` // of anchor_sign_offs, those by keys that were revoked later
+	Assessments    []TraceAssessment `json:"assessments"`    // whose range holds the commit; none: it is not assessed
+	Author         assessment.Person `json:"author"`
+	Authored       string            `json:"authored"`
+	Committed      string            `json:"committed"`
+	Hash           string            `json:"hash"`
+	Requests       []TraceRequest    `json:"requests"` // in play between the commit and its first parent
+	Subject        string            `json:"subject"`
 }
 
 // TraceAssessment is a recorded assessment.
 type TraceAssessment struct {
-	Number   int64    `json:"number"`
-	SignOffs []string `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"
-	State    string   `json:"state"`
+	Number   int64            `json:"number"`
+	Revoked  []RevokedSignOff `json:"revoked"`   // of sign_offs, those by keys that were revoked later
+	SignOffs []string         `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"
+	State    string           `json:"state"`
 }
 
 // TraceRequest is a change request.
@@ -216,10 +220,10 @@ func requestIDs(c *TraceCommit) string {
 func assessmentNumbers(c *TraceCommit) string {
 	var list []string
 	for _, a := range c.Assessments {
-		list = append(list, strings.Join(append([]string{strconv.FormatInt(a.Number, 10) + " " + a.State}, a.SignOffs...), ", "))
+		list = append(list, strings.Join(append([]string{strconv.FormatInt(a.Number, 10) + " " + a.State}, withRevoked(a.SignOffs, a.Revoked)...), ", "))
 	}
 	if c.Anchor != "" {
-		list = append(list, "approved, the anchor")
+		list = append(list, "approved, the anchor"+c.anchorReview())
 	}
 	if len(list) == 0 {
 		return "not assessed"

@@ -175,10 +175,10 @@ func assessmentWords(c *TraceCommit) string {
 	var list []string
 	if c.Anchor != "" {
 		seq, _, _ := strings.Cut(c.Anchor, ":")
-		list = append(list, "approved, the anchor (entry "+seq+")")
+		list = append(list, "approved, the anchor (entry "+seq+")"+c.anchorReview())
 	}
 	for _, a := range c.Assessments {
-		list = append(list, fmt.Sprintf("in assessment %d (%s)", a.Number, strings.Join(append([]string{a.State}, a.SignOffs...), "; ")))
+		list = append(list, fmt.Sprintf("in assessment %d (%s)", a.Number, strings.Join(append([]string{a.State}, withRevoked(a.SignOffs, a.Revoked)...), "; ")))
 	}
 	return strings.Join(list, ", ")
 }
