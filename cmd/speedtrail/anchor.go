@@ -8,10 +8,12 @@ import (
 	"time"
 
 	"github.com/spf13/cobra"
+	"golang.org/x/crypto/ssh"
 
 	"speedtrail/history"
 	"speedtrail/history/approval"
 	"speedtrail/history/chain"
+	"speedtrail/history/ledger"
 	"speedtrail/history/signoff"
 	"speedtrail/schema"
 	"speedtrail/schema/source"
@@ -46,7 +48,7 @@ root is still this one.`,
 			case (write != "" || len(signs) > 0) && reason == "":
 				return badCall("--reason says why, for everyone who reads it later", "--reason is missing")
 			}
-			return a.anchor(c.Context(), args[0], anchoring{signs, brings, write, role, signer, reason, yes})
+			return a.anchor(c.Context(), args[0], &anchoring{signs, brings, write, role, signer, reason, yes})
 		},
 	}
 	f := c.Flags()
@@ -66,7 +68,7 @@ type anchoring struct {
 	yes                         bool
 }
 
-func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
+func (a *app) anchor(ctx context.Context, rev string, o *anchoring) error {
 	if rev == workingTree {
 		return badCall("commit the policy first", "the working tree cannot be anchored")
 	}
@@ -90,14 +92,18 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 	if err != nil {
 		return err
 	}
-	l, err := a.openLedger(ctx, true)
-	if err != nil {
+	// A call that is refused makes no ledger.
+	l, err := a.openLedgerFor(ctx, true)
+	line := approval.New(noLedger)
+	switch {
+	case errors.Is(err, ledger.ErrNoLedger) && len(o.brings) == 0:
+	case err != nil:
 		return err
-	}
-	defer l.Close()
-	line, err := a.readLine(ctx, l)
-	if err != nil {
-		return err
+	default:
+		defer l.Close()
+		if line, err = a.readLine(ctx, l); err != nil {
+			return err
+		}
 	}
 	p := line.Policy(signOff, signers)
 	switch {
@@ -107,42 +113,13 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 		return &sideError{s.label(), p.Problem}
 	}
 	statement := signoff.Statement{
-		Kind: signoff.Anchor, Ledger: l.ID(), Revision: s.commit.Hash, Folder: folder, Content: tree, Policy: p.Hash,
-		Reason: o.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
+		Kind: signoff.Anchor, Ledger: noLedger, Revision: s.commit.Hash, Folder: folder, Content: tree, Policy: p.Hash,
+		Reason: o.reason, Time: time.Now().UTC().Truncate(time.Second), Head: chain.Head{Seq: 1, Hash: strings.Repeat("0", 64)},
 	}
-	if o.write != "" || len(o.signs) > 0 {
-		a.showPolicy(p.Parsed)
-	}
-	if o.write != "" {
-		statement.Role, statement.Signer = o.role, o.signer
-		if err := approval.CheckRole(p.Parsed, o.role, o.signer); err != nil {
-			return refused(err) // or it would be signed elsewhere for nothing
-		}
-		_, err := (&signing{write: o.write}).finish(ctx, a, statement, nil)
-		return err
+	if l != nil {
+		statement.Ledger, statement.Head = l.ID(), seen(line)
 	}
 	body := approval.AnchorBody{AllowedSigners: signers, Format: approval.AnchorFormat, SignOff: signOff}
-	for _, sign := range o.signs {
-		role, file, ok := strings.Cut(sign, "=")
-		if !ok {
-			return badCall("--sign ROLE=KEYFILE, for example --sign checker=key", "unknown value %q for --sign", sign)
-		}
-		key, err := readKey(ctx, a, file)
-		if err != nil {
-			return err
-		}
-		one := statement
-		one.Role = role
-		flags := &signing{yes: o.yes}
-		if err := flags.complete(&one, key, p.Parsed); err != nil {
-			return err
-		}
-		result, err := flags.finish(ctx, a, one, key)
-		if err != nil {
-			return err
-		}
-		body.Statements = append(body.Statements, approval.Signed{Format: approval.AnchorFormat, Signature: string(result.signature), Statement: string(result.statement)})
-	}
 	for _, file := range o.brings {
 		result, err := (&signing{statement: file, signature: file + ".sig"}).brought()
 		if err == nil {
@@ -151,17 +128,85 @@ func (a *app) anchor(ctx context.Context, rev string, o anchoring) error {
 		if err != nil {
 			return err
 		}
-		body.Statements = append(body.Statements, approval.Signed{Format: approval.AnchorFormat, Signature: string(result.signature), Statement: string(result.statement)})
+		body.Statements = append(body.Statements, anchored(result))
+	}
+	unsigned, keys, err := o.unsigned(ctx, a, statement, p.Parsed)
+	if err != nil {
+		return err
+	}
+	if err := line.ForeseeAnchor(body, unsigned, o.write == "", time.Now()); err != nil {
+		return anchorError(err)
+	}
+	if len(unsigned) > 0 {
+		a.showPolicy(p.Parsed)
+	}
+	if l == nil {
+		if l, err = a.openLedger(ctx, true); err != nil {
+			return err
+		}
+		defer l.Close()
+		if line, _, err = history.ReadLine(ctx, l); err != nil {
+			return err
+		}
+		now := time.Now().UTC().Truncate(time.Second) // not before the entry that the statements name
+		for i := range unsigned {
+			unsigned[i].Ledger, unsigned[i].Head, unsigned[i].Time = l.ID(), seen(line), now
+		}
+	}
+	for i, u := range unsigned {
+		result, err := (&signing{yes: o.yes, write: o.write}).finish(ctx, a, u.Statement, keys[i])
+		if err != nil || result == nil {
+			return err
+		}
+		body.Statements = append(body.Statements, anchored(result))
 	}
 	head, err := history.RecordAnchor(ctx, l, line, body, time.Now())
-	switch {
-	case errors.Is(err, approval.ErrRefused), errors.Is(err, signoff.ErrMalformed), errors.Is(err, signoff.ErrSignature):
-		return refused(err)
-	case err != nil:
-		return fmt.Errorf("the anchor was not recorded: %w", err)
+	if err != nil {
+		return anchorError(err)
 	}
 	a.remark("the policy of %s is in force; anchor %s (note it elsewhere: verify --anchor proves by it that the root is still this one); head of the ledger %s", source.Visible(rev), head.Hash, head)
 	return nil
+}
+
+// noLedger stands for the id of a ledger that is still to be made.
+const noLedger = "00000000000000000000000000000000"
+
+// unsigned gives the statements that are to be signed here, or written to be signed
+// elsewhere, and their keys.
+func (o *anchoring) unsigned(ctx context.Context, a *app, statement signoff.Statement, p *schema.Policy) (list []approval.Unsigned, keys []ssh.Signer, err error) {
+	if o.write != "" {
+		statement.Role, statement.Signer = o.role, o.signer
+		return []approval.Unsigned{{Statement: statement}}, []ssh.Signer{nil}, nil
+	}
+	for _, sign := range o.signs {
+		role, file, ok := strings.Cut(sign, "=")
+		if !ok {
+			return nil, nil, badCall("--sign ROLE=KEYFILE, for example --sign checker=key", "unknown value %q for --sign", sign)
+		}
+		key, err := readKey(ctx, a, file)
+		if err != nil {
+			return nil, nil, err
+		}
+		one := statement
+		one.Role = role
+		if err := (&signing{}).complete(&one, key, p); err != nil {
+			return nil, nil, err
+		}
+		list, keys = append(list, approval.Unsigned{Statement: one, Fingerprint: ssh.FingerprintSHA256(key.PublicKey())}), append(keys, key)
+	}
+	return list, keys, nil
+}
+
+func anchored(s *signed) approval.Signed {
+	return approval.Signed{Format: approval.AnchorFormat, Signature: string(s.signature), Statement: string(s.statement)}
+}
+
+func anchorError(err error) error {
+	switch {
+	case errors.Is(err, approval.ErrRefused), errors.Is(err, signoff.ErrMalformed), errors.Is(err, signoff.ErrSignature):
+		return refused(err)
+	}
+	return fmt.Errorf("the anchor was not recorded: %w", err)
 }
 
 func (a *app) revokeCommand() *cobra.Command {

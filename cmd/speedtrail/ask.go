@@ -2,9 +2,11 @@ package main
 
 import (
 	"bufio"
+	"bytes"
 	"context"
 	"errors"
 	"fmt"
+	"io"
 	"os"
 	"strings"
 
@@ -14,7 +16,8 @@ import (
 	"speedtrail/schema/source"
 )
 
-// readKey reads a private key, asking for its passphrase on the terminal.
+// readKey reads a private key. One with a passphrase is opened only to sign: most of
+// what would be refused is known before anybody is asked for it.
 func readKey(ctx context.Context, a *app, file string) (ssh.Signer, error) {
 	content, err := os.ReadFile(file)
 	if err != nil {
@@ -23,20 +26,54 @@ func readKey(ctx context.Context, a *app, file string) (ssh.Signer, error) {
 	key, err := ssh.ParsePrivateKey(content)
 	var locked *ssh.PassphraseMissingError
 	if errors.As(err, &locked) {
-		in, ok := terminal(a)
-		if !ok {
+		if _, ok := terminal(a); !ok {
 			return nil, badCall("use ssh-agent (--agent), or sign in two steps (--write)", "the key %s has a passphrase, and there is no terminal to ask for it", file)
 		}
-		fmt.Fprintf(a.err, "passphrase of %s: ", source.Visible(file))
-		passphrase, readErr := answer(ctx, in, func() ([]byte, error) { return term.ReadPassword(int(in.Fd())) })
-		fmt.Fprintln(a.err)
-		if readErr != nil {
-			return nil, readErr
+		l := &lockedKey{file, content, locked.PublicKey}
+		if locked.PublicKey != nil {
+			return l, nil
 		}
-		key, err = ssh.ParsePrivateKeyWithPassphrase(content, passphrase)
+		return l.open(ctx, a) // forms other than that of OpenSSH hide their public key, too
 	}
 	if err != nil {
 		return nil, badCall("--key is a private key of OpenSSH", "the key %s cannot be used: %v", file, err)
+	}
+	return key, nil
+}
+
+// lockedKey is a private key whose passphrase nobody was asked for so far.
+type lockedKey struct {
+	file    string
+	content []byte
+	public  ssh.PublicKey
+}
+
+// PublicKey gives what the file says openly; opening the key proves it.
+func (k *lockedKey) PublicKey() ssh.PublicKey { return k.public }
+
+// Sign refuses: a locked key signs nothing.
+func (k *lockedKey) Sign(io.Reader, []byte) (*ssh.Signature, error) {
+	return nil, errors.New("the key " + k.file + " is locked")
+}
+
+// open asks for the passphrase on the terminal.
+func (k *lockedKey) open(ctx context.Context, a *app) (ssh.Signer, error) {
+	in, ok := terminal(a)
+	if !ok {
+		return nil, errors.New("there is no terminal to ask for the passphrase of " + k.file)
+	}
+	fmt.Fprintf(a.err, "passphrase of %s: ", source.Visible(k.file))
+	passphrase, err := answer(ctx, in, func() ([]byte, error) { return term.ReadPassword(int(in.Fd())) })
+	fmt.Fprintln(a.err)
+	if err != nil {
+		return nil, err
+	}
+	key, err := ssh.ParsePrivateKeyWithPassphrase(k.content, passphrase)
+	if err == nil && k.public != nil && !bytes.Equal(key.PublicKey().Marshal(), k.public.Marshal()) {
+		err = errors.New("its public half is that of another key")
+	}
+	if err != nil {
+		return nil, badCall("--key is a private key of OpenSSH", "the key %s cannot be used: %v", k.file, err)
 	}
 	return key, nil
 }

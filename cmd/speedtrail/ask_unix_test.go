@@ -141,6 +141,36 @@ func TestAsk(t *testing.T) {
 	}
 }
 
+// Nobody is asked for a passphrase to sign what would be refused.
+func TestRefusedBeforeThePassphrase(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys := t.TempDir()
+	repo := composed(t, keys, []int{60, 80}, []time.Time{at, at.Add(time.Hour)})
+	key := func(name string) string { return filepath.Join(keys, name) }
+	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	whole := in("anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y")
+	call(t, whole...).want(t, 0)
+	call(t, in("assess", "c0", "c1")...).want(t, statusFinding)
+	lockKey(t, key("ada"), "open sesame")
+	ours, theirs, err := pty.Open()
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer ours.Close()
+	defer theirs.Close()
+	for text, args := range map[string][]string{
+		"has an anchor already":              whole,
+		"ada@tarn.example is no signer of":   in("inforce", "record", "c0", "--since", "2026-03-03T00:00:00Z", "--reason", "start", "--key", key("ada")),
+		`the policy has no role "aprover"`:   in("sign", "1", "--role", "aprover", "--decision", "approve", "--reason", "seen", "--key", key("ada")),
+		"no policy in this ledger has a key": in("revoke", "SHA256:x", "--role", "owner", "--reason", "lost", "--key", key("ada")),
+	} {
+		var out, errs bytes.Buffer
+		if status := run(t.Context(), args, theirs, &out, &errs); status != statusInput || !strings.Contains(errs.String(), text) || strings.Contains(errs.String(), "passphrase") {
+			t.Errorf("%q: status %d\n%s", args, status, &errs)
+		}
+	}
+}
+
 // lockKey gives a private key a passphrase, by the real program.
 func lockKey(t *testing.T, file, passphrase string) {
 	t.Helper()

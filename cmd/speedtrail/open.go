@@ -169,8 +169,19 @@ func (a *app) ledgerPath(repo *revision.Repo) string {
 }
 
 // openLedger opens the ledger for writing, made if need be, or for reading.
+// That a new one was made is said: its name can be a mistyped one.
 func (a *app) openLedger(ctx context.Context, write bool) (*ledger.Ledger, error) {
-	return a.openLedgerWith(ctx, ledger.Options{Create: write, ReadOnly: !write, Now: time.Now})
+	l, err := a.openLedgerFor(ctx, write)
+	if !write || !errors.Is(err, ledger.ErrNoLedger) {
+		return l, err
+	}
+	if l, err = a.openLedgerWith(ctx, ledger.Options{Create: true, Now: time.Now}); err != nil {
+		return nil, err
+	}
+	if file, err := a.ledgerFile(); err == nil {
+		a.remark("a new ledger was made: %s", source.Visible(file))
+	}
+	return l, nil
 }
 
 // openLedgerFor opens a ledger that must be there, for writing or for reading: a
@@ -189,19 +200,14 @@ func (a *app) openLedgerWith(ctx context.Context, o ledger.Options) (*ledger.Led
 	if err != nil {
 		return nil, err
 	}
-	_, missing := os.Lstat(file)
-	begun := o.Create && errors.Is(missing, fs.ErrNotExist)
-	if folder := filepath.Dir(file); begun && a.ledger != "" {
-		if _, err := os.Stat(folder); errors.Is(err, fs.ErrNotExist) {
+	if o.Create && a.ledger != "" {
+		if _, err := os.Stat(filepath.Dir(file)); errors.Is(err, fs.ErrNotExist) {
 			return nil, badCall("correct --ledger, or make the folder first", "the ledger %s is not there, nor is its folder", file)
 		}
 	}
 	l, err := ledger.Open(ctx, file, o)
 	if err != nil {
 		return nil, fmt.Errorf("ledger %s: %w", file, err)
-	}
-	if begun && a.ledger != "" {
-		a.remark("! there was no ledger %s; a new one was begun", source.Visible(file))
 	}
 	return l, nil
 }

@@ -47,7 +47,7 @@ func TestRemarks(t *testing.T) {
 		t.Errorf("a ledger in no folder: status %d\n%s", got.status, got.errors)
 	}
 	got = call(t, in("assess", "c0", "c1", "--ledger", filepath.Join(elsewhere, "ledgr.db"))...)
-	if got.status != statusFinding || !strings.Contains(got.errors, "! there was no ledger") {
+	if got.status != statusFinding || !strings.Contains(got.errors, "a new ledger was made: ") {
 		t.Errorf("a new ledger: status %d\n%s", got.status, got.errors)
 	}
 

@@ -110,6 +110,11 @@ func (s *signing) finish(ctx context.Context, a *app, statement signoff.Statemen
 	if err != nil {
 		return nil, badCall("values are one line of visible text; the reason has at most 500 bytes", "%v", err)
 	}
+	if locked, ok := key.(*lockedKey); ok {
+		if key, err = locked.open(ctx, a); err != nil {
+			return nil, err
+		}
+	}
 	// A mark without width would let one name pass for another.
 	fmt.Fprintf(a.err, "The statement:\n\n%s\n", source.VisibleLines(string(text)))
 	var signature []byte

@@ -34,6 +34,26 @@ func (l *Line) addAnchor(e chain.Entry, recorded time.Time) error {
 // role of the policy that it puts in force. What a role asks about preparers
 // cannot be asked of the first revision, and is not.
 func (l *Line) CheckAnchor(body AnchorBody, recorded time.Time) (*AnchorRecord, error) {
+	return l.checkAnchor(body, nil, true, recorded)
+}
+
+// Unsigned is a statement that nobody has signed so far, and the fingerprint of the
+// key that is to sign it; without one, any that may.
+type Unsigned struct {
+	signoff.Statement
+	Fingerprint string
+}
+
+// ForeseeAnchor tells why an anchor could not be recorded at a time if the unsigned
+// statements were added to those of the body; whole says that no others will come.
+// Nobody need sign what is refused afterwards. Before there is a ledger, an empty line
+// stands for it.
+func (l *Line) ForeseeAnchor(body AnchorBody, unsigned []Unsigned, whole bool, recorded time.Time) error {
+	_, err := l.checkAnchor(body, unsigned, whole, recorded)
+	return err
+}
+
+func (l *Line) checkAnchor(body AnchorBody, unsigned []Unsigned, whole bool, recorded time.Time) (*AnchorRecord, error) {
 	if body.Format != AnchorFormat {
 		return nil, refuse("the format is %q, %q is needed", body.Format, AnchorFormat)
 	}
@@ -42,16 +62,33 @@ func (l *Line) CheckAnchor(body AnchorBody, recorded time.Time) (*AnchorRecord, 
 	if err != nil {
 		return nil, err
 	}
-	if len(body.Statements) == 0 {
+	var records []Record
+	for _, signed := range body.Statements {
+		r, err := readAnchorStatement(signed, recorded)
+		if err != nil {
+			return nil, err
+		}
+		records = append(records, r)
+	}
+	for _, u := range unsigned {
+		text, err := u.Text()
+		if err != nil {
+			return nil, err
+		}
+		records = append(records, Record{Statement: u.Statement, Recorded: recorded, Text: text, Fingerprint: u.Fingerprint, foreseen: true})
+	}
+	if len(records) == 0 {
 		return nil, refuse("nobody signs the anchor")
+	}
+	if folder := records[0].Folder; l.anchors[folder] != nil {
+		return nil, refuse("the folder %s has an anchor already, entry %d", folder, l.anchors[folder].Entry.Seq)
 	}
 	a := &AnchorRecord{Policy: p}
 	people := map[string]map[string]bool{} // role -> signers
 	roles := map[string][]string{}         // signer -> roles
 	seen := map[string]bool{}
-	for _, signed := range body.Statements {
-		r, err := l.checkAnchorStatement(signed, recorded, p)
-		if err != nil {
+	for _, r := range records {
+		if err := l.checkAnchorStatement(&r, p); err != nil {
 			return nil, err
 		}
 		if seen[signoff.Hash(r.Text)] {
@@ -73,20 +110,16 @@ func (l *Line) CheckAnchor(body AnchorBody, recorded time.Time) (*AnchorRecord, 
 		people[r.Role][r.Signer] = true
 		a.Records = append(a.Records, r)
 	}
-	first := a.Records[0]
-	if l.anchors[first.Folder] != nil {
-		return nil, refuse("the folder %s has an anchor already, entry %d", first.Folder, l.anchors[first.Folder].Entry.Seq)
-	}
 	for _, role := range policy.Roles {
-		if n := len(people[role.Name]); n < role.Needed {
+		if n := len(people[role.Name]); whole && n < role.Needed {
 			return nil, refuse("the role %s is signed by %d of %d people", role.Name, n, role.Needed)
 		}
 	}
-	a.Revision, a.Content = first.Revision, first.Content
+	a.Revision, a.Content = a.Records[0].Revision, a.Records[0].Content
 	return a, nil
 }
 
-func (l *Line) checkAnchorStatement(signed Signed, recorded time.Time, p Policy) (Record, error) {
+func readAnchorStatement(signed Signed, recorded time.Time) (Record, error) {
 	if signed.Format != AnchorFormat {
 		return Record{}, refuse("the format is %q, %q is needed", signed.Format, AnchorFormat)
 	}
@@ -97,15 +130,21 @@ func (l *Line) checkAnchorStatement(signed Signed, recorded time.Time, p Policy)
 	if s.Kind != signoff.Anchor {
 		return Record{}, refuse("a statement of kind %s cannot serve as %s", s.Kind, signoff.Anchor)
 	}
-	r := Record{Statement: s, Recorded: recorded, Signature: []byte(signed.Signature), Text: []byte(signed.Statement)}
-	if err := l.checkForm(&r); err != nil {
-		return r, err
+	return Record{Statement: s, Recorded: recorded, Signature: []byte(signed.Signature), Text: []byte(signed.Statement)}, nil
+}
+
+func (l *Line) checkAnchorStatement(r *Record, p Policy) error {
+	// Of a ledger that is still to be made nobody knows the id.
+	if !r.foreseen || len(l.heads) > 0 {
+		if err := l.checkForm(r); err != nil {
+			return err
+		}
 	}
 	if r.Policy != p.Hash {
-		return r, refuse("the statement names the policy %s, the anchor holds %s", r.Policy, p.Hash)
+		return refuse("the statement names the policy %s, the anchor holds %s", r.Policy, p.Hash)
 	}
 	if err := CheckRole(p.Parsed, r.Role, r.Signer); err != nil {
-		return r, err
+		return err
 	}
-	return r, l.checkSignature(&r, p.Parsed)
+	return l.checkSignature(r, p.Parsed)
 }

@@ -90,6 +90,35 @@ func TestAnchorOnce(t *testing.T) {
 	}
 }
 
+// A statement that is to be signed elsewhere is one that somebody can sign: in a role of
+// the policy, with a key that is in use, for a folder without an anchor.
+func TestForeseeAnchorStatement(t *testing.T) {
+	r := ordinary()
+	r.people = append(r.people, "gus") // without a key
+	s := anchored(t, r)
+	s.must(s.revoke("fin", "fin", signoff.Owner))
+	sign, keys := r.files()
+	for _, c := range []struct{ folder, role, signer, refuse string }{
+		{"data", "checker", "ada", ""},
+		{".", "checker", "ada", "the folder . has an anchor already, entry 2"},
+		{"data", "cheker", "ada", `the policy has no role "cheker"`},
+		{"data", "in-service", "fin", "is no signer of the role in-service"},
+		{"data", "checker", "mal", "mal@tarn.example is no person of the policy"},
+		{"data", "checker", "gus", "gus@tarn.example has no key in this policy"},
+		{"data", "checker", "fin", "was revoked by entry 3"},
+	} {
+		err := s.line.ForeseeAnchor(AnchorBody{AllowedSigners: keys, Format: AnchorFormat, SignOff: sign}, []Unsigned{{Statement: signoff.Statement{
+			Kind: signoff.Anchor, Ledger: ledgerID, Revision: commitOf("a"), Folder: c.folder, Content: treeOf("a"), Policy: r.hash(),
+			Role: c.role, Signer: principal(c.signer), Reason: "root", Time: s.now, Head: s.head,
+		}}}, false, s.now)
+		if c.refuse == "" {
+			s.must(err)
+		} else {
+			s.refused(err, c.refuse)
+		}
+	}
+}
+
 // The form of an anchor and of what stands in it.
 func TestAnchorForm(t *testing.T) {
 	whole := func(s *story) AnchorBody {

@@ -115,7 +115,7 @@ func (l *Line) checkForm(r *Record) error {
 // checkSignature checks the signer and the signature by a policy.
 func (l *Line) checkSignature(r *Record, p *schema.Policy) error {
 	if r.foreseen && r.Fingerprint == "" {
-		return nil
+		return l.foreseeKey(r, p)
 	}
 	if !r.foreseen {
 		var err error
@@ -131,6 +131,28 @@ func (l *Line) checkSignature(r *Record, p *schema.Policy) error {
 		return err
 	}
 	return signoff.Verify(r.Text, r.Signature, key.Public)
+}
+
+// foreseeKey refuses a statement for whose signer no key could sign it.
+func (l *Line) foreseeKey(r *Record, p *schema.Policy) error {
+	problem := refuse("%s has no key in this policy", r.Signer)
+	for i := range p.Keys {
+		k := &p.Keys[i]
+		if k.Principal != r.Signer {
+			continue
+		}
+		revocation, revoked := l.Revoked(k.Fingerprint)
+		if revoked {
+			problem = refuse("the key %s was revoked by entry %d: %s", k.Fingerprint, revocation.Entry.Seq, revocation.Reason)
+			continue
+		}
+		_, err := allowedKey(p, k.Fingerprint, r.Signer, r.Time, r.Recorded)
+		if err == nil {
+			return nil
+		}
+		problem = err
+	}
+	return problem
 }
 
 // allowedKey finds the line of allowed_signers that lets a principal sign with a

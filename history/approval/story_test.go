@@ -305,6 +305,7 @@ func (s *story) anchor(commit string, r rules, edit func(i int, st *signoff.Stat
 func (s *story) recordAnchor(body AnchorBody) error {
 	s.t.Helper()
 	_, before := s.line.CheckAnchor(body, s.now)
+	s.foreseesAnchor(body, before)
 	b, err := canon.Marshal(body)
 	s.must(err)
 	err = s.entry(chain.Anchor, b, nil)
@@ -312,6 +313,23 @@ func (s *story) recordAnchor(body AnchorBody) error {
 		s.t.Errorf("asked before, it says %v; recorded, %v", before, err)
 	}
 	return err
+}
+
+// foreseesAnchor wants an anchor to be refused for the same reason before it is signed.
+func (s *story) foreseesAnchor(body AnchorBody, refused error) {
+	s.t.Helper()
+	var unsigned []Unsigned
+	for _, x := range body.Statements {
+		r, err := Read(x)
+		if err != nil || x.Format != AnchorFormat || r.Kind != signoff.Anchor {
+			return // nothing that is made here has another form
+		}
+		unsigned = append(unsigned, Unsigned{r.Statement, r.Fingerprint})
+	}
+	body.Statements = nil
+	if err := s.line.ForeseeAnchor(body, unsigned, true, s.now); fmt.Sprint(err) != fmt.Sprint(refused) {
+		s.t.Errorf("foreseen: %v; recorded: %v", err, refused)
+	}
 }
 
 func (s *story) inForce(commit string, since time.Time, routes, corrects string, edit ...func(*signoff.Statement)) error {
