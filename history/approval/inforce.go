@@ -55,12 +55,12 @@ func (l *Line) checkNewest(r *Record) (*schema.Policy, error) {
 	return policy, nil
 }
 
-// correction reads what a record corrects: the word and the entry.
-func correction(r *Record) (word string, entry int64, ok bool) {
-	if r.Corrects == CorrectsNothing {
+// ReadCorrection reads what an in-force statement corrects: the word and the entry.
+func ReadCorrection(corrects string) (word string, entry int64, ok bool) {
+	if corrects == CorrectsNothing {
 		return CorrectsNothing, 0, true
 	}
-	word, number, _ := strings.Cut(r.Corrects, " ")
+	word, number, _ := strings.Cut(corrects, " ")
 	n, err := strconv.ParseInt(number, 10, 64)
 	return word, n, err == nil && n > 0 && strconv.FormatInt(n, 10) == number && (word == Replaces || word == Voids)
 }
@@ -68,7 +68,7 @@ func correction(r *Record) (word string, entry int64, ok bool) {
 // checkCorrection checks what a record corrects, and that it does not conflict
 // with another: for one route and instant there is one answer.
 func (l *Line) checkCorrection(r *Record) error {
-	word, entry, ok := correction(r)
+	word, entry, ok := ReadCorrection(r.Corrects)
 	if !ok {
 		return refuse("it corrects %q; nothing, replaces ENTRY and voids ENTRY are known", r.Corrects)
 	}
@@ -114,7 +114,7 @@ func (l *Line) StandingBefore(folder string, seq int64) []Record {
 		if r.Folder != folder || r.Entry.Seq >= seq {
 			continue
 		}
-		word, entry, _ := correction(r)
+		word, entry, _ := ReadCorrection(r.Corrects)
 		if word != CorrectsNothing {
 			gone[entry] = true
 		}
@@ -142,7 +142,7 @@ type Correction struct {
 func (l *Line) Corrections(folder string) []Correction {
 	var list []Correction
 	for _, by := range l.inForce {
-		word, entry, _ := correction(&by)
+		word, entry, _ := ReadCorrection(by.Corrects)
 		if by.Folder != folder || word == CorrectsNothing {
 			continue
 		}
