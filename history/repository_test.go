@@ -131,10 +131,10 @@ func (r *repository) named(hash string) string {
 func (r *repository) Recompute(_ context.Context, d *assessment.Document) (string, error) {
 	base, target := r.named(d.Computed.Base.Commit), r.named(d.Computed.Target.Commit)
 	if base == "" {
-		return "", errors.New("there is no commit " + d.Computed.Base.Commit)
+		return "", &history.LackingError{Side: "base", Commit: d.Computed.Base.Commit, Todo: "fetch it"}
 	}
 	if target == "" {
-		return "", errors.New("there is no commit " + d.Computed.Target.Commit)
+		return "", &history.LackingError{Side: "target", Commit: d.Computed.Target.Commit, Todo: "fetch it"}
 	}
 	if r.rules[target] {
 		return "", history.ErrOtherRules

@@ -51,6 +51,21 @@ func (r *Result) Good() bool { return len(r.Problems) == 0 }
 // version of the rules.
 var ErrOtherRules = errors.New("made by another version of the rules")
 
+// LackingError is given by a Checker for an assessment of which the repository does
+// not have a commit.
+type LackingError struct {
+	Side, Commit string // base or target
+	Todo         string // what brings it; may be empty
+}
+
+// Error names the commit.
+func (e *LackingError) Error() string {
+	return fmt.Sprintf("this repository lacks its %s, commit %s", e.Side, e.Commit)
+}
+
+// Hint says what to do.
+func (e *LackingError) Hint() string { return e.Todo }
+
 // Checker re-derives from Git what the ledger says. It may be called from several
 // goroutines at once.
 type Checker interface {
@@ -101,14 +116,22 @@ type verifier struct {
 	docs        []recorded
 	stopped     bool     // the file could not be read to its end
 	backwards   []string // where the times of entries go back
+	lacking     []lacking
 	lock        sync.Mutex
 }
 
 // recorded is an assessment to be computed anew.
 type recorded struct {
-	entry  int64
-	digest string
-	doc    *assessment.Document
+	entry, number int64
+	digest        string
+	doc           *assessment.Document
+}
+
+// lacking is an assessment that nothing rests on and that this repository lacks a
+// commit for.
+type lacking struct {
+	number int64
+	err    *LackingError
 }
 
 func (v *verifier) problem(entry int64, kind, format string, args ...any) {
@@ -250,7 +273,7 @@ func (v *verifier) assessmentRows(e *opened) (*approval.Assessment, error) {
 	} else if err != nil {
 		return nil, err
 	}
-	v.docs = append(v.docs, recorded{e.Seq, e.digest, e.doc.Asked()})
+	v.docs = append(v.docs, recorded{e.Seq, number, e.digest, e.doc.Asked()})
 	return AssessmentOf(v.r.Line, number, e.digest, e.doc), nil
 }
 
@@ -311,6 +334,7 @@ func (v *verifier) git() error {
 	for _, d := range v.docs {
 		work.Go(func() error {
 			digest, err := v.o.Checker.Recompute(ctx, d.doc)
+			var lacks *LackingError
 			if ctx.Err() != nil {
 				return ctx.Err()
 			}
@@ -320,8 +344,18 @@ func (v *verifier) git() error {
 				v.lock.Lock()
 				other++
 				v.lock.Unlock()
+			case errors.As(err, &lacks) && v.restsOn(d) == "":
+				v.lock.Lock()
+				v.lacking = append(v.lacking, lacking{d.number, lacks})
+				failed++
+				v.lock.Unlock()
+			case errors.As(err, &lacks):
+				v.problem(d.entry, "git", "the assessment cannot be computed anew, and %s: %s", v.restsOn(d), oneLine(err))
+				v.lock.Lock()
+				failed++
+				v.lock.Unlock()
 			case err != nil:
-				v.problem(d.entry, "git", "the assessment cannot be computed anew: %s", unhinted(err))
+				v.problem(d.entry, "git", "the assessment cannot be computed anew: %s", oneLine(err))
 				v.lock.Lock()
 				failed++
 				v.lock.Unlock()
@@ -344,7 +378,62 @@ func (v *verifier) git() error {
 		return err
 	}
 	v.r.Proved = append(v.r.Proved, fmt.Sprintf("%d of %d assessments were computed anew from Git", len(v.docs)-other-failed, len(v.docs)))
+	v.leftOut()
 	return v.statements()
+}
+
+// restsOn says what rests on an assessment; empty where nothing does. Nobody who adds
+// an assessment that no clone can check gets more than a line in the register, but for a
+// signature under it: that has to be proved.
+func (v *verifier) restsOn(d recorded) string {
+	for _, r := range v.r.Line.SignOffs() {
+		if r.Assessment == d.number {
+			return fmt.Sprintf("it is signed, in entry %d", r.Entry.Seq)
+		}
+	}
+	for _, r := range v.r.Line.InForce() {
+		if r.Revision == d.doc.Computed.Target.Commit {
+			return fmt.Sprintf("its target went into service, entry %d", r.Entry.Seq)
+		}
+	}
+	return ""
+}
+
+// mostLacking is how many assessments are named of those that lack a commit.
+const mostLacking = 5
+
+// leftOut says which assessments were not computed anew.
+func (v *verifier) leftOut() {
+	if len(v.lacking) == 0 {
+		return
+	}
+	slices.SortFunc(v.lacking, func(a, b lacking) int { return cmp.Compare(a.number, b.number) })
+	var names, todo []string
+	for i, x := range v.lacking {
+		if i == mostLacking {
+			names = append(names, fmt.Sprintf("and %d more", len(v.lacking)-i))
+			break
+		}
+		names = append(names, fmt.Sprintf("assessment %d, commit %s", x.number, x.err.Commit))
+		if x.err.Todo != "" && !slices.Contains(todo, x.err.Todo) {
+			todo = append(todo, x.err.Todo)
+		}
+	}
+	text := fmt.Sprintf("%d assessments that nobody has signed: they could not be computed anew, because this repository lacks a commit (%s)", len(v.lacking), strings.Join(names, "; "))
+	if len(v.lacking) == 1 {
+		text = fmt.Sprintf("1 assessment that nobody has signed: it could not be computed anew, because this repository lacks a commit (%s)", names[0])
+	}
+	v.r.Unproved = append(v.r.Unproved, strings.Join(append([]string{text}, todo...), "; "))
+}
+
+// oneLine writes an error, and what it says to do, in one line.
+func oneLine(err error) string {
+	text := strings.ReplaceAll(err.Error(), "\n", "; ")
+	var h interface{ Hint() string }
+	if errors.As(err, &h) && h.Hint() != "" {
+		text += "; hint: " + strings.ReplaceAll(h.Hint(), "\n", "; ")
+	}
+	return text
 }
 
 // statements looks at the commits that anchors and in-force records name.
@@ -353,7 +442,7 @@ func (v *verifier) statements() error {
 		tree, signoff, signers, err := v.o.Checker.Content(v.ctx, revision, folder)
 		switch {
 		case err != nil:
-			v.problem(entry, "git", "the commit %s that it names cannot be read: %s", revision, unhinted(err))
+			v.problem(entry, "git", "the commit %s that it names cannot be read: %s", revision, oneLine(err))
 		case tree != content:
 			v.problem(entry, "git", "the folder %s of commit %s has the content %s, the statement says %s", folder, revision, tree, content)
 		case policy != nil && (policy.SignOff != signoff || policy.AllowedSigners != signers):
@@ -367,12 +456,6 @@ func (v *verifier) statements() error {
 		check(r.Entry.Seq, r.Revision, r.Folder, r.Content, nil)
 	}
 	return v.ctx.Err()
-}
-
-// unhinted leaves out what an error says to do: here it says what was found.
-func unhinted(err error) string {
-	text, _, _ := strings.Cut(err.Error(), "\nhint: ")
-	return text
 }
 
 // mostBackwards is how many places are named at which the times of entries go back.

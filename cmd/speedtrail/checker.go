@@ -31,6 +31,11 @@ func (c *checker) recompute(ctx context.Context, repo *revision.Repo, doc *asses
 	if d.RulesVersion != diff.RulesVersion {
 		return "", history.ErrOtherRules
 	}
+	for _, side := range []struct{ name, commit string }{{"base", d.Base.Commit}, {"target", d.Target.Commit}} {
+		if err := lacks(repo, side.name, side.commit); err != nil {
+			return "", err
+		}
+	}
 	// A call of its own: its folder is that of the assessment, and it shows no
 	// progress.
 	one := &app{in: c.a.in, out: c.a.out, err: c.a.err, repo: c.a.repo, data: d.Folder, quiet: true}
@@ -71,3 +76,17 @@ func (c *checker) content(_ context.Context, repo *revision.Repo, commit, folder
 }
 
 func isNotExist(err error) bool { return errors.Is(err, fs.ErrNotExist) }
+
+// lacks gives an error of its own for a commit that the repository does not have: what
+// is there and cannot be read is another matter.
+func lacks(repo *revision.Repo, side, commit string) error {
+	_, err := repo.Resolve(commit)
+	if !errors.Is(err, revision.ErrUnknown) {
+		return err
+	}
+	todo := repo.Lacking()
+	if todo == "" {
+		todo = "fetch the branch or tag that holds it; a commit that was amended, rebased or squashed away is for a while in the clone where it was made: `git tag NAME COMMIT` there, and push the tag"
+	}
+	return &history.LackingError{Side: side, Commit: commit, Todo: todo}
+}

@@ -24,7 +24,8 @@ func (a *app) verifyCommand() *cobra.Command {
 		Long: `verify re-derives everything: the chain of the entries, the tables against the
 entries, every signature against the policy of its time, and every assessment
 against Git. It says what was proved, what was not, and why. Exit status 1 if
-anything is wrong, 3 if there is no ledger in the place.
+anything is wrong, 3 if there is no ledger in the place. An assessment for which
+the clone lacks a commit is left open while nobody has signed it, and else wrong.
 
 The chain cannot show that its end was removed, or that the whole was made anew:
 --against SEQ:HASH, a head that was noted elsewhere, does. Commit authors and times

@@ -178,6 +178,10 @@ func (r *Repo) missing(h plumbing.Hash, what string) *Error {
 	}
 }
 
+// Lacking says how to get what this repository lacks by its nature, as a shallow clone
+// does; empty where it should lack nothing.
+func (r *Repo) Lacking() string { return r.lackingHint() }
+
 // lackingHint says how to get what this repository lacks by its nature; "" where
 // it should lack nothing.
 func (r *Repo) lackingHint() string {
