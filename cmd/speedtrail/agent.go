@@ -17,7 +17,7 @@ import (
 )
 
 // agentKey finds the key of a principal in ssh-agent.
-func agentKey(p *schema.Policy, signer string) (ssh.Signer, func(), error) {
+func agentKey(p *schema.Policy, signer, whose string) (ssh.Signer, func(), error) {
 	conn, err := dialAgent(os.Getenv("SSH_AUTH_SOCK"))
 	if err != nil {
 		return nil, nil, badCall("start ssh-agent and add the key, or use --key", "ssh-agent does not answer: %v", err)
@@ -42,7 +42,7 @@ func agentKey(p *schema.Policy, signer string) (ssh.Signer, func(), error) {
 	if !slices.Contains(principals, signer) {
 		hint = meant(signer, principals, hint)
 	}
-	return nil, nil, badCall(hint, "ssh-agent holds no key that the policy allows to %s", orAnyone(signer))
+	return nil, nil, badCall(hint, "ssh-agent holds no key that the policy of %s allows to %s", whose, orAnyone(signer))
 }
 
 // agentPipe is where ssh-agent of OpenSSH for Windows listens.

@@ -74,9 +74,9 @@ func TestAgent(t *testing.T) {
 		t.Fatalf("%v: %s", err, out)
 	}
 	add(stranger)
-	refused(sign("--role", "checker"), "ssh-agent holds no key that the policy allows to anyone")
+	refused(sign("--role", "checker"), "ssh-agent holds no key that the policy of the base allows to anyone")
 	add(key("ada"), key("bea"))
-	refused(sign("--role", "checker", "--signer", "cem@tarn.example"), "ssh-agent holds no key that the policy allows to cem@tarn.example")
+	refused(sign("--role", "checker", "--signer", "cem@tarn.example"), "ssh-agent holds no key that the policy of the base allows to cem@tarn.example")
 	// ada, whose key was added first, signs where nobody is named.
 	if got := sign("--role", "checker").want(t, 0); !strings.Contains(got.out+got.errors, "ada@tarn.example") {
 		t.Errorf("%s%s", got.out, got.errors)

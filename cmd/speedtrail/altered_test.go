@@ -90,7 +90,7 @@ func TestAlteredLedger(t *testing.T) {
 					continue // there is no assessment 1
 				}
 				got := call(t, in(args...)...)
-				if got.status != statusFailed || !strings.Contains(got.errors, "the ledger's file is damaged") || !strings.Contains(got.errors, "speedtrail verify") {
+				if got.status != statusFailed || !strings.Contains(got.errors, "the ledger's file is damaged") || !strings.Contains(got.errors, "verify says more") {
 					t.Errorf("%q: status %d\n%s%s", args, got.status, got.out, got.errors)
 				}
 			}

@@ -121,7 +121,7 @@ func (a *app) anchor(ctx context.Context, rev string, o *anchoring) error {
 	}
 	body := approval.AnchorBody{AllowedSigners: signers, Format: approval.AnchorFormat, SignOff: signOff}
 	for _, file := range o.brings {
-		result, err := (&signing{statement: file, signature: file + ".sig"}).brought()
+		result, err := (&signing{statement: file, signature: file + ".sig", anchor: true}).brought()
 		if err == nil {
 			err = broughtAbout(result, s.commit.Hash, folder, tree, nil)
 		}
@@ -183,13 +183,13 @@ func (o *anchoring) unsigned(ctx context.Context, a *app, statement signoff.Stat
 		if !ok {
 			return nil, nil, badCall("--sign ROLE=KEYFILE, for example --sign checker=key", "unknown value %q for --sign", sign)
 		}
-		key, err := readKey(ctx, a, file)
+		key, err := readKey(ctx, a, file, signOption)
 		if err != nil {
 			return nil, nil, err
 		}
 		one := statement
 		one.Role = role
-		if err := (&signing{}).complete(&one, key, p); err != nil {
+		if err := (&signing{anchor: true}).complete(&one, key, p, "the revision that is anchored"); err != nil {
 			return nil, nil, err
 		}
 		list, keys = append(list, approval.Unsigned{Statement: one, Fingerprint: ssh.FingerprintSHA256(key.PublicKey())}), append(keys, key)
@@ -269,7 +269,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 	if p.Parsed == nil {
 		return refused(fmt.Errorf("no policy is anchored for the folder %s; speedtrail anchor puts one in force", folder))
 	}
-	key, done, err := s.signerKey(ctx, a, p.Parsed)
+	key, done, err := s.signerKey(ctx, a, p.Parsed, newestPolicy)
 	if err != nil {
 		return err
 	}
@@ -278,7 +278,7 @@ func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error 
 		Kind: signoff.Revocation, Ledger: l.ID(), Folder: folder, Policy: p.Hash, Key: fingerprint, Role: s.role, Reason: s.reason,
 		Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
 	}
-	if err := s.complete(&statement, key, p.Parsed); err != nil {
+	if err := s.complete(&statement, key, p.Parsed, newestPolicy); err != nil {
 		return err
 	}
 	if err := a.foresee(line, statement, key); err != nil {

@@ -4,6 +4,7 @@ import (
 	"bufio"
 	"bytes"
 	"context"
+	"crypto/x509"
 	"errors"
 	"fmt"
 	"io"
@@ -16,27 +17,39 @@ import (
 	"speedtrail/schema/source"
 )
 
+// keyHints is what to do about a key, by the option that names it.
+type keyHints struct{ unread, noTerminal, wrong string }
+
+var (
+	keyOption = keyHints{
+		"name the file of a private key with --key", "use ssh-agent (--agent), or sign in two steps (--write)", "--key is a private key of OpenSSH",
+	}
+	signOption = keyHints{
+		"name the file of a private key: --sign ROLE=KEYFILE", "sign in two steps: --write FILE --role ROLE --signer PRINCIPAL, then --bring FILE", "--sign ROLE=KEYFILE names a private key of OpenSSH",
+	}
+)
+
 // readKey reads a private key. One with a passphrase is opened only to sign: most of
 // what would be refused is known before anybody is asked for it.
-func readKey(ctx context.Context, a *app, file string) (ssh.Signer, error) {
+func readKey(ctx context.Context, a *app, file string, hints keyHints) (ssh.Signer, error) {
 	content, err := os.ReadFile(file)
 	if err != nil {
-		return nil, badCall("name the file of a private key with --key", "the key cannot be read: %v", err)
+		return nil, badCall(hints.unread, "the key cannot be read: %v", err)
 	}
 	key, err := ssh.ParsePrivateKey(content)
 	var locked *ssh.PassphraseMissingError
 	if errors.As(err, &locked) {
 		if _, ok := terminal(a); !ok {
-			return nil, badCall("use ssh-agent (--agent), or sign in two steps (--write)", "the key %s has a passphrase, and there is no terminal to ask for it", file)
+			return nil, badCall(hints.noTerminal, "the key %s has a passphrase, and there is no terminal to ask for it", file)
 		}
-		l := &lockedKey{file, content, locked.PublicKey}
+		l := &lockedKey{file, content, locked.PublicKey, hints}
 		if locked.PublicKey != nil {
 			return l, nil
 		}
 		return l.open(ctx, a) // forms other than that of OpenSSH hide their public key, too
 	}
 	if err != nil {
-		return nil, badCall("--key is a private key of OpenSSH", "the key %s cannot be used: %v", file, err)
+		return nil, badCall(hints.wrong, "the key %s cannot be used: %v", file, err)
 	}
 	return key, nil
 }
@@ -46,6 +59,7 @@ type lockedKey struct {
 	file    string
 	content []byte
 	public  ssh.PublicKey
+	hints   keyHints
 }
 
 // PublicKey gives what the file says openly; opening the key proves it.
@@ -69,11 +83,14 @@ func (k *lockedKey) open(ctx context.Context, a *app) (ssh.Signer, error) {
 		return nil, err
 	}
 	key, err := ssh.ParsePrivateKeyWithPassphrase(k.content, passphrase)
+	if errors.Is(err, x509.IncorrectPasswordError) {
+		return nil, badCall("nothing was signed; do it again with the right one", "the passphrase of %s is wrong", k.file)
+	}
 	if err == nil && k.public != nil && !bytes.Equal(key.PublicKey().Marshal(), k.public.Marshal()) {
 		err = errors.New("its public half is that of another key")
 	}
 	if err != nil {
-		return nil, badCall("--key is a private key of OpenSSH", "the key %s cannot be used: %v", k.file, err)
+		return nil, badCall(k.hints.wrong, "the key %s cannot be used: %v", k.file, err)
 	}
 	return key, nil
 }

@@ -69,7 +69,7 @@ func TestAsk(t *testing.T) {
 	}{
 		{"Ctrl-C for the passphrase", []string{"\x03"}, statusFailed, "interrupted, nothing more was done"},
 		{"Ctrl-C in the middle of it", []string{"open\x03"}, statusFailed, "interrupted, nothing more was done"},
-		{"a wrong passphrase", []string{"sesame\n"}, statusInput, "cannot be used"},
+		{"a wrong passphrase", []string{"sesame\n"}, statusInput, "is wrong"},
 		{"Ctrl-C in place of yes", []string{"open sesame\n", "\x03"}, statusFailed, "interrupted, nothing more was done"},
 		{"y", []string{"open sesame\n", "y\n"}, statusInput, "not signed"},
 		{"no answer in place of yes", []string{"open sesame\n", "\x04"}, statusInput, "not signed"},

@@ -326,7 +326,7 @@ func (a *app) summarise(doc *assessment.Document, rec render.Record) {
 	if a.outTo != "" {
 		a.remark("written to %s", a.outTo)
 	} else if rec.Number != 0 {
-		a.remark("next: speedtrail report %d --out report.html", rec.Number)
+		a.remark("%s", a.advise(fmt.Sprintf("next: speedtrail report %d --out report.html", rec.Number)))
 	}
 }
 

@@ -56,7 +56,7 @@ func (a *app) export(ctx context.Context, args []string) error {
 	}
 	a.remarkFile()
 	if number > 0 {
-		a.remark("the signer: speedtrail import FILE --ledger copy.db, then in a clone: speedtrail sign %d --ledger copy.db --role ROLE --decision approve --reason TEXT --key FILE --write statement; the custodian: speedtrail sign %d --statement statement --signature statement.sig", number, number)
+		a.remark("the signer: speedtrail import FILE --ledger copy.db, then in a clone: speedtrail sign %d --ledger copy.db --role ROLE --decision approve --reason TEXT --key FILE --write statement; the custodian: %s", number, a.advise(fmt.Sprintf("speedtrail sign %d --statement statement --signature statement.sig", number)))
 	}
 	return nil
 }

@@ -60,6 +60,9 @@ every reference train of that revision, temporary restrictions by their validity
 
 // parseInstant reads a date-time with its time zone.
 func parseInstant(text, option string) (time.Time, error) {
+	if text == "" {
+		return time.Time{}, badCall(option+" T, for example "+option+" 2026-03-14T05:12:00Z", "%s is missing", option)
+	}
 	t, err := time.Parse(time.RFC3339, text)
 	if err != nil {
 		return t, badCall("write it as 2026-03-14T05:12:00Z or 2026-03-14T06:12:00+01:00", "%s %q is no date-time with a time zone", option, text)
@@ -245,12 +248,12 @@ func (a *app) inforceLog(ctx context.Context) error {
 			fmt.Fprintln(w)
 		}
 		if len(records) == 0 {
-			fmt.Fprintf(w, "No revision is recorded as in service. Record one with: speedtrail inforce record REV --since T\n")
+			fmt.Fprintln(w, source.Visible(a.advise("No revision is recorded as in service. Record one with: speedtrail inforce record REV --since T")))
 		}
 		for i, f := range findings {
 			fmt.Fprintf(w, "%s\n", render.Hanging("! "+f.ID+": "+source.Visible(f.Text), a.style().Width, "  "))
 			if i == len(findings)-1 || findings[i+1].ID != f.ID {
-				fmt.Fprintf(w, "  %s\n", render.Hanging(serviceAdvice[f.ID], a.style().Width, "  "))
+				fmt.Fprintf(w, "  %s\n", render.Hanging(source.Visible(a.advise(serviceAdvice[f.ID])), a.style().Width, "  "))
 			}
 		}
 		return nil

@@ -146,14 +146,14 @@ func (a *app) inforceRecord(ctx context.Context, x servicing, s *signing) error 
 	if p.Parsed == nil {
 		return refused(fmt.Errorf("no policy is anchored for the folder %s; speedtrail anchor puts one in force", folder))
 	}
-	key, done, err := s.signerKey(ctx, a, p.Parsed)
+	key, done, err := s.signerKey(ctx, a, p.Parsed, newestPolicy)
 	if err != nil {
 		return err
 	}
 	defer done()
 	statement.Kind, statement.Ledger, statement.Folder, statement.Policy, statement.Corrects = signoff.InForce, l.ID(), folder, p.Hash, x.corrects
 	statement.Role, statement.Reason, statement.Time, statement.Head = approval.InServiceRole, s.reason, time.Now().UTC().Truncate(time.Second), seen(line)
-	if err := s.complete(&statement, key, p.Parsed); err != nil {
+	if err := s.complete(&statement, key, p.Parsed, newestPolicy); err != nil {
 		return err
 	}
 	if err := a.foresee(line, statement, key); err != nil {

@@ -111,7 +111,7 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 		if a.format == "json" {
 			return indentedJSON(w, answer)
 		}
-		return printInForce(w, &answer, a.style().Width)
+		return a.printInForce(w, &answer, a.style().Width)
 	})
 }
 
@@ -213,7 +213,7 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 	return list, nil
 }
 
-func printInForce(w io.Writer, x *inForceAnswer, width int) error {
+func (a *app) printInForce(w io.Writer, x *inForceAnswer, width int) error {
 	var apart []string
 	if len(x.Routes) > 0 {
 		fmt.Fprintf(w, "On single routes at %s:\n", x.When)
@@ -227,7 +227,7 @@ func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		fmt.Fprintf(w, "%s\n\n", wrap("Said otherwise, and not any more: "+c.words(), width))
 	}
 	if x.Record == nil {
-		_, err := fmt.Fprintf(w, "Nothing is recorded as in force on %s at %s; speedtrail inforce lists what is.\nhead %s\n", cmp.Or(source.Visible(x.Route), "the whole network"), x.When, x.Head)
+		_, err := fmt.Fprintf(w, "Nothing is recorded as in force on %s at %s; %s lists what is.\nhead %s\n", cmp.Or(source.Visible(x.Route), "the whole network"), x.When, source.Visible(a.advise("speedtrail inforce")), x.Head)
 		return err
 	}
 	except := ""
@@ -259,6 +259,6 @@ func printInForce(w io.Writer, x *inForceAnswer, width int) error {
 	for _, e := range x.Signed {
 		fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(fmt.Sprintf("%s at %s, entry %d, key %s", e.by(), e.Time, e.Entry, e.Fingerprint)+e.Revoked.Behind()), width, "  "))
 	}
-	_, err := fmt.Fprintf(w, "head %s\nspeedtrail verify proves the chain and the signatures\n", x.Head)
+	_, err := fmt.Fprintf(w, "head %s\n%s proves the chain and the signatures\n", x.Head, source.Visible(a.advise("speedtrail verify")))
 	return err
 }

@@ -90,7 +90,7 @@ func (a *app) register(ctx context.Context) error {
 
 func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, rows []ledger.AssessmentRow, head string) error {
 	if len(rows) == 0 {
-		_, err := fmt.Fprintf(w, "No assessment is recorded yet. Record one with: speedtrail assess BASE TARGET\nhead %s\n", head)
+		_, err := fmt.Fprintf(w, "No assessment is recorded yet. Record one with: %s\nhead %s\n", source.Visible(a.advise("speedtrail assess BASE TARGET")), head)
 		return err
 	}
 	width := a.style().Width
@@ -135,7 +135,7 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			fmt.Fprintf(w, "      %s\n", render.Hanging(text, width, "      "))
 		}
 	}
-	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\nnext: speedtrail report %d --out report.html\n", l.ID(), head, rows[0].Number)
+	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\nnext: %s\n", l.ID(), head, source.Visible(a.advise(fmt.Sprintf("speedtrail report %d --out report.html", rows[0].Number))))
 	return err
 }
 

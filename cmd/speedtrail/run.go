@@ -43,7 +43,7 @@ func run(ctx context.Context, args []string, stdin io.Reader, stdout, stderr io.
 func (a *app) printError(err error) {
 	fmt.Fprintln(a.err, a.fitted("speedtrail: "+source.VisibleLines(err.Error())))
 	if hint := hintOf(err); hint != "" {
-		fmt.Fprintln(a.err, a.fitted("hint: "+source.VisibleLines(hint)))
+		fmt.Fprintln(a.err, a.fitted("hint: "+source.VisibleLines(a.advise(hint))))
 	}
 }
 

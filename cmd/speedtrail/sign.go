@@ -3,12 +3,14 @@ package main
 import (
 	"cmp"
 	"context"
+	"errors"
 	"fmt"
 	"strconv"
 	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
+	"golang.org/x/crypto/ssh"
 
 	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/history"
@@ -104,11 +106,11 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 		return badCall("README.md has a whole signoff.toml; speedtrail anchor puts the first policy in force", "the base of assessment %d has no valid policy (signoff.toml and allowed_signers): nothing was recorded", number)
 	}
 	// A role that only the policy in force has is taken by that one.
-	policy := x.Policy.Parsed
+	policy, whose := x.Policy.Parsed, "the base"
 	if newest := line.Newest(x.Folder).Parsed; newest != nil && policy.Role(s.role) == nil && newest.Role(s.role) != nil {
-		policy = newest
+		policy, whose = newest, newestPolicy
 	}
-	key, done, err := s.signerKey(ctx, a, policy)
+	key, done, err := s.signerKey(ctx, a, policy, whose)
 	if err != nil {
 		return err
 	}
@@ -117,8 +119,8 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 		Kind: signoff.SignOff, Ledger: l.ID(), Assessment: number, Digest: x.Digest, Base: x.Base, Target: x.Target, Folder: x.Folder, Rules: x.Rules,
 		Policy: x.Policy.Hash, Findings: x.Findings, Role: s.role, Decision: decision, Reason: s.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
 	}
-	if err := s.complete(&statement, key, policy); err != nil {
-		return err
+	if err := s.complete(&statement, key, policy, whose); err != nil {
+		return inTargetOnly(err, key, x)
 	}
 	if err := a.foresee(line, statement, key); err != nil {
 		return err
@@ -146,6 +148,20 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	return a.remarkState(ctx, l, line, number)
 }
 
+// inTargetOnly adds to a refusal that the key stands in the target's policy, which
+// decides about the next change.
+func inTargetOnly(err error, key ssh.Signer, x *approval.Assessment) error {
+	var call *callError
+	if key == nil || x.Next.Parsed == nil || !errors.As(err, &call) {
+		return err
+	}
+	fingerprint := ssh.FingerprintSHA256(key.PublicKey())
+	if k := x.Next.Parsed.Key(fingerprint); k != nil && x.Policy.Parsed.Key(fingerprint) == nil {
+		return badCall(call.hint+"; the policy of the target allows it to "+source.Visible(k.Principal)+", and counts only once the target is approved: others have to sign this change", "%s", call.problem)
+	}
+	return err
+}
+
 // showForSigning says what decides, before somebody signs.
 func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment, line *approval.Line, ledgerID string) error {
 	style := a.style()
@@ -170,7 +186,7 @@ func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment, l
 	for _, email := range x.UnknownPreparers() {
 		fmt.Fprintf(a.err, "! unknown-preparer %s is no person of the policy: the assessment cannot be approved\n", source.Visible(email))
 	}
-	fmt.Fprintf(a.err, "The whole report: speedtrail report %d --out report.html\n\n", x.Number)
+	fmt.Fprintf(a.err, "The whole report: %s\n\n", source.Visible(a.advise(fmt.Sprintf("speedtrail report %d --out report.html", x.Number))))
 	return nil
 }
 

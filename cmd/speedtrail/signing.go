@@ -26,6 +26,7 @@ type signing struct {
 	agent, yes           bool
 	write                string
 	statement, signature string
+	anchor               bool // of an anchor, whose options have other names
 }
 
 // flags adds the options. Commands differ in whether the role can be chosen.
@@ -61,16 +62,19 @@ func (s *signing) check() error {
 
 // signerKey opens the key to sign with; nil where there is none to be used. done
 // releases it.
-func (s *signing) signerKey(ctx context.Context, a *app, p *schema.Policy) (key ssh.Signer, done func(), err error) {
+func (s *signing) signerKey(ctx context.Context, a *app, p *schema.Policy, whose string) (key ssh.Signer, done func(), err error) {
 	done = func() {}
 	switch {
 	case s.key != "":
-		key, err = readKey(ctx, a, s.key)
+		key, err = readKey(ctx, a, s.key, keyOption)
 	case s.agent:
-		key, done, err = agentKey(p, s.signer)
+		key, done, err = agentKey(p, s.signer, whose)
 	}
 	return key, done, err
 }
+
+// newestPolicy is whose policy decides about what is no sign-off.
+const newestPolicy = "the newest approved revision"
 
 func orAnyone(signer string) string {
 	if signer == "" {
@@ -79,8 +83,8 @@ func orAnyone(signer string) string {
 	return signer
 }
 
-// complete fills in who signs.
-func (s *signing) complete(statement *signoff.Statement, key ssh.Signer, p *schema.Policy) error {
+// complete fills in who signs, by a policy; whose says which one that is.
+func (s *signing) complete(statement *signoff.Statement, key ssh.Signer, p *schema.Policy, whose string) error {
 	statement.Signer = s.signer
 	if key == nil {
 		if s.signer == "" {
@@ -91,7 +95,7 @@ func (s *signing) complete(statement *signoff.Statement, key ssh.Signer, p *sche
 	fingerprint := ssh.FingerprintSHA256(key.PublicKey())
 	k := p.Key(fingerprint)
 	if k == nil {
-		return refused(fmt.Errorf("the key %s is not allowed to anyone by the policy", fingerprint))
+		return refused(fmt.Errorf("the key %s is not allowed to anyone by the policy of %s", fingerprint, whose))
 	}
 	if s.signer != "" && s.signer != k.Principal {
 		return refused(fmt.Errorf("the key %s belongs to %s, not to %s", fingerprint, k.Principal, s.signer))
@@ -139,11 +143,11 @@ func (s *signing) finish(ctx context.Context, a *app, statement signoff.Statemen
 		a.remark("written to %s and %s.sig; nothing was recorded", s.write, s.write)
 		return nil, nil
 	}
-	back := fmt.Sprintf("--statement %s --signature %s.sig", s.write, s.write)
+	back := fmt.Sprintf("--statement %s --signature %s", shellWord(s.write), shellWord(s.write+".sig"))
 	if statement.Kind == signoff.Anchor {
-		back = "--bring " + s.write
+		back = "--bring " + shellWord(s.write)
 	}
-	a.remark("written to %s; nothing was recorded. Sign it with\n  ssh-keygen -Y sign -f KEY -n %s %s\nand bring both files back with %s", s.write, signoff.Namespace, s.write, back)
+	a.remark("written to %s; nothing was recorded. Sign it with\n  ssh-keygen -Y sign -f KEY -n %s %s\nand bring both files back with %s", s.write, signoff.Namespace, shellWord(s.write), back)
 	return nil, nil
 }
 
@@ -176,7 +180,11 @@ func (s *signing) brought() (*signed, error) {
 			*f.to, err = os.ReadFile(f.name)
 		}
 		if err != nil {
-			return nil, badCall("--statement and --signature are files that --write and ssh-keygen made", "%s cannot be read: %v", f.name, err)
+			hint := "--statement and --signature are files that --write and ssh-keygen made"
+			if s.anchor {
+				hint = "--bring FILE takes FILE, which --write made, and FILE.sig, which ssh-keygen made"
+			}
+			return nil, badCall(hint, "%s cannot be read: %v", f.name, err)
 		}
 	}
 	return out, nil
