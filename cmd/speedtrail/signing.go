@@ -1,6 +1,7 @@
 package main
 
 import (
+	"bytes"
 	"context"
 	"errors"
 	"fmt"
@@ -185,6 +186,10 @@ func (s *signing) brought() (*signed, error) {
 				hint = "--bring FILE takes FILE, which --write made, and FILE.sig, which ssh-keygen made"
 			}
 			return nil, badCall(hint, "%s cannot be read: %v", f.name, err)
+		}
+		// Neither file has a CR of its own, so that without them it is what was signed.
+		if bytes.Contains(*f.to, []byte("\r\n")) {
+			return nil, badCall(fmt.Sprintf("send it in an archive, or take each CR out: tr -d '\\r' < %s > FILE", shellWord(f.name)), "the lines of %s end with CR LF, as mail and some editors leave them; what was signed ends them with LF alone", f.name)
 		}
 	}
 	return out, nil

@@ -259,7 +259,10 @@ func Parse(b []byte) (Statement, error) {
 		}
 		line, after, ended := strings.Cut(rest, "\n")
 		value, named := strings.CutPrefix(line, f.name+": ")
-		if !ended || !named {
+		if named && !ended {
+			return Statement{}, malformed("the line feed at the end of the line %q is missing; it is signed as well", f.name)
+		}
+		if !named {
 			return Statement{}, malformed("the line %q is missing or stands elsewhere", f.name)
 		}
 		rest = after

@@ -1,7 +1,9 @@
 package render
 
 import (
+	"encoding/base64"
 	"fmt"
+	"html/template"
 	"slices"
 	"strings"
 	"time"
@@ -86,7 +88,17 @@ func markdownSigned(b *strings.Builder, r Record) {
 	}
 }
 
-type pageSigned struct{ Words, Key, Statement, Signature, Command string }
+type pageSigned struct {
+	Words, Key, Statement, Signature, Command string
+	// The bytes that were signed, and their signature: what is copied from a page lacks
+	// the last line feed, and marks that nobody sees are shown by their numbers there.
+	StatementFile, SignatureFile template.URL
+}
+
+// fileURL holds a file for a page that asks the network for nothing.
+func fileURL(content string) template.URL {
+	return template.URL("data:application/octet-stream;base64," + base64.StdEncoding.EncodeToString([]byte(content)))
+}
 
 func (p *page) fillSigned() {
 	if p.R.Number == 0 {
@@ -97,6 +109,7 @@ func (p *page) fillSigned() {
 		p.Signed = append(p.Signed, pageSigned{
 			Words: source.Visible(signedWords(p.R, s)), Key: source.Visible(s.keyWords()),
 			Statement: source.VisibleLines(s.Statement), Signature: source.VisibleLines(s.Signature), Command: source.Visible(s.Command),
+			StatementFile: fileURL(s.Statement), SignatureFile: fileURL(s.Signature),
 		})
 	}
 }
