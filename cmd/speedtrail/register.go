@@ -4,6 +4,8 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"maps"
+	"slices"
 	"strings"
 	"time"
 
@@ -12,6 +14,7 @@ import (
 	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/history/approval"
 	"speedtrail/history/ledger"
+	"speedtrail/history/signoff"
 	"speedtrail/schema/source"
 )
 
@@ -31,7 +34,7 @@ type registered struct {
 	Number   int64                   `json:"number"`
 	Recorded string                  `json:"recorded"`
 	State    string                  `json:"state"`
-	SignOffs []string                `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"
+	SignOffs []string                `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"; " on assessment 3" behind the rejection of the same content there
 	Revoked  []render.RevokedSignOff `json:"revoked"`   // of sign_offs, those by keys that were revoked later
 	Base     string                  `json:"base"`
 	Target   string                  `json:"target"`
@@ -46,10 +49,47 @@ type registered struct {
 
 // registerList is the JSON form of the register.
 type registerList struct {
-	Format      string       `json:"format"`
-	Ledger      string       `json:"ledger"`      // id
-	Head        string       `json:"head"`        // SEQ:HASH
-	Assessments []registered `json:"assessments"` // the newest first
+	Format      string             `json:"format"`
+	Ledger      string             `json:"ledger"`      // id
+	Head        string             `json:"head"`        // SEQ:HASH
+	Anchors     []registeredAnchor `json:"anchors"`     // by folder
+	Assessments []registered       `json:"assessments"` // the newest first
+}
+
+// registeredAnchor is the JSON form of the root of a folder's line of approval.
+type registeredAnchor struct {
+	Folder   string                  `json:"folder"`
+	Revision string                  `json:"revision"`
+	Recorded string                  `json:"recorded"`
+	Entry    string                  `json:"entry"`     // SEQ:HASH; verify --anchor takes the hash
+	SignOffs []string                `json:"sign_offs"` // "checker m.okoro@harbourline.example"
+	Revoked  []render.RevokedSignOff `json:"revoked"`   // of sign_offs, those by keys that were revoked later
+	Reasons  []string                `json:"reasons"`   // of sign_offs
+}
+
+func anchorsOf(line *approval.Line) []registeredAnchor {
+	list := []registeredAnchor{}
+	anchors := line.Anchors()
+	for _, folder := range slices.Sorted(maps.Keys(anchors)) {
+		x := anchors[folder]
+		out := registeredAnchor{folder, x.Revision, x.Records[0].Recorded.UTC().Format(signoff.TimeLayout), x.Entry.String(), anchoredBy(x), revokedOf(line, x.Records), []string{}}
+		for _, r := range x.Records {
+			out.Reasons = append(out.Reasons, r.Reason)
+		}
+		list = append(list, out)
+	}
+	return list
+}
+
+// printAnchors writes where the lines of approval begin: the hash is what an auditor
+// compares with one that was noted elsewhere.
+func printAnchors(w io.Writer, line *approval.Line, width int) {
+	for _, x := range anchorsOf(line) {
+		seq, hash, _ := strings.Cut(x.Entry, ":")
+		by := render.WithRevoked(x.SignOffs, x.Revoked)
+		fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(fmt.Sprintf("anchor of the folder %s: commit %s, recorded %s as entry %s, signed by %s (%s)", x.Folder, x.Revision, x.Recorded, seq, joined(by), x.Reasons[0])), width, "  "))
+		fmt.Fprintf(w, "  verify --anchor %s\n\n", hash)
+	}
 }
 
 func (a *app) register(ctx context.Context) error {
@@ -77,23 +117,24 @@ func (a *app) register(ctx context.Context) error {
 			list := make([]registered, len(rows))
 			for i, r := range rows {
 				list[i] = registered{
-					Number: r.Number, Recorded: r.Time, State: line.State(r.Number).Word, SignOffs: signedBy(line, r.Number), Revoked: revokedOf(line, line.State(r.Number).Signed), Base: r.Base, Target: r.Target, Folder: r.Folder,
+					Number: r.Number, Recorded: r.Time, State: line.State(r.Number).Word, SignOffs: signedBy(line, r.Number), Revoked: revokedOf(line, decisionsOn(line.State(r.Number), r.Number)), Base: r.Base, Target: r.Target, Folder: r.Folder,
 					Dataset: r.Dataset, Requests: r.Requests, Changes: r.Changes, Findings: r.Findings, Digest: r.Digest,
 					Entry: r.Entry.String(),
 				}
 			}
-			return indentedJSON(w, registerList{"speedtrail-register 1", l.ID(), head.String(), list})
+			return indentedJSON(w, registerList{"speedtrail-register 1", l.ID(), head.String(), anchorsOf(line), list})
 		}
 		return a.printRegister(w, l, line, rows, head.String())
 	})
 }
 
 func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, rows []ledger.AssessmentRow, head string) error {
+	width := a.style().Width
 	if len(rows) == 0 {
+		printAnchors(w, line, width)
 		_, err := fmt.Fprintf(w, "No assessment is recorded yet. Record one with: %s\nhead %s\n", source.Visible(a.advise("speedtrail assess BASE TARGET")), head)
 		return err
 	}
-	width := a.style().Width
 	for i, r := range rows {
 		if i > 0 {
 			fmt.Fprintln(w)
@@ -109,8 +150,11 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			source.Visible(requests),
 			fmt.Sprintf("speed changes %d, findings %d", r.Changes, r.Findings),
 		}
-		for _, x := range state.Signed {
+		for _, x := range decisionsOn(state, r.Number) {
 			text := fmt.Sprintf("%s as %s by %s, %s", x.Decision, x.Role, x.Signer, x.Time.UTC().Format(time.DateOnly))
+			if x.Assessment != r.Number {
+				text += fmt.Sprintf(" (on assessment %d, which has the same content)", x.Assessment)
+			}
 			if revoked := revocationOf(line, x.Fingerprint); revoked != nil {
 				text += " (! " + revoked.Short() + ")"
 			}
@@ -135,15 +179,33 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			fmt.Fprintf(w, "      %s\n", render.Hanging(text, width, "      "))
 		}
 	}
-	_, err := fmt.Fprintf(w, "\nledger %s\nhead %s\nnext: %s\n", l.ID(), head, source.Visible(a.advise(fmt.Sprintf("speedtrail report %d --out report.html", rows[0].Number))))
+	fmt.Fprintln(w)
+	printAnchors(w, line, width)
+	_, err := fmt.Fprintf(w, "ledger %s\nhead %s\nnext: %s\n", l.ID(), head, source.Visible(a.advise(fmt.Sprintf("speedtrail report %d --out report.html", rows[0].Number))))
 	return err
 }
 
-// signedBy lists the decisions on an assessment.
+// decisionsOn gives the decisions that the state of an assessment comes from: those on
+// it, and rejections of the same content on another one.
+func decisionsOn(s approval.State, number int64) []approval.Record {
+	list := slices.Clone(s.Signed)
+	for _, r := range s.RejectedBy {
+		if r.Assessment != number {
+			list = append(list, r)
+		}
+	}
+	return list
+}
+
+// signedBy lists these decisions.
 func signedBy(line *approval.Line, number int64) []string {
 	list := []string{}
-	for _, r := range line.State(number).Signed {
-		list = append(list, r.Decision+" "+r.Role+" "+r.Signer)
+	for _, r := range decisionsOn(line.State(number), number) {
+		text := r.Decision + " " + r.Role + " " + r.Signer
+		if r.Assessment != number {
+			text += fmt.Sprintf(" on assessment %d", r.Assessment)
+		}
+		list = append(list, text)
 	}
 	return list
 }

@@ -106,13 +106,7 @@ func recordOf(line *approval.Line, ledger string, number int64, digest string) r
 		Ledger: ledger, Number: number, Digest: digest, State: s.Word, Missing: append([]string{}, s.Missing...), Blocks: append([]string{}, s.Blocks...),
 		Superseded: s.Superseded, SignOffs: []render.SignOff{},
 	}
-	records := s.Signed
-	for _, r := range s.RejectedBy {
-		if r.Assessment != number {
-			records = append(records, r)
-		}
-	}
-	for _, r := range records {
+	for _, r := range decisionsOn(s, number) {
 		rec.SignOffs = append(rec.SignOffs, render.SignOff{
 			Assessment: r.Assessment, Entry: r.Entry.Seq, Role: r.Role, Decision: r.Decision, Signer: r.Signer, Fingerprint: r.Fingerprint, Reason: r.Reason, Revoked: revocationOf(line, r.Fingerprint),
 			Time: r.Time.UTC().Format(signoff.TimeLayout), Statement: string(r.Text), Signature: string(r.Signature), Command: render.VerifyCommand(r.Signer, r.Time),

@@ -44,7 +44,7 @@ func TestRevokedKeyIsSaid(t *testing.T) {
 		"text":        {[]string{"report", "1"}, 1, 0},
 		"html":        {[]string{"report", "1", "--format", "html"}, 1, 0},
 		"markdown":    {[]string{"report", "1", "--format", "markdown"}, 1, 0},
-		"register":    {[]string{"register"}, 1, 0},
+		"register":    {[]string{"register"}, 2, 1},
 		"in force":    {[]string{"inforce"}, 2, 2 + 1}, // of the anchor and of assessment 1; of both records and of the anchor
 		"then":        {[]string{"inforce", "--when", "2026-03-05T00:00:00Z"}, 2, 2},
 		"then, first": {[]string{"inforce", "--when", "2026-03-03T12:00:00Z"}, 2, 4},

@@ -14,9 +14,9 @@ import (
 
 // assessments gives a function that lists the recorded assessments whose range
 // base..target holds a commit, the oldest first, and the entry that anchors it.
-func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceAssessment, traceAnchor), error) {
-	none := func(int32) ([]render.TraceAssessment, traceAnchor) {
-		return []render.TraceAssessment{}, noAnchor
+func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceAssessment, traceAnchor, error), error) {
+	none := func(int32) ([]render.TraceAssessment, traceAnchor, error) {
+		return []render.TraceAssessment{}, noAnchor, nil
 	}
 	l, err := t.app.openLedger(ctx, false)
 	if errors.Is(err, ledger.ErrNoLedger) || errors.Is(err, os.ErrNotExist) {
@@ -47,29 +47,65 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 			ranges = append(ranges, r)
 		}
 	}
-	return func(c int32) (list []render.TraceAssessment, anchor traceAnchor) {
+	root := line.Anchor(t.folder)
+	within := t.leadsTo(ctx, root)
+	return func(c int32) (list []render.TraceAssessment, anchor traceAnchor, err error) {
 		list, anchor = []render.TraceAssessment{}, noAnchor
-		if a := line.Anchor(t.folder); a != nil && a.Revision == t.h.Commits[c].Hash.String() {
-			anchor = traceAnchor{a.Entry.String(), anchoredBy(a), revokedOf(line, a.Records)}
+		in, err := within(c)
+		if err != nil {
+			return nil, noAnchor, err
+		}
+		if in {
+			anchor = traceAnchor{signOffs: anchoredBy(root), revoked: revokedOf(line, root.Records)}
+			if root.Revision == t.h.Commits[c].Hash.String() {
+				anchor.entry = root.Entry.String()
+			} else {
+				anchor.within = root.Entry.String()
+			}
 		}
 		if len(ranges) == 0 {
-			return list, anchor
+			return list, anchor, nil
 		}
 		after := t.h.Descendants(c)
 		for _, r := range ranges {
 			if r.holds(t.h.Commits[c].Hash, after) {
-				list = append(list, render.TraceAssessment{Number: r.number, State: line.State(r.number).Word, SignOffs: signedBy(line, r.number), Revoked: revokedOf(line, line.State(r.number).Signed)})
+				list = append(list, render.TraceAssessment{Number: r.number, State: line.State(r.number).Word, SignOffs: signedBy(line, r.number), Revoked: revokedOf(line, decisionsOn(line.State(r.number), r.number))})
 			}
 		}
-		return list, anchor
+		return list, anchor, nil
 	}, nil
+}
+
+// leadsTo gives a function that tells of a commit whether an anchored revision is it,
+// or descends from it.
+func (t *tracing) leadsTo(ctx context.Context, root *approval.AnchorRecord) func(int32) (bool, error) {
+	none := func(int32) (bool, error) { return false, nil }
+	if root == nil {
+		return none
+	}
+	hash, err := trace.ParseHash(root.Revision)
+	if err != nil {
+		return none
+	}
+	if at, ok := t.h.Index(hash); ok {
+		before := t.h.Ancestors(at)
+		return func(c int32) (bool, error) { return before[c], nil }
+	}
+	// The history that is traced ends before the anchor, or leaves side branches out.
+	return func(c int32) (bool, error) {
+		is, err := t.repo.IsAncestor(ctx, t.h.Commits[c].Hash.String(), root.Revision)
+		if errors.Is(err, revision.ErrMissingObject) || errors.Is(err, revision.ErrUnknown) || errors.Is(err, revision.ErrShallow) {
+			return false, nil // it cannot be told
+		}
+		return is, err
+	}
 }
 
 // traceAnchor is what a trace says of an anchor.
 type traceAnchor struct {
-	entry    string // SEQ:HASH, empty: none
-	signOffs []string
-	revoked  []render.RevokedSignOff
+	entry, within string // SEQ:HASH, empty: none
+	signOffs      []string
+	revoked       []render.RevokedSignOff
 }
 
 var noAnchor = traceAnchor{signOffs: []string{}, revoked: []render.RevokedSignOff{}}

@@ -265,9 +265,12 @@ func (t *tracing) describe(ctx context.Context) error {
 		if err != nil {
 			return err
 		}
-		list, anchor := assessed(c)
+		list, anchor, err := assessed(c)
+		if err != nil {
+			return err
+		}
 		out := render.TraceCommit{
-			Anchor: anchor.entry, AnchorSignOffs: anchor.signOffs, AnchorRevoked: anchor.revoked,
+			Anchor: anchor.entry, InAnchor: anchor.within, AnchorSignOffs: anchor.signOffs, AnchorRevoked: anchor.revoked,
 			Hash: commit.Hash, Author: person(commit.Author), Authored: instant(commit.Author.When),
 			Committed: instant(commit.Committer.When), Subject: validText(commit.Subject),
 			Requests: []render.TraceRequest{}, Assessments: list,

@@ -102,6 +102,20 @@ func (h *History) Descendants(of int32) []bool {
 	return after
 }
 
+// Ancestors tells of every commit whether it is the given one or comes before it.
+func (h *History) Ancestors(of int32) []bool {
+	before := make([]bool, len(h.Commits))
+	before[of] = true
+	for i := of; i >= 0; i-- {
+		if before[i] {
+			for _, p := range h.Commits[i].Parents {
+				before[p] = true
+			}
+		}
+	}
+	return before
+}
+
 // Index finds a commit.
 func (h *History) Index(hash Hash) (int32, bool) {
 	// What is asked for is mostly new.

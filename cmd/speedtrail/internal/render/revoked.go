@@ -42,14 +42,27 @@ type RevokedSignOff struct {
 	Revocation
 }
 
-// withRevoked says behind decisions of a list that their keys were revoked later.
-func withRevoked(signOffs []string, revoked []RevokedSignOff) []string {
+// WithRevoked says behind decisions of a list that their keys were revoked later.
+func WithRevoked(signOffs []string, revoked []RevokedSignOff) []string {
 	list := append([]string{}, signOffs...)
 	for i := range revoked {
 		r := &revoked[i]
 		list[r.Of] += " (! " + r.Short() + ")"
 	}
 	return list
+}
+
+// anchorWords says how a commit came to be in force by an anchor; empty where it did not.
+func (c *TraceCommit) anchorWords() string {
+	entry, words := c.Anchor, "approved, the anchor"
+	if entry == "" {
+		entry, words = c.InAnchor, "in the history of what the anchor approved as a whole"
+	}
+	if entry == "" {
+		return ""
+	}
+	seq, _, _ := strings.Cut(entry, ":")
+	return words + " (entry " + seq + ")" + c.anchorReview()
 }
 
 // anchorReview says which statements of a commit's anchor are by keys that were

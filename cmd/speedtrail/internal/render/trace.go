@@ -44,8 +44,9 @@ type TraceRevision struct {
 
 // TraceCommit is a commit that a trace names.
 type TraceCommit struct {
-	Anchor string `json:"anchor"` // the entry that made it the root of the line of approval, SEQ:HASH; empty: it is not
-	// AnchorSignOffs are the statements of the anchor, "checker m.okoro@harbourline.example".
+	Anchor   string `json:"anchor"`    // the entry that made it the root of the line of approval, SEQ:HASH; empty: it is not
+	InAnchor string `json:"in_anchor"` // the entry of an anchor whose revision descends from the commit, SEQ:HASH; else empty
+	// AnchorSignOffs are the statements of either anchor, "checker m.okoro@harbourline.example".
 	AnchorSignOffs []string          `json:"anchor_sign_offs"`
 	AnchorRevoked  []RevokedSignOff  `json:"anchor_revoked"` // of anchor_sign_offs, those by keys that were revoked later
 	Assessments    []TraceAssessment `json:"assessments"`    // whose range holds the commit; none: it is not assessed
@@ -220,10 +221,10 @@ func requestIDs(c *TraceCommit) string {
 func assessmentNumbers(c *TraceCommit) string {
 	var list []string
 	for _, a := range c.Assessments {
-		list = append(list, strings.Join(append([]string{strconv.FormatInt(a.Number, 10) + " " + a.State}, withRevoked(a.SignOffs, a.Revoked)...), ", "))
+		list = append(list, strings.Join(append([]string{strconv.FormatInt(a.Number, 10) + " " + a.State}, WithRevoked(a.SignOffs, a.Revoked)...), ", "))
 	}
-	if c.Anchor != "" {
-		list = append(list, "approved, the anchor"+c.anchorReview())
+	if words := c.anchorWords(); words != "" {
+		list = append(list, words)
 	}
 	if len(list) == 0 {
 		return "not assessed"

@@ -121,7 +121,7 @@ func (t *Trace) row(commit int) traceRow {
 	c := &t.Commits[commit]
 	return traceRow{
 		Day: day(c), Hash: c.Hash, Author: source.Visible(c.Author.Name), Authored: c.Authored, Subject: source.Visible(c.Subject),
-		Requests: source.Visible(requestWords(c)), Assessments: source.Visible(assessmentWords(c)), Assessed: len(c.Assessments) > 0 || c.Anchor != "",
+		Requests: source.Visible(requestWords(c)), Assessments: source.Visible(assessmentWords(c)), Assessed: len(c.Assessments) > 0 || c.anchorWords() != "",
 	}
 }
 

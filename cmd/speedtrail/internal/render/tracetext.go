@@ -169,16 +169,15 @@ func requestWords(c *TraceCommit) string {
 }
 
 func assessmentWords(c *TraceCommit) string {
-	if len(c.Assessments) == 0 && c.Anchor == "" {
-		return "not assessed"
-	}
 	var list []string
-	if c.Anchor != "" {
-		seq, _, _ := strings.Cut(c.Anchor, ":")
-		list = append(list, "approved, the anchor (entry "+seq+")"+c.anchorReview())
+	if words := c.anchorWords(); words != "" {
+		list = append(list, words)
 	}
 	for _, a := range c.Assessments {
-		list = append(list, fmt.Sprintf("in assessment %d (%s)", a.Number, strings.Join(append([]string{a.State}, withRevoked(a.SignOffs, a.Revoked)...), "; ")))
+		list = append(list, fmt.Sprintf("in assessment %d (%s)", a.Number, strings.Join(append([]string{a.State}, WithRevoked(a.SignOffs, a.Revoked)...), "; ")))
+	}
+	if list == nil {
+		return "not assessed"
 	}
 	return strings.Join(list, ", ")
 }
