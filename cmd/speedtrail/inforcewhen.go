@@ -24,6 +24,7 @@ import (
 type inForceAnswer struct {
 	Format  string         `json:"format"`
 	When    string         `json:"when"`
+	Future  bool           `json:"in_future"` // the instant is still to come: later records can say otherwise
 	Route   string         `json:"route"`
 	At      string         `json:"at_km"`
 	Record  *serviceRecord `json:"record" jsonschema:"nullable"` // null: nothing is recorded
@@ -92,7 +93,7 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 	if err != nil {
 		return err
 	}
-	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Route: route, At: at, Routes: []heldRecord{}, Corrected: []correctedRecord{}, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
+	answer := inForceAnswer{Format: "speedtrail-inforce-at 1", When: when.Format(signoff.TimeLayout), Future: when.After(time.Now()), Route: route, At: at, Routes: []heldRecord{}, Corrected: []correctedRecord{}, Signed: []evidence{}, Speeds: []pointSpeed{}, Head: line.Head().String()}
 	now, _ := line.InForceAt(folder, route, when)
 	if route == "" {
 		answer.Routes = recordsOfRoutes(line, folder, when, now)
@@ -214,6 +215,9 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 }
 
 func (a *app) printInForce(w io.Writer, x *inForceAnswer, width int) error {
+	if x.Future {
+		fmt.Fprintf(w, "%s\n\n", render.Hanging("! "+x.When+" lies in the future: this is what is recorded so far, nobody knows yet whether it will be so, and later records can say otherwise", width, "  "))
+	}
 	var apart []string
 	if len(x.Routes) > 0 {
 		fmt.Fprintf(w, "On single routes at %s:\n", x.When)
