@@ -164,6 +164,11 @@ func (a *app) inforceRecord(ctx context.Context, x servicing, s *signing) error 
 	} else if !line.ApprovedContent(folder, statement.Content) {
 		a.remark("! the revision is not approved: finding %s", history.ServiceUnapproved)
 	}
+	if x.voids == 0 {
+		for _, e := range byRevoked(evidenceOf(line, folder, statement.Content, approvedThrough(line, folder, statement.Content))) {
+			a.remark("! %s: %s", e.by(), e.Revoked.Short())
+		}
+	}
 	if x.voids == 0 && statement.Since.After(statement.Time) {
 		a.remark("! %s lies in the future: until then the revision is not in force, and after it nothing asks whether it went into service", statement.Since.Format(signoff.TimeLayout))
 	}
@@ -172,6 +177,16 @@ func (a *app) inforceRecord(ctx context.Context, x servicing, s *signing) error 
 		return err
 	}
 	return a.recordSigned(ctx, l, line, chain.InForce, result)
+}
+
+// approvedThrough lists the approved assessments whose target has a content.
+func approvedThrough(line *approval.Line, folder, content string) (list []int64) {
+	for _, x := range line.Assessments() {
+		if x.Folder == folder && x.TargetTree == content && line.State(x.Number).Word == approval.Approved {
+			list = append(list, x.Number)
+		}
+	}
+	return list
 }
 
 // entering gives what a statement says of a revision that went into service.

@@ -72,6 +72,13 @@ func TestRevokedKeyIsSaid(t *testing.T) {
 				t.Errorf("%s: no %q in\n%s", who, text, got.out)
 			}
 		}
+		// It is said to whoever puts the revision into service then.
+		if who == "ada" {
+			got := call(t, in("inforce", "record", "c1", "--since", "2026-03-06T00:00:00Z", "--reason", "again", "--signer", "cem@tarn.example", "--write", filepath.Join(t.TempDir(), "statement"))...).want(t, 0)
+			if !strings.Contains(got.errors, "! assessment 1: approve as checker by ada@tarn.example: key revoked in entry 8") {
+				t.Errorf("%s", got.errors)
+			}
+		}
 	}
 	for name, c := range commands {
 		got := call(t, in(c.args...)...)
@@ -138,5 +145,11 @@ func TestRevokedKeyIsSaid(t *testing.T) {
 	decode(&trace, "trace", "c1", "--route", "R1", "--at", "1.5")
 	if c := trace.Commits; len(c) != 2 || len(c[0].Assessments) != 1 || len(c[0].Assessments[0].Revoked) != 1 || c[0].Assessments[0].Revoked[0].Entry != 8 || len(c[1].AnchorRevoked) != 2 || c[1].AnchorRevoked[1].Of != 2 {
 		t.Errorf("trace: %+v", trace)
+	}
+
+	// And to whoever signs last.
+	got := call(t, in("sign", "1", "--role", "approver", "--decision", "approve", "--reason", "again", "--key", key("bea"), "-y")...).want(t, 0)
+	if !strings.Contains(got.errors, "! approve as checker by ada@tarn.example: key revoked in entry 8") {
+		t.Errorf("%s", got.errors)
 	}
 }

@@ -265,5 +265,10 @@ func (a *app) remarkState(ctx context.Context, l *ledger.Ledger, line *approval.
 		text += fmt.Sprintf("; kept from approval: %s", render.BlockWords(s.Blocks))
 	}
 	a.remark("%s", text)
+	for _, r := range decisionsOn(s, number) {
+		if revoked := revocationOf(line, r.Fingerprint); revoked != nil {
+			a.remark("! %s as %s by %s: %s", r.Decision, r.Role, r.Signer, revoked.Short())
+		}
+	}
 	return nil
 }
