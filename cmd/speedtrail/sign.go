@@ -19,6 +19,7 @@ import (
 	"speedtrail/history/chain"
 	"speedtrail/history/ledger"
 	"speedtrail/history/signoff"
+	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
 
@@ -107,8 +108,13 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	}
 	// A role that only the policy in force has is taken by that one.
 	policy, whose := x.Policy.Parsed, "the base"
-	if newest := line.Newest(x.Folder).Parsed; newest != nil && policy.Role(s.role) == nil && newest.Role(s.role) != nil {
-		policy, whose = newest, newestPolicy
+	for _, p := range []struct {
+		policy *schema.Policy
+		whose  string
+	}{{line.Newest(x.Folder).Parsed, newestPolicy}, {line.Rejected(x.Folder).Parsed, "the release that was rejected"}} {
+		if p.policy != nil && policy.Role(s.role) == nil && p.policy.Role(s.role) != nil {
+			policy, whose = p.policy, p.whose
+		}
 	}
 	key, done, err := s.signerKey(ctx, a, policy, whose)
 	if err != nil {

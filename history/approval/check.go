@@ -288,11 +288,19 @@ func (l *Line) checkSignOff(r *Record) error {
 	if r.inForce, err = usable(l.Newest(a.Folder), "the newest approved revision"); err != nil {
 		return err
 	}
-	// A role that only the policy in force has may be taken all the same.
-	if policy.Role(r.Role) != nil || r.inForce.Role(r.Role) == nil {
-		if err := CheckRole(policy, r.Role, r.Signer); err != nil {
-			return err
+	if l.firstSigned(a) == 0 { // else it was approved once, and may be again
+		r.rejected = l.Rejected(a.Folder).Parsed
+	}
+	// A role that only the policy in force has, or a newer one that is rejected, may be
+	// taken all the same.
+	signer := policy
+	for _, p := range []*schema.Policy{r.inForce, r.rejected} {
+		if p != nil && signer.Role(r.Role) == nil && p.Role(r.Role) != nil {
+			signer = p
 		}
+	}
+	if err := CheckRole(signer, r.Role, r.Signer); err != nil {
+		return err
 	}
 	if r.Role == InServiceRole {
 		return refuse("the role %s records what is in force and approves nothing", InServiceRole)
@@ -300,34 +308,37 @@ func (l *Line) checkSignOff(r *Record) error {
 	if err := l.checkIndependence(r, a, policy); err != nil {
 		return err
 	}
-	signer := policy
-	if policy.Role(r.Role) == nil {
-		signer = r.inForce
-	}
 	if err := l.checkSignature(r, signer); err != nil {
 		return err
 	}
-	if err := l.checkByNewest(r, a); err != nil {
-		return err
+	if signer == r.inForce || signer == policy {
+		if err := l.checkBy(r, a, r.inForce, "the newest approved policy"); err != nil {
+			return err
+		}
+	}
+	if r.rejected != nil && r.rejected.Role(r.Role) != nil && r.Decision == signoff.Approve {
+		if err := l.checkBy(r, a, r.rejected, "the policy that was in force until its release was rejected"); err != nil {
+			return err
+		}
 	}
 	return l.checkTakenOut(r)
 }
 
-// checkByNewest holds a sign-off against the newest approved policy as well: a base
-// of before a turn of the policy does not bring the former one back.
-func (l *Line) checkByNewest(r *Record, a *Assessment) error {
-	if r.inForce.Role(r.Role) == nil {
-		return refuse("by the newest approved policy: it has no role %q; base the change on the newest release, and assess it again", r.Role)
+// checkBy holds a sign-off against a newer policy as well: a base of before a turn of
+// the policy does not bring the former one back.
+func (l *Line) checkBy(r *Record, a *Assessment, p *schema.Policy, whose string) error {
+	if p.Role(r.Role) == nil {
+		return refuse("by %s: it has no role %q; base the change on the newest release, and assess it again", whose, r.Role)
 	}
-	err := CheckRole(r.inForce, r.Role, r.Signer)
+	err := CheckRole(p, r.Role, r.Signer)
 	if err == nil {
-		err = l.checkIndependence(r, a, r.inForce)
+		err = l.checkIndependence(r, a, p)
 	}
 	if err == nil && (!r.foreseen || r.Fingerprint != "") {
-		_, err = allowedKey(r.inForce, r.Fingerprint, r.Signer, r.Time, r.Recorded)
+		_, err = allowedKey(p, r.Fingerprint, r.Signer, r.Time, r.Recorded)
 	}
 	if err != nil {
-		return refuse("by the newest approved policy: %v", strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))
+		return refuse("by %s: %v", whose, strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))
 	}
 	return nil
 }

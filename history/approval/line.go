@@ -92,6 +92,7 @@ type Record struct {
 
 	foreseen bool           // nobody has signed it so far: Foresee
 	inForce  *schema.Policy // of a sign-off: the newest approved policy when it was recorded
+	rejected *schema.Policy // of a sign-off: a newer one whose release stood rejected then; nil for none
 }
 
 // AnchorRecord is the root of a line of approval.
@@ -288,6 +289,26 @@ func (l *Line) Newest(folder string) Policy {
 		return turns[len(turns)-1].by.Next
 	}
 	return anchor.Policy
+}
+
+// Rejected gives the policy that was in force last, where that is newer than the one
+// in force because its release has been rejected since: a rejection takes data out of
+// approval, and does not bring back what the policy no longer allowed. Its hash is
+// empty where there is none.
+func (l *Line) Rejected(folder string) Policy {
+	var last *way
+	for _, s := range l.contentsBy(folder, l.firstSigned) {
+		if s.by != nil && s.by.Policy.Hash != s.by.Next.Hash && (last == nil || inOrder(*last, s) < 0) {
+			last = &s
+		}
+	}
+	if last == nil || l.ApprovedContent(folder, last.by.TargetTree) {
+		return Policy{}
+	}
+	if turns := l.turns(folder); len(turns) > 0 && inOrder(turns[len(turns)-1], *last) > 0 {
+		return Policy{}
+	}
+	return last.by.Next
 }
 
 // turns lists the approved assessments that turned the policy of a folder, in the

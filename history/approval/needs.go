@@ -79,10 +79,14 @@ func takenBefore(p *schema.Policy, x part, at int, approve map[part]int) bool {
 }
 
 // met tells whether the roles of the base's policy have the people that they need,
-// and those of the policy that was in force at a decision: whoever chooses an old
-// base does not choose the rules.
-func met(a *Assessment, approve map[part]int, inForce *schema.Policy) bool {
-	for _, p := range []*schema.Policy{a.Policy.Parsed, inForce} {
+// and those of the policies that asked at a decision: whoever chooses an old base, or
+// rejects a new one, does not choose the rules.
+func met(a *Assessment, approve map[part]int, at *Record) bool {
+	policies := []*schema.Policy{a.Policy.Parsed, at.inForce}
+	if at.rejected != nil {
+		policies = append(policies, at.rejected)
+	}
+	for _, p := range policies {
 		if p == nil || slices.ContainsFunc(needs(p, a, approve), func(n need) bool { return n.have < n.needed }) {
 			return false
 		}
@@ -128,7 +132,7 @@ func (l *Line) completed(a *Assessment) int64 {
 				approve[x] = at
 			}
 		}
-		if r := &l.signOffs[i]; met(a, approve, r.inForce) {
+		if r := &l.signOffs[i]; met(a, approve, r) {
 			return r.Entry.Seq
 		}
 	}
@@ -152,15 +156,18 @@ func (l *Line) cleared(c content) int {
 }
 
 // missing lists the roles that lack people for an assessment: by the policy of its
-// base, and by the one that is in force now.
+// base, by the one that is in force now, and by a newer one that is rejected.
 func (l *Line) missing(a *Assessment) []string {
 	if a.Policy.Parsed == nil || l.completed(a) > 0 {
 		return nil
 	}
 	approve := l.standing(a)
 	list := needs(a.Policy.Parsed, a, approve)
-	if newest := l.Newest(a.Folder).Parsed; newest != nil {
-		for _, n := range needs(newest, a, approve) {
+	for _, p := range []*schema.Policy{l.Newest(a.Folder).Parsed, l.Rejected(a.Folder).Parsed} {
+		if p == nil {
+			continue
+		}
+		for _, n := range needs(p, a, approve) {
 			i := slices.IndexFunc(list, func(have need) bool { return have.role == n.role })
 			if i < 0 {
 				list = append(list, n)

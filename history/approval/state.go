@@ -160,7 +160,7 @@ func (l *Line) firstMet(a *Assessment) int64 {
 				approve[x] = i
 			}
 		}
-		if len(rejects) == 0 && met(a, approve, r.inForce) {
+		if len(rejects) == 0 && met(a, approve, r) {
 			return r.Entry.Seq
 		}
 	}
@@ -195,8 +195,16 @@ func (l *Line) approvedContents(folder string) map[string]way {
 	if known := l.contents[folder]; known != nil {
 		return known
 	}
-	approved := map[string]way{}
+	// A map that is being filled is not asked for: what signs asks about one content.
+	approved := l.contentsBy(folder, l.signedOff)
 	l.contents[folder] = approved
+	return approved
+}
+
+// contentsBy gives the contents to which signed assessments lead from the anchor;
+// signed gives the entry with which one was, 0 where it was not.
+func (l *Line) contentsBy(folder string, signedOff func(*Assessment) int64) map[string]way {
+	approved := map[string]way{}
 	anchor := l.anchors[folder]
 	if anchor == nil {
 		return approved
@@ -209,7 +217,7 @@ func (l *Line) approvedContents(folder string) map[string]way {
 			if !ok || a.Folder != folder {
 				continue
 			}
-			signed := l.signedOff(a)
+			signed := signedOff(a)
 			if signed == 0 {
 				continue
 			}

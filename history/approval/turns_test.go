@@ -73,3 +73,47 @@ func TestTurnOfWhatIsRejected(t *testing.T) {
 		t.Error("the release that came last does not turn the policy")
 	}
 }
+
+// Whoever rejects a release that made the policy stricter does not bring the former
+// policy back for another one.
+func TestRejectionLoosensNothing(t *testing.T) {
+	for name, c := range map[string]struct {
+		strict rules
+		sign   func(s *story, n int64) error // what the former policy would allow
+		want   string
+	}{
+		"one person more": {ordinary().role("approver 2 preparer,checker"), func(s *story, n int64) error { return s.signOff(n, "eva", "approver", "approve") }, ""},
+		"a key less":      {ordinary().without("eva"), func(s *story, n int64) error { return s.signOff(n, "eva", "approver", "approve") }, "by the policy that was in force until its release was rejected: the key " + fingerprintOf("eva")},
+		"a signer less":   {ordinary().role("approver 1 preparer,checker bea"), func(s *story, n int64) error { return s.signOff(n, "eva", "approver", "approve") }, "eva@tarn.example is no signer of the role approver"},
+		"a role more":     {ordinary().role("reader 1 -"), func(s *story, n int64) error { return s.signOff(n, "eva", "approver", "approve") }, ""},
+	} {
+		t.Run(name, func(t *testing.T) {
+			s := anchored(t, ordinary())
+			turn := s.assess("a", "b", ordinary(), c.strict, nil)
+			other := s.assess("a", "c", ordinary(), ordinary(), nil)
+			s.must(s.signOff(turn, "fin", "checker", "approve"))
+			s.must(s.signOff(turn, "bea", "approver", "approve"))
+			s.must(s.signOff(turn, "fin", "checker", "reject"))
+			s.state(turn, Rejected)
+			s.must(s.signOff(other, "fin", "checker", "approve"))
+			if err := c.sign(s, other); c.want == "" {
+				s.must(err)
+			} else {
+				s.refused(err, c.want)
+			}
+			s.state(other, Partly)
+			// Signed as the stricter policy asks, it is approved.
+			switch name {
+			case "one person more":
+				s.must(s.signOff(other, "ada", "approver", "approve"))
+			case "a role more":
+				s.must(s.signOff(other, "cem", "reader", "approve"))
+			}
+			s.must(s.signOff(other, "bea", "approver", "approve"))
+			s.state(other, Approved)
+			// What is taken back comes back by those who had signed it.
+			s.must(s.signOff(turn, "fin", "checker", "approve"))
+			s.state(turn, Approved)
+		})
+	}
+}
