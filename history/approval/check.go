@@ -360,6 +360,11 @@ func (l *Line) checkNewestSignature(r *Record, p *schema.Policy) error {
 	if err := l.checkSignature(r, p); err != nil {
 		return err
 	}
+	if rejected := l.Rejected(r.Folder).Parsed; rejected != nil && (!r.foreseen || r.Fingerprint != "") {
+		if _, err := allowedKey(rejected, r.Fingerprint, r.Signer, r.Time, r.Recorded); err != nil {
+			return refuse("by the policy that was in force until its release was rejected: %v", strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))
+		}
+	}
 	return l.checkTakenOut(r)
 }
 

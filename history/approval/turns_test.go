@@ -1,6 +1,11 @@
 package approval
 
-import "testing"
+import (
+	"testing"
+
+	"speedtrail/history/chain"
+	"speedtrail/history/signoff"
+)
 
 // Of two releases from one base the policy of the one that was complete last counts,
 // whatever their numbers (signoff.md, The line of approval; DEVELOPERS.md, Turns of
@@ -116,4 +121,16 @@ func TestRejectionLoosensNothing(t *testing.T) {
 			s.state(turn, Approved)
 		})
 	}
+}
+
+// Nor does a key that it took out record what is in service, or revoke others.
+func TestRejectionBringsNoKeyBack(t *testing.T) {
+	s := anchored(t, ordinary().role("in-service 1 - cem,eva"))
+	turn := s.assess("a", "b", s.rules, s.rules.without("eva"), nil)
+	s.approve(turn)
+	s.must(s.signOff(turn, "fin", "checker", "reject"))
+	st := &signoff.Statement{Kind: signoff.InForce, Revision: commitOf("a"), Content: treeOf("a"), Policy: s.rules.hash(), Since: day(2), Corrects: CorrectsNothing, Role: InServiceRole}
+	s.refused(s.record(chain.InForce, s.sign(st, "eva", InForceFormat)), "by the policy that was in force until its release was rejected: the key "+fingerprintOf("eva"))
+	s.refused(s.revoke("ada", "eva", "checker"), "by the policy that was in force until its release was rejected")
+	s.must(s.inForce("a", day(2), "all", CorrectsNothing))
 }
