@@ -22,7 +22,7 @@ import (
 )
 
 // RulesVersion is raised whenever the same data can give another result.
-const RulesVersion = 4
+const RulesVersion = 5
 
 // Account is all that differs between two revisions of a data set.
 type Account struct {
