@@ -42,7 +42,7 @@ that were added or altered between the revisions count, or those named with
 --request. "--request none" leaves that comparison out.
 
 Exit status 1 for any finding that is not accepted, one that the base has too
-included. A pipeline needs a clone that holds the history from BASE to TARGET.`,
+included. In a shallow clone, as pipelines make them, use --no-record.`,
 		Example: `  speedtrail assess release-1 release-2
   speedtrail assess HEAD
   speedtrail assess --no-record --format csv main HEAD`,
