@@ -19,7 +19,6 @@ import (
 	"speedtrail/history/chain"
 	"speedtrail/history/ledger"
 	"speedtrail/history/signoff"
-	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
 
@@ -108,12 +107,12 @@ func (a *app) sign(ctx context.Context, number int64, decision string, s *signin
 	}
 	// A role that only the policy in force has is taken by that one.
 	policy, whose := x.Policy.Parsed, "the base"
-	for _, p := range []struct {
-		policy *schema.Policy
-		whose  string
-	}{{line.Newest(x.Folder).Parsed, newestPolicy}, {line.Rejected(x.Folder).Parsed, "the release that was rejected"}} {
-		if p.policy != nil && policy.Role(s.role) == nil && p.policy.Role(s.role) != nil {
-			policy, whose = p.policy, p.whose
+	for i, p := range append([]approval.Policy{line.Newest(x.Folder)}, line.Rejected(x)...) {
+		if p.Parsed != nil && policy.Role(s.role) == nil && p.Parsed.Role(s.role) != nil {
+			policy, whose = p.Parsed, newestPolicy
+			if i > 0 {
+				whose = "the release that was rejected"
+			}
 		}
 	}
 	key, done, err := s.signerKey(ctx, a, policy, whose)

@@ -288,14 +288,14 @@ func (l *Line) checkSignOff(r *Record) error {
 	if r.inForce, err = usable(l.Newest(a.Folder), "the newest approved revision"); err != nil {
 		return err
 	}
-	if l.firstSigned(a) == 0 { // else it was approved once, and may be again
-		r.rejected = l.Rejected(a.Folder).Parsed
+	for _, p := range l.Rejected(a) {
+		r.rejected = append(r.rejected, p.Parsed)
 	}
 	// A role that only the policy in force has, or a newer one that is rejected, may be
 	// taken all the same.
 	signer := policy
-	for _, p := range []*schema.Policy{r.inForce, r.rejected} {
-		if p != nil && signer.Role(r.Role) == nil && p.Role(r.Role) != nil {
+	for _, p := range append([]*schema.Policy{r.inForce}, r.rejected...) {
+		if signer.Role(r.Role) == nil && p.Role(r.Role) != nil {
 			signer = p
 		}
 	}
@@ -316,12 +316,15 @@ func (l *Line) checkSignOff(r *Record) error {
 			return err
 		}
 	}
-	if r.rejected != nil && r.rejected.Role(r.Role) != nil && r.Decision == signoff.Approve {
-		if err := l.checkBy(r, a, r.rejected, "the policy that was in force until its release was rejected"); err != nil {
-			return err
+	for _, p := range r.rejected {
+		if p.Role(r.Role) == nil || r.Decision != signoff.Approve {
+			continue
+		}
+		if err := l.checkBy(r, a, p, whoseRejected); err != nil {
+			return l.byRejected(r.Folder, p, err)
 		}
 	}
-	return l.checkTakenOut(r)
+	return l.checkTakenOut(r, a.TargetTree)
 }
 
 // checkBy holds a sign-off against a newer policy as well: a base of before a turn of
@@ -343,13 +346,17 @@ func (l *Line) checkBy(r *Record, a *Assessment, p *schema.Policy, whose string)
 	return nil
 }
 
-// checkTakenOut refuses a key that an approved policy took out.
-func (l *Line) checkTakenOut(r *Record) error {
+// checkTakenOut refuses a key that an approved policy took out, or one that was approved
+// until somebody rejected it. content is what is decided on, empty where nothing is.
+func (l *Line) checkTakenOut(r *Record, content string) error {
 	if r.foreseen && r.Fingerprint == "" {
 		return nil
 	}
 	if by := l.takenOut(r.Folder, r.Fingerprint); by != nil {
 		return refuse("the key %s was taken out of the policy by assessment %d, which is approved", r.Fingerprint, by.Number)
+	}
+	if by := l.stillOut(r.Folder, content, r.Fingerprint); by != nil {
+		return refuse("the key %s was taken out of the policy by assessment %d, which was approved until entry %d rejected it", r.Fingerprint, by.by.Number, by.at)
 	}
 	return nil
 }
@@ -360,12 +367,31 @@ func (l *Line) checkNewestSignature(r *Record, p *schema.Policy) error {
 	if err := l.checkSignature(r, p); err != nil {
 		return err
 	}
-	if rejected := l.Rejected(r.Folder).Parsed; rejected != nil && (!r.foreseen || r.Fingerprint != "") {
-		if _, err := allowedKey(rejected, r.Fingerprint, r.Signer, r.Time, r.Recorded); err != nil {
-			return refuse("by the policy that was in force until its release was rejected: %v", strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))
+	for _, p := range l.rejected(r.Folder, "") {
+		if err := checkRejected(r, p.Parsed); err != nil {
+			err = refuse("by %s: %v", whoseRejected, strings.TrimPrefix(err.Error(), ErrRefused.Error()+": "))
+			return l.byRejected(r.Folder, p.Parsed, err)
 		}
 	}
-	return l.checkTakenOut(r)
+	return l.checkTakenOut(r, "")
+}
+
+// checkRejected holds such a statement against a newer policy whose release was
+// rejected: whom it had let sign no more, the rejection does not bring back.
+func checkRejected(r *Record, p *schema.Policy) error {
+	if r.Role != signoff.Owner {
+		if err := CheckRole(p, r.Role, r.Signer); err != nil {
+			return err
+		}
+		if r.Kind == signoff.Revocation && !p.Independent(r.Role, schema.Preparer) {
+			return refuse("the role %s is not independent of preparer", r.Role)
+		}
+	}
+	if r.foreseen && r.Fingerprint == "" {
+		return nil
+	}
+	_, err := allowedKey(p, r.Fingerprint, r.Signer, r.Time, r.Recorded)
+	return err
 }
 
 // blocked says why nobody may sign an assessment; empty where somebody may.

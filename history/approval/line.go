@@ -90,9 +90,9 @@ type Record struct {
 	Signature   []byte
 	Text        []byte
 
-	foreseen bool           // nobody has signed it so far: Foresee
-	inForce  *schema.Policy // of a sign-off: the newest approved policy when it was recorded
-	rejected *schema.Policy // of a sign-off: a newer one whose release stood rejected then; nil for none
+	foreseen bool             // nobody has signed it so far: Foresee
+	inForce  *schema.Policy   // of a sign-off: the newest approved policy when it was recorded
+	rejected []*schema.Policy // of a sign-off: newer ones whose releases stood rejected then
 }
 
 // AnchorRecord is the root of a line of approval.
@@ -118,6 +118,7 @@ type Line struct {
 	revoked     map[string]Record // by fingerprint
 	statements  map[string]int64  // hash -> entry
 	policies    map[string]Policy
+	lost        map[string][]lost // what rejections took out of force, by folder, in their order
 
 	ofAssessment map[int64][]int           // indices in signOffs
 	ofContent    map[content][]int         // the same, by what was decided on
@@ -130,7 +131,7 @@ type Line struct {
 // New begins a line for the ledger of an id.
 func New(ledger string) *Line {
 	return &Line{ledger: ledger, byNumber: map[int64]*Assessment{}, anchors: map[string]*AnchorRecord{}, revoked: map[string]Record{}, statements: map[string]int64{}, policies: map[string]Policy{},
-		ofAssessment: map[int64][]int{}, ofContent: map[content][]int{}, done: map[int64]int64{}, begun: map[int64]int64{}, contents: map[string]map[string]way{}}
+		ofAssessment: map[int64][]int{}, ofContent: map[content][]int{}, done: map[int64]int64{}, begun: map[int64]int64{}, contents: map[string]map[string]way{}, lost: map[string][]lost{}}
 }
 
 // ErrRefused is the class of everything that a policy or the rules of signing
@@ -194,7 +195,7 @@ func (l *Line) add(e chain.Entry, recorded time.Time, assessment *Assessment) er
 		l.statements[signoff.Hash(r.Text)] = e.Seq
 		switch e.Kind {
 		case chain.SignOff:
-			l.take(r)
+			l.decide(r)
 		case chain.InForce:
 			l.inForce = append(l.inForce, r)
 		default:
@@ -289,26 +290,6 @@ func (l *Line) Newest(folder string) Policy {
 		return turns[len(turns)-1].by.Next
 	}
 	return anchor.Policy
-}
-
-// Rejected gives the policy that was in force last, where that is newer than the one
-// in force because its release has been rejected since: a rejection takes data out of
-// approval, and does not bring back what the policy no longer allowed. Its hash is
-// empty where there is none.
-func (l *Line) Rejected(folder string) Policy {
-	var last *way
-	for _, s := range l.contentsBy(folder, l.firstSigned) {
-		if s.by != nil && s.by.Policy.Hash != s.by.Next.Hash && (last == nil || inOrder(*last, s) < 0) {
-			last = &s
-		}
-	}
-	if last == nil || l.ApprovedContent(folder, last.by.TargetTree) {
-		return Policy{}
-	}
-	if turns := l.turns(folder); len(turns) > 0 && inOrder(turns[len(turns)-1], *last) > 0 {
-		return Policy{}
-	}
-	return last.by.Next
 }
 
 // turns lists the approved assessments that turned the policy of a folder, in the

@@ -82,11 +82,7 @@ func takenBefore(p *schema.Policy, x part, at int, approve map[part]int) bool {
 // and those of the policies that asked at a decision: whoever chooses an old base, or
 // rejects a new one, does not choose the rules.
 func met(a *Assessment, approve map[part]int, at *Record) bool {
-	policies := []*schema.Policy{a.Policy.Parsed, at.inForce}
-	if at.rejected != nil {
-		policies = append(policies, at.rejected)
-	}
-	for _, p := range policies {
+	for _, p := range append([]*schema.Policy{a.Policy.Parsed, at.inForce}, at.rejected...) {
 		if p == nil || slices.ContainsFunc(needs(p, a, approve), func(n need) bool { return n.have < n.needed }) {
 			return false
 		}
@@ -156,18 +152,18 @@ func (l *Line) cleared(c content) int {
 }
 
 // missing lists the roles that lack people for an assessment: by the policy of its
-// base, by the one that is in force now, and by a newer one that is rejected.
+// base, by the one that is in force now, and by newer ones that are rejected.
 func (l *Line) missing(a *Assessment) []string {
 	if a.Policy.Parsed == nil || l.completed(a) > 0 {
 		return nil
 	}
 	approve := l.standing(a)
 	list := needs(a.Policy.Parsed, a, approve)
-	for _, p := range []*schema.Policy{l.Newest(a.Folder).Parsed, l.Rejected(a.Folder).Parsed} {
-		if p == nil {
+	for _, p := range append([]Policy{l.Newest(a.Folder)}, l.Rejected(a)...) {
+		if p.Parsed == nil {
 			continue
 		}
-		for _, n := range needs(p, a, approve) {
+		for _, n := range needs(p.Parsed, a, approve) {
 			i := slices.IndexFunc(list, func(have need) bool { return have.role == n.role })
 			if i < 0 {
 				list = append(list, n)

@@ -195,16 +195,8 @@ func (l *Line) approvedContents(folder string) map[string]way {
 	if known := l.contents[folder]; known != nil {
 		return known
 	}
-	// A map that is being filled is not asked for: what signs asks about one content.
-	approved := l.contentsBy(folder, l.signedOff)
-	l.contents[folder] = approved
-	return approved
-}
-
-// contentsBy gives the contents to which signed assessments lead from the anchor;
-// signed gives the entry with which one was, 0 where it was not.
-func (l *Line) contentsBy(folder string, signedOff func(*Assessment) int64) map[string]way {
 	approved := map[string]way{}
+	l.contents[folder] = approved
 	anchor := l.anchors[folder]
 	if anchor == nil {
 		return approved
@@ -217,7 +209,7 @@ func (l *Line) contentsBy(folder string, signedOff func(*Assessment) int64) map[
 			if !ok || a.Folder != folder {
 				continue
 			}
-			signed := signedOff(a)
+			signed := l.signedOff(a)
 			if signed == 0 {
 				continue
 			}
