@@ -3,6 +3,7 @@ package approval
 import (
 	"cmp"
 	"fmt"
+	"slices"
 	"strings"
 	"time"
 
@@ -85,7 +86,36 @@ func (l *Line) Foresee(s signoff.Statement, fingerprint string, recorded time.Ti
 	if err != nil {
 		return err
 	}
-	return l.check(&Record{Statement: s, Recorded: recorded, Text: text, Fingerprint: fingerprint, foreseen: true})
+	with := func(fingerprint string) error {
+		return l.check(&Record{Statement: s, Recorded: recorded, Text: text, Fingerprint: fingerprint, foreseen: true})
+	}
+	if err := with(fingerprint); err != nil || fingerprint != "" {
+		return err
+	}
+	// One policy can have a key that another one took out.
+	for _, key := range l.keysOf(s.Signer) {
+		if err = with(key); err == nil {
+			break
+		}
+	}
+	return err
+}
+
+// keysOf lists the keys that the policies of the line have of somebody.
+func (l *Line) keysOf(signer string) []string {
+	var list []string
+	for _, p := range l.policies {
+		if p.Parsed == nil {
+			continue
+		}
+		for _, k := range p.Parsed.Keys {
+			if k.Principal == signer {
+				list = append(list, k.Fingerprint)
+			}
+		}
+	}
+	slices.Sort(list)
+	return slices.Compact(list)
 }
 
 // checkForm checks what all statements have in common but the signature: the

@@ -98,3 +98,18 @@ func TestForesee(t *testing.T) {
 		})
 	}
 }
+
+// Nor is a statement written for somebody to sign whose key in the base's policy a
+// newer one took out.
+func TestForeseeWithoutKey(t *testing.T) {
+	s := anchored(t, ordinary())
+	rotated := ordinary().without("eva").key("eva2")
+	s.approve(s.assess("a", "b", ordinary(), rotated, nil))
+	other := s.assess("a", "c", ordinary(), ordinary(), nil)
+	st := s.statementOf(other, "checker", "approve")
+	s.sign(st, "eva", SignOffFormat) // fills it in
+	s.refused(s.line.Foresee(*st, "", s.now), "is not allowed to anyone by this policy")
+	next := s.statementOf(s.assess("b", "d", rotated, rotated, nil), "checker", "approve")
+	s.sign(next, "eva2", SignOffFormat)
+	s.must(s.line.Foresee(*next, "", s.now))
+}
