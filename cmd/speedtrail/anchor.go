@@ -138,9 +138,19 @@ func (a *app) anchor(ctx context.Context, rev string, o *anchoring) error {
 		return anchorError(err)
 	}
 	if len(unsigned) > 0 {
+		if o.write == "" && !o.yes && !asks(a) {
+			return errNobodyToAsk
+		}
 		a.showPolicy(p.Parsed)
 	}
 	if l == nil {
+		for i, key := range keys {
+			if locked, ok := key.(*lockedKey); ok {
+				if keys[i], err = locked.open(ctx, a); err != nil {
+					return err
+				}
+			}
+		}
 		if l, err = a.openLedger(ctx, true); err != nil {
 			return err
 		}

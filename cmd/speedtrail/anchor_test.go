@@ -45,6 +45,7 @@ func TestAnchorRefusedBeforeAnybodyIsAsked(t *testing.T) {
 			`no role "cheker"`:                               write("cheker", "ada"),
 			"eve@tarn.example is no person of the policy":    write("checker", "eve"),
 			"ada@tarn.example is no signer of the role":      write("in-service", "ada"),
+			"there is no terminal to ask on":                 whole,
 		} {
 			refused(text, args...)
 		}

@@ -95,6 +95,15 @@ func (k *lockedKey) open(ctx context.Context, a *app) (ssh.Signer, error) {
 	return key, nil
 }
 
+// errNobodyToAsk says that there is no terminal.
+var errNobodyToAsk = &callError{"there is no terminal to ask on", "--yes signs without asking"}
+
+// asks tells whether anybody can be asked.
+func asks(a *app) bool {
+	_, ok := terminal(a)
+	return ok
+}
+
 // ask asks for a yes.
 func (s *signing) ask(ctx context.Context, a *app) error {
 	if s.yes {
@@ -102,7 +111,7 @@ func (s *signing) ask(ctx context.Context, a *app) error {
 	}
 	in, ok := terminal(a)
 	if !ok {
-		return badCall("--yes signs without asking", "there is no terminal to ask on")
+		return errNobodyToAsk
 	}
 	fmt.Fprint(a.err, "Sign this statement? Type yes: ")
 	said, err := answer(ctx, in, func() (string, error) {
