@@ -174,8 +174,8 @@ func (p *pair) running(f *Figures, train int, t Train, changes []delta.Delta, m 
 		cur := w.target.CursorAt(c.Target)
 		piece := cur.Piece()
 		middle := travelled(piece.From + (piece.To-piece.From)/2)
-		if reached := after.Peak(middle); reached < int64(piece.Speed)*2500/9 {
-			short := ShortRaise{p.direction, train, piece.From, piece.To, piece.Speed, unit.Speed(reached * 9 / 2500), after.Needed(middle)}
+		if reached := after.Peak(middle); reached < piece.Speed {
+			short := ShortRaise{p.direction, train, piece.From, piece.To, piece.Speed, reached, after.Needed(middle)}
 			if n := len(f.Short); n == 0 || f.Short[n-1] != short {
 				f.Short = append(f.Short, short)
 			}

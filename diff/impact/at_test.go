@@ -88,3 +88,21 @@ func TestMirror(t *testing.T) {
 	}
 	Mirror(step.Func{})
 }
+
+// From rest to rest with 0.5 m/s² the train reaches the root of 500 times the length,
+// in mm/s and mm: 23 km/h, which are 6388.889 mm/s, take 81 635.8 mm.
+func TestPeakByHand(t *testing.T) {
+	half := Motion{Acceleration: 500, Braking: 500}
+	for _, test := range []struct {
+		length unit.Distance
+		limit  unit.Speed
+		want   unit.Speed
+	}{
+		{81_635, 40, 22}, {81_636, 40, 23}, {1_250_000, 90, 90}, {1_249_999, 90, 89}, {1_250_000, 85, 85},
+	} {
+		f := step.Func{{From: 0, To: test.length, Speed: test.limit}}
+		if got := newRun(f, half).Peak(0); got != test.want {
+			t.Errorf("%d mm at up to %d km/h: %d km/h reached, want %d", test.length, test.limit, got, test.want)
+		}
+	}
+}

@@ -186,12 +186,13 @@ func (r *Run) Tenths() int64 {
 	return r.exactTenths()
 }
 
-// Peak gives the highest speed, in whole mm/s rounded down, that the train
-// reaches in the piece of the profile at s.
-func (r *Run) Peak(s unit.Distance) int64 {
+// Peak gives the highest speed, in whole km/h rounded down, that the train reaches
+// in the piece of the profile at s.
+func (r *Run) Peak(s unit.Distance) unit.Speed {
 	c := r.profile.CursorAt(s)
 	_, peak := r.piece(c.Index()).time()
-	return int64(math.Floor(peak + 1e-6))
+	// Rounded once: 23 km/h are no whole number of mm/s.
+	return unit.Speed((peak + 1e-6) * 9 / 2500)
 }
 
 // Needed gives the length that the piece of the profile at s would need for its
