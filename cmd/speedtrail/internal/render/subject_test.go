@@ -13,6 +13,9 @@ func TestSubjectText(t *testing.T) {
 		"":                                     "",
 		"assessed  in assessment 3 (approved)": margin + "\"assessed in assessment 3 (approved)\"\n",
 		"Assessed":                             margin + "\"Assessed\"\n",
+		"assessed: in assessment 3 (approved)": margin + "\"assessed: in assessment 3 (approved)\"\n",
+		"-by: routes/r1/speed.csv:3":           margin + "\"-by: routes/r1/speed.csv:3\"\n",
+		"7 assessed, 3 approved":               margin + "7 assessed, 3 approved\n",
 		long + " assessed  in assessment 3 (appr)":                      margin + "Raise the speeds between the two bridges of the valley, as the\n" + margin + "  works there are done assessed in assessment 3 (appr)\n",
 		"Raise" + strings.Repeat(" ", 60) + "assessed  in assessment 3": margin + "Raise assessed in assessment 3\n",
 	} {

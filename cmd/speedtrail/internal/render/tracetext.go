@@ -7,6 +7,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"unicode"
 
 	"github.com/jedib0t/go-pretty/v6/text"
 
@@ -213,7 +214,7 @@ func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) 
 // has a label: whoever commits words it.
 func subjectText(b *strings.Builder, subject string, s Style) {
 	words := strings.Fields(source.Visible(subject))
-	if len(words) > 0 && slices.Contains(labels, strings.ToLower(words[0])) {
+	if len(words) > 0 && slices.Contains(labels, strings.ToLower(firstLetters(words[0]))) {
 		words[0] = `"` + words[0]
 		words[len(words)-1] += `"`
 	}
@@ -223,6 +224,17 @@ func subjectText(b *strings.Builder, subject string, s Style) {
 		}
 		fmt.Fprintln(b, margin+line)
 	}
+}
+
+// firstLetters leaves the marks around a word out, and what follows them: "assessed:"
+// looks like a label, too.
+func firstLetters(word string) string {
+	other := func(r rune) bool { return !unicode.IsLetter(r) }
+	word = strings.TrimLeftFunc(word, other)
+	if i := strings.IndexFunc(word, other); i >= 0 {
+		return word[:i]
+	}
+	return word
 }
 
 // labels stand before the lines of a step or piece.
