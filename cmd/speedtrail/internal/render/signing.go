@@ -7,12 +7,14 @@ import (
 )
 
 // BeforeSigning writes what decides for somebody who is about to sign: what is
-// compared, the verdict and the findings with their places and rows.
+// compared, the verdict and the findings with their places and rows, and what nobody
+// looked for.
 func BeforeSigning(w io.Writer, d *assessment.Document, r Record, s Style) error {
 	p := &textWriter{w: w, d: d, c: &d.Computed, r: r, s: s}
 	p.title()
 	p.verdict()
 	p.findings()
+	p.unchecked()
 	p.printf("\n")
 	return p.err
 }
