@@ -88,7 +88,7 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 	for i := range c.Routes {
 		route := &c.Routes[i]
 		for _, t := range route.Track {
-			add("\n%s %s: %s to %s km %s\n", md(route.ID), t.Direction, minus(t.From), minus(t.To), t.Fate)
+			add("\n%s %s: km %s to %s %s (%s m)\n", md(route.ID), t.Direction, minus(t.From), minus(t.To), t.Fate, metres(t.Length))
 		}
 		for k := range route.Changes {
 			x := &route.Changes[k]
