@@ -41,9 +41,13 @@ func findingGroups(c *assessment.Computed) []findingGroup {
 }
 
 // commonTail gives the texts of the findings. What all of them end with, after a
-// colon, is said once, in tail.
+// colon, is said once, in tail. Texts about doubtful data have no such end; a colon
+// in one is of the name of a place or train.
 func (g findingGroup) commonTail() (texts []string, tail string) {
 	for i, f := range g.List {
+		if slices.Contains(doubt.IDs, g.ID) {
+			break
+		}
 		text, end := cutTail(f.Text)
 		if end == "" || i > 0 && end != tail {
 			tail = ""
