@@ -3,7 +3,6 @@ package source
 import (
 	"fmt"
 	"io"
-	"unicode"
 	"unicode/utf16"
 	"unicode/utf8"
 )
@@ -36,7 +35,7 @@ func (i *inert) Write(p []byte) (int, error) {
 		}
 		r, size := utf8.DecodeRune(in[at:])
 		switch {
-		case unicode.IsPrint(r) || r == utf8.RuneError:
+		case seen(r) || r == utf8.RuneError:
 			i.out = append(i.out, in[at:at+size]...)
 		case r > 0xffff:
 			high, low := utf16.EncodeRune(r)

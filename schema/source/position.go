@@ -55,7 +55,7 @@ const quoteLimit = 80
 // hostile data cannot disturb a terminal or drown the message.
 func Quote(s string) string {
 	if len(s) <= quoteLimit {
-		return strconv.Quote(s)
+		return Visible(strconv.Quote(s))
 	}
 	n := quoteLimit
 	// No half letter; a byte that belongs to none stays, to be escaped.
@@ -67,5 +67,5 @@ func Quote(s string) string {
 			break
 		}
 	}
-	return strconv.Quote(s[:n]) + "..."
+	return Visible(strconv.Quote(s[:n])) + "..."
 }

@@ -58,6 +58,7 @@ func TestQuote(t *testing.T) {
 		{"\xff", `"\xff"`},
 		{"\u202eback", `"\u202eback"`},
 		{"a\u200bb", `"a\u200bb"`}, // a blank of no width
+		{"a\ufe0fb", `"a\ufe0fb"`}, // a selector that selects nothing
 		{strings.Repeat("x", 80), `"` + strings.Repeat("x", 80) + `"`},
 		{strings.Repeat("x", 81), `"` + strings.Repeat("x", 80) + `"...`},
 		{strings.Repeat("x", 79) + "öö", `"` + strings.Repeat("x", 79) + `"...`},        // no half letter
@@ -85,6 +86,9 @@ func TestVisible(t *testing.T) {
 		{"bad \xff\xc3", `bad \xff\xc3`},
 		{"\x7f\u0085\u00a0", `\x7f\u0085\u00a0`},
 		{"\U000e0041", `\U000e0041`},
+		// What Unicode counts among the characters that are printed, and nobody sees.
+		{"\ufe0f\u034f\u115f\u3164\uffa0\u17b4\u180b\u2800\U000e0100", `\ufe0f\u034f\u115f\u3164\uffa0\u17b4\u180b\u2800\U000e0100`},
+		{"e\u0301 \u0e01\u0e33", "e\u0301 \u0e01\u0e33"}, // marks that are seen
 	}
 	for _, c := range tests {
 		if got := Visible(c.text); got != c.want {

@@ -1,6 +1,7 @@
 package source
 
 import (
+	"fmt"
 	"strconv"
 	"strings"
 	"unicode"
@@ -13,7 +14,7 @@ import (
 func Visible(s string) string {
 	plain := true
 	for _, r := range s {
-		if !unicode.IsPrint(r) || r == utf8.RuneError {
+		if !seen(r) || r == utf8.RuneError {
 			plain = false
 			break
 		}
@@ -23,8 +24,15 @@ func Visible(s string) string {
 	}
 	var b strings.Builder
 	for i, r := range s {
-		if unicode.IsPrint(r) && r != utf8.RuneError {
+		switch {
+		case seen(r) && r != utf8.RuneError:
 			b.WriteRune(r)
+			continue
+		case Blank(r) && r > 0xffff:
+			fmt.Fprintf(&b, `\U%08x`, r)
+			continue
+		case Blank(r):
+			fmt.Fprintf(&b, `\u%04x`, r)
 			continue
 		}
 		_, size := utf8.DecodeRuneInString(s[i:])
@@ -33,6 +41,16 @@ func Visible(s string) string {
 	}
 	return b.String()
 }
+
+// Blank tells of a letter, mark or symbol that nobody sees though Unicode counts it
+// among those that are printed: selectors of variants, fillers, the blank of Braille.
+func Blank(r rune) bool {
+	return r > unicode.MaxLatin1 && unicode.IsPrint(r) &&
+		(r == '\u2800' || unicode.In(r, unicode.Variation_Selector, unicode.Other_Default_Ignorable_Code_Point))
+}
+
+// seen tells whether a character is one that a reader sees, or the blank.
+func seen(r rune) bool { return unicode.IsPrint(r) && !Blank(r) }
 
 // VisibleLines does the same for a text of several lines, whose line ends stay.
 func VisibleLines(s string) string {
