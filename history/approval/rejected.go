@@ -85,6 +85,9 @@ func wayTo(contents map[string]way, a *Assessment) map[string]bool {
 // anything, and may be so again.
 func (l *Line) rejected(folder, content string) []Policy {
 	var list []Policy
+	if len(l.lost[folder]) == 0 {
+		return list
+	}
 	turns := l.turns(folder)
 	newest := l.Newest(folder)
 	for _, x := range slices.Backward(l.lost[folder]) {
