@@ -43,7 +43,7 @@ func TestInForceDoesNotCount(t *testing.T) {
 		{"register"}, {"report", "1"}, {"inforce", "--when", "2026-03-04T00:00:00Z"}, {"assess", "c0", "c1"}, {"revoke", "SHA256:none", "--role", "owner", "--reason", "none", "--key", key("ada"), "-y"},
 		{"sign", "1", "--role", "checker", "--decision", "approve", "--reason", "seen", "--signer", "ada@tarn.example", "--write", filepath.Join(t.TempDir(), "statement")},
 	} {
-		if got := call(t, in(args...)...); strings.Count(got.errors, "! it does not count, speedtrail verify says more: entry 4 (in-force): refused:") != 1 {
+		if got := call(t, in(args...)...); strings.Count(got.errors, "! it does not count, speedtrail --repo "+repo+" verify says more: entry 4 (in-force): refused:") != 1 {
 			t.Errorf("%q: %s", args, got.errors)
 		}
 	}

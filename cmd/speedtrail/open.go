@@ -221,7 +221,7 @@ func (a *app) readLine(ctx context.Context, l *ledger.Ledger) (*approval.Line, e
 			a.remark("! and %d more entries that do not count", len(problems)-i)
 			break
 		}
-		a.remark("! it does not count, speedtrail verify says more: %v", p)
+		a.remark("! it does not count, %s says more: %v", a.advise("speedtrail verify"), p)
 	}
 	return line, err
 }
