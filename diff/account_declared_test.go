@@ -259,7 +259,7 @@ func TestDeclaredFaults(t *testing.T) {
 		{"a train", nil, asked(nil, declares("R1", "both", 1, 2, "any", `"T", "X"`)), []string{`requests/cr-1.toml:10:16: the declaration names train "X", which neither revision has`}},
 		{"a position outside", nil, asked(nil, declares("R1", "both", 1, 12, "any", "")), []string{`requests/cr-1.toml:8:9: the declaration on route "R1": to_km 12.000 is outside the route, which runs from 0.000 to 10.000`}},
 		{"the wrong way round, as only the track can tell", repeated, asked(nil, strings.Replace(declares("R1", "both", 1, 6, "any", ""), "from_km = 1", `from_km = "4.75#2"`, 1), strings.NewReplacer("from_km = 1", `from_km = "4.75#2"`, "to_km = 6", `to_km = "4.9#1"`).Replace(declares("R1", "both", 1, 6, "any", ""))), []string{
-			`requests/cr-1.toml:14:9: the declaration on route "R1": to_km 4.900#1 does not lie after from_km 4.750#2 along the track`}},
+			`requests/cr-1.toml:14:9: the declaration on route "R1": to_km 4.900#1 does not lie after from_km 4.750#2 along the track in the nominal direction`}},
 		{"an ambiguous position", repeated, asked(nil, declares("R1", "both", 1, 4.75, "any", "")), []string{`requests/cr-1.toml:8:9: the declaration on route "R1": to_km 4.750 is ambiguous, posts repeat here: write 4.750#1 or 4.750#2`}},
 		{"several", nil, asked(nil, declares("R9", "both", 1, 2, "any", `"X"`), declares("R1", "both", 11, 12, "any", "")), []string{
 			`requests/cr-1.toml:5:9: the declaration names route "R9", which neither revision has`, `requests/cr-1.toml:10:11: the declaration names train "X", which neither revision has`,

@@ -169,7 +169,7 @@ func span(t *chainage.Track, x *schema.Declaration) (*align.Interval, *source.Fa
 		at[i] = d
 	}
 	if at[0] >= at[1] {
-		return nil, &source.Fault{Position: x.Places.To, Problem: "to_km " + s.To.String() + " does not lie after from_km " + s.From.String() + " along the track"}
+		return nil, &source.Fault{Position: x.Places.To, Problem: "to_km " + s.To.String() + " does not lie after from_km " + s.From.String() + " along the track in the nominal direction"}
 	}
 	return &align.Interval{From: at[0], To: at[1]}, nil
 }

@@ -52,6 +52,21 @@ func TestDeclaredAcrossTracks(t *testing.T) {
 	}, declaredOf)
 }
 
+// Behind a jump back the posts are lower, and where none repeats nothing that is
+// written shows it: a stretch over it ends at a lower post than it begins at.
+func TestDeclaredOverJumpBack(t *testing.T) {
+	side := func(speed int) texts {
+		return texts{
+			"route.toml": "id = \"R1\"\nname = \"One\"\nstart_km = 5\nend_km = 4\ndirections = [\"nominal\"]\n[[jump]]\narriving_km = 8\nleaving_km = 1\n",
+			"speed.csv":  fmt.Sprintf("from_km,to_km,basic,train_length_delay\n5,6,80,no\n6,3,%d,no\n3,4,80,no\n", speed),
+		}
+	}
+	runAccounts(t, []accountTest{
+		{"over a jump back", side(80), asked(side(90), declares("R1", "both", 6, 2, "any", "")), []string{
+			"nominal 6.000-3.000 T 80>90: 6.000-2.000 CR-1/0, 2.000-3.000 outside", "CR-1/0 sees T 3000"}},
+	}, declaredOf)
+}
+
 // The rows that held a raise back are the base's: they reach as far as they did there,
 // wherever the target's track leaves their ends, and each of them has to end in a
 // declaration (rules.md, Declared against observed; DEVELOPERS.md, Decisions).

@@ -359,13 +359,11 @@ func (r *reader) span(t table.Reader, point bool) Span {
 }
 
 // writtenOrder compares two positions by what is written: 1 where the first cannot
-// lie before the second. With posts that repeat only the track can tell.
+// lie before the second on any track. Of different posts only the track can tell: behind
+// a jump back they are lower, also where none repeats.
 func writtenOrder(a, b chainage.Point) int {
 	if a.Chainage == b.Chainage {
 		return cmp.Compare(max(a.Occurrence, 1), max(b.Occurrence, 1)) // bare is the first
-	}
-	if a.Occurrence == 0 && b.Occurrence == 0 {
-		return cmp.Compare(a.Chainage, b.Chainage)
 	}
 	return -1
 }
