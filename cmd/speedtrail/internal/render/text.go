@@ -336,7 +336,9 @@ func (p *textWriter) trains() {
 	for i, x := range p.c.Trains {
 		name := names[i]
 		if routes[x.ID] == "" {
-			t.AppendRow(table.Row{name, unchangedWords(p.c, x), "", "", "", "", ""})
+			// In the column of a number: no wider than its title.
+			words := strings.Join(Wrap(unchangedWords(p.c, x), len("raised km")), "\n")
+			t.AppendRow(table.Row{name, words, "", "", "", "", ""})
 			continue
 		}
 		t.AppendRow(table.Row{name, raised[i], lowered[i], stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(routes[x.ID])})

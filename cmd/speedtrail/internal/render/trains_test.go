@@ -1,0 +1,31 @@
+package render
+
+import (
+	"strings"
+	"testing"
+
+	"speedtrail/history/assessment"
+)
+
+// The table of the trains fits the terminal, also where a train has no change of speed
+// and another one of its running time alone.
+func TestTrainsFit(t *testing.T) {
+	d := pageDocument("R1")
+	c := &d.Computed
+	c.Trains[0].ID = "EXPRESS"
+	c.Trains = append(c.Trains, assessment.Train{ID: "ORE-TRAIN-9", Fate: "added", After: &assessment.Definition{}}, assessment.Train{ID: "T", Fate: "kept", After: &assessment.Definition{}})
+	c.Figures.Runs = []assessment.RunFigure{{Route: "R1", Direction: "nominal", Train: "T", Before: 4001, After: 4073}}
+	var b strings.Builder
+	p := &textWriter{w: &b, d: d, c: c, s: Style{Width: 80}}
+	p.trains()
+	for line := range strings.Lines(b.String()) {
+		if n := Cells(strings.TrimRight(line, "\n")); n > 80 {
+			t.Errorf("%d columns: %s", n, line)
+		}
+	}
+	for _, words := range []string{"no change\n", " of speed\n", "running time\n", "only: R1\n"} {
+		if !strings.Contains(b.String(), words) {
+			t.Errorf("%q is missing:\n%s", words, b.String())
+		}
+	}
+}
