@@ -32,7 +32,7 @@ func TestLongerTrack(t *testing.T) {
 	// 5 km at 100 km/h, stop to stop: 180 s and 55.556 s; 1 km more takes 36 s, in
 	// each direction.
 	for format, want := range map[string][]string{
-		"text":     {"Running time by the track alone: up to +36.0 s (T).", "T +72.0 running time only: R1", "U no change of speed", "R1 nominal T 3:55.6 4:31.6 +36.0", "R1 reverse T 3:55.6 4:31.6 +36.0"},
+		"text":     {"on the only route of the target, where both revisions have the track.", "Running time where the track differs: up to +36.0 s (T).", "T +72.0 running time only: R1", "U no change of speed", "R1 nominal T 3:55.6 4:31.6 +36.0", "R1 reverse T 3:55.6 4:31.6 +36.0"},
 		"markdown": {"| T | | | | | +72.0 | running time only: R1 |", "| U | | | | | | no change of speed |", "| R1 | reverse | T | 3:55.6 | 4:31.6 | +36.0 |"},
 		"html":     {`<td>&#43;72.0</td><td class="text">running time only: R1</td>`, `<td colspan="6" class="text none">no change of speed</td>`},
 		"json":     {`"after_ds": 2716, "before_ds": 2356, "direction": "reverse"`},

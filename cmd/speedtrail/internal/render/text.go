@@ -336,9 +336,13 @@ func (p *textWriter) trains() {
 	for i, x := range p.c.Trains {
 		name := names[i]
 		if routes[x.ID] == "" {
-			// In the column of a number: no wider than its title.
-			words := strings.Join(Wrap(unchangedWords(p.c, x), len("raised km")), "\n")
-			t.AppendRow(table.Row{name, words, "", "", "", "", ""})
+			// In the column of a number if it is no wider than that, else in the last one,
+			// which may wrap.
+			row := table.Row{name, "", "", "", "", "", unchangedWords(p.c, x)}
+			if words := unchangedWords(p.c, x); len(words) <= len("raised km") {
+				row[1], row[6] = words, ""
+			}
+			t.AppendRow(row)
 			continue
 		}
 		t.AppendRow(table.Row{name, raised[i], lowered[i], stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(routes[x.ID])})

@@ -23,7 +23,7 @@ func TestTrainsFit(t *testing.T) {
 			t.Errorf("%d columns: %s", n, line)
 		}
 	}
-	for _, words := range []string{"no change\n", " of speed\n", "running time\n", "only: R1\n"} {
+	for _, words := range []string{"(added)", "  no change of\n", "  speed\n", "running time\n", "only: R1\n"} {
 		if !strings.Contains(b.String(), words) {
 			t.Errorf("%q is missing:\n%s", words, b.String())
 		}

@@ -33,7 +33,11 @@ func Verdict(d *assessment.Document) string {
 		if targetRoutes(c) == 1 {
 			where = "the only route"
 		}
-		parts = append(parts, fmt.Sprintf("%s anywhere on %s of the target.", who, where))
+		common := ""
+		if slices.ContainsFunc(c.Routes, func(r assessment.Route) bool { return len(r.Track) > 0 }) {
+			common = ", where both revisions have the track" // other track has nothing to compare its speeds with
+		}
+		parts = append(parts, fmt.Sprintf("%s anywhere on %s of the target%s.", who, where, common))
 	} else {
 		routes := 0
 		for _, r := range c.Routes {
@@ -151,7 +155,7 @@ func trackSentence(c *assessment.Computed) string {
 }
 
 // timeSentence says by how much running times differ on routes where the train sees
-// no change of speed: the track alone takes it longer or less long.
+// no change of speed: by the track that only one revision has, and its speeds.
 func timeSentence(c *assessment.Computed) string {
 	var most [2]int64 // longer, less long
 	var trains [2][]int
@@ -177,7 +181,7 @@ func timeSentence(c *assessment.Computed) string {
 	if parts == nil {
 		return ""
 	}
-	return "Running time by the track alone: " + strings.Join(parts, ", ") + "."
+	return "Running time where the track differs: " + strings.Join(parts, ", ") + "."
 }
 
 func trainSentence(c *assessment.Computed) string {
