@@ -89,6 +89,11 @@ func TestRevokedKeyIsSaid(t *testing.T) {
 	if got := call(t, in("report", "1")...); !strings.Contains(got.out, "\napproved; ! signed with a key that was revoked later\n") {
 		t.Errorf("not beside the state: %s", got.out)
 	}
+	for _, format := range []string{"text", "markdown"} {
+		if got := call(t, in("report", "1", "--format", format)...); !strings.Contains(oneLine(got.out[:200]), "(assessment 1, approved; ! signed with a key that was revoked later)") {
+			t.Errorf("%s, not in the title: %s", format, got.out)
+		}
+	}
 	if got := call(t, in("register")...); !strings.Contains(got.out, "1  ") || !strings.Contains(got.out, "  approved\n") {
 		t.Errorf("the state is another one: %s", got.out)
 	}

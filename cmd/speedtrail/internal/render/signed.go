@@ -49,10 +49,16 @@ func stateWords(r Record) string {
 	if r.Superseded != 0 {
 		s += fmt.Sprintf("; superseded by assessment %d", r.Superseded)
 	}
+	return s + revokedWords(r)
+}
+
+// revokedWords follows the state where a signature behind it is by a key that was
+// revoked later: whoever reads the state only has to learn of it.
+func revokedWords(r Record) string {
 	if slices.ContainsFunc(r.SignOffs, func(x SignOff) bool { return x.Revoked != nil }) {
-		s += "; ! signed with a key that was revoked later"
+		return "; ! signed with a key that was revoked later"
 	}
-	return s
+	return ""
 }
 
 // signedWords words a decision.

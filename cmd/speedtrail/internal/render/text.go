@@ -85,7 +85,7 @@ func (p *textWriter) heading(s string, names ...string) {
 func (p *textWriter) title() {
 	state := "not recorded"
 	if p.r.Number != 0 {
-		state = fmt.Sprintf("assessment %d, %s", p.r.Number, p.r.State)
+		state = fmt.Sprintf("assessment %d, %s%s", p.r.Number, p.r.State, revokedWords(p.r))
 	}
 	p.paragraph("", fmt.Sprintf("Change of route speed data: %s (%s)", titled(p.c.Dataset), state))
 	side := func(word, typed, name string, r assessment.Revision) {
