@@ -6,12 +6,9 @@ import (
 	"errors"
 	"fmt"
 	"maps"
-	"runtime"
 	"slices"
 	"strings"
 	"sync"
-
-	"golang.org/x/sync/errgroup"
 
 	"speedtrail/history/approval"
 	"speedtrail/history/assessment"
@@ -319,143 +316,6 @@ func (v *verifier) heads() error {
 		}
 	}
 	return nil
-}
-
-// git computes the assessments anew and looks at what statements say about
-// commits, several at a time.
-func (v *verifier) git() error {
-	if v.o.Checker == nil {
-		v.r.Unproved = append(v.r.Unproved, "that the assessments are what Git holds: they were not computed anew")
-		return nil
-	}
-	work, ctx := errgroup.WithContext(v.ctx)
-	work.SetLimit(runtime.GOMAXPROCS(0))
-	done, other, failed := 0, 0, 0
-	for _, d := range v.docs {
-		work.Go(func() error {
-			digest, err := v.o.Checker.Recompute(ctx, d.doc)
-			var lacks *LackingError
-			if ctx.Err() != nil {
-				return ctx.Err()
-			}
-			switch {
-			case errors.Is(err, ErrOtherRules):
-				v.problem(d.entry, "recompute", "not proved: the assessment was made by version %d of the rules; assess again", d.doc.Computed.RulesVersion)
-				v.lock.Lock()
-				other++
-				v.lock.Unlock()
-			case errors.As(err, &lacks) && v.restsOn(d) == "":
-				v.lock.Lock()
-				v.lacking = append(v.lacking, lacking{d.number, lacks})
-				failed++
-				v.lock.Unlock()
-			case errors.As(err, &lacks):
-				v.problem(d.entry, "git", "the assessment cannot be computed anew, and %s: %s", v.restsOn(d), oneLine(err))
-				v.lock.Lock()
-				failed++
-				v.lock.Unlock()
-			case err != nil:
-				v.problem(d.entry, "git", "the assessment cannot be computed anew: %s", oneLine(err))
-				v.lock.Lock()
-				failed++
-				v.lock.Unlock()
-			case digest != d.digest:
-				v.problem(d.entry, "recompute", "computed anew the assessment has the digest %s, recorded is %s", digest, d.digest)
-				v.lock.Lock()
-				failed++
-				v.lock.Unlock()
-			}
-			v.lock.Lock()
-			defer v.lock.Unlock()
-			done++
-			if v.o.Progress != nil {
-				v.o.Progress(done, len(v.docs))
-			}
-			return nil
-		})
-	}
-	if err := work.Wait(); err != nil {
-		return err
-	}
-	v.r.Proved = append(v.r.Proved, fmt.Sprintf("%d of %d assessments were computed anew from Git", len(v.docs)-other-failed, len(v.docs)))
-	v.leftOut()
-	return v.statements()
-}
-
-// restsOn says what rests on an assessment; empty where nothing does. Nobody who adds
-// an assessment that no clone can check gets more than a line in the register, but for a
-// signature under it: that has to be proved.
-func (v *verifier) restsOn(d recorded) string {
-	for _, r := range v.r.Line.SignOffs() {
-		if r.Assessment == d.number {
-			return fmt.Sprintf("it is signed, in entry %d", r.Entry.Seq)
-		}
-	}
-	for _, r := range v.r.Line.InForce() {
-		if r.Revision == d.doc.Computed.Target.Commit {
-			return fmt.Sprintf("its target went into service, entry %d", r.Entry.Seq)
-		}
-	}
-	return ""
-}
-
-// mostLacking is how many assessments are named of those that lack a commit.
-const mostLacking = 5
-
-// leftOut says which assessments were not computed anew.
-func (v *verifier) leftOut() {
-	if len(v.lacking) == 0 {
-		return
-	}
-	slices.SortFunc(v.lacking, func(a, b lacking) int { return cmp.Compare(a.number, b.number) })
-	var names, todo []string
-	for i, x := range v.lacking {
-		if i == mostLacking {
-			names = append(names, fmt.Sprintf("and %d more", len(v.lacking)-i))
-			break
-		}
-		names = append(names, fmt.Sprintf("assessment %d, commit %s", x.number, x.err.Commit))
-		if x.err.Todo != "" && !slices.Contains(todo, x.err.Todo) {
-			todo = append(todo, x.err.Todo)
-		}
-	}
-	text := fmt.Sprintf("%d assessments that nobody has signed: they could not be computed anew, because this repository lacks a commit (%s)", len(v.lacking), strings.Join(names, "; "))
-	if len(v.lacking) == 1 {
-		text = fmt.Sprintf("1 assessment that nobody has signed: it could not be computed anew, because this repository lacks a commit (%s)", names[0])
-	}
-	v.r.Unproved = append(v.r.Unproved, strings.Join(append([]string{text}, todo...), "; "))
-}
-
-// oneLine writes an error, and what it says to do, in one line.
-func oneLine(err error) string {
-	text := strings.ReplaceAll(err.Error(), "\n", "; ")
-	var h interface{ Hint() string }
-	if errors.As(err, &h) && h.Hint() != "" {
-		text += "; hint: " + strings.ReplaceAll(h.Hint(), "\n", "; ")
-	}
-	return text
-}
-
-// statements looks at the commits that anchors and in-force records name.
-func (v *verifier) statements() error {
-	check := func(entry int64, revision, folder, content string, policy *approval.Policy) {
-		tree, signoff, signers, err := v.o.Checker.Content(v.ctx, revision, folder)
-		switch {
-		case err != nil:
-			v.problem(entry, "git", "the commit %s that it names cannot be read: %s", revision, oneLine(err))
-		case tree != content:
-			v.problem(entry, "git", "the folder %s of commit %s has the content %s, the statement says %s", folder, revision, tree, content)
-		case policy != nil && (policy.SignOff != signoff || policy.AllowedSigners != signers):
-			v.problem(entry, "git", "the policy of commit %s is not the one that the anchor holds", revision)
-		}
-	}
-	for folder, a := range v.r.Line.Anchors() {
-		check(a.Entry.Seq, a.Revision, folder, a.Content, &a.Policy)
-	}
-	for _, r := range v.r.Line.InForce() {
-		check(r.Entry.Seq, r.Revision, r.Folder, r.Content, nil)
-	}
-	return v.ctx.Err()
 }
 
 // mostBackwards is how many places are named at which the times of entries go back.
