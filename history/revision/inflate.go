@@ -93,10 +93,12 @@ func inflateAll(f io.ReaderAt, offset, size int64) ([]byte, error) {
 	return readExactly(in, size)
 }
 
-// readExactly reads to the end, which must come after size bytes. A recorded
-// size is not believed before as many bytes have arrived.
+// believed is how many bytes a recorded size is believed at once; more, when as many
+// have arrived.
+const believed = 1 << 20
+
+// readExactly reads to the end, which must come after size bytes.
 func readExactly(r io.Reader, size int64) ([]byte, error) {
-	const believed = 1 << 20
 	if size < 0 {
 		return nil, errLength
 	}

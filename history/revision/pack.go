@@ -10,7 +10,6 @@ import (
 	"sync"
 
 	"github.com/go-git/go-git/v5/plumbing"
-	"github.com/go-git/go-git/v5/plumbing/format/packfile"
 )
 
 const (
@@ -286,7 +285,7 @@ func (p *pack) readAtMost(f io.ReaderAt, offset, limit int64, cache *baseCache, 
 			return 0, nil, fmt.Errorf("object of more than %d bytes is not put together", maxRebuilt)
 		}
 		var err error
-		if data, err = packfile.PatchDelta(data, steps[i].delta); err != nil {
+		if data, err = applyDelta(data, steps[i].delta); err != nil {
 			return 0, nil, err
 		}
 		cache.put(baseKey{p, steps[i].offset}, baseItem{kind, data})
