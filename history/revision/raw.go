@@ -59,7 +59,10 @@ type TreeEntry struct {
 type TreeChange struct{ Old, Now TreeEntry }
 
 // Tree is a tree as it is stored. The zero Tree has no lines.
-type Tree struct{ data []byte }
+type Tree struct {
+	data  []byte
+	marks [][]byte // of its hash, see sumTree
+}
 
 // Tree reads a tree, and lists what it has otherwise than another one, in the
 // order of trees. Only what differs is looked at: the other tree was read so, too.
@@ -68,7 +71,7 @@ func (r *Repo) Tree(tree [20]byte, before Tree, what string) (Tree, []TreeChange
 	var t Tree
 	if tree != plumbing.ZeroHash && tree != emptyTree {
 		var err error
-		if t.data, err = r.read(tree, plumbing.TreeObject, maxTree, what); err != nil {
+		if t, err = r.treeAfter(tree, before, what); err != nil {
 			return Tree{}, nil, err
 		}
 	}

@@ -66,8 +66,8 @@ func TestTreeChanges(t *testing.T) {
 				slices.SortFunc(now, func(a, b treeEntry) int { return strings.Compare(sortKey(a), sortKey(b)) })
 			}
 		}
-		before, data := Tree{storedTree(old)}, storedTree(now)
-		list, err := Tree{data}.changes(before)
+		before, data := Tree{data: storedTree(old)}, storedTree(now)
+		list, err := Tree{data: data}.changes(before)
 		if err != nil {
 			t.Fatalf("%v: %q to %q", err, before.data, data)
 		}
@@ -119,7 +119,7 @@ func TestTreeChanges(t *testing.T) {
 			bad = storedTree(now)
 		}
 		_, wantErr := parseTree(bad)
-		_, gotErr := Tree{bad}.changes(before)
+		_, gotErr := Tree{data: bad}.changes(before)
 		if (gotErr == nil) != (wantErr == nil) {
 			t.Fatalf("%q after %q: %v, parseTree says %v", bad, before.data, gotErr, wantErr)
 		}
