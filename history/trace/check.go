@@ -62,8 +62,8 @@ type requestInfo struct{ id, fault string }
 // time, which knows what it read last. There are more of them than processors, so
 // that all have something to do until the last one is done.
 const (
-	shares   = 16
-	keptRows = 16_000 // of each share
+	shares   = 64
+	keptRows = 4_000 // of each share
 )
 
 func newChecker(repo *revision.Repo, prior Prior, each func(*Loaded)) *checker {
@@ -261,6 +261,9 @@ func (k *checker) load(ctx context.Context, wants []want) error {
 			continue
 		}
 		work.Go(func() error {
+			// The versions of a folder one after the other: each is stored as a
+			// difference to the next, and mostly has the rows of the one before.
+			slices.SortStableFunc(part, func(a, b *Loaded) int { return strings.Compare(a.Folder, b.Folder) })
 			for _, v := range part {
 				if err := ctx.Err(); err != nil {
 					return err
