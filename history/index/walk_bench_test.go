@@ -168,10 +168,10 @@ func readAll(repo *revision.Repo) (files, size int, err error) {
 	}
 	r := &everything{repo: repo, seen: map[string]bool{}}
 	var work errgroup.Group
-	share := len(trees)/runtime.GOMAXPROCS(0) + 1
+	work.SetLimit(runtime.GOMAXPROCS(0))
+	share := len(trees)/(4*runtime.GOMAXPROCS(0)) + 1
 	for from := 0; from < len(trees); from += share {
-		// Each processor takes a row of commits, and the one before it.
-		work.Go(func() error { return r.row(trees[from:min(from+share+1, len(trees))]) })
+		work.Go(func() error { return r.row(trees, from, min(from+share, len(trees))) })
 	}
 	err = work.Wait()
 	return r.files, r.size, err
@@ -186,9 +186,9 @@ type everything struct {
 
 // row reads what each of some commits has otherwise than the one after it in the
 // list; the last of all commits has everything.
-func (r *everything) row(trees [][20]byte) error {
+func (r *everything) row(trees [][20]byte, from, to int) error {
 	var before revision.Tree
-	for i := len(trees) - 1; i >= 0; i-- {
+	for i := min(to, len(trees)-1); i >= from; i-- {
 		root, _, err := r.repo.Tree(trees[i], revision.Tree{}, "a commit")
 		if err != nil {
 			return err
@@ -199,6 +199,9 @@ func (r *everything) row(trees [][20]byte) error {
 			return err
 		}
 		before = now
+		if i == to {
+			continue // another row's
+		}
 		for _, c := range changes {
 			if c.Now.Name != "" {
 				if err := r.route(c.Now.Hash); err != nil {
