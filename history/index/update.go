@@ -48,12 +48,9 @@ func (x *Index) Update(ctx context.Context, reader *trace.Reader, name string, t
 	return classify(errors.Join(err, b.finish(ctx)))
 }
 
-// A transaction ends with the batch in which it has added so many commits, or has
-// lasted so long: another process that adds has to wait for its end.
-const (
-	mostCommits = 4096
-	longest     = time.Second
-)
+// longest is how long a transaction lasts, and the batch in which that ends: another
+// process that adds has to wait for its end.
+const longest = time.Second
 
 // builder adds batches. It is the trace.Prior of its reading, which asks while a
 // batch is added.
@@ -154,9 +151,9 @@ func (b *builder) Version(key trace.Key) (*trace.Loaded, error) {
 	return v, nil
 }
 
-// add adds a batch. A transaction takes as many commits as there are already:
-// each writes most pages of the index again, as versions come in the order of
-// hashes.
+// add adds a batch. Each transaction writes most pages of the index again, as versions
+// come in the order of hashes, so that it takes as many batches as it has time for. The first batch of a new index
+// is there at once.
 func (b *builder) add(ctx context.Context, batch *trace.Batch) error {
 	if !b.open {
 		if err := b.start(ctx); err != nil {
@@ -168,7 +165,7 @@ func (b *builder) add(ctx context.Context, batch *trace.Batch) error {
 		b.rollback(ctx)
 		return err
 	}
-	if added := len(b.g.commits) - b.first; added < min(b.first, mostCommits) && time.Since(b.begun) < longest {
+	if b.first > 0 && time.Since(b.begun) < longest {
 		return nil
 	}
 	return b.finish(ctx)
