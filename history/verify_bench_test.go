@@ -55,7 +55,7 @@ func BenchmarkVerify(b *testing.B) {
 	}
 	for name, args := range map[string][]string{"ledger": {"--repo", dir, "verify", "--ledger-only"}, "recompute": {"--repo", dir, "verify"}} {
 		b.Run(fmt.Sprintf("%s-%d", name, *assessments), func(b *testing.B) {
-			least, cpu, read, check := time.Hour, time.Hour, time.Hour, time.Hour
+			least, cpu, read, check, dump := time.Hour, time.Hour, time.Hour, time.Hour, time.Hour
 			for b.Loop() {
 				c := exec.Command(program, args...)
 				begun := time.Now()
@@ -74,6 +74,11 @@ func BenchmarkVerify(b *testing.B) {
 						b.Fatalf("%v: %s", err, out)
 					}
 					check = min(check, time.Since(begun))
+					begun = time.Now()
+					if err := exec.Command("sqlite3", "-readonly", file, ".dump").Run(); err != nil {
+						b.Fatal(err)
+					}
+					dump = min(dump, time.Since(begun))
 				}
 			}
 			b.ReportMetric(float64(least), "ns/op")
@@ -81,6 +86,7 @@ func BenchmarkVerify(b *testing.B) {
 			b.ReportMetric(float64(info.Size())/1e6, "MB-file")
 			b.ReportMetric(least.Seconds()/read.Seconds(), "x-read")
 			b.ReportMetric(least.Seconds()/check.Seconds(), "x-check")
+			b.ReportMetric(least.Seconds()/dump.Seconds(), "x-dump")
 			b.ReportMetric(cpu.Seconds()/least.Seconds(), "cores")
 		})
 	}
