@@ -19,6 +19,7 @@ import (
 	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/source"
+	"speedtrail/schema/table"
 	"speedtrail/schema/unit"
 )
 
@@ -43,6 +44,12 @@ func FuzzAllowedSigners(f *testing.F) {
 		if !utf8.Valid(content) {
 			if r.faults.Count() == 0 || len(p.Keys) > 0 {
 				t.Fatalf("%d keys of a file that is not UTF-8, %d faults", len(p.Keys), r.faults.Count())
+			}
+			return
+		}
+		if _, merge := table.MergeMarker(content); merge {
+			if r.faults.Count() != 1 || len(p.Keys) > 0 {
+				t.Fatalf("%d keys of a file that holds two, %d faults", len(p.Keys), r.faults.Count())
 			}
 			return
 		}
