@@ -51,3 +51,14 @@ func TestGroundIsTakenAwayAndGivenAgain(t *testing.T) {
 		}
 	}
 }
+
+// Who records what is in service decides on no assessment: neither an approval nor a
+// rejection is taken in that role.
+func TestInServiceDecidesNothing(t *testing.T) {
+	s := anchored(t, ordinary())
+	n := s.assess("a", "b", ordinary(), ordinary(), nil)
+	for _, decision := range []string{"approve", "reject"} {
+		s.refused(s.signOff(n, "cem", InServiceRole, decision), "the role in-service records what is in force and approves nothing")
+	}
+	s.state(n, Open)
+}

@@ -117,3 +117,17 @@ func TestRejectedRotation(t *testing.T) {
 	s.must(s.signOff(turn, "fin", "checker", "approve"))
 	s.must(s.signOff(s.assess("b", "d", ordinary().without("ada").key("ada2"), ordinary().without("ada").key("ada2"), nil), "ada2", "checker", "approve"))
 }
+
+// What led to a release that took a key out was decided on before, and may be so again
+// with that key after the release was rejected.
+func TestRejectedReleaseLeavesItsWayAlone(t *testing.T) {
+	s := anchored(t, ordinary())
+	first := s.assess("a", "b", ordinary(), ordinary(), nil)
+	s.approve(first)
+	out := s.assess("b", "c", ordinary(), ordinary().without("eva"), nil)
+	s.approve(out)
+	s.refused(s.signOff(first, "eva", "checker", "approve"), "by the newest approved policy")
+	s.must(s.signOff(out, "fin", "checker", "reject"))
+	s.must(s.signOff(first, "eva", "checker", "approve"))
+	s.refused(s.signOff(s.assess("a", "d", ordinary(), ordinary(), nil), "eva", "checker", "approve"), "by "+whoseRejected)
+}
