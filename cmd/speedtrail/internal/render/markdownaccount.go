@@ -51,29 +51,32 @@ func (m *markdown) figures() {
 	if len(f.Crossings)+len(f.Curves)+len(f.Short)+len(f.Runs) > 0 {
 		m.add("\n## Figures\n")
 	}
-	list := func(title string, lines []string) {
+	list := func(title string, lines []string, more int, what string) {
 		if len(lines) > 0 {
 			m.add("\n%s\n\n", md(title))
 		}
 		for _, line := range lines {
 			m.add("- %s\n", md(line))
 		}
+		if more > 0 {
+			m.add("- %d more %s stand in the JSON form\n", more, what)
+		}
 	}
 	var crossings, curves, short []string
 	for _, x := range f.Crossings {
 		crossings = append(crossings, x.Route+" "+x.Direction+", km "+minus(x.Km)+" "+x.Name+": "+crossingLine(x))
 	}
-	shownCurves, _ := bounded(curvesOfInterest(f.Curves))
+	shownCurves, moreCurves := bounded(curvesOfInterest(f.Curves))
 	for _, x := range shownCurves {
 		curves = append(curves, x.Route+" "+directionWords(x.Direction)+", km "+minus(x.From)+" to "+minus(x.To)+" ("+trainNames(c, x.Trains, 0)+"): "+curveLine(x))
 	}
-	shownShort, _ := bounded(f.Short)
+	shownShort, moreShort := bounded(f.Short)
 	for _, x := range shownShort {
 		short = append(short, x.Route+" "+x.Direction+", km "+minus(x.From)+" to "+minus(x.To)+", "+x.Train+": "+shortLine(x))
 	}
-	list(crossingWords, crossings)
-	list(curveWords, curves)
-	list("Raises too short to be used.", short)
+	list(crossingWords, crossings, 0, "")
+	list(curveWords, curves, moreCurves, "curves")
+	list("Raises too short to be used.", short, moreShort, "raises")
 	if len(f.Runs) > 0 {
 		m.add("\n%s\n\n| route | direction | train | before, min:s | after, min:s | difference, s |\n|---|---|---|--:|--:|--:|\n", md(motionWords(c)))
 		runs, more := bounded(f.Runs)
