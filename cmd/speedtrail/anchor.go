@@ -158,8 +158,8 @@ func (a *app) rootAt(ctx context.Context, rev string) (*root, error) {
 	if err != nil {
 		return nil, err
 	}
-	if _, err := schema.Load(ctx, s.files); err != nil {
-		return nil, &sideError{s.label(), err}
+	if _, err := s.load(ctx); err != nil {
+		return nil, err
 	}
 	r := &root{rev: rev, label: s.label(), commit: s.commit.Hash, folder: folder}
 	r.tree, r.signOff, r.allowedSigners, err = contentAt(repo, r.commit, folder)

@@ -12,7 +12,6 @@ import (
 	"speedtrail/history/approval"
 	"speedtrail/history/chain"
 	"speedtrail/history/signoff"
-	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
 
@@ -228,9 +227,9 @@ func (a *app) entering(ctx context.Context, folder string, x servicing, brought 
 	if err != nil {
 		return st, err
 	}
-	data, err := schema.Load(ctx, at.files)
+	data, err := at.load(ctx)
 	if err != nil {
-		return st, &sideError{at.label(), err}
+		return st, err
 	}
 	for _, id := range x.routes {
 		if routeByID(data, id) == nil {
