@@ -174,6 +174,8 @@ func TestDeclared(t *testing.T) {
 			"nominal 4.000-5.000 T 80>85: 4.000-5.000 CR-1/0", "nominal 5.000-6.000 T 80>90: 5.000-6.000 CR-1/0", "masked nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "CR-1/0 sees T 2000"}},
 		{"added track needs any effect", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "both", 0, 10, "raise", ""), declares("R1", "reverse", 2, 6, "any", "")), []string{
 			"added reverse: 0.000-2.000 outside, 2.000-6.000 CR-1/1, 6.000-10.000 outside", "CR-1/0 sees nothing", "CR-1/1 sees track 4000"}},
+		{"a reduction is none of track", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "both", 0, 10, "lower", "")), []string{
+			"added reverse: outside", "CR-1/0 sees nothing"}},
 		{"any effect for one train is not for the track", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "reverse", 2, 6, "any", `"T"`)), []string{
 			"added reverse: outside", "CR-1/0 sees nothing"}},
 		{"an end that only the base has", over(flat, texts{"route.toml": oneWay}), asked(over(raise, texts{"route.toml": strings.Replace(oneWay, "end_km = 10", "end_km = 5", 1), "speed.csv": "from_km,to_km,basic,train_length_delay\n0,4,100,no\n4,5,90,no\n"}), declares("R1", "both", 4, 10, "any", "")), []string{

@@ -3,14 +3,12 @@ package diff
 import (
 	"cmp"
 	"context"
-	"runtime"
 	"slices"
 	"strings"
 	"sync"
 
-	"golang.org/x/sync/errgroup"
-
 	"speedtrail/schema"
+	"speedtrail/schema/parallel"
 	"speedtrail/schema/source"
 )
 
@@ -75,30 +73,20 @@ func Compare(ctx context.Context, base, target *schema.Dataset, o Options) (*Acc
 	return a, ctx.Err()
 }
 
-// compareRoutes compares the routes side by side, one a processor at a time.
-// Each fills in its own place, so that the result does not depend on which is
-// done first.
+// compareRoutes compares the routes, one a processor at a time.
 func (a *Account) compareRoutes(ctx context.Context, o *Options) error {
-	work, ctx := errgroup.WithContext(ctx)
-	work.SetLimit(runtime.GOMAXPROCS(0))
 	var lock sync.Mutex
 	done := 0
-	for i := range a.Routes {
-		work.Go(func() error {
-			if err := ctx.Err(); err != nil {
-				return err
-			}
-			compareRoute(&a.Routes[i], a.Trains, o)
-			if o.Progress != nil {
-				lock.Lock()
-				defer lock.Unlock()
-				done++
-				o.Progress(done, len(a.Routes))
-			}
-			return nil
-		})
-	}
-	return work.Wait()
+	return parallel.Try(ctx, len(a.Routes), func(_ context.Context, i int) error {
+		compareRoute(&a.Routes[i], a.Trains, o)
+		if o.Progress != nil {
+			lock.Lock()
+			defer lock.Unlock()
+			done++
+			o.Progress(done, len(a.Routes))
+		}
+		return nil
+	})
 }
 
 // pairTrains joins the trains of both revisions: the target's definition, and

@@ -11,6 +11,7 @@ import (
 	"speedtrail/diff/step"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
+	"speedtrail/schema/parallel"
 	"speedtrail/schema/unit"
 )
 
@@ -49,7 +50,7 @@ type Step struct {
 // StretchLimit of them by size of the largest step.
 func (a *Account) describeStretches() {
 	perRoute := make([][]Stretch, len(a.Routes))
-	sideBySide(len(a.Routes), func(i int) { perRoute[i] = a.Routes[i].clusters(i, len(a.Trains)) })
+	parallel.Each(len(a.Routes), func(i int) { perRoute[i] = a.Routes[i].clusters(i, len(a.Trains)) })
 	all := slices.Concat(perRoute...)
 	if len(all) > StretchLimit {
 		a.StretchesLeftOut = len(all) - StretchLimit
@@ -63,7 +64,7 @@ func (a *Account) describeStretches() {
 	}
 	starts = append(starts, len(all))
 	lists := make([][]Stretch, len(starts)-1)
-	sideBySide(len(lists), func(i int) { lists[i] = a.pictures(all[starts[i]:starts[i+1]]) })
+	parallel.Each(len(lists), func(i int) { lists[i] = a.pictures(all[starts[i]:starts[i+1]]) })
 	a.Stretches = slices.Concat(lists...)
 	for i := range a.Routes {
 		a.Routes[i].sources, a.Routes[i].pieces = sourceTable{}, nil // no longer needed

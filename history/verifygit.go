@@ -2,15 +2,14 @@ package history
 
 import (
 	"cmp"
+	"context"
 	"errors"
 	"fmt"
-	"runtime"
 	"slices"
 	"strings"
 
-	"golang.org/x/sync/errgroup"
-
 	"speedtrail/history/approval"
+	"speedtrail/schema/parallel"
 )
 
 // git computes the assessments anew and looks at what statements say about
@@ -20,58 +19,71 @@ func (v *verifier) git() error {
 		v.r.Unproved = append(v.r.Unproved, "that the assessments are what Git holds: they were not computed anew")
 		return nil
 	}
-	work, ctx := errgroup.WithContext(v.ctx)
-	work.SetLimit(runtime.GOMAXPROCS(0))
-	done, other, failed := 0, 0, 0
-	for _, d := range v.docs {
-		work.Go(func() error {
-			digest, err := v.o.Checker.Recompute(ctx, d.doc)
-			var lacks *LackingError
-			if ctx.Err() != nil {
-				return ctx.Err()
-			}
-			switch {
-			case errors.Is(err, ErrOtherRules):
-				v.problem(d.entry, "recompute", "not proved: the assessment was made by version %d of the rules; assess again", d.doc.Computed.RulesVersion)
-				v.lock.Lock()
-				other++
-				v.lock.Unlock()
-			case errors.As(err, &lacks) && v.restsOn(d) == "":
-				v.lock.Lock()
-				v.lacking = append(v.lacking, lacking{d.number, lacks})
-				failed++
-				v.lock.Unlock()
-			case errors.As(err, &lacks):
-				v.problem(d.entry, "git", "the assessment cannot be computed anew, and %s: %s", v.restsOn(d), oneLine(err))
-				v.lock.Lock()
-				failed++
-				v.lock.Unlock()
-			case err != nil:
-				v.problem(d.entry, "git", "the assessment cannot be computed anew: %s", oneLine(err))
-				v.lock.Lock()
-				failed++
-				v.lock.Unlock()
-			case digest != d.digest:
-				v.problem(d.entry, "recompute", "computed anew the assessment has the digest %s, recorded is %s", digest, d.digest)
-				v.lock.Lock()
-				failed++
-				v.lock.Unlock()
-			}
-			v.lock.Lock()
-			defer v.lock.Unlock()
-			done++
-			if v.o.Progress != nil {
-				v.o.Progress(done, len(v.docs))
-			}
-			return nil
-		})
-	}
-	if err := work.Wait(); err != nil {
+	var done, other, failed int
+	err := parallel.Try(v.ctx, len(v.docs), func(ctx context.Context, i int) error {
+		d := v.docs[i]
+		digest, err := v.o.Checker.Recompute(ctx, d.doc)
+		if ctx.Err() != nil {
+			return ctx.Err()
+		}
+		fate := v.recomputed(d, digest, err)
+		v.lock.Lock()
+		defer v.lock.Unlock()
+		switch fate {
+		case byOtherRules:
+			other++
+		case notProved:
+			failed++
+		}
+		done++
+		if v.o.Progress != nil {
+			v.o.Progress(done, len(v.docs))
+		}
+		return nil
+	})
+	if err != nil {
 		return err
 	}
 	v.r.Proved = append(v.r.Proved, fmt.Sprintf("%d of %d assessments were computed anew from Git", len(v.docs)-other-failed, len(v.docs)))
 	v.leftOut()
 	return v.statements()
+}
+
+// fate is what came of computing an assessment anew.
+type fate int
+
+const (
+	proved fate = iota
+	notProved
+	byOtherRules
+)
+
+// recomputed judges what computing an assessment anew gave.
+func (v *verifier) recomputed(d recorded, digest string, err error) fate {
+	var lacks *LackingError
+	switch absent := errors.As(err, &lacks); {
+	case errors.Is(err, ErrOtherRules):
+		v.problem(d.entry, "recompute", "not proved: the assessment was made by version %d of the rules; assess again", d.doc.Computed.RulesVersion)
+		return byOtherRules
+	case absent && v.restsOn(d) == "":
+		v.lacks(d, lacks)
+	case absent:
+		v.problem(d.entry, "git", "the assessment cannot be computed anew, and %s: %s", v.restsOn(d), oneLine(err))
+	case err != nil:
+		v.problem(d.entry, "git", "the assessment cannot be computed anew: %s", oneLine(err))
+	case digest != d.digest:
+		v.problem(d.entry, "recompute", "computed anew the assessment has the digest %s, recorded is %s", digest, d.digest)
+	default:
+		return proved
+	}
+	return notProved
+}
+
+// lacks notes an assessment that nothing rests on and that cannot be computed here.
+func (v *verifier) lacks(d recorded, err *LackingError) {
+	v.lock.Lock()
+	defer v.lock.Unlock()
+	v.lacking = append(v.lacking, lacking{d.number, err})
 }
 
 // restsOn says what rests on an assessment; empty where nothing does. Nobody who adds

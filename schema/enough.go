@@ -30,18 +30,36 @@ func (k *Key) Signs() bool {
 // that must be taken by different people. A key counts whatever its term: the file
 // does not know what time it is. Who prepares the changes to come is not known
 // either, so this is the least that a policy needs and no promise.
+//
+// What is wrong with one role, or with two, is said of them; only where nothing is,
+// all of them are looked at together.
 func (r *reader) checkEnough(p *Policy) {
 	if n := len(p.Roles); n > MaxRoles {
 		r.faults.Add(p.Roles[MaxRoles].Pos, "%d roles, at most %d are allowed", n, MaxRoles)
 		return
 	}
+	parts := partsOf(p)
+	before := r.faults.Count()
+	r.enoughForEach(p, parts)
+	if r.faults.Count() > before {
+		return
+	}
+	apart := apartIn(p)
+	r.enoughForPairs(p, apart, parts)
+	if r.faults.Count() > before {
+		return
+	}
+	r.enoughForAll(p, apart, parts)
+}
+
+// partsOf gives what each person with a key may take, a bit for each role.
+func partsOf(p *Policy) []uint32 {
 	keyed := map[string]int{}
 	for i := range p.Keys {
 		if _, ok := keyed[p.Keys[i].Principal]; !ok && p.Keys[i].Signs() {
 			keyed[p.Keys[i].Principal] = len(keyed)
 		}
 	}
-	// What each person with a key may take, a bit for each role.
 	parts := make([]uint32, len(keyed))
 	for i := range p.Roles {
 		if len(p.Roles[i].Signers) == 0 {
@@ -55,41 +73,54 @@ func (r *reader) checkEnough(p *Policy) {
 			}
 		}
 	}
-	able := func(roles uint32) (n int) {
-		for _, part := range parts {
-			if part&roles != 0 {
-				n++
+	return parts
+}
+
+// able counts the people who may take one of some roles.
+func able(parts []uint32, roles uint32) (n int) {
+	for _, part := range parts {
+		if part&roles != 0 {
+			n++
+		}
+	}
+	return n
+}
+
+// apartIn gives for each role those that others must take, a bit for each.
+func apartIn(p *Policy) []uint32 {
+	apart := make([]uint32, len(p.Roles))
+	for i := range p.Roles {
+		for j := range i {
+			if p.Independent(p.Roles[j].Name, p.Roles[i].Name) {
+				apart[i] |= 1 << j
+				apart[j] |= 1 << i
 			}
 		}
-		return n
 	}
-	before := r.faults.Count()
+	return apart
+}
+
+func (r *reader) enoughForEach(p *Policy, parts []uint32) {
 	for i := range p.Roles {
-		if role, n := &p.Roles[i], able(1<<i); n < role.Needed {
+		if role, n := &p.Roles[i], able(parts, 1<<i); n < role.Needed {
 			r.faults.Add(role.Places.Needed, "role %s needs %d people with a key in %s and has %d", source.Quote(role.Name), role.Needed, signersFile, n)
 		}
 	}
-	if r.faults.Count() > before {
-		return
-	}
-	apart := make([]uint32, len(p.Roles)) // for each role those that others must take
+}
+
+func (r *reader) enoughForPairs(p *Policy, apart, parts []uint32) {
 	for i := range p.Roles {
 		for j := range i {
 			a, b := &p.Roles[j], &p.Roles[i]
-			if !p.Independent(a.Name, b.Name) {
-				continue
-			}
-			apart[i] |= 1 << j
-			apart[j] |= 1 << i
-			if n := able(1<<i | 1<<j); n < a.Needed+b.Needed {
+			if n := able(parts, 1<<i|1<<j); apart[i]&(1<<j) != 0 && n < a.Needed+b.Needed {
 				r.faults.Add(b.Pos, "roles %s and %s need %d different people with a key in %s and have %d",
 					source.Quote(a.Name), source.Quote(b.Name), a.Needed+b.Needed, signersFile, n)
 			}
 		}
 	}
-	if r.faults.Count() > before {
-		return
-	}
+}
+
+func (r *reader) enoughForAll(p *Policy, apart, parts []uint32) {
 	s := newEnough(p.Roles, apart, parts)
 	if s.from(0) {
 		return

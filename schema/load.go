@@ -5,12 +5,10 @@ import (
 	"errors"
 	"io/fs"
 	"maps"
-	"runtime"
 	"slices"
 	"strings"
 
-	"golang.org/x/sync/errgroup"
-
+	"speedtrail/schema/parallel"
 	"speedtrail/schema/source"
 	"speedtrail/schema/table"
 )
@@ -229,19 +227,12 @@ func (l *loading) read(ctx context.Context, folders []Folder) error {
 	}
 	readers := make([]reader, len(folders))
 	routes := make([]*Route, len(folders))
-	work, ctx := errgroup.WithContext(ctx)
-	work.SetLimit(runtime.GOMAXPROCS(0))
-	for i, f := range folders {
-		work.Go(func() error {
-			if err := ctx.Err(); err != nil {
-				return err
-			}
-			readers[i].fsys, readers[i].zone = l.fsys, l.data.TimeZone
-			routes[i] = readers[i].route(f.Path)
-			return readers[i].err
-		})
-	}
-	if err := errors.Join(frame.err, work.Wait()); err != nil {
+	err := parallel.Try(ctx, len(folders), func(_ context.Context, i int) error {
+		readers[i].fsys, readers[i].zone = l.fsys, l.data.TimeZone
+		routes[i] = readers[i].route(folders[i].Path)
+		return readers[i].err
+	})
+	if err := errors.Join(frame.err, err); err != nil {
 		return err
 	}
 	l.take(frame)

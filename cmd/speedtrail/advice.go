@@ -10,11 +10,12 @@ import (
 var commandWords = regexp.MustCompile(`\bspeedtrail (anchor|assess|export|import|inforce|profile|register|report|revoke|sign|trace|validate|verify)\b`)
 
 // advise repeats the options of this call in the calls that an advice of this program
-// names: without them they are about another repository or ledger.
+// names: without them they are about another repository or ledger. What an advice says
+// itself stays.
 func (a *app) advise(text string) string {
 	var options []string
 	for _, o := range []struct{ name, value, otherwise string }{{"repo", a.repo, "."}, {"data", a.data, "."}, {"ledger", a.ledger, ""}} {
-		if o.value != o.otherwise {
+		if o.value != o.otherwise && !strings.Contains(text, "--"+o.name+"=") {
 			options = append(options, "--"+o.name+" "+quotedFor(runtime.GOOS, o.value))
 		}
 	}

@@ -27,6 +27,9 @@ func TestAdviceRepeatsOptions(t *testing.T) {
 		{"register lists the assessments", []string{"report", "x"}},
 		{"inforce record REV --since T", []string{"inforce", "record", "--reason", "x", "--key", "k"}},
 		{"report 1 --out report.html\n", []string{"assess", "c0", "c1", "--format", "csv"}},
+		{"report 1 --out report.html\n", []string{"assess", "c0", "c1"}},
+		{"report 1 --out report.html\n", []string{"report", "1"}},
+		{"profile ", []string{"report", "1"}},
 		{"sign 1 --statement statement --signature statement.sig\n", []string{"export", "1"}},
 		{"report 1 --out report.html\n\n", []string{"sign", "1", "--role", "checker", "--decision", "approve", "--reason", "seen", "--key", key("ada"), "-y"}},
 		{"report 1 --out report.html\n", []string{"register"}},
@@ -100,5 +103,14 @@ func TestKeyHints(t *testing.T) {
 	got = call(t, in("inforce", "record", "c0", "--since", "", "--reason", "start", "--key", key("cem"), "-y")...)
 	if !strings.Contains(got.errors, "--since is missing") {
 		t.Errorf("%s", got.errors)
+	}
+}
+
+// An advice that names an option itself does not get it twice.
+func TestAdviceKeepsItsOptions(t *testing.T) {
+	a := app{repo: "net", data: "speeds"}
+	want := "speedtrail --repo net profile 0123456789 --data=speeds --route=A"
+	if got := a.advise("speedtrail profile 0123456789 --data=speeds --route=A"); got != want {
+		t.Errorf("got %s, want %s", got, want)
 	}
 }

@@ -68,67 +68,33 @@ type anchoring struct {
 	yes                         bool
 }
 
+// anchor puts the policy of a revision in force. Everything that can be refused is
+// before anybody signs, and before a ledger is made.
 func (a *app) anchor(ctx context.Context, rev string, o *anchoring) error {
-	if rev == workingTree {
-		return badCall("commit the policy first", "the working tree cannot be anchored")
-	}
-	repo, err := a.openRepo()
+	root, err := a.rootAt(ctx, rev)
 	if err != nil {
 		return err
 	}
-	defer repo.Close()
-	folder, err := a.folder()
+	l, line, err := a.ledgerToAnchor(ctx, len(o.brings) > 0)
 	if err != nil {
 		return err
 	}
-	s, err := a.openSide(repo, rev)
-	if err != nil {
-		return err
-	}
-	if _, err := schema.Load(ctx, s.files); err != nil {
-		return &sideError{s.label(), err}
-	}
-	tree, signOff, signers, err := (&checker{a: a}).content(ctx, repo, s.commit.Hash, folder)
-	if err != nil {
-		return err
-	}
-	// A call that is refused makes no ledger.
-	l, err := a.openLedgerFor(ctx, true)
-	line := approval.New(noLedger)
-	switch {
-	case errors.Is(err, ledger.ErrNoLedger) && len(o.brings) == 0:
-	case err != nil:
-		return err
-	default:
-		defer l.Close()
-		if line, err = a.readLine(ctx, l); err != nil {
-			return err
+	defer func() {
+		if l != nil {
+			l.Close()
 		}
+	}()
+	p, err := root.policy(line)
+	if err != nil {
+		return err
 	}
-	p := line.Policy(signOff, signers)
-	switch {
-	case p.Hash == "":
-		return refused(fmt.Errorf("%s has no policy (signoff.toml and allowed_signers) in the folder %s", rev, folder))
-	case p.Problem != nil:
-		return &sideError{s.label(), p.Problem}
-	}
-	statement := signoff.Statement{
-		Kind: signoff.Anchor, Ledger: noLedger, Revision: s.commit.Hash, Folder: folder, Content: tree, Policy: p.Hash,
-		Reason: o.reason, Time: time.Now().UTC().Truncate(time.Second), Head: chain.Head{Seq: 1, Hash: strings.Repeat("0", 64)},
-	}
+	statement := root.statement(p, o.reason)
 	if l != nil {
 		statement.Ledger, statement.Head = l.ID(), seen(line)
 	}
-	body := approval.AnchorBody{AllowedSigners: signers, Format: approval.AnchorFormat, SignOff: signOff}
-	for _, file := range o.brings {
-		result, err := (&signing{statement: file, signature: file + ".sig", anchor: true}).brought()
-		if err == nil {
-			err = broughtAbout(result, s.commit.Hash, folder, tree, nil)
-		}
-		if err != nil {
-			return err
-		}
-		body.Statements = append(body.Statements, anchored(result))
+	body := approval.AnchorBody{AllowedSigners: p.AllowedSigners, Format: approval.AnchorFormat, SignOff: p.SignOff}
+	if body.Statements, err = o.brought(root); err != nil {
+		return err
 	}
 	unsigned, keys, err := o.unsigned(ctx, a, statement, p.Parsed)
 	if err != nil {
@@ -144,23 +110,12 @@ func (a *app) anchor(ctx context.Context, rev string, o *anchoring) error {
 		a.showPolicy(p.Parsed)
 	}
 	if l == nil {
-		for i, key := range keys {
-			if locked, ok := key.(*lockedKey); ok {
-				if keys[i], err = locked.open(ctx, a); err != nil {
-					return err
-				}
-			}
-		}
-		if l, err = a.openLedger(ctx, true); err != nil {
+		// Before the ledger is there a passphrase can still be mistyped.
+		if err := unlock(ctx, a, keys); err != nil {
 			return err
 		}
-		defer l.Close()
-		if line, _, err = history.ReadLine(ctx, l); err != nil {
+		if l, line, err = a.ledgerFor(ctx, unsigned); err != nil {
 			return err
-		}
-		now := time.Now().UTC().Truncate(time.Second) // not before the entry that the statements name
-		for i := range unsigned {
-			unsigned[i].Ledger, unsigned[i].Head, unsigned[i].Time = l.ID(), seen(line), now
 		}
 	}
 	for i, u := range unsigned {
@@ -176,6 +131,125 @@ func (a *app) anchor(ctx context.Context, rev string, o *anchoring) error {
 	}
 	a.remark("the policy of %s is in force; anchor %s (note it elsewhere: verify --anchor proves by it that the root is still this one); head of the ledger %s", source.Visible(rev), head.Hash, head)
 	return nil
+}
+
+// root is the revision that an anchor names, with the files of its policy.
+type root struct {
+	rev, label              string // as it was typed, and as a reader knows it
+	commit, folder, tree    string
+	signOff, allowedSigners string // contents
+}
+
+// rootAt reads a revision whose data loads.
+func (a *app) rootAt(ctx context.Context, rev string) (*root, error) {
+	if rev == workingTree {
+		return nil, badCall("commit the policy first", "the working tree cannot be anchored")
+	}
+	repo, err := a.openRepo()
+	if err != nil {
+		return nil, err
+	}
+	defer repo.Close()
+	folder, err := a.folder()
+	if err != nil {
+		return nil, err
+	}
+	s, err := a.openSide(repo, rev)
+	if err != nil {
+		return nil, err
+	}
+	if _, err := s.load(ctx); err != nil {
+		return nil, err
+	}
+	r := &root{rev: rev, label: s.label(), commit: s.commit.Hash, folder: folder}
+	r.tree, r.signOff, r.allowedSigners, err = contentAt(repo, r.commit, folder)
+	return r, err
+}
+
+// policy gives the policy of the revision, or says why none can be put in force.
+func (r *root) policy(line *approval.Line) (approval.Policy, error) {
+	p := line.Policy(r.signOff, r.allowedSigners)
+	switch {
+	case p.Hash == "":
+		return p, refused(fmt.Errorf("%s has no policy (signoff.toml and allowed_signers) in the folder %s", r.rev, r.folder))
+	case p.Problem != nil:
+		return p, &sideError{r.label, p.Problem}
+	}
+	return p, nil
+}
+
+// statement gives what all who sign the anchor state, in a ledger that is still to be
+// made.
+func (r *root) statement(p approval.Policy, reason string) signoff.Statement {
+	return signoff.Statement{
+		Kind: signoff.Anchor, Ledger: noLedger, Revision: r.commit, Folder: r.folder, Content: r.tree, Policy: p.Hash,
+		Reason: reason, Time: time.Now().UTC().Truncate(time.Second), Head: chain.Head{Seq: 1, Hash: chain.Origin},
+	}
+}
+
+// ledgerToAnchor opens the ledger and follows its line. Where there is none so far it
+// gives no ledger and an empty line: a call that is refused makes none. One that
+// statements were made for has to be there.
+func (a *app) ledgerToAnchor(ctx context.Context, mustBe bool) (*ledger.Ledger, *approval.Line, error) {
+	l, err := a.openLedgerFor(ctx, true)
+	switch {
+	case errors.Is(err, ledger.ErrNoLedger) && !mustBe:
+		return nil, approval.New(noLedger), nil
+	case err != nil:
+		return nil, nil, err
+	}
+	line, err := a.readLine(ctx, l)
+	if err != nil {
+		l.Close()
+		return nil, nil, err
+	}
+	return l, line, nil
+}
+
+// ledgerFor makes the ledger, and has the statements name it.
+func (a *app) ledgerFor(ctx context.Context, unsigned []approval.Unsigned) (*ledger.Ledger, *approval.Line, error) {
+	l, err := a.openLedger(ctx, true)
+	if err != nil {
+		return nil, nil, err
+	}
+	line, _, err := history.ReadLine(ctx, l)
+	if err != nil {
+		l.Close()
+		return nil, nil, err
+	}
+	now := time.Now().UTC().Truncate(time.Second) // not before the entry that the statements name
+	for i := range unsigned {
+		unsigned[i].Ledger, unsigned[i].Head, unsigned[i].Time = l.ID(), seen(line), now
+	}
+	return l, line, nil
+}
+
+// unlock opens the keys that have a passphrase.
+func unlock(ctx context.Context, a *app, keys []ssh.Signer) (err error) {
+	for i, key := range keys {
+		if locked, ok := key.(*lockedKey); ok {
+			if keys[i], err = locked.open(ctx, a); err != nil {
+				return err
+			}
+		}
+	}
+	return nil
+}
+
+// brought reads the statements that were signed elsewhere.
+func (o *anchoring) brought(r *root) ([]approval.Signed, error) {
+	var list []approval.Signed
+	for _, file := range o.brings {
+		result, err := (&signing{statement: file, signature: file + ".sig", anchor: true}).brought()
+		if err == nil {
+			err = broughtAbout(result, r.commit, r.folder, r.tree, nil)
+		}
+		if err != nil {
+			return nil, err
+		}
+		list = append(list, anchored(result))
+	}
+	return list, nil
 }
 
 // noLedger stands for the id of a ledger that is still to be made.
@@ -218,93 +292,3 @@ func anchorError(err error) error {
 	}
 	return fmt.Errorf("the anchor was not recorded: %w", err)
 }
-
-func (a *app) revokeCommand() *cobra.Command {
-	var s signing
-	c := &cobra.Command{
-		Use:   "revoke FINGERPRINT --role ROLE --reason TEXT --key FILE",
-		Short: "take a key out of use",
-		Long: `revoke records that nothing that a key signs from now on counts. It is signed by
-the key's owner (--role owner), or by somebody who may sign in a role that is
-independent of preparer. What the key has signed before is listed for review, here
-and below the list of register, and every report says of each signature whether its
-key was revoked later.
-
-FINGERPRINT is what ssh-keygen -lf KEY.pub prints, with SHA256: in front.`,
-		Example: `  speedtrail revoke SHA256:Xa0c... --role owner --reason "laptop stolen" --key ~/.ssh/id_ed25519`,
-		Args:    arguments(1, 1),
-		RunE: func(c *cobra.Command, args []string) error {
-			if err := s.alone(c); err != nil {
-				return err
-			}
-			if err := s.check(); err != nil {
-				return err
-			}
-			if s.statement == "" && s.role == "" {
-				return badCall("--role owner, or a role of the policy", "--role is missing")
-			}
-			return a.revoke(c.Context(), args[0], &s)
-		},
-	}
-	s.flags(c)
-	c.Flags().StringVar(&s.role, "role", "", "owner, or a role of the policy")
-	return c
-}
-
-func (a *app) revoke(ctx context.Context, fingerprint string, s *signing) error {
-	folder, err := a.folder()
-	if err != nil {
-		return err
-	}
-	l, err := a.openLedgerFor(ctx, s.write == "")
-	if err != nil {
-		return err
-	}
-	defer l.Close()
-	line, err := a.readLine(ctx, l)
-	if err != nil {
-		return err
-	}
-	if s.statement != "" {
-		brought, err := s.brought()
-		if err != nil {
-			return err
-		}
-		if st, err := signoff.Parse(brought.statement); err == nil && (st.Key != fingerprint || st.Folder != folder) {
-			return refused(fmt.Errorf("the statement is about the key %s and the folder %s, not %s and %s", source.Visible(st.Key), source.Visible(st.Folder), source.Visible(fingerprint), folder))
-		}
-		return a.recordSigned(ctx, l, line, chain.Revocation, brought)
-	}
-	p := line.Newest(folder)
-	if p.Parsed == nil {
-		return refused(fmt.Errorf("no policy is anchored for the folder %s; speedtrail anchor puts one in force", folder))
-	}
-	key, done, err := s.signerKey(ctx, a, p.Parsed, newestPolicy)
-	if err != nil {
-		return err
-	}
-	defer done()
-	statement := signoff.Statement{
-		Kind: signoff.Revocation, Ledger: l.ID(), Folder: folder, Policy: p.Hash, Key: fingerprint, Role: s.role, Reason: s.reason,
-		Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
-	}
-	if err := s.complete(&statement, key, p.Parsed, newestPolicy); err != nil {
-		return err
-	}
-	if err := a.foresee(line, statement, key); err != nil {
-		return err
-	}
-	result, err := s.finish(ctx, a, statement, key)
-	if err != nil || result == nil {
-		return err
-	}
-	if err := a.recordSigned(ctx, l, line, chain.Revocation, result); err != nil {
-		return err
-	}
-	for _, text := range toReview(line, fingerprint) {
-		fmt.Fprintln(a.out, text)
-	}
-	return nil
-}
-
-func joined(list []string) string { return strings.Join(list, ", ") }

@@ -23,12 +23,15 @@ func TestChanges(t *testing.T) {
 		t.Fatal("no pairs", err)
 	}
 	for _, base := range pairs {
-		dir := filepath.Dir(base)
+		dir, err := filepath.Abs(filepath.Dir(base))
+		if err != nil {
+			t.Fatal(err)
+		}
 		t.Run(filepath.Base(dir), func(t *testing.T) {
-			repo := commitPair(t, dir)
+			t.Chdir(commitPair(t, dir)) // the text repeats a --repo
 			for _, format := range []string{"text", "csv", "json", "markdown", "html"} {
 				var out, remarks bytes.Buffer
-				status := run(context.Background(), []string{"--repo", repo, "assess", "HEAD~1", "HEAD", "--no-record", "--format", format}, nil, &out, &remarks)
+				status := run(context.Background(), []string{"assess", "HEAD~1", "HEAD", "--no-record", "--format", format}, nil, &out, &remarks)
 				if status != statusDone && status != statusFinding {
 					t.Fatalf("status %d: %s", status, &remarks)
 				}

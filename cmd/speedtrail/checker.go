@@ -50,16 +50,18 @@ func (c *checker) recompute(ctx context.Context, repo *revision.Repo, doc *asses
 }
 
 // Content gives the tree of a folder at a commit, and the policy files there.
-func (c *checker) Content(ctx context.Context, commit, folder string) (tree, signoff, allowedSigners string, err error) {
+func (c *checker) Content(_ context.Context, commit, folder string) (tree, signoff, allowedSigners string, err error) {
 	repo, err := c.a.openRepo()
 	if err != nil {
 		return "", "", "", err
 	}
 	defer repo.Close()
-	return c.content(ctx, repo, commit, folder)
+	return contentAt(repo, commit, folder)
 }
 
-func (c *checker) content(_ context.Context, repo *revision.Repo, commit, folder string) (tree, signoff, allowedSigners string, err error) {
+// contentAt gives the tree of a folder at a commit of a repository, and the policy files
+// there.
+func contentAt(repo *revision.Repo, commit, folder string) (tree, signoff, allowedSigners string, err error) {
 	files, err := repo.Snapshot(commit, folder)
 	if err != nil {
 		return "", "", "", err

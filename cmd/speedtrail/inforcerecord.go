@@ -12,7 +12,6 @@ import (
 	"speedtrail/history/approval"
 	"speedtrail/history/chain"
 	"speedtrail/history/signoff"
-	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
 
@@ -122,12 +121,8 @@ func (a *app) inforceRecord(ctx context.Context, x servicing, s *signing) error 
 		if brought, err = s.brought(); err != nil {
 			return err
 		}
-		st, err := signoff.Parse(brought.statement)
-		if word, entry, ok := approval.ReadCorrection(st.Corrects); err == nil && ok && word == approval.Voids {
-			x = servicing{rev: x.rev, since: &st.Since, routes: st.Routes, voids: entry, corrects: st.Corrects}
-			if err := voidsAsRecorded(line, folder, st); err != nil {
-				return err
-			}
+		if x, err = x.asBrought(line, folder, brought); err != nil {
+			return err
 		}
 	}
 	var statement signoff.Statement
@@ -139,44 +134,69 @@ func (a *app) inforceRecord(ctx context.Context, x servicing, s *signing) error 
 	if err != nil {
 		return err
 	}
-	if brought != nil {
-		return a.recordSigned(ctx, l, line, chain.InForce, brought)
+	if brought == nil {
+		statement.Ledger, statement.Folder, statement.Corrects = l.ID(), folder, x.corrects
+		if brought, err = s.signInForce(ctx, a, line, statement, x.voids); err != nil || brought == nil {
+			return err
+		}
 	}
-	p := line.Newest(folder)
+	return a.recordSigned(ctx, l, line, chain.InForce, brought)
+}
+
+// asBrought gives what a statement that was signed elsewhere is asked to say: where it
+// voids a record, all of it.
+func (x servicing) asBrought(line *approval.Line, folder string, brought *signed) (servicing, error) {
+	st, err := signoff.Parse(brought.statement)
+	if err != nil {
+		return x, nil // its recording says what is wrong
+	}
+	word, entry, ok := approval.ReadCorrection(st.Corrects)
+	if !ok || word != approval.Voids {
+		return x, nil
+	}
+	return servicing{rev: x.rev, since: &st.Since, routes: st.Routes, voids: entry, corrects: st.Corrects}, voidsAsRecorded(line, folder, st)
+}
+
+// signInForce fills in who states a record and why, says what is odd about it, asks,
+// and signs; it gives nothing where the statement is only written. voids is the entry
+// that it takes back; 0 for none.
+func (s *signing) signInForce(ctx context.Context, a *app, line *approval.Line, statement signoff.Statement, voids int64) (*signed, error) {
+	p := line.Newest(statement.Folder)
 	if p.Parsed == nil {
-		return refused(fmt.Errorf("no policy is anchored for the folder %s; speedtrail anchor puts one in force", folder))
+		return nil, refused(fmt.Errorf("no policy is anchored for the folder %s; speedtrail anchor puts one in force", statement.Folder))
 	}
 	key, done, err := s.signerKey(ctx, a, p.Parsed, newestPolicy)
 	if err != nil {
-		return err
+		return nil, err
 	}
 	defer done()
-	statement.Kind, statement.Ledger, statement.Folder, statement.Policy, statement.Corrects = signoff.InForce, l.ID(), folder, p.Hash, x.corrects
-	statement.Role, statement.Reason, statement.Time, statement.Head = approval.InServiceRole, s.reason, time.Now().UTC().Truncate(time.Second), seen(line)
+	statement.Kind, statement.Policy, statement.Role, statement.Reason = signoff.InForce, p.Hash, approval.InServiceRole, s.reason
+	statement.Time, statement.Head = time.Now().UTC().Truncate(time.Second), seen(line)
 	if err := s.complete(&statement, key, p.Parsed, newestPolicy); err != nil {
-		return err
+		return nil, err
 	}
 	if err := a.foresee(line, statement, key); err != nil {
-		return err
+		return nil, err
 	}
-	if x.voids > 0 {
-		a.remark("it takes back entry %d: %s", x.voids, serviceRecordOf(line, history.ServiceOf(line, *standing(line, folder, x.voids))).words())
-	} else if !line.ApprovedContent(folder, statement.Content) {
+	if voids > 0 {
+		a.remark("it takes back entry %d: %s", voids, serviceRecordOf(line, history.ServiceOf(line, *standing(line, statement.Folder, voids))).words())
+	} else {
+		a.remarkOdd(line, &statement)
+	}
+	return s.finish(ctx, a, statement, key)
+}
+
+// remarkOdd says what is odd about a revision that is said to go into service.
+func (a *app) remarkOdd(line *approval.Line, s *signoff.Statement) {
+	if !line.ApprovedContent(s.Folder, s.Content) {
 		a.remark("! the revision is not approved: finding %s", history.ServiceUnapproved)
 	}
-	if x.voids == 0 {
-		for _, e := range byRevoked(evidenceOf(line, folder, statement.Content, approvedThrough(line, folder, statement.Content))) {
-			a.remark("! %s: %s", e.by(), e.Revoked.Short())
-		}
+	for _, e := range byRevoked(evidenceOf(line, s.Folder, s.Content, approvedThrough(line, s.Folder, s.Content))) {
+		a.remark("! %s: %s", e.by(), e.Revoked.Short())
 	}
-	if x.voids == 0 && statement.Since.After(statement.Time) {
-		a.remark("! %s lies in the future: until then the revision is not in force, and after it nothing asks whether it went into service", statement.Since.Format(signoff.TimeLayout))
+	if s.Since.After(s.Time) {
+		a.remark("! %s lies in the future: until then the revision is not in force, and after it nothing asks whether it went into service", s.Since.Format(signoff.TimeLayout))
 	}
-	result, err := s.finish(ctx, a, statement, key)
-	if err != nil || result == nil {
-		return err
-	}
-	return a.recordSigned(ctx, l, line, chain.InForce, result)
 }
 
 // approvedThrough lists the approved assessments whose target has a content.
@@ -207,9 +227,9 @@ func (a *app) entering(ctx context.Context, folder string, x servicing, brought 
 	if err != nil {
 		return st, err
 	}
-	data, err := schema.Load(ctx, at.files)
+	data, err := at.load(ctx)
 	if err != nil {
-		return st, &sideError{at.label(), err}
+		return st, err
 	}
 	for _, id := range x.routes {
 		if routeByID(data, id) == nil {

@@ -89,3 +89,6 @@ func flagHint(c *cobra.Command, err error) string {
 	}
 	return meant(name, known, hint)
 }
+
+// joined writes names in a row.
+func joined(names []string) string { return strings.Join(names, ", ") }

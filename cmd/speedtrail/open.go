@@ -47,6 +47,15 @@ type side struct {
 // isWorkingTree tells whether the side is the files on disk.
 func (s side) isWorkingTree() bool { return s.commit.Hash == "" }
 
+// load reads the data set of the side. What is wrong with it is said to be of the side.
+func (s side) load(ctx context.Context) (*schema.Dataset, error) {
+	data, err := schema.Load(ctx, s.files)
+	if err != nil {
+		return nil, &sideError{s.label(), err}
+	}
+	return data, nil
+}
+
 // label names the side for a reader.
 func (s side) label() string {
 	if s.isWorkingTree() {

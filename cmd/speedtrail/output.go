@@ -152,6 +152,9 @@ func writeBytes(name string, content []byte) error {
 // style is how text looks where it goes to.
 func (a *app) style() render.Style {
 	s := render.Style{Width: 80, Color: a.color == "always"}
+	if a.outTo == "" { // a file is read elsewhere, and is the same whoever writes it from where
+		s.Advise = a.advise
+	}
 	f, ok := a.out.(*os.File)
 	if !ok || a.outTo != "" || !term.IsTerminal(int(f.Fd())) {
 		return s

@@ -69,9 +69,9 @@ func (a *app) profile(ctx context.Context, rev, routeID string, trainIDs []strin
 	if err != nil {
 		return err
 	}
-	data, err := schema.Load(ctx, s.files)
+	data, err := s.load(ctx)
 	if err != nil {
-		return &sideError{s.label(), err}
+		return err
 	}
 	route, err := routeOf(data, routeID)
 	if err != nil {

@@ -42,14 +42,14 @@ func (a *app) report(ctx context.Context, number int64) error {
 		return err
 	}
 	defer l.Close()
-	doc, rec, err := a.recorded(ctx, l, number)
+	r, err := a.recorded(ctx, l, number)
 	if err != nil {
 		return err
 	}
-	if err := a.render(doc, rec); err != nil {
+	if err := a.render(r.doc, r.standing()); err != nil {
 		return err
 	}
-	a.remarkHidden(doc)
+	a.remarkHidden(r.doc)
 	a.remarkFile()
 	return nil
 }
@@ -61,37 +61,40 @@ func (a *app) remarkFile() {
 	}
 }
 
-// recorded reads an assessment back from the ledger.
-func (a *app) recorded(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.Document, render.Record, error) {
-	doc, x, line, err := a.documentOf(ctx, l, number)
-	if err != nil {
-		return nil, render.Record{}, err
-	}
-	return doc, recordOf(line, l.ID(), number, x.Digest), nil
+// recorded is an assessment as the ledger has it, with what the line of approval
+// says of it.
+type recorded struct {
+	*approval.Assessment
+	doc    *assessment.Document
+	line   *approval.Line
+	ledger string // its id
 }
 
-// documentOf reads the document of an assessment, and follows the line. Two ways lead
-// to the document, the row of a number and the entries one after the other: that they
-// lead to the same one is asked of the bytes, since a row, or the index by which it is
-// found, can be altered, also while this reads.
-func (a *app) documentOf(ctx context.Context, l *ledger.Ledger, number int64) (*assessment.Document, *approval.Assessment, *approval.Line, error) {
+// standing says what the ledger knows about the assessment now.
+func (r *recorded) standing() render.Record { return recordOf(r.line, r.ledger, r.Number, r.Digest) }
+
+// recorded reads an assessment back from the ledger, and follows the line. Two ways
+// lead to the document, the row of a number and the entries one after the other: that
+// they lead to the same one is asked of the bytes, since a row, or the index by which
+// it is found, can be altered, also while this reads.
+func (a *app) recorded(ctx context.Context, l *ledger.Ledger, number int64) (*recorded, error) {
 	_, e, err := l.Assessment(ctx, number)
 	if err != nil {
-		return nil, nil, nil, err
+		return nil, err
 	}
 	doc, digest, err := assessment.Decode(e.Body)
 	if err != nil {
-		return nil, nil, nil, err
+		return nil, err
 	}
 	line, err := a.readLine(ctx, l)
 	if err != nil {
-		return nil, nil, nil, err
+		return nil, err
 	}
 	x := line.Assessment(number)
 	if x == nil || x.Digest != digest || x.Entry != e.Head() || chain.Check(chain.Head{Seq: e.Seq - 1, Hash: e.Previous}, e) != nil {
-		return nil, nil, nil, misled(number)
+		return nil, misled(number)
 	}
-	return doc, x, line, nil
+	return &recorded{x, doc, line, l.ID()}, nil
 }
 
 // misled says that the row of an assessment leads to something else than it did.

@@ -14,6 +14,7 @@ type sideError struct {
 	err   error
 }
 
+// Error names the revision; faults of its data stand a line each.
 func (e *sideError) Error() string {
 	var faults *source.Faults
 	if !errors.As(e.err, &faults) {
@@ -22,6 +23,7 @@ func (e *sideError) Error() string {
 	return "the data set of " + e.label + " is faulty\n" + faults.Error()
 }
 
+// Unwrap gives what is wrong.
 func (e *sideError) Unwrap() error { return e.err }
 
 // inSides says of which revision an error of LoadPair is.
@@ -44,6 +46,7 @@ func inSides(err error, base, target side) error {
 // first.
 type bothError struct{ list []error }
 
+// Error gives the errors one below the other.
 func (e *bothError) Error() string {
 	texts := make([]string, len(e.list))
 	for i, err := range e.list {
@@ -52,4 +55,5 @@ func (e *bothError) Error() string {
 	return strings.Join(texts, "\n")
 }
 
+// Unwrap gives the errors.
 func (e *bothError) Unwrap() []error { return e.list }

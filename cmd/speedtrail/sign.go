@@ -19,12 +19,12 @@ import (
 	"speedtrail/history/chain"
 	"speedtrail/history/ledger"
 	"speedtrail/history/signoff"
+	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
 
 func (a *app) signCommand() *cobra.Command {
 	var s signing
-	var decision string
 	c := &cobra.Command{
 		Use:   "sign ID --role R --decision approve|reject --reason TEXT --key FILE",
 		Short: "sign an assessment off",
@@ -50,20 +50,20 @@ brings both back and records it without a question.`,
 			if err := s.check(); err != nil {
 				return err
 			}
-			if s.statement == "" && (s.role == "" || decision == "") {
+			if s.statement == "" && (s.role == "" || s.decision == "") {
 				return badCall("for example --role checker --decision approve", "--role and --decision are needed")
 			}
-			if decision != "" {
-				if err := chosen("--decision", decision, signoff.Approve, signoff.Reject); err != nil {
+			if s.decision != "" {
+				if err := chosen("--decision", s.decision, signoff.Approve, signoff.Reject); err != nil {
 					return err
 				}
 			}
-			return a.sign(c.Context(), number, decision, &s)
+			return a.sign(c.Context(), number, &s)
 		},
 	}
 	s.flags(c)
 	c.Flags().StringVar(&s.role, "role", "", "the role of the policy in which you sign")
-	c.Flags().StringVar(&decision, "decision", "", "approve or reject")
+	c.Flags().StringVar(&s.decision, "decision", "", "approve or reject")
 	return c
 }
 
@@ -76,81 +76,113 @@ func assessmentNumber(text string) (int64, error) {
 	return n, nil
 }
 
-func (a *app) sign(ctx context.Context, number int64, decision string, s *signing) error {
+func (a *app) sign(ctx context.Context, number int64, s *signing) error {
 	l, err := a.openLedgerFor(ctx, s.write == "")
 	if err != nil {
 		return err
 	}
 	defer l.Close()
-	doc, x, line, err := a.documentOf(ctx, l, number)
+	r, err := a.recorded(ctx, l, number)
 	if err != nil {
 		return err
 	}
-	if err := a.recompute(ctx, doc, x.Digest); err != nil {
+	if err := a.recompute(ctx, r.doc, r.Digest); err != nil {
 		return err
 	}
+	var result *signed
 	if s.statement != "" {
-		brought, err := s.brought()
-		if err != nil {
-			return err
-		}
-		if st, err := signoff.Parse(brought.statement); err == nil && st.Assessment != number {
-			return refused(fmt.Errorf("the statement is about assessment %d, not %d", st.Assessment, number))
-		}
-		if err := a.recordSigned(ctx, l, line, chain.SignOff, brought); err != nil {
-			return err
-		}
-		return a.remarkState(ctx, l, line, number)
+		result, err = s.broughtOn(number)
+	} else {
+		result, err = s.signOff(ctx, a, r)
 	}
-	if x.Policy.Parsed == nil {
-		return badCall("README.md has a whole signoff.toml; speedtrail anchor puts the first policy in force", "the base of assessment %d has no valid policy (signoff.toml and allowed_signers): nothing was recorded", number)
-	}
-	// A role that only the policy in force has is taken by that one.
-	policy, whose := x.Policy.Parsed, "the base"
-	for i, p := range append([]approval.Policy{line.Newest(x.Folder)}, line.Rejected(x)...) {
-		if p.Parsed != nil && policy.Role(s.role) == nil && p.Parsed.Role(s.role) != nil {
-			policy, whose = p.Parsed, newestPolicy
-			if i > 0 {
-				whose = "the release that was rejected"
-			}
-		}
-	}
-	key, done, err := s.signerKey(ctx, a, policy, whose)
-	if err != nil {
-		return err
-	}
-	defer done()
-	statement := signoff.Statement{
-		Kind: signoff.SignOff, Ledger: l.ID(), Assessment: number, Digest: x.Digest, Base: x.Base, Target: x.Target, Folder: x.Folder, Rules: x.Rules,
-		Policy: x.Policy.Hash, Findings: x.Findings, Role: s.role, Decision: decision, Reason: s.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(line),
-	}
-	if err := s.complete(&statement, key, policy, whose); err != nil {
-		return inTargetOnly(err, key, x)
-	}
-	if err := a.foresee(line, statement, key); err != nil {
-		return err
-	}
-	for _, r := range line.SignOffs() {
-		if r.Assessment == number && r.Role == s.role && r.Signer == statement.Signer {
-			a.remark("%s has signed as %s already, in entry %d: %s; the later decision counts", source.Visible(r.Signer), source.Visible(r.Role), r.Entry.Seq, source.Visible(r.Decision))
-		}
-	}
-	if err := a.showForSigning(doc, x, line, l.ID()); err != nil {
-		return err
-	}
-	for _, role := range x.Policy.Parsed.Roles {
-		if role.Name != s.role && x.Policy.Parsed.Independent(role.Name, s.role) && role.May(statement.Signer) {
-			a.remark("who signs as %s cannot sign this data as %s as well", source.Visible(s.role), source.Visible(role.Name))
-		}
-	}
-	result, err := s.finish(ctx, a, statement, key)
 	if err != nil || result == nil {
 		return err
 	}
-	if err := a.recordSigned(ctx, l, line, chain.SignOff, result); err != nil {
+	if err := a.recordSigned(ctx, l, r.line, chain.SignOff, result); err != nil {
 		return err
 	}
-	return a.remarkState(ctx, l, line, number)
+	return a.remarkState(ctx, l, r.line, number)
+}
+
+// broughtOn reads a sign-off of an assessment that was signed elsewhere.
+func (s *signing) broughtOn(number int64) (*signed, error) {
+	result, err := s.brought()
+	if err != nil {
+		return nil, err
+	}
+	if st, err := signoff.Parse(result.statement); err == nil && st.Assessment != number {
+		return nil, refused(fmt.Errorf("the statement is about assessment %d, not %d", st.Assessment, number))
+	}
+	return result, nil
+}
+
+// signOff shows what decides about an assessment, asks, and signs; it gives nothing
+// where the statement is only written.
+func (s *signing) signOff(ctx context.Context, a *app, r *recorded) (*signed, error) {
+	if r.Policy.Parsed == nil {
+		return nil, badCall("README.md has a whole signoff.toml; speedtrail anchor puts the first policy in force", "the base of assessment %d has no valid policy (signoff.toml and allowed_signers): nothing was recorded", r.Number)
+	}
+	policy, whose := r.policyFor(s.role)
+	key, done, err := s.signerKey(ctx, a, policy, whose)
+	if err != nil {
+		return nil, err
+	}
+	defer done()
+	statement := signoff.Statement{
+		Kind: signoff.SignOff, Ledger: r.ledger, Assessment: r.Number, Digest: r.Digest, Base: r.Base, Target: r.Target, Folder: r.Folder, Rules: r.Rules,
+		Policy: r.Policy.Hash, Findings: r.Findings, Role: s.role, Decision: s.decision, Reason: s.reason, Time: time.Now().UTC().Truncate(time.Second), Head: seen(r.line),
+	}
+	if err := s.complete(&statement, key, policy, whose); err != nil {
+		return nil, inTargetOnly(err, key, r.Assessment)
+	}
+	if err := a.foresee(r.line, statement, key); err != nil {
+		return nil, err
+	}
+	a.remarkEarlier(r, &statement)
+	if err := a.showForSigning(r); err != nil {
+		return nil, err
+	}
+	a.remarkRolesLost(r, &statement)
+	return s.finish(ctx, a, statement, key)
+}
+
+// policyFor gives the policy by which somebody signs in a role, and says whose it is:
+// that of the base, but for a role that only the policy in force has, or one that is
+// rejected and asks on.
+func (r *recorded) policyFor(role string) (policy *schema.Policy, whose string) {
+	if r.Policy.Parsed.Role(role) != nil {
+		return r.Policy.Parsed, "the base"
+	}
+	if p := r.line.Newest(r.Folder).Parsed; p != nil && p.Role(role) != nil {
+		return p, newestPolicy
+	}
+	for _, p := range r.line.Rejected(r.Assessment) {
+		if p.Parsed != nil && p.Parsed.Role(role) != nil {
+			return p.Parsed, "the release that was rejected"
+		}
+	}
+	return r.Policy.Parsed, "the base"
+}
+
+// remarkEarlier names the decisions that a new one of the same person in the same role
+// takes the place of.
+func (a *app) remarkEarlier(r *recorded, now *signoff.Statement) {
+	for _, d := range r.line.SignOffs() {
+		if d.Assessment == r.Number && d.Role == now.Role && d.Signer == now.Signer {
+			a.remark("%s has signed as %s already, in entry %d: %s; the later decision counts", source.Visible(d.Signer), source.Visible(d.Role), d.Entry.Seq, source.Visible(d.Decision))
+		}
+	}
+}
+
+// remarkRolesLost names the roles that the signer cannot take any more once this is
+// signed.
+func (a *app) remarkRolesLost(r *recorded, now *signoff.Statement) {
+	p := r.Policy.Parsed
+	for _, role := range p.Roles {
+		if role.Name != now.Role && p.Independent(role.Name, now.Role) && role.May(now.Signer) {
+			a.remark("who signs as %s cannot sign this data as %s as well", source.Visible(now.Role), source.Visible(role.Name))
+		}
+	}
 }
 
 // inTargetOnly adds to a refusal that the key stands in the target's policy, which
@@ -168,30 +200,30 @@ func inTargetOnly(err error, key ssh.Signer, x *approval.Assessment) error {
 }
 
 // showForSigning says what decides, before somebody signs.
-func (a *app) showForSigning(doc *assessment.Document, x *approval.Assessment, line *approval.Line, ledgerID string) error {
+func (a *app) showForSigning(r *recorded) error {
 	style := a.style()
 	style.Color = false // it goes to the standard error
-	if err := render.BeforeSigning(a.err, doc, recordOf(line, ledgerID, x.Number, x.Digest), style); err != nil {
+	if err := render.BeforeSigning(a.err, r.doc, r.standing(), style); err != nil {
 		return err
 	}
-	otherwise, err := a.calledOtherwise(doc)
+	otherwise, err := a.calledOtherwise(r.doc)
 	if err != nil {
 		return err
 	}
-	if named := doc.Computed.Options.Requests; len(named) > 0 {
+	if named := r.doc.Computed.Options.Requests; len(named) > 0 {
 		// The statement says nothing of it where no finding is left.
 		otherwise = append(otherwise, fmt.Sprintf("whoever assessed this chose the requests that count (--request %s); what else the change adds or alters in requests/ was not looked at", source.Visible(strings.Join(named, ", "))))
 	}
-	if text := oddTime(&doc.Computed, time.Now()); text != "" {
+	if text := oddTime(&r.doc.Computed, time.Now()); text != "" {
 		otherwise = append(otherwise, text)
 	}
 	for _, text := range otherwise {
 		fmt.Fprintf(a.err, "%s\n", wrap("! "+text, style.Width))
 	}
-	for _, email := range x.UnknownPreparers() {
+	for _, email := range r.UnknownPreparers() {
 		fmt.Fprintf(a.err, "! unknown-preparer %s is no person of the policy: the assessment cannot be approved\n", source.Visible(email))
 	}
-	fmt.Fprintf(a.err, "The whole report: %s\n\n", source.Visible(a.advise(fmt.Sprintf("speedtrail report %d --out report.html", x.Number))))
+	fmt.Fprintf(a.err, "The whole report: %s\n\n", source.Visible(a.advise(fmt.Sprintf("speedtrail report %d --out report.html", r.Number))))
 	return nil
 }
 

@@ -23,6 +23,7 @@ import (
 // signing is the options that all commands share with which people sign.
 type signing struct {
 	role, reason         string
+	decision             string // of a sign-off
 	key, signer          string
 	agent, yes           bool
 	write                string

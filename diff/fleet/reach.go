@@ -218,47 +218,20 @@ func byEnd(rows []profile.Bound) []profile.Bound {
 }
 
 // differing lists where rows that only one side has can hold for a train up to
-// the longest. Elsewhere both sides have the same rows, and the same speeds. Rows
-// of one place that stand in another order count as differing, which is only
-// more than is needed.
+// the longest. Elsewhere both sides have the same rows, and the same speeds.
 func differing(before, after []profile.Bound, d codes.Direction, longest unit.Distance) []align.Interval {
 	// The order of the compilers, which view has turned round.
-	compare := func(a, b profile.Bound) int {
+	compare := func(a, b *profile.Bound) int {
 		if d == codes.Reverse {
 			return cmp.Or(cmp.Compare(b.End, a.End), cmp.Compare(b.Start, a.Start))
 		}
 		return cmp.Or(cmp.Compare(a.Start, b.Start), cmp.Compare(a.End, b.End))
 	}
-	var zone []align.Interval
-	add := func(r profile.Bound) {
+	same := func(a, b *profile.Bound) bool { return *a == *b }
+	return align.Unshared(before, after, compare, same, func(r *profile.Bound) align.Interval {
 		if r.Delay {
-			r.End += longest
+			return align.Interval{From: r.Start, To: r.End + longest}
 		}
-		zone = append(zone, align.Interval{From: r.Start, To: r.End})
-	}
-	for len(before)+len(after) > 0 {
-		order := 0
-		switch {
-		case len(before) == 0:
-			order = 1
-		case len(after) == 0:
-			order = -1
-		default:
-			order = compare(before[0], after[0])
-		}
-		equal := order == 0 && before[0] == after[0]
-		if order <= 0 {
-			if !equal {
-				add(before[0])
-			}
-			before = before[1:]
-		}
-		if order >= 0 {
-			if !equal {
-				add(after[0])
-			}
-			after = after[1:]
-		}
-	}
-	return align.Union(zone)
+		return align.Interval{From: r.Start, To: r.End}
+	})
 }

@@ -33,39 +33,12 @@ func Narrow(base, target *Compiler, longest unit.Distance) (b, t *Compiler, near
 // differing lists where rows that only one side has can hold, in order and
 // without overlap. Rows that differ in what people read alone are the same.
 func differing(base, target *Compiler, longest unit.Distance) []align.Interval {
-	var list []align.Interval
 	length := base.route.Track.Length()
-	add := func(c *Compiler, r *restriction) {
-		i := c.extent(r, longest)
-		list = append(list, align.Interval{From: max(0, i.From), To: min(length, i.To)})
-	}
-	i, k := 0, 0
-	for i < len(base.rows) || k < len(target.rows) {
-		order := 0
-		switch {
-		case i == len(base.rows):
-			order = 1
-		case k == len(target.rows):
-			order = -1
-		default:
-			order = comparePlace(&base.rows[i], &target.rows[k])
-		}
-		// Rows of one place that stand in another order count as differing,
-		// which is only more than is needed.
-		if order == 0 && base.sameCells(&base.rows[i], target, &target.rows[k]) {
-			i, k = i+1, k+1
-			continue
-		}
-		if order <= 0 {
-			add(base, &base.rows[i])
-			i++
-		}
-		if order >= 0 {
-			add(target, &target.rows[k])
-			k++
-		}
-	}
-	return align.Union(list)
+	same := func(r, s *restriction) bool { return base.sameCells(r, target, s) }
+	return align.Unshared(base.rows, target.rows, comparePlace, same, func(r *restriction) align.Interval {
+		i := base.extent(r, longest)
+		return align.Interval{From: max(0, i.From), To: min(length, i.To)}
+	})
 }
 
 // comparePlace compares by what rows are sorted by, their lines aside.

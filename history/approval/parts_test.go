@@ -1,6 +1,9 @@
 package approval
 
-import "testing"
+import (
+	"slices"
+	"testing"
+)
 
 // A rejection is a part as well: who rejected as one cannot approve as another who
 // has to be independent of that one (signoff.md, The policy).
@@ -50,4 +53,34 @@ func TestGroundIsTakenAwayAndGivenAgain(t *testing.T) {
 			s.refused(err, "base-not-approved")
 		}
 	}
+}
+
+// Who records what is in service decides on no assessment: neither an approval nor a
+// rejection is taken in that role.
+func TestInServiceDecidesNothing(t *testing.T) {
+	s := anchored(t, ordinary())
+	n := s.assess("a", "b", ordinary(), ordinary(), nil)
+	for _, decision := range []string{"approve", "reject"} {
+		s.refused(s.signOff(n, "cem", InServiceRole, decision), "the role in-service records what is in force and approves nothing")
+	}
+	s.state(n, Open)
+}
+
+// Of two parts of one person that a newer policy keeps apart, the first one counts.
+func TestFirstPartCounts(t *testing.T) {
+	joint, apart := ordinary().role("approver 2 preparer"), ordinary().role("approver 2 preparer,checker")
+	s := newStory(t)
+	s.must(s.anchor("a", joint, nil, "checker:ada", "approver:bea", "approver:eva", "in-service:cem"))
+	n := s.assess("a", "b", joint, joint, nil)
+	s.must(s.signOff(n, "ada", "checker", "approve"))
+	s.must(s.signOff(n, "ada", "approver", "approve"))
+	turn := s.assess("a", "c", joint, apart, nil)
+	s.must(s.signOff(turn, "eva", "approver", "approve"))
+	s.approve(turn)
+	s.must(s.signOff(n, "bea", "approver", "approve"))
+	if got := s.state(n, Partly); !slices.Equal(got.Missing, []string{"approver (1 of 2)"}) {
+		t.Errorf("missing are %v", got.Missing)
+	}
+	s.must(s.signOff(n, "eva", "approver", "approve"))
+	s.state(n, Approved)
 }

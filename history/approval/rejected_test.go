@@ -4,6 +4,7 @@ import (
 	"errors"
 	"strings"
 	"testing"
+	"time"
 
 	"speedtrail/history/chain"
 	"speedtrail/history/signoff"
@@ -116,4 +117,32 @@ func TestRejectedRotation(t *testing.T) {
 	}
 	s.must(s.signOff(turn, "fin", "checker", "approve"))
 	s.must(s.signOff(s.assess("b", "d", ordinary().without("ada").key("ada2"), ordinary().without("ada").key("ada2"), nil), "ada2", "checker", "approve"))
+}
+
+// What led to a release that took a key out was decided on before, and may be so again
+// with that key after the release was rejected.
+func TestRejectedReleaseLeavesItsWayAlone(t *testing.T) {
+	s := anchored(t, ordinary())
+	first := s.assess("a", "b", ordinary(), ordinary(), nil)
+	s.approve(first)
+	out := s.assess("b", "c", ordinary(), ordinary().without("eva"), nil)
+	s.approve(out)
+	s.refused(s.signOff(first, "eva", "checker", "approve"), "by the newest approved policy")
+	s.must(s.signOff(out, "fin", "checker", "reject"))
+	s.must(s.signOff(first, "eva", "checker", "approve"))
+	s.refused(s.signOff(s.assess("a", "d", ordinary(), ordinary(), nil), "eva", "checker", "approve"), "by "+whoseRejected)
+}
+
+// The policy that was rejected judges the recording as well as the time that a signer
+// states, and what it lets a role do.
+func TestRejectedPolicyJudgesTheRecording(t *testing.T) {
+	s := anchored(t, ordinary())
+	strict := ordinary().role("approver 1 checker").key(`cem valid-before="20260301133000Z"`)
+	turn := s.assess("a", "b", ordinary(), strict, nil)
+	s.approve(turn)
+	s.must(s.signOff(turn, "fin", "checker", "reject"))
+	before := s.now.Add(-time.Hour) // at 13:00, and recorded at 14:00
+	s.refused(s.inForce("a", day(2), "all", CorrectsNothing, func(st *signoff.Statement) { st.Time = before }), "by "+whoseRejected+": the key "+fingerprintOf("cem")+" was valid until 2026-03-01T13:30:00Z")
+	s.refused(s.revoke("ada", "eva", "approver"), "by "+whoseRejected+": the role approver is not independent of preparer")
+	s.must(s.revoke("ada", "eva", "checker"))
 }

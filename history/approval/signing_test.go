@@ -574,6 +574,17 @@ func TestPreparerUnderAnotherName(t *testing.T) {
 			t.Error("somebody whom the base knows has prepared nothing")
 		}
 	})
+	t.Run("an address that changed hands", func(t *testing.T) {
+		// The base has it as bea's, the newest policy as ada's: it may be of either.
+		s := anchored(t, ordinary())
+		sign, keys := ordinary().files()
+		moved := strings.Replace(strings.Replace(sign, "bea@Users.Example", "bea@elsewhere.example", 1), "ada@Users.Example", "bea@Users.Example", 1)
+		s.approve(s.assess("a", "b", ordinary(), ordinary(), func(a *Assessment) { a.Next = s.line.Policy(moved, keys) }))
+		n := s.assess("a", "c", ordinary(), ordinary(), func(a *Assessment) { a.Preparers = []string{"bea@users.example"} })
+		s.refused(s.signOff(n, "bea", "checker", "approve"), "bea@tarn.example prepared the change")
+		s.refused(s.signOff(n, "ada", "checker", "approve"), "by the newest approved policy: ada@tarn.example prepared the change")
+		s.must(s.signOff(n, "eva", "checker", "approve"))
+	})
 	t.Run("where both policies know the preparer", func(t *testing.T) {
 		s, n := begin(t, now("dan", "zed"), nil)
 		s.refused(s.signOff(n, "dan", "assessor", "approve"), "dan@tarn.example prepared the change")

@@ -134,3 +134,35 @@ func TestRejectionBringsNoKeyBack(t *testing.T) {
 	s.refused(s.revoke("ada", "eva", "checker"), "by the policy that was in force until its release was rejected")
 	s.must(s.inForce("a", day(2), "all", CorrectsNothing))
 }
+
+// A release comes after the one that it is based on, also where its base came to be
+// approved by another way since, with a higher number.
+func TestTurnAfterItsBase(t *testing.T) {
+	base, next := ordinary().key("ada2"), ordinary().key("ada2").key("ada3")
+	s := anchored(t, ordinary())
+	before := s.assess("a", "x", ordinary(), ordinary(), nil)
+	s.approve(before)
+	s.approve(s.assess("x", "b", ordinary(), base, nil))
+	release := s.assess("b", "c", base, next, nil)
+	s.approve(release)
+	s.approve(s.assess("a", "b", ordinary(), base, nil))
+	s.must(s.signOff(before, "fin", "checker", "reject"))
+	s.state(release, Approved)
+	if s.line.Newest(".").Hash != next.hash() {
+		t.Error("the newest policy is not that of the release that is based on the other")
+	}
+}
+
+// A release that goes back to an approved content does not bring a key back that was
+// taken out, whatever the policy of that content has.
+func TestGoingBackBringsNoKeyBack(t *testing.T) {
+	s := anchored(t, ordinary())
+	later := ordinary().key("ada2")
+	s.approve(s.assess("a", "b", ordinary(), ordinary().without("eva"), nil))
+	s.approve(s.assess("a", "c", ordinary(), later, nil))
+	s.approve(s.assess("b", "a", ordinary().without("eva"), ordinary(), nil))
+	if s.line.Newest(".").Hash != later.hash() {
+		t.Error("going back turns the policy")
+	}
+	s.refused(s.signOff(s.assess("c", "d", later, later, nil), "eva", "checker", "approve"), "was taken out of the policy by assessment 1")
+}

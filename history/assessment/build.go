@@ -3,18 +3,16 @@ package assessment
 import (
 	"crypto/sha256"
 	"encoding/hex"
-	"runtime"
 	"slices"
 	"strconv"
 	"strings"
 	"time"
 
-	"golang.org/x/sync/errgroup"
-
 	"speedtrail/diff"
 	"speedtrail/diff/profile"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
+	"speedtrail/schema/parallel"
 	"speedtrail/schema/unit"
 )
 
@@ -63,7 +61,7 @@ func Build(in Input) *Document {
 	var places [][]int
 	c.Source, places = sourceFiles(in.Account)
 	groups := make([][]int, len(in.Account.Routes))
-	sideBySide(len(groups), func(i int) { c.Routes[i], groups[i] = route(&in.Account.Routes[i], places[i]) })
+	parallel.Each(len(groups), func(i int) { c.Routes[i], groups[i] = route(&in.Account.Routes[i], places[i]) })
 	c.Stretches = stretches(in.Account, groups)
 	c.Fleet = fleets(in.Account)
 	c.Figures = figures(in.Account)
@@ -75,20 +73,6 @@ func Build(in Input) *Document {
 func policy(d *schema.Dataset) Policy {
 	signoff, signers := d.PolicyFiles()
 	return Policy{SignOff: string(signoff), AllowedSigners: string(signers)}
-}
-
-// sideBySide does n pieces of work, one a processor at a time. Each fills in its
-// own place, so that the result does not depend on which is done first.
-func sideBySide(n int, work func(i int)) {
-	var g errgroup.Group
-	g.SetLimit(runtime.GOMAXPROCS(0))
-	for i := range n {
-		g.Go(func() error {
-			work(i)
-			return nil
-		})
-	}
-	_ = g.Wait()
 }
 
 // files lists the files of both sides with their hashes.

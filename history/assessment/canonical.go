@@ -12,6 +12,7 @@ import (
 	"sync"
 
 	"speedtrail/history/canon"
+	"speedtrail/schema/parallel"
 )
 
 // mostParts is into how many parts a member of the document is cut.
@@ -66,7 +67,7 @@ type partWriter struct {
 // encode fills in the text of parts that have none.
 func (w *partWriter) encode(parts []*textPart) {
 	errs := make([]error, len(parts))
-	sideBySide(len(parts), func(i int) {
+	parallel.Each(len(parts), func(i int) {
 		p := parts[i]
 		if p.text != nil {
 			return

@@ -9,12 +9,13 @@ import (
 	"speedtrail/diff/impact"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
+	"speedtrail/schema/parallel"
 )
 
 // fleets writes the accounts for every train.
 func fleets(a *diff.Account) []Fleet {
 	perRoute := make([][]Fleet, len(a.Routes))
-	sideBySide(len(perRoute), func(i int) {
+	parallel.Each(len(perRoute), func(i int) {
 		for k := range a.Routes[i].Fleet {
 			if f := &a.Routes[i].Fleet[k]; len(f.Changes) > 0 || len(f.Reach) > 0 {
 				perRoute[i] = append(perRoute[i], fleetOf(&a.Routes[i], f))
@@ -51,7 +52,7 @@ func fleetOf(r *diff.Route, f *diff.Fleet) Fleet {
 // figures writes the figures of all routes.
 func figures(a *diff.Account) Figures {
 	perRoute := make([]Figures, len(a.Routes))
-	sideBySide(len(perRoute), func(i int) { perRoute[i] = figuresOf(a, &a.Routes[i]) })
+	parallel.Each(len(perRoute), func(i int) { perRoute[i] = figuresOf(a, &a.Routes[i]) })
 	out := Figures{Crossings: []CrossingFigure{}, Curves: []CurveFigure{}, Short: []ShortFigure{}}
 	runs := 0
 	for _, f := range perRoute {

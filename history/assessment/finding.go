@@ -10,6 +10,7 @@ import (
 	"speedtrail/diff/doubt"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
+	"speedtrail/schema/parallel"
 	"speedtrail/schema/unit"
 )
 
@@ -113,7 +114,7 @@ func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 	c.policy()
 	c.trains()
 	perRoute := make([]collector, len(in.Account.Routes))
-	sideBySide(len(perRoute), func(i int) {
+	parallel.Each(len(perRoute), func(i int) {
 		perRoute[i] = collector{in: in, doc: doc}
 		perRoute[i].route(i)
 	})

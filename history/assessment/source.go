@@ -8,6 +8,7 @@ import (
 	"speedtrail/diff"
 	"speedtrail/diff/lines"
 	"speedtrail/diff/rows"
+	"speedtrail/schema/parallel"
 )
 
 // contextLines is how many equal lines surround a difference.
@@ -41,7 +42,7 @@ func sourceFiles(a *diff.Account) (list []SourceFile, places [][]int) {
 			places[r.route][r.place] = i
 		}
 	}
-	sideBySide(len(refs), func(i int) { list[i] = sourceFile(refs[i].file) })
+	parallel.Each(len(refs), func(i int) { list[i] = sourceFile(refs[i].file) })
 	return list, places
 }
 

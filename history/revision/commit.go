@@ -67,20 +67,12 @@ func parseCommit(data []byte) (Commit, error) {
 		return Commit{}, err
 	}
 	c.Tree = hash.String()
-	for {
-		line, next := cutLine(rest)
-		if !bytes.HasPrefix(line, []byte("parent ")) {
-			break
-		}
-		hash, err := headerHash(line, "parent ")
-		if err != nil {
-			return Commit{}, err
-		}
-		if len(c.Parents) == maxParents {
-			return Commit{}, fmt.Errorf("more than %d parents", maxParents)
-		}
+	parents, rest, err := headerParents(rest)
+	if err != nil {
+		return Commit{}, err
+	}
+	for _, hash := range parents {
 		c.Parents = append(c.Parents, hash.String())
-		rest = next
 	}
 	author, committer, rest, err := headerPeople(rest)
 	if err != nil {
@@ -139,20 +131,8 @@ func parseLinks(data []byte) (links, error) {
 		return links{}, err
 	}
 	l.tree = tree
-	for {
-		line, next := cutLine(rest)
-		if !bytes.HasPrefix(line, []byte("parent ")) {
-			break
-		}
-		hash, err := headerHash(line, "parent ")
-		if err != nil {
-			return links{}, err
-		}
-		if len(l.parents) == maxParents {
-			return links{}, fmt.Errorf("more than %d parents", maxParents)
-		}
-		l.parents = append(l.parents, hash)
-		rest = next
+	if l.parents, rest, err = headerParents(rest); err != nil {
+		return links{}, err
 	}
 	_, committer, _, err := headerPeople(rest)
 	if err != nil {
@@ -192,6 +172,24 @@ func headerHash(line []byte, key string) (plumbing.Hash, error) {
 		return plumbing.ZeroHash, fmt.Errorf("%q is not followed by a hash", key)
 	}
 	return hash, nil
+}
+
+// headerParents takes the lines of the parents, which stand below the tree.
+func headerParents(data []byte) (parents []plumbing.Hash, rest []byte, err error) {
+	for rest = data; ; {
+		line, next := cutLine(rest)
+		if !bytes.HasPrefix(line, []byte("parent ")) {
+			return parents, rest, nil
+		}
+		hash, err := headerHash(line, "parent ")
+		if err != nil {
+			return nil, nil, err
+		}
+		if len(parents) == maxParents {
+			return nil, nil, fmt.Errorf("more than %d parents", maxParents)
+		}
+		parents, rest = append(parents, hash), next
+	}
 }
 
 // headerPeople takes the lines of author and committer, where they stand. Git does

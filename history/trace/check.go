@@ -5,15 +5,13 @@ import (
 	"errors"
 	"hash/fnv"
 	"io/fs"
-	"runtime"
 	"slices"
 	"strings"
 	"time"
 
-	"golang.org/x/sync/errgroup"
-
 	"speedtrail/history/revision"
 	"speedtrail/schema"
+	"speedtrail/schema/parallel"
 	"speedtrail/schema/source"
 )
 
@@ -254,28 +252,21 @@ func (k *checker) load(ctx context.Context, wants []want) error {
 		parts[n] = append(parts[n], v)
 		fresh = append(fresh, v)
 	}
-	work, ctx := errgroup.WithContext(ctx)
-	work.SetLimit(runtime.GOMAXPROCS(0))
-	for n, part := range parts {
-		if len(part) == 0 {
-			continue
-		}
-		work.Go(func() error {
-			// The versions of a folder one after the other: each is stored as a
-			// difference to the next, and mostly has the rows of the one before.
-			slices.SortStableFunc(part, func(a, b *Loaded) int { return strings.Compare(a.Folder, b.Folder) })
-			for _, v := range part {
-				if err := ctx.Err(); err != nil {
-					return err
-				}
-				if err := k.loadOne(n, v, of[v.Key]); err != nil {
-					return err
-				}
+	err := parallel.Try(ctx, len(parts), func(ctx context.Context, n int) error {
+		// The versions of a folder one after the other: each is stored as a
+		// difference to the next, and mostly has the rows of the one before.
+		slices.SortStableFunc(parts[n], func(a, b *Loaded) int { return strings.Compare(a.Folder, b.Folder) })
+		for _, v := range parts[n] {
+			if err := ctx.Err(); err != nil {
+				return err
 			}
-			return nil
-		})
-	}
-	if err := work.Wait(); err != nil {
+			if err := k.loadOne(n, v, of[v.Key]); err != nil {
+				return err
+			}
+		}
+		return nil
+	})
+	if err != nil {
 		return err
 	}
 	for _, v := range fresh {

@@ -1,13 +1,10 @@
 package network
 
 import (
-	"bufio"
 	"context"
 	"fmt"
 	"io"
 	"math/rand/v2"
-	"os"
-	"os/exec"
 	"testing"
 )
 
@@ -27,37 +24,16 @@ type PastSize struct {
 var Decade = PastSize{Size: Size{Routes: 500, Rows: 60, AxleLoad: 15, Temp: 3, Trains: 10}, Commits: 5000, Branch: 20}
 
 // RepositoryWithPast writes the network of a size with its history into a new
-// folder that lives as long as the test, nothing checked out. It skips the test where the git program is absent; in CI that is a
-// failure.
+// folder that lives as long as the test, nothing checked out. It skips the test
+// where the git program is absent; in CI that is a failure.
 func RepositoryWithPast(tb testing.TB, s PastSize) (dir string) {
 	tb.Helper()
-	if _, err := exec.LookPath("git"); err != nil {
-		if os.Getenv("CI") == "true" {
-			tb.Fatal(err)
-		}
-		tb.Skip("the git program is not installed")
-	}
-	dir = tb.TempDir()
-	if err := WritePast(context.Background(), dir, s); err != nil {
-		tb.Fatal(err)
-	}
-	return dir
+	return written(tb, func(ctx context.Context, dir string) error { return WritePast(ctx, dir, s) })
 }
 
 // WritePast writes the network of a size with its history into an empty folder.
 func WritePast(ctx context.Context, dir string, s PastSize) error {
-	if err := Git(ctx, dir, nil, "init", "-q", "-b", "main"); err != nil {
-		return err
-	}
-	stream, w := io.Pipe()
-	go func() {
-		b := bufio.NewWriterSize(w, 1<<16)
-		newPast(b, s).write()
-		w.CloseWithError(b.Flush())
-	}()
-	err := Git(ctx, dir, stream, "fast-import", "--quiet", "--done")
-	stream.Close() // ends the writer where git ended early
-	if err != nil {
+	if err := fastImport(ctx, dir, func(w io.Writer) { newPast(w, s).write() }); err != nil {
 		return err
 	}
 	return s.Storage.store(ctx, dir)

@@ -18,6 +18,12 @@ import (
 // where the git program is absent; in CI that is a failure.
 func Repository(tb testing.TB, s Size) (dir string) {
 	tb.Helper()
+	return written(tb, func(ctx context.Context, dir string) error { return Write(ctx, dir, s) })
+}
+
+// written has a repository written into a new folder, if there is a git program.
+func written(tb testing.TB, write func(ctx context.Context, dir string) error) (dir string) {
+	tb.Helper()
 	if _, err := exec.LookPath("git"); err != nil {
 		if os.Getenv("CI") == "true" {
 			tb.Fatal(err)
@@ -25,7 +31,7 @@ func Repository(tb testing.TB, s Size) (dir string) {
 		tb.Skip("the git program is not installed")
 	}
 	dir = tb.TempDir()
-	if err := Write(context.Background(), dir, s); err != nil {
+	if err := write(context.Background(), dir); err != nil {
 		tb.Fatal(err)
 	}
 	return dir
@@ -34,20 +40,26 @@ func Repository(tb testing.TB, s Size) (dir string) {
 // Write writes the network of a size into an empty folder, with the files of
 // Five checked out and everything in one pack.
 func Write(ctx context.Context, dir string, s Size) error {
+	return errors.Join(fastImport(ctx, dir, func(w io.Writer) { history(w, s) }),
+		Git(ctx, dir, nil, "repack", "-adq"),
+		Git(ctx, dir, nil, "reset", "-q", "--hard"))
+}
+
+// fastImport makes a repository of an empty folder from what write writes in the form
+// that git fast-import reads.
+func fastImport(ctx context.Context, dir string, write func(io.Writer)) error {
 	if err := Git(ctx, dir, nil, "init", "-q", "-b", "main"); err != nil {
 		return err
 	}
 	stream, w := io.Pipe()
 	go func() {
 		b := bufio.NewWriterSize(w, 1<<16)
-		history(b, s)
+		write(b)
 		w.CloseWithError(b.Flush())
 	}()
 	err := Git(ctx, dir, stream, "fast-import", "--quiet", "--done")
 	stream.Close() // ends the writer where git ended early
-	return errors.Join(err,
-		Git(ctx, dir, nil, "repack", "-adq"),
-		Git(ctx, dir, nil, "reset", "-q", "--hard"))
+	return err
 }
 
 // Git runs the git program in a folder, untouched by the configuration and the

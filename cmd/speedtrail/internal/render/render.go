@@ -56,6 +56,16 @@ type Style struct {
 	Width int
 	Color bool
 	Brief bool // what decides only: verdict, findings, trains
+	// Advise, if given, completes the calls of this program that a text advises, so
+	// that they are about the same repository and ledger.
+	Advise func(text string) string
+}
+
+func (s *Style) advise(text string) string {
+	if s.Advise == nil {
+		return text
+	}
+	return s.Advise(text)
 }
 
 // km writes millimetres as kilometres.

@@ -83,17 +83,6 @@ func (p *textWriter) signOffs() {
 	}
 }
 
-// markdownSigned lists the decisions.
-func markdownSigned(b *strings.Builder, r Record) {
-	if r.Number == 0 {
-		return
-	}
-	fmt.Fprintf(b, "\n## Sign-off\n\n%s\n", md(stateWords(r)))
-	for _, s := range r.SignOffs {
-		fmt.Fprintf(b, "\n- %s; %s\n", md(signedWords(r, s)), md(s.keyWords()))
-	}
-}
-
 type pageSigned struct {
 	Words, Key, Statement, Signature, Command string
 	// The bytes that were signed, and their signature: what is copied from a page lacks

@@ -327,10 +327,10 @@ func (p *textWriter) end() {
 	p.paragraph("", "Caution: "+Caution)
 	p.printf("\n")
 	if command := p.oneTrain(); command != "" {
-		p.printf("one train: %s\n", command)
+		p.printf("one train: %s\n", source.Visible(p.s.advise(command)))
 	}
 	if p.r.Number != 0 {
-		p.printf("next: speedtrail report %d --out report.html\n", p.r.Number)
+		p.printf("next: %s\n", source.Visible(p.s.advise(fmt.Sprintf("speedtrail report %d --out report.html", p.r.Number))))
 	} else {
 		p.printf("next: the same call with --out report.html writes the report\n")
 	}

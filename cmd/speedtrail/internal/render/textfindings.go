@@ -153,9 +153,9 @@ func (p *textWriter) command(format string, n, most int) string {
 	case p.r.Number == 0:
 		return "--format " + format
 	case format == "html":
-		return fmt.Sprintf("speedtrail report %d --out report.html", p.r.Number)
+		return p.s.advise(fmt.Sprintf("speedtrail report %d --out report.html", p.r.Number))
 	}
-	return fmt.Sprintf("speedtrail report %d --format %s", p.r.Number, format)
+	return p.s.advise(fmt.Sprintf("speedtrail report %d --format %s", p.r.Number, format))
 }
 
 // more says that a list goes on, and which command writes all of it.
