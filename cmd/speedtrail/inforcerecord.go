@@ -165,8 +165,8 @@ func (a *app) inforceRecord(ctx context.Context, x servicing, s *signing) error 
 		a.remark("! the revision is not approved: finding %s", history.ServiceUnapproved)
 	}
 	if x.voids == 0 {
-		for _, e := range byRevoked(evidenceOf(line, folder, statement.Content, approvedThrough(line, folder, statement.Content))) {
-			a.remark("! %s: %s", e.by(), e.Revoked.Short())
+		for _, e := range toBeReviewed(evidenceOf(line, folder, statement.Content, approvedThrough(line, folder, statement.Content))) {
+			a.remark("! %s: %s", e.by(), e.review())
 		}
 	}
 	if x.voids == 0 && statement.Since.After(statement.Time) {

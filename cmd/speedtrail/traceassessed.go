@@ -56,7 +56,7 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 			return nil, noAnchor, err
 		}
 		if in {
-			anchor = traceAnchor{signOffs: anchoredBy(root), revoked: revokedOf(line, root.Records)}
+			anchor = traceAnchor{signOffs: anchoredBy(line, root), revoked: revokedOf(line, root.Records)}
 			if root.Revision == t.h.Commits[c].Hash.String() {
 				anchor.entry = root.Entry.String()
 			} else {
@@ -111,10 +111,10 @@ type traceAnchor struct {
 var noAnchor = traceAnchor{signOffs: []string{}, revoked: []render.RevokedSignOff{}}
 
 // anchoredBy lists who signed an anchor, in which role.
-func anchoredBy(a *approval.AnchorRecord) []string {
+func anchoredBy(line *approval.Line, a *approval.AnchorRecord) []string {
 	list := []string{}
 	for _, r := range a.Records {
-		list = append(list, r.Role+" "+r.Signer)
+		list = append(list, r.Role+" "+r.Signer+elsewhereBehind(line, r))
 	}
 	return list
 }

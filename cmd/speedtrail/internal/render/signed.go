@@ -49,16 +49,21 @@ func stateWords(r Record) string {
 	if r.Superseded != 0 {
 		s += fmt.Sprintf("; superseded by assessment %d", r.Superseded)
 	}
-	return s + revokedWords(r)
+	return s + reviewWords(r)
 }
 
-// revokedWords follows the state where a signature behind it is by a key that was
-// revoked later: whoever reads the state only has to learn of it.
-func revokedWords(r Record) string {
+// reviewWords follows the state where a signature behind it is by a key that was
+// revoked later, or by one that another folder does not have for its name: whoever
+// reads the state only has to learn of it.
+func reviewWords(r Record) string {
+	words := ""
 	if slices.ContainsFunc(r.SignOffs, func(x SignOff) bool { return x.Revoked != nil }) {
-		return "; ! signed with a key that was revoked later"
+		words += "; ! signed with a key that was revoked later"
 	}
-	return ""
+	if slices.ContainsFunc(r.SignOffs, func(x SignOff) bool { return x.Elsewhere != nil }) {
+		words += "; ! signed with a key that an older folder of this ledger does not have for the name"
+	}
+	return words
 }
 
 // signedWords words a decision.
