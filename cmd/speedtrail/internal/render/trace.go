@@ -162,7 +162,7 @@ func TraceCSV(w io.Writer, t *Trace) error {
 	}
 	tail := func(i int) []string {
 		c := &t.Commits[i]
-		return []string{harmless(requestIDs(c)), assessmentNumbers(c)}
+		return []string{harmless(requestIDs(c)), harmless(source.Visible(assessmentNumbers(c)))}
 	}
 	if t.At != "" {
 		out.Write([]string{"route", "direction", "train", "at_km", "before_kmh", "after_kmh", "commit", "author", "authored", "committed", "subject",
@@ -175,15 +175,15 @@ func TraceCSV(w io.Writer, t *Trace) error {
 		for _, train := range trail.Trains {
 			for i := range trail.Steps {
 				s := &trail.Steps[i]
-				before, source := "", ""
+				before, was := "", ""
 				if len(s.Before) > 0 {
-					before, source = csvSpeed(s.Before[0].Speed), assessment.SourceText(s.Before[0].Sources)
+					before, was = csvSpeed(s.Before[0].Speed), assessment.SourceText(s.Before[0].Sources)
 				}
 				row := []string{harmless(t.Route), trail.Direction, harmless(train), t.At, before, csvSpeed(s.After.Speed)}
 				row = append(row, commit(s.After.Commit)...)
-				row = append(row, harmless(source), harmless(assessment.SourceText(s.After.Sources)))
+				row = append(row, harmless(was), harmless(assessment.SourceText(s.After.Sources)))
 				row = append(row, tail(s.After.Commit)...)
-				out.Write(append(row, strings.Join(stepRemarks(t, s), "; ")))
+				out.Write(append(row, harmless(source.Visible(strings.Join(stepRemarks(t, s), "; ")))))
 			}
 		}
 	}
@@ -194,7 +194,7 @@ func TraceCSV(w io.Writer, t *Trace) error {
 				row = append(row, commit(p.Origin)...)
 				row = append(row, harmless(assessment.SourceText(p.Sources)))
 				row = append(row, tail(p.Origin)...)
-				out.Write(append(row, strings.Join(pieceRemarks(t, &p), "; ")))
+				out.Write(append(row, harmless(source.Visible(strings.Join(pieceRemarks(t, &p), "; ")))))
 			}
 		}
 	}
