@@ -4,6 +4,7 @@ import (
 	"encoding/base64"
 	"fmt"
 	"html/template"
+	"path"
 	"slices"
 	"strings"
 	"time"
@@ -116,6 +117,7 @@ func (p *page) fillSigned() {
 		return
 	}
 	p.Standing = source.Visible(stateWords(p.R))
+	p.SignersCommand = source.Visible("git show " + shellWord(p.C.Base.Commit+":"+path.Join(p.C.Folder, "allowed_signers")))
 	for _, s := range p.R.SignOffs {
 		p.Signed = append(p.Signed, pageSigned{
 			Words: source.Visible(signedWords(p.R, s)), Key: source.Visible(s.keyWords()),
