@@ -10,14 +10,12 @@ import (
 	"speedtrail/history/compose"
 )
 
-// Whoever may add to the ledger can anchor a folder of his own, in the names of others
-// and with keys of his own. Wherever these names are shown, it is said that the folder
-// which was anchored before has no such keys of theirs.
-func TestNamesOfAnotherFolder(t *testing.T) {
-	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
-	keys, own := t.TempDir(), t.TempDir()
+// twoFolders writes commits of a data set, one a speed, with tags c0, c1, ..., and in the
+// folder "mine" the same with keys of its own for the same people.
+func twoFolders(t *testing.T, keys, own string, speeds []int, at time.Time) (repo string) {
+	t.Helper()
 	var list []compose.Commit
-	for i, speed := range []int{60, 80} {
+	for i, speed := range speeds {
 		files := plainFiles(t, keys, speed)
 		for name, content := range plainFiles(t, keys, speed) {
 			files["mine/"+name] = content
@@ -34,10 +32,20 @@ func TestNamesOfAnotherFolder(t *testing.T) {
 		}
 		list = append(list, c)
 	}
-	repo := filepath.Join(t.TempDir(), "repo")
+	repo = filepath.Join(t.TempDir(), "repo")
 	if err := compose.Write(t.Context(), repo, list); err != nil {
 		t.Fatal(err)
 	}
+	return repo
+}
+
+// Whoever may add to the ledger can anchor a folder of his own, in the names of others
+// and with keys of his own. Wherever these names are shown, it is said that the folder
+// which was anchored before has no such keys of theirs.
+func TestNamesOfAnotherFolder(t *testing.T) {
+	at := time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC)
+	keys, own := t.TempDir(), t.TempDir()
+	repo := twoFolders(t, keys, own, []int{60, 80}, at)
 	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
 	key := func(name string) string { return filepath.Join(keys, name) }
 	mine := func(name string) string { return filepath.Join(own, "own-"+name) }
@@ -87,4 +95,37 @@ func TestNamesOfAnotherFolder(t *testing.T) {
 	if out := call(t, in("inforce", "--data", "mine", "--format", "json")...).out; strings.Count(out, `"key_elsewhere": {`) != 3 {
 		t.Errorf("in force, json: %s", out)
 	}
+}
+
+// Who anchors a folder of his own at a commit that nobody else has makes verify fail for
+// nobody who asks by the root that he noted.
+func TestVerifyWithoutCommitOfAnotherFolder(t *testing.T) {
+	keys, own := t.TempDir(), t.TempDir()
+	repo := twoFolders(t, keys, own, []int{60, 80, 90}, time.Date(2026, 3, 1, 12, 0, 0, 0, time.UTC))
+	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	key := func(name string) string { return filepath.Join(keys, name) }
+	mine := func(name string) string { return filepath.Join(own, "own-"+name) }
+	root := func(args ...string) string {
+		_, after, _ := strings.Cut(call(t, in(args...)...).want(t, 0).errors, "is in force; anchor ")
+		return strings.Fields(after)[0]
+	}
+	first := root("anchor", "c0", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y")
+	second := root("anchor", "c1", "--data", "mine", "--sign", "checker="+mine("ada"), "--sign", "approver="+mine("bea"), "--sign", "in-service="+mine("cem"), "--reason", "root", "-y")
+	call(t, in("assess", "c1", "c2", "--data", "mine")...).want(t, 1)
+	call(t, in("sign", "1", "--data", "mine", "--role", "checker", "--decision", "approve", "--reason", "seen", "--key", mine("ada"), "-y")...).want(t, 0)
+	call(t, in("inforce", "record", "c2", "--data", "mine", "--since", "2026-03-04T00:00:00Z", "--reason", "next", "--key", mine("cem"), "-y")...).want(t, 0)
+	call(t, in("verify", "--anchor", first)...).want(t, 0)
+
+	clone := filepath.Join(t.TempDir(), "clone")
+	gitIn(t, t.TempDir(), "clone", "-q", "--no-local", "--single-branch", "--branch", "c0", repo, clone)
+	verify := []string{"--repo", clone, "--ledger", filepath.Join(repo, ".git", "speedtrail", "ledger.db"), "verify"}
+	got := call(t, append(verify, "--anchor", first)...).want(t, 0)
+	words := strings.Join(strings.Fields(got.out), " ")
+	c1, c2 := gitIn(t, repo, "rev-parse", "c1^{}"), gitIn(t, repo, "rev-parse", "c2^{}")
+	if !strings.Contains(words, "left open: what is recorded of the folder mine, whose policy root is none of those that are given: this repository lacks commits that it names (entry 3, commit "+c1+"; entry 4, commit "+c1+"; entry 6, commit "+c2+")") {
+		t.Errorf("%s", got.out)
+	}
+	// Who asks by no root asks about everything, and who gives that one about it, too.
+	call(t, verify...).want(t, statusFinding)
+	call(t, append(verify, "--anchor", first, "--anchor", second)...).want(t, statusFinding)
 }
