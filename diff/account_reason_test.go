@@ -13,7 +13,7 @@ import (
 func effects(a *diff.Account) string {
 	reasons := map[diff.Reason]string{
 		diff.SameValue: "same value", diff.OnlyText: "only text", diff.OnlyValidity: "only validity", diff.SameForAll: "same for all", diff.NoSuchTrain: "no such train",
-		diff.LowerElsewhere: "lower elsewhere", diff.HiddenToday: "hidden today", diff.NoSpeed: "no speed", diff.NotTheTrack: "not the track", diff.TrackUnaffected: "track unaffected",
+		diff.LowerElsewhere: "lower elsewhere", diff.HiddenToday: "hidden today", diff.NoSpeed: "no speed", diff.NotTheTrack: "not the track", diff.TrackUnaffected: "track unaffected", diff.OtherZone: "other zone",
 	}
 	var lines []string
 	add := func(f *diff.File, d *diff.RowDifference, where string) {
@@ -85,6 +85,7 @@ func TestReasons(t *testing.T) {
 		{"the frame", nil, texts{"dataset.toml": ground["dataset.toml"] + "[limits]\nlargest_step_kmh = 60\n", "trains.toml": trainText("T", 150, "", "C2", 201, 200),
 			"requests/a.toml": requestText("CR-1", "R1", 1, 2, "any", "")},
 			[]string{"dataset.toml  altered: not the track", "requests/a.toml  added: not the track", "requests/a.toml declares added: not the track", "trains.toml train altered: not the track"}},
+		{"the time zone of dates", nil, texts{"dataset.toml": ground["dataset.toml"] + "time_zone = \"Asia/Tokyo\"\n"}, []string{"dataset.toml  altered: other zone"}},
 		{"a jump", nil, texts{"route.toml": ground["route.toml"] + "[[jump]]\narriving_km = 8\nleaving_km = 8.1\n"}, []string{"route.toml +6: track"}},
 		{"a note beside a jump, which alone is of the track", texts{"curves.csv": "from_km,to_km,radius_m,cant_mm,note\n1,2,900,10,\n"}, texts{"route.toml": ground["route.toml"] + "[[jump]]\narriving_km = 8\nleaving_km = 8.1\n", "curves.csv": "from_km,to_km,radius_m,cant_mm,note\n1,2,900,10,x\n"},
 			[]string{"curves.csv -2 +2: only text", "route.toml +6: track"}},

@@ -27,6 +27,7 @@ const (
 	NoSpeed                       // a curve, a gradient, a place
 	NotTheTrack                   // reference trains, requests, policy, settings
 	TrackUnaffected               // the track is the same for trains
+	OtherZone                     // the time zone of dates without one
 )
 
 // String words the reason.
@@ -38,6 +39,7 @@ func (r Reason) String() string {
 		"another restriction is as low or lower for every reference train that it concerns",
 		"hidden today by temporary restrictions on every place that it concerns", "it holds no speed",
 		"it is not part of the track", "no speed depends on it",
+		"only validities differ, by the hours between the zones, on every route, also on those that are the same; all temporary restrictions count, whatever their dates",
 	}[r]
 }
 
@@ -170,6 +172,9 @@ func explainFrame(files []File) {
 		for k := range f.Rows {
 			d := &f.Rows[k]
 			d.Reason = NotTheTrack
+			if f.Path() == "dataset.toml" && slices.Contains(f.Columns(d), "time_zone") {
+				d.Reason = OtherZone
+			}
 			if d.Kind == rows.Altered && f.sameValues(d) {
 				d.Reason = SameValue
 			}

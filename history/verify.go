@@ -114,6 +114,7 @@ type verifier struct {
 	stopped     bool     // the file could not be read to its end
 	backwards   []string // where the times of entries go back
 	lacking     []lacking
+	elsewhere   map[string]map[int64]string // see lacksElsewhere
 	lock        sync.Mutex
 }
 

@@ -5,6 +5,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"maps"
 	"slices"
 	"strings"
 
@@ -46,7 +47,49 @@ func (v *verifier) git() error {
 	}
 	v.r.Proved = append(v.r.Proved, fmt.Sprintf("%d of %d assessments were computed anew from Git", len(v.docs)-other-failed, len(v.docs)))
 	v.leftOut()
-	return v.statements()
+	if err := v.statements(); err != nil {
+		return err
+	}
+	v.leftElsewhere()
+	return nil
+}
+
+// vouched tells whether the root of a folder is among those that were noted elsewhere,
+// where any are given. Whoever may add to the ledger can anchor a folder of his own, at
+// a commit that nobody else has, and sign there: that would be wrong for everybody and
+// for ever, and says nothing about the folders that somebody asks for.
+func (v *verifier) vouched(folder string) bool {
+	a := v.r.Line.Anchor(folder)
+	return len(v.o.Anchors) == 0 || a == nil || slices.Contains(v.o.Anchors, a.Entry.Hash)
+}
+
+// lacksElsewhere notes a commit that such a folder names and this repository lacks.
+func (v *verifier) lacksElsewhere(folder string, entry int64, commit string) {
+	v.lock.Lock()
+	defer v.lock.Unlock()
+	if v.elsewhere == nil {
+		v.elsewhere = map[string]map[int64]string{}
+	}
+	if v.elsewhere[folder] == nil {
+		v.elsewhere[folder] = map[int64]string{}
+	}
+	v.elsewhere[folder][entry] = commit
+}
+
+// leftElsewhere says what was left open of such folders.
+func (v *verifier) leftElsewhere() {
+	for _, folder := range slices.Sorted(maps.Keys(v.elsewhere)) {
+		entries := v.elsewhere[folder]
+		var names []string
+		for _, entry := range slices.Sorted(maps.Keys(entries)) {
+			if len(names) == mostLacking {
+				names = append(names, fmt.Sprintf("and %d more", len(entries)-mostLacking))
+				break
+			}
+			names = append(names, fmt.Sprintf("entry %d, commit %s", entry, entries[entry]))
+		}
+		v.r.Unproved = append(v.r.Unproved, fmt.Sprintf("what is recorded of the folder %s, whose policy root is none of those that are given: this repository lacks commits that it names (%s)", folder, strings.Join(names, "; ")))
+	}
 }
 
 // fate is what came of computing an assessment anew.
@@ -67,6 +110,8 @@ func (v *verifier) recomputed(d recorded, digest string, err error) fate {
 		return byOtherRules
 	case absent && v.restsOn(d) == "":
 		v.lacks(d, lacks)
+	case absent && !v.vouched(d.doc.Computed.Folder):
+		v.lacksElsewhere(d.doc.Computed.Folder, d.entry, lacks.Commit)
 	case absent:
 		v.problem(d.entry, "git", "the assessment cannot be computed anew, and %s: %s", v.restsOn(d), oneLine(err))
 	case err != nil:
@@ -144,7 +189,10 @@ func oneLine(err error) string {
 func (v *verifier) statements() error {
 	check := func(entry int64, revision, folder, content string, policy *approval.Policy) {
 		tree, signoff, signers, err := v.o.Checker.Content(v.ctx, revision, folder)
+		var lacks *LackingError
 		switch {
+		case errors.As(err, &lacks) && !v.vouched(folder):
+			v.lacksElsewhere(folder, entry, lacks.Commit)
 		case err != nil:
 			v.problem(entry, "git", "the commit %s that it names cannot be read: %s", revision, oneLine(err))
 		case tree != content:

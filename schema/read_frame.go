@@ -39,7 +39,7 @@ func (r *reader) dataset(d *Dataset) {
 	d.Name = m.Text("name", true)
 	if zone := m.Text("time_zone", false); zone != "" {
 		location, err := time.LoadLocation(zone)
-		if err != nil || zone == "Local" {
+		if err != nil || !knownZone(zone) {
 			r.faults.Add(valuePlace(m, "time_zone"), "time_zone %s is no IANA time zone name", source.Quote(zone))
 		} else {
 			d.TimeZone = location

@@ -56,8 +56,31 @@ func (c *checker) Content(_ context.Context, commit, folder string) (tree, signo
 		return "", "", "", err
 	}
 	defer repo.Close()
-	return contentAt(repo, commit, folder)
+	tree, signoff, allowedSigners, err = contentAt(repo, commit, folder)
+	if err != nil {
+		err = lackingToo(err, lacks(repo, "revision", commit))
+	}
+	return tree, signoff, allowedSigners, err
 }
+
+// lackingToo adds to an error that it comes of a commit that the repository does not
+// have, where it does.
+func lackingToo(err, lacking error) error {
+	var lacks *history.LackingError
+	if !errors.As(lacking, &lacks) {
+		return err
+	}
+	return &bothErrors{err, lacks}
+}
+
+// bothErrors reads as the first one, and is the second one as well.
+type bothErrors struct {
+	error
+	too error
+}
+
+// Unwrap gives both.
+func (e *bothErrors) Unwrap() []error { return []error{e.error, e.too} }
 
 // contentAt gives the tree of a folder at a commit of a repository, and the policy files
 // there.

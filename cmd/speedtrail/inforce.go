@@ -105,6 +105,8 @@ type serviceRecord struct {
 	Since    string   `json:"since"`
 	Signer   string   `json:"signer"`
 	Key      string   `json:"key"`
+	// Elsewhere is null where no older folder knows the signer without this key.
+	Elsewhere *render.Elsewhere `json:"key_elsewhere" jsonschema:"nullable"`
 	// Revoked is null while the key is in use.
 	Revoked  *render.Revocation `json:"key_revoked" jsonschema:"nullable"`
 	Stated   string             `json:"stated"`
@@ -115,7 +117,8 @@ type serviceRecord struct {
 	Late     string  `json:"approved_late"` // when, where that was after it went into service; else empty
 	Undoes   bool    `json:"undoes"`
 	Through  []int64 `json:"assessments"`
-	// Review are the statements by which it is approved whose keys were revoked later.
+	// Review are the statements by which it is approved whose keys were revoked later, or
+	// are not those of their names in an older folder.
 	Review []evidence `json:"review"`
 }
 
@@ -134,6 +137,9 @@ type correctedRecord struct {
 	How    string        `json:"how" jsonschema:"enum=replaces,enum=voids"` // what the later one does
 	Entry  int64         `json:"by_entry"`                                  // the later one
 	Signer string        `json:"by_signer"`
+	// Elsewhere is null where no older folder knows the signer of the later one without
+	// its key.
+	Elsewhere *render.Elsewhere `json:"by_key_elsewhere" jsonschema:"nullable"`
 	// Revoked is null while the key of the later one is in use.
 	Revoked *render.Revocation `json:"by_key_revoked" jsonschema:"nullable"`
 	Reason  string             `json:"by_reason"`
@@ -142,6 +148,9 @@ type correctedRecord struct {
 
 func (x correctedRecord) words() string {
 	text := fmt.Sprintf("; entry %d %s it, signed by %s (%s)", x.Entry, x.How, x.Signer, x.Reason)
+	if x.Elsewhere != nil {
+		text += "; ! " + x.Elsewhere.Short()
+	}
 	if x.Revoked != nil {
 		text += "; ! its " + x.Revoked.Short()
 	}
@@ -151,7 +160,7 @@ func (x correctedRecord) words() string {
 func corrections(line *approval.Line, folder string) []correctedRecord {
 	list := []correctedRecord{}
 	for _, x := range line.Corrections(folder) {
-		list = append(list, correctedRecord{serviceRecordOf(line, history.ServiceOf(line, x.Record)), x.How, x.By.Entry.Seq, x.By.Signer, revocationOf(line, x.By.Fingerprint), x.By.Reason, x.Record})
+		list = append(list, correctedRecord{serviceRecordOf(line, history.ServiceOf(line, x.Record)), x.How, x.By.Entry.Seq, x.By.Signer, elsewhereOf(line, x.By), revocationOf(line, x.By.Fingerprint), x.By.Reason, x.Record})
 	}
 	return list
 }
@@ -170,7 +179,7 @@ func serviceRecordOf(line *approval.Line, s history.Service) serviceRecord {
 		Late:  late,
 		Entry: s.Entry.Seq, Revision: s.Revision, Folder: s.Folder, Routes: append([]string{}, s.Routes...), Since: s.Since.Format(signoff.TimeLayout),
 		Signer: s.Signer, Key: s.Fingerprint, Stated: s.Time.Format(signoff.TimeLayout), Recorded: s.Recorded.Format(signoff.TimeLayout), Reason: s.Reason,
-		Revoked: revocationOf(line, s.Fingerprint), Review: byRevoked(evidenceOf(line, s.Folder, s.Content, s.Through)),
+		Revoked: revocationOf(line, s.Fingerprint), Elsewhere: elsewhereOf(line, s.Record), Review: toBeReviewed(evidenceOf(line, s.Folder, s.Content, s.Through)),
 		lapsed:   s.Lapsed,
 		Approved: s.Approved, Undoes: s.Undoes, Through: append([]int64{}, s.Through...),
 	}
@@ -195,11 +204,14 @@ func (r serviceRecord) words() string {
 		state = "approved, the anchor"
 	}
 	text := fmt.Sprintf("%s  commit %s on %s; %s; entry %d, signed by %s (%s)", r.Since, short(r.Revision), where, state, r.Entry, r.Signer, r.Reason)
+	if r.Elsewhere != nil {
+		text += "; ! " + r.Elsewhere.Short()
+	}
 	if r.Revoked != nil {
 		text += "; ! its " + r.Revoked.Short()
 	}
 	for _, e := range r.Review {
-		text += "; ! " + e.by() + ": " + e.Revoked.Short()
+		text += "; ! " + e.by() + ": " + e.review()
 	}
 	return source.Visible(text)
 }

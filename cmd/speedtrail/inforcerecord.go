@@ -191,8 +191,8 @@ func (a *app) remarkOdd(line *approval.Line, s *signoff.Statement) {
 	if !line.ApprovedContent(s.Folder, s.Content) {
 		a.remark("! the revision is not approved: finding %s", history.ServiceUnapproved)
 	}
-	for _, e := range byRevoked(evidenceOf(line, s.Folder, s.Content, approvedThrough(line, s.Folder, s.Content))) {
-		a.remark("! %s: %s", e.by(), e.Revoked.Short())
+	for _, e := range toBeReviewed(evidenceOf(line, s.Folder, s.Content, approvedThrough(line, s.Folder, s.Content))) {
+		a.remark("! %s: %s", e.by(), e.review())
 	}
 	if s.Since.After(s.Time) {
 		a.remark("! %s lies in the future: until then the revision is not in force, and after it nothing asks whether it went into service", s.Since.Format(signoff.TimeLayout))

@@ -58,9 +58,23 @@ type evidence struct {
 	Decision    string `json:"decision" jsonschema:"enum=approve,enum=reject,enum=anchor"`
 	Signer      string `json:"signer"`
 	Fingerprint string `json:"key"`
+	// Elsewhere is null where no older folder knows the signer without this key.
+	Elsewhere *render.Elsewhere `json:"key_elsewhere" jsonschema:"nullable"`
 	// Revoked is null while the key is in use.
 	Revoked *render.Revocation `json:"key_revoked" jsonschema:"nullable"`
 	Time    string             `json:"time"`
+}
+
+// review says why somebody has to look at it again; empty where nobody has to.
+func (e *evidence) review() string {
+	return strings.TrimPrefix(e.Elsewhere.Behind()+e.shortlyRevoked(), "; ! ")
+}
+
+func (e *evidence) shortlyRevoked() string {
+	if e.Revoked == nil {
+		return ""
+	}
+	return "; ! " + e.Revoked.Short()
 }
 
 // by says what was signed, and who did.
@@ -259,9 +273,9 @@ func (a *app) printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		governed := render.Hanging(source.Visible(strings.Join(s.Governed, "; ")), max(width, len(indent)+30), indent)
 		fmt.Fprintf(w, "  %s%s %3d km/h   %s\n", name, strings.Repeat(" ", names-render.Cells(name)), s.Speed, governed)
 	}
-	fmt.Fprintf(w, "\n%s\n", render.Hanging(source.Visible(fmt.Sprintf("Evidence: recorded %s as entry %d, stated %s, key %s", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)+x.Record.Revoked.Behind()), width, "  "))
+	fmt.Fprintf(w, "\n%s\n", render.Hanging(source.Visible(fmt.Sprintf("Evidence: recorded %s as entry %d, stated %s, key %s", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)+x.Record.Elsewhere.Behind()+x.Record.Revoked.Behind()), width, "  "))
 	for _, e := range x.Signed {
-		fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(fmt.Sprintf("%s at %s, entry %d, key %s", e.by(), e.Time, e.Entry, e.Fingerprint)+e.Revoked.Behind()), width, "  "))
+		fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(fmt.Sprintf("%s at %s, entry %d, key %s", e.by(), e.Time, e.Entry, e.Fingerprint)+e.Elsewhere.Behind()+e.Revoked.Behind()), width, "  "))
 	}
 	_, err := fmt.Fprintf(w, "head %s\n%s proves the chain and the signatures\n", x.Head, source.Visible(a.advise("speedtrail verify")))
 	return err

@@ -72,7 +72,7 @@ func anchorsOf(line *approval.Line) []registeredAnchor {
 	anchors := line.Anchors()
 	for _, folder := range slices.Sorted(maps.Keys(anchors)) {
 		x := anchors[folder]
-		out := registeredAnchor{folder, x.Revision, x.Records[0].Recorded.UTC().Format(signoff.TimeLayout), x.Entry.String(), anchoredBy(x), revokedOf(line, x.Records), []string{}}
+		out := registeredAnchor{folder, x.Revision, x.Records[0].Recorded.UTC().Format(signoff.TimeLayout), x.Entry.String(), anchoredBy(line, x), revokedOf(line, x.Records), []string{}}
 		for _, r := range x.Records {
 			out.Reasons = append(out.Reasons, r.Reason)
 		}
@@ -155,6 +155,7 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			if x.Assessment != r.Number {
 				text += fmt.Sprintf(" (on assessment %d, which has the same content)", x.Assessment)
 			}
+			text += elsewhereBehind(line, x)
 			if revoked := revocationOf(line, x.Fingerprint); revoked != nil {
 				text += " (! " + revoked.Short() + ")"
 			}
@@ -205,6 +206,7 @@ func signedBy(line *approval.Line, number int64) []string {
 		if r.Assessment != number {
 			text += fmt.Sprintf(" on assessment %d", r.Assessment)
 		}
+		text += elsewhereBehind(line, r)
 		list = append(list, text)
 	}
 	return list

@@ -111,7 +111,7 @@ func recordOf(line *approval.Line, ledger string, number int64, digest string) r
 	}
 	for _, r := range decisionsOn(s, number) {
 		rec.SignOffs = append(rec.SignOffs, render.SignOff{
-			Assessment: r.Assessment, Entry: r.Entry.Seq, Role: r.Role, Decision: r.Decision, Signer: r.Signer, Fingerprint: r.Fingerprint, Reason: r.Reason, Revoked: revocationOf(line, r.Fingerprint),
+			Assessment: r.Assessment, Entry: r.Entry.Seq, Role: r.Role, Decision: r.Decision, Signer: r.Signer, Fingerprint: r.Fingerprint, Reason: r.Reason, Revoked: revocationOf(line, r.Fingerprint), Elsewhere: elsewhereOf(line, r),
 			Time: r.Time.UTC().Format(signoff.TimeLayout), Statement: string(r.Text), Signature: string(r.Signature), Command: render.VerifyCommand(r.Signer, r.Time),
 		})
 	}

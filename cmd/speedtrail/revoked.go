@@ -32,6 +32,24 @@ func revokedOf(line *approval.Line, records []approval.Record) []render.RevokedS
 	return list
 }
 
+// elsewhereOf tells where an older folder knows a signer without his key; nil where
+// none does.
+func elsewhereOf(line *approval.Line, r approval.Record) *render.Elsewhere {
+	e := line.Elsewhere(r)
+	if e == nil {
+		return nil
+	}
+	return &render.Elsewhere{Anchor: e.Anchor, Folder: e.Folder}
+}
+
+// elsewhereBehind says so behind a signer in a list.
+func elsewhereBehind(line *approval.Line, r approval.Record) string {
+	if e := elsewhereOf(line, r); e != nil {
+		return " (! " + e.Short() + ")"
+	}
+	return ""
+}
+
 // evidenceOf gives the statements by which a content of a folder is approved: those on
 // assessments, and those of the anchor that has the content.
 func evidenceOf(line *approval.Line, folder, content string, assessments []int64) []evidence {
@@ -39,7 +57,7 @@ func evidenceOf(line *approval.Line, folder, content string, assessments []int64
 	add := func(number int64, records []approval.Record) {
 		for _, d := range records {
 			decision := cmp.Or(d.Decision, string(d.Kind)) // an anchor decides nothing else
-			list = append(list, evidence{number, d.Entry.Seq, d.Role, decision, d.Signer, d.Fingerprint, revocationOf(line, d.Fingerprint), d.Time.Format(signoff.TimeLayout)})
+			list = append(list, evidence{number, d.Entry.Seq, d.Role, decision, d.Signer, d.Fingerprint, elsewhereOf(line, d), revocationOf(line, d.Fingerprint), d.Time.Format(signoff.TimeLayout)})
 		}
 	}
 	if a := line.Anchor(folder); a != nil && a.Content == content {
@@ -51,11 +69,12 @@ func evidenceOf(line *approval.Line, folder, content string, assessments []int64
 	return list
 }
 
-// byRevoked gives the evidence whose keys were revoked later.
-func byRevoked(all []evidence) []evidence {
+// toBeReviewed gives the evidence whose keys were revoked later, or are not those of the
+// names in an older folder.
+func toBeReviewed(all []evidence) []evidence {
 	list := []evidence{}
 	for _, e := range all {
-		if e.Revoked != nil {
+		if e.Revoked != nil || e.Elsewhere != nil {
 			list = append(list, e)
 		}
 	}

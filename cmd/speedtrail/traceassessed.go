@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"os"
+	"slices"
 
 	"speedtrail/cmd/speedtrail/internal/render"
 	"speedtrail/history/approval"
@@ -56,7 +57,7 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 			return nil, noAnchor, err
 		}
 		if in {
-			anchor = traceAnchor{signOffs: anchoredBy(root), revoked: revokedOf(line, root.Records)}
+			anchor = traceAnchor{signOffs: anchoredBy(line, root), revoked: revokedOf(line, root.Records)}
 			if root.Revision == t.h.Commits[c].Hash.String() {
 				anchor.entry = root.Entry.String()
 			} else {
@@ -69,7 +70,7 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 		after := t.h.Descendants(c)
 		for _, r := range ranges {
 			if r.holds(t.h.Commits[c].Hash, after) {
-				list = append(list, render.TraceAssessment{Number: r.number, State: line.State(r.number).Word, SignOffs: signedBy(line, r.number), Revoked: revokedOf(line, decisionsOn(line.State(r.number), r.number))})
+				list = append(list, render.TraceAssessment{Beyond: r.beyond, Number: r.number, State: line.State(r.number).Word, SignOffs: signedBy(line, r.number), Revoked: revokedOf(line, decisionsOn(line.State(r.number), r.number))})
 			}
 		}
 		return list, anchor, nil
@@ -111,10 +112,10 @@ type traceAnchor struct {
 var noAnchor = traceAnchor{signOffs: []string{}, revoked: []render.RevokedSignOff{}}
 
 // anchoredBy lists who signed an anchor, in which role.
-func anchoredBy(a *approval.AnchorRecord) []string {
+func anchoredBy(line *approval.Line, a *approval.AnchorRecord) []string {
 	list := []string{}
 	for _, r := range a.Records {
-		list = append(list, r.Role+" "+r.Signer)
+		list = append(list, r.Role+" "+r.Signer+elsewhereBehind(line, r))
 	}
 	return list
 }
@@ -125,6 +126,7 @@ type assessedRange struct {
 	number       int64
 	base, target int32               // in the history, where both are
 	listed       map[trace.Hash]bool // else
+	beyond       bool                // the target is not in the history that is traced
 }
 
 func (r *assessedRange) holds(h trace.Hash, after []bool) bool {
@@ -149,6 +151,7 @@ func (t *tracing) rangeOf(ctx context.Context, row ledger.AssessmentRow) (*asses
 	var known [2]bool
 	r.base, known[0] = t.h.Index(base)
 	r.target, known[1] = t.h.Index(target)
+	r.beyond = !known[1] || !slices.Contains(t.view.Order(), r.target)
 	if known[0] && known[1] {
 		return r, nil
 	}

@@ -119,7 +119,7 @@ func (t *tracing) point() error {
 func (t *tracing) trail(d codes.Direction, trail *trace.Trail) (render.TraceTrail, error) {
 	out := render.TraceTrail{Direction: d.String(), Now: t.value(trail.Now), Steps: []render.TraceStep{}, Line: []render.TraceReign{}}
 	for _, s := range trail.Steps {
-		step := render.TraceStep{After: t.value(s.After), Before: []render.TraceValue{}, Across: s.Across, Aside: s.Aside}
+		step := render.TraceStep{After: t.value(s.After), Before: []render.TraceValue{}, Across: s.Across, Aside: s.Aside, Overtaken: []int64{}}
 		for _, b := range s.Before {
 			step.Before = append(step.Before, t.value(b))
 		}
@@ -286,7 +286,28 @@ func (t *tracing) describe(ctx context.Context) error {
 		}
 		t.doc.Commits = append(t.doc.Commits, out)
 	}
+	for i := range t.doc.Trails {
+		t.overtake(t.doc.Trails[i].Steps)
+	}
 	return nil
+}
+
+// overtake notes which steps an assessment does not speak of though its range holds
+// their commits: it compares its base with its target, and a speed that came and went
+// between them is in none of the two.
+func (t *tracing) overtake(steps []render.TraceStep) {
+	for i := range steps {
+		s := &steps[i]
+		for _, a := range t.doc.Commits[s.After.Commit].Assessments {
+			after := t.h.Descendants(t.named[s.After.Commit])
+			if slices.ContainsFunc(steps[:i], func(later render.TraceStep) bool {
+				return !later.Aside && after[t.named[later.After.Commit]] &&
+					slices.ContainsFunc(t.doc.Commits[later.After.Commit].Assessments, func(b render.TraceAssessment) bool { return b.Number == a.Number })
+			}) {
+				s.Overtaken = append(s.Overtaken, a.Number)
+			}
+		}
+	}
 }
 
 // changedAt tells of the commits of the document at which of them something

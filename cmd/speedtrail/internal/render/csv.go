@@ -6,17 +6,31 @@ import (
 	"regexp"
 	"strconv"
 	"strings"
+	"unicode/utf8"
 
 	"speedtrail/history/assessment"
 )
 
 // harmless prefixes a text that a spreadsheet could take for a formula with an
-// apostrophe. Numbers and positions are left alone.
+// apostrophe. Numbers and positions are left alone. Where the decimal sign is a comma,
+// spreadsheets take semicolons for what divides the cells of a file, whatever it was
+// made with: what follows one is looked at as well.
 func harmless(s string) string {
-	if s == "" || !strings.ContainsRune("=+-@\t\r\n", rune(s[0])) {
-		return s
+	if !strings.ContainsRune(s, ';') {
+		return inert(s)
 	}
-	if negative.MatchString(s) {
+	parts := strings.Split(s, ";")
+	for i, part := range parts {
+		parts[i] = inert(part)
+	}
+	return strings.Join(parts, ";")
+}
+
+// inert is harmless for a cell. Quotation marks at its beginning are those of the
+// cell where it is taken out of a larger one.
+func inert(s string) string {
+	first, _ := utf8.DecodeRuneInString(strings.TrimLeft(s, `"`))
+	if !strings.ContainsRune("=+-@\t\r\n\uff1d\uff0b\uff0d\uff20", first) || negative.MatchString(s) {
 		return s
 	}
 	return "'" + s

@@ -53,26 +53,28 @@ type page struct {
 	// JSONCommand is the command that writes all of it, after a comma; empty for one
 	// that is not recorded.
 	JSONCommand string
-	Contents    []pageLink
-	Base        string
-	Target      string
-	Stretches   []pageStretch
-	ShownRows   int
-	AllRows     int
-	LeftOut     int // stretches that are not drawn
-	Lines       []pageFile
-	LinesLeft   int
-	Caution     string
-	CSS         template.CSS
-	JS          template.JS
-	Policy      string
-	Routes      []string // of the stretches that are drawn and of the changes that are hidden
-	Undrawn     []string // routes that differ and have none
-	Trains      []string
-	Track       []pageTrack
-	Altered     []pageTrain
-	Times       map[string]string
-	Seen        map[string]string // by train, on which routes it sees a change
+	// SignersCommand is the command that writes allowed_signers of the base.
+	SignersCommand string
+	Contents       []pageLink
+	Base           string
+	Target         string
+	Stretches      []pageStretch
+	ShownRows      int
+	AllRows        int
+	LeftOut        int // stretches that are not drawn
+	Lines          []pageFile
+	LinesLeft      int
+	Caution        string
+	CSS            template.CSS
+	JS             template.JS
+	Policy         string
+	Routes         []string // of the stretches that are drawn and of the changes that are hidden
+	Undrawn        []string // routes that differ and have none
+	Trains         []string
+	Track          []pageTrack
+	Altered        []pageTrain
+	Times          map[string]string
+	Seen           map[string]string // by train, on which routes it sees a change
 
 	Findings       []pageFindings
 	Acceptances    []string

@@ -58,10 +58,13 @@ func (m *markdown) title(d *assessment.Document, r Record) {
 	c := m.c
 	state := "not recorded"
 	if r.Number != 0 {
-		state = fmt.Sprintf("assessment %d, %s%s", r.Number, r.State, revokedWords(r))
+		state = fmt.Sprintf("assessment %d, %s%s", r.Number, r.State, reviewWords(r))
 	}
 	m.add("# Change of route speed data: %s (%s)\n\n", md(titled(c.Dataset)), state)
 	m.add("| | |\n|---|---|\n| base | %s |\n| target | %s |\n", md(revisionName(d.Named.Base, d.Named.BaseName, c.Base)+details(c.Base)), md(revisionName(d.Named.Target, d.Named.TargetName, c.Target)+details(c.Target)))
+	if c.Folder != "." {
+		m.add("| folder | %s |\n", md(c.Folder))
+	}
 	if len(c.Preparers) > 0 {
 		m.add("| prepared by | %s |\n", md(people(c.Preparers)+countedWords(c)))
 	}

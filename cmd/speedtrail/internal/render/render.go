@@ -41,7 +41,10 @@ type SignOff struct {
 	Decision    string `json:"decision"`
 	Entry       int64  `json:"entry"`
 	Fingerprint string `json:"key"`
-	Reason      string `json:"reason"`
+	// Elsewhere is null where no older folder of the ledger knows the signer without
+	// this key.
+	Elsewhere *Elsewhere `json:"key_elsewhere" jsonschema:"nullable"`
+	Reason    string     `json:"reason"`
 	// Revoked is null while the key is in use.
 	Revoked   *Revocation `json:"key_revoked" jsonschema:"nullable"`
 	Role      string      `json:"role"`

@@ -31,9 +31,9 @@ func (r *Revocation) Behind() string {
 }
 
 // keyWords names the entry and the key of a decision, and says where the key was
-// revoked later.
+// revoked later, or is not that of the name elsewhere.
 func (s *SignOff) keyWords() string {
-	return fmt.Sprintf("entry %d, key %s", s.Entry, s.Fingerprint) + s.Revoked.Behind()
+	return fmt.Sprintf("entry %d, key %s", s.Entry, s.Fingerprint) + s.Elsewhere.Behind() + s.Revoked.Behind()
 }
 
 // RevokedSignOff is a decision of a list whose key was revoked later.

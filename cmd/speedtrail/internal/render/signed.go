@@ -4,6 +4,7 @@ import (
 	"encoding/base64"
 	"fmt"
 	"html/template"
+	"path"
 	"slices"
 	"strings"
 	"time"
@@ -49,16 +50,21 @@ func stateWords(r Record) string {
 	if r.Superseded != 0 {
 		s += fmt.Sprintf("; superseded by assessment %d", r.Superseded)
 	}
-	return s + revokedWords(r)
+	return s + reviewWords(r)
 }
 
-// revokedWords follows the state where a signature behind it is by a key that was
-// revoked later: whoever reads the state only has to learn of it.
-func revokedWords(r Record) string {
+// reviewWords follows the state where a signature behind it is by a key that was
+// revoked later, or by one that another folder does not have for its name: whoever
+// reads the state only has to learn of it.
+func reviewWords(r Record) string {
+	words := ""
 	if slices.ContainsFunc(r.SignOffs, func(x SignOff) bool { return x.Revoked != nil }) {
-		return "; ! signed with a key that was revoked later"
+		words += "; ! signed with a key that was revoked later"
 	}
-	return ""
+	if slices.ContainsFunc(r.SignOffs, func(x SignOff) bool { return x.Elsewhere != nil }) {
+		words += "; ! signed with a key that an older folder of this ledger does not have for the name"
+	}
+	return words
 }
 
 // signedWords words a decision.
@@ -100,6 +106,7 @@ func (p *page) fillSigned() {
 		return
 	}
 	p.Standing = source.Visible(stateWords(p.R))
+	p.SignersCommand = source.Visible("git show " + shellWord(p.C.Base.Commit+":"+path.Join(p.C.Folder, "allowed_signers")))
 	for _, s := range p.R.SignOffs {
 		p.Signed = append(p.Signed, pageSigned{
 			Words: source.Visible(signedWords(p.R, s)), Key: source.Visible(s.keyWords()),

@@ -83,7 +83,7 @@ func (p *textWriter) heading(s string, names ...string) {
 func (p *textWriter) title() {
 	state := "not recorded"
 	if p.r.Number != 0 {
-		state = fmt.Sprintf("assessment %d, %s%s", p.r.Number, p.r.State, revokedWords(p.r))
+		state = fmt.Sprintf("assessment %d, %s%s", p.r.Number, p.r.State, reviewWords(p.r))
 	}
 	p.paragraph("", fmt.Sprintf("Change of route speed data: %s (%s)", titled(p.c.Dataset), state))
 	side := func(word, typed, name string, r assessment.Revision) {
@@ -91,6 +91,9 @@ func (p *textWriter) title() {
 	}
 	side("base", p.d.Named.Base, p.d.Named.BaseName, p.c.Base)
 	side("target", p.d.Named.Target, p.d.Named.TargetName, p.c.Target)
+	if p.c.Folder != "." {
+		p.paragraph("folder    ", p.c.Folder)
+	}
 	for i, q := range p.c.Requests {
 		word := "requests"
 		if i > 0 {

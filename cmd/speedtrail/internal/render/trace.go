@@ -2,6 +2,7 @@ package render
 
 import (
 	"encoding/csv"
+	"fmt"
 	"io"
 	"strconv"
 	"strings"
@@ -60,10 +61,22 @@ type TraceCommit struct {
 
 // TraceAssessment is a recorded assessment.
 type TraceAssessment struct {
+	// Beyond tells that its target is no part of the history that is traced, so that
+	// nobody sees here what it judged.
+	Beyond   bool             `json:"beyond"`
 	Number   int64            `json:"number"`
 	Revoked  []RevokedSignOff `json:"revoked"`   // of sign_offs, those by keys that were revoked later
 	SignOffs []string         `json:"sign_offs"` // "approve checker m.okoro@harbourline.example"
 	State    string           `json:"state"`
+}
+
+// words says where it stands, and who signed it.
+func (a *TraceAssessment) words() []string {
+	words := []string{a.State}
+	if a.Beyond {
+		words = append(words, "! of a target that is not in this history")
+	}
+	return append(words, WithRevoked(a.SignOffs, a.Revoked)...)
 }
 
 // TraceRequest is a change request.
@@ -100,6 +113,9 @@ type TraceStep struct {
 	After  TraceValue   `json:"after"`
 	Aside  bool         `json:"aside"`  // a later merge did not take it
 	Before []TraceValue `json:"before"` // of the parents, each speed once; empty where the history begins
+	// Overtaken are the assessments of its commit that did not judge this speed: a later
+	// commit of the same range altered it.
+	Overtaken []int64 `json:"overtaken"`
 }
 
 // TraceValue is the speed at a revision with the rows that govern it there.
@@ -162,7 +178,7 @@ func TraceCSV(w io.Writer, t *Trace) error {
 	}
 	tail := func(i int) []string {
 		c := &t.Commits[i]
-		return []string{harmless(requestIDs(c)), assessmentNumbers(c)}
+		return []string{harmless(requestIDs(c)), harmless(source.Visible(assessmentNumbers(c)))}
 	}
 	if t.At != "" {
 		out.Write([]string{"route", "direction", "train", "at_km", "before_kmh", "after_kmh", "commit", "author", "authored", "committed", "subject",
@@ -175,15 +191,15 @@ func TraceCSV(w io.Writer, t *Trace) error {
 		for _, train := range trail.Trains {
 			for i := range trail.Steps {
 				s := &trail.Steps[i]
-				before, source := "", ""
+				before, was := "", ""
 				if len(s.Before) > 0 {
-					before, source = csvSpeed(s.Before[0].Speed), assessment.SourceText(s.Before[0].Sources)
+					before, was = csvSpeed(s.Before[0].Speed), assessment.SourceText(s.Before[0].Sources)
 				}
 				row := []string{harmless(t.Route), trail.Direction, harmless(train), t.At, before, csvSpeed(s.After.Speed)}
 				row = append(row, commit(s.After.Commit)...)
-				row = append(row, harmless(source), harmless(assessment.SourceText(s.After.Sources)))
+				row = append(row, harmless(was), harmless(assessment.SourceText(s.After.Sources)))
 				row = append(row, tail(s.After.Commit)...)
-				out.Write(append(row, strings.Join(stepRemarks(t, s), "; ")))
+				out.Write(append(row, harmless(source.Visible(strings.Join(stepRemarks(t, s), "; ")))))
 			}
 		}
 	}
@@ -194,7 +210,7 @@ func TraceCSV(w io.Writer, t *Trace) error {
 				row = append(row, commit(p.Origin)...)
 				row = append(row, harmless(assessment.SourceText(p.Sources)))
 				row = append(row, tail(p.Origin)...)
-				out.Write(append(row, strings.Join(pieceRemarks(t, &p), "; ")))
+				out.Write(append(row, harmless(source.Visible(strings.Join(pieceRemarks(t, &p), "; ")))))
 			}
 		}
 	}
@@ -221,7 +237,7 @@ func requestIDs(c *TraceCommit) string {
 func assessmentNumbers(c *TraceCommit) string {
 	var list []string
 	for _, a := range c.Assessments {
-		list = append(list, strings.Join(append([]string{strconv.FormatInt(a.Number, 10) + " " + a.State}, WithRevoked(a.SignOffs, a.Revoked)...), ", "))
+		list = append(list, strconv.FormatInt(a.Number, 10)+" "+strings.Join(a.words(), ", "))
 	}
 	if words := c.anchorWords(); words != "" {
 		list = append(list, words)
@@ -262,6 +278,9 @@ func stepRemarks(t *Trace, s *TraceStep) []string {
 	}
 	if s.Aside {
 		list = append(list, "a later merge did not take it")
+	}
+	for _, n := range s.Overtaken {
+		list = append(list, fmt.Sprintf("! assessment %d did not judge this speed: a later commit before its target altered it", n))
 	}
 	return list
 }

@@ -175,7 +175,7 @@ func assessmentWords(c *TraceCommit) string {
 		list = append(list, words)
 	}
 	for _, a := range c.Assessments {
-		list = append(list, fmt.Sprintf("in assessment %d (%s)", a.Number, strings.Join(append([]string{a.State}, WithRevoked(a.SignOffs, a.Revoked)...), "; ")))
+		list = append(list, fmt.Sprintf("in assessment %d (%s)", a.Number, strings.Join(a.words(), "; ")))
 	}
 	if list == nil {
 		return "not assessed"

@@ -52,6 +52,9 @@ func Verdict(d *assessment.Document) string {
 	if s := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Masked }); s != "" {
 		parts = append(parts, "Hidden today by temporary restrictions: "+s+".")
 	}
+	if s := datesSentence(c); s != "" {
+		parts = append(parts, s)
+	}
 	if s := trackSentence(c); s != "" {
 		parts = append(parts, s)
 	}
