@@ -144,7 +144,7 @@ func (p *page) fillRows() {
 				File: source.Visible(fileName(*f)), Lines: rowLines(d), Words: source.Visible(rowWords(f, d)),
 				Effect: source.Visible(effectWords(p.C, d, results[assessment.Cause{File: i, Row: k}])),
 			}
-			if d.Effect == "none" {
+			if d.Effect == "none" && !holdsForOthers(d) {
 				row.Effect = strings.TrimPrefix(row.Effect, "no change: ")
 				if len(p.Quiet) < mostHTMLRows {
 					row.ID = p.anchors.addRow(f, d)
