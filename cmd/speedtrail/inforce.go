@@ -184,7 +184,7 @@ func (r serviceRecord) words() string {
 	state := "NOT APPROVED"
 	switch {
 	case r.Undoes:
-		state = "approved, but UNDOES what was in service before"
+		state = "approved, but CAN UNDO what was in service before"
 	case r.lapsed:
 		state = "approved then, NOT APPROVED ANY MORE"
 	case r.Late != "":
