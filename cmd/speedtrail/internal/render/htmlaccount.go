@@ -95,7 +95,7 @@ func (p *page) fillFleet() {
 
 func (p *page) fillFigures() {
 	f := &p.C.Figures
-	p.Motion, p.CrossingWords, p.CurveWords = motionWords(p.C), crossingWords, curveWords
+	p.Motion, p.CrossingWords, p.CurveWords = source.Visible(motionWords(p.C)), crossingWords, curveWords
 	runs, more := bounded(f.Runs)
 	p.RunsLeft = more
 	for _, r := range runs {

@@ -84,6 +84,9 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 		}
 		add("| %s | %s | %s | %s | %s | %s | %s |\n", md(t.ID), lengthCell(t.Raised), lengthCell(t.Lowered), stepCell(t.LargestRaise), stepCell(-t.LargestReduction), times[t.ID], md(routes[t.ID]))
 	}
+	if words := otherLengths(c); words != "" {
+		add("\n%s\n", md(strings.TrimSpace(words)))
+	}
 	shown, all := 0, 0
 	for i := range c.Routes {
 		route := &c.Routes[i]

@@ -43,3 +43,28 @@ func TestTrainRoutesAreFew(t *testing.T) {
 		}
 	}
 }
+
+// Running times over track that differs are not shown as gained or lost.
+func TestOtherLengths(t *testing.T) {
+	route := func(id string, track int) assessment.Route {
+		return assessment.Route{ID: id, Track: make([]assessment.TrackPiece, track)}
+	}
+	c := &assessment.Computed{Routes: []assessment.Route{route("S4", 2), route("S5", 2), route("S6", 0)}}
+	if got := otherLengths(c); got != "" {
+		t.Errorf("without times: %q", got)
+	}
+	c.Figures.Runs = []assessment.RunFigure{{Route: "S4"}, {Route: "S4"}, {Route: "S6"}}
+	want := " The track differs on S4: times before and after are not over the same track there."
+	if got := otherLengths(c); got != want {
+		t.Errorf("got %q, want %q", got, want)
+	}
+	for name, words := range map[string]string{"figures": motionWords(c), "trains": func() string {
+		var b strings.Builder
+		(&textWriter{w: &b, d: &assessment.Document{}, c: c, s: Style{Width: 400}}).trains()
+		return b.String()
+	}()} {
+		if !strings.Contains(words, want) {
+			t.Errorf("%s: %s", name, words)
+		}
+	}
+}
