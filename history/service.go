@@ -133,7 +133,7 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 		at := r.Since.UTC().Format(time.RFC3339)
 		switch {
 		case s.Undoes:
-			list = append(list, ServiceFinding{ServiceUndoes, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and is approved, but no approved assessment leads to it from commit %s, which was in service before: what that one changed is undone", r.Entry.Seq, r.Revision, where, at, s.Before.Revision)})
+			list = append(list, ServiceFinding{ServiceUndoes, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and is approved, but no approved assessment leads to it from commit %s, which was in service before: what that one changed can be undone", r.Entry.Seq, r.Revision, where, at, s.Before.Revision)})
 		case s.Late:
 			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and was approved only on %s", r.Entry.Seq, r.Revision, where, at, s.ApprovedAt.UTC().Format(time.RFC3339))})
 		case s.Lapsed:

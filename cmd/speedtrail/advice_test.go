@@ -42,7 +42,7 @@ func TestAdviceRepeatsOptions(t *testing.T) {
 	// Without options the advice has none.
 	call(t, "--repo", repo, "import", "-").want(t, statusInput)
 	t.Chdir(repo)
-	if got := call(t, "register"); !strings.Contains(got.errors, "hint: record an assessment first: speedtrail assess BASE TARGET\n") {
+	if got := call(t, "register"); !strings.Contains(got.errors, "hint: name one with --ledger, make one from an export with speedtrail import FILE, or begin one with speedtrail assess BASE TARGET\n") {
 		t.Errorf("%s", got.errors)
 	}
 }

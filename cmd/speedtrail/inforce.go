@@ -89,7 +89,7 @@ func routeIDs(d *schema.Dataset) []string {
 
 // serviceAdvice says what to do about each kind of finding.
 var serviceAdvice = map[string]string{
-	history.ServiceUnapproved: "Have the data looked at and signed now, or take it out of service; that it ran without approval stays on record.",
+	history.ServiceUnapproved: "Unless it is approved by now, have the data looked at and signed, or take it out of service. That it ran without approval stays on record.",
 	history.ServiceUndoes:     "Look at what the revision before had changed; assess from that one, and have it signed.",
 	history.ServiceCorrected:  "Ask who took the record back, and what ran then; both records stay.",
 	history.NeverInService:    "Record it when it goes into service: speedtrail inforce record REV --since T.",
@@ -193,7 +193,7 @@ func (r serviceRecord) words() string {
 	state := "NOT APPROVED"
 	switch {
 	case r.Undoes:
-		state = "approved, but UNDOES what was in service before"
+		state = "approved, but CAN UNDO what was in service before"
 	case r.lapsed:
 		state = "approved then, NOT APPROVED ANY MORE"
 	case r.Late != "":

@@ -273,6 +273,10 @@ func (a *app) printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		governed := render.Hanging(source.Visible(strings.Join(s.Governed, "; ")), max(width, len(indent)+30), indent)
 		fmt.Fprintf(w, "  %s%s %3d km/h   %s\n", name, strings.Repeat(" ", names-render.Cells(name)), s.Speed, governed)
 	}
+	if len(x.Speeds) > 0 {
+		// trace counts them all: without this line the two seem to contradict each other.
+		fmt.Fprintf(w, "\n%s\n", wrap("Temporary restrictions count from valid_from to valid_to alone; one that the data still holds after its last day is not counted.", width))
+	}
 	fmt.Fprintf(w, "\n%s\n", render.Hanging(source.Visible(fmt.Sprintf("Evidence: recorded %s as entry %d, stated %s, key %s", x.Record.Recorded, x.Record.Entry, x.Record.Stated, x.Record.Key)+x.Record.Elsewhere.Behind()+x.Record.Revoked.Behind()), width, "  "))
 	for _, e := range x.Signed {
 		fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(fmt.Sprintf("%s at %s, entry %d, key %s", e.by(), e.Time, e.Entry, e.Fingerprint)+e.Elsewhere.Behind()+e.Revoked.Behind()), width, "  "))

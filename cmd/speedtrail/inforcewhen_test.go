@@ -36,5 +36,11 @@ func TestInForceInTheFuture(t *testing.T) {
 	call(t, in("inforce", "record", "c0", "--since", "2026-03-03T00:00:00Z", "--reason", "start", "--key", key("cem"), "-y")...).want(t, 0)
 	ask(ahead)
 	ask(ahead, "--route", "R1", "--at", "1.5")
+	if got := call(t, in("inforce", "--when", "2026-03-04T00:00:00Z", "--route", "R1", "--at", "1.5")...); !strings.Contains(got.out, "Temporary restrictions count from valid_from to valid_to alone") {
+		t.Errorf("what is counted is not said:\n%s", got.out)
+	}
+	if got := call(t, in("profile", "--route", "R9", "--train", "T")...); !strings.Contains(got.errors, "another revision, as REV, can have had others") {
+		t.Errorf("a route that is gone: %s", got.errors)
+	}
 	ask(time.Now().Add(-time.Hour).Truncate(time.Second))
 }

@@ -140,7 +140,7 @@ func routeOf(data *schema.Dataset, id string) (*schema.Route, error) {
 		}
 		ids[i] = r.ID
 	}
-	return nil, badCall(meant(id, ids, "its routes: "+some(ids)), "the data set has no route %q", id)
+	return nil, badCall(meant(id, ids, "its routes: "+some(ids)+"; another revision, as REV, can have had others"), "the data set has no route %q", id)
 }
 
 func trainOf(data *schema.Dataset, id string) (schema.Train, error) {

@@ -21,7 +21,7 @@ var (
 )
 
 var hints = map[error]string{
-	ErrNoLedger:     "record an assessment first: speedtrail assess BASE TARGET",
+	ErrNoLedger:     "name one with --ledger, make one from an export with speedtrail import FILE, or begin one with speedtrail assess BASE TARGET",
 	ErrForeign:      "name another file with --ledger, or restore the ledger from a backup",
 	ErrNewer:        "use the newer version of speedtrail",
 	ErrLocked:       "wait until it is done and try again; nothing was recorded",

@@ -74,19 +74,21 @@ func declaredFamily(c *assessment.Computed, r *assessment.Route, f family) strin
 	ids := declarationIDs(c)
 	trains := map[string][]int{}
 	for _, x := range f.all {
-		var by []string
+		var by, gaps []string
 		for _, p := range r.Pieces[x.Pieces] {
-			id := outside
-			if p.By >= 0 {
-				id = ids[p.By]
-			}
-			if !slices.Contains(by, id) {
-				by = append(by, id)
+			switch {
+			case p.By < 0:
+				gaps = append(gaps, "km "+minus(p.From)+" to "+minus(p.To))
+			case !slices.Contains(by, ids[p.By]):
+				by = append(by, ids[p.By])
 			}
 		}
-		text := strings.Join(by, " and ")
-		if text == "" {
-			text = outside
+		text := outside
+		if len(by) > 0 {
+			text = strings.Join(by, " and ")
+			if len(gaps) > 0 { // a request that declares too little: where, is what counts
+				text += ", " + outside + " at " + strings.Join(gaps, " and ")
+			}
 		}
 		trains[text] = append(trains[text], x.Trains...)
 	}

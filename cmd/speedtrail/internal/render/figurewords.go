@@ -13,7 +13,26 @@ func motionWords(c *assessment.Computed) string {
 		ends = "start and end at the speed of the profile"
 	}
 	return "Fastest run over the whole route, " + ends + ", with the constant acceleration and braking of trains.toml, in closed form on the step profile " +
-		"(v²/2a for each change of speed; the train brakes to be at the lower speed where its front meets it). Minutes and seconds; minus is faster."
+		"(v²/2a for each change of speed; the train brakes to be at the lower speed where its front meets it). Minutes and seconds; minus is faster." + otherLengths(c)
+}
+
+// otherLengths says of which routes the running times before and after are over track
+// that differs: of a route that was split, the time of the part that left is no gain.
+func otherLengths(c *assessment.Computed) string {
+	timed := map[string]bool{}
+	for _, r := range c.Figures.Runs {
+		timed[r.Route] = true
+	}
+	var routes []string
+	for _, r := range c.Routes {
+		if timed[r.ID] && len(r.Track) > 0 {
+			routes = append(routes, r.ID)
+		}
+	}
+	if routes == nil {
+		return ""
+	}
+	return " The track differs on " + someRoutes(routes) + ": times before and after are not over the same track there."
 }
 
 const crossingWords = "Time from the strike-in point to the crossing for the fastest train that the rows admit, of any category, without length: " +

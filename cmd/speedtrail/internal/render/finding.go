@@ -177,18 +177,28 @@ func trainRoutes(c *assessment.Computed) map[string]string {
 	}
 	out := map[string]string{}
 	for i, t := range c.Trains {
-		words := strings.Join(t.Routes, ", ")
+		words := someRoutes(t.Routes)
 		if len(timed[i]) > 0 {
 			if words != "" {
 				words += "; "
 			}
-			words += "running time only: " + strings.Join(timed[i], ", ")
+			words += "running time only: " + someRoutes(timed[i])
 		}
 		if words != "" {
 			out[t.ID] = words
 		}
 	}
 	return out
+}
+
+// someRoutes lists the first of many routes: where hundreds change, the sections that
+// follow have them all, and a table that lists them has pages without a number.
+func someRoutes(ids []string) string {
+	const most = 8
+	if n := len(ids) - most; n > 1 { // "and 1 more" is no shorter than its name
+		return strings.Join(ids[:most], ", ") + fmt.Sprintf(" and %d more", n)
+	}
+	return strings.Join(ids, ", ")
 }
 
 // byTrackAlone runs over the running times that differ although the train sees no

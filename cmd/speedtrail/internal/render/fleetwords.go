@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strings"
 
+	"speedtrail/diff"
 	"speedtrail/history/assessment"
 )
 
@@ -255,5 +256,14 @@ func effectWords(c *assessment.Computed, d *assessment.RowDiff, q *consequence) 
 	case "hidden":
 		return "hidden today by temporary restrictions (finding masked)"
 	}
+	if holdsForOthers(d) {
+		return "no reference train changes, others may: " + d.Reason
+	}
 	return "no change: " + d.Reason
+}
+
+// holdsForOthers tells whether a row without an effect can have one for trains that
+// no reference train stands for.
+func holdsForOthers(d *assessment.RowDiff) bool {
+	return d.Reason == diff.NoSuchTrain.String() || d.Reason == diff.LowerElsewhere.String()
 }

@@ -1,8 +1,10 @@
 package render
 
 import (
+	"strings"
 	"testing"
 
+	"speedtrail/diff"
 	"speedtrail/history/assessment"
 )
 
@@ -38,5 +40,27 @@ func TestWhereWords(t *testing.T) {
 				t.Errorf("got  %s\nwant %s", got, x.want)
 			}
 		})
+	}
+}
+
+// A row from which only trains see a change that no reference train stands for is not
+// counted among those without an effect.
+func TestRowForOthers(t *testing.T) {
+	for reason, want := range map[string]string{
+		diff.OnlyText.String():       "no change: only a text differs",
+		diff.NoSuchTrain.String():    "no reference train changes, others may: no reference train is of a category that it concerns",
+		diff.LowerElsewhere.String(): "no reference train changes, others may: another restriction is as low or lower for every reference train that it concerns",
+	} {
+		d := assessment.RowDiff{Effect: "none", Reason: reason}
+		c := &assessment.Computed{Source: []assessment.SourceFile{{Rows: []assessment.RowDiff{d}}}}
+		if got := effectWords(c, &d, nil); got != want {
+			t.Errorf("got %q, want %q", got, want)
+		}
+		var b strings.Builder
+		p := &textWriter{w: &b, d: &assessment.Document{Computed: *c}, c: c, s: Style{Width: 200}}
+		p.sources()
+		if shown := strings.Contains(b.String(), "effect: "+want); shown != holdsForOthers(&d) {
+			t.Errorf("%s:\n%s", reason, b.String())
+		}
 	}
 }

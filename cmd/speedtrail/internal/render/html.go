@@ -37,8 +37,9 @@ var pageTemplate = sync.OnceValue(func() *template.Template {
 	return template.Must(template.New("page").Funcs(template.FuncMap{
 		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
 		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords, "unchanged": unchangedWords,
-		"link": func(text, id string) pageLink { return pageLink{text, id} },
-		"step": func(p page, row pageRow) pageStep { return pageStep{row, p.C.Options.NoRequests} },
+		"otherLengths": func(c *assessment.Computed) string { return source.Visible(otherLengths(c)) },
+		"link":         func(text, id string) pageLink { return pageLink{text, id} },
+		"step":         func(p page, row pageRow) pageStep { return pageStep{row, p.C.Options.NoRequests} },
 	}).Parse(pageText))
 })
 

@@ -95,7 +95,7 @@ func (p *page) fillFleet() {
 
 func (p *page) fillFigures() {
 	f := &p.C.Figures
-	p.Motion, p.CrossingWords, p.CurveWords = motionWords(p.C), crossingWords, curveWords
+	p.Motion, p.CrossingWords, p.CurveWords = source.Visible(motionWords(p.C)), crossingWords, curveWords
 	runs, more := bounded(f.Runs)
 	p.RunsLeft = more
 	for _, r := range runs {
@@ -144,7 +144,7 @@ func (p *page) fillRows() {
 				File: source.Visible(fileName(*f)), Lines: rowLines(d), Words: source.Visible(rowWords(f, d)),
 				Effect: source.Visible(effectWords(p.C, d, results[assessment.Cause{File: i, Row: k}])),
 			}
-			if d.Effect == "none" {
+			if d.Effect == "none" && !holdsForOthers(d) {
 				row.Effect = strings.TrimPrefix(row.Effect, "no change: ")
 				if len(p.Quiet) < mostHTMLRows {
 					row.ID = p.anchors.addRow(f, d)

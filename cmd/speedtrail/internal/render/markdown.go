@@ -117,6 +117,9 @@ func (m *markdown) trains() {
 		}
 		m.add("| %s | %s | %s | %s | %s | %s | %s |\n", md(t.ID), lengthCell(t.Raised), lengthCell(t.Lowered), stepCell(t.LargestRaise), stepCell(-t.LargestReduction), times[t.ID], md(routes[t.ID]))
 	}
+	if words := otherLengths(c); words != "" {
+		m.add("\n%s\n", md(strings.TrimSpace(words)))
+	}
 }
 
 // changes lists the speed changes, and the track that one revision only has.

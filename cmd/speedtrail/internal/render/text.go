@@ -194,7 +194,7 @@ func (p *textWriter) trains() {
 		t.AppendRow(table.Row{name, raised[i], lowered[i], stepCell(x.LargestRaise), stepCell(-x.LargestReduction), times[x.ID], source.Visible(routes[x.ID])})
 	}
 	p.printf("%s\n", tidy(t.Render()))
-	p.paragraph("", "Up and down are the largest steps. Lengths, and running times (minus: faster), are added up over routes and both directions of travel.")
+	p.paragraph("", "Up and down are the largest steps. Lengths, and running times (minus: faster), are added up over routes and both directions of travel."+otherLengths(p.c))
 }
 
 func lengthCell(mm int64) string {

@@ -126,7 +126,8 @@ func (p *textWriter) figures() {
 const mostTextRows = 60
 
 // sources lists the rows that differ, with what comes of each; those without an
-// effect are counted.
+// effect are counted, but for those that trains see which no reference train stands
+// for: a mistyped speed can be one.
 func (p *textWriter) sources() {
 	if len(p.c.Source) == 0 {
 		return
@@ -152,7 +153,7 @@ func (p *textWriter) sources() {
 		}
 		for k := range f.Rows {
 			d := &f.Rows[k]
-			if d.Effect == "none" && !movesDates(d) {
+			if d.Effect == "none" && !movesDates(d) && !holdsForOthers(d) {
 				quiet++
 				continue
 			}
@@ -168,6 +169,6 @@ func (p *textWriter) sources() {
 		p.more(shown-mostTextRows, "html")
 	}
 	if quiet > 0 {
-		p.paragraph("", fmt.Sprintf("%s without an effect on any reference train; the HTML and Markdown reports list them with the reason.", plural(quiet, "row", "rows")))
+		p.paragraph("", fmt.Sprintf("%s without an effect; the HTML and Markdown reports list them with the reason.", plural(quiet, "row", "rows")))
 	}
 }

@@ -29,3 +29,42 @@ func TestTrainsFit(t *testing.T) {
 		}
 	}
 }
+
+// Of hundreds of routes that a train sees a change on, the table names the first.
+func TestTrainRoutesAreFew(t *testing.T) {
+	routes := strings.Split("R01 R02 R03 R04 R05 R06 R07 R08 R09 R10 R11", " ")
+	for n, want := range map[int]string{
+		1: "R01", 9: "R01, R02, R03, R04, R05, R06, R07, R08, R09",
+		10: "R01, R02, R03, R04, R05, R06, R07, R08 and 2 more", 11: "R01, R02, R03, R04, R05, R06, R07, R08 and 3 more",
+	} {
+		c := &assessment.Computed{Trains: []assessment.Train{{ID: "T", Routes: routes[:n]}}}
+		if got := trainRoutes(c)["T"]; got != want {
+			t.Errorf("%d routes: %s, want %s", n, got, want)
+		}
+	}
+}
+
+// Running times over track that differs are not shown as gained or lost.
+func TestOtherLengths(t *testing.T) {
+	route := func(id string, track int) assessment.Route {
+		return assessment.Route{ID: id, Track: make([]assessment.TrackPiece, track)}
+	}
+	c := &assessment.Computed{Routes: []assessment.Route{route("S4", 2), route("S5", 2), route("S6", 0)}}
+	if got := otherLengths(c); got != "" {
+		t.Errorf("without times: %q", got)
+	}
+	c.Figures.Runs = []assessment.RunFigure{{Route: "S4"}, {Route: "S4"}, {Route: "S6"}}
+	want := " The track differs on S4: times before and after are not over the same track there."
+	if got := otherLengths(c); got != want {
+		t.Errorf("got %q, want %q", got, want)
+	}
+	for name, words := range map[string]string{"figures": motionWords(c), "trains": func() string {
+		var b strings.Builder
+		(&textWriter{w: &b, d: &assessment.Document{}, c: c, s: Style{Width: 400}}).trains()
+		return b.String()
+	}()} {
+		if !strings.Contains(words, want) {
+			t.Errorf("%s: %s", name, words)
+		}
+	}
+}

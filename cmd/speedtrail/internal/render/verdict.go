@@ -49,6 +49,9 @@ func Verdict(d *assessment.Document) string {
 			map[bool]string{true: "changes", false: "change"}[changed == 1], routes, plural(targetRoutes(c), "route", "routes"))
 		parts = append(parts, s+": "+extremes(c, func(r *assessment.Route) []assessment.Change { return r.Changes })+".")
 	}
+	if s := unseenSentence(c); s != "" {
+		parts = append(parts, s)
+	}
 	if s := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Masked }); s != "" {
 		parts = append(parts, "Hidden today by temporary restrictions: "+s+".")
 	}
@@ -131,6 +134,43 @@ func extreme(c *assessment.Computed, of func(*assessment.Route) []assessment.Cha
 		word = "down to"
 	}
 	return fmt.Sprintf("%s %s km/h over %s km (%s)", word, signed(best.After-best.Before), km(best.Length), trainNames(c, trains, 3))
+}
+
+// unseenSentence says what trains see that no reference train stands for, where it is
+// a larger step than any reference train sees: without it the verdict names the
+// smaller one as the largest.
+func unseenSentence(c *assessment.Computed) string {
+	var most [2]int // of reference trains: raise, reduction
+	for _, r := range c.Routes {
+		for _, x := range r.Changes {
+			most[0], most[1] = max(most[0], x.After-x.Before), max(most[1], x.Before-x.After)
+		}
+	}
+	var routes [2]string
+	for i := range c.Fleet {
+		f := &c.Fleet[i]
+		for _, x := range f.Changes {
+			if f.Permanent || !slices.ContainsFunc(x.Members, func(m assessment.FleetPart) bool { return !m.Represented }) {
+				continue // without temporary restrictions, the sentence on what is hidden would have to say so
+			}
+			for k, step := range [2]int{x.After - x.Before, x.Before - x.After} {
+				if step > most[k] {
+					most[k], routes[k] = step, f.Route
+				}
+			}
+		}
+	}
+	var parts []string
+	if routes[0] != "" {
+		parts = append(parts, fmt.Sprintf("up to %s km/h on %s", signed(most[0]), routes[0]))
+	}
+	if routes[1] != "" {
+		parts = append(parts, fmt.Sprintf("down to %s km/h on %s", signed(-most[1]), routes[1]))
+	}
+	if parts == nil {
+		return ""
+	}
+	return "Trains that no reference train stands for: " + strings.Join(parts, ", ") + "."
 }
 
 func trackSentence(c *assessment.Computed) string {

@@ -122,3 +122,29 @@ func TestVerdictOnTrains(t *testing.T) {
 		})
 	}
 }
+
+// What no reference train sees is in the verdict where it is the larger step.
+func TestVerdictOnUnseen(t *testing.T) {
+	seen := func(represented bool, before, after int) assessment.FleetChange {
+		return assessment.FleetChange{Before: before, After: after, Members: []assessment.FleetPart{{Represented: represented}}}
+	}
+	for _, x := range []struct {
+		name      string
+		changes   []assessment.Change
+		fleet     []assessment.FleetChange
+		permanent bool
+		want      string
+	}{
+		{"nobody else", nil, []assessment.FleetChange{seen(false, 110, 170)}, false, "Trains that no reference train stands for: up to +60 km/h on A."},
+		{"larger", []assessment.Change{{Before: 100, After: 130}}, []assessment.FleetChange{seen(false, 110, 170), seen(false, 110, 90)}, false,
+			"Trains that no reference train stands for: up to +60 km/h on A, down to \u221220 km/h on A."},
+		{"no larger", []assessment.Change{{Before: 100, After: 160}}, []assessment.FleetChange{seen(false, 110, 170)}, false, ""},
+		{"represented", nil, []assessment.FleetChange{seen(true, 110, 170)}, false, ""},
+		{"hidden today", nil, []assessment.FleetChange{seen(false, 110, 170)}, true, ""},
+	} {
+		c := &assessment.Computed{Routes: []assessment.Route{{ID: "A", Changes: x.changes}}, Fleet: []assessment.Fleet{{Route: "A", Permanent: x.permanent, Changes: x.fleet}}}
+		if got := unseenSentence(c); got != x.want {
+			t.Errorf("%s: got %q, want %q", x.name, got, x.want)
+		}
+	}
+}
