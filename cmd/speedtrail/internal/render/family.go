@@ -68,8 +68,9 @@ func picturesOf(c *assessment.Computed) pictures {
 	out := pictures{}
 	for i := range c.Stretches.List {
 		s := &c.Stretches.List[i]
-		for _, k := range s.Changes {
-			x := &c.Routes[s.Route].Changes[k]
+		r := &c.Routes[s.Route]
+		for _, k := range changesOf(r, s) {
+			x := &r.Changes[k]
 			out[x] = append(out[x], s)
 		}
 	}

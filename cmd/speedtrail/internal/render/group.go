@@ -43,12 +43,27 @@ func groups(c *assessment.Computed) []*group {
 			list = append(list, g)
 		}
 		g.trains = append(g.trains, s.Trains...)
-		g.changes = append(g.changes, s.Changes...)
+		g.changes = append(g.changes, changesOf(r, s)...)
 	}
 	for _, g := range list {
 		slices.Sort(g.trains)
 		slices.Sort(g.changes)
 		g.trains, g.changes = slices.Compact(g.trains), slices.Compact(g.changes)
+	}
+	return list
+}
+
+// changesOf lists the changes that the trains of a stretch see there. The stretch names
+// those of its first train: others see the same steps by the same rows, and what is
+// declared, or a cause, can still make theirs other changes of the document.
+func changesOf(r *assessment.Route, s *assessment.Stretch) []int {
+	var list []int
+	for k := range r.Changes {
+		x := &r.Changes[k]
+		if x.Direction == s.Direction && x.Start >= s.From && endOf(x) <= s.To &&
+			slices.ContainsFunc(x.Trains, func(t int) bool { return slices.Contains(s.Trains, t) }) {
+			list = append(list, k)
+		}
 	}
 	return list
 }

@@ -113,6 +113,27 @@ func TestPageHidden(t *testing.T) {
 	}
 }
 
+// A change that one train sees as others do, and that is declared for them alone, has
+// a row of its own beside theirs.
+func TestPageDeclaredForSome(t *testing.T) {
+	d := pageDocument("R1")
+	c := &d.Computed
+	c.Trains = append(c.Trains, assessment.Train{ID: "T2", Fate: "kept"})
+	r := &c.Routes[0]
+	other := r.Changes[0]
+	other.Trains, other.Pieces = []int{1}, len(r.Pieces)
+	r.Pieces = append(r.Pieces, []assessment.Piece{{By: -1, From: "1.000", To: "2.000"}})
+	r.Changes = append(r.Changes, other)
+	c.Stretches.List[0].Trains = []int{0, 1} // its changes are those of the first
+	_, s, _ := strings.Cut(pageOf(t, d), `<section id="changes">`)
+	s, _, _ = strings.Cut(s, `<section id="hidden">`)
+	for _, want := range []string{`<td class="text">R1</td>`, `<td class="text">T2</td><td class="text"><b class="outside">outside</b></td>`} {
+		if !strings.Contains(s, want) {
+			t.Errorf("no %s", want)
+		}
+	}
+}
+
 // The speeds of added track stand nowhere in a comparison: the page gives the
 // command that shows them, and what it takes from the data is quoted.
 func TestPageTrack(t *testing.T) {
