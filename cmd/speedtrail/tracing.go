@@ -298,8 +298,12 @@ func (t *tracing) describe(ctx context.Context) error {
 func (t *tracing) overtake(steps []render.TraceStep) {
 	for i := range steps {
 		s := &steps[i]
-		for _, a := range t.doc.Commits[s.After.Commit].Assessments {
-			after := t.h.Descendants(t.named[s.After.Commit])
+		assessed := t.doc.Commits[s.After.Commit].Assessments
+		if len(assessed) == 0 {
+			continue
+		}
+		after := t.h.Descendants(t.named[s.After.Commit])
+		for _, a := range assessed {
 			if slices.ContainsFunc(steps[:i], func(later render.TraceStep) bool {
 				return !later.Aside && after[t.named[later.After.Commit]] &&
 					slices.ContainsFunc(t.doc.Commits[later.After.Commit].Assessments, func(b render.TraceAssessment) bool { return b.Number == a.Number })
