@@ -142,7 +142,7 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 	case errors.As(err, &unknown):
 		return nil, badCall(meant(unknown.ID, unknown.Known, "the requests of a revision stand in its folder requests/: "+cmp.Or(some(unknown.Known), "none")), "%v", err)
 	case errors.As(err, &faults):
-		return nil, &sideError{to.label(), err}
+		return nil, &requestError{to.label(), err}
 	case err != nil:
 		return nil, err
 	}
