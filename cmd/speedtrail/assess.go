@@ -335,11 +335,15 @@ func (a *app) remarkHidden(doc *assessment.Document) {
 	if a.format != "csv" {
 		return
 	}
-	n := 0
+	n, track := 0, 0
 	for i := range doc.Computed.Routes {
+		track += len(doc.Computed.Routes[i].Track)
 		for _, c := range doc.Computed.Routes[i].Masked {
 			n += len(c.Trains)
 		}
+	}
+	if track > 0 {
+		a.remark("! stretches of track that only one revision has, and that CSV does not hold: %d; the other formats have them", track)
 	}
 	if n > 0 {
 		a.remark("! changes that temporary restrictions hide today, and that CSV does not hold: %d (a train and stretch each); the other formats have them", n)
