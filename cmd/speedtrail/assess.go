@@ -142,7 +142,7 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 	case errors.As(err, &unknown):
 		return nil, badCall(meant(unknown.ID, unknown.Known, "the requests of a revision stand in its folder requests/: "+cmp.Or(some(unknown.Known), "none")), "%v", err)
 	case errors.As(err, &faults):
-		return nil, &sideError{to.label(), err}
+		return nil, &requestError{to.label(), err}
 	case err != nil:
 		return nil, err
 	}
@@ -335,11 +335,15 @@ func (a *app) remarkHidden(doc *assessment.Document) {
 	if a.format != "csv" {
 		return
 	}
-	n := 0
+	n, track := 0, 0
 	for i := range doc.Computed.Routes {
+		track += len(doc.Computed.Routes[i].Track)
 		for _, c := range doc.Computed.Routes[i].Masked {
 			n += len(c.Trains)
 		}
+	}
+	if track > 0 {
+		a.remark("! stretches of track that only one revision has, and that CSV does not hold: %d; the other formats have them", track)
 	}
 	if n > 0 {
 		a.remark("! changes that temporary restrictions hide today, and that CSV does not hold: %d (a train and stretch each); the other formats have them", n)

@@ -47,4 +47,8 @@ func TestLongerTrack(t *testing.T) {
 			t.Errorf("%s says that nothing changes for a train", format)
 		}
 	}
+	got := call(t, "--repo", repo, "assess", "c0", "c1", "--no-record", "--format", "csv").want(t, 1)
+	if want := "! stretches of track that only one revision has, and that CSV does not hold: 2; the other formats have them"; !strings.Contains(got.errors, want) {
+		t.Errorf("csv: %s", got.errors)
+	}
 }

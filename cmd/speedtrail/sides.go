@@ -26,6 +26,24 @@ func (e *sideError) Error() string {
 // Unwrap gives what is wrong.
 func (e *sideError) Unwrap() error { return e.err }
 
+// requestError is a request in play that names what neither revision has. Over many
+// releases it can be right: a route that came and went in between.
+type requestError struct {
+	label string
+	err   error
+}
+
+func (e *requestError) Error() string {
+	return "requests in play of " + e.label + " do not fit the two revisions\n" + e.err.Error()
+}
+
+func (e *requestError) Unwrap() error { return e.err }
+
+// Hint says what to do.
+func (e *requestError) Hint() string {
+	return "correct the request; where it was right for a revision in between, name the requests that count with --request, or none"
+}
+
 // inSides says of which revision an error of LoadPair is.
 func inSides(err error, base, target side) error {
 	var pair *schema.PairError

@@ -29,7 +29,8 @@ func (t *Trace) title() string {
 }
 
 // traceKey says what the speeds of a trace are, and are not.
-const traceKey = "Speeds are those of each revision, with all its temporary restrictions whatever their dates; what was in service when, speedtrail inforce says."
+const traceKey = "Speeds are those of each revision, with all its temporary restrictions whatever their dates; what was in service when, speedtrail inforce says. " +
+	"In play are the requests of the whole commit; whether one declares the change at this place, the assessment says."
 
 // speedAt writes a speed with its unit.
 func speedAt(v int) string {
@@ -151,7 +152,7 @@ func (t *Trace) stepText(b *strings.Builder, step *TraceStep, s Style) {
 	if step.After.Speed > 0 {
 		lines = append(lines, [2]string{"after", strconv.Itoa(step.After.Speed) + " by " + assessment.SourceText(step.After.Sources)})
 	}
-	lines = append(lines, [2]string{"request", requestWords(c)}, [2]string{"assessed", assessmentWords(c)})
+	lines = append(lines, [2]string{"in play", requestWords(c)}, [2]string{"assessed", assessmentWords(c)})
 	for _, remark := range stepRemarks(t, step) {
 		lines = append(lines, [2]string{"remark", remark})
 	}
@@ -164,7 +165,7 @@ func requestWords(c *TraceCommit) string {
 		list = append(list, q.ID+" ("+q.Title+")")
 	}
 	if len(list) == 0 {
-		return "none in play"
+		return "no request"
 	}
 	return strings.Join(list, "; ")
 }
@@ -202,7 +203,7 @@ func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) 
 		}
 		fmt.Fprintf(b, "\n  km %s to %s  %s  since %s  %s  %s\n", from[i], to[i], speed, day(c), short(c.Hash), source.Visible(c.Author.Name))
 		subjectText(b, c.Subject, s)
-		lines := [][2]string{{"by", assessment.SourceText(p.Sources)}, {"request", requestWords(c)}, {"assessed", assessmentWords(c)}}
+		lines := [][2]string{{"by", assessment.SourceText(p.Sources)}, {"in play", requestWords(c)}, {"assessed", assessmentWords(c)}}
 		for _, remark := range pieceRemarks(t, p) {
 			lines = append(lines, [2]string{"remark", remark})
 		}
@@ -238,7 +239,7 @@ func firstLetters(word string) string {
 }
 
 // labels stand before the lines of a step or piece.
-var labels = []string{"before", "after", "by", "request", "assessed", "remark", "gap"}
+var labels = []string{"before", "after", "by", "in play", "assessed", "remark", "gap"}
 
 // labelled writes lines behind a label each.
 func labelled(b *strings.Builder, lines [][2]string, s Style) {
