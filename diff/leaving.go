@@ -24,8 +24,9 @@ type Leaving struct {
 	Longest   unit.Distance // length of the longest reference train
 }
 
-// leaving lists the rows that leave a route which both revisions have, in the
-// order of its files.
+// leaving lists the rows that leave a route, in the order of its files. A route that
+// only one revision has, a part of one that was split perhaps, carries nothing beyond
+// its end in the other.
 func (r *Route) leaving(trains []Train) []Leaving {
 	longest := longestOf(trains)
 	var list []Leaving
@@ -61,6 +62,9 @@ func (r *Route) leaving(trains []Train) []Leaving {
 				}
 			}
 		}
+	}
+	if r.Base == nil || r.Target == nil {
+		return list
 	}
 	return append(list, r.leavingByTrack(longest)...)
 }
@@ -122,6 +126,9 @@ func carried(route *schema.Route, layer profile.Layer, lines []int, d codes.Dire
 // beyond the end of the route.
 func beyond(route *schema.Route, layer profile.Layer, lines []int, d codes.Direction, length unit.Distance) []*schema.Row {
 	var list []*schema.Row
+	if route == nil {
+		return nil
+	}
 	for _, line := range lines {
 		row := anyRow(route, layer, line)
 		if row == nil || !row.Delay || !row.Directions.Has(d) || !route.Directions.Has(d) {

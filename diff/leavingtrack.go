@@ -49,6 +49,9 @@ func (r *Route) leavingByTrack(longest unit.Distance) []Leaving {
 // layerLines gives the lines of the rows of a layer, in their order.
 func layerLines(route *schema.Route, layer profile.Layer) []int {
 	var lines []int
+	if route == nil {
+		return nil
+	}
 	switch layer {
 	case profile.StaticSpeed:
 		for i := range route.Speed {

@@ -37,8 +37,8 @@ func compareRoute(r *Route, trains []Train, o *Options) {
 		r.wholeTrack(Removed)
 	default:
 		compareTracks(r, trains, o)
-		r.Leaving = r.leaving(trains)
 	}
+	r.Leaving = r.leaving(trains)
 	r.explain(trains)
 	r.causes = causeTable{} // no longer needed
 }

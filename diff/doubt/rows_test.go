@@ -24,10 +24,24 @@ var curveSpeed = []example{
 		// 11.8 x 19600 / 1000 = 231.28, 111.28 mm of deficiency: too much for 80 and 100 mm.
 		want: "curve-speed both 1.000 2.000 speed.csv:2 cd100 is 140 km/h; on the curve of 1000 m with 120 mm of cant (curves.csv:2) that is a cant deficiency of 111.28 mm, and 100 mm carry 135 km/h\n" +
 			"curve-speed both 1.000 2.000 speed.csv:2 cd80 is 140 km/h; on the curve of 1000 m with 120 mm of cant (curves.csv:2) that is a cant deficiency of 111.28 mm, and 80 mm carry 130 km/h\n"},
-	{name: "the basic speed, as a reference train has it",
+	{name: "the basic speed, for the highest category without one of its own",
 		files: files{"speed.csv": "from_km,to_km,basic,cd150\n0,10,160,160\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"},
-		// 11.8 x 25600 / 600 = 503.47 mm; 150 + 100 mm carry 110 km/h, 11.8 x 12100 / 600 = 237.97.
-		want: "curve-speed both 1.000 2.000 speed.csv:2 160 km/h for T; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 403.47 mm, and 150 mm carry 110 km/h\n"},
+		// 11.8 x 25600 / 600 = 503.47 mm; 130 + 100 mm carry 105 km/h, 11.8 x 11025 / 600 = 216.83.
+		want: "curve-speed both 1.000 2.000 speed.csv:2 basic is 160 km/h; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 403.47 mm, and 130 mm carry 105 km/h\n"},
+	{name: "a mistyped basic speed, and the column that it is above",
+		files: files{"speed.csv": "from_km,to_km,basic,cd150\n0,10,170,160\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"},
+		// 11.8 x 28900 / 600 = 568.37 mm. The row is out of order as well.
+		want: "category-order both 0.000 10.000 speed.csv:2 cd150 is 160 km/h, below the 170 km/h of basic\n" +
+			"curve-speed both 1.000 2.000 speed.csv:2 basic is 170 km/h; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 468.37 mm, and 130 mm carry 105 km/h\n" +
+			"curve-speed both 1.000 2.000 speed.csv:2 cd150 is 160 km/h; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 403.47 mm, and 150 mm carry 110 km/h\n"},
+	{name: "a basic speed that every category has, more than any carries",
+		files: files{"speed.csv": "from_km,to_km,basic\n0,10,160\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"},
+		// 300 + 100 mm carry 140 km/h, 11.8 x 19600 / 600 = 385.47.
+		want: "curve-speed both 1.000 2.000 speed.csv:2 basic is 160 km/h; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 403.47 mm, and 300 mm carry 140 km/h\n"},
+	{name: "a basic speed that some category carries, and the reference train does not",
+		files: files{"speed.csv": "from_km,to_km,basic\n0,10,120\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"},
+		// 11.8 x 14400 / 600 = 283.2 mm.
+		want: "curve-speed both 1.000 2.000 speed.csv:2 120 km/h for T; on the curve of 600 m with 100 mm of cant (curves.csv:2) that is a cant deficiency of 183.20 mm, and 150 mm carry 110 km/h\n"},
 	{name: "a basic speed that the category of the reference train carries",
 		files: files{"speed.csv": "from_km,to_km,basic\n0,10,110\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,600,100\n"}},
 	{name: "a category's speed, of which the train's own maximum is left",

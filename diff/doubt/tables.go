@@ -166,9 +166,14 @@ func (c *check) curves() {
 		var slowest unit.Speed
 		for row := range c.speeds.on(curve.Start, curve.End) {
 			from, to := max(row.Start, curve.Start), min(row.End, curve.End)
+			basic, given := basicFor(row)
+			if given = given && impact.CantDeficiencyAbove(row.Basic, curve.RadiusM, curve.CantMM, basic.MM()); given {
+				c.curveSpeed(row, curve, from, to, fmt.Sprintf("basic is %d km/h", row.Basic), row.Basic, basic)
+			}
 			for cat := range codes.CantDeficiency(codes.CantDeficiencies) {
 				v := row.Cant[cat]
-				if v > row.Basic && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM()) {
+				// A column that repeats the basic speed says nothing more.
+				if v > 0 && !(given && v == row.Basic) && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM()) {
 					c.curveSpeed(row, curve, from, to, fmt.Sprintf("%s is %d km/h", cat.Column(), v), v, cat)
 				}
 			}
@@ -187,8 +192,21 @@ func (c *check) curves() {
 	}
 }
 
-// trainsOnCurve looks at the speeds that reference trains have on a curve by other
-// columns than that of a cant deficiency category, which is looked at by itself.
+// basicFor gives the highest cant deficiency category that has the basic speed of a
+// row: the one below the first with a speed of its own (SUBSET-026 3.11.3.2.3). What is
+// too fast on a curve for that one is so for all. False where the lowest one has its own.
+func basicFor(row *schema.SpeedRow) (highest codes.CantDeficiency, ok bool) {
+	for cat := range codes.CantDeficiency(codes.CantDeficiencies) {
+		if row.Cant[cat] != 0 {
+			break
+		}
+		highest, ok = cat, true
+	}
+	return highest, ok
+}
+
+// trainsOnCurve looks at the speeds that reference trains have on a curve where no
+// column by itself is too fast: by that of another category, or by the basic speed.
 func (c *check) trainsOnCurve(row *schema.SpeedRow, curve *schema.CurveRow, from, to unit.Distance) {
 	type reason struct {
 		cant codes.CantDeficiency
@@ -198,9 +216,10 @@ func (c *check) trainsOnCurve(row *schema.SpeedRow, curve *schema.CurveRow, from
 	trains := map[reason][]string{}
 	for _, t := range c.trains {
 		v := min(profile.StaticSpeedOf(row, profile.ClassOf(t)), t.Max)
-		byColumn := false
+		basic, given := basicFor(row)
+		byColumn := given && t.Cant <= basic && row.Basic == v && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, basic.MM())
 		for cat := range t.Cant + 1 {
-			byColumn = byColumn || row.Cant[cat] == v && v > row.Basic && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM())
+			byColumn = byColumn || row.Cant[cat] == v && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM())
 		}
 		if byColumn || !impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, t.Cant.MM()) {
 			continue

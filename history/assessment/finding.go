@@ -323,14 +323,22 @@ func (c *collector) route(index int) {
 	c.masked(index)
 	c.unrepresented(r)
 	for _, l := range r.Leaving {
-		what, track := "the row differs and reaches", r.Target.Track
+		of := r.Target
+		if l.OfBase {
+			of = r.Base
+		}
+		what, track := "the row differs and reaches", of.Track
 		switch {
+		case r.Base == nil:
+			what = "the route is new, and the row reaches"
+		case r.Target == nil:
+			what = "the route is there no more, and the row reached"
 		case l.ByTrack && l.OfBase:
-			what, track = "the track before the end of the route differs, and the row, which is the same, reaches no more", r.Base.Track
+			what = "the track before the end of the route differs, and the row, which is the same, reaches no more"
 		case l.ByTrack:
 			what = "the track before the end of the route differs, and the row, which is the same, reaches another length"
 		case l.OfBase:
-			what, track = "the row of the base reached, and does no more,", r.Base.Track
+			what = "the row of the base reached, and does no more,"
 		}
 		c.add(ranked{Finding: Finding{
 			ID: RunOutLeavesRoute, Route: r.ID, Direction: l.Direction.String(), Row: rowText(l.Row),
