@@ -152,7 +152,7 @@ func (p *textWriter) sources() {
 		}
 		for k := range f.Rows {
 			d := &f.Rows[k]
-			if d.Effect == "none" && !movesDates(d) {
+			if d.Effect == "none" && !movesDates(f, d) {
 				quiet++
 				continue
 			}
