@@ -10,11 +10,12 @@ import (
 	"speedtrail/schema/source"
 )
 
-// md escapes what Markdown or HTML in it could take for more than text.
+// md escapes what Markdown or HTML in it could take for more than text, and what some
+// readers of Markdown take for formulas, in which blanks and digits stand otherwise.
 func md(s string) string {
 	var b strings.Builder
 	for _, r := range source.Visible(s) {
-		if strings.ContainsRune("\\`*_{}[]()<>#+!|~&", r) {
+		if strings.ContainsRune("\\`*_{}[]()<>#+!|~&$^", r) {
 			if r == '<' || r == '>' || r == '&' {
 				b.WriteString(map[rune]string{'<': "&lt;", '>': "&gt;", '&': "&amp;"}[r])
 				continue

@@ -153,7 +153,7 @@ func (p *textWriter) sources() {
 		}
 		for k := range f.Rows {
 			d := &f.Rows[k]
-			if d.Effect == "none" && !movesDates(d) && !holdsForOthers(d) {
+			if d.Effect == "none" && !movesDates(f, d) && !holdsForOthers(d) {
 				quiet++
 				continue
 			}
