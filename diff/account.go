@@ -36,8 +36,9 @@ type Account struct {
 	Requests   []schema.ChangeRequest
 	Declared   []Declared
 	Reconciled bool
-	// Stretches are pictures of the changes, at most about StretchLimit, in
-	// the usual order; StretchesLeftOut counts those beyond.
+	// Stretches are pictures of the changes, in the order of Routes: where there are
+	// more than StretchLimit, of those with the largest steps. StretchesLeftOut counts
+	// the others.
 	Stretches        []Stretch
 	StretchesLeftOut int
 }

@@ -143,7 +143,7 @@ func (l *Line) checkAnchorStatement(r *Record, p Policy) error {
 	if r.Policy != p.Hash {
 		return refuse("the statement names the policy %s, the anchor holds %s", r.Policy, p.Hash)
 	}
-	if err := CheckRole(p.Parsed, r.Role, r.Signer); err != nil {
+	if err := checkRole(p.Parsed, r.Role, r.Signer); err != nil {
 		return err
 	}
 	return l.checkSignature(r, p.Parsed)

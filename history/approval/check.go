@@ -210,7 +210,7 @@ func (l *Line) checkSignOff(r *Record) error {
 			signer = p
 		}
 	}
-	if err := CheckRole(signer, r.Role, r.Signer); err != nil {
+	if err := checkRole(signer, r.Role, r.Signer); err != nil {
 		return err
 	}
 	if r.Role == InServiceRole {
@@ -244,7 +244,7 @@ func (l *Line) checkBy(r *Record, a *Assessment, p *schema.Policy, whose string)
 	if p.Role(r.Role) == nil {
 		return refuse("by %s: it has no role %q; base the change on the newest release, and assess it again", whose, r.Role)
 	}
-	err := CheckRole(p, r.Role, r.Signer)
+	err := checkRole(p, r.Role, r.Signer)
 	if err == nil {
 		err = l.checkIndependence(r, a, p)
 	}
@@ -291,7 +291,7 @@ func (l *Line) checkNewestSignature(r *Record, p *schema.Policy) error {
 // rejected: whom it had let sign no more, the rejection does not bring back.
 func checkRejected(r *Record, p *schema.Policy) error {
 	if r.Role != signoff.Owner {
-		if err := CheckRole(p, r.Role, r.Signer); err != nil {
+		if err := checkRole(p, r.Role, r.Signer); err != nil {
 			return err
 		}
 		if r.Kind == signoff.Revocation && !p.Independent(r.Role, schema.Preparer) {

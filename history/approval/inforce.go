@@ -29,7 +29,7 @@ func (l *Line) checkInForce(r *Record) error {
 	if r.Role != InServiceRole {
 		return refuse("the role is %q, %q is needed", r.Role, InServiceRole)
 	}
-	if err := CheckRole(policy, r.Role, r.Signer); err != nil {
+	if err := checkRole(policy, r.Role, r.Signer); err != nil {
 		return err
 	}
 	if err := l.checkCorrection(r); err != nil {

@@ -29,7 +29,7 @@ func needs(p *schema.Policy, a *Assessment, approve map[part]int) []need {
 		}
 		n := need{role: role.Name, needed: role.Needed}
 		for x, at := range approve {
-			if x.role == role.Name && CheckRole(p, x.role, x.signer) == nil && !prepared(p, a, x) && !takenBefore(p, x, at, approve) {
+			if x.role == role.Name && checkRole(p, x.role, x.signer) == nil && !prepared(p, a, x) && !takenBefore(p, x, at, approve) {
 				n.have++
 			}
 		}

@@ -44,7 +44,7 @@ func (l *Line) checkRevocation(r *Record) error {
 			return refuse("%s is not the owner of the key %s", r.Signer, r.Key)
 		}
 	} else {
-		if err := CheckRole(policy, r.Role, r.Signer); err != nil {
+		if err := checkRole(policy, r.Role, r.Signer); err != nil {
 			return nearly(err, r.Role, []string{signoff.Owner})
 		}
 		if !policy.Independent(r.Role, schema.Preparer) {

@@ -88,8 +88,8 @@ func allowedKey(p *schema.Policy, fingerprint, signer string, times ...time.Time
 	return found, nil
 }
 
-// CheckRole tells why a policy does not let a signer take a role; nil where it does.
-func CheckRole(p *schema.Policy, role, signer string) error {
+// checkRole tells why a policy does not let a signer take a role; nil where it does.
+func checkRole(p *schema.Policy, role, signer string) error {
 	r := p.Role(role)
 	if r == nil {
 		var names []string

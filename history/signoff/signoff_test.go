@@ -9,6 +9,7 @@ import (
 	"crypto/rsa"
 	"encoding/pem"
 	"errors"
+	"io"
 	"os"
 	"os/exec"
 	"path/filepath"
@@ -346,4 +347,24 @@ func FuzzSignature(f *testing.F) {
 			t.Fatalf("%q passes as a signature", b)
 		}
 	})
+}
+
+// sha1Signer signs with RSA over SHA-1, as old programs do.
+type sha1Signer struct{ ssh.AlgorithmSigner }
+
+func (s sha1Signer) SignWithAlgorithm(random io.Reader, data []byte, _ string) (*ssh.Signature, error) {
+	return s.AlgorithmSigner.SignWithAlgorithm(random, data, ssh.KeyAlgoRSA)
+}
+
+// RSA over SHA-1 is refused, though it is a good signature of that kind.
+func TestRSAOverSHA1(t *testing.T) {
+	message, _ := example(SignOff).Text()
+	signer := signerOf(t, keys(t)["rsa"])
+	b, err := Sign(message, sha1Signer{signer.(ssh.AlgorithmSigner)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := Verify(message, b, signer.PublicKey()); !errors.Is(err, ErrSignature) || !strings.Contains(err.Error(), "ssh-rsa") {
+		t.Errorf("got %v", err)
+	}
 }

@@ -94,7 +94,7 @@ func (a *Assembly) Version(tree Hash, folder string, route func() (*schema.Route
 		return NoTrack
 	}
 	s := int32(len(a.h.Versions))
-	a.h.Versions = append(a.h.Versions, Version{tree, folder, InFolder(r, folder)})
+	a.h.Versions = append(a.h.Versions, Version{tree, folder, inFolder(r, folder)})
 	a.known[p] = s
 	return s
 }

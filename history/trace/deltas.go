@@ -111,8 +111,8 @@ func (r *Reader) History(ctx context.Context, tip Hash, route string, o Options)
 	return a.History(tip)
 }
 
-// InFolder gives a copy of a route as it stands in another folder.
-func InFolder(r *schema.Route, folder string) *schema.Route {
+// inFolder gives a copy of a route as it stands in another folder.
+func inFolder(r *schema.Route, folder string) *schema.Route {
 	if r.Folder == folder {
 		return r
 	}
