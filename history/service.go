@@ -19,19 +19,22 @@ type Service struct {
 	// Undoes: the revision is approved, but not by a way from what was in service
 	// before: of two approved siblings the second undoes the first.
 	Undoes bool
-	// Late: it is approved, by a way from what was in service before, but was not
-	// when it went into service. Later signatures do not take that away.
+	// Late: it is approved but was not when it went into service, or not by a way from
+	// what was in service before. Neither later signatures nor later records of what was
+	// in service before, by which it Undoes that, take it away.
 	Late       bool
 	ApprovedAt time.Time
 	// Lapsed: it was approved when it went into service, and is not any more.
 	Lapsed bool
+	// Rejected are the rejections of it that stand.
+	Rejected []approval.Record
 	// Through are the approved assessments whose target it is.
 	Through []int64
 }
 
 // ServiceOf describes an in-force record.
 func ServiceOf(line *approval.Line, r approval.Record) Service {
-	s := Service{Record: r, Approved: line.ApprovedContent(r.Folder, r.Content)}
+	s := Service{Record: r, Approved: line.ApprovedContent(r.Folder, r.Content), Rejected: line.Rejections(r.Folder, r.Content)}
 	befores := beforeRecords(line.Standing(r.Folder), r)
 	for _, before := range befores {
 		undone := s.Approved && !line.Led(r.Folder, before.Content, r.Content)
@@ -47,7 +50,10 @@ func ServiceOf(line *approval.Line, r approval.Record) Service {
 		return l.ApprovedContent(r.Folder, r.Content) &&
 			!slices.ContainsFunc(befores, func(b *approval.Record) bool { return !l.Led(r.Folder, b.Content, r.Content) })
 	}
-	if s.Approved && !approved(line.AsOf(r.Since)) {
+	if s.Undoes {
+		approved = func(l *approval.Line) bool { return l.ApprovedContent(r.Folder, r.Content) }
+	}
+	if then := approved(line.AsOf(r.Since)); (s.Approved || s.Undoes) && !then {
 		s.Late = true
 		s.ApprovedAt, _ = line.Since(r.Folder, approved)
 	}
@@ -131,15 +137,16 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 			where = strings.Join(r.Routes, ", ")
 		}
 		at := r.Since.UTC().Format(time.RFC3339)
-		switch {
-		case s.Undoes:
+		if s.Undoes {
 			list = append(list, ServiceFinding{ServiceUndoes, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and is approved, but no approved assessment leads to it from commit %s, which was in service before: what that one changed can be undone", r.Entry.Seq, r.Revision, where, at, s.Before.Revision)})
+		}
+		switch {
 		case s.Late:
 			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and was approved only on %s", r.Entry.Seq, r.Revision, where, at, s.ApprovedAt.UTC().Format(time.RFC3339))})
 		case s.Lapsed:
-			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and was approved then; it is not any more", r.Entry.Seq, r.Revision, where, at)})
-		case !s.Approved:
-			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s without approval", r.Entry.Seq, r.Revision, where, at)})
+			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s and was approved then; it is not any more%s", r.Entry.Seq, r.Revision, where, at, rejectedWords(s.Rejected))})
+		case !s.Approved && !s.Undoes:
+			list = append(list, ServiceFinding{ServiceUnapproved, fmt.Sprintf("entry %d: commit %s went into service on %s from %s without approval%s", r.Entry.Seq, r.Revision, where, at, rejectedWords(s.Rejected))})
 		}
 	}
 	// Whoever may record what is in service does not make unapproved service go away by
@@ -157,6 +164,16 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 		}
 	}
 	return list
+}
+
+// rejectedWords says who has rejected what is in service: that is more than that
+// nobody has looked at it.
+func rejectedWords(list []approval.Record) string {
+	text := ""
+	for _, r := range list {
+		text += fmt.Sprintf("; %s rejected it: %s", r.Signer, r.Reason)
+	}
+	return text
 }
 
 // wrongThen says what was wrong with a record that does not stand any more, beside

@@ -190,6 +190,8 @@ func TestServiceBeforeItsApproval(t *testing.T) {
 		entry := w.inService("b", clock(w.head.Seq+1).Format(time.RFC3339), "all")
 		if s, findings := w.services(); s[entry].Approved || !slices.Equal(ids(findings), []string{history.ServiceUnapproved}) {
 			t.Errorf("rejected: %+v, %v", s[entry], findings)
+		} else if r := s[entry].Rejected; len(r) != 1 || !strings.HasSuffix(findings[0].Text, "; "+r[0].Signer+" rejected it: "+r[0].Reason) {
+			t.Errorf("nobody is named who rejected it: %+v, %v", r, findings)
 		}
 		w.signOff(n, "cem", "checker", signoff.Approve)
 		s, findings := w.services()
@@ -223,6 +225,28 @@ func TestServiceBeforeItsApproval(t *testing.T) {
 		s, findings := w.services()
 		if got := s[entry]; got.Approved || !got.Lapsed || len(findings) != 1 || findings[0].ID != history.ServiceUnapproved || !strings.Contains(findings[0].Text, "was approved then; it is not any more") {
 			t.Errorf("%+v, %v", got, findings)
+		}
+	})
+	t.Run("hidden by a record of something before it", func(t *testing.T) {
+		w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+		w.anchor("a")
+		since := clock(w.head.Seq + 1)
+		entry := w.inService("b", since.Format(time.RFC3339), "all")
+		w.approve("a", "b", "cem")
+		if s, findings := w.services(); !s[entry].Late || !slices.Contains(ids(findings), history.ServiceUnapproved) {
+			t.Fatalf("late: %+v, %v", s[entry], findings)
+		}
+		// Whoever records what is in service, alone, says that x ran before.
+		w.inService("x", since.Add(-time.Second).Format(time.RFC3339), "all")
+		s, findings := w.services()
+		got := 0
+		for _, f := range findings {
+			if strings.Contains(f.Text, fmt.Sprintf("entry %d: ", entry)) && (f.ID == history.ServiceUndoes || f.ID == history.ServiceUnapproved && strings.Contains(f.Text, "approved only on")) {
+				got++
+			}
+		}
+		if !s[entry].Undoes || !s[entry].Late || got != 2 {
+			t.Errorf("%+v, %v", s[entry], findings)
 		}
 	})
 	t.Run("in time", func(t *testing.T) {

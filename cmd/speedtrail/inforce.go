@@ -117,6 +117,8 @@ type serviceRecord struct {
 	Late     string  `json:"approved_late"` // when, where that was after it went into service; else empty
 	Undoes   bool    `json:"undoes"`
 	Through  []int64 `json:"assessments"`
+	// Rejected are the rejections of it that stand.
+	Rejected []evidence `json:"rejected"`
 	// Review are the statements by which it is approved whose keys were revoked later, or
 	// are not those of their names in an older folder.
 	Review []evidence `json:"review"`
@@ -181,7 +183,7 @@ func serviceRecordOf(line *approval.Line, s history.Service) serviceRecord {
 		Signer: s.Signer, Key: s.Fingerprint, Stated: s.Time.Format(signoff.TimeLayout), Recorded: s.Recorded.Format(signoff.TimeLayout), Reason: s.Reason,
 		Revoked: revocationOf(line, s.Fingerprint), Elsewhere: elsewhereOf(line, s.Record), Review: toBeReviewed(evidenceOf(line, s.Folder, s.Content, s.Through)),
 		lapsed:   s.Lapsed,
-		Approved: s.Approved, Undoes: s.Undoes, Through: append([]int64{}, s.Through...),
+		Approved: s.Approved, Undoes: s.Undoes, Through: append([]int64{}, s.Through...), Rejected: evidenceOn(line, s.Rejected),
 	}
 }
 
@@ -192,6 +194,8 @@ func (r serviceRecord) words() string {
 	}
 	state := "NOT APPROVED"
 	switch {
+	case r.Undoes && r.Late != "":
+		state = "NOT APPROVED THEN, only on " + r.Late + ", and CAN UNDO what was in service before"
 	case r.Undoes:
 		state = "approved, but CAN UNDO what was in service before"
 	case r.lapsed:
@@ -209,6 +213,9 @@ func (r serviceRecord) words() string {
 	}
 	if r.Revoked != nil {
 		text += "; ! its " + r.Revoked.Short()
+	}
+	for _, e := range r.Rejected {
+		text += "; ! REJECTED by " + e.by()
 	}
 	for _, e := range r.Review {
 		text += "; ! " + e.by() + ": " + e.review()

@@ -54,17 +54,21 @@ func elsewhereBehind(line *approval.Line, r approval.Record) string {
 // assessments, and those of the anchor that has the content.
 func evidenceOf(line *approval.Line, folder, content string, assessments []int64) []evidence {
 	list := []evidence{}
-	add := func(number int64, records []approval.Record) {
-		for _, d := range records {
-			decision := cmp.Or(d.Decision, string(d.Kind)) // an anchor decides nothing else
-			list = append(list, evidence{number, d.Entry.Seq, d.Role, decision, d.Signer, d.Fingerprint, elsewhereOf(line, d), revocationOf(line, d.Fingerprint), d.Time.Format(signoff.TimeLayout)})
-		}
-	}
 	if a := line.Anchor(folder); a != nil && a.Content == content {
-		add(0, a.Records)
+		list = evidenceOn(line, a.Records)
 	}
 	for _, number := range assessments {
-		add(number, line.State(number).Signed)
+		list = append(list, evidenceOn(line, line.State(number).Signed)...)
+	}
+	return list
+}
+
+// evidenceOn gives statements as evidence.
+func evidenceOn(line *approval.Line, records []approval.Record) []evidence {
+	list := []evidence{}
+	for _, d := range records {
+		decision := cmp.Or(d.Decision, string(d.Kind)) // an anchor decides nothing else
+		list = append(list, evidence{d.Assessment, d.Entry.Seq, d.Role, decision, d.Signer, d.Fingerprint, elsewhereOf(line, d), revocationOf(line, d.Fingerprint), d.Time.Format(signoff.TimeLayout)})
 	}
 	return list
 }

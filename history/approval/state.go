@@ -68,6 +68,9 @@ func (l *Line) State(number int64) State {
 	return s
 }
 
+// Rejections lists the rejections of the tree of a folder that stand.
+func (l *Line) Rejections(folder, tree string) []Record { return l.rejections(content{folder, tree}) }
+
 // rejections lists the rejections of a content that stand: of people whose last
 // decision on it, on whatever assessment, is to reject.
 func (l *Line) rejections(c content) []Record {
