@@ -22,7 +22,7 @@ import (
 )
 
 // RulesVersion is raised whenever the same data can give another result.
-const RulesVersion = 5
+const RulesVersion = 6
 
 // Account is all that differs between two revisions of a data set.
 type Account struct {
@@ -86,6 +86,7 @@ type Route struct {
 	Pieces  [][]scope.Piece
 	Files   []File // that differ, by path
 	Leaving []Leaving
+	Dated   []Dated
 	Fleet   []Fleet
 	Figures Figures
 

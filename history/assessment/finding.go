@@ -20,6 +20,7 @@ const (
 	Unseen            = "unseen"
 	NotRepresented    = "not-represented"
 	Masked            = "masked"
+	DatesChanged      = "dates-changed"
 	PolicyChanged     = "policy-changed"
 	AcceptedChanged   = "accepted-changed"
 	BaseNotAncestor   = "base-not-ancestor"
@@ -35,7 +36,7 @@ const Swapped = "the target is part of the base's history, and the base not of t
 // comparison as a whole, what moves a speed unannounced, what nobody sees, what
 // is announced and did not happen, the rest.
 var order = append([]string{
-	BaseNotAncestor, UnknownPreparer, PolicyChanged, AcceptedChanged, Outside, Masked, NotRepresented, TrainsChanged, Unseen, RunOutLeavesRoute,
+	BaseNotAncestor, UnknownPreparer, PolicyChanged, AcceptedChanged, Outside, Masked, DatesChanged, NotRepresented, TrainsChanged, Unseen, RunOutLeavesRoute,
 }, doubt.IDs...)
 
 // explained says of each kind why it matters and what to do.
@@ -48,6 +49,8 @@ var explained = map[string][2]string{
 		"Add the train below to trains.toml, or see that no such train runs here."},
 	Masked: {"The change is hidden by temporary restrictions today and appears when they end.",
 		"Have it declared and checked like any other change."},
+	DatesChanged: {"A temporary restriction begins or ends at another time. All of them count in a comparison, whatever their dates, so that no speed changes there; on the track it does.",
+		"See that the dates are meant: where a restriction ends, trains go faster."},
 	PolicyChanged: {"Who may approve changes is itself changed here.",
 		"Have the people checked who may sign; the policy of the base decides about this change."},
 	AcceptedChanged: {"A change cannot accept its own findings.",
@@ -112,6 +115,7 @@ func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 		c.add(ranked{Finding: Finding{ID: BaseNotAncestor, Text: text}})
 	}
 	c.policy()
+	c.zone()
 	c.trains()
 	perRoute := make([]collector, len(in.Account.Routes))
 	parallel.Each(len(perRoute), func(i int) {
@@ -321,6 +325,7 @@ func (c *collector) route(index int) {
 		c.outsideTrack(index)
 	}
 	c.masked(index)
+	c.dated(r)
 	c.unrepresented(r)
 	for _, l := range r.Leaving {
 		of := r.Target

@@ -1,0 +1,93 @@
+package diff
+
+import (
+	"slices"
+	"testing"
+	"time"
+
+	"pgregory.net/rapid"
+
+	"speedtrail/diff/align"
+	"speedtrail/schema"
+	"speedtrail/schema/chainage"
+	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
+)
+
+const year = 2026
+
+func monthOf(m int) time.Time {
+	if m == 0 {
+		return time.Time{}
+	}
+	return time.Date(year, time.Month(m), 1, 0, 0, 0, 0, time.UTC)
+}
+
+// drawTerms draws restrictions on a track of ten metres, by months.
+func drawTerms(t *rapid.T, name string) []schema.TemporaryRow {
+	return rapid.SliceOfN(rapid.Custom(func(t *rapid.T) schema.TemporaryRow {
+		from := rapid.IntRange(0, 8).Draw(t, "from")
+		x := schema.TemporaryRow{Speed: unit.Speed(5 * rapid.IntRange(1, 3).Draw(t, "speed"))}
+		x.Start, x.End = unit.Distance(from), unit.Distance(rapid.IntRange(from+1, 10).Draw(t, "to"))
+		x.Directions = codes.Directions(rapid.IntRange(1, 3).Draw(t, "directions"))
+		x.Delay = rapid.Bool().Draw(t, "delay")
+		begin := rapid.IntRange(0, 3).Draw(t, "begin")
+		x.Valid.From = monthOf(begin)
+		if end := rapid.IntRange(begin, 4).Draw(t, "end"); end > begin {
+			x.Valid.Until = monthOf(end)
+		}
+		return x
+	}), 0, 4).Draw(t, name)
+}
+
+// Metre by metre and month by month: a stretch is named where, and only where, at some
+// time another speed holds than the comparison of all restrictions says.
+func TestDatedPointByPoint(t *testing.T) {
+	track, err := chainage.NewTrack(0, 10, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	rapid.Check(t, func(t *rapid.T) {
+		r := &Route{
+			Base:   &schema.Route{Directions: codes.Both, Track: track, Temporary: drawTerms(t, "base")},
+			Target: &schema.Route{Directions: codes.Both, Track: track, Temporary: drawTerms(t, "target")},
+		}
+		at := func(route *schema.Route, d codes.Direction, place unit.Distance, delayed bool, month int) unit.Speed {
+			v := unit.Speed(1000)
+			for _, x := range route.Temporary {
+				holds := month < 0 || x.Valid.From.IsZero() || int(x.Valid.From.Month()) <= month
+				holds = holds && (month < 0 || x.Valid.Until.IsZero() || month < int(x.Valid.Until.Month()))
+				if holds && x.Directions.Has(d) && x.Start <= place && place < x.End && (x.Delay || !delayed) {
+					v = min(v, x.Speed)
+				}
+			}
+			return v
+		}
+		for _, d := range codes.AllDirections {
+			list := r.dated(d, align.Tracks(track, track).Common)
+			for place := range unit.Distance(10) {
+				var faster, slower bool
+				for _, delayed := range []bool{false, true} {
+					before, after := at(r.Base, d, place, delayed, -1), at(r.Target, d, place, delayed, -1)
+					for month := range 6 {
+						was, is := at(r.Base, d, place, delayed, month), at(r.Target, d, place, delayed, month)
+						faster = faster || is > was && after <= before
+						slower = slower || is < was && after >= before
+					}
+				}
+				i := slices.IndexFunc(list, func(x Dated) bool { return x.From <= place && place < x.To })
+				if got := i >= 0; got != (faster || slower) {
+					t.Fatalf("%s at %d: named %v, faster %v, slower %v: %+v", d, place, got, faster, slower, list)
+				}
+				if i >= 0 && (list[i].Faster != faster || list[i].Slower != slower || list[i].Row == nil || !list[i].Row.Directions.Has(d)) {
+					t.Fatalf("%s at %d: %+v, want faster %v, slower %v", d, place, list[i], faster, slower)
+				}
+			}
+			for i := 1; i < len(list); i++ {
+				if list[i].From < list[i-1].To {
+					t.Fatalf("%+v overlap", list)
+				}
+			}
+		}
+	})
+}
