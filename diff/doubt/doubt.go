@@ -40,9 +40,10 @@ const (
 	CrossingWarning   = "crossing-warning"
 )
 
-// IDs lists them in the order of the source.
-var IDs = []string{CurveSpeed, CantExcess, CategoryOrder, AxleLoadOrder, AxleLoadMissing, ShortStretch, StepSize,
-	TemporaryExpired, TemporaryNoEffect, DelayOverBridge, DelayOneSided, CrossingWarning}
+// IDs lists them, first a train that is too fast on a curve and road users who are
+// warned too late.
+var IDs = []string{CurveSpeed, CrossingWarning, CantExcess, CategoryOrder, AxleLoadOrder, AxleLoadMissing, ShortStretch, StepSize,
+	TemporaryExpired, TemporaryNoEffect, DelayOverBridge, DelayOneSided}
 
 // Doubt is one doubtful place.
 type Doubt struct {

@@ -58,7 +58,7 @@ func TestAcceptance(t *testing.T) {
 		{"the last second of it", acceptance("short-stretch", "R1", 4, 5, "2026-03-01"), acceptance("short-stretch", "R1", 4, 5, "2026-03-01"), nil, time.Date(2026, 3, 1, 23, 59, 59, 0, time.UTC), "used 1", "short-stretch", "step-size"},
 		{"the day after", acceptance("short-stretch", "R1", 4, 5, "2026-03-01"), acceptance("short-stretch", "R1", 4, 5, "2026-03-01"), nil, time.Date(2026, 3, 2, 0, 0, 0, 0, time.UTC), "over 0", "", "short-stretch step-size"},
 		{"the day of the time zone of the data set", acceptance("short-stretch", "R1", 4, 5, "2026-03-01"), acceptance("short-stretch", "R1", 4, 5, "2026-03-01"),
-			texts{"dataset.toml": ground["dataset.toml"] + "time_zone = \"America/New_York\"\n[limits]\nshortest_stretch_m = 100\nlargest_step_kmh = 60\n"}, time.Date(2026, 3, 2, 4, 59, 0, 0, time.UTC), "used 1", "short-stretch", "step-size"},
+			texts{"dataset.toml": ground["dataset.toml"] + "time_zone = \"America/New_York\"\n[limits]\nshortest_stretch_m = 100\nlargest_step_kmh = 60\n"}, time.Date(2026, 3, 2, 4, 59, 0, 0, time.UTC), "used 1", "short-stretch", "dates-changed step-size"},
 		{"a route that is the same on both sides, or none", acceptance("short-stretch", "R9", 0, 20, ""), acceptance("short-stretch", "R9", 0, 20, ""), nil, at, "unread 0", "", "short-stretch step-size"},
 		{"what cannot be accepted", acceptance("outside", "R1", 0, 20, "") + acceptance("not-represented", "R1", 0, 20, ""), acceptance("outside", "R1", 0, 20, "") + acceptance("not-represented", "R1", 0, 20, ""),
 			texts{"speed.csv": strings.Replace(base["speed.csv"], "10,20,30", "10,20,35", 1)}, at, "never 0; never 0", "", "outside short-stretch step-size"},

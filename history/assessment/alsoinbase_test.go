@@ -54,7 +54,7 @@ func TestAlsoInBase(t *testing.T) {
 		{"a lower limit, which the base does not have", texts{"dataset.toml": ground["dataset.toml"] + "[limits]\nshortest_stretch_m = 100\nlargest_step_kmh = 35\n", "places.csv": "km,kind,name\n1,station,Elm\n"},
 			"short-stretch 4.000 old, step-size 4.000 new, step-size 4.050 new, step-size 10.000 new, temporary-expired 10.000 old"},
 		{"a date of the past", texts{"temporary.csv": "id,from_km,to_km,speed,valid_to\nA,10,11,20,2026-02-14\n"},
-			"short-stretch 4.000 old, step-size 10.000 old, temporary-expired 10.000 new"},
+			"dates-changed 10.000 new, short-stretch 4.000 old, step-size 10.000 old, temporary-expired 10.000 new"},
 	} {
 		t.Run(x.name, func(t *testing.T) {
 			c := compute(t, base, x.target, nil)
