@@ -52,8 +52,8 @@ func TestDoubtfulNames(t *testing.T) {
 		`requests/a.toml:16:9: request CR-1 names route "elsewhere", which is not in this revision`,
 		`requests/a.toml:1:1: request CR-1: assess refuses it where it is in play and names what neither side has`,
 		`accepted.toml:2:11: the entry accepts nothing: "stepsize" is none of the findings that can be accepted; did you mean step-size?`,
-		`accepted.toml:14:11: the entry accepts nothing: "frobnication" is none of the findings that can be accepted; these are: curve-speed, cant-excess, category-order, axle-load-order, axle-load-missing, short-stretch, step-size, temporary-expired, temporary-without-effect, delay-over-bridge, delay-one-sided, crossing-warning`,
-		`accepted.toml:20:11: the entry accepts nothing: "outside" is none of the findings that can be accepted; these are: curve-speed, cant-excess, category-order, axle-load-order, axle-load-missing, short-stretch, step-size, temporary-expired, temporary-without-effect, delay-over-bridge, delay-one-sided, crossing-warning`,
+		`accepted.toml:14:11: the entry accepts nothing: "frobnication" is none of the findings that can be accepted; these are: curve-speed, crossing-warning, cant-excess, category-order, axle-load-order, axle-load-missing, short-stretch, step-size, temporary-expired, temporary-without-effect, delay-over-bridge, delay-one-sided`,
+		`accepted.toml:20:11: the entry accepts nothing: "outside" is none of the findings that can be accepted; these are: curve-speed, crossing-warning, cant-excess, category-order, axle-load-order, axle-load-missing, short-stretch, step-size, temporary-expired, temporary-without-effect, delay-over-bridge, delay-one-sided`,
 	}
 	if strings.Join(remarks, "\n") != strings.Join(want, "\n") {
 		t.Errorf("got\n%s\nwant\n%s", strings.Join(remarks, "\n"), strings.Join(want, "\n"))

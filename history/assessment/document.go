@@ -319,8 +319,8 @@ type Stretches struct {
 // target's track.
 type Stretch struct {
 	After       []Step    `json:"after"`
-	Before      []Step    `json:"before"` // with gaps where the base has no track
-	Changes     []int     `json:"changes"`
+	Before      []Step    `json:"before"`  // with gaps where the base has no track
+	Changes     []int     `json:"changes"` // of the first of the trains; others can have theirs declared otherwise
 	Direction   string    `json:"direction" jsonschema:"enum=nominal,enum=reverse"`
 	From        int64     `json:"from_mm"` // of the changes
 	Places      []Place   `json:"places"`
