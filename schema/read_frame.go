@@ -9,7 +9,6 @@ import (
 	"strconv"
 	"strings"
 	"time"
-	_ "time/tzdata" // time zones of dataset.toml on machines without a database of them
 
 	"speedtrail/schema/chainage"
 	"speedtrail/schema/codes"
@@ -38,8 +37,8 @@ func (r *reader) dataset(d *Dataset) {
 	}
 	d.Name = m.Text("name", true)
 	if zone := m.Text("time_zone", false); zone != "" {
-		location, err := time.LoadLocation(zone)
-		if err != nil || !knownZone(zone) {
+		location, ok := Zone(zone)
+		if !ok {
 			r.faults.Add(valuePlace(m, "time_zone"), "time_zone %s is no IANA time zone name", source.Quote(zone))
 		} else {
 			d.TimeZone = location

@@ -28,9 +28,9 @@ func TestOnDay(t *testing.T) {
 		{"UTC", "2026-03-08T12:00:00Z", "2026-03-08T11:00:00Z", "2026-03-08T12:00:00Z", false},
 	} {
 		t.Run(c.zone+" "+c.on+" "+c.from, func(t *testing.T) {
-			zone, err := time.LoadLocation(c.zone)
-			if err != nil {
-				t.Fatal(err)
+			zone, ok := schema.Zone(c.zone)
+			if !ok {
+				t.Fatal(c.zone)
 			}
 			filter, err := inForce(c.on, zone)
 			if err != nil {

@@ -3,11 +3,11 @@ package trace
 import (
 	"context"
 	"errors"
+	"fmt"
 	"hash/fnv"
 	"io/fs"
 	"slices"
 	"strings"
-	"time"
 
 	"speedtrail/history/revision"
 	"speedtrail/schema"
@@ -283,9 +283,9 @@ func (k *checker) loadOne(n int, v *Loaded, commit Hash) error {
 	}
 	versions := k.readers[n][v.Zone]
 	if versions == nil {
-		zone, err := time.LoadLocation(v.Zone)
-		if err != nil {
-			return err
+		zone, ok := schema.Zone(v.Zone)
+		if !ok {
+			return fmt.Errorf("time zone %s, which the data set was read in, is not known", source.Quote(v.Zone))
 		}
 		versions = schema.NewVersions(zone, keptRows)
 		if k.each != nil {
