@@ -25,6 +25,12 @@ func TestReadmeCommands(t *testing.T) {
 	if status := run(t.Context(), []string{"demo", dir}, nil, &out, &remarks); status != statusDone {
 		t.Fatalf("status %d: %s", status, &remarks)
 	}
+	// The report that it prints begins as the README shows it.
+	_, shown, _ := strings.Cut(string(text), "\n    VERDICT\n")
+	shown, _, ok = strings.Cut(shown, "\n\nThe commit")
+	if shown = strings.ReplaceAll("VERDICT\n"+shown, "\n    ", "\n"); !ok || !strings.Contains(out.String(), shown) {
+		t.Errorf("the demonstration does not print what the README shows:\n%s", shown)
+	}
 	t.Chdir(dir)
 	commands := 0
 	for _, line := range strings.Split(section, "\n") {
