@@ -6,6 +6,7 @@ import (
 	"time"
 
 	"speedtrail/diff/align"
+	"speedtrail/diff/profile"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
@@ -42,6 +43,20 @@ func (r *Route) dated(d codes.Direction, cells []align.Cell) []Dated {
 		}
 	}
 	return list
+}
+
+// datedBy tells whether one of some rows, by their lines on both sides, has a part in
+// such a stretch.
+func (r *Route) datedBy(old, now []int) bool {
+	return slices.ContainsFunc(r.Dated, func(x Dated) bool {
+		if x.OfBase && slices.Contains(old, x.Row.Pos.Line) {
+			return true
+		}
+		return slices.ContainsFunc(now, func(line int) bool {
+			row := anyRow(r.Target, profile.Temporary, line)
+			return row != nil && row.Directions.Has(x.Direction) && row.Start < x.To && x.From < row.End
+		})
+	})
 }
 
 // term is a temporary restriction on a part of the target's track.

@@ -28,6 +28,7 @@ const (
 	NotTheTrack                   // reference trains, requests, policy, settings
 	TrackUnaffected               // the track is the same for trains
 	OtherZone                     // the time zone of dates without one
+	ByDates                       // only at some time, by the dates of temporary restrictions
 )
 
 // String words the reason.
@@ -40,6 +41,7 @@ func (r Reason) String() string {
 		"hidden today by temporary restrictions on every place that it concerns", "it holds no speed",
 		"it is not part of the track", "no speed depends on it",
 		"only validities differ, by the hours between the zones, on every route, also on those that are the same; all temporary restrictions count, whatever their dates",
+		"only by dates, see the finding dates-changed; all temporary restrictions count, whatever their dates",
 	}[r]
 }
 
@@ -128,6 +130,8 @@ func (r *Route) reason(c Cause, trains []Train) Reason {
 		return OnlyValidity
 	case d.Masks:
 		return HiddenToday
+	case layer == profile.Temporary && r.datedBy(linesOf(f.Tables[d.Table].Old.Rows, d.Old), linesOf(f.Tables[d.Table].New.Rows, d.New)):
+		return ByDates
 	}
 	return r.together(c, trains)
 }
