@@ -18,6 +18,15 @@ func VerifyCommand(signer string, at time.Time) string {
 	return fmt.Sprintf("ssh-keygen -Y verify -f allowed_signers -I '%s' -n speedtrail-signoff -O verify-time=%s -s statement.sig < statement", signer, at.UTC().Format("20060102150405Z"))
 }
 
+// inLines cuts such a command into lines that are short enough to be printed whole,
+// and to be copied from what was printed.
+func inLines(command string) string {
+	for _, option := range []string{" -I ", " -n ", " -s "} {
+		command = strings.Replace(command, option, " \\\n "+option, 1)
+	}
+	return command
+}
+
 // BlockWords says what keeps an assessment from being approved.
 func BlockWords(blocks []string) string {
 	var parts []string
@@ -110,7 +119,7 @@ func (p *page) fillSigned() {
 	for _, s := range p.R.SignOffs {
 		p.Signed = append(p.Signed, pageSigned{
 			Words: source.Visible(signedWords(p.R, s)), Key: source.Visible(s.keyWords()),
-			Statement: source.VisibleLines(s.Statement), Signature: source.VisibleLines(s.Signature), Command: source.Visible(s.Command),
+			Statement: source.VisibleLines(s.Statement), Signature: source.VisibleLines(s.Signature), Command: source.VisibleLines(inLines(s.Command)),
 			StatementFile: fileURL(s.Statement), SignatureFile: fileURL(s.Signature),
 		})
 	}

@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"strings"
 	"testing"
+	"time"
 
 	"speedtrail/history/assessment"
 )
@@ -25,6 +26,23 @@ func TestSignersCommand(t *testing.T) {
 		if !strings.Contains(b.String(), c.want) {
 			_, after, _ := strings.Cut(b.String(), "from the base revision")
 			t.Errorf("folder %q: %.200s", c.folder, after)
+		}
+	}
+}
+
+// The command goes through the page in lines that fit on a printed one, and is the same
+// to a shell.
+func TestVerifyCommandLines(t *testing.T) {
+	p := page{C: &assessment.Computed{Folder: "."}}
+	command := VerifyCommand("r.holm@brackwater.example", time.Date(2025, 11, 12, 11, 0, 0, 0, time.UTC))
+	p.R = Record{Number: 1, SignOffs: []SignOff{{Role: "checker", Decision: "approve", Signer: "r.holm@brackwater.example", Command: command}}}
+	p.fillSigned()
+	if len(p.Signed) != 1 || strings.ReplaceAll(p.Signed[0].Command, " \\\n  ", " ") != command {
+		t.Fatalf("%+v", p.Signed)
+	}
+	for line := range strings.Lines(p.Signed[0].Command) {
+		if len(line) > 70 {
+			t.Errorf("%q is too long", line)
 		}
 	}
 }
