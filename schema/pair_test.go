@@ -195,10 +195,10 @@ func TestLoadPairFaults(t *testing.T) {
 		base, target fstest.MapFS
 		want         string
 	}{
-		{"base", bad("47"), good, `base: routes/r2/speed.csv:2:6: basic "47" is not a multiple of 5 from 5 to 600 (km/h)`},
-		{"target", good, bad("0"), `target: routes/r2/speed.csv:2:6: basic "0" is not a multiple of 5 from 5 to 600 (km/h)`},
-		{"both", bad("47"), bad("0"), `base: routes/r2/speed.csv:2:6: basic "47" is not a multiple of 5 from 5 to 600 (km/h)
-target: routes/r2/speed.csv:2:6: basic "0" is not a multiple of 5 from 5 to 600 (km/h)`},
+		{"base", bad("47"), good, `base: routes/r2/speed.csv:2:6: basic "47" is not a multiple of 5 from 5 to 600 (km/h), in digits alone`},
+		{"target", good, bad("0"), `target: routes/r2/speed.csv:2:6: basic "0" is not a multiple of 5 from 5 to 600 (km/h), in digits alone`},
+		{"both", bad("47"), bad("0"), `base: routes/r2/speed.csv:2:6: basic "47" is not a multiple of 5 from 5 to 600 (km/h), in digits alone
+target: routes/r2/speed.csv:2:6: basic "0" is not a multiple of 5 from 5 to 600 (km/h), in digits alone`},
 		{"frame", with(good, "dataset.toml", ""), with(good, "trains.toml", ""), "base: dataset.toml: the file is missing\ntarget: trains.toml: the file is missing"},
 		{"folder without route", good, with(good, "routes/r2/route.toml", ""), "target: routes/r2/route.toml: the file is missing, every folder in routes/ is a route"},
 		{"id of an unread route", good, taken, `target: routes/r2/route.toml:1:6: route id "R3" is that of routes/r3, too; ids are unique`},

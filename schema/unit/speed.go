@@ -17,7 +17,7 @@ const (
 )
 
 // ErrSpeed says what a speed may be.
-var ErrSpeed = errors.New("not a multiple of 5 from 5 to 600 (km/h)")
+var ErrSpeed = errors.New("not a multiple of 5 from 5 to 600 (km/h), in digits alone")
 
 // ParseSpeed reads a speed in whole km/h. Zero is refused: a stretch that no
 // train may enter is not described by a speed.
