@@ -3,9 +3,12 @@ package diff
 import (
 	"cmp"
 	"context"
+	"errors"
+	"fmt"
 	"slices"
 	"strings"
 	"sync"
+	"sync/atomic"
 
 	"speedtrail/schema"
 	"speedtrail/schema/parallel"
@@ -26,6 +29,8 @@ type Options struct {
 	Rolling bool
 	// NoFleet and NoFigures leave out what they name, to measure its cost.
 	NoFleet, NoFigures bool
+	// limit stands in for MaxChanges in tests.
+	limit int64
 	// Progress, if given, is called after each route; calls do not overlap.
 	Progress func(done, total int)
 }
@@ -41,10 +46,19 @@ func (e *UnknownRequestError) Error() string {
 	return "the target has no change request " + source.Quote(e.ID)
 }
 
+// MaxChanges bounds the changes of speed of a comparison, over all routes and
+// trains, with and without temporary restrictions: tables of the largest size
+// and a thousand trains would take more memory than a machine has. It is some
+// ten times what the largest network gives when every row of it is altered.
+const MaxChanges = 10_000_000
+
+// ErrTooMany is the error of a comparison with more than MaxChanges changes.
+var ErrTooMany = errors.New("too many changes of speed")
+
 // Compare works out what differs between two revisions of a data set. Routes
 // that were left unread on both sides, because their files are the same, are
 // counted only. The error is an *UnknownRequestError, a *source.Faults for
-// requests that name what does not exist, or that of the context.
+// requests that name what does not exist, ErrTooMany, or that of the context.
 func Compare(ctx context.Context, base, target *schema.Dataset, o Options) (*Account, error) {
 	a := &Account{
 		Trains: pairTrains(base.Trains, target.Trains),
@@ -77,8 +91,20 @@ func Compare(ctx context.Context, base, target *schema.Dataset, o Options) (*Acc
 func (a *Account) compareRoutes(ctx context.Context, o *Options) error {
 	var lock sync.Mutex
 	done := 0
-	return parallel.Try(ctx, len(a.Routes), func(_ context.Context, i int) error {
-		compareRoute(&a.Routes[i], a.Trains, o)
+	limit := int64(MaxChanges)
+	if o.limit > 0 {
+		limit = o.limit
+	}
+	var changes atomic.Int64
+	return parallel.Try(ctx, len(a.Routes), func(ctx context.Context, i int) error {
+		if err := compareRoute(ctx, &a.Routes[i], a.Trains, o, func(more int) error {
+			if changes.Add(int64(more)) > limit {
+				return fmt.Errorf("%w: there are more than %d", ErrTooMany, limit)
+			}
+			return nil
+		}); err != nil {
+			return err
+		}
 		if o.Progress != nil {
 			lock.Lock()
 			defer lock.Unlock()

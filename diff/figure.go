@@ -2,6 +2,7 @@ package diff
 
 import (
 	"cmp"
+	"context"
 	"math"
 	"slices"
 	"sort"
@@ -84,11 +85,15 @@ type ShortRaise struct {
 	Needed    unit.Distance // the length of piece at which it would just be reached
 }
 
-// figures computes the figures of one direction of travel.
-func (p *pair) figures(trains []Train, rolling bool) {
+// figures computes the figures of one direction of travel. The context ends it
+// between two trains.
+func (p *pair) figures(ctx context.Context, trains []Train, rolling bool) error {
 	f := &p.route.Figures
 	var w runs
 	for i, t := range trains {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
 		m := impact.Motion{Acceleration: t.Acceleration, Braking: t.Braking, Rolling: rolling}
 		// Where the track is another one, a train without a change of speed takes another
 		// time, too.
@@ -98,6 +103,7 @@ func (p *pair) figures(trains []Train, rolling bool) {
 	}
 	p.crossings(f)
 	p.curves(f, trains)
+	return nil
 }
 
 // runs is memory for two runs, used again for each train.

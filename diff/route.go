@@ -2,6 +2,7 @@ package diff
 
 import (
 	"cmp"
+	"context"
 	"encoding/binary"
 	"slices"
 
@@ -15,8 +16,10 @@ import (
 	"speedtrail/schema/unit"
 )
 
-// compareRoute fills in what differs on one route.
-func compareRoute(r *Route, trains []Train, o *Options) {
+// compareRoute fills in what differs on one route. Each train's changes are
+// announced before they are described; an error ends the comparison, and so
+// does the context between two trains.
+func compareRoute(ctx context.Context, r *Route, trains []Train, o *Options, announce func(changes int) error) error {
 	var base, target *chainage.Track
 	if r.Base != nil {
 		base = r.Base.Track
@@ -36,15 +39,18 @@ func compareRoute(r *Route, trains []Train, o *Options) {
 	case r.Target == nil:
 		r.wholeTrack(Removed)
 	default:
-		compareTracks(r, trains, o)
+		if err := compareTracks(ctx, r, trains, o, announce); err != nil {
+			return err
+		}
 	}
 	r.Leaving = r.leaving(trains)
 	r.explain(trains)
 	r.causes = causeTable{} // no longer needed
+	return ctx.Err()
 }
 
 // compareTracks compares a route that both revisions have.
-func compareTracks(r *Route, trains []Train, o *Options) {
+func compareTracks(ctx context.Context, r *Route, trains []Train, o *Options, announce func(changes int) error) error {
 	tracks := align.Tracks(r.Base.Track, r.Target.Track)
 	for _, c := range tracks.Common {
 		for _, at := range [...]unit.Distance{c.Target, c.Target + c.Length} {
@@ -66,12 +72,16 @@ func compareTracks(r *Route, trains []Train, o *Options) {
 			}
 			r.Dated = append(r.Dated, r.dated(d, tracks.Common)...)
 			p := newPair(r, d, &tracks, longest)
-			p.compare(trains)
+			if err := p.compare(ctx, trains, announce); err != nil {
+				return err
+			}
 			if !o.NoFleet {
 				r.Fleet = append(r.Fleet, p.fleet(trains)...)
 			}
 			if !o.NoFigures {
-				p.figures(trains, o.Rolling)
+				if err := p.figures(ctx, trains, o.Rolling); err != nil {
+					return err
+				}
 			}
 		case inBase:
 			r.Track = append(r.Track, TrackChange{d, Removed, 0, r.Base.Track.Length(), 0})
@@ -85,6 +95,7 @@ func compareTracks(r *Route, trains []Train, o *Options) {
 			return cmp.Or(cmp.Compare(a.Direction, b.Direction), cmp.Compare(a.From, b.From), cmp.Compare(a.Train, b.Train))
 		})
 	}
+	return nil
 }
 
 // wholeTrack states a route that only one revision has.
@@ -171,13 +182,16 @@ func longestOf(trains []Train) (longest unit.Distance) {
 }
 
 // compare compiles both sides for every train and appends the changes.
-func (p *pair) compare(trains []Train) {
+func (p *pair) compare(ctx context.Context, trains []Train, announce func(changes int) error) error {
 	r := p.route
 	p.sights = make([]*sight, len(trains))
 	known := map[string]*sight{}
 	delayed := p.all.base.Delayed() || p.all.target.Delayed()
 	var key []byte
 	for i, t := range trains {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
 		class := profile.ClassOf(t.Train)
 		before, after := p.all.base.Select(class), p.all.target.Select(class)
 		length := t.Length
@@ -192,6 +206,9 @@ func (p *pair) compare(trains []Train) {
 			known[string(key)] = s
 		}
 		p.sights[i] = s
+		if err := announce(len(s.changes) + len(s.masked)); err != nil {
+			return err
+		}
 		for _, c := range s.changes {
 			r.Changes = append(r.Changes, p.change(p.all, before, after, i, t, c))
 		}
@@ -202,6 +219,7 @@ func (p *pair) compare(trains []Train) {
 			}
 		}
 	}
+	return nil
 }
 
 // look finds what a train sees.

@@ -143,6 +143,8 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 		return nil, badCall(meant(unknown.ID, unknown.Known, "the requests of a revision stand in its folder requests/: "+cmp.Or(some(unknown.Known), "none")), "%v", err)
 	case errors.As(err, &faults):
 		return nil, &requestError{to.label(), err}
+	case errors.Is(err, diff.ErrTooMany):
+		return nil, badCall("compare in steps, or with fewer reference trains", "%v", err)
 	case err != nil:
 		return nil, err
 	}
