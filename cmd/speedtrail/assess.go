@@ -152,12 +152,10 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 		Base: before, Target: after, Account: account, Folder: folder,
 		BaseRev: from.revisionOf(), TargetRev: to.revisionOf(),
 		Named:     assessment.Named{Base: validText(from.typed), BaseName: validText(from.name), Target: validText(to.typed), TargetName: validText(to.name)},
-		Preparers: []assessment.Person{}, Options: options, At: time.Now(), BaseIsAncestor: true,
+		Preparers: []assessment.Person{}, Options: options, BaseIsAncestor: true,
 	}
-	if !to.isWorkingTree() {
-		if in.At = to.commit.Committer.When; in.At.IsZero() {
-			return nil, badCall("make a new commit of the same content", "the commit %s has no time that can be read, and the terms of restrictions and acceptances are compared with it", to.commit.Hash)
-		}
+	if in.At, err = to.time(); err != nil {
+		return nil, err
 	}
 	complete, err := a.descent(ctx, repo, from, to, since, &in)
 	if err != nil {

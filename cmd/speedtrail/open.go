@@ -47,6 +47,18 @@ type side struct {
 // isWorkingTree tells whether the side is the files on disk.
 func (s side) isWorkingTree() bool { return s.commit.Hash == "" }
 
+// time gives what the terms of restrictions and acceptances are compared with: the
+// committer date, for the working tree the clock.
+func (s side) time() (time.Time, error) {
+	if s.isWorkingTree() {
+		return time.Now(), nil
+	}
+	if at := s.commit.Committer.When; !at.IsZero() {
+		return at, nil
+	}
+	return time.Time{}, badCall("make a new commit of the same content", "the commit %s has no time that can be read, and the terms of restrictions and acceptances are compared with it", s.commit.Hash)
+}
+
 // load reads the data set of the side. What is wrong with it is said to be of the side.
 func (s side) load(ctx context.Context) (*schema.Dataset, error) {
 	data, err := schema.Load(ctx, s.files)

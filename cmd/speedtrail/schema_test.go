@@ -25,7 +25,7 @@ func TestSchemas(t *testing.T) {
 		published.Form
 		args []string
 	}{
-		{published.Form{File: "validation.schema.json", Format: "speedtrail-validation 1", Title: "A validation by speedtrail", Type: &validation{}}, []string{"validate", "HEAD"}},
+		{published.Form{File: "validation.schema.json", Format: "speedtrail-validation 1", Title: "A validation by speedtrail", Type: &validation{}}, []string{"validate", "HEAD", "--doubtful"}},
 		{published.Form{File: "register.schema.json", Format: "speedtrail-register 1", Title: "The register of speedtrail", Type: &registerList{}}, []string{"register"}},
 		{published.Form{File: "verification.schema.json", Format: "speedtrail-verification 1", Title: "A verification by speedtrail", Type: &verified{}}, []string{"verify"}},
 		{published.Form{File: "inforce.schema.json", Format: "speedtrail-inforce 1", Title: "What went into service when", Type: &serviceLog{}}, []string{"inforce"}},
@@ -35,7 +35,7 @@ func TestSchemas(t *testing.T) {
 		{published.Form{File: "trace.schema.json", Format: "speedtrail-trace 1", Type: nil}, []string{"trace", "--route", "BW1", "--from", "30", "--to", "40", "--train", "IC"}},
 	} {
 		if test.Type != nil {
-			published.Check(t, test.Form, root, *update, "cmd/speedtrail")
+			published.Check(t, test.Form, root, *update, "cmd/speedtrail", "history/assessment")
 		}
 		var out, remarks bytes.Buffer
 		status := run(t.Context(), append([]string{"--repo", dir}, append(test.args, "--format", "json")...), nil, &out, &remarks)

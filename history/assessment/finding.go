@@ -128,6 +128,11 @@ func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 	c.requests()
 	c.joinDirections()
 	acceptances := c.accept()
+	return c.inOrder(), acceptances
+}
+
+// inOrder gives the findings in the order in which to look at them.
+func (c *collector) inOrder() []Finding {
 	slices.SortStableFunc(c.list, func(a, b ranked) int {
 		return cmp.Or(
 			before(a.Accepted == "", b.Accepted == ""),
@@ -140,7 +145,7 @@ func findings(in *Input, doc *Computed) ([]Finding, []Acceptance) {
 	for i, f := range c.list {
 		list[i] = f.Finding
 	}
-	return list, acceptances
+	return list
 }
 
 // joinDirections makes one finding of two that say the same of both directions
@@ -362,10 +367,16 @@ func (c *collector) route(index int) {
 	}
 	judged := *c.in.Target
 	judged.Limits = stricter(c.in.Base.Limits, judged.Limits)
-	for _, d := range doubt.Check(r.Target, &judged, c.in.At) {
-		f := doubtful(r.Target, d, d.Text)
-		f.AlsoInBase = before[doubtful(r.Target, d, d.Key)]
-		f.Row = fmt.Sprintf("%s:%d", d.Row.File, d.Row.Line)
+	c.doubtful(r.Target, &judged, before)
+}
+
+// doubtful finds the doubtful data of a route of a data set. before has what the base
+// has, without its rows.
+func (c *collector) doubtful(r *schema.Route, d *schema.Dataset, before map[Finding]bool) {
+	for _, x := range doubt.Check(r, d, c.in.At) {
+		f := doubtful(r, x, x.Text)
+		f.AlsoInBase = before[doubtful(r, x, x.Key)]
+		f.Row = fmt.Sprintf("%s:%d", x.Row.File, x.Row.Line)
 		c.add(ranked{Finding: f})
 	}
 }

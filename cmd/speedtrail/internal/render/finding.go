@@ -122,8 +122,9 @@ func joinPlace(place, text string) string {
 	return place + ": " + text
 }
 
-// acceptanceWords says what became of an entry of accepted.toml.
-func acceptanceWords(a assessment.Acceptance) string {
+// acceptanceWords says what became of an entry of accepted.toml; unchecked are the kinds
+// of finding that nobody looked for.
+func acceptanceWords(a assessment.Acceptance, unchecked []string) string {
 	state := map[string]string{
 		"used":   fmt.Sprintf("covers %s", plural(a.Covers, "finding", "findings")),
 		"unused": "covers nothing and can be removed",
@@ -132,6 +133,9 @@ func acceptanceWords(a assessment.Acceptance) string {
 		"never":  "does not count: a finding of this kind cannot be accepted" + schema.Meant(a.Finding, doubt.IDs),
 		"unread": "is for a route that is the same in both revisions",
 	}[a.State]
+	if a.State == "unused" && slices.Contains(unchecked, a.Finding) {
+		state = "is for what was not looked for, as dataset.toml sets no limit"
+	}
 	return fmt.Sprintf("accepted.toml:%d, %s on %s km %s to %s, %s", a.Line, a.Finding, a.Route, minus(a.From), minus(a.To), state)
 }
 

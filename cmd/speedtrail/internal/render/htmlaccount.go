@@ -56,7 +56,7 @@ func (p *page) fillFindings() {
 		p.Findings = append(p.Findings, out)
 	}
 	for _, a := range p.C.Accepted {
-		p.Acceptances = append(p.Acceptances, source.Visible(acceptanceWords(a)))
+		p.Acceptances = append(p.Acceptances, source.Visible(acceptanceWords(a, p.C.Limits.Unchecked)))
 	}
 }
 

@@ -45,6 +45,8 @@ type textWriter struct {
 	r   Record
 	s   Style
 	err error
+	// noPage: what is written has no HTML form that could hold more.
+	noPage bool
 }
 
 func (p *textWriter) printf(format string, args ...any) {

@@ -18,12 +18,14 @@ const (
 	mostRoutesNamed  = 20 // of those that are not shown
 )
 
-func (p *textWriter) findings() {
+func (p *textWriter) findings() { p.findingsBelow("What needs eyes first") }
+
+func (p *textWriter) findingsBelow(heading string) {
 	groups := findingGroups(p.c)
 	if len(groups) == 0 {
 		return
 	}
-	p.heading("What needs eyes first")
+	p.heading(heading)
 	for i, g := range groups {
 		if i > 0 {
 			p.printf("\n")
@@ -46,7 +48,7 @@ func (p *textWriter) findings() {
 	for _, a := range p.c.Accepted {
 		if a.State != "used" && a.State != "unread" {
 			p.printf("%s", gap)
-			p.paragraph("  ", acceptanceWords(a))
+			p.paragraph("  ", acceptanceWords(a, p.c.Limits.Unchecked))
 			gap = ""
 		}
 	}
@@ -144,7 +146,7 @@ func rowTail(f assessment.Finding) string {
 // command gives the command that writes all of an assessment in a format. Where a page
 // has not all of a list either, the JSON form has.
 func (p *textWriter) command(format string, n, most int) string {
-	if format == "html" && n > most {
+	if format == "html" && (n > most || p.noPage) {
 		format = "json"
 	}
 	switch {
