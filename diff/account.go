@@ -22,7 +22,7 @@ import (
 )
 
 // RulesVersion is raised whenever the same data can give another result.
-const RulesVersion = 6
+const RulesVersion = 7
 
 // Account is all that differs between two revisions of a data set.
 type Account struct {

@@ -111,28 +111,29 @@ func (t *causeTable) of(c *Change, class profile.Class, length unit.Distance) in
 	if i, ok := t.known[key]; ok {
 		return i
 	}
+	i := t.index(t.behind([2][]profile.Source{t.route.Sources[c.BeforeSources], t.route.Sources[c.AfterSources]}, c.Direction, class, key.near))
+	t.known[key] = i
+	return i
+}
+
+// behind lists the differences behind a change of which the governing rows before and
+// after are given, in the order of files and rows. near: the track differs behind it.
+func (t *causeTable) behind(governing [2][]profile.Source, d codes.Direction, class profile.Class, near bool) []Cause {
 	var list []Cause
-	for side, sources := range [...][]profile.Source{t.route.Sources[c.BeforeSources], t.route.Sources[c.AfterSources]} {
+	for side, sources := range governing {
 		for _, s := range sources {
 			for _, cause := range t.byLine[rowPlace{side, s.Pos.Line, s.Layer}] {
-				if s.Layer != profile.TrainSpeed && !slices.Contains(list, cause) && t.hasEffect(cause, c.Direction, class) {
+				if s.Layer != profile.TrainSpeed && !slices.Contains(list, cause) && t.hasEffect(cause, d, class) {
 					list = append(list, cause)
 				}
 			}
 		}
 	}
-	if len(list) == 0 || key.near {
+	if len(list) == 0 || near {
 		list = append(list, t.track...)
 	}
-	slices.SortFunc(list, func(a, b Cause) int {
-		if a.File != b.File {
-			return a.File - b.File
-		}
-		return a.Row - b.Row
-	})
-	i := t.index(list)
-	t.known[key] = i
-	return i
+	slices.SortFunc(list, func(a, b Cause) int { return cmp.Or(cmp.Compare(a.File, b.File), cmp.Compare(a.Row, b.Row)) })
+	return list
 }
 
 // jointBehind tells whether the track differs behind a change, no further than

@@ -9,6 +9,7 @@ import (
 	"speedtrail/diff/delta"
 	"speedtrail/diff/fleet"
 	"speedtrail/diff/profile"
+	"speedtrail/schema"
 	"speedtrail/schema/codes"
 	"speedtrail/schema/unit"
 )
@@ -39,6 +40,9 @@ type FleetChange struct {
 	// Represented tells of each product whether a reference train of its
 	// categories sees the change.
 	Represented []bool
+	// Causes are, for a product that no reference train represents, the differences
+	// behind the change, as the product's example of the first length feels them.
+	Causes [][]Cause
 }
 
 // fleet compares the sides for every train, with and without temporary
@@ -156,7 +160,32 @@ func (p *pair) represent(f *Fleet, found *fleet.Result, s sides, trains []Train)
 				c.Represented[k] = c.Represented[k] || seen && product.Has(class)
 			}
 		}
+		c.Causes = make([][]Cause, len(c.Products))
+		for k, product := range c.Products {
+			if !c.Represented[k] {
+				c.Causes[k] = p.causes(s, c.Delta, product.Example(), c.Lengths[0])
+			}
+		}
 	}
+}
+
+// causes lists the differences behind a change that a train of a class and length
+// without a maximum speed sees.
+func (p *pair) causes(s sides, d delta.Delta, class profile.Class, length unit.Distance) []Cause {
+	train := schema.Train{Cant: class.Cant, Categories: class.Categories, AxleLoad: class.AxleLoad, Length: length, Max: profile.NoMaximum}
+	var governing [2][]profile.Source
+	for side, x := range [...]struct {
+		compiler *profile.Compiler
+		from     unit.Distance
+		speed    unit.Speed
+	}{{s.base, d.Base, d.Before}, {s.target, d.Target, d.After}} {
+		for _, row := range x.compiler.Governing(x.compiler.Select(class), length, profile.NoMaximum, x.from, x.from+d.Length, x.speed) {
+			governing[side] = append(governing[side], x.compiler.Source(row, train))
+		}
+	}
+	c := Change{Direction: p.direction, From: d.Target, To: d.Target + d.Length}
+	near := d.RunOut && p.route.causes.jointBehind(&c, length)
+	return p.route.causes.behind(governing, p.direction, class, near)
 }
 
 // show gives what the reference trains show, by their class.

@@ -21,23 +21,25 @@ func unrepresented(c *assessment.Computed) []assessment.Finding {
 var oneWay = texts{"route.toml": ground["route.toml"] + "directions = [\"nominal\"]\n"}
 
 // The example of a finding is a train for trains.toml: with it in both
-// revisions, the finding is gone.
+// revisions, the finding is gone, and what the train sees comes of the row that the
+// finding named.
 func TestExampleTrain(t *testing.T) {
 	const head = "from_km,to_km,basic,cd150,freight_p,passenger,train_length_delay\n"
 	for _, x := range []struct {
 		name         string
 		base, target texts
 		text         string // of the only finding
+		row          string
 		example      string // without its id and name
 	}{
 		{"a cant deficiency category", texts{"speed.csv": head + "0,20,100,120,,,no\n"}, texts{"speed.csv": head + "0,20,100,140,,,no\n"},
-			"cant deficiency 150 mm and above, any category, any axle load: raised by up to 20 km/h, 120 to 140", "cant_deficiency_mm = 150\naxle_load = \"A\"\nlength_m = 200\nmax_speed_kmh = 140\n"},
+			"cant deficiency 150 mm and above, any category, any axle load: raised by up to 20 km/h, 120 to 140", "speed.csv:2", "cant_deficiency_mm = 150\naxle_load = \"A\"\nlength_m = 200\nmax_speed_kmh = 140\n"},
 		{"another category", texts{"speed.csv": head + "0,20,100,,80,,no\n"}, texts{"speed.csv": head + "0,20,100,,60,,no\n"},
-			"any cant deficiency, freight braked in P, any axle load: lowered by up to 20 km/h, 80 to 60", "cant_deficiency_mm = 80\ncategories = [\"freight_p\"]\naxle_load = \"A\"\nlength_m = 200\nmax_speed_kmh = 80\n"},
+			"any cant deficiency, freight braked in P, any axle load: lowered by up to 20 km/h, 80 to 60", "speed.csv:2", "cant_deficiency_mm = 80\ncategories = [\"freight_p\"]\naxle_load = \"A\"\nlength_m = 200\nmax_speed_kmh = 80\n"},
 		{"an axle load category", texts{"axle-load.csv": "from_km,to_km,E5,train_length_delay\n4,5,60,no\n"}, texts{"axle-load.csv": "from_km,to_km,E5,train_length_delay\n4,5,40,no\n"},
-			"any cant deficiency, any category, axle load E5: lowered by up to 20 km/h, 60 to 40", "cant_deficiency_mm = 80\naxle_load = \"E5\"\nlength_m = 200\nmax_speed_kmh = 60\n"},
+			"any cant deficiency, any category, axle load E5: lowered by up to 20 km/h, 60 to 40", "axle-load.csv:2", "cant_deficiency_mm = 80\naxle_load = \"E5\"\nlength_m = 200\nmax_speed_kmh = 60\n"},
 		{"hidden today", texts{"axle-load.csv": "from_km,to_km,E5,train_length_delay\n4,5,60,no\n", "temporary.csv": "id,from_km,to_km,speed\nA,3,6,30\n"}, texts{"axle-load.csv": "from_km,to_km,E5,train_length_delay\n4,5,40,no\n"},
-			"any cant deficiency, any category, axle load E5: lowered by up to 20 km/h, 60 to 40, without temporary restrictions", "cant_deficiency_mm = 80\naxle_load = \"E5\"\nlength_m = 200\nmax_speed_kmh = 60\n"},
+			"any cant deficiency, any category, axle load E5: lowered by up to 20 km/h, 60 to 40, without temporary restrictions", "axle-load.csv:2", "cant_deficiency_mm = 80\naxle_load = \"E5\"\nlength_m = 200\nmax_speed_kmh = 60\n"},
 	} {
 		t.Run(x.name, func(t *testing.T) {
 			c := compute(t, over(x.base, oneWay), x.target, nil)
@@ -47,6 +49,9 @@ func TestExampleTrain(t *testing.T) {
 			}
 			if found[0].Text != x.text {
 				t.Errorf("got %s, want %s", found[0].Text, x.text)
+			}
+			if want := "routes/r1/" + x.row; found[0].Row != want {
+				t.Errorf("row %q, want %q", found[0].Row, want)
 			}
 			lines := strings.SplitAfterN(found[0].Example, "\n", 4)
 			if lines[0] != "[[train]]\n" || !strings.HasPrefix(lines[1], "id = \"") || !strings.HasPrefix(lines[2], "name = \"") {
@@ -59,6 +64,11 @@ func TestExampleTrain(t *testing.T) {
 			c = compute(t, with, x.target, nil)
 			if left := unrepresented(c); len(left) > 0 {
 				t.Errorf("with the example in trains.toml, %v is left", left)
+			}
+			if !slices.ContainsFunc(c.Findings, func(f assessment.Finding) bool {
+				return (f.ID == assessment.Outside || f.ID == assessment.Masked) && f.Row == found[0].Row
+			}) {
+				t.Errorf("none of %v names %s", c.Findings, found[0].Row)
 			}
 		})
 	}
@@ -169,6 +179,10 @@ func TestExampleTrains(t *testing.T) {
 				return
 			}
 			checked++
+			// Only rows differ here, so that each finding with an example has one.
+			if i := slices.IndexFunc(left, func(f assessment.Finding) bool { return f.Example != "" && f.Row == "" }); i >= 0 {
+				t.Fatalf("no row behind %+v", left[i])
+			}
 			again := slices.ContainsFunc(left, func(f assessment.Finding) bool {
 				f.Example = last.Example
 				return f == last

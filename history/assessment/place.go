@@ -130,14 +130,23 @@ const mostRows = 3
 // rowsOf names the rows behind changes: of the target, or of the base where a
 // row was removed.
 func (c *collector) rowsOf(r *diff.Route, changes []*diff.Change) string {
-	var names []string
-	listed, looked := map[string]bool{}, map[int]bool{}
+	var lists [][]diff.Cause
+	looked := map[int]bool{}
 	for _, x := range changes {
-		if looked[x.Causes] {
-			continue
+		if !looked[x.Causes] {
+			looked[x.Causes] = true
+			lists = append(lists, r.Causes[x.Causes])
 		}
-		looked[x.Causes] = true
-		for _, cause := range r.Causes[x.Causes] {
+	}
+	return causesText(r, lists)
+}
+
+// causesText names the rows of lists of causes.
+func causesText(r *diff.Route, lists [][]diff.Cause) string {
+	var names []string
+	listed := map[string]bool{}
+	for _, list := range lists {
+		for _, cause := range list {
 			f := &r.Files[cause.File]
 			d := &f.Rows[cause.Row]
 			name := ""

@@ -20,6 +20,7 @@ type unseenBy struct {
 	hidden     bool // only without temporary restrictions
 	changes    []diff.FleetChange
 	largest    diff.FleetChange
+	causes     [][]diff.Cause // of each change, for this product
 }
 
 // unrepresented finds changes that only trains see which no reference train
@@ -30,7 +31,7 @@ func (c *collector) unrepresented(r *diff.Route) {
 		for _, x := range f.Changes {
 			for k, p := range x.Products {
 				if !x.Represented[k] {
-					list = note(list, x, p, f)
+					list = note(list, x, p, f, x.Causes[k])
 				}
 			}
 		}
@@ -73,7 +74,7 @@ func lengthsBetween(list []unit.Distance) string {
 }
 
 // note adds a change to the entry of its trains and sense.
-func note(list []unseenBy, x diff.FleetChange, p fleet.Product, f diff.Fleet) []unseenBy {
+func note(list []unseenBy, x diff.FleetChange, p fleet.Product, f diff.Fleet, causes []diff.Cause) []unseenBy {
 	raised := x.After > x.Before
 	i := slices.IndexFunc(list, func(u unseenBy) bool { return u.product == p && u.raised == raised && u.hidden == f.Permanent })
 	if i < 0 {
@@ -81,7 +82,7 @@ func note(list []unseenBy, x diff.FleetChange, p fleet.Product, f diff.Fleet) []
 		i = len(list) - 1
 	}
 	u := &list[i]
-	u.changes = append(u.changes, x)
+	u.changes, u.causes = append(u.changes, x), append(u.causes, causes)
 	u.directions |= 1 << f.Direction
 	if abs(x.After-x.Before) > abs(u.largest.After-u.largest.Before) {
 		u.largest = x
@@ -115,7 +116,7 @@ func (c *collector) unrepresentedFinding(r *diff.Route, u unseenBy) ranked {
 	return ranked{
 		Finding: Finding{
 			ID: NotRepresented, Route: r.ID, Direction: u.directions.String(), From: track.Begins(first).String(), To: track.Ends(last).String(),
-			Text: text, Example: c.example(r.ID, u, top),
+			Row: causesText(r, u.causes), Text: text, Example: c.example(r.ID, u, top),
 		},
 		raised: u.raised, step: int(abs(u.largest.After - u.largest.Before)),
 		structure: u.product.Axle != 1<<codes.AxleLoads-1,
