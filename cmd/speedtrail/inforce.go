@@ -28,7 +28,8 @@ went into service, entries that do not count. Exit status 1 if there is any.
 
 With --when it answers which revision was in force at an instant, with the whole
 chain of evidence; with --route and --at also the effective speed at a point for
-every reference train of that revision, temporary restrictions by their validity.`,
+every reference train of that revision, temporary restrictions by their validity. Exit
+status 1 if that revision went into service without approval, or has lost it.`,
 		Example: `  speedtrail inforce
   speedtrail inforce --when 2026-03-14T05:12:00Z --route SM1 --at 12.4
   speedtrail inforce record release-2026.1 --since 2026-03-08T03:00:00Z --reason "timetable change" --key ~/.ssh/id_ed25519`,

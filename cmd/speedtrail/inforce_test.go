@@ -65,10 +65,15 @@ func TestInForceWhenCorrected(t *testing.T) {
 	record("c0", "2026-03-02T00:00:00Z")
 	record("c1", "2026-03-04T00:00:00Z", "--routes", "R1")
 	record("c1", "2026-03-08T00:00:00Z", "--replaces", "4")
+	// c1 is not approved: status 1 where it was in force, and where that was said once.
 	for when, want := range map[string]bool{"2026-03-03T00:00:00Z": false, "2026-03-05T00:00:00Z": true, "2026-03-09T00:00:00Z": false} {
+		status := statusFinding
+		if when == "2026-03-03T00:00:00Z" {
+			status = statusDone
+		}
 		for _, route := range [][]string{nil, {"--route", "R1", "--at", "1.5"}} {
 			args := append([]string{"inforce", "--when", when}, route...)
-			text, form := call(t, in(args...)...).want(t, 0), call(t, in(append(args, "--format", "json")...)...).want(t, 0)
+			text, form := call(t, in(args...)...).want(t, status), call(t, in(append(args, "--format", "json")...)...).want(t, status)
 			if strings.Contains(strings.Join(strings.Fields(text.out), " "), "Said otherwise, and not any more: 2026-03-04T00:00:00Z commit") != want || strings.Contains(form.out, `"by_entry": 5`) != want {
 				t.Errorf("%q: want %v\n%s%s", args, want, text.out, form.out)
 			}

@@ -122,12 +122,26 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 			return err
 		}
 	}
-	return a.write(func(w io.Writer) error {
+	err = a.write(func(w io.Writer) error {
 		if a.format == "json" {
 			return indentedJSON(w, answer)
 		}
 		return a.printInForce(w, &answer, a.style().Width)
 	})
+	if err == nil && answer.unapproved() {
+		return errFindings
+	}
+	return err
+}
+
+// unapproved tells whether what was in force, or was said to be until that was
+// corrected, went into service without approval, or has lost it: inforce without an
+// instant has a finding for each.
+func (a *inForceAnswer) unapproved() bool {
+	against := func(r *serviceRecord) bool { return !r.Approved || r.Late != "" }
+	return a.Record != nil && against(a.Record) ||
+		slices.ContainsFunc(a.Routes, func(r heldRecord) bool { return against(&r.serviceRecord) }) ||
+		slices.ContainsFunc(a.Corrected, func(x correctedRecord) bool { return against(&x.Record) })
 }
 
 // saidOtherwise tells whether a record that was corrected would be the answer, for a
