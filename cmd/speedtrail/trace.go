@@ -124,9 +124,9 @@ func (a *app) trace(ctx context.Context, call traceCall) error {
 		Commit: newest.Hash, Committed: instant(newest.Committer.When), Typed: validText(call.rev),
 	}
 	if call.at != "" {
-		err = t.point()
+		err = t.point(ctx)
 	} else {
-		err = t.stretch()
+		err = t.stretch(ctx)
 	}
 	if err != nil {
 		return err

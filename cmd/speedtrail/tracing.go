@@ -30,6 +30,8 @@ type tracing struct {
 
 	rank  map[int32]int // of a commit: its index in doc.Commits
 	named []int32       // those
+	// requests are those in play at the commits that were asked for.
+	requests map[int32][]schema.ChangeRequest
 }
 
 // choose takes the trains that were asked for, and begins the document.
@@ -70,7 +72,7 @@ func (t *tracing) views() map[codes.Direction]*trace.View {
 	return views
 }
 
-func (t *tracing) point() error {
+func (t *tracing) point(ctx context.Context) error {
 	at, err := located(t.route, "--at", t.call.at)
 	if err != nil {
 		return err
@@ -101,6 +103,12 @@ func (t *tracing) point() error {
 			out, err := t.trail(d, &trail)
 			if err != nil {
 				return err
+			}
+			for k := range trail.Steps {
+				s := &trail.Steps[k]
+				if out.Steps[k].DeclaredBy, err = t.declaredBy(ctx, s.After.Commit, func(q *schema.ChangeRequest) bool { return views[d].DeclaredAt(q, t.trains[i], at, s) }); err != nil {
+					return err
+				}
 			}
 			key := fmt.Sprint(out)
 			if n, ok := seen[key]; ok {
@@ -156,7 +164,7 @@ func (t *tracing) committed(c int32) (string, error) {
 // mostBands is how many revisions a picture of a stretch shows.
 const mostBands = 60
 
-func (t *tracing) stretch() error {
+func (t *tracing) stretch(ctx context.Context) error {
 	from, err := located(t.route, "--from", t.call.from)
 	if err != nil {
 		return err
@@ -190,8 +198,14 @@ func (t *tracing) stretch() error {
 		seen := map[string]int{}
 		for i, pieces := range found[d] {
 			out := render.TraceStretch{Direction: d.String(), Pieces: []render.TracePiece{}, Bands: []render.TraceBand{}}
-			for _, p := range pieces {
+			for k := range pieces {
+				p := &pieces[k]
+				declared, err := t.declaredBy(ctx, p.Origin, func(q *schema.ChangeRequest) bool { return views[d].DeclaredOn(q, t.trains[i], p) })
+				if err != nil {
+					return err
+				}
 				out.Pieces = append(out.Pieces, render.TracePiece{
+					DeclaredBy: declared,
 					From: track.Begins(p.From).String(), To: track.Ends(p.To).String(), Start: int64(p.From), End: int64(p.To), Speed: int(p.Speed),
 					Origin: t.rank[p.Origin], Sources: assessment.Sources(p.Sources), Before: levels(p.Before), Across: p.Across,
 				})
@@ -224,6 +238,37 @@ func levels(list []step.Piece) []render.TraceLevel {
 		out[i] = render.TraceLevel{Start: int64(p.From), End: int64(p.To), Speed: int(p.Speed)}
 	}
 	return out
+}
+
+// requestsAt gives the change requests in play at a commit.
+func (t *tracing) requestsAt(ctx context.Context, c int32) ([]schema.ChangeRequest, error) {
+	if list, ok := t.requests[c]; ok {
+		return list, nil
+	}
+	var list []schema.ChangeRequest
+	if base, ok := t.h.Base(c); ok {
+		var err error
+		if list, err = trace.Requests(ctx, t.repo, t.folder, t.h.Commits[base].Hash, t.h.Commits[c].Hash); err != nil {
+			return nil, err
+		}
+	}
+	if t.requests == nil {
+		t.requests = map[int32][]schema.ChangeRequest{}
+	}
+	t.requests[c] = list
+	return list, nil
+}
+
+// declaredBy names the requests in play at a commit that declare what changed there.
+func (t *tracing) declaredBy(ctx context.Context, c int32, declares func(*schema.ChangeRequest) bool) ([]string, error) {
+	list := []string{}
+	requests, err := t.requestsAt(ctx, c)
+	for i := range requests {
+		if declares(&requests[i]) {
+			list = append(list, requests[i].ID)
+		}
+	}
+	return list, err
 }
 
 // name notes that the document refers to a commit.
@@ -275,8 +320,8 @@ func (t *tracing) describe(ctx context.Context) error {
 			Committed: instant(commit.Committer.When), Subject: validText(commit.Subject),
 			Requests: []render.TraceRequest{}, Assessments: list,
 		}
-		if base, ok := t.h.Base(c); ok && changed[i] {
-			requests, err := trace.Requests(ctx, t.repo, t.folder, t.h.Commits[base].Hash, hash)
+		if changed[i] {
+			requests, err := t.requestsAt(ctx, c)
 			if err != nil {
 				return err
 			}

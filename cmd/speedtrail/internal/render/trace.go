@@ -113,6 +113,9 @@ type TraceStep struct {
 	After  TraceValue   `json:"after"`
 	Aside  bool         `json:"aside"`  // a later merge did not take it
 	Before []TraceValue `json:"before"` // of the parents, each speed once; empty where the history begins
+	// DeclaredBy are the requests in play that declare the change at this place for these
+	// trains; run-out beyond the end of a declaration is not looked at.
+	DeclaredBy []string `json:"declared_by"`
 	// Overtaken are the assessments of its commit that did not judge this speed: a later
 	// commit of the same range altered it.
 	Overtaken []int64 `json:"overtaken"`
@@ -136,15 +139,18 @@ type TraceStretch struct {
 
 // TracePiece is a piece of one speed that dates from one revision.
 type TracePiece struct {
-	Across  int                 `json:"across"` // revisions that do not load between its revision and what was before
-	Before  []TraceLevel        `json:"before"` // in the first parent of its revision
-	End     int64               `json:"end_mm"` // running distance
-	From    string              `json:"from_km"`
-	Origin  int                 `json:"origin"` // index in commits
-	Sources []assessment.Source `json:"governed_by"`
-	Speed   int                 `json:"speed_kmh"`
-	Start   int64               `json:"start_mm"` // running distance
-	To      string              `json:"to_km"`
+	Across int          `json:"across"` // revisions that do not load between its revision and what was before
+	Before []TraceLevel `json:"before"` // in the first parent of its revision
+	// DeclaredBy are the requests in play that declare some of what changed here for
+	// these trains; run-out beyond the end of a declaration is not looked at.
+	DeclaredBy []string            `json:"declared_by"`
+	End        int64               `json:"end_mm"` // running distance
+	From       string              `json:"from_km"`
+	Origin     int                 `json:"origin"` // index in commits
+	Sources    []assessment.Source `json:"governed_by"`
+	Speed      int                 `json:"speed_kmh"`
+	Start      int64               `json:"start_mm"` // running distance
+	To         string              `json:"to_km"`
 }
 
 // TraceLevel is a piece of an older profile, on the newest track.
@@ -282,7 +288,18 @@ func stepRemarks(t *Trace, s *TraceStep) []string {
 	for _, n := range s.Overtaken {
 		list = append(list, fmt.Sprintf("! assessment %d did not judge this speed: a later commit before its target altered it", n))
 	}
-	return list
+	return append(list, declaredRemarks(&t.Commits[s.After.Commit], s.DeclaredBy)...)
+}
+
+// declaredRemarks says which of the requests in play at a commit declare what changed.
+func declaredRemarks(c *TraceCommit, by []string) []string {
+	switch {
+	case len(by) > 0:
+		return []string{"declared here by " + strings.Join(by, ", ")}
+	case len(c.Requests) > 0:
+		return []string{"no request in play declares it here; run-out beyond a declaration is not looked at"}
+	}
+	return nil
 }
 
 func pieceRemarks(t *Trace, p *TracePiece) []string {
@@ -296,7 +313,10 @@ func pieceRemarks(t *Trace, p *TracePiece) []string {
 	if p.Across > 0 {
 		list = append(list, acrossWords(p.Across))
 	}
-	return list
+	if len(p.Before) == 0 {
+		return list
+	}
+	return append(list, declaredRemarks(&t.Commits[p.Origin], p.DeclaredBy)...)
 }
 
 func acrossWords(n int) string {

@@ -98,7 +98,7 @@ func TraceHTML(w io.Writer, t *Trace) error {
 			row := t.row(piece.Origin)
 			row.From, row.To, row.Length, row.After = minus(piece.From), minus(piece.To), metres(piece.End-piece.Start), speedWords(piece.Speed)
 			row.Because = []string{source.Visible(assessment.SourceText(piece.Sources))}
-			row.Remarks = pieceRemarks(t, piece)
+			row.Remarks = visible(pieceRemarks(t, piece))
 			s.Rows = append(s.Rows, row)
 		}
 		p.Stretches = append(p.Stretches, s)
@@ -125,6 +125,14 @@ func (t *Trace) row(commit int) traceRow {
 	}
 }
 
+// visible makes what hides in texts visible.
+func visible(list []string) []string {
+	for i, s := range list {
+		list[i] = source.Visible(s)
+	}
+	return list
+}
+
 func (t *Trace) gapRow(g TraceGap) traceRow {
 	row := t.row(g.Commit)
 	row.Gap = source.Visible(g.Fault)
@@ -141,7 +149,7 @@ func (t *Trace) stepRow(s *TraceStep) traceRow {
 	for _, line := range because(before, s.After.Sources) {
 		row.Because = append(row.Because, source.Visible(line))
 	}
-	row.Remarks = stepRemarks(t, s)
+	row.Remarks = visible(stepRemarks(t, s))
 	if s.Aside {
 		row.Class = "aside"
 	}

@@ -30,7 +30,7 @@ func (t *Trace) title() string {
 
 // traceKey says what the speeds of a trace are, and are not.
 const traceKey = "Speeds are those of each revision, with all its temporary restrictions whatever their dates; what was in service when, speedtrail inforce says. " +
-	"In play are the requests of the whole commit; whether one declares the change at this place, the assessment says."
+	"In play are the requests of the whole commit; which of them declare what changed here is remarked, and an assessment judges the run-out of trains beyond it as well."
 
 // speedAt writes a speed with its unit.
 func speedAt(v int) string {
