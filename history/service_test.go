@@ -386,7 +386,7 @@ func TestStatementOfClockAhead(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, chain.SignOff, text, signature, at); err != nil {
+		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, history.Statement{Kind: chain.SignOff, Text: text, Signature: signature}, at); err != nil {
 			t.Fatal(err)
 		}
 	}
@@ -414,7 +414,7 @@ func TestLateApprovalByAnotherClock(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, chain.SignOff, text, signature, early); err != nil {
+		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, history.Statement{Kind: chain.SignOff, Text: text, Signature: signature}, early); err != nil {
 			t.Fatal(err)
 		}
 	}

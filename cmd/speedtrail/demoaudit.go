@@ -150,7 +150,7 @@ func (t *demoTrail) sign(ctx context.Context, s demo.Signing) error {
 	if err != nil {
 		return err
 	}
-	_, err = history.RecordSigned(ctx, t.l, line, chain.SignOff, signed.statement, signed.signature, s.When)
+	_, err = history.RecordSigned(ctx, t.l, line, history.Statement{Kind: chain.SignOff, Text: signed.statement, Signature: signed.signature}, s.When)
 	if s.Refused {
 		if !errors.Is(err, approval.ErrRefused) {
 			return fmt.Errorf("the demonstration expects a refusal, got %v", err)
@@ -182,6 +182,6 @@ func (t *demoTrail) service(ctx context.Context, tag, reason string, since, when
 	if err != nil {
 		return err
 	}
-	_, err = history.RecordSigned(ctx, t.l, line, chain.InForce, signed.statement, signed.signature, when)
+	_, err = history.RecordSigned(ctx, t.l, line, history.Statement{Kind: chain.InForce, Text: signed.statement, Signature: signed.signature}, when)
 	return err
 }
