@@ -41,16 +41,21 @@ func drawTerms(t *rapid.T, name string) []schema.TemporaryRow {
 }
 
 // Metre by metre and month by month: a stretch is named where, and only where, at some
-// time another speed holds than the comparison of all restrictions says.
+// time another speed holds than the comparison of all restrictions says. The target's
+// track begins some metres before or behind the base's.
 func TestDatedPointByPoint(t *testing.T) {
-	track, err := chainage.NewTrack(0, 10, nil)
-	if err != nil {
-		t.Fatal(err)
-	}
 	rapid.Check(t, func(t *rapid.T) {
+		shift := unit.Distance(rapid.IntRange(-3, 3).Draw(t, "shift")) // of running distance, base to target
+		tracks := [2]*chainage.Track{}
+		for i, from := range []unit.Distance{0, -shift} {
+			var err error
+			if tracks[i], err = chainage.NewTrack(from, from+10, nil); err != nil {
+				t.Fatal(err)
+			}
+		}
 		r := &Route{
-			Base:   &schema.Route{Directions: codes.Both, Track: track, Temporary: drawTerms(t, "base")},
-			Target: &schema.Route{Directions: codes.Both, Track: track, Temporary: drawTerms(t, "target")},
+			Base:   &schema.Route{Directions: codes.Both, Track: tracks[0], Temporary: drawTerms(t, "base")},
+			Target: &schema.Route{Directions: codes.Both, Track: tracks[1], Temporary: drawTerms(t, "target")},
 		}
 		at := func(route *schema.Route, d codes.Direction, place unit.Distance, delayed bool, month int) unit.Speed {
 			v := unit.Speed(1000)
@@ -64,13 +69,13 @@ func TestDatedPointByPoint(t *testing.T) {
 			return v
 		}
 		for _, d := range codes.AllDirections {
-			list := r.dated(d, align.Tracks(track, track).Common)
-			for place := range unit.Distance(10) {
+			list := r.dated(d, align.Tracks(tracks[0], tracks[1]).Common)
+			for place := max(0, shift); place < min(10, 10+shift); place++ {
 				var faster, slower bool
 				for _, delayed := range []bool{false, true} {
-					before, after := at(r.Base, d, place, delayed, -1), at(r.Target, d, place, delayed, -1)
+					before, after := at(r.Base, d, place-shift, delayed, -1), at(r.Target, d, place, delayed, -1)
 					for month := range 6 {
-						was, is := at(r.Base, d, place, delayed, month), at(r.Target, d, place, delayed, month)
+						was, is := at(r.Base, d, place-shift, delayed, month), at(r.Target, d, place, delayed, month)
 						faster = faster || is > was && after <= before
 						slower = slower || is < was && after >= before
 					}
@@ -79,15 +84,108 @@ func TestDatedPointByPoint(t *testing.T) {
 				if got := i >= 0; got != (faster || slower) {
 					t.Fatalf("%s at %d: named %v, faster %v, slower %v: %+v", d, place, got, faster, slower, list)
 				}
-				if i >= 0 && (list[i].Faster != faster || list[i].Slower != slower || list[i].Row == nil || !list[i].Row.Directions.Has(d)) {
-					t.Fatalf("%s at %d: %+v, want faster %v, slower %v", d, place, list[i], faster, slower)
+				if i < 0 {
+					continue
+				}
+				x, from := list[i], place
+				if x.OfBase {
+					from -= shift
+				}
+				if x.Faster != faster || x.Slower != slower || x.Row == nil || !x.Row.Directions.Has(d) || from < x.Row.Start || x.Row.End <= from {
+					t.Fatalf("%s at %d: %+v, want faster %v, slower %v", d, place, x, faster, slower)
 				}
 			}
 			for i := 1; i < len(list); i++ {
-				if list[i].From < list[i-1].To {
+				one, next := list[i-1], list[i]
+				if next.From < one.To {
 					t.Fatalf("%+v overlap", list)
+				}
+				touch := one.To == next.From
+				if one.From, one.To = next.From, next.To; touch && one == next {
+					t.Fatalf("%+v: two are one", list)
 				}
 			}
 		}
 	})
+}
+
+// A row has a part in a stretch of other dates where it holds there in that direction,
+// and one of the base where the stretch comes of it.
+func TestDatedBy(t *testing.T) {
+	row := func(line int, d codes.Directions, from, to unit.Distance) schema.TemporaryRow {
+		var x schema.TemporaryRow
+		x.Directions, x.Pos.Line, x.Start, x.End = d, line, from, to
+		return x
+	}
+	r := &Route{
+		Base: &schema.Route{Temporary: []schema.TemporaryRow{row(2, codes.Both, 0, 100), row(3, codes.Both, 10, 20)}},
+		Target: &schema.Route{Temporary: []schema.TemporaryRow{
+			row(2, codes.OnlyNominal, 10, 20), row(3, codes.Both, 0, 10), row(4, codes.Both, 20, 30), row(5, codes.OnlyReverse, 10, 20), row(6, codes.Both, 19, 30),
+		}},
+	}
+	of := func(side *schema.Route, i int, ofBase bool) []Dated {
+		return []Dated{{Direction: codes.Nominal, From: 10, To: 20, Row: &side.Temporary[i], OfBase: ofBase}}
+	}
+	for name, c := range map[string]struct {
+		dated    []Dated
+		old, now []int
+		want     bool
+	}{
+		"nothing":                              {nil, []int{3}, []int{2}, false},
+		"the row of the base":                  {of(r.Base, 1, true), []int{3}, nil, true},
+		"another row of the base":              {of(r.Base, 1, true), []int{2}, nil, false},
+		"a row of the base, by the target's":   {of(r.Target, 0, false), []int{2}, nil, false},
+		"the row of the target":                {of(r.Target, 0, false), nil, []int{2}, true},
+		"one that overlaps":                    {of(r.Target, 0, false), nil, []int{6}, true},
+		"one before it":                        {of(r.Target, 0, false), nil, []int{3}, false},
+		"one behind it":                        {of(r.Target, 0, false), nil, []int{4}, false},
+		"one of the other direction":           {of(r.Target, 0, false), nil, []int{5}, false},
+		"a line that is none":                  {of(r.Target, 0, false), nil, []int{9}, false},
+		"the second of several":                {of(r.Target, 0, false), nil, []int{3, 2}, true},
+		"beside a row of the base, by its own": {of(r.Base, 1, true), nil, []int{2}, true},
+	} {
+		r.Dated = c.dated
+		if got := r.datedBy(c.old, c.now); got != c.want {
+			t.Errorf("%s: %t", name, got)
+		}
+	}
+}
+
+// Two stretches of one row are told apart by what trains do on them; and a restriction
+// at the highest speed of all is one.
+func TestDatedTellsApart(t *testing.T) {
+	track, err := chainage.NewTrack(0, 10, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	row := func(v unit.Speed, from, to unit.Distance, begin, end int) schema.TemporaryRow {
+		x := schema.TemporaryRow{Speed: v}
+		x.Directions, x.Start, x.End, x.Valid.From, x.Valid.Until = codes.Both, from, to, monthOf(begin), monthOf(end)
+		return x
+	}
+	for name, c := range map[string]struct {
+		base, target []schema.TemporaryRow
+		want         []Dated
+	}{
+		"faster, then slower as well": {
+			[]schema.TemporaryRow{row(80, 0, 5, 0, 0), row(80, 5, 10, 2, 0)}, []schema.TemporaryRow{row(80, 0, 10, 1, 2)},
+			[]Dated{{From: 0, To: 5, Faster: true}, {From: 5, To: 10, Faster: true, Slower: true}},
+		},
+		"the highest speed": {
+			[]schema.TemporaryRow{row(unit.MaxSpeed, 0, 10, 1, 3)}, []schema.TemporaryRow{row(unit.MaxSpeed, 0, 10, 1, 2)},
+			[]Dated{{From: 0, To: 10, Faster: true}},
+		},
+	} {
+		r := &Route{Base: &schema.Route{Track: track, Temporary: c.base}, Target: &schema.Route{Track: track, Temporary: c.target}}
+		got := r.dated(codes.Nominal, align.Tracks(track, track).Common)
+		for i := range got {
+			if got[i].Row != &r.Target.Temporary[0] || got[i].OfBase {
+				t.Errorf("%s: %+v", name, got[i])
+			}
+			got[i].Row = nil
+		}
+		if !slices.Equal(got, c.want) {
+			t.Errorf("%s: %+v, want %+v", name, got, c.want)
+		}
+	}
 }

@@ -73,63 +73,26 @@ func (f *File) Moved(d *RowDifference) bool {
 // whose folder was renamed are paired with what they were; those of routes are
 // given to the routes, the others returned.
 func pairFiles(routes []Route, base, target []schema.File) (frame []File) {
-	movedTo := map[string]string{}
-	owner := map[string]*Route{}
+	// By folder: one that was a route's may be another's now.
+	was, is := map[string]*Route{}, map[string]*Route{}
 	for i := range routes {
 		r := &routes[i]
-		if r.Base != nil && r.Target != nil {
-			movedTo[r.Base.Folder] = r.Target.Folder
-		}
 		if r.Base != nil {
-			owner[r.Base.Folder] = r
+			was[r.Base.Folder] = r
+		}
+		if r.Target != nil {
+			is[r.Target.Folder] = r
 		}
 	}
-	for i := range routes {
-		// A folder may have been one route's and be another's now.
-		if r := &routes[i]; r.Target != nil {
-			owner["now "+r.Target.Folder] = r
-		}
-	}
-	now := map[string][]byte{}
-	for _, f := range target {
-		now[f.Path] = f.Content
-	}
-	gone := map[string]bool{}
-	for i := range routes {
-		if r := &routes[i]; r.Base != nil && r.Target == nil {
-			gone[r.Base.Folder] = true
-		}
-	}
-	paired := map[string]bool{}
-	give := func(f File) {
-		r := owner["now "+path.Dir(f.Target)]
+	for _, f := range pairs(base, target, was) {
+		r := is[path.Dir(f.Target)]
 		if f.Target == "" {
-			r = owner[path.Dir(f.Base)]
+			r = was[path.Dir(f.Base)]
 		}
 		if r != nil {
 			r.Files = append(r.Files, f)
-			return
-		}
-		frame = append(frame, f)
-	}
-	for _, f := range base {
-		to, dir := f.Path, path.Dir(f.Path)
-		if folder, ok := movedTo[dir]; ok {
-			to = folder + "/" + path.Base(f.Path)
-		}
-		content, ok := now[to]
-		if !ok || gone[dir] || paired[to] {
-			give(File{Base: f.Path, Old: f.Content, Note: GoneFile})
-			continue
-		}
-		paired[to] = true
-		if to != f.Path || !bytes.Equal(content, f.Content) {
-			give(File{Base: f.Path, Target: to, Old: f.Content, Now: content})
-		}
-	}
-	for _, f := range target {
-		if !paired[f.Path] {
-			give(File{Target: f.Path, Now: f.Content, Note: NewFile})
+		} else {
+			frame = append(frame, f)
 		}
 	}
 	byPath := func(a, b File) int {
@@ -140,6 +103,37 @@ func pairFiles(routes []Route, base, target []schema.File) (frame []File) {
 	}
 	slices.SortFunc(frame, byPath)
 	return frame
+}
+
+// pairs pairs the files that differ by their paths, those of a route by what its folder
+// is called now; was has the routes of the base by their folders.
+func pairs(base, target []schema.File, was map[string]*Route) (list []File) {
+	now := map[string][]byte{}
+	for _, f := range target {
+		now[f.Path] = f.Content
+	}
+	paired := map[string]bool{}
+	for _, f := range base {
+		to, r := f.Path, was[path.Dir(f.Path)]
+		if r != nil && r.Target != nil {
+			to = r.Target.Folder + "/" + path.Base(f.Path)
+		}
+		content, ok := now[to]
+		if gone := r != nil && r.Target == nil; !ok || gone || paired[to] {
+			list = append(list, File{Base: f.Path, Old: f.Content, Note: GoneFile})
+			continue
+		}
+		paired[to] = true
+		if to != f.Path || !bytes.Equal(content, f.Content) {
+			list = append(list, File{Base: f.Path, Target: to, Old: f.Content, Now: content})
+		}
+	}
+	for _, f := range target {
+		if !paired[f.Path] {
+			list = append(list, File{Target: f.Path, Now: f.Content, Note: NewFile})
+		}
+	}
+	return list
 }
 
 // account fills in the differences of a file. The tracks are those of its

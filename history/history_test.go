@@ -302,11 +302,11 @@ func TestRefusedIsNotRecorded(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := history.RecordSigned(t.Context(), w.l, nil, chain.SignOff, text, signature, w.now()); !errors.Is(err, approval.ErrRefused) || !strings.Contains(err.Error(), "no policy is anchored") {
+	if _, err := history.RecordSigned(t.Context(), w.l, nil, history.Statement{Kind: chain.SignOff, Text: text, Signature: signature}, w.now()); !errors.Is(err, approval.ErrRefused) || !strings.Contains(err.Error(), "no policy is anchored") {
 		t.Errorf("a sign-off without an anchor: %v", err)
 	}
 	for _, kind := range []chain.Kind{chain.Anchor, chain.Ledger, chain.Assessment, chain.InForce, chain.Revocation, "note"} {
-		if _, err := history.RecordSigned(t.Context(), w.l, nil, kind, text, signature, w.now()); err == nil {
+		if _, err := history.RecordSigned(t.Context(), w.l, nil, history.Statement{Kind: kind, Text: text, Signature: signature}, w.now()); err == nil {
 			t.Errorf("a sign-off is recorded as %s", kind)
 		}
 	}
@@ -387,7 +387,7 @@ func TestLineOfAMomentAgo(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := history.RecordSigned(t.Context(), w.l, old, chain.SignOff, text, signature, w.now()); !errors.Is(err, approval.ErrRefused) {
+	if _, err := history.RecordSigned(t.Context(), w.l, old, history.Statement{Kind: chain.SignOff, Text: text, Signature: signature}, w.now()); !errors.Is(err, approval.ErrRefused) {
 		t.Errorf("the checker approves, too: %v", err)
 	}
 	if old.Head() != w.head {
@@ -405,7 +405,7 @@ func TestLineOfAMomentAgo(t *testing.T) {
 	if text, signature, err = sign(signOffOf(old.Assessment(n), "approver", signoff.Approve), "bea", w.head, w.now()); err != nil {
 		t.Fatal(err)
 	}
-	if _, err := history.RecordSigned(t.Context(), l, old, chain.SignOff, text, signature, w.now()); !errors.Is(err, ledger.ErrDamaged) {
+	if _, err := history.RecordSigned(t.Context(), l, old, history.Statement{Kind: chain.SignOff, Text: text, Signature: signature}, w.now()); !errors.Is(err, ledger.ErrDamaged) {
 		t.Errorf("the end of the ledger is gone: %v", err)
 	}
 }

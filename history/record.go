@@ -16,26 +16,31 @@ var formats = map[chain.Kind]string{
 	chain.SignOff: approval.SignOffFormat, chain.InForce: approval.InForceFormat, chain.Revocation: approval.RevocationFormat,
 }
 
-// RecordSigned checks a signed statement of kind sign-off, in-force or revocation
-// as verify does, and appends it. Both happen with the ledger locked, so that
-// nothing can come between. line is what the caller has read of the ledger, which
-// is followed to its end first; nil: nothing. The error is of class approval.ErrRefused,
-// signoff.ErrSignature or signoff.ErrMalformed, or one of the ledger; then
-// nothing was recorded.
-func RecordSigned(ctx context.Context, l *ledger.Ledger, line *approval.Line, kind chain.Kind, statement, signature []byte, now time.Time) (chain.Head, error) {
-	e, err := l.Append(ctx, now, kind, func() ([]byte, []ledger.Row, error) {
+// Statement is a signed statement that somebody hands in.
+type Statement struct {
+	Kind            chain.Kind // of its entry: sign-off, in-force or revocation
+	Text, Signature []byte     // as package signoff writes them
+}
+
+// RecordSigned checks a signed statement as verify does, and appends it. Both happen
+// with the ledger locked, so that nothing can come between. line is what the caller
+// has read of the ledger, which is followed to its end first; nil: nothing. The error
+// is of class approval.ErrRefused, signoff.ErrSignature or signoff.ErrMalformed, or
+// one of the ledger; then nothing was recorded.
+func RecordSigned(ctx context.Context, l *ledger.Ledger, line *approval.Line, s Statement, now time.Time) (chain.Head, error) {
+	e, err := l.Append(ctx, now, s.Kind, func() ([]byte, []ledger.Row, error) {
 		line, err := followed(ctx, l, line)
 		if err != nil {
 			return nil, nil, err
 		}
-		signed := approval.Signed{Format: formats[kind], Signature: string(signature), Statement: string(statement)}
+		signed := approval.Signed{Format: formats[s.Kind], Signature: string(s.Signature), Statement: string(s.Text)}
 		// The recorded time has whole seconds, as the entry has.
-		r, err := line.Check(kind, signed, now.UTC().Truncate(time.Second))
+		r, err := line.Check(s.Kind, signed, now.UTC().Truncate(time.Second))
 		if err != nil {
 			return nil, nil, err
 		}
 		body, err := canon.Marshal(signed)
-		return body, rowsOf(kind, &r), err
+		return body, rowsOf(s.Kind, &r), err
 	})
 	return e.Head(), err
 }

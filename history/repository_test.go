@@ -152,10 +152,10 @@ func (r *repository) Recompute(_ context.Context, d *assessment.Document) (strin
 }
 
 // Content gives the tree and the policy of a commit.
-func (r *repository) Content(_ context.Context, hash, _ string) (tree, signOff, allowedSigners string, err error) {
+func (r *repository) Content(_ context.Context, hash, _ string) (history.Content, error) {
 	name := r.named(hash)
 	if name == "" {
-		return "", "", "", errors.New("there is no such commit")
+		return history.Content{}, errors.New("there is no such commit")
 	}
 	c := r.commits[name]
 	if other, ok := r.content[name]; ok {
@@ -164,6 +164,6 @@ func (r *repository) Content(_ context.Context, hash, _ string) (tree, signOff, 
 	if other, ok := r.policy[name]; ok {
 		c.policy = other
 	}
-	signOff, allowedSigners = policyFiles(c.policy)
-	return treeOf(c.tree), signOff, allowedSigners, nil
+	signOff, allowedSigners := policyFiles(c.policy)
+	return history.Content{Tree: treeOf(c.tree), SignOff: signOff, AllowedSigners: allowedSigners}, nil
 }

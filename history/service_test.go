@@ -147,6 +147,27 @@ func TestServiceOfTheWholeNetwork(t *testing.T) {
 	if got := s[whole]; !got.Undoes || got.Approved {
 		t.Error("a record for the whole network is held against the newest record alone, so that what it undoes on another route is not found: ", findings)
 	}
+	// Of several that were in service before, the one is named that is undone.
+	if got := s[whole].Before; got.Revision != commitOf("d") {
+		t.Errorf("%s was in service before, want d", got.Revision)
+	}
+}
+
+// Of several siblings that a record undoes, the first by route is named.
+func TestServiceUndoesTwo(t *testing.T) {
+	w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+	w.anchor("a")
+	w.approve("a", "b", "ada")
+	w.approve("b", "c", "ada")
+	w.approve("c", "d", "ada2")
+	w.approve("c", "f", "ada2")
+	w.approve("c", "i", "ada2")
+	w.inService("f", "2026-03-02T03:00:00Z", "R1")
+	w.inService("d", "2026-03-03T03:00:00Z", "R2")
+	both := w.inService("i", "2026-03-04T03:00:00Z", "R1,R2")
+	if s, _ := w.services(); !s[both].Undoes || s[both].Before.Revision != commitOf("f") {
+		t.Errorf("%+v", s[both])
+	}
 }
 
 // What nobody approved is found, and so is a record that hides behind one of its
@@ -207,7 +228,8 @@ func TestServiceBeforeItsApproval(t *testing.T) {
 		w.approve("b", "d", "cem")
 		w.inService("c", clock(w.head.Seq+1).Format(time.RFC3339), "all")
 		entry := w.inService("d", clock(w.head.Seq+1).Format(time.RFC3339), "all")
-		if s, findings := w.services(); !s[entry].Undoes || !slices.Contains(ids(findings), history.ServiceUndoes) {
+		// Approved all the while, it is neither late nor has it lapsed.
+		if s, findings := w.services(); !s[entry].Undoes || s[entry].Late || s[entry].Lapsed || !slices.Equal(ids(findings), []string{history.ServiceUndoes, history.NeverInService}) {
 			t.Errorf("undoes c: %+v, %v", s[entry], findings)
 		}
 		w.approve("c", "d", "cem")
@@ -364,7 +386,7 @@ func TestStatementOfClockAhead(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, chain.SignOff, text, signature, at); err != nil {
+		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, history.Statement{Kind: chain.SignOff, Text: text, Signature: signature}, at); err != nil {
 			t.Fatal(err)
 		}
 	}
@@ -392,7 +414,7 @@ func TestLateApprovalByAnotherClock(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, chain.SignOff, text, signature, early); err != nil {
+		if w.head, err = history.RecordSigned(t.Context(), w.l, nil, history.Statement{Kind: chain.SignOff, Text: text, Signature: signature}, early); err != nil {
 			t.Fatal(err)
 		}
 	}

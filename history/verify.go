@@ -69,8 +69,16 @@ type Checker interface {
 	// Recompute gives the digest of the assessment of which the document says what
 	// was asked (assessment.Document.Asked), computed anew.
 	Recompute(ctx context.Context, doc *assessment.Document) (digest string, err error)
-	// Content gives the tree of a folder at a commit and the policy files there.
-	Content(ctx context.Context, commit, folder string) (tree, signoff, allowedSigners string, err error)
+	// Content gives what a folder holds at a commit. The error is a *LackingError
+	// where the repository does not have the commit.
+	Content(ctx context.Context, commit, folder string) (Content, error)
+}
+
+// Content is what Git has in the folder of a data set at a commit, as far as anchors
+// and records of what is in force speak of it.
+type Content struct {
+	Tree                    string // hash of the folder's tree
+	SignOff, AllowedSigners string // contents of the policy files, empty where there are none
 }
 
 // VerifyOptions are what a verification is asked for.

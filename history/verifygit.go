@@ -188,16 +188,16 @@ func oneLine(err error) string {
 // statements looks at the commits that anchors and in-force records name.
 func (v *verifier) statements() error {
 	check := func(entry int64, revision, folder, content string, policy *approval.Policy) {
-		tree, signoff, signers, err := v.o.Checker.Content(v.ctx, revision, folder)
+		found, err := v.o.Checker.Content(v.ctx, revision, folder)
 		var lacks *LackingError
 		switch {
 		case errors.As(err, &lacks) && !v.vouched(folder):
 			v.lacksElsewhere(folder, entry, lacks.Commit)
 		case err != nil:
 			v.problem(entry, "git", "the commit %s that it names cannot be read: %s", revision, oneLine(err))
-		case tree != content:
-			v.problem(entry, "git", "the folder %s of commit %s has the content %s, the statement says %s", folder, revision, tree, content)
-		case policy != nil && (policy.SignOff != signoff || policy.AllowedSigners != signers):
+		case found.Tree != content:
+			v.problem(entry, "git", "the folder %s of commit %s has the content %s, the statement says %s", folder, revision, found.Tree, content)
+		case policy != nil && (policy.SignOff != found.SignOff || policy.AllowedSigners != found.AllowedSigners):
 			v.problem(entry, "git", "the policy of commit %s is not the one that the anchor holds", revision)
 		}
 	}

@@ -212,7 +212,7 @@ func (w *writer) record(kind chain.Kind, s signoff.Statement, key string) {
 	if err != nil {
 		w.t.Fatal(err)
 	}
-	if w.head, err = history.RecordSigned(w.t.Context(), w.l, nil, kind, text, signature, w.now()); err != nil {
+	if w.head, err = history.RecordSigned(w.t.Context(), w.l, nil, history.Statement{Kind: kind, Text: text, Signature: signature}, w.now()); err != nil {
 		w.t.Fatal(err)
 	}
 }

@@ -72,23 +72,32 @@ func signerLine(row string) (k Key, problem string) {
 	if !strings.HasPrefix(strings.TrimLeft(after, " \t"), public.Type()) {
 		return k, "the options are not divided by one comma each"
 	}
+	if problem = k.options(options); problem != "" {
+		return k, problem
+	}
+	k.Public, k.Fingerprint = public, ssh.FingerprintSHA256(public)
+	return k, ""
+}
+
+// options reads the options of a line; problem says what is wrong with them.
+func (k *Key) options(list []string) (problem string) {
 	values := map[string]string{}
-	for _, option := range options {
+	for _, option := range list {
 		name, given, _ := strings.Cut(option, "=")
 		lower := strings.ToLower(name)
 		if _, ok := values[lower]; ok {
-			return k, "option " + source.Quote(name) + " stands twice"
+			return "option " + source.Quote(name) + " stands twice"
 		}
 		switch lower {
 		case "namespaces", "valid-after", "valid-before":
 		case "cert-authority":
-			return k, "cert-authority is refused: who holds such a key could make any signer"
+			return "cert-authority is refused: who holds such a key could make any signer"
 		default:
-			return k, "option " + source.Quote(name) + " is not known"
+			return "option " + source.Quote(name) + " is not known"
 		}
 		value, ok := unquoted(given)
 		if !ok {
-			return k, "option " + source.Quote(option) + " is not written NAME=\"VALUE\", as ssh-keygen has it"
+			return "option " + source.Quote(option) + " is not written NAME=\"VALUE\", as ssh-keygen has it"
 		}
 		values[lower] = value
 		switch lower {
@@ -101,14 +110,13 @@ func signerLine(row string) (k Key, problem string) {
 			k.ValidBefore, problem = signerTime(value)
 		}
 		if problem != "" {
-			return k, name + " " + source.Quote(value) + " " + problem
+			return name + " " + source.Quote(value) + " " + problem
 		}
 	}
 	if !k.ValidAfter.IsZero() && !k.ValidBefore.IsZero() && !k.ValidAfter.Before(k.ValidBefore) {
-		return k, "valid-after " + source.Quote(values["valid-after"]) + " is not before valid-before " + source.Quote(values["valid-before"])
+		return "valid-after " + source.Quote(values["valid-after"]) + " is not before valid-before " + source.Quote(values["valid-before"])
 	}
-	k.Public, k.Fingerprint = public, ssh.FingerprintSHA256(public)
-	return k, ""
+	return ""
 }
 
 // unquoted gives what stands between two quotes, which is all that an option has.

@@ -135,9 +135,9 @@ func (a *app) anchor(ctx context.Context, rev string, o *anchoring) error {
 
 // root is the revision that an anchor names, with the files of its policy.
 type root struct {
-	rev, label              string // as it was typed, and as a reader knows it
-	commit, folder, tree    string
-	signOff, allowedSigners string // contents
+	rev, label     string // as it was typed, and as a reader knows it
+	commit, folder string
+	content        history.Content
 }
 
 // rootAt reads a revision whose data loads.
@@ -162,13 +162,13 @@ func (a *app) rootAt(ctx context.Context, rev string) (*root, error) {
 		return nil, err
 	}
 	r := &root{rev: rev, label: s.label(), commit: s.commit.Hash, folder: folder}
-	r.tree, r.signOff, r.allowedSigners, err = contentAt(repo, r.commit, folder)
+	r.content, err = contentAt(repo, r.commit, folder)
 	return r, err
 }
 
 // policy gives the policy of the revision, or says why none can be put in force.
 func (r *root) policy(line *approval.Line) (approval.Policy, error) {
-	p := line.Policy(r.signOff, r.allowedSigners)
+	p := line.Policy(r.content.SignOff, r.content.AllowedSigners)
 	switch {
 	case p.Hash == "":
 		return p, refused(fmt.Errorf("%s has no policy (signoff.toml and allowed_signers) in the folder %s", r.rev, r.folder))
@@ -182,7 +182,7 @@ func (r *root) policy(line *approval.Line) (approval.Policy, error) {
 // made.
 func (r *root) statement(p approval.Policy, reason string) signoff.Statement {
 	return signoff.Statement{
-		Kind: signoff.Anchor, Ledger: noLedger, Revision: r.commit, Folder: r.folder, Content: r.tree, Policy: p.Hash,
+		Kind: signoff.Anchor, Ledger: noLedger, Revision: r.commit, Folder: r.folder, Content: r.content.Tree, Policy: p.Hash,
 		Reason: reason, Time: time.Now().UTC().Truncate(time.Second), Head: chain.Head{Seq: 1, Hash: chain.Origin},
 	}
 }
@@ -242,7 +242,7 @@ func (o *anchoring) brought(r *root) ([]approval.Signed, error) {
 	for _, file := range o.brings {
 		result, err := (&signing{statement: file, signature: file + ".sig", anchor: true}).brought()
 		if err == nil {
-			err = broughtAbout(result, r.commit, r.folder, r.tree, nil)
+			err = broughtAbout(result, r.commit, r.folder, r.content.Tree, nil)
 		}
 		if err != nil {
 			return nil, err

@@ -49,18 +49,18 @@ func (c *checker) recompute(ctx context.Context, repo *revision.Repo, doc *asses
 	return digest, err
 }
 
-// Content gives the tree of a folder at a commit, and the policy files there.
-func (c *checker) Content(_ context.Context, commit, folder string) (tree, signoff, allowedSigners string, err error) {
+// Content gives what a folder holds at a commit.
+func (c *checker) Content(_ context.Context, commit, folder string) (history.Content, error) {
 	repo, err := c.a.openRepo()
 	if err != nil {
-		return "", "", "", err
+		return history.Content{}, err
 	}
 	defer repo.Close()
-	tree, signoff, allowedSigners, err = contentAt(repo, commit, folder)
+	found, err := contentAt(repo, commit, folder)
 	if err != nil {
 		err = lackingToo(err, lacks(repo, "revision", commit))
 	}
-	return tree, signoff, allowedSigners, err
+	return found, err
 }
 
 // lackingToo adds to an error that it comes of a commit that the repository does not
@@ -82,12 +82,11 @@ type bothErrors struct {
 // Unwrap gives both.
 func (e *bothErrors) Unwrap() []error { return []error{e.error, e.too} }
 
-// contentAt gives the tree of a folder at a commit of a repository, and the policy files
-// there.
-func contentAt(repo *revision.Repo, commit, folder string) (tree, signoff, allowedSigners string, err error) {
+// contentAt gives what a folder holds at a commit of a repository.
+func contentAt(repo *revision.Repo, commit, folder string) (history.Content, error) {
 	files, err := repo.Snapshot(commit, folder)
 	if err != nil {
-		return "", "", "", err
+		return history.Content{}, err
 	}
 	read := func(name string) string {
 		content, readErr := fs.ReadFile(files, name)
@@ -96,8 +95,8 @@ func contentAt(repo *revision.Repo, commit, folder string) (tree, signoff, allow
 		}
 		return string(content)
 	}
-	signoff, allowedSigners = read("signoff.toml"), read("allowed_signers")
-	return content(files), signoff, allowedSigners, err
+	found := history.Content{Tree: content(files), SignOff: read("signoff.toml"), AllowedSigners: read("allowed_signers")}
+	return found, err
 }
 
 func isNotExist(err error) bool { return errors.Is(err, fs.ErrNotExist) }

@@ -82,7 +82,7 @@ func (t *demoTrail) anchor(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	tree, signOff, signers, err := contentAt(t.repo, commit.Hash, ".")
+	found, err := contentAt(t.repo, commit.Hash, ".")
 	if err != nil {
 		return err
 	}
@@ -90,10 +90,10 @@ func (t *demoTrail) anchor(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	body := approval.AnchorBody{AllowedSigners: signers, Format: approval.AnchorFormat, SignOff: signOff}
+	body := approval.AnchorBody{AllowedSigners: found.AllowedSigners, Format: approval.AnchorFormat, SignOff: found.SignOff}
 	for _, x := range demo.Anchoring {
 		s := signoff.Statement{
-			Kind: signoff.Anchor, Ledger: t.l.ID(), Revision: commit.Hash, Folder: ".", Content: tree, Policy: line.Policy(signOff, signers).Hash,
+			Kind: signoff.Anchor, Ledger: t.l.ID(), Revision: commit.Hash, Folder: ".", Content: found.Tree, Policy: line.Policy(found.SignOff, found.AllowedSigners).Hash,
 			Role: x.Role, Reason: "first release of the register", Signer: x.By.Principal, Time: demo.AnchorTime, Head: line.Head(),
 		}
 		signed, err := signAs(s, x.By)
@@ -150,7 +150,7 @@ func (t *demoTrail) sign(ctx context.Context, s demo.Signing) error {
 	if err != nil {
 		return err
 	}
-	_, err = history.RecordSigned(ctx, t.l, line, chain.SignOff, signed.statement, signed.signature, s.When)
+	_, err = history.RecordSigned(ctx, t.l, line, history.Statement{Kind: chain.SignOff, Text: signed.statement, Signature: signed.signature}, s.When)
 	if s.Refused {
 		if !errors.Is(err, approval.ErrRefused) {
 			return fmt.Errorf("the demonstration expects a refusal, got %v", err)
@@ -182,6 +182,6 @@ func (t *demoTrail) service(ctx context.Context, tag, reason string, since, when
 	if err != nil {
 		return err
 	}
-	_, err = history.RecordSigned(ctx, t.l, line, chain.InForce, signed.statement, signed.signature, when)
+	_, err = history.RecordSigned(ctx, t.l, line, history.Statement{Kind: chain.InForce, Text: signed.statement, Signature: signed.signature}, when)
 	return err
 }

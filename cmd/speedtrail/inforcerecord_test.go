@@ -73,7 +73,7 @@ func TestVoidSaysWhatIsVoided(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		_, err = history.RecordSigned(t.Context(), l, nil, chain.InForce, readFileOf(t, file), readFileOf(t, file+".sig"), time.Now())
+		_, err = history.RecordSigned(t.Context(), l, nil, history.Statement{Kind: chain.InForce, Text: readFileOf(t, file), Signature: readFileOf(t, file+".sig")}, time.Now())
 		l.Close()
 		if err != nil {
 			t.Fatal(err)

@@ -149,7 +149,7 @@ func TestStatementsThatAreBrought(t *testing.T) {
 		t.Fatal(err)
 	}
 	statement, signature := readFileOf(t, file), readFileOf(t, file+".sig")
-	if _, err := history.RecordSigned(t.Context(), l, nil, chain.InForce, statement, signature, time.Now()); err != nil {
+	if _, err := history.RecordSigned(t.Context(), l, nil, history.Statement{Kind: chain.InForce, Text: statement, Signature: signature}, time.Now()); err != nil {
 		t.Fatal(err)
 	}
 	l.Close()

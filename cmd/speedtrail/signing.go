@@ -241,7 +241,7 @@ func (a *app) foresee(line *approval.Line, s signoff.Statement, key ssh.Signer) 
 // recordSigned checks and appends a signed statement. line is what was read of the
 // ledger before.
 func (a *app) recordSigned(ctx context.Context, l *ledger.Ledger, line *approval.Line, kind chain.Kind, s *signed) error {
-	head, err := history.RecordSigned(ctx, l, line, kind, s.statement, s.signature, time.Now())
+	head, err := history.RecordSigned(ctx, l, line, history.Statement{Kind: kind, Text: s.statement, Signature: s.signature}, time.Now())
 	switch {
 	case errors.Is(err, approval.ErrRefused), errors.Is(err, signoff.ErrMalformed), errors.Is(err, signoff.ErrSignature):
 		return refused(err)

@@ -14,6 +14,7 @@ import (
 	"speedtrail/history/trace"
 	"speedtrail/schema"
 	"speedtrail/schema/codes"
+	"speedtrail/schema/unit"
 )
 
 // tracing makes the document of a trace.
@@ -110,17 +111,24 @@ func (t *tracing) point(ctx context.Context) error {
 					return err
 				}
 			}
-			key := fmt.Sprint(out)
-			if n, ok := seen[key]; ok {
-				t.doc.Trails[n].Trains = append(t.doc.Trails[n].Trains, t.trains[i].ID)
-				continue
-			}
-			seen[key] = len(t.doc.Trails)
-			out.Trains = []string{t.trains[i].ID}
-			t.doc.Trails = append(t.doc.Trails, out)
+			t.doc.Trails = withTrain(t.doc.Trails, seen, out, func(x *render.TraceTrail) *[]string { return &x.Trains }, t.trains[i].ID)
 		}
 	}
 	return nil
+}
+
+// withTrain adds to a list what is said of a train; where an earlier item says the same,
+// the train joins that one. seen has the places of items by what they say.
+func withTrain[T any](list []T, seen map[string]int, item T, trains func(*T) *[]string, train string) []T {
+	said := fmt.Sprint(item)
+	at, ok := seen[said]
+	if !ok {
+		at = len(list)
+		seen[said], list = at, append(list, item)
+	}
+	of := trains(&list[at])
+	*of = append(*of, train)
+	return list
 }
 
 // trail writes a trail without its trains.
@@ -164,17 +172,24 @@ func (t *tracing) committed(c int32) (string, error) {
 // mostBands is how many revisions a picture of a stretch shows.
 const mostBands = 60
 
-func (t *tracing) stretch(ctx context.Context) error {
-	from, err := located(t.route, "--from", t.call.from)
-	if err != nil {
-		return err
+// ends locates the stretch that was asked for.
+func (t *tracing) ends() (from, to unit.Distance, err error) {
+	if from, err = located(t.route, "--from", t.call.from); err != nil {
+		return 0, 0, err
 	}
-	to, err := located(t.route, "--to", t.call.to)
-	if err != nil {
-		return err
+	if to, err = located(t.route, "--to", t.call.to); err != nil {
+		return 0, 0, err
 	}
 	if from >= to {
-		return badCall("positions follow the nominal direction", "--to %s does not lie after --from %s", t.call.to, t.call.from)
+		return 0, 0, badCall("positions follow the nominal direction", "--to %s does not lie after --from %s", t.call.to, t.call.from)
+	}
+	return from, to, nil
+}
+
+func (t *tracing) stretch(ctx context.Context) error {
+	from, to, err := t.ends()
+	if err != nil {
+		return err
 	}
 	track := t.route.Track
 	t.doc.From, t.doc.To = track.Begins(from).String(), track.Ends(to).String()
@@ -197,39 +212,42 @@ func (t *tracing) stretch(ctx context.Context) error {
 		}
 		seen := map[string]int{}
 		for i, pieces := range found[d] {
-			out := render.TraceStretch{Direction: d.String(), Pieces: []render.TracePiece{}, Bands: []render.TraceBand{}}
+			out, err := t.profiles(d, pieces, views[d].Bands(t.trains[i], from, to))
+			if err != nil {
+				return err
+			}
 			for k := range pieces {
 				p := &pieces[k]
-				declared, err := t.declaredBy(ctx, p.Origin, func(q *schema.ChangeRequest) bool { return views[d].DeclaredOn(q, t.trains[i], p) })
-				if err != nil {
+				if out.Pieces[k].DeclaredBy, err = t.declaredBy(ctx, p.Origin, func(q *schema.ChangeRequest) bool { return views[d].DeclaredOn(q, t.trains[i], p) }); err != nil {
 					return err
 				}
-				out.Pieces = append(out.Pieces, render.TracePiece{
-					DeclaredBy: declared,
-					From: track.Begins(p.From).String(), To: track.Ends(p.To).String(), Start: int64(p.From), End: int64(p.To), Speed: int(p.Speed),
-					Origin: t.rank[p.Origin], Sources: assessment.Sources(p.Sources), Before: levels(p.Before), Across: p.Across,
-				})
 			}
-			bands := views[d].Bands(t.trains[i], from, to)
-			out.LeftOut = max(0, len(bands)-mostBands)
-			for _, b := range bands[out.LeftOut:] {
-				committed, err := t.committed(b.From)
-				if err != nil {
-					return err
-				}
-				out.Bands = append(out.Bands, render.TraceBand{Committed: committed, Gap: b.Gap, Pieces: levels(b.Profile)})
-			}
-			key := fmt.Sprint(out)
-			if n, ok := seen[key]; ok {
-				t.doc.Stretches[n].Trains = append(t.doc.Stretches[n].Trains, t.trains[i].ID)
-				continue
-			}
-			seen[key] = len(t.doc.Stretches)
-			out.Trains = []string{t.trains[i].ID}
-			t.doc.Stretches = append(t.doc.Stretches, out)
+			t.doc.Stretches = withTrain(t.doc.Stretches, seen, out, func(x *render.TraceStretch) *[]string { return &x.Trains }, t.trains[i].ID)
 		}
 	}
 	return nil
+}
+
+// profiles writes what is found of a stretch without its trains: the pieces of today,
+// and the profiles of the newest revisions.
+func (t *tracing) profiles(d codes.Direction, pieces []trace.Piece, bands []trace.Band) (render.TraceStretch, error) {
+	track := t.route.Track
+	out := render.TraceStretch{Direction: d.String(), Pieces: []render.TracePiece{}, Bands: []render.TraceBand{}}
+	for _, p := range pieces {
+		out.Pieces = append(out.Pieces, render.TracePiece{
+			From: track.Begins(p.From).String(), To: track.Ends(p.To).String(), Start: int64(p.From), End: int64(p.To), Speed: int(p.Speed),
+			Origin: t.rank[p.Origin], Sources: assessment.Sources(p.Sources), Before: levels(p.Before), Across: p.Across,
+		})
+	}
+	out.LeftOut = max(0, len(bands)-mostBands)
+	for _, b := range bands[out.LeftOut:] {
+		committed, err := t.committed(b.From)
+		if err != nil {
+			return out, err
+		}
+		out.Bands = append(out.Bands, render.TraceBand{Committed: committed, Gap: b.Gap, Pieces: levels(b.Profile)})
+	}
+	return out, nil
 }
 
 func levels(list []step.Piece) []render.TraceLevel {

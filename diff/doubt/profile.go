@@ -18,51 +18,58 @@ import (
 
 // delays looks at missing train length delays.
 func (c *check) delays() {
-	longest := c.longest()
 	for i := range c.route.Places {
-		bridge := &c.route.Places[i]
-		if bridge.Kind != schema.Bridge {
+		if bridge := &c.route.Places[i]; bridge.Kind == schema.Bridge {
+			c.overBridge(bridge)
+		}
+	}
+	c.oneSided()
+}
+
+// overBridge looks at what lets go of a train for its front while its rear can still
+// be on a bridge.
+func (c *check) overBridge(bridge *schema.PlaceRow) {
+	longest, end := c.longest(), max(bridge.End, bridge.Start+1)
+	// near gives the directions in which the rear of the longest train can
+	// still be on the bridge when its front leaves the row.
+	near := func(row *schema.Row) (set codes.Directions) {
+		if row.Directions.Has(codes.Nominal) && row.End-bridge.End < longest {
+			set |= codes.OnlyNominal
+		}
+		if row.Directions.Has(codes.Reverse) && bridge.Start-row.Start < longest {
+			set |= codes.OnlyReverse
+		}
+		return set & c.route.Directions
+	}
+	structure := func(row *schema.Row, what string) {
+		over := !row.Delay && row.Start < end && bridge.Start < row.End
+		if set := near(row); over && set != 0 {
+			c.list = append(c.list, Doubt{ID: DelayOverBridge, Directions: set, From: row.Start, To: row.End, Row: row.Pos, Text: fmt.Sprintf(
+				"%s over %s ends for the front of a train whose rear can still be on the bridge", what, bridge.Name)})
+		}
+	}
+	for k := range c.route.AxleLoad {
+		structure(&c.route.AxleLoad[k].Row, "the axle load restriction")
+	}
+	for k := range c.route.Temporary {
+		structure(&c.route.Temporary[k].Row, c.route.Temporary[k].ID)
+	}
+	for row := range c.speeds.on(bridge.Start, end) {
+		if row.Delay {
 			continue
 		}
-		end := max(bridge.End, bridge.Start+1)
-		over := func(row *schema.Row) bool {
-			return !row.Delay && row.Start < end && bridge.Start < row.End
-		}
-		// near gives the directions in which the rear of the longest train can
-		// still be on the bridge when its front leaves the row.
-		near := func(row *schema.Row) (set codes.Directions) {
-			if row.Directions.Has(codes.Nominal) && row.End-bridge.End < longest {
-				set |= codes.OnlyNominal
-			}
-			if row.Directions.Has(codes.Reverse) && bridge.Start-row.Start < longest {
-				set |= codes.OnlyReverse
-			}
-			return set & c.route.Directions
-		}
-		structure := func(row *schema.Row, what string) {
-			if set := near(row); over(row) && set != 0 {
-				c.list = append(c.list, Doubt{ID: DelayOverBridge, Directions: set, From: row.Start, To: row.End, Row: row.Pos, Text: fmt.Sprintf(
-					"%s over %s ends for the front of a train whose rear can still be on the bridge", what, bridge.Name)})
-			}
-		}
-		for k := range c.route.AxleLoad {
-			structure(&c.route.AxleLoad[k].Row, "the axle load restriction")
-		}
-		for k := range c.route.Temporary {
-			structure(&c.route.Temporary[k].Row, c.route.Temporary[k].ID)
-		}
-		for row := range c.speeds.on(bridge.Start, end) {
-			if row.Delay {
-				continue
-			}
-			for _, d := range codes.AllDirections {
-				if near(&row.Row).Has(d) && c.risesAfter(row, d) > 0 {
-					c.list = append(c.list, Doubt{ID: DelayOverBridge, Directions: 1 << d, From: row.Start, To: row.End, Row: row.Pos, Text: fmt.Sprintf(
-						"the speed rises for the front of a train whose rear can still be on %s", bridge.Name)})
-				}
+		for _, d := range codes.AllDirections {
+			if near(&row.Row).Has(d) && c.risesAfter(row, d) > 0 {
+				c.list = append(c.list, Doubt{ID: DelayOverBridge, Directions: 1 << d, From: row.Start, To: row.End, Row: row.Pos, Text: fmt.Sprintf(
+					"the speed rises for the front of a train whose rear can still be on %s", bridge.Name)})
 			}
 		}
 	}
+}
+
+// oneSided looks for rows of speed.csv that hold a train until its rear has left in one
+// direction and not in the other.
+func (c *check) oneSided() {
 	// The rows of a direction cover its track once: two rows of one place are for
 	// different directions.
 	for i := range c.route.Speed {

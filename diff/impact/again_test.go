@@ -51,6 +51,34 @@ func TestComputeAgain(t *testing.T) {
 	}
 }
 
+// A piece of the same profile is run otherwise where the train comes into it, or has
+// to leave it, at another speed.
+func TestTakeOverSameEdges(t *testing.T) {
+	m := Motion{Acceleration: 500, Braking: 500, Rolling: true}
+	for name, c := range map[string]struct {
+		like, f  step.Func
+		from, to int // the pieces that are left
+	}{
+		"all":                 {profileOf(1000, 60, 3000, 100), profileOf(1000, 60, 3000, 100), 2, 2},
+		"comes in faster":     {profileOf(1000, 60, 3000, 100), profileOf(1000, 80, 3000, 100), 0, 2},
+		"leaves faster":       {profileOf(2000, 100, 3000, 60), profileOf(2000, 100, 3000, 80), 0, 2},
+		"the same at one end": {profileOf(1000, 60, 3000, 100, 4000, 50), profileOf(1000, 60, 3000, 100, 4000, 70), 1, 3},
+		"and at the other":    {profileOf(1000, 50, 3000, 100, 4000, 60), profileOf(1000, 70, 3000, 100, 4000, 60), 0, 2},
+	} {
+		var r Run
+		r.Compute(c.f, m, newRun(c.like, m))
+		if want := newRun(c.f, m); !slices.Equal(r.times, want.times) {
+			t.Errorf("%s: times %v, want %v", name, r.times, want.times)
+		}
+		if from, to := r.takeOver(newRun(c.like, m)); from != c.from || to != c.to {
+			t.Errorf("%s: %d to %d are left, want %d to %d", name, from, to, c.from, c.to)
+		}
+	}
+	if from, to := newRun(profileOf(1000, 60), m).takeOver(newRun(profileOf(1000, 60), Motion{Acceleration: 500, Braking: 501, Rolling: true})); from != 0 || to != 1 {
+		t.Errorf("a run by another motion: %d to %d are left", from, to)
+	}
+}
+
 func TestLesser(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		limit := mmps(unit.Speed(5 * rapid.IntRange(0, 120).Draw(t, "limit")))

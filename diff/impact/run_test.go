@@ -63,6 +63,32 @@ func TestRunningTimeByHand(t *testing.T) {
 	}
 }
 
+// A time that is exactly in the middle between two tenths is rounded up, on whichever
+// side of it the float lies.
+func TestRunningTimeInTheMiddle(t *testing.T) {
+	m := Motion{Acceleration: 500, Braking: 500, Rolling: true}
+	below := 0
+	for v := unit.Speed(5); v <= unit.MaxSpeed; v += 5 {
+		for k := int64(0); k < 40; k++ {
+			// A length of x mm takes 9 x / 250 v tenths: k and a half for 250 v (2 k + 1) / 18.
+			length := int64(v) * 250 * (2*k + 1)
+			if length%18 != 0 {
+				continue
+			}
+			r := newRun(step.Func{{From: 0, To: unit.Distance(length / 18), Speed: v}}, m)
+			if r.reached[1]*10 < float64(k)+0.5 {
+				below++
+			}
+			if got := r.Tenths(); got != k+1 {
+				t.Errorf("%d mm at %d km/h: %d tenths, want %d", length/18, v, got, k+1)
+			}
+		}
+	}
+	if below == 0 {
+		t.Error("no float lies below the middle")
+	}
+}
+
 // A published examination figure: 2 km, 60 km/h, 140 s with a = b gives
 // 0.8333 m/s² (5/6); taken over from the collection of figures this program was
 // designed with, whose source is not named.

@@ -2,6 +2,7 @@ package rows
 
 import (
 	"fmt"
+	"maps"
 	"slices"
 	"strings"
 	"testing"
@@ -27,6 +28,15 @@ func tableOf(text ...string) *Table {
 		t.Rows = append(t.Rows, Row{Line: i + 2, Name: cells[0], From: from, To: to, Start: from.Chainage, Cells: cells})
 	}
 	return t
+}
+
+// parts are rows of a kilometre each.
+func parts(n int) *Table {
+	var text []string
+	for i := range n {
+		text = append(text, fmt.Sprintf(". %d %d 90 .", i, i+1))
+	}
+	return tableOf(text...)
 }
 
 func show(old, now *Table, list []Difference) string {
@@ -67,6 +77,17 @@ func TestCompare(t *testing.T) {
 		{"another row elsewhere", tableOf(". 0 1 40 ."), tableOf(". 50 51 60 ."), "removed -2\nadded +2\n"},
 		{"named rows stay together", tableOf("T1 0 1 40 .", "T2 5 6 50 ."), tableOf("T2 0 1 60 .", "T1 70 71 20 ."),
 			"altered -3 +2 from_km:5>0 to_km:6>1 basic:50>60\naltered -2 +3 from_km:0>70 to_km:1>71 basic:40>20\n"},
+		{"parts that end elsewhere are no split", tableOf(". 0 10 90 ."), tableOf(". 0 4 90 .", ". 4 11 90 ."), "altered -2 +2 to_km:10>4\nadded +3\n"},
+		{"parts with a gap are no split", tableOf(". 0 10 90 ."), tableOf(". 0 4 90 .", ". 5 10 90 ."), "altered -2 +2 to_km:10>4\nadded +3\n"},
+		{"eight parts are a split", tableOf(". 0 8 90 ."), parts(8), "split -2 +2 +3 +4 +5 +6 +7 +8 +9 to_km:8>1 from_km:0>1 to_km:8>2 from_km:0>2 to_km:8>3 from_km:0>3 to_km:8>4 from_km:0>4 to_km:8>5 from_km:0>5 to_km:8>6 from_km:0>6 to_km:8>7 from_km:0>7\n"},
+		{"nine are none", tableOf(". 0 9 90 ."), parts(9), "altered -2 +2 to_km:9>1\nadded +3\nadded +4\nadded +5\nadded +6\nadded +7\nadded +8\nadded +9\nadded +10\n"},
+		{"eight parts merged", parts(8), tableOf(". 0 8 90 ."), "merged -2 -3 -4 -5 -6 -7 -8 -9 +2 to_km:1>8\n"},
+		{"nine are not", parts(9), tableOf(". 0 9 90 ."), "altered -2 +2 to_km:1>9\nremoved -3\nremoved -4\nremoved -5\nremoved -6\nremoved -7\nremoved -8\nremoved -9\nremoved -10\n"},
+		{"made smaller", tableOf(". 0 10 90 ."), tableOf(". 2 8 100 ."), "altered -2 +2 from_km:0>2 to_km:10>8 basic:90>100\n"},
+		{"made larger", tableOf(". 2 8 100 ."), tableOf(". 0 10 90 ."), "altered -2 +2 from_km:2>0 to_km:8>10 basic:100>90\n"},
+		{"side by side", tableOf(". 0 2 90 ."), tableOf(". 2 4 100 ."), "removed -2\nadded +2\n"},
+		{"one beginning, where the posts go back", tableOf(". 5 3#2 90 ."), tableOf(". 5 2#2 100 ."), "altered -2 +2 to_km:3#2>2#2 basic:90>100\n"},
+		{"one end, where the posts go back", tableOf(". 5 3#2 90 ."), tableOf(". 6 3#2 100 ."), "altered -2 +2 from_km:5>6 basic:90>100\n"},
 		{"equal rows twice", tableOf(". 0 1 40 .", ". 0 1 40 ."), tableOf(". 0 1 40 ."), "removed -3\n"},
 	}
 	for _, test := range tests {
@@ -127,8 +148,15 @@ func TestCompareManyRows(t *testing.T) {
 				Cells: []string{"", p.String(), q.String(), fmt.Sprint(50 + 5*k), ""}})
 		}
 	}
+	// One is only in the old table, and two are only in the new one.
+	now.Rows = slices.Delete(now.Rows, 700, 701)
+	now.Rows = append(now.Rows, now.Rows[0], tableOf(". 1600 1601 90 .").Rows[0])
 	list := Compare(old, now)
-	if len(list) != 1500 || list[0].Kind != Altered {
-		t.Errorf("%d differences", len(list))
+	count := map[Kind]int{}
+	for _, d := range list {
+		count[d.Kind]++
+	}
+	if !maps.Equal(count, map[Kind]int{Altered: 1499, Removed: 1, Added: 2}) {
+		t.Errorf("%v", count)
 	}
 }

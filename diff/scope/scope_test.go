@@ -76,6 +76,17 @@ func TestCut(t *testing.T) {
 		{"a reduction, declared likewise", with2(back, func(o *Observed) { o.RowEnds = []unit.Distance{100 * m} }),
 			[]Declared{with(func(d *Declared) { d.From, d.To, d.Base = 80*m, 100*m, &align.Interval{From: 80 * m, To: 150 * m} })},
 			[]Piece{{70 * m, 80 * m, Outside, false}, {80 * m, 100 * m, 0, false}}},
+		{"a raise by two rows far from each other", with2(runOut, func(o *Observed) { o.To, o.RowEnds, o.Raised = 300*m, []unit.Distance{200 * m, 260 * m}, true }), []Declared{all},
+			[]Piece{{200 * m, 230 * m, 0, true}, {230 * m, 300 * m, Outside, false}}},
+		// Past the far end begins where the declaration ends on the track of the rows.
+		{"a raise within what is declared on the base alone", with2(runOut, func(o *Observed) {
+			o.From, o.To, o.Raised, o.Ahead, o.RowEnds = 195*m, 225*m, true, 50*m, []unit.Distance{145 * m}
+		}), []Declared{with(func(d *Declared) { d.To, d.Base = 190*m, &align.Interval{From: 140 * m, To: 150 * m} })},
+			[]Piece{{195 * m, 200 * m, Outside, false}, {200 * m, 225 * m, 0, true}}},
+		{"the same against the distance, on the base", with2(back, func(o *Observed) {
+			o.From, o.To, o.Raised, o.Ahead, o.RowEnds = 125*m, 155*m, true, 50*m, []unit.Distance{105 * m}
+		}), []Declared{with(func(d *Declared) { d.From, d.Base = 160*m, &align.Interval{From: 100 * m, To: 110 * m} })},
+			[]Piece{{125 * m, 150 * m, 0, true}, {150 * m, 155 * m, Outside, false}}},
 		{"as far as the row reaches, not the declaration", with2(runOut, func(o *Observed) { o.From, o.To = 205*m, 235*m }), []Declared{with(func(d *Declared) { d.To = 205 * m })},
 			[]Piece{{205 * m, 230 * m, 0, true}, {230 * m, 235 * m, Outside, false}}},
 		{"not run-out", with2(runOut, func(o *Observed) { o.RunOut = false }), []Declared{all}, []Piece{{200 * m, 230 * m, Outside, false}}},

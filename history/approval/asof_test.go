@@ -57,3 +57,19 @@ func TestSince(t *testing.T) {
 		t.Error("what was always true has a time")
 	}
 }
+
+// What somebody signs in another folder is no instant at which something about this
+// one comes to be true.
+func TestSinceOfOtherFolder(t *testing.T) {
+	s := anchored(t, ordinary())
+	s.must(s.anchor("a", ordinary(), func(_ int, st *signoff.Statement) { st.Folder = "data" }, "checker:ada", "approver:bea", "in-service:cem"))
+	other := s.assess("a", "b", ordinary(), ordinary(), func(a *Assessment) { a.Folder = "data" })
+	own := s.assess("a", "b", ordinary(), ordinary(), nil)
+	s.must(s.signOff(other, "ada", "checker", "approve"))
+	want := s.now
+	s.must(s.signOff(own, "ada", "checker", "approve"))
+	signed := func(l *Line) bool { return len(l.signOffs) > 0 }
+	if at, ok := s.line.Since(".", signed); !ok || !at.Equal(want) {
+		t.Errorf("since %v, %t, want %v", at, ok, want)
+	}
+}

@@ -165,6 +165,30 @@ func (l *Line) checkSignOff(r *Record) error {
 	if err != nil {
 		return err
 	}
+	if err := checkRepeats(r, a); err != nil {
+		return err
+	}
+	if err := l.checkAge(r, a); err != nil {
+		return err
+	}
+	if _, err := usable(a.Next, "the target"); err != nil {
+		return err
+	}
+	if problem := l.blocked(a); problem != "" {
+		return refuse("assessment %d cannot be signed: %s", a.Number, problem)
+	}
+	if r.inForce, err = usable(l.Newest(a.Folder), "the newest approved revision"); err != nil {
+		return err
+	}
+	for _, p := range l.Rejected(a) {
+		r.rejected = append(r.rejected, p.Parsed)
+	}
+	return l.checkPolicies(r, a, policy)
+}
+
+// checkRepeats checks that a sign-off says of its assessment what that says, and
+// decides something that is known.
+func checkRepeats(r *Record, a *Assessment) error {
 	for _, same := range []struct {
 		name      string
 		have, got any
@@ -179,32 +203,32 @@ func (l *Line) checkSignOff(r *Record) error {
 	if r.Decision != signoff.Approve && r.Decision != signoff.Reject {
 		return refuse("the decision is %q, approve and reject are known", r.Decision)
 	}
+	return nil
+}
+
+// checkAge checks that whoever signed knew the assessment, and his last decision on
+// its content: an approval of before a rejection does not lift it, by whatever number
+// it goes.
+func (l *Line) checkAge(r *Record, a *Assessment) error {
 	if r.Head.Seq < a.Entry.Seq {
 		return refuse("the head that the statement names, %d, is older than the assessment, entry %d", r.Head.Seq, a.Entry.Seq)
 	}
-	// A decision is on the content, by whatever number: an approval of before a
-	// rejection does not lift it.
 	for _, i := range l.ofContent[a.content()] {
 		earlier := &l.signOffs[i]
 		if earlier.Signer == r.Signer && r.Head.Seq < earlier.Entry.Seq {
 			return refuse("the head that the statement names, %d, is older than the last decision of %s on it, entry %d", r.Head.Seq, r.Signer, earlier.Entry.Seq)
 		}
 	}
-	if _, err := usable(a.Next, "the target"); err != nil {
-		return err
-	}
-	if problem := l.blocked(a); problem != "" {
-		return refuse("assessment %d cannot be signed: %s", a.Number, problem)
-	}
-	if r.inForce, err = usable(l.Newest(a.Folder), "the newest approved revision"); err != nil {
-		return err
-	}
-	for _, p := range l.Rejected(a) {
-		r.rejected = append(r.rejected, p.Parsed)
-	}
+	return nil
+}
+
+// checkPolicies checks role, independence and key of a sign-off by the policy of the
+// base, by the newest approved one (r.inForce) and by newer ones that are rejected
+// (r.rejected).
+func (l *Line) checkPolicies(r *Record, a *Assessment, base *schema.Policy) error {
 	// A role that only the policy in force has, or a newer one that is rejected, may be
 	// taken all the same.
-	signer := policy
+	signer := base
 	for _, p := range append([]*schema.Policy{r.inForce}, r.rejected...) {
 		if signer.Role(r.Role) == nil && p.Role(r.Role) != nil {
 			signer = p
@@ -216,13 +240,13 @@ func (l *Line) checkSignOff(r *Record) error {
 	if r.Role == InServiceRole {
 		return refuse("the role %s records what is in force and approves nothing", InServiceRole)
 	}
-	if err := l.checkIndependence(r, a, policy); err != nil {
+	if err := l.checkIndependence(r, a, base); err != nil {
 		return err
 	}
 	if err := l.checkSignature(r, signer); err != nil {
 		return err
 	}
-	if signer == r.inForce || signer == policy {
+	if signer == r.inForce || signer == base {
 		if err := l.checkBy(r, a, r.inForce, "the newest approved policy"); err != nil {
 			return err
 		}

@@ -133,7 +133,7 @@ func signOff(ctx context.Context, l *ledger.Ledger, at time.Time, number int64, 
 	if err != nil {
 		return chain.Head{}, err
 	}
-	return history.RecordSigned(ctx, l, nil, chain.SignOff, statement, signature, at)
+	return history.RecordSigned(ctx, l, nil, history.Statement{Kind: chain.SignOff, Text: statement, Signature: signature}, at)
 }
 
 // anchor records the anchor.

@@ -275,7 +275,7 @@ func TestClockJumpsBack(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		_, err = history.RecordSigned(ctx, l, nil, chain.SignOff, statement, signature, test.recorded)
+		_, err = history.RecordSigned(ctx, l, nil, history.Statement{Kind: chain.SignOff, Text: statement, Signature: signature}, test.recorded)
 		after, _ := l.Head(ctx)
 		switch {
 		case test.refused == "" && err != nil:

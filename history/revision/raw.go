@@ -7,8 +7,6 @@ import (
 	"iter"
 
 	"github.com/go-git/go-git/v5/plumbing"
-
-	"speedtrail/schema/common"
 )
 
 // Whoever goes through thousands of commits reads them and their trees with what
@@ -53,10 +51,6 @@ type TreeEntry struct {
 	Mode fs.FileMode // as a Snapshot has it
 	Hash [20]byte
 }
-
-// TreeChange is a line that two trees do not have in common. A side that has no
-// line of this name and kind, folder or not, is without a Name.
-type TreeChange struct{ Old, Now TreeEntry }
 
 // Tree is a tree as it is stored. The zero Tree has no lines.
 type Tree struct {
@@ -107,116 +101,6 @@ func parseEntry(raw []byte) (treeEntry, error) {
 }
 
 func (e treeEntry) public() TreeEntry { return TreeEntry{e.name, goMode(e.mode), e.hash} }
-
-// changes compares two trees, of which the first is trusted. It refuses what
-// parseTree refuses.
-func (t Tree) changes(before Tree) ([]TreeChange, error) {
-	var list []TreeChange
-	a, b := before.data, t.data
-	last, ordered := "", true // key of the last entry of t; ordered: it stands in before, too
-	var lastRaw []byte
-	var added []string // names that before does not have, or has for another kind
-	var old treeEntry
-	oldLen, oldKey := 0, ""
-	// What both begin with is passed over, but for the last of its lines, which
-	// the next one has to follow.
-	for same := common.Start(a, b); ; {
-		n := rawEntry(b)
-		if n == 0 || n > same {
-			break
-		}
-		lastRaw, a, b, same = b[:n], a[n:], b[n:], same-n
-	}
-	for len(a) > 0 || len(b) > 0 {
-		n := rawEntry(b)
-		if len(b) > 0 && n == 0 {
-			return nil, fmt.Errorf("the last entry is cut short")
-		}
-		if n > 0 && len(a) >= n && bytes.Equal(a[:n], b[:n]) {
-			if !ordered {
-				e, err := parseEntry(b[:n])
-				if err != nil {
-					return nil, err
-				}
-				if sortKey(e) <= last {
-					return nil, fmt.Errorf("entry %q is out of order", e.name)
-				}
-				ordered = true
-				if bytes.Equal(a[n:], b[n:]) {
-					break // most changes are single lines
-				}
-			}
-			lastRaw, a, b, oldLen = b[:n], a[n:], b[n:], 0
-			continue
-		}
-		if len(a) > 0 && oldLen == 0 {
-			var err error
-			if oldLen = rawEntry(a); oldLen == 0 {
-				return nil, fmt.Errorf("an entry is cut short")
-			}
-			if old, err = parseEntry(a[:oldLen]); err != nil {
-				return nil, err
-			}
-			oldKey = sortKey(old)
-		}
-		if n == 0 {
-			list = append(list, TreeChange{Old: old.public()})
-			a, oldLen = a[oldLen:], 0
-			continue
-		}
-		e, err := parseEntry(b[:n])
-		if err != nil {
-			return nil, err
-		}
-		key := sortKey(e)
-		if len(a) > 0 && oldKey < key {
-			list = append(list, TreeChange{Old: old.public()})
-			a, oldLen = a[oldLen:], 0
-			continue
-		}
-		if ordered && lastRaw != nil {
-			before, err := parseEntry(lastRaw)
-			if err != nil {
-				return nil, err
-			}
-			last = sortKey(before)
-		}
-		if key <= last {
-			return nil, fmt.Errorf("entry %q is out of order", e.name)
-		}
-		last, ordered, lastRaw = key, false, nil
-		if len(a) > 0 && oldKey == key {
-			list = append(list, TreeChange{old.public(), e.public()})
-			a, oldLen = a[oldLen:], 0
-		} else {
-			list = append(list, TreeChange{Now: e.public()})
-			added = append(added, e.name)
-		}
-		b = b[n:]
-	}
-	return list, t.once(added)
-}
-
-// once checks that names do not stand in the tree for a folder and for something
-// else, too.
-func (t Tree) once(names []string) error {
-	if len(names) == 0 {
-		return nil
-	}
-	count := make(map[string]int, len(names))
-	for _, n := range names {
-		count[n] = 0
-	}
-	for e := range t.All() {
-		if n, ok := count[e.Name]; ok {
-			if n > 0 {
-				return fmt.Errorf("entry %q occurs twice", e.Name)
-			}
-			count[e.Name]++
-		}
-	}
-	return nil
-}
 
 // All runs over the lines in the order of trees.
 func (t Tree) All() iter.Seq[TreeEntry] {

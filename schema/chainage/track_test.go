@@ -95,6 +95,19 @@ func TestShortStretch(t *testing.T) {
 	}
 }
 
+// Where the posts go back far, no reading is outside that lies among those of any two
+// parts of the track, also where the first or last of these are on one side of it.
+func TestMissingPostsAmongParts(t *testing.T) {
+	for name, tr := range map[string]*Track{
+		"the last part is below":  track(t, "1", "0.9", "2 3", "4 0.5"),
+		"the first part is above": track(t, "4.2", "4", "4.5 1", "2 3"),
+	} {
+		t.Run(name, func(t *testing.T) {
+			checkLocate(t, tr, []located{{"2.5", 0, ErrMissingPosts}, {"0.4", 0, ErrOutside}, {"4.6", 0, ErrOutside}})
+		})
+	}
+}
+
 // Computed by hand: start 1.000; 1000 m on, 2.000 arriving and 1.950 leaving;
 // 2000 m on, 2.950 arriving and 3.000 leaving; end 3.500 at 2500 m. 1.970 is at
 // 970 m or at 1020 m, 2.975 is nowhere, 1.900 to 3.100 is 1200 m of track.

@@ -76,21 +76,6 @@ func (t *Trace) timeChart(trail *TraceTrail, id string) string {
 	if len(trail.Line) == 0 {
 		return ""
 	}
-	first, last := instant(trail.Line[0].Committed), instant(t.Revision.Committed)
-	for _, r := range trail.Line {
-		first, last = min(first, instant(r.Committed)), max(last, instant(r.Committed))
-	}
-	// The last speed holds on: some room shows it.
-	last += max((last-first)/25, 3600)
-	top := 0
-	for _, r := range trail.Line {
-		top = max(top, r.Speed)
-	}
-	top = (top + 9 + 20) / 20 * 20
-	x := func(at int64) float64 {
-		return traceLeft + float64(plotRight-traceLeft)*float64(at-first)/float64(last-first)
-	}
-	y := func(v int) float64 { return traceBottom - 205*float64(v)/float64(top) }
 	var words []string
 	for _, r := range trail.Line {
 		word := speedWords(r.Speed)
@@ -99,55 +84,98 @@ func (t *Trace) timeChart(trail *TraceTrail, id string) string {
 		}
 		words = append(words, date(r.Committed)+" "+word)
 	}
-	s := &sketch{}
-	s.begin(id, traceBottom+42, "Speed over time on the line of first parents", strings.Join(words, "; "))
+	p := timePlotOf(trail.Line, instant(t.Revision.Committed))
+	p.begin(id, traceBottom+42, "Speed over time on the line of first parents", strings.Join(words, "; "))
+	p.speeds()
+	p.reigns(trail.Line)
+	p.add("\n</svg>\n")
+	return p.String()
+}
+
+// timePlot is a picture of speeds over time.
+type timePlot struct {
+	sketch
+	first, last int64 // of the time axis, in seconds since 1970
+	top         int   // of the axis of speeds, in km/h
+}
+
+// timePlotOf gives an empty picture in which the speeds of a line have room, of which
+// the last one holds on at an instant.
+func timePlotOf(line []TraceReign, now int64) *timePlot {
+	p := &timePlot{first: instant(line[0].Committed), last: now}
+	for _, r := range line {
+		at := instant(r.Committed)
+		p.first, p.last, p.top = min(p.first, at), max(p.last, at), max(p.top, r.Speed)
+	}
+	// The last speed holds on: some room shows it.
+	p.last += max((p.last-p.first)/25, 3600)
+	p.top = (p.top + 9 + 20) / 20 * 20
+	return p
+}
+
+func (p *timePlot) x(at int64) float64 {
+	return traceLeft + float64(plotRight-traceLeft)*float64(at-p.first)/float64(p.last-p.first)
+}
+
+func (p *timePlot) y(v int) float64 { return traceBottom - 205*float64(v)/float64(p.top) }
+
+// speeds draws the axis of speeds.
+func (p *timePlot) speeds() {
 	step := 20
-	if top > 160 {
+	if p.top > 160 {
 		step = 40
 	}
-	for v := 0; v <= top; v += step {
-		s.add(`<path d="M%d %.1fH%d" stroke="%s"/><text x="%d" y="%.1f" text-anchor="end" fill="#333">%d</text>`, traceLeft, y(v), plotRight, map[bool]string{true: "#111", false: "#e2e2e2"}[v == 0], traceLeft-7, y(v)+4, v)
+	for v := 0; v <= p.top; v += step {
+		p.add(`<path d="M%d %.1fH%d" stroke="%s"/><text x="%d" y="%.1f" text-anchor="end" fill="#333">%d</text>`, traceLeft, p.y(v), plotRight, map[bool]string{true: "#111", false: "#e2e2e2"}[v == 0], traceLeft-7, p.y(v)+4, v)
 	}
-	s.add(`<text x="%d" y="30" fill="#333">km/h</text>`+"\n", traceLeft-44)
-	days := make([]string, len(trail.Line))
-	for i, r := range trail.Line {
+	p.add(`<text x="%d" y="30" fill="#333">km/h</text>`+"\n", traceLeft-44)
+}
+
+// reigns draws the speeds of a line, each from its day to that of the next.
+func (p *timePlot) reigns(line []TraceReign) {
+	days := make([]string, len(line))
+	for i, r := range line {
 		days[i] = r.Committed
 	}
 	days = distinct(days)
 	at, previous := float64(traceLeft), 0.0
-	labels := [2]float64{}
-	for i, r := range trail.Line {
+	labels := [2]float64{} // how far two rows of days are taken
+	for i, r := range line {
 		// A commit can be dated before its parent; it follows it all the same.
-		from := max(at, x(instant(r.Committed)))
+		from := max(at, p.x(instant(r.Committed)))
 		to := float64(plotRight)
-		if i+1 < len(trail.Line) {
-			to = max(from, x(instant(trail.Line[i+1].Committed)))
+		if i+1 < len(line) {
+			to = max(from, p.x(instant(line[i+1].Committed)))
 		}
-		switch {
-		case r.Gap || r.Speed == 0:
-			s.stripes(from, y(top), max(to-from, 2), y(0)-y(top), r.Gap)
-			previous = 0
-		default:
-			line := fmt.Sprintf("M%.1f %.1f", from, y(r.Speed))
-			if previous != 0 {
-				line = fmt.Sprintf("M%.1f %.1fV%.1f", from, previous, y(r.Speed))
-			}
-			s.add(`<path d="%sH%.1f" fill="none" stroke="#111" stroke-width="2.4"/>`, line, to)
-			s.add(`<text x="%.1f" y="%.1f" font-weight="600">%d</text>`, from+3, y(r.Speed)-5, r.Speed)
-			previous = y(r.Speed)
-		}
-		s.add(`<path d="M%.1f %dv5" stroke="#111"/>`, from, traceBottom)
+		previous = p.reign(r, from, to, previous)
+		p.add(`<path d="M%.1f %dv5" stroke="#111"/>`, from, traceBottom)
 		for k := range labels {
 			if half := float64(len(days[i])) * letterWidth / 2; from-half > labels[k] {
 				labels[k] = from + half + 4
-				s.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, min(from, plotRight-half), traceBottom+18+13*k, esc(days[i]))
+				p.add(`<text x="%.1f" y="%d" text-anchor="middle">%s</text>`, min(from, plotRight-half), traceBottom+18+13*k, esc(days[i]))
 				break
 			}
 		}
 		at = from
 	}
-	s.add("\n</svg>\n")
-	return s.String()
+}
+
+// reign draws one speed, joined to the height of the previous one where that is not 0,
+// and gives its own height; 0 where there is no speed.
+func (p *timePlot) reign(r TraceReign, from, to, previous float64) float64 {
+	top := p.y(p.top)
+	if r.Gap || r.Speed == 0 {
+		p.stripes(from, top, max(to-from, 2), p.y(0)-top, r.Gap)
+		return 0
+	}
+	height := p.y(r.Speed)
+	line := fmt.Sprintf("M%.1f %.1f", from, height)
+	if previous != 0 {
+		line = fmt.Sprintf("M%.1f %.1fV%.1f", from, previous, height)
+	}
+	p.add(`<path d="%sH%.1f" fill="none" stroke="#111" stroke-width="2.4"/>`, line, to)
+	p.add(`<text x="%.1f" y="%.1f" font-weight="600">%d</text>`, from+3, height-5, r.Speed)
+	return height
 }
 
 // distanceChart draws the profile on a stretch over time: distance to the right,
