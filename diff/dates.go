@@ -1,7 +1,6 @@
 package diff
 
 import (
-	"cmp"
 	"slices"
 	"time"
 
@@ -15,7 +14,7 @@ import (
 // Dated is a stretch on which temporary restrictions let trains go faster or slower at
 // some time than those of the base did at that time, and the changes do not say so: for
 // them all restrictions count, whatever their dates. One that ends earlier is no change,
-// and on the track it lets trains go faster.
+// or none but that of its speed, and on the track it lets trains go faster.
 type Dated struct {
 	Direction      codes.Direction
 	From, To       unit.Distance // running distance on the target's track
@@ -135,14 +134,13 @@ func (x *Dated) compare(base, target []term) bool {
 		return slices.DeleteFunc(slices.Clone(list), func(t term) bool { return !t.Delay })
 	}
 	for _, pair := range [...][2][]term{{base, target}, {delayed(base), delayed(target)}} {
-		always := cmp.Compare(lowest(pair[1], nil), lowest(pair[0], nil))
+		before, after := lowest(pair[0], nil), lowest(pair[1], nil)
 		for _, at := range instants(pair) {
-			switch cmp.Compare(lowest(pair[1], &at), lowest(pair[0], &at)) {
-			case 1:
-				x.Faster = x.Faster || always <= 0
-			case -1:
-				x.Slower = x.Slower || always >= 0
-			}
+			was, is := lowest(pair[0], &at), lowest(pair[1], &at)
+			// A raise to what the changes say is told by them, one to more is not: 40 km/h
+			// for a year that become 45 for a day are no raise by 5.
+			x.Faster = x.Faster || is > was && is > after
+			x.Slower = x.Slower || is < was && after >= before
 		}
 	}
 	x.Row = only(target, base)

@@ -41,7 +41,8 @@ func drawTerms(t *rapid.T, name string) []schema.TemporaryRow {
 }
 
 // Metre by metre and month by month: a stretch is named where, and only where, at some
-// time another speed holds than the comparison of all restrictions says.
+// time speeds move in another sense than the comparison of all restrictions says, or
+// up to more.
 func TestDatedPointByPoint(t *testing.T) {
 	track, err := chainage.NewTrack(0, 10, nil)
 	if err != nil {
@@ -71,7 +72,7 @@ func TestDatedPointByPoint(t *testing.T) {
 					before, after := at(r.Base, d, place, delayed, -1), at(r.Target, d, place, delayed, -1)
 					for month := range 6 {
 						was, is := at(r.Base, d, place, delayed, month), at(r.Target, d, place, delayed, month)
-						faster = faster || is > was && after <= before
+						faster = faster || is > was && (after <= before || is > after)
 						slower = slower || is < was && after >= before
 					}
 				}
@@ -90,4 +91,30 @@ func TestDatedPointByPoint(t *testing.T) {
 			}
 		}
 	})
+}
+
+// A restriction that is raised a little and ends the next day lets trains go at line
+// speed from then on: the change of its speed does not say so.
+func TestDatedBesideAChangeOfSpeed(t *testing.T) {
+	until := func(month int, v unit.Speed) []term {
+		return []term{{0, 10, &schema.TemporaryRow{Speed: v, Valid: schema.Validity{From: monthOf(1), Until: monthOf(month)}}}}
+	}
+	for _, c := range []struct {
+		base, target []term
+		faster       bool
+	}{
+		{until(6, 40), until(2, 45), true},
+		{until(6, 40), until(6, 45), false},
+		{until(6, 40), until(7, 45), false},
+		{until(6, 45), until(2, 40), true},
+		{until(6, 40), nil, false},
+		{append(until(2, 40), until(6, 80)...), until(6, 80), false},
+		{append(until(6, 40), until(2, 80)...), until(2, 80), true},
+	} {
+		var x Dated
+		x.compare(c.base, c.target)
+		if x.Faster != c.faster {
+			t.Errorf("%+v to %+v: faster %v", c.base, c.target, x.Faster)
+		}
+	}
 }
