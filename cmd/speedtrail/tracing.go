@@ -30,6 +30,18 @@ type tracing struct {
 
 	rank  map[int32]int // of a commit: its index in doc.Commits
 	named []int32       // those
+
+	targets map[int64]int32 // of each assessment whose target is in the history that is traced
+	// What a trail and a stretch of the document say of each of their trains.
+	trails [][]sighted[trace.Trail]
+	pieces [][]sighted[[]trace.Piece]
+}
+
+// sighted is what a train sees in a view.
+type sighted[T any] struct {
+	view  *trace.View
+	train schema.Train
+	what  T
 }
 
 // choose takes the trains that were asked for, and begins the document.
@@ -96,20 +108,21 @@ func (t *tracing) point() error {
 	}
 	t.number()
 	for _, d := range codes.AllDirections {
-		seen := map[string]int{}
+		same := map[string]int{}
 		for i, trail := range trails[d] {
 			out, err := t.trail(d, &trail)
 			if err != nil {
 				return err
 			}
 			key := fmt.Sprint(out)
-			if n, ok := seen[key]; ok {
-				t.doc.Trails[n].Trains = append(t.doc.Trails[n].Trains, t.trains[i].ID)
-				continue
+			n, ok := same[key]
+			if !ok {
+				n = len(t.doc.Trails)
+				same[key] = n
+				t.doc.Trails, t.trails = append(t.doc.Trails, out), append(t.trails, nil)
 			}
-			seen[key] = len(t.doc.Trails)
-			out.Trains = []string{t.trains[i].ID}
-			t.doc.Trails = append(t.doc.Trails, out)
+			t.doc.Trails[n].Trains = append(t.doc.Trails[n].Trains, t.trains[i].ID)
+			t.trails[n] = append(t.trails[n], sighted[trace.Trail]{views[d], t.trains[i], trail})
 		}
 	}
 	return nil
@@ -187,13 +200,13 @@ func (t *tracing) stretch() error {
 		if views[d] != nil && len(t.doc.Places) == 0 {
 			t.doc.Places = assessment.Places(t.route, d, from, to)
 		}
-		seen := map[string]int{}
+		same := map[string]int{}
 		for i, pieces := range found[d] {
 			out := render.TraceStretch{Direction: d.String(), Pieces: []render.TracePiece{}, Bands: []render.TraceBand{}}
 			for _, p := range pieces {
 				out.Pieces = append(out.Pieces, render.TracePiece{
 					From: track.Begins(p.From).String(), To: track.Ends(p.To).String(), Start: int64(p.From), End: int64(p.To), Speed: int(p.Speed),
-					Origin: t.rank[p.Origin], Sources: assessment.Sources(p.Sources), Before: levels(p.Before), Across: p.Across,
+					Origin: t.rank[p.Origin], Sources: assessment.Sources(p.Sources), Before: levels(p.Before), Across: p.Across, Overtaken: []int64{},
 				})
 			}
 			bands := views[d].Bands(t.trains[i], from, to)
@@ -206,13 +219,14 @@ func (t *tracing) stretch() error {
 				out.Bands = append(out.Bands, render.TraceBand{Committed: committed, Gap: b.Gap, Pieces: levels(b.Profile)})
 			}
 			key := fmt.Sprint(out)
-			if n, ok := seen[key]; ok {
-				t.doc.Stretches[n].Trains = append(t.doc.Stretches[n].Trains, t.trains[i].ID)
-				continue
+			n, ok := same[key]
+			if !ok {
+				n = len(t.doc.Stretches)
+				same[key] = n
+				t.doc.Stretches, t.pieces = append(t.doc.Stretches, out), append(t.pieces, nil)
 			}
-			seen[key] = len(t.doc.Stretches)
-			out.Trains = []string{t.trains[i].ID}
-			t.doc.Stretches = append(t.doc.Stretches, out)
+			t.doc.Stretches[n].Trains = append(t.doc.Stretches[n].Trains, t.trains[i].ID)
+			t.pieces[n] = append(t.pieces[n], sighted[[]trace.Piece]{views[d], t.trains[i], pieces})
 		}
 	}
 	return nil
@@ -286,32 +300,8 @@ func (t *tracing) describe(ctx context.Context) error {
 		}
 		t.doc.Commits = append(t.doc.Commits, out)
 	}
-	for i := range t.doc.Trails {
-		t.overtake(t.doc.Trails[i].Steps)
-	}
+	t.overtake()
 	return nil
-}
-
-// overtake notes which steps an assessment does not speak of though its range holds
-// their commits: it compares its base with its target, and a speed that came and went
-// between them is in none of the two.
-func (t *tracing) overtake(steps []render.TraceStep) {
-	for i := range steps {
-		s := &steps[i]
-		assessed := t.doc.Commits[s.After.Commit].Assessments
-		if len(assessed) == 0 {
-			continue
-		}
-		after := t.h.Descendants(t.named[s.After.Commit])
-		for _, a := range assessed {
-			if slices.ContainsFunc(steps[:i], func(later render.TraceStep) bool {
-				return !later.Aside && after[t.named[later.After.Commit]] &&
-					slices.ContainsFunc(t.doc.Commits[later.After.Commit].Assessments, func(b render.TraceAssessment) bool { return b.Number == a.Number })
-			}) {
-				s.Overtaken = append(s.Overtaken, a.Number)
-			}
-		}
-	}
 }
 
 // changedAt tells of the commits of the document at which of them something

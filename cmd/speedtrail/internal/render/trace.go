@@ -114,7 +114,7 @@ type TraceStep struct {
 	Aside  bool         `json:"aside"`  // a later merge did not take it
 	Before []TraceValue `json:"before"` // of the parents, each speed once; empty where the history begins
 	// Overtaken are the assessments of its commit that did not judge this speed: a later
-	// commit of the same range altered it.
+	// commit of the same range altered it, or a merge did not take it.
 	Overtaken []int64 `json:"overtaken"`
 }
 
@@ -136,15 +136,18 @@ type TraceStretch struct {
 
 // TracePiece is a piece of one speed that dates from one revision.
 type TracePiece struct {
-	Across  int                 `json:"across"` // revisions that do not load between its revision and what was before
-	Before  []TraceLevel        `json:"before"` // in the first parent of its revision
-	End     int64               `json:"end_mm"` // running distance
-	From    string              `json:"from_km"`
-	Origin  int                 `json:"origin"` // index in commits
-	Sources []assessment.Source `json:"governed_by"`
-	Speed   int                 `json:"speed_kmh"`
-	Start   int64               `json:"start_mm"` // running distance
-	To      string              `json:"to_km"`
+	Across int          `json:"across"` // revisions that do not load between its revision and what was before
+	Before []TraceLevel `json:"before"` // in the first parent of its revision
+	End    int64        `json:"end_mm"` // running distance
+	From   string       `json:"from_km"`
+	Origin int          `json:"origin"` // index in commits
+	// Overtaken are the assessments of its revision whose target has not this speed
+	// because of it on all of the piece: they did not judge it.
+	Overtaken []int64             `json:"overtaken"`
+	Sources   []assessment.Source `json:"governed_by"`
+	Speed     int                 `json:"speed_kmh"`
+	Start     int64               `json:"start_mm"` // running distance
+	To        string              `json:"to_km"`
 }
 
 // TraceLevel is a piece of an older profile, on the newest track.
@@ -279,10 +282,15 @@ func stepRemarks(t *Trace, s *TraceStep) []string {
 	if s.Aside {
 		list = append(list, "a later merge did not take it")
 	}
-	for _, n := range s.Overtaken {
-		list = append(list, fmt.Sprintf("! assessment %d did not judge this speed: a later commit before its target altered it", n))
+	return append(list, overtakenWords(s.Overtaken)...)
+}
+
+func overtakenWords(list []int64) []string {
+	words := make([]string, len(list))
+	for i, n := range list {
+		words[i] = fmt.Sprintf("! assessment %d did not judge this speed: a later commit or merge up to its target altered it", n)
 	}
-	return list
+	return words
 }
 
 func pieceRemarks(t *Trace, p *TracePiece) []string {
@@ -296,7 +304,7 @@ func pieceRemarks(t *Trace, p *TracePiece) []string {
 	if p.Across > 0 {
 		list = append(list, acrossWords(p.Across))
 	}
-	return list
+	return append(list, overtakenWords(p.Overtaken)...)
 }
 
 func acrossWords(n int) string {
