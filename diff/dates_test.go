@@ -49,29 +49,38 @@ func TestDatedPointByPoint(t *testing.T) {
 		t.Fatal(err)
 	}
 	rapid.Check(t, func(t *rapid.T) {
+		trains := []Train{{Train: schema.Train{Length: 2}}, {Train: schema.Train{Length: 5}}}
 		r := &Route{
 			Base:   &schema.Route{Directions: codes.Both, Track: track, Temporary: drawTerms(t, "base")},
 			Target: &schema.Route{Directions: codes.Both, Track: track, Temporary: drawTerms(t, "target")},
 		}
-		at := func(route *schema.Route, d codes.Direction, place unit.Distance, delayed bool, month int) unit.Speed {
+		at := func(route *schema.Route, d codes.Direction, place, length unit.Distance, month int) unit.Speed {
 			v := unit.Speed(1000)
 			for _, x := range route.Temporary {
 				holds := month < 0 || x.Valid.From.IsZero() || int(x.Valid.From.Month()) <= month
 				holds = holds && (month < 0 || x.Valid.Until.IsZero() || month < int(x.Valid.Until.Month()))
-				if holds && x.Directions.Has(d) && x.Start <= place && place < x.End && (x.Delay || !delayed) {
+				from, to := x.Start, x.End
+				switch {
+				case !x.Delay:
+				case d == codes.Nominal:
+					to += length
+				default:
+					from -= length
+				}
+				if holds && x.Directions.Has(d) && from <= place && place < to {
 					v = min(v, x.Speed)
 				}
 			}
 			return v
 		}
 		for _, d := range codes.AllDirections {
-			list := r.dated(d, align.Tracks(track, track).Common)
+			list := r.datedAnywhere(d, align.Tracks(track, track).Common, trains)
 			for place := range unit.Distance(10) {
 				var faster, slower bool
-				for _, delayed := range []bool{false, true} {
-					before, after := at(r.Base, d, place, delayed, -1), at(r.Target, d, place, delayed, -1)
+				for _, length := range []unit.Distance{0, 2, 5} {
+					before, after := at(r.Base, d, place, length, -1), at(r.Target, d, place, length, -1)
 					for month := range 6 {
-						was, is := at(r.Base, d, place, delayed, month), at(r.Target, d, place, delayed, month)
+						was, is := at(r.Base, d, place, length, month), at(r.Target, d, place, length, month)
 						faster = faster || is > was && (after <= before || is > after)
 						slower = slower || is < was && after >= before
 					}
@@ -89,6 +98,15 @@ func TestDatedPointByPoint(t *testing.T) {
 					t.Fatalf("%+v overlap", list)
 				}
 			}
+			// What is left out goes with a row that is named, and does what it does.
+			said := r.dated(d, align.Tracks(track, track).Common, trains)
+			for _, x := range list {
+				if !slices.Contains(said, x) && (!x.behind || !slices.ContainsFunc(said, func(y Dated) bool {
+					return y.Row == x.Row && (y.Faster || !x.Faster) && (y.Slower || !x.Slower)
+				})) {
+					t.Fatalf("%+v is missing in %+v", x, said)
+				}
+			}
 		}
 	})
 }
@@ -97,7 +115,8 @@ func TestDatedPointByPoint(t *testing.T) {
 // speed from then on: the change of its speed does not say so.
 func TestDatedBesideAChangeOfSpeed(t *testing.T) {
 	until := func(month int, v unit.Speed) []term {
-		return []term{{0, 10, &schema.TemporaryRow{Speed: v, Valid: schema.Validity{From: monthOf(1), Until: monthOf(month)}}}}
+		row := &schema.TemporaryRow{Speed: v, Valid: schema.Validity{From: monthOf(1), Until: monthOf(month)}}
+		return []term{{0, 10, row, said(row), align.Interval{From: 0, To: 10}}}
 	}
 	for _, c := range []struct {
 		base, target []term
@@ -116,5 +135,27 @@ func TestDatedBesideAChangeOfSpeed(t *testing.T) {
 		if x.Faster != c.faster {
 			t.Errorf("%+v to %+v: faster %v", c.base, c.target, x.Faster)
 		}
+	}
+}
+
+// Where a restriction no longer waits for the rear of a train, another one can hold
+// what lies behind it, and end earlier: of all restrictions together no speed rises.
+func TestDatedBehindTheEnd(t *testing.T) {
+	track, err := chainage.NewTrack(0, 10, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	row := func(from, to unit.Distance, delay bool, until int) (r schema.TemporaryRow) {
+		r.Start, r.End, r.Directions, r.Delay, r.Speed = from, to, codes.OnlyNominal, delay, 40
+		r.Valid.Until = monthOf(until)
+		return r
+	}
+	r := &Route{
+		Base:   &schema.Route{Directions: codes.Both, Track: track, Temporary: []schema.TemporaryRow{row(2, 4, true, 12)}},
+		Target: &schema.Route{Directions: codes.Both, Track: track, Temporary: []schema.TemporaryRow{row(2, 4, false, 12), row(4, 8, false, 2)}},
+	}
+	list := r.dated(codes.Nominal, align.Tracks(track, track).Common, []Train{{Train: schema.Train{Length: 3}}})
+	if len(list) != 1 || list[0].From != 4 || list[0].To != 7 || !list[0].Faster || list[0].Slower {
+		t.Fatalf("%+v", list)
 	}
 }

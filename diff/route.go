@@ -64,7 +64,7 @@ func compareTracks(r *Route, trains []Train, o *Options) {
 			for _, i := range tracks.Added {
 				r.Track = append(r.Track, TrackChange{d, Added, i.From, i.To, 0})
 			}
-			r.Dated = append(r.Dated, r.dated(d, tracks.Common)...)
+			r.Dated = append(r.Dated, r.dated(d, tracks.Common, trains)...)
 			p := newPair(r, d, &tracks, longest)
 			p.compare(trains)
 			if !o.NoFleet {
