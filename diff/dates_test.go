@@ -41,8 +41,8 @@ func drawTerms(t *rapid.T, name string) []schema.TemporaryRow {
 }
 
 // Metre by metre and month by month: a stretch is named where, and only where, at some
-// time another speed holds than the comparison of all restrictions says. The target's
-// track begins some metres before or behind the base's.
+// time speeds move in another sense than the comparison of all restrictions says, or
+// up to more. The target's track begins some metres before or behind the base's.
 func TestDatedPointByPoint(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		shift := unit.Distance(rapid.IntRange(-3, 3).Draw(t, "shift")) // of running distance, base to target
@@ -53,30 +53,39 @@ func TestDatedPointByPoint(t *testing.T) {
 				t.Fatal(err)
 			}
 		}
+		trains := []Train{{Train: schema.Train{Length: 2}}, {Train: schema.Train{Length: 5}}}
 		r := &Route{
 			Base:   &schema.Route{Directions: codes.Both, Track: tracks[0], Temporary: drawTerms(t, "base")},
 			Target: &schema.Route{Directions: codes.Both, Track: tracks[1], Temporary: drawTerms(t, "target")},
 		}
-		at := func(route *schema.Route, d codes.Direction, place unit.Distance, delayed bool, month int) unit.Speed {
+		at := func(route *schema.Route, d codes.Direction, place, length unit.Distance, month int) unit.Speed {
 			v := unit.Speed(1000)
 			for _, x := range route.Temporary {
 				holds := month < 0 || x.Valid.From.IsZero() || int(x.Valid.From.Month()) <= month
 				holds = holds && (month < 0 || x.Valid.Until.IsZero() || month < int(x.Valid.Until.Month()))
-				if holds && x.Directions.Has(d) && x.Start <= place && place < x.End && (x.Delay || !delayed) {
+				from, to := x.Start, x.End
+				switch {
+				case !x.Delay:
+				case d == codes.Nominal:
+					to += length
+				default:
+					from -= length
+				}
+				if holds && x.Directions.Has(d) && from <= place && place < to {
 					v = min(v, x.Speed)
 				}
 			}
 			return v
 		}
 		for _, d := range codes.AllDirections {
-			list := r.dated(d, align.Tracks(tracks[0], tracks[1]).Common)
+			list := r.datedAnywhere(d, align.Tracks(tracks[0], tracks[1]).Common, trains)
 			for place := max(0, shift); place < min(10, 10+shift); place++ {
 				var faster, slower bool
-				for _, delayed := range []bool{false, true} {
-					before, after := at(r.Base, d, place-shift, delayed, -1), at(r.Target, d, place, delayed, -1)
+				for _, length := range []unit.Distance{0, 2, 5} {
+					before, after := at(r.Base, d, place-shift, length, -1), at(r.Target, d, place, length, -1)
 					for month := range 6 {
-						was, is := at(r.Base, d, place-shift, delayed, month), at(r.Target, d, place, delayed, month)
-						faster = faster || is > was && after <= before
+						was, is := at(r.Base, d, place-shift, length, month), at(r.Target, d, place, length, month)
+						faster = faster || is > was && (after <= before || is > after)
 						slower = slower || is < was && after >= before
 					}
 				}
@@ -87,11 +96,14 @@ func TestDatedPointByPoint(t *testing.T) {
 				if i < 0 {
 					continue
 				}
-				x, from := list[i], place
+				x, from, reach := list[i], place, unit.Distance(0)
 				if x.OfBase {
 					from -= shift
 				}
-				if x.Faster != faster || x.Slower != slower || x.Row == nil || !x.Row.Directions.Has(d) || from < x.Row.Start || x.Row.End <= from {
+				if x.behind {
+					reach = 5 // the longest train
+				}
+				if x.Faster != faster || x.Slower != slower || x.Row == nil || !x.Row.Directions.Has(d) || from < x.Row.Start-reach || x.Row.End+reach <= from {
 					t.Fatalf("%s at %d: %+v, want faster %v, slower %v", d, place, x, faster, slower)
 				}
 			}
@@ -105,8 +117,66 @@ func TestDatedPointByPoint(t *testing.T) {
 					t.Fatalf("%+v: two are one", list)
 				}
 			}
+			// What is left out goes with a row that is named, and does what it does.
+			said := r.dated(d, align.Tracks(tracks[0], tracks[1]).Common, trains)
+			for _, x := range list {
+				if !slices.Contains(said, x) && (!x.behind || !slices.ContainsFunc(said, func(y Dated) bool {
+					return y.Row == x.Row && (y.Faster || !x.Faster) && (y.Slower || !x.Slower)
+				})) {
+					t.Fatalf("%+v is missing in %+v", x, said)
+				}
+			}
 		}
 	})
+}
+
+// A restriction that is raised a little and ends the next day lets trains go at line
+// speed from then on: the change of its speed does not say so.
+func TestDatedBesideAChangeOfSpeed(t *testing.T) {
+	until := func(month int, v unit.Speed) []term {
+		row := &schema.TemporaryRow{Speed: v, Valid: schema.Validity{From: monthOf(1), Until: monthOf(month)}}
+		return []term{{0, 10, row, said(row), align.Interval{From: 0, To: 10}}}
+	}
+	for _, c := range []struct {
+		base, target []term
+		faster       bool
+	}{
+		{until(6, 40), until(2, 45), true},
+		{until(6, 40), until(6, 45), false},
+		{until(6, 40), until(7, 45), false},
+		{until(6, 45), until(2, 40), true},
+		{until(6, 40), nil, false},
+		{append(until(2, 40), until(6, 80)...), until(6, 80), false},
+		{append(until(6, 40), until(2, 80)...), until(2, 80), true},
+	} {
+		var x Dated
+		x.compare(c.base, c.target)
+		if x.Faster != c.faster {
+			t.Errorf("%+v to %+v: faster %v", c.base, c.target, x.Faster)
+		}
+	}
+}
+
+// Where a restriction no longer waits for the rear of a train, another one can hold
+// what lies behind it, and end earlier: of all restrictions together no speed rises.
+func TestDatedBehindTheEnd(t *testing.T) {
+	track, err := chainage.NewTrack(0, 10, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	row := func(from, to unit.Distance, delay bool, until int) (r schema.TemporaryRow) {
+		r.Start, r.End, r.Directions, r.Delay, r.Speed = from, to, codes.OnlyNominal, delay, 40
+		r.Valid.Until = monthOf(until)
+		return r
+	}
+	r := &Route{
+		Base:   &schema.Route{Directions: codes.Both, Track: track, Temporary: []schema.TemporaryRow{row(2, 4, true, 12)}},
+		Target: &schema.Route{Directions: codes.Both, Track: track, Temporary: []schema.TemporaryRow{row(2, 4, false, 12), row(4, 8, false, 2)}},
+	}
+	list := r.dated(codes.Nominal, align.Tracks(track, track).Common, []Train{{Train: schema.Train{Length: 3}}})
+	if len(list) != 1 || list[0].From != 4 || list[0].To != 7 || !list[0].Faster || list[0].Slower {
+		t.Fatalf("%+v", list)
+	}
 }
 
 // A row has a part in a stretch of other dates where it holds there in that direction,
@@ -177,7 +247,7 @@ func TestDatedTellsApart(t *testing.T) {
 		},
 	} {
 		r := &Route{Base: &schema.Route{Track: track, Temporary: c.base}, Target: &schema.Route{Track: track, Temporary: c.target}}
-		got := r.dated(codes.Nominal, align.Tracks(track, track).Common)
+		got := r.dated(codes.Nominal, align.Tracks(track, track).Common, nil)
 		for i := range got {
 			if got[i].Row != &r.Target.Temporary[0] || got[i].OfBase {
 				t.Errorf("%s: %+v", name, got[i])

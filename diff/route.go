@@ -70,7 +70,7 @@ func compareTracks(ctx context.Context, r *Route, trains []Train, o *Options, an
 			for _, i := range tracks.Added {
 				r.Track = append(r.Track, TrackChange{d, Added, i.From, i.To, 0})
 			}
-			r.Dated = append(r.Dated, r.dated(d, tracks.Common)...)
+			r.Dated = append(r.Dated, r.dated(d, tracks.Common, trains)...)
 			p := newPair(r, d, &tracks, longest)
 			if err := p.compare(ctx, trains, announce); err != nil {
 				return err

@@ -36,6 +36,7 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 		return nil, err
 	}
 	var ranges []*assessedRange
+	t.targets = map[int64]int32{}
 	for i := len(rows) - 1; i >= 0; i-- {
 		if rows[i].Folder != t.folder {
 			continue
@@ -46,6 +47,9 @@ func (t *tracing) assessments(ctx context.Context) (func(int32) ([]render.TraceA
 		}
 		if r != nil {
 			ranges = append(ranges, r)
+		}
+		if r != nil && !r.beyond {
+			t.targets[r.number] = r.target
 		}
 	}
 	root := line.Anchor(t.folder)

@@ -65,7 +65,9 @@ func (t *tracing) stretch(ctx context.Context) error {
 					return err
 				}
 			}
-			t.doc.Stretches = withTrain(t.doc.Stretches, seen, out, func(x *render.TraceStretch) *[]string { return &x.Trains }, t.trains[i].ID)
+			var n int
+			t.doc.Stretches, n = withTrain(t.doc.Stretches, seen, out, func(x *render.TraceStretch) *[]string { return &x.Trains }, t.trains[i].ID)
+			t.pieces = with(t.pieces, n, sighted[[]trace.Piece]{views[d], t.trains[i], pieces})
 		}
 	}
 	return nil
@@ -79,7 +81,7 @@ func (t *tracing) profiles(d codes.Direction, pieces []trace.Piece, bands []trac
 	for _, p := range pieces {
 		out.Pieces = append(out.Pieces, render.TracePiece{
 			From: track.Begins(p.From).String(), To: track.Ends(p.To).String(), Start: int64(p.From), End: int64(p.To), Speed: int(p.Speed),
-			Origin: t.rank[p.Origin], Sources: assessment.Sources(p.Sources), Before: levels(p.Before), Across: p.Across,
+			Origin: t.rank[p.Origin], Sources: assessment.Sources(p.Sources), Before: levels(p.Before), Across: p.Across, Overtaken: []int64{},
 		})
 	}
 	out.LeftOut = max(0, len(bands)-mostBands)

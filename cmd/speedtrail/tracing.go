@@ -31,6 +31,18 @@ type tracing struct {
 	named []int32       // those
 	// requests are those in play at the commits that were asked for.
 	requests map[int32][]schema.ChangeRequest
+
+	targets map[int64]int32 // of each assessment whose target is in the history that is traced
+	// What a trail and a stretch of the document say of each of their trains.
+	trails [][]sighted[trace.Trail]
+	pieces [][]sighted[[]trace.Piece]
+}
+
+// sighted is what a train sees in a view.
+type sighted[T any] struct {
+	view  *trace.View
+	train schema.Train
+	what  T
 }
 
 // choose takes the trains that were asked for, and begins the document.
@@ -109,15 +121,18 @@ func (t *tracing) point(ctx context.Context) error {
 					return err
 				}
 			}
-			t.doc.Trails = withTrain(t.doc.Trails, seen, out, func(x *render.TraceTrail) *[]string { return &x.Trains }, t.trains[i].ID)
+			var n int
+			t.doc.Trails, n = withTrain(t.doc.Trails, seen, out, func(x *render.TraceTrail) *[]string { return &x.Trains }, t.trains[i].ID)
+			t.trails = with(t.trails, n, sighted[trace.Trail]{views[d], t.trains[i], trail})
 		}
 	}
 	return nil
 }
 
 // withTrain adds to a list what is said of a train; where an earlier item says the same,
-// the train joins that one. seen has the places of items by what they say.
-func withTrain[T any](list []T, seen map[string]int, item T, trains func(*T) *[]string, train string) []T {
+// the train joins that one. seen has the places of items by what they say; at is that of
+// the item.
+func withTrain[T any](list []T, seen map[string]int, item T, trains func(*T) *[]string, train string) (_ []T, at int) {
 	said := fmt.Sprint(item)
 	at, ok := seen[said]
 	if !ok {
@@ -126,7 +141,16 @@ func withTrain[T any](list []T, seen map[string]int, item T, trains func(*T) *[]
 	}
 	of := trains(&list[at])
 	*of = append(*of, train)
-	return list
+	return list, at
+}
+
+// with adds what one more train sees to the list of an item, the last one or the next.
+func with[T any](lists [][]sighted[T], at int, seen sighted[T]) [][]sighted[T] {
+	if at == len(lists) {
+		lists = append(lists, nil)
+	}
+	lists[at] = append(lists[at], seen)
+	return lists
 }
 
 // trail writes a trail without its trains.
@@ -227,32 +251,8 @@ func (t *tracing) describe(ctx context.Context) error {
 		}
 		t.doc.Commits = append(t.doc.Commits, out)
 	}
-	for i := range t.doc.Trails {
-		t.overtake(t.doc.Trails[i].Steps)
-	}
+	t.overtake()
 	return nil
-}
-
-// overtake notes which steps an assessment does not speak of though its range holds
-// their commits: it compares its base with its target, and a speed that came and went
-// between them is in none of the two.
-func (t *tracing) overtake(steps []render.TraceStep) {
-	for i := range steps {
-		s := &steps[i]
-		assessed := t.doc.Commits[s.After.Commit].Assessments
-		if len(assessed) == 0 {
-			continue
-		}
-		after := t.h.Descendants(t.named[s.After.Commit])
-		for _, a := range assessed {
-			if slices.ContainsFunc(steps[:i], func(later render.TraceStep) bool {
-				return !later.Aside && after[t.named[later.After.Commit]] &&
-					slices.ContainsFunc(t.doc.Commits[later.After.Commit].Assessments, func(b render.TraceAssessment) bool { return b.Number == a.Number })
-			}) {
-				s.Overtaken = append(s.Overtaken, a.Number)
-			}
-		}
-	}
 }
 
 // changedAt tells of the commits of the document at which of them something

@@ -49,7 +49,7 @@ var explained = map[string][2]string{
 		"Add the train below to trains.toml, or see that no such train runs here."},
 	Masked: {"The change is hidden by temporary restrictions today and appears when they end.",
 		"Have it declared and checked like any other change."},
-	DatesChanged: {"A temporary restriction begins or ends at another time. All of them count in a comparison, whatever their dates, so that no speed changes there; on the track it does.",
+	DatesChanged: {"A temporary restriction begins or ends at another time. All of them count in a comparison, whatever their dates, so that no speed changes there, or less than on the track.",
 		"See that the dates are meant: where a restriction ends, trains go faster."},
 	PolicyChanged: {"Who may approve changes is itself changed here.",
 		"Have the people checked who may sign; the policy of the base decides about this change."},

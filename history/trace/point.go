@@ -42,6 +42,8 @@ type Trail struct {
 	Steps []Step // the newest first
 	// Line is the line of first parents, the oldest first.
 	Line []Reign
+
+	speeds []unit.Speed // of each version
 }
 
 // Point traces a train at a running distance on the newest track, 0 to its
@@ -68,7 +70,7 @@ func (v *View) Point(t schema.Train, at unit.Distance) Trail {
 		}
 		return out
 	}
-	trail := Trail{Now: value(v.h.Tip), Line: v.reigns(speed)}
+	trail := Trail{Now: value(v.h.Tip), Line: v.reigns(speed), speeds: speeds}
 	for _, c := range v.line.order {
 		if !v.isStep(c, speed) {
 			continue

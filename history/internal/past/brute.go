@@ -161,6 +161,25 @@ func (b *Brute) reached(firstParent bool) []bool {
 	return list
 }
 
+// Leads gives the commits to which going back from a commit leads along those that
+// have the same speed, itself among them; none where it does not load.
+func (b *Brute) Leads(commit int, q Case) map[int]bool {
+	leads := map[int]bool{}
+	var goBack func(c int)
+	goBack = func(c int) {
+		leads[c] = true
+		for _, p := range b.before(c, q.FirstParent) {
+			if !leads[p] && b.Speed(p, q) == b.Speed(c, q) {
+				goBack(p)
+			}
+		}
+	}
+	if b.Data[commit] != nil {
+		goBack(commit)
+	}
+	return leads
+}
+
 // Origin goes back from the newest commit along the first of the parents that
 // have the same speed.
 func (b *Brute) Origin(q Case) int {

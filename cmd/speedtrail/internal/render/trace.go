@@ -117,7 +117,7 @@ type TraceStep struct {
 	// trains; run-out beyond the end of a declaration is not looked at.
 	DeclaredBy []string `json:"declared_by"`
 	// Overtaken are the assessments of its commit that did not judge this speed: a later
-	// commit of the same range altered it.
+	// commit of the same range altered it, or a merge did not take it.
 	Overtaken []int64 `json:"overtaken"`
 }
 
@@ -143,14 +143,17 @@ type TracePiece struct {
 	Before []TraceLevel `json:"before"` // in the first parent of its revision
 	// DeclaredBy are the requests in play that declare some of what changed here for
 	// these trains; run-out beyond the end of a declaration is not looked at.
-	DeclaredBy []string            `json:"declared_by"`
-	End        int64               `json:"end_mm"` // running distance
-	From       string              `json:"from_km"`
-	Origin     int                 `json:"origin"` // index in commits
-	Sources    []assessment.Source `json:"governed_by"`
-	Speed      int                 `json:"speed_kmh"`
-	Start      int64               `json:"start_mm"` // running distance
-	To         string              `json:"to_km"`
+	DeclaredBy []string `json:"declared_by"`
+	End        int64    `json:"end_mm"` // running distance
+	From       string   `json:"from_km"`
+	Origin     int      `json:"origin"` // index in commits
+	// Overtaken are the assessments of its revision whose target has not this speed
+	// because of it on all of the piece: they did not judge it.
+	Overtaken []int64             `json:"overtaken"`
+	Sources   []assessment.Source `json:"governed_by"`
+	Speed     int                 `json:"speed_kmh"`
+	Start     int64               `json:"start_mm"` // running distance
+	To        string              `json:"to_km"`
 }
 
 // TraceLevel is a piece of an older profile, on the newest track.
@@ -285,10 +288,16 @@ func stepRemarks(t *Trace, s *TraceStep) []string {
 	if s.Aside {
 		list = append(list, "a later merge did not take it")
 	}
-	for _, n := range s.Overtaken {
-		list = append(list, fmt.Sprintf("! assessment %d did not judge this speed: a later commit before its target altered it", n))
-	}
+	list = append(list, overtakenWords(s.Overtaken)...)
 	return append(list, declaredRemarks(&t.Commits[s.After.Commit], s.DeclaredBy)...)
+}
+
+func overtakenWords(list []int64) []string {
+	words := make([]string, len(list))
+	for i, n := range list {
+		words[i] = fmt.Sprintf("! assessment %d did not judge this speed: a later commit or merge up to its target altered it", n)
+	}
+	return words
 }
 
 // declaredRemarks says which of the requests in play at a commit declare what changed.
@@ -313,6 +322,7 @@ func pieceRemarks(t *Trace, p *TracePiece) []string {
 	if p.Across > 0 {
 		list = append(list, acrossWords(p.Across))
 	}
+	list = append(list, overtakenWords(p.Overtaken)...)
 	if len(p.Before) == 0 {
 		return list
 	}
