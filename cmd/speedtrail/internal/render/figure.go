@@ -67,7 +67,7 @@ func governWords(list []assessment.Source) string {
 	parts := make([]string, len(list))
 	for i, s := range list {
 		file := s.File[strings.LastIndexByte(s.File, '/')+1:]
-		parts[i] = fmt.Sprintf("%s %d (%s:%d)", s.Kind, s.Value, file, s.Line)
+		parts[i] = fmt.Sprintf("%s: %d km/h (%s:%d)", kindWords(s.Kind), s.Value, file, s.Line)
 	}
 	return strings.Join(parts, " + ")
 }

@@ -146,7 +146,7 @@ func (m *markdown) changes() {
 				step += " run-out"
 			}
 			m.add("| %s | %s | %s | %d | %d | %s | %s | %s | %s | %s |\n", minus(x.From), minus(x.To), metres(x.Length), x.Before, x.After, step,
-				md(trainNames(c, x.Trains, 0)), md(assessment.SourceText(route.Sources[x.BeforeSource])), md(assessment.SourceText(route.Sources[x.AfterSource])), md(declaredWords(c, route, x.Pieces)))
+				md(trainNames(c, x.Trains, 0)), md(sourcePlaces(route.Sources[x.BeforeSource])), md(sourcePlaces(route.Sources[x.AfterSource])), md(declaredWords(c, route, x.Pieces)))
 		}
 	}
 	if all > shown {

@@ -73,7 +73,7 @@ func ProfileText(w io.Writer, s Style, list ...Profile) error {
 			lines := make([]string, len(piece.Sources))
 			for n, src := range piece.Sources {
 				// Wrapped here: the table would run the sources together.
-				lines[n] = Hanging(source.Visible(src.Text()), max(30, s.Width-before), "  ")
+				lines[n] = Hanging(source.Visible(SourcePlace(src.File, src.Line, src.Kind)), max(30, s.Width-before), "  ")
 			}
 			t.AppendRow(table.Row{from[k], to[k], length[k], piece.Speed, strings.Join(lines, "\n")})
 		}
