@@ -87,7 +87,7 @@ func profileFigure(p Profile) *figure {
 
 // The title of a picture: letters to a line, and its height.
 const (
-	titleLength = 108
+	titleLength = 97
 	titleHeight = 18
 )
 
@@ -105,7 +105,7 @@ func ProfileSVG(w io.Writer, list ...Profile) error {
 		f := profileFigure(p)
 		text := f.svg(fmt.Sprintf("p%d", i))
 		height := 0
-		fmt.Sscanf(text[strings.Index(text, `viewBox="`):], `viewBox="0 0 960 %d"`, &height)
+		fmt.Sscanf(text[strings.Index(text, `viewBox="`):], fmt.Sprintf(`viewBox="0 0 %d %%d"`, chartWidth), &height)
 		// Whole: it says which train it is and which restrictions count.
 		title := Wrap(p.title(), titleLength)
 		parts = append(parts, part{title, text, height})
