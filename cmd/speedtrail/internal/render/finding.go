@@ -177,12 +177,12 @@ func trainRoutes(c *assessment.Computed) map[string]string {
 	}
 	out := map[string]string{}
 	for i, t := range c.Trains {
-		words := someRoutes(t.Routes)
+		words := routesCell(t.Routes)
 		if len(timed[i]) > 0 {
 			if words != "" {
 				words += "; "
 			}
-			words += "running time only: " + someRoutes(timed[i])
+			words += "running time only: " + routesCell(timed[i])
 		}
 		if words != "" {
 			out[t.ID] = words
@@ -191,12 +191,15 @@ func trainRoutes(c *assessment.Computed) map[string]string {
 	return out
 }
 
-// someRoutes lists the first of many routes: where hundreds change, the sections that
-// follow have them all, and a table that lists them has pages without a number.
-func someRoutes(ids []string) string {
-	const most = 8
-	if n := len(ids) - most; n > 1 { // "and 1 more" is no shorter than its name
-		return strings.Join(ids[:most], ", ") + fmt.Sprintf(" and %d more", n)
+// mostRoutes is how many routes a table or sentence names.
+const mostRoutes = 8
+
+// routesCell lists the routes of a train, or counts many: the first eight of forty are
+// much the same for each train, and make lines without a number of a table. The
+// sections that follow have them all.
+func routesCell(ids []string) string {
+	if len(ids) > mostRoutes+1 {
+		return fmt.Sprintf("%d routes", len(ids))
 	}
 	return strings.Join(ids, ", ")
 }

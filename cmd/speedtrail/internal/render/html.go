@@ -36,7 +36,7 @@ var pageJS string
 var pageTemplate = sync.OnceValue(func() *template.Template {
 	return template.Must(template.New("page").Funcs(template.FuncMap{
 		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
-		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords, "unchanged": unchangedWords,
+		"trainName": trainName, "lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords, "unchanged": unchangedWords,
 		"otherLengths": func(c *assessment.Computed) string { return source.Visible(otherLengths(c)) },
 		"link":         func(text, id string) pageLink { return pageLink{text, id} },
 		"step":         func(p page, row pageRow) pageStep { return pageStep{row, p.C.Options.NoRequests} },
@@ -339,6 +339,19 @@ func fileName(f assessment.SourceFile) string {
 		return f.Base + " \u2192 " + f.Target
 	}
 	return f.Target
+}
+
+// trainName gives the name of a train, for those who do not know its id; empty for
+// one that says no more.
+func trainName(t assessment.Train) string {
+	d := t.After
+	if d == nil {
+		d = t.Before
+	}
+	if d == nil || d.Name == t.ID {
+		return ""
+	}
+	return source.Visible(d.Name)
 }
 
 // definitionWords words a train.
