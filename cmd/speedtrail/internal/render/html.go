@@ -2,6 +2,7 @@ package render
 
 import (
 	"bytes"
+	"cmp"
 	"crypto/sha256"
 	_ "embed" // the page's parts
 	"encoding/base64"
@@ -35,7 +36,7 @@ var pageJS string
 // Every start of the program would pay for what is parsed here.
 var pageTemplate = sync.OnceValue(func() *template.Template {
 	return template.Must(template.New("page").Funcs(template.FuncMap{
-		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
+		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible, "shown": func(s string) string { return tied(source.Visible(s)) },
 		"trainName": trainName, "lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords, "unchanged": unchangedWords,
 		"otherLengths": func(c *assessment.Computed) string { return source.Visible(otherLengths(c)) },
 		"link":         func(text, id string) pageLink { return pageLink{text, id} },
@@ -78,6 +79,7 @@ type page struct {
 	Seen           map[string]string // by train, on which routes it sees a change
 
 	Findings       []pageFindings
+	NoFinding      string
 	Acceptances    []string
 	Reconciliation string
 	Declared       []pageDeclaration
@@ -103,6 +105,7 @@ type page struct {
 	Rows, Quiet                                []pageSourceRow
 	RowsLeft, QuietLeft                        int
 	RunsLeft, CurvesLeft, ShortLeft, FleetLeft int
+	RunParts                                   bool // some running time is made of several
 }
 
 type pageStretch struct {
@@ -146,7 +149,7 @@ type pageLine struct {
 	Number, Op, Text, Class string
 }
 
-type pageTrack struct{ Route, Name, Direction, From, To, Length, Fate, Command string }
+type pageTrack struct{ ID, Route, Name, Direction, From, To, Length, Fate, Command string }
 
 type pageTrain struct{ ID, Fate, Before, After string }
 
@@ -154,7 +157,7 @@ type pageTrain struct{ ID, Fate, Before, After string }
 func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	c := &d.Computed
 	p := page{
-		D: d, C: c, R: r, Verdict: Verdict(d), Caution: Caution, State: "not recorded",
+		D: d, C: c, R: r, Verdict: tied(source.Visible(Verdict(d))), Caution: Caution, NoFinding: noFinding, State: "not recorded",
 		Title: source.Visible("Change of route speed data: " + c.Dataset),
 		Base:  revisionName(d.Named.Base, d.Named.BaseName, c.Base), Target: revisionName(d.Named.Target, d.Named.TargetName, c.Target),
 		JS: template.JS(pageJS), Unchecked: uncheckedWords(c), Limits: limitWords(c),
@@ -173,6 +176,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	p.fillDeclared()
 	p.fillStretches()
 	p.fillHidden()
+	p.fillTrack()
 	p.fillFindings()
 	p.fillSigned()
 	p.fillFleet()
@@ -191,9 +195,6 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 		}
 		if !drawn && len(route.Changes) > 0 {
 			p.Undrawn = append(p.Undrawn, route.ID)
-		}
-		for _, t := range route.Track {
-			p.Track = append(p.Track, pageTrack{route.ID, route.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate, p.profileCommand(route.ID, t)})
 		}
 	}
 	p.fillContents()
@@ -341,6 +342,9 @@ func fileName(f assessment.SourceFile) string {
 	return f.Target
 }
 
+// categoryWords are the categories of trains.toml in the words of the whole fleet.
+var categoryWords = map[string]string{"freight_p": "freight braked in P", "freight_g": "freight braked in G"}
+
 // trainName gives the name of a train, for those who do not know its id; empty for
 // one that says no more.
 func trainName(t assessment.Train) string {
@@ -361,7 +365,11 @@ func definitionWords(d *assessment.Definition) string {
 	}
 	s := fmt.Sprintf("%s; cant deficiency %d mm; axle load %s; %s m; %d km/h", d.Name, d.CantDeficiency, d.AxleLoad, metres(d.Length), d.MaxSpeed)
 	if len(d.Categories) > 0 {
-		s += "; " + strings.Join(d.Categories, ", ")
+		var words []string
+		for _, c := range d.Categories {
+			words = append(words, cmp.Or(categoryWords[c], c))
+		}
+		s += "; " + strings.Join(words, ", ")
 	}
 	if d.Acceleration != "" || d.Braking != "" {
 		s += fmt.Sprintf("; accelerates %s, brakes %s m/s²", d.Acceleration, d.Braking)

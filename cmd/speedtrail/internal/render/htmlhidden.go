@@ -60,6 +60,18 @@ func (p *page) hiddenTable(r *assessment.Route, list []assessment.Change, n int)
 
 func hiddenAnchor(i int) string { return fmt.Sprintf("h%d", i+1) }
 
+// fillTrack lists the track that only one revision has.
+func (p *page) fillTrack() {
+	for i := range p.C.Routes {
+		r := &p.C.Routes[i]
+		for _, t := range r.Track {
+			id := fmt.Sprintf("t%d", len(p.Track)+1)
+			p.anchors.addTrack(r, t, id)
+			p.Track = append(p.Track, pageTrack{id, r.ID, r.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate, p.profileCommand(r.ID, t)})
+		}
+	}
+}
+
 // profileCommand writes the command that shows the speeds on track that only one
 // revision has: a comparison has none.
 func (p *page) profileCommand(route string, t assessment.TrackPiece) string {

@@ -20,20 +20,29 @@ const (
 
 func (p *textWriter) findings() {
 	groups := findingGroups(p.c)
-	if len(groups) == 0 {
-		return
-	}
 	p.heading("What needs eyes first")
+	if len(groups) == 0 {
+		p.paragraph("", noFinding)
+	}
 	for i, g := range groups {
 		if i > 0 {
 			p.printf("\n")
 		}
-		text, tail := g.commonTail()
+		text, tail := g.commonTail(mostWholeFinding)
 		if len(g.List) > mostWholeFinding && g.List[0].Example != "" {
 			tail += " The trains stand in the report: " + p.command("html", len(g.List), mostHTMLFindings) + "."
 		}
+		many, apart := len(g.List) > mostWholeFinding, false
+		for k := range text {
+			if short, trains := g.trainsApart(text[k]); many && trains != "" {
+				text[k], apart = short, true
+			}
+		}
+		if apart {
+			tail += " Long lists of trains stand in the report: " + p.command("html", len(g.List), mostHTMLFindings) + "."
+		}
 		p.paragraph("", g.title()+". "+g.Why+" "+g.Do+tail)
-		if len(g.List) > mostWholeFinding {
+		if many {
 			p.findingsByRoute(g, text)
 			continue
 		}
