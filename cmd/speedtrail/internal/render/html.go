@@ -63,20 +63,23 @@ type page struct {
 	Stretches      []pageStretch
 	ShownRows      int
 	AllRows        int
-	LeftOut        int // stretches that are not drawn
-	Lines          []pageFile
-	LinesLeft      int
-	Caution        string
-	CSS            template.CSS
-	JS             template.JS
-	Policy         string
-	Routes         []string // of the stretches that are drawn and of the changes that are hidden
-	Undrawn        []string // routes that differ and have none
-	Trains         []string
-	Track          []pageTrack
-	Altered        []pageTrain
-	Times          map[string]string
-	Seen           map[string]string // by train, on which routes it sees a change
+	// Undrawn are the changes outside without a chart, and UndrawnLeft counts those that
+	// have no table either.
+	Undrawn     []pageTable
+	UndrawnLeft int
+	drawn       map[*assessment.Change]bool
+	Lines       []pageFile
+	LinesLeft   int
+	Caution     string
+	CSS         template.CSS
+	JS          template.JS
+	Policy      string
+	Routes      []string // of the stretches that are drawn and of the changes that are hidden
+	Trains      []string
+	Track       []pageTrack
+	Altered     []pageTrain
+	Times       map[string]string
+	Seen        map[string]string // by train, on which routes it sees a change
 
 	Findings       []pageFindings
 	NoFinding      string
@@ -96,7 +99,7 @@ type page struct {
 	Standing string
 	Signed   []pageSigned
 
-	Hidden     []pageHidden
+	Hidden     []pageTable
 	HiddenLeft int
 	// Requests has, for each request, where the page lists its declarations.
 	Requests []string
@@ -175,6 +178,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	p.fillRows()
 	p.fillDeclared()
 	p.fillStretches()
+	p.fillUndrawn()
 	p.fillHidden()
 	p.fillTrack()
 	p.fillFindings()
@@ -188,15 +192,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 			p.Altered = append(p.Altered, pageTrain{t.ID, t.Fate, definitionWords(t.Before), definitionWords(t.After)})
 		}
 	}
-	for _, route := range c.Routes {
-		drawn := slices.ContainsFunc(p.Stretches, func(s pageStretch) bool { return s.Route == route.ID })
-		if drawn || slices.ContainsFunc(p.Hidden, func(h pageHidden) bool { return h.Route == route.ID }) {
-			p.Routes = append(p.Routes, route.ID)
-		}
-		if !drawn && len(route.Changes) > 0 {
-			p.Undrawn = append(p.Undrawn, route.ID)
-		}
-	}
+	p.Routes = p.routesShown()
 	p.fillContents()
 	return executed(w, pageTemplate(), p)
 }
@@ -224,12 +220,12 @@ func (p *page) fillStretches() {
 	for range p.C.Rows() {
 		p.AllRows++
 	}
+	p.drawn = map[*assessment.Change]bool{}
 	list := groups(p.C)
 	inReviewOrder(p.C, list)
 	for i, g := range list {
 		if p.ShownRows >= mostHTMLRows {
-			p.LeftOut++
-			continue
+			break
 		}
 		s := g.drawn
 		r := &p.C.Routes[s.Route]
@@ -256,6 +252,7 @@ func (p *page) fillStretches() {
 				if x := &r.Changes[k]; chart.holds(x) {
 					panel.Rows, _ = p.appendRow(panel.Rows, r, x, g.trainsOf(x))
 					p.anchors.add(r, x, panel.ID, false)
+					p.drawn[x] = true
 					p.ShownRows++
 				}
 			}
@@ -263,7 +260,6 @@ func (p *page) fillStretches() {
 		}
 		p.Stretches = append(p.Stretches, out)
 	}
-	p.LeftOut += p.C.Stretches.LeftOut
 }
 
 // filterIDs joins the ids of trains as the filter compares them: as they are shown.
