@@ -91,6 +91,7 @@ type pointSpeed struct {
 	Direction string   `json:"direction"`
 	Speed     int      `json:"speed_kmh"`
 	Governed  []string `json:"governed_by"`
+	words     []string // the same for a reader, who has the speed beside it
 }
 
 func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string) error {
@@ -234,7 +235,9 @@ func speedsAt(data *schema.Dataset, id, at string, when time.Time) ([]pointSpeed
 			// The last point of a route belongs to its last piece.
 			within := min(s, route.Track.Length()-1)
 			for _, row := range c.Governing(c.Select(profile.ClassOf(t)), t.Length, t.Max, within, within+1, v) {
-				x.Governed = append(x.Governed, c.Source(row, t).String())
+				from := c.Source(row, t)
+				x.Governed = append(x.Governed, from.String())
+				x.words = append(x.words, render.SourcePlace(from.Pos.File, from.Pos.Line, from.Kind))
 			}
 			list = append(list, x)
 		}
@@ -284,7 +287,7 @@ func (a *app) printInForce(w io.Writer, x *inForceAnswer, width int) error {
 			name = ""
 		}
 		indent := strings.Repeat(" ", names+14)
-		governed := render.Hanging(source.Visible(strings.Join(s.Governed, "; ")), max(width, len(indent)+30), indent)
+		governed := render.Hanging(source.Visible(strings.Join(s.words, "; ")), max(width, len(indent)+30), indent)
 		fmt.Fprintf(w, "  %s%s %3d km/h   %s\n", name, strings.Repeat(" ", names-render.Cells(name)), s.Speed, governed)
 	}
 	if len(x.Speeds) > 0 {

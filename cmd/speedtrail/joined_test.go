@@ -68,7 +68,7 @@ func TestJoinedChanges(t *testing.T) {
 		{"rows of their own",
 			map[string]string{"trains.toml": trainsOf("P A 400", "Q C2 400", "S D4 400"), "speed.csv": static("100,no", 100), "axle-load.csv": axle + "0.5,2,80,,,no\n1,2,,80,,no\n1,3,,,80,no\n"},
 			map[string]string{"axle-load.csv": axle},
-			[]string{"km 0.500 to 2.000  80 to 100 km/h +20", "P", "before routes/r1/axle-load.csv:2 axle load A 80", "km 1.000 to 2.000  80 to 100 km/h +20", "Q", "km 1.000 to 3.000  80 to 100 km/h +20", "S"}, "", 3},
+			[]string{"km 0.500 to 2.000  80 to 100 km/h +20", "P", "before routes/r1/axle-load.csv:2 axle load A: 80 km/h", "km 1.000 to 2.000  80 to 100 km/h +20", "Q", "km 1.000 to 3.000  80 to 100 km/h +20", "S"}, "", 3},
 		{"one row, and another that ends it for one train", // 300 m earlier, as are the lengths apart
 			map[string]string{"trains.toml": trainsOf("P A 100", "S D4 400"), "speed.csv": static("100,no", 80), "axle-load.csv": axle + "2.7,3,60,,,no\n"},
 			map[string]string{"speed.csv": static("100,no", 100)},

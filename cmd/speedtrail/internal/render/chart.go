@@ -41,16 +41,17 @@ type mark struct {
 	Aside         bool // of another chart: it is hatched and not labelled
 }
 
-// Measures of a chart in its own units; it scales to the width of the page.
+// Measures of a chart in its own units; it scales to the width of the page. It is no
+// wider than that its letters, of 11 units, are of some 6.6 points on a page of A4.
 const (
-	chartWidth   = 960
+	chartWidth   = 860
 	plotLeft     = 52
-	plotRight    = 944
+	plotRight    = 844
 	plotTop      = 62
-	plotHeight   = 190
+	plotHeight   = 170
 	plotBottom   = plotTop + plotHeight
 	letterWidth  = 6.1 // of the small text, about
-	legendLength = 140 // characters of a legend line
+	legendLength = 126 // characters of a legend line
 )
 
 type drawing struct {
@@ -126,7 +127,7 @@ func segmentData(list []assessment.Segment) string {
 // overview draws the small line above: the whole route and the window on it.
 func (d *drawing) overview() {
 	f := d.f
-	left, right := 300.0, 780.0
+	left, right := 270.0, 700.0
 	at := func(s int64) float64 { return left + (right-left)*float64(s)/float64(f.RouteLength) }
 	d.add(`<text x="%.1f" y="17" text-anchor="end" fill="#555">km %s</text><text x="%.1f" y="17" fill="#555">km %s</text>`, left-8, esc(minus(f.Start)), right+8, esc(minus(f.End)))
 	d.add(`<path d="M%.1f 13H%.1f" stroke="#999" stroke-width="2"/>`, left, right)

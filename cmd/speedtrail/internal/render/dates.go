@@ -43,9 +43,9 @@ func datesSentence(c *assessment.Computed) string {
 	case zone && n == 1:
 		return "The time zone differs in which temporary restrictions are dated: each without a zone of its own begins and ends at another time."
 	case zone:
-		return "The time zone differs in which temporary restrictions are dated, and " + plural(n-1, "row alters", "rows alter") + " when one holds."
+		return "The time zone differs in which temporary restrictions are dated, and " + plural(n-1, "row makes", "rows make") + " one hold at other times."
 	case n > 0:
-		return plural(n, "row alters", "rows alter") + " when a temporary restriction holds."
+		return plural(n, "row makes a temporary restriction", "rows make temporary restrictions") + " hold at other times."
 	}
 	return ""
 }

@@ -32,14 +32,14 @@ func TestOtherDates(t *testing.T) {
 		listed  []string
 	}{
 		{"a note", []assessment.RowDiff{note}, "", nil},
-		{"dates", []assessment.RowDiff{note, dates}, "1 row alters when a temporary restriction holds.", []string{"2 altered: valid_to blank now 2026-03-02"}},
-		{"dates of two", []assessment.RowDiff{dates, dates}, "2 rows alter when a temporary restriction holds.", []string{"valid_to blank now 2026-03-02"}},
-		{"a row cut in two of which one ends", []assessment.RowDiff{cut}, "1 row alters when a temporary restriction holds.", []string{"valid_to blank now 2026-03-02"}},
-		{"a row of another length as well", []assessment.RowDiff{longer}, "1 row alters when a temporary restriction holds.", []string{"valid_to blank now 2026-03-02"}},
+		{"dates", []assessment.RowDiff{note, dates}, "1 row makes a temporary restriction hold at other times.", []string{"2 altered: valid_to blank now 2026-03-02"}},
+		{"dates of two", []assessment.RowDiff{dates, dates}, "2 rows make temporary restrictions hold at other times.", []string{"valid_to blank now 2026-03-02"}},
+		{"a row cut in two of which one ends", []assessment.RowDiff{cut}, "1 row makes a temporary restriction hold at other times.", []string{"valid_to blank now 2026-03-02"}},
+		{"a row of another length as well", []assessment.RowDiff{longer}, "1 row makes a temporary restriction hold at other times.", []string{"valid_to blank now 2026-03-02"}},
 		{"a row of another length", []assessment.RowDiff{shorter}, "", nil},
-		{"a row beside another", []assessment.RowDiff{gone}, "1 row alters when a temporary restriction holds.", []string{"speed 60 now blank"}},
+		{"a row beside another", []assessment.RowDiff{gone}, "1 row makes a temporary restriction hold at other times.", []string{"speed 60 now blank"}},
 		{"the zone", []assessment.RowDiff{zone}, "The time zone differs in which temporary restrictions are dated: each without", []string{`time_zone "UTC" now "Asia/Tokyo"`}},
-		{"both", []assessment.RowDiff{zone, dates}, "The time zone differs in which temporary restrictions are dated, and 1 row alters when one holds.", []string{"time_zone", "valid_to"}},
+		{"both", []assessment.RowDiff{zone, dates}, "The time zone differs in which temporary restrictions are dated, and 1 row makes one hold at other times.", []string{"time_zone", "valid_to"}},
 	} {
 		d := &assessment.Document{Computed: assessment.Computed{Folder: ".", Trains: []assessment.Train{{ID: "T", Fate: "kept"}}, EqualRoutes: 1, Source: []assessment.SourceFile{{Base: "routes/r/temporary.csv", Target: "routes/r/temporary.csv", Rows: c.rows}}}}
 		if v := Verdict(d); !strings.Contains(v, c.verdict) || c.verdict == "" && strings.Contains(v, "restriction") {

@@ -19,7 +19,7 @@ func Doubtful(w io.Writer, d *assessment.Doubtful, s Style) error {
 		}
 	}
 	p := &textWriter{w: w, c: c, s: s, noPage: true}
-	p.findingsBelow("Doubtful data")
+	p.findingsBelow("Doubtful data", "")
 	p.printf("\n")
 	open := d.Open()
 	text := fmt.Sprintf("%s of doubtful data as of %s, %d of them accepted.", plural(len(d.Findings), "finding", "findings"), date(d.At), len(d.Findings)-open)

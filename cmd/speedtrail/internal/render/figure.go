@@ -67,7 +67,7 @@ func governWords(list []assessment.Source) string {
 	parts := make([]string, len(list))
 	for i, s := range list {
 		file := s.File[strings.LastIndexByte(s.File, '/')+1:]
-		parts[i] = fmt.Sprintf("%s %d (%s:%d)", s.Kind, s.Value, file, s.Line)
+		parts[i] = fmt.Sprintf("%s: %d km/h (%s:%d)", kindWords(s.Kind), s.Value, file, s.Line)
 	}
 	return strings.Join(parts, " + ")
 }
@@ -87,7 +87,7 @@ func profileFigure(p Profile) *figure {
 
 // The title of a picture: letters to a line, and its height.
 const (
-	titleLength = 108
+	titleLength = 97
 	titleHeight = 18
 )
 
@@ -105,7 +105,7 @@ func ProfileSVG(w io.Writer, list ...Profile) error {
 		f := profileFigure(p)
 		text := f.svg(fmt.Sprintf("p%d", i))
 		height := 0
-		fmt.Sscanf(text[strings.Index(text, `viewBox="`):], `viewBox="0 0 960 %d"`, &height)
+		fmt.Sscanf(text[strings.Index(text, `viewBox="`):], fmt.Sprintf(`viewBox="0 0 %d %%d"`, chartWidth), &height)
 		// Whole: it says which train it is and which restrictions count.
 		title := Wrap(p.title(), titleLength)
 		parts = append(parts, part{title, text, height})

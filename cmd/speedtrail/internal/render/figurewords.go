@@ -32,7 +32,7 @@ func otherLengths(c *assessment.Computed) string {
 	if routes == nil {
 		return ""
 	}
-	return " The track differs on " + someRoutes(routes) + ": times before and after are not over the same track there."
+	return " The track differs on " + fewNames(routes, mostRoutes) + ": times before and after are not over the same track there."
 }
 
 const crossingWords = "Time from the strike-in point to the crossing for the fastest train that the rows admit, of any category, without length: " +

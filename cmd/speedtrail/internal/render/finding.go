@@ -11,6 +11,9 @@ import (
 	"speedtrail/schema"
 )
 
+// noFinding stands where there is none: silence could be read as a page that is missing.
+const noFinding = "No finding."
+
 // findingGroup is the findings of one kind: why they matter is said once.
 type findingGroup struct {
 	ID, Why, Do string
@@ -41,9 +44,9 @@ func findingGroups(c *assessment.Computed) []findingGroup {
 }
 
 // commonTail gives the texts of the findings. What all of them end with, after a
-// colon, is said once, in tail. Texts about doubtful data have no such end; a colon
-// in one is of the name of a place or train.
-func (g findingGroup) commonTail() (texts []string, tail string) {
+// colon, is said once, in tail, where there are more of them than most. Texts about
+// doubtful data have no such end; a colon in one is of the name of a place or train.
+func (g findingGroup) commonTail(most int) (texts []string, tail string) {
 	for i, f := range g.List {
 		if slices.Contains(doubt.IDs, g.ID) {
 			break
@@ -55,7 +58,7 @@ func (g findingGroup) commonTail() (texts []string, tail string) {
 		}
 		texts, tail = append(texts, text), end
 	}
-	if tail == "" || len(g.List) <= mostWholeFinding {
+	if tail == "" || len(g.List) <= most {
 		texts = nil
 		for _, f := range g.List {
 			texts = append(texts, f.Text)
@@ -73,6 +76,20 @@ func cutTail(text string) (head, tail string) {
 		return text, ""
 	}
 	return text[:i], text[i+2:]
+}
+
+// trainsApart takes the list of the trains out of the text about a change where it is
+// long: what happens there is lost between forty ids.
+func (g findingGroup) trainsApart(text string) (short, trains string) {
+	if g.ID != assessment.Outside && g.ID != assessment.Masked { // brackets of others hold something else
+		return text, ""
+	}
+	short = withoutTrains(text)
+	if short == text {
+		return text, ""
+	}
+	from := strings.Index(text, " (")
+	return short, text[from+2 : from+len(text)-len(short)-1]
 }
 
 func (g findingGroup) title() string {
@@ -181,12 +198,12 @@ func trainRoutes(c *assessment.Computed) map[string]string {
 	}
 	out := map[string]string{}
 	for i, t := range c.Trains {
-		words := someRoutes(t.Routes)
+		words := routesCell(t.Routes)
 		if len(timed[i]) > 0 {
 			if words != "" {
 				words += "; "
 			}
-			words += "running time only: " + someRoutes(timed[i])
+			words += "running time only: " + routesCell(timed[i])
 		}
 		if words != "" {
 			out[t.ID] = words
@@ -195,12 +212,15 @@ func trainRoutes(c *assessment.Computed) map[string]string {
 	return out
 }
 
-// someRoutes lists the first of many routes: where hundreds change, the sections that
-// follow have them all, and a table that lists them has pages without a number.
-func someRoutes(ids []string) string {
-	const most = 8
-	if n := len(ids) - most; n > 1 { // "and 1 more" is no shorter than its name
-		return strings.Join(ids[:most], ", ") + fmt.Sprintf(" and %d more", n)
+// mostRoutes is how many routes a table or sentence names.
+const mostRoutes = 8
+
+// routesCell lists the routes of a train, or counts many: the first eight of forty are
+// much the same for each train, and make lines without a number of a table. The
+// sections that follow have them all.
+func routesCell(ids []string) string {
+	if len(ids) > mostRoutes+1 {
+		return fmt.Sprintf("%d routes", len(ids))
 	}
 	return strings.Join(ids, ", ")
 }

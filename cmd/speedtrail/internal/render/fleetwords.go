@@ -245,12 +245,12 @@ func effectWords(c *assessment.Computed, d *assessment.RowDiff, q *consequence) 
 		}
 		var steps []string
 		if q.raise > 0 {
-			steps = append(steps, "up to "+signed(q.raise))
+			steps = append(steps, byUpTo(true, q.raise))
 		}
 		if q.reduction > 0 {
-			steps = append(steps, "down to "+signed(-q.reduction))
+			steps = append(steps, byUpTo(false, q.reduction))
 		}
-		return fmt.Sprintf("%s, %s km/h (%s)", plural(q.changes, "change", "changes"), strings.Join(steps, ", "), trainNames(c, q.trains, 6))
+		return fmt.Sprintf("%s, %s (%s)", plural(q.changes, "change", "changes"), strings.Join(steps, ", "), trainNames(c, q.trains, 6))
 	case "track":
 		return "track added or removed"
 	case "hidden":

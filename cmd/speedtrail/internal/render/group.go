@@ -142,14 +142,14 @@ func because(before, after []assessment.Source) []string {
 		if after[0].Line != before[0].Line {
 			lines += " now " + fmt.Sprint(after[0].Line)
 		}
-		return []string{fmt.Sprintf("%s:%s %s, %d now %d", after[0].File, lines, after[0].Kind, before[0].Value, after[0].Value)}
+		return []string{fmt.Sprintf("%s:%s %s: %d now %d km/h", after[0].File, lines, kindWords(after[0].Kind), before[0].Value, after[0].Value)}
 	}
 	var list []string
 	for _, s := range before {
-		list = append(list, "before "+s.Text())
+		list = append(list, "before "+sourceWords(s))
 	}
 	for _, s := range after {
-		list = append(list, "after "+s.Text())
+		list = append(list, "after "+sourceWords(s))
 	}
 	return list
 }

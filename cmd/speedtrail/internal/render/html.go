@@ -2,6 +2,7 @@ package render
 
 import (
 	"bytes"
+	"cmp"
 	"crypto/sha256"
 	_ "embed" // the page's parts
 	"encoding/base64"
@@ -35,8 +36,8 @@ var pageJS string
 // Every start of the program would pay for what is parsed here.
 var pageTemplate = sync.OnceValue(func() *template.Template {
 	return template.Must(template.New("page").Funcs(template.FuncMap{
-		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible,
-		"lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords, "unchanged": unchangedWords,
+		"km": km, "metres": metres, "signed": signed, "minus": minus, "short": short, "visible": source.Visible, "shown": func(s string) string { return tied(source.Visible(s)) },
+		"trainName": trainName, "lengthCell": lengthCell, "stepCell": stepCell, "directionWords": directionWords, "counted": countedWords, "unchanged": unchangedWords,
 		"otherLengths": func(c *assessment.Computed) string { return source.Visible(otherLengths(c)) },
 		"link":         func(text, id string) pageLink { return pageLink{text, id} },
 		"step":         func(p page, row pageRow) pageStep { return pageStep{row, p.C.Options.NoRequests} },
@@ -62,22 +63,26 @@ type page struct {
 	Stretches      []pageStretch
 	ShownRows      int
 	AllRows        int
-	LeftOut        int // stretches that are not drawn
-	Lines          []pageFile
-	LinesLeft      int
-	Caution        string
-	CSS            template.CSS
-	JS             template.JS
-	Policy         string
-	Routes         []string // of the stretches that are drawn and of the changes that are hidden
-	Undrawn        []string // routes that differ and have none
-	Trains         []string
-	Track          []pageTrack
-	Altered        []pageTrain
-	Times          map[string]string
-	Seen           map[string]string // by train, on which routes it sees a change
+	// Undrawn are the changes outside without a chart, and UndrawnLeft counts those that
+	// have no table either.
+	Undrawn     []pageTable
+	UndrawnLeft int
+	drawn       map[*assessment.Change]bool
+	Lines       []pageFile
+	LinesLeft   int
+	Caution     string
+	CSS         template.CSS
+	JS          template.JS
+	Policy      string
+	Routes      []string // of the stretches that are drawn and of the changes that are hidden
+	Trains      []string
+	Track       []pageTrack
+	Altered     []pageTrain
+	Times       map[string]string
+	Seen        map[string]string // by train, on which routes it sees a change
 
 	Findings       []pageFindings
+	NoFinding      string
 	Acceptances    []string
 	Reconciliation string
 	Declared       []pageDeclaration
@@ -94,7 +99,7 @@ type page struct {
 	Standing string
 	Signed   []pageSigned
 
-	Hidden     []pageHidden
+	Hidden     []pageTable
 	HiddenLeft int
 	// Requests has, for each request, where the page lists its declarations.
 	Requests []string
@@ -103,6 +108,7 @@ type page struct {
 	Rows, Quiet                                []pageSourceRow
 	RowsLeft, QuietLeft                        int
 	RunsLeft, CurvesLeft, ShortLeft, FleetLeft int
+	RunParts                                   bool // some running time is made of several
 }
 
 type pageStretch struct {
@@ -146,7 +152,7 @@ type pageLine struct {
 	Number, Op, Text, Class string
 }
 
-type pageTrack struct{ Route, Name, Direction, From, To, Length, Fate, Command string }
+type pageTrack struct{ ID, Route, Name, Direction, From, To, Length, Fate, Command string }
 
 type pageTrain struct{ ID, Fate, Before, After string }
 
@@ -154,7 +160,7 @@ type pageTrain struct{ ID, Fate, Before, After string }
 func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	c := &d.Computed
 	p := page{
-		D: d, C: c, R: r, Verdict: Verdict(d), Caution: Caution, State: "not recorded",
+		D: d, C: c, R: r, Verdict: tied(source.Visible(Verdict(d))), Caution: Caution, NoFinding: noFinding, State: "not recorded",
 		Title: source.Visible("Change of route speed data: " + c.Dataset),
 		Base:  revisionName(d.Named.Base, d.Named.BaseName, c.Base), Target: revisionName(d.Named.Target, d.Named.TargetName, c.Target),
 		JS: template.JS(pageJS), Unchecked: uncheckedWords(c), Limits: limitWords(c),
@@ -172,7 +178,9 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	p.fillRows()
 	p.fillDeclared()
 	p.fillStretches()
+	p.fillUndrawn()
 	p.fillHidden()
+	p.fillTrack()
 	p.fillFindings()
 	p.fillSigned()
 	p.fillFleet()
@@ -184,18 +192,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 			p.Altered = append(p.Altered, pageTrain{t.ID, t.Fate, definitionWords(t.Before), definitionWords(t.After)})
 		}
 	}
-	for _, route := range c.Routes {
-		drawn := slices.ContainsFunc(p.Stretches, func(s pageStretch) bool { return s.Route == route.ID })
-		if drawn || slices.ContainsFunc(p.Hidden, func(h pageHidden) bool { return h.Route == route.ID }) {
-			p.Routes = append(p.Routes, route.ID)
-		}
-		if !drawn && len(route.Changes) > 0 {
-			p.Undrawn = append(p.Undrawn, route.ID)
-		}
-		for _, t := range route.Track {
-			p.Track = append(p.Track, pageTrack{route.ID, route.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate, p.profileCommand(route.ID, t)})
-		}
-	}
+	p.Routes = p.routesShown()
 	p.fillContents()
 	return executed(w, pageTemplate(), p)
 }
@@ -223,12 +220,12 @@ func (p *page) fillStretches() {
 	for range p.C.Rows() {
 		p.AllRows++
 	}
+	p.drawn = map[*assessment.Change]bool{}
 	list := groups(p.C)
 	inReviewOrder(p.C, list)
 	for i, g := range list {
 		if p.ShownRows >= mostHTMLRows {
-			p.LeftOut++
-			continue
+			break
 		}
 		s := g.drawn
 		r := &p.C.Routes[s.Route]
@@ -255,6 +252,7 @@ func (p *page) fillStretches() {
 				if x := &r.Changes[k]; chart.holds(x) {
 					panel.Rows, _ = p.appendRow(panel.Rows, r, x, g.trainsOf(x))
 					p.anchors.add(r, x, panel.ID, false)
+					p.drawn[x] = true
 					p.ShownRows++
 				}
 			}
@@ -262,7 +260,6 @@ func (p *page) fillStretches() {
 		}
 		p.Stretches = append(p.Stretches, out)
 	}
-	p.LeftOut += p.C.Stretches.LeftOut
 }
 
 // filterIDs joins the ids of trains as the filter compares them: as they are shown.
@@ -341,6 +338,22 @@ func fileName(f assessment.SourceFile) string {
 	return f.Target
 }
 
+// categoryWords are the categories of trains.toml in the words of the whole fleet.
+var categoryWords = map[string]string{"freight_p": "freight braked in P", "freight_g": "freight braked in G"}
+
+// trainName gives the name of a train, for those who do not know its id; empty for
+// one that says no more.
+func trainName(t assessment.Train) string {
+	d := t.After
+	if d == nil {
+		d = t.Before
+	}
+	if d == nil || d.Name == t.ID {
+		return ""
+	}
+	return source.Visible(d.Name)
+}
+
 // definitionWords words a train.
 func definitionWords(d *assessment.Definition) string {
 	if d == nil {
@@ -348,7 +361,11 @@ func definitionWords(d *assessment.Definition) string {
 	}
 	s := fmt.Sprintf("%s; cant deficiency %d mm; axle load %s; %s m; %d km/h", d.Name, d.CantDeficiency, d.AxleLoad, metres(d.Length), d.MaxSpeed)
 	if len(d.Categories) > 0 {
-		s += "; " + strings.Join(d.Categories, ", ")
+		var words []string
+		for _, c := range d.Categories {
+			words = append(words, cmp.Or(categoryWords[c], c))
+		}
+		s += "; " + strings.Join(words, ", ")
 	}
 	if d.Acceleration != "" || d.Braking != "" {
 		s += fmt.Sprintf("; accelerates %s, brakes %s m/s²", d.Acceleration, d.Braking)

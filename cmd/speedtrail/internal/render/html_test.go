@@ -75,9 +75,9 @@ func TestPageLinks(t *testing.T) {
 		}
 		name := html.EscapeString(id)
 		for what, link := range map[string]string{
-			"the declared change of a finding": `<a href="#s1-1">` + name + ` nominal, km 1.000 to 2.100</a>`,
-			"the hidden change of a finding":   `<a href="#h1">` + name + ` nominal, km 4.000 to 5.000</a>`,
-			"the row":                          `<a href="#r1">routes/r/speed.csv:2 basic, 60 now 80</a>`,
+			"the declared change of a finding": `<a href="#s1-1">` + name + " nominal, km\u00a01.000 to 2.100</a>",
+			"the hidden change of a finding":   `<a href="#h1">` + name + " nominal, km\u00a04.000 to 5.000</a>",
+			"the row":                          `<a href="#r1">routes/r/speed.csv:2 basic: 60 now 80` + "\u00a0km/h</a>",
 			"the declaration":                  `<a href="#d2">` + name + `</a></td>`,
 			"the request":                      `<b><a href="#d1">` + name + `</a></b>`,
 			"a section":                        `<a href="#hidden">Hidden today</a>`,
@@ -103,7 +103,7 @@ func TestPageHidden(t *testing.T) {
 	s := pageOf(t, d)
 	_, s, _ = strings.Cut(s, `<section id="changes">`)
 	s, _, _ = strings.Cut(s, `<section id="declared">`)
-	for _, want := range []string{"<option>R1</option>", `data-trains="R1&#10;T2"`, "<td>4.000</td><td>5.000</td><td>1000</td><td>60</td><td>80</td><td><b>+20</b>", "routes/r/speed.csv:2 basic, 60 now 80", `see what temporary restrictions <a href="#hidden">hide</a>`} {
+	for _, want := range []string{"<option>R1</option>", `data-trains="R1&#10;T2"`, "<td>4.000</td><td>5.000</td><td>1000</td><td>60</td><td>80</td><td><b>+20</b>", "routes/r/speed.csv:2 basic: 60 now 80\u00a0km/h", `see what temporary restrictions <a href="#hidden">hide</a>`} {
 		if !strings.Contains(html.UnescapeString(s), html.UnescapeString(want)) {
 			t.Errorf("no %s", want)
 		}

@@ -1,6 +1,7 @@
 package render
 
 import (
+	"fmt"
 	"strings"
 
 	"speedtrail/history/assessment"
@@ -11,13 +12,13 @@ import (
 const mostHTMLFindings = 500
 
 type pageFindings struct {
-	Title, Why, Do string
-	Accepted       bool
-	List           []pageFinding
-	More           int
+	ID, Title, Why, Do string
+	Accepted           bool
+	List               []pageFinding
+	More               int
 }
 
-type pageFinding struct{ Place, Link, Text, Row, Accepted, Example string }
+type pageFinding struct{ Place, Link, Text, Trains, Row, Accepted, Example string }
 
 type pageDeclaration struct {
 	ID, Request, Row, Route, Direction, From, To, Effect, Trains, Seen string
@@ -44,14 +45,16 @@ type pageSourceRow struct {
 }
 
 func (p *page) fillFindings() {
-	for _, g := range findingGroups(p.C) {
-		out := pageFindings{Title: g.title(), Why: g.Why, Do: g.Do, Accepted: g.Open == 0}
+	for n, g := range findingGroups(p.C) {
+		text, tail := g.commonTail(1)
+		out := pageFindings{ID: fmt.Sprintf("f%d", n+1), Title: g.title(), Why: g.Why, Do: source.Visible(g.Do + tail), Accepted: g.Open == 0}
 		for i, f := range g.List {
 			if i == mostHTMLFindings {
 				out.More = len(g.List) - i
 				break
 			}
-			out.List = append(out.List, pageFinding{source.Visible(findingPlace(f)), p.anchors.of(f), source.Visible(f.Text), source.Visible(findingRow(f)), source.Visible(f.Accepted), source.VisibleLines(f.Example)})
+			what, trains := g.trainsApart(text[i])
+			out.List = append(out.List, pageFinding{source.Visible(findingPlace(f)), p.anchors.of(f), tied(source.Visible(what)), source.Visible(trains), source.Visible(findingRow(f)), source.Visible(f.Accepted), source.VisibleLines(f.Example)})
 		}
 		p.Findings = append(p.Findings, out)
 	}
@@ -89,7 +92,7 @@ func (p *page) fillFleet() {
 			p.FleetLeft = len(p.C.Fleet) - i
 			break
 		}
-		p.Fleet = append(p.Fleet, pageFleet{source.Visible(fleetTitle(f)), fleetStatement(f), fleetLines(f)})
+		p.Fleet = append(p.Fleet, pageFleet{source.Visible(fleetTitle(f)), tied(fleetStatement(f)), tiedLines(fleetLines(f))})
 	}
 }
 
@@ -102,23 +105,24 @@ func (p *page) fillFigures() {
 		run := pageRun{Route: r.Route, Direction: r.Direction, Train: r.Train, Before: clock(r.Before), After: clock(r.After), Difference: seconds(r.After - r.Before)}
 		for _, part := range r.Parts {
 			if len(r.Parts) > 1 && part.Gain != 0 {
-				run.Parts = append(run.Parts, "km "+minus(part.From)+" to "+minus(part.To)+": "+seconds(-part.Gain))
+				run.Parts = append(run.Parts, tied("km "+minus(part.From)+" to "+minus(part.To))+": "+seconds(-part.Gain))
+				p.RunParts = true
 			}
 		}
 		p.Runs = append(p.Runs, run)
 	}
 	for _, x := range f.Crossings {
-		p.Crossings = append(p.Crossings, pageLineItem{source.Visible(x.Route + " " + x.Direction + ", km " + minus(x.Km) + " " + x.Name), crossingLine(x), x.Warning > x.After})
+		p.Crossings = append(p.Crossings, pageLineItem{source.Visible(x.Route + " " + x.Direction + ", km " + minus(x.Km) + " " + x.Name), tied(crossingLine(x)), x.Warning > x.After})
 	}
 	curves, more := bounded(curvesOfInterest(f.Curves))
 	p.CurvesLeft = more
 	for _, x := range curves {
-		p.Curves = append(p.Curves, pageLineItem{source.Visible(x.Route + " " + directionWords(x.Direction) + ", km " + minus(x.From) + " to " + minus(x.To) + " (" + trainNames(p.C, x.Trains, 0) + ")"), source.Visible(curveLine(x)), x.Over})
+		p.Curves = append(p.Curves, pageLineItem{source.Visible(x.Route + " " + directionWords(x.Direction) + ", km " + minus(x.From) + " to " + minus(x.To) + " (" + trainNames(p.C, x.Trains, 0) + ")"), tied(source.Visible(curveLine(x))), x.Over})
 	}
 	short, more := bounded(f.Short)
 	p.ShortLeft = more
 	for _, x := range short {
-		p.Short = append(p.Short, pageLineItem{source.Visible(x.Route + " " + x.Direction + ", km " + minus(x.From) + " to " + minus(x.To) + ", " + x.Train), shortLine(x), false})
+		p.Short = append(p.Short, pageLineItem{source.Visible(x.Route + " " + x.Direction + ", km " + minus(x.From) + " to " + minus(x.To) + ", " + x.Train), tied(shortLine(x)), false})
 	}
 }
 

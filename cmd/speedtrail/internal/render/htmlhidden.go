@@ -9,9 +9,9 @@ import (
 	"speedtrail/schema/source"
 )
 
-// pageHidden is the changes of one direction of a route that temporary
-// restrictions hide today.
-type pageHidden struct {
+// pageTable is a table of changes of one direction of a route without a chart: of
+// those that temporary restrictions hide today, or of others that are not drawn.
+type pageTable struct {
 	Route, RouteName, Direction string
 	TrainIDs                    string // joined by a line feed, for the filter
 	Rows                        []pageRow
@@ -31,7 +31,11 @@ func (p *page) fillHidden() {
 			room := min(n, mostHTMLRows-shown)
 			p.HiddenLeft += n - room
 			if room > 0 {
-				p.Hidden = append(p.Hidden, p.hiddenTable(r, list[:room], shown))
+				hidden := make([]*assessment.Change, room)
+				for k := range hidden {
+					hidden[k] = &list[k]
+				}
+				p.Hidden = append(p.Hidden, p.table(r, hidden, "h", shown))
 				shown += room
 			}
 			list = list[n:]
@@ -39,26 +43,37 @@ func (p *page) fillHidden() {
 	}
 }
 
-// hiddenTable arranges the changes of one direction; n is how many the page has so
-// far.
-func (p *page) hiddenTable(r *assessment.Route, list []assessment.Change, n int) pageHidden {
-	out := pageHidden{Route: r.ID, RouteName: r.Name, Direction: list[0].Direction}
+// table arranges the changes of one direction; n is how many changes the page has so
+// far in tables of the kind, h for hidden.
+func (p *page) table(r *assessment.Route, list []*assessment.Change, kind string, n int) pageTable {
+	out := pageTable{Route: r.ID, RouteName: r.Name, Direction: list[0].Direction}
+	anchor := func(i int) string { return fmt.Sprintf("%s%d", kind, n+i+1) }
 	var trains []int
-	for k := range list {
+	for _, x := range list {
 		var at int
-		out.Rows, at = p.appendRow(out.Rows, r, &list[k], list[k].Trains)
-		p.anchors.add(r, &list[k], hiddenAnchor(n+at), true)
-		trains = append(trains, list[k].Trains...)
+		out.Rows, at = p.appendRow(out.Rows, r, x, x.Trains)
+		p.anchors.add(r, x, anchor(at), kind == "h")
+		trains = append(trains, x.Trains...)
 	}
 	for k := range out.Rows {
-		out.IDs = append(out.IDs, hiddenAnchor(n+k))
+		out.IDs = append(out.IDs, anchor(k))
 	}
 	slices.Sort(trains)
 	out.TrainIDs = filterIDs(p.C, slices.Compact(trains))
 	return out
 }
 
-func hiddenAnchor(i int) string { return fmt.Sprintf("h%d", i+1) }
+// fillTrack lists the track that only one revision has.
+func (p *page) fillTrack() {
+	for i := range p.C.Routes {
+		r := &p.C.Routes[i]
+		for _, t := range r.Track {
+			id := fmt.Sprintf("t%d", len(p.Track)+1)
+			p.anchors.addTrack(r, t, id)
+			p.Track = append(p.Track, pageTrack{id, r.ID, r.Name, t.Direction, minus(t.From), minus(t.To), metres(t.Length), t.Fate, p.profileCommand(r.ID, t)})
+		}
+	}
+}
 
 // profileCommand writes the command that shows the speeds on track that only one
 // revision has: a comparison has none.

@@ -20,17 +20,27 @@ type anchors struct {
 	rows         int
 }
 
-// changeAnchor is a change that stands in a table of the page.
+// changeAnchor is a change, or track that only one revision has, that stands in a
+// table of the page.
 type changeAnchor struct {
 	direction, from, to, id string
 	hidden                  bool // by temporary restrictions
 }
 
 func (a *anchors) add(r *assessment.Route, x *assessment.Change, id string, hidden bool) {
+	a.put(r.ID, changeAnchor{x.Direction, x.From, x.To, id, hidden})
+}
+
+// addTrack adds track that only one revision has.
+func (a *anchors) addTrack(r *assessment.Route, t assessment.TrackPiece, id string) {
+	a.put(r.ID, changeAnchor{t.Direction, t.From, t.To, id, false})
+}
+
+func (a *anchors) put(route string, x changeAnchor) {
 	if a.changes == nil {
 		a.changes = map[string][]changeAnchor{}
 	}
-	a.changes[r.ID] = append(a.changes[r.ID], changeAnchor{x.Direction, x.From, x.To, id, hidden})
+	a.changes[route] = append(a.changes[route], x)
 }
 
 // addRow numbers a source row that is listed.
@@ -144,7 +154,7 @@ func (p *page) fillContents() {
 		text, id string
 		shown    bool
 	}{
-		{"What needs eyes first", "findings", len(p.Findings)+len(p.Acceptances)+len(p.Unchecked) > 0},
+		{"What needs eyes first", "findings", true},
 		{"Trains", "trains", true},
 		{"Reference trains that differ", "altered", len(p.Altered) > 0},
 		{"Track that only one revision has", "track", len(p.Track) > 0},

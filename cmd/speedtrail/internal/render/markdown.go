@@ -12,10 +12,20 @@ import (
 
 // md escapes what Markdown or HTML in it could take for more than text, and what some
 // readers of Markdown take for formulas, in which blanks and digits stand otherwise.
+// Brackets and signs that are text where they stand keep their look in the file itself.
 func md(s string) string {
 	var b strings.Builder
-	for _, r := range source.Visible(s) {
-		if strings.ContainsRune("\\`*_{}[]()<>#+!|~&$^", r) {
+	before := ' '
+	for i, r := range source.Visible(s) {
+		escape := strings.ContainsRune("\\`*_{}[]<>#|~&$^", r)
+		switch r {
+		case '(': // of a link
+			escape = before == ']'
+		case '+', '-': // of a list
+			escape = i == 0
+		}
+		before = r
+		if escape {
 			if r == '<' || r == '>' || r == '&' {
 				b.WriteString(map[rune]string{'<': "&lt;", '>': "&gt;", '&': "&amp;"}[r])
 				continue
@@ -36,6 +46,7 @@ func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 	m.add("\n## Verdict\n\n%s\n", md(Verdict(d)))
 	m.findings()
 	m.trains()
+	m.track()
 	m.changes()
 	m.declared()
 	m.fleet()
@@ -62,43 +73,52 @@ func (m *markdown) title(d *assessment.Document, r Record) {
 		state = fmt.Sprintf("assessment %d, %s%s", r.Number, r.State, reviewWords(r))
 	}
 	m.add("# Change of route speed data: %s (%s)\n\n", md(titled(c.Dataset)), state)
-	m.add("| | |\n|---|---|\n| base | %s |\n| target | %s |\n", md(revisionName(d.Named.Base, d.Named.BaseName, c.Base)+details(c.Base)), md(revisionName(d.Named.Target, d.Named.TargetName, c.Target)+details(c.Target)))
+	line := func(what, words string) { m.add("- %s: %s\n", what, words) }
+	line("base", md(revisionName(d.Named.Base, d.Named.BaseName, c.Base)+details(c.Base)))
+	line("target", md(revisionName(d.Named.Target, d.Named.TargetName, c.Target)+details(c.Target)))
 	if c.Folder != "." {
-		m.add("| folder | %s |\n", md(c.Folder))
+		line("folder", md(c.Folder))
 	}
 	if len(c.Preparers) > 0 {
-		m.add("| prepared by | %s |\n", md(people(c.Preparers)+countedWords(c)))
+		line("prepared by", md(people(c.Preparers)+countedWords(c)))
 	}
 	for _, q := range c.Requests {
-		m.add("| request %s | %s |\n", md(q.ID), md(q.Title))
+		line("request "+md(q.ID), md(q.Title))
 	}
 	if r.Digest != "" {
-		m.add("| digest | %s |\n", r.Digest)
+		line("digest", r.Digest)
 	}
 }
 
 func (m *markdown) findings() {
 	c := m.c
-	if groups := findingGroups(c); len(groups) > 0 {
-		m.add("\n## Findings\n")
-		for _, g := range groups {
-			m.add("\n**%s**: %s %s\n\n", md(g.title()), md(g.Why), md(g.Do))
-			for i, f := range g.List {
-				if i == mostHTMLFindings {
-					m.add("- and %d more, in the JSON form\n", len(g.List)-i)
-					break
-				}
-				m.add("- %s", md(joinPlace(findingPlace(f), f.Text)))
-				if f.Row != "" {
-					m.add(" (%s)", md(findingRow(f)))
-				}
-				if f.Accepted != "" {
-					m.add(" Accepted: %s", md(f.Accepted))
-				}
-				m.add("\n")
-				if f.Example != "" {
-					m.add("\n%s\n", shifted(source.VisibleLines(f.Example), "      "))
-				}
+	m.add("\n## What needs eyes first\n")
+	groups := findingGroups(c)
+	if len(groups) == 0 {
+		m.add("\n%s\n", noFinding)
+	}
+	for _, g := range groups {
+		text, tail := g.commonTail(1)
+		m.add("\n### %s\n\n%s\n\n", md(g.title()), md(g.Why+" "+g.Do+tail))
+		for i, f := range g.List {
+			if i == mostHTMLFindings {
+				m.add("- and %d more, in the JSON form\n", len(g.List)-i)
+				break
+			}
+			m.add("- ")
+			if place := findingPlace(f); place != "" {
+				m.add("**%s**: ", md(place))
+			}
+			m.add("%s", md(text[i]))
+			if f.Row != "" {
+				m.add(" (%s)", md(findingRow(f)))
+			}
+			if f.Accepted != "" {
+				m.add(" Accepted: %s", md(f.Accepted))
+			}
+			m.add("\n")
+			if f.Example != "" {
+				m.add("\n%s\n", shifted(source.VisibleLines(f.Example), "      "))
 			}
 		}
 	}
@@ -109,47 +129,66 @@ func (m *markdown) findings() {
 
 func (m *markdown) trains() {
 	c := m.c
-	m.add("\n## Trains\n\n| train | raised, km | lowered, km | largest raise, km/h | largest reduction, km/h | running time, s | routes |\n|---|--:|--:|--:|--:|--:|---|\n")
+	m.add("\n## Trains\n")
 	times, routes := runningTimes(c), trainRoutes(c)
+	var rows [][]string
 	for _, t := range c.Trains {
+		name := md(t.ID)
+		if t.Fate != "kept" {
+			name += " (" + t.Fate + ")"
+		}
 		if routes[t.ID] == "" {
-			m.add("| %s | | | | | | %s |\n", md(t.ID), unchangedWords(c, t))
+			rows = append(rows, []string{name, "", "", "", "", "", unchangedWords(c, t)})
 			continue
 		}
-		m.add("| %s | %s | %s | %s | %s | %s | %s |\n", md(t.ID), lengthCell(t.Raised), lengthCell(t.Lowered), stepCell(t.LargestRaise), stepCell(-t.LargestReduction), times[t.ID], md(routes[t.ID]))
+		rows = append(rows, []string{name, lengthCell(t.Raised), lengthCell(t.Lowered), stepCell(t.LargestRaise), stepCell(-t.LargestReduction), times[t.ID], md(routes[t.ID])})
 	}
-	if words := otherLengths(c); words != "" {
-		m.add("\n%s\n", md(strings.TrimSpace(words)))
+	m.table([]string{"train", ">raised, km", ">lowered, km", ">largest raise, km/h", ">largest reduction, km/h", ">running time, s", "routes"}, rows)
+	m.add("\nLengths and running times (minus: faster) are added up over both directions of travel.%s\n", md(otherLengths(c)))
+}
+
+// track lists the track that one revision only has.
+func (m *markdown) track() {
+	heading := "\n## Track that only one revision has\n\n"
+	for i := range m.c.Routes {
+		route := &m.c.Routes[i]
+		for _, t := range route.Track {
+			m.add("%s- %s %s: km %s to %s %s (%s m)\n", heading, md(route.ID), t.Direction, minus(t.From), minus(t.To), t.Fate, metres(t.Length))
+			heading = ""
+		}
 	}
 }
 
-// changes lists the speed changes, and the track that one revision only has.
+// changes lists the speed changes.
 func (m *markdown) changes() {
 	c := m.c
+	m.add("\n## Changed stretches\n")
 	shown, all := 0, 0
 	for i := range c.Routes {
 		route := &c.Routes[i]
-		for _, t := range route.Track {
-			m.add("\n%s %s: km %s to %s %s (%s m)\n", md(route.ID), t.Direction, minus(t.From), minus(t.To), t.Fate, metres(t.Length))
-		}
+		var rows [][]string
 		for k := range route.Changes {
 			x := &route.Changes[k]
-			if all++; shown == mostHTMLRows {
-				continue
+			if all++; shown < mostHTMLRows {
+				shown++
+				step := signed(x.After - x.Before)
+				if x.RunOut {
+					step += " run-out"
+				}
+				rows = append(rows, []string{minus(x.From), minus(x.To), metres(x.Length), itoa(x.Before), itoa(x.After), step, md(trainNames(c, x.Trains, 0)), md(declaredWords(c, route, x.Pieces)),
+					md(strings.Join(because(route.Sources[x.BeforeSource], route.Sources[x.AfterSource]), "; "))})
 			}
-			shown++
-			if k == 0 || x.Direction != route.Changes[k-1].Direction {
-				m.add("\n## %s %s, %s\n\n| from, km | to, km | length, m | before, km/h | after, km/h | step | trains | before by | after by | declared by |\n|--:|--:|--:|--:|--:|--:|---|---|---|---|\n", md(route.ID), md(route.Name), x.Direction)
+			if len(rows) > 0 && (k+1 == len(route.Changes) || route.Changes[k+1].Direction != x.Direction) {
+				m.add("\n### %s %s, %s\n", md(route.ID), md(route.Name), x.Direction)
+				m.table([]string{">from, km", ">to, km", ">length, m", ">before, km/h", ">after, km/h", "step, km/h", "trains", "declared by", "because of"}, rows)
+				rows = nil
 			}
-			step := signed(x.After - x.Before)
-			if x.RunOut {
-				step += " run-out"
-			}
-			m.add("| %s | %s | %s | %d | %d | %s | %s | %s | %s | %s |\n", minus(x.From), minus(x.To), metres(x.Length), x.Before, x.After, step,
-				md(trainNames(c, x.Trains, 0)), md(assessment.SourceText(route.Sources[x.BeforeSource])), md(assessment.SourceText(route.Sources[x.AfterSource])), md(declaredWords(c, route, x.Pieces)))
 		}
 	}
-	if all > shown {
+	switch {
+	case all == 0:
+		m.add("\nNone.\n")
+	case all > shown:
 		m.add("\n%d more changes are not shown here; --format csv lists every change.\n", all-shown)
 	}
 }

@@ -9,16 +9,17 @@ func (m *markdown) declared() {
 	c := m.c
 	m.add("\n## Declared against observed\n\n%s\n", md(reconciliation(c)))
 	if len(c.Requests) > 0 {
-		m.add("\n| request | route | direction | from, km | to, km | effect | trains | seen |\n|---|---|---|--:|--:|---|---|---|\n")
+		var rows [][]string
 		for _, q := range c.Requests {
 			for _, d := range q.Declares {
 				seen := seenWords(d)
 				if c.Options.NoRequests {
 					seen = "not looked at"
 				}
-				m.add("| %s | %s | %s | %s | %s | %s | %s | %s |\n", md(q.ID), md(d.Route), d.Direction, minus(d.From), minus(d.To), d.Effect, md(declaredTrains(d)), md(seen))
+				rows = append(rows, []string{md(q.ID), md(d.Route), d.Direction, minus(d.From), minus(d.To), d.Effect, md(declaredTrains(d)), md(seen)})
 			}
 		}
+		m.table([]string{"request", "route", "direction", ">from, km", ">to, km", "effect", "trains", "seen, over both directions"}, rows)
 	}
 }
 
@@ -34,7 +35,7 @@ func (m *markdown) fleet() {
 			m.add("\n%d more accounts, one a route and direction, stand in the JSON form.\n", len(c.Fleet)-i)
 			break
 		}
-		m.add("\n%s: **%s**\n\n", md(fleetTitle(f)), md(fleetStatement(f)))
+		m.add("\n### %s\n\n**%s**\n\n", md(fleetTitle(f)), md(fleetStatement(f)))
 		for _, l := range fleetLines(f) {
 			mark := ""
 			if !l.Represented {
@@ -51,9 +52,12 @@ func (m *markdown) figures() {
 	if len(f.Crossings)+len(f.Curves)+len(f.Short)+len(f.Runs) > 0 {
 		m.add("\n## Figures\n")
 	}
-	list := func(title string, lines []string, more int, what string) {
+	list := func(title, words string, lines []string, more int, what string) {
 		if len(lines) > 0 {
-			m.add("\n%s\n\n", md(title))
+			m.add("\n### %s\n\n", title)
+		}
+		if len(lines) > 0 && words != "" {
+			m.add("%s\n\n", md(words))
 		}
 		for _, line := range lines {
 			m.add("- %s\n", md(line))
@@ -74,15 +78,17 @@ func (m *markdown) figures() {
 	for _, x := range shownShort {
 		short = append(short, x.Route+" "+x.Direction+", km "+minus(x.From)+" to "+minus(x.To)+", "+x.Train+": "+shortLine(x))
 	}
-	list(crossingWords, crossings, 0, "")
-	list(curveWords, curves, moreCurves, "curves")
-	list("Raises too short to be used.", short, moreShort, "raises")
+	list("Level crossings", crossingWords, crossings, 0, "")
+	list("Curves", curveWords, curves, moreCurves, "curves")
+	list("Raises too short to be used", "", short, moreShort, "raises")
 	if len(f.Runs) > 0 {
-		m.add("\n%s\n\n| route | direction | train | before, min:s | after, min:s | difference, s |\n|---|---|---|--:|--:|--:|\n", md(motionWords(c)))
+		m.add("\n### Running times\n\n%s\n", md(motionWords(c)))
 		runs, more := bounded(f.Runs)
+		var rows [][]string
 		for _, r := range runs {
-			m.add("| %s | %s | %s | %s | %s | %s |\n", md(r.Route), r.Direction, md(r.Train), clock(r.Before), clock(r.After), seconds(r.After-r.Before))
+			rows = append(rows, []string{md(r.Route), r.Direction, md(r.Train), clock(r.Before), clock(r.After), seconds(r.After - r.Before)})
 		}
+		m.table([]string{"route", "direction", "train", ">before, min:s", ">after, min:s", ">difference, s"}, rows)
 		if more > 0 {
 			m.add("\n%d more running times stand in the JSON form.\n", more)
 		}

@@ -73,7 +73,7 @@ func ProfileText(w io.Writer, s Style, list ...Profile) error {
 			lines := make([]string, len(piece.Sources))
 			for n, src := range piece.Sources {
 				// Wrapped here: the table would run the sources together.
-				lines[n] = Hanging(source.Visible(src.Text()), max(30, s.Width-before), "  ")
+				lines[n] = Hanging(source.Visible(SourcePlace(src.File, src.Line, src.Kind)), max(minWidth, s.Width-before), "  ")
 			}
 			t.AppendRow(table.Row{from[k], to[k], length[k], piece.Speed, strings.Join(lines, "\n")})
 		}
@@ -208,11 +208,15 @@ func plainTable() table.Writer {
 	return t
 }
 
-// tidy takes the blanks from the ends of lines.
+// tidy takes the blanks from the ends of lines, and from the rule below the head of a
+// table what stands below such blanks: it would be wider than the terminal.
 func tidy(s string) string {
 	lines := strings.Split(s, "\n")
 	for i, line := range lines {
 		lines[i] = strings.TrimRight(line, " ")
+		if strings.Trim(line, "\u2500") == "" {
+			lines[i] = strings.TrimSuffix(line, "\u2500\u2500")
+		}
 	}
 	return strings.Join(lines, "\n")
 }

@@ -122,6 +122,11 @@ func trainNames(c *assessment.Computed, trains []int, most int) string {
 	for _, i := range trains {
 		names = append(names, c.Trains[i].ID)
 	}
+	return fewNames(names, most)
+}
+
+// fewNames lists names, all of them or the first few.
+func fewNames(names []string, most int) string {
 	if most > 0 && len(names) > most+1 { // "and 1 more" is no shorter than its name
 		return strings.Join(names[:most], ", ") + fmt.Sprintf(" and %d more", len(names)-most)
 	}

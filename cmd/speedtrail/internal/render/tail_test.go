@@ -23,7 +23,7 @@ func TestCommonTail(t *testing.T) {
 		for range x.n {
 			g.List = append(g.List, assessment.Finding{ID: x.id, Text: x.text})
 		}
-		texts, tail := g.commonTail()
+		texts, tail := g.commonTail(mostWholeFinding)
 		if len(texts) != x.n || texts[0] != x.first || tail != x.tail {
 			t.Errorf("%d of %s: %q and %q, want %q and %q", x.n, x.id, texts, tail, x.first, x.tail)
 		}

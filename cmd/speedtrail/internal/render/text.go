@@ -158,11 +158,7 @@ var right = []table.ColumnConfig{
 func (p *textWriter) trains() {
 	p.heading("Trains")
 	t := plainTable()
-	t.AppendHeader(table.Row{"train", "raised km", "lowered km", "up km/h", "down km/h", "time s", "routes"})
 	times, routes := runningTimes(p.c), trainRoutes(p.c)
-	// The numbers take 51 columns with their gaps; names are given what they need of the
-	// rest, but for room for a route.
-	const numbers, gap, aRoute = 51, 2, 12
 	names, widest := make([]string, len(p.c.Trains)), 0
 	for i, x := range p.c.Trains {
 		names[i] = source.Visible(x.ID)
@@ -171,23 +167,40 @@ func (p *textWriter) trains() {
 		}
 		widest = max(widest, Cells(names[i]))
 	}
-	widest = max(8, min(widest, p.s.Width-numbers-2*gap-aRoute))
-	t.SetColumnConfigs(append([]table.ColumnConfig{
-		{Number: 1, WidthMax: widest, WidthMaxEnforcer: text.WrapSoft},
-		{Number: 7, WidthMax: max(aRoute, p.s.Width-numbers-2*gap-widest), WidthMaxEnforcer: text.WrapSoft},
-	}, right...))
 	raised, lowered := make([]string, len(names)), make([]string, len(names))
 	for i, x := range p.c.Trains {
 		raised[i], lowered[i] = lengthCell(x.Raised), lengthCell(x.Lowered)
 	}
 	raised, lowered = onPoint(raised), onPoint(lowered)
+	// Names are given what they need beside the numbers, but for room for a route.
+	const gap, aRoute = 2, 12
+	room := 0
+	heads := columnHeads([]string{"raised km", "lowered km", "up km/h", "down km/h", "time s"}, p.s.Width-9-2*gap-aRoute, func(heads []string) int {
+		numbers := 0
+		for i, h := range heads {
+			widths := [...]int{0, 0, 4, 4, 0} // steps are three digits and a sign
+			widest := max(widths[i], headWidth(h))
+			for k, x := range p.c.Trains {
+				widest = max(widest, Cells([...]string{raised[k], lowered[k], "", "", times[x.ID]}[i]))
+			}
+			numbers += widest + gap
+		}
+		room = p.s.Width - numbers - 2*gap
+		return numbers
+	})
+	t.AppendHeader(table.Row{"train", heads[0], heads[1], heads[2], heads[3], heads[4], "routes"})
+	widest = max(9, min(widest, room-aRoute)) // "(removed)"
+	t.SetColumnConfigs(append([]table.ColumnConfig{
+		{Number: 1, WidthMax: widest, WidthMaxEnforcer: text.WrapSoft},
+		{Number: 7, WidthMax: max(8, room-widest), WidthMaxEnforcer: text.WrapSoft},
+	}, right...))
 	for i, x := range p.c.Trains {
 		name := names[i]
 		if routes[x.ID] == "" {
 			// In the column of a number if it is no wider than that, else in the last one,
 			// which may wrap.
 			row := table.Row{name, "", "", "", "", "", unchangedWords(p.c, x)}
-			if words := unchangedWords(p.c, x); len(words) <= len("raised km") {
+			if words := unchangedWords(p.c, x); len(words) <= max(headWidth(heads[0]), Cells(raised[i])) {
 				row[1], row[6] = words, ""
 			}
 			t.AppendRow(row)
@@ -331,14 +344,26 @@ func (p *textWriter) end() {
 	p.printf("\n")
 	p.paragraph("", "Caution: "+Caution)
 	p.printf("\n")
+	if s := findingSentence(p.c); s != "" { // the verdict is far above by now
+		p.paragraph("", s)
+	}
 	if command := p.oneTrain(); command != "" {
-		p.printf("one train: %s\n", source.Visible(p.s.advise(command)))
+		p.advice("one train:", source.Visible(p.s.advise(command)))
 	}
 	if p.r.Number != 0 {
-		p.printf("next: %s\n", source.Visible(p.s.advise(fmt.Sprintf("speedtrail report %d --out report.html", p.r.Number))))
+		p.advice("next:", source.Visible(p.s.advise(fmt.Sprintf("speedtrail report %d --out report.html", p.r.Number))))
 	} else {
 		p.printf("next: the same call with --out report.html writes the report\n")
 	}
+}
+
+// advice writes a command to be copied: on a line of its own where it does not fit
+// beside its label. It stays whole.
+func (p *textWriter) advice(label, command string) {
+	if Cells(label)+1+Cells(command) > p.s.Width {
+		label += "\n "
+	}
+	p.printf("%s %s\n", label, command)
 }
 
 // oneTrain gives the command that shows the profile after the change of a train that

@@ -76,9 +76,16 @@ func (p *textWriter) figures() {
 		p.heading("Running times")
 		p.paragraph("", motionWords(p.c))
 		t := plainTable()
-		t.AppendHeader(table.Row{"route", "direction", "train", "before min:s", "after min:s", "difference s"})
-		// Beside the names stand 54 columns.
-		name := table.ColumnConfig{WidthMax: max(8, (p.s.Width-54)/2), WidthMaxEnforcer: text.WrapSoft}
+		numbers := 0
+		heads := columnHeads([]string{"before min:s", "after min:s", "difference s"}, p.s.Width-2*7, func(heads []string) int {
+			numbers = len("direction") + 5*2 // gaps
+			for _, h := range heads {
+				numbers += max(headWidth(h), 8) // 100:00.0
+			}
+			return numbers
+		})
+		t.AppendHeader(table.Row{"route", "direction", "train", heads[0], heads[1], heads[2]})
+		name := table.ColumnConfig{WidthMax: max(7, (p.s.Width-numbers)/2), WidthMaxEnforcer: text.WrapSoft}
 		route, train := name, name
 		route.Number, train.Number = 1, 3
 		t.SetColumnConfigs(append([]table.ColumnConfig{route, train}, right[2:]...))

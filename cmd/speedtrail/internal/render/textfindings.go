@@ -18,24 +18,37 @@ const (
 	mostRoutesNamed  = 20 // of those that are not shown
 )
 
-func (p *textWriter) findings() { p.findingsBelow("What needs eyes first") }
+func (p *textWriter) findings() { p.findingsBelow("What needs eyes first", noFinding) }
 
-func (p *textWriter) findingsBelow(heading string) {
+// findingsBelow writes the findings below a heading, which stands there without any only
+// where something is said of that.
+func (p *textWriter) findingsBelow(heading, none string) {
 	groups := findingGroups(p.c)
-	if len(groups) == 0 {
-		return
+	if len(groups) > 0 || none != "" {
+		p.heading(heading)
 	}
-	p.heading(heading)
+	if len(groups) == 0 && none != "" {
+		p.paragraph("", none)
+	}
 	for i, g := range groups {
 		if i > 0 {
 			p.printf("\n")
 		}
-		text, tail := g.commonTail()
+		text, tail := g.commonTail(mostWholeFinding)
 		if len(g.List) > mostWholeFinding && g.List[0].Example != "" {
 			tail += " The trains stand in the report: " + p.command("html", len(g.List), mostHTMLFindings) + "."
 		}
+		many, apart := len(g.List) > mostWholeFinding, false
+		for k := range text {
+			if short, trains := g.trainsApart(text[k]); many && trains != "" {
+				text[k], apart = short, true
+			}
+		}
+		if apart {
+			tail += " Long lists of trains stand in the report: " + p.command("html", len(g.List), mostHTMLFindings) + "."
+		}
 		p.paragraph("", g.title()+". "+g.Why+" "+g.Do+tail)
-		if len(g.List) > mostWholeFinding {
+		if many {
 			p.findingsByRoute(g, text)
 			continue
 		}

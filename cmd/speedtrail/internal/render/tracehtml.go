@@ -97,7 +97,7 @@ func TraceHTML(w io.Writer, t *Trace) error {
 			piece := &stretch.Pieces[k]
 			row := t.row(piece.Origin)
 			row.From, row.To, row.Length, row.After = minus(piece.From), minus(piece.To), metres(piece.End-piece.Start), speedWords(piece.Speed)
-			row.Because = []string{source.Visible(assessment.SourceText(piece.Sources))}
+			row.Because = []string{source.Visible(sourcePlaces(piece.Sources))}
 			row.Remarks = visible(pieceRemarks(t, piece))
 			s.Rows = append(s.Rows, row)
 		}

@@ -11,7 +11,6 @@ import (
 
 	"github.com/jedib0t/go-pretty/v6/text"
 
-	"speedtrail/history/assessment"
 	"speedtrail/schema/source"
 )
 
@@ -146,11 +145,11 @@ func (t *Trace) stepText(b *strings.Builder, step *TraceStep, s Style) {
 	lines := [][2]string{}
 	for _, v := range step.Before {
 		if v.Speed > 0 {
-			lines = append(lines, [2]string{"before", strconv.Itoa(v.Speed) + " by " + assessment.SourceText(v.Sources)})
+			lines = append(lines, [2]string{"before", strconv.Itoa(v.Speed) + " km/h by " + sourcePlaces(v.Sources)})
 		}
 	}
 	if step.After.Speed > 0 {
-		lines = append(lines, [2]string{"after", strconv.Itoa(step.After.Speed) + " by " + assessment.SourceText(step.After.Sources)})
+		lines = append(lines, [2]string{"after", strconv.Itoa(step.After.Speed) + " km/h by " + sourcePlaces(step.After.Sources)})
 	}
 	lines = append(lines, [2]string{"in play", requestWords(c)}, [2]string{"assessed", assessmentWords(c)})
 	for _, remark := range stepRemarks(t, step) {
@@ -203,7 +202,7 @@ func (t *Trace) stretchText(b *strings.Builder, stretch *TraceStretch, s Style) 
 		}
 		fmt.Fprintf(b, "\n  km %s to %s  %s  since %s  %s  %s\n", from[i], to[i], speed, day(c), short(c.Hash), source.Visible(c.Author.Name))
 		subjectText(b, c.Subject, s)
-		lines := [][2]string{{"by", assessment.SourceText(p.Sources)}, {"in play", requestWords(c)}, {"assessed", assessmentWords(c)}}
+		lines := [][2]string{{"by", sourcePlaces(p.Sources)}, {"in play", requestWords(c)}, {"assessed", assessmentWords(c)}}
 		for _, remark := range pieceRemarks(t, p) {
 			lines = append(lines, [2]string{"remark", remark})
 		}

@@ -30,12 +30,36 @@ func TestTrainsFit(t *testing.T) {
 	}
 }
 
-// Of hundreds of routes that a train sees a change on, the table names the first.
+// Tables fit a narrow terminal, the units below the names of their columns; a command
+// stands on a line of its own there.
+func TestNarrowTables(t *testing.T) {
+	d := pageDocument("NORTH-EASTERN-1")
+	c := &d.Computed
+	c.Trains = []assessment.Train{{ID: "REGIONAL-EXPRESS", Fate: "removed", Raised: 603_642_000, Lowered: 597_980_500, LargestRaise: 120, LargestReduction: 120, Routes: []string{"NORTH-EASTERN-1"}, After: &assessment.Definition{}}}
+	c.Figures.Runs = []assessment.RunFigure{{Route: "NORTH-EASTERN-1", Direction: "nominal", Train: "REGIONAL-EXPRESS", Before: 40_001, After: 4_073}}
+	for _, width := range []int{60, 80, 120} {
+		var b strings.Builder
+		if err := Text(&b, d, Record{}, Style{Width: width}); err != nil {
+			t.Fatal(err)
+		}
+		for line := range strings.Lines(b.String()) {
+			if n := Cells(strings.TrimRight(line, "\n")); n > width && !strings.HasPrefix(line, "  speedtrail ") {
+				t.Errorf("%d of %d columns: %s", n, width, line)
+			}
+		}
+		narrow := width == 60
+		if strings.Contains(b.String(), "raised km") == narrow || strings.Contains(b.String(), "one train:\n") != (width < 120) {
+			t.Errorf("with %d columns:\n%s", width, b.String())
+		}
+	}
+}
+
+// Hundreds of routes that a train sees a change on are counted, and a few are named.
 func TestTrainRoutesAreFew(t *testing.T) {
 	routes := strings.Split("R01 R02 R03 R04 R05 R06 R07 R08 R09 R10 R11", " ")
 	for n, want := range map[int]string{
 		1: "R01", 9: "R01, R02, R03, R04, R05, R06, R07, R08, R09",
-		10: "R01, R02, R03, R04, R05, R06, R07, R08 and 2 more", 11: "R01, R02, R03, R04, R05, R06, R07, R08 and 3 more",
+		10: "10 routes", 11: "11 routes",
 	} {
 		c := &assessment.Computed{Trains: []assessment.Train{{ID: "T", Routes: routes[:n]}}}
 		if got := trainRoutes(c)["T"]; got != want {

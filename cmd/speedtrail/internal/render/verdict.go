@@ -102,7 +102,9 @@ func extremes(c *assessment.Computed, of func(*assessment.Route) []assessment.Ch
 // extreme words the largest raise or reduction.
 func extreme(c *assessment.Computed, of func(*assessment.Route) []assessment.Change, up bool) string {
 	var best *assessment.Change
-	var trains []int // of all changes of that step and that length
+	// Of all changes of that step and that length.
+	var trains []int
+	var routes []string
 	size := func(x *assessment.Change) int {
 		if up {
 			return x.After - x.Before
@@ -118,9 +120,12 @@ func extreme(c *assessment.Computed, of func(*assessment.Route) []assessment.Cha
 			}
 			switch {
 			case best == nil || size(x) > size(best) || size(x) == size(best) && x.Length > best.Length:
-				best, trains = x, slices.Clone(x.Trains)
+				best, trains, routes = x, slices.Clone(x.Trains), []string{c.Routes[i].ID}
 			case size(x) == size(best) && x.Length == best.Length:
 				trains = append(trains, x.Trains...)
+				if routes[len(routes)-1] != c.Routes[i].ID {
+					routes = append(routes, c.Routes[i].ID)
+				}
 			}
 		}
 	}
@@ -129,11 +134,16 @@ func extreme(c *assessment.Computed, of func(*assessment.Route) []assessment.Cha
 	}
 	slices.Sort(trains)
 	trains = slices.Compact(trains)
-	word := "up to"
-	if !up {
-		word = "down to"
+	return fmt.Sprintf("%s over %s km on %s (%s)", byUpTo(up, size(best)), km(best.Length), fewNames(routes, 3), trainNames(c, trains, 3))
+}
+
+// byUpTo words the largest raise or reduction, as findings do. "Down to" and a number
+// would be read as the speed that is left.
+func byUpTo(up bool, step int) string {
+	if up {
+		return fmt.Sprintf("raised by up to %d km/h", step)
 	}
-	return fmt.Sprintf("%s %s km/h over %s km (%s)", word, signed(best.After-best.Before), km(best.Length), trainNames(c, trains, 3))
+	return fmt.Sprintf("lowered by up to %d km/h", step)
 }
 
 // unseenSentence says what trains see that no reference train stands for, where it is
@@ -162,10 +172,10 @@ func unseenSentence(c *assessment.Computed) string {
 	}
 	var parts []string
 	if routes[0] != "" {
-		parts = append(parts, fmt.Sprintf("up to %s km/h on %s", signed(most[0]), routes[0]))
+		parts = append(parts, byUpTo(true, most[0])+" on "+routes[0])
 	}
 	if routes[1] != "" {
-		parts = append(parts, fmt.Sprintf("down to %s km/h on %s", signed(-most[1]), routes[1]))
+		parts = append(parts, byUpTo(false, most[1])+" on "+routes[1])
 	}
 	if parts == nil {
 		return ""

@@ -18,9 +18,9 @@ func TestVerdictOnHidden(t *testing.T) {
 		want            string
 	}{
 		{"all hidden", nil, []assessment.Change{change(100, 120, 10_000_000), change(100, 110, 12_000_000)},
-			"The only reference train is neither faster nor slower anywhere on the only route of the target. Hidden today by temporary restrictions: up to +20 km/h over 10.000 km (N)."},
+			"The only reference train is neither faster nor slower anywhere on the only route of the target. Hidden today by temporary restrictions: raised by up to 20 km/h over 10.000 km on A (N)."},
 		{"some hidden, up and down", []assessment.Change{change(100, 110, 1_000_000)}, []assessment.Change{change(100, 120, 2_000_000), change(100, 70, 500_000)},
-			"1 of 1 train changes on 1 of 1 route: up to +10 km/h over 1.000 km (N). Hidden today by temporary restrictions: up to +20 km/h over 2.000 km (N), down to \u221230 km/h over 0.500 km (N)."},
+			"1 of 1 train changes on 1 of 1 route: raised by up to 10 km/h over 1.000 km on A (N). Hidden today by temporary restrictions: raised by up to 20 km/h over 2.000 km on A (N), lowered by up to 30 km/h over 0.500 km on A (N)."},
 	} {
 		t.Run(x.name, func(t *testing.T) {
 			train := assessment.Train{ID: "N", Fate: "kept"}
@@ -42,9 +42,13 @@ func TestVerdictOnExtremes(t *testing.T) {
 	}
 	c := &assessment.Computed{
 		Trains: []assessment.Train{{ID: "A", Fate: "kept"}, {ID: "B", Fate: "kept"}, {ID: "C", Fate: "kept"}},
-		Routes: []assessment.Route{{Changes: []assessment.Change{change(2, 120, 3000000), change(0, 120, 3000000), change(1, 120, 2000000), change(1, 110, 9000000), change(0, 120, 3000000)}}},
+		Routes: []assessment.Route{
+			{ID: "R", Changes: []assessment.Change{change(2, 120, 3000000), change(0, 120, 3000000), change(1, 120, 2000000), change(1, 110, 9000000), change(0, 120, 3000000)}},
+			{ID: "S", Changes: []assessment.Change{change(1, 110, 9000000)}},
+			{ID: "T", Changes: []assessment.Change{change(2, 120, 3000000)}},
+		},
 	}
-	if got, want := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Changes }), "up to +20 km/h over 3.000 km (A, C)"; got != want {
+	if got, want := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Changes }), "raised by up to 20 km/h over 3.000 km on R, T (A, C)"; got != want {
 		t.Errorf("got %q, want %q", got, want)
 	}
 }
@@ -135,9 +139,9 @@ func TestVerdictOnUnseen(t *testing.T) {
 		permanent bool
 		want      string
 	}{
-		{"nobody else", nil, []assessment.FleetChange{seen(false, 110, 170)}, false, "Trains that no reference train stands for: up to +60 km/h on A."},
+		{"nobody else", nil, []assessment.FleetChange{seen(false, 110, 170)}, false, "Trains that no reference train stands for: raised by up to 60 km/h on A."},
 		{"larger", []assessment.Change{{Before: 100, After: 130}}, []assessment.FleetChange{seen(false, 110, 170), seen(false, 110, 90)}, false,
-			"Trains that no reference train stands for: up to +60 km/h on A, down to \u221220 km/h on A."},
+			"Trains that no reference train stands for: raised by up to 60 km/h on A, lowered by up to 20 km/h on A."},
 		{"no larger", []assessment.Change{{Before: 100, After: 160}}, []assessment.FleetChange{seen(false, 110, 170)}, false, ""},
 		{"represented", nil, []assessment.FleetChange{seen(true, 110, 170)}, false, ""},
 		{"hidden today", nil, []assessment.FleetChange{seen(false, 110, 170)}, true, ""},

@@ -106,6 +106,29 @@ func Hanging(s string, width int, indent string) string {
 	return strings.Join(Wrap(s, max(minWidth, width-len(indent))), "\n"+indent)
 }
 
+// columnHeads gives the heads of the columns of numbers of a table: with the unit below
+// the name where the numbers would else take more than a width.
+func columnHeads(heads []string, most int, width func(heads []string) int) []string {
+	if width(heads) <= most {
+		return heads
+	}
+	narrow := make([]string, len(heads))
+	for i, h := range heads {
+		narrow[i] = strings.Replace(h, " ", "\n", 1)
+	}
+	width(narrow)
+	return narrow
+}
+
+// headWidth is how many columns a head takes.
+func headWidth(head string) int {
+	n := 0
+	for line := range strings.Lines(head) {
+		n = max(n, Cells(strings.TrimSuffix(line, "\n")))
+	}
+	return n
+}
+
 // minWidth is the width of a text in the narrowest terminal.
 const minWidth = 20
 
