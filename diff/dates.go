@@ -65,6 +65,9 @@ func (r *Route) datedAnywhere(d codes.Direction, cells []align.Cell, trains []Tr
 	lengths = slices.Compact(lengths)
 	var list []Dated
 	for _, cell := range cells {
+		if r.sameRestrictions(cell.Target - cell.Base) {
+			continue // for every length
+		}
 		of := make([][]Dated, len(lengths))
 		for i, length := range lengths {
 			of[i] = datedFor(d, termsOn(r.Base, d, length, cell.Base, cell), termsOn(r.Target, d, length, cell.Target, cell))
@@ -78,6 +81,14 @@ func (r *Route) datedAnywhere(d codes.Direction, cells []align.Cell, trains []Tr
 		}
 	}
 	return list
+}
+
+// sameRestrictions tells whether both sides have the same temporary restrictions, those
+// of the base moved along the track, in the same order.
+func (r *Route) sameRestrictions(moved unit.Distance) bool {
+	return slices.EqualFunc(r.Base.Temporary, r.Target.Temporary, func(a, b schema.TemporaryRow) bool {
+		return a.Start+moved == b.Start && a.End+moved == b.End && a.Directions == b.Directions && said(&a) == said(&b)
+	})
 }
 
 // datedFor lists the stretches of a cell for trains of one length, by the restrictions

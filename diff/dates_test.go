@@ -259,3 +259,46 @@ func TestDatedTellsApart(t *testing.T) {
 		}
 	}
 }
+
+// Restrictions are taken for the same, and not looked at, only where every cell that
+// matters to a train is.
+func TestSameRestrictions(t *testing.T) {
+	row := func(change func(*schema.TemporaryRow)) []schema.TemporaryRow {
+		x := schema.TemporaryRow{Speed: 40}
+		x.Start, x.End, x.Directions, x.Delay = 2, 6, codes.Both, true
+		x.Valid.From, x.Valid.Until = monthOf(1), monthOf(6)
+		if change != nil {
+			change(&x)
+		}
+		return []schema.TemporaryRow{x}
+	}
+	moved := func(by unit.Distance) func(*schema.TemporaryRow) {
+		return func(x *schema.TemporaryRow) { x.Start, x.End = x.Start+by, x.End+by }
+	}
+	for name, c := range map[string]struct {
+		target []schema.TemporaryRow
+		moved  unit.Distance
+		want   bool
+	}{
+		"the same":                   {row(nil), 0, true},
+		"another id and line":        {row(func(x *schema.TemporaryRow) { x.ID, x.Pos.Line = "B", 9 }), 0, true},
+		"moved along with the track": {row(moved(3)), 3, true},
+		"moved on the track":         {row(moved(3)), 0, false},
+		"left where the track moved": {row(nil), 3, false},
+		"moved the other way":        {row(moved(-3)), 3, false},
+		"another start":              {row(func(x *schema.TemporaryRow) { x.Start++ }), 0, false},
+		"another end":                {row(func(x *schema.TemporaryRow) { x.End++ }), 0, false},
+		"another direction":          {row(func(x *schema.TemporaryRow) { x.Directions = codes.OnlyNominal }), 0, false},
+		"without delay":              {row(func(x *schema.TemporaryRow) { x.Delay = false }), 0, false},
+		"another speed":              {row(func(x *schema.TemporaryRow) { x.Speed = 45 }), 0, false},
+		"another beginning":          {row(func(x *schema.TemporaryRow) { x.Valid.From = monthOf(2) }), 0, false},
+		"another last day":           {row(func(x *schema.TemporaryRow) { x.Valid.Until = monthOf(7) }), 0, false},
+		"one more":                   {append(row(nil), row(nil)...), 0, false},
+		"none":                       {nil, 0, false},
+	} {
+		r := &Route{Base: &schema.Route{Temporary: row(nil)}, Target: &schema.Route{Temporary: c.target}}
+		if got := r.sameRestrictions(c.moved); got != c.want {
+			t.Errorf("%s: %v", name, got)
+		}
+	}
+}
