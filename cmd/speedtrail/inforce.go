@@ -149,7 +149,7 @@ type correctedRecord struct {
 	record  approval.Record
 }
 
-func (x correctedRecord) words() string {
+func (x correctedRecord) words(named func(hash string) string) string {
 	text := fmt.Sprintf("; entry %d %s it, signed by %s (%s)", x.Entry, x.How, x.Signer, x.Reason)
 	if x.Elsewhere != nil {
 		text += "; ! " + x.Elsewhere.Short()
@@ -157,7 +157,7 @@ func (x correctedRecord) words() string {
 	if x.Revoked != nil {
 		text += "; ! its " + x.Revoked.Short()
 	}
-	return x.Record.words() + source.Visible(text)
+	return x.Record.words(named) + source.Visible(text)
 }
 
 func corrections(line *approval.Line, folder string) []correctedRecord {
@@ -188,7 +188,8 @@ func serviceRecordOf(line *approval.Line, s history.Service) serviceRecord {
 	}
 }
 
-func (r serviceRecord) words() string {
+// words writes a record; named writes a commit.
+func (r serviceRecord) words(named func(hash string) string) string {
 	where := "the whole network"
 	if len(r.Routes) > 0 {
 		where = strings.Join(r.Routes, ", ")
@@ -208,7 +209,7 @@ func (r serviceRecord) words() string {
 	case r.Approved:
 		state = "approved, the anchor"
 	}
-	text := fmt.Sprintf("%s  commit %s on %s; %s; entry %d, signed by %s (%s)", r.Since, short(r.Revision), where, state, r.Entry, r.Signer, r.Reason)
+	text := fmt.Sprintf("%s  commit %s on %s; %s; entry %d, signed by %s (%s)", r.Since, named(r.Revision), where, state, r.Entry, r.Signer, r.Reason)
 	if r.Elsewhere != nil {
 		text += "; ! " + r.Elsewhere.Short()
 	}
@@ -259,10 +260,10 @@ func (a *app) inforceLog(ctx context.Context) error {
 			if i > 0 {
 				fmt.Fprintln(w)
 			}
-			fmt.Fprintf(w, "%s\n", render.Hanging(r.words(), a.style().Width, "  "))
+			fmt.Fprintf(w, "%s\n", render.Hanging(r.words(a.named), a.style().Width, "  "))
 		}
 		for _, x := range corrected {
-			fmt.Fprintf(w, "\n%s\n", render.Hanging("Not any more: "+x.words(), a.style().Width, "  "))
+			fmt.Fprintf(w, "\n%s\n", render.Hanging("Not any more: "+x.words(a.named), a.style().Width, "  "))
 		}
 		if len(records)+len(corrected) > 0 && len(findings) > 0 {
 			fmt.Fprintln(w)

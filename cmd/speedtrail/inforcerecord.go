@@ -179,7 +179,7 @@ func (s *signing) signInForce(ctx context.Context, a *app, line *approval.Line, 
 		return nil, err
 	}
 	if voids > 0 {
-		a.remark("it takes back entry %d: %s", voids, serviceRecordOf(line, history.ServiceOf(line, *standing(line, statement.Folder, voids))).words())
+		a.remark("it takes back entry %d: %s", voids, serviceRecordOf(line, history.ServiceOf(line, *standing(line, statement.Folder, voids))).words(a.named))
 	} else {
 		a.remarkOdd(line, &statement)
 	}

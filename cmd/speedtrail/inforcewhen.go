@@ -254,12 +254,12 @@ func (a *app) printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		fmt.Fprintf(w, "On single routes at %s:\n", x.When)
 		for _, r := range x.Routes {
 			apart = append(apart, r.HoldsOn...)
-			fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(joined(r.HoldsOn))+": "+r.words(), width, "  "))
+			fmt.Fprintf(w, "%s\n", render.Hanging(source.Visible(joined(r.HoldsOn))+": "+r.words(a.named), width, "  "))
 		}
 		fmt.Fprintln(w)
 	}
 	for _, c := range x.Corrected {
-		fmt.Fprintf(w, "%s\n\n", wrap("Said otherwise, and not any more: "+c.words(), width))
+		fmt.Fprintf(w, "%s\n\n", wrap("Said otherwise, and not any more: "+c.words(a.named), width))
 	}
 	if x.Record == nil {
 		_, err := fmt.Fprintf(w, "Nothing is recorded as in force on %s at %s; %s lists what is.\nhead %s\n", cmp.Or(source.Visible(x.Route), "the whole network"), x.When, source.Visible(a.advise("speedtrail inforce")), x.Head)
@@ -270,7 +270,7 @@ func (a *app) printInForce(w io.Writer, x *inForceAnswer, width int) error {
 		slices.Sort(apart)
 		except = ", except on " + source.Visible(joined(apart))
 	}
-	fmt.Fprintf(w, "In force at %s%s:\n%s\n%s\n", x.When, except, render.Hanging(x.Record.words(), width, "  "), render.Hanging(source.Visible("commit "+x.Commit+", "+x.Subject), width, "  "))
+	fmt.Fprintf(w, "In force at %s%s:\n%s\n%s\n", x.When, except, render.Hanging(x.Record.words(a.named), width, "  "), render.Hanging(source.Visible("commit "+x.Commit+", "+x.Subject), width, "  "))
 	direction := ""
 	names := 8 // the width of the names of trains; a longer one has a line of its own
 	for _, s := range x.Speeds {

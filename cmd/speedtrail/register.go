@@ -146,7 +146,8 @@ func (a *app) printRegister(w io.Writer, l *ledger.Ledger, line *approval.Line, 
 			requests = strings.Join(r.Requests, ", ")
 		}
 		lines := []string{
-			fmt.Sprintf("%s to %s, %s, folder %s", short(r.Base), short(r.Target), source.Visible(r.Dataset), source.Visible(r.Folder)),
+			source.Visible(a.named(r.Base) + " to " + a.named(r.Target)),
+			source.Visible(r.Dataset + ", folder " + r.Folder),
 			source.Visible(requests),
 			fmt.Sprintf("speed changes %d, findings %d", r.Changes, r.Findings),
 		}
@@ -210,6 +211,26 @@ func signedBy(line *approval.Line, number int64) []string {
 		list = append(list, text)
 	}
 	return list
+}
+
+// named writes a commit that the ledger names: the part of its hash that people compare,
+// and a tag that the repository has for it now. A ledger can be read without a repository.
+func (a *app) named(hash string) string {
+	if a.tags == nil {
+		a.tags = map[string]string{}
+		if repo, err := a.openRepo(); err == nil {
+			a.tags = repo.Tags()
+			repo.Close()
+		}
+	}
+	tag := a.tags[hash]
+	switch {
+	case tag == "":
+		return short(hash)
+	case strings.ContainsAny(tag, "(),;"):
+		tag = source.Quote(tag) // it shall not pass for words of ours
+	}
+	return short(hash) + " (" + tag + ")"
 }
 
 // short gives the part of a hash that people compare.

@@ -60,7 +60,8 @@ type app struct {
 	color  string
 	quiet  bool
 
-	bar *bar
+	bar  *bar
+	tags map[string]string // by commit, once they were asked for
 }
 
 // command builds the tree of commands.

@@ -205,7 +205,7 @@ func (r *Repo) listRefs(prefix string) ([]namedRef, error) {
 // "refs/tags/" and the like; "" if there is none or the references cannot be
 // read. References are read once, at the first call.
 func (r *Repo) Describe(c Commit) string {
-	r.named.Do(func() { r.names, r.namedErr = r.nameCommits() })
+	r.named.Do(func() { r.names, r.namedErr = r.nameCommits("refs/tags/", "refs/heads/", "refs/remotes/") })
 	h, ok := parseHash(c.Hash)
 	if !ok || r.namedErr != nil {
 		return ""
@@ -229,9 +229,21 @@ func (r *Repo) Names() []string {
 	return names
 }
 
-func (r *Repo) nameCommits() (map[plumbing.Hash]string, error) {
+// Tags gives for the full hash of each commit that a tag points at the first such tag in
+// byte order, without "refs/tags/". It is empty where the references cannot be read.
+func (r *Repo) Tags() map[string]string {
+	names, _ := r.nameCommits("refs/tags/")
+	tags := make(map[string]string, len(names))
+	for h, name := range names {
+		tags[h.String()] = name
+	}
+	return tags
+}
+
+// nameCommits names commits by the references below some prefixes; of several the first.
+func (r *Repo) nameCommits(prefixes ...string) (map[plumbing.Hash]string, error) {
 	names := map[plumbing.Hash]string{}
-	for _, prefix := range []string{"refs/tags/", "refs/heads/", "refs/remotes/"} {
+	for _, prefix := range prefixes {
 		refs, err := r.listRefs(prefix)
 		if err != nil {
 			return nil, err

@@ -30,6 +30,12 @@ func TestDescribe(t *testing.T) {
 		if got := r.Describe(Commit{}); got != "" {
 			t.Errorf("the working tree is described as %q", got)
 		}
+		tags := r.Tags()
+		for rev, want := range map[string]string{"v1": "v1", "v1~1": "", "v2": "v2", "light": "light", "side": "", "apart": ""} {
+			if got := tags[g.git("rev-parse", rev+"^{commit}")]; got != want {
+				t.Errorf("the tag of %s is %q, want %q", rev, got, want)
+			}
+		}
 	}
 	check(g)
 	g.git("pack-refs", "--all")
