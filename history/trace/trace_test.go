@@ -63,6 +63,34 @@ func (d *drawn) number(t *testing.T, h *trace.History, c int32) int {
 	return n
 }
 
+// Of every two commits, one comes before the other where parents lead to it.
+func TestBeforeAndAfter(t *testing.T) {
+	d := draw(t, 5, 60)
+	h, err := trace.NewReader(d.repo, ".").History(context.Background(), d.tip, "R1", trace.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	var leads func(from, to int32) bool
+	leads = func(from, to int32) bool {
+		return from == to || slices.ContainsFunc(h.Commits[from].Parents, func(p int32) bool { return leads(p, to) })
+	}
+	merges := 0
+	for a := range int32(len(h.Commits)) {
+		before, after := h.Ancestors(a), h.Descendants(a)
+		for b := range int32(len(h.Commits)) {
+			if before[b] != leads(a, b) || after[b] != leads(b, a) {
+				t.Fatalf("of %d, %d is an ancestor: %t, a descendant: %t", a, b, before[b], after[b])
+			}
+		}
+		if len(h.Commits[a].Parents) > 1 {
+			merges++
+		}
+	}
+	if merges == 0 {
+		t.Error("nothing was merged")
+	}
+}
+
 // cases are points of the newest track, joints and ends included.
 func cases(rnd *rand.Rand, b *past.Brute) []past.Case {
 	newest := b.Route(len(b.Data)-1, "R1")
