@@ -2,6 +2,7 @@ package trace_test
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math/rand/v2"
 	"reflect"
@@ -89,6 +90,42 @@ func TestBeforeAndAfter(t *testing.T) {
 	if merges == 0 {
 		t.Error("nothing was merged")
 	}
+}
+
+// A merge of a commit that is not in the repository has no history that could be told:
+// that is an error, unless only first parents count.
+func TestMissingParent(t *testing.T) {
+	d := draw(t, 1, 10)
+	c := network.Command(t.Context(), d.dir, "hash-object", "-t", "commit", "-w", "--stdin")
+	c.Stdin = strings.NewReader(fmt.Sprintf("tree %s\nparent %s\nparent %040d\nauthor A <a@story.example> 1 +0000\ncommitter A <a@story.example> 1 +0000\n\nm\n", treeOf(t, d), d.tip, 7))
+	out, err := c.Output()
+	if err != nil {
+		t.Fatal(err)
+	}
+	tip, err := trace.ParseHash(strings.TrimSpace(string(out)))
+	if err != nil {
+		t.Fatal(err)
+	}
+	repo, err := revision.Open(d.dir)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer repo.Close()
+	for first, want := range map[bool]error{false: revision.ErrMissingObject, true: nil} {
+		h, err := trace.NewReader(repo, ".").History(t.Context(), tip, "R1", trace.Options{FirstParent: first})
+		if !errors.Is(err, want) || (h == nil) != (want != nil) {
+			t.Errorf("first parents only %t: %v, %v", first, h, err)
+		}
+	}
+}
+
+func treeOf(t *testing.T, d *drawn) trace.Hash {
+	t.Helper()
+	link, err := d.repo.Link(d.tip)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return link.Tree
 }
 
 // cases are points of the newest track, joints and ends included.
