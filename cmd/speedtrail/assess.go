@@ -258,22 +258,22 @@ func (a *app) record(ctx context.Context, doc *assessment.Document, into *record
 	if err := needPolicies(line, &doc.Computed); err != nil {
 		return render.Record{}, err
 	}
-	number, added, head, err := l.RecordAssessment(ctx, time.Now(), assessment.LedgerRecord(doc, body, digest))
+	in, err := l.RecordAssessment(ctx, time.Now(), assessment.LedgerRecord(doc, body, digest))
 	if err != nil {
 		return render.Record{}, fmt.Errorf("the assessment was not recorded: %w", err)
 	}
-	if added {
-		a.remark("recorded as assessment %d; head of the ledger %s (note it elsewhere: it proves later that nothing was removed)", number, head)
+	if in.Added {
+		a.remark("recorded as assessment %d; head of the ledger %s (note it elsewhere: it proves later that nothing was removed)", in.Number, in.Head)
 	} else {
-		a.remark("assessment %d holds this result already, nothing was added; head of the ledger %s", number, head)
+		a.remark("assessment %d holds this result already, nothing was added; head of the ledger %s", in.Number, in.Head)
 	}
 	if _, err := history.ReadOn(ctx, l, line); err != nil {
 		return render.Record{}, err
 	}
-	if x := line.Assessment(number); x == nil || x.Digest != digest {
-		return render.Record{}, ledger.Damaged(fmt.Errorf("assessment %d, which is said to hold this result, holds another", number))
+	if x := line.Assessment(in.Number); x == nil || x.Digest != digest {
+		return render.Record{}, ledger.Damaged(fmt.Errorf("assessment %d, which is said to hold this result, holds another", in.Number))
 	}
-	return recordOf(line, l.ID(), number, digest), nil
+	return recordOf(line, l.ID(), in.Number, digest), nil
 }
 
 // needPolicies refuses, once a policy is anchored for the folder, a revision

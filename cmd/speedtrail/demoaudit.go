@@ -132,9 +132,11 @@ func (t *demoTrail) sign(ctx context.Context, s demo.Signing) error {
 		if err != nil {
 			return err
 		}
-		if number, _, _, err = t.l.RecordAssessment(ctx, s.When.Add(-2*time.Hour), assessment.LedgerRecord(doc, body, digest)); err != nil {
+		in, err := t.l.RecordAssessment(ctx, s.When.Add(-2*time.Hour), assessment.LedgerRecord(doc, body, digest))
+		if err != nil {
 			return err
 		}
+		number = in.Number
 		t.numbers[s.Target] = number
 	}
 	line, _, err := history.ReadLine(ctx, t.l)
