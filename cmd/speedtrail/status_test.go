@@ -4,6 +4,9 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"os"
+	"path/filepath"
+	"strings"
 	"testing"
 
 	"speedtrail/history/ledger"
@@ -37,4 +40,21 @@ func TestStatusOf(t *testing.T) {
 			t.Errorf("%v in another error: status %d, want %d", c.err, got, c.want)
 		}
 	}
+}
+
+// verify is asked whether something is wrong, and a file that is no ledger is; for every
+// other command the ledger cannot be read.
+func TestStatusOfForeignLedger(t *testing.T) {
+	file := filepath.Join(t.TempDir(), "ledger.db")
+	if err := os.WriteFile(file, []byte("no database"), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	call(t, "verify", "--ledger-only", "--ledger", file).want(t, statusFinding)
+	if got := call(t, "verify", "--ledger-only", "--ledger", file, "--format", "json").want(t, statusFinding); !strings.Contains(got.out, `"good": false`) || !strings.Contains(got.out, `"kind": "file"`) {
+		t.Error(got.out)
+	}
+	for _, args := range [][]string{{"register"}, {"report", "1"}, {"inforce"}, {"export"}} {
+		call(t, append(args, "--ledger", file)...).want(t, statusFailed)
+	}
+	call(t, "verify", "--ledger-only", "--ledger", file+".not").want(t, statusFailed)
 }
