@@ -93,7 +93,7 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 			return a.approvedCommit(ctx, repo, into.line, base, target, folder)
 		}
 	}
-	doc, err := a.compute(ctx, repo, base, target, options, record, since)
+	doc, err := a.compute(ctx, repo, comparison{base: base, target: target, Options: options, whole: record, since: since})
 	if err != nil {
 		return err
 	}
@@ -113,18 +113,27 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 // errShallow says that the clone does not hold all commits between two revisions.
 var errShallow = &callError{"the clone is shallow and its history ends between base and target: who prepared the change cannot be known, nor perhaps whether the base came before", "git fetch --unshallow brings the rest; --no-record assesses without it"}
 
-// compute makes the document of two revisions. What is recorded, or held against
-// what is recorded, needs the whole history between them.
-func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target string, options assessment.Options, whole bool, since counting) (*assessment.Document, error) {
+// comparison is what is asked of two revisions.
+type comparison struct {
+	base, target string // as they were typed
+	assessment.Options
+	// whole: the whole history between them is needed, since the result is recorded, or
+	// held against what is.
+	whole bool
+	since counting
+}
+
+// compute makes the document of two revisions.
+func (a *app) compute(ctx context.Context, repo *revision.Repo, c comparison) (*assessment.Document, error) {
 	folder, err := a.folder()
 	if err != nil {
 		return nil, err
 	}
-	from, err := a.openSide(repo, base)
+	from, err := a.openSide(repo, c.base)
 	if err != nil {
 		return nil, err
 	}
-	to, err := a.openSide(repo, target)
+	to, err := a.openSide(repo, c.target)
 	if err != nil {
 		return nil, err
 	}
@@ -133,7 +142,7 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 		return nil, inSides(err, from, to)
 	}
 	account, err := diff.Compare(ctx, before, after, diff.Options{
-		Requests: options.Requests, NoRequests: options.NoRequests, Rolling: options.Rolling,
+		Requests: c.Requests, NoRequests: c.NoRequests, Rolling: c.Rolling,
 		Unread: unread(to.files, after.Unread), Progress: a.progress("comparing routes"),
 	})
 	var unknown *diff.UnknownRequestError
@@ -150,18 +159,18 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 		Base: before, Target: after, Account: account, Folder: folder,
 		BaseRev: from.revisionOf(), TargetRev: to.revisionOf(),
 		Named:     assessment.Named{Base: validText(from.typed), BaseName: validText(from.name), Target: validText(to.typed), TargetName: validText(to.name)},
-		Preparers: []assessment.Person{}, Options: options, At: time.Now(), BaseIsAncestor: true,
+		Preparers: []assessment.Person{}, Options: c.Options, At: time.Now(), BaseIsAncestor: true,
 	}
 	if !to.isWorkingTree() {
 		if in.At = to.commit.Committer.When; in.At.IsZero() {
 			return nil, badCall("make a new commit of the same content", "the commit %s has no time that can be read, and the terms of restrictions and acceptances are compared with it", to.commit.Hash)
 		}
 	}
-	complete, err := a.descent(ctx, repo, from, to, since, &in)
+	complete, err := a.descent(ctx, repo, from, to, c.since, &in)
 	if err != nil {
 		return nil, err
 	}
-	if !complete && whole {
+	if !complete && c.whole {
 		return nil, errShallow
 	}
 	if !complete {

@@ -124,7 +124,7 @@ func signAs(s signoff.Statement, by demo.Signer) (*signed, error) {
 func (t *demoTrail) sign(ctx context.Context, s demo.Signing) error {
 	number, ok := t.numbers[s.Target]
 	if !ok {
-		doc, err := t.a.compute(ctx, t.repo, s.Base, s.Target, assessment.Options{Requests: []string{}}, true, fromBase)
+		doc, err := t.a.compute(ctx, t.repo, comparison{base: s.Base, target: s.Target, Options: assessment.Options{Requests: []string{}}, whole: true, since: fromBase})
 		if err != nil {
 			return err
 		}
