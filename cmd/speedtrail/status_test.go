@@ -8,6 +8,7 @@ import (
 	"path/filepath"
 	"strings"
 	"testing"
+	"time"
 
 	"speedtrail/history/ledger"
 	"speedtrail/history/revision"
@@ -42,19 +43,38 @@ func TestStatusOf(t *testing.T) {
 	}
 }
 
-// verify is asked whether something is wrong, and a file that is no ledger is; for every
-// other command the ledger cannot be read.
+// verify is asked whether something is wrong, and a file that is no ledger, or is
+// damaged, is; for every other command the ledger cannot be read.
 func TestStatusOfForeignLedger(t *testing.T) {
-	file := filepath.Join(t.TempDir(), "ledger.db")
-	if err := os.WriteFile(file, []byte("no database"), 0o600); err != nil {
+	dir := t.TempDir()
+	good := filepath.Join(dir, "good.db")
+	l, err := ledger.Open(t.Context(), good, ledger.Options{Create: true, Now: time.Now})
+	if err != nil {
 		t.Fatal(err)
 	}
-	call(t, "verify", "--ledger-only", "--ledger", file).want(t, statusFinding)
-	if got := call(t, "verify", "--ledger-only", "--ledger", file, "--format", "json").want(t, statusFinding); !strings.Contains(got.out, `"good": false`) || !strings.Contains(got.out, `"kind": "file"`) {
-		t.Error(got.out)
+	if err := l.Close(); err != nil {
+		t.Fatal(err)
 	}
-	for _, args := range [][]string{{"register"}, {"report", "1"}, {"inforce"}, {"export"}} {
-		call(t, append(args, "--ledger", file)...).want(t, statusFailed)
+	content := readFileOf(t, good)
+	for name, content := range map[string][]byte{"none": []byte("no database"), "cut": content[:len(content)/2], "another application's": append(append(content[:68:68], 1, 2, 3, 4), content[72:]...)} {
+		file := filepath.Join(dir, name)
+		if err := os.WriteFile(file, content, 0o600); err != nil {
+			t.Fatal(err)
+		}
+		call(t, "verify", "--ledger-only", "--ledger", file).want(t, statusFinding)
+		if got := call(t, "verify", "--ledger-only", "--ledger", file, "--format", "json").want(t, statusFinding); !strings.Contains(got.out, `"good": false`) || !strings.Contains(got.out, `"kind": "file"`) {
+			t.Errorf("%s: %s", name, got.out)
+		}
+		for _, args := range [][]string{{"register"}, {"report", "1"}, {"inforce"}, {"export"}} {
+			call(t, append(args, "--ledger", file)...).want(t, statusFailed)
+		}
 	}
-	call(t, "verify", "--ledger-only", "--ledger", file+".not").want(t, statusFailed)
+	call(t, "verify", "--ledger-only", "--ledger", filepath.Join(dir, "not there")).want(t, statusFailed)
+	const open = "that the assessments are what Git holds"
+	if got := call(t, "verify", "--ledger-only", "--ledger", good).want(t, statusDone); !strings.Contains(got.out, open) {
+		t.Errorf("of the ledger only: %s", got.out)
+	}
+	if got := call(t, "verify", "--ledger", good).want(t, statusDone); strings.Contains(got.out, open) {
+		t.Errorf("with the repository: %s", got.out)
+	}
 }
