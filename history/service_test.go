@@ -353,10 +353,11 @@ func TestAssessmentFromTheFuture(t *testing.T) {
 	w.anchor("a")
 	d := w.repo.document("a", "e")
 	body, digest := encoded(d)
-	var err error
-	if _, _, w.head, err = w.l.RecordAssessment(t.Context(), begin.AddDate(70, 0, 0), assessment.LedgerRecord(d, body, digest)); err != nil {
+	in, err := w.l.RecordAssessment(t.Context(), begin.AddDate(70, 0, 0), assessment.LedgerRecord(d, body, digest))
+	if err != nil {
 		t.Fatal(err)
 	}
+	w.head = in.Head
 	w.approve("a", "b", "ada")
 	entry := w.inService("b", "2026-04-02T03:00:00Z", "all")
 	s, findings := w.services()

@@ -174,12 +174,12 @@ func (w *writer) assess(base, target string) int64 {
 	w.t.Helper()
 	d := w.repo.document(base, target)
 	body, digest := encoded(d)
-	number, _, head, err := w.l.RecordAssessment(w.t.Context(), w.now(), assessment.LedgerRecord(d, body, digest))
+	in, err := w.l.RecordAssessment(w.t.Context(), w.now(), assessment.LedgerRecord(d, body, digest))
 	if err != nil {
 		w.t.Fatal(err)
 	}
-	w.head = head
-	return number
+	w.head = in.Head
+	return in.Number
 }
 
 // sign fills in what the statement does not say and signs it.

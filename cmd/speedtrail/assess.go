@@ -93,7 +93,7 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 			return a.approvedCommit(ctx, repo, into.line, base, target, folder)
 		}
 	}
-	doc, err := a.compute(ctx, repo, base, target, options, record, since)
+	doc, err := a.compute(ctx, repo, comparison{base: base, target: target, Options: options, whole: record, since: since})
 	if err != nil {
 		return err
 	}
@@ -113,18 +113,27 @@ func (a *app) assess(ctx context.Context, base, target string, options assessmen
 // errShallow says that the clone does not hold all commits between two revisions.
 var errShallow = &callError{"the clone is shallow and its history ends between base and target: who prepared the change cannot be known, nor perhaps whether the base came before", "git fetch --unshallow brings the rest; --no-record assesses without it"}
 
-// compute makes the document of two revisions. What is recorded, or held against
-// what is recorded, needs the whole history between them.
-func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target string, options assessment.Options, whole bool, since counting) (*assessment.Document, error) {
+// comparison is what is asked of two revisions.
+type comparison struct {
+	base, target string // as they were typed
+	assessment.Options
+	// whole: the whole history between them is needed, since the result is recorded, or
+	// held against what is.
+	whole bool
+	since counting
+}
+
+// compute makes the document of two revisions.
+func (a *app) compute(ctx context.Context, repo *revision.Repo, c comparison) (*assessment.Document, error) {
 	folder, err := a.folder()
 	if err != nil {
 		return nil, err
 	}
-	from, err := a.openSide(repo, base)
+	from, err := a.openSide(repo, c.base)
 	if err != nil {
 		return nil, err
 	}
-	to, err := a.openSide(repo, target)
+	to, err := a.openSide(repo, c.target)
 	if err != nil {
 		return nil, err
 	}
@@ -133,7 +142,7 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 		return nil, inSides(err, from, to)
 	}
 	account, err := diff.Compare(ctx, before, after, diff.Options{
-		Requests: options.Requests, NoRequests: options.NoRequests, Rolling: options.Rolling,
+		Requests: c.Requests, NoRequests: c.NoRequests, Rolling: c.Rolling,
 		Unread: unread(to.files, after.Unread), Progress: a.progress("comparing routes"),
 	})
 	var unknown *diff.UnknownRequestError
@@ -152,16 +161,16 @@ func (a *app) compute(ctx context.Context, repo *revision.Repo, base, target str
 		Base: before, Target: after, Account: account, Folder: folder,
 		BaseRev: from.revisionOf(), TargetRev: to.revisionOf(),
 		Named:     assessment.Named{Base: validText(from.typed), BaseName: validText(from.name), Target: validText(to.typed), TargetName: validText(to.name)},
-		Preparers: []assessment.Person{}, Options: options, BaseIsAncestor: true,
+		Preparers: []assessment.Person{}, Options: c.Options, BaseIsAncestor: true,
 	}
 	if in.At, err = to.time(); err != nil {
 		return nil, err
 	}
-	complete, err := a.descent(ctx, repo, from, to, since, &in)
+	complete, err := a.descent(ctx, repo, from, to, c.since, &in)
 	if err != nil {
 		return nil, err
 	}
-	if !complete && whole {
+	if !complete && c.whole {
 		return nil, errShallow
 	}
 	if !complete {
@@ -258,22 +267,22 @@ func (a *app) record(ctx context.Context, doc *assessment.Document, into *record
 	if err := needPolicies(line, &doc.Computed); err != nil {
 		return render.Record{}, err
 	}
-	number, added, head, err := l.RecordAssessment(ctx, time.Now(), assessment.LedgerRecord(doc, body, digest))
+	in, err := l.RecordAssessment(ctx, time.Now(), assessment.LedgerRecord(doc, body, digest))
 	if err != nil {
 		return render.Record{}, fmt.Errorf("the assessment was not recorded: %w", err)
 	}
-	if added {
-		a.remark("recorded as assessment %d; head of the ledger %s (note it elsewhere: it proves later that nothing was removed)", number, head)
+	if in.Added {
+		a.remark("recorded as assessment %d; head of the ledger %s (note it elsewhere: it proves later that nothing was removed)", in.Number, in.Head)
 	} else {
-		a.remark("assessment %d holds this result already, nothing was added; head of the ledger %s", number, head)
+		a.remark("assessment %d holds this result already, nothing was added; head of the ledger %s", in.Number, in.Head)
 	}
 	if _, err := history.ReadOn(ctx, l, line); err != nil {
 		return render.Record{}, err
 	}
-	if x := line.Assessment(number); x == nil || x.Digest != digest {
-		return render.Record{}, ledger.Damaged(fmt.Errorf("assessment %d, which is said to hold this result, holds another", number))
+	if x := line.Assessment(in.Number); x == nil || x.Digest != digest {
+		return render.Record{}, ledger.Damaged(fmt.Errorf("assessment %d, which is said to hold this result, holds another", in.Number))
 	}
-	return recordOf(line, l.ID(), number, digest), nil
+	return recordOf(line, l.ID(), in.Number, digest), nil
 }
 
 // needPolicies refuses, once a policy is anchored for the folder, a revision

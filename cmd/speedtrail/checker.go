@@ -41,7 +41,8 @@ func (c *checker) recompute(ctx context.Context, repo *revision.Repo, doc *asses
 	one := &app{in: c.a.in, out: c.a.out, err: c.a.err, repo: c.a.repo, data: d.Folder, quiet: true}
 	options := d.Options
 	options.Requests = slices.Clone(options.Requests)
-	again, err := one.compute(ctx, repo, d.Base.Commit, d.Target.Commit, options, true, func(assessment.Revision, string, string) (string, error) { return d.PreparedSince, nil })
+	asRecorded := func(assessment.Revision, string, string) (string, error) { return d.PreparedSince, nil }
+	again, err := one.compute(ctx, repo, comparison{base: d.Base.Commit, target: d.Target.Commit, Options: options, whole: true, since: asRecorded})
 	if err != nil {
 		return "", err
 	}

@@ -63,7 +63,7 @@ func (a *app) demo(ctx context.Context, dir string) (err error) {
 	if err := a.demoAudit(ctx, repo, dir); err != nil {
 		return fmt.Errorf("the demonstration's audit trail was not written: %w", err)
 	}
-	doc, err := a.compute(ctx, repo, network.Base, network.Target, assessment.Options{Requests: []string{}}, true, fromBase)
+	doc, err := a.compute(ctx, repo, comparison{base: network.Base, target: network.Target, Options: assessment.Options{Requests: []string{}}, whole: true, since: fromBase})
 	if err != nil {
 		return err
 	}

@@ -124,7 +124,7 @@ func signAs(s signoff.Statement, by demo.Signer) (*signed, error) {
 func (t *demoTrail) sign(ctx context.Context, s demo.Signing) error {
 	number, ok := t.numbers[s.Target]
 	if !ok {
-		doc, err := t.a.compute(ctx, t.repo, s.Base, s.Target, assessment.Options{Requests: []string{}}, true, fromBase)
+		doc, err := t.a.compute(ctx, t.repo, comparison{base: s.Base, target: s.Target, Options: assessment.Options{Requests: []string{}}, whole: true, since: fromBase})
 		if err != nil {
 			return err
 		}
@@ -132,9 +132,11 @@ func (t *demoTrail) sign(ctx context.Context, s demo.Signing) error {
 		if err != nil {
 			return err
 		}
-		if number, _, _, err = t.l.RecordAssessment(ctx, s.When.Add(-2*time.Hour), assessment.LedgerRecord(doc, body, digest)); err != nil {
+		in, err := t.l.RecordAssessment(ctx, s.When.Add(-2*time.Hour), assessment.LedgerRecord(doc, body, digest))
+		if err != nil {
 			return err
 		}
+		number = in.Number
 		t.numbers[s.Target] = number
 	}
 	line, _, err := history.ReadLine(ctx, t.l)

@@ -119,7 +119,7 @@ func (a *app) inforceWhen(ctx context.Context, when time.Time, route, at string)
 		}
 	}
 	if now != nil {
-		if err := a.fillInForce(ctx, &answer, line, *now, when, route, at); err != nil {
+		if err := a.fillInForce(ctx, &answer, line, *now, when); err != nil {
 			return err
 		}
 	}
@@ -175,8 +175,8 @@ func recordsOfRoutes(line *approval.Line, folder string, when time.Time, network
 	return list
 }
 
-// fillInForce adds the evidence, and the speeds at the point.
-func (a *app) fillInForce(ctx context.Context, answer *inForceAnswer, line *approval.Line, now approval.Record, when time.Time, route, at string) error {
+// fillInForce adds the evidence, and the speeds at the point that was asked for.
+func (a *app) fillInForce(ctx context.Context, answer *inForceAnswer, line *approval.Line, now approval.Record, when time.Time) error {
 	s := history.ServiceOf(line, now)
 	r := serviceRecordOf(line, s)
 	answer.Record = &r
@@ -200,14 +200,14 @@ func (a *app) fillInForce(ctx context.Context, answer *inForceAnswer, line *appr
 	if tree := content(files); tree != now.Content {
 		return ledger.Damaged(fmt.Errorf("entry %d says that commit %s has the content %s, in Git it has %s", now.Entry.Seq, now.Revision, now.Content, tree))
 	}
-	if route == "" {
+	if answer.Route == "" {
 		return nil
 	}
 	data, err := schema.Load(ctx, files)
 	if err != nil {
 		return &sideError{"the revision in force", err}
 	}
-	answer.Speeds, err = speedsAt(data, route, at, when)
+	answer.Speeds, err = speedsAt(data, answer.Route, answer.At, when)
 	return err
 }
 

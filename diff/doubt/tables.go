@@ -165,19 +165,18 @@ func (c *check) curves() {
 		curve := &c.route.Curves[i]
 		var slowest unit.Speed
 		for row := range c.speeds.on(curve.Start, curve.End) {
-			from, to := max(row.Start, curve.Start), min(row.End, curve.End)
 			basic, given := basicFor(row)
 			if given = given && impact.CantDeficiencyAbove(row.Basic, curve.RadiusM, curve.CantMM, basic.MM()); given {
-				c.curveSpeed(row, curve, from, to, fmt.Sprintf("basic is %d km/h", row.Basic), row.Basic, basic)
+				c.curveSpeed(row, curve, fmt.Sprintf("basic is %d km/h", row.Basic), row.Basic, basic)
 			}
 			for cat := range codes.CantDeficiency(codes.CantDeficiencies) {
 				v := row.Cant[cat]
 				// A column that repeats the basic speed says nothing more.
 				if v > 0 && !(given && v == row.Basic) && impact.CantDeficiencyAbove(v, curve.RadiusM, curve.CantMM, cat.MM()) {
-					c.curveSpeed(row, curve, from, to, fmt.Sprintf("%s is %d km/h", cat.Column(), v), v, cat)
+					c.curveSpeed(row, curve, fmt.Sprintf("%s is %d km/h", cat.Column(), v), v, cat)
 				}
 			}
-			c.trainsOnCurve(row, curve, from, to)
+			c.trainsOnCurve(row, curve)
 			for _, t := range c.trains {
 				v := min(profile.StaticSpeedOf(row, profile.ClassOf(t)), t.Max)
 				if slowest == 0 || v < slowest {
@@ -207,7 +206,7 @@ func basicFor(row *schema.SpeedRow) (highest codes.CantDeficiency, ok bool) {
 
 // trainsOnCurve looks at the speeds that reference trains have on a curve where no
 // column by itself is too fast: by that of another category, or by the basic speed.
-func (c *check) trainsOnCurve(row *schema.SpeedRow, curve *schema.CurveRow, from, to unit.Distance) {
+func (c *check) trainsOnCurve(row *schema.SpeedRow, curve *schema.CurveRow) {
 	type reason struct {
 		cant codes.CantDeficiency
 		v    unit.Speed
@@ -231,13 +230,14 @@ func (c *check) trainsOnCurve(row *schema.SpeedRow, curve *schema.CurveRow, from
 		trains[x] = append(trains[x], t.ID)
 	}
 	for _, x := range order {
-		c.curveSpeed(row, curve, from, to, fmt.Sprintf("%d km/h for %s", x.v, strings.Join(trains[x], ", ")), x.v, x.cant)
+		c.curveSpeed(row, curve, fmt.Sprintf("%d km/h for %s", x.v, strings.Join(trains[x], ", ")), x.v, x.cant)
 	}
 }
 
-// curveSpeed adds that a speed on a curve asks for more cant deficiency than a
-// category admits; says is whose speed it is.
-func (c *check) curveSpeed(row *schema.SpeedRow, curve *schema.CurveRow, from, to unit.Distance, says string, v unit.Speed, cat codes.CantDeficiency) {
+// curveSpeed adds that a speed in km/h asks for more cant deficiency than a category
+// admits, where a row and a curve meet; says is whose speed it is.
+func (c *check) curveSpeed(row *schema.SpeedRow, curve *schema.CurveRow, says string, v unit.Speed, cat codes.CantDeficiency) {
+	from, to := max(row.Start, curve.Start), min(row.End, curve.End)
 	c.list = append(c.list, named(Doubt{ID: CurveSpeed, Directions: row.Directions & c.route.Directions, From: from, To: to, Row: row.Pos, Text: fmt.Sprintf(
 		"%s; on the curve of %d m with %d mm of cant (%s) that is a cant deficiency of %s mm, and %d mm carry %d km/h",
 		says, curve.RadiusM, curve.CantMM, other, hundredths(impact.CantDeficiency(v, curve.RadiusM, curve.CantMM)), cat.MM(),

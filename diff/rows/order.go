@@ -27,24 +27,13 @@ const (
 // inOrder accounts for rows that no name identifies: both sides in the order of
 // the track, the cheapest way from one to the other.
 func (m *matcher) inOrder(a, b []int) []Difference {
-	sort := func(side int, list []int) {
-		slices.SortStableFunc(list, func(x, y int) int {
-			p, q := m.row(side, x), m.row(side, y)
-			return cmp.Or(cmp.Compare(p.Start, q.Start), cmp.Compare(p.To.Chainage, q.To.Chainage),
-				strings.Compare(strings.Join(p.Cells, "\x00"), strings.Join(q.Cells, "\x00")))
-		})
-	}
-	sort(0, a)
-	sort(1, b)
+	m.sort(0, a)
+	m.sort(1, b)
 	if len(a)*len(b) > cellLimit {
 		return m.samePlace(a, b)
 	}
-	// price[i][k] is the least price of accounting for a[i:] and b[k:].
-	type way struct {
-		price int
-		a, b  int // how many rows are taken on each side
-	}
-	best := make([][]way, len(a)+1)
+	var first []way
+	best := make([][]way, len(a)+1) // of what is left of both sides
 	for i := range best {
 		best[i] = make([]way, len(b)+1)
 	}
@@ -53,32 +42,12 @@ func (m *matcher) inOrder(a, b []int) []Difference {
 			if i == len(a) && k == len(b) {
 				continue
 			}
+			first = m.firstSteps(first[:0], a[i:], b[k:])
 			found := way{price: math.MaxInt}
-			take := func(price, da, db int) {
-				if p := price + best[i+da][k+db].price; p < found.price {
-					found = way{p, da, db}
+			for _, w := range first {
+				if w.price += best[i+w.a][k+w.b].price; w.price < found.price {
+					found = w
 				}
-			}
-			if i < len(a) && k < len(b) {
-				if m.related(a[i], b[k]) {
-					take(rowPrice+cellPrice*len(m.cells(a[i], b[k])), 1, 1)
-				}
-				for n := 2; n <= mostParts && k+n <= len(b); n++ {
-					if m.covers(0, a[i], 1, b[k:k+n]) {
-						take(rowPrice+n+cellPrice*m.otherCells(a[i:i+1], b[k:k+n]), 1, n)
-					}
-				}
-				for n := 2; n <= mostParts && i+n <= len(a); n++ {
-					if m.covers(1, b[k], 0, a[i:i+n]) {
-						take(rowPrice+n+cellPrice*m.otherCells(a[i:i+n], b[k:k+1]), n, 1)
-					}
-				}
-			}
-			if i < len(a) {
-				take(rowPrice+m.filled(0, a[i]), 1, 0)
-			}
-			if k < len(b) {
-				take(rowPrice+m.filled(1, b[k]), 0, 1)
 			}
 			best[i][k] = found
 		}
@@ -88,6 +57,49 @@ func (m *matcher) inOrder(a, b []int) []Difference {
 		w := best[i][k]
 		list = append(list, m.difference(a[i:i+w.a], b[k:k+w.b]))
 		i, k = i+w.a, k+w.b
+	}
+	return list
+}
+
+// way is a way through what is left of both sides, known by its first step.
+type way struct {
+	price int
+	a, b  int // how many rows the first step takes on each side
+}
+
+// sort puts rows of a side in the order of the track.
+func (m *matcher) sort(side int, list []int) {
+	slices.SortStableFunc(list, func(x, y int) int {
+		p, q := m.row(side, x), m.row(side, y)
+		return cmp.Or(cmp.Compare(p.Start, q.Start), cmp.Compare(p.To.Chainage, q.To.Chainage),
+			strings.Compare(strings.Join(p.Cells, "\x00"), strings.Join(q.Cells, "\x00")))
+	})
+}
+
+// firstSteps appends the steps that can be taken from the first rows of both sides, each
+// with its own price: two rows that belong together, one that was split, some that
+// were merged, one that is on one side only.
+func (m *matcher) firstSteps(list []way, a, b []int) []way {
+	if len(a) > 0 && len(b) > 0 {
+		if m.related(a[0], b[0]) {
+			list = append(list, way{rowPrice + cellPrice*len(m.cells(a[0], b[0])), 1, 1})
+		}
+		for n := 2; n <= mostParts && n <= len(b); n++ {
+			if m.covers(0, a[0], 1, b[:n]) {
+				list = append(list, way{rowPrice + n + cellPrice*m.otherCells(a[:1], b[:n]), 1, n})
+			}
+		}
+		for n := 2; n <= mostParts && n <= len(a); n++ {
+			if m.covers(1, b[0], 0, a[:n]) {
+				list = append(list, way{rowPrice + n + cellPrice*m.otherCells(a[:n], b[:1]), n, 1})
+			}
+		}
+	}
+	if len(a) > 0 {
+		list = append(list, way{rowPrice + m.filled(0, a[0]), 1, 0})
+	}
+	if len(b) > 0 {
+		list = append(list, way{rowPrice + m.filled(1, b[0]), 0, 1})
 	}
 	return list
 }

@@ -7,6 +7,7 @@ import (
 	"speedtrail/history/canon"
 	"speedtrail/history/chain"
 	"speedtrail/history/signoff"
+	"speedtrail/schema"
 )
 
 // addAnchor takes up an anchor.
@@ -62,7 +63,47 @@ func (l *Line) checkAnchor(body AnchorBody, unsigned []Unsigned, whole bool, rec
 	if err != nil {
 		return nil, err
 	}
-	var records []Record
+	records, err := anchorStatements(body, unsigned, recorded)
+	if err != nil {
+		return nil, err
+	}
+	if len(records) == 0 {
+		return nil, refuse("nobody signs the anchor")
+	}
+	if folder := records[0].Folder; l.anchors[folder] != nil {
+		return nil, refuse("the folder %s has an anchor already, entry %d", folder, l.anchors[folder].Entry.Seq)
+	}
+	a := &AnchorRecord{Policy: p}
+	seen := map[string]bool{}
+	for _, r := range records {
+		if err := l.checkAnchorStatement(&r, p); err != nil {
+			return nil, err
+		}
+		if seen[signoff.Hash(r.Text)] {
+			return nil, refuse("a statement stands twice in the anchor")
+		}
+		seen[signoff.Hash(r.Text)] = true
+		if first := a.Records; len(first) > 0 && (first[0].Revision != r.Revision || first[0].Folder != r.Folder || first[0].Content != r.Content) {
+			return nil, refuse("the statements name different revisions, folders or contents")
+		}
+		for _, other := range a.Records {
+			if other.Signer == r.Signer && other.Role != r.Role && policy.Independent(other.Role, r.Role) {
+				return nil, refuse("%s signs as %s and as %s, which must be different people", r.Signer, other.Role, r.Role)
+			}
+		}
+		a.Records = append(a.Records, r)
+	}
+	if whole {
+		if err := enoughSign(policy, a.Records); err != nil {
+			return nil, err
+		}
+	}
+	a.Revision, a.Content = a.Records[0].Revision, a.Records[0].Content
+	return a, nil
+}
+
+// anchorStatements reads the statements of an anchor, signed and unsigned.
+func anchorStatements(body AnchorBody, unsigned []Unsigned, recorded time.Time) (records []Record, err error) {
 	for _, signed := range body.Statements {
 		r, err := readAnchorStatement(signed, recorded)
 		if err != nil {
@@ -77,46 +118,24 @@ func (l *Line) checkAnchor(body AnchorBody, unsigned []Unsigned, whole bool, rec
 		}
 		records = append(records, Record{Statement: u.Statement, Recorded: recorded, Text: text, Fingerprint: u.Fingerprint, foreseen: true})
 	}
-	if len(records) == 0 {
-		return nil, refuse("nobody signs the anchor")
-	}
-	if folder := records[0].Folder; l.anchors[folder] != nil {
-		return nil, refuse("the folder %s has an anchor already, entry %d", folder, l.anchors[folder].Entry.Seq)
-	}
-	a := &AnchorRecord{Policy: p}
+	return records, nil
+}
+
+// enoughSign checks that as many people sign in each role as its policy needs.
+func enoughSign(policy *schema.Policy, records []Record) error {
 	people := map[string]map[string]bool{} // role -> signers
-	roles := map[string][]string{}         // signer -> roles
-	seen := map[string]bool{}
 	for _, r := range records {
-		if err := l.checkAnchorStatement(&r, p); err != nil {
-			return nil, err
-		}
-		if seen[signoff.Hash(r.Text)] {
-			return nil, refuse("a statement stands twice in the anchor")
-		}
-		seen[signoff.Hash(r.Text)] = true
-		if first := a.Records; len(first) > 0 && (first[0].Revision != r.Revision || first[0].Folder != r.Folder || first[0].Content != r.Content) {
-			return nil, refuse("the statements name different revisions, folders or contents")
-		}
-		for _, role := range roles[r.Signer] {
-			if role != r.Role && policy.Independent(role, r.Role) {
-				return nil, refuse("%s signs as %s and as %s, which must be different people", r.Signer, role, r.Role)
-			}
-		}
-		roles[r.Signer] = append(roles[r.Signer], r.Role)
 		if people[r.Role] == nil {
 			people[r.Role] = map[string]bool{}
 		}
 		people[r.Role][r.Signer] = true
-		a.Records = append(a.Records, r)
 	}
 	for _, role := range policy.Roles {
-		if n := len(people[role.Name]); whole && n < role.Needed {
-			return nil, refuse("the role %s is signed by %d of %d people", role.Name, n, role.Needed)
+		if n := len(people[role.Name]); n < role.Needed {
+			return refuse("the role %s is signed by %d of %d people", role.Name, n, role.Needed)
 		}
 	}
-	a.Revision, a.Content = a.Records[0].Revision, a.Records[0].Content
-	return a, nil
+	return nil
 }
 
 func readAnchorStatement(signed Signed, recorded time.Time) (Record, error) {

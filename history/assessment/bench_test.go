@@ -171,11 +171,11 @@ func assess(tb testing.TB, j job) phases {
 	body, digest, err := doc.Encode()
 	must(err)
 	p.end("encode")
-	_, added, _, err := l.RecordAssessment(ctx, time.Now(), assessment.LedgerRecord(doc, body, digest))
+	recorded, err := l.RecordAssessment(ctx, time.Now(), assessment.LedgerRecord(doc, body, digest))
 	must(err)
 	must(l.Close())
 	p.end("record")
-	if !added {
+	if !recorded.Added {
 		tb.Fatal("nothing was recorded")
 	}
 	return p

@@ -20,67 +20,88 @@ const farthest = int64(schema.MaxJumps+1) * 2 * unit.MaxKM * int64(unit.Kilometr
 // from lies where a chart can, so that nothing that is written from a stored document
 // can go wrong.
 func (c *Computed) check() error {
-	speeds := func(list ...int) bool {
-		return !slices.ContainsFunc(list, func(v int) bool { return v < 0 || v > int(unit.MaxSpeed) })
-	}
-	ascend := func(list ...int64) bool {
-		return slices.IsSorted(list) && list[0] >= 0 && list[len(list)-1] <= farthest
-	}
-	within := func(n int, list ...int) bool {
-		return !slices.ContainsFunc(list, func(i int) bool { return i < 0 || i >= n })
-	}
 	if strings.Trim(c.PreparedSince, "0123456789abcdef") != "" {
 		return errors.New("prepared_since is no hash of a commit")
 	}
 	for i := range c.Routes {
-		r := &c.Routes[i]
-		for _, list := range [...][]Change{r.Changes, r.Masked} {
-			for k := range list {
-				x := &list[k]
-				if !within(len(r.Sources), x.BeforeSource, x.AfterSource) || !within(len(r.Causes), x.Cause) || !within(len(c.Trains), x.Trains...) || !c.hasPieces(r, x.Pieces) {
-					return fmt.Errorf("change %d of route %s points to what is not there", k, source.Quote(r.ID))
-				}
-				if !speeds(x.Before, x.After) || !ascend(x.Start, x.Start+x.Length) {
-					return fmt.Errorf("change %d of route %s has a speed or a place that cannot be", k, source.Quote(r.ID))
-				}
-			}
-		}
-		for _, t := range r.Track {
-			if !c.hasPieces(r, t.Pieces) {
-				return fmt.Errorf("the track of route %s points to what is not there", source.Quote(r.ID))
-			}
-		}
-		for _, list := range r.Causes {
-			for _, x := range list {
-				if !within(len(c.Source), x.File) || !within(len(c.Source[x.File].Rows), x.Row) {
-					return fmt.Errorf("a cause of route %s points to what is not there", source.Quote(r.ID))
-				}
-			}
+		if err := c.checkRoute(&c.Routes[i]); err != nil {
+			return err
 		}
 	}
 	for i := range c.Stretches.List {
-		s := &c.Stretches.List[i]
-		if !within(len(c.Routes), s.Route) || len(s.Changes) == 0 || !within(len(c.Routes[s.Route].Changes), s.Changes...) || !within(len(c.Trains), s.Trains...) {
-			return fmt.Errorf("stretch %d points to what is not there", i)
-		}
-		for _, x := range slices.Concat(s.Before, s.After) {
-			if !within(len(c.Routes[s.Route].Sources), x.Source) {
-				return fmt.Errorf("stretch %d points to what is not there", i)
-			}
-			if !speeds(x.Speed) || !ascend(x.From, x.To) {
-				return fmt.Errorf("stretch %d has a speed or a place that cannot be", i)
-			}
-		}
-		if !ascend(s.WindowFrom, s.From, s.To, s.WindowTo, s.RouteLength) {
-			return fmt.Errorf("stretch %d has a place that cannot be", i)
+		if err := c.checkStretch(&c.Stretches.List[i]); err != nil {
+			return fmt.Errorf("stretch %d %w", i, err)
 		}
 	}
 	for i, x := range c.Figures.Curves {
 		if !within(len(c.Trains), x.Trains...) {
-			return fmt.Errorf("curve %d points to what is not there", i)
+			return fmt.Errorf("curve %d %w", i, errNotThere)
 		}
 	}
 	return nil
+}
+
+var errNotThere = errors.New("points to what is not there")
+
+func (c *Computed) checkRoute(r *Route) error {
+	for _, list := range [...][]Change{r.Changes, r.Masked} {
+		for k := range list {
+			x := &list[k]
+			if !within(len(r.Sources), x.BeforeSource, x.AfterSource) || !within(len(r.Causes), x.Cause) || !within(len(c.Trains), x.Trains...) || !c.hasPieces(r, x.Pieces) {
+				return fmt.Errorf("change %d of route %s %w", k, source.Quote(r.ID), errNotThere)
+			}
+			if !areSpeeds(x.Before, x.After) || !ascend(x.Start, x.Start+x.Length) {
+				return fmt.Errorf("change %d of route %s has a speed or a place that cannot be", k, source.Quote(r.ID))
+			}
+		}
+	}
+	for _, t := range r.Track {
+		if !c.hasPieces(r, t.Pieces) {
+			return fmt.Errorf("the track of route %s %w", source.Quote(r.ID), errNotThere)
+		}
+	}
+	for _, list := range r.Causes {
+		for _, x := range list {
+			if !within(len(c.Source), x.File) || !within(len(c.Source[x.File].Rows), x.Row) {
+				return fmt.Errorf("a cause of route %s %w", source.Quote(r.ID), errNotThere)
+			}
+		}
+	}
+	return nil
+}
+
+func (c *Computed) checkStretch(s *Stretch) error {
+	if !within(len(c.Routes), s.Route) || len(s.Changes) == 0 || !within(len(c.Routes[s.Route].Changes), s.Changes...) || !within(len(c.Trains), s.Trains...) {
+		return errNotThere
+	}
+	for _, x := range slices.Concat(s.Before, s.After) {
+		if !within(len(c.Routes[s.Route].Sources), x.Source) {
+			return errNotThere
+		}
+		if !areSpeeds(x.Speed) || !ascend(x.From, x.To) {
+			return errors.New("has a speed or a place that cannot be")
+		}
+	}
+	if !ascend(s.WindowFrom, s.From, s.To, s.WindowTo, s.RouteLength) {
+		return errors.New("has a place that cannot be")
+	}
+	return nil
+}
+
+// areSpeeds tells of numbers in km/h whether each can be a speed, 0 for none.
+func areSpeeds(list ...int) bool {
+	return !slices.ContainsFunc(list, func(v int) bool { return v < 0 || v > int(unit.MaxSpeed) })
+}
+
+// ascend tells of one number or more in millimetres whether they are places of a track
+// in its order.
+func ascend(list ...int64) bool {
+	return slices.IsSorted(list) && list[0] >= 0 && list[len(list)-1] <= farthest
+}
+
+// within tells whether every index is one of n elements.
+func within(n int, list ...int) bool {
+	return !slices.ContainsFunc(list, func(i int) bool { return i < 0 || i >= n })
 }
 
 // hasPieces tells whether a list of pieces is there, and the declarations in it.

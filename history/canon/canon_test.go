@@ -104,6 +104,7 @@ func TestPlainly(t *testing.T) {
 		{`{"":1,"A":1,"a":2}`, true, true}, {`{"a":1,"aa":2}`, true, true}, {`{"aa":1,"a":2}`, false, false}, {`{"a":1,"a":2}`, false, false},
 		{`{"b":1,"a":2}`, false, false}, {`{"":1,"":2}`, false, false}, {`[{"b":1},{"a":1}]`, true, true},
 		{`"\b\t\n\f\r\"\\"`, true, true}, {`"\u0000\u000b\u000e\u001f"`, true, true}, {`"\u0008"`, false, false}, {`"\u0009"`, false, false},
+		{`"\u001g"`, false, false}, {`"\u001:"`, false, false}, {`"\u0010"`, true, true}, {`"\u001a"`, true, true},
 		{`"\u000a"`, false, false}, {`"\u000c"`, false, false}, {`"\u000d"`, false, false}, {`"\u001F"`, false, false}, {`"\u0020"`, false, false},
 		{`"\/"`, false, false}, {`"\u00"`, false, false}, {`"\`, false, false}, {`"\u`, false, false}, {`"\x"`, false, false},
 		{"\"\u00e9\u20ac\U0001f600\u007f\"", true, true}, {"\"\xc3\"", false, false}, {"\"\xed\xa0\x80\"", false, false}, {"\"\x1f\"", false, false}, {"\"\n\"", false, false},

@@ -25,6 +25,19 @@ func TestInOrder(t *testing.T) {
 		{"ordered", ordered{}, true},
 		{"a slice of pointers", []*ordered{}, true},
 		{"disordered", disordered{}, false},
+		{"disordered at the beginning", struct {
+			B int `json:"b"`
+			A int `json:"a"`
+			C int `json:"c"`
+		}{}, false},
+		{"a fraction before others", struct {
+			A float64 `json:"a"`
+			B int     `json:"b"`
+		}{}, false},
+		{"an option before others", struct {
+			A int `json:"a,omitempty"`
+			B int `json:"b"`
+		}{}, false},
 		{"disordered within", struct {
 			A []disordered `json:"a"`
 		}{}, false},

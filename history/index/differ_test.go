@@ -3,6 +3,8 @@ package index
 import (
 	"bytes"
 	"context"
+	"database/sql"
+	"errors"
 	"math/rand/v2"
 	"path/filepath"
 	"testing"
@@ -92,6 +94,17 @@ func TestUnpack(t *testing.T) {
 				t.Fatalf("version %d: %x, %v", i, got, err)
 			}
 			u.rows[rows[i].id] = rows[i]
+		}
+	}
+	// A version is made of an earlier one.
+	u := &unpacker{ctx: ctx, x: x, rows: map[int64]row{8: {id: 8, data: rows[0].data}}, whole: map[int64][]byte{}}
+	if got, err := u.unpack(row{id: 9, base: sql.NullInt64{Int64: 8, Valid: true}, data: rows[1].data}); err != nil || !bytes.Equal(got, want[1]) {
+		t.Errorf("of an earlier version: %x, %v", got, err)
+	}
+	for _, id := range []int64{7, 8} {
+		u := &unpacker{ctx: ctx, x: x, rows: u.rows, whole: map[int64][]byte{}}
+		if got, err := u.unpack(row{id: id, base: sql.NullInt64{Int64: 8, Valid: true}, data: rows[1].data}); !errors.Is(err, errDamaged) {
+			t.Errorf("version %d of version 8: %x, %v", id, got, err)
 		}
 	}
 	for _, damage := range []string{"DELETE FROM version WHERE base IS NULL", "UPDATE version SET base = id", "UPDATE version SET base = id + 1"} {

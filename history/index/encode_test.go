@@ -82,6 +82,33 @@ func TestEncode(t *testing.T) {
 	}
 }
 
+// What is cut short, and what goes on behind its end, is damaged; so is a number that
+// does not end.
+func TestDecodeCutShort(t *testing.T) {
+	data, err := opened(encode(one(t)))
+	if err != nil {
+		t.Fatal(err)
+	}
+	for n := range data {
+		if r, err := decodeOpened(data[:n], "routes/x"); err == nil {
+			t.Errorf("the first %d of %d bytes are %+v", n, len(data), r)
+		}
+	}
+	if _, err := decodeOpened(append(data[:len(data):len(data)], 0), "routes/x"); err == nil {
+		t.Error("a byte more is passed over")
+	}
+	for _, data := range [][]byte{nil, {0x80}, {0xff, 0xff, 0xff, 0xff, 0xff, 0xff, 0xff, 0xff, 0xff, 0xff, 1}} {
+		for name, read := range map[string]func(r *reader){
+			"int": func(r *reader) { r.int() }, "uint": func(r *reader) { r.uint() }, "text": func(r *reader) { r.text() }, "count": func(r *reader) { r.count() },
+		} {
+			r := &reader{data: data}
+			if read(r); !r.bad {
+				t.Errorf("%s reads %x", name, data)
+			}
+		}
+	}
+}
+
 // What is damaged is an error, never a panic.
 func FuzzDecode(f *testing.F) {
 	data, _ := opened(encode(one(f)))

@@ -54,41 +54,48 @@ type Change struct {
 // given back first: SQLite copies the body twice on its way into the file.
 const largeBody = 8 << 20
 
-// RecordAssessment appends an assessment. One whose digest is there already
-// adds nothing: added is false and number is that of the one that is there. One
+// Recorded is where an assessment stands in a ledger.
+type Recorded struct {
+	Number int64
+	Added  bool       // by this call; else one of its digest was there already
+	Head   chain.Head // of the ledger afterwards
+}
+
+// RecordAssessment appends an assessment, unless there is one of its digest. One
 // without both commits, as of a working tree, is refused.
-func (l *Ledger) RecordAssessment(ctx context.Context, now time.Time, r Record) (number int64, added bool, head chain.Head, err error) {
+func (l *Ledger) RecordAssessment(ctx context.Context, now time.Time, r Record) (Recorded, error) {
 	if len(r.Body) > largeBody {
 		debug.FreeOSMemory()
 	}
 	if r.Base == "" || r.Target == "" {
-		return 0, false, chain.Head{}, errors.New("an assessment of what is not committed cannot be computed anew, and is not recorded")
+		return Recorded{}, errors.New("an assessment of what is not committed cannot be computed anew, and is not recorded")
 	}
-	err = l.transaction(ctx, func() error {
-		if head, err = l.Head(ctx); err != nil {
+	var in Recorded
+	err := l.transaction(ctx, func() (err error) {
+		if in.Head, err = l.Head(ctx); err != nil {
 			return err
 		}
-		err := l.conn.QueryRowContext(ctx, "SELECT number FROM assessment WHERE digest = ?", r.Digest).Scan(&number)
+		err = l.conn.QueryRowContext(ctx, "SELECT number FROM assessment WHERE digest = ?", r.Digest).Scan(&in.Number)
 		if err == nil || !errors.Is(err, sql.ErrNoRows) {
 			return err
 		}
-		if err := l.conn.QueryRowContext(ctx, "SELECT coalesce(max(number), 0) + 1 FROM assessment").Scan(&number); err != nil {
+		if err := l.conn.QueryRowContext(ctx, "SELECT coalesce(max(number), 0) + 1 FROM assessment").Scan(&in.Number); err != nil {
 			return err
 		}
-		e := chain.Next(head, now, chain.Assessment, r.Body)
+		e := chain.Next(in.Head, now, chain.Assessment, r.Body)
 		if err := l.insertEntry(ctx, e); err != nil {
 			return err
 		}
-		if err := l.insertRows(ctx, number, e.Seq, r); err != nil {
+		if err := l.insertRows(ctx, in.Number, e.Seq, r); err != nil {
 			return err
 		}
-		head, added = e.Head(), true
+		in.Head, in.Added = e.Head(), true
 		return nil
 	})
 	if err != nil {
-		return 0, false, chain.Head{}, err
+		return Recorded{}, err
 	}
-	return number, added, head, nil
+	return in, nil
 }
 
 // insertRows writes the tables that repeat an assessment.

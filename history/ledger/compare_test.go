@@ -15,12 +15,12 @@ func TestCompareRows(t *testing.T) {
 	file := filepath.Join(t.TempDir(), "ledger.db")
 	l := open(t, file)
 	want := record("a", 3)
-	number, _, head, err := l.RecordAssessment(t.Context(), when, want)
+	in, err := l.RecordAssessment(t.Context(), when, want)
 	if err != nil {
 		t.Fatal(err)
 	}
 	counts := map[string]int64{"assessment": 1, "request": 2, "preparer": 1, "finding": 1, "speed_change": 3}
-	if got, err := l.CompareRows(t.Context(), number, head.Seq, want); err != nil || !maps.Equal(got, counts) {
+	if got, err := l.CompareRows(t.Context(), in.Number, in.Head.Seq, want); err != nil || !maps.Equal(got, counts) {
 		t.Fatal(got, err)
 	}
 	db, err := sql.Open("sqlite3", file)
@@ -37,7 +37,7 @@ func TestCompareRows(t *testing.T) {
 		}
 	}
 	counts["finding"] = 0
-	got, err := l.CompareRows(t.Context(), number, head.Seq, want)
+	got, err := l.CompareRows(t.Context(), in.Number, in.Head.Seq, want)
 	if !errors.Is(err, ErrDamaged) || !strings.Contains(err.Error(), "row 2 of table request has title another") || !maps.Equal(got, counts) {
 		t.Error(got, err)
 	}

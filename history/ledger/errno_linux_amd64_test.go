@@ -109,8 +109,8 @@ func refused(file, what string, errno syscall.Errno) {
 		fmt.Println("no seccomp:", err)
 		return
 	}
-	_, _, head, err := l.RecordAssessment(context.Background(), when, record)
-	tell(head, err)
+	in, err := l.RecordAssessment(context.Background(), when, record)
+	tell(in.Head, err)
 }
 
 // What the errors of the system itself become: the class by which a program

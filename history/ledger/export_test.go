@@ -66,7 +66,7 @@ func CreateFormat(t testing.TB, file string, format int, now time.Time, id strin
 		return l.insertEntry(ctx, chain.Next(chain.Head{}, now, chain.Ledger, body))
 	}))
 	for _, r := range records {
-		_, _, _, err := l.RecordAssessment(ctx, now, r)
+		_, err := l.RecordAssessment(ctx, now, r)
 		must(err)
 	}
 	head, err := l.Head(ctx)

@@ -7,7 +7,7 @@
 // and deletions; they stop accidents, not administrators.
 //
 //	l, err := ledger.Open(ctx, "ledger.db", ledger.Options{Create: true, Now: time.Now})
-//	number, added, head, err := l.RecordAssessment(ctx, time.Now(), record)
+//	in, err := l.RecordAssessment(ctx, time.Now(), record) // assessment in.Number
 package ledger
 
 import (

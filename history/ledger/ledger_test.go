@@ -61,19 +61,19 @@ func TestRecord(t *testing.T) {
 		name = "led#ger 1%.db" // no name there has a question mark
 	}
 	l := open(t, filepath.Join(t.TempDir(), "a folder", name))
-	n, added, head, err := l.RecordAssessment(t.Context(), when, record("one", 45))
-	if err != nil || n != 1 || !added || head.Seq != 2 {
-		t.Fatal(n, added, head, err)
+	in, err := l.RecordAssessment(t.Context(), when, record("one", 45))
+	if err != nil || in.Number != 1 || !in.Added || in.Head.Seq != 2 {
+		t.Fatal(in, err)
 	}
-	again, added, head2, err := l.RecordAssessment(t.Context(), when.Add(time.Hour), record("one", 45))
-	if err != nil || again != 1 || added || head2 != head {
-		t.Fatal("the same assessment was added again:", again, added, head2, err)
+	again, err := l.RecordAssessment(t.Context(), when.Add(time.Hour), record("one", 45))
+	if err != nil || again != (Recorded{1, false, in.Head}) {
+		t.Fatal("the same assessment was added again:", again, err)
 	}
-	if n, _, _, err := l.RecordAssessment(t.Context(), when, record("two", 0)); err != nil || n != 2 {
-		t.Fatal(n, err)
+	if two, err := l.RecordAssessment(t.Context(), when, record("two", 0)); err != nil || two.Number != 2 {
+		t.Fatal(two, err)
 	}
 	row, e, err := l.Assessment(t.Context(), 1)
-	if err != nil || string(e.Body) != `{"name":"one"}` || row.Changes != 45 || row.Findings != 1 || row.Entry != head {
+	if err != nil || string(e.Body) != `{"name":"one"}` || row.Changes != 45 || row.Findings != 1 || row.Entry != in.Head {
 		t.Fatal(row, string(e.Body), err)
 	}
 	list, err := l.Assessments(t.Context())
@@ -125,7 +125,7 @@ func TestAgainstSQLite3(t *testing.T) {
 	sqlite := program(t, "sqlite3")
 	file := filepath.Join(t.TempDir(), "ledger.db")
 	l := open(t, file)
-	if _, _, _, err := l.RecordAssessment(t.Context(), when, record("one", 41)); err != nil {
+	if _, err := l.RecordAssessment(t.Context(), when, record("one", 41)); err != nil {
 		t.Fatal(err)
 	}
 	query := func(q string) string {
@@ -177,7 +177,7 @@ func TestChainAgainstPrograms(t *testing.T) {
 	file := filepath.Join(t.TempDir(), "ledger.db")
 	l := open(t, file)
 	for i := range 3 {
-		if _, _, _, err := l.RecordAssessment(t.Context(), when, record(fmt.Sprint("a", i), 2)); err != nil {
+		if _, err := l.RecordAssessment(t.Context(), when, record(fmt.Sprint("a", i), 2)); err != nil {
 			t.Fatal(err)
 		}
 	}
@@ -280,7 +280,7 @@ func TestReadOnly(t *testing.T) {
 		t.Fatal(err)
 	}
 	defer l.Close()
-	if _, _, _, err := l.RecordAssessment(t.Context(), when, record("one", 1)); !errors.Is(err, ErrReadOnly) {
+	if _, err := l.RecordAssessment(t.Context(), when, record("one", 1)); !errors.Is(err, ErrReadOnly) {
 		t.Fatal(err)
 	}
 }
@@ -296,13 +296,13 @@ func TestLockedByAnother(t *testing.T) {
 	if err := first.exec(t.Context(), "BEGIN IMMEDIATE"); err != nil {
 		t.Fatal(err)
 	}
-	if _, _, _, err := second.RecordAssessment(t.Context(), when, record("one", 1)); !errors.Is(err, ErrLocked) {
+	if _, err := second.RecordAssessment(t.Context(), when, record("one", 1)); !errors.Is(err, ErrLocked) {
 		t.Fatal(err)
 	}
 	if err := first.exec(t.Context(), "ROLLBACK"); err != nil {
 		t.Fatal(err)
 	}
-	if _, _, _, err := second.RecordAssessment(t.Context(), when, record("one", 1)); err != nil {
+	if _, err := second.RecordAssessment(t.Context(), when, record("one", 1)); err != nil {
 		t.Fatal("after the lock was given up:", err)
 	}
 }
@@ -318,7 +318,7 @@ func TestFull(t *testing.T) {
 	if err := l.exec(t.Context(), "PRAGMA max_page_count = 60"); err != nil {
 		t.Fatal(err)
 	}
-	if _, _, _, err := l.RecordAssessment(t.Context(), when, record("big", 20_000)); !errors.Is(err, ErrFull) {
+	if _, err := l.RecordAssessment(t.Context(), when, record("big", 20_000)); !errors.Is(err, ErrFull) {
 		t.Fatal(err)
 	}
 	if after, err := l.Head(t.Context()); err != nil || after != head {
@@ -330,8 +330,8 @@ func TestFull(t *testing.T) {
 	if err := l.exec(t.Context(), "PRAGMA max_page_count = 1000000"); err != nil {
 		t.Fatal(err)
 	}
-	if n, _, _, err := l.RecordAssessment(t.Context(), when, record("big", 20_000)); err != nil || n != 1 {
-		t.Fatal(n, err)
+	if in, err := l.RecordAssessment(t.Context(), when, record("big", 20_000)); err != nil || in.Number != 1 {
+		t.Fatal(in, err)
 	}
 }
 
@@ -351,7 +351,7 @@ func TestCancelled(t *testing.T) {
 			}
 		}
 	}
-	if _, _, _, err := l.RecordAssessment(ctx, when, r); !errors.Is(err, context.Canceled) {
+	if _, err := l.RecordAssessment(ctx, when, r); !errors.Is(err, context.Canceled) {
 		t.Fatal(err)
 	}
 	if list, err := l.Assessments(t.Context()); err != nil || len(list) != 0 {
@@ -379,12 +379,12 @@ func child(file, name string) int {
 	}
 	defer l.Close()
 	for i := range 20 {
-		n, _, head, err := l.RecordAssessment(context.Background(), when, record(fmt.Sprint(name, "-", i), 30))
+		in, err := l.RecordAssessment(context.Background(), when, record(fmt.Sprint(name, "-", i), 30))
 		if err != nil {
 			fmt.Println("error", err)
 			return 1
 		}
-		fmt.Println("recorded", n, head)
+		fmt.Println("recorded", in.Number, in.Head)
 	}
 	return 0
 }
@@ -504,7 +504,7 @@ func BenchmarkRecord(b *testing.B) {
 		if err != nil {
 			b.Fatal(err)
 		}
-		if _, _, _, err := l.RecordAssessment(b.Context(), when, record("bench", rows)); err != nil {
+		if _, err := l.RecordAssessment(b.Context(), when, record("bench", rows)); err != nil {
 			b.Fatal(err)
 		}
 		l.Close()
@@ -544,8 +544,8 @@ func TestUncommittedIsNotRecorded(t *testing.T) {
 	for _, without := range []func(*Record){func(r *Record) { r.Base = "" }, func(r *Record) { r.Target = "" }} {
 		r := record("one", 1)
 		without(&r)
-		if n, added, _, err := l.RecordAssessment(t.Context(), when, r); err == nil {
-			t.Errorf("recorded as %d, %v", n, added)
+		if in, err := l.RecordAssessment(t.Context(), when, r); err == nil {
+			t.Errorf("recorded: %+v", in)
 		}
 	}
 	if head, err := l.Head(t.Context()); err != nil || head.Seq != 1 {

@@ -100,8 +100,8 @@ func makeRecord(name string, changes int) ledger.Record {
 
 // assess records an assessment.
 func assess(ctx context.Context, l *ledger.Ledger, at time.Time, name string, changes int) (chain.Head, error) {
-	_, _, head, err := l.RecordAssessment(ctx, at, recordOf(name, changes))
-	return head, err
+	in, err := l.RecordAssessment(ctx, at, recordOf(name, changes))
+	return in.Head, err
 }
 
 // sign makes the statement of a person about an assessment, by the newest head.

@@ -61,8 +61,8 @@ func rival(work, file, name string, number int) {
 	switch work {
 	case "work": // assessments and sign-offs in turn
 		for i := range number {
-			assessment, _, head, err := l.RecordAssessment(ctx, when, recordOf(fmt.Sprint(name, "-", i), 20))
-			if !tell(head, err) || !tell(signOff(ctx, l, when, assessment, i%people)) {
+			in, err := l.RecordAssessment(ctx, when, recordOf(fmt.Sprint(name, "-", i), 20))
+			if !tell(in.Head, err) || !tell(signOff(ctx, l, when, in.Number, i%people)) {
 				return
 			}
 		}

@@ -23,7 +23,35 @@ func FuzzDelta(f *testing.F) {
 	f.Add(base, []byte{16, 2, 3, 'a', 'b', 'c'}) // more than was said
 	f.Add(base, []byte{15, 2, 2, 'a', 'b'})      // of another base
 	f.Add(base, []byte{16, 16, 0x90, 8, 0x90, 8})
+	for _, short := range cutShort {
+		f.Add(base, short)
+		f.Add([]byte{}, short)
+	}
 	f.Fuzz(sameAsLibrary)
+}
+
+// cutShort are differences whose sizes do not end, or are too large for a number.
+var cutShort = [][]byte{
+	{}, {0x90}, {16}, {16, 0x80}, {0}, {0, 0x80}, bytes.Repeat([]byte{0xff}, 11), append([]byte{16}, bytes.Repeat([]byte{0xff}, 11)...),
+}
+
+// A difference without its sizes makes nothing, and not an empty object.
+func TestDeltaCutShort(t *testing.T) {
+	for _, base := range [][]byte{[]byte("0123456789abcdef"), {}} {
+		for _, short := range cutShort {
+			if out, err := applyDelta(base, short); err == nil {
+				t.Errorf("%x makes %q of %q", short, out, base)
+			}
+		}
+	}
+	// What lies behind a difference in memory is no part of it.
+	buffer := []byte{16, 4, 4, 'a', 'b', 'c', 'd'}
+	if out, err := applyDelta([]byte("0123456789abcdef"), buffer[:5]); err == nil {
+		t.Errorf("a piece that is cut short makes %q", out)
+	}
+	if out, err := applyDelta([]byte("0123456789abcdef"), []byte{16, 0}); err != nil || len(out) != 0 {
+		t.Errorf("an empty object: %q, %v", out, err)
+	}
 }
 
 // Long objects are more than a fuzzer gets through.

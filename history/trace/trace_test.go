@@ -2,6 +2,7 @@ package trace_test
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math/rand/v2"
 	"reflect"
@@ -61,6 +62,70 @@ func (d *drawn) number(t *testing.T, h *trace.History, c int32) int {
 		t.Fatal(err)
 	}
 	return n
+}
+
+// Of every two commits, one comes before the other where parents lead to it.
+func TestBeforeAndAfter(t *testing.T) {
+	d := draw(t, 5, 60)
+	h, err := trace.NewReader(d.repo, ".").History(context.Background(), d.tip, "R1", trace.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	var leads func(from, to int32) bool
+	leads = func(from, to int32) bool {
+		return from == to || slices.ContainsFunc(h.Commits[from].Parents, func(p int32) bool { return leads(p, to) })
+	}
+	merges := 0
+	for a := range int32(len(h.Commits)) {
+		before, after := h.Ancestors(a), h.Descendants(a)
+		for b := range int32(len(h.Commits)) {
+			if before[b] != leads(a, b) || after[b] != leads(b, a) {
+				t.Fatalf("of %d, %d is an ancestor: %t, a descendant: %t", a, b, before[b], after[b])
+			}
+		}
+		if len(h.Commits[a].Parents) > 1 {
+			merges++
+		}
+	}
+	if merges == 0 {
+		t.Error("nothing was merged")
+	}
+}
+
+// A merge of a commit that is not in the repository has no history that could be told:
+// that is an error, unless only first parents count.
+func TestMissingParent(t *testing.T) {
+	d := draw(t, 1, 10)
+	c := network.Command(t.Context(), d.dir, "hash-object", "-t", "commit", "-w", "--stdin")
+	c.Stdin = strings.NewReader(fmt.Sprintf("tree %s\nparent %s\nparent %040d\nauthor A <a@story.example> 1 +0000\ncommitter A <a@story.example> 1 +0000\n\nm\n", treeOf(t, d), d.tip, 7))
+	out, err := c.Output()
+	if err != nil {
+		t.Fatal(err)
+	}
+	tip, err := trace.ParseHash(strings.TrimSpace(string(out)))
+	if err != nil {
+		t.Fatal(err)
+	}
+	repo, err := revision.Open(d.dir)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer repo.Close()
+	for first, want := range map[bool]error{false: revision.ErrMissingObject, true: nil} {
+		h, err := trace.NewReader(repo, ".").History(t.Context(), tip, "R1", trace.Options{FirstParent: first})
+		if !errors.Is(err, want) || (h == nil) != (want != nil) {
+			t.Errorf("first parents only %t: %v, %v", first, h, err)
+		}
+	}
+}
+
+func treeOf(t *testing.T, d *drawn) trace.Hash {
+	t.Helper()
+	link, err := d.repo.Link(d.tip)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return link.Tree
 }
 
 // cases are points of the newest track, joints and ends included.

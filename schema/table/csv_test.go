@@ -184,20 +184,22 @@ func TestReadCSVBounds(t *testing.T) {
 
 func TestTextProblem(t *testing.T) {
 	for text, want := range map[string]string{
-		"":                             "",
-		"Ørvik – 日本, \"x\"":            "",
-		strings.Repeat("x", MaxCell):   "",
-		strings.Repeat("x", MaxCell+1): "longer than 4096 bytes",
-		"a\x00":                        "holding a control code, only visible characters are allowed",
-		"a\tb":                         "holding a control code, only visible characters are allowed",
-		"a\u0085":                      "holding a control code, only visible characters are allowed",
-		"a\x7f":                        "holding a control code, only visible characters are allowed",
-		"\u202d":                       "holding an invisible mark that can deceive a reader, only visible characters are allowed",
-		"\u2066":                       "holding an invisible mark that can deceive a reader, only visible characters are allowed",
-		"\u200e":                       "holding an invisible mark that can deceive a reader, only visible characters are allowed",
-		"\u061c":                       "holding an invisible mark that can deceive a reader, only visible characters are allowed",
-		"\u2029":                       "holding an invisible mark that can deceive a reader, only visible characters are allowed",
-		"\ufeff":                       "holding an invisible mark that can deceive a reader, only visible characters are allowed",
+		"":                                   "",
+		"Ørvik – 日本, \"x\"":                  "",
+		strings.Repeat("x", MaxCell):         "",
+		strings.Repeat("x", MaxCell+1):       "longer than 4096 bytes",
+		strings.Repeat("é", MaxCell/2):       "",
+		strings.Repeat("é", MaxCell/2) + "x": "longer than 4096 bytes",
+		"a\x00":                              "holding a control code, only visible characters are allowed",
+		"a\tb":                               "holding a control code, only visible characters are allowed",
+		"a\u0085":                            "holding a control code, only visible characters are allowed",
+		"a\x7f":                              "holding a control code, only visible characters are allowed",
+		"\u202d":                             "holding an invisible mark that can deceive a reader, only visible characters are allowed",
+		"\u2066":                             "holding an invisible mark that can deceive a reader, only visible characters are allowed",
+		"\u200e":                             "holding an invisible mark that can deceive a reader, only visible characters are allowed",
+		"\u061c":                             "holding an invisible mark that can deceive a reader, only visible characters are allowed",
+		"\u2029":                             "holding an invisible mark that can deceive a reader, only visible characters are allowed",
+		"\ufeff":                             "holding an invisible mark that can deceive a reader, only visible characters are allowed",
 	} {
 		if got := TextProblem(text); got != want {
 			t.Errorf("TextProblem(%.20q) = %q, want %q", text, got, want)

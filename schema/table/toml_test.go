@@ -70,6 +70,29 @@ func TestReadTOML(t *testing.T) {
 	}
 }
 
+// TOML takes the occurrence of a position for a comment where it is not quoted: the
+// number has it as its mark.
+func TestMarks(t *testing.T) {
+	for content, want := range map[string]string{
+		"a = 31.180#2\n": "#2", "a = 31.180#12": "#12", "a = 31.180#2 second": "#2", "a = 31.180#2:\n": "#2", "a = 31.180#2/\n": "#2",
+		"a = 31.180 #2\n": "", "a = 31.180#\n": "", "a = 31.180#x2\n": "", "a = 31.180##2\n": "", "a = 31.180": "",
+		"a = [31.180,2]\n": "", "a = [31.180#2\n]\n": "#2",
+	} {
+		var faults source.Collector
+		m := ReadTOML("t.toml", []byte(content), &faults)
+		if m == nil || faults.Count() > 0 {
+			t.Fatalf("%q: %s", content, faultText(&faults))
+		}
+		v := m.Get("a")
+		if v.Kind == ArrayKind {
+			v = &v.Items[0]
+		}
+		if v.Mark != want {
+			t.Errorf("%q: mark %q, want %q", content, v.Mark, want)
+		}
+	}
+}
+
 // A file whose form is faulty gives one fault with its place.
 func TestReadTOMLFaults(t *testing.T) {
 	tests := []struct {
@@ -92,6 +115,8 @@ func TestReadTOMLFaults(t *testing.T) {
 		{"number above 64 bits", "a = 99999999999999999999\n", 1, 5},
 		{"two values", "a = 1 b = 2\n", 1, 7},
 		{"control code", "a = \"x\x01\"\n", 1, 7},
+		{"table in an empty array", "t = []\n[t.b]\n", 2, 2},
+		{"key in an empty array", "t = []\nt.b = 1\n", 2, 1},
 	}
 	for _, c := range tests {
 		t.Run(c.name, func(t *testing.T) {

@@ -208,7 +208,12 @@ func (t *Trace) distanceChart(stretch *TraceStretch, id string) string {
 	for i := range bands {
 		y -= heights[i]
 		s.add(`<text x="%d" y="%.1f" text-anchor="end">%s</text>`, traceLeft-8, y+heights[i]-5, esc(days[i]))
-		t.band(s, bands, i, x, y, heights[i], top)
+		box := bandBox{x: x, y: y, height: heights[i], top: top}
+		box.draw(s, &bands[i])
+		if i+1 < len(bands) {
+			box.mark(s, &bands[i], &bands[i+1])
+		}
+		s.add("\n")
 	}
 	s.add(`<text x="%d" y="16" text-anchor="end" fill="#333">since</text><text x="%d" y="16" fill="#333">km/h</text>`+"\n", traceLeft-8, traceLeft)
 	t.kilometres(s, x, from, to, 24+height)
@@ -233,17 +238,24 @@ func bandHeights(bands []TraceBand, end int64) (heights []float64, all float64) 
 	return heights, all
 }
 
-// band draws one profile as a row of boxes.
-func (t *Trace) band(s *sketch, bands []TraceBand, i int, x func(int64) float64, y, h float64, top int) {
-	b := &bands[i]
+// bandBox is where a profile is drawn.
+type bandBox struct {
+	x         func(int64) float64 // of a running distance in mm
+	y, height float64
+	top       int // the highest speed of all profiles, in km/h
+}
+
+// draw draws one profile as a row of boxes.
+func (box bandBox) draw(s *sketch, b *TraceBand) {
+	y, h := box.y, box.height
 	for _, p := range b.Pieces {
-		left, width := x(p.Start), x(p.End)-x(p.Start)
+		left, width := box.x(p.Start), box.x(p.End)-box.x(p.Start)
 		fill, halo := "none", ""
 		if b.Gap {
 			halo = ` stroke="#fff" stroke-width="4" paint-order="stroke"`
 		}
 		if p.Speed > 0 && !b.Gap {
-			shade := 118 + 132*p.Speed/top // black on the darkest has a contrast of 4.5 to 1
+			shade := 118 + 132*p.Speed/box.top // black on the darkest has a contrast of 4.5 to 1
 			fill = fmt.Sprintf("#%02x%02x%02x", shade, shade, shade)
 		} else {
 			s.stripes(left, y, width, h, b.Gap)
@@ -259,12 +271,17 @@ func (t *Trace) band(s *sketch, bands []TraceBand, i int, x func(int64) float64,
 			s.add(`<text x="%.1f" y="%.1f" text-anchor="middle"%s>%s</text>`, left+width/2, y+h-5, halo, label)
 		}
 	}
-	if i+1 < len(bands) && !b.Gap && !bands[i+1].Gap {
-		for _, p := range altered(b.Pieces, bands[i+1].Pieces) {
-			s.add(`<path d="M%.1f %.1fH%.1f" stroke="#111" stroke-width="2.6"/>`, x(p.Start), y, max(x(p.End), x(p.Start)+1.5))
-		}
+}
+
+// mark draws where the next profile, above it, differs.
+func (box bandBox) mark(s *sketch, b, next *TraceBand) {
+	if b.Gap || next.Gap {
+		return
 	}
-	s.add("\n")
+	for _, p := range altered(b.Pieces, next.Pieces) {
+		left := box.x(p.Start)
+		s.add(`<path d="M%.1f %.1fH%.1f" stroke="#111" stroke-width="2.6"/>`, left, box.y, max(box.x(p.End), left+1.5))
+	}
 }
 
 // altered lists where two profiles of one stretch differ.

@@ -18,6 +18,19 @@ func Verdict(d *assessment.Document) string {
 			parts = append(parts, "The target is part of the base's history: base and target were perhaps swapped.")
 		}
 	}
+	parts = append(parts, changedSentence(c))
+	for _, s := range []string{
+		unseenSentence(c), maskedSentence(c), datesSentence(c), trackSentence(c), timeSentence(c), trainSentence(c), outsideSentence(c), findingSentence(c),
+	} {
+		if s != "" {
+			parts = append(parts, s)
+		}
+	}
+	return strings.Join(parts, " ")
+}
+
+// changedSentence says how many trains change, where and by how much at most.
+func changedSentence(c *assessment.Computed) string {
 	changed := 0
 	for _, t := range c.Trains {
 		if len(t.Routes) > 0 {
@@ -37,43 +50,26 @@ func Verdict(d *assessment.Document) string {
 		if slices.ContainsFunc(c.Routes, func(r assessment.Route) bool { return len(r.Track) > 0 }) {
 			common = ", where both revisions have the track" // other track has nothing to compare its speeds with
 		}
-		parts = append(parts, fmt.Sprintf("%s anywhere on %s of the target%s.", who, where, common))
-	} else {
-		routes := 0
-		for _, r := range c.Routes {
-			if len(r.Changes) > 0 {
-				routes++
-			}
+		return fmt.Sprintf("%s anywhere on %s of the target%s.", who, where, common)
+	}
+	routes := 0
+	for _, r := range c.Routes {
+		if len(r.Changes) > 0 {
+			routes++
 		}
-		s := fmt.Sprintf("%d of %s %s on %d of %s", changed, plural(len(c.Trains), "train", "trains"),
-			map[bool]string{true: "changes", false: "change"}[changed == 1], routes, plural(targetRoutes(c), "route", "routes"))
-		parts = append(parts, s+": "+extremes(c, func(r *assessment.Route) []assessment.Change { return r.Changes })+".")
 	}
-	if s := unseenSentence(c); s != "" {
-		parts = append(parts, s)
+	s := fmt.Sprintf("%d of %s %s on %d of %s", changed, plural(len(c.Trains), "train", "trains"),
+		map[bool]string{true: "changes", false: "change"}[changed == 1], routes, plural(targetRoutes(c), "route", "routes"))
+	return s + ": " + extremes(c, func(r *assessment.Route) []assessment.Change { return r.Changes }) + "."
+}
+
+// maskedSentence says what temporary restrictions hide.
+func maskedSentence(c *assessment.Computed) string {
+	s := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Masked })
+	if s == "" {
+		return ""
 	}
-	if s := extremes(c, func(r *assessment.Route) []assessment.Change { return r.Masked }); s != "" {
-		parts = append(parts, "Hidden today by temporary restrictions: "+s+".")
-	}
-	if s := datesSentence(c); s != "" {
-		parts = append(parts, s)
-	}
-	if s := trackSentence(c); s != "" {
-		parts = append(parts, s)
-	}
-	if s := timeSentence(c); s != "" {
-		parts = append(parts, s)
-	}
-	if s := trainSentence(c); s != "" {
-		parts = append(parts, s)
-	}
-	if s := outsideSentence(c); s != "" {
-		parts = append(parts, s)
-	}
-	if s := findingSentence(c); s != "" {
-		parts = append(parts, s)
-	}
-	return strings.Join(parts, " ")
+	return "Hidden today by temporary restrictions: " + s + "."
 }
 
 // targetRoutes counts the routes of the target.
