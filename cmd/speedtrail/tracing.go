@@ -31,7 +31,8 @@ type tracing struct {
 	rank  map[int32]int // of a commit: its index in doc.Commits
 	named []int32       // those
 
-	targets map[int64]int32 // of each assessment whose target is in the history that is traced
+	targets  map[int64]int32 // of each assessment whose target is in the history that is traced
+	anchored *int32          // the anchored revision, where it is
 	// What a trail and a stretch of the document say of each of their trains.
 	trails [][]sighted[trace.Trail]
 	pieces [][]sighted[[]trace.Piece]
