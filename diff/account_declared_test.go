@@ -72,6 +72,9 @@ func declaredOf(a *diff.Account) string {
 		if d.Track > 0 {
 			text += " track " + d.Track.M()
 		}
+		if d.Dated > 0 {
+			text += " dates " + d.Dated.M()
+		}
 		if d.Unseen() {
 			text += " nothing"
 		}
@@ -106,6 +109,9 @@ func TestDeclared(t *testing.T) {
 		return texts{"axle-load.csv": "from_km,to_km,C2,train_length_delay\n5.15,5.175,60,no\n" + rows}
 	}
 	two := trainText("T", 150, "", "C2", 200, 200) + trainText("U", 80, "", "D4", 700, 90)
+	lasting := func(to string) string {
+		return "id,from_km,to_km,speed,train_length_delay,valid_from,valid_to\nB,4,5,40,no,2026-01-01," + to + "\n"
+	}
 	runAccounts(t, []accountTest{
 		{"no request in play", flat, raise, []string{"nominal 4.000-6.000 T 80>90: outside"}},
 		{"inside", flat, asked(raise, declares("R1", "both", 4, 6, "raise", "")), []string{"nominal 4.000-6.000 T 80>90: 4.000-6.000 CR-1/0", "CR-1/0 sees T 2000"}},
@@ -172,6 +178,9 @@ func TestDeclared(t *testing.T) {
 			"nominal 5.000-6.000 T 80>90: 5.000-6.000 CR-1/0", "masked nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "CR-1/0 sees T 1000 hidden 1000"}},
 		{"a change that is seen and goes further without temporary restrictions counts once", over(flat, texts{"temporary.csv": temporary("4,5,85")}), asked(raise, declares("R1", "both", 4, 6, "raise", "")), []string{
 			"nominal 4.000-5.000 T 80>85: 4.000-5.000 CR-1/0", "nominal 5.000-6.000 T 80>90: 5.000-6.000 CR-1/0", "masked nominal 4.000-5.000 T 80>90: 4.000-5.000 CR-1/0", "CR-1/0 sees T 2000"}},
+		{"other dates of a restriction, which change no speed", over(flat, texts{"temporary.csv": lasting("2026-12-31")}), asked(texts{"temporary.csv": lasting("2026-01-31")},
+			declares("R1", "both", 4, 4.5, "raise", ""), declares("R1", "both", 4, 6, "lower", ""), declares("R1", "nominal", 4.5, 8, "any", `"T"`), declares("R1", "both", 5, 6, "any", "")), []string{
+			"CR-1/0 sees dates 500", "CR-1/1 sees nothing", "CR-1/2 sees dates 500", "CR-1/3 sees nothing"}},
 		{"added track needs any effect", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "both", 0, 10, "raise", ""), declares("R1", "reverse", 2, 6, "any", "")), []string{
 			"added reverse: 0.000-2.000 outside, 2.000-6.000 CR-1/1, 6.000-10.000 outside", "CR-1/0 sees nothing", "CR-1/1 sees track 4000"}},
 		{"a reduction is none of track", texts{"route.toml": oneWay}, asked(texts{"route.toml": ground["route.toml"]}, declares("R1", "both", 0, 10, "lower", "")), []string{

@@ -1,9 +1,7 @@
 package diff
 
 import (
-	"cmp"
 	"slices"
-	"time"
 
 	"speedtrail/diff/align"
 	"speedtrail/diff/profile"
@@ -57,20 +55,22 @@ func (r *Route) datedAnywhere(d codes.Direction, cells []align.Cell, trains []Tr
 	if len(r.Base.Temporary) == 0 && len(r.Target.Temporary) == 0 {
 		return nil
 	}
+	cells = slices.DeleteFunc(slices.Clone(cells), func(c align.Cell) bool { return r.sameRestrictions(c.Target - c.Base) })
+	if len(cells) == 0 {
+		return nil // for every length
+	}
 	lengths := []unit.Distance{0}
 	for i := range trains {
 		lengths = append(lengths, trains[i].Length)
 	}
 	slices.Sort(lengths)
 	lengths = slices.Compact(lengths)
+	says, n := sayings(r.Base.Temporary, r.Target.Temporary)
 	var list []Dated
 	for _, cell := range cells {
-		if r.sameRestrictions(cell.Target - cell.Base) {
-			continue // for every length
-		}
 		of := make([][]Dated, len(lengths))
 		for i, length := range lengths {
-			of[i] = datedFor(d, termsOn(r.Base, d, length, cell.Base, cell), termsOn(r.Target, d, length, cell.Target, cell))
+			of[i] = datedFor(d, termsOn(r.Base, says[0], d, length, cell.Base, cell), termsOn(r.Target, says[1], d, length, cell.Target, cell), n)
 		}
 		for _, x := range together(of) {
 			if n := len(list) - 1; n >= 0 && list[n].continues(x) {
@@ -87,23 +87,25 @@ func (r *Route) datedAnywhere(d codes.Direction, cells []align.Cell, trains []Tr
 // of the base moved along the track, in the same order.
 func (r *Route) sameRestrictions(moved unit.Distance) bool {
 	return slices.EqualFunc(r.Base.Temporary, r.Target.Temporary, func(a, b schema.TemporaryRow) bool {
-		return a.Start+moved == b.Start && a.End+moved == b.End && a.Directions == b.Directions && said(&a) == said(&b)
+		return a.Start+moved == b.Start && a.End+moved == b.End && a.Directions == b.Directions &&
+			a.Speed == b.Speed && a.Delay == b.Delay && a.Valid.From.Equal(b.Valid.From) && a.Valid.Until.Equal(b.Valid.Until)
 	})
 }
 
 // datedFor lists the stretches of a cell for trains of one length, by the restrictions
-// that hold these on the two sides.
-func datedFor(d codes.Direction, base, target []term) []Dated {
-	if slices.EqualFunc(base, target, func(a, b term) bool { return a.from == b.from && a.to == b.to && a.says == b.says }) {
+// that hold these on the two sides, which say so many different things.
+func datedFor(d codes.Direction, base, target []term, sayings int) []Dated {
+	if slices.EqualFunc(base, target, func(a, b term) bool { return a.from == b.from && a.to == b.to && a.id == b.id }) {
 		return nil
 	}
 	var list []Dated
-	cuts := differing([2][]term{base, target})
-	before, after := running{rest: base}, running{rest: target}
+	sides := [2][]term{base, target}
+	cuts, p := differing(sides), newPlace(sides, sayings)
 	for i := 1; i < len(cuts); i++ {
 		x := Dated{Direction: d, From: cuts[i-1], To: cuts[i]}
+		p.goTo(x.From)
 		switch n := len(list) - 1; {
-		case !x.compare(before.at(x.From), after.at(x.From)):
+		case !x.compare(p):
 		case n >= 0 && list[n].continues(x):
 			list[n].To = x.To
 		default:
@@ -170,149 +172,23 @@ func (r *Route) datedBy(old, now []int) bool {
 	})
 }
 
-// term is a temporary restriction on a part of the target's track.
-type term struct {
-	from, to unit.Distance
-	*schema.TemporaryRow
-	says saying
-	own  align.Interval // without the length of a train
-}
-
-// saying is what a restriction says where it holds: two that say the same are alike.
-type saying struct {
-	speed       unit.Speed
-	delay       bool
-	from, until time.Time
-}
-
-func said(r *schema.TemporaryRow) saying {
-	return saying{r.Speed, r.Delay, r.Valid.From.UTC(), r.Valid.Until.UTC()}
-}
-
-// termsOn lists the restrictions of a side that hold a train of a length on a cell, in
-// the order of where they begin.
-func termsOn(r *schema.Route, d codes.Direction, length, start unit.Distance, cell align.Cell) []term {
-	var list []term
-	for i := range r.Temporary {
-		row := &r.Temporary[i]
-		from, to := row.Start, row.End
-		switch {
-		case row.Delay && d == codes.Reverse:
-			from -= length
-		case row.Delay:
-			to += length
-		}
-		there := cell.Target - start // from here to the target's track
-		from, to = max(from, start)+there, min(to, start+cell.Length)+there
-		if row.Directions.Has(d) && from < to {
-			list = append(list, term{from, to, row, said(row), align.Interval{From: row.Start + there, To: row.End + there}})
-		}
-	}
-	slices.SortStableFunc(list, func(a, b term) int { return cmp.Compare(a.from, b.from) })
-	return list
-}
-
-// differing gives where restrictions begin and end on the part of the track that those
-// reach over which only one side has; two neighbours of these places stand for the
-// stretch between.
-func differing(sides [2][]term) []unit.Distance {
-	type placed struct {
-		align.Interval
-		saying saying
-	}
-	var has [2]map[placed]bool
-	var reach []align.Interval
-	var cuts []unit.Distance
-	for side, list := range sides {
-		has[side] = map[placed]bool{}
-		for _, t := range list {
-			has[side][placed{align.Interval{From: t.from, To: t.to}, t.says}] = true
-			for _, end := range [...]unit.Distance{t.own.From, t.own.To} {
-				if t.from < end && end < t.to {
-					cuts = append(cuts, end)
-				}
-			}
-		}
-	}
-	for side := range sides {
-		for x := range has[side] {
-			cuts = append(cuts, x.From, x.To)
-			if !has[1-side][x] {
-				reach = append(reach, x.Interval)
-			}
-		}
-	}
-	reach = align.Union(reach)
-	slices.Sort(cuts)
-	return slices.DeleteFunc(slices.Compact(cuts), func(at unit.Distance) bool { return !align.Touches(reach, at-1, at+1) })
-}
-
-// running gives the restrictions at one place after the other.
-type running struct{ here, rest []term }
-
-func (r *running) at(place unit.Distance) []term {
-	r.here = slices.DeleteFunc(r.here, func(t term) bool { return t.to <= place })
-	for len(r.rest) > 0 && r.rest[0].from <= place {
-		if r.rest[0].to > place {
-			r.here = append(r.here, r.rest[0])
-		}
-		r.rest = r.rest[1:]
-	}
-	return r.here
-}
-
 // compare fills in what the restrictions of a place do that the changes do not say, and
 // tells whether they do.
-func (x *Dated) compare(base, target []term) bool {
-	row := only(target, base)
+func (x *Dated) compare(p *place) bool {
+	row := p.only(1)
 	if row == nil {
-		row, x.OfBase = only(base, target), true
+		row, x.OfBase = p.only(0), true
 	}
 	if row == nil {
 		return false
 	}
 	x.Row, x.behind = row.TemporaryRow, x.From >= row.own.To || x.To <= row.own.From
-	before, after := lowest(base, nil), lowest(target, nil)
-	for _, at := range instants([2][]term{base, target}) {
-		was, is := lowest(base, &at), lowest(target, &at)
+	before, after := p.all[0].lowest(), p.all[1].lowest()
+	for was, is := range p.overTime() {
 		// A raise to what the changes say is told by them, one to more is not: 40 km/h
 		// for a year that become 45 for a day are no raise by 5.
 		x.Faster = x.Faster || is > was && is > after
 		x.Slower = x.Slower || is < was && after >= before
 	}
 	return x.Faster || x.Slower
-}
-
-// only gives the first restriction that the other side does not have, nil for none.
-func only(list, other []term) *term {
-	for i := range list {
-		if !slices.ContainsFunc(other, func(u term) bool { return list[i].says == u.says }) {
-			return &list[i]
-		}
-	}
-	return nil
-}
-
-// instants are the times from which on other restrictions hold, and one before all of
-// them.
-func instants(sides [2][]term) []time.Time {
-	list := []time.Time{{}}
-	for _, terms := range sides {
-		for _, t := range terms {
-			list = append(list, t.Valid.From, t.Valid.Until)
-		}
-	}
-	return list
-}
-
-// lowest is the lowest speed of the restrictions that are in force at an instant, or of
-// all, whatever their dates; above every speed where there is none.
-func lowest(list []term, at *time.Time) unit.Speed {
-	v := unit.MaxSpeed + unit.SpeedStep
-	for _, t := range list {
-		if at == nil || t.Valid.Overlaps(*at, *at) {
-			v = min(v, t.Speed)
-		}
-	}
-	return v
 }

@@ -133,12 +133,17 @@ func TestDatedPointByPoint(t *testing.T) {
 // A restriction that is raised a little and ends the next day lets trains go at line
 // speed from then on: the change of its speed does not say so.
 func TestDatedBesideAChangeOfSpeed(t *testing.T) {
-	until := func(month int, v unit.Speed) []term {
-		row := &schema.TemporaryRow{Speed: v, Valid: schema.Validity{From: monthOf(1), Until: monthOf(month)}}
-		return []term{{0, 10, row, said(row), align.Interval{From: 0, To: 10}}}
+	until := func(month int, v unit.Speed) []schema.TemporaryRow {
+		row := schema.TemporaryRow{Speed: v, Valid: schema.Validity{From: monthOf(1), Until: monthOf(month)}}
+		row.End, row.Directions = 10, codes.Both
+		return []schema.TemporaryRow{row}
+	}
+	track, err := chainage.NewTrack(0, 10, nil)
+	if err != nil {
+		t.Fatal(err)
 	}
 	for _, c := range []struct {
-		base, target []term
+		base, target []schema.TemporaryRow
 		faster       bool
 	}{
 		{until(6, 40), until(2, 45), true},
@@ -149,10 +154,13 @@ func TestDatedBesideAChangeOfSpeed(t *testing.T) {
 		{append(until(2, 40), until(6, 80)...), until(6, 80), false},
 		{append(until(6, 40), until(2, 80)...), until(2, 80), true},
 	} {
-		var x Dated
-		x.compare(c.base, c.target)
-		if x.Faster != c.faster {
-			t.Errorf("%+v to %+v: faster %v", c.base, c.target, x.Faster)
+		r := &Route{
+			Base:   &schema.Route{Directions: codes.Both, Track: track, Temporary: c.base},
+			Target: &schema.Route{Directions: codes.Both, Track: track, Temporary: c.target},
+		}
+		faster := slices.ContainsFunc(r.dated(codes.Nominal, align.Tracks(track, track).Common, nil), func(x Dated) bool { return x.Faster })
+		if faster != c.faster {
+			t.Errorf("%+v to %+v: faster %v", c.base, c.target, faster)
 		}
 	}
 }
@@ -300,5 +308,32 @@ func TestSameRestrictions(t *testing.T) {
 		if got := r.sameRestrictions(c.moved); got != c.want {
 			t.Errorf("%s: %v", name, got)
 		}
+	}
+}
+
+// A thousand restrictions over each other, each to another day: what holds where is not
+// looked up anew for every place and day, which took minutes for some hundreds of them.
+func TestDatedManyOverEachOther(t *testing.T) {
+	const n = 1000
+	track, err := chainage.NewTrack(0, 3*n, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	rows := func(days int) (list []schema.TemporaryRow) {
+		for i := range n {
+			row := schema.TemporaryRow{Speed: unit.Speed(5 * (1 + i%20))}
+			row.Start, row.End, row.Directions = unit.Distance(i), unit.Distance(2*n+i), codes.Both
+			row.Valid = schema.Validity{From: monthOf(1).AddDate(0, 0, i), Until: monthOf(1).AddDate(0, 0, i+days)}
+			list = append(list, row)
+		}
+		return list
+	}
+	r := &Route{
+		Base:   &schema.Route{Directions: codes.Both, Track: track, Temporary: rows(2)},
+		Target: &schema.Route{Directions: codes.Both, Track: track, Temporary: rows(1)},
+	}
+	list := r.dated(codes.Nominal, align.Tracks(track, track).Common, nil)
+	if len(list) == 0 || list[0].From != 0 || list[len(list)-1].To != 3*n-1 || !list[0].Faster || list[0].Slower {
+		t.Fatalf("%d: %+v", len(list), list[:min(1, len(list))])
 	}
 }

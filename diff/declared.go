@@ -20,6 +20,7 @@ type Declared struct {
 	Route                int // index in Account.Routes; -1 for a route whose files are the same in both
 	Seen                 []Seen
 	Track                unit.Distance // length of added and removed track that it holds, over both directions
+	Dated                unit.Distance // the same of where temporary restrictions hold at other times, in its sense
 
 	trains       []int           // indices in Account.Trains; nil: every train
 	base, target *align.Interval // in running distances; nil where the side has not the positions
@@ -33,7 +34,7 @@ type Seen struct {
 }
 
 // Unseen tells whether nothing of the declaration was observed.
-func (d *Declared) Unseen() bool { return len(d.Seen) == 0 && d.Track == 0 }
+func (d *Declared) Unseen() bool { return len(d.Seen) == 0 && d.Track == 0 && d.Dated == 0 }
 
 // Names tells whether a declaration of any effect names a train.
 func (d *Declared) Names(train string, a *Account) bool {
@@ -213,6 +214,7 @@ func (a *Account) reconcileRoute(index int) {
 		}, i)
 	}
 	a.reconcileTrack(r, &track)
+	a.reconcileDates(r, &changes)
 	if len(changes.list) > 0 {
 		a.reconcileChanges(r, &changes)
 	}
@@ -237,6 +239,19 @@ func (a *Account) reconcileTrack(r *Route, declared *[2]inPlay) {
 		for k := range on.list {
 			inside, _ := scope.Seen(&o, &on.list[k])
 			a.Declared[on.owners[k]].Track += inside
+		}
+	}
+}
+
+// reconcileDates adds up where restrictions hold at other times that a declaration can
+// have asked for: by dates alone no speed of the comparison changes.
+func (a *Account) reconcileDates(r *Route, declared *inPlay) {
+	for _, x := range r.Dated {
+		for k, d := range declared.list {
+			inSense := d.Effect == schema.AnyEffect || d.Effect == schema.Raise && x.Faster || d.Effect == schema.Lower && x.Slower
+			if from, to := max(x.From, d.From), min(x.To, d.To); from < to && inSense && d.Directions.Has(x.Direction) {
+				a.Declared[declared.owners[k]].Dated += to - from
+			}
 		}
 	}
 }

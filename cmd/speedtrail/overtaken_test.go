@@ -67,13 +67,16 @@ func TestTraceAMergeThatTakesAnEarlierSpeed(t *testing.T) {
 		t.Fatal(err)
 	}
 	in := func(args ...string) []string { return append([]string{"--repo", repo}, args...) }
+	key := func(name string) string { return filepath.Join(keys, name) }
+	call(t, in("anchor", "c2", "--sign", "checker="+key("ada"), "--sign", "approver="+key("bea"), "--sign", "in-service="+key("cem"), "--reason", "root", "-y")...).want(t, 0)
 	call(t, in("assess", "c0", "c2")...).want(t, 1)
 	call(t, in("assess", "c0", "c1")...).want(t, 1)
 	for _, place := range [][]string{{"--at", "1.5"}, {"--from", "1.35", "--to", "1.5"}} {
 		for _, index := range []string{"--no-index=false", "--no-index"} {
 			got := call(t, in(append([]string{"trace", "c3", index, "--route", "R1", "--train", "T", "--direction", "nominal"}, place...)...)...).want(t, 0)
 			words := strings.Join(strings.Fields(got.out), " ")
-			if strings.Count(words, "! assessment 1 did not judge this speed") != 1 || strings.Contains(words, "! assessment 2 did not") {
+			anchor := strings.Count(words, "! whoever signed the anchor did not judge this speed")
+			if strings.Count(words, "! assessment 1 did not judge this speed") != 1 || strings.Contains(words, "! assessment 2 did not") || anchor != 1 {
 				t.Errorf("%s", got.out)
 			}
 		}

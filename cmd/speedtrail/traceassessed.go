@@ -93,6 +93,9 @@ func (t *tracing) leadsTo(ctx context.Context, root *approval.AnchorRecord) func
 		return none
 	}
 	if at, ok := t.h.Index(hash); ok {
+		if slices.Contains(t.view.Order(), at) {
+			t.anchored = &at
+		}
 		before := t.h.Ancestors(at)
 		return func(c int32) (bool, error) { return before[c], nil }
 	}

@@ -32,7 +32,8 @@ type tracing struct {
 	// requests are those in play at the commits that were asked for.
 	requests map[int32][]schema.ChangeRequest
 
-	targets map[int64]int32 // of each assessment whose target is in the history that is traced
+	targets  map[int64]int32 // of each assessment whose target is in the history that is traced
+	anchored *int32          // the anchored revision, where it is
 	// What a trail and a stretch of the document say of each of their trains.
 	trails [][]sighted[trace.Trail]
 	pieces [][]sighted[[]trace.Piece]

@@ -189,6 +189,7 @@ type Request struct {
 
 // Declaration is one stretch that a request declares, and what of it was seen.
 type Declaration struct {
+	Dated     int64    `json:"dated_mm"` // where temporary restrictions hold at other times, in its sense
 	Direction string   `json:"direction" jsonschema:"enum=nominal,enum=reverse,enum=both"`
 	Effect    string   `json:"effect" jsonschema:"enum=raise,enum=lower,enum=any"`
 	From      string   `json:"from_km"`

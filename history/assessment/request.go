@@ -16,7 +16,7 @@ func requests(a *diff.Account) []Request {
 			if next < len(a.Declared) && a.Declared[next].Request == i && a.Declared[next].Declaration == k {
 				seen := &a.Declared[next]
 				next++
-				doc.Track, doc.Unseen = int64(seen.Track), seen.Unseen() && !namesTrainThatDiffers(a, seen)
+				doc.Track, doc.Dated, doc.Unseen = int64(seen.Track), int64(seen.Dated), seen.Unseen() && !namesTrainThatDiffers(a, seen)
 				for _, s := range seen.Seen {
 					doc.Seen = append(doc.Seen, Seen{Train: a.Trains[s.Train].ID, Inside: int64(s.Inside), RunOut: int64(s.RunOut), Hidden: int64(s.Hidden)})
 				}

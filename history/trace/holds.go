@@ -21,7 +21,8 @@ func (v *View) Holds(t Trail, commit int32) []bool {
 		}
 		return 0
 	}
-	leads := map[int32]bool{commit: true}
+	leads := make([]bool, len(v.h.Commits))
+	leads[commit] = true
 	for _, c := range v.line.order {
 		if !leads[c] {
 			continue
@@ -58,7 +59,8 @@ func (v *View) HoldsPiece(t schema.Train, p Piece, commit int32) bool {
 		return align.Union(out)
 	}
 	whole := []align.Interval{{From: p.From, To: p.To}}
-	holds := map[int32][]align.Interval{commit: with(commit, whole)}
+	holds := make([][]align.Interval, len(v.h.Commits))
+	holds[commit] = with(commit, whole)
 	for _, c := range v.line.order {
 		if c == p.Origin {
 			break
@@ -73,7 +75,6 @@ func (v *View) HoldsPiece(t schema.Train, p Piece, commit int32) bool {
 			}
 			holds[before] = align.Union(append(holds[before], list...))
 		}
-		delete(holds, c)
 	}
 	x := holds[p.Origin]
 	return len(x) == 1 && x[0] == whole[0]

@@ -309,6 +309,9 @@ func seenWords(d assessment.Declaration) string {
 	if d.Track > 0 {
 		parts = append(parts, km(d.Track)+" km of added or removed track")
 	}
+	if d.Dated > 0 {
+		parts = append(parts, "other dates of temporary restrictions over "+km(d.Dated)+" km")
+	}
 	if parts == nil {
 		return "a reference train that differs"
 	}

@@ -109,10 +109,13 @@ type TraceReign struct {
 
 // TraceStep is a revision at which the speed changed.
 type TraceStep struct {
-	Across int          `json:"across"` // revisions that do not load between it and what was before
-	After  TraceValue   `json:"after"`
-	Aside  bool         `json:"aside"`  // a later merge did not take it
-	Before []TraceValue `json:"before"` // of the parents, each speed once; empty where the history begins
+	// AnchorOvertaken: the newest revision has this speed because of it, and that of the
+	// anchor, which came later, has not.
+	AnchorOvertaken bool         `json:"anchor_overtaken"`
+	Across          int          `json:"across"` // revisions that do not load between it and what was before
+	After           TraceValue   `json:"after"`
+	Aside           bool         `json:"aside"`  // a later merge did not take it
+	Before          []TraceValue `json:"before"` // of the parents, each speed once; empty where the history begins
 	// DeclaredBy are the requests in play that declare the change at this place for these
 	// trains; run-out beyond the end of a declaration is not looked at.
 	DeclaredBy []string `json:"declared_by"`
@@ -139,8 +142,11 @@ type TraceStretch struct {
 
 // TracePiece is a piece of one speed that dates from one revision.
 type TracePiece struct {
-	Across int          `json:"across"` // revisions that do not load between its revision and what was before
-	Before []TraceLevel `json:"before"` // in the first parent of its revision
+	// AnchorOvertaken: that of the anchor, which came later than its revision, has not
+	// this speed because of it on all of the piece.
+	AnchorOvertaken bool         `json:"anchor_overtaken"`
+	Across          int          `json:"across"` // revisions that do not load between its revision and what was before
+	Before          []TraceLevel `json:"before"` // in the first parent of its revision
 	// DeclaredBy are the requests in play that declare some of what changed here for
 	// these trains; run-out beyond the end of a declaration is not looked at.
 	DeclaredBy []string `json:"declared_by"`
@@ -288,14 +294,18 @@ func stepRemarks(t *Trace, s *TraceStep) []string {
 	if s.Aside {
 		list = append(list, "a later merge did not take it")
 	}
-	list = append(list, overtakenWords(s.Overtaken)...)
+	list = append(list, overtakenWords(s.Overtaken, s.AnchorOvertaken)...)
 	return append(list, declaredRemarks(&t.Commits[s.After.Commit], s.DeclaredBy)...)
 }
 
-func overtakenWords(list []int64) []string {
-	words := make([]string, len(list))
-	for i, n := range list {
-		words[i] = fmt.Sprintf("! assessment %d did not judge this speed: a later commit or merge up to its target altered it", n)
+// overtakenWords says what the assessments and the anchor beside a speed do not speak of.
+func overtakenWords(assessments []int64, anchor bool) []string {
+	var words []string
+	if anchor {
+		words = append(words, "! whoever signed the anchor did not judge this speed: a later commit or merge up to its revision altered it")
+	}
+	for _, n := range assessments {
+		words = append(words, fmt.Sprintf("! assessment %d did not judge this speed: a later commit or merge up to its target altered it", n))
 	}
 	return words
 }
@@ -322,7 +332,7 @@ func pieceRemarks(t *Trace, p *TracePiece) []string {
 	if p.Across > 0 {
 		list = append(list, acrossWords(p.Across))
 	}
-	list = append(list, overtakenWords(p.Overtaken)...)
+	list = append(list, overtakenWords(p.Overtaken, p.AnchorOvertaken)...)
 	if len(p.Before) == 0 {
 		return list
 	}
