@@ -1,13 +1,17 @@
 package render
 
-import "slices"
+import (
+	"slices"
+
+	"speedtrail/history/assessment"
+)
 
 // pageRoute is a line of the table of routes.
 type pageRoute struct {
 	Link              pageLink
 	Name              string
 	Raise, Reduction  string
-	Trains, Outsiders int // trains that see a change, and of those, changes outside
+	Trains, Outsiders int // trains that see a change; findings outside, as the verdict counts them
 }
 
 // fewRoutes is up to how many routes the charts themselves are overview enough.
@@ -16,21 +20,24 @@ const fewRoutes = 3
 // fillRoutes sums up each route that changes: between the charts of dozens nobody finds
 // which routes are the ones to look at. What lies outside comes first, then by name.
 func (p *page) fillRoutes() {
+	outsiders := map[string]int{}
+	for _, f := range p.C.Findings {
+		if f.ID == assessment.Outside {
+			outsiders[f.Route]++
+		}
+	}
 	for i := range p.C.Routes {
 		r := &p.C.Routes[i]
 		if len(r.Changes) == 0 {
 			continue
 		}
-		line := pageRoute{Link: pageLink{r.ID, p.firstOf(r.ID)}, Name: r.Name}
+		line := pageRoute{Link: pageLink{r.ID, p.firstOf(r.ID)}, Name: r.Name, Outsiders: outsiders[r.ID]}
 		raise, reduction := 0, 0
 		var trains []int
 		for k := range r.Changes {
 			x := &r.Changes[k]
 			raise, reduction = max(raise, x.After-x.Before), max(reduction, x.Before-x.After)
 			trains = append(trains, x.Trains...)
-			if isOutside(p.C, r, x.Pieces) {
-				line.Outsiders += len(x.Trains)
-			}
 		}
 		slices.Sort(trains)
 		line.Trains = len(slices.Compact(trains))

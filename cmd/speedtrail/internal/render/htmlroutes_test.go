@@ -27,6 +27,7 @@ func TestPageRoutes(t *testing.T) {
 	add("R4")
 	c.Routes[3].Changes[0].After = 40
 	c.Routes[3].Pieces = [][]assessment.Piece{{}}
+	c.Findings = []assessment.Finding{{ID: assessment.Outside, Route: "R4", Text: "text"}, {ID: "step-size", Route: "R2", Text: "text"}}
 	s := pageOf(t, d)
 	_, s, ok := strings.Cut(s, "<h2>Routes that change</h2>")
 	s, _, _ = strings.Cut(s, "</section>")
