@@ -361,7 +361,7 @@ func definitionWords(d *assessment.Definition) string {
 	if d == nil {
 		return ""
 	}
-	s := fmt.Sprintf("%s; cant deficiency %d mm; axle load %s; %s m; %d km/h", d.Name, d.CantDeficiency, d.AxleLoad, metres(d.Length), d.MaxSpeed)
+	s := fmt.Sprintf("%s; cant deficiency %d mm; axle load %s; %s m long; at most %d km/h", d.Name, d.CantDeficiency, d.AxleLoad, metres(d.Length), d.MaxSpeed)
 	if len(d.Categories) > 0 {
 		var words []string
 		for _, c := range d.Categories {
