@@ -45,7 +45,7 @@ func stretchFigure(c *assessment.Computed, s *assessment.Stretch, p *panel) *fig
 			f.Marks = append(f.Marks, mark{from, to, x.Before, x.After, x.RunOut, !own})
 		}
 		if own {
-			sentences = append(sentences, fmt.Sprintf("km %s to %s: %d before, %d after", x.From, x.To, x.Before, x.After))
+			sentences = append(sentences, fmt.Sprintf("km %s to %s: %d before, %d after", minus(x.From), minus(x.To), x.Before, x.After))
 		}
 	}
 	f.Text = "Speed in km/h over chainage in km. " + strings.Join(sentences, "; ")

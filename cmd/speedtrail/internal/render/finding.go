@@ -332,9 +332,9 @@ func reconciliation(c *assessment.Computed) string {
 	case c.Options.NoRequests:
 		return "The comparison with change requests was left out (--request none)."
 	case len(c.Requests) == 0:
-		return "No change request was added or altered; a change would be outside."
+		return "No change request was added or altered between the revisions: whatever changes is outside."
 	case len(c.Options.Requests) > 0:
-		return "The requests named with --request count."
+		return "Changes are held against the requests that were named with --request."
 	}
-	return "The requests that were added or altered between the revisions count."
+	return "Changes are held against the requests that were added or altered between the revisions."
 }

@@ -29,7 +29,7 @@ func TestPageFindings(t *testing.T) {
 	s := pageOf(t, d)
 	for _, want := range []string{
 		`<a href="#f1">outside (2)</a> &middot; <a href="#f2">step-size</a>`, `<div class="finding" id="f2">`, "Of each: nobody asked.",
-		"raised by up to 20\u00a0km/h, 60 to 80, run-out of the train length<br><span class=\"fine\">" + many + "</span>",
+		"raised by up to 20\u00a0km/h, 60 to 80, run-out of the train length<br><span class=\"fine who\">" + many + "</span>",
 		"raised by up to 20\u00a0km/h, 60 to 80 (A (B)), run-out of the train length</li>",
 		`<a href="#t1">R1 nominal`, `<tbody id="t1">`,
 	} {

@@ -236,6 +236,10 @@ func (q *consequence) add(train int) {
 	q.trains = append(q.trains[:at], append([]int{train}, q.trains[at:]...)...)
 }
 
+// noSpeed begins what is said of a row without an effect. That it is no change would be
+// too much to say of a restriction that ends earlier.
+const noSpeed = "no speed changes: "
+
 // effectWords says what comes of a row.
 func effectWords(c *assessment.Computed, d *assessment.RowDiff, q *consequence) string {
 	switch d.Effect {
@@ -259,7 +263,7 @@ func effectWords(c *assessment.Computed, d *assessment.RowDiff, q *consequence) 
 	if holdsForOthers(d) {
 		return "no reference train changes, others may: " + d.Reason
 	}
-	return "no change: " + d.Reason
+	return noSpeed + d.Reason
 }
 
 // holdsForOthers tells whether a row without an effect can have one for trains that

@@ -47,7 +47,7 @@ func TestWhereWords(t *testing.T) {
 // counted among those without an effect.
 func TestRowForOthers(t *testing.T) {
 	for reason, want := range map[string]string{
-		diff.OnlyText.String():       "no change: only a text differs",
+		diff.OnlyText.String():       "no speed changes: only a text differs",
 		diff.NoSuchTrain.String():    "no reference train changes, others may: no reference train is of a category that it concerns",
 		diff.LowerElsewhere.String(): "no reference train changes, others may: another restriction is as low or lower for every reference train that it concerns",
 	} {

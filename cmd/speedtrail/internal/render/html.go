@@ -68,6 +68,7 @@ type page struct {
 	Undrawn     []pageTable
 	UndrawnLeft int
 	drawn       map[*assessment.Change]bool
+	RouteLines  []pageRoute // of the routes that change, where they are many
 	Lines       []pageFile
 	LinesLeft   int
 	Caution     string
@@ -112,10 +113,10 @@ type page struct {
 }
 
 type pageStretch struct {
-	ID, Route, Names, Direction, RouteName string
-	Drawn                                  string // trains of the chart, where it stands for more
-	TrainIDs                               string // joined by a line feed, for the filter
-	Panels                                 []pagePanel
+	ID, Heading, Route, Names, Direction, RouteName string
+	Drawn                                           string // trains of the chart, where it stands for more
+	TrainIDs                                        string // joined by a line feed, for the filter
+	Panels                                          []pagePanel
 }
 
 // pagePanel is a chart with its table.
@@ -193,6 +194,7 @@ func HTML(w io.Writer, d *assessment.Document, r Record) error {
 		}
 	}
 	p.Routes = p.routesShown()
+	p.fillRoutes()
 	p.fillContents()
 	return executed(w, pageTemplate(), p)
 }
@@ -232,7 +234,7 @@ func (p *page) fillStretches() {
 		id := fmt.Sprintf("s%d", i+1)
 		names := trainNames(p.C, g.trains, 0)
 		out := pageStretch{
-			ID: id, Route: r.ID, RouteName: r.Name, Direction: s.Direction, Names: names,
+			ID: id, Heading: fmt.Sprintf("n%d", i+1), Route: r.ID, RouteName: r.Name, Direction: s.Direction, Names: names,
 			TrainIDs: filterIDs(p.C, g.trains),
 		}
 		if len(s.Trains) < len(g.trains) {
@@ -359,7 +361,7 @@ func definitionWords(d *assessment.Definition) string {
 	if d == nil {
 		return ""
 	}
-	s := fmt.Sprintf("%s; cant deficiency %d mm; axle load %s; %s m; %d km/h", d.Name, d.CantDeficiency, d.AxleLoad, metres(d.Length), d.MaxSpeed)
+	s := fmt.Sprintf("%s; cant deficiency %d mm; axle load %s; %s m long; at most %d km/h", d.Name, d.CantDeficiency, d.AxleLoad, metres(d.Length), d.MaxSpeed)
 	if len(d.Categories) > 0 {
 		var words []string
 		for _, c := range d.Categories {

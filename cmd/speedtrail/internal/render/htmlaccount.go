@@ -140,7 +140,7 @@ func (p *page) fillRows() {
 	for i := range p.C.Source {
 		f := &p.C.Source[i]
 		if len(f.Rows) == 0 {
-			p.Quiet = append(p.Quiet, pageSourceRow{File: source.Visible(fileName(*f)), Effect: "no change: " + f.Note})
+			p.Quiet = append(p.Quiet, pageSourceRow{File: source.Visible(fileName(*f)), Effect: noSpeed + f.Note})
 		}
 		for k := range f.Rows {
 			d := &f.Rows[k]
@@ -149,7 +149,7 @@ func (p *page) fillRows() {
 				Effect: source.Visible(effectWords(p.C, d, results[assessment.Cause{File: i, Row: k}])),
 			}
 			if d.Effect == "none" && !holdsForOthers(d) {
-				row.Effect = strings.TrimPrefix(row.Effect, "no change: ")
+				row.Effect = strings.TrimPrefix(row.Effect, noSpeed)
 				if len(p.Quiet) < mostHTMLRows {
 					row.ID = p.anchors.addRow(f, d)
 				}

@@ -158,6 +158,7 @@ func (p *page) fillContents() {
 		{"Trains", "trains", true},
 		{"Reference trains that differ", "altered", len(p.Altered) > 0},
 		{"Track that only one revision has", "track", len(p.Track) > 0},
+		{"Routes that change", "routes", len(p.RouteLines) > 0},
 		{"Changed stretches", "changes", true},
 		{"Hidden today", "hidden", len(p.Hidden) > 0},
 		{"Declared against observed", "declared", true},

@@ -1,10 +1,6 @@
 package render
 
-import (
-	"slices"
-
-	"speedtrail/history/assessment"
-)
+import "speedtrail/history/assessment"
 
 // fillUndrawn lists the changes outside all declarations that have no chart, as far as
 // the page has room, and counts the others. Charts are those of the largest steps, and
@@ -38,15 +34,4 @@ func (p *page) fillUndrawn() {
 		}
 		flush()
 	}
-}
-
-// routesShown lists the routes that have a chart or a table, for the filter.
-func (p *page) routesShown() (routes []string) {
-	for _, r := range p.C.Routes {
-		of := func(t pageTable) bool { return t.Route == r.ID }
-		if slices.ContainsFunc(p.Stretches, func(s pageStretch) bool { return s.Route == r.ID }) || slices.ContainsFunc(p.Undrawn, of) || slices.ContainsFunc(p.Hidden, of) {
-			routes = append(routes, r.ID)
-		}
-	}
-	return routes
 }
