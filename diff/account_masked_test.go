@@ -143,7 +143,9 @@ func TestLeavingByTrack(t *testing.T) {
 		{"neither was in reach", over(route("0", "12", ""), axle), route("0", "11", ""), nil},
 		{"posts are missing before the end", over(route("0", "10", ""), axle), route("0", "10", "[[jump]]\narriving_km = 9.95\nleaving_km = 9.98\n"), []string{"route.toml +6 nominal line 3, 200 m, by the track"}},
 		{"posts are missing elsewhere", over(route("0", "10", ""), axle), route("0", "10", "[[jump]]\narriving_km = 5\nleaving_km = 6\n"), nil},
-		{"a direction goes", over(route("0", "10", ""), axle), route("0", "10", "directions = [\"reverse\"]\n"), nil},
+		{"a direction goes", over(route("0", "10", ""), axle), route("0", "10", "directions = [\"reverse\"]\n"), []string{"route.toml -1 +1 nominal line 3, 200 m, removed, by the track"}},
+		{"a direction comes", over(route("0", "10", "directions = [\"reverse\"]\n"), axle), over(route("0", "10", ""), axle), []string{"route.toml -1 +1 nominal line 3, 200 m, by the track"}},
+		{"a direction comes, and rows wait for no rear", over(route("0", "10", "directions = [\"reverse\"]\n"), texts{"speed.csv": "from_km,to_km,basic,train_length_delay\n0,10,100,no\n"}), route("0", "10", ""), nil},
 		{"the row moves with the end", over(route("0", "10", ""), texts{"axle-load.csv": "from_km,to_km,C2\n9.5,9.9,60\n"}), over(route("0", "10.1", ""), texts{"axle-load.csv": "from_km,to_km,C2\n9.5,10,60\n"}), nil},
 	}, leavingOf)
 }

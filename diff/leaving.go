@@ -14,7 +14,7 @@ import (
 // and lies so close to the end of the route that a reference train carries it
 // beyond: what it does on the neighbouring route is not looked at. So is a row
 // that is the same and reaches further beyond, or less far, because the track
-// between it and the end of the route differs.
+// between it and the end of the route differs, or the direction came or went.
 type Leaving struct {
 	Cause
 	Direction codes.Direction

@@ -10,8 +10,8 @@ import (
 )
 
 // leavingByTrack lists the rows that are the same in both revisions and carry
-// something else beyond the end of the route, because the end has moved or a jump
-// before it differs.
+// something else beyond the end of the route, because the end has moved, a jump before
+// it differs, or only one revision has the direction.
 func (r *Route) leavingByTrack(longest unit.Distance) []Leaving {
 	if len(r.causes.track) == 0 {
 		return nil
@@ -19,8 +19,7 @@ func (r *Route) leavingByTrack(longest unit.Distance) []Leaving {
 	var list []Leaving
 	for _, layer := range [...]profile.Layer{profile.StaticSpeed, profile.AxleLoad, profile.Temporary} {
 		for _, direction := range codes.AllDirections {
-			// A direction that one side lacks is added or removed track.
-			if !r.Base.Directions.Has(direction) || !r.Target.Directions.Has(direction) || r.carriesAlike(layer, direction, longest) {
+			if r.carriesAlike(layer, direction, longest) {
 				continue
 			}
 			var same [2][]int // lines of the rows that do not differ

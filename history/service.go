@@ -122,7 +122,7 @@ const (
 
 // ServiceFindings looks at the in-force log of a folder: revisions in service
 // without approval, also by records that do not stand any more, and approved ones
-// that never went into service.
+// that went into service neither by themselves nor as a part of a later one.
 func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 	var list []ServiceFinding
 	served := map[string]bool{}
@@ -157,8 +157,15 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 				x.Record.Entry.Seq, x.Record.Revision, wrong, x.Record.Since.UTC().Format(time.RFC3339), x.By.Entry.Seq, x.How, x.By.Signer, x.By.Reason)})
 		}
 	}
+	// What approved assessments lead on from to something that went into service on the
+	// whole network went with it, as a part of the next release does.
+	followed := func(content string) bool {
+		return slices.ContainsFunc(line.Standing(folder), func(r approval.Record) bool {
+			return len(r.Routes) == 0 && line.Led(folder, content, r.Content)
+		})
+	}
 	for _, a := range line.Assessments() {
-		if a.Folder == folder && !served[a.TargetTree] && line.State(a.Number).Word == approval.Approved {
+		if a.Folder == folder && !served[a.TargetTree] && line.State(a.Number).Word == approval.Approved && !followed(a.TargetTree) {
 			served[a.TargetTree] = true
 			list = append(list, ServiceFinding{NeverInService, fmt.Sprintf("assessment %d: its target %s is approved and never went into service", a.Number, a.Target)})
 		}

@@ -343,6 +343,10 @@ func (c *collector) route(index int) {
 			what = "the route is new, and the row reaches"
 		case r.Target == nil:
 			what = "the route is there no more, and the row reached"
+		case !r.Base.Directions.Has(l.Direction):
+			what = "the direction is new, and the row reaches"
+		case !r.Target.Directions.Has(l.Direction):
+			what = "the direction is there no more, and the row reached"
 		case l.ByTrack && l.OfBase:
 			what = "the track before the end of the route differs, and the row, which is the same, reaches no more"
 		case l.ByTrack:
