@@ -2,6 +2,7 @@ package diff
 
 import (
 	"slices"
+	"time"
 
 	"speedtrail/diff/align"
 	"speedtrail/diff/profile"
@@ -18,9 +19,11 @@ type Dated struct {
 	Direction      codes.Direction
 	From, To       unit.Distance // running distance on the target's track
 	Faster, Slower bool
-	Row            *schema.TemporaryRow // the first that the other side does not have there
-	OfBase         bool                 // that row is the base's
-	behind         bool                 // the row itself ends before, in the direction of travel
+	// Until is the instant from which on they do not; zero where they do for ever.
+	Until  time.Time
+	Row    *schema.TemporaryRow // the first that the other side does not have there
+	OfBase bool                 // that row is the base's
+	behind bool                 // the row itself ends before, in the direction of travel
 }
 
 // dated lists such stretches in one direction of travel, in the order of the track. What
@@ -39,6 +42,8 @@ func (r *Route) dated(d codes.Direction, cells []align.Cell, trains []Train) []D
 		}
 		if !(x.behind && from == end && x.Row == last.Row && (last.Faster || !x.Faster) && (last.Slower || !x.Slower)) {
 			out, last = append(out, x), x
+		} else {
+			out[len(out)-1].Until = later(out[len(out)-1].Until, x.Until)
 		}
 		end = to
 	}
@@ -65,19 +70,15 @@ func (r *Route) datedAnywhere(d codes.Direction, cells []align.Cell, trains []Tr
 	}
 	slices.Sort(lengths)
 	lengths = slices.Compact(lengths)
-	says, n := sayings(r.Base.Temporary, r.Target.Temporary)
+	says, n, times := sayings(r.Base.Temporary, r.Target.Temporary)
 	var list []Dated
 	for _, cell := range cells {
 		of := make([][]Dated, len(lengths))
 		for i, length := range lengths {
-			of[i] = datedFor(d, termsOn(r.Base, says[0], d, length, cell.Base, cell), termsOn(r.Target, says[1], d, length, cell.Target, cell), n)
+			of[i] = datedFor(d, termsOn(r.Base, says[0], d, length, cell.Base, cell), termsOn(r.Target, says[1], d, length, cell.Target, cell), n, times)
 		}
 		for _, x := range together(of) {
-			if n := len(list) - 1; n >= 0 && list[n].continues(x) {
-				list[n].To = x.To
-				continue
-			}
-			list = append(list, x)
+			list = joinDated(list, x)
 		}
 	}
 	return list
@@ -93,26 +94,44 @@ func (r *Route) sameRestrictions(moved unit.Distance) bool {
 }
 
 // datedFor lists the stretches of a cell for trains of one length, by the restrictions
-// that hold these on the two sides, which say so many different things.
-func datedFor(d codes.Direction, base, target []term, sayings int) []Dated {
+// that hold these on the two sides, which say so many different things and name these
+// instants.
+func datedFor(d codes.Direction, base, target []term, sayings int, times []time.Time) []Dated {
 	if slices.EqualFunc(base, target, func(a, b term) bool { return a.from == b.from && a.to == b.to && a.id == b.id }) {
 		return nil
 	}
 	var list []Dated
 	sides := [2][]term{base, target}
-	cuts, p := differing(sides), newPlace(sides, sayings)
+	cuts, p := differing(sides), newPlace(sides, sayings, times)
 	for i := 1; i < len(cuts); i++ {
 		x := Dated{Direction: d, From: cuts[i-1], To: cuts[i]}
 		p.goTo(x.From)
-		switch n := len(list) - 1; {
-		case !x.compare(p):
-		case n >= 0 && list[n].continues(x):
-			list[n].To = x.To
-		default:
-			list = append(list, x)
+		if x.compare(p) {
+			list = joinDated(list, x)
 		}
 	}
 	return list
+}
+
+// joinDated adds a stretch to a list, or to its last one, where that goes on.
+func joinDated(list []Dated, x Dated) []Dated {
+	n := len(list) - 1
+	if n < 0 || !list[n].continues(x) {
+		return append(list, x)
+	}
+	list[n].To, list[n].Until = x.To, later(list[n].Until, x.Until)
+	return list
+}
+
+// later gives the later of two instants, of which zero is never.
+func later(a, b time.Time) time.Time {
+	if a.IsZero() || b.IsZero() {
+		return time.Time{}
+	}
+	if a.After(b) {
+		return a
+	}
+	return b
 }
 
 // continues tells whether a stretch goes on where one ends and says the same.
@@ -144,15 +163,11 @@ func together(of [][]Dated) []Dated {
 				x := of[k][0]
 				x.From, x.To, all = cuts[i-1], cuts[i], &x
 			default:
-				all.Faster, all.Slower = all.Faster || of[k][0].Faster, all.Slower || of[k][0].Slower
+				all.Faster, all.Slower, all.Until = all.Faster || of[k][0].Faster, all.Slower || of[k][0].Slower, later(all.Until, of[k][0].Until)
 			}
 		}
-		switch n := len(out) - 1; {
-		case all == nil:
-		case n >= 0 && out[n].continues(*all):
-			out[n].To = all.To
-		default:
-			out = append(out, *all)
+		if all != nil {
+			out = joinDated(out, *all)
 		}
 	}
 	return out
@@ -184,11 +199,13 @@ func (x *Dated) compare(p *place) bool {
 	}
 	x.Row, x.behind = row.TemporaryRow, x.From >= row.own.To || x.To <= row.own.From
 	before, after := p.all[0].lowest(), p.all[1].lowest()
-	for was, is := range p.overTime() {
+	for now := range p.overTime() {
 		// A raise to what the changes say is told by them, one to more is not: 40 km/h
 		// for a year that become 45 for a day are no raise by 5.
-		x.Faster = x.Faster || is > was && is > after
-		x.Slower = x.Slower || is < was && after >= before
+		faster, slower := now.is > now.was && now.is > after, now.is < now.was && after >= before
+		if faster || slower {
+			x.Faster, x.Slower, x.Until = x.Faster || faster, x.Slower || slower, now.until
+		}
 	}
 	return x.Faster || x.Slower
 }

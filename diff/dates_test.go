@@ -79,14 +79,19 @@ func TestDatedPointByPoint(t *testing.T) {
 		}
 		for _, d := range codes.AllDirections {
 			list := r.datedAnywhere(d, align.Tracks(tracks[0], tracks[1]).Common, trains)
+			ends := map[int]time.Time{} // by the index of a stretch: when the last of it is over
 			for place := max(0, shift); place < min(10, 10+shift); place++ {
 				var faster, slower bool
+				last := -1
 				for _, length := range []unit.Distance{0, 2, 5} {
 					before, after := at(r.Base, d, place-shift, length, -1), at(r.Target, d, place, length, -1)
 					for month := range 6 {
 						was, is := at(r.Base, d, place-shift, length, month), at(r.Target, d, place, length, month)
-						faster = faster || is > was && (after <= before || is > after)
-						slower = slower || is < was && after >= before
+						up, down := is > was && (after <= before || is > after), is < was && after >= before
+						faster, slower = faster || up, slower || down
+						if up || down {
+							last = max(last, month)
+						}
 					}
 				}
 				i := slices.IndexFunc(list, func(x Dated) bool { return x.From <= place && place < x.To })
@@ -96,6 +101,14 @@ func TestDatedPointByPoint(t *testing.T) {
 				if i < 0 {
 					continue
 				}
+				over := time.Time{} // after the last of the months all is as it will be
+				if last < 5 {
+					over = monthOf(last + 1)
+				}
+				if end, known := ends[i]; known {
+					over = later(over, end)
+				}
+				ends[i] = over
 				x, from, reach := list[i], place, unit.Distance(0)
 				if x.OfBase {
 					from -= shift
@@ -107,8 +120,16 @@ func TestDatedPointByPoint(t *testing.T) {
 					t.Fatalf("%s at %d: %+v, want faster %v, slower %v", d, place, x, faster, slower)
 				}
 			}
+			for i, over := range ends {
+				// Where trains of several lengths see parts of each other's stretches, it can be
+				// that of a neighbouring part: never an earlier one.
+				if !later(list[i].Until, over).Equal(list[i].Until) {
+					t.Fatalf("%+v, want an end of %v", list[i], over)
+				}
+			}
 			for i := 1; i < len(list); i++ {
 				one, next := list[i-1], list[i]
+				one.Until, next.Until = time.Time{}, time.Time{}
 				if next.From < one.To {
 					t.Fatalf("%+v overlap", list)
 				}
@@ -120,8 +141,12 @@ func TestDatedPointByPoint(t *testing.T) {
 			// What is left out goes with a row that is named, and does what it does.
 			said := r.dated(d, align.Tracks(tracks[0], tracks[1]).Common, trains)
 			for _, x := range list {
-				if !slices.Contains(said, x) && (!x.behind || !slices.ContainsFunc(said, func(y Dated) bool {
-					return y.Row == x.Row && (y.Faster || !x.Faster) && (y.Slower || !x.Slower)
+				if !slices.ContainsFunc(said, func(y Dated) bool {
+					over := y.Until
+					y.Until = x.Until
+					return y == x && later(over, x.Until).Equal(over)
+				}) && (!x.behind || !slices.ContainsFunc(said, func(y Dated) bool {
+					return y.Row == x.Row && (y.Faster || !x.Faster) && (y.Slower || !x.Slower) && later(y.Until, x.Until).Equal(y.Until)
 				})) {
 					t.Fatalf("%+v is missing in %+v", x, said)
 				}
@@ -251,7 +276,7 @@ func TestDatedTellsApart(t *testing.T) {
 		},
 		"the highest speed": {
 			[]schema.TemporaryRow{row(unit.MaxSpeed, 0, 10, 1, 3)}, []schema.TemporaryRow{row(unit.MaxSpeed, 0, 10, 1, 2)},
-			[]Dated{{From: 0, To: 10, Faster: true}},
+			[]Dated{{From: 0, To: 10, Faster: true, Until: monthOf(3)}},
 		},
 	} {
 		r := &Route{Base: &schema.Route{Track: track, Temporary: c.base}, Target: &schema.Route{Track: track, Temporary: c.target}}

@@ -22,9 +22,9 @@ type saying struct {
 	id         int // the same for those that say the same
 }
 
-// sayings gives what the rows of two sides say, and how many different things.
-func sayings(base, target []schema.TemporaryRow) (says [2][]saying, n int) {
-	var times []time.Time
+// sayings gives what the rows of two sides say, how many different things, and the
+// instants that they name, in order.
+func sayings(base, target []schema.TemporaryRow) (says [2][]saying, n int, times []time.Time) {
 	sides := [2][]schema.TemporaryRow{base, target}
 	for _, rows := range sides {
 		for i := range rows {
@@ -52,7 +52,7 @@ func sayings(base, target []schema.TemporaryRow) (says [2][]saying, n int) {
 			says[side] = append(says[side], x)
 		}
 	}
-	return says, len(ids)
+	return says, len(ids), times
 }
 
 // term is a temporary restriction on a part of the target's track.
@@ -128,6 +128,7 @@ type place struct {
 	all        [2]speeds // of those that are here, whatever their dates
 	says       [2][]int  // how many here say the same, by its id
 	events     []event   // of those that are here, in the order of time
+	times      []time.Time
 }
 
 // event is that a restriction of a side comes into force or is over.
@@ -137,8 +138,8 @@ type event struct {
 	by       int // 1 or -1
 }
 
-func newPlace(sides [2][]term, sayings int) *place {
-	return &place{rest: sides, says: [2][]int{make([]int, sayings), make([]int, sayings)}}
+func newPlace(sides [2][]term, sayings int, times []time.Time) *place {
+	return &place{rest: sides, times: times, says: [2][]int{make([]int, sayings), make([]int, sayings)}}
 }
 
 // goTo goes on to a place.
@@ -188,20 +189,31 @@ func (p *place) only(side int) *term {
 	return nil
 }
 
-// overTime gives the lowest speeds of the restrictions that are in force on both sides,
-// from one instant at which they differ to the next.
-func (p *place) overTime() iter.Seq2[unit.Speed, unit.Speed] {
-	return func(yield func(was, is unit.Speed) bool) {
+// moment is the time from one instant to the next.
+type moment struct {
+	was, is unit.Speed // the lowest of the restrictions that are in force on both sides
+	until   time.Time  // zero: for ever
+}
+
+// overTime gives the moments between the instants of the restrictions that are here.
+func (p *place) overTime() iter.Seq[moment] {
+	return func(yield func(moment) bool) {
 		var now [2]speeds
 		for i, e := range p.events {
 			if e.at == math.MaxInt {
 				return // never over
 			}
 			now[e.side].add(e.speed, e.by)
-			if i+1 < len(p.events) && p.events[i+1].at == e.at {
-				continue
+			m := moment{was: now[0].lowest(), is: now[1].lowest()}
+			if i+1 < len(p.events) {
+				switch next := p.events[i+1].at; {
+				case next == e.at:
+					continue
+				case next < math.MaxInt:
+					m.until = p.times[next]
+				}
 			}
-			if !yield(now[0].lowest(), now[1].lowest()) {
+			if !yield(m) {
 				return
 			}
 		}

@@ -2,6 +2,7 @@ package assessment
 
 import (
 	"fmt"
+	"time"
 
 	"speedtrail/diff"
 	"speedtrail/schema"
@@ -18,6 +19,11 @@ func (c *collector) dated(r *diff.Route) {
 		case x.Faster:
 			what = "faster at some time"
 		}
+		past := ""
+		if !x.Until.IsZero() && !x.Until.After(c.in.At) {
+			// It counts all the same: who dates the target ahead makes a past of anything.
+			past = "; none of it after " + x.Until.UTC().Format(time.RFC3339) + ", before the time of the target"
+		}
 		of := ""
 		if x.OfBase {
 			of = " of the base"
@@ -25,7 +31,7 @@ func (c *collector) dated(r *diff.Route) {
 		c.add(ranked{raised: x.Faster, Finding: Finding{
 			ID: DatesChanged, Route: r.ID, Direction: x.Direction.String(), Row: rowText(&x.Row.Row),
 			From: r.Target.Track.Begins(x.From).String(), To: r.Target.Track.Ends(x.To).String(),
-			Text: fmt.Sprintf("trains are %s by the dates of temporary restrictions: see %s%s, %d km/h, %s", what, x.Row.ID, of, x.Row.Speed, validityWords(x.Row.Valid)),
+			Text: fmt.Sprintf("trains are %s by the dates of temporary restrictions: see %s%s, %d km/h, %s", what, x.Row.ID, of, x.Row.Speed, validityWords(x.Row.Valid)) + past,
 		}})
 	}
 }
