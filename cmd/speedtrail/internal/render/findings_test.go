@@ -83,3 +83,24 @@ func TestPageRunParts(t *testing.T) {
 		t.Error("the parts of a running time are missing")
 	}
 }
+
+// The verdict says most in its first sentence; the others stand below it, each on a
+// line of its own.
+func TestVerdictParts(t *testing.T) {
+	d := pageDocument("R1")
+	parts := verdictParts(d)
+	if got := strings.Join(parts, " "); len(parts) < 3 || got != Verdict(d) {
+		t.Fatalf("%d parts: %s", len(parts), got)
+	}
+	html := `<h2>Verdict</h2><p>` + tied(parts[0]) + `</p><ul><li>` + tied(parts[1]) + `</li><li>`
+	if s := pageOf(t, d); !strings.Contains(s, html) {
+		t.Errorf("no %s", html)
+	}
+	var b strings.Builder
+	if err := Markdown(&b, d, Record{}); err != nil {
+		t.Fatal(err)
+	}
+	if want := "## Verdict\n\n**" + md(parts[0]) + "**\n\n- " + md(parts[1]) + "\n- "; !strings.Contains(b.String(), want) {
+		t.Errorf("no %s", want)
+	}
+}

@@ -51,7 +51,7 @@ type page struct {
 	R       Record
 	Title   string
 	State   string
-	Verdict string
+	Verdict []string // the first says most
 	// JSONCommand is the command that writes all of it, after a comma; empty for one
 	// that is not recorded.
 	JSONCommand string
@@ -161,7 +161,7 @@ type pageTrain struct{ ID, Fate, Before, After string }
 func HTML(w io.Writer, d *assessment.Document, r Record) error {
 	c := &d.Computed
 	p := page{
-		D: d, C: c, R: r, Verdict: tied(source.Visible(Verdict(d))), Caution: Caution, NoFinding: noFinding, State: "not recorded",
+		D: d, C: c, R: r, Verdict: verdictParts(d), Caution: Caution, NoFinding: noFinding, State: "not recorded",
 		Title: source.Visible("Change of route speed data: " + c.Dataset),
 		Base:  revisionName(d.Named.Base, d.Named.BaseName, c.Base), Target: revisionName(d.Named.Target, d.Named.TargetName, c.Target),
 		JS: template.JS(pageJS), Unchecked: uncheckedWords(c), Limits: limitWords(c),

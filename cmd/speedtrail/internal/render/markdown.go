@@ -43,7 +43,7 @@ func md(s string) string {
 func Markdown(w io.Writer, d *assessment.Document, r Record) error {
 	m := &markdown{c: &d.Computed}
 	m.title(d, r)
-	m.add("\n## Verdict\n\n%s\n", md(Verdict(d)))
+	m.verdict(d)
 	m.findings()
 	m.trains()
 	m.track()
@@ -87,6 +87,18 @@ func (m *markdown) title(d *assessment.Document, r Record) {
 	}
 	if r.Digest != "" {
 		line("digest", r.Digest)
+	}
+}
+
+// verdict writes the statement that says most, and the others below it.
+func (m *markdown) verdict(d *assessment.Document) {
+	parts := verdictParts(d)
+	m.add("\n## Verdict\n\n**%s**\n", md(parts[0]))
+	for i, s := range parts[1:] {
+		if i == 0 {
+			m.add("\n")
+		}
+		m.add("- %s\n", md(s))
 	}
 }
 

@@ -8,8 +8,11 @@ import (
 	"speedtrail/history/assessment"
 )
 
-// Verdict says in one or two sentences what decides, with its numbers.
-func Verdict(d *assessment.Document) string {
+// Verdict says in a few sentences what decides, with its numbers.
+func Verdict(d *assessment.Document) string { return strings.Join(verdictParts(d), " ") }
+
+// verdictParts are the statements of the verdict, each about something else.
+func verdictParts(d *assessment.Document) []string {
 	c := &d.Computed
 	var parts []string
 	for _, f := range c.Findings {
@@ -26,7 +29,7 @@ func Verdict(d *assessment.Document) string {
 			parts = append(parts, s)
 		}
 	}
-	return strings.Join(parts, " ")
+	return parts
 }
 
 // changedSentence says how many trains change, where and by how much at most.
