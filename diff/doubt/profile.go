@@ -178,7 +178,7 @@ func (c *check) steps() {
 						low, high = high, low
 					}
 					if limit := c.limits.LargestStep; limit > 0 && high.Speed-low.Speed > limit {
-						note(StepSize, p.From, p.From, fmt.Sprintf("%d and %d km/h meet, a step of more than %d", pieces[i-1].Speed, p.Speed, limit), c.rowAt(low, d), d, t.ID)
+						note(StepSize, p.From, p.From, fmt.Sprintf("%d and %d km/h meet, a step of more than %d km/h", pieces[i-1].Speed, p.Speed, limit), c.rowAt(low, d), d, t.ID)
 					}
 				}
 				if limit := c.limits.ShortestStretch; i > 0 && i < len(pieces)-1 && p.To-p.From < limit {

@@ -61,10 +61,10 @@ var curveSpeed = []example{
 var cantExcess = []example{
 	{name: "a millimetre above the limit",
 		files: files{"dataset.toml": limits("cant_excess_mm = 110"), "speed.csv": "from_km,to_km,basic\n0,10,50\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1180,136\n"},
-		want:  "cant-excess both 1.000 2.000 curves.csv:2 at 50 km/h, the lowest line speed of a reference train, the cant of 136 mm on 1180 m is an excess of 111.00 mm; the limit of dataset.toml is 110\n"},
+		want:  "cant-excess both 1.000 2.000 curves.csv:2 at 50 km/h, the lowest line speed of a reference train, the cant of 136 mm on 1180 m is an excess of 111.00 mm; the limit of dataset.toml is 110 mm\n"},
 	{name: "rows of speed.csv that do not stand in the order of the track",
 		files: files{"dataset.toml": limits("cant_excess_mm = 110"), "speed.csv": "from_km,to_km,basic\n5,10,100\n0,5,50\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1180,136\n"},
-		want:  "cant-excess both 1.000 2.000 curves.csv:2 at 50 km/h, the lowest line speed of a reference train, the cant of 136 mm on 1180 m is an excess of 111.00 mm; the limit of dataset.toml is 110\n"},
+		want:  "cant-excess both 1.000 2.000 curves.csv:2 at 50 km/h, the lowest line speed of a reference train, the cant of 136 mm on 1180 m is an excess of 111.00 mm; the limit of dataset.toml is 110 mm\n"},
 	{name: "exactly at the limit",
 		files: files{"dataset.toml": limits("cant_excess_mm = 110"), "speed.csv": "from_km,to_km,basic\n0,10,50\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1180,135\n"}},
 	{name: "no limit is set",
@@ -72,10 +72,10 @@ var cantExcess = []example{
 	{name: "the maximum speed of the slowest train",
 		files: files{"dataset.toml": limits("cant_excess_mm = 131"), "trains.toml": train("T", 150, "", "C2", 200, 200) + train("U", 80, "", "C2", 200, 40), "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1000,150\n"},
 		// 11.8 x 1600 / 1000 = 18.88 mm.
-		want: "cant-excess both 1.000 2.000 curves.csv:2 at 40 km/h, the lowest line speed of a reference train, the cant of 150 mm on 1000 m is an excess of 131.12 mm; the limit of dataset.toml is 131\n"},
+		want: "cant-excess both 1.000 2.000 curves.csv:2 at 40 km/h, the lowest line speed of a reference train, the cant of 150 mm on 1000 m is an excess of 131.12 mm; the limit of dataset.toml is 131 mm\n"},
 	{name: "the speed of a category that a train has",
 		files: files{"dataset.toml": limits("cant_excess_mm = 131"), "trains.toml": train("F", 80, `"freight_p"`, "C2", 200, 100), "speed.csv": header + "0,10,,100,,,,,40,,,\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1000,150\n"},
-		want:  "cant-excess both 1.000 2.000 curves.csv:2 at 40 km/h, the lowest line speed of a reference train, the cant of 150 mm on 1000 m is an excess of 131.12 mm; the limit of dataset.toml is 131\n"},
+		want:  "cant-excess both 1.000 2.000 curves.csv:2 at 40 km/h, the lowest line speed of a reference train, the cant of 150 mm on 1000 m is an excess of 131.12 mm; the limit of dataset.toml is 131 mm\n"},
 	{name: "a category that no reference train has",
 		files: files{"dataset.toml": limits("cant_excess_mm = 131"), "speed.csv": header + "0,10,,100,,,,,40,,,\n", "curves.csv": "from_km,to_km,radius_m,cant_mm\n1,2,1000,150\n"}},
 	{name: "a basic speed that no reference train gets",
@@ -105,10 +105,10 @@ var categoryOrder = []example{
 var axleLoadOrder = []example{
 	{name: "the heavier one faster",
 		files: files{"axle-load.csv": "from_km,to_km,C2,D4\n1,2,60,80\n"},
-		want:  "axle-load-order both 1.000 2.000 axle-load.csv:2 D4 may run at 80 km/h, the lighter C2 at 60\n"},
+		want:  "axle-load-order both 1.000 2.000 axle-load.csv:2 D4 may run at 80 km/h, the lighter C2 at 60 km/h\n"},
 	{name: "the same axle load with more mass per length, one direction",
 		files: files{"axle-load.csv": "from_km,to_km,direction,C2,C4\n1,2,reverse,60,65\n"},
-		want:  "axle-load-order reverse 1.000 2.000 axle-load.csv:2 C4 may run at 65 km/h, the lighter C2 at 60\n"},
+		want:  "axle-load-order reverse 1.000 2.000 axle-load.csv:2 C4 may run at 65 km/h, the lighter C2 at 60 km/h\n"},
 	{name: "equal speeds", files: files{"axle-load.csv": "from_km,to_km,C2,D4\n1,2,60,60\n"}},
 	{name: "the heavier one slower", files: files{"axle-load.csv": "from_km,to_km,A,C2,D4,E5\n1,2,90,80,60,40\n"}},
 	// C4 has less axle load and more mass per length than D2: neither is lighter.

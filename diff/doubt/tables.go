@@ -60,7 +60,7 @@ func (c *check) axleLoadRows() {
 			for light := range codes.AxleLoad(codes.AxleLoads) {
 				h, l := row.Limit[heavy], row.Limit[light]
 				if h != 0 && l != 0 && lighter(light, heavy) && h > l {
-					c.add(AxleLoadOrder, &row.Row, fmt.Sprintf("%s may run at %d km/h, the lighter %s at %d", heavy, h, light, l))
+					c.add(AxleLoadOrder, &row.Row, fmt.Sprintf("%s may run at %d km/h, the lighter %s at %d km/h", heavy, h, light, l))
 				}
 			}
 		}
@@ -185,7 +185,7 @@ func (c *check) curves() {
 			}
 		}
 		if limit := c.limits.CantExcessMM; limit > 0 && slowest > 0 && impact.CantExcessAbove(slowest, curve.RadiusM, curve.CantMM, limit) {
-			c.add(CantExcess, &curve.Row, fmt.Sprintf("at %d km/h, the lowest line speed of a reference train, the cant of %d mm on %d m is an excess of %s mm; the limit of dataset.toml is %d",
+			c.add(CantExcess, &curve.Row, fmt.Sprintf("at %d km/h, the lowest line speed of a reference train, the cant of %d mm on %d m is an excess of %s mm; the limit of dataset.toml is %d mm",
 				slowest, curve.CantMM, curve.RadiusM, hundredths(-impact.CantDeficiency(slowest, curve.RadiusM, curve.CantMM)), limit))
 		}
 	}

@@ -208,7 +208,7 @@ func (c *collector) policy() {
 	for _, f := range c.doc.Source {
 		switch name := cmp.Or(f.Target, f.Base); name {
 		case "signoff.toml", "allowed_signers":
-			c.add(ranked{Finding: Finding{ID: PolicyChanged, Row: name, Text: name + " differs" + noteWords(f.Note) + policyWords(f)}})
+			c.add(ranked{Finding: Finding{ID: PolicyChanged, Row: name, Text: name + " differs" + noteWords(f.Note) + policyWords(f, c.in.Target.Policy)}})
 		}
 	}
 	if p := c.in.Base.Policy; p != nil {
@@ -228,8 +228,9 @@ func (c *collector) policy() {
 	}
 }
 
-// policyWords says whom and what a change of a policy file touches.
-func policyWords(f SourceFile) string {
+// policyWords says whom and what a change of a policy file touches. Names that did not
+// change are those of the target's policy, nil where it has none.
+func policyWords(f SourceFile, target *schema.Policy) string {
 	var parts []string
 	for _, d := range f.Rows {
 		who := ""
@@ -240,6 +241,9 @@ func policyWords(f SourceFile) string {
 			case "line":
 				who, _, _ = strings.Cut(text, " ")
 			}
+		}
+		if who == "" && target != nil && len(d.TargetLines) > 0 {
+			who = policyTable(target, d.Table, d.TargetLines[0])
 		}
 		var keys []string
 		for _, c := range d.Cells {
@@ -261,6 +265,25 @@ func policyWords(f SourceFile) string {
 		return ""
 	}
 	return ": " + strings.Join(parts, "; ")
+}
+
+// policyTable names the person or role of a policy whose table holds a line.
+func policyTable(p *schema.Policy, table string, line int) (name string) {
+	switch table {
+	case "person":
+		for _, x := range p.Persons {
+			if x.Pos.Line <= line {
+				name = x.Principal
+			}
+		}
+	case "role":
+		for _, x := range p.Roles {
+			if x.Pos.Line <= line {
+				name = x.Name
+			}
+		}
+	}
+	return name
 }
 
 func noteWords(note string) string {
