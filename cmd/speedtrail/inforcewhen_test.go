@@ -6,6 +6,9 @@ import (
 	"strings"
 	"testing"
 	"time"
+
+	"speedtrail/history/approval"
+	"speedtrail/history/signoff"
 )
 
 // What is recorded for an instant that is still to come is not shown as what was.
@@ -74,6 +77,32 @@ func TestInForceTerms(t *testing.T) {
 			if x.Speed != c.speed || len(x.Governed) != 1 || !strings.Contains(x.Governed[0], c.row) {
 				t.Errorf("at km %s on %s: %+v, want %d by %s", c.at, c.when, x, c.speed, c.row)
 			}
+		}
+	}
+}
+
+// A record that was corrected would be the answer where it had begun by then, not before
+// the one that is, on the route that is asked for.
+func TestSaidOtherwise(t *testing.T) {
+	day := func(n int) time.Time { return time.Date(2026, 3, n, 0, 0, 0, 0, time.UTC) }
+	record := func(since int, routes ...string) approval.Record {
+		return approval.Record{Statement: signoff.Statement{Since: day(since), Routes: routes}}
+	}
+	now := record(5)
+	for _, c := range []struct {
+		name  string
+		r     approval.Record
+		now   *approval.Record
+		route string
+		want  bool
+	}{
+		{"the whole network, any route", record(6), &now, "", true}, {"the whole network, one route", record(6), &now, "R1", true},
+		{"its route", record(6, "R2", "R1"), &now, "R1", true}, {"another route", record(6, "R2"), &now, "R1", false}, {"one route, any", record(6, "R2"), &now, "", true},
+		{"from the same instant", record(5), &now, "R1", true}, {"before the answer", record(4), &now, "R1", false}, {"without an answer", record(4), nil, "R1", true},
+		{"from that instant on", record(10), &now, "R1", true}, {"later", record(11), &now, "R1", false}, {"later, without an answer", record(11), nil, "", false},
+	} {
+		if got := saidOtherwise(c.r, c.now, day(10), c.route); got != c.want {
+			t.Errorf("%s: %t", c.name, got)
 		}
 	}
 }
