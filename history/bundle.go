@@ -169,14 +169,14 @@ func readLine(text []byte) (e ledger.Restored, err error) {
 		e.Assessment = &record
 		return e, nil
 	}
-	e.Rows, err = SignedRows(e.Entry)
+	e.Rows, err = signedRows(e.Entry)
 	return e, err
 }
 
-// SignedRows gives the rows that repeat an entry of signed statements, from its
+// signedRows gives the rows that repeat an entry of signed statements, from its
 // body alone: whether the statements count is not asked. It gives none for other
 // kinds of entry.
-func SignedRows(e chain.Entry) ([]ledger.Row, error) {
+func signedRows(e chain.Entry) ([]ledger.Row, error) {
 	switch e.Kind {
 	case chain.Anchor:
 		var body approval.AnchorBody

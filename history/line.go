@@ -56,7 +56,7 @@ func ReadOn(ctx context.Context, l *ledger.Ledger, line *approval.Line) (problem
 				if err := repeats(row, e); err != nil {
 					return nil, ledger.Damaged(err)
 				}
-				a = AssessmentOf(line, row.Number, e.digest, e.doc)
+				a = assessmentOf(line, row.Number, e.digest, e.doc)
 			}
 		}
 		if err := line.Add(e.Entry, a); err != nil {
@@ -108,12 +108,12 @@ func listed(names []string) string {
 	return strings.Join(names, ", ")
 }
 
-// AssessmentOf gives what the line of approval needs of an assessment.
-func AssessmentOf(line *approval.Line, number int64, digest string, doc *assessment.Document) *approval.Assessment {
+// assessmentOf gives what the line of approval needs of an assessment.
+func assessmentOf(line *approval.Line, number int64, digest string, doc *assessment.Document) *approval.Assessment {
 	c := &doc.Computed
 	a := &approval.Assessment{
 		Number: number, Digest: digest, Base: c.Base.Commit, Target: c.Target.Commit, BaseTree: c.Base.Tree, TargetTree: c.Target.Tree,
-		Folder: c.Folder, Rules: c.RulesVersion, Findings: Findings(c), Since: c.PreparedSince,
+		Folder: c.Folder, Rules: c.RulesVersion, Findings: statedFindings(c), Since: c.PreparedSince,
 		Policy: line.Policy(c.Policy.Base.SignOff, c.Policy.Base.AllowedSigners),
 		Next:   line.Policy(c.Policy.Target.SignOff, c.Policy.Target.AllowedSigners),
 	}
@@ -126,12 +126,12 @@ func AssessmentOf(line *approval.Line, number int64, digest string, doc *assessm
 	return a
 }
 
-// Findings lists the findings that nobody has accepted as statements write them:
+// statedFindings lists the findings that nobody has accepted as statements write them:
 // each id with its number, in the order of the assessment; "none" for none. Before
 // them it says that nobody compared the change with requests, where that is so: who
 // signs then signs for that as well. Statements over assessments of before version 4
 // of the rules did not.
-func Findings(c *assessment.Computed) string {
+func statedFindings(c *assessment.Computed) string {
 	var ids []string
 	count := map[string]int{}
 	for _, f := range c.Findings {

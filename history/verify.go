@@ -209,7 +209,7 @@ func (v *verifier) rows(e *opened) (*approval.Assessment, error) {
 	case chain.Assessment:
 		return v.assessmentRows(e)
 	case chain.Anchor, chain.SignOff, chain.InForce, chain.Revocation:
-		want, err := SignedRows(e.Entry)
+		want, err := signedRows(e.Entry)
 		if err != nil {
 			v.problem(e.Seq, "body", "it cannot be read: %v", err)
 			return nil, nil
@@ -280,7 +280,7 @@ func (v *verifier) assessmentRows(e *opened) (*approval.Assessment, error) {
 		return nil, err
 	}
 	v.docs = append(v.docs, recorded{e.Seq, number, e.digest, e.doc.Asked()})
-	return AssessmentOf(v.r.Line, number, e.digest, e.doc), nil
+	return assessmentOf(v.r.Line, number, e.digest, e.doc), nil
 }
 
 // heads holds the ledger against what was noted elsewhere.

@@ -1,13 +1,11 @@
 package main
 
 import (
-	"context"
 	"errors"
 	"fmt"
 
 	"speedtrail/history/ledger"
 	"speedtrail/history/revision"
-	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
 
@@ -37,11 +35,11 @@ func badCall(hint, format string, args ...any) error {
 // result itself says which; nothing more is printed.
 var errFindings = errors.New("there are unaccepted findings")
 
-// statusOf sorts an error into the exit statuses.
+// statusOf sorts an error into the exit statuses. Of errors that are joined, such as
+// those of two revisions, the data comes before the machine.
 func statusOf(err error) int {
 	var call *callError
 	var faults *source.Faults
-	var pair *schema.PairError
 	switch {
 	case err == nil:
 		return statusDone
@@ -49,19 +47,8 @@ func statusOf(err error) int {
 		return statusFinding
 	case errors.As(err, &call), errors.As(err, &faults), isWrongInput(err):
 		return statusInput
-	case errors.As(err, &pair):
-		// One side may be faulty and the other unreadable: the data comes first.
-		return min(statusOf(orFailed(pair.Base)), statusOf(orFailed(pair.Target)))
 	}
 	return statusFailed
-}
-
-// orFailed stands for a side that has no error when the other side's counts.
-func orFailed(err error) error {
-	if err == nil {
-		return context.Canceled
-	}
-	return err
 }
 
 // isWrongInput tells errors about what was asked for from those about the

@@ -78,3 +78,32 @@ func TestStatusOfForeignLedger(t *testing.T) {
 		t.Errorf("with the repository: %s", got.out)
 	}
 }
+
+// What was noted elsewhere and is not there is wrong; what cannot have been noted is a
+// call that is.
+func TestStatusOfNoted(t *testing.T) {
+	file := filepath.Join(t.TempDir(), "ledger.db")
+	l, err := ledger.Open(t.Context(), file, ledger.Options{Create: true, Now: time.Now})
+	if err != nil {
+		t.Fatal(err)
+	}
+	head, err := l.Head(t.Context())
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := l.Close(); err != nil {
+		t.Fatal(err)
+	}
+	other := strings.Repeat("0", 63) + "1"
+	for _, c := range []struct {
+		flag, value string
+		want        int
+	}{
+		{"--against", head.String(), statusDone}, {"--against", "1:" + other, statusFinding}, {"--against", "2:" + head.Hash, statusFinding},
+		{"--against", head.Hash, statusInput}, {"--against", "1:" + head.Hash[1:], statusInput}, {"--against", "0:" + head.Hash, statusInput}, {"--against", "", statusInput},
+		{"--anchor", other, statusFinding}, {"--anchor", head.Hash, statusFinding}, {"--anchor", head.String(), statusInput}, {"--anchor", other[1:], statusInput},
+		{"--anchor", strings.Repeat("A", 64), statusInput}, {"--anchor", "", statusInput},
+	} {
+		call(t, "verify", "--ledger-only", "--ledger", file, c.flag, c.value).want(t, c.want)
+	}
+}

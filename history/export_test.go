@@ -1,0 +1,8 @@
+package history
+
+// What tests ask by itself.
+var (
+	AssessmentOf = assessmentOf
+	SignedRows   = signedRows
+	Findings     = statedFindings
+)
