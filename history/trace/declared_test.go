@@ -1,13 +1,10 @@
 package trace_test
 
 import (
-	"context"
 	"testing"
 	"time"
 
 	"speedtrail/history/compose"
-	"speedtrail/history/internal/past"
-	"speedtrail/history/revision"
 	"speedtrail/history/trace"
 	"speedtrail/schema"
 	"speedtrail/schema/chainage"
@@ -29,23 +26,7 @@ func declaredStory(t *testing.T) *trace.History {
 	for i := range history {
 		history[i].Author, history[i].When = compose.Person{Name: "A", Email: "a@story.example"}, time.Date(2024, 1, 1+i, 0, 0, 0, 0, time.UTC)
 	}
-	repo, err := revision.Open(past.Write(t, history))
-	if err != nil {
-		t.Fatal(err)
-	}
-	t.Cleanup(func() { repo.Close() })
-	head, err := repo.Resolve("HEAD")
-	if err != nil {
-		t.Fatal(err)
-	}
-	tip, err := trace.ParseHash(head.Hash)
-	if err != nil {
-		t.Fatal(err)
-	}
-	h, err := trace.NewReader(repo, ".").History(context.Background(), tip, "R", trace.Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
+	_, h := readStory(t, history)
 	return h
 }
 

@@ -10,9 +10,6 @@ import (
 	"time"
 
 	"speedtrail/history/compose"
-	"speedtrail/history/internal/past"
-	"speedtrail/history/revision"
-	"speedtrail/history/trace"
 	"speedtrail/schema"
 	"speedtrail/schema/source"
 )
@@ -42,23 +39,7 @@ func TestNearlyNamedIsAGap(t *testing.T) {
 		}
 		history = append(history, c)
 	}
-	repo, err := revision.Open(past.Write(t, history))
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer repo.Close()
-	head, err := repo.Resolve("HEAD")
-	if err != nil {
-		t.Fatal(err)
-	}
-	tip, err := trace.ParseHash(head.Hash)
-	if err != nil {
-		t.Fatal(err)
-	}
-	h, err := trace.NewReader(repo, ".").History(context.Background(), tip, "R", trace.Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
+	repo, h := readStory(t, history)
 	gaps := 0
 	for _, c := range h.Commits {
 		files, err := repo.Snapshot(c.Hash.String(), ".")

@@ -1,7 +1,6 @@
 package trace_test
 
 import (
-	"context"
 	"fmt"
 	"slices"
 	"strings"
@@ -30,6 +29,29 @@ func files(folder, head, rows string) map[string]string {
 
 const plainHead = "start_km = 0\nend_km = 10\n"
 
+// readStory writes a history to a repository and reads the past of route R up to HEAD.
+func readStory(t *testing.T, history []compose.Commit) (*revision.Repo, *trace.History) {
+	t.Helper()
+	repo, err := revision.Open(past.Write(t, history))
+	if err != nil {
+		t.Fatal(err)
+	}
+	t.Cleanup(func() { repo.Close() })
+	head, err := repo.Resolve("HEAD")
+	if err != nil {
+		t.Fatal(err)
+	}
+	tip, err := trace.ParseHash(head.Hash)
+	if err != nil {
+		t.Fatal(err)
+	}
+	h, err := trace.NewReader(repo, ".").History(t.Context(), tip, "R", trace.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return repo, h
+}
+
 // A history written by hand, with its trails.
 func TestStory(t *testing.T) {
 	at := func(day int) time.Time { return time.Date(2024, 1, day, 0, 0, 0, 0, time.UTC) }
@@ -54,23 +76,7 @@ func TestStory(t *testing.T) {
 	for i := range history {
 		history[i].Author, history[i].When = compose.Person{Name: "A", Email: "a@story.example"}, at(i+1)
 	}
-	repo, err := revision.Open(past.Write(t, history))
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer repo.Close()
-	head, err := repo.Resolve("HEAD")
-	if err != nil {
-		t.Fatal(err)
-	}
-	tip, err := trace.ParseHash(head.Hash)
-	if err != nil {
-		t.Fatal(err)
-	}
-	h, err := trace.NewReader(repo, ".").History(context.Background(), tip, "R", trace.Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
+	repo, h := readStory(t, history)
 	train := schema.Train{ID: "T", Length: 100 * unit.Metre, Max: 200}
 	number := func(c int32) string {
 		commit, err := repo.Resolve(h.Commits[c].Hash.String())
