@@ -9,8 +9,8 @@ import (
 )
 
 // DeclaredAt tells whether a change request declares what a step of a trail changes:
-// the route, the train, the sense of the change and the point at a running distance on
-// the newest track. Where the track itself came or went, effect "any" without trains
+// the route, the direction of travel, the train, the sense of the change and the point
+// at a running distance on the newest track. Where the track itself came or went, effect "any" without trains
 // declares it. The run-out of a train beyond the end of a declaration is not looked at.
 func (v *View) DeclaredAt(q *schema.ChangeRequest, t schema.Train, at unit.Distance, s *Step) bool {
 	at = min(at, v.h.Newest().Track.Length()-1)
@@ -48,7 +48,7 @@ func (v *View) declared(q *schema.ChangeRequest, t schema.Train, from, to unit.D
 	for i := range q.Declare {
 		d := &q.Declare[i]
 		switch {
-		case d.Route != route.ID,
+		case d.Route != route.ID, !d.Span.Directions.Has(v.direction),
 			d.Effect == schema.Raise && after < before, d.Effect == schema.Lower && after > before,
 			d.Effect != schema.AnyEffect && (before == 0 || after == 0),
 			len(d.Trains) > 0 && (before == 0 || after == 0 || !slices.Contains(d.Trains, t.ID)):

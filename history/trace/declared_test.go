@@ -43,7 +43,11 @@ func TestDeclared(t *testing.T) {
 				t.Fatal(err)
 			}
 		}
-		return &schema.ChangeRequest{Declare: []schema.Declaration{{Route: route, Span: schema.Span{From: at[0], To: at[1]}, Effect: effect, Trains: trains}}}
+		return &schema.ChangeRequest{Declare: []schema.Declaration{{Route: route, Span: schema.Span{From: at[0], To: at[1], Directions: codes.Both}, Effect: effect, Trains: trains}}}
+	}
+	in := func(set codes.Directions, q *schema.ChangeRequest) *schema.ChangeRequest {
+		q.Declare[0].Span.Directions = set
+		return q
 	}
 	for _, x := range []struct {
 		name  string
@@ -56,6 +60,8 @@ func TestDeclared(t *testing.T) {
 		{"the place, raised", 4_700 * unit.Metre, 0, declares("R", "5", "10", schema.Raise), true, true},
 		{"any sense", 4_700 * unit.Metre, 0, declares("R", "5", "10", schema.AnyEffect), true, true},
 		{"the other sense", 4_700 * unit.Metre, 0, declares("R", "5", "10", schema.Lower), false, false},
+		{"the direction of travel", 4_700 * unit.Metre, 0, in(codes.OnlyNominal, declares("R", "5", "10", schema.Raise)), true, true},
+		{"the other direction of travel", 4_700 * unit.Metre, 0, in(codes.OnlyReverse, declares("R", "5", "10", schema.Raise)), false, false},
 		{"another route", 4_700 * unit.Metre, 0, declares("S", "5", "10", schema.Raise), false, false},
 		{"the train", 4_700 * unit.Metre, 0, declares("R", "5", "10", schema.Raise, "S", "T"), true, true},
 		{"another train", 4_700 * unit.Metre, 0, declares("R", "5", "10", schema.Raise, "S"), false, false},
