@@ -60,9 +60,17 @@ func (t *tracing) stretch(ctx context.Context) error {
 				return err
 			}
 			for k := range pieces {
-				p := &pieces[k]
-				if out.Pieces[k].DeclaredBy, err = t.declaredBy(ctx, p.Origin, func(q *schema.ChangeRequest) bool { return views[d].DeclaredOn(q, t.trains[i], p) }); err != nil {
-					return err
+				p, said := &pieces[k], &out.Pieces[k]
+				for _, x := range []struct {
+					by  *[]string
+					all bool
+				}{{&said.DeclaredBy, true}, {&said.DeclaredInPart, false}} {
+					if *x.by, err = t.declaredBy(ctx, p.Origin, func(q *schema.ChangeRequest) bool {
+						some, all := views[d].DeclaredOn(q, t.trains[i], p)
+						return some && all == x.all
+					}); err != nil {
+						return err
+					}
 				}
 			}
 			var n int

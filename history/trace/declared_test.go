@@ -4,6 +4,7 @@ import (
 	"testing"
 	"time"
 
+	"speedtrail/diff/step"
 	"speedtrail/history/compose"
 	"speedtrail/history/trace"
 	"speedtrail/schema"
@@ -86,11 +87,59 @@ func TestDeclared(t *testing.T) {
 			}
 			declared := false
 			for _, p := range v.Stretch(train, x.at-100*unit.Metre, x.at+300*unit.Metre) {
-				declared = declared || v.DeclaredOn(x.q, train, &p)
+				some, _ := v.DeclaredOn(x.q, train, &p)
+				declared = declared || some
 			}
 			if declared != x.piece {
 				t.Errorf("a piece around it: %v, want %v", declared, x.piece)
 			}
 		})
+	}
+}
+
+// Of a piece that is longer than a declaration only a part is declared.
+func TestDeclaredInPart(t *testing.T) {
+	h := declaredStory(t)
+	train := schema.Train{ID: "T", Length: unit.Metre, Max: 200}
+	declares := func(km ...string) *schema.ChangeRequest {
+		q := &schema.ChangeRequest{}
+		for i := 1; i < len(km); i++ {
+			from, errFrom := chainage.ParsePoint(km[i-1])
+			to, errTo := chainage.ParsePoint(km[i])
+			if errFrom != nil || errTo != nil {
+				t.Fatal(errFrom, errTo)
+			}
+			q.Declare = append(q.Declare, schema.Declaration{Route: "R", Span: schema.Span{From: from, To: to, Directions: codes.Both}})
+		}
+		return q
+	}
+	// The piece up to km 8 was raised at once, whatever the newest posts are; its first
+	// metre has the speed of before for a train of one.
+	for _, x := range []struct {
+		km        []string
+		some, all bool
+	}{
+		{[]string{"5", "8"}, true, true},
+		{[]string{"5", "6", "8"}, true, true},
+		{[]string{"5", "7.999999"}, true, false},
+		{[]string{"5.001", "8"}, true, true},
+		{[]string{"5.001001", "8"}, true, false},
+		{[]string{"0", "5"}, false, false},
+	} {
+		v := h.View(codes.Nominal, false)
+		pieces := v.Stretch(train, 4_501*unit.Metre, 7_500*unit.Metre)
+		if len(pieces) != 1 {
+			t.Fatalf("%+v", pieces)
+		}
+		if some, all := v.DeclaredOn(declares(x.km...), train, &pieces[0]); some != x.some || all != x.all {
+			t.Errorf("%v: some %v, all %v, want %v and %v", x.km, some, all, x.some, x.all)
+		}
+	}
+	// A part that had the speed before is no change, and nobody has to declare it.
+	v := h.View(codes.Nominal, false)
+	p := v.Stretch(train, 4_501*unit.Metre, 7_500*unit.Metre)[0]
+	p.Before = []step.Piece{{From: p.From, To: 6_000 * unit.Metre, Speed: p.Speed}, {From: 6_000 * unit.Metre, To: p.To, Speed: 80}}
+	if some, all := v.DeclaredOn(declares("6.5", "8"), train, &p); !some || !all {
+		t.Errorf("what changed of it: some %v, all %v", some, all)
 	}
 }

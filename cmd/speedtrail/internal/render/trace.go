@@ -147,12 +147,14 @@ type TracePiece struct {
 	AnchorOvertaken bool         `json:"anchor_overtaken"`
 	Across          int          `json:"across"` // revisions that do not load between its revision and what was before
 	Before          []TraceLevel `json:"before"` // in the first parent of its revision
-	// DeclaredBy are the requests in play that declare some of what changed here for
+	// DeclaredBy are the requests in play that declare all of what changed here for
 	// these trains; run-out beyond the end of a declaration is not looked at.
 	DeclaredBy []string `json:"declared_by"`
-	End        int64    `json:"end_mm"` // running distance
-	From       string   `json:"from_km"`
-	Origin     int      `json:"origin"` // index in commits
+	// DeclaredInPart are those that declare some of it.
+	DeclaredInPart []string `json:"declared_in_part_by"`
+	End            int64    `json:"end_mm"` // running distance
+	From           string   `json:"from_km"`
+	Origin         int      `json:"origin"` // index in commits
 	// Overtaken are the assessments of its revision whose target has not this speed
 	// because of it on all of the piece: they did not judge it.
 	Overtaken []int64             `json:"overtaken"`
@@ -295,7 +297,7 @@ func stepRemarks(t *Trace, s *TraceStep) []string {
 		list = append(list, "a later merge did not take it")
 	}
 	list = append(list, overtakenWords(s.Overtaken, s.AnchorOvertaken)...)
-	return append(list, declaredRemarks(&t.Commits[s.After.Commit], s.DeclaredBy)...)
+	return append(list, declaredRemarks(&t.Commits[s.After.Commit], s.DeclaredBy, nil)...)
 }
 
 // overtakenWords says what the assessments and the anchor beside a speed do not speak of.
@@ -310,15 +312,19 @@ func overtakenWords(assessments []int64, anchor bool) []string {
 	return words
 }
 
-// declaredRemarks says which of the requests in play at a commit declare what changed.
-func declaredRemarks(c *TraceCommit, by []string) []string {
-	switch {
-	case len(by) > 0:
-		return []string{"declared here by " + strings.Join(by, ", ")}
-	case len(c.Requests) > 0:
-		return []string{"no request in play declares it here; run-out beyond a declaration is not looked at"}
+// declaredRemarks says which of the requests in play at a commit declare what changed,
+// and which a part of it.
+func declaredRemarks(c *TraceCommit, by, inPart []string) (list []string) {
+	if len(by) > 0 {
+		list = append(list, "declared here by "+strings.Join(by, ", "))
 	}
-	return nil
+	if len(inPart) > 0 {
+		list = append(list, "declared in part by "+strings.Join(inPart, ", ")+"; run-out beyond a declaration is not looked at")
+	}
+	if list == nil && len(c.Requests) > 0 {
+		list = []string{"no request in play declares it here; run-out beyond a declaration is not looked at"}
+	}
+	return list
 }
 
 func pieceRemarks(t *Trace, p *TracePiece) []string {
@@ -336,7 +342,7 @@ func pieceRemarks(t *Trace, p *TracePiece) []string {
 	if len(p.Before) == 0 {
 		return list
 	}
-	return append(list, declaredRemarks(&t.Commits[p.Origin], p.DeclaredBy)...)
+	return append(list, declaredRemarks(&t.Commits[p.Origin], p.DeclaredBy, p.DeclaredInPart)...)
 }
 
 func acrossWords(n int) string {
