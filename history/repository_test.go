@@ -40,6 +40,7 @@ func newRepository() *repository {
 	return &repository{rules: map[string]bool{}, content: map[string]string{}, policy: map[string]string{}, commits: map[string]commit{
 		"a": {"", "a", "P1", dan, nil},
 		"b": {"a", "b", "P1", dan, []string{"outside", "masked", "masked=renewed next week"}},
+		"r": {"b", "a", "P1", dan, nil}, // takes b back
 		"c": {"b", "c", "P2", dan, []string{"policy-changed"}},
 		"d": {"c", "d", "P2", dan, nil},
 		"e": {"a", "e", "P1", []string{"dan@users.example", "eva@fell.example"}, nil},

@@ -158,14 +158,14 @@ func ServiceFindings(line *approval.Line, folder string) []ServiceFinding {
 		}
 	}
 	// What approved assessments lead on from to something that went into service on the
-	// whole network went with it, as a part of the next release does.
-	followed := func(content string) bool {
+	// whole network later went with it, as a part of the next release does.
+	followed := func(a *approval.Assessment) bool {
 		return slices.ContainsFunc(line.Standing(folder), func(r approval.Record) bool {
-			return len(r.Routes) == 0 && line.Led(folder, content, r.Content)
+			return len(r.Routes) == 0 && r.Entry.Seq > a.Entry.Seq && line.Led(folder, a.TargetTree, r.Content)
 		})
 	}
 	for _, a := range line.Assessments() {
-		if a.Folder == folder && !served[a.TargetTree] && line.State(a.Number).Word == approval.Approved && !followed(a.TargetTree) {
+		if a.Folder == folder && !served[a.TargetTree] && line.State(a.Number).Word == approval.Approved && !followed(a) {
 			served[a.TargetTree] = true
 			list = append(list, ServiceFinding{NeverInService, fmt.Sprintf("assessment %d: its target %s is approved and never went into service", a.Number, a.Target)})
 		}

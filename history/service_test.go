@@ -81,6 +81,19 @@ func TestService(t *testing.T) {
 	}
 }
 
+// A release that was taken back, and never ran, did not go into service with what was
+// there before it.
+func TestServiceOfWhatWasTakenBack(t *testing.T) {
+	w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
+	w.anchor("a")
+	w.inService("a", "2026-03-01T03:00:00Z", "all")
+	w.approve("a", "b", "ada")
+	w.approve("b", "r", "ada")
+	if _, findings := w.services(); !slices.Equal(ids(findings), []string{history.NeverInService}) {
+		t.Errorf("%v", findings)
+	}
+}
+
 // What goes into service on one route takes nothing of the network along.
 func TestServiceOfOneRoute(t *testing.T) {
 	w := newLedger(t, filepath.Join(quickDir(t), "ledger.db"))
