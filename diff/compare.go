@@ -48,8 +48,9 @@ func (e *UnknownRequestError) Error() string {
 
 // MaxChanges bounds the changes of speed of a comparison, over all routes and
 // trains, with and without temporary restrictions: tables of the largest size
-// and a thousand trains would take more memory than a machine has. It is some
-// ten times what the largest network gives when every row of it is altered.
+// and a thousand trains would take more memory than a machine has. A network of 500
+// routes of 60 rows and 100 trains gives six million, and run-out beside them, when
+// every row is altered for every train in both directions.
 const MaxChanges = 10_000_000
 
 // ErrTooMany is the error of a comparison with more than MaxChanges changes.

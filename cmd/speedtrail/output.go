@@ -74,7 +74,25 @@ func wrote(name string, err error) error {
 	if err == nil {
 		return nil
 	}
-	return fmt.Errorf("%s was not written: %w", name, err)
+	return &unwritten{name, err}
+}
+
+// unwritten is a result that could not be written.
+type unwritten struct {
+	name string
+	err  error
+}
+
+func (e *unwritten) Error() string { return e.name + " was not written: " + e.err.Error() }
+
+func (e *unwritten) Unwrap() error { return e.err }
+
+// Hint says what to do.
+func (e *unwritten) Hint() string {
+	if errors.Is(e.err, fs.ErrNotExist) {
+		return "make the folder first, or name one that is there"
+	}
+	return hintOf(e.err)
 }
 
 // writeFile replaces a file by what result writes, or leaves it as it was. Who may
